@@ -1,0 +1,113 @@
+"""Every mistake a user can make, and the notices that need not stop a run."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from evenstage.source import Span
+
+_TAB = 8
+
+
+class EvenstageError(Exception):
+    """A mistake in the user's input or a wish that cannot be met.
+
+    Parameters
+    ----------
+    message : str
+        What was found, what was expected and what to do; lower case, no full stop.
+    code : str
+        A short stable name of the mistake, as in ``bad-width``.
+    span : Span, optional
+        The bytes at fault.
+    notes : tuple of str
+        Further lines, for instance where the enclosing subcircuit begins.
+    """
+
+    def __init__(
+        self, message: str, *, code: str, span: Span | None = None, notes: tuple[str, ...] = ()
+    ) -> None:
+        super().__init__(message)
+        self.message = message
+        self.code = code
+        self.span = span
+        self.notes = notes
+
+    def __str__(self) -> str:
+        head = f"{self.message} ({self.code})"
+        if self.span is None:
+            return "\n".join([head, *self.notes])
+        return "\n".join([f"{self.span.place}: {head}", *excerpt(self.span), *self.notes])
+
+
+class SettingsError(EvenstageError):
+    """A process file or a brief is wrong."""
+
+
+class NetlistError(EvenstageError):
+    """The text of a netlist is wrong."""
+
+
+class ElaborationError(EvenstageError):
+    """The cards do not fit together."""
+
+
+class CircuitError(EvenstageError):
+    """The transistors do not form something that can be timed."""
+
+
+class NoPathError(EvenstageError):
+    """No path connects what was asked for."""
+
+
+class InfeasibleError(EvenstageError):
+    """The wishes for the sizes contradict each other or cannot be met."""
+
+
+class NotConvergedError(EvenstageError):
+    """The optimiser stopped before it could prove its answer."""
+
+
+class OutputError(EvenstageError):
+    """A result could not be written."""
+
+
+@dataclass(frozen=True, slots=True)
+class Notice:
+    """Something that was not understood, assumed or left out, and need not stop the run.
+
+    Parameters
+    ----------
+    code : str
+        A short stable name, as in ``resistor-joined``.
+    message : str
+        What was done about what, for the user.
+    place : str
+        ``file:line:column`` of the first cause, or empty.
+    names : tuple of str
+        All devices, nets or cards concerned.
+    """
+
+    code: str
+    message: str
+    place: str = ""
+    names: tuple[str, ...] = ()
+
+    def __str__(self) -> str:
+        return f"{self.place}: {self.message}" if self.place else self.message
+
+
+def excerpt(span: Span) -> list[str]:
+    """Return the line a span begins in and a line of carets under the span's part of it."""
+    source = span.source
+    number = source.line_number(span.start)
+    line = source.line(number)
+    left = source.column(span.start) - 1
+    marked = min(len(span.text.split("\n")[0].rstrip("\r")), len(line) - left)
+    before = line[:left].expandtabs(_TAB)
+    under = line[: left + marked].expandtabs(_TAB)
+    carets = "^" * max(1, len(under) - len(before))
+    shown = line.expandtabs(_TAB).encode("utf-8", "replace").decode()
+    return [f"    {shown}", f"    {' ' * len(before)}{carets}"]
