@@ -6,10 +6,13 @@ worked out only when a message is printed.
 
 from __future__ import annotations
 
+import re
 from bisect import bisect_right
 from dataclasses import dataclass, field
 from functools import cached_property
 from pathlib import Path
+
+_LINE_END = re.compile(rb"\r\n|\n|\r")
 
 
 @dataclass(frozen=True)
@@ -33,14 +36,7 @@ class SourceText:
     @cached_property
     def _line_starts(self) -> list[int]:
         """Offsets at which lines begin; a line ends at LF, CR LF or a lone CR."""
-        data, starts, at = self.data, [0], 0
-        while True:
-            ends = [end for end in (data.find(b"\n", at), data.find(b"\r", at)) if end >= 0]
-            if not ends:
-                return starts
-            at = min(ends)
-            at += 2 if data[at : at + 2] == b"\r\n" else 1
-            starts.append(at)
+        return [0, *(match.end() for match in _LINE_END.finditer(self.data))]
 
     def line_number(self, offset: int) -> int:
         """Return the 1-based line that holds a byte offset."""

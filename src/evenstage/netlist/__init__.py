@@ -1,0 +1,1 @@
+"""Text to cards and back: read, elaborate, rewrite without touching the rest."""

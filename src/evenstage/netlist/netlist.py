@@ -1,0 +1,170 @@
+"""The cards of a netlist, each with its exact place in the bytes it came from."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from functools import cached_property
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
+
+    from evenstage.errors import Notice
+    from evenstage.source import SourceText, Span
+
+
+@dataclass(frozen=True, slots=True)
+class Parameter:
+    """One ``name=value`` of a card.
+
+    Parameters
+    ----------
+    name : str
+        In lower case.
+    text : str
+        The value as written, quotes or braces included, continuations taken out.
+    name_span, span : Span
+        The bytes of the name and of the value.
+    """
+
+    name: str
+    text: str
+    name_span: Span
+    span: Span
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Card:
+    """One element card.
+
+    Parameters
+    ----------
+    number : int
+        Position among all element cards of the netlist, in reading order.
+    letter : str
+        Lower-case first letter: ``m``, ``x``, ``r``, ``c``, ``v`` ...
+    name : str
+        As written, with its letter.
+    nodes : tuple of str
+        Net names as written.
+    target : str
+        Model of an M or D card, subcircuit of an X card, else empty.
+    target_span : Span, optional
+        Its bytes.
+    value : Parameter, optional
+        The unnamed value of an R, C, V ... card (its ``name`` is empty).
+    parameters : tuple of Parameter
+        In their order.
+    span : Span
+        From the first byte of the name to the last byte of the last value; continuations and
+        comments between them are inside, a trailing comment is not.
+    scope : str
+        Lower-case name of the subcircuit that holds the card; empty: top level.
+    """
+
+    number: int
+    letter: str
+    name: str
+    nodes: tuple[str, ...]
+    target: str
+    target_span: Span | None
+    value: Parameter | None
+    parameters: tuple[Parameter, ...]
+    span: Span
+    scope: str
+
+    def parameter(self, name: str) -> Parameter | None:
+        """Return the last parameter of a lower-case name (a repeated one overrides)."""
+        return next((p for p in reversed(self.parameters) if p.name == name), None)
+
+
+@dataclass(frozen=True, kw_only=True)
+class Subcircuit:
+    """One definition, or the top level (whose name is empty).
+
+    Parameters
+    ----------
+    name : str
+        As written.
+    ports : tuple of str
+        As written.
+    defaults : tuple of Parameter
+        Parameters of the ``.subckt`` card.
+    assignments : tuple of Parameter
+        Of the ``.param`` cards inside, in order.
+    cards : Sequence of int
+        Numbers of the element cards inside, in order.
+    header : Span
+        The ``.subckt`` card.
+    name_span : Span
+        The name on the ``.subckt`` card.
+    body : Span
+        From the first byte of the line ``.subckt`` stands on to the end of the ``.ends`` line, its
+        line end included (where there is one).
+    end_name_span : Span, optional
+        The name on the ``.ends`` card, where it has one.
+    """
+
+    name: str
+    ports: tuple[str, ...]
+    defaults: tuple[Parameter, ...]
+    assignments: tuple[Parameter, ...]
+    cards: Sequence[int]
+    header: Span | None
+    name_span: Span | None
+    body: Span | None
+    end_name_span: Span | None
+
+    @cached_property
+    def default_names(self) -> frozenset[str]:
+        """Lower-case names of the parameters a caller may pass."""
+        return frozenset(p.name for p in self.defaults)
+
+
+@dataclass(frozen=True, slots=True)
+class ModelCard:
+    """A ``.model`` card: name and type as written, parameters by lower-case name, SI values."""
+
+    name: str
+    kind: str
+    values: Mapping[str, float]
+    span: Span
+
+
+@dataclass(frozen=True, kw_only=True)
+class Netlist:
+    """Every byte and every card of a netlist and the files it includes.
+
+    Parameters
+    ----------
+    sources : tuple of SourceText
+        The main file first.
+    subcircuits : Mapping of str to Subcircuit
+        By lower-case name.
+    top : Subcircuit
+        The top level.
+    models : Mapping of str to ModelCard
+        By lower-case name.
+    global_names : tuple of str
+        Nets declared by ``.global``, as written.
+    options : Mapping of str to float
+        Numeric ``.option`` values by lower-case name, ``scale`` among them.
+    notices : tuple of Notice
+        What was read but not understood.
+    """
+
+    sources: tuple[SourceText, ...] = field(repr=False)
+    subcircuits: Mapping[str, Subcircuit]
+    top: Subcircuit
+    models: Mapping[str, ModelCard]
+    global_names: tuple[str, ...]
+    options: Mapping[str, float]
+    notices: tuple[Notice, ...]
+    _cards: Sequence[Card] = field(repr=False)
+
+    def card(self, number: int) -> Card:
+        """Return the element card of a number."""
+        return self._cards[number]
+
+    def __len__(self) -> int:
+        return len(self._cards)

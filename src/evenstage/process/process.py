@@ -1,0 +1,137 @@
+"""The constants of a manufacturing process, as the delay model uses them.
+
+A transistor of drawn width ``W`` and length ``L`` has the resistance ``r_w (L/L0)/W + r_fixed``, with
+the ln 2 of an RC response inside, so that a delay is ``R C``. Its gate loads its driver with
+``c_gate W L/L0 + c_gate_fixed``; its drain and its source each with ``c_drain W + c_drain_fixed``.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Literal
+
+if TYPE_CHECKING:
+    from evenstage.errors import Notice
+    from evenstage.pattern import Pattern
+    from evenstage.source import SourceText
+
+Polarity = Literal["n", "p"]
+WidthMeaning = Literal["total", "finger", "fins"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Junction:
+    """Source and drain capacitance per area and per edge, linearised over the swing.
+
+    Parameters
+    ----------
+    area : float
+        F/m^2, multiplies AD or AS.
+    edge : float
+        F/m, multiplies PD or PS.
+    """
+
+    area: float
+    edge: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Transistor:
+    """One transistor type of a process; SI units, see the process file's key table in README.
+
+    Parameters
+    ----------
+    models : tuple of Pattern
+        Model or subcircuit names covered.
+    polarity : {"n", "p"}
+        Channel type.
+    length : float
+        L0, the length the constants were measured at, m.
+    r_w, r_fixed : float
+        ohm m; ohm per device.
+    stack : float
+        Of n conducting devices in series each counts ``(1 + stack (n - 1))/n`` times its own R.
+    c_gate, c_gate_fixed, c_drain, c_drain_fixed : float
+        F/m, F, F/m, F.
+    slope, slope_power, shape, shape_carry : float
+        Transition constants of the arc model: with input transition T and Elmore delay E, delay
+        ``E + slope T^slope_power E^(1 - slope_power)``, output transition
+        ``sqrt((shape E)^2 + (shape_carry T)^2)``.
+    junction : Junction, optional
+        Used in place of ``c_drain`` where a card gives areas and perimeters.
+    width_parameter, width_is, fingers_parameter : str
+        Which card parameter holds the width, what it means, which one holds the finger count.
+    width_unit : float, optional
+        m per unit of a number without suffix; None: decided from what makes sense.
+    width_min, width_max, width_step, finger_width_max : float, optional
+        Limits of one drawn width, m.
+    """
+
+    models: tuple[Pattern, ...]
+    polarity: Polarity
+    length: float
+    r_w: float
+    c_gate: float
+    c_drain: float
+    r_fixed: float = 0.0
+    stack: float = 1.0
+    c_gate_fixed: float = 0.0
+    c_drain_fixed: float = 0.0
+    slope: float = 0.0
+    slope_power: float = 1.0
+    shape: float = 0.0
+    shape_carry: float = 0.0
+    junction: Junction | None = None
+    width_parameter: str = "w"
+    width_is: WidthMeaning = "total"
+    fingers_parameter: str | None = None
+    width_unit: float | None = None
+    width_min: float | None = None
+    width_max: float | None = None
+    width_step: float | None = None
+    finger_width_max: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Process:
+    """A process: its supply, its unit inverter and its transistor types.
+
+    Parameters
+    ----------
+    name : str
+        For reports.
+    supply : float
+        V.
+    transistors : tuple of Transistor
+        At least one of each polarity; the first whose pattern fits a model name counts.
+    unit_width : float, optional
+        nMOS width of the unit inverter, m; None: the smallest n width of the netlist.
+    unit_ratio : float, optional
+        P/N width ratio of the unit inverter; None: r_w of p over r_w of n.
+    origin : {"file", "models", "generic"}
+        Where the constants come from.
+    source : SourceText, optional
+        The process file.
+    notices : tuple of Notice
+        What was assumed while the constants were derived.
+    """
+
+    name: str
+    supply: float
+    transistors: tuple[Transistor, ...]
+    unit_width: float | None = None
+    unit_ratio: float | None = None
+    origin: Literal["file", "models", "generic"] = "file"
+    source: SourceText | None = None
+    notices: tuple[Notice, ...] = ()
+
+    def type_of(self, model: str) -> int | None:
+        """Return the index of the first transistor type that covers a model name, or None."""
+        for index, transistor in enumerate(self.transistors):
+            if any(pattern.fits(model) for pattern in transistor.models):
+                return index
+        return None
+
+    def first(self, polarity: Polarity) -> Transistor:
+        """Return the first transistor type of a polarity; it makes the unit inverter."""
+        return next(t for t in self.transistors if t.polarity == polarity)

@@ -1,0 +1,1 @@
+"""Paths and blocks to new widths, with a proof of how good they are."""
