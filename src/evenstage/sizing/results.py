@@ -1,0 +1,117 @@
+"""What a resizing says: plain frozen values in SI units, for people and reports."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Literal
+
+if TYPE_CHECKING:
+    from evenstage.errors import Notice
+    from evenstage.timing.results import Analysis
+
+Hold = Literal["", "lower", "upper", "fixed", "ceiling", "transition", "grid", "same size"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Change:
+    """One width that changes.
+
+    Parameters
+    ----------
+    card : str
+        Name of the transistor card.
+    file, line : str and int
+        Where the value that changes is written.
+    instance : str
+        Instance path of the gate's card (the call of a leaf, or the transistor card), of its first
+        occurrence; ``occurrences`` says how many there are.
+    occurrences : int
+        How many instances share the change.
+    parameter : str
+        Which parameter is written.
+    old, new : float
+        m, drawn width of one copy.
+    alone : float
+        s; change of the block's worst delay if only this gate's widths changed (negative: faster).
+    why : str
+        One short reason for the comment in the netlist.
+    """
+
+    card: str
+    file: str
+    line: int
+    instance: str
+    occurrences: int
+    parameter: str
+    old: float
+    new: float
+    alone: float
+    why: str
+
+    @property
+    def factor(self) -> float:
+        """New over old width."""
+        return self.new / self.old
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class StageHold:
+    """What holds a stage of the new slowest path at its size; empty where nothing does.
+
+    ``instance`` is the stage's; ``hold`` says which limit is active.
+    """
+
+    instance: str
+    hold: Hold
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Sizing:
+    """New widths and what they buy.
+
+    Parameters
+    ----------
+    before, after : Analysis
+        The whole block analysed with the old and with the written widths.
+    goal : str
+        What was asked, in words: ``fastest``, ``least width for 450 ps``, ...
+    bound : float
+        s or m; no sizes within the limits can do better than this: a bound on the worst charged
+        delay (fastest, budget) or on the total width (least width for a delay).
+    bound_on : {"delay", "width"}
+        What the bound is about.
+    gap : float
+        Relative distance of the continuous optimum to the bound, confirmed by the checker.
+    rounding_loss : float
+        Relative loss of the written widths against the continuous optimum in the same measure.
+    least_delay : float
+        s; the least worst charged delay possible within the limits.
+    total_width_before, total_width_after : float
+        m.
+    free_cards, fixed_cards : int
+        How many sizes could move and how many could not.
+    changes : tuple of Change
+        In the order of the text.
+    holds : tuple of StageHold
+        One per stage of ``after.paths[0]``.
+    already_done : bool
+        The netlist was written by an earlier run with these wishes; nothing changes.
+    notices : tuple of Notice
+    """
+
+    before: Analysis
+    after: Analysis
+    goal: str
+    bound: float
+    bound_on: Literal["delay", "width"]
+    gap: float
+    rounding_loss: float
+    least_delay: float
+    total_width_before: float
+    total_width_after: float
+    free_cards: int
+    fixed_cards: int
+    changes: tuple[Change, ...]
+    holds: tuple[StageHold, ...]
+    already_done: bool
+    notices: tuple[Notice, ...]

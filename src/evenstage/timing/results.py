@@ -1,0 +1,228 @@
+"""What an analysis and a comparison say: plain frozen values in SI units, for people and reports."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Literal
+
+if TYPE_CHECKING:
+    from evenstage.errors import Notice
+
+Edge = Literal["rise", "fall"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Yardstick:
+    """The unit inverter of a process, by which everything is measured.
+
+    Parameters
+    ----------
+    process : str
+        Name of the process.
+    tau, p_inv, fo4 : float
+        s; dimensionless; s: unit of delay, parasitic delay of the unit inverter in tau, delay of the
+        unit inverter driving four of itself.
+    input_cap : float
+        F, of the unit inverter.
+    charge_rise, charge_fall : float
+        q of design: charged delay over Elmore delay of an output edge.
+    transition_rise, transition_fall : float
+        s, of a chain of fan-out-of-four inverters.
+    """
+
+    process: str
+    tau: float
+    p_inv: float
+    fo4: float
+    input_cap: float
+    charge_rise: float
+    charge_fall: float
+    transition_rise: float
+    transition_fall: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SideBranch:
+    """Something that loads a stage's output without being on the path.
+
+    Parameters
+    ----------
+    instance : str
+        Path of the gate or card; empty for the load outside the block.
+    pin : str
+        Net name of the pin inside the loading gate's subcircuit, or ``wire`` for a capacitor card,
+        ``load`` for what the brief puts outside.
+    cap : float
+        F.
+    """
+
+    instance: str
+    pin: str
+    cap: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Stage:
+    """One gate on a path; delays in s, capacitances in F, efforts dimensionless.
+
+    ``stage_effort = logical_effort * electrical_effort * branching_effort`` and ``charged_delay =
+    tau * (stage_effort + parasitic_delay)``. ``load_cap`` is what hangs outside the gate: the next
+    input on the path, side branches and wire; ``on_path_cap`` the first of these alone.
+    """
+
+    instance: str
+    subcircuit: str
+    function: str
+    input: str
+    output: str
+    edge: Edge
+    arrival: float
+    delay: float
+    charged_delay: float
+    transition: float
+    logical_effort: float
+    electrical_effort: float
+    branching_effort: float
+    stage_effort: float
+    parasitic_delay: float
+    input_cap: float
+    load_cap: float
+    on_path_cap: float
+    self_cap: float
+    width: float
+    side_branches: tuple[SideBranch, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Path:
+    """A path from an input to a path end, slowest stages and all.
+
+    ``delay`` is the arrival at its end; it counts from ``start_arrival``, when the input switches
+    (plus the delay of an outside driver, where the brief gives one). ``best_stage_effort``,
+    ``best_stage_count`` and ``least_delay`` are the textbook answers with today's branching.
+    """
+
+    start: str
+    start_edge: Edge
+    start_arrival: float
+    end: str
+    edge: Edge
+    corner: str
+    delay: float
+    charged_delay: float
+    required: float | None
+    logical_effort: float
+    branching_effort: float
+    electrical_effort: float
+    path_effort: float
+    parasitic_delay: float
+    best_stage_effort: float
+    best_stage_count: int
+    least_delay: float
+    stages: tuple[Stage, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class PathEnd:
+    """The latest arrival at one path end.
+
+    ``why`` says what ends a path there: ``output`` or the kind of unrecognised circuit it enters.
+    """
+
+    net: str
+    edge: Edge
+    delay: float
+    charged_delay: float
+    required: float | None
+    why: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Counts:
+    """Sizes of a block."""
+
+    devices: int
+    nets: int
+    gates: int
+    stages: int
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Analysis:
+    """The slowest paths of a block.
+
+    Parameters
+    ----------
+    source : str
+        The netlist's file as the user named it.
+    top : str
+        The block.
+    yardstick : Yardstick
+    counts : Counts
+    paths : tuple of Path
+        Slowest first.
+    ends : tuple of PathEnd
+        Slowest first.
+    worst_transition : float
+        s; the slowest edge in the block.
+    total_width : float
+        m, all transistors, copies counted.
+    switched_cap : float
+        F, gates, diffusion and wires of the block.
+    input_caps : tuple of (str, float)
+        F, per block input.
+    notices : tuple of Notice
+    """
+
+    source: str
+    top: str
+    yardstick: Yardstick
+    counts: Counts
+    paths: tuple[Path, ...]
+    ends: tuple[PathEnd, ...]
+    worst_transition: float
+    total_width: float
+    switched_cap: float
+    input_caps: tuple[tuple[str, float], ...]
+    notices: tuple[Notice, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class WidthDifference:
+    """One card of one instance in two netlists; m; None where it exists in only one."""
+
+    instance: str
+    card: str
+    model: str
+    before: float | None
+    after: float | None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Difference:
+    """Two netlists of one design side by side.
+
+    Parameters
+    ----------
+    before, after : Analysis
+        ``paths[0]`` of each is its slowest.
+    widths : tuple of WidthDifference
+        Cards whose width differs or that exist in only one netlist; one line per instance path.
+    unchanged : int
+        Transistors with the same width in both.
+    same_path_after : Path or None
+        The slowest path of ``before`` as it is in ``after`` (None: it no longer exists).
+    same_path_before : Path or None
+        The slowest path of ``after`` as it was in ``before``.
+    only_before, only_after : tuple of str
+        Instances and nets that exist in only one netlist.
+    """
+
+    before: Analysis
+    after: Analysis
+    widths: tuple[WidthDifference, ...]
+    unchanged: int
+    same_path_after: Path | None
+    same_path_before: Path | None
+    only_before: tuple[str, ...]
+    only_after: tuple[str, ...]
