@@ -1,0 +1,1 @@
+"""Any result as text for people and as JSON for scripts."""

@@ -1,0 +1,273 @@
+"""Results as JSON for scripts: SI units, the unit in the key; keys are added, never renamed."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Mapping, Sequence
+from typing import TYPE_CHECKING, Final, TypeAlias
+
+if TYPE_CHECKING:
+    from evenstage.errors import Notice
+    from evenstage.sizing.results import Change, Sizing, StageHold
+    from evenstage.timing.results import (
+        Analysis,
+        Difference,
+        Path,
+        PathEnd,
+        SideBranch,
+        Stage,
+        WidthDifference,
+        Yardstick,
+    )
+
+JsonValue: TypeAlias = (
+    "None | bool | int | float | str | Sequence[JsonValue] | Mapping[str, JsonValue]"
+)
+Document: TypeAlias = dict[str, JsonValue]
+
+FORMAT: Final = 1
+
+
+def analysis_document(analysis: Analysis) -> Document:
+    """Return an analysis as the document scripts read.
+
+    Parameters
+    ----------
+    analysis : Analysis
+
+    Returns
+    -------
+    dict
+        Plain values only; ``kind`` is ``analysis``.
+    """
+    return _head("analysis") | _analysis(analysis)
+
+
+def sizing_document(sizing: Sizing) -> Document:
+    """Return a sizing as the document scripts read.
+
+    Parameters
+    ----------
+    sizing : Sizing
+
+    Returns
+    -------
+    dict
+        Plain values only; ``kind`` is ``sizing``. Of ``bound_s`` and ``bound_m`` the one that
+        ``bound_on`` does not name is null.
+    """
+    on_delay = sizing.bound_on == "delay"
+    return _head("sizing") | {
+        "goal": sizing.goal,
+        "bound_on": sizing.bound_on,
+        "bound_s": sizing.bound if on_delay else None,
+        "bound_m": None if on_delay else sizing.bound,
+        "gap": sizing.gap,
+        "rounding_loss": sizing.rounding_loss,
+        "least_delay_s": sizing.least_delay,
+        "total_width_m": {"before": sizing.total_width_before, "after": sizing.total_width_after},
+        "free_cards": sizing.free_cards,
+        "fixed_cards": sizing.fixed_cards,
+        "already_done": sizing.already_done,
+        "changes": [_change(change) for change in sizing.changes],
+        "holds": [_hold(hold) for hold in sizing.holds],
+        "notices": [_notice(notice) for notice in sizing.notices],
+        "before": _analysis(sizing.before),
+        "after": _analysis(sizing.after),
+    }
+
+
+def difference_document(difference: Difference) -> Document:
+    """Return a comparison of two netlists as the document scripts read.
+
+    Parameters
+    ----------
+    difference : Difference
+
+    Returns
+    -------
+    dict
+        Plain values only; ``kind`` is ``difference``.
+    """
+    return _head("difference") | {
+        "widths": [_width(width) for width in difference.widths],
+        "unchanged": difference.unchanged,
+        "same_path_before": _optional_path(difference.same_path_before),
+        "same_path_after": _optional_path(difference.same_path_after),
+        "only_before": list(difference.only_before),
+        "only_after": list(difference.only_after),
+        "before": _analysis(difference.before),
+        "after": _analysis(difference.after),
+    }
+
+
+def to_json(document: Mapping[str, JsonValue]) -> str:
+    """Return a document as JSON text in pure ASCII, with a final newline.
+
+    Bytes of a name that are not UTF-8 stand as escaped lone surrogates, which Python reads back as
+    they were.
+
+    Parameters
+    ----------
+    document : mapping
+
+    Returns
+    -------
+    str
+        The same text for the same document on any machine.
+
+    Raises
+    ------
+    ValueError
+        If a number is not finite; no result may hold such a number.
+    """
+    return json.dumps(document, indent=2, allow_nan=False) + "\n"
+
+
+def _head(kind: str) -> Document:
+    return {"program": "evenstage", "format": FORMAT, "kind": kind}
+
+
+def _analysis(analysis: Analysis) -> Document:
+    counts = analysis.counts
+    return {
+        "source": analysis.source,
+        "top": analysis.top,
+        "process": _yardstick(analysis.yardstick),
+        "counts": {
+            "devices": counts.devices,
+            "nets": counts.nets,
+            "gates": counts.gates,
+            "stages": counts.stages,
+        },
+        "total_width_m": analysis.total_width,
+        "switched_cap_f": analysis.switched_cap,
+        "worst_transition_s": analysis.worst_transition,
+        "input_caps": [{"net": net, "cap_f": cap} for net, cap in analysis.input_caps],
+        "notices": [_notice(notice) for notice in analysis.notices],
+        "paths": [_path(path) for path in analysis.paths],
+        "ends": [_end(end) for end in analysis.ends],
+    }
+
+
+def _yardstick(yardstick: Yardstick) -> Document:
+    return {
+        "name": yardstick.process,
+        "tau_s": yardstick.tau,
+        "p_inv": yardstick.p_inv,
+        "fo4_s": yardstick.fo4,
+        "input_cap_f": yardstick.input_cap,
+        "charge_rise": yardstick.charge_rise,
+        "charge_fall": yardstick.charge_fall,
+        "transition_rise_s": yardstick.transition_rise,
+        "transition_fall_s": yardstick.transition_fall,
+    }
+
+
+def _optional_path(path: Path | None) -> Document | None:
+    return None if path is None else _path(path)
+
+
+def _path(path: Path) -> Document:
+    return {
+        "from": path.start,
+        "from_edge": path.start_edge,
+        "from_arrival_s": path.start_arrival,
+        "to": path.end,
+        "edge": path.edge,
+        "corner": path.corner,
+        "delay_s": path.delay,
+        "charged_delay_s": path.charged_delay,
+        "required_s": path.required,
+        "logical_effort": path.logical_effort,
+        "branching_effort": path.branching_effort,
+        "electrical_effort": path.electrical_effort,
+        "path_effort": path.path_effort,
+        "parasitic_delay": path.parasitic_delay,
+        "best_stage_effort": path.best_stage_effort,
+        "best_stage_count": path.best_stage_count,
+        "least_delay_s": path.least_delay,
+        "stages": [_stage(stage) for stage in path.stages],
+    }
+
+
+def _stage(stage: Stage) -> Document:
+    return {
+        "instance": stage.instance,
+        "subcircuit": stage.subcircuit,
+        "function": stage.function,
+        "input": stage.input,
+        "output": stage.output,
+        "edge": stage.edge,
+        "arrival_s": stage.arrival,
+        "delay_s": stage.delay,
+        "charged_delay_s": stage.charged_delay,
+        "transition_s": stage.transition,
+        "logical_effort": stage.logical_effort,
+        "electrical_effort": stage.electrical_effort,
+        "branching_effort": stage.branching_effort,
+        "stage_effort": stage.stage_effort,
+        "parasitic_delay": stage.parasitic_delay,
+        "input_cap_f": stage.input_cap,
+        "load_cap_f": stage.load_cap,
+        "on_path_cap_f": stage.on_path_cap,
+        "self_cap_f": stage.self_cap,
+        "width_m": stage.width,
+        "side_branches": [_side_branch(branch) for branch in stage.side_branches],
+    }
+
+
+def _side_branch(branch: SideBranch) -> Document:
+    return {"instance": branch.instance, "pin": branch.pin, "cap_f": branch.cap}
+
+
+def _end(end: PathEnd) -> Document:
+    return {
+        "net": end.net,
+        "edge": end.edge,
+        "delay_s": end.delay,
+        "charged_delay_s": end.charged_delay,
+        "required_s": end.required,
+        "why": end.why,
+    }
+
+
+def _notice(notice: Notice) -> Document:
+    return {
+        "code": notice.code,
+        "message": notice.message,
+        "place": notice.place,
+        "names": list(notice.names),
+    }
+
+
+def _change(change: Change) -> Document:
+    return {
+        "card": change.card,
+        "file": change.file,
+        "line": change.line,
+        "instance": change.instance,
+        "occurrences": change.occurrences,
+        "parameter": change.parameter,
+        "old_m": change.old,
+        "new_m": change.new,
+        "factor": change.factor,
+        "alone_s": change.alone,
+        "why": change.why,
+    }
+
+
+def _hold(hold: StageHold) -> Document:
+    return {"instance": hold.instance, "hold": hold.hold}
+
+
+def _width(width: WidthDifference) -> Document:
+    both = width.before is not None and width.after is not None
+    return {
+        "instance": width.instance,
+        "card": width.card,
+        "model": width.model,
+        "before_m": width.before,
+        "after_m": width.after,
+        "factor": width.after / width.before if both else None,
+    }
