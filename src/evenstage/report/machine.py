@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, Final, TypeAlias
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
+
     from evenstage.errors import Notice
     from evenstage.sizing.results import Change, Sizing, StageHold
     from evenstage.timing.results import (
@@ -21,7 +22,7 @@ if TYPE_CHECKING:
     )
 
 JsonValue: TypeAlias = (
-    "None | bool | int | float | str | Sequence[JsonValue] | Mapping[str, JsonValue]"
+    "bool | int | float | str | Sequence[JsonValue] | Mapping[str, JsonValue] | None"
 )
 Document: TypeAlias = dict[str, JsonValue]
 
@@ -262,12 +263,11 @@ def _hold(hold: StageHold) -> Document:
 
 
 def _width(width: WidthDifference) -> Document:
-    both = width.before is not None and width.after is not None
     return {
         "instance": width.instance,
         "card": width.card,
         "model": width.model,
         "before_m": width.before,
         "after_m": width.after,
-        "factor": width.after / width.before if both else None,
+        "factor": width.after / width.before if width.before and width.after else None,
     }
