@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
-from random import Random
+from typing import TYPE_CHECKING
 
 import pytest
 from hypothesis import given, settings
@@ -11,6 +11,9 @@ from hypothesis import strategies as st
 
 from evenstage.netlist.edits import Edit, apply_edits
 from evenstage.source import SourceText, Span
+
+if TYPE_CHECKING:
+    from random import Random
 
 quick = settings(max_examples=60, deadline=None)
 
