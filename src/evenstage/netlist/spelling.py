@@ -19,7 +19,7 @@ _NUMBER: Final = re.compile(
         (?P<after>[^\W\d_]*[\s'"})]*)""",
     re.VERBOSE,
 )
-_EXACT: Final = 1e-10
+_EXACT: Final = 1e-13
 _EXACT_DIGITS: Final = 10
 _ROUGH_DIGITS: Final = 7
 
@@ -36,7 +36,7 @@ def is_number(text: str) -> bool:
 
 
 def shortest(value: float) -> Decimal:
-    """Return the decimal with the fewest digits that is a value to 1e-10, or has 7 digits.
+    """Return the decimal with the fewest digits that is a value but for noise, or 7 digits.
 
     A width that was rounded to a grid loses the noise of binary arithmetic; one that was not is
     cut to what matters.
