@@ -1,0 +1,140 @@
+"""The README is true: its commands run, and show what it says they show.
+
+A fenced block of kind ``console`` holds a command after ``$`` and all that it prints; the blocks
+run in their order, in one folder that begins with a copy of ``sample_netlists``. A block of kind
+``pycon`` is a session of the Python prompt. When an output is meant to change, write it anew with
+
+    python tests/test_readme.py
+"""
+
+from __future__ import annotations
+
+import doctest
+import os
+import re
+import shlex
+import shutil
+import subprocess
+import sys
+import tempfile
+import tomllib
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Final
+
+import pytest
+
+ROOT: Final = Path(__file__).parents[1]
+README: Final = ROOT / "README.md"
+PROMPT: Final = re.compile(r"\$ (?P<command>(?:.*\\\n)*.*)\n")
+FENCED: Final = re.compile(r"^```(?P<kind>\w*)\n(?P<text>.*?)^```$", re.MULTILINE | re.DOTALL)
+
+
+@dataclass(frozen=True, slots=True)
+class Block:
+    """A fenced block: its kind and its text, without the fences."""
+
+    kind: str
+    text: str
+
+
+def blocks(kind: str = "") -> list[Block]:
+    """Return the README's fenced blocks, all or those of one kind."""
+    found = [Block(m["kind"], m["text"]) for m in FENCED.finditer(README.read_text("utf-8"))]
+    return [block for block in found if not kind or block.kind == kind]
+
+
+def shown(command: str, folder: Path) -> str:
+    """Return what a command prints at a terminal of 100 columns, messages included."""
+    program, *arguments = shlex.split(command.replace("\\\n", " "))
+    assert Path(program).name == "evenstage"
+    done = subprocess.run(
+        [sys.executable, "-m", "evenstage", *arguments],
+        cwd=folder,
+        env=os.environ | {"COLUMNS": "100"},
+        stdout=subprocess.PIPE,
+        stderr=subprocess.STDOUT,
+        check=False,
+        timeout=120,
+    )
+    assert done.returncode in {0, 1}, done.stdout.decode()
+    return done.stdout.decode()
+
+
+def rerun(folder: Path) -> list[Block]:
+    """Run all console blocks in a folder and return them with what they print now."""
+    shutil.copytree(ROOT / "sample_netlists", folder / "sample_netlists")
+    return [_again(block, folder) for block in blocks("console")]
+
+
+def _again(block: Block, folder: Path) -> Block:
+    prompt = PROMPT.match(block.text)
+    assert prompt is not None, f"no command after $ in:\n{block.text}"
+    return Block("console", prompt[0] + shown(prompt["command"], folder))
+
+
+@pytest.fixture(scope="module")
+def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    return tmp_path_factory.mktemp("readme")
+
+
+@pytest.fixture(scope="module")
+def today(folder: Path) -> list[Block]:
+    return rerun(folder)
+
+
+class TestCommands:
+    @pytest.mark.parametrize("block", blocks()[:2])
+    def test_first_two_stand_on_their_own(self, block: Block) -> None:
+        assert block.text.startswith("python3 -m venv .venv &&\n")
+
+    def test_first_ends_with_the_main_job(self) -> None:
+        last = blocks()[0].text.split("&&\n")[-1]
+        assert "stage" in shown(last, ROOT)
+
+    def test_second_runs_every_test(self) -> None:
+        assert blocks()[1].text.endswith("&&\n.venv/bin/pytest --quiet\n")
+
+
+class TestOutputs:
+    @pytest.mark.parametrize("index", range(len(blocks("console"))))
+    def test_are_what_the_program_prints(self, today: list[Block], index: int) -> None:
+        assert today[index].text == blocks("console")[index].text
+
+    def test_python_sessions_are_true(
+        self, folder: Path, today: list[Block], monkeypatch: pytest.MonkeyPatch
+    ) -> None:
+        assert today
+        monkeypatch.chdir(folder)
+        runner = doctest.DocTestRunner()
+        text = "\n".join(block.text for block in blocks("pycon"))
+        session = doctest.DocTestParser().get_doctest(text, {}, "README", str(README), 0)
+        assert session.examples
+        assert runner.run(session).failed == 0
+
+
+class TestFiles:
+    @pytest.mark.parametrize("document", ["README.md", "DEVELOPERS.md"])
+    def test_those_mentioned_exist(self, document: str) -> None:
+        named = r"(?<![\w./])(?:src|tests|grammar|sample_netlists|\.ci)/[\w./-]*[\w/]"
+        mentioned = re.findall(named, (ROOT / document).read_text("utf-8"))
+        assert [path for path in mentioned if not (ROOT / path).exists()] == []
+
+    @pytest.mark.parametrize("block", blocks("toml"))
+    def test_settings_are_toml(self, block: Block) -> None:
+        assert tomllib.loads(block.text)
+
+
+def rewrite() -> None:
+    """Write the README anew with what its commands print now."""
+    with tempfile.TemporaryDirectory() as folder:
+        fresh = iter(rerun(Path(folder)))
+    text = FENCED.sub(
+        lambda m: f"```console\n{next(fresh).text}```" if m["kind"] == "console" else m[0],
+        README.read_text("utf-8"),
+    )
+    README.write_text(text, "utf-8")
+
+
+if __name__ == "__main__":
+    rewrite()
