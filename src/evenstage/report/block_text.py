@@ -1,0 +1,111 @@
+"""What a report says of the whole block: path ends, sizes, notices, and how far to trust it."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Final
+
+from evenstage.report.scale import Scale
+from evenstage.report.table import Column, first_that_fits
+from evenstage.report.words import counted, labelled, listed, punctuality
+from evenstage.units import engineering
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Sequence
+
+    from evenstage.errors import Notice
+    from evenstage.report.paper import Paper
+    from evenstage.timing.results import Analysis, PathEnd
+
+_ENDS_SHOWN: Final = 10
+_INPUTS_SHOWN: Final = 8
+_MESSAGES_SHOWN: Final = 3
+
+CAUTION: Final = (
+    "An estimate from resistances and capacitances, not sign-off: simulate at all corners with the "
+    "foundry's models. Electromigration, noise, hold and reliability limits are not checked. "
+    "Follow your organisation's review and local rules, above all where a failure of the circuit "
+    "can hurt someone."
+)
+
+
+def end_lines(paper: Paper, ends: Sequence[PathEnd]) -> list[str]:
+    """Return the path ends, slowest first."""
+    shown = ends if len(ends) == _ENDS_SHOWN + 1 else ends[:_ENDS_SHOWN]
+    if not shown:
+        return []
+    scale = Scale.of((end.delay for end in ends), "s")
+    rows = [[end.net, end.edge, scale.text(end.delay), _end_remark(end)] for end in shown]
+    columns = [
+        Column("", kind="name"),
+        Column(""),
+        Column("", align="right"),
+        Column("", kind="name"),
+    ]
+    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
+    lines = [table.line(*row) for row in rows]
+    if len(shown) < len(ends):
+        last = scale.text(ends[-1].delay)
+        lines.append(f"  and {len(ends) - len(shown)} more, the last at {last}")
+    return lines
+
+
+def _end_remark(end: PathEnd) -> str:
+    """Return when the end is required and what it is, where there is something to say."""
+    remarks = []
+    if end.required is not None:
+        late = punctuality(end.delay, end.required)
+        remarks.append(f"{late} (required at {engineering(end.required, 's')})")
+    if end.why != "output":
+        remarks.append(f"enters {end.why}")
+    return ", ".join(remarks)
+
+
+def block_lines(paper: Paper, analysis: Analysis) -> list[str]:
+    """Return the block's size, its inputs and the process it was measured with."""
+    counts, yardstick = analysis.counts, analysis.yardstick
+    size = (
+        f"{counted(counts.devices, 'transistor')} in {counted(counts.gates, 'gate')}, "
+        f"{counted(counts.nets, 'net')}; total width {engineering(analysis.total_width, 'm')}, "
+        f"switched capacitance {engineering(analysis.switched_cap, 'F')}, "
+        f"slowest transition {engineering(analysis.worst_transition, 's')}"
+    )
+    process = (
+        f"{yardstick.process}: tau {engineering(yardstick.tau, 's')}, "
+        f"FO4 {engineering(yardstick.fo4, 's')}, p_inv {yardstick.p_inv:.3g}"
+    )
+    lines = labelled(paper, "size", size)
+    if analysis.input_caps:
+        lines += labelled(paper, "inputs", _inputs(analysis))
+    return [*lines, *labelled(paper, "process", process)]
+
+
+def _inputs(analysis: Analysis) -> str:
+    fattest = sorted(analysis.input_caps, key=lambda pair: -pair[1])
+    scale = Scale.of((cap for _, cap in fattest), "F", digits=3)
+    return listed([f"{net} {scale.text(cap)}" for net, cap in fattest], _INPUTS_SHOWN)
+
+
+def notice_lines(paper: Paper, notices: Iterable[Notice]) -> list[str]:
+    """Return notices grouped by what they are about, with their number."""
+    groups: dict[str, list[Notice]] = {}
+    for notice in dict.fromkeys(notices):
+        groups.setdefault(notice.code, []).append(notice)
+    lines = []
+    for code, group in groups.items():
+        lines += paper.paragraph(_group_title(code, group), indent=2)
+        for notice in group[:_MESSAGES_SHOWN]:
+            lines += paper.paragraph(str(notice), indent=4, hanging=6)
+        if len(group) > _MESSAGES_SHOWN:
+            lines.append(f"    and {len(group) - _MESSAGES_SHOWN} more")
+    return lines
+
+
+def _group_title(code: str, group: Sequence[Notice]) -> str:
+    concerned = sum(len(notice.names) for notice in group)
+    title = f"{code}, {counted(len(group), 'time')}"
+    return f"{title} ({counted(concerned, 'name')})" if concerned > len(group) else title
+
+
+def caution_lines(paper: Paper) -> list[str]:
+    """Return the paragraph every report ends with."""
+    return ["", *paper.paragraph(CAUTION)]

@@ -1,0 +1,57 @@
+"""Small phrases that several reports share."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Final
+
+from evenstage.units import engineering
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from evenstage.report.paper import Paper
+    from evenstage.timing.results import Edge, Path
+
+RISING: Final[dict[Edge, str]] = {"rise": "rising", "fall": "falling"}
+
+
+def counted(number: int, one: str, many: str = "") -> str:
+    """Return a number with its noun: ``1 stage``, ``6 stages``, ``no stages``."""
+    if number == 1:
+        return f"1 {one}"
+    return f"{number or 'no'} {many or one + 's'}"
+
+
+def route(path: Path) -> str:
+    """Return where a path leads, as in ``a3 falling to wl[63] rising``."""
+    start = f"{path.start} {RISING[path.start_edge]}"
+    return f"{start} to {path.end} {RISING[path.edge]}"
+
+
+def duration(path: Path) -> float:
+    """Return the time from the switching of a path's input to the arrival at its end, s."""
+    return path.delay - path.start_arrival
+
+
+def punctuality(delay: float, required: float) -> str:
+    """Return how late or early an arrival is, as in ``62 ps late``."""
+    if delay == required:
+        return "just in time"
+    word = "late" if delay > required else "early"
+    return f"{engineering(abs(delay - required), 's')} {word}"
+
+
+def listed(names: Sequence[str], most: int) -> str:
+    """Return the first names and the number of the others."""
+    shown = ", ".join(names[:most])
+    return shown if len(names) <= most else f"{shown} and {len(names) - most} more"
+
+
+def section(title: str, lines: Sequence[str]) -> list[str]:
+    """Return a blank line, a title and the lines under it; nothing if there are none."""
+    return ["", title, *lines] if lines else []
+
+
+def labelled(paper: Paper, label: str, text: str) -> list[str]:
+    """Return a paragraph with a label in its margin."""
+    return paper.paragraph(f"{label:<10}{text}", indent=2, hanging=12)
