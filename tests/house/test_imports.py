@@ -17,7 +17,7 @@ SOURCE: Final = Path(__file__).parents[2] / "src"
 
 #: Top to bottom; rooms of one line do not know each other. ``__init__`` is the package's own file.
 ORDER: Final = (
-    ("errors", "units", "source", "pattern", "settings", "brief"),
+    ("errors", "units", "source", "pattern", "toml_places", "schema", "settings", "brief"),
     ("process",),
     ("netlist",),
     ("circuit",),
