@@ -17,10 +17,10 @@ def resized(sample: Path, folder: Path, seed: int) -> tuple[bytes, bytes]:
     """Return the document and the netlist that a resizing writes under one seed of the hashes."""
     output = folder / f"seed{seed}" / "resized.sp"
     output.parent.mkdir()
-    settings = ["--process", sample / "process.toml", "--brief", sample / "brief.toml"]
+    files = [sample / "netlist.sp", "--process", sample / "process.toml", "--output", output.name]
+    arguments = ["resize", *files, "--brief", sample / "brief.toml", "--json", "-"]
     done = subprocess.run(
-        [sys.executable, "-m", "evenstage", "resize", sample / "netlist.sp"]
-        + [*settings, "--output", output.name, "--json", "-"],
+        [sys.executable, "-m", "evenstage", *map(str, arguments)],
         cwd=output.parent,
         env=os.environ | {"PYTHONHASHSEED": str(seed)},
         capture_output=True,
