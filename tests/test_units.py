@@ -3,14 +3,17 @@
 from __future__ import annotations
 
 import math
-from decimal import Decimal
 from fractions import Fraction
+from typing import TYPE_CHECKING
 
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from evenstage.units import engineering, parse_number, suffixed
+
+if TYPE_CHECKING:
+    from decimal import Decimal
 
 #: A SPICE3-family user manual, chapter "Circuit Description" (scale factors and its examples).
 MANUAL = [

@@ -3,9 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Literal
+from typing import TYPE_CHECKING, Final, Literal
+
+from evenstage.schema import Entry, Integer, Names, Number, Text
+from evenstage.settings import Settings, Table, Tables, read_settings
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+    from pathlib import Path
+
     from evenstage.pattern import Pattern
     from evenstage.source import SourceText
 
@@ -118,3 +124,113 @@ class Brief:
     aim_width: float | None = None
     aim_spend: Literal["width", "energy"] = "width"
     source: SourceText | None = None
+
+
+# Upper bounds only catch numbers written in the wrong unit: 50 where 50 fF is meant.
+_TIME: Final = Number(unit="s", above=0, most=1e-3)
+_CAPACITANCE_MOST: Final = 1e-6
+_WIDTH: Final = Number(unit="m", above=0, most=1e-2)
+
+#: The keys of a brief.
+BRIEF_KEYS: Final[Mapping[str, Entry]] = {
+    "top": Text(),
+    "supplies": Table(keys={"high": Names(), "low": Names()}),
+    "input": Tables(
+        keys={
+            "nets": Names(required=True),
+            "arrival": Number(unit="s", least=-1e-3, most=1e-3, default=0.0),
+            "transition": _TIME,
+            "drive": Number(unit="ohm", least=0, default=0.0),
+            "capacitance_max": Number(unit="F", above=0, most=_CAPACITANCE_MOST, word="as drawn"),
+        }
+    ),
+    "output": Tables(
+        keys={
+            "nets": Names(required=True),
+            "load": Number(unit="F", least=0, most=_CAPACITANCE_MOST),
+            "required": _TIME,
+        }
+    ),
+    "ignore": Tables(keys={"from": Names(), "through": Names(), "to": Names()}),
+    "fixed": Names(),
+    "leaves": Names(),
+    "same_size": Tables(keys={"cards": Names(required=True)}),
+    "limit": Tables(keys={"cards": Names(required=True), "width_min": _WIDTH, "width_max": _WIDTH}),
+    "transition_max": _TIME,
+    "copies_per_leaf": Integer(least=0, default=4),
+    "aim": Table(
+        keys={
+            "delay": _TIME,
+            "width": Number(above=0),
+            "spend": Text(choices=("width", "energy"), default="width"),
+        }
+    ),
+}
+
+
+def read_brief(path: str | Path) -> Brief:
+    """Read a brief.
+
+    Parameters
+    ----------
+    path : str or Path
+        A TOML file with the keys of ``BRIEF_KEYS``.
+
+    Raises
+    ------
+    SettingsError
+        If the file cannot be read or something in it is wrong.
+    """
+    settings = read_settings(path, BRIEF_KEYS)
+    supplies, aim = settings.table("supplies"), settings.table("aim")
+    return Brief(
+        top=settings.optional_text("top"),
+        supplies_high=supplies.names("high"),
+        supplies_low=supplies.names("low"),
+        inputs=tuple(map(_input, settings.tables("input"))),
+        outputs=tuple(map(_output, settings.tables("output"))),
+        ignores=tuple(map(_ignore, settings.tables("ignore"))),
+        limits=tuple(map(_limit, settings.tables("limit"))),
+        fixed=settings.names("fixed"),
+        leaves=settings.names("leaves"),
+        same_size=tuple(group.names("cards") for group in settings.tables("same_size")),
+        transition_max=settings.optional_number("transition_max"),
+        copies_per_leaf=settings.integer("copies_per_leaf"),
+        aim_delay=aim.optional_number("delay"),
+        aim_width=aim.optional_number("width"),
+        aim_spend="energy" if aim.text("spend") == "energy" else "width",
+        source=settings.where.places.source,
+    )
+
+
+def _input(table: Settings) -> InputBrief:
+    return InputBrief(
+        nets=table.names("nets"),
+        arrival=table.number("arrival"),
+        transition=table.optional_number("transition"),
+        drive=table.number("drive"),
+        capacitance_max=table.optional_number("capacitance_max"),
+    )
+
+
+def _output(table: Settings) -> OutputBrief:
+    return OutputBrief(
+        nets=table.names("nets"),
+        load=table.optional_number("load"),
+        required=table.optional_number("required"),
+    )
+
+
+def _ignore(table: Settings) -> IgnoreBrief:
+    start, through, end = (table.names(key) for key in ("from", "through", "to"))
+    if not (start or through or end):
+        raise table.header_error("[[ignore]] needs from, through or to", "empty-table")
+    return IgnoreBrief(start=start, through=through, end=end)
+
+
+def _limit(table: Settings) -> LimitBrief:
+    least, most = table.optional_number("width_min"), table.optional_number("width_max")
+    if least is None and most is None:
+        raise table.header_error("[[limit]] needs width_min or width_max", "empty-table")
+    table.check_order("width_min", "width_max")
+    return LimitBrief(cards=table.names("cards"), width_min=least, width_max=most)

@@ -35,6 +35,12 @@ _NUMBER: Final = re.compile(
     re.IGNORECASE | re.ASCII,
 )
 
+#: A number and what stands behind it, perhaps after a blank.
+_QUANTITY: Final = re.compile(
+    r"(?P<mantissa>[+-]?(?:\d+\.?\d*|\.\d+))(?:e(?P<exponent>[+-]?\d{1,6}))?\s?(?P<unit>.*)",
+    re.IGNORECASE | re.ASCII,
+)
+
 _PREFIXES: Final = {
     12: "T",
     9: "G",
@@ -94,6 +100,71 @@ def _times_mil(mantissa: str) -> str:
     """Return the decimal digits of a mantissa in mil, in metres, without rounding."""
     exact = Context(prec=len(mantissa) + 3)
     return format(exact.multiply(Decimal(mantissa), _MIL), "f")
+
+
+def parse_quantity(text: str, unit: str = "") -> float:
+    """Return the value of a number that may carry a scale factor and its unit, in SI units.
+
+    Unlike SPICE this reads no foreign unit and guesses nothing: ``10F`` (farad or femto?) and
+    ``2M`` (mega or milli?) are refused.
+
+    Parameters
+    ----------
+    text : str
+        Such as ``12f``, ``12 fF``, ``1.4 fF/um``, ``2.4 kohm*um``; micro may be spelt u or µ.
+    unit : str
+        What the value is measured in, such as ``F``, ``F/m``, ``ohm*m``; empty: a plain number.
+
+    Raises
+    ------
+    ValueError
+        If the text is no number, its unit is another one, or its suffix could mean two things.
+
+    Examples
+    --------
+    >>> parse_quantity("12 fF", "F"), parse_quantity("2.4 kohm*um", "ohm*m")
+    (1.2e-14, 0.0024)
+    """
+    match = _QUANTITY.fullmatch(text.strip())
+    if match is None:
+        raise ValueError(f"{text!r} is not a number")
+    mantissa, exponent, written = match.group("mantissa", "exponent", "unit")
+    written = written.replace("\N{MICRO SIGN}", "u").replace("μ", "u")
+    if written == "M" or (written == unit and unit in {"F", "m"}):
+        other = "mega" if written == "M" else "the unit itself"
+        raise ValueError(f"{text!r} is ambiguous: {written} could be a scale factor or {other}")
+    power = _unit_power(written, unit)
+    if power is None:
+        expected = f"a number in {unit}" if unit else "a plain number"
+        raise ValueError(f"{text!r} is not {expected}")
+    return parse_number(f"{mantissa}e{int(exponent or 0) + power}")
+
+
+def _unit_power(written: str, unit: str) -> int | None:
+    """Return the power of ten that a written unit stands for; None: it is not this unit."""
+    if written.lower() in _POWERS:
+        return _POWERS[written.lower()]
+    if not written:
+        return 0
+    shown, meant = _split_unit(written), _split_unit(unit)
+    powers = [_prefix_power(*pair) for pair in zip(shown[::2], meant[::2], strict=False)]
+    if shown[1::2] != meant[1::2] or None in powers:
+        return None
+    signs = [1, *(-1 if operator == "/" else 1 for operator in meant[1::2])]
+    return sum(sign * power for sign, power in zip(signs, powers, strict=True) if power)
+
+
+def _prefix_power(symbol: str, base: str) -> int | None:
+    """Return the power of the prefix in front of a unit symbol; case matters only for M."""
+    prefix = symbol[: len(symbol) - len(base)]
+    if symbol[len(prefix) :].lower() != base.lower() or prefix == "M":
+        return None
+    return _POWERS.get(prefix.lower()) if prefix else 0
+
+
+def _split_unit(unit: str) -> list[str]:
+    """Split ``ohm*m`` into ``["ohm", "*", "m"]``."""
+    return [part.strip() for part in re.split("([*/])", unit)]
 
 
 def engineering(value: float, unit: str = "", digits: int = 3) -> str:

@@ -1,0 +1,56 @@
+"""Bytes, lines and columns."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from evenstage.source import SourceText, Span
+
+
+def text(data: bytes) -> SourceText:
+    return SourceText(Path("inv.sp"), data, "inv.sp")
+
+
+class TestLines:
+    @pytest.mark.parametrize(
+        ("data", "offset", "line", "column"),
+        [
+            (b"", 0, 1, 1),
+            (b"ab\ncd", 4, 2, 2),
+            (b"ab\r\ncd", 4, 2, 1),
+            (b"ab\rcd", 3, 2, 1),
+            (b"ab\n", 3, 2, 1),
+            ("µm x".encode(), 4, 1, 4),
+            (b"\xff\xfe x", 3, 1, 4),
+            (b"a\x0bb\x85c\xc2\x85", 5, 1, 6),
+        ],
+    )
+    def test_line_and_column(self, data: bytes, offset: int, line: int, column: int) -> None:
+        assert text(data).line_number(offset) == line
+        assert text(data).column(offset) == column
+
+    def test_a_line_has_no_line_end(self) -> None:
+        source = text(b"one\r\ntwo\rthree\n")
+        assert [source.line(number) for number in (1, 2, 3, 4)] == ["one", "two", "three", ""]
+
+    @settings(max_examples=100, deadline=None)
+    @given(st.binary(max_size=60))
+    def test_lines_tile_the_file(self, data: bytes) -> None:
+        source = text(data)
+        lines = [source.line(number) for number in range(1, source.line_number(len(data)) + 1)]
+        kept = b"".join(line.encode("utf-8", "surrogateescape") for line in lines)
+        assert kept == data.replace(b"\r", b"").replace(b"\n", b"")
+
+
+class TestSpan:
+    def test_place_and_text(self) -> None:
+        span = Span(text(b"* inv\nm1 d g s b n w=1u\n"), 21, 23)
+        assert (span.place, span.text) == ("inv.sp:2:16", "1u")
+
+    def test_odd_bytes_survive(self) -> None:
+        span = Span(text(b"a\xffb"), 0, 3)
+        assert span.text.encode("utf-8", "surrogateescape") == b"a\xffb"
