@@ -1,0 +1,1 @@
+"""Devices to gates, stages and arcs, and a graph of them."""

@@ -1,0 +1,301 @@
+"""The recognised block: gates, pins, arcs, loads, and a graph of them."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field, replace
+from functools import cached_property
+from typing import TYPE_CHECKING
+
+import networkx as nx
+import numpy as np
+
+from evenstage.circuit.electrical import Electrical, electrical
+from evenstage.circuit.function import inverted_text
+from evenstage.circuit.tables import AlikeGates, Arcs, Pins, arcs_of, pins_of
+
+if TYPE_CHECKING:
+    from evenstage.circuit.supplies import Supplies
+    from evenstage.errors import Notice
+    from evenstage.netlist.devices import Devices, FloatArray, IntArray
+    from evenstage.process.process import Process
+
+NET = "net"
+"""Edge attribute of `Circuit.graph`: id of the net that joins two gates."""
+OUTPUT = "output"
+"""Node attribute of `Circuit.graph`: id of the net a gate drives."""
+
+
+@dataclass(frozen=True, slots=True)
+class NotUnderstood:
+    """A channel-connected group that is not a static complementary gate.
+
+    Parameters
+    ----------
+    devices : IntArray
+        Its device ids.
+    reason : str
+        Why not.
+    """
+
+    devices: IntArray
+    reason: str
+
+
+@dataclass(frozen=True, kw_only=True)
+class Circuit:
+    """Gates of a block in a process.
+
+    Gates are numbered by their first device. Arrays are read-only; `resized` returns a new circuit.
+
+    Parameters
+    ----------
+    devices : Devices
+    process : Process
+        With its unit inverter filled in.
+    supplies : Supplies
+    alike : tuple of AlikeGates
+        Gates by form; every gate in exactly one.
+    not_understood : tuple of NotUnderstood
+    across : IntArray
+        Devices between supplies (decoupling, dummies): they only load their gate net.
+    outside_cap : FloatArray, F, shape (nets,)
+        What the brief, or the default of four unit inverters, hangs on outputs.
+    gate_output : IntArray, shape (gates,)
+        Net ids.
+    gate_instance : IntArray, shape (gates,)
+        Innermost instance that holds all transistors of the gate.
+    gate_is_leaf : BoolArray, shape (gates,)
+        Whether that instance holds nothing else.
+    ends : dict of int to str
+        Nets where paths end, and why.
+    notices : tuple of Notice
+    """
+
+    devices: Devices
+    process: Process
+    supplies: Supplies
+    alike: tuple[AlikeGates, ...] = field(repr=False)
+    not_understood: tuple[NotUnderstood, ...]
+    across: IntArray = field(repr=False)
+    outside_cap: FloatArray = field(repr=False)
+    gate_output: IntArray = field(repr=False)
+    gate_instance: IntArray = field(repr=False)
+    gate_is_leaf: np.ndarray[tuple[int], np.dtype[np.bool_]] = field(repr=False)
+    ends: dict[int, str]
+    notices: tuple[Notice, ...]
+
+    def __len__(self) -> int:
+        return len(self.gate_output)
+
+    @cached_property
+    def electrical(self) -> Electrical:
+        """Resistance and capacitance of every device."""
+        return electrical(self.devices, self.process)
+
+    @cached_property
+    def wire_cap(self) -> FloatArray:
+        """Capacitor cards on each net, F, shape (nets,); coupling counts fully at both ends."""
+        return wire_capacitance(self.devices)
+
+    @cached_property
+    def other_cap(self) -> FloatArray:
+        """Gates of transistors that belong to no recognised gate, F, shape (nets,)."""
+        strange = np.concatenate([self.across, *(some.devices for some in self.not_understood)])
+        nets = len(self.devices.net_names)
+        strange = strange.astype(np.int64)
+        cap = self.electrical.gate.today[strange]
+        return np.bincount(self.devices.gate[strange], cap, nets)
+
+    @cached_property
+    def fixed_cap(self) -> FloatArray:
+        """Everything outside recognised gates that loads a net, F, shape (nets,)."""
+        return self.wire_cap + self.other_cap + self.outside_cap
+
+    @cached_property
+    def pins(self) -> Pins:
+        """Input pins of all gates."""
+        return pins_of(self.alike, self.electrical)
+
+    @cached_property
+    def pins_by_net(self) -> IntArray:
+        """Order of the pins by net, then by gate."""
+        return np.lexsort((self.pins.gate, self.pins.net)).astype(np.int32)
+
+    @cached_property
+    def arcs(self) -> Arcs:
+        """Arcs of all gates."""
+        return arcs_of(self.alike, self.electrical, self.wire_cap)
+
+    @cached_property
+    def net_cap(self) -> FloatArray:
+        """Load outside the driving gate on each net, F, shape (nets,): pins, wires, outside."""
+        pins = np.bincount(self.pins.net, self.pins.cap.today, len(self.devices.net_names))
+        return pins + self.fixed_cap
+
+    @cached_property
+    def gate_form(self) -> IntArray:
+        """Index into ``alike`` of each gate."""
+        return self._place[0]
+
+    @cached_property
+    def gate_row(self) -> IntArray:
+        """Row of each gate in the arrays of its ``AlikeGates``."""
+        return self._place[1]
+
+    @cached_property
+    def _place(self) -> tuple[IntArray, IntArray]:
+        form, row = np.empty(len(self), np.int32), np.empty(len(self), np.int32)
+        for index, some in enumerate(self.alike):
+            form[some.gates] = index
+            row[some.gates] = np.arange(len(some.gates))
+        return form, row
+
+    @cached_property
+    def gate_of_device(self) -> IntArray:
+        """Gate of each device, -1 for none, shape (devices,)."""
+        found = np.full(len(self.devices), -1, np.int32)
+        for some in self.alike:
+            found[some.devices] = some.gates[:, None]
+        return found
+
+    def gate_devices(self, gate: int) -> IntArray:
+        """Return the device ids of a gate, in drawing order."""
+        return self.alike[self.gate_form[gate]].devices[self.gate_row[gate]]
+
+    def gate_name(self, gate: int) -> str:
+        """Return the path of a leaf's instance, or of the first transistor card of another gate."""
+        if self.gate_is_leaf[gate]:
+            return self.devices.instance_path(int(self.gate_instance[gate]))
+        first = int(self.gate_devices(gate)[0])
+        return self.devices.card_path(
+            int(self.devices.card[first]), int(self.devices.instance[first])
+        )
+
+    def gate_subcircuit(self, gate: int) -> str:
+        """Return the name of the subcircuit that holds a gate."""
+        instance = self.gate_instance[gate]
+        return self.devices.subcircuits[self.devices.instance_subcircuit[instance]]
+
+    def gate_function(self, gate: int) -> str:
+        """Return the Boolean function of a gate in net names local to its instance."""
+        form = self.alike[self.gate_form[gate]].form
+        return inverted_text(form.pull_down, lambda local: self.local_name(gate, local))
+
+    def local_name(self, gate: int, local: int) -> str:
+        """Return a local net of a gate by the name it has where the gate is drawn.
+
+        Inside a leaf that is the port's name; elsewhere the net's name without the path of the
+        instance that holds the gate.
+        """
+        net = int(self.alike[self.gate_form[gate]].nets[self.gate_row[gate], local])
+        instance = int(self.gate_instance[gate])
+        return self._port_name(instance, net) or self._without_path(net, instance)
+
+    def _port_name(self, instance: int, net: int) -> str:
+        """Return the port of an instance a net is tied to; empty where there is none."""
+        if instance == 0:
+            return ""
+        return self._ports_of(instance).get(net, "")
+
+    def _ports_of(self, instance: int) -> dict[int, str]:
+        known = self._port_names
+        if instance not in known:
+            devices = self.devices
+            name = devices.subcircuits[devices.instance_subcircuit[instance]]
+            definition = devices.netlist.subcircuits.get(name.lower())
+            card = devices.netlist.card(int(devices.instance_card[instance]))
+            outer = int(devices.instance_parent[instance])
+            ports = definition.ports if definition else ()
+            known[instance] = {
+                self._net_in(outer, node): port
+                for node, port in reversed(list(zip(card.nodes, ports, strict=False)))
+            }
+        return known[instance]
+
+    def _net_in(self, instance: int, name: str) -> int:
+        """Return the net id of a name used in an instance's subcircuit."""
+        if instance > 0:
+            for net, port in self._ports_of(instance).items():
+                if port.lower() == name.lower():
+                    return net
+        path = self.devices.instance_path(instance)
+        for full in ((f"{path}.{name}",) if path else ()) + (name,):
+            found = self._net_ids.get(full.lower())
+            if found is not None:
+                return found
+        return -1
+
+    @cached_property
+    def _port_names(self) -> dict[int, dict[int, str]]:
+        return {}
+
+    @cached_property
+    def _net_ids(self) -> dict[str, int]:
+        return {name.lower(): net for net, name in enumerate(self.devices.net_names)}
+
+    def _without_path(self, net: int, instance: int) -> str:
+        name, path = self.devices.net_names[net], self.devices.instance_path(instance)
+        return name.removeprefix(f"{path}.") if path else name
+
+    def net_id(self, name: str) -> int | None:
+        """Return the id of a net by its full name, in any case."""
+        return self._net_ids.get(name.lower())
+
+    @cached_property
+    def total_width(self) -> float:
+        """Sum of all transistor widths, copies counted, m."""
+        return float(self.devices.width @ self.devices.multiplier)
+
+    @cached_property
+    def switched_cap(self) -> float:
+        """Gate, diffusion, wire and outside capacitance of the block, F."""
+        values = self.electrical
+        parts = (values.gate.today, values.drain.today, values.source.today)
+        wires = self.wire_cap[~self.supplies.is_supply].sum()
+        return float(sum(part.sum() for part in parts) + wires + self.outside_cap.sum())
+
+    def resized(self, factor: FloatArray) -> Circuit:
+        """Return the circuit with every device's width multiplied by a factor, shape (devices,)."""
+        old = self.devices
+        extent = old.drain_area / old.width, old.source_area / old.width
+        edges = [
+            np.where(edge > 2 * e, 2 * e + (edge - 2 * e) * factor, edge)
+            for edge, e in zip((old.drain_edge, old.source_edge), extent, strict=True)
+        ]
+        devices = replace(
+            old,
+            width=old.width * factor,
+            drain_area=old.drain_area * factor,
+            source_area=old.source_area * factor,
+            drain_edge=edges[0],
+            source_edge=edges[1],
+        )
+        return replace(self, devices=devices)
+
+    def graph(self) -> nx.DiGraph[int]:
+        """Return the graph of gates: an edge where one gate's output is another's input.
+
+        Nodes are gate ids with attribute ``OUTPUT``; edges carry ``NET``.
+        """
+        graph: nx.DiGraph[int] = nx.DiGraph()
+        graph.add_nodes_from((gate, {OUTPUT: int(net)}) for gate, net in enumerate(self.gate_output))
+        driver = self.driver_of_net
+        for gate, net in zip(self.pins.gate.tolist(), self.pins.net.tolist(), strict=True):
+            if driver[net] >= 0:
+                graph.add_edge(int(driver[net]), gate, **{NET: net})
+        return graph
+
+    @cached_property
+    def driver_of_net(self) -> IntArray:
+        """Gate that drives each net, -1 for none, shape (nets,)."""
+        driver = np.full(len(self.devices.net_names), -1, np.int32)
+        driver[self.gate_output] = np.arange(len(self))
+        return driver
+
+
+def wire_capacitance(devices: Devices) -> FloatArray:
+    """Return the sum of capacitor cards at each net, F, shape (nets,)."""
+    a, b = devices.capacitor_nets
+    value = np.where(a == b, 0.0, devices.capacitance)
+    nets = len(devices.net_names)
+    return np.bincount(a, value, nets) + np.bincount(b, value, nets)

@@ -1,0 +1,254 @@
+"""What a network is as a static gate: its output, its function and its arcs.
+
+An arc says how one edge of one input moves the output: along one path of closed switches from the
+output to a supply, with the other inputs at values that let this input decide. It carries the nodes
+whose charge must move with the output: those that closed switches tie to the output after the edge and
+that were not yet at the new supply before it, each with the part of the path its charge has to flow
+through. Of several such settings every one is kept that is not outdone, switch by switch and node by
+node, by another; which of them is slowest depends on the sizes.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import lru_cache
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.circuit.function import Expression, conduction
+from evenstage.circuit.network import HIGH, LOW, Network, Switch, merge
+
+if TYPE_CHECKING:
+    from evenstage.circuit.network import BoolArray
+
+INPUTS_MAX = 12
+"""Truth tables are kept for all input vectors at once; wider static gates are not drawn."""
+SWITCHES_MAX = 200
+"""Larger groups (bit lines, pass-transistor arrays) are no static gates."""
+
+Relation = tuple[int, int]
+"""Local net of an input and of the input that it is the complement of."""
+
+
+@dataclass(frozen=True, slots=True)
+class ArcForm:
+    """One way one input edge moves the output.
+
+    Parameters
+    ----------
+    input : int
+        Local net.
+    rising : bool
+        Whether the *output* rises.
+    path : tuple of int
+        Switches from the output to the supply.
+    moved : tuple of (int, int)
+        Node and the number of path switches, counted from the supply, its charge flows through.
+    """
+
+    input: int
+    rising: bool
+    path: tuple[int, ...]
+    moved: tuple[tuple[int, int], ...]
+
+
+@dataclass(frozen=True)
+class GateForm:
+    """A network recognised as one static complementary gate.
+
+    Parameters
+    ----------
+    drawn : tuple of Switch
+        The devices as drawn.
+    network : Network
+        The devices merged.
+    output : int
+        Its output node (and local net).
+    pull_down : Expression
+        When the output is 0.
+    arcs : tuple of ArcForm
+    """
+
+    drawn: tuple[Switch, ...]
+    network: Network
+    output: int
+    pull_down: Expression
+    arcs: tuple[ArcForm, ...]
+
+
+@dataclass(frozen=True)
+class Unrecognised:
+    """Why a network is not a static complementary gate."""
+
+    reason: str
+
+
+@dataclass(frozen=True)
+class _Pulls:
+    """Truth tables of both pulls over all vectors, and the vectors that can occur."""
+
+    up: BoolArray
+    down: BoolArray
+    possible: BoolArray
+
+
+@lru_cache(maxsize=4096)
+def recognise_network(
+    devices: tuple[Switch, ...], relations: tuple[Relation, ...] = ()
+) -> GateForm | Unrecognised:
+    """Recognise one network as a static complementary gate, or say why it is none.
+
+    Parameters
+    ----------
+    devices : tuple of Switch
+        The drawn network; see `evenstage.circuit.network.merge`.
+    relations : tuple of Relation
+        Inputs known to be complements of other inputs.
+    """
+    network = merge(devices)
+    if len(network.switches) > SWITCHES_MAX or len(network.inputs) > INPUTS_MAX:
+        return Unrecognised(
+            f"{len(network.switches)} switches with {len(network.inputs)} inputs are too many for "
+            f"one static gate (at most {SWITCHES_MAX} and {INPUTS_MAX})"
+        )
+    if not network.driven_nodes:
+        return Unrecognised("no node is pulled both up and down")
+    if len(network.driven_nodes) > 1:
+        return Unrecognised(
+            f"{len(network.driven_nodes)} nodes are pulled both ways: pass transistors or a shared "
+            "network"
+        )
+    (output,) = network.driven_nodes
+    if output in network.inputs:
+        return Unrecognised("its output is one of its own inputs")
+    pulls = _pulls(network, output, relations)
+    if isinstance(pulls, Unrecognised):
+        return pulls
+    arcs = tuple(
+        arc
+        for row in range(len(network.inputs))
+        for rising in (True, False)
+        for arc in _arcs(network, output, pulls, row, relations, rising=rising)
+    )
+    return GateForm(devices, network, output, conduction(network, output, LOW, "n"), arcs)
+
+
+def _pulls(
+    network: Network, output: int, relations: tuple[Relation, ...]
+) -> _Pulls | Unrecognised:
+    up, down = network.conducts(output, HIGH, "p"), network.conducts(output, LOW, "n")
+    possible = _possible(network, relations)
+    anyhow_up, anyhow_down = network.conducts(output, HIGH), network.conducts(output, LOW)
+    if ((anyhow_up != up) | (anyhow_down != down))[possible].any():
+        return Unrecognised("an n switch pulls up or a p switch pulls down")
+    if not network.inputs:
+        return Unrecognised("no input moves its output")
+    if (up & down)[possible].any():
+        return Unrecognised("pull-up and pull-down conduct together: not complementary")
+    if not (up | down)[possible].all():
+        return Unrecognised("neither pull conducts for some inputs: it can float")
+    return _Pulls(up, down, possible)
+
+
+def _possible(network: Network, relations: tuple[Relation, ...]) -> BoolArray:
+    """Tell which vectors can occur when some inputs are complements of others."""
+    possible = np.ones(network.vectors.shape[1], bool)
+    rows = {net: row for row, net in enumerate(network.inputs)}
+    for net, complement in relations:
+        if net in rows and complement in rows:
+            possible &= network.vectors[rows[net]] != network.vectors[rows[complement]]
+    return possible
+
+
+def _arcs(
+    network: Network,
+    output: int,
+    pulls: _Pulls,
+    row: int,
+    relations: tuple[Relation, ...],
+    *,
+    rising: bool,
+) -> list[ArcForm]:
+    """Return the arcs of one input towards one output edge that no other outdoes."""
+    supply, pull, against = (HIGH, pulls.up, pulls.down) if rising else (LOW, pulls.down, pulls.up)
+    others = tuple(r for r in relations if network.inputs[row] not in r)
+    columns = np.arange(network.vectors.shape[1])
+    after = columns[network.vectors[row] != rising]
+    before = after ^ (1 << row)
+    decides = ~pull[before] & pull[after] & ~against[after] & _possible(network, others)[after]
+    single: dict[ArcForm, None] = {}
+    shared: dict[ArcForm, None] = {}
+    for old, new in zip(before[decides], after[decides], strict=True):
+        closed = frozenset(np.flatnonzero(network.closed[:, new]).tolist())
+        was_closed = frozenset(np.flatnonzero(network.closed[:, old]).tolist())
+        ways = list(network.paths(output, supply, closed))
+        path = min(ways, key=len)
+        moved = _moved(network, path, closed, _tied(network, supply, was_closed))
+        form = ArcForm(network.inputs[row], rising, path, moved)
+        (single if len(ways) == 1 else shared)[form] = None
+    return _not_outdone(list(single) or list(shared))
+
+
+def _tied(network: Network, start: int, closed: frozenset[int]) -> set[int]:
+    """Return the nodes that closed switches tie to a node, supplies as barriers."""
+    tied, waiting = {start}, [start]
+    while waiting:
+        node = waiting.pop()
+        for index in network.at_node.get(node, ()):
+            far = network.switches[index].other(node)
+            if index in closed and far not in tied and far >= 0:
+                tied.add(far)
+                waiting.append(far)
+    return tied
+
+
+def _moved(
+    network: Network, path: tuple[int, ...], closed: frozenset[int], settled: set[int]
+) -> tuple[tuple[int, int], ...]:
+    """Return the nodes whose charge moves, each with how many path switches it flows through.
+
+    A node beside the path is charged through the path node nearest to the output that it is tied to,
+    which is the slowest reading where a mesh offers several.
+    """
+    node = _start(network, path)
+    on_path = [(node, len(path))]
+    for left, index in zip(range(len(path) - 1, 0, -1), path[:-1], strict=True):
+        node = network.switches[index].other(node)
+        on_path.append((node, left))
+    found = dict(on_path)
+    for root, depth in on_path:
+        waiting = [root]
+        while waiting:
+            here = waiting.pop()
+            for index in network.at_node[here]:
+                far = network.switches[index].other(here)
+                if index in closed and far >= 0 and far not in found:
+                    found[far] = depth
+                    waiting.append(far)
+    return tuple(sorted((node, depth) for node, depth in found.items() if node not in settled))
+
+
+def _start(network: Network, path: tuple[int, ...]) -> int:
+    """Return the node a path begins at: the end of its first switch that its second lacks."""
+    first = network.switches[path[0]]
+    if len(path) == 1:
+        return first.a if first.a >= 0 else first.b
+    second = network.switches[path[1]]
+    return first.a if first.b in (second.a, second.b) else first.b
+
+
+def _not_outdone(forms: list[ArcForm]) -> list[ArcForm]:
+    kept = []
+    for index, form in enumerate(forms):
+        mine = dict(form.moved)
+        outdone = any(
+            other.path == form.path
+            and all(dict(other.moved).get(node, 0) >= depth for node, depth in mine.items())
+            and (other.moved != form.moved or position < index)
+            for position, other in enumerate(forms)
+            if position != index
+        )
+        if not outdone:
+            kept.append(form)
+    return kept

@@ -1,0 +1,142 @@
+"""Channel-connected groups, and which of them are drawn alike.
+
+Transistors whose drains and sources meet, other than in a supply, form a group. Written down device by
+device with its nets numbered as they appear, a group becomes a row of small integers; equal rows mean
+equal networks. All of it is array work: nothing here loops over devices or nets.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+
+from evenstage.circuit.network import HIGH, LOW, Switch
+
+if TYPE_CHECKING:
+    from evenstage.circuit.supplies import Supplies
+    from evenstage.netlist.devices import Devices, IntArray
+
+
+@dataclass(frozen=True)
+class AlikeGroups:
+    """All groups with one network.
+
+    Parameters
+    ----------
+    network : tuple of Switch
+        The drawn network all of them have.
+    devices : IntArray, shape (groups, devices of a group)
+        Device ids, in the order of ``network``.
+    nets : IntArray, shape (groups, local nets)
+        Net ids, by local net.
+    """
+
+    network: tuple[Switch, ...]
+    devices: IntArray
+    nets: IntArray
+
+
+@dataclass(frozen=True)
+class Grouping:
+    """Every device of a block in its group.
+
+    Parameters
+    ----------
+    alike : tuple of AlikeGroups
+        In the order of their first device.
+    across : IntArray
+        Devices with both channel ends on supplies; they belong to no group.
+    """
+
+    alike: tuple[AlikeGroups, ...]
+    across: IntArray
+
+
+def group(devices: Devices, supplies: Supplies) -> Grouping:
+    """Group the devices of a block by channel connection."""
+    drain_is_supply = supplies.is_supply[devices.drain]
+    source_is_supply = supplies.is_supply[devices.source]
+    across = np.flatnonzero(drain_is_supply & source_is_supply).astype(np.int32)
+    label = _labels(devices, supplies)
+    members = np.flatnonzero(~(drain_is_supply & source_is_supply))
+    order = members[np.argsort(label[members], kind="stable")].astype(np.int32)
+    ordered_label = label[order]
+    starts = np.flatnonzero(np.diff(ordered_label, prepend=-1))
+    sizes = np.diff(starts, append=len(order))
+    numbers = _local_nets(devices, supplies, order, ordered_label)
+    alike: list[AlikeGroups] = []
+    for size in np.unique(sizes):
+        rows = starts[sizes == size][:, None] + np.arange(size)
+        alike.extend(_alike(devices, order[rows], numbers[rows]))
+    alike.sort(key=lambda groups: int(groups.devices[0, 0]))
+    return Grouping(tuple(alike), across)
+
+
+def _labels(devices: Devices, supplies: Supplies) -> IntArray:
+    """Return each device's group, numbered by first device."""
+    nets = len(devices.net_names)
+    inner = ~(supplies.is_supply[devices.drain] | supplies.is_supply[devices.source])
+    ends = (devices.drain[inner], devices.source[inner])
+    links = coo_array((np.ones(len(ends[0]), np.int8), ends), shape=(nets, nets))
+    _, component = connected_components(links, directed=False)
+    anchor = np.where(supplies.is_supply[devices.drain], devices.source, devices.drain)
+    own = component[anchor]
+    first = np.full(int(component.max(initial=-1)) + 1, len(devices), np.int64)
+    np.minimum.at(first, own, np.arange(len(devices)))
+    result: IntArray = first[own].astype(np.int32)
+    return result
+
+
+def _local_nets(
+    devices: Devices, supplies: Supplies, order: IntArray, label: IntArray
+) -> IntArray:
+    """Return drain, gate and source of each ordered device as local nets, shape (devices, 3)."""
+    nets = np.stack([devices.drain[order], devices.gate[order], devices.source[order]], axis=1)
+    flat = nets.ravel().astype(np.int64)
+    pair = np.repeat(label.astype(np.int64), 3) * len(devices.net_names) + flat
+    signal = ~supplies.is_supply[flat]
+    local = np.where(supplies.is_high[flat], HIGH, LOW).astype(np.int32)
+    unique, first, inverse = np.unique(pair[signal], return_index=True, return_inverse=True)
+    # Number the nets of each group by first appearance: sort (group, first place), count from the
+    # group's first.
+    by_place = np.lexsort((first, unique // len(devices.net_names)))
+    owner = (unique // len(devices.net_names))[by_place]
+    begins = np.flatnonzero(np.diff(owner, prepend=-1))
+    rank = np.empty(len(unique), np.int32)
+    counts = np.diff(begins, append=len(owner))
+    rank[by_place] = np.arange(len(owner)) - np.repeat(begins, counts)
+    local[signal] = rank[inverse]
+    return local.reshape(-1, 3)
+
+
+def _alike(devices: Devices, members: IntArray, numbers: IntArray) -> list[AlikeGroups]:
+    """Split groups of one size, shape (groups, size), into those with equal networks."""
+    groups, size = members.shape
+    is_p = np.array([model.polarity == "p" for model in devices.models])
+    polarity = is_p[devices.model[members]].astype(np.int32)
+    rows = np.concatenate([polarity[:, :, None], numbers], axis=2).reshape(groups, 4 * size)
+    kinds, inverse = np.unique(rows, axis=0, return_inverse=True)
+    result = []
+    for index, kind in enumerate(kinds):
+        which = np.flatnonzero(inverse == index)
+        table = kind.reshape(size, 4)
+        network = tuple(
+            Switch("p" if p else "n", d, g, s) for p, d, g, s in table.tolist()
+        )
+        result.append(AlikeGroups(network, members[which], _net_ids(devices, members[which], table)))
+    return result
+
+
+def _net_ids(devices: Devices, members: IntArray, table: IntArray) -> IntArray:
+    """Return the net ids of local nets, shape (groups, local nets)."""
+    columns = np.stack([devices.drain, devices.gate, devices.source])
+    places = table[:, 1:]
+    nets = np.empty((len(members), int(places.max(initial=-1)) + 1), np.int32)
+    for local in range(nets.shape[1]):
+        device, terminal = np.argwhere(places == local)[0]
+        nets[:, local] = columns[terminal][members[:, device]]
+    return nets

@@ -1,0 +1,271 @@
+"""Devices to a circuit: which groups are static complementary gates, and what ends at them."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.circuit.circuit import Circuit, NotUnderstood
+from evenstage.circuit.function import Literal
+from evenstage.circuit.gate import GateForm, recognise_network
+from evenstage.circuit.groups import AlikeGroups, group
+from evenstage.circuit.ownership import leaves, owners
+from evenstage.circuit.supplies import find_supplies
+from evenstage.circuit.tables import AlikeGates
+from evenstage.errors import CircuitError, Notice
+from evenstage.pattern import select
+from evenstage.process.unit import unit_inverter
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from evenstage.brief import Brief
+    from evenstage.netlist.devices import Devices, FloatArray, IntArray
+    from evenstage.process.process import Process
+
+_DEFAULT_FANOUT = 4
+
+
+@dataclass(frozen=True)
+class _Sorted:
+    """Groups with a form, and groups without one."""
+
+    gates: tuple[tuple[GateForm, AlikeGroups], ...]
+    strange: tuple[tuple[str, AlikeGroups], ...]
+
+
+def recognise(devices: Devices, process: Process, brief: Brief | None = None) -> Circuit:
+    """Recognise the static complementary gates of a block.
+
+    Groups of one structure are recognised once, however often they occur. What is not a static gate is
+    kept as `NotUnderstood`, loads what drives it, and is named in a notice.
+
+    Parameters
+    ----------
+    devices : Devices
+    process : Process
+    brief : Brief, optional
+        Its supplies and outputs are used here.
+
+    Raises
+    ------
+    CircuitError
+        ``no-supply``, ``no-transistors`` or ``no-gate``.
+    SettingsError
+        Where a pattern of the brief fits no net.
+    """
+    if not len(devices):
+        raise CircuitError(
+            f"'{devices.top or 'the top level'}' holds no transistors", code="no-transistors"
+        )
+    supplies = find_supplies(devices, brief)
+    grouping = group(devices, supplies)
+    found = _tapped(devices, _related(_recognised(grouping.alike), len(devices.net_names)))
+    alike, strange = _numbered(found), _not_understood(found)
+    if not alike:
+        reasons = sorted({some.reason for some in strange})
+        raise CircuitError(
+            "no static complementary gate found: " + "; ".join(reasons), code="no-gate"
+        )
+    output = np.empty(sum(len(some.gates) for some in alike), np.int32)
+    for some in alike:
+        output[some.gates] = some.nets[:, some.form.output]
+    process = _with_unit(process, devices)
+    owner = owners(devices, alike)
+    circuit = Circuit(
+        devices=devices,
+        process=process,
+        supplies=supplies,
+        alike=alike,
+        not_understood=strange,
+        across=grouping.across,
+        outside_cap=np.zeros(len(devices.net_names)),
+        gate_output=output,
+        gate_instance=owner,
+        gate_is_leaf=leaves(devices, alike, owner),
+        ends={},
+        notices=(*devices.notices, *process.notices, *_strange_notices(devices, strange)),
+    )
+    return _with_ends(circuit, brief)
+
+
+def _recognised(alike: Sequence[AlikeGroups]) -> _Sorted:
+    gates, strange = [], []
+    for some in alike:
+        form = recognise_network(some.network)
+        if isinstance(form, GateForm):
+            gates.append((form, some))
+        else:
+            strange.append((form.reason, some))
+    return _Sorted(tuple(gates), tuple(strange))
+
+
+def _related(found: _Sorted, nets: int) -> _Sorted:
+    """Try again the networks that become static once complementary inputs are known as such."""
+    complement = np.full(nets, -1, np.int32)
+    for form, some in found.gates:
+        if isinstance(form.pull_down, Literal):
+            complement[some.nets[:, form.output]] = some.nets[:, form.pull_down.net]
+    gates, strange = list(found.gates), []
+    for reason, some in found.strange:
+        inputs = list(dict.fromkeys(s.gate for s in some.network if s.gate >= 0))
+        here = some.nets[:, inputs]
+        pairs = complement[here][:, :, None] == here[:, None, :]
+        kinds, inverse = np.unique(pairs.reshape(len(here), -1), axis=0, return_inverse=True)
+        for index, kind in enumerate(kinds):
+            part = _rows(some, np.flatnonzero(inverse == index))
+            known = np.argwhere(kind.reshape(len(inputs), len(inputs))).tolist()
+            relations = tuple((inputs[a], inputs[b]) for a, b in known)
+            form = recognise_network(some.network, relations) if relations else None
+            if isinstance(form, GateForm):
+                gates.append((form, part))
+            else:
+                strange.append((reason, part))
+    return _Sorted(tuple(gates), tuple(strange))
+
+
+def _tapped(devices: Devices, found: _Sorted) -> _Sorted:
+    """Set aside gates whose inner nodes are used outside: they are more than a static gate."""
+    used = np.zeros(len(devices.net_names), bool)
+    used[devices.gate] = True
+    used[list(devices.ports)] = True
+    gates, strange = [], list(found.strange)
+    for form, some in found.gates:
+        inner = _inner_nets(form)
+        tapped = used[some.nets[:, inner]].any(axis=1)
+        if tapped.any():
+            reason = "an inner node of its networks is used as a signal"
+            strange.append((reason, _rows(some, np.flatnonzero(tapped))))
+        if not tapped.all():
+            gates.append((form, _rows(some, np.flatnonzero(~tapped))))
+    return _Sorted(tuple(gates), tuple(strange))
+
+
+def _inner_nets(form: GateForm) -> list[int]:
+    """Return the local nets that are channel ends of the gate but not its output."""
+    ends = {net for switch in form.drawn for net in (switch.a, switch.b) if net >= 0}
+    return sorted(ends - {form.output})
+
+
+def _rows(some: AlikeGroups, rows: IntArray | np.ndarray[tuple[int], np.dtype[np.intp]]) -> AlikeGroups:
+    return AlikeGroups(some.network, some.devices[rows], some.nets[rows])
+
+
+def _numbered(found: _Sorted) -> tuple[AlikeGates, ...]:
+    """Number all gates by their first device."""
+    if not found.gates:
+        return ()
+    first = np.concatenate([some.devices.min(axis=1) for _, some in found.gates])
+    number = np.empty(len(first), np.int32)
+    number[np.argsort(first, kind="stable")] = np.arange(len(first))
+    result, at = [], 0
+    for form, some in found.gates:
+        mine = number[at : at + len(some.devices)]
+        order = np.argsort(mine)
+        result.append(AlikeGates(form, mine[order], some.devices[order], some.nets[order]))
+        at += len(mine)
+    return tuple(result)
+
+
+def _not_understood(found: _Sorted) -> tuple[NotUnderstood, ...]:
+    every = [
+        NotUnderstood(members, reason) for reason, some in found.strange for members in some.devices
+    ]
+    return tuple(sorted(every, key=lambda one: int(one.devices[0])))
+
+
+def _strange_notices(devices: Devices, strange: Sequence[NotUnderstood]) -> list[Notice]:
+    """Make one notice per reason, naming all devices."""
+    by_reason: dict[str, list[NotUnderstood]] = {}
+    for one in strange:
+        by_reason.setdefault(one.reason, []).append(one)
+    notices = []
+    for reason, some in by_reason.items():
+        names = [
+            devices.card_path(int(devices.card[d]), int(devices.instance[d]))
+            for one in some
+            for d in one.devices
+        ]
+        card = devices.netlist.card(int(devices.card[some[0].devices[0]]))
+        groups = "one group" if len(some) == 1 else f"{len(some)} groups"
+        notices.append(
+            Notice(
+                "not-understood",
+                f"{groups} of transistors not understood, {reason}; timed as loads only",
+                card.span.place,
+                tuple(names),
+            )
+        )
+    return notices
+
+
+def _with_unit(process: Process, devices: Devices) -> Process:
+    """Fill in the unit inverter: the smallest n width where the process does not say."""
+    is_n = np.array([model.polarity == "n" for model in devices.models], bool)
+    widths = devices.width[is_n[devices.model]]
+    smallest = float(widths.min()) if len(widths) else float(devices.width.min())
+    width_n, width_p = unit_inverter(process, smallest)
+    return replace(process, unit_width=width_n, unit_ratio=width_p / width_n)
+
+
+def _with_ends(circuit: Circuit, brief: Brief | None) -> Circuit:
+    """Find where paths end and what hangs there."""
+    devices = circuit.devices
+    names = [devices.net_names[net] for net in circuit.gate_output]
+    outside = np.full(len(devices.net_names), np.nan)
+    ends: dict[int, str] = {}
+    for output in brief.outputs if brief else ():
+        chosen = circuit.gate_output[list(select(output.nets, names, "driven net"))]
+        ends.update(dict.fromkeys(chosen.tolist(), "output"))
+        if output.load is not None:
+            outside[chosen] = output.load
+    ends = _natural_ends(circuit) | ends
+    bare = [
+        net
+        for net, why in ends.items()
+        if why == "output" and np.isnan(outside[net]) and circuit.net_cap[net] == 0
+    ]
+    outside[bare] = _DEFAULT_FANOUT * _unit_input(circuit.process)
+    notice = Notice(
+        "default-load",
+        f"{len(bare)} outputs that nothing loads get {_DEFAULT_FANOUT} unit inverters each",
+        names=tuple(devices.net_names[net] for net in bare),
+    )
+    return replace(
+        circuit,
+        outside_cap=np.nan_to_num(outside),
+        ends=dict(sorted(ends.items())),
+        notices=(*circuit.notices, notice) if bare else circuit.notices,
+    )
+
+
+def _natural_ends(circuit: Circuit) -> dict[int, str]:
+    """Return driven nets that are ports, load nothing, or enter what was not understood."""
+    nets = len(circuit.devices.net_names)
+    loaded = np.zeros(nets, bool)
+    loaded[circuit.pins.net] = True
+    strange = circuit.other_cap > 0
+    is_port = np.zeros(nets, bool)
+    is_port[list(circuit.devices.ports)] = True
+    ends = {}
+    for net in circuit.gate_output.tolist():
+        if is_port[net] or not (loaded[net] or strange[net]):
+            ends[net] = "output"
+        elif strange[net]:
+            ends[net] = "enters what was not understood"
+    return ends
+
+
+def _unit_input(process: Process) -> FloatArray | float:
+    """Return the input capacitance of the unit inverter, F."""
+    n, p = process.first("n"), process.first("p")
+    width = process.unit_width or 0.0
+    return (
+        n.c_gate * width
+        + p.c_gate * width * (process.unit_ratio or 0.0)
+        + n.c_gate_fixed
+        + p.c_gate_fixed
+    )
+

@@ -1,0 +1,126 @@
+"""A circuit to its analysis: the slowest paths, all path ends, and what the block amounts to."""
+
+from __future__ import annotations
+
+from itertools import islice
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.errors import Notice
+from evenstage.timing.graph import timing_graph
+from evenstage.timing.results import Analysis, Counts, PathEnd
+from evenstage.timing.search import slowest_paths
+from evenstage.timing.stages import describe, edge_name
+from evenstage.timing.sweep import Timing, sweep
+from evenstage.timing.yardstick import yardstick
+
+if TYPE_CHECKING:
+    from evenstage.brief import Brief
+    from evenstage.circuit.circuit import Circuit
+
+
+def time(
+    circuit: Circuit,
+    brief: Brief | None = None,
+    *,
+    start: str | None = None,
+    end: str | None = None,
+) -> Timing:
+    """Time a circuit: arrivals along the paths that count; see `timing_graph` for the arguments.
+
+    Raises
+    ------
+    NoPathError
+        Where no path is left.
+    SettingsError
+        Where a pattern of the brief fits nothing.
+    """
+    unit = yardstick(circuit.process)
+    return sweep(circuit, timing_graph(circuit, unit, brief, start=start, end=end), unit)
+
+
+def analyse(
+    circuit: Circuit,
+    brief: Brief | None = None,
+    *,
+    start: str | None = None,
+    end: str | None = None,
+    count: int = 1,
+) -> Analysis:
+    """Find the slowest paths of a circuit; ``count`` of them, see `time` for the other arguments.
+
+    Raises
+    ------
+    NoPathError
+        Where no path is left.
+    SettingsError
+        Where a pattern of the brief fits nothing.
+    """
+    return report(time(circuit, brief, start=start, end=end), count)
+
+
+def report(timing: Timing, count: int = 1) -> Analysis:
+    """Put the results of a timing together; ``count`` slowest paths."""
+    circuit, graph = timing.circuit, timing.graph
+    devices = circuit.devices
+    paths = tuple(describe(timing, arcs) for arcs in islice(slowest_paths(timing), count))
+    start_nets = dict.fromkeys(graph.net[graph.start].tolist())
+    reached = np.unique(circuit.arcs.gate[graph.arc])
+    notices = [*circuit.notices, *graph.notices]
+    if len(reached) < len(circuit):
+        notices.append(_unreached(circuit, reached))
+    return Analysis(
+        source=devices.netlist.sources[0].label,
+        top=devices.top,
+        yardstick=timing.unit,
+        counts=Counts(
+            devices=len(devices),
+            nets=len(devices.net_names),
+            gates=len(circuit),
+            stages=len(reached),
+        ),
+        paths=paths,
+        ends=_ends(timing),
+        worst_transition=timing.worst_transition,
+        total_width=circuit.total_width,
+        switched_cap=circuit.switched_cap,
+        input_caps=tuple(
+            (devices.net_names[net], float(circuit.net_cap[net])) for net in start_nets
+        ),
+        notices=tuple(notices),
+    )
+
+
+def _ends(timing: Timing) -> tuple[PathEnd, ...]:
+    """Return every end with its later edge, the latest first; equal ones in the order of the nets."""
+    graph, circuit = timing.graph, timing.circuit
+    latest: dict[int, int] = {}
+    for index, net in enumerate(graph.net[graph.end].tolist()):
+        if net not in latest or timing.lateness[index] > timing.lateness[latest[net]]:
+            latest[net] = index
+    order = sorted(latest.values(), key=lambda index: (-timing.lateness[index], index))
+    return tuple(
+        PathEnd(
+            net=circuit.devices.net_names[graph.net[graph.end[index]]],
+            edge=edge_name(rising=bool(graph.rising[graph.end[index]])),
+            delay=float(timing.arrival[graph.end[index]]),
+            charged_delay=float(timing.charged_arrival[graph.end[index]]),
+            required=None
+            if np.isnan(graph.end_required[index])
+            else float(graph.end_required[index]),
+            why=circuit.ends.get(int(graph.net[graph.end[index]]), "asked for"),
+        )
+        for index in order
+    )
+
+
+def _unreached(circuit: Circuit, reached: np.ndarray[tuple[int], np.dtype[np.int32]]) -> Notice:
+    missing = np.setdiff1d(np.arange(len(circuit)), reached)
+    names = tuple(circuit.gate_name(int(gate)) for gate in missing)
+    return Notice(
+        "not-on-a-path",
+        f"{len(names)} gates lie on no path that counts (no input reaches them, or they reach no "
+        f"path end), the first is '{names[0]}'",
+        names=names,
+    )

@@ -1,0 +1,188 @@
+"""One path in logical-effort terms, stage by stage.
+
+For an arc with path resistance R, charge q of its edge and input capacitance C_in, in units of tau:
+``g = q R C_in / tau``, ``h = C_on / C_in``, ``b = C_total / C_on``, ``f = g h b`` and ``p = q own / tau``,
+with C_on the next input on the path and C_total all that hangs outside the gate, so that the charged
+delay is ``tau (f + p)`` exactly. Along a path ``F = G B H`` (Sutherland, Sproull and Harris, Logical
+Effort, 1999, chapters 1 and 3, from memory).
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.timing.results import Path, SideBranch, Stage
+from evenstage.timing.yardstick import best_stage_count, best_stage_effort
+
+if TYPE_CHECKING:
+    from evenstage.circuit.circuit import Circuit
+    from evenstage.timing.results import Edge
+    from evenstage.timing.search import ArcPath
+    from evenstage.timing.sweep import Timing
+
+
+@dataclass(frozen=True, slots=True)
+class _Load:
+    """What hangs on a net outside its driver: the part on the path and the rest, F."""
+
+    on_path: float
+    total: float
+    branches: tuple[SideBranch, ...]
+
+
+def edge_name(*, rising: bool) -> Edge:
+    """Return ``rise`` or ``fall``."""
+    return "rise" if rising else "fall"
+
+
+def describe(timing: Timing, arcs: ArcPath) -> Path:
+    """Describe a path of graph arcs."""
+    graph, unit = timing.graph, timing.unit
+    stages = tuple(
+        _stage(timing, arc, following)
+        for arc, following in zip(arcs, [*arcs[1:], None], strict=True)
+    )
+    first, last = int(graph.source[arcs[0]]), int(graph.target[arcs[-1]])
+    begin = float(timing.start_arrival[np.flatnonzero(graph.start == first)[0]])
+    logical = math.prod(stage.logical_effort for stage in stages)
+    branching = math.prod(stage.branching_effort for stage in stages)
+    electrical = math.prod(stage.electrical_effort for stage in stages)
+    effort = math.prod(stage.stage_effort for stage in stages)
+    parasitic = sum(stage.parasitic_delay for stage in stages)
+    count = len(stages)
+    required = graph.end_required[graph.end == last]
+    names = timing.circuit.devices.net_names
+    return Path(
+        start=names[graph.net[first]],
+        start_edge=edge_name(rising=bool(graph.rising[first])),
+        start_arrival=begin,
+        end=names[graph.net[last]],
+        edge=edge_name(rising=bool(graph.rising[last])),
+        corner=unit.process,
+        delay=begin + sum(stage.delay for stage in stages),
+        charged_delay=begin + sum(stage.charged_delay for stage in stages),
+        required=float(required[0]) if len(required) and not np.isnan(required[0]) else None,
+        logical_effort=logical,
+        branching_effort=branching,
+        electrical_effort=electrical,
+        path_effort=effort,
+        parasitic_delay=parasitic,
+        best_stage_effort=best_stage_effort(unit.p_inv),
+        best_stage_count=best_stage_count(effort, count, parasitic, unit.p_inv),
+        least_delay=unit.tau * (count * effort ** (1 / count) + parasitic),
+        stages=stages,
+    )
+
+
+def _stage(timing: Timing, graph_arc: int, following: int | None) -> Stage:
+    circuit, graph, unit = timing.circuit, timing.graph, timing.unit
+    arcs, arc = circuit.arcs, int(graph.arc[graph_arc])
+    gate, names = int(arcs.gate[arc]), circuit.devices.net_names
+    follower = None if following is None else int(arcs.gate[graph.arc[following]])
+    load = _load(circuit, int(arcs.output[arc]), follower)
+    rising = bool(arcs.rising[arc])
+    charge = unit.charge_rise if rising else unit.charge_fall
+    input_cap = _pin_cap(circuit, gate, int(arcs.input[arc]))
+    logical = charge * float(arcs.resistance.today[arc]) * input_cap / unit.tau
+    electrical, branching = load.on_path / input_cap, load.total / load.on_path
+    own = float(arcs.own_today[arc])
+    devices = circuit.gate_devices(gate)
+    target = int(graph.target[graph_arc])
+    return Stage(
+        instance=circuit.gate_name(gate),
+        subcircuit=circuit.gate_subcircuit(gate),
+        function=circuit.gate_function(gate),
+        input=names[arcs.input[arc]],
+        output=names[arcs.output[arc]],
+        edge=edge_name(rising=rising),
+        arrival=float(timing.arrival[target]),
+        delay=float(timing.delay[graph_arc]),
+        charged_delay=float(timing.charged[graph_arc]),
+        transition=float(timing.transition[target]),
+        logical_effort=logical,
+        electrical_effort=electrical,
+        branching_effort=branching,
+        stage_effort=logical * electrical * branching,
+        parasitic_delay=charge * own / unit.tau,
+        input_cap=input_cap,
+        load_cap=load.total,
+        on_path_cap=load.on_path,
+        self_cap=_self_cap(circuit, gate),
+        width=float(circuit.devices.width[devices] @ circuit.devices.multiplier[devices]),
+        side_branches=load.branches,
+    )
+
+
+def _pin_cap(circuit: Circuit, gate: int, net: int) -> float:
+    """Return the capacitance of a gate's pin on a net, F."""
+    pins = circuit.pins
+    begin, end = np.searchsorted(pins.gate, [gate, gate + 1])
+    which = begin + np.flatnonzero(pins.net[begin:end] == net)
+    return float(pins.cap.today[which].sum())
+
+
+def _self_cap(circuit: Circuit, gate: int) -> float:
+    """Return the diffusion capacitance on a gate's output, F."""
+    devices, net = circuit.gate_devices(gate), circuit.gate_output[gate]
+    values, block = circuit.electrical, circuit.devices
+    drain = values.drain.today[devices] * (block.drain[devices] == net)
+    source = values.source.today[devices] * (block.source[devices] == net)
+    return float((drain + source).sum())
+
+
+def _load(circuit: Circuit, net: int, follower: int | None) -> _Load:
+    """Return what loads a net: the follower's pin, or what ends the path, and the side branches.
+
+    At a path end the load outside is on the path. Where nothing is outside, the wire is, then all.
+    """
+    on_pins, fixed = _pin_loads(circuit, net), _fixed_loads(circuit, net)
+    total = sum(branch.cap for _, branch in on_pins) + sum(branch.cap for branch in fixed)
+    if follower is not None:
+        on_path = sum(branch.cap for gate, branch in on_pins if gate == follower)
+        branches = [branch for gate, branch in on_pins if gate != follower] + fixed
+    else:
+        outside = [branch for branch in fixed if branch.pin == "load"] or fixed
+        on_path = sum(branch.cap for branch in outside) or total
+        branches = [branch for _, branch in on_pins if outside]
+        branches += [branch for branch in fixed if branch not in outside]
+    branches.sort(key=lambda branch: (-branch.cap, branch.instance, branch.pin))
+    return _Load(on_path, total, tuple(branches))
+
+
+def _pin_loads(circuit: Circuit, net: int) -> list[tuple[int, SideBranch]]:
+    """Return the gate pins on a net, in the order of the gates."""
+    pins, order = circuit.pins, circuit.pins_by_net
+    begin, end = np.searchsorted(pins.net[order], [net, net + 1])
+    return [
+        (
+            gate := int(pins.gate[pin]),
+            SideBranch(
+                instance=circuit.gate_name(gate),
+                pin=circuit.local_name(gate, int(pins.local[pin])),
+                cap=float(pins.cap.today[pin]),
+            ),
+        )
+        for pin in order[begin:end].tolist()
+    ]
+
+
+def _fixed_loads(circuit: Circuit, net: int) -> list[SideBranch]:
+    """Return the capacitor cards, transistors outside gates, and outside load on a net."""
+    devices, found = circuit.devices, []
+    ends = devices.capacitor_nets
+    for index in np.flatnonzero((ends == net).any(axis=0) & (ends[0] != ends[1])).tolist():
+        card, instance = devices.capacitor_card[index], devices.capacitor_instance[index]
+        name = devices.card_path(int(card), int(instance))
+        found.append(SideBranch(instance=name, pin="wire", cap=float(devices.capacitance[index])))
+    strange = np.flatnonzero((circuit.gate_of_device < 0) & (devices.gate == net))
+    for device in strange.tolist():
+        name = devices.card_path(int(devices.card[device]), int(devices.instance[device]))
+        cap = float(circuit.electrical.gate.today[device])
+        found.append(SideBranch(instance=name, pin="gate", cap=cap))
+    if circuit.outside_cap[net] > 0:
+        found.append(SideBranch(instance="", pin="load", cap=float(circuit.outside_cap[net])))
+    return found
