@@ -113,6 +113,24 @@ class TestOutputs:
         assert runner.run(session).failed == 0
 
 
+def documented(command: str) -> set[str]:
+    """Return the options that the README's table gives a command."""
+    rows = re.findall(r"^\| (`--.*?) \| (.*?) \|", README.read_text("utf-8"), re.MULTILINE)
+    return {
+        option
+        for options, owners in rows
+        if owners == "all" or f"`{command}`" in owners
+        for option in re.findall(r"--[a-z-]+", options)
+    }
+
+
+class TestOptions:
+    @pytest.mark.parametrize("command", ["analyse", "resize", "diff"])
+    def test_are_those_of_the_program(self, command: str, tmp_path: Path) -> None:
+        offered = set(re.findall(r"--[a-z-]+", shown(f"evenstage {command} --help", tmp_path)))
+        assert documented(command) == offered - {"--help"}
+
+
 class TestFiles:
     @pytest.mark.parametrize("document", ["README.md", "DEVELOPERS.md"])
     def test_those_mentioned_exist(self, document: str) -> None:
