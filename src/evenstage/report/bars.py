@@ -55,28 +55,24 @@ class TimeAxis:
 
     def bar(self, start: float, end: float) -> str:
         """Return a bar between two times; too short for a cell, it is a thin mark."""
-        first, last = self._halves(start), self._halves(end)
-        if not self.paper.unicode:
-            first, last = 2 * round(first / 2), 2 * round(last / 2)
+        parts = 2 if self.paper.unicode else 1
+        first, last = self._place(start, parts), self._place(end, parts)
         if last <= first:
-            cell = min(first // 2, self.width - 1)
+            cell = min(first // parts, self.width - 1)
             return " " * cell + ("▏" if self.paper.unicode else "|")
-        return "".join(self._block(cell, first, last) for cell in range((last + 1) // 2))
+        if parts == 1:
+            return " " * first + "=" * (last - first)
+        filled = [first <= half < last for half in range(last + last % 2)]
+        return "".join(_BLOCKS[pair] for pair in zip(filled[::2], filled[1::2], strict=True))
 
-    def _block(self, cell: int, first: int, last: int) -> str:
-        left, right = first <= 2 * cell < last, first <= 2 * cell + 1 < last
-        if self.paper.unicode:
-            return _BLOCKS[left, right]
-        return "=" if left else " "
-
-    def _halves(self, time: float) -> int:
-        """Return the half cell nearest to a time."""
+    def _place(self, time: float, parts: int) -> int:
+        """Return where a time is, counted in so many parts of a cell."""
         span = self.end - self.start
         share = (time - self.start) / span if span > 0 else 0.0
-        return round(2 * self.width * min(max(share, 0.0), 1.0))
+        return round(parts * self.width * min(max(share, 0.0), 1.0))
 
     def _cell(self, time: float) -> int:
-        return min(self._halves(time) // 2, self.width - 1)
+        return min(self._place(time, 1), self.width - 1)
 
     def _step(self) -> float:
         """Return the tick distance: 1, 2 or 5 times a power of ten, labels well apart."""

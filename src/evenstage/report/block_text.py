@@ -106,6 +106,6 @@ def _group_title(code: str, group: Sequence[Notice]) -> str:
     return f"{title} ({counted(concerned, 'name')})" if concerned > len(group) else title
 
 
-def caution_lines(paper: Paper) -> list[str]:
-    """Return the paragraph every report ends with."""
-    return ["", *paper.paragraph(CAUTION)]
+def finished(paper: Paper, lines: Sequence[str]) -> str:
+    """Return lines and the caution every report ends with as one text."""
+    return "\n".join([*lines, "", *paper.paragraph(CAUTION)]) + "\n"

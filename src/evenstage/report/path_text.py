@@ -255,10 +255,11 @@ def _figure(value: float) -> str:
 
 def legend(paper: Paper, yardstick: Yardstick) -> list[str]:
     """Return what the columns mean."""
+    product = f"g{paper.times}h{paper.times}b" if paper.unicode else "g h b"
     text = (
-        f"{paper.edge('rise')} rising, {paper.edge('fall')} falling output; g logical, h electrical, "
-        f"b branching effort; f = g{paper.times}h{paper.times}b stage effort, high or low where "
-        f"{FAR:g} times off the best; p parasitic delay. tau {paper.times} (f + p) with tau "
+        f"{paper.edge('rise')} rising, {paper.edge('fall')} falling output; g logical, "
+        f"h electrical, b branching effort; f = {product} stage effort, high or low where {FAR:g} "
+        f"times off the best; p parasitic delay. tau {paper.times} (f + p) with tau "
         f"{engineering(yardstick.tau, 's')} is the charged delay, which counts a slow edge to the "
         "stage that makes it; delay is the time between half-supply points. + what else the stage "
         "drives, and its share of the load."

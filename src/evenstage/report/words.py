@@ -4,13 +4,14 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
+from evenstage.report.scale import percent
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from evenstage.report.paper import Paper
-    from evenstage.timing.results import Edge, Path
+    from evenstage.timing.results import Edge, Path, Yardstick
 
 RISING: Final[dict[Edge, str]] = {"rise": "rising", "fall": "falling"}
 
@@ -31,6 +32,35 @@ def route(path: Path) -> str:
 def duration(path: Path) -> float:
     """Return the time from the switching of a path's input to the arrival at its end, s."""
     return path.delay - path.start_arrival
+
+
+def takes(path: Path, yardstick: Yardstick) -> str:
+    """Return how long a path takes and through how many stages."""
+    time = duration(path)
+    corner = f" in corner {path.corner}" if path.corner else ""
+    return (
+        f"takes {engineering(time, 's')}, {time / yardstick.fo4:.1f} FO4, "
+        f"through {counted(len(path.stages), 'stage')}{corner}"
+    )
+
+
+def same_route(one: Path, other: Path) -> bool:
+    """Whether two paths lead through the same gates with the same edges."""
+    return _steps(one) == _steps(other)
+
+
+def _steps(path: Path) -> tuple[object, ...]:
+    stages = tuple((stage.instance, stage.output, stage.edge) for stage in path.stages)
+    return path.start, path.start_edge, path.end, path.edge, stages
+
+
+def moves(before: float, after: float) -> str:
+    """Return how a time moves, as in ``falls from 612 ps to 455 ps (-26 %)``."""
+    if before == after:
+        return f"stays at {engineering(before, 's')}"
+    verb = "falls" if after < before else "rises"
+    change = percent(before, after)
+    return f"{verb} from {engineering(before, 's')} to {engineering(after, 's')} ({change})"
 
 
 def punctuality(delay: float, required: float) -> str:

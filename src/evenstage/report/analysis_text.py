@@ -1,0 +1,78 @@
+"""An analysis as text: the slowest paths and the block around them."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from evenstage.report.block_text import block_lines, end_lines, finished, notice_lines
+from evenstage.report.paper import Paper
+from evenstage.report.path_text import effort_lines, legend, path_lines
+from evenstage.report.words import punctuality, route, section, takes
+from evenstage.units import engineering
+
+if TYPE_CHECKING:
+    from evenstage.timing.results import Analysis, Path
+
+
+def analysis_report(analysis: Analysis, *, width: int = 100, unicode: bool = False) -> str:
+    """Return an analysis as text: the slowest path stage by stage, then the others and the block.
+
+    Parameters
+    ----------
+    analysis : Analysis
+    width : int
+        Character cells per line, 80 to 160.
+    unicode : bool
+        Whether the output can show more than ASCII.
+
+    Returns
+    -------
+    str
+        Lines without trailing blanks, the last one ended too.
+    """
+    paper = Paper(width, unicode)
+    lines = [f"{analysis.source}, block {analysis.top}", ""]
+    lines += paper.paragraph(_answer(analysis))
+    for number, path in enumerate(analysis.paths, 1):
+        lines += _path_section(paper, analysis, number, path)
+    if analysis.paths:
+        lines += ["", *legend(paper, analysis.yardstick)]
+    lines += section("Path ends, slowest first", end_lines(paper, analysis.ends))
+    lines += section("The block", block_lines(paper, analysis))
+    lines += section("Notices", notice_lines(paper, analysis.notices))
+    return finished(paper, lines)
+
+
+def _answer(analysis: Analysis) -> str:
+    """Return the one thing to know first."""
+    if not analysis.paths:
+        return "There is no path to report."
+    slowest = analysis.paths[0]
+    return " ".join(
+        [
+            f"The slowest path, {route(slowest)}, {takes(slowest, analysis.yardstick)}.",
+            *_circumstances(slowest),
+        ]
+    )
+
+
+def _circumstances(path: Path) -> list[str]:
+    """Return sentences on when a path begins and must end, where there is something to say."""
+    sentences = []
+    arrival = engineering(path.delay, "s")
+    if path.start_arrival:
+        begins = engineering(path.start_arrival, "s")
+        sentences.append(f"It begins at {begins}, so {path.end} arrives at {arrival}.")
+    if path.required is not None:
+        late = punctuality(path.delay, path.required)
+        sentences.append(f"It must arrive by {engineering(path.required, 's')} and is {late}.")
+    return sentences
+
+
+def _path_section(paper: Paper, analysis: Analysis, number: int, path: Path) -> list[str]:
+    title = f"Path {number}: {route(path)}, {takes(path, analysis.yardstick)}"
+    if number == 1:
+        title = "The slowest path"
+    lines = paper.paragraph(title)
+    lines += path_lines(paper, path, branches=number == 1)
+    return ["", *lines, "", *effort_lines(paper, path, analysis.yardstick)]

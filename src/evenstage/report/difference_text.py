@@ -1,0 +1,90 @@
+"""Two netlists of one design side by side, as text."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Final
+
+from evenstage.report.block_text import finished, notice_lines
+from evenstage.report.change_text import difference_lines
+from evenstage.report.pair_text import pair_lines, total_lines
+from evenstage.report.paper import Paper
+from evenstage.report.words import counted, labelled, listed, moves, route, same_route, section
+
+if TYPE_CHECKING:
+    from evenstage.timing.results import Difference, Path
+
+_NAMES_SHOWN: Final = 12
+
+
+def difference_report(difference: Difference, *, width: int = 100, unicode: bool = False) -> str:
+    """Return a comparison as text: slowest paths, blocks, widths, and what only one netlist has.
+
+    Parameters
+    ----------
+    difference : Difference
+    width : int
+        Character cells per line, 80 to 160.
+    unicode : bool
+        Whether the output can show more than ASCII.
+
+    Returns
+    -------
+    str
+        Lines without trailing blanks, the last one ended too.
+    """
+    paper = Paper(width, unicode)
+    before, after = difference.before, difference.after
+    lines = paper.paragraph(f"before: {before.source}, block {before.top}")
+    lines += paper.paragraph(f"after:  {after.source}, block {after.top}")
+    lines += ["", *paper.paragraph(_answer(difference))]
+    lines += _paths(paper, difference)
+    lines += section("The blocks", total_lines(paper, before, after))
+    lines += section("Widths that differ", difference_lines(paper, difference.widths))
+    lines += section("In only one netlist", _only_lines(paper, difference))
+    lines += section("Notices", notice_lines(paper, (*before.notices, *after.notices)))
+    return finished(paper, lines)
+
+
+def _answer(difference: Difference) -> str:
+    old, new = difference.before.paths[0], difference.after.paths[0]
+    both = [w for w in difference.widths if w.before is not None and w.after is not None]
+    slowest = f"slowest path {moves(old.delay, new.delay)}"
+    if same_route(old, new):
+        which = f"It is the same in both: {route(old)}."
+    else:
+        which = f"Before it is {route(old)}; after, {route(new)}."
+    return (
+        f"The {slowest}. {which} {counted(len(both), 'transistor')} differ in width, "
+        f"{difference.unchanged} do not."
+    )
+
+
+def _paths(paper: Paper, difference: Difference) -> list[str]:
+    """Return the slowest path of each netlist beside the same path of the other."""
+    old, new = difference.before.paths[0], difference.after.paths[0]
+    old_after, new_before = difference.same_path_after, difference.same_path_before
+    if same_route(old, new):
+        return _pair(paper, "The slowest path", old, new)
+    if old_after is None and new_before is None:
+        return _pair(paper, "The slowest path of each, stages of one gate together", old, new)
+    lines = []
+    if old_after is not None:
+        lines += _pair(paper, f"The slowest path before: {route(old)}", old, old_after)
+    if new_before is not None:
+        lines += _pair(paper, f"The slowest path after: {route(new)}", new_before, new)
+    return lines
+
+
+def _pair(paper: Paper, title: str, before: Path, after: Path) -> list[str]:
+    text = "f stage effort; width of all transistors of the gate."
+    lines = [*pair_lines(paper, before, after), *paper.paragraph(text, indent=2)]
+    return ["", *paper.paragraph(title), *lines]
+
+
+def _only_lines(paper: Paper, difference: Difference) -> list[str]:
+    lines = []
+    if difference.only_before:
+        lines += labelled(paper, "before", listed(difference.only_before, _NAMES_SHOWN))
+    if difference.only_after:
+        lines += labelled(paper, "after", listed(difference.only_after, _NAMES_SHOWN))
+    return lines
