@@ -145,7 +145,8 @@ class TestReadBrief:
             (
                 "supply.high = 'vdd'",
                 (
-                    "b.toml:1:1: unknown key supply; the nearest known one is supplies (unknown-key)\n"
+                    "b.toml:1:1: unknown key supply; the nearest known one is supplies"
+                    " (unknown-key)\n"
                     "    supply.high = 'vdd'\n"
                     "    ^^^^^^^^^^^\n"
                     "known here: top, supplies, input, output, ignore, fixed, leaves, same_size,"

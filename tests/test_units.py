@@ -10,7 +10,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from evenstage.units import engineering, parse_number, suffixed
+from evenstage.units import engineering, parse_number, parse_quantity, suffixed
 
 if TYPE_CHECKING:
     from decimal import Decimal
@@ -110,6 +110,63 @@ class TestParseNumber:
     def test_mil_rounds_once(self, mantissa: Decimal) -> None:
         exact = Fraction(mantissa) * Fraction(254, 10**7)
         assert parse_number(f"{mantissa:f}mil") == float(exact)
+
+
+class TestParseQuantity:
+    @pytest.mark.parametrize(
+        ("text", "unit", "value"),
+        [
+            ("12", "F", 12.0),
+            ("12f", "F", 12e-15),
+            ("12 fF", "F", 12e-15),
+            ("12FF", "F", 12e-15),
+            (" 0.18u ", "m", 0.18e-6),
+            ("0.18 um", "m", 0.18e-6),
+            ("0.18µm", "m", 0.18e-6),
+            ("1.2e1 ps", "s", 12e-12),
+            ("3 s", "s", 3.0),
+            ("1.8V", "V", 1.8),
+            ("2.2 kohm", "ohm", 2200.0),
+            ("2.2k", "ohm", 2200.0),
+            ("1.4 fF/um", "F/m", 1.4e-9),
+            ("1.4e-9 F / m", "F/m", 1.4e-9),
+            ("1.4n", "F/m", 1.4e-9),
+            ("2.4 kohm*um", "ohm*m", 2.4e-3),
+            ("2.4e-3", "ohm*m", 2.4e-3),
+            ("5k", "", 5000.0),
+            ("-5 megohm", "ohm", -5e6),
+        ],
+    )
+    def test_value(self, text: str, unit: str, value: float) -> None:
+        assert parse_quantity(text, unit) == value
+
+    @pytest.mark.parametrize(
+        ("text", "unit"),
+        [
+            ("12 pF", "s"),
+            ("12F", "s"),
+            ("12x", ""),
+            ("5 Mohm", "ohm"),
+            ("1.4 fF/um", "F"),
+            ("1.4 fF*um", "F/m"),
+            ("1.4 fF//um", "F/m"),
+            ("1.4 um", "F/m"),
+            ("1 mil", "m"),
+        ],
+    )
+    def test_another_unit_is_refused(self, text: str, unit: str) -> None:
+        with pytest.raises(ValueError, match=r"is not a (number in|plain number)"):
+            parse_quantity(text, unit)
+
+    @pytest.mark.parametrize(("text", "unit"), [("12F", "F"), ("0.5m", "m"), ("2M", "s")])
+    def test_two_meanings_are_refused(self, text: str, unit: str) -> None:
+        with pytest.raises(ValueError, match="is ambiguous"):
+            parse_quantity(text, unit)
+
+    @pytest.mark.parametrize("text", ["", "fF", "nan", "inf", "1_0 fF", "- 5"])
+    def test_malformed_is_refused(self, text: str) -> None:
+        with pytest.raises(ValueError, match="is not a number"):
+            parse_quantity(text, "F")
 
 
 class TestEngineering:

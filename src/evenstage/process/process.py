@@ -1,7 +1,7 @@
 """The constants of a manufacturing process, as the delay model uses them.
 
-A transistor of drawn width ``W`` and length ``L`` has the resistance ``r_w (L/L0)/W + r_fixed``, with
-the ln 2 of an RC response inside, so that a delay is ``R C``. Its gate loads its driver with
+A transistor of drawn width ``W`` and length ``L`` has the resistance ``r_w (L/L0)/W + r_fixed``,
+with the ln 2 of an RC response inside, so that a delay is ``R C``. Its gate loads its driver with
 ``c_gate W L/L0 + c_gate_fixed``; its drain and its source each with ``c_drain W + c_drain_fixed``.
 """
 

@@ -1,0 +1,114 @@
+"""A process file into a `Process`."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Final, cast
+
+from evenstage.process.process import Polarity, Process, Transistor, WidthMeaning
+from evenstage.schema import Entry, Names, Number, Text
+from evenstage.settings import Settings, Tables, read_settings
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+    from pathlib import Path
+
+# Upper bounds only catch numbers written in the wrong unit: 2400 where 2.4 kohm*um is meant.
+_WIDTH: Final = Number(unit="m", above=0, most=1e-2)
+_RESISTANCE_MOST: Final = 10.0
+_CAPACITANCE_MOST: Final = 1e-6
+_FIXED_MOST: Final = 1e-9
+
+_TRANSISTOR_KEYS: Final[Mapping[str, Entry]] = {
+    "models": Names(required=True),
+    "polarity": Text(choices=("n", "p"), required=True),
+    "length": Number(unit="m", above=0, most=1e-3, required=True),
+    "r_w": Number(unit="ohm*m", above=0, most=_RESISTANCE_MOST, required=True),
+    "r_fixed": Number(unit="ohm", least=0, default=0.0),
+    "stack": Number(above=0, most=2, default=1.0),
+    "c_gate": Number(unit="F/m", above=0, most=_CAPACITANCE_MOST, required=True),
+    "c_gate_fixed": Number(unit="F", least=0, most=_FIXED_MOST, default=0.0),
+    "c_drain": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST, required=True),
+    "c_drain_fixed": Number(unit="F", least=0, most=_FIXED_MOST, default=0.0),
+    "slope": Number(least=0, most=10, default=0.0),
+    "slope_power": Number(above=0, most=1, default=1.0),
+    "shape": Number(least=0, most=100, default=0.0),
+    # From 1 on, transitions along a chain would grow without end.
+    "shape_carry": Number(least=0, below=1, default=0.0),
+    "width_parameter": Text(default="w"),
+    "width_is": Text(choices=("total", "finger", "fins"), default="total"),
+    "fingers_parameter": Text(),
+    "width_unit": Number(unit="m", above=0, most=1, word="auto"),
+    "width_min": _WIDTH,
+    "width_max": _WIDTH,
+    "width_step": _WIDTH,
+    "finger_width_max": _WIDTH,
+}
+
+#: The keys of a process file.
+PROCESS_KEYS: Final[Mapping[str, Entry]] = {
+    "name": Text(required=True),
+    "supply": Number(unit="V", above=0, most=1000, required=True),
+    "unit_width": _WIDTH,
+    "unit_ratio": Number(above=0, most=100),
+    "transistor": Tables(keys=_TRANSISTOR_KEYS, required=True),
+}
+
+
+def read_process(path: str | Path) -> Process:
+    """Read a process file.
+
+    Parameters
+    ----------
+    path : str or Path
+        A TOML file with the keys of ``PROCESS_KEYS``.
+
+    Raises
+    ------
+    SettingsError
+        If the file cannot be read, something in it is wrong, or a polarity is missing.
+    """
+    settings = read_settings(path, PROCESS_KEYS)
+    transistors = tuple(map(_transistor, settings.tables("transistor")))
+    for polarity in ("n", "p"):
+        if all(transistor.polarity != polarity for transistor in transistors):
+            raise settings.error(
+                "transistor", f'no [[transistor]] has the polarity "{polarity}"', "missing-polarity"
+            )
+    return Process(
+        name=settings.text("name"),
+        supply=settings.number("supply"),
+        transistors=transistors,
+        unit_width=settings.optional_number("unit_width"),
+        unit_ratio=settings.optional_number("unit_ratio"),
+        source=settings.where.places.source,
+    )
+
+
+def _transistor(table: Settings) -> Transistor:
+    table.check_order("width_min", "width_max")
+    table.check_order("width_min", "finger_width_max")
+    fingers = table.optional_text("fingers_parameter")
+    return Transistor(
+        models=table.names("models"),
+        polarity=cast("Polarity", table.text("polarity")),
+        length=table.number("length"),
+        r_w=table.number("r_w"),
+        r_fixed=table.number("r_fixed"),
+        stack=table.number("stack"),
+        c_gate=table.number("c_gate"),
+        c_gate_fixed=table.number("c_gate_fixed"),
+        c_drain=table.number("c_drain"),
+        c_drain_fixed=table.number("c_drain_fixed"),
+        slope=table.number("slope"),
+        slope_power=table.number("slope_power"),
+        shape=table.number("shape"),
+        shape_carry=table.number("shape_carry"),
+        width_parameter=table.text("width_parameter").lower(),
+        width_is=cast("WidthMeaning", table.text("width_is")),
+        fingers_parameter=None if fingers is None else fingers.lower(),
+        width_unit=table.optional_number("width_unit"),
+        width_min=table.optional_number("width_min"),
+        width_max=table.optional_number("width_max"),
+        width_step=table.optional_number("width_step"),
+        finger_width_max=table.optional_number("finger_width_max"),
+    )
