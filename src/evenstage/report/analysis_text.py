@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 from evenstage.report.block_text import block_lines, end_lines, finished, notice_lines
 from evenstage.report.paper import Paper
@@ -12,6 +12,9 @@ from evenstage.units import engineering
 
 if TYPE_CHECKING:
     from evenstage.timing.results import Analysis, Path
+
+#: Arrivals at least this share of the latest are the latest but for rounding.
+_SAME: Final = 1 - 1e-9
 
 
 def analysis_report(analysis: Analysis, *, width: int = 100, unicode: bool = False) -> str:
@@ -31,13 +34,14 @@ def analysis_report(analysis: Analysis, *, width: int = 100, unicode: bool = Fal
         Lines without trailing blanks, the last one ended too.
     """
     paper = Paper(width, unicode)
-    lines = [f"{analysis.source}, block {analysis.top}", ""]
+    lines = [*paper.paragraph(f"{analysis.source}, block {analysis.top}"), ""]
     lines += paper.paragraph(_answer(analysis))
     for number, path in enumerate(analysis.paths, 1):
         lines += _path_section(paper, analysis, number, path)
     if analysis.paths:
         lines += ["", *legend(paper, analysis.yardstick)]
-    lines += section("Path ends, slowest first", end_lines(paper, analysis.ends))
+        title = f"Path ends, {_rank(analysis)} first"
+        lines += section(title, end_lines(paper, analysis.ends))
     lines += section("The block", block_lines(paper, analysis))
     lines += section("Notices", notice_lines(paper, analysis.notices))
     return finished(paper, lines)
@@ -50,10 +54,16 @@ def _answer(analysis: Analysis) -> str:
     slowest = analysis.paths[0]
     return " ".join(
         [
-            f"The slowest path, {route(slowest)}, {takes(slowest, analysis.yardstick)}.",
+            f"The {_rank(analysis)} path, {route(slowest)}, {takes(slowest, analysis.yardstick)}.",
             *_circumstances(slowest),
         ]
     )
+
+
+def _rank(analysis: Analysis) -> str:
+    """Return what the first path is: where some are required early it need not be the slowest."""
+    latest = max((end.delay for end in analysis.ends), default=0.0)
+    return "most urgent" if analysis.paths[0].delay < _SAME * latest else "slowest"
 
 
 def _circumstances(path: Path) -> list[str]:
@@ -70,9 +80,11 @@ def _circumstances(path: Path) -> list[str]:
 
 
 def _path_section(paper: Paper, analysis: Analysis, number: int, path: Path) -> list[str]:
-    title = f"Path {number}: {route(path)}, {takes(path, analysis.yardstick)}"
     if number == 1:
-        title = "The slowest path"
-    lines = paper.paragraph(title)
-    lines += path_lines(paper, path, branches=number == 1)
-    return ["", *lines, "", *effort_lines(paper, path, analysis.yardstick)]
+        lines = [
+            f"The {_rank(analysis)} path, stage by stage",
+            *path_lines(paper, path, branches=True),
+        ]
+        return ["", *lines, "", *effort_lines(paper, path, analysis.yardstick)]
+    title = f"Path {number}: {route(path)}, {takes(path, analysis.yardstick)}"
+    return ["", *paper.paragraph(title), *path_lines(paper, path, branches=False)]

@@ -12,6 +12,7 @@ if TYPE_CHECKING:
 
 #: Half cells of a bar's end: nothing, left half, right half, all.
 _BLOCKS: Final = {(False, False): " ", (True, False): "▌", (False, True): "▐", (True, True): "█"}
+_LINES: Final = {(False, False): " ", (True, False): "╸", (False, True): "╺", (True, True): "━"}
 _STEPS: Final = (1.0, 2.0, 5.0, 10.0)
 
 
@@ -53,17 +54,18 @@ class TimeAxis:
         marks = {self._cell(tick) for tick in self._ticks()}
         return "".join(mark if cell in marks else dash for cell in range(self.width))
 
-    def bar(self, start: float, end: float) -> str:
-        """Return a bar between two times; too short for a cell, it is a thin mark."""
+    def bar(self, start: float, end: float, *, thin: bool = False) -> str:
+        """Return a bar between two times; too short for its place, it is a mark."""
         parts = 2 if self.paper.unicode else 1
         first, last = self._place(start, parts), self._place(end, parts)
         if last <= first:
             cell = min(first // parts, self.width - 1)
             return " " * cell + ("▏" if self.paper.unicode else "|")
         if parts == 1:
-            return " " * first + "=" * (last - first)
+            return " " * first + ("-" if thin else "=") * (last - first)
         filled = [first <= half < last for half in range(last + last % 2)]
-        return "".join(_BLOCKS[pair] for pair in zip(filled[::2], filled[1::2], strict=True))
+        signs = _LINES if thin else _BLOCKS
+        return "".join(signs[pair] for pair in zip(filled[::2], filled[1::2], strict=True))
 
     def _place(self, time: float, parts: int) -> int:
         """Return where a time is, counted in so many parts of a cell."""

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
+from evenstage.report.families import family_name, family_of
 from evenstage.report.scale import Scale
 from evenstage.report.table import Column, first_that_fits
 from evenstage.report.words import counted, labelled, listed, punctuality
@@ -15,6 +16,9 @@ if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.report.paper import Paper
     from evenstage.timing.results import Analysis, PathEnd
+
+#: Reasons for a path end that need no telling.
+_EXPECTED: Final = {"output", "asked for"}
 
 _ENDS_SHOWN: Final = 10
 _INPUTS_SHOWN: Final = 8
@@ -44,8 +48,8 @@ def end_lines(paper: Paper, ends: Sequence[PathEnd]) -> list[str]:
     _, table = first_that_fits(paper, [(columns, rows)], indent=2)
     lines = [table.line(*row) for row in rows]
     if len(shown) < len(ends):
-        last = scale.text(ends[-1].delay)
-        lines.append(f"  and {len(ends) - len(shown)} more, the last at {last}")
+        least = scale.text(min(end.delay for end in ends))
+        lines.append(f"  and {len(ends) - len(shown)} more, down to {least}")
     return lines
 
 
@@ -55,8 +59,8 @@ def _end_remark(end: PathEnd) -> str:
     if end.required is not None:
         late = punctuality(end.delay, end.required)
         remarks.append(f"{late} (required at {engineering(end.required, 's')})")
-    if end.why != "output":
-        remarks.append(f"enters {end.why}")
+    if end.why not in _EXPECTED:
+        remarks.append(end.why)
     return ", ".join(remarks)
 
 
@@ -75,14 +79,26 @@ def block_lines(paper: Paper, analysis: Analysis) -> list[str]:
     )
     lines = labelled(paper, "size", size)
     if analysis.input_caps:
-        lines += labelled(paper, "inputs", _inputs(analysis))
+        lines += labelled(paper, "inputs", _inputs(paper, analysis))
     return [*lines, *labelled(paper, "process", process)]
 
 
-def _inputs(analysis: Analysis) -> str:
-    fattest = sorted(analysis.input_caps, key=lambda pair: -pair[1])
-    scale = Scale.of((cap for _, cap in fattest), "F", digits=3)
-    return listed([f"{net} {scale.text(cap)}" for net, cap in fattest], _INPUTS_SHOWN)
+def _inputs(paper: Paper, analysis: Analysis) -> str:
+    """Return what the inputs weigh, those that differ in numbers only in one figure or range."""
+    families: dict[str, list[tuple[str, float]]] = {}
+    for net, cap in analysis.input_caps:
+        families.setdefault(family_of(net), []).append((net, cap))
+    scale = Scale.of((cap for _, cap in analysis.input_caps), "F", digits=3)
+    texts = [_input_family(paper, group, scale) for group in families.values()]
+    return listed(texts, _INPUTS_SHOWN)
+
+
+def _input_family(paper: Paper, group: Sequence[tuple[str, float]], scale: Scale) -> str:
+    name = family_name([net for net, _ in group])
+    caps = [cap for _, cap in group]
+    ends = dict.fromkeys([scale.text(min(caps)), scale.text(max(caps))])
+    many = f"{len(group)} {paper.times} " if len(group) > 1 else ""
+    return f"{many}{name} {' to '.join(ends)}"
 
 
 def notice_lines(paper: Paper, notices: Iterable[Notice]) -> list[str]:
@@ -90,20 +106,19 @@ def notice_lines(paper: Paper, notices: Iterable[Notice]) -> list[str]:
     groups: dict[str, list[Notice]] = {}
     for notice in dict.fromkeys(notices):
         groups.setdefault(notice.code, []).append(notice)
-    lines = []
-    for code, group in groups.items():
-        lines += paper.paragraph(_group_title(code, group), indent=2)
-        for notice in group[:_MESSAGES_SHOWN]:
-            lines += paper.paragraph(str(notice), indent=4, hanging=6)
-        if len(group) > _MESSAGES_SHOWN:
-            lines.append(f"    and {len(group) - _MESSAGES_SHOWN} more")
+    return [line for code, group in groups.items() for line in _group_lines(paper, code, group)]
+
+
+def _group_lines(paper: Paper, code: str, group: Sequence[Notice]) -> list[str]:
+    if len(group) == 1:
+        return paper.paragraph(f"{code}: {group[0]}", indent=2, hanging=4)
+    lines = paper.paragraph(f"{code}, {len(group)} times", indent=2)
+    shown = group if len(group) == _MESSAGES_SHOWN + 1 else group[:_MESSAGES_SHOWN]
+    for notice in shown:
+        lines += paper.paragraph(str(notice), indent=4, hanging=6)
+    if len(shown) < len(group):
+        lines.append(f"    and {len(group) - len(shown)} more")
     return lines
-
-
-def _group_title(code: str, group: Sequence[Notice]) -> str:
-    concerned = sum(len(notice.names) for notice in group)
-    title = f"{code}, {counted(len(group), 'time')}"
-    return f"{title} ({counted(concerned, 'name')})" if concerned > len(group) else title
 
 
 def finished(paper: Paper, lines: Sequence[str]) -> str:

@@ -28,7 +28,7 @@ _CHANGE_COLUMNS: Final = (
     Column("factor", align="right"),
     Column("alone", align="right"),
     Column("written in", kind="name"),
-    Column("why", kind="name"),
+    Column("why"),
 )
 _PLACE, _WHY = 8, 9
 
@@ -54,7 +54,9 @@ def change_lines(paper: Paper, changes: Sequence[Change]) -> list[str]:
     lines = [table.titles(), table.line(*(units[i] for i in choices[index]))]
     lines += [table.line(*row) for row in options[index][1]]
     if len(kept) < len(changes):
-        lines.append(f"  and {len(changes) - len(kept)} more that buy less, all in the JSON")
+        lines.append(
+            f"  and {len(changes) - len(kept)} more that buy less, all of them in the JSON"
+        )
     return lines
 
 
@@ -121,7 +123,7 @@ def difference_lines(paper: Paper, widths: Sequence[WidthDifference]) -> list[st
     lines = [table.titles(), table.line("", "", "", "", scale.unit, scale.unit, "")]
     lines += [table.line(*row) for row in shown]
     if len(shown) < len(rows):
-        lines.append(f"  and {len(rows) - len(shown)} more, all in the JSON")
+        lines.append(f"  and {len(rows) - len(shown)} more, all of them in the JSON")
     return lines
 
 

@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING, Final
 
 from evenstage.report.block_text import finished, notice_lines
 from evenstage.report.change_text import difference_lines
+from evenstage.report.families import gathered
 from evenstage.report.pair_text import pair_lines, total_lines
 from evenstage.report.paper import Paper
 from evenstage.report.words import counted, labelled, listed, moves, route, same_route, section
@@ -54,8 +55,8 @@ def _answer(difference: Difference) -> str:
     else:
         which = f"Before it is {route(old)}; after, {route(new)}."
     return (
-        f"The {slowest}. {which} {counted(len(both), 'transistor')} differ in width, "
-        f"{difference.unchanged} do not."
+        f"The {slowest}. {which} Widths differ on {counted(len(both), 'transistor')} and agree on "
+        f"{difference.unchanged}."
     )
 
 
@@ -77,14 +78,14 @@ def _paths(paper: Paper, difference: Difference) -> list[str]:
 
 def _pair(paper: Paper, title: str, before: Path, after: Path) -> list[str]:
     text = "f stage effort; width of all transistors of the gate."
-    lines = [*pair_lines(paper, before, after), *paper.paragraph(text, indent=2)]
+    lines = [*pair_lines(paper, before, after), "", *paper.paragraph(text, indent=2)]
     return ["", *paper.paragraph(title), *lines]
 
 
 def _only_lines(paper: Paper, difference: Difference) -> list[str]:
-    lines = []
-    if difference.only_before:
-        lines += labelled(paper, "before", listed(difference.only_before, _NAMES_SHOWN))
-    if difference.only_after:
-        lines += labelled(paper, "after", listed(difference.only_after, _NAMES_SHOWN))
+    lines: list[str] = []
+    for label, names in (("before", difference.only_before), ("after", difference.only_after)):
+        if names:
+            texts = gathered(names, paper.times)
+            lines += labelled(paper, label, listed(texts, _NAMES_SHOWN))
     return lines

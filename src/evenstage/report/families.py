@@ -32,3 +32,21 @@ def family_name(members: Sequence[str]) -> str:
     split = [_NUMBER.split(member) for member in members]
     parts = zip(*split, strict=True)
     return "".join(part[0] if len(set(part)) == 1 else "*" for part in parts)
+
+
+def gathered(names: Sequence[str], times: str) -> list[str]:
+    """Return names, families of several in one text such as ``20 x xspare*``.
+
+    Parameters
+    ----------
+    names : sequence of str
+    times : str
+        The sign between a number and a family.
+    """
+    families: dict[str, list[str]] = {}
+    for name in names:
+        families.setdefault(family_of(name), []).append(name)
+    return [
+        group[0] if len(group) == 1 else f"{len(group)} {times} {family_name(group)}"
+        for group in families.values()
+    ]

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from difflib import SequenceMatcher
-from typing import TYPE_CHECKING, Final
+from typing import TYPE_CHECKING, Final, Literal
 
 from evenstage.report.bars import TimeAxis
 from evenstage.report.scale import Scale, percent
 from evenstage.report.table import Column, first_that_fits
+from evenstage.report.words import switching
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
@@ -15,7 +17,7 @@ if TYPE_CHECKING:
     from evenstage.report.paper import Paper
     from evenstage.timing.results import Analysis, Path, Stage
 
-_GATE, _OUTPUT, _EDGE, _WHEN, _TIME, _DELAY, _F, _WIDTH, _HOLD = range(1, 10)
+_TIME, _DELAY, _WIDTH, _HOLD = 5, 6, 8, 9
 _COLUMNS: Final = (
     Column("", align="right"),
     Column("gate", kind="name"),
@@ -30,20 +32,35 @@ _COLUMNS: Final = (
 )
 
 
-def paired(
-    before: Sequence[Stage], after: Sequence[Stage]
-) -> list[tuple[Stage | None, Stage | None]]:
-    """Return the stages of two paths in pairs of one instance; None where one has no such stage."""
+@dataclass(frozen=True, slots=True)
+class _Line:
+    """One stage of one of the two paths; ``number`` and ``first`` are those of its pair."""
+
+    number: int
+    first: bool
+    when: Literal["before", "after"]
+    stage: Stage
+    span: tuple[float, float]
+
+
+def paired(before: Sequence[Stage], after: Sequence[Stage]) -> list[tuple[int | None, int | None]]:
+    """Return the indices of stages of one instance in pairs, in the order of both paths.
+
+    None stands where only the other path has the stage.
+    """
     matcher = SequenceMatcher(
-        None, [s.instance for s in before], [s.instance for s in after], autojunk=False
+        None,
+        [stage.instance for stage in before],
+        [stage.instance for stage in after],
+        autojunk=False,
     )
-    pairs: list[tuple[Stage | None, Stage | None]] = []
+    pairs: list[tuple[int | None, int | None]] = []
     for tag, i, i_end, j, j_end in matcher.get_opcodes():
         if tag == "equal":
-            pairs += zip(before[i:i_end], after[j:j_end], strict=True)
+            pairs += zip(range(i, i_end), range(j, j_end), strict=True)
         else:
-            pairs += [(stage, None) for stage in before[i:i_end]]
-            pairs += [(None, stage) for stage in after[j:j_end]]
+            pairs += [(index, None) for index in range(i, i_end)]
+            pairs += [(None, index) for index in range(j, j_end)]
     return pairs
 
 
@@ -59,46 +76,62 @@ def pair_lines(
     holds : mapping of str to str, optional
         What holds each instance of ``after`` at its size.
     """
-    stages = [*before.stages, *after.stages]
-    if not stages:
+    lines = _interleaved(before, after)
+    if not lines:
         return []
+    stages = [line.stage for line in lines]
     time = Scale.of([before.delay, after.delay, *(stage.delay for stage in stages)], "s")
     effort = Scale.of((stage.stage_effort for stage in stages), digits=2, least=1)
     width = Scale.of((stage.width for stage in stages), "m", digits=3)
-    rows: list[list[str]] = []
-    drawn: list[Stage] = []
-    for number, pair in enumerate(paired(before.stages, after.stages), 1):
-        first = True
-        for when, stage in zip(("before", "after"), pair, strict=True):
-            if stage is None:
-                continue
-            names = [str(number), stage.instance, stage.output, paper.edge(stage.edge)]
-            figures = [time.number(stage.delay), effort.number(stage.stage_effort)]
-            hold = (holds or {}).get(stage.instance, "") if when == "after" else ""
-            rows.append(
-                [
-                    *(names if first else [""] * len(names)),
-                    when,
-                    "",
-                    *figures,
-                    width.number(stage.width),
-                    hold,
-                ]
-            )
-            drawn.append(stage)
-            first = False
-    columns = _COLUMNS if holds is not None else _COLUMNS[:_HOLD]
+    rows = [_row(paper, line, holds or {}, (time, effort, width)) for line in lines]
+    columns = _COLUMNS if holds else _COLUMNS[:_HOLD]
     rows = [row[: len(columns)] for row in rows]
     _, table = first_that_fits(paper, [(columns, rows)])
     start = min(before.start_arrival, after.start_arrival)
     axis = TimeAxis(start, max(before.delay, after.delay), table.widths[_TIME], time, paper)
-    for row, stage in zip(rows, drawn, strict=True):
-        row[_TIME] = axis.bar(stage.arrival - stage.delay, stage.arrival)
+    for row, line in zip(rows, lines, strict=True):
+        row[_TIME] = axis.bar(*line.span, thin=line.when == "before")
+    head = _head(columns, axis, width)
+    return [table.line(*row) for row in (*head, *rows)]
+
+
+def _interleaved(before: Path, after: Path) -> list[_Line]:
+    """Return the stages of both paths in the order in which they are printed."""
+    old, new = switching(before), switching(after)
+    lines: list[_Line] = []
+    for number, (i, j) in enumerate(paired(before.stages, after.stages), 1):
+        if i is not None:
+            lines.append(_Line(number, True, "before", before.stages[i], old[i]))
+        if j is not None:
+            lines.append(_Line(number, i is None, "after", after.stages[j], new[j]))
+    return lines
+
+
+def _row(
+    paper: Paper, line: _Line, holds: Mapping[str, str], scales: tuple[Scale, Scale, Scale]
+) -> list[str]:
+    """Return the texts of all columns, the time column still empty."""
+    stage = line.stage
+    time, effort, width = scales
+    names = [str(line.number), stage.instance, stage.output, paper.edge(stage.edge)]
+    return [
+        *(names if line.first else [""] * len(names)),
+        line.when,
+        "",
+        time.number(stage.delay),
+        effort.number(stage.stage_effort),
+        width.number(stage.width),
+        holds.get(stage.instance, "") if line.when == "after" else "",
+    ]
+
+
+def _head(columns: Sequence[Column], axis: TimeAxis, width: Scale) -> list[list[str]]:
+    """Return the titles with the tick labels, and the units with the axis."""
     titles = [column.title for column in columns]
     titles[_TIME] = axis.labels()
     units = [""] * len(columns)
-    units[_TIME], units[_DELAY], units[_WIDTH] = axis.ruler(), time.unit, width.unit
-    return [table.line(*titles), table.line(*units), *(table.line(*row) for row in rows)]
+    units[_TIME], units[_DELAY], units[_WIDTH] = axis.ruler(), axis.scale.unit, width.unit
+    return [titles, units]
 
 
 def total_lines(paper: Paper, before: Analysis, after: Analysis) -> list[str]:
@@ -134,7 +167,8 @@ def worst_charged(analysis: Analysis) -> float:
 
 
 def _worst(analysis: Analysis) -> float:
-    return max((path.delay for path in analysis.paths), default=0.0)
+    delays = [end.delay for end in analysis.ends]
+    return max([*delays, *(path.delay for path in analysis.paths)], default=0.0)
 
 
 def _inputs(analysis: Analysis) -> float:

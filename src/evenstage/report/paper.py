@@ -83,19 +83,18 @@ class Paper:
     def paragraph(self, text: str, *, indent: int = 0, hanging: int | None = None) -> list[str]:
         """Return printable text filled into lines; ``hanging`` indents the lines after the first.
 
-        A word longer than a line is a name: its middle is left out.
+        A word longer than a line is a name: its middle is left out. Runs of blanks count as one.
         """
         hanging = indent if hanging is None else hanging
         room = self.width - max(indent, hanging)
-        words = [self.shorten(word, room) for word in _BREAK.split(text)]
-        lines: list[str] = []
-        line = " " * indent
-        for word in words:
-            if line.strip() and cells(line) + 1 + cells(word) > self.width:
-                lines.append(line)
-                line = " " * hanging
-            line += f" {word}" if line.strip() else word
-        return [*lines, line]
+        words = [self.shorten(word, room) for word in _BREAK.split(text) if word.strip()]
+        lines = [" " * indent + "".join(words[:1])]
+        for word in words[1:]:
+            if cells(lines[-1]) + 1 + cells(word) > self.width:
+                lines.append(" " * hanging + word)
+            else:
+                lines[-1] += f" {word}"
+        return lines
 
 
 def cells(text: str) -> int:

@@ -9,7 +9,7 @@ from evenstage.report.bars import TimeAxis
 from evenstage.report.families import family_name, family_of
 from evenstage.report.scale import Scale, percent, plain
 from evenstage.report.table import Column, Table, first_that_fits
-from evenstage.report.words import labelled
+from evenstage.report.words import labelled, switching
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
@@ -79,8 +79,8 @@ def path_lines(paper: Paper, path: Path, *, branches: bool) -> list[str]:
     axis = TimeAxis(path.start_arrival, path.delay, table.widths[kept.index(_TIME)], scale, paper)
     lines = _head(table, kept, axis)
     details = _details(paper, path, rows, kept, table, branches=branches)
-    for stage, row, detail in zip(path.stages, rows, details, strict=True):
-        row[_TIME] = axis.bar(stage.arrival - stage.delay, stage.arrival)
+    for span, row, detail in zip(switching(path), rows, details, strict=True):
+        row[_TIME] = axis.bar(*span)
         lines += [table.line(*(row[i] for i in kept)), *detail]
     return lines
 

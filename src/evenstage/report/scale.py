@@ -48,8 +48,8 @@ class Scale:
         """
         largest = max((abs(value) for value in values), default=0.0)
         factor, prefix = _prefix(largest, digits) if unit else (1.0, "")
-        whole = len(f"{largest / factor:.0f}")
-        return cls(factor, prefix + unit, max(digits - whole, least))
+        _, power = f"{largest / factor:.{digits - 1}e}".split("e")
+        return cls(factor, prefix + unit, max(digits - 1 - max(int(power), 0), least))
 
     def number(self, value: float) -> str:
         """Return a value without its unit."""

@@ -46,7 +46,7 @@ def sizing_report(sizing: Sizing, *, width: int = 100, unicode: bool = False) ->
     """
     paper = Paper(width, unicode)
     before, after = sizing.before, sizing.after
-    lines = [paper.shorten(f"{before.source}, block {before.top}", paper.width), ""]
+    lines = [*paper.paragraph(f"{before.source}, block {before.top}"), ""]
     lines += paper.paragraph(_answer(sizing))
     lines += section("How good the widths are", _quality_lines(paper, sizing))
     lines += section("Changes", _changes(paper, sizing))
@@ -82,10 +82,9 @@ def _why_nothing(sizing: Sizing) -> str:
 def _quality_lines(paper: Paper, sizing: Sizing) -> list[str]:
     """Return goal, bound and distance to it in words."""
     cards = f"{counted(sizing.free_cards, 'size')} free to move, {sizing.fixed_cards} fixed"
-    rounding = percent(1.0, 1.0 + sizing.rounding_loss)
     proof = (
-        f"the best continuous sizes are proved to within {_gap(sizing.gap)} of the bound; "
-        f"rounding them to the grid: {rounding}"
+        f"the best sizes off the grid are proved to lie within {_gap(sizing.gap)} of the bound; "
+        f"putting widths on the grid costs {_loss(sizing.rounding_loss)}"
     )
     return [
         *labelled(paper, "goal", f"{sizing.goal} ({cards})"),
@@ -105,8 +104,8 @@ def _bound(sizing: Sizing) -> str:
         wish = "have a worst charged delay below"
         least = ""
     scale = Scale.of([sizing.bound, reached], unit)
-    above = percent(sizing.bound, reached)
-    where = "exactly there" if above == "no change" else f"{above} from there"
+    above = 100 * (reached - sizing.bound) / sizing.bound
+    where = f"{plain(above, 2 if above < 9.995 else 0)} % above" if above >= 0.005 else "just there"
     return (
         f"no sizes within the limits can {wish} {scale.text(sizing.bound)}; the written ones are "
         f"at {scale.text(reached)}, {where}{least}"
@@ -118,12 +117,16 @@ def _gap(gap: float) -> str:
     return f"{plain(100 * gap, 3)} %" if gap >= 1e-5 else "0.001 %"
 
 
+def _loss(loss: float) -> str:
+    return f"{plain(100 * loss, 2)} %" if loss >= 5e-5 else "nothing"
+
+
 def _changes(paper: Paper, sizing: Sizing) -> list[str]:
     lines = change_lines(paper, sizing.changes)
     if not lines:
         return []
     text = "alone: change of the worst delay if only that gate changed; drawn widths of one copy."
-    return [*lines, *paper.paragraph(text, indent=2)]
+    return [*lines, "", *paper.paragraph(text, indent=2)]
 
 
 def _stages(paper: Paper, sizing: Sizing) -> list[str]:
@@ -131,7 +134,7 @@ def _stages(paper: Paper, sizing: Sizing) -> list[str]:
     old, new = sizing.before.paths[0], sizing.after.paths[0]
     holds = {hold.instance: _HOLDS[hold.hold] for hold in sizing.holds if hold.hold}
     if not sizing.changes:
-        lines = path_lines(paper, new, branches=True)
+        lines = [*path_lines(paper, new, branches=True), ""]
         held = ", ".join(f"{instance} ({hold})" for instance, hold in holds.items())
         return section("The slowest path", [*lines, *labelled(paper, "held", held or "nowhere")])
     lines = pair_lines(paper, old, new, holds=holds)
@@ -142,4 +145,4 @@ def _stages(paper: Paper, sizing: Sizing) -> list[str]:
     title = "The slowest path before and after"
     if not same_route(old, new):
         title = "The slowest path before and the one after, stages of one gate together"
-    return section(title, [*lines, *paper.paragraph(text, indent=2)])
+    return section(title, [*lines, "", *paper.paragraph(text, indent=2)])

@@ -69,10 +69,12 @@ class Table:
         return (" " * self.indent + "".join(padded)[self.columns[0].before :]).rstrip()
 
     def _fitted(self, text: str, column: Column, width: int) -> str:
-        return self.paper.shorten(text, width) if column.kind == "name" else text
+        return self.paper.shorten(text, width) if column.kind == "name" else self.paper.shown(text)
 
     def is_readable(self, rows: Sequence[Sequence[str]]) -> bool:
-        """Whether every name is whole or has kept enough to be known by."""
+        """Whether all fits and every name is whole or has kept enough to be known by."""
+        if self.start(len(self.columns) - 1) + self.widths[-1] > self.paper.width:
+            return False
         names = [index for index, column in enumerate(self.columns) if column.kind == "name"]
         return all(
             self.widths[index] >= min(cells(self.paper.shown(row[index])), _READABLE)

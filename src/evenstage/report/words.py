@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import accumulate, pairwise
 from typing import TYPE_CHECKING, Final
 
 from evenstage.report.scale import percent
@@ -34,10 +35,16 @@ def duration(path: Path) -> float:
     return path.delay - path.start_arrival
 
 
+def switching(path: Path) -> list[tuple[float, float]]:
+    """Return from when to when each stage of a path switches, s, in the path's own arrivals."""
+    delays = (stage.delay for stage in path.stages)
+    return list(pairwise(accumulate(delays, initial=path.start_arrival)))
+
+
 def takes(path: Path, yardstick: Yardstick) -> str:
     """Return how long a path takes and through how many stages."""
     time = duration(path)
-    corner = f" in corner {path.corner}" if path.corner else ""
+    corner = f" (corner {path.corner})" if path.corner not in {"", yardstick.process} else ""
     return (
         f"takes {engineering(time, 's')}, {time / yardstick.fo4:.1f} FO4, "
         f"through {counted(len(path.stages), 'stage')}{corner}"
