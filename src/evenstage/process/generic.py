@@ -3,7 +3,8 @@
 Its numbers are invented and describe no existing technology: a planar bulk process in which, as
 common practice has it, gate and drain capacitance per width stay the same over generations, a unit
 inverter driving four of itself takes a third of a picosecond per nanometre of channel, and the
-supply is ten volts per micron. Absolute times from it are rough; efforts, ratios and rankings hold their meaning.
+supply is ten volts per micron. Absolute times from it are rough; efforts, ratios and rankings hold
+their meaning.
 """
 
 from __future__ import annotations

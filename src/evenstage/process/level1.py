@@ -71,12 +71,14 @@ def ramp_delay_share(v: float) -> float:
     return (1 + 2 * v) / 6
 
 
-def junction_factor(phi: float, m: float, swing: float) -> float:
-    """Return K_eq: the mean of a reverse-biased junction's capacitance over 0 to swing, per C_j0.
+def junction_factor(phi: float, m: float, least: float, most: float) -> float:
+    """Return K_eq: a junction's mean capacitance over a range of reverse bias, per C_j0.
 
-    ``phi^m ((phi + swing)^(1-m) - phi^(1-m))/(swing (1 - m))`` (Rabaey et al., equation 3.11).
+    ``phi^m ((phi + most)^(1-m) - (phi + least)^(1-m))/((most - least)(1 - m))``
+    (Rabaey et al., equation 3.11).
     """
+    start, end = phi + least, phi + most
     if math.isclose(m, 1.0):
-        return phi / swing * math.log((phi + swing) / phi)
-    rise = math.pow(phi + swing, 1 - m) - math.pow(phi, 1 - m)
-    return math.pow(phi, m) * rise / (swing * (1 - m))
+        return phi / (end - start) * math.log(end / start)
+    rise = math.pow(end, 1 - m) - math.pow(start, 1 - m)
+    return math.pow(phi, m) * rise / ((end - start) * (1 - m))
