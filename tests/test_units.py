@@ -144,7 +144,6 @@ class TestParseQuantity:
         ("text", "unit"),
         [
             ("12 pF", "s"),
-            ("12F", "s"),
             ("12x", ""),
             ("5 Mohm", "ohm"),
             ("1.4 fF/um", "F"),
