@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Protocol
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Iterator, Mapping, Sequence
 
     from evenstage.errors import Notice
     from evenstage.source import SourceText, Span
@@ -76,6 +76,51 @@ class Card:
     def parameter(self, name: str) -> Parameter | None:
         """Return the last parameter of a lower-case name (a repeated one overrides)."""
         return next((p for p in reversed(self.parameters) if p.name == name), None)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class CardGroup:
+    """Cards of one letter with the same number of nets and the same parameter names, in columns.
+
+    All words are in lower case, as bytes, one per card in each column.
+
+    Parameters
+    ----------
+    letter : str
+        Lower-case first letter.
+    numbers : Sequence of int
+        Of the cards.
+    names : Sequence of bytes
+        With their letter.
+    nodes : sequence of columns
+        One per net.
+    targets : Sequence of bytes
+        Models or subcircuits; empty where the cards name none.
+    values : Sequence of bytes
+        Unnamed values; empty where the cards have none.
+    parameters : Mapping of str to a column
+        The values as written; of a repeated name the last.
+    """
+
+    letter: str
+    numbers: Sequence[int]
+    names: Sequence[bytes]
+    nodes: Sequence[Sequence[bytes]]
+    targets: Sequence[bytes]
+    values: Sequence[bytes]
+    parameters: Mapping[str, Sequence[bytes]]
+
+
+class CardStore(Protocol):
+    """All element cards of a netlist: one by one as objects, or many at once in columns."""
+
+    def __len__(self) -> int: ...
+
+    def __getitem__(self, number: int) -> Card: ...
+
+    def groups(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
+        """Give the cards of ascending numbers in groups, each of at most a few thousand."""
+        ...
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -160,11 +205,15 @@ class Netlist:
     global_names: tuple[str, ...]
     options: Mapping[str, float]
     notices: tuple[Notice, ...]
-    _cards: Sequence[Card] = field(repr=False)
+    _cards: CardStore = field(repr=False)
 
     def card(self, number: int) -> Card:
         """Return the element card of a number."""
         return self._cards[number]
+
+    def card_groups(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
+        """Give the element cards of ascending numbers in columns, grouped by their form."""
+        return self._cards.groups(numbers)
 
     def __len__(self) -> int:
         return len(self._cards)

@@ -1,0 +1,68 @@
+"""From files to a ``Netlist``: cards, definitions, included files."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from evenstage.errors import NetlistError
+from evenstage.netlist.reader import Reader
+from evenstage.source import SourceText
+
+if TYPE_CHECKING:
+    from evenstage.netlist.netlist import Netlist
+
+
+def read(path: Path | str) -> Netlist:
+    """Read a netlist and the files it includes.
+
+    Parameters
+    ----------
+    path : Path or str
+        The main file.
+
+    Raises
+    ------
+    NetlistError
+        If a file cannot be read or its text is no netlist.
+    """
+    path = Path(path)
+    try:
+        data = path.read_bytes()
+    except FileNotFoundError:
+        raise NetlistError(f"there is no file '{path}'", code="missing-file") from None
+    except OSError as error:
+        reason = (error.strerror or "unknown reason").lower()
+        raise NetlistError(f"cannot read '{path}': {reason}", code="unreadable-file") from None
+    return _read(SourceText(path.resolve(), data, str(path)))
+
+
+def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
+    """Read a netlist that is not (yet) a file.
+
+    Parameters
+    ----------
+    data : bytes
+        The text.
+    label : str
+        What messages call it.
+    folder : Path
+        Where the files it includes are looked for.
+
+    Raises
+    ------
+    NetlistError
+        If the text, or that of an included file, is no netlist.
+
+    Examples
+    --------
+    >>> len(read_bytes(b".subckt inv a y vdd vss\\n.ends\\n", "inv.sp", Path()))
+    0
+    """
+    return _read(SourceText((folder / label).resolve(), data, label))
+
+
+def _read(source: SourceText) -> Netlist:
+    reader = Reader()
+    reader.read_main(source)
+    return reader.finish()

@@ -1,0 +1,349 @@
+"""Walks through the text of a netlist, card by card and file by file."""
+
+from __future__ import annotations
+
+import re
+from contextlib import suppress
+from typing import TYPE_CHECKING, Final
+
+from evenstage.errors import ElaborationError, NetlistError, Notice
+from evenstage.netlist.canonical import BOM, canonical
+from evenstage.netlist.cards import CardTable, parameter
+from evenstage.netlist.grammar import ENCODING, terminal
+from evenstage.netlist.includes import Includes, section_range
+from evenstage.netlist.netlist import ModelCard, Netlist
+from evenstage.netlist.parameters import Scope
+from evenstage.netlist.scopes import Scopes
+from evenstage.netlist.shapes import learn
+from evenstage.netlist.statement import Statement, parse_statement
+from evenstage.source import SourceText, Span
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from evenstage.netlist.netlist import Parameter
+    from evenstage.netlist.statement import Mark
+
+    #: Matches a card of one shape up to the next card; and the number of the shape.
+    _Skimmer = tuple[Callable[[bytes, int], re.Match[bytes] | None], int]
+
+#: A sequence of terminals is learned when it is met for this time: an expression takes as long to
+#: compile as some fifty cards take to parse.
+_LEARNED_AT: Final = 3
+_BLANKS: Final = bytes(range(33)) + b","
+_SKIP = re.compile(rb"[\x00-\x20,]*+")
+_ELEMENTS: Final = frozenset({"transistor", "call", "passive", "source", "element"})
+
+
+class Unit:
+    """One file: its bytes and its canonical text."""
+
+    def __init__(self, source: SourceText, start: int = 0) -> None:
+        self.source = source
+        self.text = canonical(source.data, start)
+
+    def span(self, mark: Mark) -> Span:
+        """Return the bytes of a word."""
+        return Span(self.source, mark.start, mark.end)
+
+
+class Reader:
+    """Reads one netlist; ``read_main`` once, then ``finish``."""
+
+    def __init__(self) -> None:
+        self._table = CardTable()
+        self._scopes = Scopes()
+        self._includes = Includes()
+        self._learned: list[list[_Skimmer]] = [[] for _ in range(256)]
+        self._met: dict[tuple[str, ...], int] = {}
+        self._models: dict[str, tuple[str, str, tuple[Parameter, ...], Span]] = {}
+        self._globals: dict[str, str] = {}
+        self._options: list[Parameter] = []
+        self._unknown: dict[str, tuple[int, Span]] = {}
+        self._notices: list[Notice] = []
+
+    def read_main(self, source: SourceText) -> None:
+        """Read the main file, whose first line may be a title.
+
+        Raises
+        ------
+        NetlistError
+            If it, or a file it includes, is no netlist.
+        """
+        self._includes.add(source)
+        check_text(source)
+        start = self._after_title(source)
+        unit = Unit(source, start)
+        with self._includes.entered(source, None, None):
+            self._read_range(unit, start, len(unit.text))
+
+    def _after_title(self, source: SourceText) -> int:
+        """Return where the first line after the title begins; 0 if there is no title."""
+        title = re.match(terminal("TITLE").encode(ENCODING), source.data, re.IGNORECASE)
+        if title is None:
+            return 0
+        start = len(BOM) if source.data.startswith(BOM) else 0
+        statement = _element_or_none(source, start, title.end())
+        if statement is None:
+            return title.end()
+        if statement.rule == "call" and _calls_defined(statement, source):
+            return 0
+        message = "the first line is taken as the title, though it could be a card"
+        self._notices.append(Notice("title", message, Span(source, start, title.end()).place))
+        return title.end()
+
+    # The loop over the cards of a file.
+
+    def _read_range(self, unit: Unit, position: int, end: int) -> None:
+        """Read the cards of part of a file, up to its ``.end``."""
+        depth = self._scopes.depth
+        self._begin_segment(unit)
+        text, table, learned = unit.text, self._table, self._learned
+        skipped = _SKIP.match(text, position)
+        assert skipped is not None
+        position = skipped.end()
+        while position < end:
+            shapes = learned[text[position]]
+            for rank, (skim, number) in enumerate(shapes):
+                match = skim(text, position)
+                if match is not None:
+                    table.append(position, number)
+                    position = match.end()
+                    if rank:
+                        _promote(shapes, rank)
+                    break
+            else:
+                position = self._read_card(unit, position, end)
+        self._scopes.check_closed(depth)
+        self._scopes.check_not_below(depth, unit.source)
+
+    def _begin_segment(self, unit: Unit) -> None:
+        self._table.begin_segment(unit.source, unit.text, self._scopes.current)
+
+    def _read_card(self, unit: Unit, position: int, end: int) -> int:
+        """Read one card through the grammar; return where the next one begins."""
+        text = unit.text
+        line_end = text.find(b"\n", position)
+        if line_end < 0:
+            line_end = len(text)
+        card_end = position + len(text[position:line_end].rstrip(_BLANKS))
+        block = _block_end(unit, position)
+        if block is not None:
+            self._note_unknown(Span(unit.source, position, _word_end(text, position)))
+            following = block
+        else:
+            statement = parse_statement(unit.source, position, card_end)
+            following = self._take(unit, statement, line_end, end)
+        skipped = _SKIP.match(text, following)
+        assert skipped is not None
+        return skipped.end()
+
+    def _take(self, unit: Unit, statement: Statement, line_end: int, end: int) -> int:
+        """Do what a card says; return where reading goes on."""
+        if statement.rule in _ELEMENTS:
+            self._take_element(unit, statement)
+            return line_end
+        if statement.rule == "end":
+            return end
+        if statement.rule == "ends":
+            self._take_ends(unit, statement, line_end)
+            return line_end
+        if statement.rule == "library" and len(statement.marks) == 2:
+            return section_range(unit.source, unit.text, unit.span(statement.marks[1])).stop
+        _DOT_CARDS[statement.rule](self, unit, statement)
+        return line_end
+
+    def _take_element(self, unit: Unit, statement: Statement) -> None:
+        terminals = (statement.rule, *(mark.terminal for mark in statement.marks))
+        form = (*terminals, *(p.name for p in _pairs(unit, statement.marks)))
+        self._met[form] = self._met.get(form, 0) + 1
+        shape = learn(statement, unit.text) if self._met[form] == _LEARNED_AT else None
+        if shape is None:
+            self._table.append_odd(statement)
+            return
+        number = self._table.add_shape(shape)
+        self._learned[ord(shape.letter)].append((shape.skim.match, number))
+        self._table.append(statement.marks[0].start, number)
+
+    # Dot cards.
+
+    def _take_definition(self, unit: Unit, statement: Statement) -> None:
+        marks = statement.marks
+        words = [
+            unit.span(mark)
+            for mark, following in zip(marks, (*marks[1:], None), strict=True)
+            if mark.terminal == "WORD" and (following is None or following.terminal != "EQUAL")
+        ]
+        header = Span(unit.source, marks[0].start, marks[-1].end)
+        self._scopes.open(header, words[0], tuple(words[1:]), _pairs(unit, marks), len(self._table))
+        self._begin_segment(unit)
+
+    def _take_ends(self, unit: Unit, statement: Statement, line_end: int) -> None:
+        marks = statement.marks
+        card = Span(unit.source, marks[0].start, marks[-1].end)
+        name = unit.span(marks[1]) if len(marks) > 1 else None
+        after = line_end + (2 if unit.source.data[line_end : line_end + 2] == b"\r\n" else 1)
+        self._scopes.close(card, name, min(after, len(unit.text)), unit.text, len(self._table))
+        self._begin_segment(unit)
+
+    def _take_assignments(self, unit: Unit, statement: Statement) -> None:
+        self._scopes.assign(_pairs(unit, statement.marks))
+
+    def _take_model(self, unit: Unit, statement: Statement) -> None:
+        marks = statement.marks
+        name, kind = unit.span(marks[1]), unit.span(marks[2])
+        span = Span(unit.source, marks[0].start, marks[-1].end)
+        self._models[name.text.lower()] = (name.text, kind.text, _pairs(unit, marks), span)
+
+    def _take_global(self, unit: Unit, statement: Statement) -> None:
+        for mark in statement.marks[1:]:
+            name = unit.span(mark).text
+            self._globals.setdefault(name.lower(), name)
+
+    def _take_option(self, unit: Unit, statement: Statement) -> None:
+        self._options += _pairs(unit, statement.marks)
+
+    def _take_other(self, unit: Unit, statement: Statement) -> None:
+        self._note_unknown(unit.span(statement.marks[0]))
+
+    def _note_unknown(self, word: Span) -> None:
+        kind = word.text.lower()
+        count, first = self._unknown.get(kind, (0, word))
+        self._unknown[kind] = (count + 1, first)
+
+    def _take_include(self, unit: Unit, statement: Statement) -> None:
+        self._read_file(unit, unit.span(statement.marks[1]), None)
+
+    def _take_library(self, unit: Unit, statement: Statement) -> None:
+        self._read_file(unit, unit.span(statement.marks[1]), unit.span(statement.marks[2]))
+
+    def _read_file(self, unit: Unit, name: Span, section: Span | None) -> None:
+        source = self._includes.find(name)
+        with self._includes.entered(source, section, name):
+            check_text(source)
+            included = self._includes.unit(source, Unit)
+            places = range(len(included.text))
+            if section is not None:
+                places = section_range(source, included.text, section, wanted=True)
+            self._read_range(included, places.start, places.stop)
+        self._begin_segment(unit)
+
+    # The result.
+
+    def finish(self) -> Netlist:
+        """Return what was read."""
+        top = self._scopes.finish(len(self._table))
+        models = {
+            key: ModelCard(name, kind, _values(parameters, top.assignments), span)
+            for key, (name, kind, parameters, span) in self._models.items()
+        }
+        return Netlist(
+            sources=self._includes.sources,
+            subcircuits=self._scopes.subcircuits,
+            top=top,
+            models=models,
+            global_names=tuple(self._globals.values()),
+            options=_values(tuple(self._options), top.assignments),
+            notices=(*self._notices, *self._scopes.notices, *self._unknown_notices()),
+            _cards=self._table,
+        )
+
+    def _unknown_notices(self) -> list[Notice]:
+        return [
+            Notice("not-understood", _unknown_message(kind, count), first.place, (kind,))
+            for kind, (count, first) in self._unknown.items()
+        ]
+
+
+_DOT_CARDS: Final = {
+    "definition": Reader._take_definition,  # noqa: SLF001 - the table belongs to the class
+    "assignments": Reader._take_assignments,  # noqa: SLF001
+    "model": Reader._take_model,  # noqa: SLF001
+    "global": Reader._take_global,  # noqa: SLF001
+    "option": Reader._take_option,  # noqa: SLF001
+    "include": Reader._take_include,  # noqa: SLF001
+    "library": Reader._take_library,  # noqa: SLF001
+    "endl": Reader._take_other,  # noqa: SLF001
+    "other": Reader._take_other,  # noqa: SLF001
+}
+
+
+def check_text(source: SourceText) -> None:
+    """Refuse what is no text.
+
+    Raises
+    ------
+    NetlistError
+        If the bytes hold a NUL.
+    """
+    if source.data.startswith((b"\xff\xfe", b"\xfe\xff")):
+        message = f"'{source.label}' is in UTF-16; save it as UTF-8"
+        raise NetlistError(message, code="not-text")
+    if b"\0" in source.data:
+        raise NetlistError(f"'{source.label}' is not a text file", code="not-text")
+
+
+def _promote(shapes: list[_Skimmer], rank: int) -> None:
+    """Move a shape one place forward, so that the most used are tried first."""
+    shapes[rank - 1], shapes[rank] = shapes[rank], shapes[rank - 1]
+
+
+def _element_or_none(source: SourceText, start: int, end: int) -> Statement | None:
+    """Return a line as an element card of a kind with a fixed form, if it could be one."""
+    lead = len(source.data[start:end]) - len(source.data[start:end].lstrip())
+    try:
+        statement = parse_statement(source, start + lead, end)
+    except NetlistError:
+        return None
+    return statement if statement.rule in _ELEMENTS - {"element"} else None
+
+
+def _calls_defined(statement: Statement, source: SourceText) -> bool:
+    """Tell whether the subcircuit a line would call is defined in the same file."""
+    words = [mark for mark in statement.marks if mark.terminal == "WORD"]
+    name = re.escape(source.data[words[-1].start : words[-1].end])
+    return re.search(rb"(?im)^[ \t]*\.subckt[ \t]+" + name + rb"(?![^\s])", source.data) is not None
+
+
+def _block_end(unit: Unit, position: int) -> int | None:
+    """Return where a block in another language ends, if one begins here."""
+    if unit.text[position] != ord("."):
+        return None
+    for name in ("CONTROL", "DATA", "ALTER"):
+        pattern = re.compile(terminal(name).encode(ENCODING), re.IGNORECASE)
+        match = pattern.match(unit.source.data, position)
+        if match is not None:
+            return match.end()
+    return None
+
+
+def _word_end(text: bytes, position: int) -> int:
+    match = re.compile(rb"[^\x00-\x20]*").match(text, position)
+    assert match is not None
+    return match.end()
+
+
+def _pairs(unit: Unit, marks: tuple[Mark, ...]) -> tuple[Parameter, ...]:
+    """Return the parameters among the words of a card."""
+    return tuple(
+        parameter(unit.span(marks[i - 1]), unit.span(marks[i + 1]))
+        for i, mark in enumerate(marks)
+        if mark.terminal == "EQUAL" and 0 < i < len(marks) - 1
+    )
+
+
+def _values(
+    parameters: tuple[Parameter, ...], assignments: tuple[Parameter, ...]
+) -> dict[str, float]:
+    """Return the parameters that have a number; the others mean nothing to us."""
+    scope = Scope(assignments=assignments)
+    values = {}
+    for one in parameters:
+        with suppress(ElaborationError):
+            values[one.name] = scope.evaluate(one.text, lambda one=one: one.span)
+    return values
+
+
+def _unknown_message(kind: str, count: int) -> str:
+    cards = "card" if count == 1 else "cards"
+    return f"{count} '{kind}' {cards} kept, but not understood"

@@ -1,0 +1,155 @@
+"""Card shapes learned from the grammar: how a card like one already seen is read at once.
+
+Whether the grammar accepts a card depends only on the sequence of its terminals (it is LALR). So
+when Lark has read one card, every card with the same terminals in the same order is a card too, and
+one regular expression, put together from the grammar's own terminals in that order, recognises it.
+Possessive quantifiers forbid the expression to cut the words in another way. Cards of one shape are
+those with equal parameter names; a run of nets of a call counts as one piece, however long.
+
+The expressions read text as ``canonical`` leaves it: lower case, one card per line.
+"""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+from functools import cache
+from typing import TYPE_CHECKING, Final, Literal
+
+from evenstage.netlist.grammar import ENCODING, terminal
+
+if TYPE_CHECKING:
+    from evenstage.netlist.statement import Mark, Statement
+
+Role = Literal["name", "node", "nodes", "target", "argument", "key", "value"]
+
+_BETWEEN: Final = r"[\x00-\x09\x0b-\x20,]*+"
+_BETWEEN_WORDS: Final = r"[\x00-\x09\x0b-\x20,]++"
+_END: Final = r"(?:\n[\x00-\x20,]*+|\Z)"
+_LEARNABLE: Final = frozenset({"transistor", "call", "passive"})
+_FIXED: Final = {"EQUAL": "=", "SLASH": "/", "PARAMS": "params?:"}
+_QUANTIFIER = re.compile(r"(?<=[\])])(?:[*+]|\?)(?![+?])")
+
+
+@cache
+def _possessive(name: str) -> str:
+    """Return a terminal's expression with possessive quantifiers.
+
+    That changes nothing: no terminal of an element card repeats a piece that could also begin what
+    comes after it.
+    """
+    return _QUANTIFIER.sub(lambda match: match[0] + "+", terminal(name))
+
+
+@dataclass(frozen=True, slots=True)
+class Shape:
+    """One sequence of terminals of an element card.
+
+    Parameters
+    ----------
+    letter : str
+        First letter of the cards.
+    roles : tuple of Role
+        What each group of ``groups`` is; ``nodes`` is a run of nets, whose last is the subcircuit
+        called unless a ``target`` stands apart.
+    keys : tuple of str
+        Parameter names in their order, one for each ``value``.
+    skim : re.Pattern
+        Matches a card from its first byte to the first byte of the next, without groups.
+    groups : re.Pattern
+        The same with a group for each role.
+    """
+
+    letter: str
+    roles: tuple[Role, ...]
+    keys: tuple[str, ...]
+    skim: re.Pattern[bytes]
+    groups: re.Pattern[bytes]
+
+
+def learn(statement: Statement, text: bytes) -> Shape | None:
+    """Return the shape of a card Lark has read, or None for cards that are always left to Lark.
+
+    Parameters
+    ----------
+    statement : Statement
+        The card.
+    text : bytes
+        Canonical text of its file.
+    """
+    if statement.rule not in _LEARNABLE:
+        return None
+    pieces = _pieces(statement, text)
+    keys = tuple(piece.name for piece in pieces if piece.role == "key")
+    shape = Shape(
+        chr(text[statement.marks[0].start]),
+        tuple(piece.role for piece in pieces if piece.role is not None),
+        keys,
+        _compiled(pieces, grouped=False),
+        _compiled(pieces, grouped=True),
+    )
+    return shape if _agrees(shape, statement, text) else None
+
+
+@dataclass(frozen=True, slots=True)
+class _Piece:
+    pattern: str
+    role: Role | None
+    name: str = ""
+
+
+def _compiled(pieces: list[_Piece], *, grouped: bool) -> re.Pattern[bytes]:
+    parts = [f"({p.pattern})" if grouped and p.role is not None else p.pattern for p in pieces]
+    return re.compile((_BETWEEN.join(parts) + _BETWEEN + _END).encode(ENCODING))
+
+
+def _pieces(statement: Statement, text: bytes) -> list[_Piece]:
+    """Return the pieces of the expression, one per terminal or run of nets."""
+    marks = statement.marks
+    pieces = [_Piece(_possessive(marks[0].terminal), "name")]
+    position = 1
+    slashed = any(mark.terminal == "SLASH" for mark in marks)
+    while position < len(marks):
+        mark = marks[position]
+        if mark.terminal == "WORD" and _is_key(marks, position):
+            name = text[mark.start : mark.end]
+            pieces.append(_Piece(re.escape(name.decode(ENCODING)), "key", name.decode(ENCODING)))
+        elif mark.terminal == "WORD" and statement.rule == "call" and pieces[-1].pattern != "/":
+            while marks[position + 1 : position + 2] and _continues_run(marks, position + 1):
+                position += 1
+            word = _possessive("WORD")
+            pieces.append(_Piece(f"{word}(?:{_BETWEEN_WORDS}{word})*", "nodes"))
+        elif mark.terminal in _FIXED:
+            pieces.append(_Piece(_FIXED[mark.terminal], None))
+        else:
+            role = _role(statement.rule, position, pieces[-1], slashed=slashed)
+            pieces.append(_Piece(_possessive(mark.terminal), role))
+        position += 1
+    return pieces
+
+
+def _is_key(marks: tuple[Mark, ...], position: int) -> bool:
+    return position + 1 < len(marks) and marks[position + 1].terminal == "EQUAL"
+
+
+def _continues_run(marks: tuple[Mark, ...], position: int) -> bool:
+    return marks[position].terminal == "WORD" and not _is_key(marks, position)
+
+
+def _role(rule: str, position: int, before: _Piece, *, slashed: bool) -> Role:
+    if before.pattern == "=":
+        return "value"
+    if slashed:
+        return "target"
+    if rule == "transistor":
+        return "node" if position <= 4 else "target"
+    return "node" if position <= 2 else "argument"
+
+
+def _agrees(shape: Shape, statement: Statement, text: bytes) -> bool:
+    """Tell whether the expression finds the same words in the card as Lark did."""
+    match = shape.groups.match(text, statement.marks[0].start)
+    if match is None:
+        return False
+    edges = {edge for mark in statement.marks for edge in (mark.start, mark.end)}
+    return all(set(match.span(g)) <= edges for g in range(1, len(shape.roles) + 1))
