@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
 if TYPE_CHECKING:
     from evenstage.errors import Notice
+    from evenstage.netlist.edits import Edit
     from evenstage.timing.results import Analysis
 
 Hold = Literal["", "lower", "upper", "fixed", "ceiling", "transition", "grid", "same size"]
@@ -76,14 +77,14 @@ class Sizing:
     goal : str
         What was asked, in words: ``fastest``, ``least width for 450 ps``, ...
     bound : float
-        s or m; no sizes within the limits can do better than this: a bound on the worst charged
-        delay (fastest, budget) or on the total width (least width for a delay).
-    bound_on : {"delay", "width"}
+        s, m or F; no sizes within the limits can do better than this: a bound on the worst charged
+        delay (fastest, budget) or on what is kept small (least width or energy for a delay).
+    bound_on : {"delay", "width", "energy"}
         What the bound is about.
     gap : float
         Relative distance of the continuous optimum to the bound, confirmed by the checker.
     rounding_loss : float
-        Relative loss of the written widths against the continuous optimum in the same measure.
+        Relative cost of the written widths beyond that of the continuous optimum.
     least_delay : float
         s; the least worst charged delay possible within the limits.
     total_width_before, total_width_after : float
@@ -97,13 +98,15 @@ class Sizing:
     already_done : bool
         The netlist was written by an earlier run with these wishes; nothing changes.
     notices : tuple of Notice
+    edits : tuple of Edit
+        What writes the new widths into the text.
     """
 
     before: Analysis
     after: Analysis
     goal: str
     bound: float
-    bound_on: Literal["delay", "width"]
+    bound_on: Literal["delay", "width", "energy"]
     gap: float
     rounding_loss: float
     least_delay: float
@@ -115,3 +118,4 @@ class Sizing:
     holds: tuple[StageHold, ...]
     already_done: bool
     notices: tuple[Notice, ...]
+    edits: tuple[Edit, ...] = field(default=(), repr=False)

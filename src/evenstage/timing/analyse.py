@@ -68,7 +68,7 @@ def report(timing: Timing, count: int = 1) -> Analysis:
     start_nets = dict.fromkeys(graph.net[graph.start].tolist())
     reached = np.unique(circuit.arcs.gate[graph.arc])
     notices = [*circuit.notices, *graph.notices]
-    if len(reached) < len(circuit):
+    if graph.whole and len(reached) < len(circuit):
         notices.append(_unreached(circuit, reached))
     return Analysis(
         source=devices.netlist.sources[0].label,
@@ -89,6 +89,7 @@ def report(timing: Timing, count: int = 1) -> Analysis:
             (devices.net_names[net], float(circuit.net_cap[net])) for net in start_nets
         ),
         notices=tuple(notices),
+        timing=timing,
     )
 
 

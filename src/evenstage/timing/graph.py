@@ -48,6 +48,8 @@ class TimingGraph:
         Nodes where paths end, ordered by net.
     end_required : FloatArray, s, shape (ends,)
         NaN where the brief does not say.
+    whole : bool
+        Whether all inputs and ends count, not only those asked for.
     notices : tuple of Notice
         What was cut or left out.
     """
@@ -64,6 +66,7 @@ class TimingGraph:
     start_drive: FloatArray
     end: IntArray
     end_required: FloatArray
+    whole: bool
     notices: tuple[Notice, ...] = field(default=())
 
     def __len__(self) -> int:
@@ -72,10 +75,15 @@ class TimingGraph:
 
 @dataclass(frozen=True)
 class _Wish:
-    """What was asked for: which nets start paths and which end them."""
+    """What was asked for: which nets start paths and which end them.
 
+    The inputs are all nets where paths begin unless asked otherwise.
+    """
+
+    inputs: IntArray
     starts: IntArray
     ends: IntArray
+    whole: bool
 
 
 def timing_graph(
@@ -134,6 +142,7 @@ def timing_graph(
         start_drive=drive,
         end=number[expansion.end],
         end_required=_required(circuit, brief, expansion.net[expansion.end]),
+        whole=wish.whole,
         notices=tuple(notices),
     )
 
@@ -143,15 +152,21 @@ def _wish(circuit: Circuit, start: str | None, end: str | None) -> _Wish:
     nets = len(circuit.devices.net_names)
     has_pin = np.zeros(nets, bool)
     has_pin[circuit.pins.net] = True
-    starts = np.flatnonzero(
-        has_pin & (circuit.driver_of_net < 0) & ~circuit.supplies.is_supply
-    ).astype(np.int32)
-    ends = np.array(list(circuit.ends), np.int32)
+    inputs = block_inputs(circuit)
+    starts, ends = inputs, np.array(list(circuit.ends), np.int32)
     if start is not None:
         starts = _asked(circuit, start, np.flatnonzero(has_pin), "an input of any gate")
     if end is not None:
         ends = _asked(circuit, end, np.unique(circuit.gate_output), "driven by any gate")
-    return _Wish(starts, ends)
+    return _Wish(inputs, starts, ends, start is None and end is None)
+
+
+def block_inputs(circuit: Circuit) -> IntArray:
+    """Return the nets that load gates, that no gate drives and that are no supplies; by id."""
+    has_pin = np.zeros(len(circuit.devices.net_names), bool)
+    has_pin[circuit.pins.net] = True
+    undriven = circuit.driver_of_net < 0
+    return np.flatnonzero(has_pin & undriven & ~circuit.supplies.is_supply).astype(np.int32)
 
 
 def _asked(circuit: Circuit, wanted: str, among: IntArray, what: str) -> IntArray:
@@ -251,9 +266,10 @@ def _input_briefs(
     nets, rising = all_.net[all_.start], all_.rising[all_.start]
     arrival, drive = np.zeros(len(nets)), np.zeros(len(nets))
     transition = np.where(rising, unit.transition_rise, unit.transition_fall)
-    names = [circuit.devices.net_names[net] for net in wish.starts]
+    known = np.union1d(wish.inputs, wish.starts)
+    names = [circuit.devices.net_names[net] for net in known]
     for some in brief.inputs if brief else ():
-        chosen = np.isin(nets, wish.starts[list(select(some.nets, names, "input"))])
+        chosen = np.isin(nets, known[select(some.nets, names, "input")])
         arrival[chosen] = some.arrival
         drive[chosen] = some.drive
         if some.transition is not None:
@@ -266,7 +282,7 @@ def _required(circuit: Circuit, brief: Brief | None, nets: IntArray) -> FloatArr
     names = [circuit.devices.net_names[net] for net in circuit.gate_output]
     for some in brief.outputs if brief else ():
         if some.required is not None:
-            chosen = circuit.gate_output[list(select(some.nets, names, "driven net"))]
+            chosen = circuit.gate_output[select(some.nets, names, "driven net")]
             required[np.isin(nets, chosen)] = some.required
     return required
 

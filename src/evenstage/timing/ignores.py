@@ -75,7 +75,7 @@ def expand(
     arcs = circuit.arcs
     source = 2 * arcs.input[kept] + ~arcs.rising[kept]
     target = 2 * arcs.output[kept] + arcs.rising[kept]
-    rules = _rules(circuit, brief, starts)
+    rules = _rules(circuit, brief)
     if rules:
         return _split(source, target, kept, rules, (starts, ends))
     nodes = np.arange(2 * len(circuit.devices.net_names), dtype=np.int32)
@@ -94,18 +94,18 @@ def _both_edges(nets: IntArray) -> IntArray:
     return (2 * nets[:, None] + np.array([0, 1], np.int32)).ravel().astype(np.int32)
 
 
-def _rules(circuit: Circuit, brief: Brief | None, starts: IntArray) -> list[_Rule]:
+def _rules(circuit: Circuit, brief: Brief | None) -> list[_Rule]:
     names = circuit.devices.net_names
     rules = []
     for ignore in brief.ignores if brief else ():
         chosen: list[frozenset[int] | None] = []
         for patterns, among, what in (
-            (ignore.start, starts, "input"),
+            (ignore.start, np.arange(len(names)), "net"),
             (ignore.through, np.arange(len(names)), "net"),
             (ignore.end, circuit.gate_output, "driven net"),
         ):
             found = select(patterns, [names[net] for net in among], what)
-            chosen.append(frozenset(among[list(found)].tolist()) if patterns else None)
+            chosen.append(frozenset(among[found].tolist()) if patterns else None)
         rules.append(_Rule(*chosen))
     return rules
 

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
 if TYPE_CHECKING:
     from evenstage.errors import Notice
+    from evenstage.timing.sweep import Timing
 
 Edge = Literal["rise", "fall"]
 
@@ -172,6 +173,8 @@ class Analysis:
     input_caps : tuple of (str, float)
         F, per block input.
     notices : tuple of Notice
+    timing : Timing, optional
+        What everything was read off: circuit, graph and arrivals in columns; not compared.
     """
 
     source: str
@@ -185,6 +188,7 @@ class Analysis:
     switched_cap: float
     input_caps: tuple[tuple[str, float], ...]
     notices: tuple[Notice, ...]
+    timing: Timing | None = field(default=None, repr=False, compare=False)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

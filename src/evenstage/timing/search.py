@@ -1,8 +1,8 @@
 """The slowest paths of a timing graph, best first.
 
-Every arrival is exact for the path that made it, so walking back from the ends with "arrival here plus
-what follows" as the key meets complete paths in the order of their delay (an A* search with a perfect
-estimate; Hart, Nilsson and Raphael, IEEE TSSC 4(2), 1968). Equal delays are told in the order of the
+Every arrival is exact for the path that made it, so walking back from the ends with the lateness of the
+slowest completion as the key meets complete paths in the order of their delay (an A* search with a
+perfect estimate; Hart, Nilsson and Raphael, IEEE TSSC 4(2), 1968). Equal delays are told in the order of the
 end's net, then of the arcs as drawn.
 """
 
@@ -43,23 +43,26 @@ def slowest_paths(timing: Timing) -> Iterator[ArcPath]:
     arcs_list = arcs.tolist()
     starts = set(graph.start.tolist())
     late = timing.lateness.tolist()
-    heap: list[tuple[float, int, int, float, _Tail]] = []
+    heap: list[tuple[float, int, int, _Tail]] = []
     for rank, (end, key) in enumerate(zip(graph.end.tolist(), late, strict=True)):
-        heap.append((-key, rank, end, key - float(timing.arrival[end]), None))
+        heap.append((-key, rank, end, None))
     heapq.heapify(heap)
     ties = 0
     while heap:
-        _, _, node, after, tail = heapq.heappop(heap)
+        key, _, node, tail = heapq.heappop(heap)
         if node in starts:
             yield _as_tuple(tail)
             continue
         # Of equal keys the newest goes first, so that ties are finished one by one.
         for arc in reversed(arcs_list[head[node] : head[node + 1]]):
             source = int(graph.source[arc])
-            following = after + float(timing.delay[arc])
-            key = float(timing.arrival[source]) + following
+            # Along the winning arc the key stays what it is, to the last bit, so that ties are ties.
+            slack = 0.0
+            if arc != int(timing.winner[node]):
+                here = float(timing.arrival[node])
+                slack = max(0.0, here - float(timing.arrival[source]) - float(timing.delay[arc]))
             ties -= 1
-            heapq.heappush(heap, (-key, ties, source, following, (arc, tail)))
+            heapq.heappush(heap, (key + slack, ties, source, (arc, tail)))
 
 
 def leading_arcs(timing: Timing) -> IntArray:

@@ -1,0 +1,232 @@
+"""A timed circuit and its sizes to a convex programme.
+
+Every delay is the charged Elmore delay ``q (R C + own)`` of an arc. With ``x_g`` the size of the gate,
+``R = scaling / x_g + fixed``; the load is linear, ``C = sum c_u x_u + c_0``; and the gate's own delay
+is ``own + shrinking / x_g + growing x_g``. Multiplied out these are the monomials of
+`evenstage.sizing.problem`.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING
+
+import numpy as np
+from scipy.sparse import coo_array, csr_array
+
+from evenstage.sizing.problem import Monomials, Problem
+from evenstage.timing.sweep import end_offsets
+
+if TYPE_CHECKING:
+    from evenstage.circuit.circuit import Circuit
+    from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.sizing.variables import Variables
+    from evenstage.timing.graph import TimingGraph
+    from evenstage.timing.results import Yardstick
+
+
+@dataclass(frozen=True, kw_only=True)
+class Limits:
+    """What sizes must respect besides their own bounds.
+
+    Parameters
+    ----------
+    ceiling_net, ceiling : IntArray and FloatArray, F, shape (inputs,)
+        Most capacitance each block input may show.
+    transition : float
+        s; the slowest edge any gate may make.
+    strict : bool
+        Whether a stage that breaks the transition limit today must get better; else it may stay.
+    """
+
+    ceiling_net: IntArray
+    ceiling: FloatArray
+    transition: float
+    strict: bool = False
+
+
+@dataclass(frozen=True)
+class Model:
+    """A circuit's delays as monomials in its sizes; built once, used for many programmes.
+
+    Parameters
+    ----------
+    circuit : Circuit
+        At today's sizes.
+    graph : TimingGraph
+    unit : Yardstick
+    variables : Variables
+    """
+
+    circuit: Circuit
+    graph: TimingGraph
+    unit: Yardstick
+    variables: Variables
+
+    @cached_property
+    def load(self) -> csr_array:
+        """Load on each net as a linear form: F per unit of each size, the constant last."""
+        circuit, n = self.circuit, len(self.variables)
+        pins, nets = circuit.pins, len(circuit.devices.net_names)
+        everything = np.arange(nets)
+        rows = np.concatenate([pins.net, pins.net, everything])
+        columns = np.concatenate(
+            [self.variables.partition.of_gate[pins.gate], np.full(len(pins.net) + nets, n)]
+        )
+        values = np.concatenate([pins.cap.scaling, pins.cap.fixed, circuit.fixed_cap])
+        form = coo_array((values, (rows, columns)), shape=(nets, n + 1)).tocsr()
+        form.sum_duplicates()
+        form.eliminate_zeros()
+        return form
+
+    @cached_property
+    def elmore(self) -> Monomials:
+        """Elmore delay of every circuit arc, s; row = circuit arc."""
+        arcs, n = self.circuit.arcs, len(self.variables)
+        size = self.variables.partition.of_gate[arcs.gate]
+        every = np.arange(len(size), dtype=np.int32)
+        constant = np.full(len(size), n, np.int32)
+        form = self.load
+        count = np.diff(form.indptr)[arcs.output]
+        entry = _ranges(form.indptr[arcs.output], count)
+        row, cap, column = np.repeat(every, count), form.data[entry], form.indices[entry]
+        parts = [
+            (row, np.repeat(arcs.resistance.scaling, count) * cap, column, size[row]),
+            (row, np.repeat(arcs.resistance.fixed, count) * cap, column, constant[row]),
+            (every, arcs.own, constant, constant),
+            (every, arcs.own_shrinking, constant, size),
+            (every, arcs.own_growing, size, constant),
+        ]
+        return _monomials(parts, n)
+
+    def problem(
+        self, lower: FloatArray, upper: FloatArray, spend: FloatArray, limits: Limits
+    ) -> Problem:
+        """Return the programme for some bounds, costs per unit of size, and limits."""
+        graph, driven = self.graph, np.flatnonzero(self.graph.start_drive > 0)
+        shift = len(driven)
+        limit, count = self._limits(limits)
+        begin_node = graph.start.astype(np.int64) + shift
+        begin_node[driven] = np.arange(shift)
+        return Problem(
+            lower=lower,
+            upper=upper,
+            spend=spend,
+            spend_fixed=0.0,
+            nodes=len(graph) + shift,
+            start_node=begin_node.astype(np.int32),
+            start_arrival=graph.start_arrival,
+            arc_source=np.concatenate([np.arange(shift), graph.source + shift]).astype(np.int32),
+            arc_target=np.concatenate([graph.start[driven], graph.target]).astype(np.int32)
+            + np.int32(shift),
+            delay=self._delays(driven),
+            end_node=graph.end + np.int32(shift),
+            end_offset=end_offsets(graph),
+            limit=limit,
+            limits=count,
+        )
+
+    def _delays(self, driven: IntArray) -> Monomials:
+        """Return the delays of the programme's arcs: outside drivers first, then the graph's arcs."""
+        charge = np.where(
+            self.circuit.arcs.rising, self.unit.charge_rise, self.unit.charge_fall
+        )
+        elmore, which = self.elmore, self.graph.arc
+        heads = np.searchsorted(elmore.row, np.arange(len(charge) + 1))
+        count = np.diff(heads)[which]
+        entry = _ranges(heads[which], count)
+        arcs = (
+            np.repeat(np.arange(len(which)) + len(driven), count),
+            elmore.coefficient[entry] * charge[elmore.row[entry]],
+            elmore.plus[entry],
+            elmore.minus[entry],
+        )
+        form, nets = self.load, self.graph.net[self.graph.start[driven]]
+        wide = np.diff(form.indptr)[nets]
+        outside = _ranges(form.indptr[nets], wide)
+        drivers = (
+            np.repeat(np.arange(len(driven)), wide),
+            form.data[outside] * np.repeat(self.graph.start_drive[driven], wide),
+            form.indices[outside],
+            np.full(len(outside), len(self.variables)),
+        )
+        return _monomials([drivers, arcs], len(self.variables))
+
+    def _limits(self, limits: Limits) -> tuple[Monomials, int]:
+        """Return input ceilings and transition limits as sums that must stay below 1."""
+        form, n = self.load, len(self.variables)
+        nets = limits.ceiling_net
+        wide = np.diff(form.indptr)[nets]
+        entry = _ranges(form.indptr[nets], wide)
+        ceilings = (
+            np.repeat(np.arange(len(nets)), wide),
+            form.data[entry] / np.repeat(limits.ceiling, wide),
+            form.indices[entry],
+            np.full(len(entry), n),
+        )
+        most, number = self._elmore_limit(limits), self.transition_row(limits)
+        elmore = self.elmore
+        kept = number[elmore.row] >= 0
+        transitions = (
+            number[elmore.row[kept]],
+            elmore.coefficient[kept] / most[elmore.row[kept]],
+            elmore.plus[kept],
+            elmore.minus[kept],
+        )
+        return _monomials([ceilings, transitions], n), len(nets) + int((number >= 0).sum())
+
+    def transition_row(self, limits: Limits) -> IntArray:
+        """Return the row of the limit on each arc's transition, -1 for none, shape (arcs,)."""
+        limited = np.isfinite(self._elmore_limit(limits))
+        number = np.cumsum(limited) - 1 + len(limits.ceiling_net)
+        return np.where(limited, number, -1).astype(np.int32)
+
+    def _elmore_limit(self, limits: Limits) -> FloatArray:
+        """Return the Elmore delay up to which an arc keeps a transition limit, s, shape (arcs,).
+
+        If every stage keeps ``shape E <= sqrt(1 - carry^2) T`` and no input is slower than T, then no
+        edge is: the carried part adds at most ``carry T``.
+        """
+        arcs = self.circuit.arcs
+        share = np.sqrt(np.maximum(1 - arcs.shape_carry**2, 0.0))
+        shaped = arcs.shape > 0
+        most = np.full(len(arcs.gate), np.inf)
+        most[shaped] = share[shaped] / arcs.shape[shaped] * limits.transition
+        if limits.strict:
+            return most
+        today = arcs.resistance.today * self.circuit.net_cap[arcs.output] + arcs.own_today
+        return np.maximum(most, today)
+
+
+def _ranges(begin: IntArray, count: IntArray) -> IntArray:
+    """Return the concatenation of ``range(begin, begin + count)`` for all entries."""
+    ends = np.cumsum(count)
+    total = int(ends[-1]) if len(ends) else 0
+    result: IntArray = (
+        np.arange(total) - np.repeat(ends - count, count) + np.repeat(begin, count)
+    ).astype(np.int32)
+    return result
+
+
+def _monomials(
+    parts: list[tuple[IntArray, FloatArray, IntArray, IntArray]], constant: int
+) -> Monomials:
+    """Put parts together, sorted by row, equal monomials of a row added, zeros left out."""
+    row, coefficient, plus, minus = (
+        np.concatenate([np.asarray(part[k]) for part in parts]) for k in range(4)
+    )
+    kept = coefficient > 0
+    row, coefficient, plus, minus = row[kept], coefficient[kept], plus[kept], minus[kept]
+    same = plus == minus  # x/x is the constant 1 whatever the size
+    plus, minus = np.where(same, constant, plus), np.where(same, constant, minus)
+    order = np.lexsort((minus, plus, row))
+    key = np.stack([row, plus, minus])[:, order]
+    first = np.flatnonzero((np.diff(key, axis=1, prepend=-1) != 0).any(axis=0))
+    total = np.add.reduceat(coefficient[order], first) if len(first) else coefficient
+    return Monomials(
+        row=key[0, first].astype(np.int32),
+        coefficient=total,
+        plus=key[1, first].astype(np.int32),
+        minus=key[2, first].astype(np.int32),
+    )
