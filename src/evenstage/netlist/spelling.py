@@ -12,11 +12,11 @@ from decimal import Decimal
 from typing import Final
 
 _NUMBER: Final = re.compile(
-    r"""(?P<before>[\s'"{(]*)
+    r"""(?P<before>[\s'"{]*)
         (?P<sign>[+-]?)
         (?P<digits>[0-9]+\.?[0-9]*|\.[0-9]+)
         (?P<exponent>[eE][+-]?[0-9]+)?
-        (?P<after>[^\W\d_]*[\s'"})]*)""",
+        (?P<after>[a-zA-Z]*[\s'"}]*)""",
     re.VERBOSE,
 )
 _EXACT: Final = 1e-13
@@ -93,7 +93,7 @@ def respell(text: str, old: float, new: float) -> str:
     return f"{match['before']}{match['sign']}{written}{match['after']}"
 
 
-def respell_count(text: str, old: int, new: int) -> str:
+def respell_count(text: str, old: float, new: float) -> str:
     """Write a new count of fins or fingers the way the old one is written.
 
     Examples

@@ -1,0 +1,155 @@
+"""A block together with its sizing variables, as the rewriting of widths sees it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING, NamedTuple
+
+import numpy as np
+
+from evenstage.netlist.bindings import Bindings
+from evenstage.netlist.fingers import Drawing
+from evenstage.netlist.tracing import Tracer
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from evenstage.netlist.devices import Devices, IntArray
+    from evenstage.netlist.netlist import Card, Netlist, Parameter
+    from evenstage.process.process import Process, Transistor
+    from evenstage.source import Span
+
+
+class Slot(NamedTuple):
+    """One width of one sizing variable.
+
+    ``card`` is the number of the transistor card, or of the X card that calls a wrapped transistor.
+    ``caller`` is the number of the X card that calls the leaf holding it, where that call is the
+    sizing variable; None: the card has one width for all callers of its subcircuit.
+    """
+
+    card: int
+    caller: int | None = None
+
+
+@dataclass(frozen=True, kw_only=True)
+class SizedBlock:
+    """A block, its process and which widths belong to which sizing variable.
+
+    Parameters
+    ----------
+    devices : Devices
+        The block.
+    process : Process
+        What a card's width means.
+    variable_of : Mapping of Slot to int
+        The sizing variable of each slot; transistors outside all variables do not occur.
+    copies_per_leaf : int
+        How many sized copies of one leaf may be added.
+    """
+
+    devices: Devices
+    process: Process
+    variable_of: Mapping[Slot, int]
+    copies_per_leaf: int = 4
+
+    @property
+    def netlist(self) -> Netlist:
+        """The text."""
+        return self.devices.netlist
+
+    def transistor(self, card: int) -> Transistor:
+        """Return the type of a transistor card."""
+        model = self.devices.models[int(self.devices.model[self._device_of_card[card]])]
+        return self.process.transistors[model.type_index]
+
+    def device(self, slot: Slot) -> int:
+        """Return the first device of a slot.
+
+        Raises
+        ------
+        KeyError
+            If the block has none: a fault of ours.
+        """
+        if slot.caller is None:
+            return self._device_of_card[slot.card]
+        return self._device_of_call[slot.card, slot.caller]
+
+    def drawing(self, slot: Slot) -> Drawing:
+        """Return how a slot is drawn."""
+        device = self.device(slot)
+        return Drawing(float(self.devices.width[device]), float(self.devices.fingers[device]))
+
+    def has_one_width(self, slot: Slot) -> bool:
+        """Tell whether all devices of a slot are equally wide."""
+        mine = self.devices.card == slot.card
+        if slot.caller is not None:
+            mine &= self._callers == slot.caller
+        widths = self.devices.width[mine]
+        return bool(np.ptp(widths) <= 1e-9 * widths.max())
+
+    def own_width(self, card: Card) -> Parameter | None:
+        """Return the width as a transistor card gives it, or None if it does not."""
+        return card.parameter(self.width_name(card))
+
+    def width_name(self, card: Card) -> str:
+        """Return the parameter that holds the width of a transistor card."""
+        wrapped = self.wrapper_default(card)
+        return wrapped.name if wrapped else self.transistor(card.number).width_parameter.lower()
+
+    def wrapper_default(self, card: Card) -> Parameter | None:
+        """Return the parameter of a wrapper that its transistor's width follows, or None."""
+        wrapper = self.netlist.subcircuits.get(card.target.lower()) if card.letter == "x" else None
+        if wrapper is None:
+            return None
+        name = self.transistor(card.number).width_parameter.lower()
+        for number in wrapper.cards:
+            inner = self.netlist.card(number).parameter(name)
+            if inner is not None:
+                found = self.tracer.roots(inner.text, card.target.lower(), (None,))
+                single = [root for roots in found[:1] for root in roots if len(roots) == 1]
+                return next((r.parameter for r in single if r.kind == "default"), None)
+        return None
+
+    def is_editable(self, span: Span) -> bool:
+        """Tell whether a span's file lies in the folder of the main file or below it."""
+        return span.source.path.is_relative_to(self.netlist.sources[0].path.parent)
+
+    def holds_definitions(self, scope: str) -> bool:
+        """Tell whether further subcircuits are defined inside one."""
+        outer = self.netlist.subcircuits[scope].body
+        bodies = [s.body for s in self.netlist.subcircuits.values()]
+        return outer is None or any(_is_inside(body, outer) for body in bodies if body)
+
+    @cached_property
+    def bindings(self) -> Bindings:
+        """The parameter names of the text."""
+        return Bindings(self.netlist, frozenset(self._device_of_card))
+
+    @cached_property
+    def tracer(self) -> Tracer:
+        """Finds the numbers that widths come from."""
+        return Tracer(self.bindings)
+
+    @cached_property
+    def _callers(self) -> IntArray:
+        """Number of the X card that calls each transistor's subcircuit, -1 for the block's own."""
+        return self.devices.instance_card[self.devices.instance]
+
+    @cached_property
+    def _device_of_card(self) -> dict[int, int]:
+        cards, firsts = np.unique(self.devices.card, return_index=True)
+        return dict(zip(cards.tolist(), firsts.tolist(), strict=True))
+
+    @cached_property
+    def _device_of_call(self) -> dict[tuple[int, int], int]:
+        pairs = np.stack([self.devices.card, self._callers])
+        pairs, firsts = np.unique(pairs, axis=1, return_index=True)
+        return dict(zip(zip(*pairs.tolist(), strict=True), firsts.tolist(), strict=True))
+
+
+def _is_inside(inner: Span, outer: Span) -> bool:
+    """Tell whether one definition stands inside another."""
+    same_file = inner.source.path == outer.source.path
+    return same_file and outer.start < inner.start and inner.end <= outer.end
