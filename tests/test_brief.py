@@ -71,7 +71,16 @@ def texts(patterns: Iterable[Pattern]) -> list[str]:
     return [pattern.text for pattern in patterns]
 
 
+SAMPLES = sorted((Path(__file__).parents[1] / "sample_netlists").glob("*/brief.toml"))
+
+
 class TestReadBrief:
+    @pytest.mark.parametrize("path", SAMPLES, ids=lambda path: path.parent.name)
+    def test_samples(self, path: Path) -> None:
+        brief = read_brief(path)
+        assert brief.inputs
+        assert all(output.load for output in brief.outputs)
+
     def test_an_empty_brief_says_nothing(self, read: Read) -> None:
         brief = read("")
         assert brief == Brief(source=brief.source)

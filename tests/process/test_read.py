@@ -69,7 +69,16 @@ def without_names(transistor: Transistor) -> dict[str, object]:
     return {name: getattr(transistor, name) for name in names}
 
 
+SAMPLES = sorted((Path(__file__).parents[2] / "sample_netlists").glob("*/process.toml"))
+
+
 class TestReadProcess:
+    @pytest.mark.parametrize("path", SAMPLES, ids=lambda path: path.parent.name)
+    def test_samples(self, path: Path) -> None:
+        process = read_process(path)
+        assert process.name.startswith("invented")
+        assert all(transistor.width_min for transistor in process.transistors)
+
     def test_required_keys_only(self, read: Read) -> None:
         process = read(LEAST)
         assert (process.name, process.supply, process.origin) == ("invented", 1.8, "file")
