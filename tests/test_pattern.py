@@ -61,6 +61,23 @@ class TestSelect:
             4,
         ]
 
+    def test_a_name_met_twice_is_selected_twice(self) -> None:
+        assert select([Pattern("CLK")], ["clk", "x", "Clk"], "net") == [0, 2]
+
+    @settings(max_examples=60, deadline=None)
+    @given(
+        st.lists(st.text("aB?*", min_size=1, max_size=3), min_size=1, max_size=3),
+        st.lists(st.text("AbaB", max_size=3), max_size=8),
+    )
+    def test_selects_what_fits(self, texts: list[str], names: list[str]) -> None:
+        patterns = [Pattern(text) for text in texts]
+        fitting = [i for i, name in enumerate(names) if any(p.fits(name) for p in patterns)]
+        if all(any(p.fits(name) for name in names) for p in patterns):
+            assert select(patterns, names, "net") == fitting
+        else:
+            with pytest.raises(SettingsError):
+                select(patterns, names, "net")
+
     def test_no_pattern_selects_nothing(self) -> None:
         assert select([], NETS, "net") == []
 

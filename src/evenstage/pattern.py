@@ -18,6 +18,8 @@ if TYPE_CHECKING:
 
     from evenstage.source import Span
 
+_WILD: Final = re.compile(r"[*?]")
+
 #: Comparing a name with its likes takes some 10 us, so a wrong pattern meets at most this many.
 _NAMES_COMPARED: Final = 20_000
 
@@ -42,15 +44,25 @@ class Pattern:
     text: str
     span: Span | None = None
 
+    @property
+    def is_plain(self) -> bool:
+        """Whether it holds no wildcard."""
+        return not _WILD.search(self.text)
+
     @cached_property
     def _regex(self) -> re.Pattern[str]:
         wild = {"*": ".*", "?": "."}
-        expression = "".join(wild.get(c, re.escape(c)) for c in self.text)
-        return re.compile(expression, re.IGNORECASE | re.DOTALL)
+        text = self.text.lower()
+        return re.compile("".join(wild.get(c, re.escape(c)) for c in text), re.DOTALL)
 
     def fits(self, name: str) -> bool:
         """Tell whether the whole name matches."""
-        return self._regex.fullmatch(name) is not None
+        return self._regex.fullmatch(name.lower()) is not None
+
+    def fitting(self, lower_names: Iterable[str]) -> list[int]:
+        """Return the indices of those names, all in lower case, that match."""
+        matches = self._regex.fullmatch
+        return [index for index, name in enumerate(lower_names) if matches(name)]
 
 
 def select(patterns: Sequence[Pattern], names: Sequence[str], what: str) -> list[int]:
@@ -80,9 +92,15 @@ def select(patterns: Sequence[Pattern], names: Sequence[str], what: str) -> list
     >>> select([Pattern("a*"), Pattern("b0")], ["A0", "a1", "b0", "b1"], "net")
     [0, 1, 2]
     """
+    lower_names = [name.lower() for name in names]
+    places: dict[str, list[int]] = {}
+    if any(pattern.is_plain for pattern in patterns):
+        for index, name in enumerate(lower_names):
+            places.setdefault(name, []).append(index)
     found: set[int] = set()
     for pattern in patterns:
-        fitting = [index for index, name in enumerate(names) if pattern.fits(name)]
+        plain = places.get(pattern.text.lower(), [])
+        fitting = plain if pattern.is_plain else pattern.fitting(lower_names)
         if not fitting:
             raise _matches_nothing(pattern, names, what)
         found.update(fitting)
@@ -116,7 +134,7 @@ def nearest_names(text: str, names: Iterable[str], count: int = 3) -> list[str]:
     >>> nearest_names("wl<8>", ["wl<0>", "clk", "WL<80>"])
     ['WL<80>', 'wl<0>']
     """
-    wanted = re.sub(r"[*?]", "", text).lower()
+    wanted = _WILD.sub("", text).lower()
     known = {name.lower(): name for name in sorted(set(names), reverse=True)}
     if len(known) > _NAMES_COMPARED:
         known = {low: name for low, name in known.items() if low[:1] == wanted[:1]}
