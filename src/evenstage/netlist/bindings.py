@@ -49,7 +49,7 @@ class Place(NamedTuple):
 
 
 class Use(NamedTuple):
-    """A parameter of a card that depends on a name, where its subcircuit is called by ``caller``."""
+    """A card parameter that depends on a name, where ``caller`` calls the card's subcircuit."""
 
     card: int
     name: str
@@ -167,7 +167,7 @@ class Bindings:
         for number in range(len(self.netlist)):
             card = self.netlist.card(number)
             for parameter in (*card.parameters, *([card.value] if card.value else [])):
-                for name in self._outer_names(card, parameter):
+                for name in names_in(parameter.text):
                     mentions[card.scope, name].append(_Mention(card.scope, number, parameter.name))
         return mentions
 
@@ -185,14 +185,6 @@ class Bindings:
         if place.scope and names_in(parameter.text) == (place.name,):
             return Binding(place, parameter, kind, "", (None,))
         return Binding(place, parameter, kind, place.scope, (place.caller,))
-
-    def _outer_names(self, card: Card, parameter: Parameter) -> tuple[str, ...]:
-        """Return the names a card's parameter takes from its scope rather than from its card."""
-        names = names_in(parameter.text)
-        if not names or self._is_call(card):
-            return names
-        own = {p.name for p in card.parameters} - {parameter.name}
-        return tuple(name for name in names if name not in own)
 
     def _direct(self, place: Place) -> Iterator[Use | Place]:
         """Yield what uses a name in one step."""

@@ -86,7 +86,7 @@ def drawable(width: float, now: Drawing, transistor: Transistor, step: float | N
     transistor : Transistor
         What the card's width means.
     step : float or None
-        Grid of what is drawn, m: of the total, of one finger, or the width of one fin.
+        Grid of what is drawn, m: of the total, or of one finger, or the width of one fin.
 
     Returns
     -------

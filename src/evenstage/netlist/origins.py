@@ -10,7 +10,6 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final, Literal
 
-from evenstage.netlist.bindings import names_in
 from evenstage.netlist.sized_block import Slot
 from evenstage.netlist.spelling import is_number
 
@@ -41,14 +40,11 @@ class Origin:
         a copy of the leaf.
     model : str
         The number whose spelling is followed.
-    added_to : int, optional
-        Card that does not give the parameter yet; there it is added.
     """
 
     parameter: Parameter
     way: Way
     model: str
-    added_to: int | None = None
 
 
 def find_origins(block: SizedBlock, slot: Slot) -> tuple[Origin, ...] | str:
@@ -58,8 +54,9 @@ def find_origins(block: SizedBlock, slot: Slot) -> tuple[Origin, ...] | str:
         return "it stands in a subcircuit that its leaf calls"
     own = block.own_width(card)
     if own is None:
-        found = _added(block, slot, card)
-    elif is_number(own.text):
+        return "its card gives no width"
+    found: tuple[Origin, ...] | str
+    if is_number(own.text):
         found = (Origin(parameter=own, way=_local(slot), model=own.text),)
     else:
         found = _from_parameters(block, slot, card, own)
@@ -73,22 +70,13 @@ def _local(slot: Slot) -> Way:
     return "shared" if slot.caller is None else "leaf"
 
 
-def _added(block: SizedBlock, slot: Slot, card: Card) -> tuple[Origin, ...] | str:
-    """Return the width that a call of a wrapped transistor leaves to the wrapper's default."""
-    default = block.wrapper_default(card)
-    if default is None:
-        return "its card gives no width"
-    return (Origin(parameter=default, way=_local(slot), model=default.text, added_to=card.number),)
-
-
 def _from_parameters(
     block: SizedBlock, slot: Slot, card: Card, own: Parameter
 ) -> tuple[Origin, ...] | str:
     """Return the numbers behind a width that is an expression."""
-    siblings = {p.name for p in card.parameters} - {own.name}
     ways = block.bindings.callers(card.scope) if slot.caller is None else (slot.caller,)
     traced = block.tracer.roots(own.text, card.scope, ways)
-    if not traced or siblings.intersection(names_in(own.text)):
+    if not traced:
         return f"its width {own.text} is not in proportion to parameters"
     for roots in traced:
         if all(_serves_alone(block, slot, root) for root in roots):
@@ -134,12 +122,8 @@ def _obstacle(block: SizedBlock, slot: Slot, origin: Origin) -> str:
     """Return why an origin cannot be changed after all, or nothing."""
     card = block.netlist.card(slot.card)
     caller = None if slot.caller is None else block.netlist.card(slot.caller)
-    if origin.added_to is not None and not is_number(origin.model):
-        return f"the default {origin.model} of its wrapper is not a number"
-    if origin.way in {"shared", "leaf", "detached"}:
-        written = card.span if origin.added_to is not None else origin.parameter.span
-        if not block.is_editable(written):
-            return _OUTSIDE
+    if origin.way != "default" and not block.is_editable(origin.parameter.span):
+        return _OUTSIDE
     if origin.way == "shared" or caller is None:
         return ""
     if not block.is_editable(caller.span):

@@ -94,23 +94,8 @@ class SizedBlock:
         return card.parameter(self.width_name(card))
 
     def width_name(self, card: Card) -> str:
-        """Return the parameter that holds the width of a transistor card."""
-        wrapped = self.wrapper_default(card)
-        return wrapped.name if wrapped else self.transistor(card.number).width_parameter.lower()
-
-    def wrapper_default(self, card: Card) -> Parameter | None:
-        """Return the parameter of a wrapper that its transistor's width follows, or None."""
-        wrapper = self.netlist.subcircuits.get(card.target.lower()) if card.letter == "x" else None
-        if wrapper is None:
-            return None
-        name = self.transistor(card.number).width_parameter.lower()
-        for number in wrapper.cards:
-            inner = self.netlist.card(number).parameter(name)
-            if inner is not None:
-                found = self.tracer.roots(inner.text, card.target.lower(), (None,))
-                single = [root for roots in found[:1] for root in roots if len(roots) == 1]
-                return next((r.parameter for r in single if r.kind == "default"), None)
-        return None
+        """Return the lower-case name of the parameter that holds a transistor card's width."""
+        return self.transistor(card.number).width_parameter.lower()
 
     def is_editable(self, span: Span) -> bool:
         """Tell whether a span's file lies in the folder of the main file or below it."""

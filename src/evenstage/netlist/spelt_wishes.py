@@ -113,8 +113,7 @@ class _Wish:
         factor = parse_value(text).number / before
         if self.handle.transistor.width_is == "finger":
             factor *= self.then.fingers / self.now.fingers
-        span = origin.parameter.span if origin.added_to is None else self._end
-        return SpeltValue(origin.way, self._respelling(origin.parameter, span, text), factor)
+        return SpeltValue(origin.way, self._respelling(origin.parameter, text), factor)
 
     def fingers(self) -> Iterator[SpeltValue]:
         """Yield the new number of fingers where it changes."""
@@ -125,7 +124,7 @@ class _Wish:
         factor = self.then.width / self.now.width
         if written is not None:
             text = respell_count(written.text, self.now.fingers, self.then.fingers)
-            respelling = self._respelling(written, written.span, text)
+            respelling = self._respelling(written, text)
         else:
             own = self.handle.origins[0].parameter.name_span.text
             respelling = Respelling(
@@ -155,7 +154,7 @@ class _Wish:
                 parameter = self.card.parameter(name)
                 text = parameter and self._grown(parameter, growth)
                 if parameter and text:
-                    respelling = self._respelling(parameter, parameter.span, text, follows=True)
+                    respelling = self._respelling(parameter, text, follows=True)
                     yield SpeltValue(self.local, respelling, factor)
 
     def _grown(self, parameter: Parameter, growth: float) -> str | None:
@@ -163,8 +162,7 @@ class _Wish:
         if is_number(parameter.text):
             zero = parse_value(parameter.text).number == 0
             return None if zero else respell(parameter.text, 1.0, growth)
-        own = {p.name for p in self.card.parameters}
-        if self.local != "detached" or own.issuperset(names_in(parameter.text)):
+        if self.local != "detached" or not names_in(parameter.text):
             return None
         caller = self.handle.slot.caller
         value = self.block.tracer.value_on_card(self.card, parameter, caller) * growth
@@ -176,11 +174,9 @@ class _Wish:
         span = self.card.span
         return Span(span.source, span.end, span.end)
 
-    def _respelling(
-        self, parameter: Parameter, span: Span, text: str, *, follows: bool = False
-    ) -> Respelling:
+    def _respelling(self, parameter: Parameter, text: str, *, follows: bool = False) -> Respelling:
         return Respelling(
-            span=span,
+            span=parameter.span,
             name=parameter.name_span.text,
             old=parameter.text,
             new=text,

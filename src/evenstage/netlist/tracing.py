@@ -122,21 +122,16 @@ class Tracer:
         Parameters
         ----------
         card : Card
-            The transistor card; its own parameters come before those of its scope.
+            The transistor card.
         parameter : Parameter
             One of the card's.
         caller : int or None
             The way its subcircuit is called.
         """
-
-        def lookup(name: str) -> float:
-            own = card.parameter(name) if name != parameter.name else None
-            if own is None:
-                return self.value(Place(card.scope, name, caller))
-            return self.value_on_card(card, own, caller)
-
         try:
-            return _evaluate(parameter.text, lookup)
+            return _evaluate(
+                parameter.text, lambda name: self.value(Place(card.scope, name, caller))
+            )
         except FormulaError:
             return math.nan
 
