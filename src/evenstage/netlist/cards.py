@@ -91,13 +91,24 @@ class CardTable:
         """Make the card of a number."""
         if not 0 <= number < len(self):
             raise IndexError(number)
-        source, text, scope = self._place(number)
+        source, _, scope = self._place(number)
+        return _card(number, self._fields(number), source, scope)
+
+    def _fields(self, number: int) -> list[Field]:
+        source, text, _ = self._place(number)
         shape = self._shape_of[number]
         if shape == _ODD:
-            fields = _fields_of_statement(self._odd[number], source)
-        else:
-            fields = _fields_of_shape(self._shapes[shape], text, self._starts[number])
-        return _card(number, fields, source, scope)
+            return _fields_of_statement(self._odd[number], source)
+        return _fields_of_shape(self._shapes[shape], text, self._starts[number])
+
+    def node_names(self, places: Sequence[tuple[int, int]]) -> list[str]:
+        """Return nets as written, each by card number and position on the card."""
+        names = []
+        for number, position in places:
+            nodes = [field for field in self._fields(number) if field[0] == "node"]
+            _, start, end = nodes[position]
+            names.append(Span(self._place(number)[0], start, end).text)
+        return names
 
     def letter(self, number: int) -> str:
         """Return the lower-case first letter of a card."""

@@ -14,6 +14,8 @@ from numpy.typing import NDArray
 from evenstage.process.process import Polarity
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from evenstage.errors import Notice
     from evenstage.netlist.netlist import Netlist
 
@@ -84,8 +86,8 @@ class Devices:
         ``subcircuits``.
     subcircuits : tuple of str
         Names of the definitions that occur (as written), the block's first.
-    net_names : tuple of str
-        Full name of every net, instance path and dots before local names.
+    net_names : Sequence of str
+        Full name of every net, instance path and dots before local names; put together on demand.
     ports : tuple of int
         Net ids of the block's ports in their order; empty for the top level.
     global_nets : frozenset of int
@@ -122,7 +124,7 @@ class Devices:
     instance_card: IntArray
     instance_subcircuit: IntArray
     subcircuits: tuple[str, ...]
-    net_names: tuple[str, ...] = field(repr=False)
+    net_names: Sequence[str] = field(repr=False)
     ports: tuple[int, ...]
     global_nets: frozenset[int]
     source_nets: tuple[tuple[int, int, float], ...]

@@ -122,6 +122,10 @@ class CardStore(Protocol):
         """Give the cards of ascending numbers in groups, each of at most a few thousand."""
         ...
 
+    def node_names(self, places: Sequence[tuple[int, int]]) -> list[str]:
+        """Return nets as written, each by card number and position on the card."""
+        ...
+
 
 @dataclass(frozen=True, kw_only=True)
 class Subcircuit:
@@ -214,6 +218,10 @@ class Netlist:
     def card_groups(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
         """Give the element cards of ascending numbers in columns, grouped by their form."""
         return self._cards.groups(numbers)
+
+    def node_names(self, places: Sequence[tuple[int, int]]) -> list[str]:
+        """Return nets as written, each by card number and position on the card."""
+        return self._cards.node_names(places)
 
     def __len__(self) -> int:
         return len(self._cards)

@@ -1,0 +1,217 @@
+"""A hierarchy of templates laid out flat: every instance, every net, every transistor.
+
+All instances of one template are alike, so nothing is done per instance in Python. Instances are
+numbered depth first in the order of the calls, which is the order a reader expects: the size of the
+subtree below each call is known beforehand, hence also the number of each instance.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+
+from evenstage.errors import ElaborationError
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.netlist.template import Template
+
+#: Instances beyond which a block is refused before the memory is.
+_MOST_INSTANCES: Final = 50_000_000
+_OWN, _PORT = -1, -2
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Flat:
+    """The layout of one block.
+
+    Global nets come first among the nets, then those of each instance in turn. A slot is a local
+    net of an instance; ``slot_base[instance] + local net`` is its number.
+
+    Parameters
+    ----------
+    template : IntArray, shape (i,)
+        Index of each instance's template.
+    parent, card : IntArray, shape (i,)
+        Enclosing instance and calling card; -1 for the block itself.
+    multiplier : FloatArray, shape (i,)
+        Product over all enclosing calls.
+    slot_base : IntArray, shape (i,)
+        First slot of each instance.
+    net : IntArray, shape (s,)
+        Net of each slot.
+    slot_of_net : IntArray, shape (m,)
+        The slot each net was made for; -1 for global nets.
+    """
+
+    template: IntArray
+    parent: IntArray
+    card: IntArray
+    multiplier: FloatArray
+    slot_base: IntArray
+    net: IntArray
+    slot_of_net: IntArray
+
+    def nets_of(self, instance: IntArray, local: IntArray) -> IntArray:
+        """Return the nets of local nets of instances."""
+        return self.net[self.slot_base[instance] + local]
+
+
+def ranges(starts: IntArray, counts: IntArray) -> IntArray:
+    """Return ``start, start + 1, ...`` for each start, ``count`` of them, one after the other."""
+    before = np.cumsum(counts) - counts
+    return np.repeat(starts - before, counts) + np.arange(counts.sum(), dtype=np.int64)
+
+
+def starts_of(counts: Sequence[int]) -> IntArray:
+    """Return where each of some runs begins when they lie one after the other, and the end."""
+    return np.concatenate([[0], np.cumsum(np.array(counts, np.int64))]).astype(np.int64)
+
+
+def flatten(
+    templates: Sequence[Template], callees: Sequence[Sequence[int]], global_keys: Sequence[bytes]
+) -> Flat:
+    """Lay out the first template and all it calls.
+
+    Parameters
+    ----------
+    templates : sequence of Template
+        Callers before callees; the block first.
+    callees : sequence of sequence of int
+        For each template the index of the template of each call.
+    global_keys : sequence of bytes
+        Lower-case names of the global nets.
+
+    Raises
+    ------
+    ElaborationError
+        If the block is too large to lay out.
+    """
+    tables = _Tables(templates, callees, global_keys)
+    placed = _place(tables)
+    return _connect(tables, *placed, len(global_keys))
+
+
+class _Tables:
+    """What the templates say, one after the other in arrays."""
+
+    def __init__(
+        self,
+        templates: Sequence[Template],
+        callees: Sequence[Sequence[int]],
+        global_keys: Sequence[bytes],
+    ) -> None:
+        global_ids = {key: i for i, key in enumerate(global_keys)}
+        self.call_start = starts_of([len(t.calls) for t in templates])
+        self.callee = np.array([c for row in callees for c in row], np.int64)
+        self.call_card = np.array([c.card for t in templates for c in t.calls], np.int64)
+        self.call_multiplier = np.concatenate([t.call_multiplier for t in templates])
+        pins = [call.nets for template in templates for call in template.calls]
+        self.pin_start = starts_of([len(nets) for nets in pins])
+        self.pins = np.array([net for nets in pins for net in nets], np.int64)
+        self.slot_start = starts_of([len(t.outline.net_keys) for t in templates])
+        # Of each local net: own to the instance, a port, or which global net.
+        self.kind = np.concatenate(
+            [_kinds(t, global_ids, block=i == 0) for i, t in enumerate(templates)]
+        )
+        self.offset = self._offsets(callees)
+
+    def _offsets(self, callees: Sequence[Sequence[int]]) -> IntArray:
+        """Return how far behind its caller each call's instance is numbered."""
+        sizes = [1] * len(callees)
+        offsets: list[list[int]] = [[] for _ in callees]
+        for index in range(len(callees) - 1, -1, -1):
+            for callee in callees[index]:
+                offsets[index].append(sizes[index])
+                sizes[index] += sizes[callee]
+        if sizes[0] > _MOST_INSTANCES:
+            message = f"the block has {sizes[0]} instances, more than {_MOST_INSTANCES}"
+            raise ElaborationError(message, code="too-large")
+        # Subtrees of definitions that are counted but too large never get here.
+        return np.array([offset for row in offsets for offset in row], np.int64)
+
+
+def _kinds(template: Template, global_ids: dict[bytes, int], *, block: bool) -> IntArray:
+    outline = template.outline
+    kinds = np.full(len(outline.net_keys), _OWN, np.int64)
+    for local, key in enumerate(outline.net_keys):
+        # A port of the block that has the name of a global net is that net.
+        if key in global_ids and (block or local >= outline.ports):
+            kinds[local] = global_ids[key]
+    if not block:
+        kinds[: outline.ports] = _PORT
+    return kinds
+
+
+def _place(
+    tables: _Tables,
+) -> tuple[IntArray, IntArray, IntArray, FloatArray, list[tuple[IntArray, IntArray]]]:
+    """Number the instances.
+
+    Returns
+    -------
+    template, parent, card : IntArray, shape (i,)
+        Of each instance.
+    multiplier : FloatArray, shape (i,)
+        Of each instance.
+    levels : list of (IntArray, IntArray)
+        Instances by depth, with the call each comes from.
+    """
+    ids = np.zeros(1, np.int64)
+    template = np.zeros(1, np.int64)
+    multiplier = np.ones(1)
+    parent, card = -np.ones(1, np.int64), -np.ones(1, np.int64)
+    found = [(ids, template, parent, card, multiplier)]
+    levels: list[tuple[IntArray, IntArray]] = []
+    while True:
+        counts = (tables.call_start[1:] - tables.call_start[:-1])[template]
+        calls = ranges(tables.call_start[template], counts)
+        if len(calls) == 0:
+            break
+        parent = np.repeat(ids, counts)
+        ids = parent + tables.offset[calls]
+        multiplier = np.repeat(multiplier, counts) * tables.call_multiplier[calls]
+        template = tables.callee[calls]
+        found.append((ids, template, parent, tables.call_card[calls], multiplier))
+        levels.append((ids, calls))
+    columns = [np.concatenate(column) for column in zip(*found, strict=True)]
+    order = np.argsort(columns[0])
+    template, parent, card, multiplier = (column[order] for column in columns[1:])
+    return template, parent, card, multiplier, levels
+
+
+def _connect(
+    tables: _Tables,
+    template: IntArray,
+    parent: IntArray,
+    card: IntArray,
+    multiplier: FloatArray,
+    levels: list[tuple[IntArray, IntArray]],
+    globals_count: int,
+) -> Flat:
+    """Give every local net of every instance its net."""
+    counts = (tables.slot_start[1:] - tables.slot_start[:-1])[template]
+    base = np.cumsum(counts) - counts
+    kind = tables.kind[ranges(tables.slot_start[template], counts)]
+    own = np.flatnonzero(kind == _OWN)
+    net = kind
+    net[own] = globals_count + np.arange(len(own))
+    for ids, calls in levels:
+        pins = tables.pin_start[calls + 1] - tables.pin_start[calls]
+        outer = (
+            np.repeat(base[parent[ids]], pins) + tables.pins[ranges(tables.pin_start[calls], pins)]
+        )
+        net[ranges(base[ids], pins)] = net[outer]
+    return Flat(
+        template=template.astype(np.int32),
+        parent=parent.astype(np.int32),
+        card=card.astype(np.int32),
+        multiplier=multiplier,
+        slot_base=base,
+        net=net.astype(np.int32),
+        slot_of_net=np.concatenate([np.full(globals_count, -1, np.int64), own]),
+    )

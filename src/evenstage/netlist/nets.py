@@ -1,0 +1,178 @@
+"""Nets of a flat block: their names, and which of them resistors make one."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+from functools import cached_property
+from typing import TYPE_CHECKING, Final, overload
+
+import numpy as np
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from numpy.typing import NDArray
+
+    from evenstage.netlist.devices import IntArray
+    from evenstage.netlist.flatten import Flat
+    from evenstage.netlist.netlist import Netlist
+    from evenstage.netlist.outline import Outline
+
+_HIGH: Final = re.compile(r"(?:a|d|i|o)?v?(?:dd|cc)\w*!?|vpwr|vpb|sup", re.IGNORECASE)
+_LOW: Final = re.compile(r"(?:a|d|i|o)?vss\w*!?|a?d?v?gnd\w*!?|vnb|ss|0", re.IGNORECASE)
+
+
+class NetNames(Sequence[str]):
+    """Full names of all nets, put together when somebody asks.
+
+    Parameters
+    ----------
+    netlist : Netlist
+        Holds the names as written.
+    flat : Flat
+        The layout.
+    outlines : Sequence of Outline
+        Of each template.
+    global_names : Sequence of str
+        Of the first nets.
+    kept : IntArray, shape (m,)
+        For each net of the block its number in the layout.
+    """
+
+    def __init__(
+        self,
+        netlist: Netlist,
+        flat: Flat,
+        outlines: Sequence[Outline],
+        global_names: Sequence[str],
+        kept: IntArray,
+    ) -> None:
+        self._netlist = netlist
+        self._flat = flat
+        self._outlines = outlines
+        self._global_names = global_names
+        self._kept = kept
+        self._paths: dict[int, str] = {0: ""}
+        self._local: dict[int, tuple[str, ...]] = {}
+
+    def __len__(self) -> int:
+        return len(self._kept)
+
+    @overload
+    def __getitem__(self, net: int) -> str: ...
+
+    @overload
+    def __getitem__(self, net: slice) -> tuple[str, ...]: ...
+
+    def __getitem__(self, net: int | slice) -> str | tuple[str, ...]:
+        """Return the name of a net."""
+        if isinstance(net, slice):
+            return tuple(self.of_layout(int(place)) for place in self._kept[net])
+        return self.of_layout(int(self._kept[net]))
+
+    def of_layout(self, net: int) -> str:
+        """Return the name of a net of the layout."""
+        if net < len(self._global_names):
+            return self._global_names[net]
+        slot = int(self._flat.slot_of_net[net])
+        instance = int(np.searchsorted(self._flat.slot_base, slot, "right")) - 1
+        local = slot - int(self._flat.slot_base[instance])
+        name = self._local_names(int(self._flat.template[instance]))[local]
+        return f"{self._path(instance)}{name}"
+
+    def _local_names(self, template: int) -> tuple[str, ...]:
+        known = self._local.get(template)
+        if known is None:
+            outline = self._outlines[template]
+            inner = self._netlist.node_names(outline.net_firsts)
+            known = self._local[template] = (*outline.subcircuit.ports, *inner)
+        return known
+
+    def _path(self, instance: int) -> str:
+        """Return the path of an instance with a dot behind it."""
+        known = self._paths.get(instance)
+        if known is None:
+            outer = self._path(int(self._flat.parent[instance]))
+            name = self._netlist.card(int(self._flat.card[instance])).name
+            known = self._paths[instance] = f"{outer}{name}."
+        return known
+
+
+class Joints:
+    """Nets made one by resistors.
+
+    Parameters
+    ----------
+    pairs : IntArray, shape (2, r)
+        Nets of the layout at the ends of each resistor.
+    nets : int
+        How many nets the layout has.
+    fixed : int
+        The first so many keep their names before all others (global nets).
+    ports : frozenset of int
+        Nets of the block's ports.
+    name : callable
+        Gives the name of a net.
+    """
+
+    def __init__(
+        self,
+        pairs: IntArray,
+        nets: int,
+        fixed: int,
+        ports: frozenset[int],
+        name: Callable[[int], str],
+    ) -> None:
+        self._nets = nets
+        self._fixed = fixed
+        self._ports = ports
+        self._name = name
+        self.joined, self._members, self._labels = self._components(pairs)
+
+    def _components(self, pairs: IntArray) -> tuple[NDArray[np.bool_], IntArray, IntArray]:
+        """Return which resistors join, the nets concerned, and the component of each.
+
+        A component that would make a high and a low supply one net is left apart.
+        """
+        members, ends = np.unique(pairs, return_inverse=True)
+        ends = ends.reshape(pairs.shape)
+        size = (len(members), len(members))
+        matrix = coo_array((np.ones(ends.shape[1], np.int8), (ends[0], ends[1])), shape=size)
+        _, labels = connected_components(matrix, directed=False)
+        shorted = np.intersect1d(
+            labels[self._supplies(members, _HIGH)], labels[self._supplies(members, _LOW)]
+        )
+        joined = ~np.isin(labels[ends[0]], shorted)
+        inside = ~np.isin(labels, shorted)
+        return joined, members[inside], labels[inside]
+
+    def _supplies(self, members: IntArray, pattern: re.Pattern[str]) -> NDArray[np.bool_]:
+        return np.array(
+            [pattern.fullmatch(self._name(int(net))) is not None for net in members], np.bool_
+        )
+
+    @cached_property
+    def representative(self) -> IntArray:
+        """For each net of the layout the net whose name it takes."""
+        result = np.arange(self._nets)
+        ranks = np.array([self._rank(int(net)) for net in self._members], np.int64)
+        order = np.lexsort((self._members, ranks, self._labels))
+        labels = self._labels[order]
+        first = np.flatnonzero(np.diff(labels, prepend=-1))
+        chosen = np.repeat(self._members[order][first], np.diff([*first, len(labels)]))
+        result[self._members[order]] = chosen
+        return result
+
+    def _rank(self, net: int) -> int:
+        """Order names: global nets, supplies, ports, plain names, parts of a net (``net:1``)."""
+        name = self._name(net)
+        if net < self._fixed:
+            return 0
+        if _HIGH.fullmatch(name) or _LOW.fullmatch(name):
+            return 1
+        if net in self._ports:
+            return 2
+        return 4 if ":" in name else 3

@@ -1,0 +1,363 @@
+"""A definition before its parameters have values: nets, transistors, calls, in columns.
+
+Made once per subcircuit however often it is called.
+"""
+
+from __future__ import annotations
+
+from collections import Counter
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Literal, NamedTuple, Protocol
+
+import numpy as np
+
+from evenstage.errors import ElaborationError
+from evenstage.netlist.columns import Column, group_column, joined
+from evenstage.netlist.expression import FormulaError
+from evenstage.netlist.values import parse_value
+
+if TYPE_CHECKING:
+    from collections.abc import Collection, Iterable, Mapping, Sequence
+
+    from evenstage.netlist.devices import IntArray
+    from evenstage.netlist.netlist import CardGroup, Netlist, Subcircuit
+
+
+class Call(NamedTuple):
+    """An X card that calls a definition: its number, the name called, local nets, parameters."""
+
+    card: int
+    target: str
+    nets: tuple[int, ...]
+    parameters: Mapping[str, str]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Rows:
+    """Cards of one kind, shape ``(n,)`` per column.
+
+    Parameters
+    ----------
+    card : IntArray
+        Card numbers.
+    nets : IntArray, shape (pins, n)
+        Local nets.
+    target : IntArray
+        Index into ``target_names``; empty for R and C.
+    target_names : tuple of str
+        Lower-case model names.
+    columns : Mapping of str to Column
+        Parameters by name; the empty name is the unnamed value.
+    """
+
+    card: IntArray
+    nets: IntArray
+    target: IntArray
+    target_names: tuple[str, ...]
+    columns: Mapping[str, Column]
+
+    def __len__(self) -> int:
+        return len(self.card)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Outline:
+    """One definition.
+
+    Local nets are numbered: the ports first, in their order, then the others as they are met.
+
+    Parameters
+    ----------
+    subcircuit : Subcircuit
+        The definition.
+    net_keys : tuple of bytes
+        Lower-case names of the local nets.
+    net_firsts : tuple of (int, int)
+        Card and position at which each net that is no port is met first.
+    transistors, capacitors, resistors : Rows
+        The cards of each kind.
+    calls : tuple of Call
+        The cards that call definitions.
+    sources : tuple of int
+        V cards.
+    others : Mapping of str to tuple of int
+        Cards that are not understood, by letter.
+    names_used : frozenset of str
+        All parameters its expressions use.
+    repeated : tuple of str
+        Lower-case names that several cards have.
+    """
+
+    subcircuit: Subcircuit
+    net_keys: tuple[bytes, ...]
+    net_firsts: tuple[tuple[int, int], ...]
+    transistors: Rows
+    capacitors: Rows
+    resistors: Rows
+    calls: tuple[Call, ...]
+    sources: tuple[int, ...]
+    others: Mapping[str, tuple[int, ...]]
+    names_used: frozenset[str]
+    repeated: tuple[str, ...]
+
+    @property
+    def ports(self) -> int:
+        """How many ports it has."""
+        return len(self.subcircuit.ports)
+
+
+CallKind = Literal["transistor", "instance", "unknown"]
+
+
+class Classifier(Protocol):
+    """Tells what the X cards are: transistors, instances of definitions, or neither."""
+
+    def call_kind(self, target: str, nets: int, parameters: Collection[str]) -> CallKind:
+        """Return what cards are that call a name with so many nets and such parameters."""
+        ...
+
+
+class _Nets:
+    """Numbers for local nets."""
+
+    def __init__(self, ports: Iterable[str]) -> None:
+        self.ids = {
+            port.encode("utf-8", "surrogateescape").lower(): i for i, port in enumerate(ports)
+        }
+        self.ports = len(self.ids)
+        self.firsts: list[tuple[int, int]] = []
+
+    def column(self, names: Sequence[bytes], numbers: Sequence[int], position: int) -> list[int]:
+        """Return the numbers of some nets; new ones are noted with the card they stand on."""
+        ids = self.ids
+        found = []
+        for name, number in zip(names, numbers, strict=True):
+            net = ids.get(name)
+            if net is None:
+                net = ids[name] = len(ids)
+                self.firsts.append((number, position))
+            found.append(net)
+        return found
+
+
+class _RowsBuilder:
+    """Collects groups of cards of one kind."""
+
+    def __init__(self, netlist: Netlist, pins: int, names: Sequence[str]) -> None:
+        self._netlist = netlist
+        self._pins = pins
+        self._columns: dict[str, list[Column]] = {name: [] for name in names}
+        self._cards: list[int] = []
+        self._nets: list[IntArray] = []
+        self._target_ids: dict[bytes, int] = {}
+        self._targets: list[int] = []
+
+    def add(self, group: CardGroup, nets: IntArray) -> None:
+        """Take a group of cards and their nets, shape ``(pins, n)``."""
+        first_row = len(self._cards)
+        for name, parts in self._columns.items():
+            parts.append(group_column(self._netlist, group, name, first_row))
+        self._cards += group.numbers
+        self._nets.append(nets)
+        ids = self._target_ids
+        self._targets += [ids.setdefault(target, len(ids)) for target in group.targets]
+
+    def rows(self) -> Rows:
+        """Return what was collected, in the order of the cards, without empty columns."""
+        cards = np.array(self._cards, np.int32)
+        order = np.argsort(cards, kind="stable")
+        nets = np.concatenate([np.zeros((self._pins, 0), np.int32), *self._nets], axis=1)
+        columns = {
+            name: joined(parts).in_order(order)
+            for name, parts in self._columns.items()
+            if any(part.styles.any() for part in parts)
+        }
+        target = np.array(self._targets, np.int32)
+        return Rows(
+            card=cards[order],
+            nets=nets[:, order],
+            target=target[order] if len(target) else target,
+            target_names=tuple(_text(name) for name in self._target_ids),
+            columns=columns,
+        )
+
+
+class OutlineBuilder:
+    """Makes outlines of definitions.
+
+    Parameters
+    ----------
+    netlist : Netlist
+        Where they stand.
+    classifier : Classifier
+        Tells transistors among the X cards.
+    geometry : sequence of str
+        Parameters of transistors that are wanted.
+    """
+
+    def __init__(self, netlist: Netlist, classifier: Classifier, geometry: Sequence[str]) -> None:
+        self._netlist = netlist
+        self._classifier = classifier
+        self._geometry = geometry
+
+    def outline(self, subcircuit: Subcircuit) -> Outline:
+        """Return the outline of a definition.
+
+        Raises
+        ------
+        ElaborationError
+            If a value on its cards cannot be read or a net is missing.
+        """
+        body = _Body(self._netlist, self._classifier, self._geometry, subcircuit)
+        for group in self._netlist.card_groups(subcircuit.cards):
+            body.add(group)
+        return body.outline()
+
+
+class _Body:
+    """The cards of one definition while they are taken in."""
+
+    def __init__(
+        self,
+        netlist: Netlist,
+        classifier: Classifier,
+        geometry: Sequence[str],
+        subcircuit: Subcircuit,
+    ) -> None:
+        self._netlist = netlist
+        self._classifier = classifier
+        self._subcircuit = subcircuit
+        self._nets = _Nets(subcircuit.ports)
+        self._transistors = _RowsBuilder(netlist, 4, geometry)
+        self._capacitors = _RowsBuilder(netlist, 2, ("", "c", "m"))
+        self._resistors = _RowsBuilder(netlist, 2, ())
+        self._calls: list[Call] = []
+        self._sources: list[int] = []
+        self._others: dict[str, list[int]] = {}
+        self._hashes: list[int] = []
+        self._takers = {
+            "m": self._take_transistors,
+            "x": self._take_calls,
+            "c": lambda group: self._capacitors.add(group, self._columns_of(group)),
+            "r": lambda group: self._resistors.add(group, self._columns_of(group)),
+            "v": self._take_sources,
+        }
+
+    def add(self, group: CardGroup) -> None:
+        """Take a group of cards."""
+        self._hashes += map(hash, group.names)
+        taker = self._takers.get(group.letter)
+        if taker is None:
+            self._others.setdefault(group.letter, []).extend(group.numbers)
+        else:
+            taker(group)
+
+    def _columns_of(self, group: CardGroup) -> IntArray:
+        columns = [
+            self._nets.column(names, group.numbers, i) for i, names in enumerate(group.nodes)
+        ]
+        return np.array(columns, np.int32).reshape(len(group.nodes), len(group.numbers))
+
+    def _take_transistors(self, group: CardGroup) -> None:
+        self._transistors.add(group, self._columns_of(group))
+
+    def _take_sources(self, group: CardGroup) -> None:
+        self._columns_of(group)
+        self._sources += group.numbers
+
+    def _take_calls(self, group: CardGroup) -> None:
+        nets = self._columns_of(group)
+        kinds = {
+            target: self._classifier.call_kind(_text(target), len(nets), group.parameters.keys())
+            for target in dict.fromkeys(group.targets)
+        }
+        rows = [row for row, target in enumerate(group.targets) if kinds[target] == "transistor"]
+        if rows:
+            self._take_wrapped(_selected(group, rows), nets[:, rows])
+        for row, target in enumerate(group.targets):
+            if kinds[target] == "instance":
+                self._calls.append(_call(group, row, nets))
+            elif kinds[target] == "unknown":
+                self._others.setdefault("x", []).append(group.numbers[row])
+
+    def _take_wrapped(self, group: CardGroup, nets: IntArray) -> None:
+        if len(nets) != 4:
+            card = self._netlist.card(group.numbers[0])
+            message = (
+                f"'{card.name}' calls the transistor '{card.target}' with {len(nets)} nets, "
+                "expected four: drain, gate, source, bulk"
+            )
+            raise ElaborationError(message, code="pin-count", span=card.span)
+        self._transistors.add(group, nets)
+
+    def outline(self) -> Outline:
+        """Return the finished outline."""
+        rows = (self._transistors.rows(), self._capacitors.rows(), self._resistors.rows())
+        calls = tuple(sorted(self._calls))
+        return Outline(
+            subcircuit=self._subcircuit,
+            net_keys=tuple(self._nets.ids),
+            net_firsts=tuple(self._nets.firsts),
+            transistors=rows[0],
+            capacitors=rows[1],
+            resistors=rows[2],
+            calls=calls,
+            sources=tuple(self._sources),
+            others={letter: tuple(cards) for letter, cards in self._others.items()},
+            names_used=frozenset(self._names_used(rows, calls)),
+            repeated=self._repeated(),
+        )
+
+    def _names_used(self, rows: Iterable[Rows], calls: Iterable[Call]) -> set[str]:
+        texts = {
+            text for kind in rows for column in kind.columns.values() for _, text in column.formulas
+        }
+        texts.update(text for call in calls for text in call.parameters.values())
+        parameters = (*self._subcircuit.defaults, *self._subcircuit.assignments)
+        texts.update(parameter.text for parameter in parameters)
+        names: set[str] = set()
+        for text in texts:
+            names |= _names_in(text)
+        return names
+
+    def _repeated(self) -> tuple[str, ...]:
+        if len(np.unique(np.array(self._hashes, np.int64))) == len(self._hashes):
+            return ()
+        cards = (self._netlist.card(number) for number in self._subcircuit.cards)
+        counts = Counter(card.name.lower() for card in cards)
+        return tuple(name for name, count in counts.items() if count > 1)
+
+
+def _call(group: CardGroup, row: int, nets: IntArray) -> Call:
+    parameters = {name: _text(column[row]) for name, column in group.parameters.items()}
+    local = tuple(nets[:, row].tolist())
+    return Call(group.numbers[row], _text(group.targets[row]), local, parameters)
+
+
+def _selected(group: CardGroup, rows: Sequence[int]) -> CardGroup:
+    """Return some rows of a group."""
+
+    def pick(column: Sequence[bytes]) -> list[bytes]:
+        return [column[row] for row in rows]
+
+    return type(group)(
+        letter=group.letter,
+        numbers=[group.numbers[row] for row in rows],
+        names=pick(group.names),
+        nodes=[pick(column) for column in group.nodes],
+        targets=pick(group.targets),
+        values=(),
+        parameters={name: pick(column) for name, column in group.parameters.items()},
+    )
+
+
+def _text(word: bytes) -> str:
+    return word.decode("utf-8", "surrogateescape")
+
+
+def _names_in(text: str) -> frozenset[str]:
+    try:
+        formula = parse_value(text).formula
+    except FormulaError:
+        return frozenset()
+    return frozenset() if formula is None else formula.names

@@ -1,0 +1,113 @@
+"""Which transistor type of the process a model name stands for."""
+
+from __future__ import annotations
+
+import re
+from typing import TYPE_CHECKING
+
+from evenstage.errors import ElaborationError, Notice
+from evenstage.netlist.devices import Model
+from evenstage.netlist.wording import listed
+
+if TYPE_CHECKING:
+    from evenstage.netlist.netlist import Netlist
+    from evenstage.process.process import Polarity, Process
+
+_BY_KIND: dict[str, Polarity] = {"nmos": "n", "pmos": "p"}
+_BY_NAME: tuple[tuple[Polarity, re.Pattern[str]], ...] = (
+    ("n", re.compile(r"nmos|nfet|nch|\An")),
+    ("p", re.compile(r"pmos|pfet|pch|\Ap")),
+)
+_BY_BULK: tuple[tuple[Polarity, re.Pattern[str]], ...] = (
+    ("n", re.compile(r"\A(?:v?ss|gnd|vgnd|vnb|vpw|sub|0)(?:\W|\d|_|\Z)")),
+    ("p", re.compile(r"\A(?:v?dd|vcc|vpwr|vpb|vnw|sup)(?:\W|\d|_|\Z)")),
+)
+
+
+class Models:
+    """The models met while elaborating, each looked up once.
+
+    Parameters
+    ----------
+    netlist : Netlist
+        Holds the ``.model`` cards.
+    process : Process
+        Holds the transistor types.
+    """
+
+    def __init__(self, netlist: Netlist, process: Process) -> None:
+        self._netlist = netlist
+        self._process = process
+        self._indices: dict[str, int] = {}
+        self._models: list[Model] = []
+        self._assumed: dict[str, list[str]] = {}
+
+    @property
+    def models(self) -> tuple[Model, ...]:
+        """All models met."""
+        return tuple(self._models)
+
+    def index(self, key: str, card: int, wrapper: str = "") -> int:
+        """Return the index of a model.
+
+        Parameters
+        ----------
+        key : str
+            Its lower-case name.
+        card : int
+            A card that names it.
+        wrapper : str
+            A subcircuit around it, whose name the process may know instead.
+
+        Raises
+        ------
+        ElaborationError
+            If nothing says whether it is n or p.
+        """
+        known = self._indices.get(key)
+        if known is None:
+            known = self._indices[key] = len(self._models)
+            self._models.append(self._model(key, card, wrapper))
+        return known
+
+    def _model(self, key: str, number: int, wrapper: str) -> Model:
+        card = self._netlist.card(number)
+        name = card.target if card.target.lower() == key else key
+        covered = (self._process.type_of(alias) for alias in (name, wrapper) if alias)
+        type_index = next((index for index in covered if index is not None), None)
+        if type_index is not None:
+            return Model(name, self._process.transistors[type_index].polarity, type_index)
+        polarity, reason = self._second_opinion(key, card.nodes[3].lower())
+        if polarity is None:
+            message = (
+                f"no transistor type covers the model '{name}', and nothing says whether it is "
+                "n or p; add it to the process file"
+            )
+            raise ElaborationError(message, code="unknown-model", span=card.target_span)
+        self._assumed.setdefault(f"{polarity}-channel by {reason}", []).append(name)
+        first = self._process.first(polarity)
+        return Model(name, polarity, self._process.transistors.index(first))
+
+    def _second_opinion(self, key: str, bulk: str) -> tuple[Polarity | None, str]:
+        model = self._netlist.models.get(key)
+        if model is not None and model.kind.lower() in _BY_KIND:
+            return _BY_KIND[model.kind.lower()], "its .model card"
+        for text, patterns, reason in (
+            (key, _BY_NAME, "its name"),
+            (bulk, _BY_BULK, "its bulk net"),
+        ):
+            fitting = [polarity for polarity, pattern in patterns if pattern.search(text)]
+            if len(fitting) == 1:
+                return fitting[0], reason
+        return None, ""
+
+    def notices(self) -> list[Notice]:
+        """Return what was assumed."""
+        return [
+            Notice(
+                "type-assumed",
+                f"no transistor type covers {listed(names)}; taken as {what}",
+                names=tuple(names),
+            )
+            for what, names in self._assumed.items()
+        ]

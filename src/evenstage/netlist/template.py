@@ -1,0 +1,251 @@
+"""Definitions with their parameters bound: what one instance of them holds, and whom it calls."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.errors import ElaborationError
+from evenstage.netlist.columns import Column, absent, value_span
+from evenstage.netlist.wording import counted
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable
+
+    from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.netlist.library import Library
+    from evenstage.netlist.netlist import Netlist
+    from evenstage.netlist.outline import Call, Outline, Rows
+    from evenstage.netlist.parameters import Scope
+    from evenstage.source import Span
+
+#: A definition and the values its caller gives it.
+Key = tuple[str, tuple[tuple[str, float], ...]]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Template:
+    """One definition with given parameters.
+
+    Parameters
+    ----------
+    outline : Outline
+        The definition.
+    card, model : IntArray, shape (n,)
+        Card number and model index of each transistor.
+    nets : IntArray, shape (4, n)
+        Local nets: drain, gate, source, bulk.
+    columns : Mapping of str to Column
+        Transistor parameters, all of them numbers.
+    multiplier : FloatArray, shape (n,)
+        Copies a caller adds to those its own parameters say.
+    capacitance : FloatArray, F, shape (k,)
+        Of each C card of the outline.
+    callee : tuple of Key
+        The template of each call that is an instance.
+    calls : tuple of Call
+        Those calls.
+    call_multiplier : FloatArray, shape (c,)
+        Their multipliers.
+    """
+
+    outline: Outline
+    card: IntArray
+    model: IntArray
+    nets: IntArray
+    columns: Mapping[str, Column]
+    multiplier: FloatArray
+    capacitance: FloatArray
+    callees: tuple[Key, ...]
+    calls: tuple[Call, ...]
+    call_multiplier: FloatArray
+
+
+class Binder:
+    """Binds definitions to parameters.
+
+    Parameters
+    ----------
+    library : Library
+        The outlines, the models and the global parameters.
+    """
+
+    def __init__(self, library: Library) -> None:
+        self._library = library
+        self._netlist: Netlist = library.netlist
+
+    def bind(self, key: Key) -> Template:
+        """Return the template of a key.
+
+        Raises
+        ------
+        ElaborationError
+            If a parameter has no value or a call does not fit its definition.
+        """
+        outline = self._library.outline(key[0])
+        scope = self._library.scope(key)
+        plain = self._own(outline, scope)
+        instances: list[tuple[Call, Key, float]] = []
+        wrapped: list[_Devices] = []
+        for call in outline.calls:
+            callee = self._key(call, scope)
+            multiplier = self._multiplier(call, scope)
+            device = self._wrapped(call, callee, multiplier)
+            if device is None:
+                instances.append((call, callee, multiplier))
+            else:
+                wrapped.append(device)
+        devices = _merged(plain, wrapped) if wrapped else plain
+        return Template(
+            outline=outline,
+            card=devices.card,
+            model=devices.model,
+            nets=devices.nets,
+            columns=devices.columns,
+            multiplier=devices.multiplier,
+            capacitance=self._capacitance(outline.capacitors, scope),
+            callees=tuple(callee for _, callee, _ in instances),
+            calls=tuple(call for call, _, _ in instances),
+            call_multiplier=np.array([m for *_, m in instances], np.float64),
+        )
+
+    def _own(self, outline: Outline, scope: Scope) -> _Devices:
+        """Return the transistors of an outline with their parameters evaluated."""
+        rows = outline.transistors
+        wrapper = outline.subcircuit.name if self._library.is_wrapper(outline) else ""
+        models = np.array(
+            [
+                self._library.models.index(
+                    name, int(rows.card[np.argmax(rows.target == i)]), wrapper
+                )
+                for i, name in enumerate(rows.target_names)
+            ],
+            np.int32,
+        )
+        return _Devices(
+            card=rows.card,
+            model=models[rows.target] if len(rows) else np.zeros(0, np.int32),
+            nets=rows.nets,
+            columns=self._bound(rows, scope),
+            multiplier=np.ones(len(rows)),
+        )
+
+    def _bound(self, rows: Rows, scope: Scope) -> dict[str, Column]:
+        def where(name: str, row: int) -> Span:
+            return value_span(self._netlist, int(rows.card[row]), name)
+
+        return {
+            name: column.bound(scope, lambda row, name=name: where(name, row))  # type: ignore[misc]  # mypy cannot type a default argument of a lambda
+            for name, column in rows.columns.items()
+        }
+
+    def _capacitance(self, rows: Rows, scope: Scope) -> FloatArray:
+        """Return the value of each C card, its multiplier included; NaN where it has none."""
+        columns = self._bound(rows, scope)
+        empty = absent(len(rows))
+        unnamed, named = (columns.get(name, empty).numbers for name in ("", "c"))
+        copies = columns.get("m", empty).numbers
+        value = np.where(np.isnan(named), unnamed, named)
+        return value * np.where(np.isnan(copies), 1.0, copies)
+
+    # Calls.
+
+    def _key(self, call: Call, scope: Scope) -> Key:
+        """Return which template a call needs."""
+        callee = self._library.outline(call.target)
+        self._check_pins(call, callee)
+        passed = tuple(
+            (name, self._evaluated(call, name, scope))
+            for name in sorted(callee.names_used & call.parameters.keys())
+        )
+        return call.target, passed
+
+    def _evaluated(self, call: Call, name: str, scope: Scope) -> float:
+        text = call.parameters[name]
+        return scope.evaluate(text, lambda: value_span(self._netlist, call.card, name))
+
+    def _multiplier(self, call: Call, scope: Scope) -> float:
+        """Return how many copies a call stands for; a parameter ``m`` of the callee is its own."""
+        callee = self._library.outline(call.target).subcircuit
+        if "m" not in call.parameters or "m" in callee.default_names:
+            return 1.0
+        multiplier = self._evaluated(call, "m", scope)
+        if multiplier <= 0:
+            message = f"a multiplier must be positive, got '{call.parameters['m']}'"
+            span = value_span(self._netlist, call.card, "m")
+            raise ElaborationError(message, code="bad-multiplier", span=span)
+        return multiplier
+
+    def _check_pins(self, call: Call, callee: Outline) -> None:
+        if len(call.nets) == callee.ports:
+            return
+        card = self._netlist.card(call.card)
+        wanted, got = counted(callee.ports, "net"), len(call.nets)
+        subcircuit = callee.subcircuit
+        assert subcircuit.header is not None
+        message = f"'{subcircuit.name}' has {wanted.replace('net', 'port')}, but '{card.name}' gives {counted(got, 'net')}"
+        note = f"'{subcircuit.name}' begins at {subcircuit.header.place}"
+        raise ElaborationError(message, code="pin-count", span=card.span, notes=(note,))
+
+    def _wrapped(self, call: Call, callee: Key, multiplier: float) -> _Devices | None:
+        """Return the transistor a call stands for if it is a wrapper's and gives its width."""
+        outline = self._library.outline(call.target)
+        if not self._library.is_wrapper(outline):
+            return None
+        inner = self._library.template(callee)
+        if len(inner.card) != 1 or not self._gives_width(call, inner):
+            return None
+        nets = np.array(call.nets, np.int32)[inner.nets]
+        return _Devices(
+            card=np.array([call.card], np.int32),
+            model=inner.model,
+            nets=nets,
+            columns=inner.columns,
+            multiplier=inner.multiplier * multiplier,
+        )
+
+    def _gives_width(self, call: Call, inner: Template) -> bool:
+        model = self._library.models.models[int(inner.model[0])]
+        name = self._library.process.transistors[model.type_index].width_parameter
+        return name in call.parameters and name in inner.outline.names_used
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Devices:
+    """Transistors of one template; see there."""
+
+    card: IntArray
+    model: IntArray
+    nets: IntArray
+    columns: Mapping[str, Column]
+    multiplier: FloatArray
+
+
+def _merged(plain: _Devices, wrapped: list[_Devices]) -> _Devices:
+    """Return all transistors in the order of their cards."""
+    parts = [plain, *wrapped]
+    order = np.argsort(np.concatenate([part.card for part in parts]), kind="stable")
+
+    def joined(arrays: Iterable[IntArray]) -> IntArray:
+        return np.concatenate(list(arrays), axis=-1)[..., order]
+
+    names = dict.fromkeys(name for part in parts for name in part.columns)
+    return _Devices(
+        card=joined(part.card for part in parts),
+        model=joined(part.model for part in parts),
+        nets=joined(part.nets for part in parts),
+        columns={name: column_of(parts, name, order) for name in names},
+        multiplier=np.concatenate([part.multiplier for part in parts])[order],
+    )
+
+
+def column_of(parts: Iterable[_Devices | Template], name: str, order: IntArray | slice) -> Column:
+    """Return one parameter of several parts in one column."""
+    columns = [part.columns.get(name) or absent(len(part.card)) for part in parts]
+    return Column(
+        np.concatenate([column.numbers for column in columns])[order],
+        np.concatenate([column.styles for column in columns])[order],
+    )

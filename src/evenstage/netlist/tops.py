@@ -1,0 +1,75 @@
+"""Which subcircuit is meant when nobody says."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from evenstage.errors import ElaborationError
+from evenstage.netlist.wording import counted, listed, nearest
+
+if TYPE_CHECKING:
+    from evenstage.brief import Brief
+    from evenstage.netlist.netlist import Netlist, Subcircuit
+
+
+def choose_top(netlist: Netlist, top: str | None, brief: Brief | None) -> str:
+    """Return the lower-case name of the subcircuit to elaborate; empty: the top level of the text.
+
+    The name given counts first, then that of the brief, then the top level if it holds transistors
+    or calls, then the only subcircuit nobody calls (of several,
+    the only one that holds transistors or calls).
+
+    Raises
+    ------
+    ElaborationError
+        If there is no such subcircuit, or no single one to choose.
+    """
+    wanted = top or (brief.top if brief is not None else None)
+    if wanted:
+        return _named(netlist, wanted)
+    if _has_devices(netlist, netlist.top):
+        return ""
+    candidates = _uncalled(netlist)
+    if len(candidates) == 1:
+        return candidates[0].name.lower()
+    if not netlist.subcircuits:
+        message = f"'{netlist.sources[0].label}' holds no transistor and no subcircuit"
+        raise ElaborationError(message, code="no-top")
+    if not candidates:
+        message = "every subcircuit is called by another; name the one to work on with --top"
+        raise ElaborationError(message, code="no-top")
+    names = [subcircuit.name for subcircuit in candidates]
+    message = (
+        f"{counted(len(names), 'subcircuit')} could be meant; "
+        f"name the one to work on with --top: {listed(names)}"
+    )
+    raise ElaborationError(message, code="ambiguous-top")
+
+
+def _named(netlist: Netlist, wanted: str) -> str:
+    if wanted.lower() in netlist.subcircuits:
+        return wanted.lower()
+    names = [subcircuit.name for subcircuit in netlist.subcircuits.values()]
+    hint = nearest(wanted, names)
+    if not hint and names:
+        hint = f"; there are {listed(names)}"
+    raise ElaborationError(f"there is no subcircuit '{wanted}'{hint}", code="unknown-top")
+
+
+def _has_devices(netlist: Netlist, subcircuit: Subcircuit) -> bool:
+    return any(group.letter in "mx" for group in netlist.card_groups(subcircuit.cards))
+
+
+def _uncalled(netlist: Netlist) -> list[Subcircuit]:
+    """Return the definitions nobody calls, in reading order; empty ones only if all are."""
+    called: set[str] = set()
+    filled: set[str] = set()
+    for key, subcircuit in netlist.subcircuits.items():
+        for group in netlist.card_groups(subcircuit.cards):
+            if group.letter == "x":
+                called |= {name.decode("utf-8", "surrogateescape") for name in group.targets}
+            if group.letter in "mx":
+                filled.add(key)
+    uncalled = [key for key in netlist.subcircuits if key not in called]
+    keys = [key for key in uncalled if key in filled] or uncalled
+    return [netlist.subcircuits[key] for key in keys]
