@@ -278,7 +278,9 @@ class Circuit:
         Nodes are gate ids with attribute ``OUTPUT``; edges carry ``NET``.
         """
         graph: nx.DiGraph[int] = nx.DiGraph()
-        graph.add_nodes_from((gate, {OUTPUT: int(net)}) for gate, net in enumerate(self.gate_output))
+        graph.add_nodes_from(
+            (gate, {OUTPUT: int(net)}) for gate, net in enumerate(self.gate_output)
+        )
         driver = self.driver_of_net
         for gate, net in zip(self.pins.gate.tolist(), self.pins.net.tolist(), strict=True):
             if driver[net] >= 0:

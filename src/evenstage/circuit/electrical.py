@@ -72,9 +72,7 @@ def electrical(devices: Devices, process: Process) -> Electrical:
     )
 
 
-def _diffusion(
-    devices: Devices, process: Process, area: FloatArray, edge: FloatArray
-) -> Scaled:
+def _diffusion(devices: Devices, process: Process, area: FloatArray, edge: FloatArray) -> Scaled:
     """Return drain or source capacitance: of its area and perimeter where both are known.
 
     With ``E = area / W`` the extent of the diffusion, the perimeter ``2 E + k W`` has a part that
@@ -89,7 +87,7 @@ def _diffusion(
     growing_edge = np.maximum(edge - 2 * extent, 0.0)
     scaling = bottom * area + side * growing_edge
     staying = side * np.minimum(2 * extent, edge)
-    known = ~np.isnan(scaling) & (area > 0)
+    known = ~np.isnan(scaling)
     return Scaled(
         np.where(known, scaling, per_width * devices.width) * devices.multiplier,
         np.where(known, staying, fixed) * devices.multiplier,

@@ -50,9 +50,7 @@ def conduction(network: Network, start: int, end: int, polarity: str) -> Express
     edges = _folded(edges, (start, end))
     if len(edges) == 1 and {edges[0][0], edges[0][1]} == {start, end}:
         return edges[0][2]
-    return _any(
-        _all(edges[i][2] for i in path) for path in sorted(_edge_paths(edges, start, end))
-    )
+    return _any(_all(edges[i][2] for i in path) for path in sorted(_edge_paths(edges, start, end)))
 
 
 _Edge = tuple[int, int, Expression]

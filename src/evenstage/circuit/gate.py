@@ -134,9 +134,7 @@ def recognise_network(
     return GateForm(devices, network, output, conduction(network, output, LOW, "n"), arcs)
 
 
-def _pulls(
-    network: Network, output: int, relations: tuple[Relation, ...]
-) -> _Pulls | Unrecognised:
+def _pulls(network: Network, output: int, relations: tuple[Relation, ...]) -> _Pulls | Unrecognised:
     up, down = network.conducts(output, HIGH, "p"), network.conducts(output, LOW, "n")
     possible = _possible(network, relations)
     anyhow_up, anyhow_down = network.conducts(output, HIGH), network.conducts(output, LOW)

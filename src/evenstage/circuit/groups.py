@@ -91,9 +91,7 @@ def _labels(devices: Devices, supplies: Supplies) -> IntArray:
     return result
 
 
-def _local_nets(
-    devices: Devices, supplies: Supplies, order: IntArray, label: IntArray
-) -> IntArray:
+def _local_nets(devices: Devices, supplies: Supplies, order: IntArray, label: IntArray) -> IntArray:
     """Return drain, gate and source of each ordered device as local nets, shape (devices, 3)."""
     nets = np.stack([devices.drain[order], devices.gate[order], devices.source[order]], axis=1)
     flat = nets.ravel().astype(np.int64)
@@ -124,10 +122,10 @@ def _alike(devices: Devices, members: IntArray, numbers: IntArray) -> list[Alike
     for index, kind in enumerate(kinds):
         which = np.flatnonzero(inverse == index)
         table = kind.reshape(size, 4)
-        network = tuple(
-            Switch("p" if p else "n", d, g, s) for p, d, g, s in table.tolist()
+        network = tuple(Switch("p" if p else "n", d, g, s) for p, d, g, s in table.tolist())
+        result.append(
+            AlikeGroups(network, members[which], _net_ids(devices, members[which], table))
         )
-        result.append(AlikeGroups(network, members[which], _net_ids(devices, members[which], table)))
     return result
 
 

@@ -101,9 +101,7 @@ class Network:
         rows = {net: row for row, net in enumerate(self.inputs)}
         table = np.empty((len(self.switches), self.vectors.shape[1]), bool)
         for index, switch in enumerate(self.switches):
-            level = (
-                self.vectors[rows[switch.gate]] if switch.gate >= 0 else switch.gate == HIGH
-            )
+            level = self.vectors[rows[switch.gate]] if switch.gate >= 0 else switch.gate == HIGH
             table[index] = level if switch.polarity == "n" else np.logical_not(level)
         return table
 

@@ -149,7 +149,9 @@ def _inner_nets(form: GateForm) -> list[int]:
     return sorted(ends - {form.output})
 
 
-def _rows(some: AlikeGroups, rows: IntArray | np.ndarray[tuple[int], np.dtype[np.intp]]) -> AlikeGroups:
+def _rows(
+    some: AlikeGroups, rows: IntArray | np.ndarray[tuple[int], np.dtype[np.intp]]
+) -> AlikeGroups:
     return AlikeGroups(some.network, some.devices[rows], some.nets[rows])
 
 
@@ -268,4 +270,3 @@ def _unit_input(process: Process) -> FloatArray | float:
         + n.c_gate_fixed
         + p.c_gate_fixed
     )
-

@@ -121,9 +121,7 @@ def pins_of(alike: tuple[AlikeGates, ...], values: Electrical) -> Pins:
     )
 
 
-def arcs_of(
-    alike: tuple[AlikeGates, ...], values: Electrical, node_cap: FloatArray
-) -> Arcs:
+def arcs_of(alike: tuple[AlikeGates, ...], values: Electrical, node_cap: FloatArray) -> Arcs:
     """Collect the arcs of all gates, ordered by gate.
 
     Parameters
@@ -173,9 +171,7 @@ def _arcs_of_form(
     res = _switch_resistance(some, values)
     cap = _node_capacitance(some, values, node_cap)
     first_device = [network.switch_of_device.index(i) for i in range(len(network.switches))]
-    return [
-        _arc_columns(some, arc, res, cap, values, first_device) for arc in some.form.arcs
-    ]
+    return [_arc_columns(some, arc, res, cap, values, first_device) for arc in some.form.arcs]
 
 
 def _arc_columns(
@@ -224,9 +220,7 @@ def _switch_resistance(some: AlikeGates, values: Electrical) -> Scaled:
     scaling = 1.0 / ((1.0 / values.resistance.scaling[some.devices]) @ member)
     fixed = values.resistance.fixed[some.devices]
     conductance = np.divide(1.0, fixed, out=np.zeros_like(fixed), where=fixed > 0) @ member
-    inverse = np.divide(
-        1.0, conductance, out=np.zeros_like(conductance), where=conductance > 0
-    )
+    inverse = np.divide(1.0, conductance, out=np.zeros_like(conductance), where=conductance > 0)
     return Scaled(scaling, inverse)
 
 

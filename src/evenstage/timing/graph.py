@@ -176,7 +176,9 @@ def _asked(circuit: Circuit, wanted: str, among: IntArray, what: str) -> IntArra
     if not chosen:
         known = circuit.net_id(wanted)
         problem = f"net '{wanted}' is not {what}" if known is not None else f"no net '{wanted}'"
-        raise NoPathError(f"{problem} in '{circuit.devices.top or 'the top level'}'", code="no-path")
+        raise NoPathError(
+            f"{problem} in '{circuit.devices.top or 'the top level'}'", code="no-path"
+        )
     return np.array(chosen, np.int32)
 
 

@@ -92,9 +92,7 @@ def _unit(process: Process) -> _Inverter:
     )
 
 
-def _transitions(
-    n: Transistor, p: Transistor, e_fall: float, e_rise: float
-) -> tuple[float, float]:
+def _transitions(n: Transistor, p: Transistor, e_fall: float, e_rise: float) -> tuple[float, float]:
     """Return the transitions that repeat along the endless chain, fall and rise, s."""
     own_fall, own_rise = (n.shape * e_fall) ** 2, (p.shape * e_rise) ** 2
     carry_n, carry_p = n.shape_carry**2, p.shape_carry**2

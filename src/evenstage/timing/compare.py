@@ -1,0 +1,158 @@
+"""Two analyses of one design side by side.
+
+Transistors are matched by instance path and card name, in any case; nets by name. Nothing else needs to
+agree, so hand-edited netlists compare as well as those the program wrote.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.timing.results import Difference, WidthDifference
+from evenstage.timing.search import leading_arcs
+from evenstage.timing.stages import describe
+
+if TYPE_CHECKING:
+    from evenstage.netlist.devices import Devices, FloatArray, IntArray
+    from evenstage.timing.results import Analysis, Path
+    from evenstage.timing.sweep import Timing
+
+
+def compare(before: Analysis, after: Analysis) -> Difference:
+    """Compare two analyses.
+
+    Raises
+    ------
+    ValueError
+        Where one carries no timing.
+    """
+    if before.timing is None or after.timing is None:
+        message = "an analysis without its timing cannot be compared"
+        raise ValueError(message)
+    names = _Names()
+    old = _Side(before.timing.circuit.devices, names)
+    new = _Side(after.timing.circuit.devices, names)
+    widths, unchanged = _widths(old, new)
+    return Difference(
+        before=before,
+        after=after,
+        widths=widths,
+        unchanged=unchanged,
+        same_path_after=_same_path(before.paths[0], after.timing),
+        same_path_before=_same_path(after.paths[0], before.timing),
+        only_before=_only(old, new),
+        only_after=_only(new, old),
+    )
+
+
+class _Names(dict[str, int]):
+    """A number for every name, in any case, the same on both sides."""
+
+    def __missing__(self, name: str) -> int:
+        self[name] = len(self)
+        return self[name]
+
+
+@dataclass(frozen=True)
+class _Side:
+    """One netlist's transistors by instance path and card name."""
+
+    devices: Devices
+    names: _Names
+
+    @cached_property
+    def keys(self) -> np.ndarray[tuple[int], np.dtype[np.int64]]:
+        """A number for each transistor's full name, shape (devices,)."""
+        block = self.devices
+        paths = [block.instance_path(i).lower() for i in range(len(block.instance_parent))]
+        path = np.array([self.names[name] for name in paths], np.int64)
+        cards, of_device = np.unique(block.card, return_inverse=True)
+        card = np.array(
+            [self.names[block.netlist.card(int(number)).name.lower()] for number in cards],
+            np.int64,
+        )
+        return path[block.instance] << 32 | card[of_device]
+
+    def named(self, device: int, before: float | None, after: float | None) -> WidthDifference:
+        """Return the difference of one transistor."""
+        block = self.devices
+        return WidthDifference(
+            instance=block.instance_path(int(block.instance[device])),
+            card=block.netlist.card(int(block.card[device])).name,
+            model=block.models[int(block.model[device])].name,
+            before=before,
+            after=after,
+        )
+
+
+def _widths(old: _Side, new: _Side) -> tuple[tuple[WidthDifference, ...], int]:
+    """Return the transistors that differ, in the order of the first netlist, and how many do not."""
+    _, here, there = np.intersect1d(old.keys, new.keys, assume_unique=False, return_indices=True)
+    a, b = _comparable(old.devices, new.devices, here, there)
+    differs = np.abs(b / a - 1) > 1e-9
+    found = [
+        (int(device), old.named(int(device), float(x), float(y)))
+        for device, x, y in zip(here[differs], a[differs], b[differs], strict=True)
+    ]
+    for device in np.setdiff1d(np.arange(len(old.devices)), here).tolist():
+        found.append((device, old.named(device, float(old.devices.width[device]), None)))
+    gone = len(old.devices)
+    for device in np.setdiff1d(np.arange(len(new.devices)), there).tolist():
+        found.append((gone + device, new.named(device, None, float(new.devices.width[device]))))
+    found.sort(key=lambda pair: pair[0])
+    return tuple(difference for _, difference in found), int((~differs).sum())
+
+
+def _comparable(
+    old: Devices, new: Devices, here: IntArray, there: IntArray
+) -> tuple[FloatArray, FloatArray]:
+    """Return the widths of matched transistors, m: of one copy, or of all where copies differ."""
+    same = old.multiplier[here] == new.multiplier[there]
+    a = old.width[here] * np.where(same, 1.0, old.multiplier[here])
+    b = new.width[there] * np.where(same, 1.0, new.multiplier[there])
+    return a, b
+
+
+def _only(one: _Side, other: _Side) -> tuple[str, ...]:
+    """Return the instances, then the nets, that the other netlist lacks."""
+    known = {
+        other.devices.instance_path(i).lower() for i in range(len(other.devices.instance_parent))
+    }
+    nets = {name.lower() for name in other.devices.net_names}
+    paths = [one.devices.instance_path(i) for i in range(len(one.devices.instance_parent))]
+    return (
+        *(path for path in paths if path.lower() not in known),
+        *(name for name in one.devices.net_names if name.lower() not in nets),
+    )
+
+
+def _same_path(path: Path, timing: Timing) -> Path | None:
+    """Return the path through the same edges of the same nets, or None where there is none."""
+    graph = timing.graph
+    wanted = [(path.start, path.start_edge), *((s.output, s.edge) for s in path.stages)]
+    node_of = {
+        (int(net), bool(rising)): node
+        for node, (net, rising) in reversed(
+            list(enumerate(zip(graph.net.tolist(), graph.rising.tolist(), strict=True)))
+        )
+    }
+    nodes = []
+    for name, edge in wanted:
+        net = timing.circuit.net_id(name)
+        node = None if net is None else node_of.get((net, edge == "rise"))
+        if node is None:
+            return None
+        nodes.append(node)
+    leading = leading_arcs(timing)
+    arc_of = {
+        (int(graph.source[arc]), int(graph.target[arc])): int(arc)
+        for arc in leading[np.isin(graph.target[leading], nodes)]
+    }
+    arcs = [arc_of.get(pair) for pair in zip(nodes, nodes[1:], strict=False)]
+    if nodes[0] not in graph.start or nodes[-1] not in graph.end or None in arcs:
+        return None
+    return describe(timing, tuple(arc for arc in arcs if arc is not None))

@@ -1,0 +1,106 @@
+"""Recognition against two openly licensed cell libraries (their Liberty functions; see `OPEN_CELLS`).
+
+The libraries are not part of the project: the tests skip where the folder beside the checkout is absent.
+What is no static complementary gate is named in a notice and counts as not recognised.
+"""
+
+from __future__ import annotations
+
+import json
+from collections import Counter
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import pytest
+from support.logic import all_vectors, function_values, values
+
+from evenstage.brief import Brief
+from evenstage.circuit.recognise import recognise
+from evenstage.errors import CircuitError
+from evenstage.netlist.elaborate import elaborate
+from evenstage.netlist.read import read
+from evenstage.pattern import Pattern
+from evenstage.process.process import Process, Transistor
+
+if TYPE_CHECKING:
+    from evenstage.circuit.circuit import Circuit
+
+OPEN_CELLS = Path(__file__).parents[3] / "shared" / "data"
+
+pytestmark = pytest.mark.skipif(
+    not (OPEN_CELLS / "cells.json").exists(), reason="the open cell data is not beside the checkout"
+)
+
+
+def process() -> Process:
+    values = {"length": 1.3e-7, "r_w": 2e-3, "c_gate": 1e-9, "c_drain": 1e-9}
+    n = Transistor(models=(Pattern("*nmos"), Pattern("nfet*")), polarity="n", **values)
+    p = Transistor(models=(Pattern("*pmos"), Pattern("pfet*")), polarity="p", **values)
+    return Process(name="any", supply=1.2, transistors=(n, p))
+
+
+def files(library: str) -> list[Path]:
+    folder = OPEN_CELLS / library
+    return (
+        sorted(folder.glob("*.cdl")) if library == "gf180_7t" else [folder / "sg13g2_stdcell.spice"]
+    )
+
+
+def circuits(library: str) -> dict[str, Circuit | str]:
+    """Return each cell's circuit, or why there is none."""
+    facts = json.loads((OPEN_CELLS / "cells.json").read_text())[library]
+    found: dict[str, Circuit | str] = {}
+    for path in files(library):
+        netlist = read(path)
+        for name, subcircuit in netlist.subcircuits.items():
+            cell = facts[subcircuit.name]
+            brief = Brief(
+                supplies_high=tuple(Pattern(net) for net in cell["power"]),
+                supplies_low=tuple(Pattern(net) for net in cell["ground"]),
+            )
+            try:
+                found[subcircuit.name] = recognise(
+                    elaborate(netlist, name, process(), brief), process(), brief
+                )
+            except CircuitError as error:
+                found[subcircuit.name] = error.code
+    return found
+
+
+def agrees(circuit: Circuit, cell: dict[str, Any]) -> bool:
+    """Tell whether every output that is known computes its function; all must be known."""
+    vectors = all_vectors(cell["inputs"])
+    nets = {name: circuit.net_id(name) for name in [*cell["inputs"], *cell["functions"]]}
+    known = values(circuit, {nets[name]: value for name, value in vectors.items()})
+    for output, function in cell["functions"].items():
+        if nets[output] not in known:
+            return False
+        expected = function_values(function, vectors)
+        assert (known[nets[output]] == expected).all(), f"{output} is not {function}"
+    return True
+
+
+@pytest.mark.parametrize(
+    ("library", "static", "cells"), [("ihp_sg13g2", 51, 84), ("gf180_7t", 140, 229)]
+)
+def test_combinational_cells_compute_their_published_functions(
+    library: str, static: int, cells: int
+) -> None:
+    """No cell computes a wrong function; only the multiplexers of pass transistors are left out."""
+    facts = json.loads((OPEN_CELLS / "cells.json").read_text())[library]
+    found = circuits(library)
+    assert len(found) == cells
+    whole, why = [], Counter[str]()
+    for name, circuit in found.items():
+        cell = facts[name]
+        if not cell["combinational"] or cell["tristate"] or not cell["inputs"]:
+            continue
+        if isinstance(circuit, str):
+            why[circuit] += 1
+        elif agrees(circuit, cell):
+            whole.append(name)
+        else:
+            assert circuit.not_understood, f"{name} is not recognised, and nothing is said"
+            why[circuit.not_understood[0].reason] += 1
+    assert len(whole) == static, why
+    assert all("pass transistors" in reason for reason in why)
