@@ -127,7 +127,7 @@ def _retargeting(netlist: Netlist, copy: LeafCopy, caller: int) -> Respelling:
         old=card.target,
         new=copy.name,
         why="; ".join(dict.fromkeys(change.why for change in told if change.why)),
-        detail=f" ({', '.join(change.note for change in told)})",
+        detail=f" ({', '.join(f'{change.card} {change.note}' for change in told)})",
     )
 
 

@@ -9,7 +9,6 @@ from __future__ import annotations
 
 import hashlib
 import re
-from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Final, Literal
 
@@ -20,7 +19,7 @@ from evenstage.source import SourceText, Span
 from evenstage.units import engineering, parse_quantity
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator
+    from collections.abc import Iterator, Mapping
     from pathlib import Path
 
     from evenstage.netlist.netlist import Netlist
@@ -167,7 +166,7 @@ def _place(data: bytes) -> int:
     first = re.compile(rb"[^\r\n]*(?:\r\n|\n|\r|\Z)").match(data, start)
     assert first is not None
     line = first.group()
-    title = re.compile(terminal("TITLE").encode(ENCODING), re.IGNORECASE).match(data[: first.end()])
+    title = re.compile(terminal("TITLE").encode(ENCODING), re.IGNORECASE).match(line)
     remark = line.startswith(b"*") and not line.startswith((b"*.", MARK))
     return first.end() if title or remark else start
 

@@ -29,6 +29,8 @@ class Respelling:
         The values as text; ``old`` is what counts so far where the card does not give it.
     why : str
         For the comment above the card.
+    card : str
+        Name of the transistor card whose width this is about.
     follows : bool
         Whether the value merely follows another one; it is then left out of the comment.
     detail : str
@@ -40,6 +42,7 @@ class Respelling:
     old: str
     new: str
     why: str
+    card: str = ""
     follows: bool = False
     detail: str = ""
 

@@ -133,6 +133,7 @@ class _Wish:
                 old=f"{self.now.fingers:g}",
                 new=f"{self.then.fingers:g}",
                 why=self.why,
+                card=self.card.name,
             )
         yield SpeltValue(self.local, respelling, factor)
 
@@ -181,5 +182,6 @@ class _Wish:
             old=parameter.text,
             new=text,
             why=self.why,
+            card=self.card.name,
             follows=follows,
         )
