@@ -1,0 +1,189 @@
+"""A primal-dual interior point for convex programmes with exponentials.
+
+For the programme of :mod:`evenstage.sizing.programme`, with slacks ``s`` of its rows and the
+distances ``y - lower`` and ``upper - y`` of its bounds put in one array ``room`` and their
+multipliers in one array ``price``, a point is optimal if
+
+    cost + weight exp(y) + J' price - price_low + price_high = 0      dual
+    f(z) + s = 0                                                      primal
+    room * price = 0,  room > 0,  price > 0                           complementary
+
+The path to it sets the last product to ``mu`` and lets mu fall (Mehrotra's predictor and corrector:
+SIAM J. Optimization 2(4), 1992; Nocedal and Wright, Numerical Optimization, 2nd ed. 2006, section
+19.3; both from memory).
+
+Ties. A size on which nothing depends would drift to the middle of what it may do. A term
+``mu/2 |y - anchor|^2`` beside the barrier keeps such sizes near where they were and the matrix
+definite; it vanishes with mu, so that it cannot spoil the answer.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+
+from evenstage.sizing.kkt import NewtonSystem, SingularError
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator
+
+    from evenstage.sizing.kkt import Linearisation
+    from evenstage.sizing.problem import FloatArray
+    from evenstage.sizing.programme import Programme
+
+#: A step changes no size by more than a factor e^2: farther away the tangent means nothing.
+_LONGEST_STEP: Final = 2.0
+#: A step goes at most this part of the way to the nearest wall.
+_TO_WALL: Final = 0.995
+#: mu does not fall below this part of the remaining residual per constraint, lest the point
+#: comes near the walls before it comes near the path.
+_MU_PER_RESIDUAL: Final = 0.01
+#: mu falls at most by this factor per step.
+_LEAST_SIGMA: Final = 1e-6
+#: Slack of the constraints that the first point does not keep.
+_FIRST_SLACK: Final = 1e-2
+
+
+@dataclass(frozen=True, kw_only=True)
+class Point:
+    """A primal and dual point, or a step between two.
+
+    Parameters
+    ----------
+    z : FloatArray, shape (variables,)
+        The programme's variables.
+    room : FloatArray, shape (rows + 2 n,)
+        Slacks of the rows, then distances to the lower and the upper bounds. They are stepped on
+        their own: beside a bound, the difference of two log sizes would have no digits left.
+    price : FloatArray, shape (rows + 2 n,)
+        Multipliers of the same.
+    """
+
+    z: FloatArray
+    room: FloatArray
+    price: FloatArray
+
+    def moved(self, step: Point, length: float) -> Point:
+        """Return the point a part of a step away."""
+        return Point(
+            z=self.z + length * step.z,
+            room=self.room + length * step.room,
+            price=self.price + length * step.price,
+        )
+
+
+def central_path(
+    programme: Programme, z: FloatArray, anchor: FloatArray, precision: float
+) -> Iterator[Point]:
+    """Yield points ever nearer to an optimal one.
+
+    Ends by itself when rounding or `precision` leaves nothing to gain.
+
+    Parameters
+    ----------
+    programme : Programme
+        What is minimised.
+    z : FloatArray, shape (variables,)
+        First point, strictly inside the bounds; it need not keep the constraints.
+    anchor : FloatArray, shape (n,)
+        Log sizes to stay near where nothing else decides.
+    precision : float
+        Gap, relative to the objective, below which mu does not go.
+    """
+    walk = _Walk(programme, anchor)
+    at = walk.first(z)
+    while True:
+        try:
+            at, finished = walk.step(at, precision)
+        except SingularError:
+            return
+        yield at
+        if finished:
+            return
+
+
+class _Walk:
+    """Steps along the central path of one programme."""
+
+    def __init__(self, programme: Programme, anchor: FloatArray) -> None:
+        self.programme = programme
+        self.anchor = anchor
+        self.system = NewtonSystem(programme)
+        self.count = programme.rows + 2 * programme.sizes
+
+    def first(self, z: FloatArray) -> Point:
+        """Return a first point whose products of room and price are all equal."""
+        p = self.programme
+        slack = np.maximum(-p.constraints(z), _FIRST_SLACK)
+        y = z[: p.sizes]
+        room = np.concatenate([slack, y - p.lower, p.upper - y])
+        return Point(z=z, room=room, price=1.0 / (self.count * room))
+
+    def step(self, at: Point, precision: float) -> tuple[Point, bool]:
+        """Return the next point and whether nothing is left to gain."""
+        p = self.programme
+        products = at.room * at.price
+        mu = float(products.mean())
+        here = self.system.linearise(at.z, at.room, at.price, mu)
+        dual = self.dual_residual(at, here, mu)
+        primal = p.constraints(at.z) + at.room[: p.rows]
+        affine = self.direction(at, here, dual, primal, products)
+        reach = self.reach(at, affine, 1.0)
+        ahead = at.moved(affine, reach)
+        sigma = min(1.0, max((float((ahead.room * ahead.price).mean()) / mu) ** 3, _LEAST_SIGMA))
+        residual = float(max(np.abs(dual).max(), np.abs(primal).max()))
+        goal = precision * p.scale(at.z)
+        target = max(
+            sigma * mu, min(mu, _MU_PER_RESIDUAL * residual / self.count), goal / self.count
+        )
+        curved = products - target + reach**2 * affine.room * affine.price
+        step = self.direction(at, here, dual, primal, curved)
+        found = self.tightened(at.moved(step, self.reach(at, step, _TO_WALL)))
+        return found, mu * self.count <= 1.1 * goal and residual <= goal
+
+    def dual_residual(self, at: Point, here: Linearisation, mu: float) -> FloatArray:
+        """Return the gradient of the Lagrangian, tie term included."""
+        p = self.programme
+        n, y = p.sizes, at.z[: p.sizes]
+        rows, low, high = np.split(at.price, [p.rows, p.rows + n])
+        dual: FloatArray = p.cost + here.jacobian.T @ rows
+        dual[:n] += p.weight * np.exp(y) - low + high + mu * (y - self.anchor)
+        return dual
+
+    def direction(
+        self,
+        at: Point,
+        here: Linearisation,
+        dual: FloatArray,
+        primal: FloatArray,
+        products: FloatArray,
+    ) -> Point:
+        """Return the Newton step that removes the given residuals."""
+        p = self.programme
+        push = -products / at.room
+        push[: p.rows] += here.theta * primal
+        rows, low, high = np.split(push, [p.rows, p.rows + p.sizes])
+        right = -dual
+        right[: p.sizes] += low - high
+        z = here.solve(right, rows)
+        dy = z[: p.sizes]
+        room = np.concatenate([-primal - here.jacobian @ z, dy, -dy])
+        return Point(z=z, room=room, price=-(products + at.price * room) / at.room)
+
+    def reach(self, at: Point, step: Point, fraction: float) -> float:
+        """Return how far a step may be gone."""
+        now = np.concatenate([at.room, at.price])
+        move = np.concatenate([step.room, step.price])
+        falling = move < 0.0
+        wall = float(np.min(-now[falling] / move[falling], initial=np.inf))
+        largest = float(np.abs(step.z[: self.programme.sizes]).max(initial=0.0))
+        return min(1.0, fraction * wall, _LONGEST_STEP / max(largest, _LONGEST_STEP))
+
+    def tightened(self, at: Point) -> Point:
+        """Return the point with the slack it has, where it keeps a constraint well enough."""
+        rows = self.programme.rows
+        kept, room = -self.programme.constraints(at.z), at.room.copy()
+        room[:rows] = np.where(kept > 0.5 * room[:rows], kept, room[:rows])
+        return Point(z=at.z, room=room, price=at.price)
