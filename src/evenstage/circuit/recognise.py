@@ -232,7 +232,7 @@ def _with_ends(circuit: Circuit, brief: Brief | None) -> Circuit:
     outside[bare] = _DEFAULT_FANOUT * _unit_input(circuit.process)
     notice = Notice(
         "default-load",
-        f"{len(bare)} outputs that nothing loads get {_DEFAULT_FANOUT} unit inverters each",
+        f"outputs that nothing loads get {_DEFAULT_FANOUT} unit inverters each: {len(bare)} of them",
         names=tuple(devices.net_names[net] for net in bare),
     )
     return replace(

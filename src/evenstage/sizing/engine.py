@@ -256,9 +256,7 @@ class Engine:
         """Tell which sizes load an input over its ceiling, or make too slow an edge, today."""
         model, limits = self.model, self.limits
         circuit, parts = model.circuit, model.variables.partition
-        over = limits.ceiling_net[
-            circuit.net_cap[limits.ceiling_net] > limits.ceiling * (1 + 1e-9)
-        ]
+        over = limits.ceiling_net[circuit.net_cap[limits.ceiling_net] > limits.ceiling * (1 + 1e-9)]
         gates = circuit.pins.gate[np.isin(circuit.pins.net, over)]
         if limits.strict:
             slow = self.today.transition[model.graph.target] > limits.transition
@@ -311,6 +309,8 @@ def _sizes_on_path(model: Model, arrival: FloatArray, delay: FloatArray) -> list
     while heads[node] < heads[node + 1]:
         some = np.arange(heads[node], heads[node + 1])
         arc = int(some[int((arrival[graph.source[some]] + delay[some]).argmax())])
-        found.append(int(model.variables.partition.of_gate[model.circuit.arcs.gate[graph.arc[arc]]]))
+        found.append(
+            int(model.variables.partition.of_gate[model.circuit.arcs.gate[graph.arc[arc]]])
+        )
         node = int(graph.source[arc])
     return found

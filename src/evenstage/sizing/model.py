@@ -129,9 +129,7 @@ class Model:
 
     def _delays(self, driven: IntArray) -> Monomials:
         """Return the delays of the programme's arcs: outside drivers first, then the graph's arcs."""
-        charge = np.where(
-            self.circuit.arcs.rising, self.unit.charge_rise, self.unit.charge_fall
-        )
+        charge = np.where(self.circuit.arcs.rising, self.unit.charge_rise, self.unit.charge_fall)
         elmore, which = self.elmore, self.graph.arc
         heads = np.searchsorted(elmore.row, np.arange(len(charge) + 1))
         count = np.diff(heads)[which]

@@ -131,9 +131,7 @@ def calling_cards(circuit: Circuit, brief: Brief | None = None) -> IntArray:
     return caller
 
 
-def _labels(
-    circuit: Circuit, brief: Brief | None, callers: IntArray
-) -> tuple[IntArray, IntArray]:
+def _labels(circuit: Circuit, brief: Brief | None, callers: IntArray) -> tuple[IntArray, IntArray]:
     """Number the sizes: gates joined by a card have one, in the order of their first card."""
     gate_of_link, card_of_link = _links(circuit, callers)
     gates, cards = len(circuit), len(circuit.devices.netlist)
@@ -185,8 +183,9 @@ def gates_named(circuit: Circuit, patterns: Sequence[Pattern]) -> list[int]:
     devices = circuit.devices
     paths = [devices.instance_path(i) for i in range(len(devices.instance_parent))]
     cards = [
-        devices.netlist.card(card).name if not paths[i] else
-        f"{paths[i]}.{devices.netlist.card(card).name}"
+        devices.netlist.card(card).name
+        if not paths[i]
+        else f"{paths[i]}.{devices.netlist.card(card).name}"
         for card, i in zip(devices.card.tolist(), devices.instance.tolist(), strict=True)
     ]
     chosen = np.array(select(patterns, [*paths[1:], *cards], "card"), np.int64)

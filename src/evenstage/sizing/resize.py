@@ -257,9 +257,7 @@ class _Job:
         index = {slot: number for number, slot in enumerate(parts.slots)}
         ratio = np.ones(len(parts.slots) + 1)
         for written in plan.written:
-            ratio[index[Slot(written.card, written.caller)]] = (
-                written.new / written.old
-            )
+            ratio[index[Slot(written.card, written.caller)]] = written.new / written.old
         return ratio[parts.slot_of_device]
 
     def _is_better(self, found: _Found, after: Timing) -> bool:
@@ -276,7 +274,7 @@ class _Job:
         if ceiling_broken.any() or slow_edges:
             return True
         wanted = self.wishes.delay
-        cheaper = found.found.drawn.cost < found.engine.cost_drawn * (1 - _GAINS)
+        cheaper = found.drawn.cost < found.engine.cost_drawn * (1 - _GAINS)
         if wanted is not None:
             return cheaper
         faster = worst_charged(after) < worst_charged(before) * (1 - _GAINS)
@@ -313,7 +311,23 @@ class _Job:
             holds=stage_holds(engine, answer, after),
             already_done=False,
             notices=tuple(notices),
+            kept=self._kept(engine),
             edits=plan.edits,
+        )
+
+    def _kept(self, engine: Engine) -> Original:
+        """Return the limits in force: the recorded ones where there are any, else today's."""
+        limits, devices = engine.limits, self.circuit.devices
+        names = [devices.net_names[net].lower() for net in limits.ceiling_net]
+        smallest = dict(self.original.smallest)
+        for index, model in enumerate(devices.models):
+            drawn = float(devices.width[devices.model == index].min())
+            smallest.setdefault(model.name.lower(), drawn)
+        return Original(
+            ceilings=dict(zip(names, limits.ceiling.tolist(), strict=True)),
+            transition=limits.transition,
+            smallest=smallest,
+            spend=engine.cost_today,
         )
 
     def _changes(self, found: _Found, plan: WidthPlan) -> tuple[Change, ...]:
@@ -323,8 +337,12 @@ class _Job:
         index = {slot: number for number, slot in enumerate(parts.slots)}
         counts = np.bincount(parts.slot_of_device[parts.slot_of_device >= 0])
         changes = []
-        for written in plan.written:
-            number = index[Slot(written.card, written.caller)]
+        handle = parts.handle[parts.of_slot]
+        ordered = sorted(
+            ((index[Slot(w.card, w.caller)], w) for w in plan.written),
+            key=lambda pair: (handle[pair[0]], pair[1].card),
+        )
+        for number, written in ordered:
             device = int(parts.first_device[number])
             gate = int(self.circuit.gate_of_device[device])
             changes.append(
@@ -341,7 +359,7 @@ class _Job:
                     why=self._why(found, int(parts.of_slot[number])),
                 )
             )
-        return tuple(sorted(changes, key=lambda c: (c.file, c.line, c.card, c.instance)))
+        return tuple(changes)
 
     def _alone(self, found: _Found, plan: WidthPlan) -> dict[int, float]:
         """Return for each size that changes by how much the worst delay moves if it alone changes."""
@@ -353,4 +371,3 @@ class _Job:
             timing = sweep(self.circuit.resized(only), self.timing.graph, self.timing.unit)
             result[size] = timing.worst - self.timing.worst
         return result
-

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Literal
 if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.netlist.edits import Edit
+    from evenstage.sizing.wishes import Original
     from evenstage.timing.results import Analysis
 
 Hold = Literal["", "lower", "upper", "fixed", "ceiling", "transition", "grid", "same size"]
@@ -92,12 +93,14 @@ class Sizing:
     free_cards, fixed_cards : int
         How many sizes could move and how many could not.
     changes : tuple of Change
-        In the order of the text.
+        Gate by gate, in the order of the text.
     holds : tuple of StageHold
         One per stage of ``after.paths[0]``.
     already_done : bool
         The netlist was written by an earlier run with these wishes; nothing changes.
     notices : tuple of Notice
+    kept : Original, optional
+        The limits the sizes were found within, for later runs to keep.
     edits : tuple of Edit
         What writes the new widths into the text.
     """
@@ -118,4 +121,5 @@ class Sizing:
     holds: tuple[StageHold, ...]
     already_done: bool
     notices: tuple[Notice, ...]
+    kept: Original | None = None
     edits: tuple[Edit, ...] = field(default=(), repr=False)

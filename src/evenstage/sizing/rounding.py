@@ -110,6 +110,32 @@ class Rounding:
         """Return the whole cost of some slot widths."""
         return self.engine.spend_fixed + float(self._cost_per_width @ width)
 
+    @cached_property
+    def _bundles_of_size(self) -> list[list[list[int]]]:
+        """The slots of each size, those that hang on one number in the text together."""
+        return [self._bundles(slots.tolist()) for slots in self._slots_of_size]
+
+    def _bundles(self, slots: list[int]) -> list[list[int]]:
+        """Group the slots whose widths come from the same numbers, the narrowest of each first."""
+        by_number: dict[tuple[object, ...], list[int]] = {}
+        for slot in slots:
+            origins = self._handle(slot).origins
+            spans = tuple((str(o.parameter.span.source.path), o.parameter.span.start) for o in origins)
+            by_number.setdefault(spans or (slot,), []).append(slot)
+        return [sorted(some, key=lambda slot: self.drawn[slot]) for some in by_number.values()]
+
+    def _draw(self, width: FloatArray, size: int, wanted: FloatArray) -> None:
+        """Write the drawable widths nearest to the wanted ones of a size's slots into ``width``.
+
+        Widths that hang on one number keep their ratio: the narrowest goes to the grid, where the
+        others, usually its multiples, then lie too.
+        """
+        for bundle in self._bundles_of_size[size]:
+            first = bundle[0]
+            ratio = self._drawable(first, float(wanted[first])) / self.drawn[first]
+            for slot in bundle:
+                width[slot] = self.drawn[slot] * ratio
+
     def _drawable(self, slot: int, wanted: float) -> float:
         """Return the nearest width a slot can say inside the bounds of its size."""
         size = int(self.engine.model.variables.partition.of_slot[slot])
@@ -139,8 +165,7 @@ class Rounding:
         width = self.drawn.copy()
         moves = self.answer.active & (np.abs(np.log(self.answer.sizes)) > _STAYS)
         for size in np.flatnonzero(moves).tolist():
-            for slot in self._slots_of_size[size].tolist():
-                width[slot] = self._drawable(slot, width[slot] * self.answer.sizes[size])
+            self._draw(width, size, self.drawn * self.answer.sizes[size])
         return width
 
     def _stepped(self, width: FloatArray, size: int, direction: int) -> FloatArray:
@@ -151,8 +176,7 @@ class Rounding:
         slots = self._slots_of_size[size].tolist()
         ratio = 1 + direction * min(self._step(slot) / width[slot] for slot in slots)
         moved = width.copy()
-        for slot in slots:
-            moved[slot] = self._drawable(slot, width[slot] * ratio)
+        self._draw(moved, size, width * ratio)
         return moved
 
     def _excess(self, timing: Timing) -> float:

@@ -121,7 +121,8 @@ def _unreached(circuit: Circuit, reached: np.ndarray[tuple[int], np.dtype[np.int
     names = tuple(circuit.gate_name(int(gate)) for gate in missing)
     return Notice(
         "not-on-a-path",
-        f"{len(names)} gates lie on no path that counts (no input reaches them, or they reach no "
-        f"path end), the first is '{names[0]}'",
+        f"{'one gate lies' if len(names) == 1 else f'{len(names)} gates lie'} on no path that counts "
+        f"(no input reaches it, or it reaches no path end): '{names[0]}'"
+        + (" and others" if len(names) > 1 else ""),
         names=names,
     )

@@ -1,0 +1,5 @@
+"""``python -m evenstage``."""
+
+from evenstage.cli import run
+
+run()

@@ -1,0 +1,276 @@
+"""What each command does: the rooms in order, once."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.brief import Brief, read_brief
+from evenstage.circuit.recognise import recognise
+from evenstage.errors import Notice, OutputError
+from evenstage.netlist.edits import rewrite
+from evenstage.netlist.elaborate import elaborate
+from evenstage.netlist.output import lost_includes, output_files, write_files
+from evenstage.netlist.read import read
+from evenstage.netlist.record import Record, digest, find_record, record_edit
+from evenstage.process.generic import at_length
+from evenstage.process.infer import infer_process
+from evenstage.process.read import read_process
+from evenstage.report.machine import (
+    analysis_document,
+    difference_document,
+    sizing_document,
+    to_json,
+)
+from evenstage.report.terminal import analysis_report, difference_report, sizing_report
+from evenstage.sizing.resize import resize as find_widths
+from evenstage.sizing.results import Sizing
+from evenstage.sizing.wishes import Original, Wishes
+from evenstage.timing.analyse import analyse as find_paths
+from evenstage.timing.compare import compare
+from evenstage.timing.results import Analysis, Difference
+
+if TYPE_CHECKING:
+    from evenstage.netlist.devices import Devices
+    from evenstage.netlist.netlist import Netlist
+    from evenstage.process.process import Process
+
+Result = Analysis | Sizing | Difference
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Question:
+    """What every command is told.
+
+    Parameters
+    ----------
+    process, brief : Path, optional
+        Their files.
+    top : str, optional
+        The subcircuit to work on.
+    start, end : str, optional
+        Nets that paths must start from or end at.
+    count : int
+        How many slowest paths are wanted.
+    """
+
+    process: Path | None = None
+    brief: Path | None = None
+    top: str | None = None
+    start: str | None = None
+    end: str | None = None
+    count: int = 1
+
+
+@dataclass(frozen=True, slots=True)
+class Block:
+    """A netlist read, elaborated and analysed."""
+
+    netlist: Netlist
+    brief: Brief
+    analysis: Analysis
+
+
+def load(path: Path, question: Question) -> Block:
+    """Read, elaborate, recognise and analyse a netlist.
+
+    Raises
+    ------
+    EvenstageError
+        For every mistake in the inputs.
+    """
+    brief = read_brief(question.brief) if question.brief else Brief()
+    netlist = read(path)
+    given = read_process(question.process) if question.process else None
+    devices = elaborate(netlist, question.top, given or _inferred(netlist), brief)
+    process = given or _settled(netlist, devices)
+    circuit = recognise(devices, process, brief)
+    analysis = find_paths(
+        circuit, brief, start=question.start, end=question.end, count=question.count
+    )
+    return Block(netlist, brief, analysis)
+
+
+def analyse(path: Path, question: Question) -> Analysis:
+    """Find the slowest paths of a netlist; raises as `load`."""
+    return load(path, question).analysis
+
+
+def diff(before: Path, after: Path, question: Question) -> Difference:
+    """Compare two netlists of one design; raises as `load`."""
+    return compare(load(before, question).analysis, load(after, question).analysis)
+
+
+def resize(
+    path: Path,
+    question: Question,
+    wishes: Wishes | None = None,
+    output: Path | None = None,
+    *,
+    force: bool = False,
+) -> Sizing:
+    """Find new widths and, where an output is named, write the netlist with them.
+
+    Raises
+    ------
+    EvenstageError
+        For every mistake in the inputs and every wish that cannot be met.
+    OutputError
+        Where the output exists (without ``force``) or cannot be written.
+    """
+    if output is not None and output.exists() and not force:
+        raise OutputError(
+            f"'{output}' exists; choose another name, or say --force to overwrite it",
+            code="output-exists",
+        )
+    block = load(path, question)
+    wishes = _with_aims(wishes or Wishes(), block.brief)
+    record = find_record(block.netlist.sources[0])
+    asked = _asked(question, wishes)
+    if record is not None and record.key == digest(block.netlist, asked):
+        sizing = _already_done(block, record, wishes)
+    else:
+        original = _original(record, wishes.spend)
+        sizing = find_widths(block.analysis, block.brief, wishes, original)
+    if output is None:
+        return sizing
+    texts = _texts(block, sizing, record, asked)
+    write_files(output_files(block.netlist, texts, output), force=force)
+    return replace(sizing, notices=(*sizing.notices, *lost_includes(block.netlist, output)))
+
+
+def write_text(path: Path, content: str, *, force: bool) -> None:
+    """Write a report as a file, whole or not at all.
+
+    Raises
+    ------
+    OutputError
+        Where it exists (without ``force``) or cannot be written.
+    """
+    write_files({path: content.encode("utf-8", "surrogateescape")}, force=force)
+
+
+def text(result: Result, *, width: int = 100, unicode: bool = True) -> str:
+    """Return a result as a report for people."""
+    if isinstance(result, Analysis):
+        return analysis_report(result, width=width, unicode=unicode)
+    if isinstance(result, Sizing):
+        return sizing_report(result, width=width, unicode=unicode)
+    return difference_report(result, width=width, unicode=unicode)
+
+
+def json(result: Result) -> str:
+    """Return a result as JSON text."""
+    if isinstance(result, Analysis):
+        return to_json(analysis_document(result))
+    if isinstance(result, Sizing):
+        return to_json(sizing_document(result))
+    return to_json(difference_document(result))
+
+
+def notices(result: Result) -> tuple[Notice, ...]:
+    """Return everything a result has to say besides itself, each once."""
+    if isinstance(result, Sizing):
+        some = (*result.before.notices, *result.notices)
+    elif isinstance(result, Difference):
+        some = (*result.before.notices, *result.after.notices)
+    else:
+        some = result.notices
+    return tuple(dict.fromkeys(some))
+
+
+def _inferred(
+    netlist: Netlist, supply: float | None = None, length: float | None = None
+) -> Process:
+    facts = [(card.name, card.kind, card.values) for card in netlist.models.values()]
+    return infer_process(facts, supply, length)
+
+
+def _settled(netlist: Netlist, devices: Devices) -> Process:
+    """Return the inferred process, now that supply and channel length are known."""
+    volts = [abs(value) for _, _, value in devices.source_nets if value]
+    length = float(np.median(devices.length)) if len(devices) else None
+    process = _inferred(netlist, max(volts, default=None), length)
+    return at_length(process, length) if process.origin == "generic" and length else process
+
+
+def _with_aims(wishes: Wishes, brief: Brief) -> Wishes:
+    """Take the aims of the brief where the command line has none."""
+    wishes = replace(wishes, spend=brief.aim_spend)
+    if wishes.delay is None and wishes.width is None:
+        return replace(wishes, delay=brief.aim_delay, width=brief.aim_width)
+    return wishes
+
+
+def _asked(question: Question, wishes: Wishes) -> str:
+    """Return all that decides an answer besides the netlist, as text."""
+    files = [path.read_bytes().hex() if path else "" for path in (question.process, question.brief)]
+    return repr((wishes, question.top, question.start, question.end, files))
+
+
+def _original(record: Record | None, spend: str) -> Original:
+    """Return the limits an earlier run recorded."""
+    if record is None:
+        return Original()
+    return Original(
+        ceilings=record.ceilings,
+        transition=record.transition,
+        smallest=record.smallest,
+        spend=record.total_width if spend == "width" else record.switched_cap,
+    )
+
+
+def _texts(block: Block, sizing: Sizing, record: Record | None, asked: str) -> dict[Path, bytes]:
+    """Return the files that change, the record at the head of the first among them."""
+    if not sizing.edits:
+        return {}
+    key = digest(block.netlist, asked, rewrite(block.netlist, sizing.edits))
+    head = record_edit(block.netlist, _record(sizing, record, key))
+    return rewrite(block.netlist, (head, *sizing.edits))
+
+
+def _record(sizing: Sizing, earlier: Record | None, key: str) -> Record:
+    """Return what later runs are told; what was first drawn stays what it was."""
+    before, kept = sizing.before, sizing.kept or Original()
+    first = earlier or before
+    return Record(
+        key=key,
+        delay_before=earlier.delay_before if earlier else before.paths[0].delay,
+        delay_after=sizing.after.paths[0].delay,
+        least_delay=sizing.least_delay,
+        total_width=first.total_width,
+        switched_cap=first.switched_cap,
+        transition=kept.transition or before.worst_transition,
+        bound=sizing.bound,
+        bound_on=sizing.bound_on,
+        gap=sizing.gap,
+        rounding_loss=sizing.rounding_loss,
+        ceilings=kept.ceilings,
+        smallest=kept.smallest,
+    )
+
+
+def _already_done(block: Block, record: Record, wishes: Wishes) -> Sizing:
+    """Return the sizing of a netlist that an earlier run wrote with the same wishes."""
+    analysis = block.analysis
+    return Sizing(
+        before=analysis,
+        after=analysis,
+        goal=wishes.words,
+        bound=record.bound,
+        bound_on=record.bound_on,
+        gap=record.gap,
+        rounding_loss=record.rounding_loss,
+        least_delay=record.least_delay,
+        total_width_before=analysis.total_width,
+        total_width_after=analysis.total_width,
+        free_cards=0,
+        fixed_cards=0,
+        changes=(),
+        holds=(),
+        already_done=True,
+        notices=(),
+    )
