@@ -32,7 +32,7 @@ def design(tmp_path: Path) -> Path:
 
 def files_below(folder: Path) -> dict[str, bytes]:
     return {
-        str(path.relative_to(folder)): path.read_bytes()
+        path.relative_to(folder).as_posix(): path.read_bytes()
         for path in sorted(folder.rglob("*"))
         if path.is_file()
     }
@@ -90,7 +90,7 @@ class TestLostIncludes:
 class TestWriteFiles:
     def test_writes_all_and_leaves_nothing_else(self, tmp_path: Path) -> None:
         write_files({tmp_path / "a.sp": b"1\r\n", tmp_path / "d" / "b.sp": b"2"}, force=False)
-        assert files_below(tmp_path) == {"a.sp": b"1\r\n", os.path.join("d", "b.sp"): b"2"}
+        assert files_below(tmp_path) == {"a.sp": b"1\r\n", "d/b.sp": b"2"}
 
     def test_refuses_to_overwrite_and_touches_nothing(self, tmp_path: Path) -> None:
         (tmp_path / "b.sp").write_bytes(b"old")

@@ -2,15 +2,15 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import pytest
-from support.sized import planned, process, rewritten, sized, wish_list
 
 from evenstage.netlist.widths import plan_widths
+from support.sized import assert_reads_back, planned, process, rewritten, sized, wish_list
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Collection, Mapping
 
 INVERTER = b"""\
 .subckt inv a y vdd vss
@@ -37,11 +37,19 @@ mp y a vdd vdd pch w=wp l=60n
 """
 
 
-def check(before: bytes, after: bytes, factors: Mapping[str, float], **how: Any) -> None:
+def check(
+    before: bytes,
+    after: bytes,
+    factors: Mapping[str, float],
+    *,
+    leaves: Collection[str] = (),
+    top: str | None = None,
+) -> None:
     """Compare a rewritten text, and that it reads back with the widths said to be written."""
-    handles = sized(before, **how)
+    handles = sized(before, leaves=leaves, top=top)
     plan = planned(handles, factors)
     assert plan.refused == ()
+    assert_reads_back(handles, plan)
     assert rewritten(handles, plan).decode("latin-1") == after.decode("latin-1")
 
 
@@ -145,6 +153,7 @@ class TestLeaves:
         calls = b"x1 a b vdd vss inv\nx2 b c vdd vss inv\nx3 c d vdd vss inv\nx4 c d vdd vss inv\n"
         handles = sized(text + calls, leaves={"inv"})
         plan = planned(handles, {"x2": 3, "x3": 2, "x4": 3})
+        assert_reads_back(handles, plan)
         after = rewritten(handles, plan)
         targets = [line.split()[-1] for line in after.splitlines() if line.startswith(b"x")]
         assert targets == [b"inv", b"inv_s2", b"inv_s3", b"inv_s2"]
@@ -252,6 +261,7 @@ class TestLeavesWithParameters:
         calls = b"x1 a b vdd vss inv\nx2 b c vdd vss inv wn=1u\n"
         handles = sized(b"t\n" + leaf + calls, leaves={"inv"})
         plan = planned(handles, {"x2": 1.5})
+        assert_reads_back(handles, plan)
         assert rewritten(handles, plan) == b"t\n" + leaf + (
             b"x1 a b vdd vss inv\n* evenstage: wn 1u -> 1.5u: reason\nx2 b c vdd vss inv wn=1.5u\n"
         )
@@ -275,7 +285,9 @@ class TestLeavesWithParameters:
         )
         calls = b"x1 a b vdd vss inv\nx2 b c vdd vss inv\n"
         handles = sized(b"t\n" + leaf + calls, leaves={"inv"})
-        after = rewritten(handles, planned(handles, {"x2": 2}))
+        plan = planned(handles, {"x2": 2})
+        assert_reads_back(handles, plan)
+        after = rewritten(handles, plan)
         assert b"* evenstage: wn 0.6u -> 1.2u: reason\n.param wn = 1.2u\nmn" in after
         assert after.startswith(b"t\n" + leaf + b"* evenstage: inv -> inv_s1: called by x2\n")
 
@@ -286,7 +298,9 @@ class TestLeavesWithParameters:
         )
         calls = b"x1 a b vdd vss inv\nx2 b c vdd vss inv\n"
         handles = sized(b"t\n.param wu=0.6u\n" + leaf + calls, leaves={"inv"})
-        after = rewritten(handles, planned(handles, {"x1": 2, "x2": 2}))
+        plan = planned(handles, {"x1": 2, "x2": 2})
+        assert_reads_back(handles, plan)
+        after = rewritten(handles, plan)
         assert b".param wu=0.6u\n" + leaf in after
         assert b"nch w=1.2u l=60n ad=3.6e-13 as='0.4p'\n" in after
         assert b"pch w=2.4u l=60n\n" in after
@@ -298,7 +312,9 @@ class TestParameters:
         row = b".subckt row a y vss w1=1u\nm1 y a vss vss nch w='w1/2' l=60n\n.ends\n"
         calls = b"x1 a y vss row\nx2 a z vss row w1=3u\nx3 a q vss row w1='4u'\n"
         handles = sized(b"t\n" + row + calls)
-        after = rewritten(handles, planned(handles, {"m1": 2}))
+        plan = planned(handles, {"m1": 2})
+        assert_reads_back(handles, plan)
+        after = rewritten(handles, plan)
         assert after == (
             b"t\n* evenstage: w1 1u -> 2u: reason\n"
             + row.replace(b"1u", b"2u")
@@ -314,7 +330,9 @@ class TestParameters:
             b"xi a y vss inner w={wo*2}\n.ends\nx1 a y vss outer wo=wtop\n"
         )
         handles = sized(text)
-        after = rewritten(handles, planned(handles, {"m1": 2}))
+        plan = planned(handles, {"m1": 2})
+        assert_reads_back(handles, plan)
+        after = rewritten(handles, plan)
         assert after == text.replace(
             b".param wtop = 2u", b"* evenstage: wtop 2u -> 4u: reason\n.param wtop = 4u"
         )
@@ -334,7 +352,9 @@ class TestFingers:
     def test_total_width(self, card: bytes, factor: float, expected: bytes) -> None:
         using = process(fingers_parameter="nf", finger_width_max=2e-6)
         handles = sized(b"t\nm1 y a vss vss nch " + card + b"\n", using=using)
-        after = rewritten(handles, planned(handles, {"m1": factor}))
+        plan = planned(handles, {"m1": factor})
+        assert_reads_back(handles, plan)
+        after = rewritten(handles, plan)
         assert after.splitlines()[-1] == b"m1 y a vss vss nch " + expected
 
     @pytest.mark.parametrize(
@@ -349,7 +369,9 @@ class TestFingers:
     def test_width_per_finger(self, card: bytes, factor: float, expected: bytes) -> None:
         using = process(fingers_parameter="nf", width_is="finger", finger_width_max=2e-6)
         handles = sized(b"t\nm1 y a vss vss nch " + card + b"\n", using=using)
-        after = rewritten(handles, planned(handles, {"m1": factor}))
+        plan = planned(handles, {"m1": factor})
+        assert_reads_back(handles, plan)
+        after = rewritten(handles, plan)
         assert after.splitlines()[-1] == b"m1 y a vss vss nch " + expected
 
     def test_the_comment_names_both(self) -> None:

@@ -2,33 +2,44 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass, replace
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, get_args
+
+import numpy as np
+import pytest
 
 from evenstage.netlist.edits import rewrite
 from evenstage.netlist.elaborate import elaborate
 from evenstage.netlist.handles import WidthHandles, width_handles
-from evenstage.netlist.netlist import Netlist
 from evenstage.netlist.read import read_bytes
 from evenstage.netlist.sized_block import Slot
 from evenstage.netlist.widths import WidthPlan, WidthWish, plan_widths
 from evenstage.pattern import Pattern
-from evenstage.process.process import Process, Transistor
+from evenstage.process.process import Polarity, Process, Transistor
 
 if TYPE_CHECKING:
     from collections.abc import Collection, Mapping
 
-
-def transistor(models: str, polarity: Any, **changed: Any) -> Transistor:
-    """Return an invented transistor type."""
-    constants = {"length": 60e-9, "r_w": 2e-3, "c_gate": 1.2e-9, "c_drain": 0.8e-9}
-    return Transistor(models=(Pattern(models),), polarity=polarity, **(constants | changed))
+    from evenstage.netlist.devices import Devices
+    from evenstage.netlist.netlist import Netlist
 
 
-def process(**changed: Any) -> Process:
-    """Return an invented process with the types n* and p*."""
-    types = (transistor("n*", "n", **changed), transistor("p*", "p", **changed))
-    return Process(name="invented", supply=1.2, transistors=types)
+def process(**changed: object) -> Process:
+    """Return an invented process with the types n* and p*, some keys of both changed."""
+    types = tuple(
+        Transistor(
+            models=(Pattern(f"{polarity}*"),),
+            polarity=polarity,
+            length=60e-9,
+            r_w=2e-3,
+            c_gate=1.2e-9,
+            c_drain=0.8e-9,
+        )
+        for polarity in get_args(Polarity)
+    )
+    changed_types = tuple(replace(kind, **changed) for kind in types)  # type: ignore[arg-type]  # checked by each test
+    return Process(name="invented", supply=1.2, transistors=changed_types)
 
 
 def sized(
@@ -42,8 +53,8 @@ def sized(
 ) -> WidthHandles:
     """Return the handles of a block.
 
-    Each call of a leaf is a variable; so are all cards of any other subcircuit together, but for the
-    names in ``apart``, which have variables of their own.
+    Each call of a leaf is a variable; so are all cards of any other subcircuit together, but for
+    the names in ``apart``, which have variables of their own.
     """
     netlist = read_bytes(text, "a.sp", Path("/design")) if isinstance(text, bytes) else text
     using = using or process()
@@ -90,3 +101,57 @@ def rewritten(handles: WidthHandles, plan: WidthPlan) -> bytes:
     """Return the main file after a plan."""
     main = handles.block.netlist.sources[0]
     return rewrite(handles.block.netlist, plan.edits).get(main.path, main.data)
+
+
+@dataclass(frozen=True, slots=True)
+class Laid:
+    """A transistor of a block without its width."""
+
+    nets: tuple[str, ...]
+    model: str
+    length: float
+    multiplier: float
+
+
+def laid_out(devices: Devices) -> dict[str, Laid]:
+    """Return how each transistor is connected, by its path."""
+    pins = np.stack([devices.drain, devices.gate, devices.source, devices.bulk], axis=1)
+    return {
+        devices.card_path(int(devices.card[i]), int(devices.instance[i])): Laid(
+            tuple(devices.net_names[net] for net in pins[i]),
+            devices.models[devices.model[i]].name,
+            float(devices.length[i]),
+            float(devices.multiplier[i]),
+        )
+        for i in range(len(devices))
+    }
+
+
+def widths(devices: Devices) -> dict[str, float]:
+    """Return the width of each transistor, m, by its path."""
+    return {
+        devices.card_path(int(card), int(instance)): float(width)
+        for card, instance, width in zip(devices.card, devices.instance, devices.width, strict=True)
+    }
+
+
+def assert_reads_back(handles: WidthHandles, plan: WidthPlan) -> Devices:
+    """Check that the rewritten text has the same circuit with the widths said to be written."""
+    before = handles.block.devices
+    netlist = read_bytes(rewritten(handles, plan), "a.sp", Path("/design"))
+    after = elaborate(netlist, before.top or None, handles.block.process)
+    factor = {Slot(w.card, w.caller): w.new / w.old for w in plan.written}
+    callers = before.instance_card[before.instance].tolist()
+    slots = [
+        Slot(card, caller) if Slot(card, caller) in handles else Slot(card)
+        for card, caller in zip(before.card.tolist(), callers, strict=True)
+    ]
+    expected = [
+        width * factor.get(slot, 1.0)
+        for slot, width in zip(slots, before.width.tolist(), strict=True)
+    ]
+    assert laid_out(after) == laid_out(before)
+    assert widths(after) == pytest.approx(
+        dict(zip(widths(before), expected, strict=True)), rel=1e-9, abs=0
+    )
+    return after

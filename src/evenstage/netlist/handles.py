@@ -35,6 +35,8 @@ class WidthHandle:
         What to change; empty: the width is fixed.
     fingers_may_change : bool
         Whether the card can be given a further number of fingers.
+    fin : float, optional
+        Width of one fin, m, where the card counts fins.
     reason : str
         Why the width is fixed; empty where it is not.
     """
@@ -44,6 +46,7 @@ class WidthHandle:
     transistor: Transistor
     origins: tuple[Origin, ...] = ()
     fingers_may_change: bool = False
+    fin: float | None = None
     reason: str = ""
 
     @property
@@ -59,10 +62,11 @@ class WidthHandle:
         width : float
             m, all fingers together.
         step : float, optional
-            m; None: the process's ``width_step``.
+            Grid of the total width, or of one finger where the card gives the width of a finger,
+            m; None: the process's ``width_step``. Fins come whole, whatever the step.
         """
         step = step if step is not None else self.transistor.width_step
-        return drawable(width, self.drawing, self.transistor, step)
+        return drawable(width, self.drawing, self.transistor, self.fin or step)
 
 
 @dataclass(frozen=True)
@@ -79,10 +83,15 @@ class WidthHandles(Mapping[Slot, WidthHandle]):
     _found: dict[Slot, WidthHandle] = field(default_factory=dict, repr=False)
 
     def __getitem__(self, slot: Slot) -> WidthHandle:
+        if slot not in self:
+            raise KeyError(slot)
         known = self._found.get(slot)
         if known is None:
             known = self._found[slot] = _find(self.block, slot)
         return known
+
+    def __contains__(self, slot: object) -> bool:
+        return slot in self.block.variable_of
 
     def __iter__(self) -> Iterator[Slot]:
         return iter(self.block.variable_of)
@@ -148,8 +157,19 @@ def _find(block: SizedBlock, slot: Slot) -> WidthHandle:
         drawing=drawing,
         transistor=transistor,
         origins=found,
+        fin=_fin(block, slot, drawing.width),
         fingers_may_change=_fingers_may_change(block, slot, found, drawing.fingers),
     )
+
+
+def _fin(block: SizedBlock, slot: Slot, width: float) -> float | None:
+    """Return the width of one fin where the card counts fins."""
+    card = block.netlist.card(slot.card)
+    count = block.own_width(card)
+    if count is None or block.transistor(slot.card).width_is != "fins":
+        return None
+    way = slot.caller if slot.caller is not None else block.bindings.callers(card.scope)[0]
+    return width / block.tracer.value_on_card(card, count, way)
 
 
 def _fingers_may_change(

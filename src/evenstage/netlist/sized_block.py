@@ -67,14 +67,17 @@ class SizedBlock:
     def device(self, slot: Slot) -> int:
         """Return the first device of a slot.
 
+        On a call that reaches the card only through further calls it is the card's first device.
+
         Raises
         ------
         KeyError
             If the block has none: a fault of ours.
         """
-        if slot.caller is None:
-            return self._device_of_card[slot.card]
-        return self._device_of_call[slot.card, slot.caller]
+        on_call = None
+        if slot.caller is not None:
+            on_call = self._device_of_call.get((slot.card, slot.caller))
+        return self._device_of_card[slot.card] if on_call is None else on_call
 
     def drawing(self, slot: Slot) -> Drawing:
         """Return how a slot is drawn."""
