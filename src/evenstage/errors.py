@@ -2,13 +2,18 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
     from evenstage.source import Span
 
+_LINE_END = re.compile(r"[\r\n]")
 _TAB = 8
+#: Longest line shown whole, and how much of a longer one stands before the cause.
+_WIDTH = 100
+_LEAD = 40
 
 
 class EvenstageError(Exception):
@@ -100,14 +105,27 @@ class Notice:
 
 
 def excerpt(span: Span) -> list[str]:
-    """Return the line a span begins in and a line of carets under the span's part of it."""
+    """Return the line a span begins in and a line of carets under the span's part of it.
+
+    Of a line longer than some hundred columns only the part around the cause is shown.
+    """
     source = span.source
-    number = source.line_number(span.start)
-    line = source.line(number)
+    line = source.line(source.line_number(span.start))
     left = source.column(span.start) - 1
-    marked = min(len(span.text.split("\n")[0].rstrip("\r")), len(line) - left)
+    marked = min(len(_LINE_END.split(span.text, maxsplit=1)[0]), len(line) - left)
+    line, left = _window(line, left)
     before = line[:left].expandtabs(_TAB)
     under = line[: left + marked].expandtabs(_TAB)
-    carets = "^" * max(1, len(under) - len(before))
     shown = line.expandtabs(_TAB).encode("utf-8", "replace").decode()
+    carets = "^" * max(1, min(len(under), len(shown)) - len(before))
     return [f"    {shown}", f"    {' ' * len(before)}{carets}"]
+
+
+def _window(line: str, left: int) -> tuple[str, int]:
+    """Return the part of a line around a place in it, and the place in that part."""
+    if len(line) <= _WIDTH:
+        return line, left
+    first = max(0, min(left - _LEAD, len(line) - _WIDTH))
+    head = "..." if first else ""
+    tail = "..." if first + _WIDTH < len(line) else ""
+    return f"{head}{line[first : first + _WIDTH]}{tail}", left - first + len(head)

@@ -28,6 +28,7 @@ if TYPE_CHECKING:
 _CHUNK = 4096
 _ODD = -1
 _WORD = re.compile(rb"[^\x00-\x20,]+")
+_NAME = re.compile(rb"[^\x00-\x20=,()'\"{}]+")
 _NUMERIC = re.compile(r"[+-]?\.?[0-9]|['\"{(]")
 
 #: Nets of the kinds of element that are kept but not understood.
@@ -101,18 +102,34 @@ class CardTable:
             return _fields_of_statement(self._odd[number], source)
         return _fields_of_shape(self._shapes[shape], text, self._starts[number])
 
+    def name(self, number: int) -> str:
+        """Return the name of a card as written, without making the card."""
+        source = self._place(number)[0]
+        match = _NAME.match(source.data, self._starts[number])
+        assert match is not None
+        return match[0].decode("utf-8", "surrogateescape")
+
+    def scope(self, number: int) -> str:
+        """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
+        return self._place(number)[2]
+
     def node_names(self, places: Sequence[tuple[int, int]]) -> list[str]:
         """Return nets as written, each by card number and position on the card."""
-        names = []
-        for number, position in places:
+        return [self._node(number, position) for number, position in places]
+
+    def _node(self, number: int, position: int) -> str:
+        source, text, _ = self._place(number)
+        kind = self._shape_of[number]
+        shape = None if kind == _ODD else self._shapes[kind]
+        if shape is None or "nodes" in shape.roles:
             nodes = [field for field in self._fields(number) if field[0] == "node"]
             _, start, end = nodes[position]
-            names.append(Span(self._place(number)[0], start, end).text)
-        return names
-
-    def letter(self, number: int) -> str:
-        """Return the lower-case first letter of a card."""
-        return chr(self._place(number)[1][self._starts[number]])
+        else:
+            match = shape.groups.match(text, self._starts[number])
+            assert match is not None
+            # The nets follow the name, which is the first group.
+            start, end = match.span(position + 2)
+        return source.data[start:end].decode("utf-8", "surrogateescape")
 
     def groups(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
         """Give the cards of ascending numbers, grouped by shape; see ``CardStore``."""

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import partial
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -65,7 +66,7 @@ class Column:
             return self
         numbers = self.numbers.copy()
         for row, text in self.formulas:
-            numbers[row] = scope.evaluate(text, lambda row=row: where(row))  # type: ignore[misc]  # mypy cannot type a default argument of a lambda
+            numbers[row] = scope.evaluate(text, partial(where, row))
         return Column(numbers, self.styles)
 
     def in_order(self, order: NDArray[np.intp]) -> Column:

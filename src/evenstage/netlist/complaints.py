@@ -52,7 +52,7 @@ class _Refusal(NamedTuple):
     start: int
     end: int
     place: int
-    token: str
+    terminal: str
 
     @property
     def words(self) -> list[tuple[int, int]]:
@@ -61,7 +61,7 @@ class _Refusal(NamedTuple):
         text = _JOINT.sub(lambda joint: b" " * len(joint[0]), text)
         head = text.split(b"=", 1)[0]
         found = [(self.start + m.start(), self.start + m.end()) for m in _WORD.finditer(head)]
-        return found[:-1] if b"=" in text else found
+        return found[:-1] if b"=" in text and len(found) > 1 else found
 
     def error(self, code: str, message: str, start: int, end: int) -> NetlistError:
         """Return the error for some bytes of the card."""
@@ -86,7 +86,7 @@ def complaint(source: SourceText, start: int, end: int, error: UnexpectedInput) 
     """
     token = getattr(error, "token", None)
     at_end = isinstance(token, Token) and token.type == "$END"
-    place = end if at_end or error.pos_in_stream is None else start + error.pos_in_stream
+    place = end if at_end else start + _offset(error)
     kind = token.type if isinstance(token, Token) else ""
     refusal = _Refusal(source, start, end, place, kind)
     foreign = _FOREIGN.search(source.data)
@@ -97,6 +97,11 @@ def complaint(source: SourceText, start: int, end: int, error: UnexpectedInput) 
             *_content(foreign),
         )
     return next(filter(None, (check(refusal) for check in _CHECKS)))
+
+
+def _offset(error: UnexpectedInput) -> int:
+    offset: int | None = error.pos_in_stream
+    return 0 if offset is None else offset
 
 
 def _content(match: re.Match[bytes]) -> tuple[int, int]:
@@ -117,7 +122,7 @@ def _bad_beginning(refusal: _Refusal) -> NetlistError | None:
 
 def _bad_dot_card(refusal: _Refusal) -> NetlistError | None:
     word = refusal.text(refusal.start, refusal.end).split(maxsplit=1)[0].lower()
-    if refusal.token == "$END" and word in _DOT_USAGE:
+    if refusal.terminal == "$END" and word in _DOT_USAGE:
         code, message = _DOT_USAGE[word]
         return refusal.error(code, message, refusal.start, refusal.start + len(word))
     return None
@@ -136,7 +141,7 @@ def _missing_node(refusal: _Refusal) -> NetlistError | None:
     letter = refusal.text(refusal.start, refusal.start + 1).lower()
     words = refusal.words
     needed = _NODES.get(letter, 0) + (letter == "m")
-    if refusal.token not in {"$END", "EQUAL"} or len(words) > needed or letter not in _NODES:
+    if refusal.terminal not in {"$END", "EQUAL"} or len(words) > needed or letter not in _NODES:
         return None
     name = refusal.text(*words[0])
     message = f"'{name}' needs {_USAGE[letter]}, got {_count(len(words) - 1, 'word')}"
@@ -168,7 +173,7 @@ def _missing_value(refusal: _Refusal) -> NetlistError | None:
 
 
 def _missing_name(refusal: _Refusal) -> NetlistError | None:
-    if refusal.token != "EQUAL":
+    if refusal.terminal != "EQUAL":
         return None
     message = "a name is missing before '='"
     return refusal.error("missing-name", message, refusal.place, refusal.place + 1)
@@ -177,7 +182,7 @@ def _missing_name(refusal: _Refusal) -> NetlistError | None:
 def _loose_word(refusal: _Refusal) -> NetlistError | None:
     before = refusal.source.data[refusal.start : refusal.place]
     words = list(_WORD.finditer(before))
-    if not words or refusal.token not in {"WORD", "$END", "SLASH"}:
+    if not words or refusal.terminal not in {"WORD", "$END", "SLASH"}:
         return None
     start, end = (refusal.start + edge for edge in words[-1].span())
     message = f"expected name=value, got '{refusal.text(start, end)}'"

@@ -11,16 +11,15 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from evenstage.process.process import Polarity
-
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from evenstage.errors import Notice
     from evenstage.netlist.netlist import Netlist
+    from evenstage.process.process import Polarity
 
 FloatArray = NDArray[np.float64]
-IntArray = NDArray[np.int32]
+IntArray = NDArray[np.signedinteger]
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,8 +45,8 @@ class Model:
 class Devices:
     """Transistors, capacitors, instances and nets of one elaborated block.
 
-    Shapes: ``(n,)`` per transistor, ``(k,)`` per capacitor, ``(i,)`` per instance, ``(m,)`` per net.
-    Instance 0 is the block itself. All arrays are read-only.
+    Shapes: ``(n,)`` per transistor, ``(k,)`` per capacitor, ``(i,)`` per instance, ``(m,)`` per
+    net. Instance 0 is the block itself. All arrays are read-only.
 
     Parameters
     ----------
@@ -137,12 +136,12 @@ class Devices:
         """Return the path of an instance, as in ``xbank.xrow3``; empty for the block itself."""
         names = []
         while instance > 0:
-            names.append(self.netlist.card(int(self.instance_card[instance])).name)
+            names.append(self.netlist.card_name(int(self.instance_card[instance])))
             instance = int(self.instance_parent[instance])
         return ".".join(reversed(names))
 
     def card_path(self, card: int, instance: int) -> str:
         """Return the name of a card with its instance path, as in ``xbank.xrow3.mn1``."""
-        name = self.netlist.card(card).name
+        name = self.netlist.card_name(card)
         path = self.instance_path(instance)
         return f"{path}.{name}" if path else name

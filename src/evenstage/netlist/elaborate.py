@@ -24,6 +24,7 @@ if TYPE_CHECKING:
 
     from evenstage.brief import Brief
     from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.netlist.flatten import Indices
     from evenstage.netlist.netlist import Netlist
     from evenstage.netlist.template import Key, Template
     from evenstage.process.process import Process
@@ -91,7 +92,7 @@ class _Block:
         declared = {_key(name): name for name in ("0", *self._netlist.global_names)}
         return tuple(name for key, name in declared.items() if key in met)
 
-    def _spread(self, counts: Iterable[int]) -> tuple[IntArray, IntArray]:
+    def _spread(self, counts: Iterable[int]) -> tuple[Indices, Indices]:
         """Return instance and row of every copy of what templates hold ``counts`` of."""
         starts = starts_of(list(counts))
         each = (starts[1:] - starts[:-1])[self._flat.template]
@@ -100,7 +101,7 @@ class _Block:
 
     # Resistors.
 
-    def _joined(self) -> tuple[IntArray, IntArray]:
+    def _joined(self) -> tuple[Indices, Indices]:
         """Join the nets that resistors connect.
 
         Returns
@@ -139,8 +140,11 @@ class _Block:
                 self._notices.append(Notice(code, message, place, names))
 
     def _card_names(self, numbers: Iterable[int]) -> tuple[str, ...]:
-        cards = (self._netlist.card(number) for number in numbers)
-        return tuple(f"{card.scope}.{card.name}" if card.scope else card.name for card in cards)
+        return tuple(map(self._card_name, numbers))
+
+    def _card_name(self, number: int) -> str:
+        scope, name = self._netlist.card_scope(number), self._netlist.card_name(number)
+        return f"{scope}.{name}" if scope else name
 
     # The result.
 
@@ -226,7 +230,7 @@ class _Block:
         value = values[row] * self._flat.multiplier[instance]
         return _ids(nets), _frozen(value), _ids(cards[row]), _ids(instance)
 
-    def _note_capacitors(self, numbers: list[int]) -> None:
+    def _note_capacitors(self, numbers: Sequence[int]) -> None:
         if numbers:
             names = self._card_names(numbers)
             message = (
@@ -245,9 +249,7 @@ class _Block:
             card = self._netlist.card(number)
             plus, minus = (int(self._net[self._flat.net[local[_key(n)]]]) for n in card.nodes)
             parameter = card.value or card.parameter("dc")
-            value = 0.0
-            if parameter is not None:
-                value = scope.evaluate(parameter.text, lambda p=parameter: p.span)  # type: ignore[misc]  # mypy cannot type a default argument of a lambda
+            value = 0.0 if parameter is None else scope.of(parameter)
             found.append((plus, minus, value))
         return tuple(found)
 
@@ -261,13 +263,13 @@ class _Block:
             if outline is not self._templates[0].outline:
                 by_letter.setdefault("v", []).extend(outline.sources)
         notices = self._library.notices(self._definitions)
-        for letter, numbers in sorted(by_letter.items()):
-            if numbers:
-                names = self._card_names(numbers)
+        for letter, cards in sorted(by_letter.items()):
+            if cards:
+                names = self._card_names(cards)
                 what = _OTHERS.get(letter, f"'{letter}' card")
                 what = "voltage source inside the block" if letter == "v" else what
                 message = f"{counted(len(names), what)} left out, not understood ({listed(names)})"
-                place = self._netlist.card(numbers[0]).span.place
+                place = self._netlist.card(cards[0]).span.place
                 notices.append(Notice("not-understood", message, place, names))
         return notices
 
@@ -293,7 +295,7 @@ def _key(name: str) -> bytes:
     return name.encode("utf-8", "surrogateescape").lower()
 
 
-def _ids(values: IntArray) -> IntArray:
+def _ids(values: Indices) -> IntArray:
     ids = values.astype(np.int32)
     ids.flags.writeable = False
     return ids

@@ -235,21 +235,21 @@ class _Builder(Transformer[Token, Node]):
         self.names: set[str] = set()
 
     def expression(self, children: list[Node]) -> Node:
-        """choice."""
+        """Return what the only rule gave."""
         return children[0]
 
     def number(self, children: list[Token]) -> Node:
-        """NUMBER."""
+        """Return a number, its suffix applied."""
         return Number(parse_number(children[0]))
 
     def name(self, children: list[Token]) -> Node:
-        """NAME."""
+        """Return a parameter and note its name."""
         name = children[0].lower()
         self.names.add(name)
         return Name(name)
 
     def call(self, children: list[Token | Node]) -> Node:
-        """NAME "(" arguments ")"."""
+        """Return a call of a known function."""
         name, *arguments = children
         assert isinstance(name, Token)
         known = FUNCTIONS.get(name.lower())
@@ -268,36 +268,36 @@ class _Builder(Transformer[Token, Node]):
                 f"gives {len(arguments)} arguments to '{name}', which takes {wanted}",
                 name.start_pos,
             )
-        return Call(function, tuple(arguments))  # type: ignore[arg-type]  # tokens are names alone
+        return Call(function, tuple(arguments))
 
     def _chain(self, children: list[Token | Node]) -> Node:
         steps = zip(children[1::2], children[2::2], strict=True)
-        return Chain(children[0], tuple((_OPERATORS[str(t)], node) for t, node in steps))  # type: ignore[arg-type,misc]  # alternating by the grammar
+        return Chain(children[0], tuple((_OPERATORS[str(t)], node) for t, node in steps))
 
     equality = order = sum = product = _chain
 
     def power(self, children: list[Node]) -> Node:
-        """signed POWER power."""
+        """Return base POWER exponent."""
         return Call(_power, (children[0], children[2]))
 
     def sign(self, children: list[Node]) -> Node:
-        """SIGN signed."""
+        """Return a signed value."""
         return children[1] if str(children[0]) == "+" else Call(operator.neg, (children[1],))
 
     def negation(self, children: list[Node]) -> Node:
-        """NOT signed."""
+        """Return a negation."""
         return Call(lambda x: float(not x), (children[1],))
 
     def either(self, children: list[Node]) -> Node:
-        """both "||" both."""
+        """Return operands of ``||``."""
         return Logic(tuple(children), decisive=True)
 
     def both(self, children: list[Node]) -> Node:
-        """equality "&&" equality."""
+        """Return operands of ``&&``."""
         return Logic(tuple(children), decisive=False)
 
     def choice(self, children: list[Node]) -> Node:
-        """either "?" choice ":" choice."""
+        """Return condition, yes and no."""
         return Choice(*children)
 
 

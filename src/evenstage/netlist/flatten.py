@@ -11,14 +11,17 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
+from numpy.typing import NDArray
 
 from evenstage.errors import ElaborationError
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.netlist.devices import FloatArray
     from evenstage.netlist.template import Template
+
+Indices = NDArray[np.signedinteger]
 
 #: Instances beyond which a block is refused before the memory is.
 _MOST_INSTANCES: Final = 50_000_000
@@ -34,40 +37,42 @@ class Flat:
 
     Parameters
     ----------
-    template : IntArray, shape (i,)
+    template : Indices, shape (i,)
         Index of each instance's template.
-    parent, card : IntArray, shape (i,)
+    parent, card : Indices, shape (i,)
         Enclosing instance and calling card; -1 for the block itself.
     multiplier : FloatArray, shape (i,)
         Product over all enclosing calls.
-    slot_base : IntArray, shape (i,)
+    slot_base : Indices, shape (i,)
         First slot of each instance.
-    net : IntArray, shape (s,)
+    net : Indices, shape (s,)
         Net of each slot.
-    slot_of_net : IntArray, shape (m,)
+    slot_of_net : Indices, shape (m,)
         The slot each net was made for; -1 for global nets.
     """
 
-    template: IntArray
-    parent: IntArray
-    card: IntArray
+    template: Indices
+    parent: Indices
+    card: Indices
     multiplier: FloatArray
-    slot_base: IntArray
-    net: IntArray
-    slot_of_net: IntArray
+    slot_base: Indices
+    net: Indices
+    slot_of_net: Indices
 
-    def nets_of(self, instance: IntArray, local: IntArray) -> IntArray:
+    def nets_of(self, instance: Indices, local: Indices) -> Indices:
         """Return the nets of local nets of instances."""
-        return self.net[self.slot_base[instance] + local]
+        nets: Indices = self.net[self.slot_base[instance] + local]
+        return nets
 
 
-def ranges(starts: IntArray, counts: IntArray) -> IntArray:
+def ranges(starts: Indices, counts: Indices) -> Indices:
     """Return ``start, start + 1, ...`` for each start, ``count`` of them, one after the other."""
     before = np.cumsum(counts) - counts
-    return np.repeat(starts - before, counts) + np.arange(counts.sum(), dtype=np.int64)
+    first: Indices = np.repeat(starts - before, counts)
+    return np.add(first, np.arange(len(first)))
 
 
-def starts_of(counts: Sequence[int]) -> IntArray:
+def starts_of(counts: Sequence[int]) -> Indices:
     """Return where each of some runs begins when they lie one after the other, and the end."""
     return np.concatenate([[0], np.cumsum(np.array(counts, np.int64))]).astype(np.int64)
 
@@ -120,7 +125,7 @@ class _Tables:
         )
         self.offset = self._offsets(callees)
 
-    def _offsets(self, callees: Sequence[Sequence[int]]) -> IntArray:
+    def _offsets(self, callees: Sequence[Sequence[int]]) -> Indices:
         """Return how far behind its caller each call's instance is numbered."""
         sizes = [1] * len(callees)
         offsets: list[list[int]] = [[] for _ in callees]
@@ -131,11 +136,10 @@ class _Tables:
         if sizes[0] > _MOST_INSTANCES:
             message = f"the block has {sizes[0]} instances, more than {_MOST_INSTANCES}"
             raise ElaborationError(message, code="too-large")
-        # Subtrees of definitions that are counted but too large never get here.
         return np.array([offset for row in offsets for offset in row], np.int64)
 
 
-def _kinds(template: Template, global_ids: dict[bytes, int], *, block: bool) -> IntArray:
+def _kinds(template: Template, global_ids: dict[bytes, int], *, block: bool) -> Indices:
     outline = template.outline
     kinds = np.full(len(outline.net_keys), _OWN, np.int64)
     for local, key in enumerate(outline.net_keys):
@@ -149,16 +153,16 @@ def _kinds(template: Template, global_ids: dict[bytes, int], *, block: bool) -> 
 
 def _place(
     tables: _Tables,
-) -> tuple[IntArray, IntArray, IntArray, FloatArray, list[tuple[IntArray, IntArray]]]:
-    """Number the instances.
+) -> tuple[Indices, Indices, Indices, FloatArray, list[tuple[Indices, Indices]]]:
+    """Give each instance its number.
 
     Returns
     -------
-    template, parent, card : IntArray, shape (i,)
+    template, parent, card : Indices, shape (i,)
         Of each instance.
     multiplier : FloatArray, shape (i,)
         Of each instance.
-    levels : list of (IntArray, IntArray)
+    levels : list of (Indices, Indices)
         Instances by depth, with the call each comes from.
     """
     ids = np.zeros(1, np.int64)
@@ -166,7 +170,7 @@ def _place(
     multiplier = np.ones(1)
     parent, card = -np.ones(1, np.int64), -np.ones(1, np.int64)
     found = [(ids, template, parent, card, multiplier)]
-    levels: list[tuple[IntArray, IntArray]] = []
+    levels: list[tuple[Indices, Indices]] = []
     while True:
         counts = (tables.call_start[1:] - tables.call_start[:-1])[template]
         calls = ranges(tables.call_start[template], counts)
@@ -186,11 +190,11 @@ def _place(
 
 def _connect(
     tables: _Tables,
-    template: IntArray,
-    parent: IntArray,
-    card: IntArray,
+    template: Indices,
+    parent: Indices,
+    card: Indices,
     multiplier: FloatArray,
-    levels: list[tuple[IntArray, IntArray]],
+    levels: list[tuple[Indices, Indices]],
     globals_count: int,
 ) -> Flat:
     """Give every local net of every instance its net."""

@@ -122,6 +122,14 @@ class CardStore(Protocol):
         """Give the cards of ascending numbers in groups, each of at most a few thousand."""
         ...
 
+    def name(self, number: int) -> str:
+        """Return the name of a card as written."""
+        ...
+
+    def scope(self, number: int) -> str:
+        """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
+        ...
+
     def node_names(self, places: Sequence[tuple[int, int]]) -> list[str]:
         """Return nets as written, each by card number and position on the card."""
         ...
@@ -214,6 +222,14 @@ class Netlist:
     def card(self, number: int) -> Card:
         """Return the element card of a number."""
         return self._cards[number]
+
+    def card_name(self, number: int) -> str:
+        """Return the name of a card as written; faster than making the card."""
+        return self._cards.name(number)
+
+    def card_scope(self, number: int) -> str:
+        """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
+        return self._cards.scope(number)
 
     def card_groups(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
         """Give the element cards of ascending numbers in columns, grouped by their form."""

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Sequence
-from functools import cached_property
+from functools import cache, cached_property
 from typing import TYPE_CHECKING, Final, overload
 
 import numpy as np
@@ -16,8 +16,7 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
-    from evenstage.netlist.devices import IntArray
-    from evenstage.netlist.flatten import Flat
+    from evenstage.netlist.flatten import Flat, Indices
     from evenstage.netlist.netlist import Netlist
     from evenstage.netlist.outline import Outline
 
@@ -38,7 +37,7 @@ class NetNames(Sequence[str]):
         Of each template.
     global_names : Sequence of str
         Of the first nets.
-    kept : IntArray, shape (m,)
+    kept : Indices, shape (m,)
         For each net of the block its number in the layout.
     """
 
@@ -48,7 +47,7 @@ class NetNames(Sequence[str]):
         flat: Flat,
         outlines: Sequence[Outline],
         global_names: Sequence[str],
-        kept: IntArray,
+        kept: Indices,
     ) -> None:
         self._netlist = netlist
         self._flat = flat
@@ -96,7 +95,7 @@ class NetNames(Sequence[str]):
         known = self._paths.get(instance)
         if known is None:
             outer = self._path(int(self._flat.parent[instance]))
-            name = self._netlist.card(int(self._flat.card[instance])).name
+            name = self._netlist.card_name(int(self._flat.card[instance]))
             known = self._paths[instance] = f"{outer}{name}."
         return known
 
@@ -106,7 +105,7 @@ class Joints:
 
     Parameters
     ----------
-    pairs : IntArray, shape (2, r)
+    pairs : Indices, shape (2, r)
         Nets of the layout at the ends of each resistor.
     nets : int
         How many nets the layout has.
@@ -120,7 +119,7 @@ class Joints:
 
     def __init__(
         self,
-        pairs: IntArray,
+        pairs: Indices,
         nets: int,
         fixed: int,
         ports: frozenset[int],
@@ -129,10 +128,10 @@ class Joints:
         self._nets = nets
         self._fixed = fixed
         self._ports = ports
-        self._name = name
+        self._name = cache(name)
         self.joined, self._members, self._labels = self._components(pairs)
 
-    def _components(self, pairs: IntArray) -> tuple[NDArray[np.bool_], IntArray, IntArray]:
+    def _components(self, pairs: Indices) -> tuple[NDArray[np.bool_], Indices, Indices]:
         """Return which resistors join, the nets concerned, and the component of each.
 
         A component that would make a high and a low supply one net is left apart.
@@ -140,7 +139,7 @@ class Joints:
         members, ends = np.unique(pairs, return_inverse=True)
         ends = ends.reshape(pairs.shape)
         size = (len(members), len(members))
-        matrix = coo_array((np.ones(ends.shape[1], np.int8), (ends[0], ends[1])), shape=size)
+        matrix = coo_array((np.ones(len(ends[0]), np.int8), (ends[0], ends[1])), shape=size)
         _, labels = connected_components(matrix, directed=False)
         shorted = np.intersect1d(
             labels[self._supplies(members, _HIGH)], labels[self._supplies(members, _LOW)]
@@ -149,16 +148,15 @@ class Joints:
         inside = ~np.isin(labels, shorted)
         return joined, members[inside], labels[inside]
 
-    def _supplies(self, members: IntArray, pattern: re.Pattern[str]) -> NDArray[np.bool_]:
-        return np.array(
-            [pattern.fullmatch(self._name(int(net))) is not None for net in members], np.bool_
-        )
+    def _supplies(self, members: Indices, pattern: re.Pattern[str]) -> NDArray[np.bool_]:
+        found = [pattern.fullmatch(self._name(net)) is not None for net in members.tolist()]
+        return np.array(found, np.bool_)
 
     @cached_property
-    def representative(self) -> IntArray:
+    def representative(self) -> Indices:
         """For each net of the layout the net whose name it takes."""
         result = np.arange(self._nets)
-        ranks = np.array([self._rank(int(net)) for net in self._members], np.int64)
+        ranks = np.array([self._rank(net) for net in self._members.tolist()], np.int64)
         order = np.lexsort((self._members, ranks, self._labels))
         labels = self._labels[order]
         first = np.flatnonzero(np.diff(labels, prepend=-1))

@@ -92,7 +92,7 @@ class Scope:
     def _own(self, parameter: Parameter) -> float:
         # A default such as w=w takes the global parameter of the same name.
         outside = self._outer if self._is_reflexive(parameter) else None
-        return (outside or self).evaluate(parameter.text, lambda: parameter.span)
+        return (outside or self).of(parameter)
 
     def _is_reflexive(self, parameter: Parameter) -> bool:
         try:
@@ -105,6 +105,10 @@ class Scope:
         """Return all names visible here."""
         outer = set() if self._outer is None else self._outer.names()
         return outer | self._parameters.keys() | self._values.keys()
+
+    def of(self, parameter: Parameter) -> float:
+        """Return the number a parameter's value stands for; see ``evaluate``."""
+        return self.evaluate(parameter.text, lambda: parameter.span)
 
     def evaluate(self, text: str, where: Callable[[], Span]) -> float:
         """Return the number a value's text stands for.

@@ -38,7 +38,7 @@ def read(path: Path | str) -> Netlist:
 
 
 def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
-    """Read a netlist that is not (yet) a file.
+    r"""Read a netlist that is not (yet) a file.
 
     Parameters
     ----------
@@ -56,7 +56,7 @@ def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
 
     Examples
     --------
-    >>> len(read_bytes(b".subckt inv a y vdd vss\\n.ends\\n", "inv.sp", Path()))
+    >>> len(read_bytes(b".subckt inv a y vdd vss\n.ends\n", "inv.sp", Path()))
     0
     """
     return _read(SourceText((folder / label).resolve(), data, label))

@@ -154,8 +154,12 @@ class Reader:
         return line_end
 
     def _take_element(self, unit: Unit, statement: Statement) -> None:
-        terminals = (statement.rule, *(mark.terminal for mark in statement.marks))
-        form = (*terminals, *(p.name for p in _pairs(unit, statement.marks)))
+        letter = chr(unit.text[statement.marks[0].start])
+        form = (
+            letter,
+            *(mark.terminal for mark in statement.marks),
+            *(p.name for p in _pairs(unit, statement.marks)),
+        )
         self._met[form] = self._met.get(form, 0) + 1
         shape = learn(statement, unit.text) if self._met[form] == _LEARNED_AT else None
         if shape is None:
@@ -340,7 +344,7 @@ def _values(
     values = {}
     for one in parameters:
         with suppress(ElaborationError):
-            values[one.name] = scope.evaluate(one.text, lambda one=one: one.span)
+            values[one.name] = scope.of(one)
     return values
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from itertools import chain
+from itertools import chain, pairwise
 from typing import TYPE_CHECKING
 
 from evenstage.errors import NetlistError, Notice
@@ -51,7 +51,7 @@ class _Open:
 def _joined(ranges: list[range]) -> Sequence[int]:
     if not ranges:
         return range(0)
-    contiguous = all(a.stop == b.start for a, b in zip(ranges, ranges[1:], strict=False))
+    contiguous = all(a.stop == b.start for a, b in pairwise(ranges))
     if contiguous:
         return range(ranges[0].start, ranges[-1].stop)
     return tuple(chain.from_iterable(ranges))

@@ -27,7 +27,7 @@ _BETWEEN: Final = r"[\x00-\x09\x0b-\x20,]*+"
 _BETWEEN_WORDS: Final = r"[\x00-\x09\x0b-\x20,]++"
 _END: Final = r"(?:\n[\x00-\x20,]*+|\Z)"
 _LEARNABLE: Final = frozenset({"transistor", "call", "passive"})
-_FIXED: Final = {"EQUAL": "=", "SLASH": "/", "PARAMS": "params?:"}
+_SIGNS: Final = frozenset({"EQUAL", "SLASH", "PARAMS"})
 _QUANTIFIER = re.compile(r"(?<=[\])])(?:[*+]|\?)(?![+?])")
 
 
@@ -119,8 +119,8 @@ def _pieces(statement: Statement, text: bytes) -> list[_Piece]:
                 position += 1
             word = _possessive("WORD")
             pieces.append(_Piece(f"{word}(?:{_BETWEEN_WORDS}{word})*", "nodes"))
-        elif mark.terminal in _FIXED:
-            pieces.append(_Piece(_FIXED[mark.terminal], None))
+        elif mark.terminal in _SIGNS:
+            pieces.append(_Piece(terminal(mark.terminal), None))
         else:
             role = _role(statement.rule, position, pieces[-1], slashed=slashed)
             pieces.append(_Piece(_possessive(mark.terminal), role))

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import partial
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -13,9 +13,10 @@ from evenstage.netlist.columns import Column, absent, value_span
 from evenstage.netlist.wording import counted
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable
+    from collections.abc import Iterable, Mapping
 
     from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.netlist.flatten import Indices
     from evenstage.netlist.library import Library
     from evenstage.netlist.netlist import Netlist
     from evenstage.netlist.outline import Call, Outline, Rows
@@ -134,13 +135,13 @@ class Binder:
         )
 
     def _bound(self, rows: Rows, scope: Scope) -> dict[str, Column]:
-        def where(name: str, row: int) -> Span:
-            return value_span(self._netlist, int(rows.card[row]), name)
-
         return {
-            name: column.bound(scope, lambda row, name=name: where(name, row))  # type: ignore[misc]  # mypy cannot type a default argument of a lambda
+            name: column.bound(scope, partial(self._span, rows, name))
             for name, column in rows.columns.items()
         }
+
+    def _span(self, rows: Rows, name: str, row: int) -> Span:
+        return value_span(self._netlist, int(rows.card[row]), name)
 
     def _capacitance(self, rows: Rows, scope: Scope) -> FloatArray:
         """Return the value of each C card, its multiplier included; NaN where it has none."""
@@ -183,10 +184,10 @@ class Binder:
         if len(call.nets) == callee.ports:
             return
         card = self._netlist.card(call.card)
-        wanted, got = counted(callee.ports, "net"), len(call.nets)
         subcircuit = callee.subcircuit
         assert subcircuit.header is not None
-        message = f"'{subcircuit.name}' has {wanted.replace('net', 'port')}, but '{card.name}' gives {counted(got, 'net')}"
+        ports, nets = counted(callee.ports, "port"), counted(len(call.nets), "net")
+        message = f"'{subcircuit.name}' has {ports}, but '{card.name}' gives {nets}"
         note = f"'{subcircuit.name}' begins at {subcircuit.header.place}"
         raise ElaborationError(message, code="pin-count", span=card.span, notes=(note,))
 
@@ -242,7 +243,7 @@ def _merged(plain: _Devices, wrapped: list[_Devices]) -> _Devices:
     )
 
 
-def column_of(parts: Iterable[_Devices | Template], name: str, order: IntArray | slice) -> Column:
+def column_of(parts: Iterable[_Devices | Template], name: str, order: Indices | slice) -> Column:
     """Return one parameter of several parts in one column."""
     columns = [part.columns.get(name) or absent(len(part.card)) for part in parts]
     return Column(
