@@ -41,10 +41,10 @@ class EvenstageError(Exception):
         self.notes = notes
 
     def __str__(self) -> str:
-        head = f"{self.message} ({self.code})"
-        if self.span is None:
-            return "\n".join([head, *self.notes])
-        return "\n".join([f"{self.span.place}: {head}", *excerpt(self.span), *self.notes])
+        lines = [f"{self.message} ({self.code})", *self.notes]
+        if self.span is not None:
+            lines[:1] = [f"{self.span.place}: {lines[0]}", *excerpt(self.span)]
+        return _printable("\n".join(lines))
 
 
 class SettingsError(EvenstageError):
@@ -116,9 +116,14 @@ def excerpt(span: Span) -> list[str]:
     line, left = _window(line, left)
     before = line[:left].expandtabs(_TAB)
     under = line[: left + marked].expandtabs(_TAB)
-    shown = line.expandtabs(_TAB).encode("utf-8", "replace").decode()
+    shown = _printable(line.expandtabs(_TAB))
     carets = "^" * max(1, min(len(under), len(shown)) - len(before))
     return [f"    {shown}", f"    {' ' * len(before)}{carets}"]
+
+
+def _printable(text: str) -> str:
+    """Return a text with ``?`` for bytes that were not UTF-8."""
+    return text.encode("utf-8", "replace").decode()
 
 
 def _window(line: str, left: int) -> tuple[str, int]:

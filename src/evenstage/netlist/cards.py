@@ -335,7 +335,8 @@ def _value(letter: str, arguments: list[Span]) -> Parameter | None:
     texts = [plain_text(span) for span in arguments]
     if letter in "vi":
         first = next((i for i, text in enumerate(texts[:-1]) if text.lower() == "dc"), -1)
-        position = first + 1 if first >= 0 or (texts and _NUMERIC.match(texts[0])) else None
+        plain = len(texts) == 1 or (texts and _NUMERIC.match(texts[0]))
+        position = first + 1 if first >= 0 or plain else None
     else:
         position = _value_position(texts) if texts else None
     return None if position is None else parameter(None, arguments[position])

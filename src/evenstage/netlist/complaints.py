@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 import re
-from typing import TYPE_CHECKING, NamedTuple
+from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING, Final
 
 from lark import Token
 
 from evenstage.errors import NetlistError
+from evenstage.netlist.wording import counted
 from evenstage.source import Span
 
 if TYPE_CHECKING:
@@ -17,59 +20,74 @@ if TYPE_CHECKING:
 
     from evenstage.source import SourceText
 
-_WORD = re.compile(rb"[^\x00-\x20=,()'\"{}]+")
-_JOINT = re.compile(rb"(?:[\r\n][^\S\r\n]*(?:[*$;][^\r\n]*)?)*[\r\n][^\S\r\n]*\+")
-_CLOSING = {"'": "'", '"': '"', "{": "}"}
-_NODES = {"m": 4, "r": 2, "c": 2, "l": 2, "v": 2, "i": 2}
-_USAGE = {
-    "m": "four nets (drain, gate, source, bulk) and a model",
-    "r": "two nets and a value",
-    "c": "two nets and a value",
-    "l": "two nets and a value",
-    "v": "two nets and a value",
-    "i": "two nets and a value",
+_WORD: Final = re.compile(rb"[^\x00-\x20=,()'\"{}]+")
+_JOINT: Final = re.compile(rb"(?:[\r\n][^\S\r\n]*(?:[*$;][^\r\n]*)?)*[\r\n][^\S\r\n]*\+")
+_CLOSING: Final = {"'": "'", '"': '"', "{": "}"}
+
+_TWO_NETS: Final = (2, "two nets and a value")
+#: What must stand on a card between its name and its parameters: how many words, and which.
+_NEEDED: Final = {
+    "m": (5, "four nets (drain, gate, source, bulk) and a model"),
+    **dict.fromkeys("rclvi", _TWO_NETS),
+    "x": (1, "its nets and the subcircuit it calls"),
 }
-_DOT_USAGE = {
-    ".subckt": ("missing-name", "'.subckt' needs a name"),
-    ".include": ("missing-file", "'.include' needs the name of a file"),
-    ".inc": ("missing-file", "'.inc' needs the name of a file"),
-    ".lib": ("missing-file", "'.lib' needs a file and a section, or the name of a section"),
-    ".model": ("missing-name", "'.model' needs a name and a type"),
+_DOT_CARDS: Final = {
+    ".subckt": ("missing-name", "a name"),
+    ".inc": ("missing-file", "the name of a file"),
+    ".include": ("missing-file", "the name of a file"),
+    ".lib": ("missing-file", "a file and a section, or the name of a section"),
+    ".model": ("missing-name", "a name and a type"),
 }
 
-# What only the other languages found behind the same file endings have.
-_FOREIGN = re.compile(
-    rb"^[^\S\r\n]*(?:simulator[^\S\r\n]+lang|(?:inline[^\S\r\n]+)?subckt[^\S\r\n]|ends\b|//|/\*"
-    rb"|module[^\S\r\n]|endmodule|library[^\S\r\n]*\(|\([a-z]|<\?|#include|#!|import\s|def\s)",
+#: What only the other languages found behind the same file endings have.
+_FOREIGN: Final = re.compile(
+    rb"^[^\S\r\n]*(simulator[^\S\r\n]+lang|(?:inline[^\S\r\n]+)?subckt(?=[^\S\r\n])|ends\b|//|/\*"
+    rb"|module(?=[^\S\r\n])|endmodule|library(?=[^\S\r\n]*\()|\([a-z]+|<\?|#include|#!)",
     re.MULTILINE | re.IGNORECASE,
 )
 
 
-class _Refusal(NamedTuple):
-    """A card the grammar refused: where it stands and where reading stopped."""
+@dataclass(frozen=True)
+class _Refusal:
+    """A card the grammar refused: its bytes, and where reading stopped."""
 
     source: SourceText
     start: int
     end: int
     place: int
-    terminal: str
 
-    @property
-    def words(self) -> list[tuple[int, int]]:
-        """The places of the words before the first ``=``."""
+    @cached_property
+    def joined(self) -> bytes:
+        """The card with blanks for the joints of its lines."""
         text = self.source.data[self.start : self.end]
-        text = _JOINT.sub(lambda joint: b" " * len(joint[0]), text)
-        head = text.split(b"=", 1)[0]
-        found = [(self.start + m.start(), self.start + m.end()) for m in _WORD.finditer(head)]
-        return found[:-1] if b"=" in text and len(found) > 1 else found
+        return _JOINT.sub(lambda joint: b" " * len(joint[0]), text)
 
-    def error(self, code: str, message: str, start: int, end: int) -> NetlistError:
-        """Return the error for some bytes of the card."""
-        return NetlistError(message, code=code, span=Span(self.source, start, max(end, start + 1)))
+    @cached_property
+    def words(self) -> list[tuple[int, int]]:
+        """The places of the name and the words after it, up to the first ``name=``."""
+        head, equals, _ = self.joined.partition(b"=")
+        found = [
+            (self.start + match.start(), self.start + match.end()) for match in _WORD.finditer(head)
+        ]
+        return found[:-1] if equals and len(found) > 1 else found
+
+    @cached_property
+    def sign(self) -> str:
+        """The character at which reading stopped; empty at the end of the card."""
+        return self.text(self.place, self.end)[:1]
+
+    @cached_property
+    def letter(self) -> str:
+        """The first letter of the card."""
+        return self.text(self.start, self.end)[:1].lower()
 
     def text(self, start: int, end: int) -> str:
         """Return some bytes of the card as text."""
         return Span(self.source, start, end).text
+
+    def error(self, code: str, message: str, start: int, end: int) -> NetlistError:
+        """Return the error for some bytes of the card."""
+        return NetlistError(message, code=code, span=Span(self.source, start, max(end, start + 1)))
 
 
 def complaint(source: SourceText, start: int, end: int, error: UnexpectedInput) -> NetlistError:
@@ -82,20 +100,11 @@ def complaint(source: SourceText, start: int, end: int, error: UnexpectedInput) 
     start, end : int
         The bytes of the card.
     error : UnexpectedInput
-        Where and why the parser stopped.
+        Where the parser stopped.
     """
     token = getattr(error, "token", None)
     at_end = isinstance(token, Token) and token.type == "$END"
-    place = end if at_end else start + _offset(error)
-    kind = token.type if isinstance(token, Token) else ""
-    refusal = _Refusal(source, start, end, place, kind)
-    foreign = _FOREIGN.search(source.data)
-    if foreign is not None:
-        return refusal.error(
-            "other-language",
-            "this does not look like a SPICE netlist",
-            *_content(foreign),
-        )
+    refusal = _Refusal(source, start, end, end if at_end else start + _offset(error))
     return next(filter(None, (check(refusal) for check in _CHECKS)))
 
 
@@ -104,107 +113,98 @@ def _offset(error: UnexpectedInput) -> int:
     return 0 if offset is None else offset
 
 
-def _content(match: re.Match[bytes]) -> tuple[int, int]:
-    lead = len(match[0]) - len(match[0].lstrip())
-    return match.start() + lead, match.start() + len(match[0].rstrip())
+def _other_language(refusal: _Refusal) -> NetlistError | None:
+    foreign = _FOREIGN.search(refusal.source.data)
+    if foreign is None:
+        return None
+    message = "this does not look like a SPICE netlist"
+    return refusal.error("other-language", message, *foreign.span(1))
 
 
 def _bad_beginning(refusal: _Refusal) -> NetlistError | None:
-    first = refusal.text(refusal.start, refusal.start + 1)
+    first = refusal.letter
     if first == "+":
         message = "this line continues a card, but no card stands before it"
         return refusal.error("stray-continuation", message, refusal.start, refusal.start + 1)
-    if first.isalpha() or first == ".":
+    if (first.isascii() and first.isalpha()) or first == ".":
         return None
     message = f"a card begins with a letter or a dot, a comment with '*', got '{first}'"
-    return refusal.error("bad-card", message, refusal.start, refusal.start + 1)
+    end = refusal.start + len(first.encode("utf-8", "surrogateescape"))
+    return refusal.error("bad-card", message, refusal.start, end)
 
 
-def _bad_dot_card(refusal: _Refusal) -> NetlistError | None:
-    word = refusal.text(refusal.start, refusal.end).split(maxsplit=1)[0].lower()
-    if refusal.terminal == "$END" and word in _DOT_USAGE:
-        code, message = _DOT_USAGE[word]
-        return refusal.error(code, message, refusal.start, refusal.start + len(word))
-    return None
+def _short_dot_card(refusal: _Refusal) -> NetlistError | None:
+    word = refusal.text(refusal.start, refusal.end).split(maxsplit=1)[0]
+    if refusal.sign or word.lower() not in _DOT_CARDS:
+        return None
+    code, needed = _DOT_CARDS[word.lower()]
+    message = f"'{word}' needs {needed}"
+    return refusal.error(code, message, refusal.start, refusal.start + len(word))
 
 
 def _unclosed_quote(refusal: _Refusal) -> NetlistError | None:
-    sign = refusal.text(refusal.place, refusal.place + 1)
-    closing = _CLOSING.get(sign)
+    closing = _CLOSING.get(refusal.sign)
     if closing is None or closing in refusal.text(refusal.place + 1, refusal.end):
         return None
-    message = f"{sign} opens an expression that no {closing} closes"
+    message = f"{refusal.sign} opens an expression that no {closing} closes"
     return refusal.error("unclosed-quote", message, refusal.place, refusal.end)
 
 
-def _missing_node(refusal: _Refusal) -> NetlistError | None:
-    letter = refusal.text(refusal.start, refusal.start + 1).lower()
-    words = refusal.words
-    needed = _NODES.get(letter, 0) + (letter == "m")
-    if refusal.terminal not in {"$END", "EQUAL"} or len(words) > needed or letter not in _NODES:
+def _wrong_word_count(refusal: _Refusal) -> NetlistError | None:
+    """Too few words before the parameters, or too many on an M card."""
+    if refusal.letter not in _NEEDED or refusal.sign in {*"()'\"{}"} - {""}:
         return None
-    name = refusal.text(*words[0])
-    message = f"'{name}' needs {_USAGE[letter]}, got {_count(len(words) - 1, 'word')}"
-    return refusal.error("missing-node", message, words[0][0], words[-1][1])
-
-
-def _count(number: int, noun: str) -> str:
-    return f"{number} {noun}" if number == 1 else f"{number} {noun}s"
-
-
-def _missing_subcircuit(refusal: _Refusal) -> NetlistError | None:
-    words = refusal.words
-    if refusal.text(refusal.start, refusal.start + 1).lower() != "x" or len(words) > 1:
+    needed, usage = _NEEDED[refusal.letter]
+    (start, end), *words = refusal.words
+    if len(words) == needed or (len(words) > needed and refusal.letter != "m"):
         return None
-    name = refusal.text(*words[0])
-    message = f"'{name}' needs its nets and the subcircuit it calls"
-    return refusal.error("missing-node", message, *words[0])
+    message = f"'{refusal.text(start, end)}' needs {usage}, got {counted(len(words), 'word')}"
+    if len(words) < needed:
+        return refusal.error("missing-node", message, start, words[-1][1] if words else end)
+    return refusal.error("loose-word", message, words[needed][0], words[-1][1])
 
 
 def _missing_value(refusal: _Refusal) -> NetlistError | None:
-    before = refusal.source.data[refusal.start : refusal.place].rstrip()
-    if not before.endswith(b"="):
+    before = refusal.joined[: refusal.place - refusal.start]
+    pattern = rb"([^\s=]+)\s*=\s*\Z" if refusal.sign != "=" else rb"([^\s=]+)\s*=\s*[^\s=]+\s*\Z"
+    match = re.search(pattern, before)
+    if match is None:
         return None
-    end = refusal.start + len(before)
-    name = _WORD.findall(before)[-1]
-    start = refusal.start + before.rindex(name)
-    message = f"a value is missing after '{name.decode('utf-8', 'surrogateescape')}='"
+    start = refusal.start + match.start()
+    end = refusal.start + match.end(1)
+    message = f"a value is missing after '{refusal.text(start, end)}='"
     return refusal.error("missing-value", message, start, end)
 
 
 def _missing_name(refusal: _Refusal) -> NetlistError | None:
-    if refusal.terminal != "EQUAL":
+    if refusal.sign != "=":
         return None
     message = "a name is missing before '='"
     return refusal.error("missing-name", message, refusal.place, refusal.place + 1)
 
 
 def _loose_word(refusal: _Refusal) -> NetlistError | None:
-    before = refusal.source.data[refusal.start : refusal.place]
-    words = list(_WORD.finditer(before))
-    if not words or refusal.terminal not in {"WORD", "$END", "SLASH"}:
+    if refusal.sign and not _WORD.match(refusal.source.data, refusal.place):
         return None
-    start, end = (refusal.start + edge for edge in words[-1].span())
+    before = list(_WORD.finditer(refusal.joined[: refusal.place - refusal.start]))
+    start, end = (refusal.start + edge for edge in before[-1].span())
     message = f"expected name=value, got '{refusal.text(start, end)}'"
     return refusal.error("loose-word", message, start, end)
 
 
-def _unexpected(refusal: _Refusal) -> NetlistError | None:
-    if refusal.place >= refusal.end:
-        return refusal.error("bad-card", "this card ends too early", refusal.start, refusal.end)
-    match = _WORD.match(refusal.source.data, refusal.place, refusal.end)
-    end = match.end() if match else refusal.place + 1
-    message = f"'{refusal.text(refusal.place, end)}' does not belong here"
+def _unexpected(refusal: _Refusal) -> NetlistError:
+    message = f"'{refusal.sign}' does not belong here"
+    end = refusal.place + len(refusal.sign.encode("utf-8", "surrogateescape"))
     return refusal.error("bad-card", message, refusal.place, end)
 
 
 #: Tried in this order; the last always has an answer.
-_CHECKS: tuple[Callable[[_Refusal], NetlistError | None], ...] = (
+_CHECKS: Final[tuple[Callable[[_Refusal], NetlistError | None], ...]] = (
+    _other_language,
     _bad_beginning,
-    _bad_dot_card,
+    _short_dot_card,
     _unclosed_quote,
-    _missing_node,
-    _missing_subcircuit,
+    _wrong_word_count,
     _missing_value,
     _missing_name,
     _loose_word,

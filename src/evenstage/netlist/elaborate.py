@@ -13,7 +13,7 @@ from evenstage.netlist.geometry import Drawn, geometry
 from evenstage.netlist.library import Library
 from evenstage.netlist.nets import Joints, NetNames
 from evenstage.netlist.template import column_of
-from evenstage.netlist.tops import choose_top
+from evenstage.netlist.tops import AmbiguousTopError, choose_top
 from evenstage.netlist.wording import counted, listed
 from evenstage.process.infer import infer_process
 
@@ -57,11 +57,17 @@ def elaborate(
     ElaborationError
         If the cards do not fit together.
     """
-    name = choose_top(netlist, top, brief)
     if process is None:
         facts = ((model.name, model.kind, model.values) for model in netlist.models.values())
         process = infer_process(facts)
     library = Library(netlist, process)
+    try:
+        name = choose_top(netlist, top, brief)
+    except AmbiguousTopError as error:
+        # A misspelt call leaves the subcircuit it means uncalled; that is the better message.
+        for candidate in error.names:
+            library.reachable(candidate.lower())
+        raise
     return _Block(library, name).devices()
 
 

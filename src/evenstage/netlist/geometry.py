@@ -286,9 +286,8 @@ class _Sizes:
         parameter = self._netlist.card(number).parameter(name)
         shown = "" if parameter is None else parameter.text
         value = float(self._drawn.column(name).numbers[row])
-        got = (
-            f"'{shown}'" if shown[:1].isdigit() or shown[:1] in "+-." else f"'{shown}' = {value:g}"
-        )
+        plain = shown[:1].isdigit() or shown[:1] in "+-."
+        got = f"'{shown}'" if plain else f"{shown} = {value:g}"
         message = f"{noun} must be {wanted}, got {got}"
         span = value_span(self._netlist, number, name)
         return ElaborationError(message, code=f"bad-{code}", span=span)

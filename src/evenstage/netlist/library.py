@@ -14,7 +14,7 @@ from evenstage.netlist.wording import nearest
 if TYPE_CHECKING:
     from collections.abc import Collection
 
-    from evenstage.netlist.netlist import Netlist
+    from evenstage.netlist.netlist import Card, Netlist
     from evenstage.netlist.outline import CallKind
     from evenstage.process.process import Process
 
@@ -148,6 +148,8 @@ class Library:
         hint = nearest(card.target, names)
         if not hint and self.process.type_of(card.target) is not None:
             hint = "; a transistor needs w or l on its card"
+        elif not hint and len(card.nodes) == 4 and self._sized(card):
+            hint = "; if it is a transistor, add its name to the process file"
         message = f"there is no subcircuit '{card.target}'{hint}"
         return ElaborationError(message, code="unknown-subcircuit", span=card.target_span)
 
@@ -157,6 +159,9 @@ class Library:
         chain = " -> ".join([*names, names[0]])
         message = f"'{names[0]}' calls itself: {chain}"
         return ElaborationError(message, code="recursive-subcircuit", span=card.target_span)
+
+    def _sized(self, card: Card) -> bool:
+        return any(parameter.name in self._sizes for parameter in card.parameters)
 
     def notices(self, names: list[str]) -> list[Notice]:
         """Return what was assumed about some definitions."""

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 from typing import TYPE_CHECKING
 
@@ -145,7 +145,10 @@ class Binder:
 
     def _capacitance(self, rows: Rows, scope: Scope) -> FloatArray:
         """Return the value of each C card, its multiplier included; NaN where it has none."""
-        columns = self._bound(rows, scope)
+        unnamed_column = rows.columns.get("", absent(len(rows)))
+        known = tuple(f for f in unnamed_column.formulas if not _is_model(f[1], scope))
+        columns = {**rows.columns, "": replace(unnamed_column, formulas=known)}
+        columns = self._bound(replace(rows, columns=columns), scope)
         empty = absent(len(rows))
         unnamed, named = (columns.get(name, empty).numbers for name in ("", "c"))
         copies = columns.get("m", empty).numbers
@@ -169,9 +172,10 @@ class Binder:
         return scope.evaluate(text, lambda: value_span(self._netlist, call.card, name))
 
     def _multiplier(self, call: Call, scope: Scope) -> float:
-        """Return how many copies a call stands for; a parameter ``m`` of the callee is its own."""
-        callee = self._library.outline(call.target).subcircuit
-        if "m" not in call.parameters or "m" in callee.default_names:
+        """Return how many copies a call stands for; an ``m`` the callee uses is its own affair."""
+        callee = self._library.outline(call.target)
+        own = "m" in callee.subcircuit.default_names & callee.names_used
+        if "m" not in call.parameters or own:
             return 1.0
         multiplier = self._evaluated(call, "m", scope)
         if multiplier <= 0:
@@ -223,6 +227,11 @@ class _Devices:
     nets: IntArray
     columns: Mapping[str, Column]
     multiplier: FloatArray
+
+
+def _is_model(text: str, scope: Scope) -> bool:
+    """Tell whether the word where a C card's value stands is no parameter, so its model."""
+    return text.isidentifier() and text not in scope.names()
 
 
 def _merged(plain: _Devices, wrapped: list[_Devices]) -> _Devices:

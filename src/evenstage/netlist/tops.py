@@ -12,6 +12,22 @@ if TYPE_CHECKING:
     from evenstage.netlist.netlist import Netlist, Subcircuit
 
 
+class AmbiguousTopError(ElaborationError):
+    """Several subcircuits could be meant.
+
+    Parameters
+    ----------
+    message : str
+        What to tell the user.
+    names : tuple of str
+        The subcircuits.
+    """
+
+    def __init__(self, message: str, names: tuple[str, ...]) -> None:
+        super().__init__(message, code="ambiguous-top")
+        self.names = names
+
+
 def choose_top(netlist: Netlist, top: str | None, brief: Brief | None) -> str:
     """Return the lower-case name of the subcircuit to elaborate; empty: the top level of the text.
 
@@ -34,7 +50,8 @@ def choose_top(netlist: Netlist, top: str | None, brief: Brief | None) -> str:
         return candidates[0].name.lower()
     if not netlist.subcircuits:
         message = f"'{netlist.sources[0].label}' holds no transistor and no subcircuit"
-        raise ElaborationError(message, code="no-top")
+        notes = tuple(str(notice) for notice in netlist.notices if notice.code == "title")
+        raise ElaborationError(message, code="no-top", notes=notes)
     if not candidates:
         message = "every subcircuit is called by another; name the one to work on with --top"
         raise ElaborationError(message, code="no-top")
@@ -43,7 +60,7 @@ def choose_top(netlist: Netlist, top: str | None, brief: Brief | None) -> str:
         f"{counted(len(names), 'subcircuit')} could be meant; "
         f"name the one to work on with --top: {listed(names)}"
     )
-    raise ElaborationError(message, code="ambiguous-top")
+    raise AmbiguousTopError(message, tuple(names))
 
 
 def _named(netlist: Netlist, wanted: str) -> str:
