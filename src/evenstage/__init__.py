@@ -1,6 +1,7 @@
 """Find the slowest path of a transistor netlist and the widths that make it fast.
 
-The verbs in their order: `read`, `elaborate`, `recognise`, `analyse`, `resize`, `rewrite`, `compare`.
+The verbs in their order: `read`, `elaborate`, `recognise`, `analyse`, `resize`, `rewrite`,
+`compare`.
 """
 
 from evenstage.brief import read_brief

@@ -56,7 +56,7 @@ def main(arguments: Sequence[str]) -> int:
         # Whoever read the report has read enough.
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return DONE
-    except Exception:  # noqa: BLE001 -- the last line of defence; the user gets one line and a way on
+    except Exception:  # noqa: BLE001 -- the last line of defence
         _say(traceback.format_exc())
         _say(f"this is a fault of evenstage {__version__}; please report the lines above")
         return OUR_FAULT
@@ -130,7 +130,7 @@ def _question(asked: argparse.Namespace) -> flow.Question:
 def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
         prog="evenstage",
-        description="Find the slowest path of a transistor netlist and the widths that make it fast.",
+        description="Find the slowest path of a transistor netlist, and widths that make it fast.",
         epilog=_CAUTION,
         allow_abbrev=False,
     )
@@ -157,7 +157,7 @@ def _parser() -> argparse.ArgumentParser:
 
 
 def _command(
-    commands: argparse._SubParsersAction[argparse.ArgumentParser],  # noqa: SLF001 -- its only name
+    commands: argparse._SubParsersAction[argparse.ArgumentParser],
     name: str,
     command: Callable[[argparse.Namespace], flow.Result],
     words: str,

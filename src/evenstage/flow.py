@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from pathlib import Path
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -34,9 +33,26 @@ from evenstage.timing.compare import compare
 from evenstage.timing.results import Analysis, Difference
 
 if TYPE_CHECKING:
+    from pathlib import Path
+
     from evenstage.netlist.devices import Devices
     from evenstage.netlist.netlist import Netlist
     from evenstage.process.process import Process
+
+__all__ = [
+    "Block",
+    "Question",
+    "Result",
+    "Wishes",
+    "analyse",
+    "diff",
+    "json",
+    "load",
+    "notices",
+    "resize",
+    "text",
+    "write_text",
+]
 
 Result = Analysis | Sizing | Difference
 

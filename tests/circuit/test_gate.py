@@ -9,7 +9,7 @@ from evenstage.circuit.gate import GateForm, Unrecognised, recognise_network
 from evenstage.circuit.network import HIGH, LOW, Switch
 
 Y, A, B, C, M, Q, R, S = range(8)
-NAMES = dict(zip(range(8), "y a b c m q r s".split(), strict=True))
+NAMES = dict(zip(range(8), ["y", "a", "b", "c", "m", "q", "r", "s"], strict=True))
 
 
 def n(a: int, gate: int, b: int) -> Switch:

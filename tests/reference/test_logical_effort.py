@@ -1,8 +1,9 @@
 """Logical effort and parasitic delay of gates, from netlists with those widths.
 
-Published values: Sutherland, Sproull and Harris, *Logical Effort*, 1999, chapters 4 and 5, and Weste and
-Harris, *CMOS VLSI Design*, 4th ed. 2011, chapter 4 (both from memory); every figure recomputed by
-counting widths, ``g = width on the input / (1 + gamma)``, ``p = width on the output / (1 + gamma)``.
+Published values: Sutherland, Sproull and Harris, *Logical Effort*, 1999, chapters 4 and 5, and
+Weste and Harris, *CMOS VLSI Design*, 4th ed. 2011, chapter 4 (both from memory); every figure
+recomputed by counting widths, ``g = width on the input / (1 + gamma)``, ``p = width on the output /
+(1 + gamma)``.
 """
 
 from __future__ import annotations
@@ -12,11 +13,11 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from support.blocks import block, circuit_of, inverter, nand, network, nor, plain_process
 
 from evenstage.process.process import Junction
 from evenstage.timing.analyse import time
 from evenstage.timing.yardstick import yardstick
+from support.blocks import block, circuit_of, inverter, nand, network, nor, plain_process
 
 GAMMAS = (1.0, 1.5, 2.0, 3.0)
 
@@ -82,7 +83,7 @@ class TestSymmetricGates:
         assert g_nand + g_nor == pytest.approx(4, rel=1e-12)
 
     @pytest.mark.parametrize("p_at_output", [True, False])
-    def test_and_or_invert_21(self, gamma: float, p_at_output: bool) -> None:
+    def test_and_or_invert_21(self, gamma: float, *, p_at_output: bool) -> None:
         """``!(a & b | c)``; the parasitic delay depends on which p device touches the output."""
         down = [("y", "a", "m", 2.0), ("m", "b", "vss", 2.0), ("y", "c", "vss", 1.0)]
         up = [
@@ -160,7 +161,7 @@ class TestPublishedFigures:
         assert found[inputs[-1], "fall"][1] == pytest.approx(p, rel=1e-12)
 
     def test_rising_parasitic_of_nand3_with_internal_nodes(self) -> None:
-        """PD3: rising with internal nodes charged 15 RC, output node alone 9 RC; one tau is 3 RC."""
+        """PD3: rising with internal nodes charged 15 RC, output alone 9 RC; one tau is 3 RC."""
         found = efforts(shared_diffusion(nand("g", ["a", "b", "c"], "y", 3, 2)))
         assert found["a", "rise"][1] == pytest.approx(9 / 3)
         assert found["c", "rise"][1] == pytest.approx(15 / 3)
@@ -201,7 +202,7 @@ def test_tau_and_fo4_of_the_plain_inverter() -> None:
 
 
 def test_a_chain_of_fo4_inverters_takes_fo4_per_stage_with_slopes() -> None:
-    """Transitions repeat in an endless chain, so every stage but the first few takes exactly FO4."""
+    """Transitions repeat in an endless chain: every stage but the first few takes exactly FO4."""
     widths = [4.0**k for k in range(12)]
     nets = [f"x{k}" for k in range(13)]
     cards = "\n".join(

@@ -1,18 +1,19 @@
-"""Recognition against two openly licensed cell libraries (their Liberty functions; see `OPEN_CELLS`).
+"""Recognition against the published functions of two openly licensed cell libraries.
 
-The libraries are not part of the project: the tests skip where the folder beside the checkout is absent.
-What is no static complementary gate is named in a notice and counts as not recognised.
+The libraries and their Liberty files are not part of the project: the tests skip where the folder
+beside the checkout is absent. What is no static complementary gate is named in a notice and counts
+as not recognised.
 """
 
 from __future__ import annotations
 
 import json
 from collections import Counter
+from dataclasses import replace
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, TypedDict
 
 import pytest
-from support.logic import all_vectors, function_values, values
 
 from evenstage.brief import Brief
 from evenstage.circuit.recognise import recognise
@@ -21,11 +22,24 @@ from evenstage.netlist.elaborate import elaborate
 from evenstage.netlist.read import read
 from evenstage.pattern import Pattern
 from evenstage.process.process import Process, Transistor
+from support.logic import all_vectors, function_values, values
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
 
 OPEN_CELLS = Path(__file__).parents[3] / "shared" / "data"
+
+
+class Cell(TypedDict):
+    """What ``cells.json`` says of one cell."""
+
+    inputs: list[str]
+    functions: dict[str, str]
+    power: list[str]
+    ground: list[str]
+    combinational: bool
+    tristate: bool
+
 
 pytestmark = pytest.mark.skipif(
     not (OPEN_CELLS / "cells.json").exists(), reason="the open cell data is not beside the checkout"
@@ -33,10 +47,22 @@ pytestmark = pytest.mark.skipif(
 
 
 def process() -> Process:
-    values = {"length": 1.3e-7, "r_w": 2e-3, "c_gate": 1e-9, "c_drain": 1e-9}
-    n = Transistor(models=(Pattern("*nmos"), Pattern("nfet*")), polarity="n", **values)
-    p = Transistor(models=(Pattern("*pmos"), Pattern("pfet*")), polarity="p", **values)
+    n = Transistor(
+        models=(Pattern("*nmos"), Pattern("nfet*")),
+        polarity="n",
+        length=1.3e-7,
+        r_w=2e-3,
+        c_gate=1e-9,
+        c_drain=1e-9,
+    )
+    p = replace(n, models=(Pattern("*pmos"), Pattern("pfet*")), polarity="p")
     return Process(name="any", supply=1.2, transistors=(n, p))
+
+
+def cells_of(library: str) -> dict[str, Cell]:
+    """Return the published facts of a library's cells."""
+    facts: dict[str, dict[str, Cell]] = json.loads((OPEN_CELLS / "cells.json").read_text())
+    return facts[library]
 
 
 def files(library: str) -> list[Path]:
@@ -48,7 +74,7 @@ def files(library: str) -> list[Path]:
 
 def circuits(library: str) -> dict[str, Circuit | str]:
     """Return each cell's circuit, or why there is none."""
-    facts = json.loads((OPEN_CELLS / "cells.json").read_text())[library]
+    facts = cells_of(library)
     found: dict[str, Circuit | str] = {}
     for path in files(library):
         netlist = read(path)
@@ -67,17 +93,22 @@ def circuits(library: str) -> dict[str, Circuit | str]:
     return found
 
 
-def agrees(circuit: Circuit, cell: dict[str, Any]) -> bool:
+def agrees(circuit: Circuit, cell: Cell) -> bool:
     """Tell whether every output that is known computes its function; all must be known."""
     vectors = all_vectors(cell["inputs"])
-    nets = {name: circuit.net_id(name) for name in [*cell["inputs"], *cell["functions"]]}
-    known = values(circuit, {nets[name]: value for name, value in vectors.items()})
+    known = values(circuit, {net_of(circuit, name): value for name, value in vectors.items()})
     for output, function in cell["functions"].items():
-        if nets[output] not in known:
+        if net_of(circuit, output) not in known:
             return False
         expected = function_values(function, vectors)
-        assert (known[nets[output]] == expected).all(), f"{output} is not {function}"
+        assert (known[net_of(circuit, output)] == expected).all(), f"{output} is not {function}"
     return True
+
+
+def net_of(circuit: Circuit, name: str) -> int:
+    net = circuit.net_id(name)
+    assert net is not None, f"no net {name}"
+    return net
 
 
 @pytest.mark.parametrize(
@@ -87,7 +118,7 @@ def test_combinational_cells_compute_their_published_functions(
     library: str, static: int, cells: int
 ) -> None:
     """No cell computes a wrong function; only the multiplexers of pass transistors are left out."""
-    facts = json.loads((OPEN_CELLS / "cells.json").read_text())[library]
+    facts = cells_of(library)
     found = circuits(library)
     assert len(found) == cells
     whole, why = [], Counter[str]()

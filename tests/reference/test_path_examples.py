@@ -1,19 +1,22 @@
 """Worked path examples rebuilt as netlists: G, B, H, F, f, D and each input capacitance.
 
-Sutherland, Sproull and Harris, *Logical Effort*, 1999, chapter 1 to 3, and Weste and Harris, *CMOS VLSI
-Design*, 4th ed. 2011, chapter 4 (from memory), every figure recomputed: ``F = G B H``, ``f = F^(1/N)``,
-``D = N f + P``; p_inv = 1, P/N ratio 2. Capacitances are counted in microns of gate.
+Sutherland, Sproull and Harris, *Logical Effort*, 1999, chapter 1 to 3, and Weste and Harris, *CMOS
+VLSI Design*, 4th ed. 2011, chapter 4 (from memory), every figure recomputed: ``F = G B H``, ``f =
+F^(1/N)``, ``D = N f + P``; p_inv = 1, P/N ratio 2. Capacitances are counted in microns of gate.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import pytest
-from support.blocks import block, circuit_of, inverter, nand, nor
 
 from evenstage.timing.analyse import analyse
-from evenstage.timing.results import Path
+from support.blocks import block, circuit_of, inverter, nand, nor
+
+if TYPE_CHECKING:
+    from evenstage.timing.results import Path
 
 
 @dataclass(frozen=True)
@@ -79,7 +82,8 @@ EXAMPLES = {
     ),
     "E10 INV, NOR2, NAND2, INV": (
         Example(
-            ("inv", "nor2", "nand2", "inv"), (10, 14.519590582, 12.649110641, 13.77449308), (1, 1, 1, 1), 20
+            ("inv", "nor2", "nand2", "inv"), (10, 14.519590582, 12.649110641, 13.77449308), (1, 1,
+            1, 1), 20
         ),
         20 / 9, 1, 2, 1.4519590582, 11.807836233,
     ),

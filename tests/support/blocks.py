@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, TypedDict, Unpack
 
 from evenstage.circuit.recognise import recognise
 from evenstage.netlist.elaborate import elaborate
@@ -15,29 +16,52 @@ if TYPE_CHECKING:
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import Devices
+    from evenstage.process.process import Junction
 
 UNIT_CAP = 1e-15
 """F of one micron of gate in the plain process; so capacitances in fF are widths in microns."""
 
 
-def plain_process(gamma: float = 2.0, p_inv: float = 1.0, **constants: float) -> Process:
+class Constants(TypedDict, total=False):
+    """Constants of a transistor type that tests choose, in SI units."""
+
+    length: float
+    r_w: float
+    r_fixed: float
+    stack: float
+    c_gate: float
+    c_gate_fixed: float
+    c_drain: float
+    c_drain_fixed: float
+    slope: float
+    slope_power: float
+    shape: float
+    shape_carry: float
+    junction: Junction
+    width_min: float
+    width_max: float
+    width_step: float
+    finger_width_max: float
+
+
+def plain_process(
+    gamma: float = 2.0, p_inv: float = 1.0, **constants: Unpack[Constants]
+) -> Process:
     """Return the process the textbooks count widths in: no slopes, no fixed parts, long channels.
 
-    The unit inverter has widths 1 um and gamma um, so that its rise and fall are equal and its input
-    capacitance is 1 + gamma fF.
+    The unit inverter has widths 1 um and gamma um, so that its rise and fall are equal and its
+    input capacitance is 1 + gamma fF.
     """
-    values = {
-        "length": 1e-7,
-        "r_w": 1e-3,
-        "c_gate": 1e-9,
-        "c_drain": p_inv * 1e-9,
-        "stack": 1.0,
-        **constants,
-    }
-    n = Transistor(models=(Pattern("nx"),), polarity="n", **values)
-    p = Transistor(
-        models=(Pattern("px"),), polarity="p", **{**values, "r_w": gamma * values["r_w"]}
+    plain = Transistor(
+        models=(Pattern("nx"),),
+        polarity="n",
+        length=1e-7,
+        r_w=1e-3,
+        c_gate=1e-9,
+        c_drain=p_inv * 1e-9,
     )
+    n = replace(plain, **constants)
+    p = replace(n, models=(Pattern("px"),), polarity="p", r_w=gamma * n.r_w)
     return Process(name="plain", supply=1.0, transistors=(n, p), unit_width=1e-6, unit_ratio=gamma)
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from hypothesis import strategies as st
+
 from support.blocks import block, inverter, nand, nor
 
 
@@ -49,9 +50,7 @@ def random_blocks(draw: st.DrawFn, most: int = 14) -> RandomBlock:
     for index in range(draw(st.integers(1, most))):
         kind = draw(st.sampled_from(["inv", "nand", "nor"]))
         count = 1 if kind == "inv" else draw(st.integers(2, 3))
-        chosen = tuple(
-            dict.fromkeys(draw(st.sampled_from(nets[-6:])) for _ in range(count))
-        )
+        chosen = tuple(dict.fromkeys(draw(st.sampled_from(nets[-6:])) for _ in range(count)))
         if len(chosen) == 1:
             kind = "inv"
         width = draw(st.sampled_from([0.5, 0.8, 1.0, 1.7, 2.5, 4.0]))

@@ -3,26 +3,38 @@
 from __future__ import annotations
 
 import math
-import random
+from typing import TYPE_CHECKING
 
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from support.blocks import block, circuit_of, inverter, nand, plain_process
-from support.random_blocks import RandomBlock, random_blocks
 
 from evenstage.brief import Brief, IgnoreBrief, InputBrief, OutputBrief
 from evenstage.errors import NoPathError
 from evenstage.pattern import Pattern
 from evenstage.timing.analyse import analyse
-from evenstage.timing.results import Analysis
+from support.blocks import block, circuit_of, inverter, nand, plain_process
+from support.random_blocks import RandomBlock, random_blocks
+
+if TYPE_CHECKING:
+    import random
+
+    from evenstage.timing.results import Analysis
 
 PROCESS = plain_process(slope=0.2, slope_power=0.8, shape=1.6, shape_carry=0.2, stack=0.7)
 CHAIN = "\n".join(inverter(f"i{k}", f"x{k}", f"x{k + 1}", 2.0**k, 2 * 2.0**k) for k in range(4))
 
 
-def analysis(text: str, brief: Brief | None = None, **asked: object) -> Analysis:
-    return analyse(circuit_of(text, PROCESS, brief), brief, **asked)  # type: ignore[arg-type]
+def analysis(
+    text: str,
+    brief: Brief | None = None,
+    *,
+    start: str | None = None,
+    end: str | None = None,
+    count: int = 1,
+) -> Analysis:
+    circuit = circuit_of(text, PROCESS, brief)
+    return analyse(circuit, brief, start=start, end=end, count=count)
 
 
 def pats(*names: str) -> tuple[Pattern, ...]:
@@ -45,7 +57,9 @@ class TestLaws:
         ports = " ".join([*drawn.inputs, *drawn.outputs, "vdd", "vss"])
         one, other = analysis(drawn.text()), analysis(block("\n".join(cards), ports))
         assert other.paths[0].delay == pytest.approx(one.paths[0].delay, rel=1e-12)
-        assert {e.net: e.edge for e in other.ends}.keys() == {e.net: e.edge for e in one.ends}.keys()
+        assert {e.net: e.edge for e in other.ends}.keys() == {
+            e.net: e.edge for e in one.ends
+        }.keys()
 
     @given(random_blocks())
     @settings(max_examples=40, deadline=None)

@@ -3,16 +3,19 @@
 from __future__ import annotations
 
 from itertools import islice, pairwise
+from typing import TYPE_CHECKING
 
 import networkx as nx
 import pytest
 from hypothesis import given, settings
-from support.blocks import circuit_of, plain_process
-from support.random_blocks import RandomBlock, random_blocks
 
 from evenstage.timing.analyse import time
 from evenstage.timing.search import slowest_paths, winning_path
-from evenstage.timing.sweep import Timing
+from support.blocks import circuit_of, plain_process
+from support.random_blocks import RandomBlock, random_blocks
+
+if TYPE_CHECKING:
+    from evenstage.timing.sweep import Timing
 
 PROCESS = plain_process(slope=0.2, slope_power=0.8, shape=1.6, shape_carry=0.2, stack=0.7)
 

@@ -8,9 +8,9 @@ from dataclasses import replace
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
-from support.blocks import plain_process
 
 from evenstage.timing.yardstick import best_stage_count, best_stage_effort, yardstick
+from support.blocks import plain_process
 
 
 class TestBestStageEffort:
@@ -57,10 +57,10 @@ class TestBestStageCount:
         [(1, 5.82843), (2, 22.2951), (3, 82.2103), (4, 299.567), (5, 1085.78), (6, 3924.21)],
     )
     def test_boundaries_for_p_inv_one(self, count: int, boundary: float) -> None:
-        """Effort at which N and N + 1 stages are equally fast (recomputed; printed 5.83 ... 3920)."""
+        """Here N and N + 1 stages are equally fast (recomputed; printed 5.83 ... 3920)."""
 
         def delay(n: int) -> float:
-            return n * boundary ** (1 / n) + n
+            return n * math.pow(boundary, 1 / n) + n
 
         assert delay(count) == pytest.approx(delay(count + 1), rel=1e-5)
 
@@ -73,7 +73,7 @@ class TestYardstick:
     def test_linear_charges(
         self, slope_n: float, slope_p: float, shape_n: float, shape_p: float
     ) -> None:
-        """Without carry and with power 1, q is one plus slope of one type times shape of the other."""
+        """Without carry, with power 1: q is 1 plus slope of one type times shape of the other."""
         process = plain_process()
         n, p = process.transistors
         types = (

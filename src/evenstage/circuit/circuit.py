@@ -14,6 +14,7 @@ from evenstage.circuit.function import inverted_text
 from evenstage.circuit.tables import AlikeGates, Arcs, Pins, arcs_of, pins_of
 
 if TYPE_CHECKING:
+    from evenstage.circuit.network import BoolArray
     from evenstage.circuit.supplies import Supplies
     from evenstage.errors import Notice
     from evenstage.netlist.devices import Devices, FloatArray, IntArray
@@ -80,7 +81,7 @@ class Circuit:
     outside_cap: FloatArray = field(repr=False)
     gate_output: IntArray = field(repr=False)
     gate_instance: IntArray = field(repr=False)
-    gate_is_leaf: np.ndarray[tuple[int], np.dtype[np.bool_]] = field(repr=False)
+    gate_is_leaf: BoolArray = field(repr=False)
     ends: dict[int, str]
     notices: tuple[Notice, ...]
 
@@ -100,11 +101,10 @@ class Circuit:
     @cached_property
     def other_cap(self) -> FloatArray:
         """Gates of transistors that belong to no recognised gate, F, shape (nets,)."""
-        strange = np.concatenate([self.across, *(some.devices for some in self.not_understood)])
-        nets = len(self.devices.net_names)
-        strange = strange.astype(np.int64)
+        parts = [self.across, *(some.devices for some in self.not_understood)]
+        strange = np.concatenate(parts)
         cap = self.electrical.gate.today[strange]
-        return np.bincount(self.devices.gate[strange], cap, nets)
+        return at_nets(self.devices.gate[strange], cap, len(self.devices.net_names))
 
     @cached_property
     def fixed_cap(self) -> FloatArray:
@@ -129,7 +129,7 @@ class Circuit:
     @cached_property
     def net_cap(self) -> FloatArray:
         """Load outside the driving gate on each net, F, shape (nets,): pins, wires, outside."""
-        pins = np.bincount(self.pins.net, self.pins.cap.today, len(self.devices.net_names))
+        pins = at_nets(self.pins.net, self.pins.cap.today, len(self.devices.net_names))
         return pins + self.fixed_cap
 
     @cached_property
@@ -160,7 +160,8 @@ class Circuit:
 
     def gate_devices(self, gate: int) -> IntArray:
         """Return the device ids of a gate, in drawing order."""
-        return self.alike[self.gate_form[gate]].devices[self.gate_row[gate]]
+        devices: IntArray = self.alike[int(self.gate_form[gate])].devices[int(self.gate_row[gate])]
+        return devices
 
     def gate_name(self, gate: int) -> str:
         """Return the path of a leaf's instance, or of the first transistor card of another gate."""
@@ -173,8 +174,8 @@ class Circuit:
 
     def gate_subcircuit(self, gate: int) -> str:
         """Return the name of the subcircuit that holds a gate."""
-        instance = self.gate_instance[gate]
-        return self.devices.subcircuits[self.devices.instance_subcircuit[instance]]
+        instance = int(self.gate_instance[gate])
+        return self.devices.subcircuits[int(self.devices.instance_subcircuit[instance])]
 
     def gate_function(self, gate: int) -> str:
         """Return the Boolean function of a gate in net names local to its instance."""
@@ -300,4 +301,9 @@ def wire_capacitance(devices: Devices) -> FloatArray:
     a, b = devices.capacitor_nets
     value = np.where(a == b, 0.0, devices.capacitance)
     nets = len(devices.net_names)
-    return np.bincount(a, value, nets) + np.bincount(b, value, nets)
+    return at_nets(a, value, nets) + at_nets(b, value, nets)
+
+
+def at_nets(net: IntArray, value: FloatArray, nets: int) -> FloatArray:
+    """Add values up on the nets they belong to, shape (nets,)."""
+    return np.bincount(net, value, nets).astype(np.float64, copy=False)

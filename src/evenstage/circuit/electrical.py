@@ -1,4 +1,4 @@
-"""Resistance and capacitance of every device, split into the part that scales and the part that stays.
+"""Resistance and capacitance of every device: the part that scales and the part that stays.
 
 A quantity ``q`` of a device whose width is multiplied by ``x`` becomes ``scaling * x + fixed``
 (capacitance) or ``scaling / x + fixed`` (resistance). Copies in parallel are one device here.

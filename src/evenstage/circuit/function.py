@@ -19,41 +19,40 @@ class Literal:
 
 
 @dataclass(frozen=True, slots=True)
-class All:
+class And:
     """The conjunction of its terms (none: true)."""
 
     terms: tuple[Expression, ...]
 
 
 @dataclass(frozen=True, slots=True)
-class Any:
+class Or:
     """The disjunction of its terms (none: false)."""
 
     terms: tuple[Expression, ...]
 
 
-Expression = Literal | All | Any
+Expression = Literal | And | Or
+
+_Edge = tuple[int, int, Expression]
 
 
 def conduction(network: Network, start: int, end: int, polarity: str) -> Expression:
     """Return when switches of one polarity join two nodes, as a factored expression.
 
-    Series and parallel switches are folded into one until nothing is left to fold. What is left of a
-    network that is not series-parallel (a bridge) is written as the sum of its paths. For ``p``
+    Series and parallel switches are folded into one until nothing is left to fold. What is left of
+    a network that is not series-parallel (a bridge) is written as the sum of its paths. For ``p``
     switches the literals mean "input is 0".
     """
-    edges = [
-        (switch.a, switch.b, Literal(switch.gate) if switch.gate >= 0 else All(()))
+    edges: list[_Edge] = [
+        (switch.a, switch.b, Literal(switch.gate) if switch.gate >= 0 else And(()))
         for switch in network.switches
         if switch.polarity == polarity
     ]
     edges = _folded(edges, (start, end))
     if len(edges) == 1 and {edges[0][0], edges[0][1]} == {start, end}:
         return edges[0][2]
-    return _any(_all(edges[i][2] for i in path) for path in sorted(_edge_paths(edges, start, end)))
-
-
-_Edge = tuple[int, int, Expression]
+    return _or(_and(edges[i][2] for i in path) for path in sorted(_edge_paths(edges, start, end)))
 
 
 def _folded(edges: list[_Edge], ends: tuple[int, int]) -> list[_Edge]:
@@ -69,7 +68,7 @@ def _parallel(edges: list[_Edge]) -> list[_Edge]:
     bundles: dict[tuple[int, int], list[Expression]] = {}
     for a, b, expression in edges:
         bundles.setdefault((min(a, b), max(a, b)), []).append(expression)
-    return [(a, b, _any(expressions)) for (a, b), expressions in bundles.items()]
+    return [(a, b, _or(expressions)) for (a, b), expressions in bundles.items()]
 
 
 def _series(edges: list[_Edge], ends: tuple[int, int]) -> list[_Edge]:
@@ -87,7 +86,7 @@ def _series(edges: list[_Edge], ends: tuple[int, int]) -> list[_Edge]:
         first, second = (edges[index] for index in touching)
         a = first[1] if first[0] == node else first[0]
         b = second[1] if second[0] == node else second[0]
-        rest.insert(touching[0], (a, b, _all((first[2], second[2]))))
+        rest.insert(touching[0], (a, b, _and((first[2], second[2]))))
         return rest
     return edges
 
@@ -105,17 +104,17 @@ def _edge_paths(edges: list[_Edge], start: int, end: int) -> Iterable[tuple[int,
                 stack.append((far, (*path, index), visited | {far}))
 
 
-def _all(terms: Iterable[Expression]) -> Expression:
-    flat = _flat(terms, All)
-    return flat[0] if len(flat) == 1 else All(flat)
+def _and(terms: Iterable[Expression]) -> Expression:
+    flat = _flat(terms, And)
+    return flat[0] if len(flat) == 1 else And(flat)
 
 
-def _any(terms: Iterable[Expression]) -> Expression:
-    flat = _flat(terms, Any)
-    return flat[0] if len(flat) == 1 else Any(flat)
+def _or(terms: Iterable[Expression]) -> Expression:
+    flat = _flat(terms, Or)
+    return flat[0] if len(flat) == 1 else Or(flat)
 
 
-def _flat(terms: Iterable[Expression], kind: type[All | Any]) -> tuple[Expression, ...]:
+def _flat(terms: Iterable[Expression], kind: type[And | Or]) -> tuple[Expression, ...]:
     flat: dict[Expression, None] = {}
     for term in terms:
         flat.update(dict.fromkeys(term.terms if isinstance(term, kind) else (term,)))
@@ -127,11 +126,11 @@ def text(expression: Expression, name: Callable[[int], str]) -> str:
     if isinstance(expression, Literal):
         return name(expression.net)
     if not expression.terms:
-        return "1" if isinstance(expression, All) else "0"
-    if isinstance(expression, Any):
+        return "1" if isinstance(expression, And) else "0"
+    if isinstance(expression, Or):
         return " | ".join(text(term, name) for term in expression.terms)
     return " & ".join(
-        f"({text(term, name)})" if isinstance(term, Any) else text(term, name)
+        f"({text(term, name)})" if isinstance(term, Or) else text(term, name)
         for term in expression.terms
     )
 

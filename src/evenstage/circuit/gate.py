@@ -2,10 +2,10 @@
 
 An arc says how one edge of one input moves the output: along one path of closed switches from the
 output to a supply, with the other inputs at values that let this input decide. It carries the nodes
-whose charge must move with the output: those that closed switches tie to the output after the edge and
-that were not yet at the new supply before it, each with the part of the path its charge has to flow
-through. Of several such settings every one is kept that is not outdone, switch by switch and node by
-node, by another; which of them is slowest depends on the sizes.
+whose charge must move with the output: those that closed switches tie to the output after the edge
+and that were not yet at the new supply before it, each with the part of the path its charge has to
+flow through. Of several such settings every one is kept that is not outdone, switch by switch and
+node by node, by another; which of them is slowest depends on the sizes.
 """
 
 from __future__ import annotations
@@ -206,8 +206,8 @@ def _moved(
 ) -> tuple[tuple[int, int], ...]:
     """Return the nodes whose charge moves, each with how many path switches it flows through.
 
-    A node beside the path is charged through the path node nearest to the output that it is tied to,
-    which is the slowest reading where a mesh offers several.
+    A node beside the path is charged through the path node nearest to the output that it is tied
+    to, which is the slowest reading where a mesh offers several.
     """
     node = _start(network, path)
     on_path = [(node, len(path))]

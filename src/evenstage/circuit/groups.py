@@ -1,8 +1,8 @@
 """Channel-connected groups, and which of them are drawn alike.
 
-Transistors whose drains and sources meet, other than in a supply, form a group. Written down device by
-device with its nets numbered as they appear, a group becomes a row of small integers; equal rows mean
-equal networks. All of it is array work: nothing here loops over devices or nets.
+Transistors whose drains and sources meet, other than in a supply, form a group. Written down device
+by device with its nets numbered as they appear, a group becomes a row of small integers; equal rows
+mean equal networks. All of it is array work: nothing here loops over devices or nets.
 """
 
 from __future__ import annotations

@@ -1,13 +1,15 @@
 """One channel-connected network of switches: what it conducts, and along which paths.
 
-A network is what is left of a channel-connected group when widths and names are taken away: switches
-between local nodes, each closed by one input. Groups with equal networks are recognised once.
+A network is what is left of a channel-connected group when widths and names are taken away:
+switches between local nodes, each closed by one input. Groups with equal networks are recognised
+once.
 
-Fingers are merged first. Two inner nodes that see the same switches towards the same neighbours always
-carry the same voltage, whatever the inputs, so they are one node drawn several times (folded stacks);
-the coarsest such partition is found by refinement, as for bisimilar states (Paige and Tarjan, SIAM
-Journal on Computing 16(6), 1987). Switches between the same nodes with the same input are then one
-switch. Conduction is unchanged: every closed walk of the merged network lifts to one of the drawn.
+Fingers are merged first. Two inner nodes that see the same switches towards the same neighbours
+always carry the same voltage, whatever the inputs, so they are one node drawn several times (folded
+stacks); the coarsest such partition is found by refinement, as for bisimilar states (Paige and
+Tarjan, SIAM Journal on Computing 16(6), 1987). Switches between the same nodes with the same input
+are then one switch. Conduction is unchanged: every closed walk of the merged network lifts to one
+of the drawn.
 """
 
 from __future__ import annotations

@@ -22,7 +22,7 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from evenstage.brief import Brief
-    from evenstage.netlist.devices import Devices, FloatArray, IntArray
+    from evenstage.netlist.devices import Devices, IntArray
     from evenstage.process.process import Process
 
 _DEFAULT_FANOUT = 4
@@ -39,8 +39,8 @@ class _Sorted:
 def recognise(devices: Devices, process: Process, brief: Brief | None = None) -> Circuit:
     """Recognise the static complementary gates of a block.
 
-    Groups of one structure are recognised once, however often they occur. What is not a static gate is
-    kept as `NotUnderstood`, loads what drives it, and is named in a notice.
+    Groups of one structure are recognised once, however often they occur. What is not a static gate
+    is kept as `NotUnderstood`, loads what drives it, and is named in a notice.
 
     Parameters
     ----------
@@ -108,7 +108,8 @@ def _related(found: _Sorted, nets: int) -> _Sorted:
     for form, some in found.gates:
         if isinstance(form.pull_down, Literal):
             complement[some.nets[:, form.output]] = some.nets[:, form.pull_down.net]
-    gates, strange = list(found.gates), []
+    gates = list(found.gates)
+    strange: list[tuple[str, AlikeGroups]] = []
     for reason, some in found.strange:
         inputs = list(dict.fromkeys(s.gate for s in some.network if s.gate >= 0))
         here = some.nets[:, inputs]
@@ -118,9 +119,9 @@ def _related(found: _Sorted, nets: int) -> _Sorted:
             part = _rows(some, np.flatnonzero(inverse == index))
             known = np.argwhere(kind.reshape(len(inputs), len(inputs))).tolist()
             relations = tuple((inputs[a], inputs[b]) for a, b in known)
-            form = recognise_network(some.network, relations) if relations else None
-            if isinstance(form, GateForm):
-                gates.append((form, part))
+            again = recognise_network(some.network, relations) if relations else None
+            if isinstance(again, GateForm):
+                gates.append((again, part))
             else:
                 strange.append((reason, part))
     return _Sorted(tuple(gates), tuple(strange))
@@ -149,14 +150,12 @@ def _inner_nets(form: GateForm) -> list[int]:
     return sorted(ends - {form.output})
 
 
-def _rows(
-    some: AlikeGroups, rows: IntArray | np.ndarray[tuple[int], np.dtype[np.intp]]
-) -> AlikeGroups:
+def _rows(some: AlikeGroups, rows: IntArray) -> AlikeGroups:
     return AlikeGroups(some.network, some.devices[rows], some.nets[rows])
 
 
 def _numbered(found: _Sorted) -> tuple[AlikeGates, ...]:
-    """Number all gates by their first device."""
+    """Give every gate a number: its rank by first device."""
     if not found.gates:
         return ()
     first = np.concatenate([some.devices.min(axis=1) for _, some in found.gates])
@@ -232,7 +231,8 @@ def _with_ends(circuit: Circuit, brief: Brief | None) -> Circuit:
     outside[bare] = _DEFAULT_FANOUT * _unit_input(circuit.process)
     notice = Notice(
         "default-load",
-        f"outputs that nothing loads get {_DEFAULT_FANOUT} unit inverters each: {len(bare)} of them",
+        f"outputs that nothing loads get {_DEFAULT_FANOUT} unit inverters each: {len(bare)} of "
+        "them",
         names=tuple(devices.net_names[net] for net in bare),
     )
     return replace(
@@ -260,7 +260,7 @@ def _natural_ends(circuit: Circuit) -> dict[int, str]:
     return ends
 
 
-def _unit_input(process: Process) -> FloatArray | float:
+def _unit_input(process: Process) -> float:
     """Return the input capacitance of the unit inverter, F."""
     n, p = process.first("n"), process.first("p")
     width = process.unit_width or 0.0

@@ -23,7 +23,7 @@ BoolArray = NDArray[np.bool_]
 # Names met in 5,767 openly published netlist files; common practice, no source.
 _HIGH_NAME = re.compile(r"(a|d|io)?v(dd|cc|pwr)\w*[!]?|dd[!]?|sup|power|pwr|vnw|vpb", re.IGNORECASE)
 _LOW_NAME = re.compile(
-    r"0|(a|d|p)?(gnd|gnda|gndd)\w*[!]?|v(ss|gnd|ee)\w*[!]?|ss|ground|vpw|vnb", re.I
+    r"0|(a|d|p)?(gnd|gnda|gndd)\w*[!]?|v(ss|gnd|ee)\w*[!]?|ss|ground|vpw|vnb", re.IGNORECASE
 )
 
 

@@ -3,18 +3,23 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, TypeVar
 
 import numpy as np
-from numpy.typing import NDArray
 
 from evenstage.circuit.electrical import Scaled
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from numpy.typing import NDArray
+
     from evenstage.circuit.electrical import Electrical
     from evenstage.circuit.gate import ArcForm, GateForm
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray, IntArray
+
+_Kind = TypeVar("_Kind", bound=np.generic)
 
 
 @dataclass(frozen=True)
@@ -53,8 +58,9 @@ class Pins:
 class Arcs:
     """Arcs from one input edge to one output edge; shape ``(arcs,)`` each.
 
-    With ``x`` the size of the gate relative to today and ``C`` the capacitance outside the gate, the
-    Elmore delay is ``(res.scaling/x + res.fixed) C + own + own_shrinking/x + own_growing x`` (s).
+    With ``x`` the size of the gate relative to today and ``C`` the capacitance outside the gate,
+    the Elmore delay is ``(res.scaling/x + res.fixed) C + own + own_shrinking/x + own_growing x``
+    (s).
 
     Parameters
     ----------
@@ -89,35 +95,22 @@ class Arcs:
         return self.own + self.own_shrinking + self.own_growing
 
 
-_Columns = dict[str, "NDArray[np.float64] | NDArray[np.int32] | NDArray[np.bool_]"]
-
-
 def pins_of(alike: tuple[AlikeGates, ...], values: Electrical) -> Pins:
-    """Collect the pins of all gates, ordered by gate."""
-    parts: list[tuple[IntArray, IntArray, IntArray, FloatArray, FloatArray]] = []
-    for some in alike:
-        columns_of_net: dict[int, list[int]] = {}
-        for column, net in enumerate(_drawn(some)):
-            if net >= 0:
-                columns_of_net.setdefault(net, []).append(column)
-        for local, columns in columns_of_net.items():
-            members = some.devices[:, columns]
-            parts.append(
-                (
-                    some.gates,
-                    some.nets[:, local],
-                    np.full(len(some.gates), local, np.int32),
-                    values.gate.scaling[members].sum(axis=1),
-                    values.gate.fixed[members].sum(axis=1),
-                )
-            )
-    gate, net, local_net, scaling, fixed = _stacked(parts, 5)
-    order = np.argsort(gate, kind="stable")
+    """Collect the pins of all gates, ordered by gate.
+
+    Parameters
+    ----------
+    alike : tuple of AlikeGates
+        At least one.
+    values : Electrical
+    """
+    parts = [part for some in alike for part in _pins_of_form(some, values)]
+    order = np.argsort(np.concatenate([part.gate for part in parts]), kind="stable")
     return Pins(
-        gate[order].astype(np.int32),
-        net[order].astype(np.int32),
-        local_net[order].astype(np.int32),
-        Scaled(scaling[order], fixed[order]),
+        gate=_joined([part.gate for part in parts], order),
+        net=_joined([part.net for part in parts], order),
+        local=_joined([part.local for part in parts], order),
+        cap=_joined_scaled([part.cap for part in parts], order),
     )
 
 
@@ -127,89 +120,107 @@ def arcs_of(alike: tuple[AlikeGates, ...], values: Electrical, node_cap: FloatAr
     Parameters
     ----------
     alike : tuple of AlikeGates
+        At least one.
     values : Electrical
     node_cap : FloatArray, F, shape (nets,)
         Capacitor cards on each net; on inner nodes they belong to the gate.
     """
     parts = [part for some in alike for part in _arcs_of_form(some, values, node_cap)]
-    gate, source, output, rising, r_x, r_0, own, small, large, *shape = _stacked(parts, 13)
-    order = np.argsort(gate, kind="stable")
-    slope, power, form, carry = (column[order] for column in shape)
+    order = np.argsort(np.concatenate([part.gate for part in parts]), kind="stable")
     return Arcs(
-        gate=gate[order].astype(np.int32),
-        input=source[order].astype(np.int32),
-        output=output[order].astype(np.int32),
-        rising=rising[order].astype(bool),
-        resistance=Scaled(r_x[order], r_0[order]),
-        own=own[order],
-        own_shrinking=small[order],
-        own_growing=large[order],
-        slope=slope,
-        slope_power=power,
-        shape=form,
-        shape_carry=carry,
+        gate=_joined([part.gate for part in parts], order),
+        input=_joined([part.input for part in parts], order),
+        output=_joined([part.output for part in parts], order),
+        rising=_joined([part.rising for part in parts], order),
+        resistance=_joined_scaled([part.resistance for part in parts], order),
+        own=_joined([part.own for part in parts], order),
+        own_shrinking=_joined([part.own_shrinking for part in parts], order),
+        own_growing=_joined([part.own_growing for part in parts], order),
+        slope=_joined([part.slope for part in parts], order),
+        slope_power=_joined([part.slope_power for part in parts], order),
+        shape=_joined([part.shape for part in parts], order),
+        shape_carry=_joined([part.shape_carry for part in parts], order),
     )
 
 
-def _drawn(some: AlikeGates) -> list[int]:
-    """Return the local net on each drawn device's gate (negative: a supply)."""
-    return [switch.gate for switch in some.form.drawn]
+def _joined(columns: Sequence[NDArray[_Kind]], order: NDArray[np.intp]) -> NDArray[_Kind]:
+    """Put the columns of several tables under each other, then in order."""
+    return np.concatenate(columns)[order]
 
 
-def _stacked(parts: list[tuple[FloatArray, ...]] | list, count: int) -> list[FloatArray]:  # type: ignore[type-arg]
-    """Concatenate parts column by column."""
-    if not parts:
-        return [np.zeros(0) for _ in range(count)]
-    return [np.concatenate(column) for column in zip(*parts, strict=True)]
+def _joined_scaled(columns: Sequence[Scaled], order: NDArray[np.intp]) -> Scaled:
+    return Scaled(
+        _joined([column.scaling for column in columns], order),
+        _joined([column.fixed for column in columns], order),
+    )
 
 
-def _arcs_of_form(
-    some: AlikeGates, values: Electrical, node_cap: FloatArray
-) -> list[tuple[FloatArray, ...]]:
-    """Return the columns of every arc of one form, for all its gates at once."""
+def _pins_of_form(some: AlikeGates, values: Electrical) -> list[Pins]:
+    """Return one table per input of a form, for all its gates."""
+    columns_of_net: dict[int, list[int]] = {}
+    for column, switch in enumerate(some.form.drawn):
+        if switch.gate >= 0:
+            columns_of_net.setdefault(switch.gate, []).append(column)
+    return [
+        Pins(
+            gate=some.gates,
+            net=some.nets[:, local],
+            local=np.full(len(some.gates), local, np.int32),
+            cap=Scaled(
+                values.gate.scaling[some.devices[:, columns]].sum(axis=1),
+                values.gate.fixed[some.devices[:, columns]].sum(axis=1),
+            ),
+        )
+        for local, columns in columns_of_net.items()
+    ]
+
+
+def _arcs_of_form(some: AlikeGates, values: Electrical, node_cap: FloatArray) -> list[Arcs]:
+    """Return one table per arc of a form, for all its gates."""
     network = some.form.network
     res = _switch_resistance(some, values)
     cap = _node_capacitance(some, values, node_cap)
     first_device = [network.switch_of_device.index(i) for i in range(len(network.switches))]
-    return [_arc_columns(some, arc, res, cap, values, first_device) for arc in some.form.arcs]
+    return [_alike_arcs(some, arc, values, (res, cap), first_device) for arc in some.form.arcs]
 
 
-def _arc_columns(
+def _alike_arcs(
     some: AlikeGates,
     arc: ArcForm,
-    res: Scaled,
-    cap: Scaled,
     values: Electrical,
+    parts: tuple[Scaled, Scaled],
     first_device: list[int],
-) -> tuple[FloatArray, ...]:
-    form = some.form
+) -> Arcs:
+    """Return one arc of a form for all its gates.
+
+    The parts are the resistance of each switch and the capacitance of each node.
+    """
+    form, (res, cap) = some.form, parts
     stack = values.stack[some.devices[:, [first_device[i] for i in arc.path]]]
     factor = (1 + stack * (len(arc.path) - 1)) / len(arc.path)
-    # Cumulated from the supply: entry d is the resistance of the last d switches of the path.
+    # Cumulated from the supply: entry d is the resistance of the last d + 1 switches of the path.
     towards = list(reversed(arc.path))
     r_x = np.cumsum(res.scaling[:, towards] * factor[:, ::-1], axis=1)
     r_0 = np.cumsum(res.fixed[:, towards] * factor[:, ::-1], axis=1)
     rows = {node: row for row, node in enumerate(form.network.inner_nodes)}
     nodes = [rows[node] for node, _ in arc.moved]
     depth = [count - 1 for _, count in arc.moved]
+    c_x, c_0 = cap.scaling[:, nodes], cap.fixed[:, nodes]
     switching = next(i for i in arc.path if form.network.switches[i].gate == arc.input)
     device = some.devices[:, first_device[switching]]
-    both = r_x[:, depth] * cap.scaling[:, nodes] + r_0[:, depth] * cap.fixed[:, nodes]
-    ones = np.ones(len(some.gates))
-    return (
-        some.gates,
-        some.nets[:, arc.input],
-        some.nets[:, form.output],
-        ones * arc.rising,
-        r_x[:, -1],
-        r_0[:, -1],
-        both.sum(axis=1),
-        (r_x[:, depth] * cap.fixed[:, nodes]).sum(axis=1),
-        (r_0[:, depth] * cap.scaling[:, nodes]).sum(axis=1),
-        values.slope[device],
-        values.slope_power[device],
-        values.shape[device],
-        values.shape_carry[device],
+    return Arcs(
+        gate=some.gates,
+        input=some.nets[:, arc.input],
+        output=some.nets[:, form.output],
+        rising=np.full(len(some.gates), arc.rising),
+        resistance=Scaled(r_x[:, -1], r_0[:, -1]),
+        own=(r_x[:, depth] * c_x + r_0[:, depth] * c_0).sum(axis=1),
+        own_shrinking=(r_x[:, depth] * c_0).sum(axis=1),
+        own_growing=(r_0[:, depth] * c_x).sum(axis=1),
+        slope=values.slope[device],
+        slope_power=values.slope_power[device],
+        shape=values.shape[device],
+        shape_carry=values.shape_carry[device],
     )
 
 

@@ -1,8 +1,9 @@
 """Few sizes for the copies of a leaf.
 
-A leaf whose widths stand inside it can have only so many sized copies. Where its callers ask for more
-sizes than that, sizes near each other in the logarithm become one: Ward's clustering (Journal of the
-American Statistical Association 58, 1963), which keeps the spread inside the clusters smallest.
+A leaf whose widths stand inside it can have only so many sized copies. Where its callers ask for
+more sizes than that, sizes near each other in the logarithm become one: Ward's clustering (Journal
+of the American Statistical Association 58, 1963), which keeps the spread inside the clusters
+smallest.
 """
 
 from __future__ import annotations

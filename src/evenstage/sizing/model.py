@@ -1,8 +1,8 @@
 """A timed circuit and its sizes to a convex programme.
 
-Every delay is the charged Elmore delay ``q (R C + own)`` of an arc. With ``x_g`` the size of the gate,
-``R = scaling / x_g + fixed``; the load is linear, ``C = sum c_u x_u + c_0``; and the gate's own delay
-is ``own + shrinking / x_g + growing x_g``. Multiplied out these are the monomials of
+Every delay is the charged Elmore delay ``q (R C + own)`` of an arc. With ``x_g`` the size of the
+gate, ``R = scaling / x_g + fixed``; the load is linear, ``C = sum c_u x_u + c_0``; and the gate's
+own delay is ``own + shrinking / x_g + growing x_g``. Multiplied out these are the monomials of
 `evenstage.sizing.problem`.
 """
 
@@ -128,7 +128,7 @@ class Model:
         )
 
     def _delays(self, driven: IntArray) -> Monomials:
-        """Return the delays of the programme's arcs: outside drivers first, then the graph's arcs."""
+        """Return the delays of the programme's arcs: outside drivers first, then the graph's."""
         charge = np.where(self.circuit.arcs.rising, self.unit.charge_rise, self.unit.charge_fall)
         elmore, which = self.elmore, self.graph.arc
         heads = np.searchsorted(elmore.row, np.arange(len(charge) + 1))
@@ -183,8 +183,8 @@ class Model:
     def _elmore_limit(self, limits: Limits) -> FloatArray:
         """Return the Elmore delay up to which an arc keeps a transition limit, s, shape (arcs,).
 
-        If every stage keeps ``shape E <= sqrt(1 - carry^2) T`` and no input is slower than T, then no
-        edge is: the carried part adds at most ``carry T``.
+        If every stage keeps ``shape E <= sqrt(1 - carry^2) T`` and no input is slower than T, then
+        no edge is: the carried part adds at most ``carry T``.
         """
         arcs = self.circuit.arcs
         share = np.sqrt(np.maximum(1 - arcs.shape_carry**2, 0.0))
@@ -194,7 +194,8 @@ class Model:
         if limits.strict:
             return most
         today = arcs.resistance.today * self.circuit.net_cap[arcs.output] + arcs.own_today
-        return np.maximum(most, today)
+        kept: FloatArray = np.maximum(most, today)
+        return kept
 
 
 def _ranges(begin: IntArray, count: IntArray) -> IntArray:

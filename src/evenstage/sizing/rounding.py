@@ -1,9 +1,9 @@
 """Continuous sizes to widths that can be drawn.
 
-Widths go to the nearest width the card can say. Then broken deadlines are repaired by single steps, the
-most delay for the least cost first, and what the steps and the rounding left over is recovered by single
-steps down. Every step is judged by the block's exact delays, ceilings and transitions, so the widths
-that leave here keep every limit they are said to keep.
+Widths go to the nearest width the card can say. Then broken deadlines are repaired by single steps,
+the most delay for the least cost first, and what the steps and the rounding left over is recovered
+by single steps down. Every step is judged by the block's exact delays, ceilings and transitions, so
+the widths that leave here keep every limit they are said to keep.
 """
 
 from __future__ import annotations
@@ -120,7 +120,9 @@ class Rounding:
         by_number: dict[tuple[object, ...], list[int]] = {}
         for slot in slots:
             origins = self._handle(slot).origins
-            spans = tuple((str(o.parameter.span.source.path), o.parameter.span.start) for o in origins)
+            spans = tuple(
+                (str(o.parameter.span.source.path), o.parameter.span.start) for o in origins
+            )
             by_number.setdefault(spans or (slot,), []).append(slot)
         return [sorted(some, key=lambda slot: self.drawn[slot]) for some in by_number.values()]
 

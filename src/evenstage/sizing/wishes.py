@@ -23,8 +23,8 @@ class Wishes:
         The fastest is looked for; of all answers within this share of its delay the cheapest is
         taken. 0: the fastest itself.
     scope : {"path", "block"}
-        What may move: the gates on the slowest paths, grown until no other path limits the block; or
-        every gate.
+        What may move: the gates on the slowest paths, grown until no other path limits the block;
+        or every gate.
     reclaim : bool
         Whether gates off the limiting paths may get smaller.
     spend : {"width", "energy"}

@@ -18,6 +18,7 @@ from evenstage.timing.yardstick import yardstick
 if TYPE_CHECKING:
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
+    from evenstage.netlist.devices import IntArray
 
 
 def time(
@@ -94,7 +95,7 @@ def report(timing: Timing, count: int = 1) -> Analysis:
 
 
 def _ends(timing: Timing) -> tuple[PathEnd, ...]:
-    """Return every end with its later edge, the latest first; equal ones in the order of the nets."""
+    """Return every end with its later edge, the latest first; of equal ones the first net."""
     graph, circuit = timing.graph, timing.circuit
     latest: dict[int, int] = {}
     for index, net in enumerate(graph.net[graph.end].tolist()):
@@ -116,13 +117,13 @@ def _ends(timing: Timing) -> tuple[PathEnd, ...]:
     )
 
 
-def _unreached(circuit: Circuit, reached: np.ndarray[tuple[int], np.dtype[np.int32]]) -> Notice:
+def _unreached(circuit: Circuit, reached: IntArray) -> Notice:
     missing = np.setdiff1d(np.arange(len(circuit)), reached)
     names = tuple(circuit.gate_name(int(gate)) for gate in missing)
     return Notice(
         "not-on-a-path",
-        f"{'one gate lies' if len(names) == 1 else f'{len(names)} gates lie'} on no path that counts "
-        f"(no input reaches it, or it reaches no path end): '{names[0]}'"
+        f"{'one gate lies' if len(names) == 1 else f'{len(names)} gates lie'} on no path that "
+        f"counts (no input reaches it, or it reaches no path end): '{names[0]}'"
         + (" and others" if len(names) > 1 else ""),
         names=names,
     )

@@ -1,13 +1,14 @@
 """Two analyses of one design side by side.
 
-Transistors are matched by instance path and card name, in any case; nets by name. Nothing else needs to
-agree, so hand-edited netlists compare as well as those the program wrote.
+Transistors are matched by instance path and card name, in any case; nets by name. Nothing else
+needs to agree, so hand-edited netlists compare as well as those the program wrote.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -90,7 +91,7 @@ class _Side:
 
 
 def _widths(old: _Side, new: _Side) -> tuple[tuple[WidthDifference, ...], int]:
-    """Return the transistors that differ, in the order of the first netlist, and how many do not."""
+    """Return the transistors that differ, in the first netlist's order, and how many do not."""
     _, here, there = np.intersect1d(old.keys, new.keys, assume_unique=False, return_indices=True)
     a, b = _comparable(old.devices, new.devices, here, there)
     differs = np.abs(b / a - 1) > 1e-9
@@ -98,11 +99,14 @@ def _widths(old: _Side, new: _Side) -> tuple[tuple[WidthDifference, ...], int]:
         (int(device), old.named(int(device), float(x), float(y)))
         for device, x, y in zip(here[differs], a[differs], b[differs], strict=True)
     ]
-    for device in np.setdiff1d(np.arange(len(old.devices)), here).tolist():
-        found.append((device, old.named(device, float(old.devices.width[device]), None)))
-    gone = len(old.devices)
-    for device in np.setdiff1d(np.arange(len(new.devices)), there).tolist():
-        found.append((gone + device, new.named(device, None, float(new.devices.width[device]))))
+    found += [
+        (device, old.named(device, float(old.devices.width[device]), None))
+        for device in np.setdiff1d(np.arange(len(old.devices)), here).tolist()
+    ]
+    found += [
+        (len(old.devices) + device, new.named(device, None, float(new.devices.width[device])))
+        for device in np.setdiff1d(np.arange(len(new.devices)), there).tolist()
+    ]
     found.sort(key=lambda pair: pair[0])
     return tuple(difference for _, difference in found), int((~differs).sum())
 
@@ -152,7 +156,7 @@ def _same_path(path: Path, timing: Timing) -> Path | None:
         (int(graph.source[arc]), int(graph.target[arc])): int(arc)
         for arc in leading[np.isin(graph.target[leading], nodes)]
     }
-    arcs = [arc_of.get(pair) for pair in zip(nodes, nodes[1:], strict=False)]
+    arcs = [arc_of.get(pair) for pair in pairwise(nodes)]
     if nodes[0] not in graph.start or nodes[-1] not in graph.end or None in arcs:
         return None
     return describe(timing, tuple(arc for arc in arcs if arc is not None))

@@ -1,7 +1,7 @@
 """The acyclic graph that delays run along: nodes are edges of nets, arcs are those of the gates.
 
-Which paths count is decided here: where they start and end, what the brief leaves out, and where loops
-are cut. Everything after this works on numbered nodes in topological order.
+Which paths count is decided here: where they start and end, what the brief leaves out, and where
+loops are cut. Everything after this works on numbered nodes in topological order.
 """
 
 from __future__ import annotations
@@ -28,8 +28,8 @@ if TYPE_CHECKING:
 class TimingGraph:
     """Nodes and arcs that lie on some path from a start to an end.
 
-    Node numbers are a topological order; arcs are sorted by target, those of one target in the order
-    of the circuit's arcs.
+    Node numbers are a topological order; arcs are sorted by target, those of one target in the
+    order of the circuit's arcs.
 
     Parameters
     ----------

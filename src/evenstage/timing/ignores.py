@@ -1,8 +1,8 @@
 """Leaving out paths the brief names.
 
-A path is ignored when it starts at a net that fits ``from``, passes one that fits ``through`` and ends
-at one that fits ``to``. To leave out exactly these and no other, each node is split by how far the path
-so far has come with every such rule; an end that a rule completes is no end.
+A path is ignored when it starts at a net that fits ``from``, passes one that fits ``through`` and
+ends at one that fits ``to``. To leave out exactly these and no other, each node is split by how far
+the path so far has come with every such rule; an end that a rule completes is no end.
 """
 
 from __future__ import annotations
@@ -104,7 +104,7 @@ def _rules(circuit: Circuit, brief: Brief | None) -> list[_Rule]:
             (ignore.through, np.arange(len(names)), "net"),
             (ignore.end, circuit.gate_output, "driven net"),
         ):
-            found = select(patterns, [names[net] for net in among], what)
+            found = select(patterns, [names[net] for net in among.tolist()], what)
             chosen.append(frozenset(among[found].tolist()) if patterns else None)
         rules.append(_Rule(*chosen))
     return rules

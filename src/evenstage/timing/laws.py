@@ -1,7 +1,7 @@
 """The arc model: delay and output transition of one arc.
 
-With the Elmore delay E of the conducting path (Elmore, Journal of Applied Physics 19(1), 1948; ln 2 is
-inside the resistances) and the transition T of the input,
+With the Elmore delay E of the conducting path (Elmore, Journal of Applied Physics 19(1), 1948; ln 2
+is inside the resistances) and the transition T of the input,
 
     delay = E + slope T^slope_power E^(1 - slope_power)
     output transition = sqrt((shape E)^2 + (shape_carry T)^2).

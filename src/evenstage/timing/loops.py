@@ -24,9 +24,9 @@ class Cut:
 def cut_loops(source: IntArray, target: IntArray, starts: IntArray, nets: int) -> Cut:
     """Choose arcs between nets whose removal leaves no loop.
 
-    Inside each strongly connected part a depth-first walk runs from the nets where signals enter it, in
-    order of their ids (from the smallest net where nothing enters); arcs that close a loop of the walk
-    are cut. The order of the cards decides nothing but those ids.
+    Inside each strongly connected part a depth-first walk runs from the nets where signals enter
+    it, in order of their ids (from the smallest net where nothing enters); arcs that close a loop
+    of the walk are cut. The order of the cards decides nothing but those ids.
 
     Parameters
     ----------

@@ -1,4 +1,4 @@
-"""What an analysis and a comparison say: plain frozen values in SI units, for people and reports."""
+"""What an analysis and a comparison say: frozen values in SI units, for people and reports."""
 
 from __future__ import annotations
 
@@ -21,8 +21,8 @@ class Yardstick:
     process : str
         Name of the process.
     tau, p_inv, fo4 : float
-        s; dimensionless; s: unit of delay, parasitic delay of the unit inverter in tau, delay of the
-        unit inverter driving four of itself.
+        s; dimensionless; s: unit of delay, parasitic delay of the unit inverter in tau, delay of
+        the unit inverter driving four of itself.
     input_cap : float
         F, of the unit inverter.
     charge_rise, charge_fall : float

@@ -1,9 +1,9 @@
 """The slowest paths of a timing graph, best first.
 
-Every arrival is exact for the path that made it, so walking back from the ends with the lateness of the
-slowest completion as the key meets complete paths in the order of their delay (an A* search with a
-perfect estimate; Hart, Nilsson and Raphael, IEEE TSSC 4(2), 1968). Equal delays are told in the order of the
-end's net, then of the arcs as drawn.
+Every arrival is exact for the path that made it, so walking back from the ends with the lateness of
+the slowest completion as the key meets complete paths in the order of their delay (an A* search
+with a perfect estimate; Hart, Nilsson and Raphael, IEEE TSSC 4(2), 1968). Equal delays are told in
+the order of the end's net, then of the arcs as drawn.
 """
 
 from __future__ import annotations
@@ -56,7 +56,7 @@ def slowest_paths(timing: Timing) -> Iterator[ArcPath]:
         # Of equal keys the newest goes first, so that ties are finished one by one.
         for arc in reversed(arcs_list[head[node] : head[node + 1]]):
             source = int(graph.source[arc])
-            # Along the winning arc the key stays what it is, to the last bit, so that ties are ties.
+            # Along the winning arc the key stays as it is, to the last bit: ties remain ties.
             slack = 0.0
             if arc != int(timing.winner[node]):
                 here = float(timing.arrival[node])

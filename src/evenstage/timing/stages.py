@@ -1,10 +1,10 @@
 """One path in logical-effort terms, stage by stage.
 
 For an arc with path resistance R, charge q of its edge and input capacitance C_in, in units of tau:
-``g = q R C_in / tau``, ``h = C_on / C_in``, ``b = C_total / C_on``, ``f = g h b`` and ``p = q own / tau``,
-with C_on the next input on the path and C_total all that hangs outside the gate, so that the charged
-delay is ``tau (f + p)`` exactly. Along a path ``F = G B H`` (Sutherland, Sproull and Harris, Logical
-Effort, 1999, chapters 1 and 3, from memory).
+``g = q R C_in / tau``, ``h = C_on / C_in``, ``b = C_total / C_on``, ``f = g h b`` and ``p = q own /
+tau``, with C_on the next input on the path and C_total all that hangs outside the gate, so that the
+charged delay is ``tau (f + p)`` exactly. Along a path ``F = G B H`` (Sutherland, Sproull and
+Harris, Logical Effort, 1999, chapters 1 and 3, from memory).
 """
 
 from __future__ import annotations

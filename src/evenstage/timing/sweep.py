@@ -1,8 +1,8 @@
 """Arrivals: one sweep over a timing graph, level by level.
 
-The latest arrival at a node wins, and its transition rides on with it; of equal arrivals the one along
-the arc drawn first. An arc's delay is thereby one number for all paths through it, so that the slowest
-paths are longest paths.
+The latest arrival at a node wins, and its transition rides on with it; of equal arrivals the one
+along the arc drawn first. An arc's delay is thereby one number for all paths through it, so that
+the slowest paths are longest paths.
 """
 
 from __future__ import annotations
@@ -81,7 +81,7 @@ class Timing:
 
     @cached_property
     def lateness(self) -> FloatArray:
-        """How late each end is, s, shape (ends,): arrival plus what its required time takes away."""
+        """How late each end is, s, shape (ends,): its arrival, and what its required time costs."""
         return self.arrival[self.graph.end] + end_offsets(self.graph)
 
 

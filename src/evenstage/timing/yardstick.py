@@ -1,19 +1,20 @@
 r"""The unit inverter of a process as a measure of delay.
 
-In an endless chain of equal stages transitions repeat, rise and fall in turn. With the squares of the
-transitions as unknowns the chain closes linearly,
+In an endless chain of equal stages transitions repeat, rise and fall in turn. With the squares of
+the transitions as unknowns the chain closes linearly,
 
     T_f^2 = (shape_n E_f)^2 + (carry_n T_r)^2,      T_r^2 = (shape_p E_r)^2 + (carry_p T_f)^2,
 
-where E is the Elmore delay of a stage and n, p name the transistor that makes the edge. A slow edge is
-paid for by the stage that receives it but caused by the stage that drives it; charged to the driver,
+where E is the Elmore delay of a stage and n, p name the transistor that makes the edge. A slow edge
+is paid for by the stage that receives it but caused by the stage that drives it; charged to the
+driver,
 
     q_rise E_r = E_r + slope_n T_r^a E_f^(1 - a),   q_fall E_f = E_f + slope_p T_f^a E_r^(1 - a),
 
-with the power ``a`` of the receiving type. For ``a = 1`` and no carry this is ``q_rise = 1 + slope_n
-shape_p`` and ``q_fall = 1 + slope_p shape_n``. Delay per unit effort tau, parasitic delay p_inv and FO4
-follow as in Sutherland, Sproull and Harris, Logical Effort, 1999, chapter 1 (from memory), in charged
-delays.
+with the power ``a`` of the receiving type. For ``a = 1`` and no carry this is ``q_rise = 1 +
+slope_n shape_p`` and ``q_fall = 1 + slope_p shape_n``. Delay per unit effort tau, parasitic delay
+p_inv and FO4 follow as in Sutherland, Sproull and Harris, Logical Effort, 1999, chapter 1 (from
+memory), in charged delays.
 """
 
 from __future__ import annotations
@@ -104,8 +105,8 @@ def _transitions(n: Transistor, p: Transistor, e_fall: float, e_rise: float) -> 
 def best_stage_effort(p_inv: float) -> float:
     """Return the stage effort of the best number of stages.
 
-    It solves ``p_inv + rho (1 - ln rho) = 0`` (Sutherland, Sproull and Harris, Logical Effort, 1999,
-    section 3.3, from memory).
+    It solves ``p_inv + rho (1 - ln rho) = 0`` (Sutherland, Sproull and Harris, Logical Effort,
+    1999, section 3.3, from memory).
 
     Examples
     --------
@@ -133,7 +134,7 @@ def best_stage_count(effort: float, stages: int, parasitic: float, p_inv: float)
     """
 
     def delay(count: int) -> float:
-        return count * effort ** (1 / count) + parasitic + (count - stages) * p_inv
+        return count * math.pow(effort, 1 / count) + parasitic + (count - stages) * p_inv
 
     best = stages
     while delay(best + 2) < delay(best):
