@@ -18,6 +18,7 @@ from evenstage.sizing.engine import Continuous, Engine, worst_charged
 from evenstage.sizing.holds import stage_holds
 from evenstage.sizing.model import Limits, Model
 from evenstage.sizing.partition import Partition, partition
+from evenstage.sizing.problem import totals
 from evenstage.sizing.results import Change, Sizing
 from evenstage.sizing.rounding import Drawn, Rounding
 from evenstage.sizing.variables import Variables, variables
@@ -173,7 +174,7 @@ class _Job:
             per_device = values.gate.scaling + values.drain.scaling + values.source.scaling
             total = self.circuit.switched_cap
         mine = of >= 0
-        spend = np.bincount(of[mine], per_device[mine], len(free))
+        spend = totals(of[mine], per_device[mine], len(free))
         return spend, max(total - float(spend.sum()), 0.0)
 
     def _limits(self, free: Variables) -> Limits:
@@ -202,8 +203,8 @@ class _Job:
         stuck = np.flatnonzero((today > ceiling * (1 + 1e-9)) & ~movable[nets])
         if len(stuck):
             raise InfeasibleError(
-                f"input '{names[stuck[0]]}' shows more capacitance than it may, and every card on it "
-                "is fixed",
+                f"input '{names[stuck[0]]}' shows more capacitance than it may, and every card on "
+                "it is fixed",
                 code="input-over-ceiling",
             )
         transition = self.brief.transition_max or self.original.transition
@@ -263,8 +264,8 @@ class _Job:
     def _is_better(self, found: _Found, after: Timing) -> bool:
         """Tell whether the written widths are worth writing.
 
-        For a wished delay or a ceiling that today breaks they are. Otherwise they must be faster than
-        today by more than rounding noise, or as fast and cheaper.
+        For a wished delay or a ceiling that today breaks they are. Otherwise they must be faster
+        than today by more than rounding noise, or as fast and cheaper.
         """
         before, limits = self.timing, found.engine.limits
         ceiling_broken = self.circuit.net_cap[limits.ceiling_net] > limits.ceiling * (1 + 1e-9)
@@ -362,7 +363,7 @@ class _Job:
         return tuple(changes)
 
     def _alone(self, found: _Found, plan: WidthPlan) -> dict[int, float]:
-        """Return for each size that changes by how much the worst delay moves if it alone changes."""
+        """Return how much each size that changes moves the worst delay by itself, s."""
         parts = found.engine.model.variables.partition
         factors = self._factors(found, plan)
         result = {}
