@@ -13,6 +13,9 @@ if TYPE_CHECKING:
 #: Half cells of a bar's end: nothing, left half, right half, all.
 _BLOCKS: Final = {(False, False): " ", (True, False): "▌", (False, True): "▐", (True, True): "█"}
 _LINES: Final = {(False, False): " ", (True, False): "╸", (False, True): "╺", (True, True): "━"}
+#: An axis shorter than this, s, has no length worth dividing.
+_SHORTEST: Final = 1e-21
+
 _STEPS: Final = (1.0, 2.0, 5.0, 10.0)
 
 
@@ -85,7 +88,7 @@ class TimeAxis:
         return next(power * step for step in _STEPS if power * step >= least * (1 - 1e-9))
 
     def _ticks(self) -> list[float]:
-        if self.end <= self.start:
+        if self.end - self.start < _SHORTEST:
             return [self.start]
         step = self._step()
         first = math.ceil(self.start / step - 1e-9)

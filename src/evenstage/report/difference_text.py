@@ -35,8 +35,8 @@ def difference_report(difference: Difference, *, width: int = 100, unicode: bool
     """
     paper = Paper(width, unicode)
     before, after = difference.before, difference.after
-    lines = paper.paragraph(f"before: {before.source}, block {before.top}")
-    lines += paper.paragraph(f"after:  {after.source}, block {after.top}")
+    lines = labelled(paper, "before", f"{before.source}, block {before.top}")
+    lines += labelled(paper, "after", f"{after.source}, block {after.top}")
     lines += ["", *paper.paragraph(_answer(difference))]
     lines += _paths(paper, difference)
     lines += section("The blocks", total_lines(paper, before, after))

@@ -88,7 +88,7 @@ class Paper:
         hanging = indent if hanging is None else hanging
         room = self.width - max(indent, hanging)
         words = [self.shorten(word, room) for word in _BREAK.split(text) if word.strip()]
-        lines = [" " * indent + "".join(words[:1])]
+        lines = [(" " * indent + "".join(words[:1])).rstrip(" ")]
         for word in words[1:]:
             if cells(lines[-1]) + 1 + cells(word) > self.width:
                 lines.append(" " * hanging + word)

@@ -163,7 +163,7 @@ def _left_over(paper: Paper, row: Sequence[str], kept: Sequence[int], indent: in
     text = row[_FUNCTION]
     if _G not in kept:
         text = f"g {row[_G]}  h {row[_H]}  b {row[_B]}  {text}"
-    return [" " * indent + paper.shorten(text, paper.width - indent)]
+    return [(" " * indent + paper.shorten(text, paper.width - indent)).rstrip()]
 
 
 def _families(paper: Paper, stage: Stage) -> list[_Branch]:
@@ -255,7 +255,7 @@ def _figure(value: float) -> str:
 
 def legend(paper: Paper, yardstick: Yardstick) -> list[str]:
     """Return what the columns mean."""
-    product = f"g{paper.times}h{paper.times}b" if paper.unicode else "g h b"
+    product = f"g{paper.times}h{paper.times}b" if paper.unicode else "g*h*b"
     text = (
         f"{paper.edge('rise')} rising, {paper.edge('fall')} falling output; g logical, "
         f"h electrical, b branching effort; f = {product} stage effort, high or low where {FAR:g} "

@@ -15,6 +15,9 @@ if TYPE_CHECKING:
 #: A name keeps at least this many cells.
 _LEAST_NAME: Final = 4
 
+#: A chart that even the shortest names leave too little room is drawn in this many cells.
+_LEAST_CHART: Final = 6
+
 #: A name of which this many cells are left can still be read.
 _READABLE: Final = 15
 
@@ -118,9 +121,10 @@ def lay_out(
         cap = _cap([natural[index] for index in names], sum(natural[i] for i in names) + room)
         for index in names:
             widths[index] = min(natural[index], cap)
+    room += sum(natural) - sum(widths)
     for index, column in enumerate(columns):
         if column.kind == "chart":
-            widths[index] = min(column.least + max(room, 0), column.most)
+            widths[index] = max(min(column.least + room, column.most), _LEAST_CHART)
     return Table(paper, tuple(columns), tuple(widths), indent)
 
 

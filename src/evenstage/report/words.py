@@ -14,6 +14,9 @@ if TYPE_CHECKING:
     from evenstage.report.paper import Paper
     from evenstage.timing.results import Edge, Path, Yardstick
 
+#: Cells for the label of a paragraph.
+_MARGIN: Final = 12
+
 RISING: Final[dict[Edge, str]] = {"rise": "rising", "fall": "falling"}
 
 
@@ -91,4 +94,5 @@ def section(title: str, lines: Sequence[str]) -> list[str]:
 
 def labelled(paper: Paper, label: str, text: str) -> list[str]:
     """Return a paragraph with a label in its margin."""
-    return paper.paragraph(f"{label:<10}{text}", indent=2, hanging=12)
+    first, *rest = paper.paragraph(text, indent=_MARGIN)
+    return [(f"  {label}".ljust(_MARGIN) + first[_MARGIN:]).rstrip(), *rest]

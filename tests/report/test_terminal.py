@@ -1,0 +1,190 @@
+"""The reports, whole and line by line."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from typing import TYPE_CHECKING
+
+import pytest
+
+from evenstage.report.block_text import CAUTION
+from evenstage.report.terminal import analysis_report, difference_report, sizing_report
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from evenstage.sizing.results import Sizing
+    from evenstage.timing.results import Analysis, Difference
+
+WIDTHS = [80, 100, 160]
+
+
+def one_line(text: str) -> str:
+    """Return a text without its line ends, so that a sentence can be found in it."""
+    return " ".join(text.split())
+
+
+class TestGolden:
+    @pytest.mark.parametrize("width", WIDTHS)
+    def test_analysis(
+        self, analysis: Analysis, golden: Callable[[str, str], None], width: int
+    ) -> None:
+        golden(f"analysis_{width}", analysis_report(analysis, width=width))
+
+    @pytest.mark.parametrize("width", WIDTHS)
+    def test_sizing(self, sizing: Sizing, golden: Callable[[str, str], None], width: int) -> None:
+        golden(f"sizing_{width}", sizing_report(sizing, width=width))
+
+    @pytest.mark.parametrize("width", WIDTHS)
+    def test_difference(
+        self, difference: Difference, golden: Callable[[str, str], None], width: int
+    ) -> None:
+        golden(f"difference_{width}", difference_report(difference, width=width))
+
+    def test_unicode(self, sizing: Sizing, golden: Callable[[str, str], None]) -> None:
+        text = analysis_report(sizing.before, unicode=True) + sizing_report(sizing, unicode=True)
+        golden("unicode", text)
+
+
+class TestAnyReport:
+    def test_ends_with_the_caution(
+        self, analysis: Analysis, sizing: Sizing, difference: Difference
+    ) -> None:
+        for text in (
+            analysis_report(analysis),
+            sizing_report(sizing),
+            difference_report(difference),
+        ):
+            assert one_line(text).endswith(CAUTION)
+            assert text.endswith("someone.\n")
+
+
+class TestAnalysisReport:
+    def test_answer_comes_first(self, analysis: Analysis) -> None:
+        assert analysis_report(analysis).split("\n")[2] == (
+            "The slowest path, a3 rising to wl[63] rising, takes 189 ps, 7.8 FO4, through 6 stages."
+        )
+
+    def test_late_path_says_so(self, analysis: Analysis) -> None:
+        path = replace(analysis.paths[0], required=150e-12)
+        text = one_line(analysis_report(replace(analysis, paths=(path,))))
+        assert "It must arrive by 150 ps and is 38.8 ps late." in text
+
+    def test_late_start_is_not_part_of_the_time_taken(self, analysis: Analysis) -> None:
+        path = analysis.paths[0]
+        later = replace(path, start_arrival=200e-12, delay=path.delay + 200e-12)
+        text = one_line(analysis_report(replace(analysis, paths=(later,), ends=())))
+        assert "takes 189 ps" in text
+        assert "It begins at 200 ps, so wl[63] arrives at 389 ps." in text
+
+    def test_urgent_path_is_not_called_the_slowest(self, analysis: Analysis) -> None:
+        end = replace(analysis.ends[0], delay=900e-12)
+        text = analysis_report(replace(analysis, ends=(end, *analysis.ends)))
+        assert "The most urgent path, a3" in text
+        assert "slowest path" not in text
+
+    def test_bars_follow_the_path_not_the_latest_arrivals(self, analysis: Analysis) -> None:
+        path = analysis.paths[0]
+        stages = tuple(replace(stage, arrival=stage.arrival + 1e-9) for stage in path.stages)
+        shifted = replace(analysis, paths=(replace(path, stages=stages),))
+        assert analysis_report(shifted) == analysis_report(replace(analysis, paths=(path,)))
+
+    def test_stage_count_at_fault_is_named(self, analysis: Analysis) -> None:
+        path = replace(analysis.paths[0], best_stage_count=8)
+        text = one_line(analysis_report(replace(analysis, paths=(path,))))
+        assert "stages 6; 8 would be faster" in text
+
+    def test_even_path_is_left_in_peace(self, analysis: Analysis) -> None:
+        path = analysis.paths[0]
+        charged = sum(stage.charged_delay for stage in path.stages)
+        even = replace(path, least_delay=charged)
+        text = one_line(analysis_report(replace(analysis, paths=(even,))))
+        assert "evening them out would gain next to nothing" in text
+
+    def test_corner_is_named_where_it_is_not_the_process(self, analysis: Analysis) -> None:
+        path = replace(analysis.paths[0], corner="slow")
+        assert "through 6 stages (corner slow)" in one_line(
+            analysis_report(replace(analysis, paths=(path,)))
+        )
+
+    def test_no_paths(self, analysis: Analysis) -> None:
+        assert "There is no path to report." in analysis_report(replace(analysis, paths=()))
+
+    def test_path_without_stages(self, analysis: Analysis) -> None:
+        path = replace(analysis.paths[0], stages=())
+        assert "no stage between" in analysis_report(replace(analysis, paths=(path,)))
+
+
+class TestSizingReport:
+    def test_answer_comes_first(self, sizing: Sizing) -> None:
+        answer = one_line(sizing_report(sizing)).removeprefix("rowdec.sp, block rowdec ")
+        assert answer.startswith(
+            "The slowest path falls from 189 ps to 151 ps (-20 %); 3 cards change; total width "
+            "+1.2 %. The same path is the slowest: a3 rising to wl[63] rising."
+        )
+
+    def test_another_path_may_be_slowest_now(self, sizing: Sizing) -> None:
+        after = replace(sizing.after, paths=sizing.after.paths[::-1])
+        text = one_line(sizing_report(replace(sizing, after=after)))
+        assert "Another path is now the slowest: a2 rising to wl[62] rising." in text
+
+    def test_bound_on_width(self, sizing: Sizing) -> None:
+        by_width = replace(sizing, bound_on="width", bound=0.99 * sizing.total_width_after)
+        text = one_line(sizing_report(by_width))
+        assert "no sizes within the limits can be narrower in total than 1.213 mm" in text
+        assert "the fastest possible would be 152 ps" in text
+
+    @pytest.mark.parametrize(
+        ("done", "free", "why"),
+        [
+            (True, 14, "this netlist was written with the same wishes before"),
+            (False, 0, "none of the 3 cards may change"),
+            (False, 14, "no widths on the grid and within the limits serve the goal (fastest)"),
+        ],
+    )
+    def test_no_changes_say_why(self, sizing: Sizing, *, done: bool, free: int, why: str) -> None:
+        nothing = replace(
+            sizing, after=sizing.before, changes=(), already_done=done, free_cards=free
+        )
+        text = one_line(sizing_report(nothing))
+        assert f"Nothing changes: {why}" in text
+        assert "held xpre0.xinv (input ceiling), xrow[63].xnand (same size)" in text
+        assert "Changes" not in text
+
+    def test_of_very_many_changes_those_that_buy_most_are_shown(self, sizing: Sizing) -> None:
+        changes = tuple(
+            replace(sizing.changes[0], instance=f"x{i}", line=i, alone=-i * 1e-12)
+            for i in range(100)
+        )
+        text = sizing_report(replace(sizing, changes=changes))
+        assert "and 60 more that buy less" in text
+        assert "  x60 " in text
+        assert "  x59 " not in text
+
+
+class TestDifferenceReport:
+    def test_repeated_instances_share_a_line(self, difference: Difference) -> None:
+        text = difference_report(difference)
+        assert "xrow[*].xdrv.xi2 x64  mn1" in text
+        assert "  after     20 x xspare*\n" in text
+
+    def test_path_of_one_netlist_only(self, difference: Difference) -> None:
+        alone = replace(difference, same_path_after=None, same_path_before=None)
+        assert "The slowest path of each, stages of one gate together" in difference_report(alone)
+
+    def test_equal_netlists(self, difference: Difference) -> None:
+        before = difference.before
+        same = replace(
+            difference,
+            after=before,
+            same_path_after=before.paths[0],
+            same_path_before=before.paths[0],
+            widths=(),
+            only_before=(),
+            only_after=(),
+        )
+        text = one_line(difference_report(same))
+        assert "The slowest path stays at 189 ps. It is the same in both" in text
+        assert "Widths differ on no transistors and agree on 974." in text
+        assert "Widths that differ" not in text
+        assert "In only one netlist" not in text
