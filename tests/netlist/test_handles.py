@@ -11,7 +11,7 @@ from evenstage.netlist.edits import rewrite
 from evenstage.netlist.handles import WidthHandles
 from evenstage.netlist.read import read
 from evenstage.netlist.sized_block import Slot
-from support.sized import planned, process, sized, slot_name
+from support.sized import assert_reads_back, planned, process, rewritten, sized, slot_name
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -147,6 +147,19 @@ class TestReasons:
             "it stands in a subcircuit that its leaf calls"
         }
 
+    def test_a_subcircuit_defined_twice_alike_stays(self) -> None:
+        text = b"t\n" + INVERTER + INVERTER + b"x1 a b vdd vss inv\n"
+        assert set(reasons(sized(text, leaves={"inv"})).values()) == {
+            "'inv' is defined again at a.sp:7:1"
+        }
+
+    def test_of_two_different_definitions_the_later_is_changed(self) -> None:
+        text = b"t\n" + INVERTER + INVERTER.replace(b"0.6u", b"0.7u") + b"x1 a b vdd vss inv\n"
+        handles = sized(text, leaves={"inv"})
+        plan = planned(handles, {"x1": 2})
+        assert_reads_back(handles, plan)
+        assert b"w=0.6u" in rewritten(handles, plan)
+
     def test_one_notice_per_reason(self) -> None:
         text = (
             b"t\n.param wu=1u\nm1 y a vss vss nch w=wu l=60n\nm2 z a vss vss nch w=wu l=wu\n"
@@ -183,6 +196,11 @@ class TestFiles:
         assert list(texts) == [main, main.parent / "cells" / "inv.sp"]
         assert texts[main].count(b"\n") == main.read_bytes().count(b"\n") + 1
         assert texts[main.parent / "cells" / "inv.sp"].startswith(INVERTER + b"* evenstage: inv ->")
+
+    def test_a_file_included_twice_is_one_text(self, main: Path) -> None:
+        main.write_bytes(main.read_bytes() + b".include cells/inv.sp\n")
+        handles = sized(read(main), leaves={"inv", "buf"})
+        assert set(reasons(handles)) == {"x3.mn", "x3.mp"}
 
     def test_a_caller_outside_cannot_be_sent_to_a_copy(self, main: Path) -> None:
         (main.parents[1] / "buf.sp").write_bytes(

@@ -9,16 +9,18 @@ from __future__ import annotations
 
 from collections import defaultdict
 from dataclasses import dataclass
-from functools import cached_property
-from typing import TYPE_CHECKING, NamedTuple
+from functools import cached_property, lru_cache
+from typing import TYPE_CHECKING, Final, NamedTuple
 
 from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.values import parse_value
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Mapping
+    from collections.abc import Callable, Iterator, Mapping
 
-    from evenstage.netlist.netlist import Card, Netlist, Parameter
+    from evenstage.netlist.netlist import Card, CardGroup, Netlist, Parameter
+
+_CARDS_KEPT: Final = 1 << 16
 
 
 def names_in(text: str) -> tuple[str, ...]:
@@ -104,6 +106,11 @@ class Bindings:
     netlist: Netlist
     transistors: frozenset[int] = frozenset()
 
+    @cached_property
+    def card(self) -> Callable[[int], Card]:
+        """Gives the card of a number; cards asked for lately are kept."""
+        return lru_cache(maxsize=_CARDS_KEPT)(self.netlist.card)
+
     def callers(self, scope: str) -> tuple[int | None, ...]:
         """Return the numbers of the X cards that call a scope; ``(None,)`` if there is none."""
         return self._callers.get(scope, (None,))
@@ -115,7 +122,7 @@ class Bindings:
         if inside is not None:
             return self._in_scope(place, inside, "inside")
         if caller is not None:
-            card = self.netlist.card(caller)
+            card = self.card(caller)
             passed = card.parameter(name)
             if passed is not None:
                 return Binding(place, passed, "passed", card.scope, self.callers(card.scope))
@@ -148,11 +155,12 @@ class Bindings:
     @cached_property
     def _callers(self) -> Mapping[str, tuple[int, ...]]:
         callers: defaultdict[str, list[int]] = defaultdict(list)
-        for number in range(len(self.netlist)):
-            card = self.netlist.card(number)
-            if card.letter == "x" and card.target.lower() in self.netlist.subcircuits:
-                callers[card.target.lower()].append(number)
-        return {name: tuple(numbers) for name, numbers in callers.items()}
+        for _, group in self._groups():
+            if group.letter == "x":
+                for number, target in zip(group.numbers, group.targets, strict=True):
+                    callers[_text(target)].append(number)
+        known = self.netlist.subcircuits.keys() & callers.keys()
+        return {name: tuple(sorted(callers[name])) for name in known}
 
     @cached_property
     def _mentions(self) -> Mapping[tuple[str, str], list[_Mention]]:
@@ -164,12 +172,21 @@ class Bindings:
                 where = "" if names == (parameter.name,) else scope
                 for name in names:
                     mentions[where, name].append(_Mention(scope, None, parameter.name))
-        for number in range(len(self.netlist)):
-            card = self.netlist.card(number)
-            for parameter in (*card.parameters, *([card.value] if card.value else [])):
-                for name in names_in(parameter.text):
-                    mentions[card.scope, name].append(_Mention(card.scope, number, parameter.name))
+        for scope, group in self._groups():
+            for parameter_name, texts in (*group.parameters.items(), ("", group.values)):
+                names_of = {text: names_in(_text(text)) for text in set(texts)}
+                if not any(names_of.values()):
+                    continue
+                for number, text in zip(group.numbers, texts, strict=True):
+                    for name in names_of[text]:
+                        mentions[scope, name].append(_Mention(scope, number, parameter_name))
         return mentions
+
+    def _groups(self) -> Iterator[tuple[str, CardGroup]]:
+        """Yield all cards that count, in columns, with their scope."""
+        for scope, subcircuit in {**self.netlist.subcircuits, "": self.netlist.top}.items():
+            for group in self.netlist.card_groups(subcircuit.cards):
+                yield scope, group
 
     @cached_property
     def _scopes_naming(self) -> Mapping[str, list[str]]:
@@ -211,7 +228,7 @@ class Bindings:
 
     def _on_card(self, number: int, parameter: str, caller: int | None) -> Use | Place:
         """Return where a card hands a parameter on to: into its subcircuit, or no further."""
-        card = self.netlist.card(number)
+        card = self.card(number)
         if self._is_call(card):
             inner = Place(card.target.lower(), parameter, number)
             binding = self.binding(inner)
@@ -223,3 +240,7 @@ class Bindings:
         """Tell whether a card calls a subcircuit that is more than a wrapped transistor."""
         known = card.target.lower() in self.netlist.subcircuits
         return card.letter == "x" and known and card.number not in self.transistors
+
+
+def _text(word: bytes) -> str:
+    return word.decode("utf-8", "surrogateescape")

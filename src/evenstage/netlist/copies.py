@@ -102,7 +102,11 @@ def wishes_key(changes: Iterable[Respelling]) -> tuple[tuple[int, int, str, str]
 
 
 def _taken_names(netlist: Netlist) -> set[str]:
-    targets = {netlist.card(number).target.lower() for number in range(len(netlist))}
+    targets = {
+        target.decode("utf-8", "surrogateescape")
+        for group in netlist.card_groups(range(len(netlist)))
+        for target in group.targets
+    }
     return targets | set(netlist.subcircuits) | set(netlist.models)
 
 

@@ -111,7 +111,7 @@ class WidthHandles(Mapping[Slot, WidthHandle]):
         return tuple(self._notice(reason, slots) for reason, slots in slots_of.items())
 
     def _notice(self, reason: str, slots: list[Slot]) -> Notice:
-        cards = [self.block.netlist.card(slot.card) for slot in slots]
+        cards = [self.block.card(slot.card) for slot in slots]
         names = tuple(dict.fromkeys(card.name for card in cards))
         place = cards[0].span.place
         return Notice("width-fixed", f"{names[0]} keeps its width: {reason}", place, names)
@@ -164,7 +164,7 @@ def _find(block: SizedBlock, slot: Slot) -> WidthHandle:
 
 def _fin(block: SizedBlock, slot: Slot, width: float) -> float | None:
     """Return the width of one fin where the card counts fins."""
-    card = block.netlist.card(slot.card)
+    card = block.card(slot.card)
     count = block.own_width(card)
     if count is None or block.transistor(slot.card).width_is != "fins":
         return None
@@ -176,7 +176,7 @@ def _fingers_may_change(
     block: SizedBlock, slot: Slot, origins: tuple[Origin, ...], fingers: float
 ) -> bool:
     """Tell whether width and fingers both stand, or may stand, on the transistor card."""
-    card = block.netlist.card(slot.card)
+    card = block.card(slot.card)
     name = block.transistor(slot.card).fingers_parameter
     if name is None or origins[0].parameter not in card.parameters:
         return False

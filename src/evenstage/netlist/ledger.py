@@ -77,7 +77,7 @@ class Ledger:
         """
         step = self.block.transistor(slot.card).width_step or 0.0
         room = max(_STEPS * step, _NOISE * width)
-        scope = self.block.netlist.card(slot.card).scope
+        scope = self.block.card(slot.card).scope
         keyed = {_key(slot, value): Entry(scope, value) for value in spelt}
         for key, entry in keyed.items():
             entered = self.entries.get(key, entry).value

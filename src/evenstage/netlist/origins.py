@@ -40,24 +40,27 @@ class Origin:
         a copy of the leaf.
     model : str
         The number whose spelling is followed.
+    scope : str
+        Lower-case name of the subcircuit that it stands in.
     """
 
     parameter: Parameter
     way: Way
     model: str
+    scope: str
 
 
 def find_origins(block: SizedBlock, slot: Slot) -> tuple[Origin, ...] | str:
     """Return the numbers that set a slot's width, or the reason why it is fixed."""
-    card = block.netlist.card(slot.card)
-    if slot.caller is not None and block.netlist.card(slot.caller).target.lower() != card.scope:
+    card = block.card(slot.card)
+    if slot.caller is not None and block.card(slot.caller).target.lower() != card.scope:
         return "it stands in a subcircuit that its leaf calls"
     own = block.own_width(card)
     if own is None:
         return "its card gives no width"
     found: tuple[Origin, ...] | str
     if is_number(own.text):
-        found = (Origin(parameter=own, way=_local(slot), model=own.text),)
+        found = (Origin(parameter=own, way=_local(slot), model=own.text, scope=card.scope),)
     else:
         found = _from_parameters(block, slot, card, own)
     if isinstance(found, str):
@@ -80,11 +83,11 @@ def _from_parameters(
         return f"its width {own.text} is not in proportion to parameters"
     for roots in traced:
         if all(_serves_alone(block, slot, root) for root in roots):
-            return tuple(_origin(root, slot, card) for root in sorted(roots, key=_place))
+            return tuple(_origin(block, root, slot, card) for root in sorted(roots, key=_place))
     if slot.caller is None or not block.copies_per_leaf or not block.has_one_width(slot):
         return f"its width {own.text} comes from a parameter that sets other things too"
     model = min(traced[0], key=_place).parameter.text
-    return (Origin(parameter=own, way="detached", model=model),)
+    return (Origin(parameter=own, way="detached", model=model, scope=card.scope),)
 
 
 def _place(root: Root) -> tuple[str, int]:
@@ -92,13 +95,16 @@ def _place(root: Root) -> tuple[str, int]:
     return str(span.source.path), span.start
 
 
-def _origin(root: Root, slot: Slot, card: Card) -> Origin:
+def _origin(block: SizedBlock, root: Root, slot: Slot, card: Card) -> Origin:
     """Return how a number found by tracing is changed."""
     way: Way = "shared"
     if slot.caller is not None and root.place.scope == card.scope:
         ways: dict[str, Way] = {"inside": "leaf", "default": "default", "passed": "shared"}
         way = ways[root.kind]
-    return Origin(parameter=root.parameter, way=way, model=root.parameter.text)
+    scope = root.place.scope
+    if root.kind == "passed" and root.place.caller is not None:
+        scope = block.card(root.place.caller).scope
+    return Origin(parameter=root.parameter, way=way, model=root.parameter.text, scope=scope)
 
 
 def _serves_alone(block: SizedBlock, slot: Slot, root: Root) -> bool:
@@ -115,27 +121,28 @@ def _serves(block: SizedBlock, use: Use, variable: int) -> bool:
     )
     if not mine:
         return False
-    return use.name in _FOLLOWING or use.name == block.width_name(block.netlist.card(use.card))
+    return use.name in _FOLLOWING or use.name == block.width_name(block.card(use.card))
 
 
 def _obstacle(block: SizedBlock, slot: Slot, origin: Origin) -> str:
     """Return why an origin cannot be changed after all, or nothing."""
-    card = block.netlist.card(slot.card)
-    caller = None if slot.caller is None else block.netlist.card(slot.caller)
+    card = block.card(slot.card)
+    caller = None if slot.caller is None else block.card(slot.caller)
     if origin.way != "default" and not block.is_editable(origin.parameter.span):
         return _OUTSIDE
+    for scope in (origin.scope, card.scope, "" if caller is None else caller.scope):
+        if scope in block.defined_again:
+            return f"'{scope}' is defined again at {block.defined_again[scope]}"
     if origin.way == "shared" or caller is None:
         return ""
     if not block.is_editable(caller.span):
         return "the file that calls it lies outside the folder of the main file"
-    return "" if origin.way == "default" else _no_copy(block, slot, card, origin)
+    return "" if origin.way == "default" else _no_copy(block, card, origin)
 
 
-def _no_copy(block: SizedBlock, slot: Slot, card: Card, origin: Origin) -> str:
+def _no_copy(block: SizedBlock, card: Card, origin: Origin) -> str:
     """Return why a number inside a leaf cannot be changed for this call alone, or nothing."""
-    ways = block.bindings.callers(card.scope)
-    variables = {block.variable_of.get(slot._replace(caller=way)) for way in ways}
-    if origin.way == "leaf" and len(variables) == 1:
+    if origin.way == "leaf" and block.is_one_for_all(card):
         return ""
     if not block.copies_per_leaf:
         return f"callers of '{card.scope}' share one size, and not all of them may change"

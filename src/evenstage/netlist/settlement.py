@@ -80,7 +80,7 @@ def _all_agree(block: SizedBlock, scope: str, wished: Mapping[Key, Respelling]) 
     relying = {
         caller
         for caller in block.bindings.callers(scope)
-        if caller is not None and block.netlist.card(caller).parameter(name) is None
+        if caller is not None and block.card(caller).parameter(name) is None
     }
     same = len({respelling.new for respelling in wished.values()}) == 1
     return same and relying == {key.caller for key in wished} and block.is_editable(first.span)
@@ -89,7 +89,7 @@ def _all_agree(block: SizedBlock, scope: str, wished: Mapping[Key, Respelling]) 
 def _passed(block: SizedBlock, key: Key, default: Respelling) -> Respelling:
     """Return what passes a value in place of a default."""
     assert key.caller is not None
-    span = block.netlist.card(key.caller).span
+    span = block.card(key.caller).span
     return replace(default, span=Span(span.source, span.end, span.end))
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING, NamedTuple
@@ -13,7 +14,8 @@ from evenstage.netlist.fingers import Drawing
 from evenstage.netlist.tracing import Tracer
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Callable, Mapping
+    from pathlib import Path
 
     from evenstage.netlist.devices import Devices, IntArray
     from evenstage.netlist.netlist import Card, Netlist, Parameter
@@ -54,10 +56,35 @@ class SizedBlock:
     variable_of: Mapping[Slot, int]
     copies_per_leaf: int = 4
 
+    @cached_property
+    def defined_again(self) -> dict[str, str]:
+        """Where the text defines a subcircuit a second time, by its lower-case name.
+
+        Of equal definitions the reader takes the first; changed, it would give way to the second.
+        A file that is included twice is one text and no such case.
+        """
+        counting = np.zeros(len(self.netlist), bool)
+        scopes = {**self.netlist.subcircuits, "": self.netlist.top}
+        for subcircuit in scopes.values():
+            counting[subcircuit.cards] = True
+        again: dict[str, str] = {}
+        for number in np.flatnonzero(~counting).tolist():
+            card = self.card(number)
+            body = scopes[card.scope].body
+            is_later = number > max(scopes[card.scope].cards, default=number)
+            if body is not None and is_later and not _is_inside(card.span, body):
+                again.setdefault(card.scope, card.span.place)
+        return again
+
     @property
     def netlist(self) -> Netlist:
         """The text."""
         return self.devices.netlist
+
+    @property
+    def card(self) -> Callable[[int], Card]:
+        """Gives the card of a number."""
+        return self.bindings.card
 
     def transistor(self, card: int) -> Transistor:
         """Return the type of a transistor card."""
@@ -100,9 +127,14 @@ class SizedBlock:
         """Return the lower-case name of the parameter that holds a transistor card's width."""
         return self.transistor(card.number).width_parameter.lower()
 
+    def is_one_for_all(self, card: Card) -> bool:
+        """Tell whether all callers of a card's leaf belong to one variable."""
+        everybody = len(self.bindings.callers(card.scope))
+        return self._slots_of_card[card.number] == everybody and card.number in self._one_variable
+
     def is_editable(self, span: Span) -> bool:
         """Tell whether a span's file lies in the folder of the main file or below it."""
-        return span.source.path.is_relative_to(self.netlist.sources[0].path.parent)
+        return span.source.path in self._editable
 
     def holds_definitions(self, scope: str) -> bool:
         """Tell whether further subcircuits are defined inside one."""
@@ -124,6 +156,23 @@ class SizedBlock:
     def _callers(self) -> IntArray:
         """Number of the X card that calls each transistor's subcircuit, -1 for the block's own."""
         return self.devices.instance_card[self.devices.instance]
+
+    @cached_property
+    def _editable(self) -> frozenset[Path]:
+        folder = self.netlist.sources[0].path.parent
+        paths = (source.path for source in self.netlist.sources)
+        return frozenset(path for path in paths if path.is_relative_to(folder))
+
+    @cached_property
+    def _slots_of_card(self) -> Counter[int]:
+        return Counter(slot.card for slot in self.variable_of)
+
+    @cached_property
+    def _one_variable(self) -> frozenset[int]:
+        """The cards whose slots all belong to one variable."""
+        pairs = {(slot.card, variable) for slot, variable in self.variable_of.items()}
+        counts = Counter(card for card, _ in pairs)
+        return frozenset(card for card, count in counts.items() if count == 1)
 
     @cached_property
     def _device_of_card(self) -> dict[int, int]:

@@ -89,7 +89,7 @@ class _Wish:
     @property
     def card(self) -> Card:
         """The transistor card."""
-        return self.block.netlist.card(self.handle.slot.card)
+        return self.block.card(self.handle.slot.card)
 
     @property
     def local(self) -> Way:
