@@ -166,7 +166,10 @@ def _wrong_word_count(refusal: _Refusal) -> NetlistError | None:
 
 def _missing_value(refusal: _Refusal) -> NetlistError | None:
     before = refusal.joined[: refusal.place - refusal.start]
-    pattern = rb"([^\s=]+)\s*=\s*\Z" if refusal.sign != "=" else rb"([^\s=]+)\s*=\s*[^\s=]+\s*\Z"
+    # Before a second '=' the word between is a name, unless it is a number.
+    pattern = (
+        rb"([^\s=]+)\s*=\s*\Z" if refusal.sign != "=" else rb"([^\s=]+)\s*=\s*[a-zA-Z_][^\s=]*\s*\Z"
+    )
     match = re.search(pattern, before)
     if match is None:
         return None

@@ -240,7 +240,10 @@ class _Builder(Transformer[Token, Node]):
 
     def number(self, children: list[Token]) -> Node:
         """Return a number, its suffix applied."""
-        return Number(parse_number(children[0]))
+        try:
+            return Number(parse_number(children[0]))
+        except ValueError:
+            raise FormulaError("holds a number that is too large", children[0].start_pos) from None
 
     def name(self, children: list[Token]) -> Node:
         """Return a parameter and note its name."""

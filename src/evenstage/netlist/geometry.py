@@ -271,7 +271,7 @@ class _Sizes:
         return self._not_positive(row, name, "width", "width", "a positive length")
 
     def _bad_length(self, row: int) -> ElaborationError:
-        return self._not_positive(row, "l", "length", "length", "a positive length")
+        return self._not_positive(row, "l", "channel length", "length")
 
     def _bad_fingers(self, row: int) -> ElaborationError:
         own = (self._transistor(row).fingers_parameter or "").lower()

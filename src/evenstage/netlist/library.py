@@ -39,7 +39,8 @@ class Library:
         self.process = process
         self.models = Models(netlist, process)
         self.globals = Scope(assignments=netlist.top.assignments)
-        own = [t.width_parameter.lower() for t in process.transistors]
+        self.width_parameters = frozenset(t.width_parameter.lower() for t in process.transistors)
+        own = sorted(self.width_parameters)
         own += [t.fingers_parameter.lower() for t in process.transistors if t.fingers_parameter]
         names = tuple(dict.fromkeys((*_GEOMETRY, *own)))
         self._sizes = _SIZES | set(own)

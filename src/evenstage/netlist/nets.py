@@ -92,12 +92,15 @@ class NetNames(Sequence[str]):
 
     def _path(self, instance: int) -> str:
         """Return the path of an instance with a dot behind it."""
-        known = self._paths.get(instance)
-        if known is None:
-            outer = self._path(int(self._flat.parent[instance]))
-            name = self._netlist.card_name(int(self._flat.card[instance]))
-            known = self._paths[instance] = f"{outer}{name}."
-        return known
+        inner = []
+        while instance not in self._paths:
+            inner.append(instance)
+            instance = int(self._flat.parent[instance])
+        path = self._paths[instance]
+        for one in reversed(inner):
+            path += self._netlist.card_name(int(self._flat.card[one])) + "."
+            self._paths[one] = path
+        return path
 
 
 class Joints:

@@ -198,7 +198,8 @@ class Binder:
     def _wrapped(self, call: Call, callee: Key, multiplier: float) -> _Devices | None:
         """Return the transistor a call stands for if it is a wrapper's and gives its width."""
         outline = self._library.outline(call.target)
-        if not self._library.is_wrapper(outline):
+        widths = self._library.width_parameters
+        if not self._library.is_wrapper(outline) or widths.isdisjoint(call.parameters):
             return None
         inner = self._library.template(callee)
         if len(inner.card) != 1 or not self._gives_width(call, inner):
