@@ -197,6 +197,23 @@ class TestFiles:
         assert texts[main].count(b"\n") == main.read_bytes().count(b"\n") + 1
         assert texts[main.parent / "cells" / "inv.sp"].startswith(INVERTER + b"* evenstage: inv ->")
 
+    def test_cards_included_into_several_subcircuits_stay(self, main: Path) -> None:
+        (main.parent / "cells" / "drive.sp").write_bytes(b"m1 y a vss vss nch w=1u l=60n\n")
+        include = b"\n.include cells/drive.sp\nm2 y a vss vss nch w=1u l=60n\n.ends\n"
+        main.write_bytes(
+            b"title\n.subckt one a y vss"
+            + include
+            + b".subckt two a y vss"
+            + include
+            + b"x1 a b vss one\nx2 b c vss two\n"
+        )
+        why = "its file is included more than once, and one change would make several"
+        assert reasons(sized(read(main))) == {"m1": why}
+        main.write_bytes(
+            main.read_bytes().replace(include, b"\nm2 y a vss vss nch w=1u l=60n\n.ends\n", 1)
+        )
+        assert reasons(sized(read(main))) == {}
+
     def test_a_file_included_twice_is_one_text(self, main: Path) -> None:
         main.write_bytes(main.read_bytes() + b".include cells/inv.sp\n")
         handles = sized(read(main), leaves={"inv", "buf"})

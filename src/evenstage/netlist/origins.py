@@ -130,6 +130,8 @@ def _obstacle(block: SizedBlock, slot: Slot, origin: Origin) -> str:
     caller = None if slot.caller is None else block.card(slot.caller)
     if origin.way != "default" and not block.is_editable(origin.parameter.span):
         return _OUTSIDE
+    if block.is_read_again(card) or (caller is not None and block.is_read_again(caller)):
+        return "its file is included more than once, and one change would make several"
     for scope in (origin.scope, card.scope, "" if caller is None else caller.scope):
         if scope in block.defined_again:
             return f"'{scope}' is defined again at {block.defined_again[scope]}"

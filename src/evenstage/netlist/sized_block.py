@@ -76,6 +76,13 @@ class SizedBlock:
                 again.setdefault(card.scope, card.span.place)
         return again
 
+    def is_read_again(self, card: Card) -> bool:
+        """Tell whether a card's text makes other cards too, in a file that is included again."""
+        body = self.netlist.subcircuits[card.scope].body if card.scope else None
+        main = self.netlist.sources[0].path
+        at_home = card.span.source.path == main if body is None else _is_inside(card.span, body)
+        return not at_home and self._readings[card.span.source.path, card.span.start] > 1
+
     @property
     def netlist(self) -> Netlist:
         """The text."""
@@ -156,6 +163,12 @@ class SizedBlock:
     def _callers(self) -> IntArray:
         """Number of the X card that calls each transistor's subcircuit, -1 for the block's own."""
         return self.devices.instance_card[self.devices.instance]
+
+    @cached_property
+    def _readings(self) -> Counter[tuple[Path, int]]:
+        """How many cards begin at each place."""
+        spans = (self.netlist.card(number).span for number in range(len(self.netlist)))
+        return Counter((span.source.path, span.start) for span in spans)
 
     @cached_property
     def _editable(self) -> frozenset[Path]:
