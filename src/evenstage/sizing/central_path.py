@@ -40,6 +40,8 @@ _TO_WALL: Final = 0.995
 #: mu does not fall below this part of the remaining residual per constraint, lest the point
 #: comes near the walls before it comes near the path.
 _MU_PER_RESIDUAL: Final = 0.01
+#: Slacks of rows, whose terms are near 1, have no digits below this: mu does not ask for less.
+_LEAST_ROOM: Final = 1e-17
 #: mu falls at most by this factor per step.
 _LEAST_SIGMA: Final = 1e-6
 #: Slack of the constraints that the first point does not keep.
@@ -96,7 +98,8 @@ def central_path(
     at = walk.first(z)
     while True:
         try:
-            at, finished = walk.step(at, precision)
+            with np.errstate(over="ignore", divide="ignore", invalid="ignore"):
+                at, finished = walk.step(at, precision)
         except SingularError:
             return
         yield at
@@ -135,13 +138,12 @@ class _Walk:
         sigma = min(1.0, max((float((ahead.room * ahead.price).mean()) / mu) ** 3, _LEAST_SIGMA))
         residual = float(max(np.abs(dual).max(), np.abs(primal).max()))
         goal = precision * p.scale(at.z)
-        target = max(
-            sigma * mu, min(mu, _MU_PER_RESIDUAL * residual / self.count), goal / self.count
-        )
+        least = max(goal / self.count, _LEAST_ROOM * float(at.price[: p.rows].max()))
+        target = max(sigma * mu, min(mu, _MU_PER_RESIDUAL * residual / self.count), least)
         curved = products - target + reach**2 * affine.room * affine.price
         step = self.direction(at, here, dual, primal, curved)
         found = self.tightened(at.moved(step, self.reach(at, step, _TO_WALL)))
-        return found, mu * self.count <= 1.1 * goal and residual <= goal
+        return found, mu <= 1.1 * least and residual <= goal
 
     def dual_residual(self, at: Point, here: Linearisation, mu: float) -> FloatArray:
         """Return the gradient of the Lagrangian, tie term included."""

@@ -3,8 +3,8 @@
 Nothing here is shared with the optimiser but the delay model itself: timing, conservation of the
 flow and the lower bound are worked out again, plainly, from the sizes and multipliers alone. The
 bound is the one derived in :mod:`evenstage.sizing.bound`: for any unit flow and any prices >= 0,
-the weighted sum of delays, limits and spend is convex in the log sizes, hence above its tangent, and
-the tangent is least at a corner of the box.
+the weighted sum of delays, limits and spend is convex in the log sizes, hence above its tangent,
+and the tangent is least at a corner of the box.
 """
 
 from __future__ import annotations
@@ -41,7 +41,7 @@ class Certificate:
     bound : float
         Lower bound of the goal's objective.
     gap : float
-        Distance of the objective from it, relative to the objective or the longest path.
+        Distance of the objective from it, relative to the objective or the limiting paths.
     """
 
     delay: float
@@ -75,8 +75,8 @@ def check(problem: Problem, goal: Goal, solution: Solution) -> Certificate:
     entering, error = _conservation(problem, solution)
     bound = _bound(problem, goal, solution, delays, limits, entering)
     objective = spend if isinstance(goal, Cheapest) else delay
-    length = max(t for t in times if t > -np.inf) - float(problem.start_arrival.min())
-    unit = abs(objective) if isinstance(goal, Cheapest) else max(abs(objective), length)
+    length = 0.0 if isinstance(goal, Cheapest) else float(solution.flow @ delays)
+    unit = max(abs(objective), length)
     found = Certificate(
         delay=delay,
         spend=spend,

@@ -8,8 +8,8 @@ With ``theta = price / slack`` per row, a Newton step solves
 where H is the Hessian of the Lagrangian, d the diagonal part of bounds, objective and tie term, and
 J the Jacobian of the rows. Of narrow rows (n) slacks and multipliers are eliminated. Wide rows (w),
 such as a spending limit, would fill the matrix with their outer product and keep an unknown of
-their own. The matrix is quasi-definite, so that elimination needs no pivoting in any symmetric order
-(Vanderbei, SIAM J. Optimization 5(1), 1995, from memory).
+their own. The matrix is quasi-definite, so that elimination needs no pivoting in any symmetric
+order (Vanderbei, SIAM J. Optimization 5(1), 1995, from memory).
 
 All patterns are worked out once; assembling is one weighted count per matrix.
 """
@@ -183,6 +183,8 @@ class NewtonSystem:
 
 def _factors(matrix: csc_array[np.float64]) -> SuperLU:
     """Factor a quasi-definite matrix in an order that fills it little, without pivoting."""
+    if not np.all(np.isfinite(matrix.data)):
+        raise SingularError
     try:
         return splu(
             matrix,

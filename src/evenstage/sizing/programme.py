@@ -86,6 +86,12 @@ class Programme:
         return value + self.terms.sums(z[: self.sizes], self.rows)
 
     def scale(self, z: FloatArray) -> float:
-        """Return the size of the objective, not less than a millionth."""
-        paid = float(self.cost @ z + self.weight @ np.exp(z[: self.sizes]))
-        return max(abs(paid), 1e-6)
+        """Return the size of the objective.
+
+        A linear objective may pass through zero; there the size of the variables beside the sizes
+        counts.
+        """
+        paid = self.weight @ np.exp(z[: self.sizes])
+        if paid:
+            return float(paid)
+        return max(abs(float(self.cost @ z)), float(np.abs(z[self.sizes :]).max()))

@@ -60,8 +60,8 @@ def relative_gap(objective: float, bound: float, unit: float) -> float:
     objective, bound : float
         Both s, or both spend.
     unit : float
-        The longest path's own length, s; it matters where offsets bring the objective near 0.
-        For spend: the spend.
+        The limiting paths' own length, s; it matters where offsets bring the objective near 0.
+        For spend: 0.
     """
     return max(objective - bound, 0.0) / max(abs(objective), unit, np.finfo(float).tiny)
 
