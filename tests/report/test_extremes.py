@@ -43,7 +43,7 @@ Made = TypeVar("Made")
 
 SEEDS = st.integers(0, 2**32)
 PAPERS = st.tuples(st.sampled_from([80, 93, 100, 131, 160]), st.booleans())
-QUICK = settings(max_examples=60, deadline=None)
+QUICK = settings(max_examples=40, deadline=None)
 
 #: Letters of names: common ones, blanks, controls, wide ones, marks, bytes that are no UTF-8.
 LETTERS = "abxyz0129[].:! \t\n\x00\x7f\xe9\u8a9e\u0301\u2028\ufffd\udc80\udcff"

@@ -77,9 +77,7 @@ def _paths(paper: Paper, difference: Difference) -> list[str]:
 
 
 def _pair(paper: Paper, title: str, before: Path, after: Path) -> list[str]:
-    text = "f stage effort; width of all transistors of the gate."
-    lines = [*pair_lines(paper, before, after), "", *paper.paragraph(text, indent=2)]
-    return ["", *paper.paragraph(title), *lines]
+    return ["", *paper.paragraph(title), *pair_lines(paper, before, after)]
 
 
 def _only_lines(paper: Paper, difference: Difference) -> list[str]:

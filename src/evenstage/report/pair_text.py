@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Final, Literal
 
 from evenstage.report.bars import TimeAxis
 from evenstage.report.scale import Scale, percent
-from evenstage.report.table import Column, first_that_fits
+from evenstage.report.table import Column, Table, first_that_fits
 from evenstage.report.words import switching
 
 if TYPE_CHECKING:
@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from evenstage.report.paper import Paper
     from evenstage.timing.results import Analysis, Path, Stage
 
-_TIME, _DELAY, _WIDTH, _HOLD = 5, 6, 8, 9
+_OUTPUT, _TIME, _DELAY, _WIDTH, _HOLD = 2, 5, 6, 8, 9
 _COLUMNS: Final = (
     Column("", align="right"),
     Column("gate", kind="name"),
@@ -67,7 +67,7 @@ def paired(before: Sequence[Stage], after: Sequence[Stage]) -> list[tuple[int | 
 def pair_lines(
     paper: Paper, before: Path, after: Path, *, holds: Mapping[str, str] | None = None
 ) -> list[str]:
-    """Return two paths stage by stage on one time axis, before above after.
+    """Return two paths stage by stage on one time axis, before above after, and a legend.
 
     Parameters
     ----------
@@ -84,15 +84,36 @@ def pair_lines(
     effort = Scale.of((stage.stage_effort for stage in stages), digits=2, least=1)
     width = Scale.of((stage.width for stage in stages), "m", digits=3)
     rows = [_row(paper, line, holds or {}, (time, effort, width)) for line in lines]
-    columns = _COLUMNS if holds else _COLUMNS[:_HOLD]
-    rows = [row[: len(columns)] for row in rows]
-    _, table = first_that_fits(paper, [(columns, rows)])
-    start = min(before.start_arrival, after.start_arrival)
-    axis = TimeAxis(start, max(before.delay, after.delay), table.widths[_TIME], time, paper)
+    kept, table = _table(paper, rows, held=bool(holds))
+    start, end = min(before.start_arrival, after.start_arrival), max(before.delay, after.delay)
+    axis = TimeAxis(start, end, table.widths[kept.index(_TIME)], time, paper)
     for row, line in zip(rows, lines, strict=True):
         row[_TIME] = axis.bar(*line.span, thin=line.when == "before")
-    head = _head(columns, axis, width)
-    return [table.line(*row) for row in (*head, *rows)]
+    head = _head(axis, width)
+    drawn = [table.line(*(row[i] for i in kept)) for row in (*head, *rows)]
+    return [*drawn, "", *paper.paragraph(_legend(before, kept), indent=2)]
+
+
+def _legend(path: Path, kept: Sequence[int]) -> str:
+    """Return what the columns mean."""
+    parts = [f"f stage effort, best {path.best_stage_effort:.2f}"]
+    if _WIDTH in kept:
+        parts.append("width of all transistors of the gate")
+    if _HOLD in kept:
+        parts.append("held by the limit that keeps the new size from moving")
+    return "; ".join(parts) + "."
+
+
+def _table(
+    paper: Paper, rows: Sequence[Sequence[str]], *, held: bool
+) -> tuple[Sequence[int], Table]:
+    """Return the columns there is room for, by their indices, and their layout."""
+    everything = range(len(_COLUMNS) if held else _HOLD)
+    less = [i for i in everything if i != _OUTPUT]
+    choices = [everything, less, [i for i in less if i != _WIDTH]]
+    options = [([_COLUMNS[i] for i in c], [[row[i] for i in c] for row in rows]) for c in choices]
+    index, table = first_that_fits(paper, options)
+    return choices[index], table
 
 
 def _interleaved(before: Path, after: Path) -> list[_Line]:
@@ -125,11 +146,11 @@ def _row(
     ]
 
 
-def _head(columns: Sequence[Column], axis: TimeAxis, width: Scale) -> list[list[str]]:
+def _head(axis: TimeAxis, width: Scale) -> list[list[str]]:
     """Return the titles with the tick labels, and the units with the axis."""
-    titles = [column.title for column in columns]
+    titles = [column.title for column in _COLUMNS]
     titles[_TIME] = axis.labels()
-    units = [""] * len(columns)
+    units = [""] * len(_COLUMNS)
     units[_TIME], units[_DELAY], units[_WIDTH] = axis.ruler(), axis.scale.unit, width.unit
     return [titles, units]
 

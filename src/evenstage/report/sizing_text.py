@@ -22,7 +22,7 @@ _HOLDS: Final[dict[Hold, str]] = {
     "upper": "greatest width",
     "fixed": "fixed",
     "ceiling": "input ceiling",
-    "transition": "transition limit",
+    "transition": "transition",
     "grid": "width grid",
     "same size": "same size",
 }
@@ -137,12 +137,7 @@ def _stages(paper: Paper, sizing: Sizing) -> list[str]:
         lines = [*path_lines(paper, new, branches=True), ""]
         held = ", ".join(f"{instance} ({hold})" for instance, hold in holds.items())
         return section("The slowest path", [*lines, *labelled(paper, "held", held or "nowhere")])
-    lines = pair_lines(paper, old, new, holds=holds)
-    text = (
-        f"f stage effort, best {old.best_stage_effort:.2f}; width of all transistors of the gate; "
-        "held by: the limit that keeps the new size from moving."
-    )
     title = "The slowest path before and after"
     if not same_route(old, new):
         title = "The slowest path before and the one after, stages of one gate together"
-    return section(title, [*lines, "", *paper.paragraph(text, indent=2)])
+    return section(title, pair_lines(paper, old, new, holds=holds))
