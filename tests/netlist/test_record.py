@@ -35,7 +35,7 @@ RECORD = Record(
     bound_on="delay",
     gap=1.25e-7,
     rounding_loss=0.0,
-    ceilings={"a<3>": 12.3e-15, "sel": 4e-15},
+    ceilings={"a<3>": 12.3e-15, "a<4>": 12.3e-15, "sel": 4e-15},
     smallest={"nch": 420e-9},
 )
 
@@ -43,14 +43,14 @@ LINES = b"""\
 * evenstage record: limits and figures of the netlist as first drawn; keep these lines
 * evenstage record: worst delay before = 612.3456789 ps
 * evenstage record: worst delay after = 498.1 ps
-* evenstage record: least delay within the limits = 487 ps
+* evenstage record: least charged delay within the limits = 487 ps
 * evenstage record: total width before = 35.2 um
 * evenstage record: switched capacitance before = 123.4 fF
 * evenstage record: slowest transition = 120 ps
 * evenstage record: gap to the bound = 1.25e-07
 * evenstage record: loss by rounding = 0
 * evenstage record: bound on delay = 486.9 ps
-* evenstage record: input a<3> = 12.3 fF
+* evenstage record: input a<3> a<4> = 12.3 fF
 * evenstage record: input sel = 4 fF
 * evenstage record: smallest nch = 420 nm
 * evenstage record: key = 0123456789abcdef

@@ -159,6 +159,17 @@ class TestLeaves:
         assert targets == [b"inv", b"inv_s2", b"inv_s3", b"inv_s2"]
         assert after.count(b".subckt") == 4
 
+    def test_equal_changes_are_told_together(self) -> None:
+        leaf = (
+            b".subckt nd a b y vdd vss\nmn1 y a x vss nch w=1u l=60n\n"
+            b"mn2 x b vss vss nch w=1u l=60n\nmp1 y a vdd vdd pch w=0.8u l=60n\n"
+            b"mp2 y b vdd vdd pch w=0.8u l=60n\n.ends\n"
+        )
+        calls = b"x1 a b c vdd vss nd\nx2 b c d vdd vss nd\n"
+        handles = sized(b"t\n" + leaf + calls, leaves={"nd"})
+        note = b"nd -> nd_s1 (mn1 mn2 w 1u -> 2u, mp1 mp2 w 0.8u -> 1.6u): reason\nx2"
+        assert note in rewritten(handles, planned(handles, {"x2": 2}))
+
     def test_a_caller_outside_the_block_keeps_its_widths(self) -> None:
         block = b".subckt top a c vdd vss\nx2 a c vdd vss inv\n.ends\n"
         other = b".subckt other a c vdd vss\nx1 a c vdd vss inv\n.ends\n"
@@ -303,6 +314,7 @@ class TestLeavesWithParameters:
         after = rewritten(handles, plan)
         assert b".param wu=0.6u\n" + leaf in after
         assert b"nch w=1.2u l=60n ad=3.6e-13 as='0.4p'\n" in after
+        assert b"* evenstage: w 'wu' = 0.6u -> 1.2u: reason\n" in after
         assert b"pch w=2.4u l=60n\n" in after
         assert after.count(b"inv_s1\n") == 2
 

@@ -131,8 +131,16 @@ def _retargeting(netlist: Netlist, copy: LeafCopy, caller: int) -> Respelling:
         old=card.target,
         new=copy.name,
         why="; ".join(dict.fromkeys(change.why for change in told if change.why)),
-        detail=f" ({', '.join(f'{change.card} {change.note}' for change in told)})",
+        detail=f" ({_widths(told)})",
     )
+
+
+def _widths(changes: list[Respelling]) -> str:
+    """Return what changes on the cards of a leaf, equal changes together."""
+    cards_of: dict[str, list[str]] = {}
+    for change in changes:
+        cards_of.setdefault(change.note, []).append(change.card)
+    return ", ".join(f"{' '.join(cards)} {note}" for note, cards in cards_of.items())
 
 
 def _insertion(netlist: Netlist, copy: LeafCopy, elsewhere: Sequence[Respelling]) -> Edit:

@@ -10,6 +10,7 @@ from __future__ import annotations
 import hashlib
 import re
 from dataclasses import dataclass, field
+from textwrap import wrap
 from typing import TYPE_CHECKING, Final, Literal
 
 from evenstage.netlist.comments import BYTE_ORDER_MARK, MARK, line_end
@@ -29,12 +30,13 @@ _LINE: Final = re.compile(re.escape(_PREFIX) + rb"[^\r\n]*(?:\r\n|\n|\r|\Z)")
 _BLOCK: Final = re.compile(rb"(?:" + _LINE.pattern + rb")+")
 _HEADLINE: Final = "limits and figures of the netlist as first drawn; keep these lines"
 _DIGITS: Final = 12
+_COLUMNS: Final = 60
 
 #: Single facts: attribute, words, unit.
 _FACTS: Final = (
     ("delay_before", "worst delay before", "s"),
     ("delay_after", "worst delay after", "s"),
-    ("least_delay", "least delay within the limits", "s"),
+    ("least_delay", "least charged delay within the limits", "s"),
     ("total_width", "total width before", "m"),
     ("switched_cap", "switched capacitance before", "F"),
     ("transition", "slowest transition", "s"),
@@ -176,11 +178,19 @@ def _facts(record: Record) -> Iterator[tuple[str, str]]:
     for attribute, words, unit in _FACTS:
         yield words, _exact(getattr(record, attribute), unit)
     yield f"bound on {record.bound_on}", _exact(record.bound, _BOUND_UNITS[record.bound_on])
-    for name, ceiling in record.ceilings.items():
-        yield f"input {name}", _exact(ceiling, "F")
-    for name, width in record.smallest.items():
-        yield f"smallest {name}", _exact(width, "m")
+    yield from _by_value("input", record.ceilings, "F")
+    yield from _by_value("smallest", record.smallest, "m")
     yield "key", record.key
+
+
+def _by_value(kind: str, values: Mapping[str, float], unit: str) -> Iterator[tuple[str, str]]:
+    """Yield facts about names, those of one value together as far as a line goes."""
+    names_of: dict[str, list[str]] = {}
+    for name, value in values.items():
+        names_of.setdefault(_exact(value, unit), []).append(name)
+    for text, names in names_of.items():
+        for line in wrap(" ".join(names), _COLUMNS, break_long_words=False, break_on_hyphens=False):
+            yield f"{kind} {line}", text
 
 
 def _exact(value: float, unit: str) -> str:
@@ -221,7 +231,8 @@ def _record(facts: Mapping[str, str]) -> Record:
 def _named(facts: Mapping[str, str], kind: str, unit: str) -> dict[str, float]:
     """Return the values of all facts of a kind by the name in them."""
     return {
-        words.removeprefix(kind): parse_quantity(value, unit)
+        name: parse_quantity(value, unit)
         for words, value in facts.items()
         if words.startswith(kind)
+        for name in words.removeprefix(kind).split(" ")
     }

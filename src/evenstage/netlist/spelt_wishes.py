@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from evenstage.netlist.bindings import names_in
@@ -101,11 +101,11 @@ class _Wish:
         """Return the new spelling of a number that sets the width."""
         ratio = written_ratio(self.now, self.then, self.handle.transistor)
         value = parse_value(origin.model).number
-        before = value
+        before, old = value, origin.parameter.text
         if origin.way == "detached":
-            before = self.block.tracer.value_on_card(
-                self.card, origin.parameter, self.handle.slot.caller
-            )
+            caller = self.handle.slot.caller
+            before = self.block.tracer.value_on_card(self.card, origin.parameter, caller)
+            old += f" = {respell(origin.model, value, before)}"
         if self.handle.transistor.width_is == "fins":
             text = respell_count(origin.model, value, max(1, round(before * ratio)))
         else:
@@ -113,7 +113,8 @@ class _Wish:
         factor = parse_value(text).number / before
         if self.handle.transistor.width_is == "finger":
             factor *= self.then.fingers / self.now.fingers
-        return SpeltValue(origin.way, self._respelling(origin.parameter, text), factor)
+        respelling = replace(self._respelling(origin.parameter, text), old=old)
+        return SpeltValue(origin.way, respelling, factor)
 
     def fingers(self) -> Iterator[SpeltValue]:
         """Yield the new number of fingers where it changes."""
