@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -119,7 +120,7 @@ class TestSizingReport:
     def test_answer_comes_first(self, sizing: Sizing) -> None:
         answer = one_line(sizing_report(sizing)).removeprefix("rowdec.sp, block rowdec ")
         assert answer.startswith(
-            "The slowest path falls from 189 ps to 151 ps (-20 %); 3 cards change; total width "
+            "The slowest path falls from 189 ps to 151 ps (-20 %); 2 cards change; total width "
             "+1.2 %. The same path is the slowest: a3 rising to wl[63] rising."
         )
 
@@ -157,16 +158,36 @@ class TestSizingReport:
             for i in range(100)
         )
         text = sizing_report(replace(sizing, changes=changes))
-        assert "and 60 more that buy less" in text
+        assert "and 60 cards more that buy less" in text
         assert "  x60 " in text
         assert "  x59 " not in text
+
+    def test_gates_that_change_alike_share_their_lines(self, sizing: Sizing) -> None:
+        changes = tuple(
+            replace(sizing.changes[0], instance=f"x{i}", card=card, line=10 + i)
+            for i in range(3)
+            for card in ("mn1", "mn2")
+        )
+        text = sizing_report(replace(sizing, changes=changes))
+        assert "3 cards change" in text
+        assert re.search(r"^  x0:2 x24 +mn1 mn2 +w .*-41\.0  rowdec\.sp:10-12", text, re.MULTILINE)
+
+    def test_paths_of_other_gates_pair_by_kind(self, sizing: Sizing) -> None:
+        moved = tuple(
+            replace(stage, instance=f"other.{stage.instance}")
+            for stage in sizing.after.paths[0].stages
+        )
+        path = replace(sizing.after.paths[0], stages=moved, start="b3")
+        after = replace(sizing.after, paths=(path,))
+        text = sizing_report(replace(sizing, after=after))
+        assert re.search(r"^1  xpre0\.xinv .*before.*\n   other.*xinv .*after", text, re.MULTILINE)
 
 
 class TestDifferenceReport:
     def test_repeated_instances_share_a_line(self, difference: Difference) -> None:
         text = difference_report(difference)
-        assert "xrow[*].xdrv.xi2 x64  mn1" in text
-        assert "  after     20 x xspare*\n" in text
+        assert "xrow[0:63].xdrv.xi2 x64  mn1" in text
+        assert "  after     20 x xspare0:19\n" in text
 
     def test_path_of_one_netlist_only(self, difference: Difference) -> None:
         alone = replace(difference, same_path_after=None, same_path_before=None)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from itertools import islice
 from typing import TYPE_CHECKING, Final
 
 from evenstage.report.families import family_name, family_of
@@ -33,12 +34,17 @@ CAUTION: Final = (
 
 
 def end_lines(paper: Paper, ends: Sequence[PathEnd]) -> list[str]:
-    """Return the path ends, slowest first."""
-    shown = ends if len(ends) == _ENDS_SHOWN + 1 else ends[:_ENDS_SHOWN]
-    if not shown:
+    """Return the path ends, slowest first; ends that differ in numbers only share a line."""
+    if not ends:
         return []
     scale = Scale.of((end.delay for end in ends), "s")
-    rows = [[end.net, end.edge, scale.text(end.delay), _end_remark(end)] for end in shown]
+    lines: dict[tuple[str, ...], list[PathEnd]] = {}
+    for end in ends:
+        figures = (end.edge, scale.text(end.delay), _end_remark(end))
+        lines.setdefault((family_of(end.net), *figures), []).append(end)
+    most = len(lines) if len(lines) == _ENDS_SHOWN + 1 else _ENDS_SHOWN
+    shown = dict(islice(lines.items(), most))
+    rows = [[_together(paper, group), *figures] for (_, *figures), group in shown.items()]
     columns = [
         Column("", kind="name"),
         Column(""),
@@ -46,11 +52,17 @@ def end_lines(paper: Paper, ends: Sequence[PathEnd]) -> list[str]:
         Column("", kind="name"),
     ]
     _, table = first_that_fits(paper, [(columns, rows)], indent=2)
-    lines = [table.line(*row) for row in rows]
-    if len(shown) < len(ends):
+    texts = [table.line(*row) for row in rows]
+    left = len(ends) - sum(len(group) for group in shown.values())
+    if left:
         least = scale.text(min(end.delay for end in ends))
-        lines.append(f"  and {len(ends) - len(shown)} more, down to {least}")
-    return lines
+        texts.append(f"  and {left} more, down to {least}")
+    return texts
+
+
+def _together(paper: Paper, group: Sequence[PathEnd]) -> str:
+    many = f"{len(group)} {paper.times} " if len(group) > 1 else ""
+    return many + family_name([end.net for end in group])
 
 
 def _end_remark(end: PathEnd) -> str:

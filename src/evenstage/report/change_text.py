@@ -1,4 +1,4 @@
-"""Widths that change, as tables."""
+"""The changes of a sizing as a table: one block per gate, gates that change alike together."""
 
 from __future__ import annotations
 
@@ -10,18 +10,17 @@ from evenstage.report.table import Column, first_that_fits
 from evenstage.report.words import counted
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Iterable, Sequence
 
     from evenstage.report.paper import Paper
     from evenstage.sizing.results import Change
-    from evenstage.timing.results import WidthDifference
 
-_SHOWN: Final = 40
+_GATES_SHOWN: Final = 40
 
-_CHANGE_COLUMNS: Final = (
+_COLUMNS: Final = (
     Column("gate", kind="name"),
-    Column("", align="left", before=1),
-    Column("card", kind="name"),
+    Column("", before=1),
+    Column("cards", kind="name"),
     Column("sets", kind="name"),
     Column("old", align="right"),
     Column("new", align="right"),
@@ -32,57 +31,86 @@ _CHANGE_COLUMNS: Final = (
 )
 _PLACE, _WHY = 8, 9
 
+#: The changes of gates that differ in the numbers of their names only.
+_Gates = list["Change"]
+
 
 def change_lines(paper: Paper, changes: Sequence[Change]) -> list[str]:
     """Return the changes in the order of the text; of very many those that buy most."""
-    if not changes:
+    gates = _alike(changes)
+    kept = _largest(gates)
+    shown = [change for gate in kept for change in gate]
+    if not shown:
         return []
-    kept = _largest(changes)
-    width = Scale.of((value for c in kept for value in (c.old, c.new)), "m")
-    alone = Scale.of((change.alone for change in kept), "s", digits=3)
-    rows = [_change_row(paper, change, width, alone) for change in kept]
-    for previous, change, row in zip(kept, kept[1:], rows[1:], strict=False):
-        if change.instance == previous.instance:
-            row[0] = row[1] = row[7] = ""
+    width = Scale.of((value for change in shown for value in (change.old, change.new)), "m")
+    alone = Scale.of((change.alone for change in shown), "s", digits=3)
+    rows = [row for gate in kept for row in _gate_rows(paper, gate, width, alone)]
     units = ["", "", "", "", width.unit, width.unit, "", alone.unit, "", ""]
-    everything = range(len(_CHANGE_COLUMNS))
+    everything = range(len(_COLUMNS))
     choices = [everything, everything[:_WHY], everything[:_PLACE]]
-    options = [
-        ([_CHANGE_COLUMNS[i] for i in c], [[r[i] for i in c] for r in rows]) for c in choices
-    ]
+    options = [([_COLUMNS[i] for i in c], [[row[i] for i in c] for row in rows]) for c in choices]
     index, table = first_that_fits(paper, options, indent=2)
     lines = [table.titles(), table.line(*(units[i] for i in choices[index]))]
     lines += [table.line(*row) for row in options[index][1]]
-    if len(kept) < len(changes):
-        lines.append(
-            f"  and {len(changes) - len(kept)} more that buy less, all of them in the JSON"
-        )
+    left = _gate_count(changes) - _gate_count(shown)
+    if left:
+        lines.append(f"  and {counted(left, 'card')} more that buy less, all of them in the JSON")
     return lines
 
 
-def _largest(changes: Sequence[Change]) -> list[Change]:
-    """Return the changes that buy most, in their old order."""
-    order = sorted(range(len(changes)), key=lambda i: (-abs(changes[i].alone), i))
-    return [changes[i] for i in sorted(order[:_SHOWN])]
+def _alike(changes: Sequence[Change]) -> list[_Gates]:
+    """Return the changes by gate, gates of one family that change alike together."""
+    gates: dict[str, list[Change]] = {}
+    for change in changes:
+        gates.setdefault(change.instance, []).append(change)
+    families: dict[tuple[object, ...], _Gates] = {}
+    for instance, gate in gates.items():
+        alike = [(c.card, c.parameter, c.old, c.new, c.alone, c.why) for c in gate]
+        families.setdefault((family_of(instance), *alike), []).extend(gate)
+    return list(families.values())
 
 
-def _change_row(paper: Paper, change: Change, width: Scale, alone: Scale) -> list[str]:
-    many = f"{paper.times}{change.occurrences}" if change.occurrences > 1 else ""
+def _largest(gates: Sequence[_Gates]) -> list[_Gates]:
+    """Return the gates that buy most, in their old order."""
+    order = sorted(range(len(gates)), key=lambda i: (-abs(gates[i][0].alone), i))
+    return [gates[i] for i in sorted(order[:_GATES_SHOWN])]
+
+
+def _gate_rows(paper: Paper, gate: _Gates, width: Scale, alone: Scale) -> list[list[str]]:
+    """Return the rows of a gate: cards that get the same width share one."""
+    alike: dict[tuple[str, float, float], list[Change]] = {}
+    for change in gate:
+        alike.setdefault((change.parameter, change.old, change.new), []).append(change)
+    instances = list(dict.fromkeys(change.instance for change in gate))
+    places = {change.instance: change.occurrences for change in gate}
+    many = sum(places.values())
+    names = [family_name(instances), f"{paper.times}{many}" if many > 1 else ""]
+    buys = _signed(alone.number(gate[0].alone))
     return [
-        change.instance,
-        many,
-        change.card,
-        change.parameter,
-        width.number(change.old),
-        width.number(change.new),
-        factor(paper, change.old, change.new),
-        signed(alone.number(change.alone)),
-        f"{change.file}:{change.line}",
-        change.why,
+        [
+            *(["", ""] if row else names),
+            " ".join(dict.fromkeys(change.card for change in cards)),
+            parameter,
+            width.number(old),
+            width.number(new),
+            factor(paper, old, new),
+            "" if row else buys,
+            _place(cards),
+            cards[0].why,
+        ]
+        for row, ((parameter, old, new), cards) in enumerate(alike.items())
     ]
 
 
-def signed(number: str) -> str:
+def _place(changes: Sequence[Change]) -> str:
+    """Return where changes are written: the file and the first and last line of those in it."""
+    file = changes[0].file
+    lines = [change.line for change in changes if change.file == file]
+    last = f"-{max(lines)}" if max(lines) > min(lines) else ""
+    return f"{file}:{min(lines)}{last}"
+
+
+def _signed(number: str) -> str:
     """Return a number with its sign, zero without."""
     return number if number.startswith("-") or float(number) == 0 else f"+{number}"
 
@@ -93,48 +121,10 @@ def factor(paper: Paper, old: float, new: float) -> str:
     return paper.times + plain(ratio, 2 if ratio < 99.995 else 0)
 
 
+def _gate_count(changes: Iterable[Change]) -> int:
+    return len({change.instance for change in changes})
+
+
 def card_count(changes: Sequence[Change]) -> str:
-    """Return how many cards the changes concern."""
-    return counted(len({(change.file, change.line, change.card) for change in changes}), "card")
-
-
-def difference_lines(paper: Paper, widths: Sequence[WidthDifference]) -> list[str]:
-    """Return widths that differ, instances that differ in numbers only in one line."""
-    families: dict[tuple[str, str, str, float | None, float | None], list[WidthDifference]] = {}
-    for width in widths:
-        key = (family_of(width.instance), width.card, width.model, width.before, width.after)
-        families.setdefault(key, []).append(width)
-    if not families:
-        return []
-    known = [value for w in widths for value in (w.before, w.after) if value is not None]
-    scale = Scale.of(known, "m")
-    rows = [_difference_row(paper, group, scale) for group in families.values()]
-    columns = [
-        Column("instance", kind="name"),
-        Column("", before=1),
-        Column("card", kind="name"),
-        Column("model", kind="name"),
-        Column("before", align="right"),
-        Column("after", align="right"),
-        Column("factor", align="right"),
-    ]
-    shown = rows[:_SHOWN]
-    _, table = first_that_fits(paper, [(columns, shown)], indent=2)
-    lines = [table.titles(), table.line("", "", "", "", scale.unit, scale.unit, "")]
-    lines += [table.line(*row) for row in shown]
-    if len(shown) < len(rows):
-        lines.append(f"  and {len(rows) - len(shown)} more, all of them in the JSON")
-    return lines
-
-
-def _difference_row(paper: Paper, group: Sequence[WidthDifference], scale: Scale) -> list[str]:
-    width = group[0]
-    return [
-        family_name([member.instance for member in group]) or "(top)",
-        f"{paper.times}{len(group)}" if len(group) > 1 else "",
-        width.card,
-        width.model,
-        "-" if width.before is None else scale.number(width.before),
-        "-" if width.after is None else scale.number(width.after),
-        factor(paper, width.before, width.after) if width.before and width.after else "",
-    ]
+    """Return how many gates' cards change, in words."""
+    return counted(_gate_count(changes), "card")

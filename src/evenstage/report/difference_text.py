@@ -5,10 +5,10 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Final
 
 from evenstage.report.block_text import finished, notice_lines
-from evenstage.report.change_text import difference_lines
 from evenstage.report.families import gathered
 from evenstage.report.pair_text import pair_lines, total_lines
 from evenstage.report.paper import Paper
+from evenstage.report.width_text import difference_lines
 from evenstage.report.words import counted, labelled, listed, moves, route, same_route, section
 
 if TYPE_CHECKING:

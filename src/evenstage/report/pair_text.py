@@ -7,6 +7,7 @@ from difflib import SequenceMatcher
 from typing import TYPE_CHECKING, Final, Literal
 
 from evenstage.report.bars import TimeAxis
+from evenstage.report.families import family_name, family_of
 from evenstage.report.scale import Scale, percent
 from evenstage.report.table import Column, Table, first_that_fits
 from evenstage.report.words import switching
@@ -34,26 +35,24 @@ _COLUMNS: Final = (
 
 @dataclass(frozen=True, slots=True)
 class _Line:
-    """One stage of one of the two paths; ``number`` and ``first`` are those of its pair."""
+    """One stage of one of the two paths; ``number`` counts pairs, ``above`` is the other stage."""
 
     number: int
-    first: bool
+    above: Stage | None
     when: Literal["before", "after"]
     stage: Stage
     span: tuple[float, float]
 
 
 def paired(before: Sequence[Stage], after: Sequence[Stage]) -> list[tuple[int | None, int | None]]:
-    """Return the indices of stages of one instance in pairs, in the order of both paths.
+    """Return the indices of stages in pairs, in the order of both paths.
 
-    None stands where only the other path has the stage.
+    A pair is one instance in both paths; where they share none, gates of one kind. None stands
+    where only the other path has the stage.
     """
-    matcher = SequenceMatcher(
-        None,
-        [stage.instance for stage in before],
-        [stage.instance for stage in after],
-        autojunk=False,
-    )
+    shared = {stage.instance for stage in before} & {stage.instance for stage in after}
+    key = _instance if shared else _kind
+    matcher = SequenceMatcher(None, [*map(key, before)], [*map(key, after)], autojunk=False)
     pairs: list[tuple[int | None, int | None]] = []
     for tag, i, i_end, j, j_end in matcher.get_opcodes():
         if tag == "equal":
@@ -62,6 +61,14 @@ def paired(before: Sequence[Stage], after: Sequence[Stage]) -> list[tuple[int | 
             pairs += [(index, None) for index in range(i, i_end)]
             pairs += [(None, index) for index in range(j, j_end)]
     return pairs
+
+
+def _instance(stage: Stage) -> tuple[str, ...]:
+    return (stage.instance,)
+
+
+def _kind(stage: Stage) -> tuple[str, ...]:
+    return stage.subcircuit, stage.function
 
 
 def pair_lines(
@@ -80,7 +87,7 @@ def pair_lines(
     if not lines:
         return []
     stages = [line.stage for line in lines]
-    time = Scale.of([before.delay, after.delay, *(stage.delay for stage in stages)], "s")
+    time = Scale.of((stage.delay for stage in stages), "s")
     effort = Scale.of((stage.stage_effort for stage in stages), digits=2, least=1)
     width = Scale.of((stage.width for stage in stages), "m", digits=3)
     rows = [_row(paper, line, holds or {}, (time, effort, width)) for line in lines]
@@ -122,9 +129,10 @@ def _interleaved(before: Path, after: Path) -> list[_Line]:
     lines: list[_Line] = []
     for number, (i, j) in enumerate(paired(before.stages, after.stages), 1):
         if i is not None:
-            lines.append(_Line(number, True, "before", before.stages[i], old[i]))
+            lines.append(_Line(number, None, "before", before.stages[i], old[i]))
         if j is not None:
-            lines.append(_Line(number, i is None, "after", after.stages[j], new[j]))
+            above = None if i is None else before.stages[i]
+            lines.append(_Line(number, above, "after", after.stages[j], new[j]))
     return lines
 
 
@@ -134,9 +142,8 @@ def _row(
     """Return the texts of all columns, the time column still empty."""
     stage = line.stage
     time, effort, width = scales
-    names = [str(line.number), stage.instance, stage.output, paper.edge(stage.edge)]
     return [
-        *(names if line.first else [""] * len(names)),
+        *_names(paper, line),
         line.when,
         "",
         time.number(stage.delay),
@@ -144,6 +151,16 @@ def _row(
         width.number(stage.width),
         holds.get(stage.instance, "") if line.when == "after" else "",
     ]
+
+
+def _names(paper: Paper, line: _Line) -> list[str]:
+    """Return number, gate, output and edge, without what the line above says already."""
+    stage, above = line.stage, line.above
+    names = [stage.instance, stage.output, paper.edge(stage.edge)]
+    if above is None:
+        return [str(line.number), *names]
+    said = [above.instance, above.output, paper.edge(above.edge)]
+    return ["", *("" if name == other else name for name, other in zip(names, said, strict=True))]
 
 
 def _head(axis: TimeAxis, width: Scale) -> list[list[str]]:
@@ -166,11 +183,13 @@ def total_lines(paper: Paper, before: Analysis, after: Analysis) -> list[str]:
         _total("input capacitance, all", "F", _inputs(before), _inputs(after)),
     ]
     old, new = dict(before.input_caps), dict(after.input_caps)
-    rows += [
-        _total(f"input {net}", "F", old[net], new[net])
-        for net in old
-        if net in new and old[net] != new[net]
-    ]
+    changed: dict[tuple[str, float, float], list[str]] = {}
+    for net, cap in old.items():
+        if new.get(net, cap) != cap:
+            changed.setdefault((family_of(net), cap, new[net]), []).append(net)
+    for (_, was, now), nets in changed.items():
+        many = f"{len(nets)} {paper.times} " if len(nets) > 1 else ""
+        rows.append(_total(f"input {many}{family_name(nets)}", "F", was, now))
     columns = [
         Column("", kind="name"),
         Column("before", align="right"),
