@@ -187,7 +187,7 @@ class TestFiles:
 
     def test_files_outside_the_folder_of_the_main_file_stay(self, main: Path) -> None:
         handles = sized(read(main), leaves={"inv", "buf"})
-        outside = "its file lies outside the folder of the main file"
+        outside = f"'{main.parents[1] / 'buf.sp'}' lies outside the folder of the main file"
         assert reasons(handles) == {"x3.mn": outside, "x3.mp": outside}
 
     def test_an_included_file_gets_its_own_edits(self, main: Path) -> None:
@@ -225,9 +225,8 @@ class TestFiles:
         )
         handles = sized(read(main), leaves={"inv"})
         assert set(reasons(handles)) == {"x9.mn", "x9.mp"}
-        assert set(reasons(handles).values()) == {
-            "the file that calls it lies outside the folder of the main file"
-        }
+        outside = f"'{main.parents[1] / 'buf.sp'}' lies outside the folder of the main file"
+        assert set(reasons(handles).values()) == {outside}
 
 
 class TestDrawable:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import pytest
@@ -277,6 +278,15 @@ class TestLeavesWithParameters:
             b"x1 a b vdd vss inv\n* evenstage: wn 1u -> 1.5u: reason\nx2 b c vdd vss inv wn=1.5u\n"
         )
         assert [w.new for w in plan.written] == pytest.approx([1.5e-6, 3e-6], rel=1e-9)
+
+    def test_a_width_on_another_ones_number_may_miss_its_wish_by_a_step(self) -> None:
+        text = b"t\n.param wu=0.6u\nm1 y a 0 0 nch w=wu l=60n\nm2 y a 1 1 pch w='2*wu' l=60n\n"
+        handles = sized(text)
+        first, second = wish_list(handles, {"m1": 2, "m2": 2})
+        plan = plan_widths(handles, (replace(second, new=2.405e-6), first))
+        assert plan.refused == ()
+        assert [w.new for w in plan.written] == pytest.approx([1.2e-6, 2.4e-6], rel=1e-9)
+        assert_reads_back(handles, plan)
 
     def test_wishes_for_one_number_that_contradict_each_other(self) -> None:
         leaf = (

@@ -12,9 +12,10 @@ if TYPE_CHECKING:
     from evenstage.netlist.sized_block import SizedBlock, Slot
     from evenstage.netlist.spelt_wishes import SpeltValue
 
-#: How many grid steps a width that hangs on another width's number may miss its own wish.
+#: How many grid steps, or which share, a width that hangs on another width's number may miss its
+#: own wish: both were rounded apart.
 _STEPS: Final = 3
-_NOISE: Final = 1e-6
+_SHARE: Final = 0.01
 
 
 class Key(NamedTuple):
@@ -76,7 +77,7 @@ class Ledger:
             Of the value that sets the width; or why the wish cannot be met.
         """
         step = self.block.transistor(slot.card).width_step or 0.0
-        room = max(_STEPS * step, _NOISE * width)
+        room = max(_STEPS * step, _SHARE * width)
         scope = self.block.card(slot.card).scope
         keyed = {_key(slot, value): Entry(scope, value) for value in spelt}
         for key, entry in keyed.items():

@@ -18,9 +18,9 @@ if TYPE_CHECKING:
     from evenstage.netlist.netlist import Card, Parameter
     from evenstage.netlist.sized_block import SizedBlock
     from evenstage.netlist.tracing import Root
+    from evenstage.source import Span
 
 _FOLLOWING: Final = frozenset({"ad", "as", "pd", "ps", "nrd", "nrs", "area", "perim"})
-_OUTSIDE: Final = "its file lies outside the folder of the main file"
 
 Way = Literal["shared", "leaf", "default", "detached"]
 
@@ -129,7 +129,7 @@ def _obstacle(block: SizedBlock, slot: Slot, origin: Origin) -> str:
     card = block.card(slot.card)
     caller = None if slot.caller is None else block.card(slot.caller)
     if origin.way != "default" and not block.is_editable(origin.parameter.span):
-        return _OUTSIDE
+        return _outside(origin.parameter.span)
     if block.is_read_again(card) or (caller is not None and block.is_read_again(caller)):
         return "its file is included more than once, and one change would make several"
     for scope in (origin.scope, card.scope, "" if caller is None else caller.scope):
@@ -138,8 +138,12 @@ def _obstacle(block: SizedBlock, slot: Slot, origin: Origin) -> str:
     if origin.way == "shared" or caller is None:
         return ""
     if not block.is_editable(caller.span):
-        return "the file that calls it lies outside the folder of the main file"
+        return _outside(caller.span)
     return "" if origin.way == "default" else _no_copy(block, card, origin)
+
+
+def _outside(span: Span) -> str:
+    return f"'{span.source.label}' lies outside the folder of the main file"
 
 
 def _no_copy(block: SizedBlock, card: Card, origin: Origin) -> str:

@@ -104,11 +104,6 @@ def respell_count(text: str, old: float, new: float) -> str:
     return respell(text, old, new)
 
 
-def insertion(name: str, value: str) -> str:
-    """Return the text that adds a parameter after a card's last value."""
-    return f" {name}={value}"
-
-
 def _like(model: str, value: Decimal) -> str:
     """Write a decimal with the dot, the leading and the trailing zeros of a model."""
     text = format(value, "f")
