@@ -7,7 +7,9 @@ loops are cut. Everything after this works on numbered nodes in topological orde
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from typing import TYPE_CHECKING
+from functools import cached_property
+from itertools import pairwise
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
@@ -22,6 +24,24 @@ if TYPE_CHECKING:
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.timing.results import Yardstick
+
+
+class Level(NamedTuple):
+    """Arcs that can be swept together.
+
+    Parameters
+    ----------
+    arcs : slice
+        Of the graph's arcs.
+    first : IntArray, shape (k,)
+        Where the arcs of each target begin, counted within the slice.
+    node : IntArray, shape (k,)
+        The targets.
+    """
+
+    arcs: slice
+    first: IntArray
+    node: IntArray
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -71,6 +91,18 @@ class TimingGraph:
 
     def __len__(self) -> int:
         return len(self.net)
+
+    @cached_property
+    def levels(self) -> tuple[Level, ...]:
+        """The arcs level by level, in the order of a sweep; worked out once."""
+        bounds = [0, *self.level_ends.tolist()]
+        heads = np.flatnonzero(np.diff(self.target, prepend=-1))
+        cuts = np.searchsorted(heads, bounds).tolist()
+        return tuple(
+            Level(slice(begin, end), heads[low:high] - begin, self.target[heads[low:high]])
+            for (begin, end), (low, high) in zip(pairwise(bounds), pairwise(cuts), strict=True)
+            if end > begin
+        )
 
 
 @dataclass(frozen=True)

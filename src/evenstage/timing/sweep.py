@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
@@ -51,13 +51,7 @@ class Timing:
     @cached_property
     def charged_arrival(self) -> FloatArray:
         """Latest arrival at each node in charged delay, s, shape (nodes,)."""
-        graph = self.graph
-        arrival = np.full(len(graph), -np.inf)
-        arrival[graph.start] = self.start_arrival
-        for some, first, node in _levels(graph):
-            candidate = arrival[graph.source[some]] + self.charged[some]
-            arrival[node] = np.maximum.reduceat(candidate, first)
-        return arrival
+        return latest_arrivals(self.graph, self.charged, self.start_arrival)
 
     @property
     def start_arrival(self) -> FloatArray:
@@ -103,65 +97,107 @@ def start_arrivals(circuit: Circuit, graph: TimingGraph) -> FloatArray:
     return graph.start_arrival + graph.start_drive * load
 
 
+def latest_arrivals(graph: TimingGraph, delay: FloatArray, start_arrival: FloatArray) -> FloatArray:
+    """Return the latest arrival at each node under given arc delays, s, shape (nodes, ...).
+
+    Parameters
+    ----------
+    graph : TimingGraph
+    delay : FloatArray, s, shape (arcs, ...)
+        Trailing axes are blocks swept side by side.
+    start_arrival : FloatArray, s, shape (starts, ...)
+    """
+    arrival = np.full((len(graph), *delay.shape[1:]), -np.inf)
+    arrival[graph.start] = start_arrival
+    for some, first, node in graph.levels:
+        candidate = arrival[graph.source[some]] + delay[some]
+        arrival[node] = np.maximum.reduceat(candidate, first, axis=0)
+    return arrival
+
+
 def sweep(circuit: Circuit, graph: TimingGraph, unit: Yardstick) -> Timing:
     """Add up the delays of a circuit along a graph."""
     arcs, which = circuit.arcs, graph.arc
     load = circuit.net_cap[arcs.output]
     elmore = (arcs.resistance.today * load + arcs.own_today)[which]
     charge = np.where(arcs.rising, unit.charge_rise, unit.charge_fall)[which]
-    slope, power = arcs.slope[which], arcs.slope_power[which]
-    shape, carry = arcs.shape[which], arcs.shape_carry[which]
-    arrival = np.full(len(graph), -np.inf)
-    transition = np.zeros(len(graph))
-    winner = np.full(len(graph), -1, np.int32)
-    delay = np.empty(len(which))
-    arrival[graph.start] = start_arrivals(circuit, graph)
-    transition[graph.start] = graph.start_transition
-    for some, first, node in _levels(graph):
-        source = graph.source[some]
-        arriving = transition[source]
-        delay[some] = arc_delay(elmore[some], arriving, slope[some], power[some])
-        candidate = arrival[source] + delay[some]
-        latest = np.maximum.reduceat(candidate, first)
-        by = _first_equal(candidate, latest, first) + some.start
-        arrival[node] = latest
-        winner[node] = by
-        leaving = arc_transition(elmore[by], transition[graph.source[by]], shape[by], carry[by])
-        transition[node] = leaving
+    flow = propagate(circuit, graph, elmore, start_arrivals(circuit, graph))
     return Timing(
         circuit=circuit,
         graph=graph,
         unit=unit,
         elmore=elmore,
-        delay=delay,
+        delay=flow.delay,
         charged=charge * elmore,
-        arrival=arrival,
-        transition=transition,
-        winner=winner,
+        arrival=flow.arrival,
+        transition=flow.transition,
+        winner=flow.winner,
     )
 
 
-def _levels(graph: TimingGraph) -> list[tuple[slice, IntArray, IntArray]]:
-    """Return per level its arcs, where each target's arcs begin among them, and the targets."""
-    bounds = [0, *graph.level_ends.tolist()]
-    starts_target = np.flatnonzero(np.diff(graph.target, prepend=-1))
-    cuts = np.searchsorted(starts_target, bounds)
-    return [
-        (
-            slice(begin, end),
-            (starts_target[lo:hi] - begin).astype(np.int32),
-            graph.target[starts_target[lo:hi]],
-        )
-        for begin, end, lo, hi in zip(bounds, bounds[1:], cuts, cuts[1:], strict=False)
-        if end > begin
-    ]
+class Flow(NamedTuple):
+    """What one sweep finds; the trailing axes, if any, are blocks swept side by side.
+
+    Parameters
+    ----------
+    delay : FloatArray, s, shape (arcs, ...)
+    arrival, transition : FloatArray, s, shape (nodes, ...)
+    winner : IntArray, shape (nodes, ...)
+        Graph arc the arrival came by; -1 at starts.
+    """
+
+    delay: FloatArray
+    arrival: FloatArray
+    transition: FloatArray
+    winner: IntArray
+
+
+def propagate(
+    circuit: Circuit, graph: TimingGraph, elmore: FloatArray, start_arrival: FloatArray
+) -> Flow:
+    """Add up given Elmore delays along a graph, with the transitions they make.
+
+    Parameters
+    ----------
+    circuit : Circuit
+        Its transition constants count, not its widths.
+    graph : TimingGraph
+    elmore : FloatArray, s, shape (arcs, ...)
+        Per graph arc; trailing axes are blocks swept side by side.
+    start_arrival : FloatArray, s, shape (starts, ...)
+    """
+    arcs, which = circuit.arcs, graph.arc
+    beside = elmore.shape[1:]
+    column = (-1, *(1 for _ in beside))
+    slope, power, shape, carry = (
+        constant[which].reshape(column)
+        for constant in (arcs.slope, arcs.slope_power, arcs.shape, arcs.shape_carry)
+    )
+    arrival = np.full((len(graph), *beside), -np.inf)
+    transition = np.zeros((len(graph), *beside))
+    winner = np.full((len(graph), *beside), -1, np.int32)
+    delay = np.empty_like(elmore)
+    arrival[graph.start] = start_arrival
+    transition[graph.start] = graph.start_transition.reshape(column)
+    for some, first, node in graph.levels:
+        source = graph.source[some]
+        arriving = transition[source]
+        delay[some] = arc_delay(elmore[some], arriving, slope[some], power[some])
+        candidate = arrival[source] + delay[some]
+        latest = np.maximum.reduceat(candidate, first, axis=0)
+        by = _first_equal(candidate, latest, first)
+        leaving = arc_transition(elmore[some], arriving, shape[some], carry[some])
+        arrival[node] = latest
+        winner[node] = by + some.start
+        transition[node] = np.take_along_axis(leaving, by, axis=0)
+    return Flow(delay, arrival, transition, winner)
 
 
 def _first_equal(candidate: FloatArray, latest: FloatArray, first: IntArray) -> IntArray:
     """Return the first position in each run of candidates that equals the run's maximum."""
-    counts = np.diff(first, append=len(candidate))
-    hits = np.flatnonzero(candidate == np.repeat(latest, counts))
-    run_of_hit = np.searchsorted(first, hits, side="right") - 1
-    _, first_hit = np.unique(run_of_hit, return_index=True)
-    result: IntArray = hits[first_hit].astype(np.int32)
+    runs = np.repeat(latest, np.diff(first, append=len(candidate)), axis=0)
+    place = np.arange(len(candidate)).reshape(-1, *(1 for _ in candidate.shape[1:]))
+    result: IntArray = np.minimum.reduceat(
+        np.where(candidate == runs, place, len(candidate)), first, axis=0
+    )
     return result
