@@ -241,6 +241,7 @@ class TestDrawable:
     def test_without_a_grid_any_width_goes(self) -> None:
         (handle,) = sized(b"t\nm1 y a vss vss nch w=0.6u l=60n\n").values()
         assert handle.drawable(1.23741e-6) == 1.23741e-6
+        assert handle.smallest_step(1e-9) == 1e-9
 
     def test_fingers_have_a_grid_each(self) -> None:
         using = process(
@@ -248,11 +249,13 @@ class TestDrawable:
         )
         (handle,) = sized(b"t\nm1 y a vss vss nch w=0.6u l=60n nf=2\n", using=using).values()
         assert handle.drawable(2.503e-6) == pytest.approx(3 * 0.835e-6, rel=1e-12)
+        assert handle.smallest_step(1e-9) == pytest.approx(10e-9, rel=1e-12)
 
     def test_fins_come_whole(self) -> None:
         using = process(width_parameter="nfin", width_is="fins", width_unit=50e-9, width_step=5e-9)
         (handle,) = sized(b"t\nx1 y a vss vss nch nfin=4 l=60n\n", using=using).values()
         assert handle.drawable(285e-9) == pytest.approx(300e-9, rel=1e-12)
+        assert handle.smallest_step(1e-9) == pytest.approx(50e-9, rel=1e-12)
 
 
 class TestMapping:

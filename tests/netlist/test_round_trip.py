@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 from pathlib import Path
 
@@ -10,8 +10,17 @@ import pytest
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
-from evenstage.netlist.read import read_bytes
-from support.sized import assert_reads_back, planned, rewritten, sized, slot_name, wish_list
+from evenstage.netlist.read import read, read_bytes
+from evenstage.pattern import Pattern
+from support.sized import (
+    assert_reads_back,
+    planned,
+    process,
+    rewritten,
+    sized,
+    slot_name,
+    wish_list,
+)
 
 quick = settings(max_examples=30, deadline=None)
 
@@ -160,3 +169,22 @@ class TestRoundTrip:
         handles = sized(design.text, leaves=design.leaves)
         assert planned(handles, {}).edits == ()
         assert {slot_name(handles, slot).split(".")[0] for slot in handles} == set(design.factors)
+
+
+DATA = Path(__file__).parents[3] / "shared" / "data" / "ihp_sg13g2"
+
+
+@pytest.mark.skipif(not DATA.is_dir(), reason="the folder of open cells is absent")
+@pytest.mark.parametrize("file", ["sg13g2_stdcell.spice", "sg13g2_stdcell.cdl"])
+def test_cells_of_an_open_library(file: str) -> None:
+    """Every width of some cells of the IHP Open PDK (Apache-2.0) can be written and read back."""
+    netlist = read(DATA / file)
+    using = process()
+    kinds = zip(using.transistors, ("sg13_lv_nmos", "sg13_lv_pmos"), strict=True)
+    types = tuple(replace(kind, models=(Pattern(name),)) for kind, name in kinds)
+    for cell in list(netlist.subcircuits)[::8]:
+        handles = sized(netlist, using=replace(using, transistors=types), top=cell)
+        names = {slot_name(handles, slot) for slot in handles}
+        plan = planned(handles, dict.fromkeys(names, 1.5))
+        assert len(plan.written) == len(handles)
+        assert_reads_back(handles, plan)

@@ -54,6 +54,19 @@ class WidthHandle:
         """Greatest width that can be written, m, all fingers together; None: no such limit."""
         return None if self.fingers_may_change else widest(self.drawing, self.transistor)
 
+    def smallest_step(self, step: float) -> float:
+        """Return by how much the width (m, all fingers together) can change at least.
+
+        Parameters
+        ----------
+        step : float
+            m; taken where the process gives no ``width_step``.
+        """
+        if self.fin is not None:
+            return self.fin
+        fingers = self.drawing.fingers if self.transistor.width_is == "finger" else 1.0
+        return fingers * (self.transistor.width_step or step)
+
     def drawable(self, width: float, step: float | None = None) -> float:
         """Return the width (m) nearest to a wished one that the card can say on a grid.
 
