@@ -1,0 +1,148 @@
+"""Many small changes of one block, each timed on its own, all in one sweep.
+
+A gate's resistance, its own delay and the capacitance of its pins depend on its own widths alone.
+So one block in which all changes are made at once holds everything that any of them needs: a trial
+takes its own gates from there and all others from the block as it is. Trials are swept side by
+side.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.timing.sweep import end_offsets, latest_arrivals, propagate
+
+if TYPE_CHECKING:
+    from evenstage.circuit.circuit import Circuit
+    from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.timing.sweep import Timing
+
+_SIDE_BY_SIDE = 4_000_000
+"""Entries of the widest array while trials are swept; bounds the memory, some 200 MB."""
+
+
+@dataclass(frozen=True, kw_only=True)
+class Trials:
+    """What each trial leads to; shape ``(trials,)`` but for ``net_cap`` and ``elmore_use``.
+
+    Parameters
+    ----------
+    worst : FloatArray, s
+        Latest arrival at any path end.
+    lateness, charged_lateness : FloatArray, s
+        The same with required times counted in, in arrivals and in charged delay.
+    worst_transition : FloatArray, s
+    net_cap : FloatArray, F, shape (nets asked for, trials)
+    elmore_use : FloatArray
+        Largest ratio of an arc's Elmore delay to its limit.
+    """
+
+    worst: FloatArray
+    lateness: FloatArray
+    charged_lateness: FloatArray
+    worst_transition: FloatArray
+    net_cap: FloatArray
+    elmore_use: FloatArray
+
+
+def tried(
+    timing: Timing,
+    changed: Circuit,
+    trial: IntArray,
+    *,
+    nets: IntArray,
+    elmore_limit: FloatArray,
+) -> Trials:
+    """Time every trial.
+
+    Parameters
+    ----------
+    timing : Timing
+        The block as it is.
+    changed : Circuit
+        The block with all changes made.
+    trial : IntArray, shape (gates,)
+        The trial in which a gate takes its changed widths; -1: in none.
+    nets : IntArray
+        Nets whose capacitance is wanted.
+    elmore_limit : FloatArray, s, shape (circuit arcs,)
+        What ``elmore_use`` measures against; infinity for no limit.
+    """
+    count = int(trial.max(initial=-1)) + 1
+    widest = max(len(timing.circuit.arcs.gate), len(timing.graph), len(timing.circuit.net_cap))
+    batch = max(1, _SIDE_BY_SIDE // widest)
+    parts = [
+        _side_by_side(
+            timing,
+            changed,
+            np.where((trial >= begin) & (trial < begin + batch), trial - begin, -1),
+            min(batch, count - begin),
+            nets,
+            elmore_limit,
+        )
+        for begin in range(0, count, batch)
+    ]
+    return Trials(
+        worst=np.concatenate([part.worst for part in parts]),
+        lateness=np.concatenate([part.lateness for part in parts]),
+        charged_lateness=np.concatenate([part.charged_lateness for part in parts]),
+        worst_transition=np.concatenate([part.worst_transition for part in parts]),
+        net_cap=np.concatenate([part.net_cap for part in parts], axis=1),
+        elmore_use=np.concatenate([part.elmore_use for part in parts]),
+    )
+
+
+def _side_by_side(
+    timing: Timing,
+    changed: Circuit,
+    trial: IntArray,
+    count: int,
+    nets: IntArray,
+    elmore_limit: FloatArray,
+) -> Trials:
+    """Time some trials in one sweep."""
+    circuit, graph, unit = timing.circuit, timing.graph, timing.unit
+    load = _loads(circuit, changed, trial, count)
+    elmore = _elmore(circuit, changed, trial, load)
+    on_graph = elmore[graph.arc]
+    drive = graph.start_drive[:, None] * load[graph.net[graph.start]]
+    start = graph.start_arrival[:, None] + drive
+    flow = propagate(circuit, graph, on_graph, start)
+    charge = np.where(circuit.arcs.rising, unit.charge_rise, unit.charge_fall)[graph.arc]
+    charged = latest_arrivals(graph, charge[:, None] * on_graph, start)
+    offset = end_offsets(graph)[:, None]
+    return Trials(
+        worst=flow.arrival[graph.end].max(axis=0),
+        lateness=(flow.arrival[graph.end] + offset).max(axis=0),
+        charged_lateness=(charged[graph.end] + offset).max(axis=0),
+        worst_transition=flow.transition[graph.target].max(axis=0),
+        net_cap=load[nets],
+        elmore_use=(elmore / elmore_limit[:, None]).max(axis=0),
+    )
+
+
+def _loads(circuit: Circuit, changed: Circuit, trial: IntArray, count: int) -> FloatArray:
+    """Return the load on each net in each trial, F, shape (nets, trials)."""
+    load = np.repeat(circuit.net_cap[:, None], count, axis=1)
+    pins = circuit.pins
+    mine = trial[pins.gate]
+    tells = np.flatnonzero(mine >= 0)
+    grown = changed.pins.cap.today[tells] - pins.cap.today[tells]
+    np.add.at(load, (pins.net[tells], mine[tells]), grown)
+    return load
+
+
+def _elmore(circuit: Circuit, changed: Circuit, trial: IntArray, load: FloatArray) -> FloatArray:
+    """Return the Elmore delay of each circuit arc in each trial, s, shape (arcs, trials)."""
+    arcs, new = circuit.arcs, changed.arcs
+    elmore = arcs.resistance.today[:, None] * load[arcs.output] + arcs.own_today[:, None]
+    mine = trial[arcs.gate]
+    tells = np.flatnonzero(mine >= 0)
+    here = mine[tells]
+    elmore[tells, here] = (
+        new.resistance.today[tells] * load[arcs.output[tells], here] + new.own_today[tells]
+    )
+    return elmore
