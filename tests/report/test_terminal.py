@@ -93,7 +93,7 @@ class TestAnalysisReport:
     def test_stage_count_at_fault_is_named(self, analysis: Analysis) -> None:
         path = replace(analysis.paths[0], best_stage_count=8)
         text = one_line(analysis_report(replace(analysis, paths=(path,))))
-        assert "stages 6; 8 would be faster" in text
+        assert "stages 6; with even efforts 8 would be faster" in text
 
     def test_even_path_is_left_in_peace(self, analysis: Analysis) -> None:
         path = analysis.paths[0]

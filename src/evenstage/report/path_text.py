@@ -7,7 +7,8 @@ from typing import TYPE_CHECKING, Final
 
 from evenstage.report.bars import TimeAxis
 from evenstage.report.families import family_name, family_of
-from evenstage.report.scale import Scale, percent, plain
+from evenstage.report.scale import Scale, figure, percent
+from evenstage.report.stage_count import stage_count_text
 from evenstage.report.table import Column, Table, first_that_fits
 from evenstage.report.words import labelled, switching
 from evenstage.units import engineering
@@ -207,17 +208,17 @@ def effort_lines(paper: Paper, path: Path, yardstick: Yardstick) -> list[str]:
     if not path.stages:
         return []
     product = (
-        f"F {_figure(path.path_effort)} = G {_figure(path.logical_effort)} {paper.times} "
-        f"B {_figure(path.branching_effort)} {paper.times} H {_figure(path.electrical_effort)}"
+        f"F {figure(path.path_effort)} = G {figure(path.logical_effort)} {paper.times} "
+        f"B {figure(path.branching_effort)} {paper.times} H {figure(path.electrical_effort)}"
     )
     logic = (
-        f"parasitic delay P {_figure(path.parasitic_delay)} {paper.times} tau makes "
+        f"parasitic delay P {figure(path.parasitic_delay)} {paper.times} tau makes "
         f"{engineering(path.parasitic_delay * yardstick.tau, 's')} of the charged delay"
     )
     return [
         *labelled(paper, "effort", f"{product}; {logic}"),
         *labelled(paper, "widths", _evenness(path)),
-        *labelled(paper, "stages", _stage_count(path)),
+        *labelled(paper, "stages", stage_count_text(path, yardstick.p_inv)),
     ]
 
 
@@ -238,19 +239,6 @@ def _evenness(path: Path) -> str:
         f"{delay.text(charged)} to {delay.text(path.least_delay)} "
         f"({percent(charged, path.least_delay)}), as far as wires, fixed loads and limits allow"
     )
-
-
-def _stage_count(path: Path) -> str:
-    count, best = len(path.stages), path.best_stage_count
-    rule = f"the best stage effort in this process is {_figure(path.best_stage_effort)}"
-    if best == count:
-        return f"{count}, and no larger number would be faster; {rule}"
-    return f"{count}; {best} would be faster, each with a smaller effort; {rule}"
-
-
-def _figure(value: float) -> str:
-    """Return a dimensionless number in three digits."""
-    return plain(value, Scale.of([value], digits=3).decimals)
 
 
 def legend(paper: Paper, yardstick: Yardstick) -> list[str]:

@@ -94,3 +94,8 @@ def _percent_decimals(change: float) -> int:
     if magnitude >= 9.95:
         return 0
     return 1 if magnitude >= 0.95 else 2
+
+
+def figure(value: float) -> str:
+    """Return a number without a unit in three digits."""
+    return plain(value, Scale.of([value], digits=3).decimals)
