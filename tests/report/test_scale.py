@@ -32,6 +32,21 @@ class TestScale:
     def test_least_decimals_are_kept(self) -> None:
         assert Scale.of([123.0], digits=2, least=1).text(123.0) == "123.0"
 
+    @pytest.mark.parametrize(
+        ("values", "texts"),
+        [
+            ([1.2e-6, 1.89e-6], ["1.20", "1.89"]),
+            ([1e-6, 4e-6], ["1", "4"]),
+            ([1.2346e-6], ["1.235"]),
+            ([], []),
+        ],
+    )
+    def test_trimmed_shows_no_zeros_for_nothing(
+        self, values: list[float], texts: list[str]
+    ) -> None:
+        scale = Scale.of(values, "m").trimmed(values)
+        assert [scale.number(value) for value in values] == texts
+
     @given(st.lists(st.floats(0, 1e3), min_size=1), st.integers(1, 6))
     @settings(max_examples=60, deadline=None)
     def test_largest_keeps_its_digits(self, values: list[float], digits: int) -> None:

@@ -42,7 +42,8 @@ def change_lines(paper: Paper, changes: Sequence[Change]) -> list[str]:
     shown = [change for gate in kept for change in gate]
     if not shown:
         return []
-    width = Scale.of((value for change in shown for value in (change.old, change.new)), "m")
+    widths = [value for change in shown for value in (change.old, change.new)]
+    width = Scale.of(widths, "m").trimmed(widths)
     alone = Scale.of((change.alone for change in shown), "s", digits=3)
     rows = [row for gate in kept for row in _gate_rows(paper, gate, width, alone)]
     units = ["", "", "", "", width.unit, width.unit, "", alone.unit, "", ""]

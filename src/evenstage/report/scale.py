@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Final
 
 if TYPE_CHECKING:
@@ -50,6 +50,12 @@ class Scale:
         factor, prefix = _prefix(largest, digits) if unit else (1.0, "")
         _, power = f"{largest / factor:.{digits - 1}e}".split("e")
         return cls(factor, prefix + unit, max(digits - 1 - max(int(power), 0), least))
+
+    def trimmed(self, values: Iterable[float]) -> Scale:
+        """Return the scale without the last decimals that are zero in all values."""
+        texts = [f"{value / self.factor:.{self.decimals}f}" for value in values]
+        spare = min((len(text) - len(text.rstrip("0")) for text in texts), default=0)
+        return replace(self, decimals=max(self.decimals - spare, 0))
 
     def number(self, value: float) -> str:
         """Return a value without its unit."""

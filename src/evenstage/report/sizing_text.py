@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
-from evenstage.report.block_text import finished, notice_lines
+from evenstage.report.block_text import block_lines, finished, notice_lines
 from evenstage.report.change_text import card_count, change_lines
 from evenstage.report.pair_text import pair_lines, total_lines, worst_charged
 from evenstage.report.paper import Paper
@@ -51,7 +51,8 @@ def sizing_report(sizing: Sizing, *, width: int = 100, unicode: bool = False) ->
     lines += section("How good the widths are", _quality_lines(paper, sizing))
     lines += section("Changes", _changes(paper, sizing))
     lines += _stages(paper, sizing)
-    lines += section("The block", total_lines(paper, before, after))
+    block = total_lines(paper, before, after) if sizing.changes else block_lines(paper, before)
+    lines += section("The block", block)
     lines += section("Notices", notice_lines(paper, (*sizing.notices, *before.notices)))
     return finished(paper, lines)
 
@@ -81,13 +82,13 @@ def _why_nothing(sizing: Sizing) -> str:
 
 def _quality_lines(paper: Paper, sizing: Sizing) -> list[str]:
     """Return goal, bound and distance to it in words."""
-    cards = f"{counted(sizing.free_cards, 'size')} free to move, {sizing.fixed_cards} fixed"
+    cards = f" ({counted(sizing.free_cards, 'size')} free to move, {sizing.fixed_cards} fixed)"
     proof = (
         f"the best sizes off the grid are proved to lie within {_gap(sizing.gap)} of the bound; "
         f"putting widths on the grid costs {_loss(sizing.rounding_loss)}"
     )
     return [
-        *labelled(paper, "goal", f"{sizing.goal} ({cards})"),
+        *labelled(paper, "goal", sizing.goal + ("" if sizing.already_done else cards)),
         *labelled(paper, "bound", _bound(sizing)),
         *labelled(paper, "proof", proof),
     ]
@@ -134,9 +135,11 @@ def _stages(paper: Paper, sizing: Sizing) -> list[str]:
     old, new = sizing.before.paths[0], sizing.after.paths[0]
     holds = {hold.instance: _HOLDS[hold.hold] for hold in sizing.holds if hold.hold}
     if not sizing.changes:
-        lines = [*path_lines(paper, new, branches=True), ""]
-        held = ", ".join(f"{instance} ({hold})" for instance, hold in holds.items())
-        return section("The slowest path", [*lines, *labelled(paper, "held", held or "nowhere")])
+        lines = path_lines(paper, new, branches=True)
+        if holds:
+            held = ", ".join(f"{instance} ({hold})" for instance, hold in holds.items())
+            lines += ["", *labelled(paper, "held", held)]
+        return section("The slowest path", lines)
     title = "The slowest path before and after"
     if not same_route(old, new):
         title = "The slowest path before and the one after, stages of one gate together"

@@ -18,43 +18,65 @@ if TYPE_CHECKING:
 _SHOWN: Final = 40
 
 
+_COLUMNS: Final = (
+    Column("instance", kind="name"),
+    Column("", before=1),
+    Column("cards", kind="name"),
+    Column("model", kind="name"),
+    Column("before", align="right"),
+    Column("after", align="right"),
+    Column("factor", align="right"),
+)
+
+#: The differences of instances that differ in the numbers of their names only.
+_Instances = list["WidthDifference"]
+
+
 def difference_lines(paper: Paper, widths: Sequence[WidthDifference]) -> list[str]:
-    """Return widths that differ, instances that differ in numbers only in one line."""
-    families: dict[tuple[str, str, str, float | None, float | None], list[WidthDifference]] = {}
-    for width in widths:
-        key = (family_of(width.instance), width.card, width.model, width.before, width.after)
-        families.setdefault(key, []).append(width)
-    if not families:
+    """Return widths that differ, one block per instance, instances that differ alike together."""
+    if not widths:
         return []
     known = [value for w in widths for value in (w.before, w.after) if value is not None]
-    scale = Scale.of(known, "m")
-    rows = [_difference_row(paper, group, scale) for group in families.values()]
-    columns = [
-        Column("instance", kind="name"),
-        Column("", before=1),
-        Column("card", kind="name"),
-        Column("model", kind="name"),
-        Column("before", align="right"),
-        Column("after", align="right"),
-        Column("factor", align="right"),
-    ]
-    shown = rows[:_SHOWN]
-    _, table = first_that_fits(paper, [(columns, shown)], indent=2)
+    scale = Scale.of(known, "m").trimmed(known)
+    blocks = [_rows(paper, instances, scale) for instances in _alike(widths)]
+    shown = blocks[:_SHOWN]
+    rows = [row for block in shown for row in block]
+    _, table = first_that_fits(paper, [(_COLUMNS, rows)], indent=2)
     lines = [table.titles(), table.line("", "", "", "", scale.unit, scale.unit, "")]
-    lines += [table.line(*row) for row in shown]
-    if len(shown) < len(rows):
-        lines.append(f"  and {len(rows) - len(shown)} more, all of them in the JSON")
+    lines += [table.line(*row) for row in rows]
+    if len(shown) < len(blocks):
+        lines.append(f"  and {len(blocks) - len(shown)} such blocks more, all of them in the JSON")
     return lines
 
 
-def _difference_row(paper: Paper, group: Sequence[WidthDifference], scale: Scale) -> list[str]:
-    width = group[0]
+def _alike(widths: Sequence[WidthDifference]) -> list[_Instances]:
+    """Return the differences by instance, instances of one family that differ alike together."""
+    instances: dict[str, list[WidthDifference]] = {}
+    for width in widths:
+        instances.setdefault(width.instance, []).append(width)
+    families: dict[tuple[object, ...], _Instances] = {}
+    for name, cards in instances.items():
+        alike = [(width.card, width.model, width.before, width.after) for width in cards]
+        families.setdefault((family_of(name), *alike), []).extend(cards)
+    return list(families.values())
+
+
+def _rows(paper: Paper, instances: _Instances, scale: Scale) -> list[list[str]]:
+    """Return the rows of an instance: cards that differ alike share one."""
+    alike: dict[tuple[str, float | None, float | None], list[str]] = {}
+    for width in instances:
+        key = (width.model, width.before, width.after)
+        alike.setdefault(key, []).append(width.card)
+    names = list(dict.fromkeys(width.instance for width in instances))
+    many = f"{paper.times}{len(names)}" if len(names) > 1 else ""
     return [
-        family_name([member.instance for member in group]) or "(top)",
-        f"{paper.times}{len(group)}" if len(group) > 1 else "",
-        width.card,
-        width.model,
-        "-" if width.before is None else scale.number(width.before),
-        "-" if width.after is None else scale.number(width.after),
-        factor(paper, width.before, width.after) if width.before and width.after else "",
+        [
+            *(["", ""] if row else [family_name(names) or "(top)", many]),
+            " ".join(dict.fromkeys(cards)),
+            model,
+            "-" if before is None else scale.number(before),
+            "-" if after is None else scale.number(after),
+            factor(paper, before, after) if before and after else "",
+        ]
+        for row, ((model, before, after), cards) in enumerate(alike.items())
     ]
