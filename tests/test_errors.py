@@ -68,3 +68,25 @@ class TestNotice:
             "x.sp:3:1: R1 joins a and b"
         )
         assert str(Notice("resistor-joined", "R1 joins a and b")) == "R1 joins a and b"
+
+
+class TestLongLines:
+    @pytest.mark.parametrize(
+        ("before", "after", "shown", "caret"),
+        [
+            (0, 300, "here" + "b" * 96 + "...", 0),
+            (20, 300, "a" * 20 + "here" + "b" * 76 + "...", 20),
+            (200, 300, "..." + "a" * 40 + "here" + "b" * 56 + "...", 43),
+            (300, 0, "..." + "a" * 96 + "here", 99),
+        ],
+    )
+    def test_only_the_part_around_the_cause_is_shown(
+        self, before: int, after: int, shown: str, caret: int
+    ) -> None:
+        data = b"a" * before + b"here" + b"b" * after
+        span = Span(SourceText(Path("t"), data, "t"), before, before + 4)
+        assert excerpt(span) == [f"    {shown}", f"    {' ' * caret}^^^^"]
+
+    def test_a_cause_longer_than_the_part_shown_is_marked_as_far_as_it_is_seen(self) -> None:
+        span = Span(SourceText(Path("t"), b"a" * 500, "t"), 0, 500)
+        assert [len(line) for line in excerpt(span)] == [107, 107]

@@ -123,7 +123,8 @@ def test_sections_nobody_asks_for_are_skipped(folder: Path) -> None:
 
 def test_a_section_that_is_not_there(folder: Path) -> None:
     assert complaint(folder, top="* t\n.lib lib.sp typical\n", lib=LIBRARY) == (
-        "top.sp:2:13: 'lib.sp' has no section 'typical'; it has slow, FAST, common (missing-section)\n"
+        "top.sp:2:13: 'lib.sp' has no section 'typical'; "
+        "it has slow, FAST, common (missing-section)\n"
         "    .lib lib.sp typical\n"
         "                ^^^^^^^"
     )

@@ -7,7 +7,7 @@ from __future__ import annotations
 
 import re
 from array import array
-from bisect import bisect_right
+from bisect import bisect_left, bisect_right
 from typing import TYPE_CHECKING
 
 from evenstage.netlist.grammar import terminal
@@ -113,9 +113,9 @@ class CardTable:
         """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
         return self._place(number)[2]
 
-    def node_names(self, places: Sequence[tuple[int, int]]) -> list[str]:
+    def node_names(self, numbers: Sequence[int], positions: Sequence[int]) -> list[str]:
         """Return nets as written, each by card number and position on the card."""
-        return [self._node(number, position) for number, position in places]
+        return list(map(self._node, numbers, positions))
 
     def _node(self, number: int, position: int) -> str:
         source, text, _ = self._place(number)
@@ -137,15 +137,25 @@ class CardTable:
             yield from self._chunk(numbers[first : first + _CHUNK])
 
     def _chunk(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
-        by_shape: dict[tuple[int, int], list[int]] = {}
+        """Give some cards, those of one file at a time."""
+        first = 0
+        while first < len(numbers):
+            segment = bisect_right(self._segments, numbers[first])
+            beyond = self._segments[segment] if segment < len(self._segments) else len(self)
+            last = bisect_left(numbers, beyond, first)
+            text = self._segment_places[segment - 1][1]
+            yield from self._segment_groups(numbers[first:last], text)
+            first = last
+
+    def _segment_groups(self, numbers: Sequence[int], text: bytes) -> Iterator[CardGroup]:
+        by_shape: dict[int, list[int]] = {}
+        shape_of = self._shape_of
         for number in numbers:
-            segment = bisect_right(self._segments, number) - 1
-            by_shape.setdefault((self._shape_of[number], segment), []).append(number)
-        for (shape, segment), members in by_shape.items():
+            by_shape.setdefault(shape_of[number], []).append(number)
+        for shape, members in by_shape.items():
             if shape == _ODD:
                 yield from (self._odd_group(number) for number in members)
             else:
-                text = self._segment_places[segment][1]
                 yield from self._shaped_groups(self._shapes[shape], members, text)
 
     def _odd_group(self, number: int) -> CardGroup:

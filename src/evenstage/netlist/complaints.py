@@ -41,7 +41,7 @@ _DOT_CARDS: Final = {
 
 #: What only the other languages found behind the same file endings have.
 _FOREIGN: Final = re.compile(
-    rb"^[^\S\r\n]*(simulator[^\S\r\n]+lang|(?:inline[^\S\r\n]+)?subckt(?=[^\S\r\n])|ends\b|//|/\*"
+    rb"^[^\S\r\n]*(simulator[^\S\r\n]+lang|(?:inline[^\S\r\n]+)?subckt(?=[^\S\r\n])|ends\b"
     rb"|module(?=[^\S\r\n])|endmodule|library(?=[^\S\r\n]*\()|\([a-z]+|<\?|#include|#!)",
     re.MULTILINE | re.IGNORECASE,
 )

@@ -130,7 +130,7 @@ class CardStore(Protocol):
         """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
         ...
 
-    def node_names(self, places: Sequence[tuple[int, int]]) -> list[str]:
+    def node_names(self, numbers: Sequence[int], positions: Sequence[int]) -> list[str]:
         """Return nets as written, each by card number and position on the card."""
         ...
 
@@ -235,9 +235,9 @@ class Netlist:
         """Give the element cards of ascending numbers in columns, grouped by their form."""
         return self._cards.groups(numbers)
 
-    def node_names(self, places: Sequence[tuple[int, int]]) -> list[str]:
+    def node_names(self, numbers: Sequence[int], positions: Sequence[int]) -> list[str]:
         """Return nets as written, each by card number and position on the card."""
-        return self._cards.node_names(places)
+        return self._cards.node_names(numbers, positions)
 
     def __len__(self) -> int:
         return len(self._cards)

@@ -86,7 +86,7 @@ class NetNames(Sequence[str]):
         known = self._local.get(template)
         if known is None:
             outline = self._outlines[template]
-            inner = self._netlist.node_names(outline.net_firsts)
+            inner = self._netlist.node_names(*outline.net_firsts.tolist())
             known = self._local[template] = (*outline.subcircuit.ports, *inner)
         return known
 

@@ -72,8 +72,8 @@ class Outline:
         The definition.
     net_keys : tuple of bytes
         Lower-case names of the local nets.
-    net_firsts : tuple of (int, int)
-        Card and position at which each net that is no port is met first.
+    net_firsts : IntArray, shape (2, n)
+        Card and position on it at which each net that is no port is met first.
     transistors, capacitors, resistors : Rows
         The cards of each kind.
     calls : tuple of Call
@@ -90,7 +90,7 @@ class Outline:
 
     subcircuit: Subcircuit
     net_keys: tuple[bytes, ...]
-    net_firsts: tuple[tuple[int, int], ...]
+    net_firsts: IntArray
     transistors: Rows
     capacitors: Rows
     resistors: Rows
@@ -117,27 +117,42 @@ class Classifier(Protocol):
         ...
 
 
+class _Numbering(dict[bytes, int]):
+    """Numbers for names, in the order in which they are first asked for."""
+
+    def __missing__(self, name: bytes) -> int:
+        number = self[name] = len(self)
+        return number
+
+
 class _Nets:
     """Numbers for local nets."""
 
     def __init__(self, ports: Iterable[str]) -> None:
-        self.ids = {
-            port.encode("utf-8", "surrogateescape").lower(): i for i, port in enumerate(ports)
-        }
-        self.ports = len(self.ids)
-        self.firsts: list[tuple[int, int]] = []
+        self.ids = _Numbering()
+        for port in ports:
+            self.ids[port.encode("utf-8", "surrogateescape").lower()]  # the look-up numbers it
+        self._first_cards: list[IntArray] = []
+        self._first_positions: list[int] = []
 
-    def column(self, names: Sequence[bytes], numbers: Sequence[int], position: int) -> list[int]:
-        """Return the numbers of some nets; new ones are noted with the card they stand on."""
-        ids = self.ids
-        found = []
-        for name, number in zip(names, numbers, strict=True):
-            net = ids.get(name)
-            if net is None:
-                net = ids[name] = len(ids)
-                self.firsts.append((number, position))
-            found.append(net)
-        return found
+    def columns(self, group: CardGroup) -> IntArray:
+        """Return the nets of some cards; new ones are noted with the card they stand on."""
+        numbers = np.array(group.numbers, np.int32)
+        nets = np.empty((len(group.nodes), len(numbers)), np.int32)
+        for position, names in enumerate(group.nodes):
+            known = len(self.ids)
+            nets[position] = list(map(self.ids.__getitem__, names))
+            if len(self.ids) > known:
+                new = np.flatnonzero(nets[position] >= known)
+                _, first = np.unique(nets[position, new], return_index=True)
+                self._first_cards.append(numbers[new[first]])
+                self._first_positions += [position] * len(first)
+        return nets
+
+    def firsts(self) -> IntArray:
+        """Return card and position at which each net that is no port was met, shape (2, n)."""
+        cards = np.concatenate([np.zeros(0, np.int32), *self._first_cards])
+        return np.stack([cards, np.array(self._first_positions, np.int32)])
 
 
 class _RowsBuilder:
@@ -145,39 +160,38 @@ class _RowsBuilder:
 
     def __init__(self, netlist: Netlist, pins: int, names: Sequence[str]) -> None:
         self._netlist = netlist
-        self._pins = pins
         self._columns: dict[str, list[Column]] = {name: [] for name in names}
-        self._cards: list[int] = []
-        self._nets: list[IntArray] = []
-        self._target_ids: dict[bytes, int] = {}
-        self._targets: list[int] = []
+        self._count = 0
+        self._cards = [np.zeros(0, np.int32)]
+        self._nets = [np.zeros((pins, 0), np.int32)]
+        self._target_ids = _Numbering()
+        self._targets = [np.zeros(0, np.int32)]
 
     def add(self, group: CardGroup, nets: IntArray) -> None:
         """Take a group of cards and their nets, shape ``(pins, n)``."""
-        first_row = len(self._cards)
         for name, parts in self._columns.items():
-            parts.append(group_column(self._netlist, group, name, first_row))
-        self._cards += group.numbers
+            parts.append(group_column(self._netlist, group, name, self._count))
+        self._count += len(group.numbers)
+        self._cards.append(np.array(group.numbers, np.int32))
         self._nets.append(nets)
-        ids = self._target_ids
-        self._targets += [ids.setdefault(target, len(ids)) for target in group.targets]
+        targets = list(map(self._target_ids.__getitem__, group.targets))
+        self._targets.append(np.array(targets, np.int32))
 
     def rows(self) -> Rows:
         """Return what was collected, in the order of the cards, without empty columns."""
-        cards = np.array(self._cards, np.int32)
+        cards = np.concatenate(self._cards)
         order = np.argsort(cards, kind="stable")
-        nets = np.concatenate([np.zeros((self._pins, 0), np.int32), *self._nets], axis=1)
         columns = {
             name: joined(parts).in_order(order)
             for name, parts in self._columns.items()
             if any(part.styles.any() for part in parts)
         }
-        target = np.array(self._targets, np.int32)
+        target = np.concatenate(self._targets)
         return Rows(
             card=cards[order],
-            nets=nets[:, order],
+            nets=np.concatenate(self._nets, axis=1)[:, order],
             target=target[order] if len(target) else target,
-            target_names=tuple(_text(name) for name in self._target_ids),
+            target_names=tuple(map(_name, self._target_ids)),
             columns=columns,
         )
 
@@ -234,41 +248,35 @@ class _Body:
         self._calls: list[Call] = []
         self._sources: list[int] = []
         self._others: dict[str, list[int]] = {}
-        self._hashes: list[int] = []
+        self._hashes = [np.zeros(0, np.int64)]
         self._takers = {
             "m": self._take_transistors,
             "x": self._take_calls,
-            "c": lambda group: self._capacitors.add(group, self._columns_of(group)),
-            "r": lambda group: self._resistors.add(group, self._columns_of(group)),
+            "c": lambda group: self._capacitors.add(group, self._nets.columns(group)),
+            "r": lambda group: self._resistors.add(group, self._nets.columns(group)),
             "v": self._take_sources,
         }
 
     def add(self, group: CardGroup) -> None:
         """Take a group of cards."""
-        self._hashes += map(hash, group.names)
+        self._hashes.append(np.array(list(map(hash, group.names)), np.int64))
         taker = self._takers.get(group.letter)
         if taker is None:
             self._others.setdefault(group.letter, []).extend(group.numbers)
         else:
             taker(group)
 
-    def _columns_of(self, group: CardGroup) -> IntArray:
-        columns = [
-            self._nets.column(names, group.numbers, i) for i, names in enumerate(group.nodes)
-        ]
-        return np.array(columns, np.int32).reshape(len(group.nodes), len(group.numbers))
-
     def _take_transistors(self, group: CardGroup) -> None:
-        self._transistors.add(group, self._columns_of(group))
+        self._transistors.add(group, self._nets.columns(group))
 
     def _take_sources(self, group: CardGroup) -> None:
-        self._columns_of(group)
+        self._nets.columns(group)
         self._sources += group.numbers
 
     def _take_calls(self, group: CardGroup) -> None:
-        nets = self._columns_of(group)
+        nets = self._nets.columns(group)
         kinds = {
-            target: self._classifier.call_kind(_text(target), len(nets), group.parameters.keys())
+            target: self._classifier.call_kind(_name(target), len(nets), group.parameters.keys())
             for target in dict.fromkeys(group.targets)
         }
         rows = [row for row, target in enumerate(group.targets) if kinds[target] == "transistor"]
@@ -297,7 +305,7 @@ class _Body:
         return Outline(
             subcircuit=self._subcircuit,
             net_keys=tuple(self._nets.ids),
-            net_firsts=tuple(self._nets.firsts),
+            net_firsts=self._nets.firsts(),
             transistors=rows[0],
             capacitors=rows[1],
             resistors=rows[2],
@@ -321,17 +329,17 @@ class _Body:
         return names
 
     def _repeated(self) -> tuple[str, ...]:
-        if len(np.unique(np.array(self._hashes, np.int64))) == len(self._hashes):
+        hashes = np.concatenate(self._hashes)
+        if len(np.unique(hashes)) == len(hashes):
             return ()
-        cards = (self._netlist.card(number) for number in self._subcircuit.cards)
-        counts = Counter(card.name.lower() for card in cards)
+        counts = Counter(self._netlist.card_name(n).lower() for n in self._subcircuit.cards)
         return tuple(name for name, count in counts.items() if count > 1)
 
 
 def _call(group: CardGroup, row: int, nets: IntArray) -> Call:
     parameters = {name: _text(column[row]) for name, column in group.parameters.items()}
     local = tuple(nets[:, row].tolist())
-    return Call(group.numbers[row], _text(group.targets[row]), local, parameters)
+    return Call(group.numbers[row], _name(group.targets[row]), local, parameters)
 
 
 def _selected(group: CardGroup, rows: Sequence[int]) -> CardGroup:
@@ -353,6 +361,11 @@ def _selected(group: CardGroup, rows: Sequence[int]) -> CardGroup:
 
 def _text(word: bytes) -> str:
     return word.decode("utf-8", "surrogateescape")
+
+
+def _name(word: bytes) -> str:
+    """Return the name of a definition or model as it is looked up."""
+    return _text(word).lower()
 
 
 def _names_in(text: str) -> frozenset[str]:

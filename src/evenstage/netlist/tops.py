@@ -84,9 +84,13 @@ def _uncalled(netlist: Netlist) -> list[Subcircuit]:
     for key, subcircuit in netlist.subcircuits.items():
         for group in netlist.card_groups(subcircuit.cards):
             if group.letter == "x":
-                called |= {name.decode("utf-8", "surrogateescape") for name in group.targets}
+                called |= {_name(target) for target in set(group.targets)}
             if group.letter in "mx":
                 filled.add(key)
     uncalled = [key for key in netlist.subcircuits if key not in called]
     keys = [key for key in uncalled if key in filled] or uncalled
     return [netlist.subcircuits[key] for key in keys]
+
+
+def _name(target: bytes) -> str:
+    return target.decode("utf-8", "surrogateescape").lower()
