@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.errors import Notice
+from evenstage.errors import ElaborationError, Notice
 from evenstage.netlist.devices import Devices
 from evenstage.netlist.flatten import flatten, ranges, starts_of
 from evenstage.netlist.geometry import Drawn, geometry
@@ -163,7 +163,11 @@ class _Block:
         nets = np.concatenate([template.nets for template in templates], axis=1)[:, row]
         drain, gate, source, bulk = map(_ids, self._net[flat.nets_of(instance, nets)])
         calls = np.concatenate([template.multiplier for template in templates])
-        multiplier = (sizes.multiplier * calls)[row] * flat.multiplier[instance]
+        with np.errstate(over="ignore"):
+            multiplier = (sizes.multiplier * calls)[row] * flat.multiplier[instance]
+        if not np.isfinite(multiplier).all():
+            message = "the multipliers along one instance path multiply to infinity"
+            raise ElaborationError(message, code="bad-multiplier")
         capacitors = self._capacitors()
         subcircuits, index = self._subcircuits()
         return Devices(

@@ -178,7 +178,8 @@ def _place(
             break
         parent = np.repeat(ids, counts)
         ids = parent + tables.offset[calls]
-        multiplier = np.repeat(multiplier, counts) * tables.call_multiplier[calls]
+        with np.errstate(over="ignore"):
+            multiplier = np.repeat(multiplier, counts) * tables.call_multiplier[calls]
         template = tables.callee[calls]
         found.append((ids, template, parent, tables.call_card[calls], multiplier))
         levels.append((ids, calls))
