@@ -87,7 +87,7 @@ def pair_lines(
     if not lines:
         return []
     stages = [line.stage for line in lines]
-    time = Scale.of((stage.delay for stage in stages), "s")
+    time = Scale.of((stage.delay for stage in stages), "s", digits=3, least=1)
     effort = Scale.of((stage.stage_effort for stage in stages), digits=2, least=1)
     width = Scale.of((stage.width for stage in stages), "m", digits=3)
     rows = [_row(paper, line, holds or {}, (time, effort, width)) for line in lines]

@@ -71,7 +71,7 @@ def path_lines(paper: Paper, path: Path, *, branches: bool) -> list[str]:
     """
     if not path.stages:
         return ["  The input is the path end: there is no stage between them."]
-    scale = Scale.of((stage.delay for stage in path.stages), "s")
+    scale = Scale.of((stage.delay for stage in path.stages), "s", digits=3, least=1)
     rows = _rows(paper, path, scale)
     chosen = (_EVERYTHING, _NO_FUNCTION, _NARROW)
     options = [([_COLUMNS[i] for i in c], [[row[i] for i in c] for row in rows]) for c in chosen]
