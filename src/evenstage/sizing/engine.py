@@ -1,12 +1,12 @@
 """Sizes of a whole block: which may move, which goal follows which, and where the answer stops.
 
-The continuous answer is found in at most three kinds of steps, each a convex programme whose certificate
-the independent checker confirms:
+The continuous answer is found in at most three kinds of steps, each a convex programme whose
+certificate the independent checker confirms:
 
-1. The least delay. With scope ``path`` only the sizes on the slowest path move at first; sizes that the
-   multipliers show on the limiting paths of the answer join until none is left to join.
-2. The least spend within the margin of that delay, and no slower than today. Near the optimum delay is
-   flat in the sizes, so this costs nothing a designer notices and saves width they do.
+1. The least delay. With scope ``path`` only the sizes on the slowest path move at first; sizes that
+   the multipliers show on the limiting paths of the answer join until none is left to join.
+2. The least spend within the margin of that delay, and no slower than today. Near the optimum delay
+   is flat in the sizes, so this costs nothing a designer notices and saves width they do.
 3. For a delay in 50 % arrivals the charged delay asked for is adjusted until the arrivals agree.
 """
 
@@ -22,6 +22,7 @@ from evenstage.errors import InfeasibleError
 from evenstage.sizing.certificate import check
 from evenstage.sizing.goals import Budget, Cheapest, Fastest
 from evenstage.sizing.interior_point import solve
+from evenstage.sizing.presolve import without_room
 from evenstage.timing.sweep import sweep
 from evenstage.units import engineering
 
@@ -38,7 +39,11 @@ if TYPE_CHECKING:
 _ON_LIMITING_PATH = 1e-3
 """Share of the unit flow above which a size counts as on a limiting path."""
 _AGREES = 1e-5
-"""Relative distance at which a delay in arrivals counts as met."""
+"""Relative distance at which a delay counts as met."""
+_SHARES = (1.0, 0.9, 0.7, 0.4, 0.0)
+"""Parts of the transition limit that stages are given in turn."""
+_FULL = 1e-5
+"""Relative room below which a limit counts as used up."""
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -55,8 +60,10 @@ class Continuous:
         The bounds they moved in.
     solution : Solution
         Of the last programme.
-    goal : Goal
-        Of the last programme.
+    full : BoolArray, shape (limits,)
+        Which limits of the programme leave no room.
+    limits : Limits
+        As the programme had them.
     least_delay : float
         s; least worst charged delay.
     fastest : Solution
@@ -70,7 +77,8 @@ class Continuous:
     lower: FloatArray
     upper: FloatArray
     solution: Solution
-    goal: Goal
+    full: BoolArray
+    limits: Limits
     least_delay: float
     fastest: Solution
     deadline: float
@@ -113,6 +121,10 @@ class Engine:
     def run(self) -> Continuous:
         """Find the continuous answer.
 
+        Where it makes an edge slower than the limit, because a stage that may stay as slow as it is
+        gets a slower input, all stages are given less of the limit, in the end none of it: then no
+        stage gets slower at all.
+
         Raises
         ------
         InfeasibleError
@@ -120,17 +132,21 @@ class Engine:
         NotConvergedError
             Where the proof fails.
         """
-        fastest, active = self._least_delay()
-        least, drawn = fastest.delay, self._drawn_delay()
-        free = self.model.variables.free
-        limiting = active & self._limiting(fastest) if self.wishes.scope == "block" else active
-        lower, upper = self._bounds(active)
-        if not self.wishes.reclaim:
-            held = active & ~limiting
-            lower[held] = np.maximum(lower[held], 1.0)
-        else:
-            active = free
-            lower, upper = self._bounds(active)
+        for share in _SHARES:
+            engine = replace(self, limits=replace(self.limits, share=share))
+            answer = engine._run()  # noqa: SLF001 -- the same engine with less room
+            slowest = max(self.limits.transition, self.today.worst_transition)
+            if self.limits.strict or engine.timed(answer.sizes).worst_transition <= slowest * (
+                1 + _AGREES / 10
+            ):
+                break
+        return answer
+
+    def _run(self) -> Continuous:
+        """Find the continuous answer for the limits as they are."""
+        fastest, lower, upper = self._least_delay()
+        least, drawn = fastest.delay, worst_charged(self.today)
+        active = lower < upper
         if self.wishes.delay is not None:
             return self._for_delay(fastest, active, lower, upper)
         deadline = least * (1 + max(self.wishes.margin, _AGREES))
@@ -146,15 +162,25 @@ class Engine:
         lower: FloatArray,
         upper: FloatArray,
     ) -> Continuous:
-        goal = Cheapest(deadline)
-        solution = self._solve(goal, lower, upper, fastest.sizes)
+        """Find the least spend for a deadline.
+
+        At the least delay itself sizes on the limiting paths have no room, so they stay what they are.
+        """
+        exact = (deadline < fastest.delay * (1 + 2 * _AGREES)) & self._limiting(fastest)
+        solution = self._solve(
+            Cheapest(deadline),
+            np.where(exact, fastest.sizes, lower),
+            np.where(exact, fastest.sizes, upper),
+            fastest.sizes,
+        )
         return Continuous(
             sizes=solution.sizes,
             active=active,
             lower=lower,
             upper=upper,
             solution=solution,
-            goal=goal,
+            full=self._full(solution),
+            limits=self.limits,
             least_delay=fastest.delay,
             fastest=fastest,
             deadline=deadline,
@@ -168,8 +194,8 @@ class Engine:
         possible = self.timed(fastest.sizes).lateness.max()
         if possible > wanted * (1 + _AGREES):
             raise InfeasibleError(
-                f"a delay of {engineering(wanted, 's', 4)} cannot be met: the least possible within "
-                f"the limits is {engineering(possible, 's', 4)}, "
+                f"a delay of {engineering(wanted, 's', 4)} cannot be met: the least possible "
+                f"within the limits is {engineering(possible, 's', 4)}, "
                 f"{engineering(possible - wanted, 's')} more; {self._blame(fastest)}",
                 code="delay-out-of-reach",
             )
@@ -191,21 +217,18 @@ class Engine:
         circuit = model.circuit.resized(model.variables.factors(sizes))
         return sweep(circuit, model.graph, model.unit)
 
-    def _least_delay(self) -> tuple[Solution, BoolArray]:
-        """Find the least delay and the sizes that may move for it."""
+    def _least_delay(self) -> tuple[Solution, FloatArray, FloatArray]:
+        """Find the least delay, and the bounds within which sizes may move for it."""
         free = self.model.variables.free
-        if self.wishes.scope == "block":
-            lower, upper = self._bounds(free)
-            return self._solve(self._first_goal(), lower, upper, np.ones(len(free))), free
-        active = free & (self._on_slowest_path() | self._beyond_limits())
+        limiting = free & (self._on_slowest_path() | self._beyond_limits())
         start = np.ones(len(free))
         while True:
-            lower, upper = self._bounds(active)
+            lower, upper = self._bounds(limiting)
             fastest = self._solve(self._first_goal(), lower, upper, start)
-            joining = self._limiting(fastest) & free & ~active
+            joining = self._limiting(fastest) & free & ~limiting
             if not joining.any():
-                return fastest, active
-            active = active | joining
+                return fastest, lower, upper
+            limiting = limiting | joining
             start = fastest.sizes
 
     def _first_goal(self) -> Goal:
@@ -213,22 +236,26 @@ class Engine:
             return Fastest()
         return Budget(self.wishes.width * self.cost_today)
 
-    def _bounds(self, active: BoolArray) -> tuple[FloatArray, FloatArray]:
-        variables = self.model.variables
-        return (
-            np.where(active, variables.lower, 1.0),
-            np.where(active, variables.upper, 1.0),
-        )
+    def _bounds(self, limiting: BoolArray) -> tuple[FloatArray, FloatArray]:
+        """Return the bounds of all sizes when some are on limiting paths.
+
+        Those move freely. The others may grow where the scope is the block, and shrink only where that
+        is asked for.
+        """
+        variables, wishes = self.model.variables, self.wishes
+        down = limiting | (variables.free & wishes.reclaim)
+        up = limiting | (variables.free & (wishes.scope == "block"))
+        return np.where(down, variables.lower, 1.0), np.where(up, variables.upper, 1.0)
 
     def _problem(self, lower: FloatArray, upper: FloatArray) -> Problem:
         problem = self.model.problem(lower, upper, self.spend, self.limits)
-        return replace(problem, spend_fixed=self.spend_fixed)
+        return without_room(replace(problem, spend_fixed=self.spend_fixed))
 
     def _solve(
         self, goal: Goal, lower: FloatArray, upper: FloatArray, start: FloatArray
     ) -> Solution:
         problem = self._problem(lower, upper)
-        solution = solve(problem, goal, start=np.clip(start, lower, upper))
+        solution = solve(problem, goal, start=np.clip(start, problem.lower, problem.upper))
         check(problem, goal, solution)
         return solution
 
@@ -265,32 +292,38 @@ class Engine:
         found[parts.of_gate[gates]] = True
         return found
 
-    def _drawn_delay(self) -> float:
-        """Return today's worst charged delay, s."""
-        return worst_charged(self.today)
-
     def _blame(self, solution: Solution) -> str:
         """Say which limits hold the fastest answer back."""
-        variables, limits = self.model.variables, self.limits
-        limiting = self._limiting(solution)
-        names = self.model.circuit.devices.net_names
-        ceilings = len(limits.ceiling_net)
-        prices = solution.limit_prices
-        held = []
-        if ceilings and (prices[:ceilings] > 1e-3 * solution.delay).any():
-            worst = int(limits.ceiling_net[int(prices[:ceilings].argmax())])
-            held.append(f"the input capacitance allowed on '{names[worst]}'")
-        if (prices[ceilings:] > 1e-3 * solution.delay).any():
-            held.append("the transition limit")
+        variables, nets = self.model.variables, self.limits.ceiling_net
+        limiting, full = self._limiting(solution), self._full(solution)
+        circuit, row = self.model.circuit, self.model.transition_row(self.limits)
+        pins, gates = circuit.pins, limiting[variables.partition.of_gate]
+        on_path = np.zeros(len(circuit.devices.net_names), bool)
+        on_path[pins.net[gates[pins.gate]]] = True
+        inputs = nets[full[: len(nets)] & on_path[nets]]
+        arcs = gates[circuit.arcs.gate] & (row >= 0) & full[row]
         at_top = limiting & variables.free & (solution.sizes > variables.upper * (1 - 1e-6))
+        stuck = int((limiting & ~variables.free).sum())
+        held = []
+        if len(inputs):
+            name = circuit.devices.net_names[inputs[0]]
+            held.append(f"the input capacitance allowed on '{name}'")
+        if arcs.any():
+            held.append("the transition limit")
         if at_top.any():
             held.append(f"the largest widths allowed ({int(at_top.sum())} sizes)")
-        if (limiting & ~variables.free).any():
-            count = int((limiting & ~variables.free).sum())
-            held.append(f"{count} sizes on the limiting paths that are fixed")
+        if stuck:
+            held.append(f"{stuck} sizes on the limiting paths that are fixed")
         if self.wishes.width is not None and solution.spend_price > 0:
             held.append("the budget")
         return "it is held by " + (", ".join(held) or "the topology: no limit is active")
+
+    def _full(self, solution: Solution) -> BoolArray:
+        """Tell which limits a solution leaves no room, shape (limits,)."""
+        every = np.ones(len(solution.sizes))
+        problem = self.model.problem(every, every, self.spend, self.limits)
+        used: BoolArray = problem.limit.sums(np.log(solution.sizes), problem.limits) > 1 - _FULL
+        return used
 
 
 def worst_charged(timing: Timing) -> float:

@@ -16,8 +16,6 @@ if TYPE_CHECKING:
 
 _AT_BOUND = 1e-4
 """Relative distance to a bound below which a size counts as held by it."""
-_ACTIVE = 1e-4
-"""Price of a limit, relative to the objective, above which it counts as active."""
 
 
 def stage_holds(engine: Engine, answer: Continuous, after: Timing) -> tuple[StageHold, ...]:
@@ -43,23 +41,15 @@ def _hold(engine: Engine, answer: Continuous, gate: int) -> Hold:
     return "transition" if _makes_slowest_edge(engine, answer, gate) else ""
 
 
-def _active_limits(answer: Continuous) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
-    """Tell which limits have a price, shape (limits,)."""
-    objective = min(answer.solution.spend, answer.solution.delay)
-    active: np.ndarray[tuple[int], np.dtype[np.bool_]]
-    active = answer.solution.limit_prices > _ACTIVE * objective
-    return active
-
-
 def _on_full_input(engine: Engine, answer: Continuous, gate: int) -> bool:
-    """Tell whether a gate loads an input whose ceiling has a price."""
+    """Tell whether a gate loads an input whose ceiling is used up."""
     nets, pins = engine.limits.ceiling_net, engine.model.circuit.pins
-    full = nets[_active_limits(answer)[: len(nets)]]
+    full = nets[answer.full[: len(nets)]]
     return bool(np.isin(pins.net[pins.gate == gate], full).any())
 
 
 def _makes_slowest_edge(engine: Engine, answer: Continuous, gate: int) -> bool:
-    """Tell whether the transition limit of one of a gate's arcs has a price."""
-    row = engine.model.transition_row(engine.limits)
+    """Tell whether the transition limit of one of a gate's arcs is used up."""
+    row = engine.model.transition_row(answer.limits)
     mine = row[(engine.model.circuit.arcs.gate == gate) & (row >= 0)]
-    return bool(_active_limits(answer)[mine].any())
+    return bool(answer.full[mine].any())

@@ -37,6 +37,9 @@ if TYPE_CHECKING:
 #: Rows with more entries than this keep their own unknown; their outer product has its square.
 _WIDE: Final = 40
 
+#: Relative residual of a solution above which it is refined.
+_REFINE: Final = 1e-10
+
 
 class SingularError(ArithmeticError):
     """The matrix cannot be solved with: rounding has eaten what was left to gain."""
@@ -80,7 +83,7 @@ class Linearisation:
     factors: SuperLU
 
     def solve(self, right: FloatArray, push: FloatArray) -> FloatArray:
-        """Return the step of the variables, refined once.
+        """Return the step of the variables, refined once if need be.
 
         Parameters
         ----------
@@ -93,9 +96,11 @@ class Linearisation:
         upper = right - self.jacobian.T @ np.where(self.narrow, push, 0.0)
         b = np.concatenate([upper, -push[wide] / self.theta[wide]])
         x = self.factors.solve(b)
-        x += self.factors.solve(b - self.matrix @ x)
-        if not np.all(np.isfinite(x)):
+        left = b - self.matrix @ x
+        if not np.all(np.isfinite(left)):
             raise SingularError
+        if np.abs(left).max() > _REFINE * np.abs(b).max():
+            x += self.factors.solve(left)
         step: FloatArray = x[: len(right)]
         return step
 

@@ -25,6 +25,9 @@ if TYPE_CHECKING:
     from evenstage.timing.graph import TimingGraph
     from evenstage.timing.results import Yardstick
 
+_ROUNDING = 1e-9
+"""Relative room that the rounding of sums is given at limits."""
+
 
 @dataclass(frozen=True, kw_only=True)
 class Limits:
@@ -38,12 +41,16 @@ class Limits:
         s; the slowest edge any gate may make.
     strict : bool
         Whether a stage that breaks the transition limit today must get better; else it may stay.
+    share : float
+        Part of the transition limit that each stage may use. Below 1 where slower inputs would carry
+        stages that may stay beyond the limit.
     """
 
     ceiling_net: IntArray
     ceiling: FloatArray
     transition: float
     strict: bool = False
+    share: float = 1.0
 
 
 @dataclass(frozen=True)
@@ -152,23 +159,26 @@ class Model:
         return _monomials([drivers, arcs], len(self.variables))
 
     def _limits(self, limits: Limits) -> tuple[Monomials, int]:
-        """Return input ceilings and transition limits as sums that must stay below 1."""
+        """Return input ceilings and transition limits as sums that must stay below 1.
+
+        A limit met exactly today must not be broken by the rounding of its sum.
+        """
         form, n = self.load, len(self.variables)
         nets = limits.ceiling_net
         wide = np.diff(form.indptr)[nets]
         entry = _ranges(form.indptr[nets], wide)
         ceilings = (
             np.repeat(np.arange(len(nets)), wide),
-            form.data[entry] / np.repeat(limits.ceiling, wide),
+            form.data[entry] / np.repeat(limits.ceiling * (1 + _ROUNDING), wide),
             form.indices[entry],
             np.full(len(entry), n),
         )
-        most, number = self._elmore_limit(limits), self.transition_row(limits)
+        most, number = self.elmore_limit(limits), self.transition_row(limits)
         elmore = self.elmore
         kept = number[elmore.row] >= 0
         transitions = (
             number[elmore.row[kept]],
-            elmore.coefficient[kept] / most[elmore.row[kept]],
+            elmore.coefficient[kept] / (most[elmore.row[kept]] * (1 + _ROUNDING)),
             elmore.plus[kept],
             elmore.minus[kept],
         )
@@ -176,11 +186,11 @@ class Model:
 
     def transition_row(self, limits: Limits) -> IntArray:
         """Return the row of the limit on each arc's transition, -1 for none, shape (arcs,)."""
-        limited = np.isfinite(self._elmore_limit(limits))
+        limited = np.isfinite(self.elmore_limit(limits))
         number = np.cumsum(limited) - 1 + len(limits.ceiling_net)
         return np.where(limited, number, -1).astype(np.int32)
 
-    def _elmore_limit(self, limits: Limits) -> FloatArray:
+    def elmore_limit(self, limits: Limits) -> FloatArray:
         """Return the Elmore delay up to which an arc keeps a transition limit, s, shape (arcs,).
 
         If every stage keeps ``shape E <= sqrt(1 - carry^2) T`` and no input is slower than T, then
@@ -190,7 +200,7 @@ class Model:
         share = np.sqrt(np.maximum(1 - arcs.shape_carry**2, 0.0))
         shaped = arcs.shape > 0
         most = np.full(len(arcs.gate), np.inf)
-        most[shaped] = share[shaped] / arcs.shape[shaped] * limits.transition
+        most[shaped] = share[shaped] / arcs.shape[shaped] * limits.transition * limits.share
         if limits.strict:
             return most
         today = arcs.resistance.today * self.circuit.net_cap[arcs.output] + arcs.own_today

@@ -1,8 +1,9 @@
 """Which cards share one size.
 
-A size belongs to cards, not to devices: to the X card that calls a leaf (a subcircuit that is exactly
-one gate, or that the brief names one), else to the transistor cards of a gate, shared by all callers
-of the subcircuit they stand in. Cards that any gate shares, or that the brief ties, have one size.
+A size belongs to cards, not to devices: to the X card that calls a leaf (a subcircuit that is
+exactly one gate, or that the brief names one), else to the transistor cards of a gate, shared by
+all callers of the subcircuit they stand in. Cards that any gate shares, or that the brief ties,
+have one size.
 """
 
 from __future__ import annotations
@@ -23,6 +24,7 @@ if TYPE_CHECKING:
 
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
+    from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import IntArray
     from evenstage.pattern import Pattern
 
@@ -132,7 +134,7 @@ def calling_cards(circuit: Circuit, brief: Brief | None = None) -> IntArray:
 
 
 def _labels(circuit: Circuit, brief: Brief | None, callers: IntArray) -> tuple[IntArray, IntArray]:
-    """Number the sizes: gates joined by a card have one, in the order of their first card."""
+    """Return the size of each gate, and each size's first card: a card joins all its gates."""
     gate_of_link, card_of_link = _links(circuit, callers)
     gates, cards = len(circuit), len(circuit.devices.netlist)
     first, second = _tied_gates(circuit, brief, callers)
@@ -171,7 +173,19 @@ def _tied_gates(
 
 
 def gates_named(circuit: Circuit, patterns: Sequence[Pattern]) -> list[int]:
-    """Return the gates that patterns name: by a transistor card, or an instance around it.
+    """Return the gates of the transistors that patterns name, see `devices_named`.
+
+    Raises
+    ------
+    SettingsError
+        Where a pattern fits no card.
+    """
+    gates = np.unique(circuit.gate_of_device[devices_named(circuit, patterns)])
+    return [int(gate) for gate in gates if gate >= 0]
+
+
+def devices_named(circuit: Circuit, patterns: Sequence[Pattern]) -> BoolArray:
+    """Tell which transistors patterns name: by their card, or by an instance around it.
 
     Raises
     ------
@@ -179,7 +193,7 @@ def gates_named(circuit: Circuit, patterns: Sequence[Pattern]) -> list[int]:
         Where a pattern fits no card.
     """
     if not patterns:
-        return []
+        return np.zeros(len(circuit.devices), bool)
     devices = circuit.devices
     paths = [devices.instance_path(i) for i in range(len(devices.instance_parent))]
     cards = [
@@ -195,5 +209,4 @@ def gates_named(circuit: Circuit, patterns: Sequence[Pattern]) -> list[int]:
         inside[instance] |= inside[devices.instance_parent[instance]]
     device = inside[devices.instance]
     device[chosen[chosen >= len(paths) - 1] - (len(paths) - 1)] = True
-    gates = np.unique(circuit.gate_of_device[device])
-    return [int(gate) for gate in gates if gate >= 0]
+    return device

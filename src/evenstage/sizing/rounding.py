@@ -15,13 +15,18 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.sizing.engine import worst_charged
+from evenstage.sizing.problem import totals
 from evenstage.timing.sweep import sweep
+from evenstage.timing.trials import tried
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.netlist.handles import WidthHandle, WidthHandles
     from evenstage.sizing.engine import Continuous, Engine
     from evenstage.timing.sweep import Timing
+    from evenstage.timing.trials import Trials
 
 _DEFAULT_STEP = 1e-9
 """m; grid where the process gives none: no mask is drawn finer."""
@@ -31,7 +36,7 @@ _CANDIDATES = 48
 """How many sizes one repair step or the recovery tries."""
 _REPAIRS = 60
 """How many single steps may repair the deadline."""
-_ROOM = 1e-9
+_ROOM = 2e-9
 """Relative room for the noise of binary arithmetic."""
 
 
@@ -65,6 +70,10 @@ class Rounding:
         """Round, repair and recover."""
         width = self._keep_ceilings(self._rounded())
         width = self._recovered(self._repaired(width))
+        return self.drawn_at(width)
+
+    def drawn_at(self, width: FloatArray) -> Drawn:
+        """Return some slot widths with what they amount to."""
         return Drawn(width, self.timed(width), self.cost(width))
 
     @cached_property
@@ -143,24 +152,21 @@ class Rounding:
         size = int(self.engine.model.variables.partition.of_slot[slot])
         low = self.drawn[slot] * self.answer.lower[size] * (1 - _ROOM)
         high = self.drawn[slot] * self.answer.upper[size] * (1 + _ROOM)
-        step = self._step(slot)
-        handle = self._handle(slot)
-        width = handle.drawable(min(max(wanted, low), high), step)
-        while width < low:
-            width = handle.drawable(width + step, step)
-        while width > high and width > low + step:
-            width = handle.drawable(width - step, step)
-        return width if low <= width <= high else float(self.drawn[slot])
+        handle, step = self._handle(slot), self._step(slot)
+        grid = handle.transistor.width_step or _DEFAULT_STEP
+        nearest = handle.drawable(min(max(wanted, low), high), grid)
+        # A bound off the grid lets the nearest width miss it by part of a step.
+        for width in (nearest, nearest + step, nearest - step):
+            if low <= width <= high:
+                return width
+        return float(self.drawn[slot])
 
     def _handle(self, slot: int) -> WidthHandle:
         return self.handles[self.engine.model.variables.partition.slots[slot]]
 
     def _step(self, slot: int) -> float:
         """Return the grid of a slot, m, all fingers together."""
-        handle = self._handle(slot)
-        step = handle.transistor.width_step or _DEFAULT_STEP
-        per_finger = handle.transistor.width_is == "finger"
-        return step * handle.drawing.fingers if per_finger else step
+        return self._handle(slot).smallest_step(_DEFAULT_STEP)
 
     def _rounded(self) -> FloatArray:
         """Return all widths on the grid, those of sizes that hardly move as drawn."""
@@ -170,28 +176,52 @@ class Rounding:
             self._draw(width, size, self.drawn * self.answer.sizes[size])
         return width
 
-    def _stepped(self, width: FloatArray, size: int, direction: int) -> FloatArray:
-        """Return the widths with one size a step wider or narrower.
+    def _stepped(self, width: FloatArray, sizes: Sequence[int], direction: int) -> FloatArray:
+        """Return the widths with some sizes a step wider or narrower.
 
-        The slot with the finest relative step moves by one step; the others follow in proportion.
+        Of each size the slot with the finest relative step moves by one step; the others follow in
+        proportion.
         """
-        slots = self._slots_of_size[size].tolist()
-        ratio = 1 + direction * min(self._step(slot) / width[slot] for slot in slots)
         moved = width.copy()
-        self._draw(moved, size, width * ratio)
+        for size in sizes:
+            slots = self._slots_of_size[size].tolist()
+            ratio = 1 + direction * min(self._step(slot) / width[slot] for slot in slots)
+            self._draw(moved, size, width * ratio)
         return moved
 
     def _excess(self, timing: Timing) -> float:
         """Return by what share the worst deadline or transition limit is broken; <= 0: none."""
-        wanted = self.engine.wishes.delay
-        if wanted is None:
+        circuit = timing.circuit
+        elmore = circuit.arcs.resistance.today * circuit.net_cap[circuit.arcs.output]
+        use = ((elmore + circuit.arcs.own_today) / self._elmore_limit).max()
+        if self.engine.wishes.delay is None:
             late = worst_charged(timing) / self.answer.deadline
         else:
-            late = float(timing.lateness.max()) / wanted
-        most = self.engine.limits.transition
-        if not self.engine.limits.strict:
-            most = max(most, self.engine.today.worst_transition)
-        return max(late, timing.worst_transition / most) - 1 - _ROOM
+            late = timing.lateness.max() / self.engine.wishes.delay
+        return max(float(late), float(use), timing.worst_transition / self._slowest) - 1 - _ROOM
+
+    def _excesses(self, trials: Trials) -> FloatArray:
+        """Return the same for trials, shape (trials,)."""
+        if self.engine.wishes.delay is None:
+            late = trials.charged_lateness / self.answer.deadline
+        else:
+            late = trials.lateness / self.engine.wishes.delay
+        edges = np.maximum(trials.elmore_use, trials.worst_transition / self._slowest)
+        excess: FloatArray = np.maximum(late, edges) - 1 - _ROOM
+        return excess
+
+    @cached_property
+    def _elmore_limit(self) -> FloatArray:
+        """Transition limit of each arc in the programme, s; its bound holds for what is drawn."""
+        return self.engine.model.elmore_limit(self.answer.limits)
+
+    @cached_property
+    def _slowest(self) -> float:
+        """The slowest edge any gate may make, s."""
+        limits = self.engine.limits
+        if limits.strict:
+            return limits.transition
+        return max(limits.transition, self.engine.today.worst_transition)
 
     def _over_ceiling(self, timing: Timing) -> IntArray:
         """Return the nets whose input capacitance exceeds its ceiling."""
@@ -208,7 +238,7 @@ class Rounding:
             lowered = width
             for size in np.unique(model.variables.partition.of_gate[gates]).tolist():
                 if self.answer.active[size]:
-                    lowered = self._stepped(lowered, size, -1)
+                    lowered = self._stepped(lowered, [size], -1)
             if (lowered == width).all():
                 return width
             width = lowered
@@ -221,21 +251,43 @@ class Rounding:
             excess = self._excess(timing)
             if excess <= 0:
                 return width
-            best, best_worth = width, 0.0
-            for size in self._candidates(timing):
-                for direction in (1, -1):
-                    tried = self._stepped(width, size, direction)
-                    outcome = self.timed(tried)
-                    if (tried == width).all() or len(self._over_ceiling(outcome)):
-                        continue
-                    gain = excess - self._excess(outcome)
-                    spent = max(self.cost(tried) - self.cost(width), 1e-9 * self.cost(width))
-                    if gain > 0 and gain / spent > best_worth:
-                        best, best_worth = tried, gain / spent
-            if best is width:
+            sizes = self._candidates(timing)
+            moves = [self._stepped(width, sizes, direction) for direction in (1, -1)]
+            worth = np.stack([self._worth(timing, excess, sizes, width, to) for to in moves])
+            if not (worth > 0).any():
                 return width
-            width = best
+            place, way = divmod(int(worth.T.argmax()), len(moves))
+            slots = self._slots_of_size[sizes[place]]
+            width = width.copy()
+            width[slots] = moves[way][slots]
         return width
+
+    def _worth(
+        self,
+        timing: Timing,
+        excess: float,
+        sizes: Sequence[int],
+        width: FloatArray,
+        moved: FloatArray,
+    ) -> FloatArray:
+        """Return what each size gains per cost if it alone moves, shape (sizes,)."""
+        model, limits = self.engine.model, self.engine.limits
+        place, parts = _places(sizes, len(model.variables)), model.variables.partition
+        of_slot, of_gate = place[parts.of_slot], place[parts.of_gate]
+        trials = tried(
+            timing,
+            model.circuit.resized(self.factors(moved)),
+            of_gate,
+            nets=limits.ceiling_net,
+            elmore_limit=self._elmore_limit,
+        )
+        mine = of_slot >= 0
+        change = (self._cost_per_width * (moved - width))[mine]
+        spent = totals(of_slot[mine], change, len(sizes))
+        still = totals(of_slot[mine], np.abs(moved - width)[mine], len(sizes)) == 0
+        over = (trials.net_cap > (limits.ceiling * (1 + _ROOM))[:, None]).any(axis=0)
+        worth = (excess - self._excesses(trials)) / np.maximum(spent, 1e-9 * self.cost(width))
+        return np.where(still | over, 0.0, worth)
 
     def _candidates(self, timing: Timing) -> list[int]:
         """Return the active sizes nearest to the slowest paths, at most `_CANDIDATES`."""
@@ -256,13 +308,20 @@ class Rounding:
             len(self.answer.active),
         )[active]
         for size in active[np.argsort(-cost, kind="stable")][:_CANDIDATES].tolist():
-            tried = self._stepped(width, size, -1)
-            if self.cost(tried) >= self.cost(width):
+            narrower = self._stepped(width, [size], -1)
+            if self.cost(narrower) >= self.cost(width):
                 continue
-            outcome = self.timed(tried)
+            outcome = self.timed(narrower)
             if self._excess(outcome) <= 0 and not len(self._over_ceiling(outcome)):
-                width = tried
+                width = narrower
         return width
+
+
+def _places(sizes: Sequence[int], count: int) -> IntArray:
+    """Return the place of each of ``count`` sizes in a list, -1 for none, shape (count,)."""
+    place = np.full(count, -1, np.int32)
+    place[list(sizes)] = np.arange(len(sizes))
+    return place
 
 
 def _slack(timing: Timing) -> FloatArray:
