@@ -9,10 +9,10 @@ multipliers in one array ``price``, a point is optimal if
     room * price = 0,  room > 0,  price > 0                           complementary
 
 The path to it sets the last product to ``mu`` and lets mu fall: a predictor with mu 0 tells how far
-mu may fall and how the path bends (Mehrotra, SIAM J. Optimization 2(4), 1992), then products far from
-mu are drawn nearer as long as that makes the step longer (Gondzio, Computational Optimization and
-Applications 6, 1996; both from memory). A correction costs one solution with factors that are there
-already; up to three save a quarter of the factorisations.
+mu may fall and how the path bends (Mehrotra, SIAM J. Optimization 2(4), 1992), then products far
+from mu are drawn nearer as long as that makes the step longer (Gondzio, Computational Optimization
+and Applications 6, 1996; both from memory). A correction costs one solution with factors that are
+there already; up to three save a quarter of the factorisations.
 
 Ties. A size on which nothing depends would drift to the middle of what it may do. A term
 ``mu/2 |y - anchor|^2`` beside the barrier keeps such sizes near where they were and the matrix
