@@ -83,7 +83,7 @@ def tried(
             nets,
             elmore_limit,
         )
-        for begin in range(0, count, batch)
+        for begin in range(0, max(count, 1), batch)
     ]
     return Trials(
         worst=np.concatenate([part.worst for part in parts]),
