@@ -70,19 +70,21 @@ def _say(message: str) -> None:
 
 
 def _show(result: flow.Result, asked: argparse.Namespace) -> None:
-    """Print a result and its notices where they were asked for."""
+    """Print a result and its notices where they were asked for.
+
+    A report holds its notices; JSON is for scripts, so there people find them on standard error.
+    """
     if asked.json == "-":
         sys.stdout.write(flow.json(result))
-    else:
-        if asked.json:
-            flow.write_text(Path(asked.json), flow.json(result), force=True)
-        encoding = sys.stdout.encoding or "ascii"
-        unicode = encoding.lower().startswith("utf")
-        report = flow.text(result, width=_width(), unicode=unicode)
-        sys.stdout.write(report.encode(encoding, "replace").decode(encoding))
-    if not asked.quiet:
-        for notice in flow.notices(result):
+        for notice in () if asked.quiet else flow.notices(result):
             _say(f"notice: {notice}")
+        return
+    if asked.json:
+        flow.write_text(Path(asked.json), flow.json(result), force=True)
+    encoding = sys.stdout.encoding or "ascii"
+    unicode = encoding.lower().startswith("utf")
+    report = flow.text(result, width=_width(), unicode=unicode, with_notices=not asked.quiet)
+    sys.stdout.write(report.encode(encoding, "replace").decode(encoding))
 
 
 def _width() -> int:

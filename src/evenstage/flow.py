@@ -169,13 +169,15 @@ def write_text(path: Path, content: str, *, force: bool) -> None:
     write_files({path: content.encode("utf-8", "surrogateescape")}, force=force)
 
 
-def text(result: Result, *, width: int = 100, unicode: bool = True) -> str:
-    """Return a result as a report for people."""
+def text(
+    result: Result, *, width: int = 100, unicode: bool = True, with_notices: bool = True
+) -> str:
+    """Return a result as a report for people, with or without its notices."""
     if isinstance(result, Analysis):
-        return analysis_report(result, width=width, unicode=unicode)
+        return analysis_report(result, width=width, unicode=unicode, notices=with_notices)
     if isinstance(result, Sizing):
-        return sizing_report(result, width=width, unicode=unicode)
-    return difference_report(result, width=width, unicode=unicode)
+        return sizing_report(result, width=width, unicode=unicode, notices=with_notices)
+    return difference_report(result, width=width, unicode=unicode, notices=with_notices)
 
 
 def json(result: Result) -> str:

@@ -17,7 +17,9 @@ if TYPE_CHECKING:
 _SAME: Final = 1 - 1e-9
 
 
-def analysis_report(analysis: Analysis, *, width: int = 100, unicode: bool = False) -> str:
+def analysis_report(
+    analysis: Analysis, *, width: int = 100, unicode: bool = False, notices: bool = True
+) -> str:
     """Return an analysis as text: the slowest path stage by stage, then the others and the block.
 
     Parameters
@@ -27,6 +29,8 @@ def analysis_report(analysis: Analysis, *, width: int = 100, unicode: bool = Fal
         Character cells per line, 80 to 160.
     unicode : bool
         Whether the output can show more than ASCII.
+    notices : bool
+        Whether the notices are printed too.
 
     Returns
     -------
@@ -43,7 +47,8 @@ def analysis_report(analysis: Analysis, *, width: int = 100, unicode: bool = Fal
         title = f"Path ends, {_rank(analysis)} first"
         lines += section(title, end_lines(paper, analysis.ends))
     lines += section("The block", block_lines(paper, analysis))
-    lines += section("Notices", notice_lines(paper, analysis.notices))
+    if notices:
+        lines += section("Notices", notice_lines(paper, analysis.notices))
     return finished(paper, lines)
 
 

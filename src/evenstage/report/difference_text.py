@@ -17,7 +17,9 @@ if TYPE_CHECKING:
 _NAMES_SHOWN: Final = 12
 
 
-def difference_report(difference: Difference, *, width: int = 100, unicode: bool = False) -> str:
+def difference_report(
+    difference: Difference, *, width: int = 100, unicode: bool = False, notices: bool = True
+) -> str:
     """Return a comparison as text: slowest paths, blocks, widths, and what only one netlist has.
 
     Parameters
@@ -27,6 +29,8 @@ def difference_report(difference: Difference, *, width: int = 100, unicode: bool
         Character cells per line, 80 to 160.
     unicode : bool
         Whether the output can show more than ASCII.
+    notices : bool
+        Whether the notices are printed too.
 
     Returns
     -------
@@ -42,7 +46,8 @@ def difference_report(difference: Difference, *, width: int = 100, unicode: bool
     lines += section("The blocks", total_lines(paper, before, after))
     lines += section("Widths that differ", difference_lines(paper, difference.widths))
     lines += section("In only one netlist", _only_lines(paper, difference))
-    lines += section("Notices", notice_lines(paper, (*before.notices, *after.notices)))
+    if notices:
+        lines += section("Notices", notice_lines(paper, (*before.notices, *after.notices)))
     return finished(paper, lines)
 
 

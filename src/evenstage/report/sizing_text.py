@@ -28,7 +28,9 @@ _HOLDS: Final[dict[Hold, str]] = {
 }
 
 
-def sizing_report(sizing: Sizing, *, width: int = 100, unicode: bool = False) -> str:
+def sizing_report(
+    sizing: Sizing, *, width: int = 100, unicode: bool = False, notices: bool = True
+) -> str:
     """Return a sizing as text: what it buys, its bound, the changes, the path before and after.
 
     Parameters
@@ -38,6 +40,8 @@ def sizing_report(sizing: Sizing, *, width: int = 100, unicode: bool = False) ->
         Character cells per line, 80 to 160.
     unicode : bool
         Whether the output can show more than ASCII.
+    notices : bool
+        Whether the notices are printed too.
 
     Returns
     -------
@@ -53,7 +57,8 @@ def sizing_report(sizing: Sizing, *, width: int = 100, unicode: bool = False) ->
     lines += _stages(paper, sizing)
     block = total_lines(paper, before, after) if sizing.changes else block_lines(paper, before)
     lines += section("The block", block)
-    lines += section("Notices", notice_lines(paper, (*sizing.notices, *before.notices)))
+    if notices:
+        lines += section("Notices", notice_lines(paper, (*sizing.notices, *before.notices)))
     return finished(paper, lines)
 
 
