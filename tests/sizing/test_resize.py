@@ -12,7 +12,6 @@ from hypothesis import strategies as st
 from evenstage.brief import Brief, InputBrief, LimitBrief, OutputBrief
 from evenstage.errors import InfeasibleError, SettingsError
 from evenstage.pattern import Pattern
-from evenstage.process.process import Process
 from evenstage.sizing.resize import resize
 from evenstage.sizing.wishes import Original, Wishes
 from evenstage.timing.analyse import analyse
@@ -20,6 +19,7 @@ from support.blocks import block, circuit_of, inverter, nand, plain_process
 from support.random_blocks import RandomBlock, random_blocks
 
 if TYPE_CHECKING:
+    from evenstage.process.process import Process
     from evenstage.sizing.results import Change, Sizing
 
 PROCESS = plain_process(slope=0.2, slope_power=0.8, shape=1.6, shape_carry=0.2, stack=0.7)
@@ -118,7 +118,9 @@ class TestLaws:
         try:
             sizing = resized(drawn.text(), Wishes(delay=share * today))
         except InfeasibleError as error:
-            assert error.code in {"delay-out-of-reach", "grid-too-coarse"}
+            # Anything but these two would be another mistake.
+            if error.code not in {"delay-out-of-reach", "grid-too-coarse"}:
+                raise
             return
         assert sizing.after.paths[0].delay <= share * today * (1 + 1e-6)
         # The bound is for charged delay and the drawn ratio of n to p.
@@ -275,7 +277,7 @@ class TestHierarchy:
         assert {change.occurrences for change in sizing.changes} == {64}
 
     def test_callers_that_differ_get_copies_or_parameters(self) -> None:
-        for leaf, parameter, text in (("inv", "w", LEAF), ("invp", "wn", LEAF_WITH_WIDTHS)):
+        for leaf, parameter, cell in (("inv", "w", LEAF), ("invp", "wn", LEAF_WITH_WIDTHS)):
             calls = "\n".join(f"x{k} n{k} n{k + 1} {leaf}" for k in range(4))
             text = (
                 f"* c\n.global vdd vss\n{text}.subckt top n0 n4\n{calls}\ncl n4 vss 900f\n.ends\n"
