@@ -280,7 +280,7 @@ class TestHierarchy:
         for leaf, parameter, cell in (("inv", "w", LEAF), ("invp", "wn", LEAF_WITH_WIDTHS)):
             calls = "\n".join(f"x{k} n{k} n{k + 1} {leaf}" for k in range(4))
             text = (
-                f"* c\n.global vdd vss\n{text}.subckt top n0 n4\n{calls}\ncl n4 vss 900f\n.ends\n"
+                f"* c\n.global vdd vss\n{cell}.subckt top n0 n4\n{calls}\ncl n4 vss 900f\n.ends\n"
             )
             changes = resized(text).changes
             assert len({change.new for change in changes if change.card == "mn"}) > 1
