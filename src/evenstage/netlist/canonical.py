@@ -22,7 +22,7 @@ Indices = NDArray[np.intp]
 Mask = NDArray[np.bool_]
 
 BOM = b"\xef\xbb\xbf"
-_BLANK, _NEWLINE, _PLUS, _STAR, _DOT = (ord(c) for c in " \n+*.")
+_BLANK, _NEWLINE, _PLUS, _STAR, _DOT, _SLASH = (ord(c) for c in " \n+*./")
 _BLANKS = np.zeros(256, np.bool_)
 _BLANKS[[b for b in range(33) if b not in {10, 13}]] = True
 _PADDING = b"\n\n\n"
@@ -35,7 +35,6 @@ def _among(characters: str) -> Mask:
 
 
 _REMARKS = _among("$;")
-_QUOTES = _among("'\"{")
 _LETTERS = _among("abcdefghijklmnopqrstuvwxyz")
 
 
@@ -84,7 +83,8 @@ class _Lines:
         directive = (
             (mark == _STAR) & (view[self.first + 1] == _DOT) & _LETTERS[view[self.first + 2]]
         )
-        self.comment: Mask = (mark == _STAR) | _REMARKS[mark]
+        slashes = (mark == _SLASH) & (view[self.first + 1] == _SLASH)
+        self.comment: Mask = (mark == _STAR) | _REMARKS[mark] | slashes
         anchor = directive | ~(self.comment | self.plus | (mark == _NEWLINE))
         number = np.arange(len(mark))
         # The card or directive each line belongs to; -1 before the first.
@@ -111,11 +111,10 @@ class _Lines:
             self._blank(self.first[self.comment], self.ends[self.comment])
 
     def _blank(self, starts: Indices, ends: Indices) -> None:
-        """Blank ranges that do not overlap."""
-        change = np.zeros(len(self.view) + 1, np.int8)
-        change[starts] += 1
-        change[ends] -= 1
-        self.view[np.cumsum(change[:-1], dtype=np.int8).view(np.bool_)] = _BLANK
+        """Blank some ranges."""
+        lengths = ends - starts
+        before = np.cumsum(lengths) - lengths
+        self.view[np.repeat(starts - before, lengths) + np.arange(lengths.sum())] = _BLANK
 
     def join_continuations(self) -> None:
         """Blank each ``+`` that continues a card and the line ends up to it."""
@@ -129,7 +128,7 @@ class _Lines:
 
     def blank_remarks(self) -> None:
         """Blank each remark from its sign to the end of its line."""
-        places = np.flatnonzero(_REMARKS[self.view])
+        places = np.union1d(self._places("$;"), self._double_slashes())
         before = self.view[places - 1]
         places = places[(places == 0) | (before <= _BLANK)]
         if len(places) == 0:
@@ -142,10 +141,22 @@ class _Lines:
         line, first = np.unique(line[~quoted], return_index=True)
         self._blank(places[~quoted][first], self.ends[line])
 
+    def _places(self, signs: str) -> Indices:
+        """Return where some signs stand (comparing is ten times as fast as a table)."""
+        found = self.view == ord(signs[0])
+        for sign in signs[1:]:
+            found |= self.view == ord(sign)
+        return np.flatnonzero(found)
+
+    def _double_slashes(self) -> Indices:
+        """Return where two slashes stand together."""
+        places = self._places("/")
+        return places[self.view[places + 1] == _SLASH]
+
     def _cards_with_quotes(self) -> Mask:
         """Tell for each line whether the card that begins there holds a quote."""
         found = np.zeros(len(self.starts), np.bool_)
-        line = np.searchsorted(self.starts, np.flatnonzero(_QUOTES[self.view]), "right") - 1
+        line = np.searchsorted(self.starts, self._places("'\"{"), "right") - 1
         found[np.where(self.owner[line] < 0, line, self.owner[line])] = True
         return found
 
@@ -167,4 +178,4 @@ class _Lines:
 @cache
 def _quoted_or_remark() -> re.Pattern[bytes]:
     quoted = "|".join(terminal(name) for name in ("QUOTED", "STRING", "BRACED"))
-    return re.compile(rf"{quoted}|(?P<remark>(?<![^\x00-\x20])[$;])".encode(ENCODING))
+    return re.compile(rf"{quoted}|(?P<remark>(?<![^\x00-\x20])(?:[$;]|//))".encode(ENCODING))
