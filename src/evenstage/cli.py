@@ -50,7 +50,7 @@ def main(arguments: Sequence[str]) -> int:
         _say(str(error))
         return WRONG_INPUT
     except KeyboardInterrupt:
-        _say("interrupted; no output was touched")
+        _say("interrupted; no file is left half-written")
         return INTERRUPTED
     except BrokenPipeError:
         # Whoever read the report has read enough.
@@ -241,7 +241,7 @@ def _percent(text: str) -> float:
 
 
 def _count(text: str) -> int:
-    if not (text.isdigit() and 0 < int(text) <= 10_000):
+    if not (text.isdecimal() and 0 < int(text) <= 10_000):
         message = f"must be a whole number from 1 to 10000, got '{text}'"
         raise argparse.ArgumentTypeError(message)
     return int(text)

@@ -117,9 +117,16 @@ class Circuit:
         return pins_of(self.alike, self.electrical)
 
     @cached_property
-    def pins_by_net(self) -> IntArray:
-        """Order of the pins by net, then by gate."""
-        return np.lexsort((self.pins.gate, self.pins.net)).astype(np.int32)
+    def _pins_by_net(self) -> tuple[IntArray, IntArray]:
+        """Pins by net, then by gate, and where those of each net begin."""
+        order = np.lexsort((self.pins.gate, self.pins.net)).astype(np.int32)
+        nets = np.arange(len(self.devices.net_names) + 1)
+        return order, np.searchsorted(self.pins.net[order], nets)
+
+    def pins_on(self, net: int) -> IntArray:
+        """Return the pins on a net, by gate."""
+        order, head = self._pins_by_net
+        return order[int(head[net]) : int(head[net + 1])]
 
     @cached_property
     def arcs(self) -> Arcs:

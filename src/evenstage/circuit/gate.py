@@ -131,6 +131,8 @@ def recognise_network(
         for rising in (True, False)
         for arc in _arcs(network, output, pulls, row, relations, rising=rising)
     )
+    if not arcs:
+        return Unrecognised("no input moves its output")
     return GateForm(devices, network, output, conduction(network, output, LOW, "n"), arcs)
 
 

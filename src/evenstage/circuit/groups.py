@@ -118,14 +118,13 @@ def _alike(devices: Devices, members: IntArray, numbers: IntArray) -> list[Alike
     polarity = is_p[devices.model[members]].astype(np.int32)
     rows = np.concatenate([polarity[:, :, None], numbers], axis=2).reshape(groups, 4 * size)
     kinds, inverse = np.unique(rows, axis=0, return_inverse=True)
+    order = np.argsort(inverse, kind="stable")
+    cuts = np.searchsorted(inverse[order], np.arange(1, len(kinds)))
     result = []
-    for index, kind in enumerate(kinds):
-        which = np.flatnonzero(inverse == index)
+    for kind, which in zip(kinds, np.split(members[order], cuts), strict=True):
         table = kind.reshape(size, 4)
         network = tuple(Switch("p" if p else "n", d, g, s) for p, d, g, s in table.tolist())
-        result.append(
-            AlikeGroups(network, members[which], _net_ids(devices, members[which], table))
-        )
+        result.append(AlikeGroups(network, which, _net_ids(devices, which, table)))
     return result
 
 

@@ -214,15 +214,15 @@ def _with_unit(process: Process, devices: Devices) -> Process:
 def _with_ends(circuit: Circuit, brief: Brief | None) -> Circuit:
     """Find where paths end and what hangs there."""
     devices = circuit.devices
-    names = [devices.net_names[net] for net in circuit.gate_output]
+    outputs = brief.outputs if brief else ()
+    names = [devices.net_names[net] for net in circuit.gate_output.tolist()] if outputs else []
     outside = np.full(len(devices.net_names), np.nan)
-    ends: dict[int, str] = {}
-    for output in brief.outputs if brief else ():
-        chosen = circuit.gate_output[list(select(output.nets, names, "driven net"))]
+    ends = _natural_ends(circuit)
+    for output in outputs:
+        chosen = circuit.gate_output[select(output.nets, names, "driven net")]
         ends.update(dict.fromkeys(chosen.tolist(), "output"))
         if output.load is not None:
             outside[chosen] = output.load
-    ends = _natural_ends(circuit) | ends
     bare = [
         net
         for net, why in ends.items()
@@ -245,19 +245,16 @@ def _with_ends(circuit: Circuit, brief: Brief | None) -> Circuit:
 
 def _natural_ends(circuit: Circuit) -> dict[int, str]:
     """Return driven nets that are ports, load nothing, or enter what was not understood."""
-    nets = len(circuit.devices.net_names)
-    loaded = np.zeros(nets, bool)
-    loaded[circuit.pins.net] = True
     strange = circuit.other_cap > 0
-    is_port = np.zeros(nets, bool)
-    is_port[list(circuit.devices.ports)] = True
-    ends = {}
-    for net in circuit.gate_output.tolist():
-        if is_port[net] or not (loaded[net] or strange[net]):
-            ends[net] = "output"
-        elif strange[net]:
-            ends[net] = "enters what was not understood"
-    return ends
+    is_output = ~strange
+    is_output[circuit.pins.net] = False
+    is_output[list(circuit.devices.ports)] = True
+    driven = circuit.gate_output
+    entering = driven[strange[driven] & ~is_output[driven]]
+    return {
+        **dict.fromkeys(driven[is_output[driven]].tolist(), "output"),
+        **dict.fromkeys(entering.tolist(), "enters what was not understood"),
+    }
 
 
 def _unit_input(process: Process) -> float:

@@ -48,9 +48,16 @@ class Supplies:
 def find_supplies(devices: Devices, brief: Brief | None = None) -> Supplies:
     """Find the supplies: from the brief, sources, names, and the bulks of the transistors.
 
-    The brief decides alone where it speaks. Otherwise a net is high that a source holds above the
-    ground net or whose name says so, and low likewise; where a kind is still missing, the net that
-    most bulks of its transistors are tied to and that is one of their channel ends is taken.
+    The brief decides alone where it speaks. Otherwise a net is high that a source holds above
+    another or whose name says so, and low likewise; a net that only drives gates is a signal,
+    whatever its name. Where a kind is still missing, the net that most bulks of its transistors are
+    tied to and that is one of their channel ends is taken.
+
+    Parameters
+    ----------
+    devices : Devices
+    brief : Brief, optional
+        Its supplies.
 
     Raises
     ------
@@ -95,9 +102,15 @@ def _named(devices: Devices, patterns: Iterable[Pattern], what: str) -> BoolArra
 
 def _by_name(devices: Devices, name: re.Pattern[str]) -> BoolArray:
     """Match the last component of each name: an undeclared rail deep in a block is still a rail."""
-    return np.array(
-        [name.fullmatch(full.rpartition(".")[2]) is not None for full in devices.net_names], bool
-    )
+    found = _channel(devices)
+    found[devices.bulk] = True
+    fits: dict[str, bool] = {}
+    for net in np.flatnonzero(found).tolist():
+        local = devices.net_names[net].rpartition(".")[2]
+        if local not in fits:
+            fits[local] = name.fullmatch(local) is not None
+        found[net] = fits[local]
+    return found
 
 
 def _by_source(devices: Devices, *, low: bool) -> BoolArray:

@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
-from itertools import pairwise
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -20,6 +19,7 @@ from evenstage.timing.stages import describe
 if TYPE_CHECKING:
     from evenstage.netlist.devices import Devices, FloatArray, IntArray
     from evenstage.timing.results import Analysis, Path
+    from evenstage.timing.search import ArcPath
     from evenstage.timing.sweep import Timing
 
 
@@ -66,23 +66,28 @@ class _Side:
     names: _Names
 
     @cached_property
-    def keys(self) -> np.ndarray[tuple[int], np.dtype[np.int64]]:
+    def paths(self) -> list[str]:
+        """The path of every instance."""
+        return [self.devices.instance_path(i) for i in range(len(self.devices.instance_parent))]
+
+    @cached_property
+    def keys(self) -> IntArray:
         """A number for each transistor's full name, shape (devices,)."""
         block = self.devices
-        paths = [block.instance_path(i).lower() for i in range(len(block.instance_parent))]
-        path = np.array([self.names[name] for name in paths], np.int64)
+        path = np.array([self.names[path.lower()] for path in self.paths], np.int64)
         cards, of_device = np.unique(block.card, return_inverse=True)
         card = np.array(
             [self.names[block.netlist.card(int(number)).name.lower()] for number in cards],
             np.int64,
         )
-        return path[block.instance] << 32 | card[of_device]
+        keys: IntArray = path[block.instance] << 32 | card[of_device]
+        return keys
 
     def named(self, device: int, before: float | None, after: float | None) -> WidthDifference:
         """Return the difference of one transistor."""
         block = self.devices
         return WidthDifference(
-            instance=block.instance_path(int(block.instance[device])),
+            instance=self.paths[int(block.instance[device])],
             card=block.netlist.card(int(block.card[device])).name,
             model=block.models[int(block.model[device])].name,
             before=before,
@@ -123,40 +128,34 @@ def _comparable(
 
 def _only(one: _Side, other: _Side) -> tuple[str, ...]:
     """Return the instances, then the nets, that the other netlist lacks."""
-    known = {
-        other.devices.instance_path(i).lower() for i in range(len(other.devices.instance_parent))
-    }
+    known = {path.lower() for path in other.paths}
     nets = {name.lower() for name in other.devices.net_names}
-    paths = [one.devices.instance_path(i) for i in range(len(one.devices.instance_parent))]
     return (
-        *(path for path in paths if path.lower() not in known),
+        *(path for path in one.paths if path.lower() not in known),
         *(name for name in one.devices.net_names if name.lower() not in nets),
     )
 
 
 def _same_path(path: Path, timing: Timing) -> Path | None:
     """Return the path through the same edges of the same nets, or None where there is none."""
-    graph = timing.graph
-    wanted = [(path.start, path.start_edge), *((s.output, s.edge) for s in path.stages)]
-    node_of = {
-        (int(net), bool(rising)): node
-        for node, (net, rising) in reversed(
-            list(enumerate(zip(graph.net.tolist(), graph.rising.tolist(), strict=True)))
-        )
+    edges = [(path.start, path.start_edge), *((s.output, s.edge) for s in path.stages)]
+    nets = [timing.circuit.net_id(name) for name, _ in edges]
+    wanted = [
+        -1 if net is None else 2 * net + (edge == "rise")
+        for net, (_, edge) in zip(nets, edges, strict=True)
+    ]
+    graph, arcs = timing.graph, leading_arcs(timing)
+    edge_of = 2 * graph.net + graph.rising
+    # Where the brief ignores paths, one edge of a net may be several nodes: follow all of them.
+    ways: dict[int, ArcPath] = {
+        node: () for node in graph.start.tolist() if edge_of[node] == wanted[0]
     }
-    nodes = []
-    for name, edge in wanted:
-        net = timing.circuit.net_id(name)
-        node = None if net is None else node_of.get((net, edge == "rise"))
-        if node is None:
-            return None
-        nodes.append(node)
-    leading = leading_arcs(timing)
-    arc_of = {
-        (int(graph.source[arc]), int(graph.target[arc])): int(arc)
-        for arc in leading[np.isin(graph.target[leading], nodes)]
-    }
-    arcs = [arc_of.get(pair) for pair in pairwise(nodes)]
-    if nodes[0] not in graph.start or nodes[-1] not in graph.end or None in arcs:
-        return None
-    return describe(timing, tuple(arc for arc in arcs if arc is not None))
+    for edge in wanted[1:]:
+        arriving = arcs[edge_of[graph.target[arcs]] == edge].tolist()
+        ways = {
+            int(graph.target[arc]): (*ways[source], arc)
+            for arc in reversed(arriving)
+            if (source := int(graph.source[arc])) in ways
+        }
+    last = next((node for node in graph.end.tolist() if node in ways), None)
+    return None if last is None else describe(timing, ways[last])

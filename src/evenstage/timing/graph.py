@@ -300,9 +300,10 @@ def _input_briefs(
     nets, rising = all_.net[all_.start], all_.rising[all_.start]
     arrival, drive = np.zeros(len(nets)), np.zeros(len(nets))
     transition = np.where(rising, unit.transition_rise, unit.transition_fall)
+    given = brief.inputs if brief else ()
     known = np.union1d(wish.inputs, wish.starts)
-    names = [circuit.devices.net_names[net] for net in known]
-    for some in brief.inputs if brief else ():
+    names = [circuit.devices.net_names[net] for net in known.tolist()] if given else []
+    for some in given:
         chosen = np.isin(nets, known[select(some.nets, names, "input")])
         arrival[chosen] = some.arrival
         drive[chosen] = some.drive
@@ -312,9 +313,11 @@ def _input_briefs(
 
 
 def _required(circuit: Circuit, brief: Brief | None, nets: IntArray) -> FloatArray:
+    """Return the required time of each end, s; NaN where the brief does not say."""
     required = np.full(len(nets), np.nan)
-    names = [circuit.devices.net_names[net] for net in circuit.gate_output]
-    for some in brief.outputs if brief else ():
+    given = brief.outputs if brief else ()
+    names = [circuit.devices.net_names[net] for net in circuit.gate_output] if given else []
+    for some in given:
         if some.required is not None:
             chosen = circuit.gate_output[select(some.nets, names, "driven net")]
             required[np.isin(nets, chosen)] = some.required

@@ -15,10 +15,13 @@ import numpy as np
 from evenstage.pattern import select
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import IntArray
+    from evenstage.pattern import Pattern
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -95,19 +98,26 @@ def _both_edges(nets: IntArray) -> IntArray:
 
 
 def _rules(circuit: Circuit, brief: Brief | None) -> list[_Rule]:
+    every = np.arange(len(circuit.devices.net_names))
+    return [
+        _Rule(
+            _chosen(circuit, ignore.start, every, "net"),
+            _chosen(circuit, ignore.through, every, "net"),
+            _chosen(circuit, ignore.end, circuit.gate_output, "driven net"),
+        )
+        for ignore in (brief.ignores if brief else ())
+    ]
+
+
+def _chosen(
+    circuit: Circuit, patterns: Sequence[Pattern], among: IntArray, what: str
+) -> frozenset[int] | None:
+    """Return the nets that patterns fit; None where there is no pattern."""
+    if not patterns:
+        return None
     names = circuit.devices.net_names
-    rules = []
-    for ignore in brief.ignores if brief else ():
-        chosen: list[frozenset[int] | None] = []
-        for patterns, among, what in (
-            (ignore.start, np.arange(len(names)), "net"),
-            (ignore.through, np.arange(len(names)), "net"),
-            (ignore.end, circuit.gate_output, "driven net"),
-        ):
-            found = select(patterns, [names[net] for net in among.tolist()], what)
-            chosen.append(frozenset(among[found].tolist()) if patterns else None)
-        rules.append(_Rule(*chosen))
-    return rules
+    fitting = select(patterns, [names[net] for net in among.tolist()], what)
+    return frozenset(among[fitting].tolist())
 
 
 def _split(

@@ -11,6 +11,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from itertools import accumulate, islice
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -42,12 +43,15 @@ def edge_name(*, rising: bool) -> Edge:
 def describe(timing: Timing, arcs: ArcPath) -> Path:
     """Describe a path of graph arcs."""
     graph, unit = timing.graph, timing.unit
-    stages = tuple(
-        _stage(timing, arc, following)
-        for arc, following in zip(arcs, [*arcs[1:], None], strict=True)
-    )
     first, last = int(graph.source[arcs[0]]), int(graph.target[arcs[-1]])
     begin = float(timing.start_arrival[np.flatnonzero(graph.start == first)[0]])
+    arrivals = accumulate(timing.delay[list(arcs)].tolist(), initial=begin)
+    stages = tuple(
+        _stage(timing, arc, following, arrival)
+        for arc, following, arrival in zip(
+            arcs, [*arcs[1:], None], islice(arrivals, 1, None), strict=True
+        )
+    )
     logical = math.prod(stage.logical_effort for stage in stages)
     branching = math.prod(stage.branching_effort for stage in stages)
     electrical = math.prod(stage.electrical_effort for stage in stages)
@@ -63,7 +67,7 @@ def describe(timing: Timing, arcs: ArcPath) -> Path:
         end=names[graph.net[last]],
         edge=edge_name(rising=bool(graph.rising[last])),
         corner=unit.process,
-        delay=begin + sum(stage.delay for stage in stages),
+        delay=stages[-1].arrival,
         charged_delay=begin + sum(stage.charged_delay for stage in stages),
         required=float(required[0]) if len(required) and not np.isnan(required[0]) else None,
         logical_effort=logical,
@@ -78,7 +82,7 @@ def describe(timing: Timing, arcs: ArcPath) -> Path:
     )
 
 
-def _stage(timing: Timing, graph_arc: int, following: int | None) -> Stage:
+def _stage(timing: Timing, graph_arc: int, following: int | None, arrival: float) -> Stage:
     circuit, graph, unit = timing.circuit, timing.graph, timing.unit
     arcs, arc = circuit.arcs, int(graph.arc[graph_arc])
     gate, names = int(arcs.gate[arc]), circuit.devices.net_names
@@ -99,7 +103,7 @@ def _stage(timing: Timing, graph_arc: int, following: int | None) -> Stage:
         input=names[arcs.input[arc]],
         output=names[arcs.output[arc]],
         edge=edge_name(rising=rising),
-        arrival=float(timing.arrival[target]),
+        arrival=arrival,
         delay=float(timing.delay[graph_arc]),
         charged_delay=float(timing.charged[graph_arc]),
         transition=float(timing.transition[target]),
@@ -155,8 +159,7 @@ def _load(circuit: Circuit, net: int, follower: int | None) -> _Load:
 
 def _pin_loads(circuit: Circuit, net: int) -> list[tuple[int, SideBranch]]:
     """Return the gate pins on a net, in the order of the gates."""
-    pins, order = circuit.pins, circuit.pins_by_net
-    begin, end = np.searchsorted(pins.net[order], [net, net + 1])
+    pins = circuit.pins
     return [
         (
             gate := int(pins.gate[pin]),
@@ -166,7 +169,7 @@ def _pin_loads(circuit: Circuit, net: int) -> list[tuple[int, SideBranch]]:
                 cap=float(pins.cap.today[pin]),
             ),
         )
-        for pin in order[begin:end].tolist()
+        for pin in circuit.pins_on(net).tolist()
     ]
 
 

@@ -113,7 +113,8 @@ def best_stage_effort(p_inv: float) -> float:
     >>> round(best_stage_effort(1.0), 4)
     3.5911
     """
-    upper = math.exp(2 + p_inv)
+    # The root lies below: beyond e^2 the left side is less than p_inv - rho.
+    upper = math.exp(2) + p_inv
     return float(brentq(lambda rho: p_inv + rho * (1 - math.log(rho)), math.e, upper, xtol=1e-13))
 
 
