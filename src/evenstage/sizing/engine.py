@@ -164,7 +164,7 @@ class Engine:
     ) -> Continuous:
         """Find the least spend for a deadline.
 
-        At the least delay itself sizes on the limiting paths have no room, so they stay what they are.
+        At the least delay itself sizes on the limiting paths have no room: they stay as they are.
         """
         exact = (deadline < fastest.delay * (1 + 2 * _AGREES)) & self._limiting(fastest)
         solution = self._solve(
@@ -239,8 +239,8 @@ class Engine:
     def _bounds(self, limiting: BoolArray) -> tuple[FloatArray, FloatArray]:
         """Return the bounds of all sizes when some are on limiting paths.
 
-        Those move freely. The others may grow where the scope is the block, and shrink only where that
-        is asked for.
+        Those move freely. The others may grow where the scope is the block, and shrink only where
+        that is asked for.
         """
         variables, wishes = self.model.variables, self.wishes
         down = limiting | (variables.free & wishes.reclaim)

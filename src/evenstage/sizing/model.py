@@ -42,8 +42,8 @@ class Limits:
     strict : bool
         Whether a stage that breaks the transition limit today must get better; else it may stay.
     share : float
-        Part of the transition limit that each stage may use. Below 1 where slower inputs would carry
-        stages that may stay beyond the limit.
+        Part of the transition limit that each stage may use. Below 1 where slower inputs would
+        carry stages that may stay beyond the limit.
     """
 
     ceiling_net: IntArray

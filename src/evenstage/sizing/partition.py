@@ -18,15 +18,12 @@ from scipy.sparse.csgraph import connected_components
 
 from evenstage.netlist.sized_block import Slot
 from evenstage.pattern import select
+from evenstage.sizing.named import gates_named
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
-
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
-    from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import IntArray
-    from evenstage.pattern import Pattern
 
 
 @dataclass(frozen=True)
@@ -170,43 +167,3 @@ def _tied_gates(
     first = [group[0] for group in groups for _ in group[1:]]
     second = [gate for group in groups for gate in group[1:]]
     return np.array(first, np.int32), np.array(second, np.int32)
-
-
-def gates_named(circuit: Circuit, patterns: Sequence[Pattern]) -> list[int]:
-    """Return the gates of the transistors that patterns name, see `devices_named`.
-
-    Raises
-    ------
-    SettingsError
-        Where a pattern fits no card.
-    """
-    gates = np.unique(circuit.gate_of_device[devices_named(circuit, patterns)])
-    return [int(gate) for gate in gates if gate >= 0]
-
-
-def devices_named(circuit: Circuit, patterns: Sequence[Pattern]) -> BoolArray:
-    """Tell which transistors patterns name: by their card, or by an instance around it.
-
-    Raises
-    ------
-    SettingsError
-        Where a pattern fits no card.
-    """
-    if not patterns:
-        return np.zeros(len(circuit.devices), bool)
-    devices = circuit.devices
-    paths = [devices.instance_path(i) for i in range(len(devices.instance_parent))]
-    cards = [
-        devices.netlist.card(card).name
-        if not paths[i]
-        else f"{paths[i]}.{devices.netlist.card(card).name}"
-        for card, i in zip(devices.card.tolist(), devices.instance.tolist(), strict=True)
-    ]
-    chosen = np.array(select(patterns, [*paths[1:], *cards], "card"), np.int64)
-    inside = np.zeros(len(paths), bool)
-    inside[1 + chosen[chosen < len(paths) - 1]] = True
-    for instance in range(1, len(paths)):
-        inside[instance] |= inside[devices.instance_parent[instance]]
-    device = inside[devices.instance]
-    device[chosen[chosen >= len(paths) - 1] - (len(paths) - 1)] = True
-    return device

@@ -1,10 +1,10 @@
 """Limits that leave no room, taken out before the optimiser meets them.
 
-A limit is a sum of monomials that must stay at most 1. It is least where the sizes it grows with are
-at their lower bounds and those it falls with at their upper ones. Where even that least value is 1
-(an input drawn with its smallest widths and allowed no more capacitance than it shows), the limit
-forces all its sizes there. An interior point cannot live on such a point, so the sizes are fixed; one
-limit may force the next, hence the repetition.
+A limit is a sum of monomials that must stay at most 1. It is least where the sizes it grows with
+are at their lower bounds and those it falls with at their upper ones. Where even that least value
+is 1 (an input drawn with its smallest widths and allowed no more capacitance than it shows), the
+limit forces all its sizes there. An interior point cannot live on such a point, so the sizes are
+fixed; one limit may force the next, hence the repetition.
 """
 
 from __future__ import annotations
@@ -13,6 +13,8 @@ from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import numpy as np
+
+from evenstage.sizing.problem import totals
 
 if TYPE_CHECKING:
     from evenstage.sizing.problem import FloatArray, Problem
@@ -39,7 +41,7 @@ def _least(problem: Problem) -> FloatArray:
     low, high = np.append(problem.lower, 1.0), np.append(problem.upper, 1.0)
     limit = problem.limit
     value = limit.coefficient * low[limit.plus] / high[limit.minus]
-    return np.bincount(limit.row, value, problem.limits)
+    return totals(limit.row, value, problem.limits)
 
 
 def _fixed(problem: Problem, tight: np.ndarray[tuple[int], np.dtype[np.bool_]]) -> Problem:

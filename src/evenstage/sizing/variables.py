@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.errors import InfeasibleError, Notice
-from evenstage.sizing.partition import devices_named, gates_named
+from evenstage.sizing.named import devices_named, gates_named
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
@@ -143,7 +143,7 @@ def _width_limits(
         if (most := handles[slot].width_max) is not None:
             high[device] = min(high[device], most)
     for limit in brief.limits if brief else ():
-        chosen = devices_named(circuit, limit.cards)
+        chosen = devices_named(devices, limit.cards)
         if limit.width_min is not None:
             low[chosen] = np.maximum(low[chosen], limit.width_min)
         if limit.width_max is not None:
