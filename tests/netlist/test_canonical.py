@@ -21,6 +21,8 @@ TEXTS = st.one_of(
                 b"*.x",
                 b"$",
                 b";",
+                b"/",
+                b"//",
                 b"'",
                 b"{",
                 b"}",
@@ -61,6 +63,8 @@ def test_nothing_is_left_to_do(raw: bytes) -> None:
         (b"m1 w='a\n+ $ b' ; c", b"m1 w='a   $ b'    "),
         (b"m1 a$b c;d $e\n", b"m1 a$b c;d   \n"),
         (b"+ a\nm1\n+$ b\n+c", b"+ a\nm1       c"),
+        (b"m1 a // x\n// y\n+ b//c\n", b"m1 a" + b" " * 13 + b"b//c\n"),
+        (b"m1 w='a // b' //c\n+//d", b"m1 w='a // b'" + b" " * 9),
         (b"\xef\xbb\xbf* A\nM", b"      \nm"),
     ],
 )

@@ -42,6 +42,13 @@ r2 a b
 r3 a b r=1
 c1 a b 'x*2' m=2
 c2 a b 1f mod
+m4 (d g s b) nch w=1u
+m5 d g s b nch off
+m6 d g s b nch w=1u off l=2u
+m7 d g s b nch off=1
+x6 (a b) inv w=1u
+x7 (a b) / inv
+r4 (a b) 1k
 """
 
 WORDS = [
@@ -63,6 +70,7 @@ WORDS = [
         "+5",
         "*",
     ),
+    *("off", "offset", "//x", "a//b", "(", ")", "(a", "b)"),
     *("a:", ":", "::b", "q::r", "\xe9t\xe9", "\xa0", "\x85x", "a\x0cb"),
 ]
 VALUES = [
@@ -89,6 +97,8 @@ GAPS = [
     "\n+",
     "\r\n  +\t",
     " $ note\n+ ",
+    " // note\n+ ",
+    "\n//it's\n+//x\n+ ",
     "\n* it's\n\n+ ",
     "\r+",
     "\n+$x\n+ ",
@@ -101,6 +111,8 @@ ENDS = [
     "\r\n",
     "\r",
     " $ end\n",
+    " //end\n",
+    "// end\n",
     "; end\n",
     " ; it's\n",
     "\n\n",
@@ -127,12 +139,21 @@ def random_card(pick: random.Random) -> str:
 def tame_card(pick: random.Random) -> str:
     """Return a card that is most likely right."""
     nodes = " ".join(pick.choice(WORDS[:13]) for _ in range(4))
-    pairs = [f"{k}={pick.choice(VALUES[:9])}" for k in pick.choice(["", "w", "wl", "lw", "wlm"])]
+    if pick.random() < 0.2:
+        nodes = pick.choice(["(%s)", "( %s )", "(%s)\n+ "]) % nodes
+    names = pick.choice(["", "w", "wl", "lw", "wlm", ["w", "off"]])
+    pairs = [f"{k}={pick.choice(VALUES[:9])}" for k in names]
     gap = pick.choice(GAPS[:10])
     tail = gap.join(["", *pairs]) + pick.choice(ENDS)
     return (
         pick.choice(
-            [f"m1 {nodes} nch", f"x1 {nodes} inv", f"x1 {nodes} / inv", f"x1 {nodes} inv params:"]
+            [
+                f"m1 {nodes} nch",
+                f"m1 {nodes} nch off",
+                f"x1 {nodes} inv",
+                f"x1 {nodes} / inv",
+                f"x1 {nodes} inv params:",
+            ]
         )
         + tail
     )
@@ -157,6 +178,8 @@ def by_grammar(source: SourceText) -> list[Card] | None:
     table = CardTable()
     table.begin_segment(source, canonical(source.data), "")
     for child in tree.children:
+        if isinstance(child, Tree) and child.data == "foreign":
+            return None
         if isinstance(child, Tree) and child.data in ELEMENTS:
             table.append_odd(statement_of(child))
     return [table[number] for number in range(len(table))]

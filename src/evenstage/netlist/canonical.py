@@ -151,7 +151,8 @@ class _Lines:
     def _double_slashes(self) -> Indices:
         """Return where two slashes stand together."""
         places = self._places("/")
-        return places[self.view[places + 1] == _SLASH]
+        double: Indices = places[self.view[places + 1] == _SLASH]
+        return double
 
     def _cards_with_quotes(self) -> Mask:
         """Tell for each line whether the card that begins there holds a quote."""

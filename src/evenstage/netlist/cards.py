@@ -276,7 +276,7 @@ def _fields_of_statement(statement: Statement, source: SourceText) -> list[Field
                 fields.append(("value", *marks[position + 2][1:]))
             position += 3
             continue
-        if mark.terminal not in {"SLASH", "PARAMS", "EQUAL", "OPEN", "CLOSE", "ODD"}:
+        if mark.terminal not in {"SLASH", "PARAMS", "EQUAL", "OPEN", "CLOSE", "ODD", "OFF"}:
             nodes = sum(role == "node" for role, *_ in fields)
             before = marks[position - 1].terminal
             fields.append((_loose_role(letter, nodes, wanted, before), mark.start, mark.end))

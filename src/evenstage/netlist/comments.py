@@ -16,7 +16,7 @@ BYTE_ORDER_MARK: Final = b"\xef\xbb\xbf"
 _LINE_END: Final = re.compile(rb"\r\n|\n|\r")
 _CONTINUATION: Final = re.compile(rb"[ \t]*\+")
 #: A blank line or a comment line, as may stand between a card and its continuation.
-_GAP: Final = re.compile(rb"[ \t]*(?:[*$;]|[\r\n]|\Z)")
+_GAP: Final = re.compile(rb"[ \t]*(?:[*$;]|//|[\r\n]|\Z)")
 _CONTROL: Final = re.compile(r"[\x00-\x1f\x7f\x85\u2028\u2029]+")
 
 

@@ -21,7 +21,8 @@ if TYPE_CHECKING:
     from evenstage.source import SourceText
 
 _WORD: Final = re.compile(rb"[^\x00-\x20=,()'\"{}]+")
-_JOINT: Final = re.compile(rb"(?:[\r\n][^\S\r\n]*(?:[*$;][^\r\n]*)?)*[\r\n][^\S\r\n]*\+")
+_JOINT: Final = re.compile(rb"(?:[\r\n][^\S\r\n]*(?:(?:[*$;]|//)[^\r\n]*)?)*[\r\n][^\S\r\n]*\+")
+_NUMBER: Final = re.compile(rb"[0-9.]+[a-z]*(?:[\x00-\x20]|\Z)", re.IGNORECASE)
 _CLOSING: Final = {"'": "'", '"': '"', "{": "}"}
 
 _TWO_NETS: Final = (2, "two nets and a value")
@@ -37,6 +38,9 @@ _DOT_CARDS: Final = {
     ".include": ("missing-file", "the name of a file"),
     ".lib": ("missing-file", "a file and a section, or the name of a section"),
     ".model": ("missing-name", "a name and a type"),
+    ".if": ("missing-condition", "a condition"),
+    ".elseif": ("missing-condition", "a condition"),
+    ".func": ("missing-name", "a name, its arguments in brackets and an expression"),
 }
 
 #: What only the other languages found behind the same file endings have.
@@ -117,8 +121,13 @@ def _other_language(refusal: _Refusal) -> NetlistError | None:
     foreign = _FOREIGN.search(refusal.source.data)
     if foreign is None:
         return None
+    return foreign_card(Span(refusal.source, *foreign.span(1)))
+
+
+def foreign_card(word: Span) -> NetlistError:
+    """Return the error for a card of another language, by its first word."""
     message = "this does not look like a SPICE netlist"
-    return refusal.error("other-language", message, *foreign.span(1))
+    return NetlistError(message, code="other-language", span=word)
 
 
 def _bad_beginning(refusal: _Refusal) -> NetlistError | None:
@@ -152,7 +161,7 @@ def _unclosed_quote(refusal: _Refusal) -> NetlistError | None:
 
 def _wrong_word_count(refusal: _Refusal) -> NetlistError | None:
     """Too few words before the parameters, or too many on an M card."""
-    if refusal.letter not in _NEEDED or refusal.sign in {*"()'\"{}"} - {""}:
+    if refusal.letter not in _NEEDED or refusal.sign in {*"('\"{}"} - {""}:
         return None
     needed, usage = _NEEDED[refusal.letter]
     (start, end), *words = refusal.words
@@ -161,7 +170,10 @@ def _wrong_word_count(refusal: _Refusal) -> NetlistError | None:
     message = f"'{refusal.text(start, end)}' needs {usage}, got {counted(len(words), 'word')}"
     if len(words) < needed:
         return refusal.error("missing-node", message, start, words[-1][1] if words else end)
-    return refusal.error("loose-word", message, words[needed][0], words[-1][1])
+    first, last = words[needed][0], words[-1][1]
+    named = _NUMBER.match(refusal.source.data, first)
+    hint = "sizes need names, as in w=1u l=60n" if named else "further pins are not understood"
+    return refusal.error("loose-word", f"{message}; {hint}", first, last)
 
 
 def _missing_value(refusal: _Refusal) -> NetlistError | None:

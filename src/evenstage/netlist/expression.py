@@ -9,7 +9,7 @@ import math
 import operator
 from dataclasses import dataclass
 from functools import lru_cache
-from typing import TYPE_CHECKING, Protocol
+from typing import TYPE_CHECKING, Protocol, Self
 
 from lark import Token, Transformer
 from lark.exceptions import UnexpectedEOF, UnexpectedInput, VisitError
@@ -79,6 +79,39 @@ class Call:
         return self.function(*(a.value(lookup) for a in self.arguments))
 
 
+class Application(str):
+    """The name of a function the netlist defines, and the values of its arguments.
+
+    It is looked up like a parameter; ``()`` behind its name tells it from one.
+    """
+
+    __slots__ = ("arguments",)
+    arguments: tuple[float, ...]
+
+    def __new__(cls, name: str, arguments: tuple[float, ...]) -> Self:
+        """Return the name as a key with its arguments."""
+        self = super().__new__(cls, f"{name}()")
+        self.arguments = arguments
+        return self
+
+    @property
+    def name(self) -> str:
+        """The function's lower-case name."""
+        return self.removesuffix("()")
+
+
+@dataclass(frozen=True, slots=True)
+class OwnCall:
+    """A function that the netlist may define."""
+
+    name: str
+    arguments: tuple[Node, ...]
+
+    def value(self, lookup: Callable[[str], float]) -> float:
+        """Return the function's value, which ``lookup`` gives."""
+        return lookup(Application(self.name, tuple(a.value(lookup) for a in self.arguments)))
+
+
 @dataclass(frozen=True, slots=True)
 class Chain:
     """Operators of one rank, applied from the left."""
@@ -124,7 +157,10 @@ class Choice:
 
 @dataclass(frozen=True, slots=True)
 class Formula:
-    """A parsed expression and the lower-case names of the parameters it uses."""
+    """A parsed expression and the lower-case names of the parameters it uses.
+
+    Of functions that only the netlist can define the names stand among them, with ``()`` behind.
+    """
 
     root: Node
     names: frozenset[str]
@@ -252,12 +288,13 @@ class _Builder(Transformer[Token, Node]):
         return Name(name)
 
     def call(self, children: list[Token | Node]) -> Node:
-        """Return a call of a known function."""
+        """Return a call of a function."""
         name, *arguments = children
         assert isinstance(name, Token)
         known = FUNCTIONS.get(name.lower())
         if known is None:
-            raise FormulaError(f"uses the unknown function '{name}'", name.start_pos)
+            self.names.add(f"{name.lower()}()")
+            return OwnCall(name.lower(), tuple(arguments))
         function, least, most = known
         if len(arguments) < least or (most is not None and len(arguments) > most):
             wanted = (

@@ -38,7 +38,7 @@ class Library:
         self.netlist = netlist
         self.process = process
         self.models = Models(netlist, process)
-        self.globals = Scope(assignments=netlist.top.assignments)
+        self.globals = Scope(assignments=netlist.top.assignments, functions=netlist.functions)
         self.width_parameters = frozenset(t.width_parameter.lower() for t in process.transistors)
         own = sorted(self.width_parameters)
         own += [t.fingers_parameter.lower() for t in process.transistors if t.fingers_parameter]

@@ -10,6 +10,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterator, Mapping, Sequence
 
     from evenstage.errors import Notice
+    from evenstage.netlist.functions import Function
     from evenstage.source import SourceText, Span
 
 
@@ -204,6 +205,8 @@ class Netlist:
         By lower-case name.
     global_names : tuple of str
         Nets declared by ``.global``, as written.
+    functions : Mapping of str to Function
+        Defined by ``.func`` and ``.param`` cards, by lower-case name.
     options : Mapping of str to float
         Numeric ``.option`` values by lower-case name, ``scale`` among them.
     notices : tuple of Notice
@@ -215,6 +218,7 @@ class Netlist:
     top: Subcircuit
     models: Mapping[str, ModelCard]
     global_names: tuple[str, ...]
+    functions: Mapping[str, Function]
     options: Mapping[str, float]
     notices: tuple[Notice, ...]
     _cards: CardStore = field(repr=False)

@@ -5,13 +5,14 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from evenstage.errors import ElaborationError
-from evenstage.netlist.expression import FormulaError
+from evenstage.netlist.expression import Application, FormulaError
 from evenstage.netlist.values import parse_value
 from evenstage.netlist.wording import nearest
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Iterable, Mapping
 
+    from evenstage.netlist.functions import Function
     from evenstage.netlist.netlist import Parameter
     from evenstage.netlist.values import Value
     from evenstage.source import Span
@@ -37,6 +38,8 @@ class Scope:
         What the caller gives; masks the defaults.
     outer : Scope, optional
         The global parameters.
+    functions : Mapping of str to Function
+        By lower-case name; the global ones count everywhere.
     """
 
     def __init__(
@@ -45,7 +48,9 @@ class Scope:
         assignments: Iterable[Parameter] = (),
         passed: Mapping[str, float] | None = None,
         outer: Scope | None = None,
+        functions: Mapping[str, Function] | None = None,
     ) -> None:
+        self._functions = functions or {}
         self._parameters = {p.name: p for p in (*defaults, *assignments)}
         masking = {p.name for p in assignments}
         self._values = {k: v for k, v in (passed or {}).items() if k not in masking}
@@ -59,7 +64,7 @@ class Scope:
             try:
                 self.lookup(name)
             except (FormulaError, ElaborationError):
-                self._active.clear()
+                continue
 
     def lookup(self, name: str) -> float:
         """Return the value of a parameter by lower-case name.
@@ -74,20 +79,47 @@ class Scope:
         known = self._values.get(name)
         if known is not None:
             return known
+        if isinstance(name, Application):
+            return self._applied(name)
         parameter = self._parameters.get(name)
         if parameter is None:
             if self._outer is None:
                 raise _UndefinedError(name)
             return self._outer.lookup(name)
+        value = self._guarded(name, parameter.span, lambda: self._own(parameter))
+        self._values[name] = value
+        return value
+
+    def _guarded(self, name: str, span: Span, evaluate: Callable[[], float]) -> float:
+        """Evaluate something that must not need itself."""
         if name in self._active:
             loop = " -> ".join([*self._active[self._active.index(name) :], name])
             message = f"the value of '{name}' depends on itself: {loop}"
-            raise ElaborationError(message, code="circular-parameter", span=parameter.span)
+            raise ElaborationError(message, code="circular-parameter", span=span)
         self._active.append(name)
-        value = self._own(parameter)
-        self._active.pop()
-        self._values[name] = value
-        return value
+        try:
+            return evaluate()
+        finally:
+            self._active.pop()
+
+    def _applied(self, application: Application) -> float:
+        """Return the value of a function the netlist defines."""
+        if self._outer is not None:
+            return self._outer.lookup(application)
+        function = self._functions.get(application.name)
+        if function is None:
+            raise FormulaError(f"uses the unknown function '{application.name}'")
+        given, taken = len(application.arguments), len(function.arguments)
+        if given != taken:
+            raise FormulaError(
+                f"gives {given} arguments to '{application.name}', which takes {taken}"
+            )
+        passed = dict(zip(function.arguments, application.arguments, strict=True))
+        inner = Scope(passed=passed, outer=self)
+        span = function.span
+        return self._guarded(
+            str(application), span, lambda: inner.evaluate(function.text, lambda: span)
+        )
 
     def _own(self, parameter: Parameter) -> float:
         # A default such as w=w takes the global parameter of the same name.

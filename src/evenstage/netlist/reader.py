@@ -7,8 +7,13 @@ from contextlib import suppress
 from typing import TYPE_CHECKING, Final
 
 from evenstage.errors import ElaborationError, NetlistError, Notice
+from evenstage.netlist.branches import Branches
 from evenstage.netlist.canonical import BOM, canonical
-from evenstage.netlist.cards import CardTable, parameter
+from evenstage.netlist.cards import CardTable, parameter, plain_text
+from evenstage.netlist.complaints import foreign_card
+from evenstage.netlist.conditions import holds
+from evenstage.netlist.expression import FUNCTIONS
+from evenstage.netlist.functions import Function, read_function
 from evenstage.netlist.grammar import ENCODING, terminal
 from evenstage.netlist.includes import Includes, section_range
 from evenstage.netlist.netlist import ModelCard, Netlist
@@ -58,6 +63,8 @@ class Reader:
         self._met: dict[tuple[str, ...], int] = {}
         self._models: dict[str, tuple[str, str, tuple[Parameter, ...], Span]] = {}
         self._globals: dict[str, str] = {}
+        self._functions: dict[str, Function] = {}
+        self._branches = Branches(self._holds)
         self._options: list[Parameter] = []
         self._unknown: dict[str, tuple[int, Span]] = {}
         self._notices: list[Notice] = []
@@ -96,7 +103,7 @@ class Reader:
 
     def _read_range(self, unit: Unit, position: int, end: int) -> None:
         """Read the cards of part of a file, up to its ``.end``."""
-        depth = self._scopes.depth
+        depth, conditions = self._scopes.depth, self._branches.depth
         self._begin_segment(unit)
         text, table, learned = unit.text, self._table, self._learned
         skipped = _SKIP.match(text, position)
@@ -114,6 +121,7 @@ class Reader:
                     break
             else:
                 position = self._read_card(unit, position, end)
+        self._branches.check_closed(conditions)
         self._scopes.check_closed(depth)
         self._scopes.check_not_below(depth, unit.source)
 
@@ -148,6 +156,8 @@ class Reader:
         if statement.rule == "ends":
             self._take_ends(unit, statement, line_end)
             return line_end
+        if statement.rule == "branch":
+            return self._take_branch(unit, statement, range(line_end, end))
         if statement.rule == "library" and len(statement.marks) == 2:
             return section_range(unit.source, unit.text, unit.span(statement.marks[1])).stop
         _DOT_CARDS[statement.rule](self, unit, statement)
@@ -191,7 +201,35 @@ class Reader:
         self._begin_segment(unit)
 
     def _take_assignments(self, unit: Unit, statement: Statement) -> None:
-        self._scopes.assign(_pairs(unit, statement.marks))
+        marks = statement.marks
+        self._scopes.assign(_pairs(unit, marks))
+        for i, mark in enumerate(marks):
+            if mark.terminal == "OPEN":
+                close = next(j for j in range(i, len(marks)) if marks[j].terminal == "CLOSE")
+                self._define(Span(unit.source, marks[i - 1].start, marks[close + 2].end))
+
+    def _take_function(self, unit: Unit, statement: Statement) -> None:
+        marks = statement.marks
+        self._define(Span(unit.source, marks[1].start, marks[-1].end))
+
+    def _define(self, words: Span) -> None:
+        function = read_function(plain_text(words), words)
+        self._functions[function.name] = function
+        if function.name in FUNCTIONS:
+            message = f"'{function.name}' is a function already, and keeps its meaning"
+            self._notices.append(Notice("function-kept", message, words.place, (function.name,)))
+
+    def _take_branch(self, unit: Unit, statement: Statement, after: range) -> int:
+        """Read or pass over what a condition holds."""
+        word, *rest = statement.marks
+        condition = Span(unit.source, rest[0].start, rest[-1].end) if rest else None
+        return self._branches.take(unit.span(word), condition, unit.text, after)
+
+    def _holds(self, condition: Span) -> bool:
+        return holds(condition, self._scopes.assignments, self._functions)
+
+    def _take_foreign(self, unit: Unit, statement: Statement) -> None:
+        raise foreign_card(unit.span(statement.marks[0]))
 
     def _take_model(self, unit: Unit, statement: Statement) -> None:
         marks = statement.marks
@@ -237,8 +275,9 @@ class Reader:
     def finish(self) -> Netlist:
         """Return what was read."""
         top = self._scopes.finish(len(self._table))
+        scope = Scope(assignments=top.assignments, functions=self._functions)
         models = {
-            key: ModelCard(name, kind, _values(parameters, top.assignments), span)
+            key: ModelCard(name, kind, _values(parameters, scope), span)
             for key, (name, kind, parameters, span) in self._models.items()
         }
         return Netlist(
@@ -247,7 +286,8 @@ class Reader:
             top=top,
             models=models,
             global_names=tuple(self._globals.values()),
-            options=_values(tuple(self._options), top.assignments),
+            functions=self._functions,
+            options=_values(tuple(self._options), scope),
             notices=(*self._notices, *self._scopes.notices, *self._unknown_notices()),
             _cards=self._table,
         )
@@ -267,6 +307,8 @@ _DOT_CARDS: Final = {
     "option": Reader._take_option,  # noqa: SLF001
     "include": Reader._take_include,  # noqa: SLF001
     "library": Reader._take_library,  # noqa: SLF001
+    "function": Reader._take_function,  # noqa: SLF001
+    "foreign": Reader._take_foreign,  # noqa: SLF001
     "endl": Reader._take_other,  # noqa: SLF001
     "other": Reader._take_other,  # noqa: SLF001
 }
@@ -332,15 +374,12 @@ def _pairs(unit: Unit, marks: tuple[Mark, ...]) -> tuple[Parameter, ...]:
     return tuple(
         parameter(unit.span(marks[i - 1]), unit.span(marks[i + 1]))
         for i, mark in enumerate(marks)
-        if mark.terminal == "EQUAL" and 0 < i < len(marks) - 1
+        if mark.terminal == "EQUAL" and 0 < i < len(marks) - 1 and marks[i - 1].terminal != "CLOSE"
     )
 
 
-def _values(
-    parameters: tuple[Parameter, ...], assignments: tuple[Parameter, ...]
-) -> dict[str, float]:
+def _values(parameters: tuple[Parameter, ...], scope: Scope) -> dict[str, float]:
     """Return the parameters that have a number; the others mean nothing to us."""
-    scope = Scope(assignments=assignments)
     values = {}
     for one in parameters:
         with suppress(ElaborationError):

@@ -77,6 +77,12 @@ class Scopes:
         """How many definitions are open."""
         return len(self._stack) - 1
 
+    @property
+    def assignments(self) -> tuple[Sequence[Parameter], frozenset[str]]:
+        """The parameters of the top level so far, and the names that open definitions mask."""
+        inner = [p for one in self._stack[1:] for p in (*one.defaults, *one.assignments)]
+        return self._stack[0].assignments, frozenset(p.name for p in inner)
+
     def assign(self, parameters: tuple[Parameter, ...]) -> None:
         """Take the parameters of a ``.param`` card."""
         self._stack[-1].assignments.extend(parameters)

@@ -27,7 +27,9 @@ _BETWEEN: Final = r"[\x00-\x09\x0b-\x20,]*+"
 _BETWEEN_WORDS: Final = r"[\x00-\x09\x0b-\x20,]++"
 _END: Final = r"(?:\n[\x00-\x20,]*+|\Z)"
 _LEARNABLE: Final = frozenset({"transistor", "call", "passive"})
-_SIGNS: Final = frozenset({"EQUAL", "SLASH", "PARAMS"})
+_SIGNS: Final = frozenset({"EQUAL", "SLASH", "PARAMS", "OPEN", "CLOSE", "OFF"})
+#: After these a call's next word is the subcircuit.
+_BEFORE_TARGET: Final = frozenset({"/", r"\)"})
 _QUANTIFIER = re.compile(r"(?<=[\])])(?:[*+]|\?)(?![+?])")
 
 
@@ -108,13 +110,12 @@ def _pieces(statement: Statement, text: bytes) -> list[_Piece]:
     marks = statement.marks
     pieces = [_Piece(_possessive(marks[0].terminal), "name")]
     position = 1
-    slashed = any(mark.terminal == "SLASH" for mark in marks)
     while position < len(marks):
         mark = marks[position]
-        if mark.terminal == "WORD" and _is_key(marks, position):
+        if _is_key(marks, position):
             name = text[mark.start : mark.end]
             pieces.append(_Piece(re.escape(name.decode(ENCODING)), "key", name.decode(ENCODING)))
-        elif mark.terminal == "WORD" and statement.rule == "call" and pieces[-1].pattern != "/":
+        elif _begins_run(statement.rule, mark, pieces[-1]):
             while marks[position + 1 : position + 2] and _continues_run(marks, position + 1):
                 position += 1
             word = _possessive("WORD")
@@ -122,7 +123,7 @@ def _pieces(statement: Statement, text: bytes) -> list[_Piece]:
         elif mark.terminal in _SIGNS:
             pieces.append(_Piece(terminal(mark.terminal), None))
         else:
-            role = _role(statement.rule, position, pieces[-1], slashed=slashed)
+            role = _role(statement.rule, pieces)
             pieces.append(_Piece(_possessive(mark.terminal), role))
         position += 1
     return pieces
@@ -136,14 +137,19 @@ def _continues_run(marks: tuple[Mark, ...], position: int) -> bool:
     return marks[position].terminal == "WORD" and not _is_key(marks, position)
 
 
-def _role(rule: str, position: int, before: _Piece, *, slashed: bool) -> Role:
-    if before.pattern == "=":
+def _begins_run(rule: str, mark: Mark, before: _Piece) -> bool:
+    return mark.terminal == "WORD" and rule == "call" and before.pattern not in _BEFORE_TARGET
+
+
+def _role(rule: str, before: list[_Piece]) -> Role:
+    if before[-1].pattern == "=":
         return "value"
-    if slashed:
+    if rule == "call":
         return "target"
+    nodes = sum(piece.role == "node" for piece in before)
     if rule == "transistor":
-        return "node" if position <= 4 else "target"
-    return "node" if position <= 2 else "argument"
+        return "node" if nodes < 4 else "target"
+    return "node" if nodes < 2 else "argument"
 
 
 def _agrees(shape: Shape, statement: Statement, text: bytes) -> bool:
