@@ -11,6 +11,8 @@ if TYPE_CHECKING:
 
 _LINE_END = re.compile(r"[\r\n]")
 _TAB = 8
+#: How many mistakes of one run are told.
+_TOLD = 20
 #: Longest line shown whole, and how much of a longer one stands before the cause.
 _WIDTH = 100
 _LEAD = 40
@@ -57,6 +59,27 @@ class NetlistError(EvenstageError):
 
 class ElaborationError(EvenstageError):
     """The cards do not fit together."""
+
+
+class MistakesError(ElaborationError):
+    """Several mistakes that are told together.
+
+    Parameters
+    ----------
+    errors : tuple of ElaborationError
+        In the order of the text.
+    """
+
+    def __init__(self, errors: tuple[ElaborationError, ...]) -> None:
+        codes = {error.code for error in errors}
+        code = codes.pop() if len(codes) == 1 else "several-mistakes"
+        super().__init__(f"{len(errors)} mistakes", code=code, span=errors[0].span)
+        self.errors = errors
+
+    def __str__(self) -> str:
+        shown = [str(error) for error in self.errors[:_TOLD]]
+        more = len(self.errors) - _TOLD
+        return "\n\n".join([*shown, *([f"and {more} more"] if more > 0 else [])])
 
 
 class CircuitError(EvenstageError):

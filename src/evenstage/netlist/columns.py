@@ -8,7 +8,9 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.errors import MistakesError
 from evenstage.netlist.expression import FormulaError
+from evenstage.netlist.mistakes import MOST, Mistakes
 from evenstage.netlist.parameters import bad_value
 from evenstage.netlist.values import Style, parse_value
 
@@ -17,6 +19,7 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
+    from evenstage.errors import ElaborationError
     from evenstage.netlist.devices import FloatArray
     from evenstage.netlist.netlist import CardGroup, Netlist, Parameter
     from evenstage.netlist.parameters import Scope
@@ -65,8 +68,13 @@ class Column:
         if not self.formulas:
             return self
         numbers = self.numbers.copy()
+        mistakes = Mistakes()
         for row, text in self.formulas:
-            numbers[row] = scope.evaluate(text, partial(where, row))
+            with mistakes.collecting():
+                numbers[row] = scope.evaluate(text, partial(where, row))
+            if len(mistakes) >= MOST:
+                break
+        mistakes.check()
         return Column(numbers, self.styles)
 
     def in_order(self, order: NDArray[np.intp]) -> Column:
@@ -95,21 +103,26 @@ def parsed(texts: Sequence[bytes], where: Callable[[int], Span], first_row: int 
     try:
         pairs = np.array(list(map(_NUMBERS.__getitem__, texts)), np.complex128)
     except FormulaError:
-        raise _first_error(texts, where) from None
+        raise _error(texts, where) from None
     styles = pairs.imag.astype(np.int8)
     computed = np.flatnonzero(styles == Style.COMPUTED).tolist()
     formulas = ((first_row + i, texts[i].decode("utf-8", "surrogateescape")) for i in computed)
     return Column(pairs.real.copy(), styles, tuple(formulas))
 
 
-def _first_error(texts: Sequence[bytes], where: Callable[[int], Span]) -> Exception:
-    for row, text in enumerate(texts):
-        written = text.decode("utf-8", "surrogateescape")
-        try:
-            parse_value(written)
-        except FormulaError as error:
-            return bad_value(written, error, where(row))
-    raise AssertionError(texts)
+def _error(texts: Sequence[bytes], where: Callable[[int], Span]) -> ElaborationError:
+    """Return what is wrong with some texts, one of which at least is no value."""
+    found = [error for row, text in enumerate(texts) if (error := _bad(text, partial(where, row)))]
+    return found[0] if len(found) == 1 else MistakesError(tuple(found[:MOST]))
+
+
+def _bad(text: bytes, where: Callable[[], Span]) -> ElaborationError | None:
+    written = text.decode("utf-8", "surrogateescape")
+    try:
+        parse_value(written)
+    except FormulaError as error:
+        return bad_value(written, error, where())
+    return None
 
 
 def joined(columns: Iterable[Column]) -> Column:

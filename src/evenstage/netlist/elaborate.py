@@ -79,6 +79,7 @@ class _Block:
         self._netlist = library.netlist
         self._definitions = library.reachable(name)
         self._templates, callees = _bound(library, name, self._definitions)
+        library.mistakes.check()
         self._global_names = self._globals_used()
         keys = [_key(name) for name in self._global_names]
         self._flat = flatten(self._templates, callees, keys)

@@ -16,6 +16,7 @@ import numpy as np
 
 from evenstage.errors import ElaborationError, Notice
 from evenstage.netlist.columns import Column, absent, value_span
+from evenstage.netlist.mistakes import MOST, Mistakes
 from evenstage.netlist.values import Style
 from evenstage.units import engineering
 
@@ -103,6 +104,7 @@ class _Sizes:
         self._type = types[drawn.model] if len(types) else np.zeros(0, np.int32)
         self._met = np.unique(self._type).tolist()
         self._notices: list[Notice] = []
+        self._mistakes = Mistakes(netlist.sources)
         self._width = self._by_type(lambda t: t.width_parameter.lower())
         self._length = drawn.column("l")
         self._units = self._units_by_style()
@@ -186,7 +188,7 @@ class _Sizes:
     def geometry(self) -> Geometry:
         """Return all of them."""
         fingers = self._fingers()
-        return Geometry(
+        sizes = Geometry(
             width=self._widths(fingers),
             length=self._lengths(),
             multiplier=self._counts("m") * self._counts("mult"),
@@ -197,6 +199,8 @@ class _Sizes:
             source_edge=self._metres(self._drawn.column("ps")),
             notices=tuple(self._notices),
         )
+        self._mistakes.check()
+        return sizes
 
     def _widths(self, fingers: FloatArray) -> FloatArray:
         width = self._metres(self._width)
@@ -205,7 +209,7 @@ class _Sizes:
         missing = np.isnan(width)
         width[missing] = self._netlist.options.get("defw", np.nan)
         self._refuse(np.isnan(width), self._missing_width)
-        self._refuse(~(width > 0), self._bad_width)
+        self._refuse(width <= 0, self._bad_width)
         each = self._rows_where(lambda t: t.width_is == "finger")
         return np.where(each, width * fingers, width)
 
@@ -253,9 +257,10 @@ class _Sizes:
 
     def _refuse(self, rows: NDArray[np.bool_], error: Callable[[int], ElaborationError]) -> None:
         if rows.any():
-            # The card that comes first in the text, whichever definition was elaborated first.
             bad = np.flatnonzero(rows)
-            raise error(int(bad[np.argmin(self._drawn.card[bad])]))
+            _, firsts = np.unique(self._drawn.card[bad], return_index=True)
+            for row in bad[firsts[:MOST]].tolist():
+                self._mistakes.add(error(row))
 
     def _transistor(self, row: int) -> Transistor:
         return self._process.transistors[int(self._type[row])]

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from evenstage.errors import ElaborationError, Notice
+from evenstage.netlist.mistakes import MOST, Mistakes
 from evenstage.netlist.outline import Outline, OutlineBuilder
 from evenstage.netlist.parameters import Scope
 from evenstage.netlist.polarity import Models
@@ -45,10 +46,12 @@ class Library:
         names = tuple(dict.fromkeys((*_GEOMETRY, *own)))
         self._sizes = _SIZES | set(own)
         self._outlines: dict[str, Outline] = {}
-        self._builder = OutlineBuilder(netlist, self, names)
+        self.mistakes = Mistakes(netlist.sources)
+        self._builder = OutlineBuilder(netlist, self, names, self.mistakes)
         self._binder = Binder(self)
         self._templates: dict[Key, Template] = {}
         self._covered: dict[str, bool] = {}
+        self._missing: set[str] = set()
 
     def outline(self, name: str) -> Outline:
         """Return the outline of a definition by lower-case name; empty: the top level."""
@@ -113,7 +116,7 @@ class Library:
         Raises
         ------
         ElaborationError
-            If a definition is missing or calls itself.
+            If a definition is missing or calls itself, or a value on a card cannot be read.
         """
         order: list[str] = []
         done: set[str] = set()
@@ -129,18 +132,22 @@ class Library:
                 path.append(name)
                 stack.append((name, True))
                 stack += [(callee, False) for callee in self._callees(name, path)]
+        self.mistakes.check()
         return order[::-1]
 
     def _callees(self, name: str, path: list[str]) -> list[str]:
         callees: dict[str, None] = {}
         for call in self.outline(name).calls:
-            if call.target in callees:
+            if call.target in callees or call.target in self._missing:
                 continue
             if call.target not in self.netlist.subcircuits:
-                raise self._unknown(call.card)
-            if call.target in path:
-                raise self._recursive(call.card, path[path.index(call.target) :])
-            callees[call.target] = None
+                self._missing.add(call.target)
+                if len(self._missing) < MOST:
+                    self.mistakes.add(self._unknown(call.card))
+            elif call.target in path:
+                self.mistakes.add(self._recursive(call.card, path[path.index(call.target) :]))
+            else:
+                callees[call.target] = None
         return list(callees)
 
     def _unknown(self, number: int) -> ElaborationError:

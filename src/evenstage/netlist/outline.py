@@ -12,15 +12,17 @@ from typing import TYPE_CHECKING, Literal, NamedTuple, Protocol
 import numpy as np
 
 from evenstage.errors import ElaborationError
-from evenstage.netlist.columns import Column, group_column, joined
+from evenstage.netlist.columns import Column, absent, group_column, joined
 from evenstage.netlist.expression import FormulaError
+from evenstage.netlist.mistakes import MOST
 from evenstage.netlist.values import parse_value
 
 if TYPE_CHECKING:
     from collections.abc import Collection, Iterable, Mapping, Sequence
 
     from evenstage.netlist.devices import IntArray
-    from evenstage.netlist.netlist import CardGroup, Netlist, Subcircuit
+    from evenstage.netlist.mistakes import Mistakes
+    from evenstage.netlist.netlist import Card, CardGroup, Netlist, Subcircuit
 
 
 class Call(NamedTuple):
@@ -158,8 +160,11 @@ class _Nets:
 class _RowsBuilder:
     """Collects groups of cards of one kind."""
 
-    def __init__(self, netlist: Netlist, pins: int, names: Sequence[str]) -> None:
+    def __init__(
+        self, netlist: Netlist, pins: int, names: Sequence[str], mistakes: Mistakes
+    ) -> None:
         self._netlist = netlist
+        self._mistakes = mistakes
         self._columns: dict[str, list[Column]] = {name: [] for name in names}
         self._count = 0
         self._cards = [np.zeros(0, np.int32)]
@@ -170,7 +175,10 @@ class _RowsBuilder:
     def add(self, group: CardGroup, nets: IntArray) -> None:
         """Take a group of cards and their nets, shape ``(pins, n)``."""
         for name, parts in self._columns.items():
-            parts.append(group_column(self._netlist, group, name, self._count))
+            column = absent(len(group.numbers))
+            with self._mistakes.collecting():
+                column = group_column(self._netlist, group, name, self._count)
+            parts.append(column)
         self._count += len(group.numbers)
         self._cards.append(np.array(group.numbers, np.int32))
         self._nets.append(nets)
@@ -207,22 +215,26 @@ class OutlineBuilder:
         Tells transistors among the X cards.
     geometry : sequence of str
         Parameters of transistors that are wanted.
+    mistakes : Mistakes
+        Takes the values that cannot be read and the transistors that lack a net; an outline goes on
+        without them.
     """
 
-    def __init__(self, netlist: Netlist, classifier: Classifier, geometry: Sequence[str]) -> None:
+    def __init__(
+        self,
+        netlist: Netlist,
+        classifier: Classifier,
+        geometry: Sequence[str],
+        mistakes: Mistakes,
+    ) -> None:
         self._netlist = netlist
         self._classifier = classifier
         self._geometry = geometry
+        self._mistakes = mistakes
 
     def outline(self, subcircuit: Subcircuit) -> Outline:
-        """Return the outline of a definition.
-
-        Raises
-        ------
-        ElaborationError
-            If a value on its cards cannot be read or a net is missing.
-        """
-        body = _Body(self._netlist, self._classifier, self._geometry, subcircuit)
+        """Return the outline of a definition."""
+        body = _Body(self._netlist, self._classifier, self._geometry, subcircuit, self._mistakes)
         for group in self._netlist.card_groups(subcircuit.cards):
             body.add(group)
         return body.outline()
@@ -237,14 +249,16 @@ class _Body:
         classifier: Classifier,
         geometry: Sequence[str],
         subcircuit: Subcircuit,
+        mistakes: Mistakes,
     ) -> None:
         self._netlist = netlist
         self._classifier = classifier
         self._subcircuit = subcircuit
         self._nets = _Nets(subcircuit.ports)
-        self._transistors = _RowsBuilder(netlist, 4, geometry)
-        self._capacitors = _RowsBuilder(netlist, 2, ("", "c", "m"))
-        self._resistors = _RowsBuilder(netlist, 2, ())
+        self._mistakes = mistakes
+        self._transistors = _RowsBuilder(netlist, 4, geometry, mistakes)
+        self._capacitors = _RowsBuilder(netlist, 2, ("", "c", "m"), mistakes)
+        self._resistors = _RowsBuilder(netlist, 2, (), mistakes)
         self._calls: list[Call] = []
         self._sources: list[int] = []
         self._others: dict[str, list[int]] = {}
@@ -290,12 +304,9 @@ class _Body:
 
     def _take_wrapped(self, group: CardGroup, nets: IntArray) -> None:
         if len(nets) != 4:
-            card = self._netlist.card(group.numbers[0])
-            message = (
-                f"'{card.name}' calls the transistor '{card.target}' with {len(nets)} nets, "
-                "expected four: drain, gate, source, bulk"
-            )
-            raise ElaborationError(message, code="pin-count", span=card.span)
+            for number in group.numbers[:MOST]:
+                self._mistakes.add(_wrong_pins(self._netlist.card(number)))
+            return
         self._transistors.add(group, nets)
 
     def outline(self) -> Outline:
@@ -334,6 +345,14 @@ class _Body:
             return ()
         counts = Counter(self._netlist.card_name(n).lower() for n in self._subcircuit.cards)
         return tuple(name for name, count in counts.items() if count > 1)
+
+
+def _wrong_pins(card: Card) -> ElaborationError:
+    message = (
+        f"'{card.name}' calls the transistor '{card.target}' with {len(card.nodes)} nets, "
+        "expected four: drain, gate, source, bulk"
+    )
+    return ElaborationError(message, code="pin-count", span=card.span)
 
 
 def _call(group: CardGroup, row: int, nets: IntArray) -> Call:

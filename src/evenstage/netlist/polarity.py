@@ -67,7 +67,9 @@ class Models:
         known = self._indices.get(key)
         if known is None:
             known = self._indices[key] = len(self._models)
-            self._models.append(self._model(key, card, wrapper))
+            # In the place of a model nobody knows another stands, so that it is told once.
+            self._models.append(Model(key, self._process.transistors[0].polarity, 0))
+            self._models[known] = self._model(key, card, wrapper)
         return known
 
     def _model(self, key: str, number: int, wrapper: str) -> Model:

@@ -10,6 +10,7 @@ import numpy as np
 
 from evenstage.errors import ElaborationError
 from evenstage.netlist.columns import Column, absent, value_span
+from evenstage.netlist.mistakes import Mistakes
 from evenstage.netlist.wording import counted
 
 if TYPE_CHECKING:
@@ -81,10 +82,8 @@ class Binder:
     def bind(self, key: Key) -> Template:
         """Return the template of a key.
 
-        Raises
-        ------
-        ElaborationError
-            If a parameter has no value or a call does not fit its definition.
+        Parameters without a value and calls that do not fit their definition are left out of it,
+        and are mistakes of the library.
         """
         outline = self._library.outline(key[0])
         scope = self._library.scope(key)
@@ -92,13 +91,14 @@ class Binder:
         instances: list[tuple[Call, Key, float]] = []
         wrapped: list[_Devices] = []
         for call in outline.calls:
-            callee = self._key(call, scope)
-            multiplier = self._multiplier(call, scope)
-            device = self._wrapped(call, callee, multiplier)
-            if device is None:
-                instances.append((call, callee, multiplier))
-            else:
-                wrapped.append(device)
+            with self._library.mistakes.collecting():
+                callee = self._key(call, scope)
+                multiplier = self._multiplier(call, scope)
+                device = self._wrapped(call, callee, multiplier)
+                if device is None:
+                    instances.append((call, callee, multiplier))
+                else:
+                    wrapped.append(device)
         devices = _merged(plain, wrapped) if wrapped else plain
         return Template(
             outline=outline,
@@ -117,15 +117,11 @@ class Binder:
         """Return the transistors of an outline with their parameters evaluated."""
         rows = outline.transistors
         wrapper = outline.subcircuit.name if self._library.is_wrapper(outline) else ""
-        models = np.array(
-            [
-                self._library.models.index(
-                    name, int(rows.card[np.argmax(rows.target == i)]), wrapper
-                )
-                for i, name in enumerate(rows.target_names)
-            ],
-            np.int32,
-        )
+        models = np.zeros(len(rows.target_names), np.int32)
+        for i, name in enumerate(rows.target_names):
+            with self._library.mistakes.collecting():
+                card = int(rows.card[np.argmax(rows.target == i)])
+                models[i] = self._library.models.index(name, card, wrapper)
         return _Devices(
             card=rows.card,
             model=models[rows.target] if len(rows) else np.zeros(0, np.int32),
@@ -135,10 +131,11 @@ class Binder:
         )
 
     def _bound(self, rows: Rows, scope: Scope) -> dict[str, Column]:
-        return {
-            name: column.bound(scope, partial(self._span, rows, name))
-            for name, column in rows.columns.items()
-        }
+        bound = {}
+        for name, column in rows.columns.items():
+            with self._library.mistakes.collecting():
+                bound[name] = column.bound(scope, partial(self._span, rows, name))
+        return bound
 
     def _span(self, rows: Rows, name: str, row: int) -> Span:
         return value_span(self._netlist, int(rows.card[row]), name)
@@ -161,11 +158,13 @@ class Binder:
         """Return which template a call needs."""
         callee = self._library.outline(call.target)
         self._check_pins(call, callee)
-        passed = tuple(
-            (name, self._evaluated(call, name, scope))
-            for name in sorted(callee.names_used & call.parameters.keys())
-        )
-        return call.target, passed
+        passed = []
+        mistakes = Mistakes()
+        for name in sorted(callee.names_used & call.parameters.keys()):
+            with mistakes.collecting():
+                passed.append((name, self._evaluated(call, name, scope)))
+        mistakes.check()
+        return call.target, tuple(passed)
 
     def _evaluated(self, call: Call, name: str, scope: Scope) -> float:
         text = call.parameters[name]
