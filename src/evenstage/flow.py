@@ -83,15 +83,27 @@ class Question:
 
 @dataclass(frozen=True, slots=True)
 class Block:
-    """A netlist read, elaborated and analysed."""
+    """A netlist read, elaborated and analysed; the record where an earlier run wrote it."""
 
     netlist: Netlist
     brief: Brief
+    process: Process
     analysis: Analysis
+    record: Record | None
 
 
-def load(path: Path, question: Question) -> Block:
+def load(path: Path, question: Question, unit: Process | None = None) -> Block:
     """Read, elaborate, recognise and analyse a netlist.
+
+    Parameters
+    ----------
+    path : Path
+        The main file.
+    question : Question
+        What else is told.
+    unit : Process, optional
+        Whose unit inverter counts where the process names none; None: that of the netlist as
+        first drawn.
 
     Raises
     ------
@@ -102,12 +114,13 @@ def load(path: Path, question: Question) -> Block:
     netlist = read(path)
     given = read_process(question.process) if question.process else None
     devices = elaborate(netlist, question.top, given or _inferred(netlist), brief)
-    process = given or _settled(netlist, devices)
+    record = find_record(netlist.sources[0])
+    process = _measured(given or _settled(netlist, devices), devices, record, unit)
     circuit = recognise(devices, process, brief)
     analysis = find_paths(
         circuit, brief, start=question.start, end=question.end, count=question.count
     )
-    return Block(netlist, brief, analysis)
+    return Block(netlist, brief, circuit.process, analysis, record)
 
 
 def analyse(path: Path, question: Question) -> Analysis:
@@ -117,7 +130,8 @@ def analyse(path: Path, question: Question) -> Analysis:
 
 def diff(before: Path, after: Path, question: Question) -> Difference:
     """Compare two netlists of one design; raises as `load`."""
-    return compare(load(before, question).analysis, load(after, question).analysis)
+    first = load(before, question)
+    return compare(first.analysis, load(after, question, first.process).analysis)
 
 
 def resize(
@@ -144,7 +158,7 @@ def resize(
         )
     block = load(path, question)
     wishes = _with_aims(wishes or Wishes(), block.brief)
-    record = find_record(block.netlist.sources[0])
+    record = block.record
     asked = _asked(question, wishes)
     if record is not None and record.key == digest(block.netlist, asked):
         sizing = _already_done(block, record, wishes)
@@ -213,6 +227,25 @@ def _settled(netlist: Netlist, devices: Devices) -> Process:
     length = float(np.median(devices.length)) if len(devices) else None
     process = _inferred(netlist, max(volts, default=None), length)
     return at_length(process, length) if process.origin == "generic" and length else process
+
+
+def _measured(
+    process: Process, devices: Devices, record: Record | None, unit: Process | None
+) -> Process:
+    """Return a process that keeps its unit inverter while the widths of a netlist change.
+
+    Where the process names none, it is as wide as the smallest nMOS: measured anew after each
+    sizing, tau and the loads of bare outputs would move with the widths.
+    """
+    if process.unit_width is not None:
+        return process
+    if unit is not None:
+        return replace(process, unit_width=unit.unit_width)
+    if record is None:
+        return process
+    n_models = {model.name.lower() for model in devices.models if model.polarity == "n"}
+    widths = [width for name, width in record.smallest.items() if name in n_models]
+    return replace(process, unit_width=min(widths, default=None))
 
 
 def _with_aims(wishes: Wishes, brief: Brief) -> Wishes:

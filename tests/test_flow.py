@@ -1,0 +1,93 @@
+"""What each command does, from files to results."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Final
+
+import pytest
+
+from evenstage import flow
+
+if TYPE_CHECKING:
+    from pathlib import Path
+
+#: Three inverters, the last one far too wide for its bare output.
+CHAIN: Final = """* three inverters
+.global vdd vss
+.subckt inv a y wn=1u wp=2u
+mn y a vss vss nch w=wn l=0.1u
+mp y a vdd vdd pch w=wp l=0.1u
+.ends
+.subckt chain a y
+x1 a b inv
+x2 b c inv wn=4u wp=8u
+x3 c y inv wn=30u wp=60u
+.ends
+"""
+
+TRANSISTOR: Final = """
+[[transistor]]
+models = "{polarity}ch"
+polarity = "{polarity}"
+length = "0.1u"
+r_w = "{r_w}"
+c_gate = "1.2n"
+c_drain = "1n"
+slope = 0.2
+shape = 1.7
+width_min = "0.2u"
+width_step = "10n"
+"""
+
+
+@pytest.fixture
+def netlist(tmp_path: Path) -> Path:
+    path = tmp_path / "chain.sp"
+    path.write_bytes(CHAIN.encode())
+    return path
+
+
+@pytest.fixture
+def question(tmp_path: Path) -> flow.Question:
+    path = tmp_path / "process.toml"
+    kinds = (("n", "2m"), ("p", "4m"))
+    tables = "".join(TRANSISTOR.format(polarity=kind, r_w=r_w) for kind, r_w in kinds)
+    path.write_text(f'name = "invented"\nsupply = 1.1\n{tables}')
+    return flow.Question(process=path)
+
+
+def shrunk(netlist: Path, question: flow.Question) -> tuple[Path, flow.Sizing]:
+    """Return a netlist with everything made as small as it may be, and the sizing behind it."""
+    output = netlist.with_name("small.sp")
+    wishes = flow.Wishes(margin=9.0, scope="block", reclaim=True)
+    return output, flow.resize(netlist, question, wishes, output)
+
+
+class TestUnitInverter:
+    """It stays that of the netlist as first drawn, or delays would move without a cause."""
+
+    def test_written_netlist_keeps_the_promise(
+        self, netlist: Path, question: flow.Question
+    ) -> None:
+        output, sizing = shrunk(netlist, question)
+        assert min(change.new for change in sizing.changes) < 1e-6
+        again = flow.analyse(output, question)
+        assert again.yardstick == sizing.after.yardstick
+        assert again.paths[0].delay == pytest.approx(sizing.after.paths[0].delay, rel=1e-12)
+
+    def test_of_two_netlists_is_that_of_the_first(
+        self, netlist: Path, question: flow.Question
+    ) -> None:
+        after = netlist.with_name("after.sp")
+        after.write_bytes(CHAIN.replace("wn=1u", "wn=0.5u").encode())
+        difference = flow.diff(netlist, after, question)
+        assert difference.after.yardstick == difference.before.yardstick
+
+    def test_a_netlist_alone_is_measured_by_its_own(
+        self, netlist: Path, question: flow.Question
+    ) -> None:
+        before = flow.analyse(netlist, question).yardstick
+        netlist.write_bytes(CHAIN.replace("wn=1u", "wn=0.5u").encode())
+        assert flow.analyse(netlist, question).yardstick.input_cap == pytest.approx(
+            before.input_cap / 2
+        )
