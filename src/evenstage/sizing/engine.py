@@ -18,11 +18,11 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.errors import InfeasibleError
+from evenstage.errors import InfeasibleError, NotConvergedError
 from evenstage.sizing.certificate import check
 from evenstage.sizing.goals import Budget, Cheapest, Fastest
 from evenstage.sizing.interior_point import solve
-from evenstage.sizing.presolve import without_room
+from evenstage.sizing.presolve import with_guard, without_room
 from evenstage.timing.sweep import sweep
 from evenstage.units import engineering
 
@@ -38,10 +38,14 @@ if TYPE_CHECKING:
 
 _ON_LIMITING_PATH = 1e-3
 """Share of the unit flow above which a size counts as on a limiting path."""
+_NEAR_LIMITING_PATH = 1e-4
+"""The same on the way to the answer, where the flow still spreads over paths close to limiting."""
 _AGREES = 1e-5
 """Relative distance at which a delay counts as met."""
 _SHARES = (1.0, 0.9, 0.7, 0.4, 0.0)
 """Parts of the transition limit that stages are given in turn."""
+_LOOSE, _TIGHT = 1e-3, 1e-9
+"""Gaps at which programmes on the way, and the one that is shown, may stop."""
 _FULL = 1e-5
 """Relative room below which a limit counts as used up."""
 
@@ -211,6 +215,18 @@ class Engine:
             deadline = following
         return best or answer
 
+    def guarded(self, answer: Continuous, guard: float) -> FloatArray | None:
+        """Return sizes that miss deadline and limits by a share, for the grid to use up.
+
+        None where there are none: the least delay leaves no room.
+        """
+        problem = with_guard(self._problem(answer.lower, answer.upper, answer.limits), guard)
+        goal = Cheapest(answer.deadline * (1 - guard))
+        try:
+            return solve(problem, goal, start=answer.sizes, tolerance=_LOOSE).sizes
+        except (InfeasibleError, NotConvergedError):
+            return None
+
     def timed(self, sizes: FloatArray) -> Timing:
         """Time the block with some sizes, by the full arc model."""
         model = self.model
@@ -222,12 +238,16 @@ class Engine:
         free = self.model.variables.free
         limiting = free & (self._on_slowest_path() | self._beyond_limits())
         start = np.ones(len(free))
+        tolerance = _LOOSE
         while True:
             lower, upper = self._bounds(limiting)
-            fastest = self._solve(self._first_goal(), lower, upper, start)
-            joining = self._limiting(fastest) & free & ~limiting
-            if not joining.any():
+            fastest = self._solve(self._first_goal(), lower, upper, start, tolerance)
+            share = _ON_LIMITING_PATH if tolerance == _TIGHT else _NEAR_LIMITING_PATH
+            joining = self._limiting(fastest, share) & free & ~limiting
+            if not joining.any() and tolerance == _TIGHT:
                 return fastest, lower, upper
+            # Who limits shows early; the proof is for the last.
+            tolerance = _LOOSE if joining.any() else _TIGHT
             limiting = limiting | joining
             start = fastest.sizes
 
@@ -247,23 +267,31 @@ class Engine:
         up = limiting | (variables.free & (wishes.scope == "block"))
         return np.where(down, variables.lower, 1.0), np.where(up, variables.upper, 1.0)
 
-    def _problem(self, lower: FloatArray, upper: FloatArray) -> Problem:
-        problem = self.model.problem(lower, upper, self.spend, self.limits)
+    def _problem(
+        self, lower: FloatArray, upper: FloatArray, limits: Limits | None = None
+    ) -> Problem:
+        problem = self.model.problem(lower, upper, self.spend, limits or self.limits)
         return without_room(replace(problem, spend_fixed=self.spend_fixed))
 
     def _solve(
-        self, goal: Goal, lower: FloatArray, upper: FloatArray, start: FloatArray
+        self,
+        goal: Goal,
+        lower: FloatArray,
+        upper: FloatArray,
+        start: FloatArray,
+        tolerance: float = _TIGHT,
     ) -> Solution:
         problem = self._problem(lower, upper)
-        solution = solve(problem, goal, start=np.clip(start, problem.lower, problem.upper))
+        begin = np.clip(start, problem.lower, problem.upper)
+        solution = solve(problem, goal, start=begin, tolerance=tolerance)
         check(problem, goal, solution)
         return solution
 
-    def _limiting(self, solution: Solution) -> BoolArray:
+    def _limiting(self, solution: Solution, share: float = _ON_LIMITING_PATH) -> BoolArray:
         """Tell which sizes carry flow: those of gates on limiting paths."""
         graph, model = self.model.graph, self.model
         flow = solution.flow[len(solution.flow) - len(graph.arc) :]
-        gates = model.circuit.arcs.gate[graph.arc[flow > _ON_LIMITING_PATH]]
+        gates = model.circuit.arcs.gate[graph.arc[flow > share]]
         found = np.zeros(len(model.variables), bool)
         found[model.variables.partition.of_gate[gates]] = True
         return found

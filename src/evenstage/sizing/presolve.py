@@ -36,6 +36,14 @@ def without_room(problem: Problem) -> Problem:
         problem = tighter
 
 
+def with_guard(problem: Problem, guard: float) -> Problem:
+    """Return a problem whose limits are tighter by a share, where the box leaves room for it."""
+    room = _least(problem) * (1 + guard) < 1 - _ROOM
+    limit = problem.limit
+    scale = np.where(room, 1 + guard, 1.0)[limit.row]
+    return replace(problem, limit=replace(limit, coefficient=limit.coefficient * scale))
+
+
 def _least(problem: Problem) -> FloatArray:
     """Return the least value of each limit in the box, shape (limits,)."""
     low, high = np.append(problem.lower, 1.0), np.append(problem.upper, 1.0)
