@@ -40,9 +40,12 @@ if TYPE_CHECKING:
     from evenstage.process.process import Process
 
 __all__ = [
+    "Analysis",
     "Block",
+    "Difference",
     "Question",
     "Result",
+    "Sizing",
     "Wishes",
     "analyse",
     "diff",

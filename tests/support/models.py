@@ -1,0 +1,42 @@
+"""From netlist text to a model of its sizes."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from evenstage.netlist.handles import width_handles
+from evenstage.sizing.model import Model
+from evenstage.sizing.partition import partition
+from evenstage.sizing.variables import variables
+from evenstage.timing.analyse import time
+from support.blocks import circuit_of
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from evenstage.brief import Brief
+    from evenstage.circuit.circuit import Circuit
+    from evenstage.netlist.handles import WidthHandles
+    from evenstage.process.process import Process
+    from evenstage.sizing.partition import Partition
+    from evenstage.sizing.variables import Variables
+
+
+def handles_of(circuit: Circuit, parts: Partition, copies: int = 4) -> WidthHandles:
+    """Return how the widths of a partition can be changed."""
+    return width_handles(circuit.devices, circuit.process, parts.variable_of, copies)
+
+
+def variables_of(
+    circuit: Circuit, brief: Brief | None = None, smallest: Mapping[str, float] | None = None
+) -> Variables:
+    """Return the sizes of a circuit with their bounds."""
+    parts = partition(circuit, brief)
+    return variables(circuit, brief, parts, handles_of(circuit, parts), smallest)
+
+
+def model_of(text: str, process: Process | None = None, brief: Brief | None = None) -> Model:
+    """Return the model of a netlist's sizes."""
+    circuit = circuit_of(text, process, brief)
+    timing = time(circuit, brief)
+    return Model(circuit, timing.graph, timing.unit, variables_of(circuit, brief))
