@@ -12,7 +12,7 @@ from lark.exceptions import UnexpectedInput
 
 from evenstage.errors import NetlistError
 from evenstage.netlist import reader as reader_module
-from evenstage.netlist.canonical import canonical
+from evenstage.netlist.blocks import Blocks
 from evenstage.netlist.cards import CardTable
 from evenstage.netlist.grammar import ENCODING, parser
 from evenstage.netlist.reader import Reader
@@ -176,7 +176,7 @@ def by_grammar(source: SourceText) -> list[Card] | None:
     except UnexpectedInput:
         return None
     table = CardTable()
-    table.begin_segment(source, canonical(source.data), "")
+    table.begin_segment(Blocks(source), "")
     for child in tree.children:
         if isinstance(child, Tree) and child.data == "foreign":
             return None

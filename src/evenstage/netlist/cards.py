@@ -1,22 +1,30 @@
 """The table of element cards: where each one begins and how it is read, and cards made of that.
 
-A card costs the table some twelve bytes; its words stay in the text until somebody asks for them.
+Its nets, model and values are numbers in columns; their spelling stays in the text until somebody
+asks for it.
 """
 
 from __future__ import annotations
 
 import re
 from array import array
-from bisect import bisect_left, bisect_right
+from bisect import bisect_right
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from evenstage.netlist.grammar import terminal
-from evenstage.netlist.netlist import Card, CardGroup, Parameter
+from evenstage.netlist.intake import Values, WordList, Words
+from evenstage.netlist.netlist import Card, CardColumns, CardGroup, Parameter
+from evenstage.netlist.stored import ShapeColumns, main_argument
 from evenstage.source import Span
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Sequence
+    from collections.abc import Iterable, Iterator, Sequence
 
+    from evenstage.netlist.blocks import Blocks
+    from evenstage.netlist.devices import IntArray
     from evenstage.netlist.shapes import Role, Shape
     from evenstage.netlist.statement import Statement
     from evenstage.source import SourceText
@@ -27,6 +35,8 @@ if TYPE_CHECKING:
 #: Cards handed over at once; more only means more objects alive.
 _CHUNK = 4096
 _ODD = -1
+#: Spreads small numbers over all bits.
+_MIXER = np.int64(0x1E3779B97F4A7C15)
 _WORD = re.compile(rb"[^\x00-\x20,]+")
 _NAME = re.compile(rb"[^\x00-\x20=,()'\"{}]+")
 _NUMERIC = re.compile(r"[+-]?\.?[0-9]|['\"{(]")
@@ -52,84 +62,185 @@ class CardTable:
     """All element cards of a netlist in reading order; filled by the reader, then left alone."""
 
     def __init__(self) -> None:
+        self.values = Values()
+        self.words = WordList(())
         self._starts = array("q")
         self._shape_of = array("i")
         self._shapes: list[Shape] = []
+        self._stored: list[ShapeColumns] = []
+        self._numbers: list[IntArray] = []
         self._odd: dict[int, Statement] = {}
+        self._odd_columns: dict[int, CardColumns] = {}
         self._segments: list[int] = []
-        self._segment_places: list[tuple[SourceText, bytes, str]] = []
+        self._segment_places: list[tuple[Blocks, str]] = []
+        self._word_numbers = Words()
+        self._scopes_with_repeats: frozenset[str] = frozenset()
 
     def __len__(self) -> int:
         return len(self._starts)
 
-    def begin_segment(self, source: SourceText, text: bytes, scope: str) -> None:
-        """Say where the cards to come stand: file, canonical text, subcircuit."""
+    def begin_segment(self, blocks: Blocks, scope: str) -> None:
+        """Say where the cards to come stand: file, subcircuit."""
         if self._segments and self._segments[-1] == len(self):
             self._segments.pop()
             self._segment_places.pop()
         self._segments.append(len(self))
-        self._segment_places.append((source, text, scope))
+        self._segment_places.append((blocks, scope))
 
     def add_shape(self, shape: Shape) -> int:
         """Take note of a shape and return its number."""
         self._shapes.append(shape)
+        self._stored.append(ShapeColumns(shape, self._word_numbers, self.values))
         return len(self._shapes) - 1
 
-    def append(self, start: int, shape: int) -> None:
-        """Add a card that has a shape."""
-        self._starts.append(start)
-        self._shape_of.append(shape)
+    def rows(self, shape: int) -> list[tuple[bytes, ...]]:
+        """Return the list that takes the words of cards of a shape until they are stored."""
+        return self._stored[shape].rows
+
+    def extend(self, starts: Sequence[int], shape: int) -> None:
+        """Add cards that follow each other and have one shape; their words are in its rows."""
+        self._starts.extend(starts)
+        self._shape_of.extend([shape] * len(starts))
+
+    def store(self) -> None:
+        """Turn the words that wait into numbers."""
+        for stored in self._stored:
+            if stored.rows:
+                stored.store()
 
     def append_odd(self, statement: Statement) -> None:
-        """Add a card that has none, as Lark read it."""
-        self._odd[len(self)] = statement
-        self.append(statement.marks[0].start, _ODD)
+        """Add a card that has no shape, as Lark read it."""
+        number = len(self)
+        self._odd[number] = statement
+        self.extend((statement.marks[0].start,), _ODD)
+        self._odd_columns[number] = self._numbered(self._odd_group(number))
 
-    def _place(self, number: int) -> tuple[SourceText, bytes, str]:
+    def _numbered(self, group: CardGroup) -> CardColumns:
+        """Turn the words of a group into numbers."""
+        number = self._word_numbers.__getitem__
+        take = self.values.kept if group.letter == "x" else self.values.numbers_of
+        texts = {**group.parameters, **({"": group.values} if group.values else {})}
+        return CardColumns(
+            letter=group.letter,
+            numbers=np.array(group.numbers, np.int32),
+            nodes=np.array([list(map(number, node)) for node in group.nodes], np.int32).reshape(
+                len(group.nodes), len(group.numbers)
+            ),
+            targets=np.array(list(map(number, group.targets)), np.int32),
+            values={name: np.array(list(take(t)), np.int32) for name, t in texts.items()},
+        )
+
+    def finish(self, names: Iterable[str]) -> None:
+        """Forget what only reading needs.
+
+        Parameters
+        ----------
+        names : iterable of str
+            Nets that ``word_number`` will be asked for.
+        """
+        self.store()
+        self._scopes_with_repeats = self._find_repeats()
+        words = self._word_numbers
+        self._word_numbers = Words({name: words[name] for name in map(_folded, names)})
+        self.words = WordList(words)
+        self.values.finish()
+        shape_of = np.frombuffer(self._shape_of, np.int32) if len(self) else np.zeros(0, np.int32)
+        order = np.argsort(shape_of, kind="stable").astype(np.int32)
+        ends = np.cumsum(np.bincount(shape_of + 1, minlength=len(self._shapes) + 1))
+        self._numbers = [order[a:b] for a, b in pairwise([0, *ends])]
+
+    def _find_repeats(self) -> frozenset[str]:
+        """Return the scopes in which several cards may have one name."""
+        shape_of = np.array(self._shape_of, np.int32)
+        hashes = np.empty(len(self), np.int64)
+        for shape, stored in enumerate(self._stored):
+            hashes[shape_of == shape] = np.array(stored.hashes, np.int64)
+            del stored.hashes
+        for number in self._odd:
+            hashes[number] = hash(_folded(self.name(number)))
+        scopes = Words()
+        of_segment = [scopes[_folded(scope)] for _, scope in self._segment_places]
+        scope = np.repeat(of_segment, np.diff([*self._segments, len(self)]))
+        mixed = hashes ^ (scope * _MIXER)
+        ordered = np.sort(mixed)
+        repeated = ordered[1:][ordered[1:] == ordered[:-1]]
+        names = list(scopes)
+        found = np.unique(scope[np.isin(mixed, repeated)]).tolist()
+        return frozenset(names[i].decode("utf-8", "surrogateescape") for i in found)
+
+    def word_number(self, name: str) -> int:
+        """Return the number of a word by lower-case name, one of those kept."""
+        return self._word_numbers[_folded(name)]
+
+    def may_repeat(self, scope: str) -> bool:
+        """Tell whether several cards of a subcircuit may have one name."""
+        return scope in self._scopes_with_repeats
+
+    def _place(self, number: int) -> tuple[Blocks, str]:
         return self._segment_places[bisect_right(self._segments, number) - 1]
 
     def __getitem__(self, number: int) -> Card:
         """Make the card of a number."""
         if not 0 <= number < len(self):
             raise IndexError(number)
-        source, _, scope = self._place(number)
-        return _card(number, self._fields(number), source, scope)
+        blocks, scope = self._place(number)
+        return _card(number, self._fields(number), blocks.source, scope)
 
     def _fields(self, number: int) -> list[Field]:
-        source, text, _ = self._place(number)
+        blocks, _ = self._place(number)
         shape = self._shape_of[number]
         if shape == _ODD:
-            return _fields_of_statement(self._odd[number], source)
-        return _fields_of_shape(self._shapes[shape], text, self._starts[number])
+            return _fields_of_statement(self._odd[number], blocks.source)
+        block = blocks.at(self._starts[number])
+        fields = _fields_of_shape(
+            self._shapes[shape], block.text, self._starts[number] - block.start
+        )
+        return [(role, a + block.start, b + block.start) for role, a, b in fields]
 
     def name(self, number: int) -> str:
         """Return the name of a card as written, without making the card."""
-        source = self._place(number)[0]
+        source = self._place(number)[0].source
         match = _NAME.match(source.data, self._starts[number])
         assert match is not None
         return match[0].decode("utf-8", "surrogateescape")
 
     def scope(self, number: int) -> str:
         """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
-        return self._place(number)[2]
+        return self._place(number)[1]
 
-    def node_names(self, numbers: Sequence[int], positions: Sequence[int]) -> list[str]:
-        """Return nets as written, each by card number and position on the card."""
-        return list(map(self._node, numbers, positions))
-
-    def _node(self, number: int, position: int) -> str:
-        source, text, _ = self._place(number)
+    def node_name(self, number: int, position: int) -> str:
+        """Return a net as written, by card number and position on the card."""
+        blocks, _ = self._place(number)
         kind = self._shape_of[number]
         shape = None if kind == _ODD else self._shapes[kind]
         if shape is None or "nodes" in shape.roles:
             nodes = [field for field in self._fields(number) if field[0] == "node"]
             _, start, end = nodes[position]
         else:
-            match = shape.groups.match(text, self._starts[number])
+            base, text = blocks.at(self._starts[number])
+            match = shape.groups.match(text, self._starts[number] - base)
             assert match is not None
             # The nets follow the name, which is the first group.
-            start, end = match.span(position + 2)
-        return source.data[start:end].decode("utf-8", "surrogateescape")
+            start, end = (base + edge for edge in match.span(position + 2))
+        return blocks.source.data[start:end].decode("utf-8", "surrogateescape")
+
+    def columns(self, numbers: Sequence[int]) -> Iterator[CardColumns]:
+        """Give the cards of ascending numbers as columns of numbers; see ``CardStore``."""
+        if isinstance(numbers, range):
+            yield from self._columns_of_range(numbers.start, numbers.stop)
+            return
+        cuts = np.flatnonzero(np.diff(numbers) != 1) + 1
+        for run in np.split(np.array(numbers), cuts):
+            yield from self._columns_of_range(int(run[0]), int(run[-1]) + 1)
+
+    def _columns_of_range(self, begin: int, end: int) -> Iterator[CardColumns]:
+        odd = self._numbers[0]
+        first, last = np.searchsorted(odd, (begin, end)).tolist()
+        yield from (self._odd_columns[number] for number in odd[first:last].tolist())
+        for stored, members in zip(self._stored, self._numbers[1:], strict=True):
+            first, last = np.searchsorted(members, (begin, end)).tolist()
+            if last > first:
+                yield from stored.columns(members[first:last], first, last)
 
     def groups(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
         """Give the cards of ascending numbers, grouped by shape; see ``CardStore``."""
@@ -137,17 +248,6 @@ class CardTable:
             yield from self._chunk(numbers[first : first + _CHUNK])
 
     def _chunk(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
-        """Give some cards, those of one file at a time."""
-        first = 0
-        while first < len(numbers):
-            segment = bisect_right(self._segments, numbers[first])
-            beyond = self._segments[segment] if segment < len(self._segments) else len(self)
-            last = bisect_left(numbers, beyond, first)
-            text = self._segment_places[segment - 1][1]
-            yield from self._segment_groups(numbers[first:last], text)
-            first = last
-
-    def _segment_groups(self, numbers: Sequence[int], text: bytes) -> Iterator[CardGroup]:
         by_shape: dict[int, list[int]] = {}
         shape_of = self._shape_of
         for number in numbers:
@@ -156,7 +256,7 @@ class CardTable:
             if shape == _ODD:
                 yield from (self._odd_group(number) for number in members)
             else:
-                yield from self._shaped_groups(self._shapes[shape], members, text)
+                yield from self._shaped_groups(self._shapes[shape], members)
 
     def _odd_group(self, number: int) -> CardGroup:
         card = self[number]
@@ -170,11 +270,17 @@ class CardTable:
             parameters={p.name: [_folded(p.text)] for p in card.parameters},
         )
 
-    def _shaped_groups(self, shape: Shape, numbers: list[int], text: bytes) -> Iterator[CardGroup]:
-        match = shape.groups.match
-        starts = self._starts
-        rows = [match(text, starts[number]).groups() for number in numbers]  # type: ignore[union-attr]  # each start was matched by this shape before
-        columns = dict(enumerate(zip(*rows, strict=True)))
+    def _rows(self, shape: Shape, numbers: list[int]) -> Iterator[tuple[bytes, ...]]:
+        """Give the words of cards of one shape."""
+        for number in numbers:
+            start = self._starts[number]
+            base, text = self._place(number)[0].at(start)
+            match = shape.groups.match(text, start - base)
+            assert match is not None
+            yield match.groups()
+
+    def _shaped_groups(self, shape: Shape, numbers: list[int]) -> Iterator[CardGroup]:
+        columns = dict(enumerate(zip(*self._rows(shape, numbers), strict=True)))
         roles = shape.roles
         if "nodes" in roles:
             yield from _run_groups(shape, numbers, columns)
@@ -187,19 +293,9 @@ class CardTable:
             names=columns[0],
             nodes=[columns[i] for i, role in enumerate(roles) if role == "node"],
             targets=next((columns[i] for i, role in enumerate(roles) if role == "target"), ()),
-            values=_main_argument(arguments),
+            values=main_argument(arguments),
             parameters=dict(zip(shape.keys, values, strict=True)),
         )
-
-
-def _main_argument(arguments: list[tuple[bytes, ...]]) -> Sequence[bytes]:
-    """Return the values of R and C cards from their unnamed arguments (value, model)."""
-    if len(arguments) < 2:
-        return arguments[0] if arguments else ()
-    return [
-        row[_value_position([w.decode("latin-1") for w in row])]
-        for row in zip(*arguments, strict=True)
-    ]
 
 
 def _value_position(arguments: list[str]) -> int:

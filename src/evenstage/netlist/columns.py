@@ -15,34 +15,17 @@ from evenstage.netlist.parameters import bad_value
 from evenstage.netlist.values import Style, parse_value
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Iterable, Sequence
+    from collections.abc import Callable, Iterable
 
     from numpy.typing import NDArray
 
     from evenstage.errors import ElaborationError
     from evenstage.netlist.devices import FloatArray
-    from evenstage.netlist.netlist import CardGroup, Netlist, Parameter
+    from evenstage.netlist.netlist import CardColumns, Netlist, Parameter
     from evenstage.netlist.parameters import Scope
     from evenstage.source import Span
 
     Styles = NDArray[np.int8]
-
-#: Distinct texts remembered; random values would otherwise fill the memory.
-_REMEMBERED = 1 << 17
-
-
-class _Numbers(dict[bytes, complex]):
-    """The number of each value text, with its style as the imaginary part (one lookup for both)."""
-
-    def __missing__(self, text: bytes) -> complex:
-        value = parse_value(text.decode("utf-8", "surrogateescape"))
-        if len(self) > _REMEMBERED:
-            self.clear()
-        number = self[text] = complex(value.number, value.style)
-        return number
-
-
-_NUMBERS = _Numbers()
 
 
 @dataclass(frozen=True, slots=True)
@@ -77,9 +60,9 @@ class Column:
         mistakes.check()
         return Column(numbers, self.styles)
 
-    def in_order(self, order: NDArray[np.intp]) -> Column:
-        """Return the column with its rows in another order."""
-        if np.all(np.diff(order) == 1):
+    def in_order(self, order: NDArray[np.intp] | slice) -> Column:
+        """Return the column with its rows in another order; a slice leaves them as they are."""
+        if isinstance(order, slice):
             return self
         place = np.empty(len(order), np.intp)
         place[order] = np.arange(len(order))
@@ -92,42 +75,11 @@ def absent(rows: int) -> Column:
     return Column(np.full(rows, np.nan), np.zeros(rows, np.int8))
 
 
-def parsed(texts: Sequence[bytes], where: Callable[[int], Span], first_row: int = 0) -> Column:
-    """Return a column from value texts.
-
-    Raises
-    ------
-    ElaborationError
-        If a text is neither a number nor an expression.
-    """
-    try:
-        pairs = np.array(list(map(_NUMBERS.__getitem__, texts)), np.complex128)
-    except FormulaError:
-        raise _error(texts, where) from None
-    styles = pairs.imag.astype(np.int8)
-    computed = np.flatnonzero(styles == Style.COMPUTED).tolist()
-    formulas = ((first_row + i, texts[i].decode("utf-8", "surrogateescape")) for i in computed)
-    return Column(pairs.real.copy(), styles, tuple(formulas))
-
-
-def _error(texts: Sequence[bytes], where: Callable[[int], Span]) -> ElaborationError:
-    """Return what is wrong with some texts, one of which at least is no value."""
-    found = [error for row, text in enumerate(texts) if (error := _bad(text, partial(where, row)))]
-    return found[0] if len(found) == 1 else MistakesError(tuple(found[:MOST]))
-
-
-def _bad(text: bytes, where: Callable[[], Span]) -> ElaborationError | None:
-    written = text.decode("utf-8", "surrogateescape")
-    try:
-        parse_value(written)
-    except FormulaError as error:
-        return bad_value(written, error, where())
-    return None
-
-
 def joined(columns: Iterable[Column]) -> Column:
     """Return columns one after the other; their formulas count rows through already."""
     parts = list(columns)
+    if len(parts) == 1:
+        return parts[0]
     return Column(
         np.concatenate([part.numbers for part in parts]),
         np.concatenate([part.styles for part in parts]),
@@ -142,9 +94,39 @@ def value_span(netlist: Netlist, number: int, name: str) -> Span:
     return card.span if parameter is None else parameter.span
 
 
-def group_column(netlist: Netlist, group: CardGroup, name: str, first_row: int) -> Column:
-    """Return one parameter of a group of cards; an empty name stands for the unnamed value."""
-    texts = group.parameters.get(name) if name else group.values
-    if not texts:
-        return absent(len(group.numbers))
-    return parsed(texts, lambda row: value_span(netlist, group.numbers[row], name), first_row)
+def card_column(netlist: Netlist, cards: CardColumns, name: str, first_row: int) -> Column:
+    """Return one parameter of some cards; an empty name stands for the unnamed value.
+
+    Parameters
+    ----------
+    netlist : Netlist
+        Where they stand.
+    cards : CardColumns
+        The cards.
+    name : str
+        The parameter.
+    first_row : int
+        What the first of them counts as in the formulas.
+
+    Raises
+    ------
+    ElaborationError
+        If a text is neither a number nor an expression.
+    """
+    ids = cards.values.get(name)
+    if ids is None:
+        return absent(len(cards.numbers))
+    numbers, styles = netlist.cards.values.worth(ids)
+    formulas = []
+    wrong: list[ElaborationError] = []
+    for row in np.flatnonzero(styles == Style.COMPUTED).tolist():
+        text = netlist.cards.values.text(int(ids[row]))
+        try:
+            parse_value(text)
+        except FormulaError as error:
+            span = value_span(netlist, int(cards.numbers[row]), name)
+            wrong.append(bad_value(text, error, span))
+        formulas.append((first_row + row, text))
+    if wrong:
+        raise wrong[0] if len(wrong) == 1 else MistakesError(tuple(wrong[:MOST]))
+    return Column(numbers, styles, tuple(formulas))

@@ -81,8 +81,7 @@ class _Block:
         self._templates, callees = _bound(library, name, self._definitions)
         library.mistakes.check()
         self._global_names = self._globals_used()
-        keys = [_key(name) for name in self._global_names]
-        self._flat = flatten(self._templates, callees, keys)
+        self._flat = flatten(self._templates, callees, self._words(self._global_names))
         outlines = [template.outline for template in self._templates]
         count = len(self._flat.slot_of_net)
         self._names = NetNames(
@@ -95,9 +94,15 @@ class _Block:
 
     def _globals_used(self) -> tuple[str, ...]:
         """Return the global nets that occur, ``0`` among them, in the order of declaration."""
-        met = {key for template in self._templates for key in template.outline.net_keys}
-        declared = {_key(name): name for name in ("0", *self._netlist.global_names)}
-        return tuple(name for key, name in declared.items() if key in met)
+        names = tuple({name.lower(): name for name in ("0", *self._netlist.global_names)}.values())
+        words = self._words(names)
+        met = np.zeros(len(words), np.bool_)
+        for outline in {id(t.outline): t.outline for t in self._templates}.values():
+            met |= np.isin(words, outline.net_words)
+        return tuple(name for name, occurs in zip(names, met.tolist(), strict=True) if occurs)
+
+    def _words(self, names: Sequence[str]) -> IntArray:
+        return np.array(list(map(self._netlist.cards.word_number, names)), np.int32)
 
     def _spread(self, counts: Iterable[int]) -> tuple[Indices, Indices]:
         """Return instance and row of every copy of what templates hold ``counts`` of."""
@@ -253,12 +258,11 @@ class _Block:
     def _sources(self) -> tuple[tuple[int, int, float], ...]:
         """Return nets and DC value of the V cards of the block's own level."""
         outline = self._templates[0].outline
-        local = {key: i for i, key in enumerate(outline.net_keys)}
         scope = self._library.scope((outline.subcircuit.name.lower(), ()))
         found = []
-        for number in outline.sources:
+        for number, *ends in outline.sources:
             card = self._netlist.card(number)
-            plus, minus = (int(self._net[self._flat.net[local[_key(n)]]]) for n in card.nodes)
+            plus, minus = self._net[self._flat.net[ends]].tolist()
             parameter = card.value or card.parameter("dc")
             value = 0.0 if parameter is None else scope.of(parameter)
             found.append((plus, minus, value))
@@ -272,7 +276,7 @@ class _Block:
             for letter, numbers in outline.others.items():
                 by_letter.setdefault(letter, []).extend(numbers)
             if outline is not self._templates[0].outline:
-                by_letter.setdefault("v", []).extend(outline.sources)
+                by_letter.setdefault("v", []).extend(v for v, *_ in outline.sources)
         notices = self._library.notices(self._definitions)
         for letter, cards in sorted(by_letter.items()):
             if cards:
@@ -300,10 +304,6 @@ def _bound(
     index = {key: i for i, key in enumerate(keys)}
     templates = [by_name[key[0]][key] for key in keys]
     return templates, [[index[callee] for callee in t.callees] for t in templates]
-
-
-def _key(name: str) -> bytes:
-    return name.encode("utf-8", "surrogateescape").lower()
 
 
 def _ids(values: Indices) -> IntArray:

@@ -18,7 +18,7 @@ from evenstage.errors import ElaborationError
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from evenstage.netlist.devices import FloatArray
+    from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.netlist.template import Template
 
 Indices = NDArray[np.signedinteger]
@@ -78,7 +78,7 @@ def starts_of(counts: Sequence[int]) -> Indices:
 
 
 def flatten(
-    templates: Sequence[Template], callees: Sequence[Sequence[int]], global_keys: Sequence[bytes]
+    templates: Sequence[Template], callees: Sequence[Sequence[int]], global_words: IntArray
 ) -> Flat:
     """Lay out the first template and all it calls.
 
@@ -88,17 +88,17 @@ def flatten(
         Callers before callees; the block first.
     callees : sequence of sequence of int
         For each template the index of the template of each call.
-    global_keys : sequence of bytes
-        Lower-case names of the global nets.
+    global_words : IntArray
+        The words of the global nets.
 
     Raises
     ------
     ElaborationError
         If the block is too large to lay out.
     """
-    tables = _Tables(templates, callees, global_keys)
+    tables = _Tables(templates, callees, global_words)
     placed = _place(tables)
-    return _connect(tables, *placed, len(global_keys))
+    return _connect(tables, *placed, len(global_words))
 
 
 class _Tables:
@@ -108,9 +108,8 @@ class _Tables:
         self,
         templates: Sequence[Template],
         callees: Sequence[Sequence[int]],
-        global_keys: Sequence[bytes],
+        global_words: IntArray,
     ) -> None:
-        global_ids = {key: i for i, key in enumerate(global_keys)}
         self.call_start = starts_of([len(t.calls) for t in templates])
         self.callee = np.array([c for row in callees for c in row], np.int64)
         self.call_card = np.array([c.card for t in templates for c in t.calls], np.int64)
@@ -118,10 +117,10 @@ class _Tables:
         pins = [call.nets for template in templates for call in template.calls]
         self.pin_start = starts_of([len(nets) for nets in pins])
         self.pins = np.array([net for nets in pins for net in nets], np.int64)
-        self.slot_start = starts_of([len(t.outline.net_keys) for t in templates])
+        self.slot_start = starts_of([len(t.outline.net_words) for t in templates])
         # Of each local net: own to the instance, a port, or which global net.
         self.kind = np.concatenate(
-            [_kinds(t, global_ids, block=i == 0) for i, t in enumerate(templates)]
+            [_kinds(t, global_words, block=i == 0) for i, t in enumerate(templates)]
         )
         self.offset = self._offsets(callees)
 
@@ -139,13 +138,13 @@ class _Tables:
         return np.array([offset for row in offsets for offset in row], np.int64)
 
 
-def _kinds(template: Template, global_ids: dict[bytes, int], *, block: bool) -> Indices:
+def _kinds(template: Template, global_words: IntArray, *, block: bool) -> Indices:
     outline = template.outline
-    kinds = np.full(len(outline.net_keys), _OWN, np.int64)
-    for local, key in enumerate(outline.net_keys):
-        # A port of the block that has the name of a global net is that net.
-        if key in global_ids and (block or local >= outline.ports):
-            kinds[local] = global_ids[key]
+    kinds = np.full(len(outline.net_words), _OWN, np.int64)
+    # A port of the block that has the name of a global net is that net.
+    for local in np.flatnonzero(np.isin(outline.net_words, global_words)).tolist():
+        if block or local >= outline.ports:
+            kinds[local] = int(np.argmax(global_words == outline.net_words[local]))
     if not block:
         kinds[: outline.ports] = _PORT
     return kinds

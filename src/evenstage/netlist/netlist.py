@@ -10,7 +10,9 @@ if TYPE_CHECKING:
     from collections.abc import Iterator, Mapping, Sequence
 
     from evenstage.errors import Notice
+    from evenstage.netlist.devices import IntArray
     from evenstage.netlist.functions import Function
+    from evenstage.netlist.intake import Values, WordList
     from evenstage.source import SourceText, Span
 
 
@@ -112,12 +114,60 @@ class CardGroup:
     parameters: Mapping[str, Sequence[bytes]]
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class CardColumns:
+    """Cards of one letter with the same number of nets and the same parameter names, as numbers.
+
+    Parameters
+    ----------
+    letter : str
+        Lower-case first letter.
+    numbers : IntArray, shape (n,)
+        Of the cards, ascending.
+    nodes : IntArray, shape (nets, n)
+        Words.
+    targets : IntArray, shape (n,) or (0,)
+        Words: models or subcircuits, where the cards name any.
+    values : Mapping of str to IntArray, shape (n,) each
+        Values by the name of their parameter, the unnamed one by the empty name; of a repeated name
+        the last. Those of calls have their texts kept.
+    """
+
+    letter: str
+    numbers: IntArray
+    nodes: IntArray
+    targets: IntArray
+    values: Mapping[str, IntArray]
+
+
 class CardStore(Protocol):
     """All element cards of a netlist: one by one as objects, or many at once in columns."""
 
     def __len__(self) -> int: ...
 
     def __getitem__(self, number: int) -> Card: ...
+
+    @property
+    def words(self) -> WordList:
+        """All names of nets, models and subcircuits on the cards, in lower case."""
+        ...
+
+    @property
+    def values(self) -> Values:
+        """All values on the cards."""
+        ...
+
+    def columns(self, numbers: Sequence[int]) -> Iterator[CardColumns]:
+        """Give the cards of ascending numbers as columns of numbers, each form by itself."""
+        ...
+
+    def word_number(self, name: str) -> int:
+        """Return the number of the word for a port or a global net."""
+        ...
+
+    def may_repeat(self, scope: str) -> bool:
+        """Tell whether several cards of a subcircuit may have one name."""
+        ...
 
     def groups(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
         """Give the cards of ascending numbers in groups, each of at most a few thousand."""
@@ -131,8 +181,8 @@ class CardStore(Protocol):
         """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
         ...
 
-    def node_names(self, numbers: Sequence[int], positions: Sequence[int]) -> list[str]:
-        """Return nets as written, each by card number and position on the card."""
+    def node_name(self, number: int, position: int) -> str:
+        """Return a net as written, by card number and position on the card."""
         ...
 
 
@@ -235,13 +285,18 @@ class Netlist:
         """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
         return self._cards.scope(number)
 
+    @property
+    def cards(self) -> CardStore:
+        """All element cards, one by one or in columns."""
+        return self._cards
+
     def card_groups(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
         """Give the element cards of ascending numbers in columns, grouped by their form."""
         return self._cards.groups(numbers)
 
-    def node_names(self, numbers: Sequence[int], positions: Sequence[int]) -> list[str]:
-        """Return nets as written, each by card number and position on the card."""
-        return self._cards.node_names(numbers, positions)
+    def node_name(self, number: int, position: int) -> str:
+        """Return a net as written, by card number and position on the card."""
+        return self._cards.node_name(number, position)
 
     def __len__(self) -> int:
         return len(self._cards)

@@ -55,7 +55,6 @@ class NetNames(Sequence[str]):
         self._global_names = global_names
         self._kept = kept
         self._paths: dict[int, str] = {0: ""}
-        self._local: dict[int, tuple[str, ...]] = {}
 
     def __len__(self) -> int:
         return len(self._kept)
@@ -79,16 +78,15 @@ class NetNames(Sequence[str]):
         slot = int(self._flat.slot_of_net[net])
         instance = int(np.searchsorted(self._flat.slot_base, slot, "right")) - 1
         local = slot - int(self._flat.slot_base[instance])
-        name = self._local_names(int(self._flat.template[instance]))[local]
+        name = self._local_name(int(self._flat.template[instance]), local)
         return f"{self._path(instance)}{name}"
 
-    def _local_names(self, template: int) -> tuple[str, ...]:
-        known = self._local.get(template)
-        if known is None:
-            outline = self._outlines[template]
-            inner = self._netlist.node_names(*outline.net_firsts.tolist())
-            known = self._local[template] = (*outline.subcircuit.ports, *inner)
-        return known
+    def _local_name(self, template: int, local: int) -> str:
+        outline = self._outlines[template]
+        if local < outline.ports:
+            return outline.subcircuit.ports[local]
+        card, position = outline.net_firsts[:, local - outline.ports].tolist()
+        return self._netlist.node_name(card, position)
 
     def _path(self, instance: int) -> str:
         """Return the path of an instance with a dot behind it."""

@@ -6,23 +6,29 @@ Made once per subcircuit however often it is called.
 from __future__ import annotations
 
 from collections import Counter
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Literal, NamedTuple, Protocol
 
 import numpy as np
 
 from evenstage.errors import ElaborationError
-from evenstage.netlist.columns import Column, absent, group_column, joined
+from evenstage.netlist.columns import Column, absent, card_column, joined
 from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.mistakes import MOST
+from evenstage.netlist.numbering import NetNumbering
 from evenstage.netlist.values import parse_value
 
 if TYPE_CHECKING:
-    from collections.abc import Collection, Iterable, Mapping, Sequence
+    from collections.abc import Collection, Iterable, Iterator, Mapping, Sequence
+
+    from numpy.typing import NDArray
 
     from evenstage.netlist.devices import IntArray
     from evenstage.netlist.mistakes import Mistakes
-    from evenstage.netlist.netlist import Card, CardGroup, Netlist, Subcircuit
+    from evenstage.netlist.netlist import Card, CardColumns, Netlist, Subcircuit
+
+#: Letters of the cards whose nets count.
+_WIRED = frozenset("mxcrv")
 
 
 class Call(NamedTuple):
@@ -72,16 +78,16 @@ class Outline:
     ----------
     subcircuit : Subcircuit
         The definition.
-    net_keys : tuple of bytes
-        Lower-case names of the local nets.
+    net_words : IntArray, shape (n,)
+        The word of each local net.
     net_firsts : IntArray, shape (2, n)
         Card and position on it at which each net that is no port is met first.
     transistors, capacitors, resistors : Rows
         The cards of each kind.
     calls : tuple of Call
         The cards that call definitions.
-    sources : tuple of int
-        V cards.
+    sources : tuple of (int, int, int)
+        V cards and their local nets.
     others : Mapping of str to tuple of int
         Cards that are not understood, by letter.
     names_used : frozenset of str
@@ -91,13 +97,13 @@ class Outline:
     """
 
     subcircuit: Subcircuit
-    net_keys: tuple[bytes, ...]
+    net_words: IntArray
     net_firsts: IntArray
     transistors: Rows
     capacitors: Rows
     resistors: Rows
     calls: tuple[Call, ...]
-    sources: tuple[int, ...]
+    sources: tuple[tuple[int, int, int], ...]
     others: Mapping[str, tuple[int, ...]]
     names_used: frozenset[str]
     repeated: tuple[str, ...]
@@ -119,46 +125,8 @@ class Classifier(Protocol):
         ...
 
 
-class _Numbering(dict[bytes, int]):
-    """Numbers for names, in the order in which they are first asked for."""
-
-    def __missing__(self, name: bytes) -> int:
-        number = self[name] = len(self)
-        return number
-
-
-class _Nets:
-    """Numbers for local nets."""
-
-    def __init__(self, ports: Iterable[str]) -> None:
-        self.ids = _Numbering()
-        for port in ports:
-            self.ids[port.encode("utf-8", "surrogateescape").lower()]  # the look-up numbers it
-        self._first_cards: list[IntArray] = []
-        self._first_positions: list[int] = []
-
-    def columns(self, group: CardGroup) -> IntArray:
-        """Return the nets of some cards; new ones are noted with the card they stand on."""
-        numbers = np.array(group.numbers, np.int32)
-        nets = np.empty((len(group.nodes), len(numbers)), np.int32)
-        for position, names in enumerate(group.nodes):
-            known = len(self.ids)
-            nets[position] = list(map(self.ids.__getitem__, names))
-            if len(self.ids) > known:
-                new = np.flatnonzero(nets[position] >= known)
-                _, first = np.unique(nets[position, new], return_index=True)
-                self._first_cards.append(numbers[new[first]])
-                self._first_positions += [position] * len(first)
-        return nets
-
-    def firsts(self) -> IntArray:
-        """Return card and position at which each net that is no port was met, shape (2, n)."""
-        cards = np.concatenate([np.zeros(0, np.int32), *self._first_cards])
-        return np.stack([cards, np.array(self._first_positions, np.int32)])
-
-
 class _RowsBuilder:
-    """Collects groups of cards of one kind."""
+    """Collects cards of one kind."""
 
     def __init__(
         self, netlist: Netlist, pins: int, names: Sequence[str], mistakes: Mistakes
@@ -169,39 +137,53 @@ class _RowsBuilder:
         self._count = 0
         self._cards = [np.zeros(0, np.int32)]
         self._nets = [np.zeros((pins, 0), np.int32)]
-        self._target_ids = _Numbering()
         self._targets = [np.zeros(0, np.int32)]
 
-    def add(self, group: CardGroup, nets: IntArray) -> None:
-        """Take a group of cards and their nets, shape ``(pins, n)``."""
+    def add(self, cards: CardColumns, nets: IntArray) -> None:
+        """Take some cards and their nets, shape ``(pins, n)``."""
         for name, parts in self._columns.items():
-            column = absent(len(group.numbers))
+            column = absent(len(cards.numbers))
             with self._mistakes.collecting():
-                column = group_column(self._netlist, group, name, self._count)
+                column = card_column(self._netlist, cards, name, self._count)
             parts.append(column)
-        self._count += len(group.numbers)
-        self._cards.append(np.array(group.numbers, np.int32))
+        self._count += len(cards.numbers)
+        self._cards.append(cards.numbers)
         self._nets.append(nets)
-        targets = list(map(self._target_ids.__getitem__, group.targets))
-        self._targets.append(np.array(targets, np.int32))
+        self._targets.append(cards.targets)
 
     def rows(self) -> Rows:
         """Return what was collected, in the order of the cards, without empty columns."""
         cards = np.concatenate(self._cards)
-        order = np.argsort(cards, kind="stable")
+        order = _order(cards)
         columns = {
             name: joined(parts).in_order(order)
             for name, parts in self._columns.items()
             if any(part.styles.any() for part in parts)
         }
-        target = np.concatenate(self._targets)
+        words, targets = _distinct(np.concatenate(self._targets))
         return Rows(
             card=cards[order],
             nets=np.concatenate(self._nets, axis=1)[:, order],
-            target=target[order] if len(target) else target,
-            target_names=tuple(map(_name, self._target_ids)),
+            target=targets[order] if len(targets) else targets,
+            target_names=tuple(map(_name, self._netlist.cards.words.some(words))),
             columns=columns,
         )
+
+
+def _order(cards: IntArray) -> NDArray[np.intp] | slice:
+    """Return what puts cards in the order of the text."""
+    if len(cards) == 0 or np.all(cards[1:] > cards[:-1]):
+        return slice(None)
+    return np.argsort(cards, kind="stable")
+
+
+def _distinct(words: IntArray) -> tuple[IntArray, IntArray]:
+    """Return the distinct words in the order in which they come, and the index of each."""
+    distinct, firsts, inverse = np.unique(words, return_index=True, return_inverse=True)
+    order = np.argsort(firsts)
+    rank = np.empty(len(order), np.int32)
+    rank[order] = np.arange(len(order))
+    return distinct[order], rank[inverse]
 
 
 class OutlineBuilder:
@@ -231,13 +213,18 @@ class OutlineBuilder:
         self._classifier = classifier
         self._geometry = geometry
         self._mistakes = mistakes
+        self._numbering = NetNumbering(len(netlist.cards.words))
 
     def outline(self, subcircuit: Subcircuit) -> Outline:
         """Return the outline of a definition."""
+        cards = list(self._netlist.cards.columns(subcircuit.cards))
         body = _Body(self._netlist, self._classifier, self._geometry, subcircuit, self._mistakes)
-        for group in self._netlist.card_groups(subcircuit.cards):
-            body.add(group)
-        return body.outline()
+        ports = map(self._netlist.cards.word_number, subcircuit.ports)
+        wired = [one for one in cards if one.letter in _WIRED]
+        words, firsts = self._numbering.number(np.array(list(ports), np.int32), wired)
+        for one in cards:
+            body.add(one, self._numbering.local(one.nodes) if one.letter in _WIRED else one.nodes)
+        return body.outline(words, firsts)
 
 
 class _Body:
@@ -254,75 +241,81 @@ class _Body:
         self._netlist = netlist
         self._classifier = classifier
         self._subcircuit = subcircuit
-        self._nets = _Nets(subcircuit.ports)
         self._mistakes = mistakes
         self._transistors = _RowsBuilder(netlist, 4, geometry, mistakes)
         self._capacitors = _RowsBuilder(netlist, 2, ("", "c", "m"), mistakes)
         self._resistors = _RowsBuilder(netlist, 2, (), mistakes)
         self._calls: list[Call] = []
-        self._sources: list[int] = []
+        self._sources: list[tuple[int, int, int]] = []
         self._others: dict[str, list[int]] = {}
-        self._hashes = [np.zeros(0, np.int64)]
         self._takers = {
-            "m": self._take_transistors,
+            "m": self._transistors.add,
             "x": self._take_calls,
-            "c": lambda group: self._capacitors.add(group, self._nets.columns(group)),
-            "r": lambda group: self._resistors.add(group, self._nets.columns(group)),
+            "c": self._capacitors.add,
+            "r": self._resistors.add,
             "v": self._take_sources,
         }
 
-    def add(self, group: CardGroup) -> None:
-        """Take a group of cards."""
-        self._hashes.append(np.array(list(map(hash, group.names)), np.int64))
-        taker = self._takers.get(group.letter)
+    def add(self, cards: CardColumns, nets: IntArray) -> None:
+        """Take some cards and their nets."""
+        taker = self._takers.get(cards.letter)
         if taker is None:
-            self._others.setdefault(group.letter, []).extend(group.numbers)
+            self._others.setdefault(cards.letter, []).extend(cards.numbers.tolist())
         else:
-            taker(group)
+            taker(cards, nets)
 
-    def _take_transistors(self, group: CardGroup) -> None:
-        self._transistors.add(group, self._nets.columns(group))
+    def _take_sources(self, cards: CardColumns, nets: IntArray) -> None:
+        plus, minus = nets.tolist()
+        self._sources += zip(cards.numbers.tolist(), plus, minus, strict=True)
 
-    def _take_sources(self, group: CardGroup) -> None:
-        self._nets.columns(group)
-        self._sources += group.numbers
+    def _take_calls(self, cards: CardColumns, nets: IntArray) -> None:
+        words, targets = _distinct(cards.targets)
+        names = list(map(_name, self._netlist.cards.words.some(words)))
+        kinds = [self._classifier.call_kind(name, len(nets), cards.values.keys()) for name in names]
+        for kind in dict.fromkeys(kinds):
+            rows = np.flatnonzero(np.array([k == kind for k in kinds])[targets])
+            some, wires = _selected(cards, rows), nets[:, rows]
+            if kind == "transistor":
+                self._take_wrapped(some, wires)
+            elif kind == "instance":
+                self._calls += self._made(some, [names[i] for i in targets[rows].tolist()], wires)
+            else:
+                self._others.setdefault("x", []).extend(some.numbers.tolist())
 
-    def _take_calls(self, group: CardGroup) -> None:
-        nets = self._nets.columns(group)
-        kinds = {
-            target: self._classifier.call_kind(_name(target), len(nets), group.parameters.keys())
-            for target in dict.fromkeys(group.targets)
-        }
-        rows = [row for row, target in enumerate(group.targets) if kinds[target] == "transistor"]
-        if rows:
-            self._take_wrapped(_selected(group, rows), nets[:, rows])
-        for row, target in enumerate(group.targets):
-            if kinds[target] == "instance":
-                self._calls.append(_call(group, row, nets))
-            elif kinds[target] == "unknown":
-                self._others.setdefault("x", []).append(group.numbers[row])
+    def _made(self, cards: CardColumns, names: Iterable[str], nets: IntArray) -> Iterator[Call]:
+        """Give the calls some cards are."""
+        text = self._netlist.cards.values.text
+        columns = [list(map(text, numbers.tolist())) for numbers in cards.values.values()]
+        keys, count = tuple(cards.values), len(cards.numbers)
+        parameters = (
+            [dict(zip(keys, row, strict=True)) for row in zip(*columns, strict=True)]
+            if keys
+            else [{}] * count
+        )
+        wires = zip(*nets.tolist(), strict=True) if len(nets) else [()] * count
+        return map(Call, cards.numbers.tolist(), names, wires, parameters)
 
-    def _take_wrapped(self, group: CardGroup, nets: IntArray) -> None:
+    def _take_wrapped(self, cards: CardColumns, nets: IntArray) -> None:
         if len(nets) != 4:
-            for number in group.numbers[:MOST]:
+            for number in cards.numbers[:MOST].tolist():
                 self._mistakes.add(_wrong_pins(self._netlist.card(number)))
             return
-        self._transistors.add(group, nets)
+        self._transistors.add(cards, nets)
 
-    def outline(self) -> Outline:
+    def outline(self, words: IntArray, firsts: IntArray) -> Outline:
         """Return the finished outline."""
         rows = (self._transistors.rows(), self._capacitors.rows(), self._resistors.rows())
-        calls = tuple(sorted(self._calls))
+        calls = tuple(sorted(self._calls, key=lambda call: call.card))
         return Outline(
             subcircuit=self._subcircuit,
-            net_keys=tuple(self._nets.ids),
-            net_firsts=self._nets.firsts(),
+            net_words=words,
+            net_firsts=firsts,
             transistors=rows[0],
             capacitors=rows[1],
             resistors=rows[2],
             calls=calls,
-            sources=tuple(self._sources),
-            others={letter: tuple(cards) for letter, cards in self._others.items()},
+            sources=tuple(sorted(self._sources)),
+            others={letter: tuple(sorted(cards)) for letter, cards in self._others.items()},
             names_used=frozenset(self._names_used(rows, calls)),
             repeated=self._repeated(),
         )
@@ -340,8 +333,7 @@ class _Body:
         return names
 
     def _repeated(self) -> tuple[str, ...]:
-        hashes = np.concatenate(self._hashes)
-        if len(np.unique(hashes)) == len(hashes):
+        if not self._netlist.cards.may_repeat(self._subcircuit.name.lower()):
             return ()
         counts = Counter(self._netlist.card_name(n).lower() for n in self._subcircuit.cards)
         return tuple(name for name, count in counts.items() if count > 1)
@@ -355,26 +347,14 @@ def _wrong_pins(card: Card) -> ElaborationError:
     return ElaborationError(message, code="pin-count", span=card.span)
 
 
-def _call(group: CardGroup, row: int, nets: IntArray) -> Call:
-    parameters = {name: _text(column[row]) for name, column in group.parameters.items()}
-    local = tuple(nets[:, row].tolist())
-    return Call(group.numbers[row], _name(group.targets[row]), local, parameters)
-
-
-def _selected(group: CardGroup, rows: Sequence[int]) -> CardGroup:
-    """Return some rows of a group."""
-
-    def pick(column: Sequence[bytes]) -> list[bytes]:
-        return [column[row] for row in rows]
-
-    return type(group)(
-        letter=group.letter,
-        numbers=[group.numbers[row] for row in rows],
-        names=pick(group.names),
-        nodes=[pick(column) for column in group.nodes],
-        targets=pick(group.targets),
-        values=(),
-        parameters={name: pick(column) for name, column in group.parameters.items()},
+def _selected(cards: CardColumns, rows: NDArray[np.intp]) -> CardColumns:
+    """Return some of the cards."""
+    return replace(
+        cards,
+        numbers=cards.numbers[rows],
+        nodes=cards.nodes[:, rows],
+        targets=cards.targets[rows],
+        values={name: column[rows] for name, column in cards.values.items()},
     )
 
 

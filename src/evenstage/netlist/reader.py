@@ -7,8 +7,9 @@ from contextlib import suppress
 from typing import TYPE_CHECKING, Final
 
 from evenstage.errors import ElaborationError, NetlistError, Notice
+from evenstage.netlist.blocks import Blocks
 from evenstage.netlist.branches import Branches
-from evenstage.netlist.canonical import BOM, canonical
+from evenstage.netlist.canonical import BOM
 from evenstage.netlist.cards import CardTable, parameter, plain_text
 from evenstage.netlist.complaints import foreign_card
 from evenstage.netlist.conditions import holds
@@ -29,8 +30,8 @@ if TYPE_CHECKING:
     from evenstage.netlist.netlist import Parameter
     from evenstage.netlist.statement import Mark
 
-    #: Matches a card of one shape up to the next card; and the number of the shape.
-    _Skimmer = tuple[Callable[[bytes, int], re.Match[bytes] | None], int]
+    #: Matches a card of one shape up to the next card; the number of the shape; what takes words.
+    _Learned = tuple[Callable[[bytes, int], re.Match[bytes] | None], int, list[tuple[bytes, ...]]]
 
 #: A sequence of terminals is learned when it is met for this time: an expression takes as long to
 #: compile as some fifty cards take to parse.
@@ -41,11 +42,16 @@ _ELEMENTS: Final = frozenset({"transistor", "call", "passive", "source", "elemen
 
 
 class Unit:
-    """One file: its bytes and its canonical text."""
+    """One file: its bytes, and its canonical text in blocks."""
 
-    def __init__(self, source: SourceText, start: int = 0) -> None:
+    def __init__(self, source: SourceText) -> None:
         self.source = source
-        self.text = canonical(source.data, start)
+        self.blocks = Blocks(source)
+
+    @property
+    def text(self) -> bytes:
+        """The canonical text of the whole file; made for few files."""
+        return self.blocks.whole
 
     def span(self, mark: Mark) -> Span:
         """Return the bytes of a word."""
@@ -59,7 +65,7 @@ class Reader:
         self._table = CardTable()
         self._scopes = Scopes()
         self._includes = Includes()
-        self._learned: list[list[_Skimmer]] = [[] for _ in range(256)]
+        self._learned: list[list[_Learned]] = [[] for _ in range(256)]
         self._met: dict[tuple[str, ...], int] = {}
         self._models: dict[str, tuple[str, str, tuple[Parameter, ...], Span]] = {}
         self._globals: dict[str, str] = {}
@@ -80,9 +86,9 @@ class Reader:
         self._includes.add(source)
         check_text(source)
         start = self._after_title(source)
-        unit = Unit(source, start)
+        unit = Unit(source)
         with self._includes.entered(source, None, None):
-            self._read_range(unit, start, len(unit.text))
+            self._read_range(unit, start, len(source.data))
 
     def _after_title(self, source: SourceText) -> int:
         """Return where the first line after the title begins; 0 if there is no title."""
@@ -105,46 +111,73 @@ class Reader:
         """Read the cards of part of a file, up to its ``.end``."""
         depth, conditions = self._scopes.depth, self._branches.depth
         self._begin_segment(unit)
-        text, table, learned = unit.text, self._table, self._learned
-        skipped = _SKIP.match(text, position)
-        assert skipped is not None
-        position = skipped.end()
         while position < end:
-            shapes = learned[text[position]]
-            for rank, (skim, number) in enumerate(shapes):
-                match = skim(text, position)
-                if match is not None:
-                    table.append(position, number)
-                    position = match.end()
+            position = self._read_block(unit, position, end)
+            self._table.store()
+        self._branches.check_closed(conditions)
+        self._scopes.check_closed(depth)
+        self._scopes.check_not_below(depth, unit.source)
+
+    def _read_block(self, unit: Unit, position: int, end: int) -> int:
+        """Read the cards of a block from a position on; return where the next block begins."""
+        base, text = unit.blocks.at(position)
+        text = text[: end - base]
+        beyond = base + len(text)
+        skipped = _SKIP.match(text, position - base)
+        assert skipped is not None
+        position = skipped.end() + base
+        while position < beyond:
+            shapes = self._learned[text[position - base]]
+            for rank, shape in enumerate(shapes):
+                after = self._read_run(shape, text, base, position)
+                if after > position:
+                    position = after
                     if rank:
                         _promote(shapes, rank)
                     break
             else:
                 position = self._read_card(unit, position, end)
-        self._branches.check_closed(conditions)
-        self._scopes.check_closed(depth)
-        self._scopes.check_not_below(depth, unit.source)
+        return position
+
+    def _read_run(self, shape: _Learned, text: bytes, base: int, position: int) -> int:
+        """Read cards of one shape as long as they follow each other; return what comes next."""
+        match, number, rows = shape
+        found = match(text, position - base)
+        if found is None:
+            return position
+        starts = []
+        while found is not None:
+            starts.append(position)
+            rows.append(found.groups())
+            following = found.end()
+            position = base + following
+            found = match(text, following)
+        self._table.extend(starts, number)
+        return position
 
     def _begin_segment(self, unit: Unit) -> None:
-        self._table.begin_segment(unit.source, unit.text, self._scopes.current)
+        self._table.begin_segment(unit.blocks, self._scopes.current)
 
     def _read_card(self, unit: Unit, position: int, end: int) -> int:
         """Read one card through the grammar; return where the next one begins."""
-        text = unit.text
-        line_end = text.find(b"\n", position)
+        base, text = unit.blocks.at(position)
+        line_end = text.find(b"\n", position - base)
         if line_end < 0:
             line_end = len(text)
-        card_end = position + len(text[position:line_end].rstrip(_BLANKS))
+        card_end = position + len(text[position - base : line_end].rstrip(_BLANKS))
+        line_end += base
         block = _block_end(unit, position)
         if block is not None:
-            self._note_unknown(Span(unit.source, position, _word_end(text, position)))
+            self._note_unknown(Span(unit.source, position, _word_end(unit.source.data, position)))
             following = block
         else:
             statement = parse_statement(unit.source, position, card_end)
             following = self._take(unit, statement, line_end, end)
-        skipped = _SKIP.match(text, following)
+        if following >= base + len(text):
+            return following
+        skipped = _SKIP.match(text, following - base)
         assert skipped is not None
-        return skipped.end()
+        return base + skipped.end()
 
     def _take(self, unit: Unit, statement: Statement, line_end: int, end: int) -> int:
         """Do what a card says; return where reading goes on."""
@@ -164,20 +197,29 @@ class Reader:
         return line_end
 
     def _take_element(self, unit: Unit, statement: Statement) -> None:
-        letter = chr(unit.text[statement.marks[0].start])
+        block = unit.blocks.at(statement.marks[0].start)
+        letter = chr(block.text[statement.marks[0].start - block.start])
         form = (
             letter,
             *(mark.terminal for mark in statement.marks),
             *(p.name for p in _pairs(unit, statement.marks)),
         )
         self._met[form] = self._met.get(form, 0) + 1
-        shape = learn(statement, unit.text) if self._met[form] == _LEARNED_AT else None
+        shape = (
+            learn(statement.moved(-block.start), block.text)
+            if self._met[form] == _LEARNED_AT
+            else None
+        )
         if shape is None:
             self._table.append_odd(statement)
             return
         number = self._table.add_shape(shape)
-        self._learned[ord(shape.letter)].append((shape.skim.match, number))
-        self._table.append(statement.marks[0].start, number)
+        found = shape.groups.match(block.text, statement.marks[0].start - block.start)
+        assert found is not None
+        rows = self._table.rows(number)
+        rows.append(found.groups())
+        self._learned[ord(shape.letter)].append((shape.groups.match, number, rows))
+        self._table.extend((statement.marks[0].start,), number)
 
     # Dot cards.
 
@@ -197,7 +239,7 @@ class Reader:
         card = Span(unit.source, marks[0].start, marks[-1].end)
         name = unit.span(marks[1]) if len(marks) > 1 else None
         after = line_end + (2 if unit.source.data[line_end : line_end + 2] == b"\r\n" else 1)
-        self._scopes.close(card, name, min(after, len(unit.text)), unit.text, len(self._table))
+        self._scopes.close(card, name, min(after, len(unit.source.data)), len(self._table))
         self._begin_segment(unit)
 
     def _take_assignments(self, unit: Unit, statement: Statement) -> None:
@@ -264,7 +306,7 @@ class Reader:
         with self._includes.entered(source, section, name):
             check_text(source)
             included = self._includes.unit(source, Unit)
-            places = range(len(included.text))
+            places = range(len(source.data))
             if section is not None:
                 places = section_range(source, included.text, section, wanted=True)
             self._read_range(included, places.start, places.stop)
@@ -275,6 +317,8 @@ class Reader:
     def finish(self) -> Netlist:
         """Return what was read."""
         top = self._scopes.finish(len(self._table))
+        ports = (port for one in self._scopes.subcircuits.values() for port in one.ports)
+        self._table.finish(("0", *self._globals.values(), *ports))
         scope = Scope(assignments=top.assignments, functions=self._functions)
         models = {
             key: ModelCard(name, kind, _values(parameters, scope), span)
@@ -329,7 +373,7 @@ def check_text(source: SourceText) -> None:
         raise NetlistError(f"'{source.label}' is not a text file", code="not-text")
 
 
-def _promote(shapes: list[_Skimmer], rank: int) -> None:
+def _promote(shapes: list[_Learned], rank: int) -> None:
     """Move a shape one place forward, so that the most used are tried first."""
     shapes[rank - 1], shapes[rank] = shapes[rank], shapes[rank - 1]
 
@@ -353,7 +397,7 @@ def _calls_defined(statement: Statement, source: SourceText) -> bool:
 
 def _block_end(unit: Unit, position: int) -> int | None:
     """Return where a block in another language ends, if one begins here."""
-    if unit.text[position] != ord("."):
+    if unit.source.data[position] != ord("."):
         return None
     for name in ("CONTROL", "DATA", "ALTER"):
         pattern = re.compile(terminal(name).encode(ENCODING), re.IGNORECASE)

@@ -7,6 +7,7 @@ from itertools import chain, pairwise
 from typing import TYPE_CHECKING
 
 from evenstage.errors import NetlistError, Notice
+from evenstage.netlist.canonical import canonical
 from evenstage.netlist.netlist import Subcircuit
 from evenstage.source import Span
 
@@ -63,7 +64,7 @@ class Scopes:
     def __init__(self) -> None:
         self._stack = [_Open(None)]
         self._first = 0
-        self._texts: dict[str, bytes] = {}
+        self._bodies: dict[str, tuple[SourceText, int, int]] = {}
         self.subcircuits: dict[str, Subcircuit] = {}
         self.notices: list[Notice] = []
 
@@ -119,9 +120,7 @@ class Scopes:
         start = line_start(header.source, header.start)
         self._stack.append(_Open(name, names, defaults, header, start))
 
-    def close(
-        self, card: Span, end_name: Span | None, line_end: int, text: bytes, cards: int
-    ) -> None:
+    def close(self, card: Span, end_name: Span | None, line_end: int, cards: int) -> None:
         """End the innermost definition.
 
         Parameters
@@ -132,8 +131,6 @@ class Scopes:
             The name on it.
         line_end : int
             Where the line after it begins.
-        text : bytes
-            Canonical text of the file.
         cards : int
             How many element cards have been read.
 
@@ -155,27 +152,26 @@ class Scopes:
         self._cut(cards)
         self._stack.pop()
         body = Span(card.source, opened.body_start, line_end)
-        self._define(
-            opened.closed(body, end_name), b" ".join(text[opened.body_start : card.start].split())
-        )
+        place = (card.source, opened.body_start, card.start)
+        self._define(opened.closed(body, end_name), place)
 
-    def _define(self, subcircuit: Subcircuit, text: bytes) -> None:
+    def _define(self, subcircuit: Subcircuit, place: tuple[SourceText, int, int]) -> None:
         """Add a definition; a later one of the same name replaces an earlier one."""
         key = subcircuit.name.lower()
         earlier = self.subcircuits.get(key)
         if earlier is not None:
-            if self._texts[key] == text:
+            if _words(*self._bodies[key]) == _words(*place):
                 return
             assert earlier.name_span is not None
             assert subcircuit.name_span is not None
-            place = subcircuit.name_span.place
+            where = subcircuit.name_span.place
             message = (
                 f"'{subcircuit.name}' was defined otherwise at {earlier.name_span.place}; "
                 "the later definition counts"
             )
-            self.notices.append(Notice("duplicate-subcircuit", message, place, (subcircuit.name,)))
+            self.notices.append(Notice("duplicate-subcircuit", message, where, (subcircuit.name,)))
         self.subcircuits[key] = subcircuit
-        self._texts[key] = text
+        self._bodies[key] = place
 
     def check_closed(self, depth: int) -> None:
         """Refuse definitions still open beyond a depth, at the end of a file.
@@ -202,6 +198,11 @@ class Scopes:
         """Return the top level."""
         self._cut(cards)
         return self._stack[0].closed(None, None)
+
+
+def _words(source: SourceText, start: int, end: int) -> list[bytes]:
+    """Return the words of some cards."""
+    return canonical(source.data[start:end]).split()
 
 
 def _begins(opened: _Open) -> str:

@@ -28,6 +28,10 @@ class Statement(NamedTuple):
     rule: str
     marks: tuple[Mark, ...]
 
+    def moved(self, by: int) -> Statement:
+        """Return the card as if it stood elsewhere."""
+        return Statement(self.rule, tuple(Mark(t, a + by, b + by) for t, a, b in self.marks))
+
 
 def parse_statement(source: SourceText, start: int, end: int) -> Statement:
     """Read one card with its continuation lines.

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from evenstage.errors import ElaborationError
 from evenstage.netlist.wording import counted, listed, nearest
 
@@ -74,7 +76,7 @@ def _named(netlist: Netlist, wanted: str) -> str:
 
 
 def _has_devices(netlist: Netlist, subcircuit: Subcircuit) -> bool:
-    return any(group.letter in "mx" for group in netlist.card_groups(subcircuit.cards))
+    return any(cards.letter in "mx" for cards in netlist.cards.columns(subcircuit.cards))
 
 
 def _uncalled(netlist: Netlist) -> list[Subcircuit]:
@@ -82,10 +84,11 @@ def _uncalled(netlist: Netlist) -> list[Subcircuit]:
     called: set[str] = set()
     filled: set[str] = set()
     for key, subcircuit in netlist.subcircuits.items():
-        for group in netlist.card_groups(subcircuit.cards):
-            if group.letter == "x":
-                called |= {_name(target) for target in set(group.targets)}
-            if group.letter in "mx":
+        for cards in netlist.cards.columns(subcircuit.cards):
+            if cards.letter == "x":
+                words = netlist.cards.words.some(np.unique(cards.targets))
+                called |= set(map(_name, words))
+            if cards.letter in "mx":
                 filled.add(key)
     uncalled = [key for key in netlist.subcircuits if key not in called]
     keys = [key for key in uncalled if key in filled] or uncalled

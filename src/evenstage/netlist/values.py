@@ -67,14 +67,30 @@ def parse_value(text: str) -> Value:
     >>> parse_value("0.18u").number, parse_value("'2*3'").formula.value({}.__getitem__)
     (1.8e-07, 6.0)
     """
-    plain = text
-    if _QUOTES.get(text[:1], "") == text[-1:] and len(text) > 1:
-        plain = text[1:-1].strip()
+    plain = _unquoted(text)
+    return plain_value(text) or Value(math.nan, Style.COMPUTED, parse_formula(plain))
+
+
+def plain_value(text: str) -> Value | None:
+    """Return the value of a number; None for an expression.
+
+    Raises
+    ------
+    FormulaError
+        If the number is too large.
+    """
+    plain = _unquoted(text)
     number = _NUMBER.fullmatch(plain)
-    if number is not None:
-        scaled = number["letters"].lower().startswith(_SCALES)
-        return Value(_number(plain), Style.SUFFIXED if scaled else Style.BARE)
-    return Value(float("nan"), Style.COMPUTED, parse_formula(plain))
+    if number is None:
+        return None
+    scaled = number["letters"].lower().startswith(_SCALES)
+    return Value(_number(plain), Style.SUFFIXED if scaled else Style.BARE)
+
+
+def _unquoted(text: str) -> str:
+    if _QUOTES.get(text[:1], "") == text[-1:] and len(text) > 1:
+        return text[1:-1].strip()
+    return text
 
 
 def _number(text: str) -> float:

@@ -1,0 +1,163 @@
+"""The words of cards as numbers, stored while the text is read so that no card is read twice.
+
+A net or a model is a number among all words of the netlist, a value a number among all values. One
+transistor takes some fifty bytes like this; its own name stays in the text.
+"""
+
+from __future__ import annotations
+
+import math
+import re
+from array import array
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+
+from evenstage.netlist.expression import FormulaError
+from evenstage.netlist.values import Style, plain_value
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Iterable, Iterator, Sequence
+
+    from numpy.typing import NDArray
+
+    from evenstage.netlist.devices import FloatArray, IntArray
+
+    Styles = NDArray[np.int8]
+
+#: Distinct texts remembered; random values would otherwise fill the memory.
+_REMEMBERED: Final = 1 << 17
+#: From so many values on that are mostly distinct, all are converted together.
+_MANY: Final = 64
+_POWERS: Final = {b"f": b"e-15", b"p": b"e-12", b"n": b"e-9", b"u": b"e-6", b"k": b"e3"}
+_DECIMAL: Final = rb"[+-]?(?:[0-9]++\.?+[0-9]*+|\.[0-9]++)"
+_BARE = re.compile(rb"(?:" + _DECIMAL + rb"(?:e[+-]?[0-9]++)?+\n)++")
+_SCALED = {letter: re.compile(rb"(?:" + _DECIMAL + letter + rb"\n)++") for letter in _POWERS}
+
+
+class Words(dict[bytes, int]):
+    """Numbers for words, in the order in which they are first asked for."""
+
+    def __missing__(self, word: bytes) -> int:
+        number = self[word] = len(self)
+        return number
+
+
+class WordList:
+    """The words of a netlist by their numbers, in lower case.
+
+    Parameters
+    ----------
+    words : iterable of bytes
+        In the order of their numbers.
+    """
+
+    def __init__(self, words: Iterable[bytes]) -> None:
+        kept = list(words)
+        self._text = b"".join(kept)
+        ends = np.cumsum(np.fromiter(map(len, kept), np.int64, len(kept)))
+        self._starts = np.concatenate([[0], ends]).astype(np.int64)
+
+    def __len__(self) -> int:
+        return len(self._starts) - 1
+
+    def __getitem__(self, number: int) -> bytes:
+        """Return a word."""
+        return self._text[self._starts[number] : self._starts[number + 1]]
+
+    def some(self, numbers: IntArray) -> Iterator[bytes]:
+        """Give some words."""
+        starts, ends = self._starts[numbers].tolist(), self._starts[numbers + 1].tolist()
+        return (self._text[start:end] for start, end in zip(starts, ends, strict=True))
+
+
+class Values:
+    """All values of a netlist by their numbers: what each is worth and how it is spelt."""
+
+    def __init__(self) -> None:
+        self._numbers = array("d")
+        self._styles = array("b")
+        self._texts: dict[int, str] = {}
+        self._met = _Memo(self.add)
+        self._kept = _Memo(self._add_kept)
+
+    def add(self, text: bytes) -> int:
+        """Take a value; return its number."""
+        number = len(self._numbers)
+        written = text.decode("utf-8", "surrogateescape")
+        try:
+            value = plain_value(written)
+        except FormulaError:
+            value = None  # it is refused where it is used
+        self._numbers.append(math.nan if value is None else value.number)
+        self._styles.append(Style.COMPUTED if value is None else value.style)
+        if value is None:
+            self._texts[number] = written
+        return number
+
+    def _add_kept(self, text: bytes) -> int:
+        number = self.add(text)
+        self._texts.setdefault(number, text.decode("utf-8", "surrogateescape"))
+        return number
+
+    def numbers_of(self, texts: Sequence[bytes]) -> Iterable[int]:
+        """Return the numbers of some values; the text is kept of expressions alone."""
+        if len(texts) >= _MANY and 2 * len(set(texts)) > len(texts):
+            numbers = self._add_all(texts)
+            if numbers is not None:
+                return numbers
+        return map(self._met.__getitem__, texts)
+
+    def kept(self, texts: Iterable[bytes]) -> Iterable[int]:
+        """Return the numbers of some values whose texts are kept."""
+        return map(self._kept.__getitem__, texts)
+
+    def _add_all(self, texts: Sequence[bytes]) -> range | None:
+        """Take values that are spelt alike, all at once; None if they are not."""
+        lines = b"\n".join(texts) + b"\n"
+        letter = texts[0][-1:]
+        power = _POWERS.get(letter)
+        pattern = _BARE if power is None else _SCALED[letter]
+        if pattern.fullmatch(lines) is None:
+            return None
+        if power is not None:
+            lines = lines.replace(letter, power)
+        numbers = array("d", map(float, lines.split()))
+        if math.inf in numbers or -math.inf in numbers:
+            return None
+        first = len(self._numbers)
+        self._numbers += numbers
+        style = Style.BARE if power is None else Style.SUFFIXED
+        self._styles += array("b", [style]) * len(numbers)
+        return range(first, len(self._numbers))
+
+    def finish(self) -> None:
+        """Forget what only reading needs."""
+        self._met.clear()
+        self._kept.clear()
+
+    def text(self, number: int) -> str:
+        """Return the text of a value, if it was kept."""
+        return self._texts[number]
+
+    def worth(self, numbers: IntArray) -> tuple[FloatArray, Styles]:
+        """Return what values are worth (NaN for expressions) and how they are spelt."""
+        if len(numbers) == 0:
+            return np.zeros(0), np.zeros(0, np.int8)
+        values = np.frombuffer(self._numbers, np.float64)
+        styles = np.frombuffer(self._styles, np.int8)
+        return values[numbers], styles[numbers]
+
+
+class _Memo(dict[bytes, int]):
+    """Numbers of the texts met lately."""
+
+    def __init__(self, add: Callable[[bytes], int]) -> None:
+        super().__init__()
+        self._add = add
+
+    def __missing__(self, text: bytes) -> int:
+        if len(self) > _REMEMBERED:
+            self.clear()
+        number = self[text] = self._add(text)
+        return number

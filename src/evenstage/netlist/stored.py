@@ -1,0 +1,122 @@
+"""Cards of one shape in columns of numbers, filled row by row while the text is read."""
+
+from __future__ import annotations
+
+import re
+from array import array
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+
+from evenstage.netlist.netlist import CardColumns
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator, Sequence
+
+    from evenstage.netlist.devices import IntArray
+    from evenstage.netlist.intake import Values, Words
+    from evenstage.netlist.shapes import Shape
+
+_ROLES: Final = ("node", "nodes", "target", "argument", "value")
+#: Makes every blank of the grammar but the line feed one that ``bytes.split`` knows.
+_SPACES: Final = bytes(32 if (b < 33 and b != 10) or b == 44 else b for b in range(256))
+_NUMERIC = re.compile(rb"[+-]?\.?[0-9]|['\"{(]")
+
+
+class ShapeColumns:
+    """All cards of one shape.
+
+    Parameters
+    ----------
+    shape : Shape
+        How they are read.
+    words, values : Words and Values
+        Those of the netlist.
+    """
+
+    def __init__(self, shape: Shape, words: Words, values: Values) -> None:
+        self.rows: list[tuple[bytes, ...]] = []
+        self.hashes = array("q")
+        self._letter = shape.letter
+        self._words = words
+        self._values = values
+        places = {role: [i for i, r in enumerate(shape.roles) if r == role] for role in _ROLES}
+        self._node_places = places["node"]
+        self._target_place = next(iter(places["target"]), None)
+        self._run_place = next(iter(places["nodes"]), None)
+        self._arguments = places["argument"]
+        self._value_places = dict(zip(shape.keys, places["value"], strict=True))
+        self._nodes = [array("i") for _ in self._node_places]
+        self._targets = array("i")
+        self._run = array("i")
+        self._run_ends = array("i", [0])
+        self._columns = {name: array("i") for name in self._value_places}
+        if self._arguments:
+            self._columns[""] = array("i")
+
+    def store(self) -> None:
+        """Turn the rows that wait into numbers."""
+        columns = list(zip(*self.rows, strict=True))
+        self.rows.clear()
+        number = self._words.__getitem__
+        self.hashes.extend(map(hash, columns[0]))
+        for column, place in zip(self._nodes, self._node_places, strict=True):
+            column.extend(map(number, columns[place]))
+        if self._target_place is not None:
+            self._targets.extend(map(number, columns[self._target_place]))
+        if self._run_place is not None:
+            self._store_run(columns[self._run_place])
+        for name, place in self._value_places.items():
+            self._store_values(name, columns[place])
+        if self._arguments:
+            self._store_values("", main_argument([columns[i] for i in self._arguments]))
+
+    def _store_values(self, name: str, texts: Sequence[bytes]) -> None:
+        take = self._values.kept if self._letter == "x" else self._values.numbers_of
+        self._columns[name].extend(take(texts))
+
+    def _store_run(self, runs: Sequence[bytes]) -> None:
+        number, end = self._words.__getitem__, self._run_ends[-1]
+        for run in b"\n".join(runs).translate(_SPACES).split(b"\n"):
+            words = run.split()
+            self._run.extend(map(number, words))
+            end += len(words)
+            self._run_ends.append(end)
+
+    def columns(self, numbers: IntArray, first: int, last: int) -> Iterator[CardColumns]:
+        """Give the rows ``[first, last)``, which are the cards of some numbers."""
+        values = {name: _view(column)[first:last] for name, column in self._columns.items()}
+        targets = _view(self._targets)[first:last]
+        if self._run_place is None:
+            nodes = np.stack([_view(column)[first:last] for column in self._nodes])
+            yield self._made(numbers, nodes, targets, values)
+            return
+        ends = _view(self._run_ends)[first : last + 1]
+        lengths = np.diff(ends)
+        for length in np.unique(lengths).tolist():
+            rows = np.flatnonzero(lengths == length)
+            nodes = _view(self._run)[ends[rows] + np.arange(length)[:, None]]
+            named = targets[rows] if len(targets) else nodes[-1]
+            chosen = {name: column[rows] for name, column in values.items()}
+            yield self._made(numbers[rows], nodes if len(targets) else nodes[:-1], named, chosen)
+
+    def _made(
+        self, numbers: IntArray, nodes: IntArray, targets: IntArray, values: dict[str, IntArray]
+    ) -> CardColumns:
+        return CardColumns(
+            letter=self._letter, numbers=numbers, nodes=nodes, targets=targets, values=values
+        )
+
+
+def _view(column: array[int]) -> IntArray:
+    return np.frombuffer(column, np.int32)
+
+
+def main_argument(arguments: list[tuple[bytes, ...]]) -> Sequence[bytes]:
+    """Return the values of R and C cards from their unnamed arguments (value, model)."""
+    if len(arguments) == 1:
+        return arguments[0]
+    return [
+        next((text for text in row if _NUMERIC.match(text)), row[0])
+        for row in zip(*arguments, strict=True)
+    ]
