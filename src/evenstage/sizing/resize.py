@@ -10,7 +10,7 @@ import numpy as np
 from evenstage.brief import Brief
 from evenstage.errors import Notice
 from evenstage.netlist.handles import width_handles
-from evenstage.netlist.widths import plan_widths
+from evenstage.netlist.widths import WidthPlan
 from evenstage.sizing.changes import Writing
 from evenstage.sizing.copies import shared_sizes
 from evenstage.sizing.engine import Engine
@@ -27,7 +27,6 @@ from evenstage.timing.analyse import report
 
 if TYPE_CHECKING:
     from evenstage.netlist.handles import WidthHandles
-    from evenstage.netlist.widths import WidthPlan
     from evenstage.sizing.partition import Partition
     from evenstage.timing.results import Analysis
     from evenstage.timing.sweep import Timing
@@ -97,7 +96,7 @@ class _Job:
         plan = writing.plan(drawn.slot_width)
         written = rounding.drawn_at(writing.width(plan))
         if not worth_writing(self.timing, written, rounding.engine):
-            plan = plan_widths(rounding.handles, ())
+            plan = WidthPlan(edits=(), written=(), refused=plan.refused)
             written = Drawn(rounding.drawn, self.timing, rounding.engine.cost_drawn)
         refuse_broken(written.timing, rounding.engine)
         return self._sizing(writing, plan, written)
