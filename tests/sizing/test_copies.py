@@ -67,3 +67,31 @@ class TestSharedSizes:
         for label in np.unique(found):
             assert len(set((order[found == label] // 4).tolist())) == 1
         assert len(np.unique(found)) == pytest.approx(3)
+
+
+class TestFamilies:
+    """Copies that an earlier run made count with those to come."""
+
+    COPY = "* evenstage: inv -> inv_s1: called by x0\n" + LEAF.replace("inv a", "inv_s1 a")
+
+    def labels(self, factors: dict[str, list[float]], copies: int) -> list[int]:
+        """Return the labels of calls of the leaf and of its copy."""
+        targets = [leaf for leaf, some in factors.items() for _ in some]
+        calls = "\n".join(f"x{k} n{k} n{k + 1} {leaf}" for k, leaf in enumerate(targets))
+        cards = f"{LEAF}{self.COPY}.subckt top n0 n{len(targets)}\n{calls}\n.ends\n"
+        circuit = circuit_of(f"* t\n.global vdd vss\n{cards}")
+        parts = partition(circuit)
+        factor = np.array([f for some in factors.values() for f in some])[parts.of_slot]
+        found: list[int] = shared_sizes(parts, handles_of(circuit, parts), factor, copies).tolist()
+        return found
+
+    def test_what_fits_stays(self) -> None:
+        factors = {"inv": [1.0, 2.0, 3.0], "inv_s1": [1.5, 1.5]}
+        assert self.labels(factors, 3) == [0, 1, 2, 3, 4]
+
+    def test_the_member_with_most_sizes_gives_way(self) -> None:
+        assert self.labels({"inv": [1.0, 2.0, 2.1], "inv_s1": [1.5]}, 2) == [0, 1, 1, 3]
+        assert self.labels({"inv": [1.0, 2.0], "inv_s1": [1.5, 2.5, 1.0]}, 2) == [0, 0, 2, 2, 4]
+
+    def test_a_leaf_that_can_have_no_copy_changes_for_all_its_calls(self) -> None:
+        assert self.labels({"inv": [1.0, 2.0], "inv_s1": [1.5]}, 1) == [0, 0, 2]

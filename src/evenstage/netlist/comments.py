@@ -17,6 +17,8 @@ _LINE_END: Final = re.compile(rb"\r\n|\n|\r")
 _CONTINUATION: Final = re.compile(rb"[ \t]*\+")
 #: A blank line or a comment line, as may stand between a card and its continuation.
 _GAP: Final = re.compile(rb"[ \t]*(?:[*$;]|//|[\r\n]|\Z)")
+#: What stays above a copy of a leaf as long as there is the copy.
+_CALLED_BY: Final = re.compile(rb"[^\r\n]+ -> [^\r\n]*\bcalled by ")
 _CONTROL: Final = re.compile(r"[\x00-\x1f\x7f\x85\u2028\u2029]+")
 
 
@@ -65,6 +67,8 @@ def comment_above(source: SourceText, offset: int, text: str) -> Edit:
     end = card_line(data, offset)
     start, first = end, line_start(data, 0)
     while start > first and data.startswith(MARK, above := line_start(data, start - 1)):
+        if _CALLED_BY.match(data, above, start):
+            break
         start = above
     words = _CONTROL.sub(" ", text).encode("utf-8", "surrogateescape")
     return Edit(Span(source, start, end), MARK + words + line_end(data, offset))

@@ -3,25 +3,27 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Final
 
+from evenstage.netlist.canonical import canonical
 from evenstage.netlist.comments import line_end, line_start
 from evenstage.netlist.edits import Edit, apply_edits
+from evenstage.netlist.families import calling_words
 from evenstage.netlist.respelling import Respelling, edits_of
 from evenstage.source import SourceText, Span
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Sequence
+    from collections.abc import Callable, Iterable, Sequence
 
     from evenstage.netlist.netlist import Netlist, Subcircuit
 
-#: Respellings inside a leaf, by the number of the X card that wants them.
-Wanted = Mapping[int, tuple[Respelling, ...]]
-
 _COPY_ENDING: Final = re.compile(r"_s\d+$")
-_NAMED_CALLERS: Final = 3
+
+
+def wishes_key(changes: Iterable[Respelling]) -> tuple[tuple[int, int, str, str], ...]:
+    """Return what is equal for changes that write the same text."""
+    return tuple(sorted((r.span.start, r.span.end, r.name, r.new) for r in changes))
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,31 +48,6 @@ class LeafCopy:
     changes: tuple[Respelling, ...]
 
 
-def plan_copies(netlist: Netlist, wanted: Mapping[str, Wanted]) -> list[LeafCopy]:
-    """Decide which copies of leaves are made; callers that want the same share one.
-
-    Parameters
-    ----------
-    netlist : Netlist
-        The text.
-    wanted : Mapping
-        By lower-case name of the leaf.
-    """
-    taken = _taken_names(netlist) if wanted else set()
-    copies = []
-    for scope, by_caller in wanted.items():
-        leaf = netlist.subcircuits[scope]
-        for callers in _sharing(by_caller):
-            name = _free_name(leaf.name, taken)
-            copies.append(LeafCopy(leaf, name, callers, by_caller[callers[0]]))
-    return copies
-
-
-def retargetings(netlist: Netlist, copies: Iterable[LeafCopy]) -> list[Respelling]:
-    """Return what makes the X cards call the copies instead of the original."""
-    return [_retargeting(netlist, copy, caller) for copy in copies for caller in copy.callers]
-
-
 def insertions(
     netlist: Netlist, copies: Iterable[LeafCopy], elsewhere: Sequence[Respelling]
 ) -> list[Edit]:
@@ -83,25 +60,13 @@ def insertions(
     copies : iterable of LeafCopy
         What to add.
     elsewhere : sequence of Respelling
-        All other changes; those inside an original are made in its copies too.
+        All other changes that serve everybody; those inside an original are made in its copies too.
     """
     return [_insertion(netlist, copy, elsewhere) for copy in copies]
 
 
-def _sharing(by_caller: Wanted) -> list[tuple[int, ...]]:
-    """Return the callers in groups that want the same, in the order of the text."""
-    groups: dict[tuple[tuple[int, int, str, str], ...], list[int]] = {}
-    for caller in sorted(by_caller):
-        groups.setdefault(wishes_key(by_caller[caller]), []).append(caller)
-    return [tuple(callers) for callers in groups.values()]
-
-
-def wishes_key(changes: Iterable[Respelling]) -> tuple[tuple[int, int, str, str], ...]:
-    """Return what is equal for changes that write the same text."""
-    return tuple(sorted((r.span.start, r.span.end, r.name, r.new) for r in changes))
-
-
-def _taken_names(netlist: Netlist) -> set[str]:
+def taken_names(netlist: Netlist) -> set[str]:
+    """Return the lower-case names that no copy may have."""
     targets = {
         target.decode("utf-8", "surrogateescape")
         for group in netlist.card_groups(range(len(netlist)))
@@ -110,7 +75,7 @@ def _taken_names(netlist: Netlist) -> set[str]:
     return targets | set(netlist.subcircuits) | set(netlist.models)
 
 
-def _free_name(leaf: str, taken: set[str]) -> str:
+def free_name(leaf: str, taken: set[str]) -> str:
     """Return the first free ``<leaf>_s<n>`` and take it; a copy's copy counts on."""
     base = _COPY_ENDING.sub("", leaf)
     base = base if base.lower() in taken else leaf
@@ -121,15 +86,30 @@ def _free_name(leaf: str, taken: set[str]) -> str:
     return f"{base}_s{number}"
 
 
-def _retargeting(netlist: Netlist, copy: LeafCopy, caller: int) -> Respelling:
+def retargeting(
+    netlist: Netlist, caller: int, name: str, changes: Iterable[Respelling]
+) -> Respelling:
+    """Return what makes an X card call another definition.
+
+    Parameters
+    ----------
+    netlist : Netlist
+        The text.
+    caller : int
+        Number of the card.
+    name : str
+        What it will call.
+    changes : iterable of Respelling
+        What that changes for it, for the comment.
+    """
     card = netlist.card(caller)
     assert card.target_span is not None
-    told = [change for change in copy.changes if not change.follows]
+    told = [change for change in changes if not change.follows]
     return Respelling(
         span=card.target_span,
         name="",
         old=card.target,
-        new=copy.name,
+        new=name,
         why="; ".join(dict.fromkeys(change.why for change in told if change.why)),
         detail=f" ({_widths(told)})",
     )
@@ -143,40 +123,67 @@ def _widths(changes: list[Respelling]) -> str:
     return ", ".join(f"{' '.join(cards)} {note}" for note, cards in cards_of.items())
 
 
+def content(leaf: Subcircuit, changes: Iterable[Respelling]) -> bytes:
+    """Return what a leaf says after some changes, whatever its name, blanks and comments.
+
+    Parameters
+    ----------
+    leaf : Subcircuit
+        The leaf.
+    changes : iterable of Respelling
+        Those outside it count for nothing.
+    """
+    text, moved = _cut_out(leaf)
+    names = [span for span in (leaf.name_span, leaf.end_name_span) if span is not None]
+    edits = [Edit(moved(span), b"?") for span in names]
+    edits += [replace(r, span=moved(r.span)).edit for r in _inside(leaf, changes)]
+    return b" ".join(canonical(apply_edits(text, edits)).split())
+
+
+def _cut_out(leaf: Subcircuit) -> tuple[SourceText, Callable[[Span], Span]]:
+    """Return a definition as a text of its own, and what moves spans there."""
+    body, header = leaf.body, leaf.header
+    assert body is not None
+    assert header is not None
+    source, start = body.source, line_start(body.source.data, header.start)
+    text = SourceText(source.path, source.data[start : body.end], source.label)
+    return text, lambda span: Span(text, span.start - start, span.end - start)
+
+
+def _inside(leaf: Subcircuit, changes: Iterable[Respelling]) -> list[Respelling]:
+    body, header = leaf.body, leaf.header
+    assert body is not None
+    assert header is not None
+    start = line_start(body.source.data, header.start)
+    return [
+        r
+        for r in changes
+        if r.span.source.path == body.source.path
+        and start <= r.span.start
+        and r.span.end < body.end
+    ]
+
+
 def _insertion(netlist: Netlist, copy: LeafCopy, elsewhere: Sequence[Respelling]) -> Edit:
     """Return the edit that adds one copy after the original's last line."""
     body, header, name = copy.leaf.body, copy.leaf.header, copy.leaf.name_span
     assert body is not None
     assert header is not None
     assert name is not None
-    source, start = body.source, line_start(body.source.data, header.start)
-    text = SourceText(source.path, source.data[start : body.end], source.label)
-
-    def moved(span: Span) -> Span:
-        return Span(text, span.start - start, span.end - start)
-
-    inside = [
-        r
-        for r in elsewhere
-        if r.span.source.path == source.path and start <= r.span.start and r.span.end < body.end
-    ]
+    source = body.source
+    text, moved = _cut_out(copy.leaf)
     named = Respelling(
         span=name,
         name="",
         old=copy.leaf.name,
         new=copy.name,
-        why=f"called by {_called_by(netlist, copy.callers)}",
+        why=calling_words(netlist, copy.callers),
     )
-    edits = edits_of(replace(r, span=moved(r.span)) for r in (named, *inside, *copy.changes))
+    inside = (*_inside(copy.leaf, elsewhere), *copy.changes)
+    edits = edits_of(replace(r, span=moved(r.span)) for r in (named, *inside))
     if copy.leaf.end_name_span is not None:
         edits.append(Edit(moved(copy.leaf.end_name_span), named.new.encode()))
     copied = apply_edits(text, edits)
     if not copied.endswith((b"\n", b"\r")):
         copied = line_end(source.data, header.start) + copied
     return Edit(Span(source, body.end, body.end), copied)
-
-
-def _called_by(netlist: Netlist, callers: tuple[int, ...]) -> str:
-    names = [netlist.card(caller).name for caller in callers]
-    more = len(names) - _NAMED_CALLERS
-    return ", ".join(names[:_NAMED_CALLERS]) + (f" and {more} more" if more > 0 else "")

@@ -6,15 +6,16 @@ from collections import defaultdict
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
-from evenstage.netlist.copies import insertions, plan_copies, retargetings, wishes_key
+from evenstage.netlist.copies import taken_names
+from evenstage.netlist.placing import Placing
 from evenstage.netlist.respelling import Respelling, edits_of
 from evenstage.source import Span
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Mapping
+    from collections.abc import Mapping, Sequence
 
-    from evenstage.netlist.copies import LeafCopy, Wanted
     from evenstage.netlist.edits import Edit
+    from evenstage.netlist.families import Family
     from evenstage.netlist.ledger import Entry, Key
     from evenstage.netlist.sized_block import SizedBlock
 
@@ -61,16 +62,15 @@ def settle(
     shared = [e.value.respelling for e in entries.values() if e.value.way == "shared"]
     # Calls that agree share one respelling of the default.
     shared += dict.fromkeys(defaults.values())
-    wanted: dict[str, Mapping[int, list[Entry]]] = {}
-    for scope, by_caller in _by_leaf(entries).items():
-        agreed = _agreed(block, scope, by_caller)
-        shared += agreed
-        if not agreed:
-            wanted[scope] = by_caller
-    copies = _copies(block, wanted)
-    shared += retargetings(block.netlist, copies)
+    placings = _placings(block, entries, shared)
+    moves = [move for placing in placings for move in placing.moves()]
+    everywhere = [*shared, *moves]
+    structure = [edit for placing in placings for edit in placing.edits(everywhere)]
+    inside = [change for placing in placings for change in placing.in_place]
+    gone = [edit.span for edit in structure if not edit.text]
+    kept = [r for r in (*everywhere, *inside) if not any(_is_within(r.span, g) for g in gone)]
     # At one place a copy comes before the comment of the card that follows it.
-    return [*insertions(block.netlist, copies, shared), *edits_of(shared)]
+    return [*structure, *edits_of(kept)]
 
 
 def _all_agree(block: SizedBlock, scope: str, wished: Mapping[Key, Respelling]) -> bool:
@@ -93,37 +93,30 @@ def _passed(block: SizedBlock, key: Key, default: Respelling) -> Respelling:
     return replace(default, span=Span(span.source, span.end, span.end))
 
 
-def _by_leaf(entries: Mapping[Key, Entry]) -> dict[str, dict[int, list[Entry]]]:
-    """Return what is wished inside leaves, by leaf and caller."""
-    leaves: dict[str, dict[int, list[Entry]]] = {}
+def _placings(
+    block: SizedBlock, entries: Mapping[Key, Entry], shared: Sequence[Respelling]
+) -> list[Placing]:
+    """Return where the callers of all leaves are placed that want something inside them."""
+    wished = _by_family(block, entries)
+    taken = taken_names(block.netlist) if wished else set()
+    placings = [Placing(block, family, by_caller, shared) for family, by_caller in wished.items()]
+    for placing in placings:
+        placing.place(taken)
+    return placings
+
+
+def _by_family(
+    block: SizedBlock, entries: Mapping[Key, Entry]
+) -> dict[Family, dict[int, list[Entry]]]:
+    """Return what is wished inside leaves, by family and caller."""
+    wished: dict[Family, dict[int, list[Entry]]] = {}
     for key, entry in entries.items():
         if entry.value.way in {"leaf", "detached"} and key.caller is not None:
-            leaves.setdefault(entry.scope, {}).setdefault(key.caller, []).append(entry)
-    return leaves
+            family = block.family(entry.scope)
+            wished.setdefault(family, {}).setdefault(key.caller, []).append(entry)
+    return wished
 
 
-def _agreed(
-    block: SizedBlock, scope: str, by_caller: Mapping[int, list[Entry]]
-) -> list[Respelling]:
-    """Return what is respelled in a leaf itself because all its callers want it, else nothing."""
-    entries = [entry for group in by_caller.values() for entry in group]
-    wishes = {wishes_key(e.value.respelling for e in group) for group in by_caller.values()}
-    everybody = set(by_caller) == set(block.bindings.callers(scope))
-    if any(e.value.way == "detached" for e in entries) or len(wishes) > 1 or not everybody:
-        return []
-    return [entry.value.respelling for entry in next(iter(by_caller.values()))]
-
-
-def _copies(
-    block: SizedBlock, wanted: Mapping[str, Mapping[int, Iterable[Entry]]]
-) -> list[LeafCopy]:
-    respellings: dict[str, Wanted] = {
-        scope: {c: tuple(e.value.respelling for e in group) for c, group in by_caller.items()}
-        for scope, by_caller in wanted.items()
-    }
-    copies = plan_copies(block.netlist, respellings)
-    for scope in wanted:
-        count = sum(copy.leaf.name.lower() == scope for copy in copies)
-        if count > block.copies_per_leaf:
-            raise ValueError(f"{count} copies of {scope}, {block.copies_per_leaf} allowed")
-    return copies
+def _is_within(inner: Span, outer: Span) -> bool:
+    same = inner.source.path == outer.source.path
+    return same and outer.start <= inner.start and inner.end <= outer.end

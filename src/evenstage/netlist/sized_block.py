@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from evenstage.netlist.bindings import Bindings
+from evenstage.netlist.families import Family, find_families
 from evenstage.netlist.fingers import Drawing
 from evenstage.netlist.tracing import Tracer
 
@@ -148,6 +149,14 @@ class SizedBlock:
         outer = self.netlist.subcircuits[scope].body
         bodies = [s.body for s in self.netlist.subcircuits.values()]
         return outer is None or any(_is_inside(body, outer) for body in bodies if body)
+
+    def family(self, scope: str) -> Family:
+        """Return a leaf, given by its lower-case name, with its copies or its original."""
+        return self._families.get(scope) or Family(scope)
+
+    @cached_property
+    def _families(self) -> Mapping[str, Family]:
+        return find_families(self.netlist)
 
     @cached_property
     def bindings(self) -> Bindings:

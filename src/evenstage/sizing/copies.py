@@ -8,13 +8,20 @@ smallest.
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
 from scipy.cluster.hierarchy import fcluster, linkage
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from numpy.typing import NDArray
+
     from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.netlist.families import Family
     from evenstage.netlist.handles import WidthHandles
     from evenstage.sizing.partition import Partition
 
@@ -36,7 +43,8 @@ def shared_sizes(
     factor : FloatArray, shape (slots,)
         Widths relative to today; what does not change calls the leaf as it is.
     copies : int
-        How many sized copies of a leaf there may be; for 0 all calls have one size already.
+        How many sized copies of a leaf there may be, those of earlier runs included; for 0 all
+        calls have one size already.
     """
     label = np.arange(len(parts), dtype=np.int32)
     if not copies:
@@ -45,19 +53,85 @@ def shared_sizes(
     log_size = np.log(factor[first])
     moving = np.zeros(len(parts), bool)
     moving[parts.of_slot[np.abs(factor - 1) > _AS_DRAWN]] = True
-    for members in _calls_by_leaf(parts, handles).values():
-        changing = members[moving[members]]
-        logs = log_size[changing]
-        if len(np.unique(np.rint(logs / _EQUAL))) <= copies:
-            continue
-        cluster = fcluster(linkage(logs[:, None], "ward"), copies, "maxclust")
-        _, leader, of_call = np.unique(cluster, return_index=True, return_inverse=True)
-        label[changing] = changing[leader[of_call]]
+    for leaves in _calls_by_family(parts, handles).values():
+        members = [_Member(calls, moving, log_size, root) for root, calls in leaves]
+        for member, sizes in zip(members, _sizes_allowed(members, copies), strict=True):
+            if sizes < member.sizes:
+                member.tie(label, sizes)
     return label
 
 
-def _calls_by_leaf(parts: Partition, handles: WidthHandles) -> dict[str, IntArray]:
-    """Return the sizes of the calls of each leaf that would have to be copied, ascending."""
+@dataclass(frozen=True)
+class _Member:
+    """The calls of a leaf, or of a sized copy that an earlier run made of it.
+
+    Parameters
+    ----------
+    calls : IntArray
+        Their sizes, ascending.
+    moving : array of bool, shape (sizes,)
+        Whether each size changes.
+    log_size : FloatArray, shape (sizes,)
+        By how much, in the logarithm.
+    is_root : bool
+        Whether it is the leaf itself.
+    """
+
+    calls: IntArray
+    moving: NDArray[np.bool_]
+    log_size: FloatArray
+    is_root: bool
+
+    @cached_property
+    def changing(self) -> IntArray:
+        """The sizes that change."""
+        return self.calls[self.moving[self.calls]]
+
+    @property
+    def some_stay(self) -> bool:
+        """Whether some calls keep their size."""
+        return len(self.changing) < len(self.calls)
+
+    @cached_property
+    def sizes(self) -> int:
+        """How many sizes its calls ask for."""
+        distinct = np.unique(np.rint(self.log_size[self.changing] / _EQUAL))
+        return len(distinct) + self.some_stay
+
+    def copies(self, sizes: int) -> int:
+        """Return how many copies so many sizes need; a leaf all calls agree on is no copy."""
+        agreed = self.is_root and (self.some_stay or sizes == 1)
+        return sizes - 1 if agreed else sizes
+
+    def tie(self, label: IntArray, sizes: int) -> None:
+        """Give the calls so few sizes; of those that stay all change if there is one for all."""
+        if sizes == 1:
+            label[self.calls] = self.calls[0]
+            return
+        logs = self.log_size[self.changing]
+        cluster = fcluster(linkage(logs[:, None], "ward"), sizes - self.some_stay, "maxclust")
+        _, leader, of_call = np.unique(cluster, return_index=True, return_inverse=True)
+        label[self.changing] = self.changing[leader[of_call]]
+
+
+def _sizes_allowed(members: Sequence[_Member], copies: int) -> list[int]:
+    """Return how many sizes each member may have, so that the family keeps to its copies.
+
+    The member with most sizes gives way first. Copies that are there already can all stay.
+    """
+    sizes = [member.sizes for member in members]
+    while sum(m.copies(n) for m, n in zip(members, sizes, strict=True)) > copies and max(sizes) > 1:
+        sizes[sizes.index(max(sizes))] -= 1
+    return sizes
+
+
+def _calls_by_family(
+    parts: Partition, handles: WidthHandles
+) -> dict[Family, list[tuple[bool, IntArray]]]:
+    """Return the sizes of the calls of each leaf that would have to be copied, ascending.
+
+    A leaf and its copies stand together, each with whether it is the leaf itself.
+    """
     found: dict[str, set[int]] = {}
     for slot, size in parts.variable_of.items():
         if slot.caller is None:
@@ -65,4 +139,9 @@ def _calls_by_leaf(parts: Partition, handles: WidthHandles) -> dict[str, IntArra
         if any(origin.way in {"leaf", "detached"} for origin in handles[slot].origins):
             scope = handles.block.netlist.card(slot.card).scope
             found.setdefault(scope, set()).add(size)
-    return {leaf: np.array(sorted(members)) for leaf, members in found.items()}
+    families: dict[Family, list[tuple[bool, IntArray]]] = {}
+    for leaf, members in found.items():
+        family = handles.block.family(leaf)
+        calls = np.array(sorted(members))
+        families.setdefault(family, []).append((leaf == family.root, calls))
+    return families
