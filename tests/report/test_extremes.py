@@ -213,7 +213,7 @@ class Anything:
             after=self.analysis(),
             goal=self.name(),
             bound=self.between(1e-15, 1e-3),
-            bound_on=self.random.choice(["delay", "width"]),
+            bound_on=self.random.choice(["delay", "width", "energy"]),
             gap=self.random.choice([0.0, self.between(1e-9, 1e3)]),
             rounding_loss=self.random.choice([-0.1, 0.0, self.between(1e-9, 1e3)]),
             least_delay=self.time(),

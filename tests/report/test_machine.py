@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 from dataclasses import fields, replace
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, Literal
 
 import pytest
 
@@ -93,9 +93,16 @@ class TestSizingDocument:
         assert all(change.keys() >= CHANGE_KEYS for change in document["changes"])
         assert document["changes"][0]["factor"] == sizing.changes[0].factor
 
-    def test_bound_on_width_is_in_metres(self, sizing: Sizing) -> None:
-        document = sizing_document(replace(sizing, bound_on="width", bound=1.2e-3))
-        assert (document["bound_m"], document["bound_s"]) == (1.2e-3, None)
+    @pytest.mark.parametrize(
+        ("bound_on", "key"), [("delay", "bound_s"), ("width", "bound_m"), ("energy", "bound_f")]
+    )
+    def test_bound_has_its_unit_in_the_key(
+        self, sizing: Sizing, bound_on: Literal["delay", "width", "energy"], key: str
+    ) -> None:
+        document = sizing_document(replace(sizing, bound_on=bound_on, bound=0.5))
+        given = {name: document[name] for name in ("bound_s", "bound_m", "bound_f")}
+        assert {name for name, value in given.items() if value is not None} == {key}
+        assert given[key] == 0.5
 
 
 class TestDifferenceDocument:

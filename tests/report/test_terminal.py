@@ -8,8 +8,10 @@ from typing import TYPE_CHECKING
 
 import pytest
 
+from evenstage.errors import Notice
 from evenstage.report.block_text import CAUTION
 from evenstage.report.terminal import analysis_report, difference_report, sizing_report
+from evenstage.units import engineering
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -135,6 +137,43 @@ class TestSizingReport:
         assert "no sizes within the limits can be narrower in total than 1.213 mm" in text
         assert "the fastest possible would be 152 ps" in text
 
+    def test_bound_on_energy(self, sizing: Sizing) -> None:
+        by_energy = replace(sizing, bound_on="energy", bound=0.99 * sizing.after.switched_cap)
+        text = one_line(sizing_report(by_energy))
+        cap = engineering(by_energy.bound, "F", 4)
+        assert f"no sizes within the limits can switch less capacitance than {cap}" in text
+        assert "1.01 % above" in text
+
+    def test_widths_below_the_bound_say_why(self, sizing: Sizing) -> None:
+        reached = max(end.charged_delay for end in sizing.after.ends)
+        text = one_line(sizing_report(replace(sizing, bound=1.002 * reached)))
+        assert "0.20 % below, as the grid moves the widths of one gate apart" in text
+
+    def test_bound_counts_against_required_times_where_they_differ(self, sizing: Sizing) -> None:
+        early, *others = sizing.after.ends
+        ends = (
+            replace(early, required=100e-12, charged_delay=130e-12),
+            *(replace(end, required=400e-12) for end in others),
+        )
+        after = replace(sizing.after, ends=ends)
+        text = one_line(sizing_report(replace(sizing, after=after, bound=420e-12)))
+        assert "do better than 20.0 ps late; the written ones are 30.0 ps late" in text
+
+    def test_small_gain_is_told_by_itself(self, sizing: Sizing) -> None:
+        before = sizing.before.paths[0]
+        path = replace(sizing.after.paths[0], delay=before.delay * 0.9999)
+        after = replace(sizing.after, paths=(path,))
+        text = one_line(sizing_report(replace(sizing, after=after)))
+        assert "The slowest path falls by 18.9 fs to 189 ps (-0.01 %)" in text
+
+    def test_most_urgent_path_is_not_called_the_slowest(self, sizing: Sizing) -> None:
+        late = replace(sizing.before.ends[-1], delay=1e-9, charged_delay=1e-9)
+        before = replace(sizing.before, ends=(*sizing.before.ends[:-1], late))
+        after = replace(sizing.after, ends=(*sizing.after.ends[:-1], late))
+        text = one_line(sizing_report(replace(sizing, before=before, after=after)))
+        assert "The most urgent path falls" in text
+        assert "slowest" not in text
+
     @pytest.mark.parametrize(
         ("done", "free", "why"),
         [
@@ -209,3 +248,28 @@ class TestDifferenceReport:
         assert "Widths differ on no transistors and agree on 974." in text
         assert "Widths that differ" not in text
         assert "In only one netlist" not in text
+
+
+class TestNotices:
+    def test_names_follow_what_does_not_name_them(self, analysis: Analysis) -> None:
+        notice = Notice("odd", "some cards are odd", names=("xa", *(f"m{i}" for i in range(9))))
+        text = one_line(analysis_report(replace(analysis, notices=(notice,))))
+        assert "odd: some cards are odd: xa, 9 x m0:8" in text
+
+    def test_names_are_not_told_twice(self, analysis: Analysis) -> None:
+        notice = Notice("odd", "the cards 'xa' and another are odd", names=("xa", "xb"))
+        text = one_line(analysis_report(replace(analysis, notices=(notice,))))
+        assert "another are odd An estimate" in text
+
+    def test_can_be_left_out(
+        self, analysis: Analysis, sizing: Sizing, difference: Difference
+    ) -> None:
+        notice = Notice("odd", "something is odd")
+        noticed = replace(analysis, notices=(notice,))
+        both = (True, False)
+        texts = [
+            *(analysis_report(noticed, notices=on) for on in both),
+            *(sizing_report(replace(sizing, before=noticed), notices=on) for on in both),
+            *(difference_report(replace(difference, before=noticed), notices=on) for on in both),
+        ]
+        assert ["something is odd" in text for text in texts] == [*both] * 3

@@ -2,19 +2,16 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Final
+from typing import TYPE_CHECKING
 
 from evenstage.report.block_text import block_lines, end_lines, finished, notice_lines
 from evenstage.report.paper import Paper
 from evenstage.report.path_text import effort_lines, legend, path_lines
-from evenstage.report.words import punctuality, route, section, takes
+from evenstage.report.words import block_name, punctuality, rank, route, section, takes
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
     from evenstage.timing.results import Analysis, Path
-
-#: Arrivals at least this share of the latest are the latest but for rounding.
-_SAME: Final = 1 - 1e-9
 
 
 def analysis_report(
@@ -38,13 +35,13 @@ def analysis_report(
         Lines without trailing blanks, the last one ended too.
     """
     paper = Paper(width, unicode)
-    lines = [*paper.paragraph(f"{analysis.source}, block {analysis.top}"), ""]
+    lines = [*paper.paragraph(block_name(analysis)), ""]
     lines += paper.paragraph(_answer(analysis))
     for number, path in enumerate(analysis.paths, 1):
         lines += _path_section(paper, analysis, number, path)
     if analysis.paths:
         lines += ["", *legend(paper, analysis.yardstick)]
-        title = f"Path ends, {_rank(analysis)} first"
+        title = f"Path ends, {rank(analysis)} first"
         lines += section(title, end_lines(paper, analysis.ends))
     lines += section("The block", block_lines(paper, analysis))
     if notices:
@@ -59,16 +56,10 @@ def _answer(analysis: Analysis) -> str:
     slowest = analysis.paths[0]
     return " ".join(
         [
-            f"The {_rank(analysis)} path, {route(slowest)}, {takes(slowest, analysis.yardstick)}.",
+            f"The {rank(analysis)} path, {route(slowest)}, {takes(slowest, analysis.yardstick)}.",
             *_circumstances(slowest),
         ]
     )
-
-
-def _rank(analysis: Analysis) -> str:
-    """Return what the first path is: where some are required early it need not be the slowest."""
-    latest = max((end.delay for end in analysis.ends), default=0.0)
-    return "most urgent" if analysis.paths[0].delay < _SAME * latest else "slowest"
 
 
 def _circumstances(path: Path) -> list[str]:
@@ -87,7 +78,7 @@ def _circumstances(path: Path) -> list[str]:
 def _path_section(paper: Paper, analysis: Analysis, number: int, path: Path) -> list[str]:
     if number == 1:
         lines = [
-            f"The {_rank(analysis)} path, stage by stage",
+            f"The {rank(analysis)} path, stage by stage",
             *path_lines(paper, path, branches=True),
         ]
         return ["", *lines, "", *effort_lines(paper, path, analysis.yardstick)]

@@ -5,7 +5,7 @@ from __future__ import annotations
 from itertools import islice
 from typing import TYPE_CHECKING, Final
 
-from evenstage.report.families import family_name, family_of
+from evenstage.report.families import family_name, family_of, gathered
 from evenstage.report.scale import Scale
 from evenstage.report.table import Column, first_that_fits
 from evenstage.report.words import counted, labelled, listed, punctuality
@@ -24,6 +24,7 @@ _EXPECTED: Final = {"output", "asked for"}
 _ENDS_SHOWN: Final = 10
 _INPUTS_SHOWN: Final = 8
 _MESSAGES_SHOWN: Final = 3
+_NAMES_SHOWN: Final = 5
 
 CAUTION: Final = (
     "An estimate from resistances and capacitances, not sign-off: simulate at all corners with the "
@@ -123,14 +124,22 @@ def notice_lines(paper: Paper, notices: Iterable[Notice]) -> list[str]:
 
 def _group_lines(paper: Paper, code: str, group: Sequence[Notice]) -> list[str]:
     if len(group) == 1:
-        return paper.paragraph(f"{code}: {group[0]}", indent=2, hanging=4)
+        return paper.paragraph(f"{code}: {_told(paper, group[0])}", indent=2, hanging=4)
     lines = paper.paragraph(f"{code}, {len(group)} times", indent=2)
     shown = group if len(group) == _MESSAGES_SHOWN + 1 else group[:_MESSAGES_SHOWN]
     for notice in shown:
-        lines += paper.paragraph(str(notice), indent=4, hanging=6)
+        lines += paper.paragraph(_told(paper, notice), indent=4, hanging=6)
     if len(shown) < len(group):
         lines.append(f"    and {len(group) - len(shown)} more")
     return lines
+
+
+def _told(paper: Paper, notice: Notice) -> str:
+    """Return a notice with the first of the names it is about, unless it names them itself."""
+    names = [name for name in notice.names if name]
+    if not names or any(f"'{name}'" in notice.message for name in names):
+        return str(notice)
+    return f"{notice}: {listed(gathered(names, paper.times), _NAMES_SHOWN)}"
 
 
 def finished(paper: Paper, lines: Sequence[str]) -> str:

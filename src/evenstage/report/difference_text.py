@@ -9,7 +9,17 @@ from evenstage.report.families import gathered
 from evenstage.report.pair_text import pair_lines, total_lines
 from evenstage.report.paper import Paper
 from evenstage.report.width_text import difference_lines
-from evenstage.report.words import counted, labelled, listed, moves, route, same_route, section
+from evenstage.report.words import (
+    block_name,
+    counted,
+    labelled,
+    listed,
+    moves,
+    rank,
+    route,
+    same_route,
+    section,
+)
 
 if TYPE_CHECKING:
     from evenstage.timing.results import Difference, Path
@@ -39,8 +49,8 @@ def difference_report(
     """
     paper = Paper(width, unicode)
     before, after = difference.before, difference.after
-    lines = labelled(paper, "before", f"{before.source}, block {before.top}")
-    lines += labelled(paper, "after", f"{after.source}, block {after.top}")
+    lines = labelled(paper, "before", block_name(before))
+    lines += labelled(paper, "after", block_name(after))
     lines += ["", *paper.paragraph(_answer(difference))]
     lines += _paths(paper, difference)
     lines += section("The blocks", total_lines(paper, before, after))
@@ -54,7 +64,7 @@ def difference_report(
 def _answer(difference: Difference) -> str:
     old, new = difference.before.paths[0], difference.after.paths[0]
     both = [w for w in difference.widths if w.before is not None and w.after is not None]
-    slowest = f"slowest path {moves(old.delay, new.delay)}"
+    slowest = f"{rank(difference.before)} path {moves(old.delay, new.delay)}"
     if same_route(old, new):
         which = f"It is the same in both: {route(old)}."
     else:
@@ -70,14 +80,19 @@ def _paths(paper: Paper, difference: Difference) -> list[str]:
     old, new = difference.before.paths[0], difference.after.paths[0]
     old_after, new_before = difference.same_path_after, difference.same_path_before
     if same_route(old, new):
-        return _pair(paper, "The slowest path", old, new)
+        return _pair(paper, f"The {rank(difference.before)} path", old, new)
     if old_after is None and new_before is None:
-        return _pair(paper, "The slowest path of each, stages of one gate together", old, new)
+        title = f"The {rank(difference.before)} path of each, stages of one gate together"
+        return _pair(paper, title, old, new)
     lines = []
     if old_after is not None:
-        lines += _pair(paper, f"The slowest path before: {route(old)}", old, old_after)
+        lines += _pair(
+            paper, f"The {rank(difference.before)} path before: {route(old)}", old, old_after
+        )
     if new_before is not None:
-        lines += _pair(paper, f"The slowest path after: {route(new)}", new_before, new)
+        lines += _pair(
+            paper, f"The {rank(difference.after)} path after: {route(new)}", new_before, new
+        )
     return lines
 
 

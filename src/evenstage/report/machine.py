@@ -54,15 +54,15 @@ def sizing_document(sizing: Sizing) -> Document:
     Returns
     -------
     dict
-        Plain values only; ``kind`` is ``sizing``. Of ``bound_s`` and ``bound_m`` the one that
-        ``bound_on`` does not name is null.
+        Plain values only; ``kind`` is ``sizing``. Of ``bound_s``, ``bound_m`` and ``bound_f`` those
+        that ``bound_on`` does not name are null.
     """
-    on_delay = sizing.bound_on == "delay"
     return _head("sizing") | {
         "goal": sizing.goal,
         "bound_on": sizing.bound_on,
-        "bound_s": sizing.bound if on_delay else None,
-        "bound_m": None if on_delay else sizing.bound,
+        "bound_s": sizing.bound if sizing.bound_on == "delay" else None,
+        "bound_m": sizing.bound if sizing.bound_on == "width" else None,
+        "bound_f": sizing.bound if sizing.bound_on == "energy" else None,
         "gap": sizing.gap,
         "rounding_loss": sizing.rounding_loss,
         "least_delay_s": sizing.least_delay,

@@ -12,10 +12,13 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from evenstage.report.paper import Paper
-    from evenstage.timing.results import Edge, Path, Yardstick
+    from evenstage.timing.results import Analysis, Edge, Path, Yardstick
 
 #: Cells for the label of a paragraph.
 _MARGIN: Final = 12
+
+#: Arrivals at least this share of the latest are the latest but for rounding.
+_SAME: Final = 1 - 1e-9
 
 RISING: Final[dict[Edge, str]] = {"rise": "rising", "fall": "falling"}
 
@@ -25,6 +28,17 @@ def counted(number: int, one: str, many: str = "") -> str:
     if number == 1:
         return f"1 {one}"
     return f"{number or 'no'} {many or one + 's'}"
+
+
+def block_name(analysis: Analysis) -> str:
+    """Return which block of which file is meant."""
+    return f"{analysis.source}, {f'block {analysis.top}' if analysis.top else 'top level'}"
+
+
+def rank(analysis: Analysis) -> str:
+    """Return what the first path is: where some are required early it need not be the slowest."""
+    latest = max((end.delay for end in analysis.ends), default=0.0)
+    return "most urgent" if analysis.paths[0].delay < _SAME * latest else "slowest"
 
 
 def route(path: Path) -> str:
@@ -70,7 +84,10 @@ def moves(before: float, after: float) -> str:
         return f"stays at {engineering(before, 's')}"
     verb = "falls" if after < before else "rises"
     change = percent(before, after)
-    return f"{verb} from {engineering(before, 's')} to {engineering(after, 's')} ({change})"
+    was, now = engineering(before, "s"), engineering(after, "s")
+    if was == now:
+        return f"{verb} by {engineering(abs(after - before), 's')} to {now} ({change})"
+    return f"{verb} from {was} to {now} ({change})"
 
 
 def punctuality(delay: float, required: float) -> str:
