@@ -141,8 +141,10 @@ class CardTable:
         self.store()
         self._scopes_with_repeats = self._find_repeats()
         words = self._word_numbers
-        self._word_numbers = Words({name: words[name] for name in map(_folded, names)})
+        kept = Words({name: words[name] for name in map(_folded, names)})
         self.words = WordList(words)
+        words.clear()
+        words.update(kept)
         self.values.finish()
         shape_of = np.frombuffer(self._shape_of, np.int32) if len(self) else np.zeros(0, np.int32)
         order = np.argsort(shape_of, kind="stable").astype(np.int32)

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.errors import ElaborationError, Notice
+from evenstage.netlist.collection import without_collection
 from evenstage.netlist.devices import Devices
 from evenstage.netlist.flatten import flatten, ranges, starts_of
 from evenstage.netlist.geometry import Drawn, geometry
@@ -68,7 +69,8 @@ def elaborate(
         for candidate in error.names:
             library.reachable(candidate.lower())
         raise
-    return _Block(library, name).devices()
+    with without_collection():
+        return _Block(library, name).devices()
 
 
 class _Block:
@@ -82,10 +84,10 @@ class _Block:
         library.mistakes.check()
         self._global_names = self._globals_used()
         self._flat = flatten(self._templates, callees, self._words(self._global_names))
-        outlines = [template.outline for template in self._templates]
+        local = [template.outline.nets for template in self._templates]
         count = len(self._flat.slot_of_net)
         self._names = NetNames(
-            self._netlist, self._flat, outlines, self._global_names, np.arange(count)
+            self._netlist, self._flat, local, self._global_names, np.arange(count, dtype=np.int32)
         )
         ports = self._flat.net[: self._templates[0].outline.ports]
         self._ports: tuple[int, ...] = tuple(ports.tolist())
@@ -98,7 +100,7 @@ class _Block:
         words = self._words(names)
         met = np.zeros(len(words), np.bool_)
         for outline in {id(t.outline): t.outline for t in self._templates}.values():
-            met |= np.isin(words, outline.net_words)
+            met |= np.isin(words, outline.nets.words)
         return tuple(name for name, occurs in zip(names, met.tolist(), strict=True) if occurs)
 
     def _words(self, names: Sequence[str]) -> IntArray:
@@ -108,8 +110,8 @@ class _Block:
         """Return instance and row of every copy of what templates hold ``counts`` of."""
         starts = starts_of(list(counts))
         each = (starts[1:] - starts[:-1])[self._flat.template]
-        instance = np.repeat(np.arange(len(each)), each)
-        return instance, ranges(starts[self._flat.template], each)
+        instance = np.repeat(np.arange(len(each), dtype=np.int32), each)
+        return instance, ranges(starts[self._flat.template], each).astype(np.int32)
 
     # Resistors.
 
@@ -127,7 +129,7 @@ class _Block:
         count = len(self._flat.slot_of_net)
         instance, row = self._spread(len(r) for r in rows)
         if len(row) == 0:
-            return np.arange(count), np.arange(count)
+            return np.arange(count, dtype=np.int32), np.arange(count, dtype=np.int32)
         local = np.concatenate([r.nets for r in rows], axis=1)[:, row]
         pairs = self._flat.nets_of(instance, local)
         joints = Joints(
@@ -137,7 +139,7 @@ class _Block:
         self._note_resistors(joints.joined, cards)
         chosen = joints.representative
         kept = np.flatnonzero(chosen == np.arange(count))
-        return np.searchsorted(kept, chosen), kept
+        return np.searchsorted(kept, chosen).astype(np.int32), kept.astype(np.int32)
 
     def _note_resistors(self, joined: NDArray[np.bool_], cards: IntArray) -> None:
         for rows, code, what in (
@@ -158,6 +160,10 @@ class _Block:
         scope, name = self._netlist.card_scope(number), self._netlist.card_name(number)
         return f"{scope}.{name}" if scope else name
 
+    def _nets_of(self, instance: Indices, local: Indices) -> IntArray:
+        """Return the final nets of local nets of instances."""
+        return _ids(self._net[self._flat.nets_of(instance, local)])
+
     # The result.
 
     def devices(self) -> Devices:
@@ -166,11 +172,12 @@ class _Block:
         instance, row = self._spread(len(template.card) for template in templates)
         drawn = self._drawn()
         sizes = geometry(drawn, self._netlist, self._library.process)
-        nets = np.concatenate([template.nets for template in templates], axis=1)[:, row]
-        drain, gate, source, bulk = map(_ids, self._net[flat.nets_of(instance, nets)])
+        nets = np.concatenate([template.nets for template in templates], axis=1)
+        drain, gate, source, bulk = (self._nets_of(instance, pin[row]) for pin in nets)
         calls = np.concatenate([template.multiplier for template in templates])
         with np.errstate(over="ignore"):
             multiplier = (sizes.multiplier * calls)[row] * flat.multiplier[instance]
+        del nets, calls
         if not np.isfinite(multiplier).all():
             message = "the multipliers along one instance path multiply to infinity"
             raise ElaborationError(message, code="bad-multiplier")
@@ -206,7 +213,7 @@ class _Block:
             net_names=NetNames(
                 self._netlist,
                 flat,
-                [template.outline for template in templates],
+                [template.outline.nets for template in templates],
                 self._global_names,
                 self._kept,
             ),
@@ -242,9 +249,8 @@ class _Block:
         known = values[row] >= 0
         instance, row = instance[known], row[known]
         local = np.concatenate([r.nets for r in rows], axis=1)[:, row]
-        nets = self._net[self._flat.nets_of(instance, local)]
         value = values[row] * self._flat.multiplier[instance]
-        return _ids(nets), _frozen(value), _ids(cards[row]), _ids(instance)
+        return self._nets_of(instance, local), _frozen(value), _ids(cards[row]), _ids(instance)
 
     def _note_capacitors(self, numbers: Sequence[int]) -> None:
         if numbers:
@@ -307,12 +313,12 @@ def _bound(
 
 
 def _ids(values: Indices) -> IntArray:
-    ids = values.astype(np.int32)
+    ids = values.astype(np.int32, copy=False)
     ids.flags.writeable = False
     return ids
 
 
 def _frozen(values: FloatArray) -> FloatArray:
-    frozen = values.astype(np.float64)
+    frozen = values.astype(np.float64, copy=False)
     frozen.flags.writeable = False
     return frozen

@@ -117,7 +117,7 @@ class _Tables:
         pins = [call.nets for template in templates for call in template.calls]
         self.pin_start = starts_of([len(nets) for nets in pins])
         self.pins = np.array([net for nets in pins for net in nets], np.int64)
-        self.slot_start = starts_of([len(t.outline.net_words) for t in templates])
+        self.slot_start = starts_of([len(t.outline.nets.words) for t in templates])
         # Of each local net: own to the instance, a port, or which global net.
         self.kind = np.concatenate(
             [_kinds(t, global_words, block=i == 0) for i, t in enumerate(templates)]
@@ -140,11 +140,11 @@ class _Tables:
 
 def _kinds(template: Template, global_words: IntArray, *, block: bool) -> Indices:
     outline = template.outline
-    kinds = np.full(len(outline.net_words), _OWN, np.int64)
+    kinds = np.full(len(outline.nets.words), _OWN, np.int64)
     # A port of the block that has the name of a global net is that net.
-    for local in np.flatnonzero(np.isin(outline.net_words, global_words)).tolist():
+    for local in np.flatnonzero(np.isin(outline.nets.words, global_words)).tolist():
         if block or local >= outline.ports:
-            kinds[local] = int(np.argmax(global_words == outline.net_words[local]))
+            kinds[local] = int(np.argmax(global_words == outline.nets.words[local]))
     if not block:
         kinds[: outline.ports] = _PORT
     return kinds

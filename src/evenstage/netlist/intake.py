@@ -27,7 +27,7 @@ if TYPE_CHECKING:
 
 #: Distinct texts remembered; random values would otherwise fill the memory.
 _REMEMBERED: Final = 1 << 17
-#: From so many values on that are mostly distinct, all are converted together.
+#: Values of which more than half of the first so many are distinct are converted together.
 _MANY: Final = 64
 _POWERS: Final = {b"f": b"e-15", b"p": b"e-12", b"n": b"e-9", b"u": b"e-6", b"k": b"e3"}
 _DECIMAL: Final = rb"[+-]?(?:[0-9]++\.?+[0-9]*+|\.[0-9]++)"
@@ -102,7 +102,7 @@ class Values:
 
     def numbers_of(self, texts: Sequence[bytes]) -> Iterable[int]:
         """Return the numbers of some values; the text is kept of expressions alone."""
-        if len(texts) >= _MANY and 2 * len(set(texts)) > len(texts):
+        if len(texts) >= _MANY and 2 * len(set(texts[:_MANY])) > _MANY:
             numbers = self._add_all(texts)
             if numbers is not None:
                 return numbers

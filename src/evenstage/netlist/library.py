@@ -47,8 +47,7 @@ class Library:
         self._sizes = _SIZES | set(own)
         self._outlines: dict[str, Outline] = {}
         self.mistakes = Mistakes(netlist.sources)
-        self._builder = OutlineBuilder(netlist, self, names, self.mistakes)
-        self._binder = Binder(self)
+        self._builder = OutlineBuilder(netlist, names, self.mistakes)
         self._templates: dict[Key, Template] = {}
         self._covered: dict[str, bool] = {}
         self._missing: set[str] = set()
@@ -58,14 +57,14 @@ class Library:
         known = self._outlines.get(name)
         if known is None:
             subcircuit = self.netlist.subcircuits[name] if name else self.netlist.top
-            known = self._outlines[name] = self._builder.outline(subcircuit)
+            known = self._outlines[name] = self._builder.outline(subcircuit, self)
         return known
 
     def template(self, key: Key) -> Template:
         """Return a definition with bound parameters."""
         known = self._templates.get(key)
         if known is None:
-            known = self._templates[key] = self._binder.bind(key)
+            known = self._templates[key] = Binder(self).bind(key)
         return known
 
     def scope(self, key: Key) -> Scope:

@@ -18,7 +18,7 @@ if TYPE_CHECKING:
 
     from evenstage.netlist.flatten import Flat, Indices
     from evenstage.netlist.netlist import Netlist
-    from evenstage.netlist.outline import Outline
+    from evenstage.netlist.outline import LocalNets
 
 _HIGH: Final = re.compile(r"(?:a|d|i|o)?v?(?:dd|cc)\w*!?|vpwr|vpb|sup", re.IGNORECASE)
 _LOW: Final = re.compile(r"(?:a|d|i|o)?vss\w*!?|a?d?v?gnd\w*!?|vnb|ss|0", re.IGNORECASE)
@@ -33,7 +33,7 @@ class NetNames(Sequence[str]):
         Holds the names as written.
     flat : Flat
         The layout.
-    outlines : Sequence of Outline
+    local : Sequence of LocalNets
         Of each template.
     global_names : Sequence of str
         Of the first nets.
@@ -45,13 +45,13 @@ class NetNames(Sequence[str]):
         self,
         netlist: Netlist,
         flat: Flat,
-        outlines: Sequence[Outline],
+        local: Sequence[LocalNets],
         global_names: Sequence[str],
         kept: Indices,
     ) -> None:
         self._netlist = netlist
         self._flat = flat
-        self._outlines = outlines
+        self._local = local
         self._global_names = global_names
         self._kept = kept
         self._paths: dict[int, str] = {0: ""}
@@ -82,10 +82,10 @@ class NetNames(Sequence[str]):
         return f"{self._path(instance)}{name}"
 
     def _local_name(self, template: int, local: int) -> str:
-        outline = self._outlines[template]
-        if local < outline.ports:
-            return outline.subcircuit.ports[local]
-        card, position = outline.net_firsts[:, local - outline.ports].tolist()
+        ports, _, firsts = self._local[template]
+        if local < len(ports):
+            return ports[local]
+        card, position = firsts[:, local - len(ports)].tolist()
         return self._netlist.node_name(card, position)
 
     def _path(self, instance: int) -> str:

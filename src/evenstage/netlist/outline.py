@@ -68,20 +68,34 @@ class Rows:
         return len(self.card)
 
 
+class LocalNets(NamedTuple):
+    """The nets of a definition: the ports first, in their order, then the others as they are met.
+
+    Parameters
+    ----------
+    ports : tuple of str
+        As written.
+    words : IntArray, shape (n,)
+        The word of each net.
+    firsts : IntArray, shape (2, n - ports)
+        Card and position on it at which each net that is no port is met first.
+    """
+
+    ports: tuple[str, ...]
+    words: IntArray
+    firsts: IntArray
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Outline:
     """One definition.
-
-    Local nets are numbered: the ports first, in their order, then the others as they are met.
 
     Parameters
     ----------
     subcircuit : Subcircuit
         The definition.
-    net_words : IntArray, shape (n,)
-        The word of each local net.
-    net_firsts : IntArray, shape (2, n)
-        Card and position on it at which each net that is no port is met first.
+    nets : LocalNets
+        Its nets.
     transistors, capacitors, resistors : Rows
         The cards of each kind.
     calls : tuple of Call
@@ -97,8 +111,7 @@ class Outline:
     """
 
     subcircuit: Subcircuit
-    net_words: IntArray
-    net_firsts: IntArray
+    nets: LocalNets
     transistors: Rows
     capacitors: Rows
     resistors: Rows
@@ -155,11 +168,11 @@ class _RowsBuilder:
         """Return what was collected, in the order of the cards, without empty columns."""
         cards = np.concatenate(self._cards)
         order = _order(cards)
-        columns = {
-            name: joined(parts).in_order(order)
-            for name, parts in self._columns.items()
-            if any(part.styles.any() for part in parts)
-        }
+        columns = {}
+        for name in list(self._columns):
+            parts = self._columns.pop(name)  # so that nothing stays twice
+            if any(part.styles.any() for part in parts):
+                columns[name] = joined(parts).in_order(order)
         words, targets = _distinct(np.concatenate(self._targets))
         return Rows(
             card=cards[order],
@@ -193,8 +206,6 @@ class OutlineBuilder:
     ----------
     netlist : Netlist
         Where they stand.
-    classifier : Classifier
-        Tells transistors among the X cards.
     geometry : sequence of str
         Parameters of transistors that are wanted.
     mistakes : Mistakes
@@ -202,29 +213,22 @@ class OutlineBuilder:
         without them.
     """
 
-    def __init__(
-        self,
-        netlist: Netlist,
-        classifier: Classifier,
-        geometry: Sequence[str],
-        mistakes: Mistakes,
-    ) -> None:
+    def __init__(self, netlist: Netlist, geometry: Sequence[str], mistakes: Mistakes) -> None:
         self._netlist = netlist
-        self._classifier = classifier
         self._geometry = geometry
         self._mistakes = mistakes
         self._numbering = NetNumbering(len(netlist.cards.words))
 
-    def outline(self, subcircuit: Subcircuit) -> Outline:
-        """Return the outline of a definition."""
+    def outline(self, subcircuit: Subcircuit, classifier: Classifier) -> Outline:
+        """Return the outline of a definition; a classifier tells its transistors from its calls."""
         cards = list(self._netlist.cards.columns(subcircuit.cards))
-        body = _Body(self._netlist, self._classifier, self._geometry, subcircuit, self._mistakes)
+        body = _Body(self._netlist, classifier, self._geometry, subcircuit, self._mistakes)
         ports = map(self._netlist.cards.word_number, subcircuit.ports)
         wired = [one for one in cards if one.letter in _WIRED]
         words, firsts = self._numbering.number(np.array(list(ports), np.int32), wired)
         for one in cards:
             body.add(one, self._numbering.local(one.nodes) if one.letter in _WIRED else one.nodes)
-        return body.outline(words, firsts)
+        return body.outline(LocalNets(subcircuit.ports, words, firsts))
 
 
 class _Body:
@@ -248,21 +252,22 @@ class _Body:
         self._calls: list[Call] = []
         self._sources: list[tuple[int, int, int]] = []
         self._others: dict[str, list[int]] = {}
-        self._takers = {
-            "m": self._transistors.add,
-            "x": self._take_calls,
-            "c": self._capacitors.add,
-            "r": self._resistors.add,
-            "v": self._take_sources,
-        }
 
     def add(self, cards: CardColumns, nets: IntArray) -> None:
         """Take some cards and their nets."""
-        taker = self._takers.get(cards.letter)
-        if taker is None:
-            self._others.setdefault(cards.letter, []).extend(cards.numbers.tolist())
-        else:
-            taker(cards, nets)
+        match cards.letter:
+            case "m":
+                self._transistors.add(cards, nets)
+            case "x":
+                self._take_calls(cards, nets)
+            case "c":
+                self._capacitors.add(cards, nets)
+            case "r":
+                self._resistors.add(cards, nets)
+            case "v":
+                self._take_sources(cards, nets)
+            case _:
+                self._others.setdefault(cards.letter, []).extend(cards.numbers.tolist())
 
     def _take_sources(self, cards: CardColumns, nets: IntArray) -> None:
         plus, minus = nets.tolist()
@@ -302,14 +307,13 @@ class _Body:
             return
         self._transistors.add(cards, nets)
 
-    def outline(self, words: IntArray, firsts: IntArray) -> Outline:
+    def outline(self, nets: LocalNets) -> Outline:
         """Return the finished outline."""
         rows = (self._transistors.rows(), self._capacitors.rows(), self._resistors.rows())
         calls = tuple(sorted(self._calls, key=lambda call: call.card))
         return Outline(
             subcircuit=self._subcircuit,
-            net_words=words,
-            net_firsts=firsts,
+            nets=nets,
             transistors=rows[0],
             capacitors=rows[1],
             resistors=rows[2],

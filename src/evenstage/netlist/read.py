@@ -6,6 +6,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from evenstage.errors import NetlistError
+from evenstage.netlist.collection import without_collection
 from evenstage.netlist.reader import Reader
 from evenstage.source import SourceText
 
@@ -63,6 +64,7 @@ def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
 
 
 def _read(source: SourceText) -> Netlist:
-    reader = Reader()
-    reader.read_main(source)
-    return reader.finish()
+    with without_collection():
+        reader = Reader()
+        reader.read_main(source)
+        return reader.finish()

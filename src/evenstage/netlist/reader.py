@@ -214,11 +214,11 @@ class Reader:
             self._table.append_odd(statement)
             return
         number = self._table.add_shape(shape)
-        found = shape.groups.match(block.text, statement.marks[0].start - block.start)
+        found = shape.row.match(block.text, statement.marks[0].start - block.start)
         assert found is not None
         rows = self._table.rows(number)
         rows.append(found.groups())
-        self._learned[ord(shape.letter)].append((shape.groups.match, number, rows))
+        self._learned[ord(shape.letter)].append((shape.row.match, number, rows))
         self._table.extend((statement.marks[0].start,), number)
 
     # Dot cards.

@@ -12,7 +12,7 @@ The expressions read text as ``canonical`` leaves it: lower case, one card per l
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cache
 from typing import TYPE_CHECKING, Final, Literal
 
@@ -56,17 +56,18 @@ class Shape:
         called unless a ``target`` stands apart.
     keys : tuple of str
         Parameter names in their order, one for each ``value``.
-    skim : re.Pattern
-        Matches a card from its first byte to the first byte of the next, without groups.
     groups : re.Pattern
-        The same with a group for each role.
+        Matches a card from its first byte to the first byte of the next, with a group for each
+        role.
+    row : re.Pattern
+        The same with a group for each role but ``key``, which saves time.
     """
 
     letter: str
     roles: tuple[Role, ...]
     keys: tuple[str, ...]
-    skim: re.Pattern[bytes]
     groups: re.Pattern[bytes]
+    row: re.Pattern[bytes]
 
 
 def learn(statement: Statement, text: bytes) -> Shape | None:
@@ -87,8 +88,8 @@ def learn(statement: Statement, text: bytes) -> Shape | None:
         chr(text[statement.marks[0].start]),
         tuple(piece.role for piece in pieces if piece.role is not None),
         keys,
-        _compiled(pieces, grouped=False),
-        _compiled(pieces, grouped=True),
+        _compiled(pieces),
+        _compiled([replace(p, role=None) if p.role == "key" else p for p in pieces]),
     )
     return shape if _agrees(shape, statement, text) else None
 
@@ -100,8 +101,8 @@ class _Piece:
     name: str = ""
 
 
-def _compiled(pieces: list[_Piece], *, grouped: bool) -> re.Pattern[bytes]:
-    parts = [f"({p.pattern})" if grouped and p.role is not None else p.pattern for p in pieces]
+def _compiled(pieces: list[_Piece]) -> re.Pattern[bytes]:
+    parts = [p.pattern if p.role is None else f"({p.pattern})" for p in pieces]
     return re.compile((_BETWEEN.join(parts) + _BETWEEN + _END).encode(ENCODING))
 
 

@@ -40,7 +40,8 @@ class ShapeColumns:
         self._letter = shape.letter
         self._words = words
         self._values = values
-        places = {role: [i for i, r in enumerate(shape.roles) if r == role] for role in _ROLES}
+        kept = [role for role in shape.roles if role != "key"]
+        places = {role: [i for i, r in enumerate(kept) if r == role] for role in _ROLES}
         self._node_places = places["node"]
         self._target_place = next(iter(places["target"]), None)
         self._run_place = next(iter(places["nodes"]), None)

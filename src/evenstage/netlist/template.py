@@ -255,6 +255,8 @@ def _merged(plain: _Devices, wrapped: list[_Devices]) -> _Devices:
 def column_of(parts: Iterable[_Devices | Template], name: str, order: Indices | slice) -> Column:
     """Return one parameter of several parts in one column."""
     columns = [part.columns.get(name) or absent(len(part.card)) for part in parts]
+    if len(columns) == 1 and order == slice(None):
+        return columns[0]
     return Column(
         np.concatenate([column.numbers for column in columns])[order],
         np.concatenate([column.styles for column in columns])[order],
