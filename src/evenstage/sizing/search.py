@@ -39,6 +39,8 @@ _SAME: Final = 1e-12
 _RETREATS: Final = (1e-12, 1e-10, 1e-8, 1e-6, 1e-4, 1e-2)
 #: Parts of the way from idle sizes back to where they began that are tried.
 _RETURNS: Final = (1.0, 0.5, 0.25, 0.125, 0.0)
+#: Relative precision that the path is always ready to go to, whatever gap is asked for.
+_PATH_GOES_TO: Final = 1e-6
 #: Relative nearness at which a size is taken to be on its bound.
 _ON_BOUND: Final = 1e-6
 #: A size matters if its terms in the Lagrangian exceed this part of the limiting paths.
@@ -73,7 +75,8 @@ class Search:
         """Walk until the gap is closed, closes no more, or the objective is good `enough`."""
         shape = self.translation
         anchor = np.log(shape.start[shape.free])
-        precision = _PATH_PRECISION * tolerance
+        # The path itself must not end before there are sizes that keep every limit.
+        precision = _PATH_PRECISION * min(tolerance, _PATH_GOES_TO)
         path = central_path(shape.programme, shape.first(), anchor, precision)
         narrow, since = np.inf, 0
         for point in islice(path, iterations):
