@@ -139,9 +139,7 @@ def test_optimum_agrees_with_a_general_purpose_solver(
     """Both programmes of every sample, in log space with cvxpy and Clarabel: within 1e-4."""
     solved: list[tuple[Problem, Goal, Solution]] = []
 
-    def noting(
-        problem: Problem, goal: Goal, *, start: FloatArray, tolerance: float
-    ) -> Solution:
+    def noting(problem: Problem, goal: Goal, *, start: FloatArray, tolerance: float) -> Solution:
         solution = solve(problem, goal, start=start, tolerance=tolerance)
         solved.append((problem, goal, solution))
         return solution
