@@ -365,7 +365,7 @@ def _fields_of_statement(statement: Statement, source: SourceText) -> list[Field
     fields: list[Field] = [("name", marks[0].start, marks[0].end)]
     wanted = _node_count(statement.rule, letter)
     slashed = any(mark.terminal == "SLASH" for mark in marks)
-    position = 1
+    nodes, position = 0, 1
     while position < len(marks):
         mark = marks[position]
         if marks[position + 1 : position + 2] and marks[position + 1].terminal == "EQUAL":
@@ -375,9 +375,9 @@ def _fields_of_statement(statement: Statement, source: SourceText) -> list[Field
             position += 3
             continue
         if mark.terminal not in {"SLASH", "PARAMS", "EQUAL", "OPEN", "CLOSE", "ODD", "OFF"}:
-            nodes = sum(role == "node" for role, *_ in fields)
-            before = marks[position - 1].terminal
-            fields.append((_loose_role(letter, nodes, wanted, before), mark.start, mark.end))
+            role = _loose_role(letter, nodes, wanted, marks[position - 1].terminal)
+            nodes += role == "node"
+            fields.append((role, mark.start, mark.end))
         position += 1
     return fields if slashed else _last_node_is_target(letter, fields)
 

@@ -202,6 +202,8 @@ def _loose_word(refusal: _Refusal) -> NetlistError | None:
     if refusal.sign and not _WORD.match(refusal.source.data, refusal.place):
         return None
     before = list(_WORD.finditer(refusal.joined[: refusal.place - refusal.start]))
+    if not before:
+        return None
     start, end = (refusal.start + edge for edge in before[-1].span())
     message = f"expected name=value, got '{refusal.text(start, end)}'"
     return refusal.error("loose-word", message, start, end)

@@ -9,6 +9,7 @@ import numpy as np
 from evenstage.errors import ElaborationError, Notice
 from evenstage.netlist.collection import without_collection
 from evenstage.netlist.devices import Devices
+from evenstage.netlist.extent import check_extent, check_templates
 from evenstage.netlist.flatten import flatten, ranges, starts_of
 from evenstage.netlist.geometry import Drawn, geometry
 from evenstage.netlist.library import Library
@@ -70,7 +71,11 @@ def elaborate(
             library.reachable(candidate.lower())
         raise
     with without_collection():
-        return _Block(library, name).devices()
+        try:
+            return _Block(library, name).devices()
+        except RecursionError:
+            message = "wrapped transistors are nested too deeply"
+            raise ElaborationError(message, code="too-large") from None
 
 
 class _Block:
@@ -82,6 +87,7 @@ class _Block:
         self._definitions = library.reachable(name)
         self._templates, callees = _bound(library, name, self._definitions)
         library.mistakes.check()
+        check_extent(self._templates, callees)
         self._global_names = self._globals_used()
         self._flat = flatten(self._templates, callees, self._words(self._global_names))
         local = [template.outline.nets for template in self._templates]
@@ -301,11 +307,14 @@ def _bound(
     """Return all templates of a block, callers first, and for each the indices of its callees."""
     by_name: dict[str, dict[Key, Template]] = {definition: {} for definition in definitions}
     by_name[name][name, ()] = library.template((name, ()))
+    count = 1
     for definition in definitions:
         for template in by_name[definition].values():
             for callee in template.callees:
                 if callee not in by_name[callee[0]]:
                     by_name[callee[0]][callee] = library.template(callee)
+                    count += 1
+        check_templates(count, len(library.netlist))
     keys = [key for definition in definitions for key in by_name[definition]]
     index = {key: i for i, key in enumerate(keys)}
     templates = [by_name[key[0]][key] for key in keys]

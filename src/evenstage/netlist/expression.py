@@ -360,6 +360,8 @@ def parse_formula(text: str) -> Formula:
     try:
         root = builder.transform(parser("expression").parse(plain))
     except VisitError as error:
+        if isinstance(error.orig_exc, RecursionError):
+            raise FormulaError("is nested too deeply") from None
         raise error.orig_exc from None
     except UnexpectedEOF:
         raise FormulaError("ends too early", len(plain)) from None

@@ -9,6 +9,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Final, TypeVar
 
 from evenstage.errors import NetlistError
+from evenstage.netlist.files import read_file, why_not
 from evenstage.source import SourceText, Span
 
 if TYPE_CHECKING:
@@ -49,22 +50,29 @@ class Includes:
             If it cannot be read.
         """
         written = name.text.strip(_QUOTES)
-        path = (name.source.path.parent / written).resolve()
+        path = self._real_path(name, written)
         known = self._sources.get(path)
         if known is not None:
             return known
         label = os.path.normpath(Path(name.source.label).parent / written)
         try:
-            data = path.read_bytes()
+            data = read_file(path)
         except FileNotFoundError:
             message = f"there is no file '{label}' to include"
             raise NetlistError(message, code="missing-file", span=name) from None
         except (OSError, ValueError) as error:
-            reason = (getattr(error, "strerror", None) or "not a file name").lower()
-            message = f"cannot read '{label}': {reason}"
+            message = f"cannot read '{label}': {why_not(error)}"
             raise NetlistError(message, code="unreadable-file", span=name) from None
         self._sources[path] = SourceText(path, data, label)
         return self._sources[path]
+
+    def _real_path(self, name: Span, written: str) -> Path:
+        """Return where a file really is, so that all its names stand for one file."""
+        try:
+            return Path(os.path.realpath(name.source.path.parent / written))
+        except ValueError:
+            message = f"cannot read '{written}': not a file name"
+            raise NetlistError(message, code="unreadable-file", span=name) from None
 
     def unit(self, source: SourceText, make: Callable[[SourceText], _Unit]) -> _Unit:
         """Return what was made of a file, made once."""

@@ -119,22 +119,22 @@ class Library:
         """
         order: list[str] = []
         done: set[str] = set()
-        path: list[str] = []
+        path: dict[str, None] = {}
         stack: list[tuple[str, bool]] = [(top, False)]
         while stack:
             name, finished = stack.pop()
             if finished:
-                path.pop()
+                path.popitem()
                 done.add(name)
                 order.append(name)
             elif name not in done:
-                path.append(name)
+                path[name] = None
                 stack.append((name, True))
                 stack += [(callee, False) for callee in self._callees(name, path)]
         self.mistakes.check()
         return order[::-1]
 
-    def _callees(self, name: str, path: list[str]) -> list[str]:
+    def _callees(self, name: str, path: Collection[str]) -> list[str]:
         callees: dict[str, None] = {}
         for call in self.outline(name).calls:
             if call.target in callees or call.target in self._missing:
@@ -144,7 +144,8 @@ class Library:
                 if len(self._missing) < MOST:
                     self.mistakes.add(self._unknown(call.card))
             elif call.target in path:
-                self.mistakes.add(self._recursive(call.card, path[path.index(call.target) :]))
+                loop = list(path)
+                self.mistakes.add(self._recursive(call.card, loop[loop.index(call.target) :]))
             else:
                 callees[call.target] = None
         return list(callees)

@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import os
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from evenstage.errors import NetlistError
 from evenstage.netlist.collection import without_collection
+from evenstage.netlist.files import read_file, why_not
 from evenstage.netlist.reader import Reader
 from evenstage.source import SourceText
 
@@ -29,13 +31,13 @@ def read(path: Path | str) -> Netlist:
     """
     path = Path(path)
     try:
-        data = path.read_bytes()
+        data = read_file(path)
     except FileNotFoundError:
         raise NetlistError(f"there is no file '{path}'", code="missing-file") from None
-    except OSError as error:
-        reason = (error.strerror or "unknown reason").lower()
-        raise NetlistError(f"cannot read '{path}': {reason}", code="unreadable-file") from None
-    return _read(SourceText(path.resolve(), data, str(path)))
+    except (OSError, ValueError) as error:
+        message = f"cannot read '{path}': {why_not(error)}"
+        raise NetlistError(message, code="unreadable-file") from None
+    return _read(SourceText(Path(os.path.realpath(path)), data, str(path)))
 
 
 def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
@@ -60,7 +62,7 @@ def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
     >>> len(read_bytes(b".subckt inv a y vdd vss\n.ends\n", "inv.sp", Path()))
     0
     """
-    return _read(SourceText((folder / label).resolve(), data, label))
+    return _read(SourceText(Path(os.path.realpath(folder / label)), data, label))
 
 
 def _read(source: SourceText) -> Netlist:
