@@ -97,10 +97,20 @@ class CardTable:
         """Return the list that takes the words of cards of a shape until they are stored."""
         return self._stored[shape].rows
 
-    def extend(self, starts: Sequence[int], shape: int) -> None:
-        """Add cards that follow each other and have one shape; their words are in its rows."""
-        self._starts.extend(starts)
-        self._shape_of.extend([shape] * len(starts))
+    def extend(self, base: int, starts: list[int], shapes: list[int]) -> None:
+        """Add cards that have a shape and empty the lists; their words are in the rows of it.
+
+        Parameters
+        ----------
+        base : int
+            What the starts count from.
+        starts, shapes : list of int
+            Of each card.
+        """
+        self._starts.extend(map(base.__add__, starts))
+        self._shape_of.extend(shapes)
+        starts.clear()
+        shapes.clear()
 
     def store(self) -> None:
         """Turn the words that wait into numbers."""
@@ -112,7 +122,7 @@ class CardTable:
         """Add a card that has no shape, as Lark read it."""
         number = len(self)
         self._odd[number] = statement
-        self.extend((statement.marks[0].start,), _ODD)
+        self.extend(statement.marks[0].start, [0], [_ODD])
         self._odd_columns[number] = self._numbered(self._odd_group(number))
 
     def _numbered(self, group: CardGroup) -> CardColumns:

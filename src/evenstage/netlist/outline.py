@@ -289,16 +289,14 @@ class _Body:
 
     def _made(self, cards: CardColumns, names: Iterable[str], nets: IntArray) -> Iterator[Call]:
         """Give the calls some cards are."""
-        text = self._netlist.cards.values.text
-        columns = [list(map(text, numbers.tolist())) for numbers in cards.values.values()]
-        keys, count = tuple(cards.values), len(cards.numbers)
-        parameters = (
-            [dict(zip(keys, row, strict=True)) for row in zip(*columns, strict=True)]
-            if keys
-            else [{}] * count
-        )
+        count = len(cards.numbers)
+        columns = [numbers.tolist() for numbers in cards.values.values()]
+        rows = list(zip(*columns, strict=True)) if columns else [()] * count
         wires = zip(*nets.tolist(), strict=True) if len(nets) else [()] * count
-        return map(Call, cards.numbers.tolist(), names, wires, parameters)
+        # Calls that pass the same share what they pass.
+        text = self._netlist.cards.values.text
+        passed = {row: dict(zip(cards.values, map(text, row), strict=True)) for row in set(rows)}
+        return map(Call, cards.numbers.tolist(), names, wires, map(passed.__getitem__, rows))
 
     def _take_wrapped(self, cards: CardColumns, nets: IntArray) -> None:
         if len(nets) != 4:

@@ -30,8 +30,12 @@ if TYPE_CHECKING:
     from evenstage.netlist.netlist import Parameter
     from evenstage.netlist.statement import Mark
 
-    #: Matches a card of one shape up to the next card; the number of the shape; what takes words.
-    _Learned = tuple[Callable[[bytes, int], re.Match[bytes] | None], int, list[tuple[bytes, ...]]]
+    #: Matches a card of one shape up to the next card; the shape's number; what takes the words.
+    _Learned = tuple[
+        Callable[[bytes, int], re.Match[bytes] | None],
+        int,
+        Callable[[tuple[bytes, ...]], None],
+    ]
 
 #: A sequence of terminals is learned when it is met for this time: an expression takes as long to
 #: compile as some fifty cards take to parse.
@@ -122,38 +126,33 @@ class Reader:
         """Read the cards of a block from a position on; return where the next block begins."""
         base, text = unit.blocks.at(position)
         text = text[: end - base]
-        beyond = base + len(text)
         skipped = _SKIP.match(text, position - base)
         assert skipped is not None
-        position = skipped.end() + base
-        while position < beyond:
-            shapes = self._learned[text[position - base]]
-            for rank, shape in enumerate(shapes):
-                after = self._read_run(shape, text, base, position)
-                if after > position:
-                    position = after
-                    if rank:
-                        _promote(shapes, rank)
+        place, learned = skipped.end(), self._learned
+        starts: list[int] = []
+        kinds: list[int] = []
+        while place < len(text):
+            shapes = learned[text[place]]
+            for shape in shapes:
+                found = shape[0](text, place)
+                if found is not None:
                     break
             else:
-                position = self._read_card(unit, position, end)
-        return position
-
-    def _read_run(self, shape: _Learned, text: bytes, base: int, position: int) -> int:
-        """Read cards of one shape as long as they follow each other; return what comes next."""
-        match, number, rows = shape
-        found = match(text, position - base)
-        if found is None:
-            return position
-        starts = []
-        while found is not None:
-            starts.append(position)
-            rows.append(found.groups())
-            following = found.end()
-            position = base + following
-            found = match(text, following)
-        self._table.extend(starts, number)
-        return position
+                self._table.extend(base, starts, kinds)
+                place = self._read_card(unit, base + place, end) - base
+                continue
+            if shape is not shapes[0]:
+                _promote(shapes, shapes.index(shape))
+            match, number, take = shape
+            # Most cards are like the one before.
+            while found is not None:
+                starts.append(place)
+                kinds.append(number)
+                take(found.groups())
+                place = found.end()
+                found = match(text, place)
+        self._table.extend(base, starts, kinds)
+        return base + place
 
     def _begin_segment(self, unit: Unit) -> None:
         self._table.begin_segment(unit.blocks, self._scopes.current)
@@ -216,10 +215,10 @@ class Reader:
         number = self._table.add_shape(shape)
         found = shape.row.match(block.text, statement.marks[0].start - block.start)
         assert found is not None
-        rows = self._table.rows(number)
-        rows.append(found.groups())
-        self._learned[ord(shape.letter)].append((shape.row.match, number, rows))
-        self._table.extend((statement.marks[0].start,), number)
+        take = self._table.rows(number).append
+        take(found.groups())
+        self._learned[ord(shape.letter)].append((shape.row.match, number, take))
+        self._table.extend(statement.marks[0].start, [0], [number])
 
     # Dot cards.
 

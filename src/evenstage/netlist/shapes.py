@@ -109,7 +109,9 @@ def _compiled(pieces: list[_Piece]) -> re.Pattern[bytes]:
 def _pieces(statement: Statement, text: bytes) -> list[_Piece]:
     """Return the pieces of the expression, one per terminal or run of nets."""
     marks = statement.marks
-    pieces = [_Piece(_possessive(marks[0].terminal), "name")]
+    # One terminal stands for several kinds of card, a shape for one.
+    letter = chr(text[marks[0].start])
+    pieces = [_Piece(f"(?={letter}){_possessive(marks[0].terminal)}", "name")]
     position = 1
     while position < len(marks):
         mark = marks[position]

@@ -90,12 +90,20 @@ class Binder:
         plain = self._own(outline, scope)
         instances: list[tuple[Call, Key, float]] = []
         wrapped: list[_Devices] = []
+        alike: dict[tuple[str, int, int], tuple[Key, float]] = {}
         for call in outline.calls:
+            # Calls of one definition that share what they pass need the same template.
+            kind = (call.target, len(call.nets), id(call.parameters))
+            known = alike.get(kind)
+            if known is not None:
+                instances.append((call, *known))
+                continue
             with self._library.mistakes.collecting():
                 callee = self._key(call, scope)
                 multiplier = self._multiplier(call, scope)
                 device = self._wrapped(call, callee, multiplier)
                 if device is None:
+                    alike[kind] = callee, multiplier
                     instances.append((call, callee, multiplier))
                 else:
                     wrapped.append(device)
