@@ -11,6 +11,7 @@ import numpy as np
 
 from evenstage.circuit.electrical import Electrical, electrical
 from evenstage.circuit.function import inverted_text
+from evenstage.circuit.names import Names
 from evenstage.circuit.tables import AlikeGates, Arcs, Pins, arcs_of, pins_of
 
 if TYPE_CHECKING:
@@ -197,57 +198,15 @@ class Circuit:
         """
         net = int(self.alike[self.gate_form[gate]].nets[self.gate_row[gate], local])
         instance = int(self.gate_instance[gate])
-        return self._port_name(instance, net) or self._without_path(net, instance)
-
-    def _port_name(self, instance: int, net: int) -> str:
-        """Return the port of an instance a net is tied to; empty where there is none."""
-        if instance == 0:
-            return ""
-        return self._ports_of(instance).get(net, "")
-
-    def _ports_of(self, instance: int) -> dict[int, str]:
-        known = self._port_names
-        if instance not in known:
-            devices = self.devices
-            name = devices.subcircuits[devices.instance_subcircuit[instance]]
-            definition = devices.netlist.subcircuits.get(name.lower())
-            card = devices.netlist.card(int(devices.instance_card[instance]))
-            outer = int(devices.instance_parent[instance])
-            ports = definition.ports if definition else ()
-            known[instance] = {
-                self._net_in(outer, node): port
-                for node, port in reversed(list(zip(card.nodes, ports, strict=False)))
-            }
-        return known[instance]
-
-    def _net_in(self, instance: int, name: str) -> int:
-        """Return the net id of a name used in an instance's subcircuit."""
-        if instance > 0:
-            for net, port in self._ports_of(instance).items():
-                if port.lower() == name.lower():
-                    return net
-        path = self.devices.instance_path(instance)
-        for full in ((f"{path}.{name}",) if path else ()) + (name,):
-            found = self._net_ids.get(full.lower())
-            if found is not None:
-                return found
-        return -1
-
-    @cached_property
-    def _port_names(self) -> dict[int, dict[int, str]]:
-        return {}
-
-    @cached_property
-    def _net_ids(self) -> dict[str, int]:
-        return {name.lower(): net for net, name in enumerate(self.devices.net_names)}
-
-    def _without_path(self, net: int, instance: int) -> str:
-        name, path = self.devices.net_names[net], self.devices.instance_path(instance)
-        return name.removeprefix(f"{path}.") if path else name
+        return self._names.local(instance, net)
 
     def net_id(self, name: str) -> int | None:
         """Return the id of a net by its full name, in any case."""
-        return self._net_ids.get(name.lower())
+        return self._names.net_id(name)
+
+    @cached_property
+    def _names(self) -> Names:
+        return Names(self.devices)
 
     @cached_property
     def total_width(self) -> float:

@@ -225,7 +225,12 @@ def _alike_arcs(
 
 
 def _switch_resistance(some: AlikeGates, values: Electrical) -> Scaled:
-    """Return the resistance of each merged switch, shape ``(k, switches)``: fingers in parallel."""
+    """Return the resistance of each merged switch, shape ``(k, switches)``: fingers in parallel.
+
+    What scales and what stays are put in parallel apart, so that the sum keeps its form when the
+    gate grows. That is exact for equal fingers; unequal ones with fixed parts come out a little low
+    (fingers of 1 and 3 widths whose fixed parts are a tenth of the narrow one: by 3 %).
+    """
     network = some.form.network
     member = _incidence(network.switch_of_device, len(network.switches))
     scaling = 1.0 / ((1.0 / values.resistance.scaling[some.devices]) @ member)

@@ -17,7 +17,7 @@ from evenstage.pattern import select
 from evenstage.sizing.model import Limits
 from evenstage.sizing.problem import totals
 from evenstage.sizing.wishes import Original
-from evenstage.timing.graph import block_inputs
+from evenstage.timing.endpoints import block_inputs
 
 if TYPE_CHECKING:
     from evenstage.brief import Brief

@@ -13,8 +13,8 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from evenstage.errors import NoPathError, Notice
-from evenstage.pattern import Pattern, select
+from evenstage.errors import Notice
+from evenstage.timing.endpoints import arrivals_from_outside, endpoints, no_path, required_times
 from evenstage.timing.ignores import Expansion, expand
 from evenstage.timing.loops import cut_loops
 
@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.timing.endpoints import Endpoints
     from evenstage.timing.results import Yardstick
 
 
@@ -105,19 +106,6 @@ class TimingGraph:
         )
 
 
-@dataclass(frozen=True)
-class _Wish:
-    """What was asked for: which nets start paths and which end them.
-
-    The inputs are all nets where paths begin unless asked otherwise.
-    """
-
-    inputs: IntArray
-    starts: IntArray
-    ends: IntArray
-    whole: bool
-
-
 def timing_graph(
     circuit: Circuit,
     unit: Yardstick,
@@ -145,12 +133,11 @@ def timing_graph(
     SettingsError
         Where a pattern of the brief fits nothing.
     """
-    wish = _wish(circuit, start, end)
-    kept, notices = _usable_arcs(circuit, wish)
-    expansion = expand(circuit, kept, brief, wish.starts, wish.ends)
-    expansion = _on_paths(expansion)
+    found = endpoints(circuit, start, end)
+    kept, notices = _usable_arcs(circuit, found)
+    expansion = _on_paths(expand(circuit, kept, brief, found.starts, found.ends))
     if not len(expansion.start) or not len(expansion.end):
-        raise _no_path(circuit, wish, notices, start, end)
+        raise no_path(circuit, found, start=start, end=end)
     levels = _levels(len(expansion.net), expansion.source, expansion.target)
     order = np.lexsort((np.arange(len(levels)), levels))
     number = np.empty(len(order), np.int32)
@@ -158,7 +145,8 @@ def timing_graph(
     by_target = np.lexsort((expansion.arc, number[expansion.target]))
     target = number[expansion.target][by_target]
     level_of_arc = levels[expansion.target][by_target]
-    arrival, transition, drive = _input_briefs(circuit, unit, brief, expansion, wish)
+    starting = expansion.net[expansion.start], expansion.rising[expansion.start]
+    arrival, transition, drive = arrivals_from_outside(circuit, unit, brief, found, starting)
     return TimingGraph(
         net=expansion.net[order],
         rising=expansion.rising[order],
@@ -173,54 +161,19 @@ def timing_graph(
         start_transition=transition,
         start_drive=drive,
         end=number[expansion.end],
-        end_required=_required(circuit, brief, expansion.net[expansion.end]),
-        whole=wish.whole,
+        end_required=required_times(circuit, brief, expansion.net[expansion.end]),
+        whole=found.whole,
         notices=tuple(notices),
     )
 
 
-def _wish(circuit: Circuit, start: str | None, end: str | None) -> _Wish:
-    """Find the nets that start and end paths."""
-    nets = len(circuit.devices.net_names)
-    has_pin = np.zeros(nets, bool)
-    has_pin[circuit.pins.net] = True
-    inputs = block_inputs(circuit)
-    starts, ends = inputs, np.array(list(circuit.ends), np.int32)
-    if start is not None:
-        starts = _asked(circuit, start, np.flatnonzero(has_pin), "an input of any gate")
-    if end is not None:
-        ends = _asked(circuit, end, np.unique(circuit.gate_output), "driven by any gate")
-    return _Wish(inputs, starts, ends, start is None and end is None)
-
-
-def block_inputs(circuit: Circuit) -> IntArray:
-    """Return the nets that load gates, that no gate drives and that are no supplies; by id."""
-    has_pin = np.zeros(len(circuit.devices.net_names), bool)
-    has_pin[circuit.pins.net] = True
-    undriven = circuit.driver_of_net < 0
-    return np.flatnonzero(has_pin & undriven & ~circuit.supplies.is_supply).astype(np.int32)
-
-
-def _asked(circuit: Circuit, wanted: str, among: IntArray, what: str) -> IntArray:
-    names = circuit.devices.net_names
-    pattern = Pattern(wanted)
-    chosen = [net for net in among.tolist() if pattern.fits(names[net])]
-    if not chosen:
-        known = circuit.net_id(wanted)
-        problem = f"net '{wanted}' is not {what}" if known is not None else f"no net '{wanted}'"
-        raise NoPathError(
-            f"{problem} in '{circuit.devices.top or 'the top level'}'", code="no-path"
-        )
-    return np.array(chosen, np.int32)
-
-
-def _usable_arcs(circuit: Circuit, wish: _Wish) -> tuple[IntArray, list[Notice]]:
+def _usable_arcs(circuit: Circuit, found: Endpoints) -> tuple[IntArray, list[Notice]]:
     """Return the circuit arcs left after cutting loops and whatever drives a start."""
     arcs = circuit.arcs
     is_start = np.zeros(len(circuit.devices.net_names), bool)
-    is_start[wish.starts] = True
+    is_start[found.starts] = True
     kept = np.flatnonzero(~is_start[arcs.output] & (circuit.driver_of_net[arcs.output] >= 0))
-    cut = cut_loops(arcs.input[kept], arcs.output[kept], wish.starts, len(is_start))
+    cut = cut_loops(arcs.input[kept], arcs.output[kept], found.starts, len(is_start))
     notices = []
     if cut.cut.any():
         names = circuit.devices.net_names
@@ -291,53 +244,3 @@ def _levels(count: int, source: IntArray, target: IntArray) -> IntArray:
             if not waiting_for[follower]:
                 ready.append(follower)
     return np.array(level, np.int32)
-
-
-def _input_briefs(
-    circuit: Circuit, unit: Yardstick, brief: Brief | None, all_: Expansion, wish: _Wish
-) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Return arrival, transition and drive of each start node."""
-    nets, rising = all_.net[all_.start], all_.rising[all_.start]
-    arrival, drive = np.zeros(len(nets)), np.zeros(len(nets))
-    transition = np.where(rising, unit.transition_rise, unit.transition_fall)
-    given = brief.inputs if brief else ()
-    known = np.union1d(wish.inputs, wish.starts)
-    names = [circuit.devices.net_names[net] for net in known.tolist()] if given else []
-    for some in given:
-        chosen = np.isin(nets, known[select(some.nets, names, "input")])
-        arrival[chosen] = some.arrival
-        drive[chosen] = some.drive
-        if some.transition is not None:
-            transition[chosen] = some.transition
-    return arrival, transition, drive
-
-
-def _required(circuit: Circuit, brief: Brief | None, nets: IntArray) -> FloatArray:
-    """Return the required time of each end, s; NaN where the brief does not say."""
-    required = np.full(len(nets), np.nan)
-    given = brief.outputs if brief else ()
-    names = [circuit.devices.net_names[net] for net in circuit.gate_output] if given else []
-    for some in given:
-        if some.required is not None:
-            chosen = circuit.gate_output[select(some.nets, names, "driven net")]
-            required[np.isin(nets, chosen)] = some.required
-    return required
-
-
-def _no_path(
-    circuit: Circuit, wish: _Wish, notices: list[Notice], start: str | None, end: str | None
-) -> NoPathError:
-    """Say why no path is left."""
-    where = f"in '{circuit.devices.top or 'the top level'}'"
-    if not len(wish.starts):
-        loop = "; its gates form loops without a way in" if notices or len(circuit) else ""
-        return NoPathError(
-            f"no input {where}: every gate input is driven by a gate or tied to a supply{loop}",
-            code="loop-without-entry" if loop else "no-path",
-        )
-    asked = " ".join(f"{word} '{net}'" for word, net in (("from", start), ("to", end)) if net)
-    return NoPathError(
-        f"no path {asked + ' ' if asked else ''}{where}: no input reaches such an end along "
-        "recognised gates, loops cut and ignored paths left out",
-        code="no-path",
-    )

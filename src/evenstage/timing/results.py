@@ -67,8 +67,9 @@ class Stage:
     """One gate on a path; delays in s, capacitances in F, efforts dimensionless.
 
     ``stage_effort = logical_effort * electrical_effort * branching_effort`` and ``charged_delay =
-    tau * (stage_effort + parasitic_delay)``. ``load_cap`` is what hangs outside the gate: the next
-    input on the path, side branches and wire; ``on_path_cap`` the first of these alone.
+    tau * (stage_effort + parasitic_delay)``. ``arrival`` is that at the output along this path,
+    ``delay`` its difference to the stage before. ``load_cap`` is what hangs outside the gate: the
+    next input on the path, side branches and wire; ``on_path_cap`` the first of these alone.
     """
 
     instance: str
