@@ -93,7 +93,7 @@ class TestCommands:
         assert "stage" in shown(last, ROOT)
 
     def test_second_runs_every_test(self) -> None:
-        assert blocks()[1].text.endswith("&&\n.venv/bin/pytest --quiet\n")
+        assert blocks()[1].text.endswith("&&\n.venv/bin/pytest --quiet -n auto\n")
 
 
 class TestOutputs:
