@@ -130,3 +130,18 @@ def test_values_converted_together_are_worth_the_same(spelling: str) -> None:
     texts = [spelling.format(pick.uniform(1, 99)) for _ in range(300)]
     lines = [f"c{i} a b {text}" for i, text in enumerate(texts)]
     check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))
+
+
+def test_spans_of_a_parameter_of_many_cards() -> None:
+    lines = random_lines(random.Random(9), 300)
+    netlist = read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path())
+    found = list(netlist.cards.value_spans(range(len(netlist)), "w"))
+    asked = [netlist.card(number).parameter("w") for number in range(len(netlist))]
+    assert found == [None if one is None else one.span for one in asked]
+
+
+def test_names_of_many_cards() -> None:
+    lines = ["* t", "M1 a b c d nch", ".subckt Inv a b", "Mx a b c d nch", ".ends", "r2 a b 1"]
+    netlist = read_bytes("\n".join(lines).encode(), "t.sp", Path())
+    assert list(netlist.cards.full_names([0, 1, 2])) == ["M1", "inv.Mx", "r2"]
+    assert list(netlist.cards.full_names([2, 1])) == ["r2", "inv.Mx"]

@@ -216,6 +216,22 @@ class CardTable:
         assert match is not None
         return match[0].decode("utf-8", "surrogateescape")
 
+    def full_names(self, numbers: Iterable[int]) -> Iterator[str]:
+        """Give the names of some cards as written, behind those of their subcircuits."""
+        first = beyond = 0
+        before, data = "", b""
+        for number in numbers:
+            if not first <= number < beyond:
+                segment = bisect_right(self._segments, number)
+                first = self._segments[segment - 1]
+                last = segment == len(self._segments)
+                beyond = len(self) if last else self._segments[segment]
+                blocks, scope = self._segment_places[segment - 1]
+                before, data = f"{scope}." if scope else "", blocks.source.data
+            match = _NAME.match(data, self._starts[number])
+            assert match is not None
+            yield before + match[0].decode("utf-8", "surrogateescape")
+
     def scope(self, number: int) -> str:
         """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
         return self._place(number)[1]
@@ -235,6 +251,29 @@ class CardTable:
             # The nets follow the name, which is the first group.
             start, end = (base + edge for edge in match.span(position + 2))
         return blocks.source.data[start:end].decode("utf-8", "surrogateescape")
+
+    def value_spans(self, numbers: Iterable[int], name: str) -> Iterator[Span | None]:
+        """Give the bytes of one parameter of some cards; None where a card does not have it."""
+        groups = [stored.group(name) for stored in self._stored]
+        base, text, source = 0, b"", None
+        for number in numbers:
+            shape, start = self._shape_of[number], self._starts[number]
+            if shape == _ODD:
+                parameter = self[number].parameter(name)
+                yield None if parameter is None else parameter.span
+                continue
+            group = groups[shape]
+            if group is None:
+                yield None
+                continue
+            blocks, _ = self._place(number)
+            if blocks.source is not source or not base <= start < base + len(text):
+                base, text = blocks.at(start)
+                source = blocks.source
+            match = self._shapes[shape].row.match(text, start - base)
+            assert match is not None
+            first, last = match.span(group)
+            yield Span(source, base + first, base + last)
 
     def columns(self, numbers: Sequence[int]) -> Iterator[CardColumns]:
         """Give the cards of ascending numbers as columns of numbers; see ``CardStore``."""

@@ -3,7 +3,10 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from operator import attrgetter
 from typing import TYPE_CHECKING
+
+from evenstage.netlist.collection import without_collection
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
@@ -27,6 +30,9 @@ class Edit:
 
     span: Span
     text: bytes
+
+
+_ends = attrgetter("span.start", "span.end")
 
 
 def apply_edits(source: SourceText, edits: Iterable[Edit]) -> bytes:
@@ -58,14 +64,15 @@ def apply_edits(source: SourceText, edits: Iterable[Edit]) -> bytes:
     b'w=1.25u l=60n'
     """
     pieces: list[bytes] = []
-    done = 0
-    for edit in sorted(edits, key=lambda edit: (edit.span.start, edit.span.end)):
-        span = edit.span
-        if span.source.path != source.path or not done <= span.start <= span.end:
-            raise ValueError(f"edit at {span.place} overlaps another or is of another file")
-        pieces += (source.data[done : span.start], edit.text)
-        done = span.end
-    pieces.append(source.data[done:])
+    data, done = source.data, 0
+    for edit in sorted(edits, key=_ends):
+        start, end = _ends(edit)
+        of_another = edit.span.source is not source and edit.span.source.path != source.path
+        if of_another or not done <= start <= end:
+            raise ValueError(f"edit at {edit.span.place} overlaps another or is of another file")
+        pieces += (data[done:start], edit.text)
+        done = end
+    pieces.append(data[done:])
     return b"".join(pieces)
 
 
@@ -89,13 +96,17 @@ def rewrite(netlist: Netlist, edits: Iterable[Edit]) -> dict[Path, bytes]:
     ValueError
         If two edits overlap: a fault of ours.
     """
-    of_path: dict[Path, list[Edit]] = {}
-    for edit in edits:
-        of_path.setdefault(edit.span.source.path, []).append(edit)
-    texts = {
-        source.path: apply_edits(source, of_path[source.path])
-        for source in netlist.sources
-        if source.path in of_path
-    }
+    with without_collection():
+        of_source: dict[int, list[Edit]] = {}
+        for edit in edits:
+            of_source.setdefault(id(edit.span.source), []).append(edit)
+        of_path: dict[Path, list[Edit]] = {}
+        for some in of_source.values():
+            of_path.setdefault(some[0].span.source.path, []).extend(some)
+        texts = {
+            source.path: apply_edits(source, of_path[source.path])
+            for source in netlist.sources
+            if source.path in of_path
+        }
     unchanged = {source.path: source.data for source in netlist.sources}
     return {path: text for path, text in texts.items() if text != unchanged[path]}

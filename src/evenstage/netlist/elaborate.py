@@ -160,11 +160,7 @@ class _Block:
                 self._notices.append(Notice(code, message, place, names))
 
     def _card_names(self, numbers: Iterable[int]) -> tuple[str, ...]:
-        return tuple(map(self._card_name, numbers))
-
-    def _card_name(self, number: int) -> str:
-        scope, name = self._netlist.card_scope(number), self._netlist.card_name(number)
-        return f"{scope}.{name}" if scope else name
+        return tuple(self._netlist.cards.full_names(numbers))
 
     def _nets_of(self, instance: Indices, local: Indices) -> IntArray:
         """Return the final nets of local nets of instances."""

@@ -9,7 +9,7 @@ from evenstage.netlist.mistakes import MOST, Mistakes
 from evenstage.netlist.outline import Outline, OutlineBuilder
 from evenstage.netlist.parameters import Scope
 from evenstage.netlist.polarity import Models
-from evenstage.netlist.template import Binder, Key, Template
+from evenstage.netlist.template import Binder, CallForm, Key, Template
 from evenstage.netlist.wording import nearest
 
 if TYPE_CHECKING:
@@ -49,6 +49,8 @@ class Library:
         self.mistakes = Mistakes(netlist.sources)
         self._builder = OutlineBuilder(netlist, names, self.mistakes)
         self._templates: dict[Key, Template] = {}
+        #: Templates of calls that pass numbers only, and the multipliers of these calls.
+        self.alike: dict[CallForm, tuple[Key, float]] = {}
         self._covered: dict[str, bool] = {}
         self._missing: set[str] = set()
 

@@ -7,7 +7,7 @@ from functools import cached_property
 from typing import TYPE_CHECKING, Protocol
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Mapping, Sequence
+    from collections.abc import Iterable, Iterator, Mapping, Sequence
 
     from evenstage.errors import Notice
     from evenstage.netlist.devices import IntArray
@@ -175,6 +175,14 @@ class CardStore(Protocol):
 
     def name(self, number: int) -> str:
         """Return the name of a card as written."""
+        ...
+
+    def value_spans(self, numbers: Iterable[int], name: str) -> Iterator[Span | None]:
+        """Give the bytes of one parameter of some cards; None where a card does not have it."""
+        ...
+
+    def full_names(self, numbers: Iterable[int]) -> Iterator[str]:
+        """Give the names of some cards as written, behind those of their subcircuits."""
         ...
 
     def scope(self, number: int) -> str:

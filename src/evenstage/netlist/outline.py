@@ -32,7 +32,10 @@ _WIRED = frozenset("mxcrv")
 
 
 class Call(NamedTuple):
-    """An X card that calls a definition: its number, the name called, local nets, parameters."""
+    """An X card that calls a definition: its number, the name called, local nets, parameters.
+
+    Calls that pass the same share the mapping.
+    """
 
     card: int
     target: str
@@ -199,6 +202,23 @@ def _distinct(words: IntArray) -> tuple[IntArray, IntArray]:
     return distinct[order], rank[inverse]
 
 
+class _Passed:
+    """What calls pass, one mapping for all that pass the same."""
+
+    def __init__(self, netlist: Netlist) -> None:
+        self._text = netlist.cards.values.text
+        self._known: dict[tuple[str, ...], dict[tuple[int, ...], Mapping[str, str]]] = {}
+
+    def of(
+        self, names: tuple[str, ...], rows: Sequence[tuple[int, ...]]
+    ) -> Iterator[Mapping[str, str]]:
+        """Give the parameters of some calls from their names and rows of values."""
+        known = self._known.setdefault(names, {})
+        for row in set(rows) - known.keys():
+            known[row] = dict(zip(names, map(self._text, row), strict=True))
+        return map(known.__getitem__, rows)
+
+
 class OutlineBuilder:
     """Makes outlines of definitions.
 
@@ -218,11 +238,14 @@ class OutlineBuilder:
         self._geometry = geometry
         self._mistakes = mistakes
         self._numbering = NetNumbering(len(netlist.cards.words))
+        self._passed = _Passed(netlist)
 
     def outline(self, subcircuit: Subcircuit, classifier: Classifier) -> Outline:
         """Return the outline of a definition; a classifier tells its transistors from its calls."""
         cards = list(self._netlist.cards.columns(subcircuit.cards))
-        body = _Body(self._netlist, classifier, self._geometry, subcircuit, self._mistakes)
+        body = _Body(
+            self._netlist, classifier, self._geometry, subcircuit, self._mistakes, self._passed
+        )
         ports = map(self._netlist.cards.word_number, subcircuit.ports)
         wired = [one for one in cards if one.letter in _WIRED]
         words, firsts = self._numbering.number(np.array(list(ports), np.int32), wired)
@@ -241,8 +264,10 @@ class _Body:
         geometry: Sequence[str],
         subcircuit: Subcircuit,
         mistakes: Mistakes,
+        passed: _Passed,
     ) -> None:
         self._netlist = netlist
+        self._passed = passed
         self._classifier = classifier
         self._subcircuit = subcircuit
         self._mistakes = mistakes
@@ -293,10 +318,8 @@ class _Body:
         columns = [numbers.tolist() for numbers in cards.values.values()]
         rows = list(zip(*columns, strict=True)) if columns else [()] * count
         wires = zip(*nets.tolist(), strict=True) if len(nets) else [()] * count
-        # Calls that pass the same share what they pass.
-        text = self._netlist.cards.values.text
-        passed = {row: dict(zip(cards.values, map(text, row), strict=True)) for row in set(rows)}
-        return map(Call, cards.numbers.tolist(), names, wires, map(passed.__getitem__, rows))
+        passed = self._passed.of(tuple(cards.values), rows)
+        return map(Call, cards.numbers.tolist(), names, wires, passed)
 
     def _take_wrapped(self, cards: CardColumns, nets: IntArray) -> None:
         if len(nets) != 4:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from array import array
+from itertools import accumulate, chain
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
@@ -77,12 +78,15 @@ class ShapeColumns:
         self._columns[name].extend(take(texts))
 
     def _store_run(self, runs: Sequence[bytes]) -> None:
-        number, end = self._words.__getitem__, self._run_ends[-1]
-        for run in b"\n".join(runs).translate(_SPACES).split(b"\n"):
-            words = run.split()
-            self._run.extend(map(number, words))
-            end += len(words)
-            self._run_ends.append(end)
+        words = list(map(bytes.split, b"\n".join(runs).translate(_SPACES).split(b"\n")))
+        self._run.extend(map(self._words.__getitem__, chain.from_iterable(words)))
+        ends = accumulate(map(len, words), initial=self._run_ends.pop())
+        self._run_ends.extend(ends)
+
+    def group(self, name: str) -> int | None:
+        """Return the group of a parameter in the ``row`` of the shape, if it has one."""
+        place = self._value_places.get(name)
+        return None if place is None else place + 1
 
     def columns(self, numbers: IntArray, first: int, last: int) -> Iterator[CardColumns]:
         """Give the rows ``[first, last)``, which are the cards of some numbers."""

@@ -10,7 +10,9 @@ import numpy as np
 
 from evenstage.errors import ElaborationError
 from evenstage.netlist.columns import Column, absent, value_span
+from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.mistakes import Mistakes
+from evenstage.netlist.values import plain_value
 from evenstage.netlist.wording import counted
 
 if TYPE_CHECKING:
@@ -26,6 +28,9 @@ if TYPE_CHECKING:
 
 #: A definition and the values its caller gives it.
 Key = tuple[str, tuple[tuple[str, float], ...]]
+#: What calls have in common that need the same template: the definition, the number of nets, and
+#: the identity of what they pass.
+CallForm = tuple[str, int, int]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -90,11 +95,11 @@ class Binder:
         plain = self._own(outline, scope)
         instances: list[tuple[Call, Key, float]] = []
         wrapped: list[_Devices] = []
-        alike: dict[tuple[str, int, int], tuple[Key, float]] = {}
+        alike: dict[CallForm, tuple[Key, float]] = {}
+        shared = self._library.alike
         for call in outline.calls:
-            # Calls of one definition that share what they pass need the same template.
-            kind = (call.target, len(call.nets), id(call.parameters))
-            known = alike.get(kind)
+            form = (call.target, len(call.nets), id(call.parameters))
+            known = shared.get(form) or alike.get(form)
             if known is not None:
                 instances.append((call, *known))
                 continue
@@ -103,7 +108,8 @@ class Binder:
                 multiplier = self._multiplier(call, scope)
                 device = self._wrapped(call, callee, multiplier)
                 if device is None:
-                    alike[kind] = callee, multiplier
+                    everywhere = all(map(_is_number, call.parameters.values()))
+                    (shared if everywhere else alike)[form] = callee, multiplier
                     instances.append((call, callee, multiplier))
                 else:
                     wrapped.append(device)
@@ -238,6 +244,14 @@ class _Devices:
     nets: IntArray
     columns: Mapping[str, Column]
     multiplier: FloatArray
+
+
+def _is_number(text: str) -> bool:
+    """Tell whether a text means the same in every definition."""
+    try:
+        return plain_value(text) is not None
+    except FormulaError:
+        return False
 
 
 def _is_model(text: str, scope: Scope) -> bool:

@@ -1,0 +1,183 @@
+"""How fast netlists are read, laid out and rewritten, and what memory that takes.
+
+Run ``PYTHONPATH=src:tests python tests/benchmarks/bench_netlist.py``, or ``pytest -m benchmark`` on
+this file, which holds the table against its limits. All texts are invented here. Times are CPU
+seconds, best of three; ``ref`` is splitting the same bytes into lines and each line into words, in
+the same run. The large blocks are measured in processes of their own, for their peak memory.
+"""
+
+from __future__ import annotations
+
+import json
+import resource
+import subprocess
+import sys
+import time
+import tracemalloc
+from functools import partial
+from pathlib import Path
+from typing import TYPE_CHECKING, NamedTuple
+
+import pytest
+
+from evenstage.netlist.edits import Edit, rewrite
+from evenstage.netlist.elaborate import elaborate
+from evenstage.netlist.grammar import ENCODING, parser
+from evenstage.netlist.read import read_bytes
+from support.large_netlists import extracted, flat, hierarchical
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Iterator
+
+    from evenstage.netlist.netlist import Netlist
+
+_ROUNDS = 3
+_MILLION = 1_000_000
+
+
+class Row(NamedTuple):
+    """One line of the table: what was measured, the value, and what it must not exceed."""
+
+    what: str
+    value: float
+    unit: str
+    limit: float
+
+    def __str__(self) -> str:
+        sign = "<=" if self.limit > 0 else ">="
+        kept = "" if self.is_kept else "  missed"
+        number = f"{self.value:10.2f} {self.unit:<8}"
+        return f"{self.what:<58}{number}{sign} {abs(self.limit):g}{kept}"
+
+    @property
+    def is_kept(self) -> bool:
+        """Whether the value is within its limit; a negative limit is a least value."""
+        return self.value <= self.limit if self.limit > 0 else self.value >= -self.limit
+
+
+def seconds(action: Callable[[], object]) -> float:
+    """Return the CPU time of something, best of three."""
+    best = float("inf")
+    for _ in range(_ROUNDS):
+        begun = time.process_time()
+        action()
+        best = min(best, time.process_time() - begun)
+    return best
+
+
+def words(data: bytes) -> None:
+    """Split a text into lines and each line into words, as the measure of all others."""
+    for line in data.split(b"\n"):
+        line.split()
+
+
+def read(data: bytes) -> Netlist:
+    return read_bytes(data, "block.sp", Path())
+
+
+def reading() -> Iterator[Row]:
+    """Yield how long reading takes, relative to splitting into words and to Lark alone."""
+    parser("netlist")  # a quarter of a second, once for all
+    texts = {
+        "flat, repeated sizes": (flat(100_000), 11.0),
+        "flat, unique sizes": (flat(100_000, unique=True), 11.0),
+        "extracted": (extracted(350_000), 15.0),
+        "hierarchical, with expressions": (hierarchical(380), 13.0),
+    }
+    for name, (data, limit) in texts.items():
+        ratio = seconds(partial(read, data)) / seconds(partial(words, data))
+        yield Row(f"reading, {name}", ratio, "x ref", limit)
+    data = flat(10_000)
+    text = data.decode(ENCODING)
+    by_lark = seconds(lambda: parser("netlist").parse(text, start="netlist")) / len(data)
+    data = texts["flat, repeated sizes"][0]
+    rate = seconds(partial(read, data)) / len(data)
+    yield Row("the grammar alone, over reading flat text", by_lark / rate, "x", -20.0)
+
+
+def layout() -> Iterator[Row]:
+    """Yield what large blocks take from text to devices, each measured in its own process."""
+    for name, limit in (("flat", 5.0), ("unique", 5.0), ("hierarchical", 2.0)):
+        command = [sys.executable, __file__, name]
+        found = json.loads(subprocess.run(command, check=True, capture_output=True).stdout)
+        what = f"10^6 transistors, {name}: text to devices"
+        yield Row(what, found["seconds"], "s", limit)
+        if name == "flat":
+            yield Row("the same, peak memory of the process", found["peak"], "GiB", 0.6)
+
+
+def large(name: str) -> bytes:
+    """Return a text of some million transistors."""
+    if name == "hierarchical":
+        return hierarchical(380)
+    return flat(_MILLION, unique=name == "unique")
+
+
+def measure(name: str) -> None:
+    """Lay out a large block and print time and peak memory; the text is made by a child."""
+    make = [sys.executable, __file__, f"write-{name}"]
+    data = subprocess.run(make, check=True, capture_output=True).stdout
+    parser("netlist")
+    parser("expression")
+    best = float("inf")
+    for _ in range(_ROUNDS):
+        begun = time.process_time()
+        elaborate(read(data))
+        best = min(best, time.process_time() - begun)
+    peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 2**20
+    sys.stdout.write(json.dumps({"seconds": best, "peak": peak}))
+
+
+def rewriting() -> Iterator[Row]:
+    """Yield what new widths for 10^6 cards take, from spans to bytes."""
+    count = 200_000
+    netlist = read(flat(count))
+
+    def all_widths() -> None:
+        spans = netlist.cards.value_spans(range(len(netlist)), "w")
+        rewrite(netlist, [Edit(span, b"1.25u") for span in spans if span is not None])
+
+    yield Row("rewriting 10^6 widths", seconds(all_widths) * _MILLION / len(netlist), "s", 4.0)
+
+
+def memory() -> Iterator[Row]:
+    """Yield the memory kept for one transistor of a flat block, beyond its text."""
+    data = flat(100_000)
+    read(data[:10_000])
+    tracemalloc.start()
+    netlist = read(data)
+    table, _ = tracemalloc.get_traced_memory()
+    devices = elaborate(netlist)
+    both, _ = tracemalloc.get_traced_memory()
+    tracemalloc.stop()
+    yield Row("table of cards, names included", table / len(devices), "B", 130.0)
+    yield Row("devices, names included", (both - table) / len(devices), "B", 130.0)
+
+
+def rows() -> Iterator[Row]:
+    """Yield the whole table."""
+    for part in (reading, layout, rewriting, memory):
+        yield from part()
+
+
+@pytest.mark.benchmark
+def test_all_is_within_its_limits() -> None:
+    table = list(rows())
+    sys.stdout.writelines(f"\n{row}" for row in table)
+    assert [row.what for row in table if not row.is_kept] == []
+
+
+def main() -> None:
+    """Print the table, or measure one large block."""
+    if len(sys.argv) == 1:
+        for row in rows():
+            sys.stdout.write(f"{row}\n")
+            sys.stdout.flush()
+    elif sys.argv[1].startswith("write-"):
+        sys.stdout.buffer.write(large(sys.argv[1].removeprefix("write-")))
+    else:
+        measure(sys.argv[1])
+
+
+if __name__ == "__main__":
+    main()
