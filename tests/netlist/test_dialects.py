@@ -236,6 +236,41 @@ class TestText:
         assert "duplicate-subcircuit" in codes(devices)
         assert "duplicate-subcircuit" not in codes(laid(INV + INV + "x1 a b c d inv\n"))
 
+    def test_names_that_differ_by_case_alone(self) -> None:
+        """Where two different definitions differ in name by case alone, case counts for them."""
+        text = INV + INV.replace("inv", "INV").replace("w=1u", "w=5u")
+        devices = laid(f"{text}x1 a b c d inv\nx2 a b c d INV\nx3 a b c d Inv\n")
+        assert microns(devices) == [1.0, 2.0, 5.0, 2.0, 5.0, 2.0]
+        assert [(n.code, n.names) for n in devices.netlist.notices] == [
+            ("case-counts", ("INV", "inv"))
+        ]
+        assert laid(text, "INV").top == "INV'"
+        assert len(text_of(INV + INV.replace("inv", "INV")).subcircuits) == 1
+
+    NESTED = (
+        ".subckt outer a y\n.subckt inv a y\nm1 y a 0 0 nch w=7u l=1u\n.ends inv\n"
+        "x1 a y inv\n.subckt deep a y\nx1 a y inv\n.ends deep\nx2 a y deep\n.ends outer\n"
+    )
+
+    def test_a_definition_inside_another_is_known_there_first(self) -> None:
+        """Of two definitions of one name the one around the call counts."""
+        text = f"{INV}{self.NESTED}x1 a y outer\nx2 a b c d inv\n"
+        devices = laid(text)
+        assert microns(devices) == [7.0, 7.0, 1.0, 2.0]
+        assert set(devices.netlist.subcircuits) == {"inv", "outer", "outer.inv", "deep"}
+        assert devices.netlist.notices == ()
+
+    def test_a_definition_inside_another_is_found_elsewhere_if_it_is_the_only_one(self) -> None:
+        """A nested definition whose name nothing else has is known everywhere."""
+        devices = laid(self.NESTED + "x1 a b inv\n")
+        assert (microns(devices), devices.subcircuits) == ([7.0], ("", "inv"))
+
+    def test_an_end_without_a_name_ends_the_innermost_definition(self) -> None:
+        """Inside another definition a bare end is reported, with how to say otherwise."""
+        netlist = text_of(self.NESTED.replace(".ends inv", ".ends"))
+        assert set(netlist.subcircuits) == {"inv", "deep", "outer"}
+        assert [notice.code for notice in netlist.notices] == ["bare-ends"]
+
     def test_devices_of_one_name(self) -> None:
         """Two devices of one name are two devices, with a notice."""
         devices = laid(f"m1 a b 0 0 nch {TAIL}\nM1 c b 0 0 nch {TAIL}\n")

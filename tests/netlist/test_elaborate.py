@@ -366,7 +366,7 @@ def test_the_same_definition_twice_is_one() -> None:
 
 
 def test_of_two_different_definitions_the_later_counts() -> None:
-    other = ".subckt INV a y\nm1 y a 0 0 nch w=9u l=1u\n.ends\n"
+    other = ".SUBCKT inv a y\nm1 y a 0 0 nch w=9u l=1u\n.ends\n"
     netlist = read_bytes(f"* t{INVERTER}{other}".encode(), "t.sp", Path())
     assert microns(elaborate(netlist)) == [9]
     assert [(n.code, n.place) for n in netlist.notices] == [("duplicate-subcircuit", "t.sp:6:9")]

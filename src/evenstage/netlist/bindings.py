@@ -16,7 +16,7 @@ from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.values import parse_value
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Iterator, Mapping
+    from collections.abc import Callable, Iterator, Mapping, Sequence
 
     from evenstage.netlist.netlist import Card, CardGroup, Netlist, Parameter
 
@@ -157,10 +157,17 @@ class Bindings:
         callers: defaultdict[str, list[int]] = defaultdict(list)
         for _, group in self._groups():
             if group.letter == "x":
-                for number, target in zip(group.numbers, group.targets, strict=True):
-                    callers[_text(target)].append(number)
+                for number, target in zip(group.numbers, self._meant(group), strict=True):
+                    callers[target].append(number)
         known = self.netlist.subcircuits.keys() & callers.keys()
         return {name: tuple(sorted(callers[name])) for name in known}
+
+    def _meant(self, group: CardGroup) -> Sequence[str]:
+        """Return the keys of what some X cards call."""
+        callees = self.netlist.callees
+        if callees.local or callees.spellings:
+            return [self.netlist.callee(self.netlist.card(number)) for number in group.numbers]
+        return [_text(target) for target in group.targets]
 
     @cached_property
     def _mentions(self) -> Mapping[tuple[str, str], list[_Mention]]:
@@ -230,7 +237,7 @@ class Bindings:
         """Return where a card hands a parameter on to: into its subcircuit, or no further."""
         card = self.card(number)
         if self._is_call(card):
-            inner = Place(card.target.lower(), parameter, number)
+            inner = Place(self.netlist.callee(card), parameter, number)
             binding = self.binding(inner)
             if binding is not None and binding.kind == "passed" and parameter != "m":
                 return inner
@@ -238,7 +245,7 @@ class Bindings:
 
     def _is_call(self, card: Card) -> bool:
         """Tell whether a card calls a subcircuit that is more than a wrapped transistor."""
-        known = card.target.lower() in self.netlist.subcircuits
+        known = self.netlist.callee(card) in self.netlist.subcircuits
         return card.letter == "x" and known and card.number not in self.transistors
 
 

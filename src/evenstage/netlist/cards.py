@@ -21,7 +21,7 @@ from evenstage.netlist.stored import ShapeColumns, main_argument
 from evenstage.source import Span
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Iterator, Sequence
+    from collections.abc import Iterable, Iterator, Mapping, Sequence
 
     from evenstage.netlist.blocks import Blocks
     from evenstage.netlist.devices import IntArray
@@ -86,6 +86,11 @@ class CardTable:
             self._segment_places.pop()
         self._segments.append(len(self))
         self._segment_places.append((blocks, scope))
+
+    def rename_scopes(self, renamed: Mapping[str, str]) -> None:
+        """Give subcircuits other keys."""
+        if renamed:
+            self._segment_places = [(b, renamed.get(s, s)) for b, s in self._segment_places]
 
     def add_shape(self, shape: Shape) -> int:
         """Take note of a shape and return its number."""

@@ -49,7 +49,8 @@ def find_families(netlist: Netlist) -> Mapping[str, Family]:
     copied_from = {
         name: origin
         for name, subcircuit in netlist.subcircuits.items()
-        if (origin := _origin(subcircuit)) in netlist.subcircuits and origin != name
+        if (origin := netlist.callees.key(name, _origin(subcircuit))) in netlist.subcircuits
+        and origin != name
     }
     copies: dict[str, list[str]] = {}
     for name in copied_from:

@@ -107,7 +107,7 @@ class Library:
             return False
         found = [self.netlist.card(number) for number in cards]
         return not any(
-            card.letter == "m" or (card.letter == "x" and card.target.lower() != target)
+            card.letter == "m" or (card.letter == "x" and self.netlist.callee(card) != target)
             for card in found
         )
 

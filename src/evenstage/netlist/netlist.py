@@ -10,6 +10,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterable, Iterator, Mapping, Sequence
 
     from evenstage.errors import Notice
+    from evenstage.netlist.callees import Callees
     from evenstage.netlist.devices import IntArray
     from evenstage.netlist.functions import Function
     from evenstage.netlist.intake import Values, WordList
@@ -201,7 +202,8 @@ class Subcircuit:
     Parameters
     ----------
     name : str
-        As written.
+        As written; of one that another name would hide, more than that (see ``callees``). In lower
+        case it is the definition's key.
     ports : tuple of str
         As written.
     defaults : tuple of Parameter
@@ -255,6 +257,8 @@ class Netlist:
     ----------
     sources : tuple of SourceText
         The main file first.
+    callees : Callees
+        What names mean that several definitions have.
     subcircuits : Mapping of str to Subcircuit
         By lower-case name.
     top : Subcircuit
@@ -272,6 +276,7 @@ class Netlist:
     """
 
     sources: tuple[SourceText, ...] = field(repr=False)
+    callees: Callees
     subcircuits: Mapping[str, Subcircuit]
     top: Subcircuit
     models: Mapping[str, ModelCard]
@@ -284,6 +289,10 @@ class Netlist:
     def card(self, number: int) -> Card:
         """Return the element card of a number."""
         return self._cards[number]
+
+    def callee(self, card: Card) -> str:
+        """Return the key of the definition an X card calls, whether there is one or not."""
+        return self.callees.key(card.scope, card.target)
 
     def card_name(self, number: int) -> str:
         """Return the name of a card as written; faster than making the card."""

@@ -53,7 +53,7 @@ class Origin:
 def find_origins(block: SizedBlock, slot: Slot) -> tuple[Origin, ...] | str:
     """Return the numbers that set a slot's width, or the reason why it is fixed."""
     card = block.card(slot.card)
-    if slot.caller is not None and block.card(slot.caller).target.lower() != card.scope:
+    if slot.caller is not None and block.netlist.callee(block.card(slot.caller)) != card.scope:
         return "it stands in a subcircuit that its leaf calls"
     own = block.own_width(card)
     if own is None:

@@ -300,7 +300,9 @@ class _Body:
 
     def _take_calls(self, cards: CardColumns, nets: IntArray) -> None:
         words, targets = _distinct(cards.targets)
-        names = list(map(_name, self._netlist.cards.words.some(words)))
+        names = self._meant(self._netlist.cards.words.some(words))
+        if any(name in self._netlist.callees.spellings for name in names):
+            names, targets = self._by_spelling(cards)
         kinds = [self._classifier.call_kind(name, len(nets), cards.values.keys()) for name in names]
         for kind in dict.fromkeys(kinds):
             rows = np.flatnonzero(np.array([k == kind for k in kinds])[targets])
@@ -311,6 +313,19 @@ class _Body:
                 self._calls += self._made(some, [names[i] for i in targets[rows].tolist()], wires)
             else:
                 self._others.setdefault("x", []).extend(some.numbers.tolist())
+
+    def _meant(self, words: Iterable[bytes]) -> list[str]:
+        """Return the keys of what some words mean here."""
+        scope, callees = self._subcircuit.name.lower(), self._netlist.callees
+        if not callees.local:
+            return list(map(_name, words))
+        return [callees.local.get((scope, _name(word)), _name(word)) for word in words]
+
+    def _by_spelling(self, cards: CardColumns) -> tuple[list[str], IntArray]:
+        """Return the keys of what some cards call, and which each card calls, case and all."""
+        keys = [self._netlist.callee(self._netlist.card(n)) for n in cards.numbers.tolist()]
+        index = {key: i for i, key in enumerate(dict.fromkeys(keys))}
+        return list(index), np.array([index[key] for key in keys], np.int32)
 
     def _made(self, cards: CardColumns, names: Iterable[str], nets: IntArray) -> Iterator[Call]:
         """Give the calls some cards are."""

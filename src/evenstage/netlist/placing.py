@@ -106,7 +106,7 @@ class Placing:
         return self._texts[member]
 
     def _member(self, caller: int) -> str:
-        return self.block.card(caller).target.lower()
+        return self.block.netlist.callee(self.block.card(caller))
 
     def _changes(self, caller: int) -> tuple[Respelling, ...]:
         return tuple(entry.value.respelling for entry in self.wished[caller])
@@ -152,7 +152,7 @@ class Placing:
         """Add a copy with a group's text and return its name."""
         first = group.callers[0]
         leaf = self.block.netlist.subcircuits[self._member(first)]
-        name = free_name(leaf.name, taken)
+        name = free_name(leaf.name_span.text if leaf.name_span else leaf.name, taken)
         self.new.append(LeafCopy(leaf, name, group.callers, self._changes(first)))
         return name
 
@@ -175,7 +175,7 @@ class Placing:
 
     def _name(self, member: str) -> str:
         known = self.block.netlist.subcircuits.get(member)
-        return member if known is None else known.name
+        return member if known is None or known.name_span is None else known.name_span.text
 
     @cached_property
     def unused(self) -> tuple[str, ...]:

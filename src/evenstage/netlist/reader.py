@@ -316,6 +316,8 @@ class Reader:
     def finish(self) -> Netlist:
         """Return what was read."""
         top = self._scopes.finish(len(self._table))
+        callees, renamed = self._scopes.settle()
+        self._table.rename_scopes(renamed)
         ports = (port for one in self._scopes.subcircuits.values() for port in one.ports)
         self._table.finish(("0", *self._globals.values(), *ports))
         scope = Scope(assignments=top.assignments, functions=self._functions)
@@ -325,6 +327,7 @@ class Reader:
         }
         return Netlist(
             sources=self._includes.sources,
+            callees=callees,
             subcircuits=self._scopes.subcircuits,
             top=top,
             models=models,

@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from collections import Counter
+from dataclasses import dataclass, field, replace
 from itertools import chain, pairwise
 from typing import TYPE_CHECKING
 
 from evenstage.errors import NetlistError, Notice
+from evenstage.netlist.callees import Callees, local_names
 from evenstage.netlist.canonical import canonical
 from evenstage.netlist.netlist import Subcircuit
 from evenstage.source import Span
@@ -23,6 +25,7 @@ class _Open:
     """A definition whose ``.ends`` has not been met, or the top level."""
 
     name: Span | None
+    label: str = ""
     ports: tuple[str, ...] = ()
     defaults: tuple[Parameter, ...] = ()
     header: Span | None = None
@@ -32,12 +35,12 @@ class _Open:
 
     @property
     def key(self) -> str:
-        return "" if self.name is None else self.name.text.lower()
+        return self.label.lower()
 
     def closed(self, body: Span | None, end_name: Span | None) -> Subcircuit:
         """Return the finished definition."""
         return Subcircuit(
-            name="" if self.name is None else self.name.text,
+            name=self.label,
             ports=self.ports,
             defaults=self.defaults,
             assignments=tuple(self.assignments),
@@ -65,12 +68,16 @@ class Scopes:
         self._stack = [_Open(None)]
         self._first = 0
         self._bodies: dict[str, tuple[SourceText, int, int]] = {}
+        self._parents: dict[str, str] = {}
+        self._plain: dict[str, str] = {}
+        self._same: dict[str, str] = {}
+        self._spellings: dict[str, dict[str, str]] = {}
         self.subcircuits: dict[str, Subcircuit] = {}
         self.notices: list[Notice] = []
 
     @property
     def current(self) -> str:
-        """Lower-case name of the innermost open definition; empty: top level."""
+        """Key of the innermost open definition, as ``finish`` takes it; empty: top level."""
         return self._stack[-1].key
 
     @property
@@ -118,7 +125,22 @@ class Scopes:
         self._cut(cards)
         names = tuple(port.text for port in ports)
         start = line_start(header.source, header.start)
-        self._stack.append(_Open(name, names, defaults, header, start))
+        label = self._label(name.text)
+        self._parents[label.lower()] = self.current
+        self._plain[label.lower()] = name.text.lower() if self.depth else label.lower()
+        self._stack.append(_Open(name, label, names, defaults, header, start))
+
+    def _label(self, name: str) -> str:
+        """Return what a new definition is called, so that no other one is in its place.
+
+        One inside another has the other's name before it. One whose name differs from an earlier
+        one's by case alone has a quotation mark behind it, which no name in the text has.
+        """
+        if self._stack[-1].name is not None:
+            return f"{self._stack[-1].label}.{name}"
+        spelt = self._spellings.setdefault(name.lower(), {})
+        key = spelt.setdefault(name, name.lower() + "'" * len(spelt))
+        return name + "'" * (len(key) - len(name))
 
     def close(self, card: Span, end_name: Span | None, line_end: int, cards: int) -> None:
         """End the innermost definition.
@@ -144,11 +166,13 @@ class Scopes:
             raise NetlistError(
                 "no '.subckt' is open for this '.ends'", code="unmatched-ends", span=card
             )
-        if end_name is not None and end_name.text.lower() != opened.key:
+        if end_name is not None and end_name.text.lower() != opened.name.text.lower():
             message = f"this '.ends' names '{end_name.text}', but '{opened.name.text}' is open"
             raise NetlistError(
                 message, code="unmatched-ends", span=end_name, notes=(_begins(opened),)
             )
+        if end_name is None and self.depth > 1:
+            self._note_bare(card, opened)
         self._cut(cards)
         self._stack.pop()
         body = Span(card.source, opened.body_start, line_end)
@@ -158,6 +182,8 @@ class Scopes:
     def _define(self, subcircuit: Subcircuit, place: tuple[SourceText, int, int]) -> None:
         """Add a definition; a later one of the same name replaces an earlier one."""
         key = subcircuit.name.lower()
+        if self._is_like_another(subcircuit, place):
+            return
         earlier = self.subcircuits.get(key)
         if earlier is not None:
             if _words(*self._bodies[key]) == _words(*place):
@@ -172,6 +198,37 @@ class Scopes:
             self.notices.append(Notice("duplicate-subcircuit", message, where, (subcircuit.name,)))
         self.subcircuits[key] = subcircuit
         self._bodies[key] = place
+
+    def _is_like_another(self, subcircuit: Subcircuit, place: tuple[SourceText, int, int]) -> bool:
+        """Tell whether a definition only repeats one that is spelt in other case."""
+        key = subcircuit.name.lower()
+        plain = key.rstrip("'")
+        if key == plain:
+            return False
+        if _words(*self._bodies[plain]) == _words(*place):
+            self._same[key] = plain
+            return True
+        if key not in self.subcircuits:
+            name, other = subcircuit.name.rstrip("'"), self.subcircuits[plain].name
+            message = (
+                f"'{name}' and '{other}' are different subcircuits, so in their names case counts; "
+                f"'{name}' is called {subcircuit.name} in reports"
+            )
+            assert subcircuit.name_span is not None
+            place_of = subcircuit.name_span.place
+            self.notices.append(Notice("case-counts", message, place_of, (name, other)))
+        return False
+
+    def _note_bare(self, card: Span, opened: _Open) -> None:
+        assert opened.name is not None
+        if any(notice.code == "bare-ends" for notice in self.notices):
+            return
+        outer = self._stack[-2].label
+        message = (
+            f"an '.ends' without a name ends the innermost subcircuit, here '{opened.name.text}' "
+            f"inside '{outer}'; a name behind it can say otherwise"
+        )
+        self.notices.append(Notice("bare-ends", message, card.place, (opened.name.text,)))
 
     def check_closed(self, depth: int) -> None:
         """Refuse definitions still open beyond a depth, at the end of a file.
@@ -195,14 +252,49 @@ class Scopes:
             raise NetlistError(message, code="unmatched-ends", span=end)
 
     def finish(self, cards: int) -> Subcircuit:
-        """Return the top level."""
+        """Return the top level; after that, ``subcircuits`` are all there are."""
         self._cut(cards)
         return self._stack[0].closed(None, None)
+
+    def settle(self) -> tuple[Callees, dict[str, str]]:
+        """Give definitions inside others their plain names where nothing else has them.
+
+        Returns
+        -------
+        callees : Callees
+            What names mean that several definitions have.
+        renamed : dict of str to str
+            The keys of definitions by those ``current`` gave before, where they differ.
+        """
+        plain = self._plain
+        counts = Counter(plain[key] for key in self.subcircuits)
+        moved = {key: plain[key] for key in self.subcircuits if counts[plain[key]] == 1}
+        renamed = {old: new for old, new in {**self._same, **moved}.items() if old != new}
+        self.subcircuits = {
+            moved.get(key, key): replace(one, name=_written(one)) if key in renamed else one
+            for key, one in self.subcircuits.items()
+        }
+        parents = {
+            moved.get(key, key): moved.get(outer, outer) for key, outer in self._parents.items()
+        }
+        names = {key: plain[key] for key in self.subcircuits if key in plain and plain[key] != key}
+        spellings = {
+            name: spelt
+            for name, some in self._spellings.items()
+            if len(spelt := {s: self._same.get(k, k) for s, k in some.items()}) > 1
+            and len(set(spelt.values())) > 1
+        }
+        return Callees(local_names(parents, names) if names else {}, spellings), renamed
 
 
 def _words(source: SourceText, start: int, end: int) -> list[bytes]:
     """Return the words of some cards."""
     return canonical(source.data[start:end]).split()
+
+
+def _written(subcircuit: Subcircuit) -> str:
+    assert subcircuit.name_span is not None
+    return subcircuit.name_span.text
 
 
 def _begins(opened: _Open) -> str:

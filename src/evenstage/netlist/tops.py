@@ -66,8 +66,9 @@ def choose_top(netlist: Netlist, top: str | None, brief: Brief | None) -> str:
 
 
 def _named(netlist: Netlist, wanted: str) -> str:
-    if wanted.lower() in netlist.subcircuits:
-        return wanted.lower()
+    for key in (netlist.callees.key("", wanted), wanted.lower()):
+        if key in netlist.subcircuits:
+            return key
     names = [subcircuit.name for subcircuit in netlist.subcircuits.values()]
     hint = nearest(wanted, names)
     if not hint and names:
@@ -87,7 +88,7 @@ def _uncalled(netlist: Netlist) -> list[Subcircuit]:
         for cards in netlist.cards.columns(subcircuit.cards):
             if cards.letter == "x":
                 words = netlist.cards.words.some(np.unique(cards.targets))
-                called |= set(map(_name, words))
+                called.update(*(netlist.callees.all_keys(key, _name(word)) for word in words))
             if cards.letter in "mx":
                 filled.add(key)
     uncalled = [key for key in netlist.subcircuits if key not in called]
