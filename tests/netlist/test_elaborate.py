@@ -11,6 +11,7 @@ import pytest
 from evenstage.brief import Brief
 from evenstage.errors import ElaborationError
 from evenstage.netlist.elaborate import elaborate
+from evenstage.netlist.nets import endings
 from evenstage.netlist.read import read_bytes
 from evenstage.pattern import Pattern
 from evenstage.process.generic import generic
@@ -379,3 +380,23 @@ def test_a_parameter_that_does_not_converge_is_the_callers_error() -> None:
     assert caught.value.code == "bad-expression"
     assert caught.value.span is not None
     assert caught.value.span.text == "'1u/0'"
+
+
+def test_names_of_all_nets_at_once_are_those_one_by_one() -> None:
+    text = [
+        *(".global VDD!", ".subckt inv a Y", "m1 Y a VDD! VDD! pch w=1u l=1u"),
+        *(
+            "m2 Y a n.Gnd 0 nch w=1u l=1u",
+            ".ends",
+            "x:1 in Mid inv",
+            "x2 MID out inv",
+            "r1 mid m2 1",
+        ),
+    ]
+    names = elaborate(read_bytes("\n".join(["* t", *text, ""]).encode(), "t.sp", Path())).net_names
+    assert list(names) == [names[net] for net in range(len(names))] == list(names[:])
+    texts, place = endings(names)
+    assert [texts[i] for i in place] == [name.rpartition(".")[2].lower() for name in names]
+    assert [texts[i] for i in place] == [
+        endings(list(names))[0][i] for i in endings(list(names))[1]
+    ]

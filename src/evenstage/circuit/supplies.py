@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evenstage.errors import CircuitError
+from evenstage.netlist.nets import endings
 from evenstage.pattern import Pattern, select
 
 if TYPE_CHECKING:
@@ -96,7 +97,8 @@ def _channel(devices: Devices) -> BoolArray:
 
 def _named(devices: Devices, patterns: Iterable[Pattern], what: str) -> BoolArray:
     found = np.zeros(len(devices.net_names), bool)
-    found[select(tuple(patterns), devices.net_names, what)] = True
+    if chosen := tuple(patterns):
+        found[select(chosen, devices.net_names, what)] = True
     return found
 
 
@@ -104,12 +106,9 @@ def _by_name(devices: Devices, name: re.Pattern[str]) -> BoolArray:
     """Match the last component of each name: an undeclared rail deep in a block is still a rail."""
     found = _channel(devices)
     found[devices.bulk] = True
-    fits: dict[str, bool] = {}
-    for net in np.flatnonzero(found).tolist():
-        local = devices.net_names[net].rpartition(".")[2]
-        if local not in fits:
-            fits[local] = name.fullmatch(local) is not None
-        found[net] = fits[local]
+    texts, place = endings(devices.net_names)
+    fits = np.array([name.fullmatch(text) is not None for text in texts], bool)
+    found &= fits[place]
     return found
 
 
