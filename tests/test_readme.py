@@ -20,9 +20,18 @@ import tempfile
 import tomllib
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Final
+from typing import TYPE_CHECKING, Final
 
 import pytest
+
+from evenstage.brief import BRIEF_KEYS
+from evenstage.process.read import PROCESS_KEYS
+from evenstage.settings import Table, Tables
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from evenstage.schema import Entry
 
 ROOT: Final = Path(__file__).parents[1]
 README: Final = ROOT / "README.md"
@@ -51,7 +60,7 @@ def shown(command: str, folder: Path) -> str:
     done = subprocess.run(
         [sys.executable, "-m", "evenstage", *arguments],
         cwd=folder,
-        env=os.environ | {"COLUMNS": "100"},
+        env=os.environ | {"COLUMNS": "100", "LC_ALL": "C.UTF-8"},
         stdout=subprocess.PIPE,
         stderr=subprocess.STDOUT,
         check=False,
@@ -129,6 +138,56 @@ class TestOptions:
     def test_are_those_of_the_program(self, command: str, tmp_path: Path) -> None:
         offered = set(re.findall(r"--[a-z-]+", shown(f"evenstage {command} --help", tmp_path)))
         assert documented(command) == offered - {"--help"}
+
+
+def promised(heading: str) -> dict[str, str]:
+    """Return the keys of a section's table, each with the default that is promised for it."""
+    section = README.read_text("utf-8").split(f"\n## {heading}\n")[1].split("\n## ")[0]
+    found: dict[str, str] = {}
+    for cells in re.findall(r"^\| (`.*?) \| .* \| (.*?) \|$", section, re.MULTILINE):
+        keys = [key for key in re.findall(r"`(.*?)`", cells[0]) if not key.startswith("[[")]
+        defaults = cells[1].split(", ")
+        defaults += defaults[-1:] * (len(keys) - len(defaults))
+        found |= dict(zip(keys, defaults, strict=True))
+    return found
+
+
+def known(keys: Mapping[str, Entry], within: str = "") -> dict[str, Entry]:
+    """Return all keys of a schema; those of a table after its name and a dot."""
+    found: dict[str, Entry] = {}
+    for key, entry in keys.items():
+        if isinstance(entry, Table):
+            found |= known(entry.keys, f"{key}.")
+        elif isinstance(entry, Tables):
+            found |= known(entry.keys)
+        else:
+            found[within + key] = entry
+    return found
+
+
+def wording(entry: Entry) -> re.Pattern[str]:
+    """Return what the README may say of a default."""
+    if entry.required:
+        return re.compile("required")
+    word = getattr(entry, "word", None)
+    if word is not None:
+        return re.compile(f'`"?{word}"?`')
+    if isinstance(entry.default, str):
+        return re.compile(f"`{entry.default}`")
+    if isinstance(entry.default, int | float):
+        return re.compile(f"{entry.default:g}")
+    return re.compile(r"(?!required)[^\d]+")
+
+
+class TestKeys:
+    @pytest.mark.parametrize(
+        ("heading", "schema"), [("The process file", PROCESS_KEYS), ("The brief", BRIEF_KEYS)]
+    )
+    def test_are_those_of_the_program(self, heading: str, schema: Mapping[str, Entry]) -> None:
+        told, entries = promised(heading), known(schema)
+        assert sorted(told) == sorted(entries)
+        wrong = [key for key, entry in entries.items() if not wording(entry).fullmatch(told[key])]
+        assert wrong == []
 
 
 class TestFiles:

@@ -164,9 +164,7 @@ class TestMistakes:
         monkeypatch.chdir(tmp_path)
         with pytest.raises(SettingsError) as caught:
             read_settings("b.toml", KEYS)
-        assert str(caught.value) == (
-            "cannot read b.toml: no such file or directory (unreadable-file)"
-        )
+        assert str(caught.value) == ("there is no file 'b.toml' (missing-file)")
 
     def test_a_folder_is_no_file(self, tmp_path: Path) -> None:
         with pytest.raises(SettingsError, match=r"cannot read .*: is a directory"):

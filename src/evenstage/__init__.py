@@ -4,17 +4,21 @@ The verbs in their order: `read`, `elaborate`, `recognise`, `analyse`, `resize`,
 `compare`.
 """
 
-from evenstage.brief import read_brief
-from evenstage.circuit.recognise import recognise
-from evenstage.errors import EvenstageError
-from evenstage.netlist.edits import rewrite
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.read import read
-from evenstage.process.read import read_process
-from evenstage.sizing.resize import resize
-from evenstage.sizing.wishes import Wishes
-from evenstage.timing.analyse import analyse
-from evenstage.timing.compare import compare
+from importlib import import_module
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from evenstage.brief import read_brief
+    from evenstage.circuit.recognise import recognise
+    from evenstage.errors import EvenstageError
+    from evenstage.netlist.edits import rewrite
+    from evenstage.netlist.elaborate import elaborate
+    from evenstage.netlist.read import read
+    from evenstage.process.read import read_process
+    from evenstage.sizing.resize import resize
+    from evenstage.sizing.wishes import Wishes
+    from evenstage.timing.analyse import analyse
+    from evenstage.timing.compare import compare
 
 __version__ = "0.1.0"
 
@@ -31,3 +35,31 @@ __all__ = [
     "resize",
     "rewrite",
 ]
+
+_HOMES = {
+    "EvenstageError": "errors",
+    "Wishes": "sizing.wishes",
+    "analyse": "timing.analyse",
+    "compare": "timing.compare",
+    "elaborate": "netlist.elaborate",
+    "read": "netlist.read",
+    "read_brief": "brief",
+    "read_process": "process.read",
+    "recognise": "circuit.recognise",
+    "resize": "sizing.resize",
+    "rewrite": "netlist.edits",
+}
+
+if not TYPE_CHECKING:
+
+    def __getattr__(name: str) -> object:
+        """Import a name when it is first asked for: the command line must start at once."""
+        if name not in _HOMES:
+            raise AttributeError(f"module 'evenstage' has no attribute '{name}'")
+        value = getattr(import_module(f"evenstage.{_HOMES[name]}"), name)
+        globals()[name] = value
+        return value
+
+
+def __dir__() -> list[str]:
+    return [*__all__, "__version__"]

@@ -1,4 +1,8 @@
-"""Arguments in, exit status out; everything between is `evenstage.flow`."""
+"""Arguments in, exit status out; everything between is `evenstage.flow`.
+
+It is imported only when a command runs: help comes at once, and an interrupt finds someone to
+answer it.
+"""
 
 from __future__ import annotations
 
@@ -6,17 +10,23 @@ import argparse
 import os
 import sys
 import traceback
+from contextlib import suppress
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, TextIO
 
-from evenstage import __version__, flow
-from evenstage.errors import EvenstageError
+from evenstage import __version__
+from evenstage.errors import EvenstageError, OutputError
 from evenstage.units import parse_number
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
 
+    from evenstage import flow
+
 DONE, WRONG_INPUT, WRONG_USAGE, OUR_FAULT, INTERRUPTED = 0, 1, 2, 3, 130
+
+#: Longest delay that can be meant, s; beyond it a suffix was forgotten.
+_DELAY_MOST = 1e-3
 
 _CAUTION = "Figures are estimates, not sign-off: simulate at all corners before you rely on them."
 
@@ -44,8 +54,7 @@ def main(arguments: Sequence[str]) -> int:
     except SystemExit as stop:
         return int(stop.code or 0)
     try:
-        _show(asked.command(asked), asked)
-        sys.stdout.flush()
+        _run(asked)
     except EvenstageError as error:
         _say(str(error))
         return WRONG_INPUT
@@ -64,35 +73,76 @@ def main(arguments: Sequence[str]) -> int:
 
 
 def _say(message: str) -> None:
-    """Write a message to standard error, whatever its characters."""
-    encoding = sys.stderr.encoding or "utf-8"
-    print(message.encode(encoding, "replace").decode(encoding), file=sys.stderr)
+    """Write a message to standard error, whatever its characters, as far as there is one."""
+    if sys.stderr is not None:
+        with suppress(OSError):
+            print(_fit(message, sys.stderr), file=sys.stderr, flush=True)
 
 
-def _show(result: flow.Result, asked: argparse.Namespace) -> None:
-    """Print a result and its notices where they were asked for.
+def _fit(text: str, stream: TextIO) -> str:
+    """Return a text with what a stream cannot take replaced."""
+    encoding = stream.encoding or "utf-8"
+    return text.encode(encoding, "replace").decode(encoding)
+
+
+def _run(asked: argparse.Namespace) -> None:
+    """Run a command and put its result where it was asked for.
 
     A report holds its notices; JSON is for scripts, so there people find them on standard error.
     """
-    if asked.json == "-":
-        sys.stdout.write(flow.json(result))
+    from evenstage import flow
+
+    on_screen = asked.json == Path("-")
+    if asked.json and not on_screen:
+        flow.check_place(asked.json, _inputs(asked))
+    result = asked.command(asked)
+    if on_screen:
+        _print(flow.json(result))
         for notice in () if asked.quiet else flow.notices(result):
             _say(f"notice: {notice}")
         return
     if asked.json:
-        flow.write_text(Path(asked.json), flow.json(result), force=True)
-    encoding = sys.stdout.encoding or "ascii"
-    unicode = encoding.lower().startswith("utf")
-    report = flow.text(result, width=_width(), unicode=unicode, with_notices=not asked.quiet)
-    sys.stdout.write(report.encode(encoding, "replace").decode(encoding))
+        flow.write_text(asked.json, flow.json(result), force=True)
+    _print(
+        flow.text(result, width=_width(), unicode=_unicode(), with_notices=not asked.quiet),
+    )
+
+
+def _inputs(asked: argparse.Namespace) -> list[Path]:
+    """Return the files that a command reads, and the netlist that it writes."""
+    names = ("netlist", "before", "after", "process", "brief", "output")
+    return [path for name in names if (path := getattr(asked, name, None)) is not None]
+
+
+def _print(text: str) -> None:
+    """Write a result to standard output."""
+    if sys.stdout is None:
+        raise OutputError("there is no standard output to print to", code="cannot-write")
+    try:
+        sys.stdout.write(_fit(text, sys.stdout))
+        sys.stdout.flush()
+    except BrokenPipeError:
+        raise
+    except OSError as error:
+        # What is left in the buffer must not fail once more when Python ends.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        reason = (error.strerror or str(error)).lower()
+        raise OutputError(f"cannot print: {reason}", code="cannot-write") from None
+
+
+def _unicode() -> bool:
+    """Tell whether the report may hold more than ASCII: not where the locale is explicitly C."""
+    locale = os.environ.get("LC_ALL") or os.environ.get("LANG") or ""
+    able = sys.stdout is not None and sys.stdout.encoding.lower().startswith("utf")
+    return able and locale not in {"C", "POSIX"}
 
 
 def _width() -> int:
     """Return the width of the report: the terminal's within reason, 100 where there is none."""
     given = os.environ.get("COLUMNS", "")
-    if given.isdigit():
+    if given.isdecimal():
         columns = int(given)
-    elif sys.stdout.isatty():
+    elif sys.stdout is not None and sys.stdout.isatty():
         columns = os.get_terminal_size(sys.stdout.fileno()).columns
     else:
         columns = 100
@@ -100,10 +150,14 @@ def _width() -> int:
 
 
 def _analyse(asked: argparse.Namespace) -> flow.Result:
+    from evenstage import flow
+
     return flow.analyse(asked.netlist, _question(asked))
 
 
 def _resize(asked: argparse.Namespace) -> flow.Result:
+    from evenstage import flow
+
     wishes = flow.Wishes(
         delay=asked.delay,
         width=asked.width,
@@ -115,10 +169,14 @@ def _resize(asked: argparse.Namespace) -> flow.Result:
 
 
 def _diff(asked: argparse.Namespace) -> flow.Result:
+    from evenstage import flow
+
     return flow.diff(asked.before, asked.after, _question(asked))
 
 
 def _question(asked: argparse.Namespace) -> flow.Question:
+    from evenstage import flow
+
     return flow.Question(
         process=asked.process,
         brief=asked.brief,
@@ -139,21 +197,24 @@ def _parser() -> argparse.ArgumentParser:
     parser.add_argument("--version", action="version", version=f"evenstage {__version__}")
     commands = parser.add_subparsers(title="commands", metavar="COMMAND", required=True)
     analyse = _command(commands, "analyse", _analyse, "the slowest paths, stage by stage")
-    analyse.add_argument("netlist", type=Path, metavar="NETLIST")
+    analyse.add_argument("netlist", type=_file, metavar="NETLIST")
     analyse.add_argument(
         "--count", type=_count, default=1, metavar="K", help="how many slowest paths (1)"
     )
     _shared(analyse)
     resize = _command(commands, "resize", _resize, "new widths, written into a new netlist")
-    resize.add_argument("netlist", type=Path, metavar="NETLIST")
+    resize.add_argument("netlist", type=_file, metavar="NETLIST")
     resize.add_argument(
-        "--output", type=Path, metavar="FILE", help="the netlist to write; without it, only shown"
+        "--output",
+        type=_output,
+        metavar="FILE",
+        help="the netlist to write; without it, only shown",
     )
     _wishes(resize)
     _shared(resize)
     diff = _command(commands, "diff", _diff, "two netlists of one design, side by side")
-    diff.add_argument("before", type=Path, metavar="BEFORE")
-    diff.add_argument("after", type=Path, metavar="AFTER")
+    diff.add_argument("before", type=_file, metavar="BEFORE")
+    diff.add_argument("after", type=_file, metavar="AFTER")
     _shared(diff)
     return parser
 
@@ -178,12 +239,12 @@ def _command(
 def _shared(parser: argparse.ArgumentParser) -> None:
     """Add what every command takes."""
     add = parser.add_argument
-    add("--process", type=Path, metavar="FILE", help="what a micron of transistor is worth")
-    add("--brief", type=Path, metavar="FILE", help="what the netlist does not say: loads, limits")
+    add("--process", type=_file, metavar="FILE", help="what a micron of transistor is worth")
+    add("--brief", type=_file, metavar="FILE", help="what the netlist does not say: loads, limits")
     add("--top", metavar="NAME", help="the subcircuit to work on (the one nobody calls)")
     add("--from", metavar="NET", help="only paths that begin there; * and ? are wild")
     add("--to", metavar="NET", help="only paths that end there; * and ? are wild")
-    add("--json", metavar="FILE", help="the result for scripts; - is standard output")
+    add("--json", type=_file, metavar="FILE", help="the result for scripts; - is standard output")
     add("--quiet", action="store_true", help="no notices")
 
 
@@ -191,7 +252,7 @@ def _wishes(parser: argparse.ArgumentParser) -> None:
     """Add what only ``resize`` takes."""
     goal = parser.add_mutually_exclusive_group()
     goal.add_argument(
-        "--delay", type=_positive, metavar="VALUE", help="the least width for a delay, as in 450p"
+        "--delay", type=_delay, metavar="VALUE", help="the least width for a delay, as in 450p"
     )
     goal.add_argument(
         "--width",
@@ -218,6 +279,28 @@ def _wishes(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("--force", action="store_true", help="overwrite the output")
 
 
+def _file(text: str) -> Path:
+    if not text:
+        message = "a file name is empty"
+        raise argparse.ArgumentTypeError(message)
+    return Path(text)
+
+
+def _output(text: str) -> Path:
+    if text == "-":
+        message = "a netlist is written to a file; say ./- for one of that name"
+        raise argparse.ArgumentTypeError(message)
+    return _file(text)
+
+
+def _delay(text: str) -> float:
+    value = _positive(text)
+    if value > _DELAY_MOST:
+        message = f"must be at most 1 ms, as in 450p, got '{text}'"
+        raise argparse.ArgumentTypeError(message)
+    return value
+
+
 def _positive(text: str) -> float:
     try:
         value = parse_number(text)
@@ -235,7 +318,7 @@ def _percent(text: str) -> float:
     except ValueError:
         value = -1.0
     if not 0 <= value <= 1000:
-        message = f"must be a percentage from 0 on, got '{text}'"
+        message = f"must be a percentage from 0 to 1000, got '{text}'"
         raise argparse.ArgumentTypeError(message)
     return value
 

@@ -33,6 +33,7 @@ from evenstage.timing.compare import compare
 from evenstage.timing.results import Analysis, Difference
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
     from pathlib import Path
 
     from evenstage.netlist.devices import Devices
@@ -48,6 +49,7 @@ __all__ = [
     "Sizing",
     "Wishes",
     "analyse",
+    "check_place",
     "diff",
     "json",
     "load",
@@ -173,6 +175,31 @@ def resize(
     texts = _texts(block, sizing, record, asked)
     write_files(output_files(block.netlist, texts, output), force=force)
     return replace(sizing, notices=(*sizing.notices, *lost_includes(block.netlist, output)))
+
+
+def check_place(path: Path, inputs: Sequence[Path] = ()) -> None:
+    """Refuse a place for a report before any work is done.
+
+    Raises
+    ------
+    OutputError
+        Where it is one of the files that are read or written besides, is no file, or lies in no
+        folder.
+    """
+    if any(path.resolve() == other.resolve() for other in inputs):
+        raise OutputError(
+            f"'{path}' is read or written already; choose another name for the JSON",
+            code="output-exists",
+        )
+    if path.exists() and not path.is_file():
+        raise OutputError(
+            f"'{path}' is there and is not a file; choose another name", code="output-exists"
+        )
+    if not path.absolute().parent.is_dir():
+        raise OutputError(
+            f"there is no folder '{path.parent}' to write '{path.name}' to; make it first",
+            code="no-folder",
+        )
 
 
 def write_text(path: Path, content: str, *, force: bool) -> None:

@@ -152,11 +152,13 @@ def read_settings(path: str | Path, keys: Mapping[str, Entry]) -> Settings:
 def _read_source(path: str | Path) -> SourceText:
     try:
         data = Path(path).read_bytes()
+    except FileNotFoundError:
+        raise SettingsError(f"there is no file '{path}'", code="missing-file") from None
     except OSError as error:
         reason = (error.strerror or str(error)).lower()
-        raise SettingsError(f"cannot read {path}: {reason}", code="unreadable-file") from None
+        raise SettingsError(f"cannot read '{path}': {reason}", code="unreadable-file") from None
     except ValueError:
-        raise SettingsError(f"cannot read {path!r}", code="unreadable-file") from None
+        raise SettingsError(f"cannot read {str(path)!r}", code="unreadable-file") from None
     source = SourceText(Path(path).resolve(), data, str(path))
     try:
         data.decode()

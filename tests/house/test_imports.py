@@ -37,8 +37,8 @@ LEAVES: Final = frozenset(ORDER[0])
 #: What a file that only reads arguments and sets an exit status needs.
 CLI_IMPORTS: Final = frozenset(
     {
-        *("__future__", "argparse", "collections", "importlib", "os", "pathlib", "signal"),
-        *("sys", "traceback", "typing"),
+        *("__future__", "argparse", "collections", "contextlib", "importlib", "os", "pathlib"),
+        *("signal", "sys", "traceback", "typing"),
         *("evenstage", "evenstage.errors", "evenstage.flow", "evenstage.units"),
     }
 )

@@ -261,6 +261,14 @@ class TestNotices:
         text = one_line(analysis_report(replace(analysis, notices=(notice,))))
         assert "another are odd An estimate" in text
 
+    def test_names_without_quotes_are_seen_too(self, analysis: Analysis) -> None:
+        notices = (
+            Notice("odd", "first at y -> b", names=("y -> b",)),
+            Notice("cut", "a b", "", ("a",)),
+        )
+        text = one_line(analysis_report(replace(analysis, notices=notices)))
+        assert "odd: first at y -> b cut: a b: a An estimate" in text
+
     def test_can_be_left_out(
         self, analysis: Analysis, sizing: Sizing, difference: Difference
     ) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from itertools import islice
 from typing import TYPE_CHECKING, Final
 
@@ -137,9 +138,15 @@ def _group_lines(paper: Paper, code: str, group: Sequence[Notice]) -> list[str]:
 def _told(paper: Paper, notice: Notice) -> str:
     """Return a notice with the first of the names it is about, unless it names them itself."""
     names = [name for name in notice.names if name]
-    if not names or any(f"'{name}'" in notice.message for name in names):
+    if not names or any(_names(notice.message, name) for name in names):
         return str(notice)
     return f"{notice}: {listed(gathered(names, paper.times), _NAMES_SHOWN)}"
+
+
+def _names(message: str, name: str) -> bool:
+    """Tell whether a message names something; a single letter could be any word's."""
+    word = rf"(?<![\w.]){re.escape(name)}(?![\w.])"
+    return f"'{name}'" in message or (len(name) > 1 and bool(re.search(word, message)))
 
 
 def finished(paper: Paper, lines: Sequence[str]) -> str:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from itertools import accumulate, pairwise
 from typing import TYPE_CHECKING, Final
 
-from evenstage.report.scale import percent
+from evenstage.report.scale import percent, plain
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
@@ -63,7 +63,7 @@ def takes(path: Path, yardstick: Yardstick) -> str:
     time = duration(path)
     corner = f" (corner {path.corner})" if path.corner not in {"", yardstick.process} else ""
     return (
-        f"takes {engineering(time, 's')}, {time / yardstick.fo4:.1f} FO4, "
+        f"takes {engineering(time, 's')}, {plain(time / yardstick.fo4, 1)} FO4, "
         f"through {counted(len(path.stages), 'stage')}{corner}"
     )
 
