@@ -17,10 +17,13 @@ import numpy as np
 from evenstage.sizing.problem import totals
 
 if TYPE_CHECKING:
+    from evenstage.circuit.network import BoolArray
     from evenstage.sizing.problem import FloatArray, Problem
 
 _ROOM = 1e-7
 """Relative room below which a limit counts as having none."""
+_HAIR = 1e-9
+"""Relative room that a limit without room is given."""
 _BROKEN = 1e-6
 """Relative excess of the least value beyond which a limit is left for the optimiser to refuse."""
 
@@ -32,8 +35,15 @@ def without_room(problem: Problem) -> Problem:
         tight = (least > 1 - _ROOM) & (least < 1 + _BROKEN)
         tighter = _fixed(problem, tight)
         if (tighter.lower == problem.lower).all() and (tighter.upper == problem.upper).all():
-            return problem
+            return _kept(problem, least, tight)
         problem = tighter
+
+
+def _kept(problem: Problem, least: FloatArray, tight: BoolArray) -> Problem:
+    """Return the problem with tight limits kept by a hair, so that no rounding breaks them."""
+    scale = np.where(tight, (1 - _HAIR) / np.where(tight, least, 1.0), 1.0)
+    limit = problem.limit
+    return replace(problem, limit=replace(limit, coefficient=limit.coefficient * scale[limit.row]))
 
 
 def with_guard(problem: Problem, guard: float) -> Problem:
@@ -52,7 +62,7 @@ def _least(problem: Problem) -> FloatArray:
     return totals(limit.row, value, problem.limits)
 
 
-def _fixed(problem: Problem, tight: np.ndarray[tuple[int], np.dtype[np.bool_]]) -> Problem:
+def _fixed(problem: Problem, tight: BoolArray) -> Problem:
     """Return the problem with the sizes of tight limits fixed where these are least."""
     n, limit = len(problem.lower), problem.limit
     entries = tight[limit.row]

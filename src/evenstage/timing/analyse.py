@@ -97,6 +97,8 @@ def report(timing: Timing, count: int = 1) -> Analysis:
 def _ends(timing: Timing) -> tuple[PathEnd, ...]:
     """Return every end with its later edge, the latest first; of equal ones the first net."""
     graph, circuit = timing.graph, timing.circuit
+    charged = np.full(len(circuit.devices.net_names), -np.inf)
+    np.maximum.at(charged, graph.net[graph.end], timing.charged_arrival[graph.end])
     latest: dict[int, int] = {}
     for index, net in enumerate(graph.net[graph.end].tolist()):
         if net not in latest or timing.lateness[index] > timing.lateness[latest[net]]:
@@ -107,7 +109,7 @@ def _ends(timing: Timing) -> tuple[PathEnd, ...]:
             net=circuit.devices.net_names[graph.net[graph.end[index]]],
             edge=edge_name(rising=bool(graph.rising[graph.end[index]])),
             delay=float(timing.arrival[graph.end[index]]),
-            charged_delay=float(timing.charged_arrival[graph.end[index]]),
+            charged_delay=float(charged[graph.net[graph.end[index]]]),
             required=None
             if np.isnan(graph.end_required[index])
             else float(graph.end_required[index]),

@@ -126,7 +126,7 @@ class Path:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class PathEnd:
-    """The latest arrival at one path end.
+    """The latest arrival at one path end; ``charged_delay`` is the later of both edges' own.
 
     ``why`` says what ends a path there: ``output`` or the kind of unrecognised circuit it enters.
     """
