@@ -12,6 +12,7 @@ import json
 import resource
 import subprocess
 import sys
+import tempfile
 import time
 import tracemalloc
 from functools import partial
@@ -23,7 +24,7 @@ import pytest
 from evenstage.netlist.edits import Edit, rewrite
 from evenstage.netlist.elaborate import elaborate
 from evenstage.netlist.grammar import ENCODING, parser
-from evenstage.netlist.read import read_bytes
+from evenstage.netlist.read import read, read_bytes
 from support.large_netlists import extracted, flat, hierarchical
 
 if TYPE_CHECKING:
@@ -71,7 +72,7 @@ def words(data: bytes) -> None:
         line.split()
 
 
-def read(data: bytes) -> Netlist:
+def read_text(data: bytes) -> Netlist:
     return read_bytes(data, "block.sp", Path())
 
 
@@ -85,53 +86,52 @@ def reading() -> Iterator[Row]:
         "hierarchical, with expressions": (hierarchical(380), 13.0),
     }
     for name, (data, limit) in texts.items():
-        ratio = seconds(partial(read, data)) / seconds(partial(words, data))
+        ratio = seconds(partial(read_text, data)) / seconds(partial(words, data))
         yield Row(f"reading, {name}", ratio, "x ref", limit)
     data = flat(10_000)
     text = data.decode(ENCODING)
     by_lark = seconds(lambda: parser("netlist").parse(text, start="netlist")) / len(data)
     data = texts["flat, repeated sizes"][0]
-    rate = seconds(partial(read, data)) / len(data)
+    rate = seconds(partial(read_text, data)) / len(data)
     yield Row("the grammar alone, over reading flat text", by_lark / rate, "x", -20.0)
 
 
 def layout() -> Iterator[Row]:
     """Yield what large blocks take from text to devices, each measured in its own process."""
-    for name, limit in (("flat", 5.0), ("unique", 5.0), ("hierarchical", 2.0)):
-        command = [sys.executable, __file__, name]
-        found = json.loads(subprocess.run(command, check=True, capture_output=True).stdout)
-        what = f"10^6 transistors, {name}: text to devices"
-        yield Row(what, found["seconds"], "s", limit)
+    texts = {
+        "flat": (flat(_MILLION), 5.0),
+        "unique": (flat(_MILLION, unique=True), 5.0),
+        "hierarchical": (hierarchical(380), 2.0),
+    }
+    for name, (data, limit) in texts.items():
+        with tempfile.NamedTemporaryFile(suffix=".sp") as file:
+            file.write(data)
+            file.flush()
+            command = [sys.executable, __file__, file.name]
+            found = json.loads(subprocess.run(command, check=True, capture_output=True).stdout)
+        yield Row(f"10^6 transistors, {name}: text to devices", found["seconds"], "s", limit)
         if name == "flat":
             yield Row("the same, peak memory of the process", found["peak"], "GiB", 0.6)
 
 
-def large(name: str) -> bytes:
-    """Return a text of some million transistors."""
-    if name == "hierarchical":
-        return hierarchical(380)
-    return flat(_MILLION, unique=name == "unique")
-
-
-def measure(name: str) -> None:
-    """Lay out a large block and print time and peak memory; the text is made by a child."""
-    make = [sys.executable, __file__, f"write-{name}"]
-    data = subprocess.run(make, check=True, capture_output=True).stdout
+def measure(path: Path) -> None:
+    """Lay out a large block and print its time and the peak memory."""
     parser("netlist")
     parser("expression")
-    best = float("inf")
+    best, peak = float("inf"), 0.0
     for _ in range(_ROUNDS):
         begun = time.process_time()
-        elaborate(read(data))
+        elaborate(read(path))
         best = min(best, time.process_time() - begun)
-    peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 2**20
+        # What later rounds add is what earlier ones leave.
+        peak = peak or resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 2**20
     sys.stdout.write(json.dumps({"seconds": best, "peak": peak}))
 
 
 def rewriting() -> Iterator[Row]:
     """Yield what new widths for 10^6 cards take, from spans to bytes."""
     count = 200_000
-    netlist = read(flat(count))
+    netlist = read_text(flat(count))
 
     def all_widths() -> None:
         spans = netlist.cards.value_spans(range(len(netlist)), "w")
@@ -143,9 +143,9 @@ def rewriting() -> Iterator[Row]:
 def memory() -> Iterator[Row]:
     """Yield the memory kept for one transistor of a flat block, beyond its text."""
     data = flat(100_000)
-    read(data[:10_000])
+    read_text(flat(100))
     tracemalloc.start()
-    netlist = read(data)
+    netlist = read_text(data)
     table, _ = tracemalloc.get_traced_memory()
     devices = elaborate(netlist)
     both, _ = tracemalloc.get_traced_memory()
@@ -173,10 +173,8 @@ def main() -> None:
         for row in rows():
             sys.stdout.write(f"{row}\n")
             sys.stdout.flush()
-    elif sys.argv[1].startswith("write-"):
-        sys.stdout.buffer.write(large(sys.argv[1].removeprefix("write-")))
     else:
-        measure(sys.argv[1])
+        measure(Path(sys.argv[1]))
 
 
 if __name__ == "__main__":

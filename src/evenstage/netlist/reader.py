@@ -20,7 +20,7 @@ from evenstage.netlist.includes import Includes, section_range
 from evenstage.netlist.netlist import ModelCard, Netlist
 from evenstage.netlist.parameters import Scope
 from evenstage.netlist.scopes import Scopes
-from evenstage.netlist.shapes import learn
+from evenstage.netlist.shapes import learn, plain_bracket
 from evenstage.netlist.statement import Statement, parse_statement
 from evenstage.source import SourceText, Span
 
@@ -170,7 +170,9 @@ class Reader:
             self._note_unknown(Span(unit.source, position, _word_end(unit.source.data, position)))
             following = block
         else:
-            statement = parse_statement(unit.source, position, card_end)
+            plain = plain_bracket(text, position - base)
+            statement = plain.moved(base) if plain else None
+            statement = statement or parse_statement(unit.source, position, card_end)
             following = self._take(unit, statement, line_end, end)
         if following >= base + len(text):
             return following

@@ -14,12 +14,10 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass, replace
 from functools import cache
-from typing import TYPE_CHECKING, Final, Literal
+from typing import Final, Literal
 
 from evenstage.netlist.grammar import ENCODING, terminal
-
-if TYPE_CHECKING:
-    from evenstage.netlist.statement import Mark, Statement
+from evenstage.netlist.statement import Mark, Statement
 
 Role = Literal["name", "node", "nodes", "target", "argument", "key", "value"]
 
@@ -30,6 +28,7 @@ _LEARNABLE: Final = frozenset({"transistor", "call", "passive"})
 _SIGNS: Final = frozenset({"EQUAL", "SLASH", "PARAMS", "OPEN", "CLOSE", "OFF"})
 #: After these a call's next word is the subcircuit.
 _BEFORE_TARGET: Final = frozenset({"/", r"\)"})
+_WORD = re.compile(rb"[^\x00-\x20,]++")
 _QUANTIFIER = re.compile(r"(?<=[\])])(?:[*+]|\?)(?![+?])")
 
 
@@ -56,7 +55,7 @@ class Shape:
         called unless a ``target`` stands apart.
     keys : tuple of str
         Parameter names in their order, one for each ``value``.
-    groups : re.Pattern
+    expression : bytes
         Matches a card from its first byte to the first byte of the next, with a group for each
         role.
     row : re.Pattern
@@ -66,8 +65,49 @@ class Shape:
     letter: str
     roles: tuple[Role, ...]
     keys: tuple[str, ...]
-    groups: re.Pattern[bytes]
+    expression: bytes
     row: re.Pattern[bytes]
+
+    @property
+    def groups(self) -> re.Pattern[bytes]:
+        """The ``expression``, compiled when it is needed for the first time."""
+        return _compiled(self.expression)
+
+
+@cache
+def _compiled(expression: bytes) -> re.Pattern[bytes]:
+    return re.compile(expression)
+
+
+def plain_bracket(text: bytes, position: int) -> Statement | None:
+    """Return a ``.subckt`` or ``.ends`` card that is nothing but words, or None for other cards.
+
+    A large hierarchy has thousands of them, and Lark takes as long for each as for fifty cards of a
+    known shape.
+
+    Parameters
+    ----------
+    text : bytes
+        Canonical text.
+    position : int
+        Where the card begins.
+    """
+    match = _brackets().match(text, position)
+    if match is None:
+        return None
+    kind = match.lastgroup
+    assert kind is not None
+    words = [word.span() for word in _WORD.finditer(text, *match.span(kind))]
+    terminals = ["SUBCKT" if kind == "definition" else "ENDS", *["WORD"] * (len(words) - 1)]
+    return Statement(kind, tuple(Mark(t, *span) for t, span in zip(terminals, words, strict=True)))
+
+
+@cache
+def _brackets() -> re.Pattern[bytes]:
+    word = f"{_BETWEEN_WORDS}{_possessive('WORD')}"
+    definition = f"(?P<definition>{terminal('SUBCKT')}(?:{word})++)"
+    ends = f"(?P<ends>{terminal('ENDS')}(?:{word})?+)"
+    return re.compile(f"(?:{definition}|{ends}){_BETWEEN}{_END}".encode(ENCODING))
 
 
 def learn(statement: Statement, text: bytes) -> Shape | None:
@@ -88,8 +128,8 @@ def learn(statement: Statement, text: bytes) -> Shape | None:
         chr(text[statement.marks[0].start]),
         tuple(piece.role for piece in pieces if piece.role is not None),
         keys,
-        _compiled(pieces),
-        _compiled([replace(p, role=None) if p.role == "key" else p for p in pieces]),
+        _expression(pieces),
+        re.compile(_expression([replace(p, role=None) if p.role == "key" else p for p in pieces])),
     )
     return shape if _agrees(shape, statement, text) else None
 
@@ -101,9 +141,9 @@ class _Piece:
     name: str = ""
 
 
-def _compiled(pieces: list[_Piece]) -> re.Pattern[bytes]:
+def _expression(pieces: list[_Piece]) -> bytes:
     parts = [p.pattern if p.role is None else f"({p.pattern})" for p in pieces]
-    return re.compile((_BETWEEN.join(parts) + _BETWEEN + _END).encode(ENCODING))
+    return (_BETWEEN.join(parts) + _BETWEEN + _END).encode(ENCODING)
 
 
 def _pieces(statement: Statement, text: bytes) -> list[_Piece]:
@@ -157,8 +197,8 @@ def _role(rule: str, before: list[_Piece]) -> Role:
 
 def _agrees(shape: Shape, statement: Statement, text: bytes) -> bool:
     """Tell whether the expression finds the same words in the card as Lark did."""
-    match = shape.groups.match(text, statement.marks[0].start)
+    match = shape.row.match(text, statement.marks[0].start)
     if match is None:
         return False
     edges = {edge for mark in statement.marks for edge in (mark.start, mark.end)}
-    return all(set(match.span(g)) <= edges for g in range(1, len(shape.roles) + 1))
+    return all(set(match.span(g)) <= edges for g in range(1, shape.row.groups + 1))
