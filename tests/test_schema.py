@@ -91,7 +91,7 @@ MISTAKES = [
     (
         'name = "x"\ncount = 1.5',
         (
-            "b.toml:2:9: count must be a whole number, got a number (wrong-type)\n"
+            "b.toml:2:9: count must be a whole number, got 1.5 (wrong-type)\n"
             "    count = 1.5\n"
             "            ^^^"
         ),

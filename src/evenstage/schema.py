@@ -149,9 +149,8 @@ class Integer:
     def read(self, value: object, where: Where) -> int:
         """Return the number."""
         if not isinstance(value, int) or isinstance(value, bool):
-            raise where.error(
-                f"{where.key} must be a whole number, got {kind_of(value)}", "wrong-type"
-            )
+            got = str(value) if isinstance(value, float) else kind_of(value)
+            raise where.error(f"{where.key} must be a whole number, got {got}", "wrong-type")
         if value < self.least:
             raise where.error(
                 f"{where.key} must be at least {self.least}, got {value}", "out-of-range"

@@ -228,6 +228,11 @@ class TestDifferenceReport:
         assert "xrow[0:63].xdrv.xi2 x64  mn1" in text
         assert "  after     20 x xspare0:19\n" in text
 
+    def test_netlists_without_a_common_transistor(self, difference: Difference) -> None:
+        alone = tuple(replace(width, after=None) for width in difference.widths[:3])
+        text = one_line(difference_report(replace(difference, widths=alone, unchanged=0)))
+        assert "No transistor stands in both netlists: are they of one design?" in text
+
     def test_path_of_one_netlist_only(self, difference: Difference) -> None:
         alone = replace(difference, same_path_after=None, same_path_before=None)
         assert "The slowest path of each, stages of one gate together" in difference_report(alone)

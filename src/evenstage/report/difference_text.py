@@ -63,16 +63,22 @@ def difference_report(
 
 def _answer(difference: Difference) -> str:
     old, new = difference.before.paths[0], difference.after.paths[0]
-    both = [w for w in difference.widths if w.before is not None and w.after is not None]
+    both = sum(w.before is not None and w.after is not None for w in difference.widths)
     slowest = f"{rank(difference.before)} path {moves(old.delay, new.delay)}"
     if same_route(old, new):
         which = f"It is the same in both: {route(old)}."
     else:
         which = f"Before it is {route(old)}; after, {route(new)}."
-    return (
-        f"The {slowest}. {which} Widths differ on {counted(len(both), 'transistor')} and agree on "
-        f"{difference.unchanged}."
-    )
+    single = len(difference.widths) - both
+    return f"The {slowest}. {which} {_agreement(both, difference.unchanged, single)}"
+
+
+def _agreement(differing: int, same: int, single: int) -> str:
+    """Return how many transistors differ, agree, and stand in one netlist only."""
+    if not differing and not same:
+        return "No transistor stands in both netlists: are they of one design?"
+    only = f"; {counted(single, 'transistor')} in only one netlist" if single else ""
+    return f"Widths differ on {counted(differing, 'transistor')} and agree on {same}{only}."
 
 
 def _paths(paper: Paper, difference: Difference) -> list[str]:
