@@ -80,8 +80,8 @@ def reading() -> Iterator[Row]:
     """Yield how long reading takes, relative to splitting into words and to Lark alone."""
     parser("netlist")  # a quarter of a second, once for all
     texts = {
-        "flat, repeated sizes": (flat(100_000), 11.0),
-        "flat, unique sizes": (flat(100_000, unique=True), 11.0),
+        "flat, repeated sizes": (flat(300_000), 11.0),
+        "flat, unique sizes": (flat(300_000, unique=True), 11.0),
         "extracted": (extracted(350_000), 15.0),
         "hierarchical, with expressions": (hierarchical(380), 13.0),
     }

@@ -227,11 +227,8 @@ class CardTable:
         before, data = "", b""
         for number in numbers:
             if not first <= number < beyond:
-                segment = bisect_right(self._segments, number)
-                first = self._segments[segment - 1]
-                last = segment == len(self._segments)
-                beyond = len(self) if last else self._segments[segment]
-                blocks, scope = self._segment_places[segment - 1]
+                first, beyond = self._segment_of(number)
+                blocks, scope = self._place(number)
                 before, data = f"{scope}." if scope else "", blocks.source.data
             match = _NAME.match(data, self._starts[number])
             assert match is not None
@@ -260,9 +257,12 @@ class CardTable:
     def value_spans(self, numbers: Iterable[int], name: str) -> Iterator[Span | None]:
         """Give the bytes of one parameter of some cards; None where a card does not have it."""
         groups = [stored.group(name) for stored in self._stored]
-        base, text, source = 0, b"", None
+        matchers = [shape.row.match for shape in self._shapes]
+        shape_of, starts = self._shape_of, self._starts
+        first, beyond, base, text = 0, 0, 0, b""
+        blocks, _ = self._segment_places[0]
         for number in numbers:
-            shape, start = self._shape_of[number], self._starts[number]
+            shape, start = shape_of[number], starts[number]
             if shape == _ODD:
                 parameter = self[number].parameter(name)
                 yield None if parameter is None else parameter.span
@@ -271,14 +271,20 @@ class CardTable:
             if group is None:
                 yield None
                 continue
-            blocks, _ = self._place(number)
-            if blocks.source is not source or not base <= start < base + len(text):
+            if not first <= number < beyond:
+                first, beyond = self._segment_of(number)
+                blocks, text = self._place(number)[0], b""
+            if not base <= start < base + len(text):
                 base, text = blocks.at(start)
-                source = blocks.source
-            match = self._shapes[shape].row.match(text, start - base)
+            match = matchers[shape](text, start - base)
             assert match is not None
-            first, last = match.span(group)
-            yield Span(source, base + first, base + last)
+            yield Span(blocks.source, base + match.start(group), base + match.end(group))
+
+    def _segment_of(self, number: int) -> tuple[int, int]:
+        """Return the range of the cards around one that stand in the same place."""
+        segment = bisect_right(self._segments, number)
+        last = segment == len(self._segments)
+        return self._segments[segment - 1], len(self) if last else self._segments[segment]
 
     def columns(self, numbers: Sequence[int]) -> Iterator[CardColumns]:
         """Give the cards of ascending numbers as columns of numbers; see ``CardStore``."""
