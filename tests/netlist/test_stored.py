@@ -145,3 +145,19 @@ def test_names_of_many_cards() -> None:
     netlist = read_bytes("\n".join(lines).encode(), "t.sp", Path())
     assert list(netlist.cards.full_names([0, 1, 2])) == ["M1", "inv.Mx", "r2"]
     assert list(netlist.cards.full_names([2, 1])) == ["r2", "inv.Mx"]
+
+
+@pytest.mark.parametrize("kinds", [3, 100_000])
+def test_equal_parameters_are_read_at_once_and_others_apart(kinds: int) -> None:
+    pick = random.Random(5)
+    lines = [
+        f"m{i} a b 0 0 nch w={pick.randrange(1, kinds)}.{i % 2}u l='2*{i % 3}' off ad = 1p m=2"
+        for i in range(3000)
+    ]
+    check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))
+
+
+def test_parameters_that_stop_being_alike(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("evenstage.netlist.stored._MOST_TAILS", 50)
+    lines = [f"m{i} a b 0 0 nch w={i if i > 2000 else 1}u l=1u" for i in range(6000)]
+    check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))

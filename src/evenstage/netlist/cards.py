@@ -92,15 +92,11 @@ class CardTable:
         if renamed:
             self._segment_places = [(b, renamed.get(s, s)) for b, s in self._segment_places]
 
-    def add_shape(self, shape: Shape) -> int:
-        """Take note of a shape and return its number."""
+    def add_shape(self, shape: Shape) -> ShapeColumns:
+        """Take note of a shape and return what takes its cards."""
         self._shapes.append(shape)
-        self._stored.append(ShapeColumns(shape, self._word_numbers, self.values))
-        return len(self._shapes) - 1
-
-    def rows(self, shape: int) -> list[tuple[bytes, ...]]:
-        """Return the list that takes the words of cards of a shape until they are stored."""
-        return self._stored[shape].rows
+        self._stored.append(ShapeColumns(len(self._stored), shape, self._word_numbers, self.values))
+        return self._stored[-1]
 
     def extend(self, base: int, starts: list[int], shapes: list[int]) -> None:
         """Add cards that have a shape and empty the lists; their words are in the rows of it.

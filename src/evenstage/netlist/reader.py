@@ -25,17 +25,9 @@ from evenstage.netlist.statement import Statement, parse_statement
 from evenstage.source import SourceText, Span
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
-
     from evenstage.netlist.netlist import Parameter
     from evenstage.netlist.statement import Mark
-
-    #: Matches a card of one shape up to the next card; the shape's number; what takes the words.
-    _Learned = tuple[
-        Callable[[bytes, int], re.Match[bytes] | None],
-        int,
-        Callable[[tuple[bytes, ...]], None],
-    ]
+    from evenstage.netlist.stored import ShapeColumns
 
 #: A sequence of terminals is learned when it is met for this time: an expression takes as long to
 #: compile as some fifty cards take to parse.
@@ -69,7 +61,7 @@ class Reader:
         self._table = CardTable()
         self._scopes = Scopes()
         self._includes = Includes()
-        self._learned: list[list[_Learned]] = [[] for _ in range(256)]
+        self._learned: list[list[ShapeColumns]] = [[] for _ in range(256)]
         self._met: dict[tuple[str, ...], int] = {}
         self._models: dict[str, tuple[str, str, tuple[Parameter, ...], Span]] = {}
         self._globals: dict[str, str] = {}
@@ -134,7 +126,7 @@ class Reader:
         while place < len(text):
             shapes = learned[text[place]]
             for shape in shapes:
-                found = shape[0](text, place)
+                found = shape.match(text, place)
                 if found is not None:
                     break
             else:
@@ -143,7 +135,7 @@ class Reader:
                 continue
             if shape is not shapes[0]:
                 _promote(shapes, shapes.index(shape))
-            match, number, take = shape
+            match, number, take = shape.match, shape.number, shape.rows.append
             # Most cards are like the one before.
             while found is not None:
                 starts.append(place)
@@ -214,13 +206,12 @@ class Reader:
         if shape is None:
             self._table.append_odd(statement)
             return
-        number = self._table.add_shape(shape)
+        stored = self._table.add_shape(shape)
         found = shape.row.match(block.text, statement.marks[0].start - block.start)
         assert found is not None
-        take = self._table.rows(number).append
-        take(found.groups())
-        self._learned[ord(shape.letter)].append((shape.row.match, number, take))
-        self._table.extend(statement.marks[0].start, [0], [number])
+        stored.rows.append(found.groups())
+        self._learned[ord(shape.letter)].append(stored)
+        self._table.extend(statement.marks[0].start, [0], [stored.number])
 
     # Dot cards.
 
@@ -377,7 +368,7 @@ def check_text(source: SourceText) -> None:
         raise NetlistError(f"'{source.label}' is not a text file", code="not-text")
 
 
-def _promote(shapes: list[_Learned], rank: int) -> None:
+def _promote(shapes: list[ShapeColumns], rank: int) -> None:
     """Move a shape one place forward, so that the most used are tried first."""
     shapes[rank - 1], shapes[rank] = shapes[rank], shapes[rank - 1]
 

@@ -60,6 +60,10 @@ class Shape:
         role.
     row : re.Pattern
         The same with a group for each role but ``key``, which saves time.
+    joint : bytes
+        The same with one group for all parameters; empty where there are fewer than two.
+    tail : bytes
+        Matches what that group holds, with a group for each value.
     """
 
     letter: str
@@ -67,6 +71,8 @@ class Shape:
     keys: tuple[str, ...]
     expression: bytes
     row: re.Pattern[bytes]
+    joint: bytes = b""
+    tail: bytes = b""
 
     @property
     def groups(self) -> re.Pattern[bytes]:
@@ -129,7 +135,8 @@ def learn(statement: Statement, text: bytes) -> Shape | None:
         tuple(piece.role for piece in pieces if piece.role is not None),
         keys,
         _expression(pieces),
-        re.compile(_expression([replace(p, role=None) if p.role == "key" else p for p in pieces])),
+        re.compile(_expression(_without_keys(pieces))),
+        *_joint_and_tail(_without_keys(pieces), keys),
     )
     return shape if _agrees(shape, statement, text) else None
 
@@ -141,9 +148,26 @@ class _Piece:
     name: str = ""
 
 
+def _without_keys(pieces: list[_Piece]) -> list[_Piece]:
+    return [replace(piece, role=None) if piece.role == "key" else piece for piece in pieces]
+
+
+def _joint_and_tail(pieces: list[_Piece], keys: tuple[str, ...]) -> tuple[bytes, bytes]:
+    """Return the expressions of a card with its parameters in one, and of these."""
+    if len(keys) < 2:
+        return b"", b""
+    first = next(i for i, piece in enumerate(pieces) if piece.name)
+    plain = [replace(piece, role=None) for piece in pieces[first:]]
+    whole = _Piece(_joined(plain), "value")
+    return _expression([*pieces[:first], whole]), _joined(pieces[first:]).encode(ENCODING)
+
+
+def _joined(pieces: list[_Piece]) -> str:
+    return _BETWEEN.join(p.pattern if p.role is None else f"({p.pattern})" for p in pieces)
+
+
 def _expression(pieces: list[_Piece]) -> bytes:
-    parts = [p.pattern if p.role is None else f"({p.pattern})" for p in pieces]
-    return (_BETWEEN.join(parts) + _BETWEEN + _END).encode(ENCODING)
+    return (_joined(pieces) + _BETWEEN + _END).encode(ENCODING)
 
 
 def _pieces(statement: Statement, text: bytes) -> list[_Piece]:

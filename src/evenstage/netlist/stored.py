@@ -12,7 +12,7 @@ import numpy as np
 from evenstage.netlist.netlist import CardColumns
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Sequence
+    from collections.abc import Iterator, Mapping, Sequence
 
     from evenstage.netlist.devices import IntArray
     from evenstage.netlist.intake import Values, Words
@@ -21,7 +21,35 @@ if TYPE_CHECKING:
 _ROLES: Final = ("node", "nodes", "target", "argument", "value")
 #: Makes every blank of the grammar but the line feed one that ``bytes.split`` knows.
 _SPACES: Final = bytes(32 if (b < 33 and b != 10) or b == 44 else b for b in range(256))
+#: So many cards are looked at before it is decided how those to come are read.
+_MANY: Final = 256
+#: Parameters are read all at once where each occurs at least so often.
+_ALIKE: Final = 4
+_MOST_TAILS: Final = 1 << 14
 _NUMERIC = re.compile(rb"[+-]?\.?[0-9]|['\"{(]")
+
+
+class _Tails(dict[bytes, int]):
+    """The parameters of cards as they stand there, each text taken apart once.
+
+    Most cards of a netlist are drawn like many others.
+    """
+
+    def __init__(self, shape: Shape, places: Mapping[str, int], values: Values) -> None:
+        super().__init__()
+        self.columns = {name: array("i") for name in places}
+        self._groups = [place - min(places.values()) + 1 for place in places.values()]
+        self._match = re.compile(shape.tail).fullmatch
+        self._take = values.kept if shape.letter == "x" else values.numbers_of
+
+    def __missing__(self, text: bytes) -> int:
+        match = self._match(text)
+        assert match is not None
+        numbers = self._take([match[group] for group in self._groups])
+        for column, number in zip(self.columns.values(), numbers, strict=True):
+            column.append(number)
+        self[text] = len(self)
+        return len(self) - 1
 
 
 class ShapeColumns:
@@ -29,14 +57,22 @@ class ShapeColumns:
 
     Parameters
     ----------
+    number : int
+        Of the shape.
     shape : Shape
         How they are read.
     words, values : Words and Values
         Those of the netlist.
     """
 
-    def __init__(self, shape: Shape, words: Words, values: Values) -> None:
+    def __init__(self, number: int, shape: Shape, words: Words, values: Values) -> None:
+        self.number = number
+        #: Matches a card; its groups are to be put among the rows.
+        self.match = shape.row.match
         self.rows: list[tuple[bytes, ...]] = []
+        self._shape = shape
+        self._tails: _Tails | None = None
+        self._is_settled = not shape.tail
         self.hashes = array("q")
         self._letter = shape.letter
         self._words = words
@@ -68,10 +104,29 @@ class ShapeColumns:
             self._targets.extend(map(number, columns[self._target_place]))
         if self._run_place is not None:
             self._store_run(columns[self._run_place])
-        for name, place in self._value_places.items():
-            self._store_values(name, columns[place])
         if self._arguments:
             self._store_values("", main_argument([columns[i] for i in self._arguments]))
+        if self._tails is not None:
+            self._store_tails(self._tails, columns[-1])
+            return
+        for name, place in self._value_places.items():
+            self._store_values(name, columns[place])
+        if not self._is_settled and len(columns[0]) >= _MANY:
+            self._settle([columns[place] for place in self._value_places.values()])
+
+    def _settle(self, values: list[tuple[bytes, ...]]) -> None:
+        """Decide how the cards to come are read: equal parameters all at once, others apart."""
+        self._is_settled = True
+        if _ALIKE * len(set(zip(*values, strict=True))) <= len(values[0]):
+            self._tails = _Tails(self._shape, self._value_places, self._values)
+            self.match = re.compile(self._shape.joint).match
+
+    def _store_tails(self, tails: _Tails, texts: Sequence[bytes]) -> None:
+        ids = np.fromiter(map(tails.__getitem__, texts), np.intp, len(texts))
+        for name, column in tails.columns.items():
+            self._columns[name].frombytes(_view(column)[ids].tobytes())
+        if len(tails) > _MOST_TAILS:
+            self._tails, self.match = None, self._shape.row.match
 
     def _store_values(self, name: str, texts: Sequence[bytes]) -> None:
         take = self._values.kept if self._letter == "x" else self._values.numbers_of
