@@ -15,6 +15,8 @@ _TAB = 8
 _TOLD = 20
 #: Longest line shown whole, and how much of a longer one stands before the cause.
 _WIDTH = 100
+#: Longest message told whole.
+_MOST = 1000
 _LEAD = 40
 
 
@@ -43,7 +45,7 @@ class EvenstageError(Exception):
         self.notes = notes
 
     def __str__(self) -> str:
-        lines = [f"{self.message} ({self.code})", *self.notes]
+        lines = [f"{_short(self.message)} ({self.code})", *map(_short, self.notes)]
         if self.span is not None:
             lines[:1] = [f"{self.span.place}: {lines[0]}", *excerpt(self.span)]
         return _printable("\n".join(lines))
@@ -142,6 +144,11 @@ def excerpt(span: Span) -> list[str]:
     shown = _printable(line.expandtabs(_TAB))
     carets = "^" * max(1, min(len(under), len(shown)) - len(before))
     return [f"    {shown}", f"    {' ' * len(before)}{carets}"]
+
+
+def _short(text: str) -> str:
+    """Return a text without the middle of it if it is very long."""
+    return text if len(text) <= _MOST else f"{text[: _MOST // 2]} ... {text[-_MOST // 4 :]}"
 
 
 def _printable(text: str) -> str:

@@ -55,6 +55,48 @@ def test_values_that_differ_from_call_to_call(monkeypatch: pytest.MonkeyPatch) -
     )
 
 
+@pytest.mark.parametrize(
+    "text",
+    [
+        "r1 a b 1\nx1" + " a" * 600_000,
+        "m1 a b 0 0 nch w='" + "1+" * 600_000,
+        ".foo " + "a " * 600_000,
+    ],
+)
+def test_cards_nobody_drew(text: str) -> None:
+    with pytest.raises(NetlistError) as caught:
+        read_bytes(f"* t\n{text}\n".encode(), "top.sp", Path())
+    assert "this card is longer than 1048576 bytes (too-large)" in str(caught.value)
+
+
+@pytest.mark.parametrize(
+    "text",
+    [
+        "a word " * 400_000,
+        "* t\n* " + "c" * 3_000_000,
+        "* t\n" + "\n" * 3_000_000,
+        "* t\n.control\n" + "a b\n" * 500_000 + ".endc",
+        "* t\nr1 a b 1 $" + " $" * 900_000,
+    ],
+)
+def test_long_lines_that_are_no_cards(text: str) -> None:
+    assert len(read_bytes(text.encode(), "top.sp", Path())) <= 1
+
+
+def test_a_long_word_is_told_in_part() -> None:
+    message = refusal("* t\nm1 a b 0 0 nch l=1u w=" + "1" * 5000 + "\n")
+    assert len(message) < 2000
+
+
+def test_definitions_inside_each_other_without_end() -> None:
+    text = "* t\n" + "".join(f".subckt s{k} a\n" for k in range(101))
+    with pytest.raises(NetlistError) as caught:
+        read_bytes(text.encode(), "top.sp", Path())
+    assert str(caught.value).startswith(
+        "top.sp:102:1: subcircuits are defined inside each other more than 100 deep"
+    )
+
+
 def test_a_thousand_wrappers_around_one_transistor() -> None:
     assert refusal(levels(1100, ["w=w"])) == "wrapped transistors are nested too deeply (too-large)"
 

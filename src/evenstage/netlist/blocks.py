@@ -21,7 +21,7 @@ if TYPE_CHECKING:
 _SIZE: Final = 1 << 16
 _KEPT: Final = 16
 #: Before a line that is neither comment nor continuation.
-_CUT = re.compile(rb"[\r\n][\x00-\x20]*+(?=[A-Za-z.])")
+_CUT = re.compile(rb"[\r\n][\x00-\x09\x0b\x0c\x0e-\x20]*+(?=[A-Za-z.])")
 
 
 class Block(NamedTuple):

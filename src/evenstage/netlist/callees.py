@@ -62,12 +62,14 @@ def local_names(parents: Mapping[str, str], names: Mapping[str, str]) -> dict[tu
     names : Mapping of str to str
         By the key of each definition that is only known locally its lower-case name.
     """
+    inside: dict[str, dict[str, str]] = {}
+    for key, name in names.items():
+        inside.setdefault(parents[key], {})[name] = key
     local: dict[tuple[str, str], str] = {}
     for scope in parents:
         around = scope
         while around:
-            for key, name in names.items():
-                if parents[key] == around:
-                    local.setdefault((scope, name), key)
+            for name, key in inside.get(around, {}).items():
+                local.setdefault((scope, name), key)
             around = parents[around]
     return local

@@ -32,6 +32,8 @@ if TYPE_CHECKING:
 #: A sequence of terminals is learned when it is met for this time: an expression takes as long to
 #: compile as some fifty cards take to parse.
 _LEARNED_AT: Final = 3
+#: Bytes of a card; a longer one is no card of a design, and reading it would fill the memory.
+_LONGEST: Final = 1 << 20
 _BLANKS: Final = bytes(range(33)) + b","
 _SKIP = re.compile(rb"[\x00-\x20,]*+")
 _ELEMENTS: Final = frozenset({"transistor", "call", "passive", "source", "element"})
@@ -118,6 +120,8 @@ class Reader:
         """Read the cards of a block from a position on; return where the next block begins."""
         base, text = unit.blocks.at(position)
         text = text[: end - base]
+        if len(text) > _LONGEST:
+            _refuse_long_cards(unit.source, base, text)
         skipped = _SKIP.match(text, position - base)
         assert skipped is not None
         place, learned = skipped.end(), self._learned
@@ -368,6 +372,23 @@ def check_text(source: SourceText) -> None:
         raise NetlistError(f"'{source.label}' is not a text file", code="not-text")
 
 
+def _refuse_long_cards(source: SourceText, base: int, text: bytes) -> None:
+    """Refuse cards so long that nobody drew them.
+
+    Raises
+    ------
+    NetlistError
+        If there is one.
+    """
+    start = 0
+    for line in text.split(b"\n"):
+        if len(line) > _LONGEST and len(line.strip(_BLANKS)) > _LONGEST:
+            first = base + start + len(line) - len(line.lstrip(_BLANKS))
+            message = f"this card is longer than {_LONGEST} bytes"
+            raise NetlistError(message, code="too-large", span=Span(source, first, first + 1))
+        start += len(line) + 1
+
+
 def _promote(shapes: list[ShapeColumns], rank: int) -> None:
     """Move a shape one place forward, so that the most used are tried first."""
     shapes[rank - 1], shapes[rank] = shapes[rank], shapes[rank - 1]
@@ -375,6 +396,8 @@ def _promote(shapes: list[ShapeColumns], rank: int) -> None:
 
 def _element_or_none(source: SourceText, start: int, end: int) -> Statement | None:
     """Return a line as an element card of a kind with a fixed form, if it could be one."""
+    if end - start > _LONGEST:
+        return None
     lead = len(source.data[start:end]) - len(source.data[start:end].lstrip())
     try:
         statement = parse_statement(source, start + lead, end)

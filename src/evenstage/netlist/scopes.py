@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections import Counter
 from dataclasses import dataclass, field, replace
 from itertools import chain, pairwise
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 from evenstage.errors import NetlistError, Notice
 from evenstage.netlist.callees import Callees, local_names
@@ -18,6 +18,10 @@ if TYPE_CHECKING:
 
     from evenstage.netlist.netlist import Parameter
     from evenstage.source import SourceText
+
+
+#: Definitions inside each other; more are a forgotten ``.ends`` each time.
+_DEPTH: Final = 100
 
 
 @dataclass(slots=True)
@@ -114,7 +118,7 @@ class Scopes:
         Raises
         ------
         NetlistError
-            If two ports have one name.
+            If two ports have one name, or too many definitions are open.
         """
         seen: set[str] = set()
         for port in ports:
@@ -122,6 +126,9 @@ class Scopes:
                 message = f"'{name.text}' has two ports named '{port.text}'"
                 raise NetlistError(message, code="duplicate-port", span=port)
             seen.add(port.text.lower())
+        if self.depth >= _DEPTH:
+            message = f"subcircuits are defined inside each other more than {_DEPTH} deep"
+            raise NetlistError(message, code="unmatched-subckt", span=header)
         self._cut(cards)
         names = tuple(port.text for port in ports)
         start = line_start(header.source, header.start)
