@@ -11,6 +11,8 @@ from evenstage import flow
 if TYPE_CHECKING:
     from pathlib import Path
 
+    from evenstage.sizing.results import Sizing
+
 #: Three inverters, the last one far too wide for its bare output.
 CHAIN: Final = """* three inverters
 .global vdd vss
@@ -56,7 +58,7 @@ def question(tmp_path: Path) -> flow.Question:
     return flow.Question(process=path)
 
 
-def shrunk(netlist: Path, question: flow.Question) -> tuple[Path, flow.Sizing]:
+def shrunk(netlist: Path, question: flow.Question) -> tuple[Path, Sizing]:
     """Return a netlist with everything made as small as it may be, and the sizing behind it."""
     output = netlist.with_name("small.sp")
     wishes = flow.Wishes(margin=9.0, scope="block", reclaim=True)
