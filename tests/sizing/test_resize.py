@@ -245,6 +245,15 @@ class TestLimits:
         held = resized(self.TEXT, Wishes(margin=0.1), Brief(transition_max=limit))
         assert held.after.worst_transition <= limit * (1 + 1e-6)
 
+    def test_limits_out_of_reach_are_named(self) -> None:
+        with pytest.raises(InfeasibleError, match=r"gate 'mi\dn' cannot keep the transition limit"):
+            resized(self.TEXT, brief=Brief(transition_max=1e-12))
+        tiny = InputBrief(nets=pats("x0"), capacitance_max=1e-17)
+        with pytest.raises(InfeasibleError, match=r"input 'x0' may show 10.0 aF, but"):
+            resized(self.TEXT, brief=Brief(inputs=(tiny,)))
+        with pytest.raises(InfeasibleError, match=r"a total width of .* is out of reach"):
+            resized(self.TEXT, Wishes(width=0.1))
+
     def test_recorded_limits_count_instead_of_todays(self) -> None:
         original = Original(ceilings={"x0": 6e-15})
         assert (

@@ -164,6 +164,18 @@ class TestWhichPathsCount:
         assert found.paths[0].stages[-1].load_cap == pytest.approx(12e-15)
 
 
+def test_a_path_of_very_many_stages_stays_finite() -> None:
+    """2^1500 is beyond the range of floats, but nothing else about such a chain is."""
+    cards = []
+    for k in range(1500):
+        cards.append(inverter(f"i{k}", f"x{k}", f"x{k + 1}", 1, 2))
+        cards.append(f"cw{k} x{k + 1} vss 3f")
+    path = analysis(block("\n".join(cards), "x0 x1500 vdd vss")).paths[0]
+    assert math.isfinite(path.path_effort)
+    assert path.least_delay == pytest.approx(path.charged_delay, rel=1e-2)
+    assert path.best_stage_count == 1500
+
+
 class TestLoops:
     def test_cross_coupled_gates_are_cut_with_a_notice(self) -> None:
         latch = nand("a", ["s", "qb"], "q", 2, 2) + "\n" + nand("b", ["r", "q"], "qb", 2, 2)

@@ -50,7 +50,7 @@ class TestBestStageCount:
     def test_inverters(self, effort: float, stages: int, best: int) -> None:
         delays = {n: n * effort ** (1 / n) + n for n in range(stages, 30, 2)}
         assert min(delays, key=lambda n: (delays[n], n)) == best
-        assert best_stage_count(effort, stages, float(stages), 1.0) == best
+        assert best_stage_count(math.log(effort), stages, float(stages), 1.0) == best
 
     @pytest.mark.parametrize(
         ("count", "boundary"),

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -28,6 +29,10 @@ class AmbiguousTopError(ElaborationError):
     def __init__(self, message: str, names: tuple[str, ...]) -> None:
         super().__init__(message, code="ambiguous-top")
         self.names = names
+
+
+_COPY = re.compile(r"(.+)_s[0-9]+")
+"""Name of a sized copy, and in it that of the leaf it was made of."""
 
 
 def choose_top(netlist: Netlist, top: str | None, brief: Brief | None) -> str:
@@ -91,7 +96,9 @@ def _uncalled(netlist: Netlist) -> list[Subcircuit]:
                 called.update(*(netlist.callees.all_keys(key, _name(word)) for word in words))
             if cards.letter in "mx":
                 filled.add(key)
-    uncalled = [key for key in netlist.subcircuits if key not in called]
+    # A leaf whose callers all call sized copies of it is no block of its own.
+    replaced = {match[1] for key in called if (match := _COPY.fullmatch(key))}
+    uncalled = [key for key in netlist.subcircuits if key not in called | replaced]
     keys = [key for key in uncalled if key in filled] or uncalled
     return [netlist.subcircuits[key] for key in keys]
 

@@ -21,6 +21,7 @@ import numpy as np
 from evenstage.errors import InfeasibleError, NotConvergedError
 from evenstage.sizing.certificate import check
 from evenstage.sizing.goals import Budget, Cheapest, Fastest
+from evenstage.sizing.infeasible import BudgetTooSmallError, LimitOutOfReachError
 from evenstage.sizing.interior_point import solve
 from evenstage.sizing.presolve import with_guard, without_room
 from evenstage.timing.sweep import sweep
@@ -156,7 +157,16 @@ class Engine:
         deadline = least * (1 + max(self.wishes.margin, _AGREES))
         if self.wishes.width is None:
             deadline = min(deadline, max(drawn, least * (1 + _AGREES)))
-        return self._within(deadline, fastest, active, lower, upper)
+        late = float(self.today.lateness.max())
+        for _ in range(6):
+            answer = self._within(deadline, fastest, active, lower, upper)
+            reached = float(self.timed(answer.sizes).lateness.max())
+            tighter = max(least * (1 + _AGREES), deadline * late / reached * (1 - 10 * _AGREES))
+            # No faster in charged delay than today must not mean slower in arrivals.
+            if reached <= late or tighter >= deadline:
+                break
+            deadline = tighter
+        return answer
 
     def _within(
         self,
@@ -238,6 +248,11 @@ class Engine:
         free = self.model.variables.free
         limiting = free & (self._on_slowest_path() | self._beyond_limits())
         start = np.ones(len(free))
+        if self.wishes.scope == "block":
+            # What limits when everything may move may shrink; the rest may only grow.
+            lower, upper = self._bounds(free)
+            everything = self._solve(self._first_goal(), lower, upper, start, _LOOSE)
+            limiting |= free & self._limiting(everything)
         tolerance = _LOOSE
         while True:
             lower, upper = self._bounds(limiting)
@@ -283,9 +298,43 @@ class Engine:
     ) -> Solution:
         problem = self._problem(lower, upper)
         begin = np.clip(start, problem.lower, problem.upper)
-        solution = solve(problem, goal, start=begin, tolerance=tolerance)
+        try:
+            solution = solve(problem, goal, start=begin, tolerance=tolerance)
+        except LimitOutOfReachError as error:
+            raise self._limit_out_of_reach(error) from error
+        except BudgetTooSmallError as error:
+            raise self._budget_too_small(error) from error
         check(problem, goal, solution)
         return solution
+
+    def _limit_out_of_reach(self, error: LimitOutOfReachError) -> InfeasibleError:
+        """Say which input or which gate cannot keep its limit."""
+        nets, circuit = self.limits.ceiling_net, self.model.circuit
+        if error.limit_row < len(nets):
+            name = circuit.devices.net_names[nets[error.limit_row]]
+            ceiling = float(self.limits.ceiling[error.limit_row])
+            return InfeasibleError(
+                f"input '{name}' may show {engineering(ceiling, 'F')}, but the smallest widths "
+                f"allowed there show {engineering(error.least * ceiling, 'F')}",
+                code="input-over-ceiling",
+            )
+        row = self.model.transition_row(self.limits)
+        gate = int(circuit.arcs.gate[np.flatnonzero(row == error.limit_row)[0]])
+        limit = engineering(self.limits.transition, "s")
+        return InfeasibleError(
+            f"gate '{circuit.gate_name(gate)}' cannot keep the transition limit of {limit}: "
+            f"within the widths allowed its edges take {error.least:.3g} times as long",
+            code="transition-out-of-reach",
+        )
+
+    def _budget_too_small(self, error: BudgetTooSmallError) -> InfeasibleError:
+        """Say what the smallest widths come to."""
+        what, unit = ("total width", "m") if self.wishes.spend == "width" else ("capacitance", "F")
+        return InfeasibleError(
+            f"a {what} of {engineering(error.asked, unit, 4)} is out of reach: the smallest widths "
+            f"allowed come to {engineering(error.least, unit, 4)}",
+            code="budget-too-small",
+        )
 
     def _limiting(self, solution: Solution, share: float = _ON_LIMITING_PATH) -> BoolArray:
         """Tell which sizes carry flow: those of gates on limiting paths."""

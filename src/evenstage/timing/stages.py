@@ -10,6 +10,7 @@ Harris, Logical Effort, 1999, chapters 1 and 3, from memory).
 from __future__ import annotations
 
 import math
+import sys
 from dataclasses import dataclass
 from itertools import accumulate, islice
 from typing import TYPE_CHECKING
@@ -20,6 +21,8 @@ from evenstage.timing.results import Path, SideBranch, Stage
 from evenstage.timing.yardstick import best_stage_count, best_stage_effort
 
 if TYPE_CHECKING:
+    from collections.abc import Iterable
+
     from evenstage.circuit.circuit import Circuit
     from evenstage.timing.results import Edge
     from evenstage.timing.search import ArcPath
@@ -52,10 +55,7 @@ def describe(timing: Timing, arcs: ArcPath) -> Path:
             arcs, [*arcs[1:], None], islice(arrivals, 1, None), strict=True
         )
     )
-    logical = math.prod(stage.logical_effort for stage in stages)
-    branching = math.prod(stage.branching_effort for stage in stages)
-    electrical = math.prod(stage.electrical_effort for stage in stages)
-    effort = math.prod(stage.stage_effort for stage in stages)
+    log_effort = math.fsum(math.log(stage.stage_effort) for stage in stages)
     parasitic = sum(stage.parasitic_delay for stage in stages)
     count = len(stages)
     required = graph.end_required[graph.end == last]
@@ -70,16 +70,23 @@ def describe(timing: Timing, arcs: ArcPath) -> Path:
         delay=stages[-1].arrival,
         charged_delay=begin + sum(stage.charged_delay for stage in stages),
         required=float(required[0]) if len(required) and not np.isnan(required[0]) else None,
-        logical_effort=logical,
-        branching_effort=branching,
-        electrical_effort=electrical,
-        path_effort=effort,
+        logical_effort=_product(stage.logical_effort for stage in stages),
+        branching_effort=_product(stage.branching_effort for stage in stages),
+        electrical_effort=_product(stage.electrical_effort for stage in stages),
+        path_effort=_product(stage.stage_effort for stage in stages),
         parasitic_delay=parasitic,
         best_stage_effort=best_stage_effort(unit.p_inv),
-        best_stage_count=best_stage_count(effort, count, parasitic, unit.p_inv),
-        least_delay=unit.tau * (count * effort ** (1 / count) + parasitic),
+        best_stage_count=best_stage_count(log_effort, count, parasitic, unit.p_inv),
+        least_delay=unit.tau * (count * math.exp(log_effort / count) + parasitic),
         stages=stages,
     )
+
+
+def _product(factors: Iterable[float]) -> float:
+    """Return a product, capped where very many stages drive it out of the range of floats."""
+    logarithm = math.fsum(math.log(factor) for factor in factors)
+    largest = sys.float_info.max
+    return math.exp(logarithm) if logarithm < math.log(largest) else largest
 
 
 def _stage(timing: Timing, graph_arc: int, following: int | None, arrival: float) -> Stage:

@@ -118,7 +118,7 @@ def best_stage_effort(p_inv: float) -> float:
     return float(brentq(lambda rho: p_inv + rho * (1 - math.log(rho)), math.e, upper, xtol=1e-13))
 
 
-def best_stage_count(effort: float, stages: int, parasitic: float, p_inv: float) -> int:
+def best_stage_count(log_effort: float, stages: int, parasitic: float, p_inv: float) -> int:
     """Return how many stages, at least today's and of the same parity, are fastest.
 
     Minimises ``n F^(1/n) + P + (n - N) p_inv`` over ``n = N, N + 2, ...``; convex in ``n``, so the
@@ -126,8 +126,8 @@ def best_stage_count(effort: float, stages: int, parasitic: float, p_inv: float)
 
     Parameters
     ----------
-    effort : float
-        Path effort F.
+    log_effort : float
+        Natural logarithm of the path effort F, which itself may exceed the range of floats.
     stages : int
         N, today's number of stages.
     parasitic, p_inv : float
@@ -135,7 +135,7 @@ def best_stage_count(effort: float, stages: int, parasitic: float, p_inv: float)
     """
 
     def delay(count: int) -> float:
-        return count * math.pow(effort, 1 / count) + parasitic + (count - stages) * p_inv
+        return count * math.exp(log_effort / count) + parasitic + (count - stages) * p_inv
 
     best = stages
     while delay(best + 2) < delay(best):
