@@ -124,6 +124,12 @@ def _other_language(refusal: _Refusal) -> NetlistError | None:
     return foreign_card(Span(refusal.source, *foreign.span(1)))
 
 
+def no_card(source: SourceText, start: int, end: int) -> NetlistError:
+    """Return the error for bytes that cannot begin a card."""
+    refusal = _Refusal(source, start, end, start)
+    return _bad_beginning(refusal) or _unexpected(refusal)
+
+
 def foreign_card(word: Span) -> NetlistError:
     """Return the error for a card of another language, by its first word."""
     message = "this does not look like a SPICE netlist"

@@ -19,6 +19,7 @@ if TYPE_CHECKING:
 
 #: From so many parameters on, earlier ones are evaluated first, so that long chains do not nest.
 _LONG = 50
+_FAILURES = 20
 
 
 class _UndefinedError(FormulaError):
@@ -60,11 +61,16 @@ class Scope:
             self._evaluate_in_order()
 
     def _evaluate_in_order(self) -> None:
-        for name in self._parameters:
-            try:
-                self.lookup(name)
-            except (FormulaError, ElaborationError):
-                continue
+        # Each order serves the chains that run the other way; a few failures tell a wrong one.
+        for names in (list(self._parameters), list(reversed(self._parameters))):
+            failures = 0
+            for name in names:
+                try:
+                    self.lookup(name)
+                except (FormulaError, ElaborationError):
+                    failures += 1
+                if failures > _FAILURES:
+                    break
 
     def lookup(self, name: str) -> float:
         """Return the value of a parameter by lower-case name.

@@ -2,16 +2,19 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Final, NamedTuple
 
 from lark import Token, Tree
 from lark.exceptions import UnexpectedInput
 
-from evenstage.netlist.complaints import complaint
+from evenstage.netlist.complaints import complaint, no_card
 from evenstage.netlist.grammar import ENCODING, parser
 
 if TYPE_CHECKING:
     from evenstage.source import SourceText
+
+
+_REMARKS: Final = ("$", ";", "//")
 
 
 class Mark(NamedTuple):
@@ -49,6 +52,9 @@ def parse_statement(source: SourceText, start: int, end: int) -> Statement:
         If the card does not follow the grammar.
     """
     text = source.data[start:end].decode(ENCODING)
+    if text.startswith(_REMARKS):
+        # Behind a comma it is no remark, though it would be one at the beginning of a text.
+        raise no_card(source, start, end)
     try:
         tree = parser("netlist").parse(text, start="statement")
     except UnexpectedInput as error:
