@@ -138,9 +138,7 @@ class _Block:
             return np.arange(count, dtype=np.int32), np.arange(count, dtype=np.int32)
         local = np.concatenate([r.nets for r in rows], axis=1)[:, row]
         pairs = self._flat.nets_of(instance, local)
-        joints = Joints(
-            pairs, count, len(self._global_names), frozenset(self._ports), self._names
-        )
+        joints = Joints(pairs, count, len(self._global_names), frozenset(self._ports), self._names)
         cards = np.concatenate([r.card for r in rows])[row]
         self._note_resistors(joints.joined, cards)
         chosen = joints.representative
