@@ -24,7 +24,7 @@ from evenstage.sizing.goals import Budget, Cheapest, Fastest
 from evenstage.sizing.infeasible import BudgetTooSmallError, LimitOutOfReachError
 from evenstage.sizing.interior_point import solve
 from evenstage.sizing.presolve import with_guard, without_room
-from evenstage.timing.sweep import sweep
+from evenstage.timing.sweep import end_offsets, sweep
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
@@ -246,12 +246,15 @@ class Engine:
     def _least_delay(self) -> tuple[Solution, FloatArray, FloatArray]:
         """Find the least delay, and the bounds within which sizes may move for it."""
         free = self.model.variables.free
-        limiting = free & (self._on_slowest_path() | self._beyond_limits())
         start = np.ones(len(free))
+        everything = self._solve(
+            self._first_goal(), *self._box(free, free), start, tolerance=_LOOSE
+        )
+        # No path that is slower today than the least delay of all can stay as it is.
+        limiting = free & (
+            self._on_slowest_path() | self._beyond_limits() | self._slower_than(everything.delay)
+        )
         if self.wishes.scope == "block":
-            # What limits when everything may move may shrink; the rest may only grow.
-            lower, upper = self._bounds(free)
-            everything = self._solve(self._first_goal(), lower, upper, start, _LOOSE)
             limiting |= free & self._limiting(everything)
         tolerance = _LOOSE
         while True:
@@ -277,9 +280,14 @@ class Engine:
         Those move freely. The others may grow where the scope is the block, and shrink only where
         that is asked for.
         """
-        variables, wishes = self.model.variables, self.wishes
-        down = limiting | (variables.free & wishes.reclaim)
-        up = limiting | (variables.free & (wishes.scope == "block"))
+        free, wishes = self.model.variables.free, self.wishes
+        return self._box(
+            limiting | (free & wishes.reclaim), limiting | (free & (wishes.scope == "block"))
+        )
+
+    def _box(self, down: BoolArray, up: BoolArray) -> tuple[FloatArray, FloatArray]:
+        """Return the bounds when some sizes may go down and some up."""
+        variables = self.model.variables
         return np.where(down, variables.lower, 1.0), np.where(up, variables.upper, 1.0)
 
     def _problem(
@@ -354,6 +362,20 @@ class Engine:
             (timing.charged_arrival, timing.charged),
         ):
             found[_sizes_on_path(model, arrival, delay)] = True
+        return found
+
+    def _slower_than(self, delay: float) -> BoolArray:
+        """Tell which sizes lie today on paths whose charged delay exceeds one (s)."""
+        timing, graph, model = self.today, self.model.graph, self.model
+        rest = np.full(len(graph), -np.inf)
+        rest[graph.end] = end_offsets(graph)
+        for some, _, _ in reversed(graph.levels):
+            later = rest[graph.target[some]] + timing.charged[some]
+            np.maximum.at(rest, graph.source[some], later)
+        through = timing.charged_arrival[graph.source] + timing.charged + rest[graph.target]
+        gates = model.circuit.arcs.gate[graph.arc[through > delay * (1 + _AGREES)]]
+        found = np.zeros(len(model.variables), bool)
+        found[model.variables.partition.of_gate[gates]] = True
         return found
 
     def _beyond_limits(self) -> BoolArray:
