@@ -25,6 +25,7 @@ from evenstage.report.machine import (
     to_json,
 )
 from evenstage.report.terminal import analysis_report, difference_report, sizing_report
+from evenstage.sizing.named import refuse_unknown_names
 from evenstage.sizing.resize import resize as find_widths
 from evenstage.sizing.results import Sizing
 from evenstage.sizing.wishes import Original, Wishes
@@ -122,6 +123,7 @@ def load(path: Path, question: Question, unit: Process | None = None) -> Block:
     record = find_record(netlist.sources[0])
     process = _measured(given or _settled(netlist, devices), devices, record, unit)
     circuit = recognise(devices, process, brief)
+    refuse_unknown_names(circuit, brief)
     analysis = find_paths(
         circuit, brief, start=question.start, end=question.end, count=question.count
     )

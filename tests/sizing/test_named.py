@@ -6,9 +6,15 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from evenstage.brief import Brief, LimitBrief
 from evenstage.errors import SettingsError
 from evenstage.pattern import Pattern
-from evenstage.sizing.named import devices_named, gates_named
+from evenstage.sizing.named import (
+    devices_named,
+    gates_named,
+    leaves_named,
+    refuse_unknown_names,
+)
 from support.blocks import circuit_of
 
 TEXT = """* rows of drivers, and one gate of its own
@@ -87,3 +93,32 @@ def test_gates_named_are_those_of_the_transistors() -> None:
     gates = gates_named(CIRCUIT, [Pattern("xrow?.xi.mn")])
     assert [CIRCUIT.gate_name(gate) for gate in gates] == ["xrow1.xi", "xrow2.xi"]
     assert gates_named(CIRCUIT, []) == []
+
+
+class TestNamesOfABrief:
+    @pytest.mark.parametrize(
+        "brief",
+        [
+            Brief(fixed=(Pattern("nowhere"),)),
+            Brief(same_size=((Pattern("xrow1"), Pattern("nowhere")),)),
+            Brief(limits=(LimitBrief(cards=(Pattern("nowhere"),), width_max=1e-6),)),
+            Brief(leaves=(Pattern("nowhere"),)),
+        ],
+    )
+    def test_that_fit_nothing_are_refused(self, brief: Brief) -> None:
+        with pytest.raises(SettingsError, match="fits 'nowhere'"):
+            refuse_unknown_names(CIRCUIT, brief)
+
+    def test_a_copy_goes_by_the_name_of_its_leaf(self) -> None:
+        copied = (
+            TEXT.replace(
+                ".subckt row",
+                "* evenstage: inv -> inv_s1: called by xi\n.subckt inv_s1 a y\n"
+                "mn y a vss vss nx w=2u l=0.1u\nmp y a vdd vdd px w=4u l=0.1u\n.ends\n.subckt row",
+            )
+            .replace("m inv\n", "m inv_s1\n")
+            .replace("q inv\n", "q inv_s1\n")
+        )
+        devices = circuit_of(copied).devices
+        named = leaves_named(devices, [Pattern("inv")])
+        assert [devices.subcircuits[index] for index in named] == ["inv_s1"]

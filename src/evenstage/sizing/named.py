@@ -6,11 +6,13 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.netlist.families import find_families
 from evenstage.pattern import Pattern, select
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
 
+    from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import Devices
@@ -26,6 +28,40 @@ def gates_named(circuit: Circuit, patterns: Sequence[Pattern]) -> list[int]:
     """
     gates = np.unique(circuit.gate_of_device[devices_named(circuit.devices, patterns)])
     return [int(gate) for gate in gates if gate >= 0]
+
+
+def leaves_named(devices: Devices, patterns: Sequence[Pattern]) -> list[int]:
+    """Return the subcircuits (indices) that patterns name, by their own name or their leaf's.
+
+    A copy that an earlier run made of a leaf goes by the leaf's name too.
+
+    Raises
+    ------
+    SettingsError
+        Where a pattern fits no subcircuit.
+    """
+    if not patterns:
+        return []
+    families = find_families(devices.netlist)
+    roots = [
+        families[name.lower()].root if name.lower() in families else name
+        for name in devices.subcircuits
+    ]
+    found = select(patterns, [*devices.subcircuits, *roots], "subcircuit")
+    return sorted({index % len(roots) for index in found})
+
+
+def refuse_unknown_names(circuit: Circuit, brief: Brief) -> None:
+    """Refuse a brief that names cards or subcircuits the block has not got.
+
+    Raises
+    ------
+    SettingsError
+        Where a pattern fits nothing.
+    """
+    for patterns in (brief.fixed, *brief.same_size, *(limit.cards for limit in brief.limits)):
+        devices_named(circuit.devices, patterns)
+    leaves_named(circuit.devices, brief.leaves)
 
 
 def devices_named(devices: Devices, patterns: Sequence[Pattern]) -> BoolArray:

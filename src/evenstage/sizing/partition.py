@@ -17,8 +17,7 @@ from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
 from evenstage.netlist.sized_block import Slot
-from evenstage.pattern import select
-from evenstage.sizing.named import gates_named
+from evenstage.sizing.named import gates_named, leaves_named
 
 if TYPE_CHECKING:
     from evenstage.brief import Brief
@@ -119,8 +118,7 @@ def calling_cards(circuit: Circuit, brief: Brief | None = None) -> IntArray:
     ).astype(np.int32)
     if brief is None or not brief.leaves:
         return caller
-    named = set(select(brief.leaves, devices.subcircuits, "subcircuit"))
-    is_named = np.isin(devices.instance_subcircuit, list(named))
+    is_named = np.isin(devices.instance_subcircuit, leaves_named(devices, brief.leaves))
     # Walk outwards: the outermost instance of a named leaf calls it.
     instance = circuit.gate_instance.copy()
     while (instance > 0).any():
