@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Final
 import pytest
 
 from evenstage import flow
+from evenstage.errors import SettingsError
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -93,3 +94,11 @@ class TestUnitInverter:
         assert flow.analyse(netlist, question).yardstick.input_cap == pytest.approx(
             before.input_cap / 2
         )
+
+
+def test_a_brief_with_two_aims_is_refused(tmp_path: Path) -> None:
+    netlist, brief = tmp_path / "chain.sp", tmp_path / "brief.toml"
+    netlist.write_text(CHAIN)
+    brief.write_text('[aim]\ndelay = "1n"\nwidth = 1.5\n')
+    with pytest.raises(SettingsError, match="aims at a delay and at a width"):
+        flow.resize(netlist, flow.Question(brief=brief))

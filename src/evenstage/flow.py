@@ -9,7 +9,7 @@ import numpy as np
 
 from evenstage.brief import Brief, read_brief
 from evenstage.circuit.recognise import recognise
-from evenstage.errors import Notice, OutputError
+from evenstage.errors import Notice, OutputError, SettingsError
 from evenstage.netlist.edits import rewrite
 from evenstage.netlist.elaborate import elaborate
 from evenstage.netlist.output import lost_includes, output_files, write_files
@@ -281,9 +281,20 @@ def _measured(
 
 
 def _with_aims(wishes: Wishes, brief: Brief) -> Wishes:
-    """Take the aims of the brief where the command line has none."""
+    """Take the aims of the brief where the command line has none.
+
+    Raises
+    ------
+    SettingsError
+        Where the brief aims at a delay and at a width.
+    """
     wishes = replace(wishes, spend=brief.aim_spend)
     if wishes.delay is None and wishes.width is None:
+        if brief.aim_delay is not None and brief.aim_width is not None:
+            raise SettingsError(
+                "the brief aims at a delay and at a width; keep one of aim.delay and aim.width",
+                code="two-aims",
+            )
         return replace(wishes, delay=brief.aim_delay, width=brief.aim_width)
     return wishes
 
