@@ -298,10 +298,6 @@ class Netlist:
         """Return the name of a card as written; faster than making the card."""
         return self._cards.name(number)
 
-    def card_scope(self, number: int) -> str:
-        """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
-        return self._cards.scope(number)
-
     @property
     def cards(self) -> CardStore:
         """All element cards, one by one or in columns."""

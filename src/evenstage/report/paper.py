@@ -44,11 +44,6 @@ class Paper:
         return "…" if self.unicode else ".."
 
     @property
-    def arrow(self) -> str:
-        """From an old value to a new one."""
-        return "→" if self.unicode else "->"
-
-    @property
     def times(self) -> str:
         """Multiplied by, or so many of."""
         return "×" if self.unicode else "x"

@@ -33,7 +33,6 @@ _HOLDS: Final[dict[Hold, str]] = {
     "fixed": "fixed",
     "ceiling": "input ceiling",
     "transition": "transition",
-    "grid": "width grid",
     "same size": "same size",
 }
 

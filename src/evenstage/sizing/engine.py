@@ -3,8 +3,9 @@
 The continuous answer is found in at most three kinds of steps, each a convex programme whose
 certificate the independent checker confirms:
 
-1. The least delay. With scope ``path`` only the sizes on the slowest path move at first; sizes that
-   the multipliers show on the limiting paths of the answer join until none is left to join.
+1. The least delay. What it would be if every size could move tells which paths cannot stay as they
+   are; only the sizes on those move at first. Sizes that the multipliers show on the limiting paths
+   of the answer join until none is left to join. (With scope ``block`` all others may grow too.)
 2. The least spend within the margin of that delay, and no slower than today. Near the optimum delay
    is flat in the sizes, so this costs nothing a designer notices and saves width they do.
 3. For a delay in 50 % arrivals the charged delay asked for is adjusted until the arrivals agree.

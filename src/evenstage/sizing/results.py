@@ -11,7 +11,7 @@ if TYPE_CHECKING:
     from evenstage.sizing.wishes import Original
     from evenstage.timing.results import Analysis
 
-Hold = Literal["", "lower", "upper", "fixed", "ceiling", "transition", "grid", "same size"]
+Hold = Literal["", "lower", "upper", "fixed", "ceiling", "transition", "same size"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
