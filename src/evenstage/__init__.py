@@ -11,9 +11,9 @@ if TYPE_CHECKING:
     from evenstage.brief import read_brief
     from evenstage.circuit.recognise import recognise
     from evenstage.errors import EvenstageError
-    from evenstage.netlist.edits import rewrite
-    from evenstage.netlist.elaborate import elaborate
-    from evenstage.netlist.read import read
+    from evenstage.netlist.elaboration.elaborate import elaborate
+    from evenstage.netlist.reading.read import read
+    from evenstage.netlist.rewriting.edits import rewrite
     from evenstage.process.read import read_process
     from evenstage.sizing.resize import resize
     from evenstage.sizing.wishes import Wishes
@@ -41,13 +41,13 @@ _HOMES = {
     "Wishes": "sizing.wishes",
     "analyse": "timing.analyse",
     "compare": "timing.compare",
-    "elaborate": "netlist.elaborate",
-    "read": "netlist.read",
+    "elaborate": "netlist.elaboration.elaborate",
+    "read": "netlist.reading.read",
     "read_brief": "brief",
     "read_process": "process.read",
     "recognise": "circuit.recognise",
     "resize": "sizing.resize",
-    "rewrite": "netlist.edits",
+    "rewrite": "netlist.rewriting.edits",
 }
 
 if not TYPE_CHECKING:

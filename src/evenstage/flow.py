@@ -10,11 +10,11 @@ import numpy as np
 from evenstage.brief import Brief, read_brief
 from evenstage.circuit.recognise import recognise
 from evenstage.errors import Notice, OutputError, SettingsError
-from evenstage.netlist.edits import rewrite
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.output import lost_includes, output_files, write_files
-from evenstage.netlist.read import read
-from evenstage.netlist.record import Record, digest, find_record, record_edit
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read
+from evenstage.netlist.rewriting.edits import rewrite
+from evenstage.netlist.rewriting.output import lost_includes, output_files, write_files
+from evenstage.netlist.rewriting.record import Record, digest, find_record, record_edit
 from evenstage.process.generic import at_length
 from evenstage.process.infer import infer_process
 from evenstage.process.read import read_process

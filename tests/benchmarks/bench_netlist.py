@@ -22,10 +22,10 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import pytest
 
-from evenstage.netlist.edits import Edit, rewrite
-from evenstage.netlist.elaborate import elaborate
+from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.grammar import ENCODING, parser
-from evenstage.netlist.read import read, read_bytes
+from evenstage.netlist.reading.read import read, read_bytes
+from evenstage.netlist.rewriting.edits import Edit, rewrite
 from support.large_netlists import extracted, flat, hierarchical
 
 if TYPE_CHECKING:

@@ -22,9 +22,9 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from evenstage.errors import EvenstageError
-from evenstage.netlist.edits import rewrite
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.read import read_bytes
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read_bytes
+from evenstage.netlist.rewriting.edits import rewrite
 
 if TYPE_CHECKING:
     from collections.abc import Callable

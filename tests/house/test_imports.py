@@ -31,6 +31,9 @@ ORDER: Final = (
 )
 RANK: Final = {room: rank for rank, rooms in enumerate(ORDER) for room in rooms}
 
+#: Inside the netlist room, along the pipeline; what they share stands in the room itself.
+NETLIST_ORDER: Final = ("netlist", "reading", "elaboration", "rewriting")
+
 #: The single modules at the top; they may use each other.
 LEAVES: Final = frozenset(ORDER[0])
 
@@ -117,6 +120,22 @@ def _may_import(importer: str, imported: str) -> bool:
     return RANK[imported] < RANK[importer]
 
 
+def against_the_pipeline(found: list[Import]) -> list[str]:
+    """Return the imports inside the netlist room that point forwards along its pipeline."""
+    return [
+        str(entry)
+        for entry in found
+        if room(entry.importer) == room(entry.module) == "netlist"
+        and NETLIST_ORDER.index(_part(entry.importer)) < NETLIST_ORDER.index(_part(entry.module))
+    ]
+
+
+def _part(module: str) -> str:
+    """Return the folder of the netlist room that a module stands in."""
+    part = [*module.split("."), "netlist"][2]
+    return part if part in NETLIST_ORDER else "netlist"
+
+
 def cycle(found: list[Import]) -> list[str]:
     """Return the modules of one circle of imports that happen when the program runs."""
     graph: dict[str, set[str]] = {}
@@ -141,6 +160,11 @@ class TestTheProgram:
 
     def test_rooms_import_only_from_above(self, found: list[Import]) -> None:
         assert against_the_order(found) == []
+
+    def test_parts_of_the_netlist_room_import_only_against_the_flow(
+        self, found: list[Import]
+    ) -> None:
+        assert against_the_pipeline(found) == []
 
     def test_no_module_imports_itself_through_others(self, found: list[Import]) -> None:
         assert cycle(found) == []
@@ -191,6 +215,22 @@ class TestTheCheckItself:
     def test_sees_rooms_that_must_not_know_sizing(self, tmp_path: Path, neighbour: str) -> None:
         found = invented(tmp_path, {f"{neighbour}/run.py": "import evenstage.sizing"})
         assert against_the_order(found) == [f"evenstage.{neighbour}.run:1 imports evenstage.sizing"]
+
+    @pytest.mark.parametrize(
+        ("importer", "imported", "wrong"),
+        [
+            ("reading/read.py", "rewriting.edits", 1),
+            ("devices.py", "reading.read", 1),
+            ("devices.py", "reading", 1),
+            ("rewriting/copies.py", "reading.read", 0),
+            ("rewriting/copies.py", "devices", 0),
+        ],
+    )
+    def test_sees_parts_that_look_ahead(
+        self, tmp_path: Path, importer: str, imported: str, wrong: int
+    ) -> None:
+        found = invented(tmp_path, {f"netlist/{importer}": f"import evenstage.netlist.{imported}"})
+        assert len(against_the_pipeline(found)) == wrong
 
     def test_accepts_imports_from_above(self, tmp_path: Path) -> None:
         text = "import numpy\nfrom evenstage.netlist import read\nfrom evenstage.errors import X"

@@ -8,9 +8,9 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from evenstage.errors import EvenstageError
-from evenstage.netlist.edits import rewrite
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.read import read_bytes
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read_bytes
+from evenstage.netlist.rewriting.edits import rewrite
 
 WORDS = [
     *(

@@ -12,9 +12,9 @@ from typing import TYPE_CHECKING
 import pytest
 
 from evenstage.errors import EvenstageError
-from evenstage.netlist.edits import Edit, rewrite
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.read import read, read_bytes
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read, read_bytes
+from evenstage.netlist.rewriting.edits import Edit, rewrite
 from evenstage.pattern import Pattern
 from support.sized import process
 

@@ -9,7 +9,7 @@ import pytest
 from lark.exceptions import UnexpectedInput
 
 from evenstage.netlist.grammar import ENCODING, build, grammar_text, parser, terminal
-from evenstage.netlist.read import read_bytes
+from evenstage.netlist.reading.read import read_bytes
 
 
 @pytest.mark.parametrize("name", ["netlist", "expression"])

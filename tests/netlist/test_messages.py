@@ -7,8 +7,8 @@ from pathlib import Path
 import pytest
 
 from evenstage.errors import EvenstageError
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.read import read, read_bytes
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read, read_bytes
 
 INV = """.subckt inv a y vdd vss wn=1u
 mn y a vss vss nch w=wn l=0.1u

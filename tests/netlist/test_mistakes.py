@@ -7,9 +7,9 @@ from pathlib import Path
 import pytest
 
 from evenstage.errors import ElaborationError, MistakesError
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.mistakes import MOST, Mistakes
-from evenstage.netlist.read import read, read_bytes
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.elaboration.mistakes import MOST, Mistakes
+from evenstage.netlist.reading.read import read, read_bytes
 
 
 def told(text: str) -> str:

@@ -11,8 +11,8 @@ from pathlib import Path
 
 import pytest
 
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.read import read
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read
 
 DATA = Path(__file__).parents[3] / "shared" / "data"
 

@@ -10,7 +10,7 @@ import pytest
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
-from evenstage.netlist.read import read, read_bytes
+from evenstage.netlist.reading.read import read, read_bytes
 from evenstage.pattern import Pattern
 from support.sized import (
     assert_reads_back,

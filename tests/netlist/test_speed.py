@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from evenstage.netlist.grammar import parser
-from evenstage.netlist.read import read_bytes
+from evenstage.netlist.reading.read import read_bytes
 from support.large_netlists import flat
 
 if TYPE_CHECKING:

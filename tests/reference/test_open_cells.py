@@ -18,8 +18,8 @@ import pytest
 from evenstage.brief import Brief
 from evenstage.circuit.recognise import recognise
 from evenstage.errors import CircuitError
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.read import read
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read
 from evenstage.pattern import Pattern
 from evenstage.process.process import Process, Transistor
 from support.logic import all_vectors, function_values, values

@@ -12,8 +12,8 @@ import pytest
 from evenstage.brief import read_brief
 from evenstage.circuit.recognise import recognise
 from evenstage.flow import Question, load, resize
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.read import read
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read
 from evenstage.process.read import read_process
 from evenstage.sizing.goals import Cheapest
 from evenstage.sizing.interior_point import solve

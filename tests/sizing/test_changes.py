@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given, settings
 
 from evenstage.brief import Brief
-from evenstage.netlist.widths import WidthPlan
+from evenstage.netlist.rewriting.widths import WidthPlan
 from evenstage.pattern import Pattern
 from evenstage.sizing import changes as module
 from evenstage.sizing.resize import resize
@@ -20,8 +20,8 @@ from support.blocks import block, circuit_of, inverter, nand, plain_process
 from support.random_blocks import RandomBlock, random_blocks
 
 if TYPE_CHECKING:
-    from evenstage.netlist.handles import WidthHandles
-    from evenstage.netlist.widths import WidthWish
+    from evenstage.netlist.rewriting.handles import WidthHandles
+    from evenstage.netlist.rewriting.widths import WidthWish
     from evenstage.sizing.results import Sizing
 
 PROCESS = plain_process(slope=0.2, slope_power=0.8, shape=1.6, shape_carry=0.2, stack=0.7)

@@ -7,8 +7,8 @@ from pathlib import Path
 from typing import TYPE_CHECKING, TypedDict, Unpack
 
 from evenstage.circuit.recognise import recognise
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.read import read_bytes
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read_bytes
 from evenstage.pattern import Pattern
 from evenstage.process.process import Process, Transistor
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from evenstage.netlist.handles import width_handles
+from evenstage.netlist.rewriting.handles import width_handles
 from evenstage.sizing.model import Model
 from evenstage.sizing.partition import partition
 from evenstage.sizing.variables import variables
@@ -16,7 +16,7 @@ if TYPE_CHECKING:
 
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
-    from evenstage.netlist.handles import WidthHandles
+    from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.process.process import Process
     from evenstage.sizing.partition import Partition
     from evenstage.sizing.variables import Variables

@@ -9,12 +9,12 @@ from typing import TYPE_CHECKING, get_args
 import numpy as np
 import pytest
 
-from evenstage.netlist.edits import rewrite
-from evenstage.netlist.elaborate import elaborate
-from evenstage.netlist.handles import WidthHandles, width_handles
-from evenstage.netlist.read import read_bytes
-from evenstage.netlist.sized_block import Slot
-from evenstage.netlist.widths import WidthPlan, WidthWish, plan_widths
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read_bytes
+from evenstage.netlist.rewriting.edits import rewrite
+from evenstage.netlist.rewriting.handles import WidthHandles, width_handles
+from evenstage.netlist.rewriting.sized_block import Slot
+from evenstage.netlist.rewriting.widths import WidthPlan, WidthWish, plan_widths
 from evenstage.pattern import Pattern
 from evenstage.process.process import Polarity, Process, Transistor
 

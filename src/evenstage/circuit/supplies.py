@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evenstage.errors import CircuitError
-from evenstage.netlist.nets import endings
+from evenstage.netlist.elaboration.nets import endings
 from evenstage.pattern import Pattern, select
 
 if TYPE_CHECKING:

@@ -8,8 +8,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.netlist.sized_block import Slot
-from evenstage.netlist.widths import WidthPlan, WidthWish, plan_widths
+from evenstage.netlist.rewriting.sized_block import Slot
+from evenstage.netlist.rewriting.widths import WidthPlan, WidthWish, plan_widths
 from evenstage.sizing.results import Change
 from evenstage.timing.search import slowest_paths
 from evenstage.timing.trials import tried

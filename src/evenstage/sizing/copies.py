@@ -21,8 +21,8 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from evenstage.netlist.devices import FloatArray, IntArray
-    from evenstage.netlist.families import Family
-    from evenstage.netlist.handles import WidthHandles
+    from evenstage.netlist.rewriting.families import Family
+    from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.sizing.partition import Partition
 
 _EQUAL = 1e-4

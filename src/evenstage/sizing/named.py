@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.netlist.families import find_families
+from evenstage.netlist.rewriting.families import find_families
 from evenstage.pattern import Pattern, select
 
 if TYPE_CHECKING:

@@ -16,7 +16,7 @@ import numpy as np
 from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
-from evenstage.netlist.sized_block import Slot
+from evenstage.netlist.rewriting.sized_block import Slot
 from evenstage.sizing.named import gates_named, leaves_named
 
 if TYPE_CHECKING:

@@ -9,8 +9,8 @@ import numpy as np
 
 from evenstage.brief import Brief
 from evenstage.errors import Notice
-from evenstage.netlist.handles import width_handles
-from evenstage.netlist.widths import WidthPlan
+from evenstage.netlist.rewriting.handles import width_handles
+from evenstage.netlist.rewriting.widths import WidthPlan
 from evenstage.sizing.changes import Writing
 from evenstage.sizing.copies import shared_sizes
 from evenstage.sizing.engine import Engine
@@ -26,7 +26,7 @@ from evenstage.sizing.wishes import Original, Wishes
 from evenstage.timing.analyse import report
 
 if TYPE_CHECKING:
-    from evenstage.netlist.handles import WidthHandles
+    from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.sizing.partition import Partition
     from evenstage.timing.results import Analysis
     from evenstage.timing.sweep import Timing

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Literal
 
 if TYPE_CHECKING:
     from evenstage.errors import Notice
-    from evenstage.netlist.edits import Edit
+    from evenstage.netlist.rewriting.edits import Edit
     from evenstage.sizing.wishes import Original
     from evenstage.timing.results import Analysis
 

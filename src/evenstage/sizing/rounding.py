@@ -23,7 +23,7 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from evenstage.netlist.devices import FloatArray, IntArray
-    from evenstage.netlist.handles import WidthHandle, WidthHandles
+    from evenstage.netlist.rewriting.handles import WidthHandle, WidthHandles
     from evenstage.sizing.engine import Continuous, Engine
     from evenstage.timing.sweep import Timing
     from evenstage.timing.trials import Trials

@@ -19,7 +19,7 @@ if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray
-    from evenstage.netlist.handles import WidthHandles
+    from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.sizing.partition import Partition
 
 GROWTH_MAX = 1000.0

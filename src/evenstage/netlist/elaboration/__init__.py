@@ -1,0 +1,1 @@
+"""From cards to devices: parameters bound, the hierarchy laid out flat, metres."""

@@ -1,0 +1,1 @@
+"""From bytes to cards: files, the canonical text, shapes, definitions."""

@@ -1,0 +1,506 @@
+"""The table of element cards: where each one begins and how it is read, and cards made of that.
+
+Its nets, model and values are numbers in columns; their spelling stays in the text until somebody
+asks for it.
+"""
+
+from __future__ import annotations
+
+import re
+from array import array
+from bisect import bisect_right
+from itertools import pairwise
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.netlist.grammar import terminal
+from evenstage.netlist.intake import Values, WordList, Words
+from evenstage.netlist.netlist import Card, CardColumns, CardGroup, Parameter
+from evenstage.netlist.reading.stored import ShapeColumns, main_argument
+from evenstage.source import Span
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Iterator, Mapping, Sequence
+
+    from evenstage.netlist.devices import IntArray
+    from evenstage.netlist.reading.blocks import Blocks
+    from evenstage.netlist.reading.shapes import Role, Shape
+    from evenstage.netlist.reading.statement import Statement
+    from evenstage.source import SourceText
+
+    #: What a piece of a card is and its bytes.
+    Field = tuple[Role, int, int]
+
+#: Cards handed over at once; more only means more objects alive.
+_CHUNK = 4096
+_ODD = -1
+#: Spreads small numbers over all bits.
+_MIXER = np.int64(0x1E3779B97F4A7C15)
+_WORD = re.compile(rb"[^\x00-\x20,]+")
+_NAME = re.compile(rb"[^\x00-\x20=,()'\"{}]+")
+_NUMERIC = re.compile(r"[+-]?\.?[0-9]|['\"{(]")
+
+#: Nets of the kinds of element that are kept but not understood.
+_NODES = {
+    "d": 2,
+    "b": 2,
+    "f": 2,
+    "h": 2,
+    "w": 2,
+    "q": 3,
+    "j": 3,
+    "z": 3,
+    "e": 4,
+    "g": 4,
+    "s": 4,
+    "t": 4,
+}
+
+
+class CardTable:
+    """All element cards of a netlist in reading order; filled by the reader, then left alone."""
+
+    def __init__(self) -> None:
+        self.values = Values()
+        self.words = WordList(())
+        self._starts = array("q")
+        self._shape_of = array("i")
+        self._shapes: list[Shape] = []
+        self._stored: list[ShapeColumns] = []
+        self._numbers: list[IntArray] = []
+        self._odd: dict[int, Statement] = {}
+        self._odd_columns: dict[int, CardColumns] = {}
+        self._segments: list[int] = []
+        self._segment_places: list[tuple[Blocks, str]] = []
+        self._word_numbers = Words()
+        self._scopes_with_repeats: frozenset[str] = frozenset()
+
+    def __len__(self) -> int:
+        return len(self._starts)
+
+    def begin_segment(self, blocks: Blocks, scope: str) -> None:
+        """Say where the cards to come stand: file, subcircuit."""
+        if self._segments and self._segments[-1] == len(self):
+            self._segments.pop()
+            self._segment_places.pop()
+        self._segments.append(len(self))
+        self._segment_places.append((blocks, scope))
+
+    def rename_scopes(self, renamed: Mapping[str, str]) -> None:
+        """Give subcircuits other keys."""
+        if renamed:
+            self._segment_places = [(b, renamed.get(s, s)) for b, s in self._segment_places]
+
+    def add_shape(self, shape: Shape) -> ShapeColumns:
+        """Take note of a shape and return what takes its cards."""
+        self._shapes.append(shape)
+        self._stored.append(ShapeColumns(len(self._stored), shape, self._word_numbers, self.values))
+        return self._stored[-1]
+
+    def extend(self, base: int, starts: list[int], shapes: list[int]) -> None:
+        """Add cards that have a shape and empty the lists; their words are in the rows of it.
+
+        Parameters
+        ----------
+        base : int
+            What the starts count from.
+        starts, shapes : list of int
+            Of each card.
+        """
+        self._starts.extend(map(base.__add__, starts))
+        self._shape_of.extend(shapes)
+        starts.clear()
+        shapes.clear()
+
+    def store(self) -> None:
+        """Turn the words that wait into numbers."""
+        for stored in self._stored:
+            if stored.rows:
+                stored.store()
+
+    def append_odd(self, statement: Statement) -> None:
+        """Add a card that has no shape, as Lark read it."""
+        number = len(self)
+        self._odd[number] = statement
+        self.extend(statement.marks[0].start, [0], [_ODD])
+        self._odd_columns[number] = self._numbered(self._odd_group(number))
+
+    def _numbered(self, group: CardGroup) -> CardColumns:
+        """Turn the words of a group into numbers."""
+        number = self._word_numbers.__getitem__
+        take = self.values.kept if group.letter == "x" else self.values.numbers_of
+        texts = {**group.parameters, **({"": group.values} if group.values else {})}
+        return CardColumns(
+            letter=group.letter,
+            numbers=np.array(group.numbers, np.int32),
+            nodes=np.array([list(map(number, node)) for node in group.nodes], np.int32).reshape(
+                len(group.nodes), len(group.numbers)
+            ),
+            targets=np.array(list(map(number, group.targets)), np.int32),
+            values={name: np.array(list(take(t)), np.int32) for name, t in texts.items()},
+        )
+
+    def finish(self, names: Iterable[str]) -> None:
+        """Forget what only reading needs.
+
+        Parameters
+        ----------
+        names : iterable of str
+            Nets that ``word_number`` will be asked for.
+        """
+        self.store()
+        self._scopes_with_repeats = self._find_repeats()
+        words = self._word_numbers
+        kept = Words({name: words[name] for name in map(_folded, names)})
+        self.words = WordList(words)
+        words.clear()
+        words.update(kept)
+        self.values.finish()
+        shape_of = np.frombuffer(self._shape_of, np.int32) if len(self) else np.zeros(0, np.int32)
+        order = np.argsort(shape_of, kind="stable").astype(np.int32)
+        ends = np.cumsum(np.bincount(shape_of + 1, minlength=len(self._shapes) + 1))
+        self._numbers = [order[a:b] for a, b in pairwise([0, *ends])]
+
+    def _find_repeats(self) -> frozenset[str]:
+        """Return the scopes in which several cards may have one name."""
+        shape_of = np.array(self._shape_of, np.int32)
+        hashes = np.empty(len(self), np.int64)
+        for shape, stored in enumerate(self._stored):
+            hashes[shape_of == shape] = np.array(stored.hashes, np.int64)
+            del stored.hashes
+        for number in self._odd:
+            hashes[number] = hash(_folded(self.name(number)))
+        scopes = Words()
+        of_segment = [scopes[_folded(scope)] for _, scope in self._segment_places]
+        scope = np.repeat(of_segment, np.diff([*self._segments, len(self)]))
+        mixed = hashes ^ (scope * _MIXER)
+        ordered = np.sort(mixed)
+        repeated = ordered[1:][ordered[1:] == ordered[:-1]]
+        names = list(scopes)
+        found = np.unique(scope[np.isin(mixed, repeated)]).tolist()
+        return frozenset(names[i].decode("utf-8", "surrogateescape") for i in found)
+
+    def word_number(self, name: str) -> int:
+        """Return the number of a word by lower-case name, one of those kept."""
+        return self._word_numbers[_folded(name)]
+
+    def may_repeat(self, scope: str) -> bool:
+        """Tell whether several cards of a subcircuit may have one name."""
+        return scope in self._scopes_with_repeats
+
+    def _place(self, number: int) -> tuple[Blocks, str]:
+        return self._segment_places[bisect_right(self._segments, number) - 1]
+
+    def __getitem__(self, number: int) -> Card:
+        """Make the card of a number."""
+        if not 0 <= number < len(self):
+            raise IndexError(number)
+        blocks, scope = self._place(number)
+        return _card(number, self._fields(number), blocks.source, scope)
+
+    def _fields(self, number: int) -> list[Field]:
+        blocks, _ = self._place(number)
+        shape = self._shape_of[number]
+        if shape == _ODD:
+            return _fields_of_statement(self._odd[number], blocks.source)
+        block = blocks.at(self._starts[number])
+        fields = _fields_of_shape(
+            self._shapes[shape], block.text, self._starts[number] - block.start
+        )
+        return [(role, a + block.start, b + block.start) for role, a, b in fields]
+
+    def name(self, number: int) -> str:
+        """Return the name of a card as written, without making the card."""
+        source = self._place(number)[0].source
+        match = _NAME.match(source.data, self._starts[number])
+        assert match is not None
+        return match[0].decode("utf-8", "surrogateescape")
+
+    def full_names(self, numbers: Iterable[int]) -> Iterator[str]:
+        """Give the names of some cards as written, behind those of their subcircuits."""
+        first = beyond = 0
+        before, data = "", b""
+        for number in numbers:
+            if not first <= number < beyond:
+                first, beyond = self._segment_of(number)
+                blocks, scope = self._place(number)
+                before, data = f"{scope}." if scope else "", blocks.source.data
+            match = _NAME.match(data, self._starts[number])
+            assert match is not None
+            yield before + match[0].decode("utf-8", "surrogateescape")
+
+    def scope(self, number: int) -> str:
+        """Return the lower-case name of the subcircuit that holds a card; empty: top level."""
+        return self._place(number)[1]
+
+    def node_name(self, number: int, position: int) -> str:
+        """Return a net as written, by card number and position on the card."""
+        blocks, _ = self._place(number)
+        kind = self._shape_of[number]
+        shape = None if kind == _ODD else self._shapes[kind]
+        if shape is None or "nodes" in shape.roles:
+            nodes = [field for field in self._fields(number) if field[0] == "node"]
+            _, start, end = nodes[position]
+        else:
+            base, text = blocks.at(self._starts[number])
+            match = shape.groups.match(text, self._starts[number] - base)
+            assert match is not None
+            # The nets follow the name, which is the first group.
+            start, end = (base + edge for edge in match.span(position + 2))
+        return blocks.source.data[start:end].decode("utf-8", "surrogateescape")
+
+    def value_spans(self, numbers: Iterable[int], name: str) -> Iterator[Span | None]:
+        """Give the bytes of one parameter of some cards; None where a card does not have it."""
+        groups = [stored.group(name) for stored in self._stored]
+        matchers = [shape.row.match for shape in self._shapes]
+        shape_of, starts = self._shape_of, self._starts
+        first, beyond, base, text = 0, 0, 0, b""
+        blocks, _ = self._segment_places[0]
+        for number in numbers:
+            shape, start = shape_of[number], starts[number]
+            if shape == _ODD:
+                parameter = self[number].parameter(name)
+                yield None if parameter is None else parameter.span
+                continue
+            group = groups[shape]
+            if group is None:
+                yield None
+                continue
+            if not first <= number < beyond:
+                first, beyond = self._segment_of(number)
+                blocks, text = self._place(number)[0], b""
+            if not base <= start < base + len(text):
+                base, text = blocks.at(start)
+            match = matchers[shape](text, start - base)
+            assert match is not None
+            yield Span(blocks.source, base + match.start(group), base + match.end(group))
+
+    def _segment_of(self, number: int) -> tuple[int, int]:
+        """Return the range of the cards around one that stand in the same place."""
+        segment = bisect_right(self._segments, number)
+        last = segment == len(self._segments)
+        return self._segments[segment - 1], len(self) if last else self._segments[segment]
+
+    def columns(self, numbers: Sequence[int]) -> Iterator[CardColumns]:
+        """Give the cards of ascending numbers as columns of numbers; see ``CardStore``."""
+        if isinstance(numbers, range):
+            yield from self._columns_of_range(numbers.start, numbers.stop)
+            return
+        cuts = np.flatnonzero(np.diff(numbers) != 1) + 1
+        for run in np.split(np.array(numbers), cuts):
+            yield from self._columns_of_range(int(run[0]), int(run[-1]) + 1)
+
+    def _columns_of_range(self, begin: int, end: int) -> Iterator[CardColumns]:
+        odd = self._numbers[0]
+        first, last = np.searchsorted(odd, (begin, end)).tolist()
+        yield from (self._odd_columns[number] for number in odd[first:last].tolist())
+        for stored, members in zip(self._stored, self._numbers[1:], strict=True):
+            first, last = np.searchsorted(members, (begin, end)).tolist()
+            if last > first:
+                yield from stored.columns(members[first:last], first, last)
+
+    def groups(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
+        """Give the cards of ascending numbers, grouped by shape; see ``CardStore``."""
+        for first in range(0, len(numbers), _CHUNK):
+            yield from self._chunk(numbers[first : first + _CHUNK])
+
+    def _chunk(self, numbers: Sequence[int]) -> Iterator[CardGroup]:
+        by_shape: dict[int, list[int]] = {}
+        shape_of = self._shape_of
+        for number in numbers:
+            by_shape.setdefault(shape_of[number], []).append(number)
+        for shape, members in by_shape.items():
+            if shape == _ODD:
+                yield from (self._odd_group(number) for number in members)
+            else:
+                yield from self._shaped_groups(self._shapes[shape], members)
+
+    def _odd_group(self, number: int) -> CardGroup:
+        card = self[number]
+        return CardGroup(
+            letter=card.letter,
+            numbers=[number],
+            names=[_folded(card.name)],
+            nodes=[[_folded(node)] for node in card.nodes],
+            targets=[_folded(card.target)] if card.target else [],
+            values=[] if card.value is None else [_folded(card.value.text)],
+            parameters={p.name: [_folded(p.text)] for p in card.parameters},
+        )
+
+    def _rows(self, shape: Shape, numbers: list[int]) -> Iterator[tuple[bytes, ...]]:
+        """Give the words of cards of one shape."""
+        for number in numbers:
+            start = self._starts[number]
+            base, text = self._place(number)[0].at(start)
+            match = shape.groups.match(text, start - base)
+            assert match is not None
+            yield match.groups()
+
+    def _shaped_groups(self, shape: Shape, numbers: list[int]) -> Iterator[CardGroup]:
+        columns = dict(enumerate(zip(*self._rows(shape, numbers), strict=True)))
+        roles = shape.roles
+        if "nodes" in roles:
+            yield from _run_groups(shape, numbers, columns)
+            return
+        values = [columns[i] for i, role in enumerate(roles) if role == "value"]
+        arguments = [columns[i] for i, role in enumerate(roles) if role == "argument"]
+        yield CardGroup(
+            letter=shape.letter,
+            numbers=numbers,
+            names=columns[0],
+            nodes=[columns[i] for i, role in enumerate(roles) if role == "node"],
+            targets=next((columns[i] for i, role in enumerate(roles) if role == "target"), ()),
+            values=main_argument(arguments),
+            parameters=dict(zip(shape.keys, values, strict=True)),
+        )
+
+
+def _value_position(arguments: list[str]) -> int:
+    """Return which of the unnamed arguments is the value: the first that looks like one."""
+    return next((i for i, text in enumerate(arguments) if _NUMERIC.match(text)), 0)
+
+
+def _run_groups(
+    shape: Shape, numbers: list[int], columns: dict[int, tuple[bytes, ...]]
+) -> Iterator[CardGroup]:
+    """Split calls by their number of nets."""
+    roles = shape.roles
+    keyed = list(zip(shape.keys, (i for i, r in enumerate(roles) if r == "value"), strict=True))
+    run = columns[roles.index("nodes")]
+    target = roles.index("target") if "target" in roles else None
+    by_length: dict[int, list[tuple[int, list[bytes]]]] = {}
+    for row, words in enumerate(run):
+        split = _WORD.findall(words)
+        by_length.setdefault(len(split), []).append((row, split))
+    for members in by_length.values():
+        rows = [row for row, _ in members]
+        nodes = list(zip(*(words for _, words in members), strict=True))
+        targets = nodes.pop() if target is None else [columns[target][row] for row in rows]
+        yield CardGroup(
+            letter=shape.letter,
+            numbers=[numbers[row] for row in rows],
+            names=[columns[0][row] for row in rows],
+            nodes=nodes,
+            targets=targets,
+            values=(),
+            parameters={key: [columns[i][row] for row in rows] for key, i in keyed},
+        )
+
+
+def _folded(text: str) -> bytes:
+    return text.encode("utf-8", "surrogateescape").lower()
+
+
+def _fields_of_shape(shape: Shape, text: bytes, start: int) -> list[Field]:
+    match = shape.groups.match(text, start)
+    assert match is not None
+    fields: list[Field] = []
+    for group, role in enumerate(shape.roles, 1):
+        first, last = match.span(group)
+        if role == "nodes":
+            words = [word.span() for word in _WORD.finditer(text, first, last)]
+            fields += [("node", *span) for span in words]
+        else:
+            fields.append((role, first, last))
+    return fields if "target" in shape.roles else _last_node_is_target(shape.letter, fields)
+
+
+def _last_node_is_target(letter: str, fields: list[Field]) -> list[Field]:
+    if letter != "x":
+        return fields
+    last = max(i for i, field in enumerate(fields) if field[0] == "node")
+    fields[last] = ("target", *fields[last][1:])
+    return fields
+
+
+def _fields_of_statement(statement: Statement, source: SourceText) -> list[Field]:
+    """Give the words of a card that has no shape their roles."""
+    marks = statement.marks
+    letter = chr(source.data[marks[0].start]).lower()
+    fields: list[Field] = [("name", marks[0].start, marks[0].end)]
+    wanted = _node_count(statement.rule, letter)
+    slashed = any(mark.terminal == "SLASH" for mark in marks)
+    nodes, position = 0, 1
+    while position < len(marks):
+        mark = marks[position]
+        if marks[position + 1 : position + 2] and marks[position + 1].terminal == "EQUAL":
+            fields.append(("key", mark.start, mark.end))
+            if position + 2 < len(marks):
+                fields.append(("value", *marks[position + 2][1:]))
+            position += 3
+            continue
+        if mark.terminal not in {"SLASH", "PARAMS", "EQUAL", "OPEN", "CLOSE", "ODD", "OFF"}:
+            role = _loose_role(letter, nodes, wanted, marks[position - 1].terminal)
+            nodes += role == "node"
+            fields.append((role, mark.start, mark.end))
+        position += 1
+    return fields if slashed else _last_node_is_target(letter, fields)
+
+
+def _node_count(rule: str, letter: str) -> int:
+    if rule == "call":
+        return 1 << 30
+    return {"transistor": 4, "passive": 2, "source": 2}.get(rule, _NODES.get(letter, 0))
+
+
+def _loose_role(letter: str, nodes: int, wanted: int, before: str) -> Role:
+    if before == "SLASH":
+        return "target"
+    if nodes < wanted:
+        return "node"
+    return "target" if letter in "md" else "argument"
+
+
+def _card(number: int, fields: list[Field], source: SourceText, scope: str) -> Card:
+    """Put a card together."""
+
+    def span(field: Field) -> Span:
+        return Span(source, field[1], field[2])
+
+    of_role = {role: [f for f in fields if f[0] == role] for role in ("node", "target", "argument")}
+    pairs = [(fields[i], fields[i + 1]) for i in range(len(fields) - 1) if fields[i][0] == "key"]
+    target = next(iter(of_role["target"]), None)
+    name = span(fields[0]).text
+    return Card(
+        number=number,
+        letter=name[0].lower(),
+        name=name,
+        nodes=tuple(span(field).text for field in of_role["node"]),
+        target="" if target is None else span(target).text,
+        target_span=None if target is None else span(target),
+        value=_value(name[0].lower(), [span(field) for field in of_role["argument"]]),
+        parameters=tuple(parameter(span(key), span(value)) for key, value in pairs),
+        span=Span(source, fields[0][1], max(field[2] for field in fields)),
+        scope=scope,
+    )
+
+
+def parameter(name: Span | None, value: Span) -> Parameter:
+    """Return a parameter from the bytes of its name (None: it has none) and of its value."""
+    text = plain_text(value)
+    if name is None:
+        return Parameter("", text, Span(value.source, value.start, value.start), value)
+    return Parameter(name.text.lower(), text, name, value)
+
+
+def plain_text(span: Span) -> str:
+    """Return the text of some bytes of a card, the joints of continuation lines taken out."""
+    text = span.text
+    return _joint().sub(" ", text) if "\n" in text or "\r" in text else text
+
+
+def _joint() -> re.Pattern[str]:
+    return re.compile(terminal("_CONTINUATION"))
+
+
+def _value(letter: str, arguments: list[Span]) -> Parameter | None:
+    """Return the unnamed value of an R, C, V ... card."""
+    texts = [plain_text(span) for span in arguments]
+    if letter in "vi":
+        first = next((i for i, text in enumerate(texts[:-1]) if text.lower() == "dc"), -1)
+        plain = len(texts) == 1 or (texts and _NUMERIC.match(texts[0]))
+        position = first + 1 if first >= 0 or plain else None
+    else:
+        position = _value_position(texts) if texts else None
+    return None if position is None else parameter(None, arguments[position])

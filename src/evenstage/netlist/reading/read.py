@@ -1,0 +1,72 @@
+"""From files to a ``Netlist``: cards, definitions, included files."""
+
+from __future__ import annotations
+
+import os
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from evenstage.errors import NetlistError
+from evenstage.netlist.collection import without_collection
+from evenstage.netlist.reading.files import read_file, why_not
+from evenstage.netlist.reading.reader import Reader
+from evenstage.source import SourceText
+
+if TYPE_CHECKING:
+    from evenstage.netlist.netlist import Netlist
+
+
+def read(path: Path | str) -> Netlist:
+    """Read a netlist and the files it includes.
+
+    Parameters
+    ----------
+    path : Path or str
+        The main file.
+
+    Raises
+    ------
+    NetlistError
+        If a file cannot be read or its text is no netlist.
+    """
+    path = Path(path)
+    try:
+        data = read_file(path)
+    except FileNotFoundError:
+        raise NetlistError(f"there is no file '{path}'", code="missing-file") from None
+    except (OSError, ValueError) as error:
+        message = f"cannot read '{path}': {why_not(error)}"
+        raise NetlistError(message, code="unreadable-file") from None
+    return _read(SourceText(Path(os.path.realpath(path)), data, str(path)))
+
+
+def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
+    r"""Read a netlist that is not (yet) a file.
+
+    Parameters
+    ----------
+    data : bytes
+        The text.
+    label : str
+        What messages call it.
+    folder : Path
+        Where the files it includes are looked for.
+
+    Raises
+    ------
+    NetlistError
+        If the text, or that of an included file, is no netlist.
+
+    Examples
+    --------
+    >>> len(read_bytes(b".subckt inv a y vdd vss\n.ends\n", "inv.sp", Path()))
+    0
+    """
+    return _read(SourceText(Path(os.path.realpath(folder / label)), data, label))
+
+
+def _read(source: SourceText) -> Netlist:
+    with without_collection():
+        reader = Reader()
+        reader.read_main(source)
+        return reader.finish()

@@ -1,0 +1,182 @@
+"""Cards of one shape in columns of numbers, filled row by row while the text is read."""
+
+from __future__ import annotations
+
+import re
+from array import array
+from itertools import accumulate, chain
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+
+from evenstage.netlist.netlist import CardColumns
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator, Mapping, Sequence
+
+    from evenstage.netlist.devices import IntArray
+    from evenstage.netlist.intake import Values, Words
+    from evenstage.netlist.reading.shapes import Shape
+
+_ROLES: Final = ("node", "nodes", "target", "argument", "value")
+#: Makes every blank of the grammar but the line feed one that ``bytes.split`` knows.
+_SPACES: Final = bytes(32 if (b < 33 and b != 10) or b == 44 else b for b in range(256))
+#: So many cards are looked at before it is decided how those to come are read.
+_MANY: Final = 256
+#: Parameters are read all at once where each occurs at least so often.
+_ALIKE: Final = 4
+_MOST_TAILS: Final = 1 << 14
+_NUMERIC = re.compile(rb"[+-]?\.?[0-9]|['\"{(]")
+
+
+class _Tails(dict[bytes, int]):
+    """The parameters of cards as they stand there, each text taken apart once.
+
+    Most cards of a netlist are drawn like many others.
+    """
+
+    def __init__(self, shape: Shape, places: Mapping[str, int], values: Values) -> None:
+        super().__init__()
+        self.columns = {name: array("i") for name in places}
+        self._groups = [place - min(places.values()) + 1 for place in places.values()]
+        self._match = re.compile(shape.tail).fullmatch
+        self._take = values.kept if shape.letter == "x" else values.numbers_of
+
+    def __missing__(self, text: bytes) -> int:
+        match = self._match(text)
+        assert match is not None
+        numbers = self._take([match[group] for group in self._groups])
+        for column, number in zip(self.columns.values(), numbers, strict=True):
+            column.append(number)
+        self[text] = len(self)
+        return len(self) - 1
+
+
+class ShapeColumns:
+    """All cards of one shape.
+
+    Parameters
+    ----------
+    number : int
+        Of the shape.
+    shape : Shape
+        How they are read.
+    words, values : Words and Values
+        Those of the netlist.
+    """
+
+    def __init__(self, number: int, shape: Shape, words: Words, values: Values) -> None:
+        self.number = number
+        #: Matches a card; its groups are to be put among the rows.
+        self.match = shape.row.match
+        self.rows: list[tuple[bytes, ...]] = []
+        self._shape = shape
+        self._tails: _Tails | None = None
+        self._is_settled = not shape.tail
+        self.hashes = array("q")
+        self._letter = shape.letter
+        self._words = words
+        self._values = values
+        kept = [role for role in shape.roles if role != "key"]
+        places = {role: [i for i, r in enumerate(kept) if r == role] for role in _ROLES}
+        self._node_places = places["node"]
+        self._target_place = next(iter(places["target"]), None)
+        self._run_place = next(iter(places["nodes"]), None)
+        self._arguments = places["argument"]
+        self._value_places = dict(zip(shape.keys, places["value"], strict=True))
+        self._nodes = [array("i") for _ in self._node_places]
+        self._targets = array("i")
+        self._run = array("i")
+        self._run_ends = array("i", [0])
+        self._columns = {name: array("i") for name in self._value_places}
+        if self._arguments:
+            self._columns[""] = array("i")
+
+    def store(self) -> None:
+        """Turn the rows that wait into numbers."""
+        columns = list(zip(*self.rows, strict=True))
+        self.rows.clear()
+        number = self._words.__getitem__
+        self.hashes.extend(map(hash, columns[0]))
+        for column, place in zip(self._nodes, self._node_places, strict=True):
+            column.extend(map(number, columns[place]))
+        if self._target_place is not None:
+            self._targets.extend(map(number, columns[self._target_place]))
+        if self._run_place is not None:
+            self._store_run(columns[self._run_place])
+        if self._arguments:
+            self._store_values("", main_argument([columns[i] for i in self._arguments]))
+        if self._tails is not None:
+            self._store_tails(self._tails, columns[-1])
+            return
+        for name, place in self._value_places.items():
+            self._store_values(name, columns[place])
+        if not self._is_settled and len(columns[0]) >= _MANY:
+            self._settle([columns[place] for place in self._value_places.values()])
+
+    def _settle(self, values: list[tuple[bytes, ...]]) -> None:
+        """Decide how the cards to come are read: equal parameters all at once, others apart."""
+        self._is_settled = True
+        if _ALIKE * len(set(zip(*values, strict=True))) <= len(values[0]):
+            self._tails = _Tails(self._shape, self._value_places, self._values)
+            self.match = re.compile(self._shape.joint).match
+
+    def _store_tails(self, tails: _Tails, texts: Sequence[bytes]) -> None:
+        ids = np.fromiter(map(tails.__getitem__, texts), np.intp, len(texts))
+        for name, column in tails.columns.items():
+            self._columns[name].frombytes(_view(column)[ids].tobytes())
+        if len(tails) > _MOST_TAILS:
+            self._tails, self.match = None, self._shape.row.match
+
+    def _store_values(self, name: str, texts: Sequence[bytes]) -> None:
+        take = self._values.kept if self._letter == "x" else self._values.numbers_of
+        self._columns[name].extend(take(texts))
+
+    def _store_run(self, runs: Sequence[bytes]) -> None:
+        words = list(map(bytes.split, b"\n".join(runs).translate(_SPACES).split(b"\n")))
+        self._run.extend(map(self._words.__getitem__, chain.from_iterable(words)))
+        ends = accumulate(map(len, words), initial=self._run_ends.pop())
+        self._run_ends.extend(ends)
+
+    def group(self, name: str) -> int | None:
+        """Return the group of a parameter in the ``row`` of the shape, if it has one."""
+        place = self._value_places.get(name)
+        return None if place is None else place + 1
+
+    def columns(self, numbers: IntArray, first: int, last: int) -> Iterator[CardColumns]:
+        """Give the rows ``[first, last)``, which are the cards of some numbers."""
+        values = {name: _view(column)[first:last] for name, column in self._columns.items()}
+        targets = _view(self._targets)[first:last]
+        if self._run_place is None:
+            nodes = np.stack([_view(column)[first:last] for column in self._nodes])
+            yield self._made(numbers, nodes, targets, values)
+            return
+        ends = _view(self._run_ends)[first : last + 1]
+        lengths = np.diff(ends)
+        for length in np.unique(lengths).tolist():
+            rows = np.flatnonzero(lengths == length)
+            nodes = _view(self._run)[ends[rows] + np.arange(length)[:, None]]
+            named = targets[rows] if len(targets) else nodes[-1]
+            chosen = {name: column[rows] for name, column in values.items()}
+            yield self._made(numbers[rows], nodes if len(targets) else nodes[:-1], named, chosen)
+
+    def _made(
+        self, numbers: IntArray, nodes: IntArray, targets: IntArray, values: dict[str, IntArray]
+    ) -> CardColumns:
+        return CardColumns(
+            letter=self._letter, numbers=numbers, nodes=nodes, targets=targets, values=values
+        )
+
+
+def _view(column: array[int]) -> IntArray:
+    return np.frombuffer(column, np.int32)
+
+
+def main_argument(arguments: list[tuple[bytes, ...]]) -> Sequence[bytes]:
+    """Return the values of R and C cards from their unnamed arguments (value, model)."""
+    if len(arguments) == 1:
+        return arguments[0]
+    return [
+        next((text for text in row if _NUMERIC.match(text)), row[0])
+        for row in zip(*arguments, strict=True)
+    ]

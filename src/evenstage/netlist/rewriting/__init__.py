@@ -1,0 +1,1 @@
+"""From wished widths to edits, and from edits to bytes and files."""

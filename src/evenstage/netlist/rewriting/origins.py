@@ -1,0 +1,157 @@
+"""Which numbers in the text set a width, and whether they may be changed.
+
+A number may be changed where it serves the widths, areas and perimeters of one sizing variable and
+nothing else, and the width is in proportion to it. A number inside a leaf may also be changed in a
+copy of the leaf. Files outside the folder of the main file are never edited.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Final, Literal
+
+from evenstage.netlist.rewriting.sized_block import Slot
+from evenstage.netlist.rewriting.spelling import is_number
+
+if TYPE_CHECKING:
+    from evenstage.netlist.netlist import Card, Parameter
+    from evenstage.netlist.rewriting.bindings import Use
+    from evenstage.netlist.rewriting.sized_block import SizedBlock
+    from evenstage.netlist.rewriting.tracing import Root
+    from evenstage.source import Span
+
+_FOLLOWING: Final = frozenset({"ad", "as", "pd", "ps", "nrd", "nrs", "area", "perim"})
+
+Way = Literal["shared", "leaf", "default", "detached"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Origin:
+    """A number in the text that sets a width.
+
+    Parameters
+    ----------
+    parameter : Parameter
+        The number; for "detached" the expression that a number replaces.
+    way : {"shared", "leaf", "default", "detached"}
+        "shared": respelled where it stands. "leaf": inside a leaf; respelled there if all callers
+        agree, else in a copy. "default": of a leaf's ``.subckt`` card; respelled if all callers
+        that rely on it agree, else the call passes the value. "detached": replaced by a number in
+        a copy of the leaf.
+    model : str
+        The number whose spelling is followed.
+    scope : str
+        Lower-case name of the subcircuit that it stands in.
+    """
+
+    parameter: Parameter
+    way: Way
+    model: str
+    scope: str
+
+
+def find_origins(block: SizedBlock, slot: Slot) -> tuple[Origin, ...] | str:
+    """Return the numbers that set a slot's width, or the reason why it is fixed."""
+    card = block.card(slot.card)
+    if slot.caller is not None and block.netlist.callee(block.card(slot.caller)) != card.scope:
+        return "it stands in a subcircuit that its leaf calls"
+    own = block.own_width(card)
+    if own is None:
+        return "its card gives no width"
+    found: tuple[Origin, ...] | str
+    if is_number(own.text):
+        found = (Origin(parameter=own, way=_local(slot), model=own.text, scope=card.scope),)
+    else:
+        found = _from_parameters(block, slot, card, own)
+    if isinstance(found, str):
+        return found
+    return next((why for o in found if (why := _obstacle(block, slot, o))), None) or found
+
+
+def _local(slot: Slot) -> Way:
+    """Return how a number on the transistor card itself is changed."""
+    return "shared" if slot.caller is None else "leaf"
+
+
+def _from_parameters(
+    block: SizedBlock, slot: Slot, card: Card, own: Parameter
+) -> tuple[Origin, ...] | str:
+    """Return the numbers behind a width that is an expression."""
+    ways = block.bindings.callers(card.scope) if slot.caller is None else (slot.caller,)
+    traced = block.tracer.roots(own.text, card.scope, ways)
+    if not traced:
+        return f"its width {own.text} is not in proportion to parameters"
+    for roots in traced:
+        if all(_serves_alone(block, slot, root) for root in roots):
+            return tuple(_origin(block, root, slot, card) for root in sorted(roots, key=_place))
+    if slot.caller is None or not block.copies_per_leaf or not block.has_one_width(slot):
+        return f"its width {own.text} comes from a parameter that sets other things too"
+    model = min(traced[0], key=_place).parameter.text
+    return (Origin(parameter=own, way="detached", model=model, scope=card.scope),)
+
+
+def _place(root: Root) -> tuple[str, int]:
+    span = root.parameter.span
+    return str(span.source.path), span.start
+
+
+def _origin(block: SizedBlock, root: Root, slot: Slot, card: Card) -> Origin:
+    """Return how a number found by tracing is changed."""
+    way: Way = "shared"
+    if slot.caller is not None and root.place.scope == card.scope:
+        ways: dict[str, Way] = {"inside": "leaf", "default": "default", "passed": "shared"}
+        way = ways[root.kind]
+    scope = root.place.scope
+    if root.kind == "passed" and root.place.caller is not None:
+        scope = block.card(root.place.caller).scope
+    return Origin(parameter=root.parameter, way=way, model=root.parameter.text, scope=scope)
+
+
+def _serves_alone(block: SizedBlock, slot: Slot, root: Root) -> bool:
+    """Tell whether a number serves nothing but the geometry of one variable's transistors."""
+    variable = block.variable_of[slot]
+    return all(_serves(block, use, variable) for use in block.bindings.uses(root.place))
+
+
+def _serves(block: SizedBlock, use: Use, variable: int) -> bool:
+    """Tell whether a use is geometry of one of a variable's transistors."""
+    mine = any(
+        block.variable_of.get(slot) == variable
+        for slot in (Slot(use.card, use.caller), Slot(use.card))
+    )
+    if not mine:
+        return False
+    return use.name in _FOLLOWING or use.name == block.width_name(block.card(use.card))
+
+
+def _obstacle(block: SizedBlock, slot: Slot, origin: Origin) -> str:
+    """Return why an origin cannot be changed after all, or nothing."""
+    card = block.card(slot.card)
+    caller = None if slot.caller is None else block.card(slot.caller)
+    if origin.way != "default" and not block.is_editable(origin.parameter.span):
+        return _outside(origin.parameter.span)
+    if block.is_read_again(card) or (caller is not None and block.is_read_again(caller)):
+        return "its file is included more than once, and one change would make several"
+    for scope in (origin.scope, card.scope, "" if caller is None else caller.scope):
+        if scope in block.defined_again:
+            return f"'{scope}' is defined again at {block.defined_again[scope]}"
+    if origin.way == "shared" or caller is None:
+        return ""
+    if not block.is_editable(caller.span):
+        return _outside(caller.span)
+    return "" if origin.way == "default" else _no_copy(block, card, origin)
+
+
+def _outside(span: Span) -> str:
+    return f"'{span.source.label}' lies outside the folder of the main file"
+
+
+def _no_copy(block: SizedBlock, card: Card, origin: Origin) -> str:
+    """Return why a number inside a leaf cannot be changed for this call alone, or nothing."""
+    if origin.way == "leaf" and block.is_one_for_all(card):
+        return ""
+    if not block.copies_per_leaf:
+        return f"callers of '{card.scope}' share one size, and not all of them may change"
+    if block.holds_definitions(card.scope):
+        return f"'{card.scope}' holds further definitions and cannot be copied"
+    return ""

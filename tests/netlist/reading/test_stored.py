@@ -1,0 +1,163 @@
+"""What is kept of cards as numbers says the same as the cards."""
+
+from __future__ import annotations
+
+import random
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import numpy as np
+import pytest
+
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.expression import FormulaError
+from evenstage.netlist.reading import reader as reader_module
+from evenstage.netlist.reading.read import read_bytes
+from evenstage.netlist.values import Style, plain_value
+
+if TYPE_CHECKING:
+    from evenstage.netlist.netlist import Card, CardColumns, Netlist
+
+Said = tuple[str, tuple[bytes, ...], bytes, dict[str, tuple[float, int]]]
+
+
+def folded(text: str) -> bytes:
+    return text.encode("utf-8", "surrogateescape").lower()
+
+
+def worth(text: str) -> tuple[float, int]:
+    """Return number and style of a value; of expressions no number."""
+    try:
+        value = plain_value(text)
+    except FormulaError:
+        value = None
+    return (0.0, Style.COMPUTED) if value is None else (value.number, value.style)
+
+
+def said_by_card(card: Card) -> Said:
+    values = {p.name: worth(p.text.lower()) for p in card.parameters}
+    if card.value is not None:
+        values[""] = worth(card.value.text.lower())
+    return card.letter, tuple(map(folded, card.nodes)), folded(card.target), values
+
+
+def said_by_columns(netlist: Netlist, cards: CardColumns) -> dict[int, Said]:
+    words, values = netlist.cards.words, netlist.cards.values
+    said = {}
+    for row, number in enumerate(cards.numbers.tolist()):
+        nodes = tuple(words.some(cards.nodes[:, row]))
+        target = words[int(cards.targets[row])] if len(cards.targets) else b""
+        pairs = {}
+        for name, column in cards.values.items():
+            numbers, styles = values.worth(column[row : row + 1])
+            computed = styles[0] == Style.COMPUTED
+            pairs[name] = (0.0 if computed else float(numbers[0]), int(styles[0]))
+        said[number] = cards.letter, nodes, target, pairs
+    return said
+
+
+def check(netlist: Netlist) -> None:
+    """Compare all cards with their columns."""
+    said: dict[int, Said] = {}
+    for cards in netlist.cards.columns(range(len(netlist))):
+        said |= said_by_columns(netlist, cards)
+    assert [said[n] for n in range(len(netlist))] == [
+        said_by_card(netlist.card(n)) for n in range(len(netlist))
+    ]
+
+
+def random_lines(pick: random.Random, count: int) -> list[str]:
+    """Return cards of all kinds in any order."""
+    nets = ["a", "B", "net:1", "n[3]", "VDD", "0"]
+    sizes = ["1u", "'2*k'", "0.5", "{x}", "1e-6", "2meg", "max(1,2)", "1e999", ".5p", "5."]
+
+    def some(count: int) -> str:
+        return " ".join(pick.choice(nets) for _ in range(count))
+
+    def pairs(names: str) -> str:
+        return "".join(f" {name}={pick.choice(sizes)}" for name in names)
+
+    makers = [
+        lambda i: f"M{i} {some(4)} nch{pairs('wl')}",
+        lambda i: f"m{i} {some(4)} Pch{pairs('lwm')}",
+        lambda i: f"m{i} ({some(4)}) pch{pairs('w')} off",
+        lambda i: f"r{i} {some(2)} {pick.choice(sizes)}",
+        lambda i: f"C{i} {some(2)} {pick.choice(sizes)}",
+        lambda i: f"c{i} {some(2)} cmod {pick.choice(sizes)}{pairs('m')}",
+        lambda i: f"l{i} {some(2)} {pick.choice(sizes)}",
+        lambda i: f"x{i} {some(pick.randint(1, 5))} inv{pairs(pick.choice(['', 'w', 'ww']))}",
+        lambda i: f"x{i} {some(2)} / Inv{pairs('k')}",
+        lambda i: f"v{i} {some(2)} dc 1.8",
+    ]
+    return [pick.choice(makers)(i) for i in range(count)]
+
+
+@pytest.mark.parametrize("seed", range(6))
+def test_columns_say_what_the_cards_say(seed: int) -> None:
+    lines = random_lines(random.Random(seed), 400)
+    check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))
+
+
+def test_columns_say_what_the_cards_say_across_blocks(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("evenstage.netlist.reading.blocks._SIZE", 100)
+    pick = random.Random(3)
+    lines = [
+        line.replace(" ", pick.choice([" ", "\n+ ", " $ it's\n* c\n\n+ "]), 1)
+        for line in random_lines(pick, 300)
+    ]
+    small = read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path())
+    check(small)
+    monkeypatch.undo()
+    large = read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path())
+    assert [small.card(n).span.text for n in range(len(small))] == [
+        large.card(n).span.text for n in range(len(large))
+    ]
+
+
+def test_a_card_of_another_kind_ends_a_run(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(reader_module, "_LEARNED_AT", 1)
+    lines = ["* t", "m1 a b 0 0 nch w=1u l=1u", "r1 a b 1k", "c1 a 0 1f", "r2 b 0 2k", "c2 b 0 2f"]
+    netlist = read_bytes("\n".join(lines).encode(), "t.sp", Path())
+    check(netlist)
+    np.testing.assert_allclose(elaborate(netlist).capacitance, [1e-15, 2e-15], rtol=1e-12, atol=0)
+
+
+@pytest.mark.parametrize(
+    "spelling", ["{:.4f}", "{:.3e}", "{:.4f}u", "{:.2f}k", ".{:.0f}p", "{:.0f}.f"]
+)
+def test_values_converted_together_are_worth_the_same(spelling: str) -> None:
+    pick = random.Random(1)
+    texts = [spelling.format(pick.uniform(1, 99)) for _ in range(300)]
+    lines = [f"c{i} a b {text}" for i, text in enumerate(texts)]
+    check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))
+
+
+def test_spans_of_a_parameter_of_many_cards() -> None:
+    lines = random_lines(random.Random(9), 300)
+    netlist = read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path())
+    found = list(netlist.cards.value_spans(range(len(netlist)), "w"))
+    asked = [netlist.card(number).parameter("w") for number in range(len(netlist))]
+    assert found == [None if one is None else one.span for one in asked]
+
+
+def test_names_of_many_cards() -> None:
+    lines = ["* t", "M1 a b c d nch", ".subckt Inv a b", "Mx a b c d nch", ".ends", "r2 a b 1"]
+    netlist = read_bytes("\n".join(lines).encode(), "t.sp", Path())
+    assert list(netlist.cards.full_names([0, 1, 2])) == ["M1", "inv.Mx", "r2"]
+    assert list(netlist.cards.full_names([2, 1])) == ["r2", "inv.Mx"]
+
+
+@pytest.mark.parametrize("kinds", [3, 100_000])
+def test_equal_parameters_are_read_at_once_and_others_apart(kinds: int) -> None:
+    pick = random.Random(5)
+    lines = [
+        f"m{i} a b 0 0 nch w={pick.randrange(1, kinds)}.{i % 2}u l='2*{i % 3}' off ad = 1p m=2"
+        for i in range(3000)
+    ]
+    check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))
+
+
+def test_parameters_that_stop_being_alike(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("evenstage.netlist.reading.stored._MOST_TAILS", 50)
+    lines = [f"m{i} a b 0 0 nch w={i if i > 2000 else 1}u l=1u" for i in range(6000)]
+    check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))
