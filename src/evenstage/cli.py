@@ -16,6 +16,7 @@ from typing import TYPE_CHECKING, TextIO
 
 from evenstage import __version__
 from evenstage.errors import EvenstageError, OutputError
+from evenstage.progress import shown_on
 from evenstage.units import parse_number
 
 if TYPE_CHECKING:
@@ -95,7 +96,8 @@ def _run(asked: argparse.Namespace) -> None:
     on_screen = asked.json == Path("-")
     if asked.json and not on_screen:
         flow.check_place(asked.json, _inputs(asked))
-    result = asked.command(asked)
+    with shown_on(None if asked.quiet else sys.stderr):
+        result = asked.command(asked)
     if on_screen:
         _print(flow.json(result))
         for notice in () if asked.quiet else flow.notices(result):
@@ -245,7 +247,7 @@ def _shared(parser: argparse.ArgumentParser) -> None:
     add("--from", metavar="NET", help="only paths that begin there; * and ? are wild")
     add("--to", metavar="NET", help="only paths that end there; * and ? are wild")
     add("--json", type=_file, metavar="FILE", help="the result for scripts; - is standard output")
-    add("--quiet", action="store_true", help="no notices")
+    add("--quiet", action="store_true", help="no notices, no progress")
 
 
 def _wishes(parser: argparse.ArgumentParser) -> None:

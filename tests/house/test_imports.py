@@ -17,7 +17,10 @@ SOURCE: Final = Path(__file__).parents[2] / "src"
 
 #: Top to bottom; rooms of one line do not know each other. ``__init__`` is the package's own file.
 ORDER: Final = (
-    ("errors", "units", "source", "pattern", "toml_places", "schema", "settings", "brief"),
+    (
+        *("errors", "units", "source", "pattern", "progress"),
+        *("toml_places", "schema", "settings", "brief"),
+    ),
     ("process",),
     ("netlist",),
     ("circuit",),
@@ -42,7 +45,8 @@ CLI_IMPORTS: Final = frozenset(
     {
         *("__future__", "argparse", "collections", "contextlib", "importlib", "os", "pathlib"),
         *("signal", "sys", "traceback", "typing"),
-        *("evenstage", "evenstage.errors", "evenstage.flow", "evenstage.units"),
+        *("evenstage", "evenstage.errors", "evenstage.flow", "evenstage.progress"),
+        "evenstage.units",
     }
 )
 

@@ -18,6 +18,7 @@ from evenstage.netlist.elaboration.template import column_of
 from evenstage.netlist.elaboration.tops import AmbiguousTopError, choose_top
 from evenstage.netlist.wording import counted, listed
 from evenstage.process.infer import infer_process
+from evenstage.progress import tell
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
@@ -302,7 +303,8 @@ def _bound(
     by_name: dict[str, dict[Key, Template]] = {definition: {} for definition in definitions}
     by_name[name][name, ()] = library.template((name, ()))
     count = 1
-    for definition in definitions:
+    for done, definition in enumerate(definitions):
+        tell("laying out", done / len(definitions))
         for template in by_name[definition].values():
             for callee in template.callees:
                 if callee not in by_name[callee[0]]:

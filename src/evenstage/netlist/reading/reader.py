@@ -22,6 +22,7 @@ from evenstage.netlist.reading.includes import Includes, section_range
 from evenstage.netlist.reading.scopes import Scopes
 from evenstage.netlist.reading.shapes import learn, plain_bracket
 from evenstage.netlist.reading.statement import Statement, parse_statement
+from evenstage.progress import tell
 from evenstage.source import SourceText, Span
 
 if TYPE_CHECKING:
@@ -110,6 +111,7 @@ class Reader:
         depth, conditions = self._scopes.depth, self._branches.depth
         self._begin_segment(unit)
         while position < end:
+            tell("reading", position / len(unit.source.data))
             position = self._read_block(unit, position, end)
             self._table.store()
         self._branches.check_closed(conditions)

@@ -7,6 +7,7 @@ from operator import attrgetter
 from typing import TYPE_CHECKING
 
 from evenstage.netlist.collection import without_collection
+from evenstage.progress import tell
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
@@ -96,6 +97,7 @@ def rewrite(netlist: Netlist, edits: Iterable[Edit]) -> dict[Path, bytes]:
     ValueError
         If two edits overlap: a fault of ours.
     """
+    tell("writing")
     with without_collection():
         of_source: dict[int, list[Edit]] = {}
         for edit in edits:

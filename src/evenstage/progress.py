@@ -1,0 +1,106 @@
+"""How far the work has come, for whoever wants to know.
+
+Whoever works calls ``tell`` at moments that cost nothing: for each block of text or round of the
+optimiser, never for each card. Nobody need listen; where somebody does, ``listening`` says who.
+"""
+
+from __future__ import annotations
+
+import time
+from contextlib import contextmanager, suppress
+from contextvars import ContextVar
+from typing import TYPE_CHECKING, Final
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Iterator
+    from typing import TextIO
+
+    #: Takes what is told.
+    Listener = Callable[[str, float | None], None]
+
+#: Work shorter than this is not worth a line, s.
+_PATIENCE: Final = 1.0
+#: Between two changes of the line, s.
+_PAUSE: Final = 0.1
+
+
+_listener: ContextVar[Listener | None] = ContextVar("listener", default=None)
+
+
+def tell(stage: str, done: float | None = None) -> None:
+    """Say which stage the work is in, and how much of that is done.
+
+    Parameters
+    ----------
+    stage : str
+        What is being done, in a word or two: ``reading``.
+    done : float, optional
+        From 0 to 1; None where nobody knows.
+    """
+    listener = _listener.get()
+    if listener is not None:
+        listener(stage, done)
+
+
+@contextmanager
+def listening(listener: Listener) -> Iterator[None]:
+    """Let somebody hear of the work inside.
+
+    Examples
+    --------
+    >>> with listening(lambda stage, done: print(stage, done)):
+    ...     tell("reading", 0.5)
+    reading 0.5
+    """
+    token = _listener.set(listener)
+    try:
+        yield
+    finally:
+        _listener.reset(token)
+
+
+@contextmanager
+def shown_on(stream: TextIO | None) -> Iterator[None]:
+    """Show the progress of the work inside in one line of a terminal, gone afterwards.
+
+    Parameters
+    ----------
+    stream : TextIO, optional
+        Nothing is shown where it is None or no terminal.
+    """
+    if stream is None or not stream.isatty():
+        yield
+        return
+    line = _Line(stream)
+    try:
+        with listening(line.show):
+            yield
+    finally:
+        line.clear()
+
+
+class _Line:
+    """One line of a terminal, written over itself."""
+
+    def __init__(self, stream: TextIO) -> None:
+        self._stream = stream
+        self._width = 0
+        self._due = time.monotonic() + _PATIENCE
+
+    def show(self, stage: str, done: float | None) -> None:
+        """Write a stage, unless the line was written a moment ago."""
+        if time.monotonic() >= self._due:
+            self._write(stage if done is None else f"{stage} {min(max(done, 0.0), 1.0):4.0%}")
+            self._due = time.monotonic() + _PAUSE
+
+    def clear(self) -> None:
+        """Leave an empty line."""
+        if self._width:
+            self._write("")
+            self._write("")
+
+    def _write(self, text: str) -> None:
+        with suppress(OSError, ValueError):  # a closed terminal must not end the work
+            self._stream.write(f"\r{text:<{self._width}}")
+            self._stream.flush()
+        self._width = len(text)
