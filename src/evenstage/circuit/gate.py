@@ -55,7 +55,7 @@ class ArcForm:
 
 @dataclass(frozen=True)
 class GateForm:
-    """A network recognised as one static complementary gate.
+    """A network recognised as one gate.
 
     Parameters
     ----------
@@ -68,6 +68,8 @@ class GateForm:
     pull_down : Expression
         When the output is 0.
     arcs : tuple of ArcForm
+    kind : str
+        What it is called.
     """
 
     drawn: tuple[Switch, ...]
@@ -75,6 +77,7 @@ class GateForm:
     output: int
     pull_down: Expression
     arcs: tuple[ArcForm, ...]
+    kind: str = "static gate"
 
 
 @dataclass(frozen=True)

@@ -2,16 +2,15 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from evenstage.circuit.circuit import Circuit, NotUnderstood
-from evenstage.circuit.function import Literal
-from evenstage.circuit.gate import GateForm, recognise_network
-from evenstage.circuit.groups import AlikeGroups, group
+from evenstage.circuit.groups import group
 from evenstage.circuit.ownership import leaves, owners
+from evenstage.circuit.sorting import sort_groups
 from evenstage.circuit.supplies import find_supplies
 from evenstage.circuit.tables import AlikeGates
 from evenstage.errors import CircuitError, Notice
@@ -22,18 +21,11 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from evenstage.brief import Brief
-    from evenstage.netlist.devices import Devices, IntArray
+    from evenstage.circuit.sorting import Sorted
+    from evenstage.netlist.devices import Devices
     from evenstage.process.process import Process
 
 _DEFAULT_FANOUT = 4
-
-
-@dataclass(frozen=True)
-class _Sorted:
-    """Groups with a form, and groups without one."""
-
-    gates: tuple[tuple[GateForm, AlikeGroups], ...]
-    strange: tuple[tuple[str, AlikeGroups], ...]
 
 
 def recognise(devices: Devices, process: Process, brief: Brief | None = None) -> Circuit:
@@ -62,7 +54,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         )
     supplies = find_supplies(devices, brief)
     grouping = group(devices, supplies)
-    found = _tapped(devices, _related(_recognised(grouping.alike), len(devices.net_names)))
+    found = sort_groups(devices, grouping.alike)
     alike, strange = _numbered(found), _not_understood(found)
     if not alike:
         reasons = sorted({some.reason for some in strange})
@@ -91,70 +83,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
     return _with_ends(circuit, brief)
 
 
-def _recognised(alike: Sequence[AlikeGroups]) -> _Sorted:
-    gates, strange = [], []
-    for some in alike:
-        form = recognise_network(some.network)
-        if isinstance(form, GateForm):
-            gates.append((form, some))
-        else:
-            strange.append((form.reason, some))
-    return _Sorted(tuple(gates), tuple(strange))
-
-
-def _related(found: _Sorted, nets: int) -> _Sorted:
-    """Try again the networks that become static once complementary inputs are known as such."""
-    complement = np.full(nets, -1, np.int32)
-    for form, some in found.gates:
-        if isinstance(form.pull_down, Literal):
-            complement[some.nets[:, form.output]] = some.nets[:, form.pull_down.net]
-    gates = list(found.gates)
-    strange: list[tuple[str, AlikeGroups]] = []
-    for reason, some in found.strange:
-        inputs = list(dict.fromkeys(s.gate for s in some.network if s.gate >= 0))
-        here = some.nets[:, inputs]
-        pairs = complement[here][:, :, None] == here[:, None, :]
-        kinds, inverse = np.unique(pairs.reshape(len(here), -1), axis=0, return_inverse=True)
-        for index, kind in enumerate(kinds):
-            part = _rows(some, np.flatnonzero(inverse == index))
-            known = np.argwhere(kind.reshape(len(inputs), len(inputs))).tolist()
-            relations = tuple((inputs[a], inputs[b]) for a, b in known)
-            again = recognise_network(some.network, relations) if relations else None
-            if isinstance(again, GateForm):
-                gates.append((again, part))
-            else:
-                strange.append((reason, part))
-    return _Sorted(tuple(gates), tuple(strange))
-
-
-def _tapped(devices: Devices, found: _Sorted) -> _Sorted:
-    """Set aside gates whose inner nodes are used outside: they are more than a static gate."""
-    used = np.zeros(len(devices.net_names), bool)
-    used[devices.gate] = True
-    used[list(devices.ports)] = True
-    gates, strange = [], list(found.strange)
-    for form, some in found.gates:
-        inner = _inner_nets(form)
-        tapped = used[some.nets[:, inner]].any(axis=1)
-        if tapped.any():
-            reason = "an inner node of its networks is used as a signal"
-            strange.append((reason, _rows(some, np.flatnonzero(tapped))))
-        if not tapped.all():
-            gates.append((form, _rows(some, np.flatnonzero(~tapped))))
-    return _Sorted(tuple(gates), tuple(strange))
-
-
-def _inner_nets(form: GateForm) -> list[int]:
-    """Return the local nets that are channel ends of the gate but not its output."""
-    ends = {net for switch in form.drawn for net in (switch.a, switch.b) if net >= 0}
-    return sorted(ends - {form.output})
-
-
-def _rows(some: AlikeGroups, rows: IntArray) -> AlikeGroups:
-    return AlikeGroups(some.network, some.devices[rows], some.nets[rows])
-
-
-def _numbered(found: _Sorted) -> tuple[AlikeGates, ...]:
+def _numbered(found: Sorted) -> tuple[AlikeGates, ...]:
     """Give every gate a number: its rank by first device."""
     if not found.gates:
         return ()
@@ -170,7 +99,7 @@ def _numbered(found: _Sorted) -> tuple[AlikeGates, ...]:
     return tuple(result)
 
 
-def _not_understood(found: _Sorted) -> tuple[NotUnderstood, ...]:
+def _not_understood(found: Sorted) -> tuple[NotUnderstood, ...]:
     every = [
         NotUnderstood(members, reason) for reason, some in found.strange for members in some.devices
     ]

@@ -1,0 +1,117 @@
+"""What a group of transistors is told of the gates around it.
+
+Whether a network is, say, a latch or only a strange pile of switches shows in what drives its
+inputs: the complement of another input, or a gate that itself listens to the network. Written as
+pairs of local nets, equal surroundings of equal networks are found once.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.circuit.function import Literal
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable, Sequence
+
+    from evenstage.circuit.gate import GateForm, Relation
+    from evenstage.circuit.groups import AlikeGroups
+    from evenstage.circuit.network import BoolArray
+    from evenstage.netlist.devices import Devices, IntArray
+
+NETS_MAX = 256
+"""A group with more nets is a bit line or an array; nothing is asked about its surroundings."""
+
+
+@dataclass(frozen=True, slots=True)
+class Context:
+    """What is known around one network; all nets are local.
+
+    Parameters
+    ----------
+    complements : tuple of (int, int)
+        An input, and the net that it is the complement of (another input, or a channel end).
+    feedback : tuple of (int, int)
+        An input, and a channel end that the gate driving this input listens to.
+    seen : tuple of int
+        Channel ends that are ports or close switches of other groups.
+    """
+
+    complements: tuple[Relation, ...] = ()
+    feedback: tuple[Relation, ...] = ()
+    seen: tuple[int, ...] = ()
+
+
+class Surroundings:
+    """The recognised gates of a block, as its other groups see them.
+
+    Parameters
+    ----------
+    devices : Devices
+    gates : iterable of (GateForm, AlikeGroups)
+        Recognised so far.
+    """
+
+    def __init__(self, devices: Devices, gates: Iterable[tuple[GateForm, AlikeGroups]]) -> None:
+        nets = len(devices.net_names)
+        self._nets = nets
+        self._complement = np.full(nets, -1, np.int32)
+        heard = []
+        for form, some in gates:
+            driven = some.nets[:, form.output]
+            if isinstance(form.pull_down, Literal):
+                self._complement[driven] = some.nets[:, form.pull_down.net]
+            heard += [driven.astype(np.int64) * nets + some.nets[:, i] for i in form.network.inputs]
+        self._heard = np.unique(np.concatenate(heard)) if heard else np.zeros(0, np.int64)
+        self._gates_on = np.bincount(devices.gate, minlength=nets)
+        self._is_port = np.zeros(nets, bool)
+        self._is_port[list(devices.ports)] = True
+
+    def split(self, some: AlikeGroups) -> list[tuple[Context, IntArray]]:
+        """Return the contexts that equal groups stand in, each with the rows of its groups."""
+        if some.nets.shape[1] > NETS_MAX:
+            return [(Context(), np.arange(len(some.devices), dtype=np.int32))]
+        inputs = list(dict.fromkeys(s.gate for s in some.network if s.gate >= 0))
+        ends = list(dict.fromkeys(n for s in some.network for n in (s.a, s.b) if n >= 0))
+        here = some.nets[:, inputs]
+        facts = [
+            self._complement[here][:, :, None] == some.nets[:, None, :],
+            self._listens(here, some.nets[:, ends]),
+            self._seen(some, ends),
+        ]
+        table = np.concatenate([fact.reshape(len(here), -1) for fact in facts], axis=1)
+        kinds, inverse = np.unique(table, axis=0, return_inverse=True)
+        sizes = np.cumsum([fact[0].size for fact in facts])[:-1]
+        result = []
+        for index, kind in enumerate(kinds):
+            complements, feedback, seen = np.split(kind, sizes)
+            locals_ = range(some.nets.shape[1])
+            context = Context(
+                _pairs(complements, inputs, locals_),
+                _pairs(feedback, inputs, ends),
+                tuple(end for end, is_seen in zip(ends, seen.tolist(), strict=True) if is_seen),
+            )
+            result.append((context, np.flatnonzero(inverse == index).astype(np.int32)))
+        return result
+
+    def _listens(self, inputs: IntArray, ends: IntArray) -> BoolArray:
+        """Tell whether the gate that drives an input has a net among its own inputs."""
+        pairs = inputs.astype(np.int64)[:, :, None] * self._nets + ends[:, None, :]
+        return np.isin(pairs, self._heard)
+
+    def _seen(self, some: AlikeGroups, ends: Sequence[int]) -> BoolArray:
+        own = np.zeros(some.nets.shape[1], np.int64)
+        np.add.at(own, [s.gate for s in some.network if s.gate >= 0], 1)
+        nets = some.nets[:, ends]
+        found: BoolArray = self._is_port[nets] | (self._gates_on[nets] > own[ends])
+        return found
+
+
+def _pairs(
+    known: BoolArray, inputs: Sequence[int], others: Sequence[int]
+) -> tuple[tuple[int, int], ...]:
+    table = np.argwhere(known.reshape(len(inputs), len(others))).tolist()
+    return tuple((inputs[a], others[b]) for a, b in table)

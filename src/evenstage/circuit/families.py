@@ -1,0 +1,31 @@
+"""The kinds of gates, in the order in which they are tried.
+
+Each kind is one function from a drawn network and its `Context` to a `GateForm`, or to the reason
+why it is not of that kind. The first that fits decides; if none does, the first reason is told.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from evenstage.circuit.gate import recognise_network
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from evenstage.circuit.context import Context
+    from evenstage.circuit.gate import GateForm, Unrecognised
+    from evenstage.circuit.network import Switch
+
+    Family = Callable[[tuple[Switch, ...], Context], GateForm | Unrecognised]
+
+
+def complementary(devices: tuple[Switch, ...], context: Context) -> GateForm | Unrecognised:
+    """Recognise static complementary gates, some of whose inputs are complements of others."""
+    inputs = {device.gate for device in devices}
+    return recognise_network(
+        devices, tuple(pair for pair in context.complements if pair[1] in inputs)
+    )
+
+
+FAMILIES: tuple[Family, ...] = (complementary,)
