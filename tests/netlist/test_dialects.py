@@ -429,6 +429,32 @@ class TestDevices:
         text = f".model pfast nmos level=1\nm1 d g s vss pfast {TAIL}\n"
         assert [model.polarity for model in laid(text).models] == ["n"]
 
+    LOCAL = (
+        ".model sw nmos level=1 vto=0.5 kp=100u tox=4n\n"
+        ".subckt a d g s b\n.model sw pmos level=1 vto=-0.5 kp=50u tox=4n\n"
+        f"m1 d g s b sw {TAIL}\n.subckt deep d g s b\nm1 d g s b sw {TAIL}\n.ends deep\n"
+        "x1 d g s b deep\n.ends a\n"
+        f".subckt c d g s b\nm1 d g s b sw {TAIL}\n.ends\n"
+    )
+
+    def test_a_model_inside_a_subcircuit_is_known_there_alone(self) -> None:
+        """A model card inside a subcircuit counts there and in what is defined inside it."""
+        devices = laid(f"{self.LOCAL}x1 d g s b a\nx2 d g s b c\nm1 d g s b sw {TAIL}\n")
+        polarity = [devices.models[k].polarity for k in devices.model.tolist()]
+        assert polarity == ["n", "p", "p", "n"]
+        assert {model.name for model in devices.models} == {"sw"}
+
+    def test_a_model_inside_another_subcircuit_is_unknown(self) -> None:
+        """A model that only another subcircuit holds says nothing about a card elsewhere."""
+        text = f".subckt a d\n.model sw nmos\nm1 d d 0 0 sw {TAIL}\n.ends\nm1 d d x x sw {TAIL}\n"
+        assert "no transistor type covers the model 'sw'" in refusal(text + "x1 d a\n")
+
+    def test_a_process_file_covers_models_inside_subcircuits_by_their_own_name(self) -> None:
+        """The process file says what a model is, wherever its card stands."""
+        kit = process(models=(Pattern("sw"),))
+        devices = elaborate(text_of(f"{self.LOCAL}x1 d g s b a\n"), None, kit)
+        assert {model.type_index for model in devices.models} == {0}
+
     def test_a_bulk_on_the_wrong_rail(self) -> None:
         """The bulk net is only a second opinion."""
         assert [m.polarity for m in laid(f"m1 d g s vss pch {TAIL}\n").models] == ["p"]
@@ -477,6 +503,26 @@ class TestDevices:
         """Without a width the option's default counts, else the card is refused."""
         assert microns(laid(".option defw=2u defl=1u\nm1 d g s b nch\n")) == [2.0]
         assert "'m1' has no width" in refusal("m1 d g s b nch l=1u\n")
+
+    @pytest.mark.parametrize(
+        ("size", "code", "read_as"),
+        [
+            ("w=1e-30 l=1u", "bad-width", "'1e-30', which is read as 1e-30 m"),
+            ("w=1e30 l=1u", "bad-width", "'1e30', which is read as 1e+21 m"),
+            ("w='1n*1n' l=1u", "bad-width", "''1n*1n'', which is read as 1e-18 m"),
+            ("w=1u l=1e-15", "bad-length", "'1e-15', which is read as 1e-15 m"),
+        ],
+    )
+    def test_sizes_that_cannot_be(self, size: str, code: str, read_as: str) -> None:
+        """A size no transistor has is refused with how it was read and what sets the unit."""
+        text = refusal(f"m1 d g s b nch {size}\n")
+        assert f"must be between 0.2 nm and 0.3 m, got {read_as}; width_unit in" in text
+        assert text.endswith(f"({code})")
+
+    def test_a_unit_that_makes_no_sense(self) -> None:
+        """A unit that was set and fits no card is seen from the first size it spoils."""
+        text = refusal(".option scale=1e-20\nm1 d g s b nch w=1u l=1u\n")
+        assert "got '1u', which is read as 1e-26 m" in text
 
     @pytest.mark.parametrize(
         ("card", "width", "copies", "fingers"),

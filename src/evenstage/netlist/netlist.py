@@ -241,7 +241,10 @@ class Subcircuit:
 
 @dataclass(frozen=True, slots=True)
 class ModelCard:
-    """A ``.model`` card: name and type as written, parameters by lower-case name, SI values."""
+    """A ``.model`` card: name and type as written, parameters by lower-case name, SI values.
+
+    The name of one inside a subcircuit has that of the subcircuit and a dot before it.
+    """
 
     name: str
     kind: str
@@ -265,6 +268,9 @@ class Netlist:
         The top level.
     models : Mapping of str to ModelCard
         By lower-case name.
+    local_models : Mapping of (str, str) to str
+        By the key of a definition and a lower-case name on its cards: the key of the model card
+        inside it, or around it, that they mean.
     global_names : tuple of str
         Nets declared by ``.global``, as written.
     functions : Mapping of str to Function
@@ -280,6 +286,7 @@ class Netlist:
     subcircuits: Mapping[str, Subcircuit]
     top: Subcircuit
     models: Mapping[str, ModelCard]
+    local_models: Mapping[tuple[str, str], str]
     global_names: tuple[str, ...]
     functions: Mapping[str, Function]
     options: Mapping[str, float]
@@ -293,6 +300,18 @@ class Netlist:
     def callee(self, card: Card) -> str:
         """Return the key of the definition an X card calls, whether there is one or not."""
         return self.callees.key(card.scope, card.target)
+
+    def model_key(self, scope: str, name: str) -> str:
+        """Return the key of the model that cards of a definition mean, there or not.
+
+        Parameters
+        ----------
+        scope : str
+            Key of the definition; empty: the top level.
+        name : str
+            In lower case.
+        """
+        return self.local_models.get((scope, name), name)
 
     def card_name(self, number: int) -> str:
         """Return the name of a card as written; faster than making the card."""

@@ -34,6 +34,8 @@ if TYPE_CHECKING:
 _NOT_METRES: Final = 2e-3
 #: A median length, or width, from here on is not in microns but in nanometres.
 _NOT_MICRONS: Final = {"l": 8.0, "w": 80.0}
+#: No width or length of a transistor lies beyond (an atom; a wafer).
+_THINKABLE: Final = (2e-10, 0.3)
 _MICRON: Final = 1e-6
 _NANOMETRE: Final = 1e-9
 _SPELT: Final = {
@@ -210,6 +212,7 @@ class _Sizes:
         width[missing] = self._netlist.options.get("defw", np.nan)
         self._refuse(np.isnan(width), self._missing_width)
         self._refuse(width <= 0, self._bad_width)
+        self._refuse(_unthinkable(width), lambda row: self._unthinkable(row, width, "width"))
         each = self._rows_where(lambda t: t.width_is == "finger")
         return np.where(each, width * fingers, width)
 
@@ -232,6 +235,7 @@ class _Sizes:
                 )
                 self._notices.append(Notice("length-assumed", message, self._place(unsaid)))
         self._refuse(~(length > 0), self._bad_length)
+        self._refuse(_unthinkable(length), lambda row: self._unthinkable(row, length, "length"))
         return length
 
     def _place(self, rows: NDArray[np.bool_]) -> str:
@@ -278,6 +282,20 @@ class _Sizes:
     def _bad_length(self, row: int) -> ElaborationError:
         return self._not_positive(row, "l", "channel length", "length")
 
+    def _unthinkable(self, row: int, metres: FloatArray, noun: str) -> ElaborationError:
+        number = int(self._drawn.card[row])
+        name = self._transistor(row).width_parameter.lower() if noun == "width" else "l"
+        parameter = self._netlist.card(number).parameter(name)
+        shown = "a default" if parameter is None else f"'{parameter.text}'"
+        message = (
+            f"a {noun} must be between 0.2 nm and 0.3 m, got {shown}, which is read as "
+            f"{metres[row]:.3g} m; width_unit in the process file says what a number without a "
+            "suffix is worth"
+        )
+        return ElaborationError(
+            message, code=f"bad-{noun}", span=value_span(self._netlist, number, name)
+        )
+
     def _bad_fingers(self, row: int) -> ElaborationError:
         own = (self._transistor(row).fingers_parameter or "").lower()
         card = self._netlist.card(int(self._drawn.card[row]))
@@ -302,6 +320,13 @@ def _fin(transistor: Transistor) -> float:
     if transistor.width_is != "fins":
         return float("nan")
     return transistor.width_unit or transistor.width_min or _MICRON
+
+
+def _unthinkable(metres: FloatArray) -> NDArray[np.bool_]:
+    """Tell which sizes are positive and yet none of a transistor."""
+    least, most = _THINKABLE
+    found: NDArray[np.bool_] = (metres > 0) & ((metres < least) | (metres > most))
+    return found
 
 
 def _unit_of_median(median: float, kind: str) -> tuple[float, float]:

@@ -64,22 +64,25 @@ class Models:
         ElaborationError
             If nothing says whether it is n or p.
         """
-        known = self._indices.get(key)
+        meant = self._netlist.model_key(self._netlist.cards.scope(card), key)
+        known = self._indices.get(meant)
         if known is None:
-            known = self._indices[key] = len(self._models)
+            known = self._indices[meant] = len(self._models)
             # In the place of a model nobody knows another stands, so that it is told once.
             self._models.append(Model(key, self._process.transistors[0].polarity, 0))
-            self._models[known] = self._model(key, card, wrapper)
+            self._models[known] = self._model(key, meant, card, wrapper)
         return known
 
-    def _model(self, key: str, number: int, wrapper: str) -> Model:
+    def _model(self, key: str, meant: str, number: int, wrapper: str) -> Model:
         card = self._netlist.card(number)
         name = card.target if card.target.lower() == key else key
-        covered = (self._process.type_of(alias) for alias in (name, wrapper) if alias)
+        # A process file covers names as cards say them, an inferred process model cards.
+        own = name if meant == key or self._process.origin == "file" else meant
+        covered = (self._process.type_of(alias) for alias in (own, wrapper) if alias)
         type_index = next((index for index in covered if index is not None), None)
         if type_index is not None:
             return Model(name, self._process.transistors[type_index].polarity, type_index)
-        polarity, reason = self._second_opinion(key, card.nodes[3].lower())
+        polarity, reason = self._second_opinion(key, meant, card.nodes[3].lower())
         if polarity is None:
             message = (
                 f"no transistor type covers the model '{name}', and nothing says whether it is "
@@ -90,8 +93,8 @@ class Models:
         first = self._process.first(polarity)
         return Model(name, polarity, self._process.transistors.index(first))
 
-    def _second_opinion(self, key: str, bulk: str) -> tuple[Polarity | None, str]:
-        model = self._netlist.models.get(key)
+    def _second_opinion(self, key: str, meant: str, bulk: str) -> tuple[Polarity | None, str]:
+        model = self._netlist.models.get(meant)
         if model is not None and model.kind.lower() in _BY_KIND:
             return _BY_KIND[model.kind.lower()], "its .model card"
         for text, patterns, reason in (

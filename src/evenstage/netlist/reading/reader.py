@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 import re
-from contextlib import suppress
 from typing import TYPE_CHECKING, Final
 
-from evenstage.errors import ElaborationError, NetlistError, Notice
+from evenstage.errors import NetlistError, Notice
 from evenstage.netlist.expression import FUNCTIONS
 from evenstage.netlist.functions import Function, read_function
 from evenstage.netlist.grammar import ENCODING, terminal
-from evenstage.netlist.netlist import ModelCard, Netlist
+from evenstage.netlist.netlist import Netlist
 from evenstage.netlist.parameters import Scope
 from evenstage.netlist.reading.blocks import Blocks
 from evenstage.netlist.reading.branches import Branches
@@ -19,6 +18,7 @@ from evenstage.netlist.reading.cards import CardTable, parameter, plain_text
 from evenstage.netlist.reading.complaints import foreign_card
 from evenstage.netlist.reading.conditions import holds
 from evenstage.netlist.reading.includes import Includes, section_range
+from evenstage.netlist.reading.models import ModelCards, WrittenModel, numbers_among
 from evenstage.netlist.reading.scopes import Scopes
 from evenstage.netlist.reading.shapes import learn, plain_bracket
 from evenstage.netlist.reading.statement import Statement, parse_statement
@@ -66,7 +66,7 @@ class Reader:
         self._includes = Includes()
         self._learned: list[list[ShapeColumns]] = [[] for _ in range(256)]
         self._met: dict[tuple[str, ...], int] = {}
-        self._models: dict[str, tuple[str, str, tuple[Parameter, ...], Span]] = {}
+        self._models = ModelCards()
         self._globals: dict[str, str] = {}
         self._functions: dict[str, Function] = {}
         self._branches = Branches(self._holds)
@@ -273,9 +273,9 @@ class Reader:
 
     def _take_model(self, unit: Unit, statement: Statement) -> None:
         marks = statement.marks
-        name, kind = unit.span(marks[1]), unit.span(marks[2])
+        name, kind = unit.span(marks[1]).text, unit.span(marks[2]).text
         span = Span(unit.source, marks[0].start, marks[-1].end)
-        self._models[name.text.lower()] = (name.text, kind.text, _pairs(unit, marks), span)
+        self._models.add(self._scopes.current, WrittenModel(name, kind, _pairs(unit, marks), span))
 
     def _take_global(self, unit: Unit, statement: Statement) -> None:
         for mark in statement.marks[1:]:
@@ -320,19 +320,17 @@ class Reader:
         ports = (port for one in self._scopes.subcircuits.values() for port in one.ports)
         self._table.finish(("0", *self._globals.values(), *ports))
         scope = Scope(assignments=top.assignments, functions=self._functions)
-        models = {
-            key: ModelCard(name, kind, _values(parameters, scope), span)
-            for key, (name, kind, parameters, span) in self._models.items()
-        }
+        models, local_models = self._models.settle(self._scopes, renamed, scope)
         return Netlist(
             sources=self._includes.sources,
             callees=callees,
             subcircuits=self._scopes.subcircuits,
             top=top,
             models=models,
+            local_models=local_models,
             global_names=tuple(self._globals.values()),
             functions=self._functions,
-            options=_values(tuple(self._options), scope),
+            options=numbers_among(self._options, scope),
             notices=(*self._notices, *self._scopes.notices, *self._unknown_notices()),
             _cards=self._table,
         )
@@ -440,15 +438,6 @@ def _pairs(unit: Unit, marks: tuple[Mark, ...]) -> tuple[Parameter, ...]:
         for i, mark in enumerate(marks)
         if mark.terminal == "EQUAL" and 0 < i < len(marks) - 1 and marks[i - 1].terminal != "CLOSE"
     )
-
-
-def _values(parameters: tuple[Parameter, ...], scope: Scope) -> dict[str, float]:
-    """Return the parameters that have a number; the others mean nothing to us."""
-    values = {}
-    for one in parameters:
-        with suppress(ElaborationError):
-            values[one.name] = scope.of(one)
-    return values
 
 
 def _unknown_message(kind: str, count: int) -> str:

@@ -77,6 +77,8 @@ class Scopes:
         self._same: dict[str, str] = {}
         self._spellings: dict[str, dict[str, str]] = {}
         self.subcircuits: dict[str, Subcircuit] = {}
+        #: By the key of each definition that of the one around it, once they are settled.
+        self.parents: dict[str, str] = {}
         self.notices: list[Notice] = []
 
     @property
@@ -281,7 +283,7 @@ class Scopes:
             moved.get(key, key): replace(one, name=_written(one)) if key in renamed else one
             for key, one in self.subcircuits.items()
         }
-        parents = {
+        parents = self.parents = {
             moved.get(key, key): moved.get(outer, outer) for key, outer in self._parents.items()
         }
         names = {key: plain[key] for key in self.subcircuits if key in plain and plain[key] != key}
