@@ -174,7 +174,7 @@ class TestRepeaters:
         """
 
         def per_length(log_sizes: FloatArray) -> float:
-            width, length = np.exp(log_sizes).tolist()
+            width, length = map(float, np.exp(log_sizes))
             line = ladder(4, pi=True, resistance=length, capacitance=length)
             line.capacitance[0] += 0.5 * width
             line.capacitance[-1] += width
@@ -191,7 +191,7 @@ class TestRepeaters:
         """T_min = 2.458 sqrt(R0 C0 Rw Cw), with 0.7 and 0.4 for lumps and lines."""
 
         def total(log_sizes: FloatArray) -> float:
-            sections, size = np.exp(log_sizes).tolist()
+            sections, size = map(float, np.exp(log_sizes))
             part = ladder(1, pi=True, resistance=1 / sections, capacitance=1 / sections)
             lumped = behind(1 / size, Net(part.ends, part.resistance, np.zeros(2)))
             lumps = Net(lumped.ends, lumped.resistance, np.array([0, 1 / sections, size]))

@@ -50,7 +50,7 @@ class Case:
         second = self.elmore**2 + a + self.elmore * w[-1] + v[-1]
         step = float(sink_delay(np.array(first), np.array(second)))
         share = float(step_share(np.array(2 * second - first**2), np.array(transition)))
-        return (1 - share) * first / LN2 + share * step
+        return float((1 - share) * first / LN2 + share * step)
 
     def spread(self) -> float:
         """Return the sink's deviation: that of the driver and what the wire adds."""
