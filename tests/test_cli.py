@@ -71,6 +71,9 @@ class TestStatus:
             ["resize", "pair.sp", "--output", "pair.sp"],
             ["resize", "pair.sp", "--output", "none/out.sp"],
             ["analyse", "pair.sp", "--json", "none/out.json"],
+            ["recognise", "pair.sp", "--graph", "none/out.graphml"],
+            ["recognise", "pair.sp", "--graph", "pair.sp"],
+            ["recognise", "pair.sp", "--graph", "out", "--json", "out"],
             ["analyse", "pair.sp", "--json", "."],
         ],
     )
@@ -91,6 +94,7 @@ class TestStatus:
             ["unknown"],
             ["analyse"],
             ["analyse", "pair.sp", "more"],
+            ["recognise", "pair.sp", "--from", "a"],
             ["analyse", "pair.sp", "--proc", "p.toml"],
             ["analyse", "pair.sp", "--count", "0"],
             ["analyse", "pair.sp", "--count", "²"],

@@ -94,8 +94,11 @@ def _run(asked: argparse.Namespace) -> None:
     from evenstage import flow
 
     on_screen = asked.json == Path("-")
+    graph = getattr(asked, "graph", None)
     if asked.json and not on_screen:
         flow.check_place(asked.json, _inputs(asked))
+    if graph:
+        flow.check_place(graph, [*_inputs(asked), *([asked.json] if asked.json else [])])
     with shown_on(None if asked.quiet else sys.stderr):
         result = asked.command(asked)
     if on_screen:
@@ -157,6 +160,12 @@ def _analyse(asked: argparse.Namespace) -> flow.Result:
     return flow.analyse(asked.netlist, _question(asked))
 
 
+def _recognise(asked: argparse.Namespace) -> flow.Result:
+    from evenstage import flow
+
+    return flow.recognise(asked.netlist, _question(asked), asked.graph)
+
+
 def _resize(asked: argparse.Namespace) -> flow.Result:
     from evenstage import flow
 
@@ -183,8 +192,8 @@ def _question(asked: argparse.Namespace) -> flow.Question:
         process=asked.process,
         brief=asked.brief,
         top=asked.top,
-        start=getattr(asked, "from"),
-        end=asked.to,
+        start=getattr(asked, "from", None),
+        end=getattr(asked, "to", None),
         count=getattr(asked, "count", 1),
     )
 
@@ -218,6 +227,14 @@ def _parser() -> argparse.ArgumentParser:
     diff.add_argument("before", type=_file, metavar="BEFORE")
     diff.add_argument("after", type=_file, metavar="AFTER")
     _shared(diff)
+    recognise = _command(
+        commands, "recognise", _recognise, "what each group of transistors is, and what it computes"
+    )
+    recognise.add_argument("netlist", type=_file, metavar="NETLIST")
+    recognise.add_argument(
+        "--graph", type=_file, metavar="FILE", help="the graph of gates, as GraphML"
+    )
+    _shared(recognise, paths=False)
     return parser
 
 
@@ -238,14 +255,15 @@ def _command(
     return parser
 
 
-def _shared(parser: argparse.ArgumentParser) -> None:
-    """Add what every command takes."""
+def _shared(parser: argparse.ArgumentParser, *, paths: bool = True) -> None:
+    """Add what every command takes, and what those on paths take."""
     add = parser.add_argument
     add("--process", type=_file, metavar="FILE", help="what a micron of transistor is worth")
     add("--brief", type=_file, metavar="FILE", help="what the netlist does not say: loads, limits")
     add("--top", metavar="NAME", help="the subcircuit to work on (the one nobody calls)")
-    add("--from", metavar="NET", help="only paths that begin there; * and ? are wild")
-    add("--to", metavar="NET", help="only paths that end there; * and ? are wild")
+    if paths:
+        add("--from", metavar="NET", help="only paths that begin there; * and ? are wild")
+        add("--to", metavar="NET", help="only paths that end there; * and ? are wild")
     add("--json", type=_file, metavar="FILE", help="the result for scripts; - is standard output")
     add("--quiet", action="store_true", help="no notices, no progress")
 

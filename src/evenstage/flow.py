@@ -8,23 +8,36 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.brief import Brief, read_brief
-from evenstage.circuit.recognise import recognise
+from evenstage.circuit.inventory import Inventory, take_inventory
+from evenstage.circuit.recognise import recognise as find_gates
 from evenstage.errors import Notice, OutputError, SettingsError
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading.read import read
 from evenstage.netlist.rewriting.edits import rewrite
-from evenstage.netlist.rewriting.output import lost_includes, output_files, write_files
+from evenstage.netlist.rewriting.output import (
+    check_place,
+    lost_includes,
+    output_files,
+    write_files,
+)
 from evenstage.netlist.rewriting.record import Record, digest, find_record, record_edit
 from evenstage.process.generic import at_length
 from evenstage.process.infer import infer_process
 from evenstage.process.read import read_process
+from evenstage.report.graph_document import graph_document
 from evenstage.report.machine import (
     analysis_document,
     difference_document,
+    inventory_document,
     sizing_document,
     to_json,
 )
-from evenstage.report.terminal import analysis_report, difference_report, sizing_report
+from evenstage.report.terminal import (
+    analysis_report,
+    difference_report,
+    inventory_report,
+    sizing_report,
+)
 from evenstage.sizing.named import refuse_unknown_names
 from evenstage.sizing.resize import resize as find_widths
 from evenstage.sizing.results import Sizing
@@ -34,9 +47,9 @@ from evenstage.timing.compare import compare
 from evenstage.timing.results import Analysis, Difference
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
     from pathlib import Path
 
+    from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import Devices
     from evenstage.netlist.netlist import Netlist
     from evenstage.process.process import Process
@@ -45,6 +58,7 @@ __all__ = [
     "Analysis",
     "Block",
     "Difference",
+    "Inventory",
     "Question",
     "Result",
     "Sizing",
@@ -55,12 +69,13 @@ __all__ = [
     "json",
     "load",
     "notices",
+    "recognise",
     "resize",
     "text",
     "write_text",
 ]
 
-Result = Analysis | Sizing | Difference
+Result = Analysis | Sizing | Difference | Inventory
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -116,18 +131,41 @@ def load(path: Path, question: Question, unit: Process | None = None) -> Block:
     EvenstageError
         For every mistake in the inputs.
     """
+    circuit, brief, record = _recognised(path, question, unit)
+    analysis = find_paths(
+        circuit, brief, start=question.start, end=question.end, count=question.count
+    )
+    return Block(circuit.devices.netlist, brief, circuit.process, analysis, record)
+
+
+def _recognised(
+    path: Path, question: Question, unit: Process | None = None
+) -> tuple[Circuit, Brief, Record | None]:
     brief = read_brief(question.brief) if question.brief else Brief()
     netlist = read(path)
     given = read_process(question.process) if question.process else None
     devices = elaborate(netlist, question.top, given or _inferred(netlist), brief)
     record = find_record(netlist.sources[0])
     process = _measured(given or _settled(netlist, devices), devices, record, unit)
-    circuit = recognise(devices, process, brief)
+    circuit = find_gates(devices, process, brief)
     refuse_unknown_names(circuit, brief)
-    analysis = find_paths(
-        circuit, brief, start=question.start, end=question.end, count=question.count
-    )
-    return Block(netlist, brief, circuit.process, analysis, record)
+    return circuit, brief, record
+
+
+def recognise(path: Path, question: Question, graph: Path | None = None) -> Inventory:
+    """Find out what each group of transistors is, and write the graph of gates where asked for.
+
+    Raises
+    ------
+    EvenstageError
+        For every mistake in the inputs.
+    OutputError
+        Where the graph cannot be written.
+    """
+    circuit, _, _ = _recognised(path, question)
+    if graph is not None:
+        write_text(graph, graph_document(circuit), force=True)
+    return take_inventory(circuit)
 
 
 def analyse(path: Path, question: Question) -> Analysis:
@@ -179,31 +217,6 @@ def resize(
     return replace(sizing, notices=(*sizing.notices, *lost_includes(block.netlist, output)))
 
 
-def check_place(path: Path, inputs: Sequence[Path] = ()) -> None:
-    """Refuse a place for a report before any work is done.
-
-    Raises
-    ------
-    OutputError
-        Where it is one of the files that are read or written besides, is no file, or lies in no
-        folder.
-    """
-    if any(path.resolve() == other.resolve() for other in inputs):
-        raise OutputError(
-            f"'{path}' is read or written already; choose another name for the JSON",
-            code="output-exists",
-        )
-    if path.exists() and not path.is_file():
-        raise OutputError(
-            f"'{path}' is there and is not a file; choose another name", code="output-exists"
-        )
-    if not path.absolute().parent.is_dir():
-        raise OutputError(
-            f"there is no folder '{path.parent}' to write '{path.name}' to; make it first",
-            code="no-folder",
-        )
-
-
 def write_text(path: Path, content: str, *, force: bool) -> None:
     """Write a report as a file, whole or not at all.
 
@@ -223,6 +236,8 @@ def text(
         return analysis_report(result, width=width, unicode=unicode, notices=with_notices)
     if isinstance(result, Sizing):
         return sizing_report(result, width=width, unicode=unicode, notices=with_notices)
+    if isinstance(result, Inventory):
+        return inventory_report(result, width=width, unicode=unicode, notices=with_notices)
     return difference_report(result, width=width, unicode=unicode, notices=with_notices)
 
 
@@ -232,6 +247,8 @@ def json(result: Result) -> str:
         return to_json(analysis_document(result))
     if isinstance(result, Sizing):
         return to_json(sizing_document(result))
+    if isinstance(result, Inventory):
+        return to_json(inventory_document(result))
     return to_json(difference_document(result))
 
 

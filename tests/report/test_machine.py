@@ -9,7 +9,6 @@ from typing import TYPE_CHECKING, Any, Literal
 import pytest
 
 from evenstage.report.machine import (
-    Document,
     analysis_document,
     difference_document,
     sizing_document,
@@ -18,6 +17,7 @@ from evenstage.report.machine import (
 from evenstage.timing.results import Analysis, Path, Stage
 
 if TYPE_CHECKING:
+    from evenstage.report.circuit_document import Document
     from evenstage.sizing.results import Sizing
     from evenstage.timing.results import Difference
 

@@ -82,14 +82,17 @@ def block(cards: str, ports: str = "") -> str:
     return f"* a block\n.global vdd vss\n.subckt top {ports}\n{cards}\n.ends\n"
 
 
-def _m(kind: str, drain: str, gate: str, source: str, width: float, name: str) -> str:
+def transistor(kind: str, drain: str, gate: str, source: str, width: float, name: str) -> str:
+    """Return a transistor's card; its bulk is tied to its rail."""
     rail = "vss" if kind == "n" else "vdd"
     return f"m{name} {drain} {gate} {source} {rail} {kind}x w={width:.12g}u l=0.1u"
 
 
 def inverter(name: str, a: str, y: str, wn: float, wp: float) -> str:
     """Return an inverter's cards."""
-    return "\n".join([_m("n", y, a, "vss", wn, f"{name}n"), _m("p", y, a, "vdd", wp, f"{name}p")])
+    return "\n".join(
+        [transistor("n", y, a, "vss", wn, f"{name}n"), transistor("p", y, a, "vdd", wp, f"{name}p")]
+    )
 
 
 def nand(name: str, inputs: list[str], y: str, wn: float | list[float], wp: float) -> str:
@@ -107,7 +110,7 @@ def _stack(kind: str, name: str, inputs: list[str], y: str, width: float | list[
     nodes = [y, *(f"{name}{kind}{i}" for i in range(1, len(inputs))), rail]
     widths = width if isinstance(width, list) else [width] * len(inputs)
     return "\n".join(
-        _m(kind, nodes[i], gate, nodes[i + 1], widths[i], f"{name}{kind}{i}")
+        transistor(kind, nodes[i], gate, nodes[i + 1], widths[i], f"{name}{kind}{i}")
         for i, gate in enumerate(inputs)
     )
 
@@ -115,13 +118,13 @@ def _stack(kind: str, name: str, inputs: list[str], y: str, width: float | list[
 def _side(kind: str, name: str, inputs: list[str], y: str, width: float) -> str:
     rail = "vss" if kind == "n" else "vdd"
     return "\n".join(
-        _m(kind, y, gate, rail, width, f"{name}{kind}{i}") for i, gate in enumerate(inputs)
+        transistor(kind, y, gate, rail, width, f"{name}{kind}{i}") for i, gate in enumerate(inputs)
     )
 
 
 def network(kind: str, name: str, edges: list[tuple[str, str, str, float]]) -> str:
     """Return one pull network from edges ``(node, gate, node, width)``."""
     return "\n".join(
-        _m(kind, a, gate, b, width, f"{name}{kind}{i}")
+        transistor(kind, a, gate, b, width, f"{name}{kind}{i}")
         for i, (a, gate, b, width) in enumerate(edges)
     )

@@ -29,12 +29,12 @@ OUTPUT = "output"
 
 @dataclass(frozen=True, slots=True)
 class NotUnderstood:
-    """A channel-connected group that is not a static complementary gate.
+    """Channel-connected groups drawn alike that are no known kind of gate.
 
     Parameters
     ----------
-    devices : IntArray
-        Its device ids.
+    devices : IntArray, shape (groups, devices of a group)
+        Device ids.
     reason : str
         Why not.
     """
@@ -102,7 +102,7 @@ class Circuit:
     @cached_property
     def other_cap(self) -> FloatArray:
         """Gates of transistors that belong to no recognised gate, F, shape (nets,)."""
-        parts = [self.across, *(some.devices for some in self.not_understood)]
+        parts = [self.across, *(some.devices.ravel() for some in self.not_understood)]
         strange = np.concatenate(parts)
         cap = self.electrical.gate.today[strange]
         return at_nets(self.devices.gate[strange], cap, len(self.devices.net_names))
@@ -179,6 +179,10 @@ class Circuit:
         return self.devices.card_path(
             int(self.devices.card[first]), int(self.devices.instance[first])
         )
+
+    def gate_kind(self, gate: int) -> str:
+        """Return what kind of gate it is."""
+        return self.alike[int(self.gate_form[gate])].form.kind
 
     def gate_subcircuit(self, gate: int) -> str:
         """Return the name of the subcircuit that holds a gate."""

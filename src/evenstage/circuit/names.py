@@ -6,7 +6,17 @@ from functools import cached_property
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
-    from evenstage.netlist.devices import Devices
+    from evenstage.netlist.devices import Devices, IntArray
+
+NAMES_MAX = 1000
+"""Of very many devices that share one reason, only so many are named."""
+
+
+def device_names(devices: Devices, which: IntArray) -> tuple[str, ...]:
+    """Return the names of transistors with their instance paths, at most `NAMES_MAX`."""
+    some = which[:NAMES_MAX]
+    places = zip(devices.card[some].tolist(), devices.instance[some].tolist(), strict=True)
+    return tuple(devices.card_path(card, instance) for card, instance in places)
 
 
 class Names:

@@ -1,4 +1,4 @@
-"""Devices to a circuit: which groups are static complementary gates, and what ends at them."""
+"""Devices to a circuit: which groups are gates of what kind, and what ends at them."""
 
 from __future__ import annotations
 
@@ -9,6 +9,7 @@ import numpy as np
 
 from evenstage.circuit.circuit import Circuit, NotUnderstood
 from evenstage.circuit.groups import group
+from evenstage.circuit.names import device_names
 from evenstage.circuit.ownership import leaves, owners
 from evenstage.circuit.sorting import sort_groups
 from evenstage.circuit.supplies import find_supplies
@@ -22,17 +23,17 @@ if TYPE_CHECKING:
 
     from evenstage.brief import Brief
     from evenstage.circuit.sorting import Sorted
-    from evenstage.netlist.devices import Devices
+    from evenstage.netlist.devices import Devices, IntArray
     from evenstage.process.process import Process
 
 _DEFAULT_FANOUT = 4
 
 
 def recognise(devices: Devices, process: Process, brief: Brief | None = None) -> Circuit:
-    """Recognise the static complementary gates of a block.
+    """Recognise the gates of a block.
 
-    Groups of one structure are recognised once, however often they occur. What is not a static gate
-    is kept as `NotUnderstood`, loads what drives it, and is named in a notice.
+    Groups of one structure are recognised once, however often they occur. What is no known kind is
+    kept as `NotUnderstood`, loads what drives it, and is named in a notice.
 
     Parameters
     ----------
@@ -44,7 +45,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
     Raises
     ------
     CircuitError
-        ``no-supply``, ``no-transistors`` or ``no-gate``.
+        ``no-supply`` or ``no-transistors``.
     SettingsError
         Where a pattern of the brief fits no net.
     """
@@ -56,11 +57,6 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
     grouping = group(devices, supplies)
     found = sort_groups(devices, grouping.alike)
     alike, strange = _numbered(found), _not_understood(found)
-    if not alike:
-        reasons = sorted({some.reason for some in strange})
-        raise CircuitError(
-            "no static complementary gate found: " + "; ".join(reasons), code="no-gate"
-        )
     output = np.empty(sum(len(some.gates) for some in alike), np.int32)
     for some in alike:
         output[some.gates] = some.nets[:, some.form.output]
@@ -80,7 +76,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         ends={},
         notices=(*devices.notices, *process.notices, *_strange_notices(devices, strange)),
     )
-    return _with_ends(circuit, brief)
+    return _with_ends(circuit, brief) if alike else circuit
 
 
 def _numbered(found: Sorted) -> tuple[AlikeGates, ...]:
@@ -100,32 +96,26 @@ def _numbered(found: Sorted) -> tuple[AlikeGates, ...]:
 
 
 def _not_understood(found: Sorted) -> tuple[NotUnderstood, ...]:
-    every = [
-        NotUnderstood(members, reason) for reason, some in found.strange for members in some.devices
-    ]
-    return tuple(sorted(every, key=lambda one: int(one.devices[0])))
+    every = [NotUnderstood(some.devices, reason) for reason, some in found.strange]
+    return tuple(sorted(every, key=lambda some: int(some.devices[0, 0])))
 
 
 def _strange_notices(devices: Devices, strange: Sequence[NotUnderstood]) -> list[Notice]:
-    """Make one notice per reason, naming all devices."""
-    by_reason: dict[str, list[NotUnderstood]] = {}
-    for one in strange:
-        by_reason.setdefault(one.reason, []).append(one)
+    """Make one notice per reason, naming the devices."""
+    by_reason: dict[str, list[IntArray]] = {}
+    for some in strange:
+        by_reason.setdefault(some.reason, []).append(some.devices)
     notices = []
-    for reason, some in by_reason.items():
-        names = [
-            devices.card_path(int(devices.card[d]), int(devices.instance[d]))
-            for one in some
-            for d in one.devices
-        ]
-        card = devices.netlist.card(int(devices.card[some[0].devices[0]]))
-        groups = "one group" if len(some) == 1 else f"{len(some)} groups"
+    for reason, parts in by_reason.items():
+        every = np.concatenate([part.ravel() for part in parts])
+        count = sum(len(part) for part in parts)
+        groups = "one group" if count == 1 else f"{count} groups"
         notices.append(
             Notice(
                 "not-understood",
                 f"{groups} of transistors not understood, {reason}; timed as loads only",
-                card.span.place,
-                tuple(names),
+                devices.netlist.card(int(devices.card[every[0]])).span.place,
+                device_names(devices, every),
             )
         )
     return notices

@@ -3,12 +3,16 @@
 from __future__ import annotations
 
 import json
-from typing import TYPE_CHECKING, Final, TypeAlias
+from typing import TYPE_CHECKING, Final
+
+from evenstage.report.circuit_document import inventory_body
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Mapping
 
+    from evenstage.circuit.inventory import Inventory
     from evenstage.errors import Notice
+    from evenstage.report.circuit_document import Document, JsonValue
     from evenstage.sizing.results import Change, Sizing, StageHold
     from evenstage.timing.results import (
         Analysis,
@@ -20,11 +24,6 @@ if TYPE_CHECKING:
         WidthDifference,
         Yardstick,
     )
-
-JsonValue: TypeAlias = (
-    "bool | int | float | str | Sequence[JsonValue] | Mapping[str, JsonValue] | None"
-)
-Document: TypeAlias = dict[str, JsonValue]
 
 FORMAT: Final = 1
 
@@ -100,6 +99,22 @@ def difference_document(difference: Difference) -> Document:
         "before": _analysis(difference.before),
         "after": _analysis(difference.after),
     }
+
+
+def inventory_document(inventory: Inventory) -> Document:
+    """Return the contents of a block as the document scripts read.
+
+    Parameters
+    ----------
+    inventory : Inventory
+
+    Returns
+    -------
+    dict
+        Plain values only; ``kind`` is ``circuit``.
+    """
+    notices: Document = {"notices": [_notice(notice) for notice in inventory.notices]}
+    return _head("circuit") | inventory_body(inventory) | notices
 
 
 def to_json(document: Mapping[str, JsonValue]) -> str:

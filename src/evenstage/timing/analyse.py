@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.errors import Notice
+from evenstage.errors import CircuitError, Notice
 from evenstage.timing.graph import timing_graph
 from evenstage.timing.results import Analysis, Counts, PathEnd
 from evenstage.timing.search import slowest_paths
@@ -32,11 +32,16 @@ def time(
 
     Raises
     ------
+    CircuitError
+        ``no-gate`` where no gate was recognised.
     NoPathError
         Where no path is left.
     SettingsError
         Where a pattern of the brief fits nothing.
     """
+    if not len(circuit):
+        reasons = dict.fromkeys(some.reason for some in circuit.not_understood)
+        raise CircuitError("; ".join(["no gate found", *reasons]), code="no-gate")
     unit = yardstick(circuit.process)
     return sweep(circuit, timing_graph(circuit, unit, brief, start=start, end=end), unit)
 

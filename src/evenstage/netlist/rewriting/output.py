@@ -18,7 +18,7 @@ from typing import TYPE_CHECKING
 from evenstage.errors import Notice, OutputError
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
     from evenstage.netlist.netlist import Netlist
 
@@ -220,3 +220,28 @@ class _Exchange:
         os.close(handle)
         Path(name).chmod(0o666 & ~umask)
         return Path(name)
+
+
+def check_place(path: Path, inputs: Sequence[Path] = ()) -> None:
+    """Refuse a place for a report before any work is done.
+
+    Raises
+    ------
+    OutputError
+        Where it is one of the files that are read or written besides, is no file, or lies in no
+        folder.
+    """
+    if any(path.resolve() == other.resolve() for other in inputs):
+        raise OutputError(
+            f"'{path}' is read or written already; choose another name for what is to be written",
+            code="output-exists",
+        )
+    if path.exists() and not path.is_file():
+        raise OutputError(
+            f"'{path}' is there and is not a file; choose another name", code="output-exists"
+        )
+    if not path.absolute().parent.is_dir():
+        raise OutputError(
+            f"there is no folder '{path.parent}' to write '{path.name}' to; make it first",
+            code="no-folder",
+        )

@@ -1,0 +1,164 @@
+"""What a block consists of: its gates by subcircuit and kind, and what was not understood."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.circuit.names import device_names
+
+if TYPE_CHECKING:
+    from evenstage.circuit.circuit import Circuit
+    from evenstage.circuit.tables import AlikeGates
+    from evenstage.errors import Notice
+    from evenstage.netlist.devices import IntArray
+
+
+@dataclass(frozen=True, slots=True)
+class Entry:
+    """Gates drawn alike in one subcircuit.
+
+    Parameters
+    ----------
+    subcircuit : str
+        Innermost definition that holds them; empty for the top level of the text.
+    kind : str
+    count : int
+        How often they occur in the block, all calls together.
+    devices : int
+        Transistors of each.
+    instance : str
+        Name of the first.
+    output, function : str
+        Of the first, in the net names of its subcircuit.
+    inputs : tuple of str
+        Likewise.
+    """
+
+    subcircuit: str
+    kind: str
+    count: int
+    devices: int
+    instance: str
+    output: str
+    function: str
+    inputs: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Unknown:
+    """Groups of transistors that were not understood, for one reason.
+
+    Parameters
+    ----------
+    reason : str
+    groups, devices : int
+        How many.
+    names : tuple of str
+        The transistors, at most `evenstage.circuit.names.NAMES_MAX`.
+    """
+
+    reason: str
+    groups: int
+    devices: int
+    names: tuple[str, ...]
+
+
+@dataclass(frozen=True, kw_only=True)
+class Inventory:
+    """The contents of a block.
+
+    Parameters
+    ----------
+    source, top : str
+        File and block.
+    devices, nets, gates : int
+        How many.
+    high, low : tuple of str
+        Supply nets.
+    entries : tuple of Entry
+        By subcircuit, callers first, then by kind and first occurrence.
+    not_understood : tuple of Unknown
+    notices : tuple of Notice
+    circuit : Circuit
+        Where all this was taken from.
+    """
+
+    source: str
+    top: str
+    devices: int
+    nets: int
+    gates: int
+    high: tuple[str, ...]
+    low: tuple[str, ...]
+    entries: tuple[Entry, ...]
+    not_understood: tuple[Unknown, ...]
+    notices: tuple[Notice, ...]
+    circuit: Circuit = field(repr=False, compare=False)
+
+
+def take_inventory(circuit: Circuit) -> Inventory:
+    """Count what a circuit consists of."""
+    devices, supplies = circuit.devices, circuit.supplies
+    names = devices.net_names
+    return Inventory(
+        source=devices.netlist.sources[0].label,
+        top=devices.top,
+        devices=len(devices),
+        nets=len(names),
+        gates=len(circuit),
+        high=tuple(names[net] for net in np.flatnonzero(supplies.is_high).tolist()),
+        low=tuple(names[net] for net in np.flatnonzero(supplies.is_low).tolist()),
+        entries=_entries(circuit),
+        not_understood=_unknown(circuit),
+        notices=circuit.notices,
+        circuit=circuit,
+    )
+
+
+def _entries(circuit: Circuit) -> tuple[Entry, ...]:
+    found = [
+        (subcircuit, circuit.alike[index].form.kind, first, count)
+        for index, some in enumerate(circuit.alike)
+        for subcircuit, first, count in _by_subcircuit(circuit, some)
+    ]
+    found.sort()
+    return tuple(_entry(circuit, first, count) for _, _, first, count in found)
+
+
+def _by_subcircuit(circuit: Circuit, some: AlikeGates) -> list[tuple[int, int, int]]:
+    """Return for each subcircuit its first gate of a form, and how many there are."""
+    holder = circuit.devices.instance_subcircuit[circuit.gate_instance[some.gates]]
+    subcircuits, first, count = np.unique(holder, return_index=True, return_counts=True)
+    return list(zip(subcircuits.tolist(), some.gates[first].tolist(), count.tolist(), strict=True))
+
+
+def _entry(circuit: Circuit, gate: int, count: int) -> Entry:
+    form = circuit.alike[int(circuit.gate_form[gate])].form
+    return Entry(
+        subcircuit=circuit.gate_subcircuit(gate),
+        kind=form.kind,
+        count=count,
+        devices=len(form.drawn),
+        instance=circuit.gate_name(gate),
+        output=circuit.local_name(gate, form.output),
+        function=circuit.gate_function(gate),
+        inputs=tuple(circuit.local_name(gate, local) for local in form.network.inputs),
+    )
+
+
+def _unknown(circuit: Circuit) -> tuple[Unknown, ...]:
+    by_reason: dict[str, list[IntArray]] = {}
+    for some in circuit.not_understood:
+        by_reason.setdefault(some.reason, []).append(some.devices)
+    return tuple(
+        Unknown(
+            reason=reason,
+            groups=sum(len(part) for part in parts),
+            devices=sum(part.size for part in parts),
+            names=device_names(circuit.devices, np.concatenate([part.ravel() for part in parts])),
+        )
+        for reason, parts in by_reason.items()
+    )

@@ -1,0 +1,119 @@
+"""What a block consists of, as text."""
+
+from __future__ import annotations
+
+from itertools import islice
+from typing import TYPE_CHECKING, Final
+
+from evenstage.report.block_text import finished, notice_lines
+from evenstage.report.families import gathered
+from evenstage.report.paper import Paper
+from evenstage.report.table import Column, first_that_fits
+from evenstage.report.words import counted, labelled, listed, section
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from evenstage.circuit.inventory import Entry, Inventory, Unknown
+
+_ENTRIES_SHOWN: Final = 60
+_NAMES_SHOWN: Final = 8
+_SUPPLIES_SHOWN: Final = 6
+_FAMILY_CODE: Final = "not-understood"
+
+
+def inventory_report(
+    inventory: Inventory, *, width: int = 100, unicode: bool = False, notices: bool = True
+) -> str:
+    """Return an inventory as text: the gates by subcircuit and kind, then what is left.
+
+    Parameters
+    ----------
+    inventory : Inventory
+    width : int
+        Character cells per line, 80 to 160.
+    unicode : bool
+        Whether the output can show more than ASCII.
+    notices : bool
+        Whether the notices are printed too.
+
+    Returns
+    -------
+    str
+        Lines without trailing blanks, the last one ended too.
+    """
+    paper = Paper(width, unicode)
+    block = f"block {inventory.top}" if inventory.top else "top level"
+    lines = [*paper.paragraph(f"{inventory.source}, {block}"), ""]
+    lines += paper.paragraph(_answer(inventory))
+    lines += section("Gates", _entry_lines(paper, inventory.entries))
+    lines += section("Not understood, timed as loads only", _unknown_lines(paper, inventory))
+    lines += section("Supplies", _supply_lines(paper, inventory))
+    if notices:
+        # What was not understood stands above already, with more of its transistors.
+        told = {notice for notice in inventory.notices if notice.code == _FAMILY_CODE}
+        told = {notice for notice in told if _is_told(notice.message, inventory.not_understood)}
+        others = [notice for notice in inventory.notices if notice not in told]
+        lines += section("Notices", notice_lines(paper, others))
+    return finished(paper, lines)
+
+
+def _is_told(message: str, unknown: Sequence[Unknown]) -> bool:
+    return any(some.reason in message for some in unknown)
+
+
+def _answer(inventory: Inventory) -> str:
+    """Return the one thing to know first."""
+    kinds = len(dict.fromkeys(entry.subcircuit for entry in inventory.entries))
+    places = f" in {counted(kinds, 'subcircuit')}" if inventory.gates and inventory.top else ""
+    left = sum(some.devices for some in inventory.not_understood)
+    rest = f"{counted(left, 'transistor')} not understood" if left else "nothing left over"
+    return (
+        f"{counted(inventory.devices, 'transistor')} and {counted(inventory.nets, 'net')}: "
+        f"{counted(inventory.gates, 'gate')}{places}; {rest}."
+    )
+
+
+def _entry_lines(paper: Paper, entries: Sequence[Entry]) -> list[str]:
+    """Return a table of gates, one line per subcircuit and drawing."""
+    if not entries:
+        return []
+    most = len(entries) if len(entries) == _ENTRIES_SHOWN + 1 else _ENTRIES_SHOWN
+    rows, before = [], None
+    for entry in islice(entries, most):
+        place = (entry.subcircuit or "top level") if entry.subcircuit != before else ""
+        function = f"{entry.output} = {entry.function}" if entry.function else entry.output
+        rows.append([place, entry.kind, str(entry.count), str(entry.devices), function])
+        before = entry.subcircuit
+    columns = [
+        Column("subcircuit", kind="name"),
+        Column("kind"),
+        Column("number", align="right"),
+        Column("transistors", align="right"),
+        Column("function of the first", kind="name"),
+    ]
+    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
+    lines = table.lines(rows)
+    if len(entries) > most:
+        left = sum(entry.count for entry in entries[most:])
+        lines.append(f"  and {len(entries) - most} lines more, of {counted(left, 'gate')}")
+    return lines
+
+
+def _unknown_lines(paper: Paper, inventory: Inventory) -> list[str]:
+    lines = []
+    for some in inventory.not_understood:
+        many = f"{counted(some.groups, 'group')}, {counted(some.devices, 'transistor')}"
+        lines += paper.paragraph(f"{some.reason} ({many})", indent=2, hanging=4)
+        shown = gathered(some.names, paper.times)
+        more = some.devices - len(some.names)
+        names = listed(shown, _NAMES_SHOWN) + (f" and {more} more" if more else "")
+        lines += paper.paragraph(names, indent=6)
+    return lines
+
+
+def _supply_lines(paper: Paper, inventory: Inventory) -> list[str]:
+    lines = []
+    for label, nets in (("high", inventory.high), ("low", inventory.low)):
+        lines += labelled(paper, label, listed(gathered(nets, paper.times), _SUPPLIES_SHOWN))
+    return lines
