@@ -207,7 +207,7 @@ class TestJson:
         self, netlist: Path, capsys: pytest.CaptureFixture[str], place: str
     ) -> None:
         assert main(["resize", str(netlist), "--output", "out.sp", "--json", place]) == 1
-        assert "choose another name for the JSON" in capsys.readouterr().err
+        assert "choose another name for what is to be written" in capsys.readouterr().err
         assert netlist.read_bytes() == NETLIST.encode()
         assert names(Path()) == {netlist.name}
 
