@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
+from evenstage.netlist.decimals import PLAIN, decimals
 from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.values import Style, plain_value
 
@@ -29,10 +30,8 @@ if TYPE_CHECKING:
 _REMEMBERED: Final = 1 << 17
 #: Values of which more than half of the first so many are distinct are converted together.
 _MANY: Final = 64
-_POWERS: Final = {b"f": b"e-15", b"p": b"e-12", b"n": b"e-9", b"u": b"e-6", b"k": b"e3"}
-_DECIMAL: Final = rb"[+-]?(?:[0-9]++\.?+[0-9]*+|\.[0-9]++)"
-_BARE = re.compile(rb"(?:" + _DECIMAL + rb"(?:e[+-]?[0-9]++)?+\n)++")
-_SCALED = {letter: re.compile(rb"(?:" + _DECIMAL + letter + rb"\n)++") for letter in _POWERS}
+_PLAIN = re.compile(rb"(?:" + PLAIN + rb"\n)++")
+_BARE = re.compile(rb"(?:[+-]?(?:[0-9]++\.?+[0-9]*+|\.[0-9]++)(?:e[+-]?[0-9]++)?+\n)++")
 
 
 class Words(dict[bytes, int]):
@@ -115,20 +114,31 @@ class Values:
     def _add_all(self, texts: Sequence[bytes]) -> range | None:
         """Take values that are spelt alike, all at once; None if they are not."""
         lines = b"\n".join(texts) + b"\n"
-        letter = texts[0][-1:]
-        power = _POWERS.get(letter)
-        pattern = _BARE if power is None else _SCALED[letter]
-        if pattern.fullmatch(lines) is None:
+        if _PLAIN.fullmatch(lines):
+            return self.add_decimals(lines)
+        if _BARE.fullmatch(lines) is None:
             return None
-        if power is not None:
-            lines = lines.replace(letter, power)
-        numbers = array("d", map(float, lines.split()))
-        if math.inf in numbers or -math.inf in numbers:
+        numbers = np.array(list(map(float, lines.split())))
+        if np.isinf(numbers).any():
             return None
+        return self._append(numbers, np.zeros(len(numbers), np.bool_))
+
+    def add_decimals(self, text: bytes) -> range | None:
+        """Take the plain decimals of a text; None if there are too long ones among them.
+
+        Parameters
+        ----------
+        text : bytes
+            As ``decimals`` wants it.
+        """
+        found = decimals(text)
+        return None if found is None else self._append(*found)
+
+    def _append(self, numbers: FloatArray, scaled: NDArray[np.bool_]) -> range:
         first = len(self._numbers)
-        self._numbers += numbers
-        style = Style.BARE if power is None else Style.SUFFIXED
-        self._styles += array("b", [style]) * len(numbers)
+        self._numbers.frombytes(numbers.tobytes())
+        styles = np.where(scaled, np.int8(Style.SUFFIXED), np.int8(Style.BARE))
+        self._styles.frombytes(styles.tobytes())
         return range(first, len(self._numbers))
 
     def finish(self) -> None:

@@ -158,6 +158,6 @@ def test_equal_parameters_are_read_at_once_and_others_apart(kinds: int) -> None:
 
 
 def test_parameters_that_stop_being_alike(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr("evenstage.netlist.reading.stored._MOST_TAILS", 50)
+    monkeypatch.setattr("evenstage.netlist.reading.tails._MOST", 50)
     lines = [f"m{i} a b 0 0 nch w={i if i > 2000 else 1}u l=1u" for i in range(6000)]
     check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))

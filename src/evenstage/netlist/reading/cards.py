@@ -34,6 +34,8 @@ if TYPE_CHECKING:
 
 #: Cards handed over at once; more only means more objects alive.
 _CHUNK = 4096
+#: Cards of a shape whose words are turned into numbers together: fewer would not pay.
+_LOT = 128
 _ODD = -1
 #: Spreads small numbers over all bits.
 _MIXER = np.int64(0x1E3779B97F4A7C15)
@@ -113,10 +115,10 @@ class CardTable:
         starts.clear()
         shapes.clear()
 
-    def store(self) -> None:
-        """Turn the words that wait into numbers."""
+    def store(self, waiting: int = _LOT) -> None:
+        """Turn the words of cards into numbers, where so many cards of a shape wait."""
         for stored in self._stored:
-            if stored.rows:
+            if len(stored.rows) >= waiting:
                 stored.store()
 
     def append_odd(self, statement: Statement) -> None:
@@ -149,7 +151,7 @@ class CardTable:
         names : iterable of str
             Nets that ``word_number`` will be asked for.
         """
-        self.store()
+        self.store(waiting=1)
         self._scopes_with_repeats = self._find_repeats()
         words = self._word_numbers
         kept = Words({name: words[name] for name in map(_folded, names)})

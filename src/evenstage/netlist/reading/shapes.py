@@ -16,6 +16,7 @@ from dataclasses import dataclass, replace
 from functools import cache
 from typing import Final, Literal
 
+from evenstage.netlist.decimals import PLAIN
 from evenstage.netlist.grammar import ENCODING, terminal
 from evenstage.netlist.reading.statement import Mark, Statement
 
@@ -29,6 +30,7 @@ _SIGNS: Final = frozenset({"EQUAL", "SLASH", "PARAMS", "OPEN", "CLOSE", "OFF"})
 #: After these a call's next word is the subcircuit.
 _BEFORE_TARGET: Final = frozenset({"/", r"\)"})
 _WORD = re.compile(rb"[^\x00-\x20,]++")
+_HAS_NUMBER = re.compile(r"[0-9.]")
 _QUANTIFIER = re.compile(r"(?<=[\])])(?:[*+]|\?)(?![+?])")
 
 
@@ -64,6 +66,9 @@ class Shape:
         The same with one group for all parameters; empty where there are fewer than two.
     tail : bytes
         Matches what that group holds, with a group for each value.
+    plain_tails : bytes
+        Matches some of those, each with a line feed, whose values are all plain decimals and their
+        only digits; empty where there can be none.
     """
 
     letter: str
@@ -73,6 +78,7 @@ class Shape:
     row: re.Pattern[bytes]
     joint: bytes = b""
     tail: bytes = b""
+    plain_tails: bytes = b""
 
     @property
     def groups(self) -> re.Pattern[bytes]:
@@ -136,7 +142,7 @@ def learn(statement: Statement, text: bytes) -> Shape | None:
         keys,
         _expression(pieces),
         re.compile(_expression(_without_keys(pieces))),
-        *_joint_and_tail(_without_keys(pieces), keys),
+        *_joint_and_tails(_without_keys(pieces), keys),
     )
     return shape if _agrees(shape, statement, text) else None
 
@@ -152,14 +158,37 @@ def _without_keys(pieces: list[_Piece]) -> list[_Piece]:
     return [replace(piece, role=None) if piece.role == "key" else piece for piece in pieces]
 
 
-def _joint_and_tail(pieces: list[_Piece], keys: tuple[str, ...]) -> tuple[bytes, bytes]:
+def _joint_and_tails(pieces: list[_Piece], keys: tuple[str, ...]) -> tuple[bytes, bytes, bytes]:
     """Return the expressions of a card with its parameters in one, and of these."""
     if len(keys) < 2:
-        return b"", b""
+        return b"", b"", b""
     first = next(i for i, piece in enumerate(pieces) if piece.name)
     plain = [replace(piece, role=None) for piece in pieces[first:]]
-    whole = _Piece(_joined(plain), "value")
-    return _expression([*pieces[:first], whole]), _joined(pieces[first:]).encode(ENCODING)
+    joint = _expression([*pieces[:first], _Piece(_joined(plain), "value")])
+    return joint, _joined(pieces[first:]).encode(ENCODING), _plain_tails(pieces[first:])
+
+
+def _plain_tails(pieces: list[_Piece]) -> bytes:
+    plain = [
+        replace(p, pattern=_plain_values().get(p.pattern, ""), role=None) if p.role else p
+        for p in pieces
+    ]
+    if not all(p.pattern for p in plain) or any(_HAS_NUMBER.search(p.name) for p in pieces):
+        return b""
+    return f"(?:{_joined(plain)}\n)++".encode(ENCODING)
+
+
+@cache
+def _plain_values() -> dict[str, str]:
+    """Return the expression of a plain decimal for each terminal that may hold one."""
+    number = PLAIN.decode(ENCODING)
+    written = {
+        "VALUE": rf"{number}(?=[\x00-\x20,])",
+        "QUOTED": f"'{number}'",
+        "STRING": f'"{number}"',
+        "BRACED": rf"\{{{number}\}}",
+    }
+    return {_possessive(name): expression for name, expression in written.items()}
 
 
 def _joined(pieces: list[_Piece]) -> str:

@@ -10,9 +10,10 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 
 from evenstage.netlist.netlist import CardColumns
+from evenstage.netlist.reading.tails import EqualTails, PlainTails
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Mapping, Sequence
+    from collections.abc import Iterator, Sequence
 
     from evenstage.netlist.devices import IntArray
     from evenstage.netlist.intake import Values, Words
@@ -23,33 +24,9 @@ _ROLES: Final = ("node", "nodes", "target", "argument", "value")
 _SPACES: Final = bytes(32 if (b < 33 and b != 10) or b == 44 else b for b in range(256))
 #: So many cards are looked at before it is decided how those to come are read.
 _MANY: Final = 256
-#: Parameters are read all at once where each occurs at least so often.
+#: Parameters are taken for alike where each occurs at least so often.
 _ALIKE: Final = 4
-_MOST_TAILS: Final = 1 << 14
 _NUMERIC = re.compile(rb"[+-]?\.?[0-9]|['\"{(]")
-
-
-class _Tails(dict[bytes, int]):
-    """The parameters of cards as they stand there, each text taken apart once.
-
-    Most cards of a netlist are drawn like many others.
-    """
-
-    def __init__(self, shape: Shape, places: Mapping[str, int], values: Values) -> None:
-        super().__init__()
-        self.columns = {name: array("i") for name in places}
-        self._groups = [place - min(places.values()) + 1 for place in places.values()]
-        self._match = re.compile(shape.tail).fullmatch
-        self._take = values.kept if shape.letter == "x" else values.numbers_of
-
-    def __missing__(self, text: bytes) -> int:
-        match = self._match(text)
-        assert match is not None
-        numbers = self._take([match[group] for group in self._groups])
-        for column, number in zip(self.columns.values(), numbers, strict=True):
-            column.append(number)
-        self[text] = len(self)
-        return len(self) - 1
 
 
 class ShapeColumns:
@@ -71,7 +48,7 @@ class ShapeColumns:
         self.match = shape.row.match
         self.rows: list[tuple[bytes, ...]] = []
         self._shape = shape
-        self._tails: _Tails | None = None
+        self._tails: EqualTails | PlainTails | None = None
         self._is_settled = not shape.tail
         self.hashes = array("q")
         self._letter = shape.letter
@@ -115,18 +92,24 @@ class ShapeColumns:
             self._settle([columns[place] for place in self._value_places.values()])
 
     def _settle(self, values: list[tuple[bytes, ...]]) -> None:
-        """Decide how the cards to come are read: equal parameters all at once, others apart."""
+        """Decide how the cards to come are read: their parameters all at once, or each apart."""
         self._is_settled = True
+        first = min(self._value_places.values()) - 1
+        groups = [place - first for place in self._value_places.values()]
         if _ALIKE * len(set(zip(*values, strict=True))) <= len(values[0]):
-            self._tails = _Tails(self._shape, self._value_places, self._values)
+            self._tails = EqualTails(self._shape, groups, self._values)
+        elif self._shape.plain_tails and self._letter != "x":
+            self._tails = PlainTails(self._shape, groups, self._values)
+        if self._tails is not None:
             self.match = re.compile(self._shape.joint).match
 
-    def _store_tails(self, tails: _Tails, texts: Sequence[bytes]) -> None:
-        ids = np.fromiter(map(tails.__getitem__, texts), np.intp, len(texts))
-        for name, column in tails.columns.items():
-            self._columns[name].frombytes(_view(column)[ids].tobytes())
-        if len(tails) > _MOST_TAILS:
+    def _store_tails(self, tails: EqualTails | PlainTails, texts: Sequence[bytes]) -> None:
+        for name, numbers in zip(self._value_places, tails.numbers(texts), strict=True):
+            self._columns[name].frombytes(numbers.tobytes())
+        if not tails.is_useful:
             self._tails, self.match = None, self._shape.row.match
+            if isinstance(tails, EqualTails):
+                self._is_settled = False
 
     def _store_values(self, name: str, texts: Sequence[bytes]) -> None:
         take = self._values.kept if self._letter == "x" else self._values.numbers_of
