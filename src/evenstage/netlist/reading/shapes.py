@@ -92,7 +92,7 @@ def _compiled(expression: bytes) -> re.Pattern[bytes]:
 
 
 def plain_bracket(text: bytes, position: int) -> Statement | None:
-    """Return a ``.subckt`` or ``.ends`` card that is nothing but words, or None for other cards.
+    """Return a ``.subckt`` or ``.ends`` card of words and plain parameters, or None for others.
 
     A large hierarchy has thousands of them, and Lark takes as long for each as for fifty cards of a
     known shape.
@@ -107,19 +107,29 @@ def plain_bracket(text: bytes, position: int) -> Statement | None:
     match = _brackets().match(text, position)
     if match is None:
         return None
-    kind = match.lastgroup
-    assert kind is not None
+    kind = "ends" if match["definition"] is None else "definition"
     words = [word.span() for word in _WORD.finditer(text, *match.span(kind))]
     terminals = ["SUBCKT" if kind == "definition" else "ENDS", *["WORD"] * (len(words) - 1)]
-    return Statement(kind, tuple(Mark(t, *span) for t, span in zip(terminals, words, strict=True)))
+    marks = [Mark(t, *span) for t, span in zip(terminals, words, strict=True)]
+    for pair in _pair().finditer(text, *match.span("pairs")):
+        marks += (Mark(t, *pair.span(t)) for t in ("WORD", "EQUAL", "VALUE"))
+    return Statement(kind, tuple(marks))
 
 
 @cache
 def _brackets() -> re.Pattern[bytes]:
-    word = f"{_BETWEEN_WORDS}{_possessive('WORD')}"
-    definition = f"(?P<definition>{terminal('SUBCKT')}(?:{word})++)"
+    word = f"{_BETWEEN_WORDS}{_possessive('WORD')}(?!{_BETWEEN}=)"
+    pair = f"{_BETWEEN_WORDS}{_possessive('WORD')}{_BETWEEN}={_BETWEEN}{_possessive('VALUE')}"
+    definition = f"(?P<definition>{terminal('SUBCKT')}(?:{word})++)(?P<pairs>(?:{pair})*+)"
     ends = f"(?P<ends>{terminal('ENDS')}(?:{word})?+)"
     return re.compile(f"(?:{definition}|{ends}){_BETWEEN}{_END}".encode(ENCODING))
+
+
+@cache
+def _pair() -> re.Pattern[bytes]:
+    word, value = _possessive("WORD"), _possessive("VALUE")
+    pair = f"(?P<WORD>{word}){_BETWEEN}(?P<EQUAL>=){_BETWEEN}(?P<VALUE>{value})"
+    return re.compile(pair.encode(ENCODING))
 
 
 def learn(statement: Statement, text: bytes) -> Shape | None:
