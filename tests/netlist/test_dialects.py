@@ -583,13 +583,32 @@ class TestDevices:
 
     @pytest.mark.parametrize(
         "card",
-        ["m1 d g s nch", "m1 g nch", "m1 (d g s) nch", "m1 d g s b c nch", "m1 a b c d e f nch"],
+        ["m1 d g s nch", "m1 g nch", "m1 (d g s) nch", "m1 a b c d e f g h nch"],
     )
     def test_a_net_missing_or_too_many(self, card: str) -> None:
-        """A card with a net missing, or with further pins, is refused with its line."""
+        """A card with a net missing, or with more than any kit has, is refused with its line."""
         text = refusal(f"{card} {TAIL}\n")
         assert text.startswith("top.sp:2:")
         assert "'m1' needs four nets (drain, gate, source, bulk) and a model, got" in text
+
+    @pytest.mark.parametrize("pins", ["d g s e b", "d g s e p b", "d g s e p b t", "(d g s e b)"])
+    @pytest.mark.parametrize("tail", ["nch w=1u l=1u", "nch off w=1u l=1u", "nch\n+ w = 1u l=1u"])
+    def test_transistors_with_further_pins(self, pins: str, tail: str) -> None:
+        """Of more than four nets the first four are the usual ones; the others load nothing."""
+        devices = laid("".join(f"m{k} {pins} {tail}\n" for k in range(5)))
+        names = devices.net_names
+        found = (devices.drain, devices.gate, devices.source, devices.bulk)
+        assert [names[int(pin[4])] for pin in found] == ["d", "g", "s", "e"]
+        assert microns(devices) == [1.0] * 5
+        (said,) = [n for n in devices.notices if n.code == "further-pins"]
+        assert said.message.startswith("5 transistors with more than four nets: the first four")
+        assert (said.place, len(said.names)) == ("top.sp:2:1", 5)
+
+    def test_wrapped_transistors_with_further_pins(self) -> None:
+        """Calls of transistors that nobody defines may have further pins too."""
+        devices = laid("x1 d g s e b nmos_soi w=1u l=1u\n")
+        assert devices.net_names[int(devices.bulk[0])] == "e"
+        assert "further-pins" in codes(devices)
 
     def test_a_net_missing_on_a_call(self) -> None:
         """A call must give as many nets as there are ports."""

@@ -88,7 +88,15 @@ def test_a_title_may_hold_anything() -> None:
     assert [netlist.card(i).name for i in range(len(netlist))] == ["r1"]
 
 
-REFUSED = ["m1 a b c d", "m1 a b c d e f", "r1 a", "x1", "m1 a b c d e w=", "r1 a b =", ".include"]
+REFUSED = [
+    "m1 a b c d",
+    "m1 a b c d e f g h i",
+    "r1 a",
+    "x1",
+    "m1 a b c d e w=",
+    "r1 a b =",
+    ".include",
+]
 
 
 @pytest.mark.parametrize("line", REFUSED)

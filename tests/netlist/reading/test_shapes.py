@@ -46,6 +46,8 @@ m4 (d g s b) nch w=1u
 m5 d g s b nch off
 m6 d g s b nch w=1u off l=2u
 m7 d g s b nch off=1
+m8 d g s e b nch w=1u
+m9 (d g s e b t) nch w=1u off
 x6 (a b) inv w=1u
 x7 (a b) / inv
 r4 (a b) 1k

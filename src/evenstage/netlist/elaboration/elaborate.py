@@ -285,6 +285,7 @@ class _Block:
             if outline is not self._templates[0].outline:
                 by_letter.setdefault("v", []).extend(v for v, *_ in outline.sources)
         notices = self._library.notices(self._definitions)
+        notices += self._pin_notices()
         for letter, cards in sorted(by_letter.items()):
             if cards:
                 names = self._card_names(cards)
@@ -294,6 +295,19 @@ class _Block:
                 place = self._netlist.card(cards[0]).span.place
                 notices.append(Notice("not-understood", message, place, names))
         return notices
+
+    def _pin_notices(self) -> list[Notice]:
+        """Return a notice if transistors have more than four nets."""
+        outlines = [self._library.outline(name) for name in self._definitions]
+        cards = np.concatenate([outline.further_pins for outline in outlines]).tolist()
+        if not cards:
+            return []
+        names = self._card_names(cards)
+        message = (
+            f"{counted(len(cards), 'transistor')} with more than four nets: the first four are "
+            f"taken as drain, gate, source and bulk, the others load nothing ({listed(names)})"
+        )
+        return [Notice("further-pins", message, self._netlist.card(cards[0]).span.place, names)]
 
 
 def _bound(

@@ -5,6 +5,7 @@ Made once per subcircuit however often it is called.
 
 from __future__ import annotations
 
+import re
 from collections import Counter
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Literal, NamedTuple, Protocol
@@ -12,9 +13,9 @@ from typing import TYPE_CHECKING, Literal, NamedTuple, Protocol
 import numpy as np
 
 from evenstage.errors import ElaborationError
-from evenstage.netlist.elaboration.columns import Column, absent, card_column, joined
 from evenstage.netlist.elaboration.mistakes import MOST
 from evenstage.netlist.elaboration.numbering import NetNumbering
+from evenstage.netlist.elaboration.rows import Rows, RowsBuilder, distinct, folded_name
 from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.values import parse_value
 
@@ -27,6 +28,9 @@ if TYPE_CHECKING:
     from evenstage.netlist.elaboration.mistakes import Mistakes
     from evenstage.netlist.netlist import Card, CardColumns, Netlist, Subcircuit
 
+#: Drain, gate, source, bulk.
+_PINS = 4
+_NUMBER = re.compile(rb"[+-]?\.?[0-9]")
 #: Letters of the cards whose nets count.
 _WIRED = frozenset("mxcrv")
 
@@ -41,34 +45,6 @@ class Call(NamedTuple):
     target: str
     nets: tuple[int, ...]
     parameters: Mapping[str, str]
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Rows:
-    """Cards of one kind, shape ``(n,)`` per column.
-
-    Parameters
-    ----------
-    card : IntArray
-        Card numbers.
-    nets : IntArray, shape (pins, n)
-        Local nets.
-    target : IntArray
-        Index into ``target_names``; empty for R and C.
-    target_names : tuple of str
-        Lower-case model names.
-    columns : Mapping of str to Column
-        Parameters by name; the empty name is the unnamed value.
-    """
-
-    card: IntArray
-    nets: IntArray
-    target: IntArray
-    target_names: tuple[str, ...]
-    columns: Mapping[str, Column]
-
-    def __len__(self) -> int:
-        return len(self.card)
 
 
 class LocalNets(NamedTuple):
@@ -111,6 +87,8 @@ class Outline:
         All parameters its expressions use.
     repeated : tuple of str
         Lower-case names that several cards have.
+    further_pins : IntArray
+        Transistor cards with more than four nets.
     """
 
     subcircuit: Subcircuit
@@ -123,6 +101,7 @@ class Outline:
     others: Mapping[str, tuple[int, ...]]
     names_used: frozenset[str]
     repeated: tuple[str, ...]
+    further_pins: IntArray
 
     @property
     def ports(self) -> int:
@@ -139,67 +118,6 @@ class Classifier(Protocol):
     def call_kind(self, target: str, nets: int, parameters: Collection[str]) -> CallKind:
         """Return what cards are that call a name with so many nets and such parameters."""
         ...
-
-
-class _RowsBuilder:
-    """Collects cards of one kind."""
-
-    def __init__(
-        self, netlist: Netlist, pins: int, names: Sequence[str], mistakes: Mistakes
-    ) -> None:
-        self._netlist = netlist
-        self._mistakes = mistakes
-        self._columns: dict[str, list[Column]] = {name: [] for name in names}
-        self._count = 0
-        self._cards = [np.zeros(0, np.int32)]
-        self._nets = [np.zeros((pins, 0), np.int32)]
-        self._targets = [np.zeros(0, np.int32)]
-
-    def add(self, cards: CardColumns, nets: IntArray) -> None:
-        """Take some cards and their nets, shape ``(pins, n)``."""
-        for name, parts in self._columns.items():
-            column = absent(len(cards.numbers))
-            with self._mistakes.collecting():
-                column = card_column(self._netlist, cards, name, self._count)
-            parts.append(column)
-        self._count += len(cards.numbers)
-        self._cards.append(cards.numbers)
-        self._nets.append(nets)
-        self._targets.append(cards.targets)
-
-    def rows(self) -> Rows:
-        """Return what was collected, in the order of the cards, without empty columns."""
-        cards = np.concatenate(self._cards)
-        order = _order(cards)
-        columns = {}
-        for name in list(self._columns):
-            parts = self._columns.pop(name)  # so that nothing stays twice
-            if any(part.styles.any() for part in parts):
-                columns[name] = joined(parts).in_order(order)
-        words, targets = _distinct(np.concatenate(self._targets))
-        return Rows(
-            card=cards[order],
-            nets=np.concatenate(self._nets, axis=1)[:, order],
-            target=targets[order] if len(targets) else targets,
-            target_names=tuple(map(_name, self._netlist.cards.words.some(words))),
-            columns=columns,
-        )
-
-
-def _order(cards: IntArray) -> NDArray[np.intp] | slice:
-    """Return what puts cards in the order of the text."""
-    if len(cards) == 0 or np.all(cards[1:] > cards[:-1]):
-        return slice(None)
-    return np.argsort(cards, kind="stable")
-
-
-def _distinct(words: IntArray) -> tuple[IntArray, IntArray]:
-    """Return the distinct words in the order in which they come, and the index of each."""
-    distinct, firsts, inverse = np.unique(words, return_index=True, return_inverse=True)
-    order = np.argsort(firsts)
-    rank = np.empty(len(order), np.int32)
-    rank[order] = np.arange(len(order))
-    return distinct[order], rank[inverse]
 
 
 class _Passed:
@@ -271,18 +189,19 @@ class _Body:
         self._classifier = classifier
         self._subcircuit = subcircuit
         self._mistakes = mistakes
-        self._transistors = _RowsBuilder(netlist, 4, geometry, mistakes)
-        self._capacitors = _RowsBuilder(netlist, 2, ("", "c", "m"), mistakes)
-        self._resistors = _RowsBuilder(netlist, 2, (), mistakes)
+        self._transistors = RowsBuilder(netlist, 4, geometry, mistakes)
+        self._capacitors = RowsBuilder(netlist, 2, ("", "c", "m"), mistakes)
+        self._resistors = RowsBuilder(netlist, 2, (), mistakes)
         self._calls: list[Call] = []
         self._sources: list[tuple[int, int, int]] = []
         self._others: dict[str, list[int]] = {}
+        self._further_pins = [np.zeros(0, np.int32)]
 
     def add(self, cards: CardColumns, nets: IntArray) -> None:
         """Take some cards and their nets."""
         match cards.letter:
             case "m":
-                self._transistors.add(cards, nets)
+                self._take_transistors(cards, nets)
             case "x":
                 self._take_calls(cards, nets)
             case "c":
@@ -294,12 +213,22 @@ class _Body:
             case _:
                 self._others.setdefault(cards.letter, []).extend(cards.numbers.tolist())
 
+    def _take_transistors(self, cards: CardColumns, nets: IntArray) -> None:
+        """Take M cards; of more than four nets the first four are drain, gate, source, bulk."""
+        if len(nets) > _PINS:
+            self._further_pins.append(cards.numbers)
+            for word, first in zip(*np.unique(cards.targets, return_index=True), strict=True):
+                if _NUMBER.match(self._netlist.cards.words[int(word)]):
+                    card = self._netlist.card(int(cards.numbers[first]))
+                    self._mistakes.add(_loose_size(card))
+        self._transistors.add(cards, nets[:_PINS])
+
     def _take_sources(self, cards: CardColumns, nets: IntArray) -> None:
         plus, minus = nets.tolist()
         self._sources += zip(cards.numbers.tolist(), plus, minus, strict=True)
 
     def _take_calls(self, cards: CardColumns, nets: IntArray) -> None:
-        words, targets = _distinct(cards.targets)
+        words, targets = distinct(cards.targets)
         names = self._meant(self._netlist.cards.words.some(words))
         if any(name in self._netlist.callees.spellings for name in names):
             names, targets = self._by_spelling(cards)
@@ -318,8 +247,8 @@ class _Body:
         """Return the keys of what some words mean here."""
         scope, callees = self._subcircuit.name.lower(), self._netlist.callees
         if not callees.local:
-            return list(map(_name, words))
-        return [callees.local.get((scope, _name(word)), _name(word)) for word in words]
+            return list(map(folded_name, words))
+        return [callees.local.get((scope, folded_name(word)), folded_name(word)) for word in words]
 
     def _by_spelling(self, cards: CardColumns) -> tuple[list[str], IntArray]:
         """Return the keys of what some cards call, and which each card calls, case and all."""
@@ -337,11 +266,11 @@ class _Body:
         return map(Call, cards.numbers.tolist(), names, wires, passed)
 
     def _take_wrapped(self, cards: CardColumns, nets: IntArray) -> None:
-        if len(nets) != 4:
+        if len(nets) < _PINS:
             for number in cards.numbers[:MOST].tolist():
                 self._mistakes.add(_wrong_pins(self._netlist.card(number)))
             return
-        self._transistors.add(cards, nets)
+        self._take_transistors(cards, nets)
 
     def outline(self, nets: LocalNets) -> Outline:
         """Return the finished outline."""
@@ -358,6 +287,7 @@ class _Body:
             others={letter: tuple(sorted(cards)) for letter, cards in self._others.items()},
             names_used=frozenset(self._names_used(rows, calls)),
             repeated=self._repeated(),
+            further_pins=np.sort(np.concatenate(self._further_pins)),
         )
 
     def _names_used(self, rows: Iterable[Rows], calls: Iterable[Call]) -> set[str]:
@@ -387,6 +317,13 @@ def _wrong_pins(card: Card) -> ElaborationError:
     return ElaborationError(message, code="pin-count", span=card.span)
 
 
+def _loose_size(card: Card) -> ElaborationError:
+    message = (
+        f"'{card.name}' would have the model '{card.target}'; sizes need names, as in w=1u l=60n"
+    )
+    return ElaborationError(message, code="loose-word", span=card.target_span)
+
+
 def _selected(cards: CardColumns, rows: NDArray[np.intp]) -> CardColumns:
     """Return some of the cards."""
     return replace(
@@ -396,15 +333,6 @@ def _selected(cards: CardColumns, rows: NDArray[np.intp]) -> CardColumns:
         targets=cards.targets[rows],
         values={name: column[rows] for name, column in cards.values.items()},
     )
-
-
-def _text(word: bytes) -> str:
-    return word.decode("utf-8", "surrogateescape")
-
-
-def _name(word: bytes) -> str:
-    """Return the name of a definition or model as it is looked up."""
-    return _text(word).lower()
 
 
 def _names_in(text: str) -> frozenset[str]:

@@ -21,7 +21,8 @@ if TYPE_CHECKING:
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.netlist.elaboration.flatten import Indices
     from evenstage.netlist.elaboration.library import Library
-    from evenstage.netlist.elaboration.outline import Call, Outline, Rows
+    from evenstage.netlist.elaboration.outline import Call, Outline
+    from evenstage.netlist.elaboration.rows import Rows
     from evenstage.netlist.netlist import Netlist
     from evenstage.netlist.parameters import Scope
     from evenstage.source import Span

@@ -421,7 +421,7 @@ def _fields_of_statement(statement: Statement, source: SourceText) -> list[Field
     marks = statement.marks
     letter = chr(source.data[marks[0].start]).lower()
     fields: list[Field] = [("name", marks[0].start, marks[0].end)]
-    wanted = _node_count(statement.rule, letter)
+    wanted = _node_count(statement, letter)
     slashed = any(mark.terminal == "SLASH" for mark in marks)
     nodes, position = 0, 1
     while position < len(marks):
@@ -440,10 +440,12 @@ def _fields_of_statement(statement: Statement, source: SourceText) -> list[Field
     return fields if slashed else _last_node_is_target(letter, fields)
 
 
-def _node_count(rule: str, letter: str) -> int:
-    if rule == "call":
+def _node_count(statement: Statement, letter: str) -> int:
+    if statement.rule == "call":
         return 1 << 30
-    return {"transistor": 4, "passive": 2, "source": 2}.get(rule, _NODES.get(letter, 0))
+    if statement.rule == "transistor":
+        return statement.pins
+    return {"passive": 2, "source": 2}.get(statement.rule, _NODES.get(letter, 0))
 
 
 def _loose_role(letter: str, nodes: int, wanted: int, before: str) -> Role:

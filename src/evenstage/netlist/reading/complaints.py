@@ -22,15 +22,15 @@ if TYPE_CHECKING:
 
 _WORD: Final = re.compile(rb"[^\x00-\x20=,()'\"{}]+")
 _JOINT: Final = re.compile(rb"(?:[\r\n][^\S\r\n]*(?:(?:[*$;]|//)[^\r\n]*)?)*[\r\n][^\S\r\n]*\+")
-_NUMBER: Final = re.compile(rb"[0-9.]+[a-z]*(?:[\x00-\x20]|\Z)", re.IGNORECASE)
 _CLOSING: Final = {"'": "'", '"': '"', "{": "}"}
 
-_TWO_NETS: Final = (2, "two nets and a value")
+_MANY: Final = 1 << 30
+_TWO_NETS: Final = (2, _MANY, "two nets and a value")
 #: What must stand on a card between its name and its parameters: how many words, and which.
 _NEEDED: Final = {
-    "m": (5, "four nets (drain, gate, source, bulk) and a model"),
+    "m": (5, 8, "four nets (drain, gate, source, bulk) and a model"),
     **dict.fromkeys("rclvi", _TWO_NETS),
-    "x": (1, "its nets and the subcircuit it calls"),
+    "x": (1, _MANY, "its nets and the subcircuit it calls"),
 }
 _DOT_CARDS: Final = {
     ".subckt": ("missing-name", "a name"),
@@ -169,17 +169,17 @@ def _wrong_word_count(refusal: _Refusal) -> NetlistError | None:
     """Too few words before the parameters, or too many on an M card."""
     if refusal.letter not in _NEEDED or refusal.sign in {*"('\"{}"} - {""}:
         return None
-    needed, usage = _NEEDED[refusal.letter]
+    needed, most, usage = _NEEDED[refusal.letter]
     (start, end), *words = refusal.words
-    if len(words) == needed or (len(words) > needed and refusal.letter != "m"):
+    if needed <= len(words) <= most:
         return None
     message = f"'{refusal.text(start, end)}' needs {usage}, got {counted(len(words), 'word')}"
     if len(words) < needed:
         return refusal.error("missing-node", message, start, words[-1][1] if words else end)
-    first, last = words[needed][0], words[-1][1]
-    named = _NUMBER.match(refusal.source.data, first)
-    hint = "sizes need names, as in w=1u l=60n" if named else "further pins are not understood"
-    return refusal.error("loose-word", f"{message}; {hint}", first, last)
+    first, last = words[most][0], words[-1][1]
+    return refusal.error(
+        "loose-word", f"{message}; at most three pins more may follow", first, last
+    )
 
 
 def _missing_value(refusal: _Refusal) -> NetlistError | None:

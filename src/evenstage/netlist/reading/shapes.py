@@ -229,7 +229,7 @@ def _pieces(statement: Statement, text: bytes) -> list[_Piece]:
         elif mark.terminal in _SIGNS:
             pieces.append(_Piece(terminal(mark.terminal), None))
         else:
-            role = _role(statement.rule, pieces)
+            role = _role(statement, pieces)
             pieces.append(_Piece(_possessive(mark.terminal), role))
         position += 1
     return pieces
@@ -247,14 +247,14 @@ def _begins_run(rule: str, mark: Mark, before: _Piece) -> bool:
     return mark.terminal == "WORD" and rule == "call" and before.pattern not in _BEFORE_TARGET
 
 
-def _role(rule: str, before: list[_Piece]) -> Role:
+def _role(statement: Statement, before: list[_Piece]) -> Role:
     if before[-1].pattern == "=":
         return "value"
-    if rule == "call":
+    if statement.rule == "call":
         return "target"
     nodes = sum(piece.role == "node" for piece in before)
-    if rule == "transistor":
-        return "node" if nodes < 4 else "target"
+    if statement.rule == "transistor":
+        return "node" if nodes < statement.pins else "target"
     return "node" if nodes < 2 else "argument"
 
 

@@ -31,6 +31,18 @@ class Statement(NamedTuple):
     rule: str
     marks: tuple[Mark, ...]
 
+    @property
+    def pins(self) -> int:
+        """How many nets a transistor card gives: its words before the model."""
+        words = 0
+        for mark in self.marks:
+            if mark.terminal == "OFF":
+                break
+            if mark.terminal == "EQUAL":
+                return words - 2  # the last was a parameter's name
+            words += mark.terminal == "WORD"
+        return words - 1
+
     def moved(self, by: int) -> Statement:
         """Return the card as if it stood elsewhere."""
         return Statement(self.rule, tuple(Mark(t, a + by, b + by) for t, a, b in self.marks))
