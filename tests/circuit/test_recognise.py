@@ -51,7 +51,7 @@ class TestGates:
         assert functions(circuit) == {"y": "!(a & b)"}
         whole = circuit_of(block(nand("n", ["a", "b"], "y", 4, 2), "a b y vdd vss"))
         assert circuit.pins.cap.today.sum() == pytest.approx(whole.pins.cap.today.sum())
-        slow, plain = (circuit.arcs.resistance.today.max() for circuit in (circuit, whole))
+        slow, plain = (circuit.arcs.output_resistance.max() for circuit in (circuit, whole))
         assert slow == pytest.approx(plain)
 
     def test_an_and_or_invert_from_real_inverters_is_an_exclusive_or(self) -> None:

@@ -42,7 +42,7 @@ def efforts(cards: str, gamma: float = 2.0) -> dict[tuple[str, str], tuple[float
     found: dict[tuple[str, str], tuple[float, float]] = {}
     for arc in range(len(arcs.gate)):
         cap = float(pins.cap.today[pins.net == arcs.input[arc]].sum())
-        g = float(arcs.resistance.today[arc]) * cap / unit.tau
+        g = float(arcs.output_resistance[arc]) * cap / unit.tau
         p = float(arcs.own_today[arc]) / unit.tau
         key = (names[arcs.input[arc]], "rise" if arcs.rising[arc] else "fall")
         found[key] = max(found.get(key, (0.0, 0.0)), (g, p))

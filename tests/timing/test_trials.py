@@ -48,8 +48,7 @@ class TestTried:
             mine = np.append(trial, -1)[circuit.gate_of_device] == number
             alone = circuit.resized(np.where(mine, factor, 1.0))
             swept = sweep(alone, timing.graph, timing.unit)
-            elmore = alone.arcs.resistance.today * alone.net_cap[alone.arcs.output]
-            use = ((elmore + alone.arcs.own_today) / limit).max()
+            use = (alone.arcs.elmore(alone.net_cap) / limit).max()
             assert found.worst[number] == pytest.approx(swept.worst, rel=1e-12)
             assert found.lateness[number] == pytest.approx(swept.lateness.max(), rel=1e-12)
             charged = swept.charged_arrival[timing.graph.end] - swept.arrival[timing.graph.end]

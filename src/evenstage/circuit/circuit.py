@@ -12,9 +12,10 @@ import numpy as np
 from evenstage.circuit.electrical import Electrical, electrical
 from evenstage.circuit.function import inverted_text
 from evenstage.circuit.names import Names
-from evenstage.circuit.tables import AlikeGates, Arcs, Pins, arcs_of, pins_of
+from evenstage.circuit.tables import AlikeGates, Pins, arcs_of, pins_of
 
 if TYPE_CHECKING:
+    from evenstage.circuit.arcs import Arcs
     from evenstage.circuit.network import BoolArray
     from evenstage.circuit.supplies import Supplies
     from evenstage.errors import Notice

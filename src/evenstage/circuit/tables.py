@@ -1,4 +1,4 @@
-"""Gates, their input pins and their arcs in columns: what the numeric rooms work on."""
+"""Gates and their input pins in columns, and the arcs of plain gates."""
 
 from __future__ import annotations
 
@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, TypeVar
 
 import numpy as np
 
+from evenstage.circuit.arcs import NO_OWNER, Arcs, Bundle, joined
 from evenstage.circuit.electrical import Scaled
 
 if TYPE_CHECKING:
@@ -16,7 +17,6 @@ if TYPE_CHECKING:
 
     from evenstage.circuit.electrical import Electrical
     from evenstage.circuit.gate import ArcForm, GateForm
-    from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray, IntArray
 
 _Kind = TypeVar("_Kind", bound=np.generic)
@@ -54,47 +54,6 @@ class Pins:
     cap: Scaled
 
 
-@dataclass(frozen=True)
-class Arcs:
-    """Arcs from one input edge to one output edge; shape ``(arcs,)`` each.
-
-    With ``x`` the size of the gate relative to today and ``C`` the capacitance outside the gate,
-    the Elmore delay is ``(res.scaling/x + res.fixed) C + own + own_shrinking/x + own_growing x``
-    (s).
-
-    Parameters
-    ----------
-    gate, input, output : IntArray
-        Gate id; net ids.
-    rising : BoolArray
-        Whether the output rises (and the input falls).
-    resistance : Scaled
-        Of the conducting path, ohm, with the stack factor.
-    own, own_shrinking, own_growing : FloatArray
-        Delay of the gate's own diffusion and inner nodes, s.
-    slope, slope_power, shape, shape_carry : FloatArray
-        Transition constants of the switching transistor.
-    """
-
-    gate: IntArray
-    input: IntArray
-    output: IntArray
-    rising: BoolArray
-    resistance: Scaled
-    own: FloatArray
-    own_shrinking: FloatArray
-    own_growing: FloatArray
-    slope: FloatArray
-    slope_power: FloatArray
-    shape: FloatArray
-    shape_carry: FloatArray
-
-    @property
-    def own_today(self) -> FloatArray:
-        """Delay of the gate's own capacitance at today's size, s."""
-        return self.own + self.own_shrinking + self.own_growing
-
-
 def pins_of(alike: tuple[AlikeGates, ...], values: Electrical) -> Pins:
     """Collect the pins of all gates, ordered by gate.
 
@@ -125,22 +84,7 @@ def arcs_of(alike: tuple[AlikeGates, ...], values: Electrical, node_cap: FloatAr
     node_cap : FloatArray, F, shape (nets,)
         Capacitor cards on each net; on inner nodes they belong to the gate.
     """
-    parts = [part for some in alike for part in _arcs_of_form(some, values, node_cap)]
-    order = np.argsort(np.concatenate([part.gate for part in parts]), kind="stable")
-    return Arcs(
-        gate=_joined([part.gate for part in parts], order),
-        input=_joined([part.input for part in parts], order),
-        output=_joined([part.output for part in parts], order),
-        rising=_joined([part.rising for part in parts], order),
-        resistance=_joined_scaled([part.resistance for part in parts], order),
-        own=_joined([part.own for part in parts], order),
-        own_shrinking=_joined([part.own_shrinking for part in parts], order),
-        own_growing=_joined([part.own_growing for part in parts], order),
-        slope=_joined([part.slope for part in parts], order),
-        slope_power=_joined([part.slope_power for part in parts], order),
-        shape=_joined([part.shape for part in parts], order),
-        shape_carry=_joined([part.shape_carry for part in parts], order),
-    )
+    return joined([bundle for some in alike for bundle in _arcs_of_form(some, values, node_cap)])
 
 
 def _joined(columns: Sequence[NDArray[_Kind]], order: NDArray[np.intp]) -> NDArray[_Kind]:
@@ -175,8 +119,8 @@ def _pins_of_form(some: AlikeGates, values: Electrical) -> list[Pins]:
     ]
 
 
-def _arcs_of_form(some: AlikeGates, values: Electrical, node_cap: FloatArray) -> list[Arcs]:
-    """Return one table per arc of a form, for all its gates."""
+def _arcs_of_form(some: AlikeGates, values: Electrical, node_cap: FloatArray) -> list[Bundle]:
+    """Return one bundle per arc of a form, for all its gates."""
     network = some.form.network
     res = _switch_resistance(some, values)
     cap = _node_capacitance(some, values, node_cap)
@@ -190,7 +134,7 @@ def _alike_arcs(
     values: Electrical,
     parts: tuple[Scaled, Scaled],
     first_device: list[int],
-) -> Arcs:
+) -> Bundle:
     """Return one arc of a form for all its gates.
 
     The parts are the resistance of each switch and the capacitance of each node.
@@ -208,15 +152,35 @@ def _alike_arcs(
     c_x, c_0 = cap.scaling[:, nodes], cap.fixed[:, nodes]
     switching = next(i for i in arc.path if form.network.switches[i].gate == arc.input)
     device = some.devices[:, first_device[switching]]
-    return Arcs(
+    scaling, fixed = r_x[:, -1], r_0[:, -1]
+    net = some.nets[:, form.output]
+    none = np.full(len(net), NO_OWNER, np.int32)
+    charges = [(net, some.gates, scaling)]
+    terms = [(scaling, some.gates, (r_x[:, depth] * c_x).sum(axis=1) / scaling, some.gates)]
+    # What is zero for all of them is left out; what does not scale is so at any width.
+    if c_0.any():
+        terms.append((scaling, some.gates, (r_x[:, depth] * c_0).sum(axis=1) / scaling, none))
+    if fixed.any():
+        whole = np.where(fixed > 0, fixed, 1.0)
+        charges.append((net, none, fixed))
+        terms.append((fixed, none, (r_0[:, depth] * c_x).sum(axis=1) / whole, some.gates))
+        if c_0.any():
+            terms.append((fixed, none, (r_0[:, depth] * c_0).sum(axis=1) / whole, none))
+    charge = [np.stack(column, axis=1) for column in zip(*charges, strict=True)]
+    own = [np.stack(column, axis=1) for column in zip(*terms, strict=True)]
+    return Bundle(
         gate=some.gates,
         input=some.nets[:, arc.input],
-        output=some.nets[:, form.output],
-        rising=np.full(len(some.gates), arc.rising),
-        resistance=Scaled(r_x[:, -1], r_0[:, -1]),
-        own=(r_x[:, depth] * c_x + r_0[:, depth] * c_0).sum(axis=1),
-        own_shrinking=(r_x[:, depth] * c_0).sum(axis=1),
-        own_growing=(r_0[:, depth] * c_x).sum(axis=1),
+        output=net,
+        rising=arc.rising,
+        input_rising=not arc.rising,
+        charge_net=charge[0],
+        charge_owner=charge[1],
+        charge_resistance=charge[2],
+        own_resistance=own[0],
+        own_resistance_owner=own[1],
+        own_capacitance=own[2],
+        own_capacitance_owner=own[3],
         slope=values.slope[device],
         slope_power=values.slope_power[device],
         shape=values.shape[device],

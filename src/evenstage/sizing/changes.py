@@ -108,10 +108,13 @@ class Writing:
     def _effort_of_size(self) -> dict[int, float]:
         """Stage effort of the sizes on the slowest path, of the first stage of each."""
         graph, circuit = self.timing.graph, self.timing.circuit
-        arcs = list(next(slowest_paths(self.timing)))
-        sizes = self._parts.of_gate[circuit.arcs.gate[graph.arc[arcs]]].tolist()
-        stages = zip(sizes, self.slowest.stages, strict=True)
-        return {size: stage.stage_effort for size, stage in reversed(list(stages))}
+        arcs = graph.arc[list(next(slowest_paths(self.timing)))]
+        stages = zip(arcs[:, None], self.slowest.stages, strict=True)
+        return {
+            size: stage.stage_effort
+            for arc, stage in reversed(list(stages))
+            for size in self._parts.of_gate[circuit.arcs.gates_along(arc)].tolist()
+        }
 
     def _why(self, slot: int) -> str:
         """Say in a few words why a width changes."""

@@ -349,7 +349,7 @@ class Engine:
         """Tell which sizes carry flow: those of gates on limiting paths."""
         graph, model = self.model.graph, self.model
         flow = solution.flow[len(solution.flow) - len(graph.arc) :]
-        gates = model.circuit.arcs.gate[graph.arc[flow > share]]
+        gates = model.circuit.arcs.gates_along(graph.arc[flow > share])
         found = np.zeros(len(model.variables), bool)
         found[model.variables.partition.of_gate[gates]] = True
         return found
@@ -374,7 +374,7 @@ class Engine:
             later = rest[graph.target[some]] + timing.charged[some]
             np.maximum.at(rest, graph.source[some], later)
         through = timing.charged_arrival[graph.source] + timing.charged + rest[graph.target]
-        gates = model.circuit.arcs.gate[graph.arc[through > delay * (1 + _AGREES)]]
+        gates = model.circuit.arcs.gates_along(graph.arc[through > delay * (1 + _AGREES)])
         found = np.zeros(len(model.variables), bool)
         found[model.variables.partition.of_gate[gates]] = True
         return found
@@ -387,7 +387,7 @@ class Engine:
         gates = circuit.pins.gate[np.isin(circuit.pins.net, over)]
         if limits.strict:
             slow = self.today.transition[model.graph.target] > limits.transition
-            gates = np.concatenate([gates, circuit.arcs.gate[model.graph.arc[slow]]])
+            gates = np.concatenate([gates, circuit.arcs.gates_along(model.graph.arc[slow])])
         found = np.zeros(len(parts), bool)
         found[parts.of_gate[gates]] = True
         return found
@@ -438,12 +438,12 @@ def _sizes_on_path(model: Model, arrival: FloatArray, delay: FloatArray) -> list
     graph = model.graph
     node = int(graph.end[int(arrival[graph.end].argmax())])
     heads = np.searchsorted(graph.target, np.arange(len(graph) + 1))
-    found = []
+    found: list[int] = []
     while heads[node] < heads[node + 1]:
         some = np.arange(heads[node], heads[node + 1])
         arc = int(some[int((arrival[graph.source[some]] + delay[some]).argmax())])
-        found.append(
-            int(model.variables.partition.of_gate[model.circuit.arcs.gate[graph.arc[arc]]])
-        )
+        found.append(arc)
         node = int(graph.source[arc])
-    return found
+    gates = model.circuit.arcs.gates_along(graph.arc[found])
+    sizes: list[int] = model.variables.partition.of_gate[gates].tolist()
+    return sizes

@@ -1,9 +1,9 @@
 """A timed circuit and its sizes to a convex programme.
 
-Every delay is the charged Elmore delay ``q (R C + own)`` of an arc. With ``x_g`` the size of the
-gate, ``R = scaling / x_g + fixed``; the load is linear, ``C = sum c_u x_u + c_0``; and the gate's
-own delay is ``own + shrinking / x_g + growing x_g``. Multiplied out these are the monomials of
-`evenstage.sizing.problem`.
+Every delay is the charged Elmore delay ``q (sum R C + own)`` of an arc. With ``x_g`` the size of a
+gate, its resistance is ``R / x_g``; the load on a net is linear, ``C = sum c_u x_u + c_0``; and the
+own delay of the gates is a sum of ``R c x_h / x_g`` (`evenstage.circuit.arcs`). Multiplied out
+these are the monomials of `evenstage.sizing.problem`.
 """
 
 from __future__ import annotations
@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from scipy.sparse import coo_array, csr_array
 
+from evenstage.circuit.arcs import ranges
 from evenstage.sizing.problem import Monomials, Problem
 from evenstage.timing.sweep import end_offsets
 
@@ -91,21 +92,18 @@ class Model:
     def elmore(self) -> Monomials:
         """Elmore delay of every circuit arc, s; row = circuit arc."""
         arcs, n = self.circuit.arcs, len(self.variables)
-        size = self.variables.partition.of_gate[arcs.gate]
-        every = np.arange(len(size), dtype=np.int32)
-        constant = np.full(len(size), n, np.int32)
-        form = self.load
-        count = np.diff(form.indptr)[arcs.output]
-        entry = _ranges(form.indptr[arcs.output], count)
-        row, cap, column = np.repeat(every, count), form.data[entry], form.indices[entry]
-        parts = [
-            (row, np.repeat(arcs.resistance.scaling, count) * cap, column, size[row]),
-            (row, np.repeat(arcs.resistance.fixed, count) * cap, column, constant[row]),
-            (every, arcs.own, constant, constant),
-            (every, arcs.own_shrinking, constant, size),
-            (every, arcs.own_growing, size, constant),
-        ]
-        return _monomials(parts, n)
+        size = np.append(self.variables.partition.of_gate, n).astype(np.int32)
+        charges, own, form = arcs.charges, arcs.own, self.load
+        count = np.diff(form.indptr)[charges.net]
+        entry = ranges(form.indptr[charges.net], count)
+        charging = (
+            np.repeat(charges.arc, count),
+            np.repeat(charges.resistance, count) * form.data[entry],
+            form.indices[entry],
+            np.repeat(size[charges.owner], count),
+        )
+        staying = (own.arc, own.today, size[own.capacitance_owner], size[own.resistance_owner])
+        return _monomials([charging, staying], n)
 
     def problem(
         self, lower: FloatArray, upper: FloatArray, spend: FloatArray, limits: Limits
@@ -140,7 +138,7 @@ class Model:
         elmore, which = self.elmore, self.graph.arc
         heads = np.searchsorted(elmore.row, np.arange(len(charge) + 1))
         count = np.diff(heads)[which]
-        entry = _ranges(heads[which], count)
+        entry = ranges(heads[which], count)
         arcs = (
             np.repeat(np.arange(len(which)) + len(driven), count),
             elmore.coefficient[entry] * charge[elmore.row[entry]],
@@ -149,7 +147,7 @@ class Model:
         )
         form, nets = self.load, self.graph.net[self.graph.start[driven]]
         wide = np.diff(form.indptr)[nets]
-        outside = _ranges(form.indptr[nets], wide)
+        outside = ranges(form.indptr[nets], wide)
         drivers = (
             np.repeat(np.arange(len(driven)), wide),
             form.data[outside] * np.repeat(self.graph.start_drive[driven], wide),
@@ -166,7 +164,7 @@ class Model:
         form, n = self.load, len(self.variables)
         nets = limits.ceiling_net
         wide = np.diff(form.indptr)[nets]
-        entry = _ranges(form.indptr[nets], wide)
+        entry = ranges(form.indptr[nets], wide)
         ceilings = (
             np.repeat(np.arange(len(nets)), wide),
             form.data[entry] / np.repeat(limits.ceiling * (1 + _ROUNDING), wide),
@@ -203,19 +201,8 @@ class Model:
         most[shaped] = share[shaped] / arcs.shape[shaped] * limits.transition * limits.share
         if limits.strict:
             return most
-        today = arcs.resistance.today * self.circuit.net_cap[arcs.output] + arcs.own_today
-        kept: FloatArray = np.maximum(most, today)
+        kept: FloatArray = np.maximum(most, arcs.elmore(self.circuit.net_cap))
         return kept
-
-
-def _ranges(begin: IntArray, count: IntArray) -> IntArray:
-    """Return the concatenation of ``range(begin, begin + count)`` for all entries."""
-    ends = np.cumsum(count)
-    total = int(ends[-1]) if len(ends) else 0
-    result: IntArray = (
-        np.arange(total) - np.repeat(ends - count, count) + np.repeat(begin, count)
-    ).astype(np.int32)
-    return result
 
 
 def _monomials(

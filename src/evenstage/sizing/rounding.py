@@ -208,8 +208,7 @@ class Rounding:
     def _excess(self, timing: Timing) -> float:
         """Return by what share the worst deadline or transition limit is broken; <= 0: none."""
         circuit = timing.circuit
-        elmore = circuit.arcs.resistance.today * circuit.net_cap[circuit.arcs.output]
-        use = ((elmore + circuit.arcs.own_today) / self._elmore_limit).max()
+        use = (circuit.arcs.elmore(circuit.net_cap) / self._elmore_limit).max()
         if self.engine.wishes.delay is None:
             late = worst_charged(timing) / self.answer.deadline
         else:
@@ -309,7 +308,7 @@ class Rounding:
         """Return the active sizes nearest to the slowest paths, at most `_CANDIDATES`."""
         graph, variables = timing.graph, self.engine.model.variables
         order = np.argsort(_slack(timing)[graph.target], kind="stable")
-        gates = timing.circuit.arcs.gate[graph.arc[order]]
+        gates = timing.circuit.arcs.gates_along(graph.arc[order])
         sizes = dict.fromkeys(variables.partition.of_gate[gates].tolist())
         return [size for size in sizes if self.answer.active[size]][:_CANDIDATES]
 

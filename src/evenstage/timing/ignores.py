@@ -76,7 +76,7 @@ def expand(
         Net ids.
     """
     arcs = circuit.arcs
-    source = 2 * arcs.input[kept] + ~arcs.rising[kept]
+    source = 2 * arcs.input[kept] + arcs.input_rising[kept]
     target = 2 * arcs.output[kept] + arcs.rising[kept]
     rules = _rules(circuit, brief)
     if rules:

@@ -98,7 +98,7 @@ def _stage(timing: Timing, graph_arc: int, following: int | None, arrival: float
     rising = bool(arcs.rising[arc])
     charge = unit.charge_rise if rising else unit.charge_fall
     input_cap = _pin_cap(circuit, gate, int(arcs.input[arc]))
-    logical = charge * float(arcs.resistance.today[arc]) * input_cap / unit.tau
+    logical = charge * float(arcs.output_resistance[arc]) * input_cap / unit.tau
     electrical, branching = load.on_path / input_cap, load.total / load.on_path
     own = float(arcs.own_today[arc])
     devices = circuit.gate_devices(gate)

@@ -118,8 +118,7 @@ def latest_arrivals(graph: TimingGraph, delay: FloatArray, start_arrival: FloatA
 def sweep(circuit: Circuit, graph: TimingGraph, unit: Yardstick) -> Timing:
     """Add up the delays of a circuit along a graph."""
     arcs, which = circuit.arcs, graph.arc
-    load = circuit.net_cap[arcs.output]
-    elmore = (arcs.resistance.today * load + arcs.own_today)[which]
+    elmore = arcs.elmore(circuit.net_cap)[which]
     charge = np.where(arcs.rising, unit.charge_rise, unit.charge_fall)[which]
     flow = propagate(circuit, graph, elmore, start_arrivals(circuit, graph))
     return Timing(

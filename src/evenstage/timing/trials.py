@@ -1,9 +1,8 @@
 """Many small changes of one block, each timed on its own, all in one sweep.
 
-A gate's resistance, its own delay and the capacitance of its pins depend on its own widths alone.
-So one block in which all changes are made at once holds everything that any of them needs: a trial
-takes its own gates from there and all others from the block as it is. Trials are swept side by
-side.
+A gate's resistance and its capacitances depend on its own widths alone. So one block in which all
+changes are made at once holds everything that any of them needs: a trial takes its own gates from
+there and all others from the block as it is. Trials are swept side by side.
 """
 
 from __future__ import annotations
@@ -16,6 +15,8 @@ import numpy as np
 from evenstage.timing.sweep import end_offsets, latest_arrivals, propagate
 
 if TYPE_CHECKING:
+    from collections.abc import Iterator
+
     from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.timing.sweep import Timing
@@ -137,12 +138,32 @@ def _loads(circuit: Circuit, changed: Circuit, trial: IntArray, count: int) -> F
 
 def _elmore(circuit: Circuit, changed: Circuit, trial: IntArray, load: FloatArray) -> FloatArray:
     """Return the Elmore delay of each circuit arc in each trial, s, shape (arcs, trials)."""
-    arcs, new = circuit.arcs, changed.arcs
-    elmore = arcs.resistance.today[:, None] * load[arcs.output] + arcs.own_today[:, None]
-    mine = trial[arcs.gate]
+    elmore = circuit.arcs.elmore(load)
+    in_trial = np.append(trial, -1)  # the last entry is that of what has no owner
+    old, new = circuit.arcs.charges, changed.arcs.charges
+    mine = in_trial[old.owner]
     tells = np.flatnonzero(mine >= 0)
-    here = mine[tells]
-    elmore[tells, here] = (
-        new.resistance.today[tells] * load[arcs.output[tells], here] + new.own_today[tells]
-    )
+    grown = (new.resistance - old.resistance)[tells] * load[old.net[tells], mine[tells]]
+    np.add.at(elmore, (old.arc[tells], mine[tells]), grown)
+    for row, which, value in _own_terms(circuit, changed, in_trial):
+        np.add.at(elmore, (row, which), value)
     return elmore
+
+
+def _own_terms(
+    circuit: Circuit, changed: Circuit, in_trial: IntArray
+) -> Iterator[tuple[IntArray, IntArray, FloatArray]]:
+    """Yield the arcs whose own terms change, in which trials, and by how much, s.
+
+    A trial that holds one owner of a term but not the other changes that factor alone.
+    """
+    old, new = circuit.arcs.own, changed.arcs.own
+    resistance, capacitance = in_trial[old.resistance_owner], in_trial[old.capacitance_owner]
+    both = resistance == capacitance
+    for which, r, c in (
+        (np.where(both, resistance, -1), new.resistance, new.capacitance),
+        (np.where(both, -1, resistance), new.resistance, old.capacitance),
+        (np.where(both, -1, capacitance), old.resistance, new.capacitance),
+    ):
+        tells = np.flatnonzero(which >= 0)
+        yield old.arc[tells], which[tells], (r * c - old.today)[tells]

@@ -1,0 +1,245 @@
+"""Arcs in columns: sums of monomials in the sizes of the gates they run through.
+
+The Elmore delay of an arc is a sum over the capacitances that move, each times the resistance its
+charge flows through. Resistances and capacitances that scale belong to some gate, their *owner*;
+with ``x`` the size of a gate relative to today,
+
+    E = sum over charges R / x_owner * C(net) + sum over own terms R / x_res_owner * C * x_cap_owner
+
+where ``C(net)`` is what hangs on a net outside the gates of the arc. What does not scale has no
+owner. A plain gate charges one net through itself.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import TYPE_CHECKING, TypeVar
+
+import numpy as np
+from scipy.sparse import csr_array
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from numpy.typing import NDArray
+
+    from evenstage.circuit.network import BoolArray
+    from evenstage.netlist.devices import FloatArray, IntArray
+
+_Kind = TypeVar("_Kind", bound=np.generic)
+
+NO_OWNER = -1
+"""Owner of a resistance or capacitance that does not scale."""
+
+
+@dataclass(frozen=True)
+class Charges:
+    """Outside capacitance that arcs charge; shape ``(charges,)`` but for ``head``.
+
+    Parameters
+    ----------
+    head : IntArray, shape (arcs + 1,)
+        Charges of arc k are ``head[k]:head[k + 1]``.
+    net : IntArray
+        Whose outside capacitance is charged.
+    owner : IntArray
+        Gate whose size divides the resistance; `NO_OWNER` for none.
+    resistance : FloatArray, ohm
+        With the stack factor.
+    """
+
+    head: IntArray
+    net: IntArray
+    owner: IntArray
+    resistance: FloatArray
+
+    @cached_property
+    def arc(self) -> IntArray:
+        """The arc of each charge."""
+        return np.repeat(np.arange(len(self.head) - 1, dtype=np.int32), np.diff(self.head))
+
+
+@dataclass(frozen=True)
+class OwnTerms:
+    """Delay of the capacitances of an arc's own gates; shape ``(terms,)`` but for ``head``.
+
+    Parameters
+    ----------
+    head : IntArray, shape (arcs + 1,)
+        Terms of arc k are ``head[k]:head[k + 1]``.
+    resistance : FloatArray, ohm
+    resistance_owner : IntArray
+    capacitance : FloatArray, F
+        What, charged through that resistance, takes as long as all that moves.
+    capacitance_owner : IntArray
+    """
+
+    head: IntArray
+    resistance: FloatArray
+    resistance_owner: IntArray
+    capacitance: FloatArray
+    capacitance_owner: IntArray
+
+    @cached_property
+    def arc(self) -> IntArray:
+        """The arc of each term."""
+        return np.repeat(np.arange(len(self.head) - 1, dtype=np.int32), np.diff(self.head))
+
+    @property
+    def today(self) -> FloatArray:
+        """Delay of each term at today's sizes, s."""
+        return self.resistance * self.capacitance
+
+
+@dataclass(frozen=True)
+class Arcs:
+    """Arcs from one input edge to one output edge; shape ``(arcs,)`` each.
+
+    Parameters
+    ----------
+    gate, input, output : IntArray
+        Gate whose input moves; net ids.
+    rising : BoolArray
+        Whether the output rises.
+    input_rising : BoolArray
+        Whether the input rises.
+    charges : Charges
+    own : OwnTerms
+    slope, slope_power, shape, shape_carry : FloatArray
+        Transition constants of the switching transistor.
+    """
+
+    gate: IntArray
+    input: IntArray
+    output: IntArray
+    rising: BoolArray
+    input_rising: BoolArray
+    charges: Charges
+    own: OwnTerms
+    slope: FloatArray
+    slope_power: FloatArray
+    shape: FloatArray
+    shape_carry: FloatArray
+
+    def __len__(self) -> int:
+        return len(self.gate)
+
+    @cached_property
+    def own_today(self) -> FloatArray:
+        """Delay of the gates' own capacitance at today's sizes, s."""
+        return _sums(self.own.arc, self.own.today, len(self))
+
+    @cached_property
+    def output_resistance(self) -> FloatArray:
+        """Resistance between the output net and the supply at today's sizes, ohm."""
+        charges = self.charges
+        at_output = charges.net == self.output[charges.arc]
+        return _sums(charges.arc, charges.resistance * at_output, len(self))
+
+    def elmore(self, net_cap: FloatArray) -> FloatArray:
+        """Return Elmore delays, s, shape (arcs, ...), at outside capacitances (nets, ...), F."""
+        charges = self.charges
+        through = csr_array(
+            (charges.resistance, charges.net, charges.head), shape=(len(self), len(net_cap))
+        )
+        beside = (-1, *(1 for _ in net_cap.shape[1:]))
+        result: FloatArray = through @ net_cap + self.own_today.reshape(beside)
+        return result
+
+    def gates_along(self, which: IntArray) -> IntArray:
+        """Return the gates that some arcs run through, arc by arc, one as often as it charges."""
+        head = self.charges.head
+        owner = self.charges.owner[ranges(head[which], head[which + 1] - head[which])]
+        found: IntArray = owner[owner != NO_OWNER]
+        return found
+
+
+@dataclass(frozen=True)
+class Bundle:
+    """One arc of many alike stages; shape ``(k,)`` or, of charges and terms, ``(k, each)``."""
+
+    gate: IntArray
+    input: IntArray
+    output: IntArray
+    rising: bool
+    input_rising: bool
+    charge_net: IntArray
+    charge_owner: IntArray
+    charge_resistance: FloatArray
+    own_resistance: FloatArray
+    own_resistance_owner: IntArray
+    own_capacitance: FloatArray
+    own_capacitance_owner: IntArray
+    slope: FloatArray
+    slope_power: FloatArray
+    shape: FloatArray
+    shape_carry: FloatArray
+
+
+def joined(bundles: Sequence[Bundle]) -> Arcs:
+    """Put bundles into one table, ordered by gate; those of one gate in the order given."""
+    gate = _column([b.gate for b in bundles])
+    order = np.argsort(gate, kind="stable")
+    each = [len(b.gate) for b in bundles]
+
+    def ordered(columns: Sequence[NDArray[_Kind]]) -> NDArray[_Kind]:
+        return _column(columns)[order]
+
+    def flags(values: Sequence[bool]) -> BoolArray:
+        result: BoolArray = np.repeat(np.array(values, bool), each)[order]
+        return result
+
+    charge_head, charge = _csr([b.charge_net.shape for b in bundles], order)
+    own_head, own = _csr([b.own_resistance.shape for b in bundles], order)
+    return Arcs(
+        gate=gate[order],
+        input=ordered([b.input for b in bundles]),
+        output=ordered([b.output for b in bundles]),
+        rising=flags([b.rising for b in bundles]),
+        input_rising=flags([b.input_rising for b in bundles]),
+        charges=Charges(
+            head=charge_head,
+            net=_column([b.charge_net for b in bundles])[charge],
+            owner=_column([b.charge_owner for b in bundles])[charge],
+            resistance=_column([b.charge_resistance for b in bundles])[charge],
+        ),
+        own=OwnTerms(
+            head=own_head,
+            resistance=_column([b.own_resistance for b in bundles])[own],
+            resistance_owner=_column([b.own_resistance_owner for b in bundles])[own],
+            capacitance=_column([b.own_capacitance for b in bundles])[own],
+            capacitance_owner=_column([b.own_capacitance_owner for b in bundles])[own],
+        ),
+        slope=ordered([b.slope for b in bundles]),
+        slope_power=ordered([b.slope_power for b in bundles]),
+        shape=ordered([b.shape for b in bundles]),
+        shape_carry=ordered([b.shape_carry for b in bundles]),
+    )
+
+
+def ranges(begin: NDArray[np.integer], count: NDArray[np.integer]) -> IntArray:
+    """Return the concatenation of ``range(begin, begin + count)`` for all entries."""
+    ends = np.cumsum(count)
+    total = int(ends[-1]) if len(ends) else 0
+    result: IntArray = (
+        np.arange(total) - np.repeat(ends - count, count) + np.repeat(begin, count)
+    ).astype(np.int32)
+    return result
+
+
+def _column(parts: Sequence[NDArray[_Kind]]) -> NDArray[_Kind]:
+    """Put the columns of several tables under each other, the entries of a row in a row."""
+    return np.concatenate([part.ravel() for part in parts])
+
+
+def _csr(shapes: Sequence[tuple[int, ...]], order: NDArray[np.intp]) -> tuple[IntArray, IntArray]:
+    """Return where the entries of each ordered arc begin, and their places in the bundles."""
+    count = np.repeat([shape[1] for shape in shapes], [shape[0] for shape in shapes])
+    begin = np.cumsum(count) - count
+    head = np.concatenate([[0], np.cumsum(count[order])]).astype(np.int32)
+    return head, ranges(begin[order], count[order])
+
+
+def _sums(arc: IntArray, value: FloatArray, arcs: int) -> FloatArray:
+    return np.bincount(arc, value, arcs).astype(np.float64, copy=False)
