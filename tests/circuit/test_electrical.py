@@ -11,7 +11,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from evenstage.circuit.electrical import electrical
-from evenstage.process.process import Junction
+from evenstage.process.process import Junction, Junctions
 from support.blocks import circuit_of, devices_of, plain_process
 
 if TYPE_CHECKING:
@@ -20,7 +20,8 @@ if TYPE_CHECKING:
 PROCESS = plain_process(
     r_fixed=40.0, c_gate_fixed=0.1e-15, c_drain_fixed=0.2e-15, stack=0.6, slope=0.3
 )
-JUNCTIONS = plain_process(c_drain_fixed=0.2e-15, junction=Junction(area=1e-3, edge=2e-10))
+JUNCTION = Junction(area=1e-3, edge=2e-10)
+JUNCTIONS = plain_process(c_drain_fixed=0.2e-15, junctions=Junctions(rise=JUNCTION, fall=JUNCTION))
 
 
 def transistor(parameters: str) -> Devices:
@@ -58,6 +59,19 @@ class TestElectrical:
         assert found.drain.fixed[0] == pytest.approx(2e-10 * 1e-6)
         # The source says nothing, so the constants per width count.
         assert found.source.today[0] == pytest.approx(1e-9 * 2e-6 + 0.2e-15)
+
+    def test_each_edge_sees_its_own_part_of_the_swing(self) -> None:
+        near = Junction(area=3e-3, edge=5e-10, overlap=7e-10, drain_fixed=11e-16)
+        far = Junction(area=1e-3, edge=2e-10, overlap=7e-10, source_fixed=13e-16)
+        process = plain_process(junctions=Junctions(rise=near, fall=far))
+        found = electrical(transistor("w=2u l=0.1u ad=1p pd=5u as=2p ps=6u m=2"), process)
+        rise = 3e-3 * 1e-12 + 5e-10 * 5e-6 + 7e-10 * 2e-6 + 11e-16
+        fall = 1e-3 * 1e-12 + 2e-10 * 5e-6 + 7e-10 * 2e-6
+        assert found.rise.drain.today[0] == pytest.approx(2 * rise)
+        assert found.fall.drain.today[0] == pytest.approx(2 * fall)
+        assert found.drain.today[0] == pytest.approx(rise + fall)
+        source = 1e-3 * 2e-12 + 2e-10 * 6e-6 + 7e-10 * 2e-6 + 13e-16
+        assert found.fall.source.today[0] == pytest.approx(2 * source)
 
     def test_diffusion_without_junction_constants(self) -> None:
         found = electrical(transistor("w=2u l=0.1u ad=1p pd=5u"), PROCESS)

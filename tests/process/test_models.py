@@ -62,19 +62,49 @@ class TestConstants:
         channel = 2.835e-15 * 3.9 * 8.8541878128e-12 / 3.5e-11
         assert_allclose(c_gate * 1.8e-6, channel + 3 * 0.4725e-15, rtol=1e-6, atol=0)
 
-    def test_junctions_are_averaged_over_the_swing(self) -> None:
-        # K_eq of 0 to 1.8 V at PB 0.8 V, MJ 0.5: 0.713578 (quadrature).
-        junction = n_of(derive(N | JUNCTION)).junction
-        assert junction is not None
-        assert_allclose(junction.area, 0.713578e-3, rtol=1e-6, atol=0)
-        assert junction.edge > 0.2e-9 * 0.713578
+    def test_junctions_are_averaged_over_what_an_edge_sees(self) -> None:
+        # K_eq at PB 0.8 V, MJ 0.5 of 0 to 0.9 V 0.813756, of 0.9 to 1.8 V 0.613400 (quadrature).
+        process = derive(N | JUNCTION, P | JUNCTION)
+        n, p = n_of(process).junctions, process.first("p").junctions if process else None
+        assert n is not None
+        assert p is not None
+        assert_allclose([n.rise.area, n.fall.area], [0.813756e-3, 0.613400e-3], rtol=2e-6, atol=0)
+        assert (p.rise, p.fall) == (n.fall, n.rise)
+        assert n.fall.edge > 0.2e-9 * 0.613400
+
+    def test_overlaps_and_whole_junctions(self) -> None:
+        """The drain overlap counts twice; CBD and CBS stand in for CJ; CGBO stays."""
+        extra = {"cgdo": 0.3e-9, "cgbo": 0.1e-9, "cbd": 2e-15, "ld": 0.01e-6}
+        n = n_of(derive(N | JUNCTION | extra))
+        assert n.junctions is not None
+        rise = n.junctions.rise
+        assert (rise.area, rise.overlap, rise.source_fixed) == (0.0, 0.6e-9, 0.0)
+        assert_allclose(rise.drain_fixed, 0.813756 * 2e-15, rtol=2e-6, atol=0)
+        assert_allclose(n.c_gate_fixed, 0.1e-9 * 0.16e-6, rtol=1e-12, atol=0)
+
+    def test_published_geometry(self) -> None:
+        """Companion to a published textbook, example 2.9: L_d 3.6 um, W 1.8 um, C_j0 0.3 fF/um^2,
+        C_jsw 0.8 fF/um: bottom 1.944 fF, side walls without the gate's edge 7.2 fF. At zero bias;
+        a supply of 1 mV leaves the junctions there.
+        """
+        cards = N | {"cj": 0.3e-3, "cjsw": 0.8e-9, "vto": 1e-4}
+        junctions = n_of(derive(cards, cards, supply=1e-3)).junctions
+        assert junctions is not None
+        extent, width = 3.6e-6, 1.8e-6
+        bottom = junctions.rise.area * extent * width
+        side = junctions.rise.edge * (2 * extent + width)
+        assert_allclose([bottom, side], [1.944e-15, 7.2e-15], rtol=1e-3, atol=0)
 
     def test_drain_of_usual_geometry(self) -> None:
         transistor = n_of(derive(N | JUNCTION | {"cgdo": 0.3e-9}))
-        junction = transistor.junction
-        assert junction is not None
+        junctions = transistor.junctions
+        assert junctions is not None
+        area, edge = (
+            (getattr(junctions.rise, name) + getattr(junctions.fall, name)) / 2
+            for name in ("area", "edge")
+        )
         width, reach = 2e-6, 2.5 * 0.18e-6
-        by_hand = junction.area * width * reach + junction.edge * (width + 2 * reach)
+        by_hand = area * width * reach + edge * (width + 2 * reach)
         assert_allclose(
             transistor.c_drain * width + transistor.c_drain_fixed,
             by_hand + 2 * 0.3e-9 * width,
@@ -86,7 +116,7 @@ class TestConstants:
         process = derive(N | JUNCTION)
         assert process is not None
         p = process.first("p")
-        assert (p.c_drain, p.c_drain_fixed, p.junction) == (p.c_gate, 0.0, None)
+        assert (p.c_drain, p.c_drain_fixed, p.junctions) == (p.c_gate, 0.0, None)
         assert [(x.code, x.names) for x in process.notices] == [("drain-assumed", ("pch",))]
 
     def test_devices_in_series_count_in_full(self) -> None:

@@ -9,7 +9,7 @@ from pathlib import Path
 import pytest
 
 from evenstage.errors import SettingsError
-from evenstage.process.process import Process, Transistor
+from evenstage.process.process import Junction, Junctions, Process, Transistor
 from evenstage.process.read import read_process
 
 LEAST = """\
@@ -36,6 +36,9 @@ r_fixed = "50"
 stack = 0.6
 c_gate_fixed = "0.1f"
 c_drain_fixed = "0.2f"
+c_drain_area = "0.9 mF/m^2"
+c_drain_edge = "0.2 fF/um"
+c_drain_overlap = "0.5n"
 slope = 0.3
 slope_power = 0.7
 shape = 1.8
@@ -93,6 +96,7 @@ class TestReadProcess:
     def test_every_key(self, read: Read) -> None:
         process = read("unit_width = '0.42u'\nunit_ratio = 2.5\n" + LEAST + MOST)
         assert (process.unit_width, process.unit_ratio) == (0.42e-6, 2.5)
+        junction = Junction(area=0.9e-3, edge=0.2e-9, overlap=0.5e-9)
         assert without_names(process.first("p")) == without_names(
             Transistor(
                 models=(),
@@ -105,6 +109,7 @@ class TestReadProcess:
                 stack=0.6,
                 c_gate_fixed=0.1e-15,
                 c_drain_fixed=0.2e-15,
+                junctions=Junctions(rise=junction, fall=junction),
                 slope=0.3,
                 slope_power=0.7,
                 shape=1.8,
@@ -181,6 +186,16 @@ class TestReadProcess:
                     "p.toml:18:14: width_max is below width_min (limits-crossed)\n"
                     '    width_max = "1u"\n'
                     "                 ^^"
+                ),
+            ),
+            (
+                'c_drain = "1n"',
+                'c_drain = "1n"\nc_drain_edge = "0.2n"',
+                (
+                    "p.toml:17:17: c_drain_edge comes without c_drain_area; give both (0 where it"
+                    " counts for nothing), or neither (half-given)\n"
+                    '    c_drain_edge = "0.2n"\n'
+                    "                    ^^^^"
                 ),
             ),
             (

@@ -14,7 +14,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from evenstage.process.process import Junction
+from evenstage.process.process import Junction, Junctions
 from evenstage.timing.analyse import time
 from evenstage.timing.yardstick import yardstick
 from support.blocks import block, circuit_of, inverter, nand, network, nor, plain_process
@@ -34,7 +34,9 @@ def efforts(cards: str, gamma: float = 2.0) -> dict[tuple[str, str], tuple[float
     process = plain_process(gamma)
     # 1 fF per square micron: a drain of its width in microns times one micron counts as that width.
     junction = Junction(area=1e-3, edge=0.0)
-    types = tuple(replace(t, junction=junction) for t in process.transistors)
+    types = tuple(
+        replace(t, junctions=Junctions(rise=junction, fall=junction)) for t in process.transistors
+    )
     process = replace(process, transistors=types)
     circuit = circuit_of(block(cards, "y vdd vss"), process)
     unit = yardstick(circuit.process)

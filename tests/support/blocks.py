@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import Devices
-    from evenstage.process.process import Junction
+    from evenstage.process.process import Junctions
 
 UNIT_CAP = 1e-15
 """F of one micron of gate in the plain process; so capacitances in fF are widths in microns."""
@@ -37,7 +37,7 @@ class Constants(TypedDict, total=False):
     slope_power: float
     shape: float
     shape_carry: float
-    junction: Junction
+    junctions: Junctions
     width_min: float
     width_max: float
     width_step: float

@@ -7,13 +7,15 @@ A quantity ``q`` of a device whose width is multiplied by ``x`` becomes ``scalin
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from evenstage.netlist.devices import Devices, FloatArray
-    from evenstage.process.process import Process
+    from evenstage.process.process import Junction, Process, Transistor
 
 
 @dataclass(frozen=True, slots=True)
@@ -30,18 +32,40 @@ class Scaled:
 
 
 @dataclass(frozen=True)
+class Diffusion:
+    """Capacitance of both channel ends of every device, F, shape ``(n,)`` each."""
+
+    drain: Scaled
+    source: Scaled
+
+
+@dataclass(frozen=True)
 class Electrical:
-    """What the devices of a block are worth in a process; ohm and F, shape ``(n,)`` each."""
+    """What the devices of a block are worth in a process; ohm and F, shape ``(n,)`` each.
+
+    Diffusion counts as far as the 50 % delay of each edge sees it: ``rise`` and ``fall`` of the
+    output it hangs on.
+    """
 
     resistance: Scaled
     gate: Scaled
-    drain: Scaled
-    source: Scaled
+    rise: Diffusion
+    fall: Diffusion
     stack: FloatArray
     slope: FloatArray
     slope_power: FloatArray
     shape: FloatArray
     shape_carry: FloatArray
+
+    @property
+    def drain(self) -> Scaled:
+        """Drain capacitance over the whole swing."""
+        return _mean(self.rise.drain, self.fall.drain)
+
+    @property
+    def source(self) -> Scaled:
+        """Source capacitance over the whole swing."""
+        return _mean(self.rise.source, self.fall.source)
 
 
 def electrical(devices: Devices, process: Process) -> Electrical:
@@ -62,8 +86,8 @@ def electrical(devices: Devices, process: Process) -> Electrical:
         gate=Scaled(
             constant("c_gate") * width * length * copies, constant("c_gate_fixed") * copies
         ),
-        drain=_diffusion(devices, process, devices.drain_area, devices.drain_edge),
-        source=_diffusion(devices, process, devices.source_area, devices.source_edge),
+        rise=_diffusion(devices, process, "rise"),
+        fall=_diffusion(devices, process, "fall"),
         stack=constant("stack"),
         slope=constant("slope"),
         slope_power=constant("slope_power"),
@@ -72,23 +96,45 @@ def electrical(devices: Devices, process: Process) -> Electrical:
     )
 
 
-def _diffusion(devices: Devices, process: Process, area: FloatArray, edge: FloatArray) -> Scaled:
+def _mean(one: Scaled, other: Scaled) -> Scaled:
+    return Scaled((one.scaling + other.scaling) / 2, (one.fixed + other.fixed) / 2)
+
+
+def _diffusion(devices: Devices, process: Process, edge: Literal["rise", "fall"]) -> Diffusion:
+    kinds = [process.transistors[model.type_index] for model in devices.models]
+    given = [None if kind.junctions is None else getattr(kind.junctions, edge) for kind in kinds]
+    drains = (devices.drain_area, devices.drain_edge, "drain_fixed")
+    sources = (devices.source_area, devices.source_edge, "source_fixed")
+    return Diffusion(_end(devices, kinds, given, *drains), _end(devices, kinds, given, *sources))
+
+
+def _end(
+    devices: Devices,
+    kinds: Sequence[Transistor],
+    junctions: Sequence[Junction | None],
+    area: FloatArray,
+    edge: FloatArray,
+    fixed: str,
+) -> Scaled:
     """Return drain or source capacitance: of its area and perimeter where both are known.
 
     With ``E = area / W`` the extent of the diffusion, the perimeter ``2 E + k W`` has a part that
     does not grow with the width.
     """
-    kinds = [process.transistors[model.type_index] for model in devices.models]
+
+    def constant(name: str) -> FloatArray:
+        table = [np.nan if one is None else getattr(one, name) for one in junctions]
+        return np.array(table, float)[devices.model]
+
     per_width = np.array([kind.c_drain for kind in kinds], float)[devices.model]
-    fixed = np.array([kind.c_drain_fixed for kind in kinds], float)[devices.model]
-    bottom = np.array([k.junction.area if k.junction else np.nan for k in kinds])[devices.model]
-    side = np.array([k.junction.edge if k.junction else np.nan for k in kinds])[devices.model]
+    by_width = np.array([kind.c_drain_fixed for kind in kinds], float)[devices.model]
+    side = constant("edge")
     extent = area / devices.width
     growing_edge = np.maximum(edge - 2 * extent, 0.0)
-    scaling = bottom * area + side * growing_edge
-    staying = side * np.minimum(2 * extent, edge)
+    scaling = constant("area") * area + side * growing_edge + constant("overlap") * devices.width
+    staying = side * np.minimum(2 * extent, edge) + constant(fixed)
     known = ~np.isnan(scaling)
     return Scaled(
         np.where(known, scaling, per_width * devices.width) * devices.multiplier,
-        np.where(known, staying, fixed) * devices.multiplier,
+        np.where(known, staying, by_width) * devices.multiplier,
     )

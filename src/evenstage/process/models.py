@@ -4,8 +4,9 @@ A card suffices if it gives VTO, KP or UO, and TOX. What is taken from where:
 
 - ``r_w``: the effective resistance of the saturated transistor, times ln 2.
 - ``c_gate``: ``C_ox (L0 - 2 LD)`` plus the overlaps, the drain's counted twice because the drain
-  moves against the gate (Miller).
-- junction capacitances: CJ and CJSW, averaged over a swing from 0 to V_DD.
+  moves against the gate (Miller); ``c_gate_fixed``: CGBO along the channel.
+- junction capacitances: CJ and CJSW, averaged over the half of the swing that each edge's 50 %
+  delay sees, plus twice the drain overlap; CBD and CBS, where given, in place of CJ.
 - ``c_drain``, for cards without areas: a diffusion that reaches 2.5 L0 from the gate, its perimeter
   without the gate's edge, plus twice the drain overlap.
 - slopes: an input ramp adds ``(1 + 2v)/6`` of itself to the delay, v = V_T/V_DD; the output's own
@@ -26,7 +27,7 @@ from typing import Final
 from evenstage.errors import Notice
 from evenstage.pattern import Pattern
 from evenstage.process import level1
-from evenstage.process.process import Junction, Polarity, Process, Transistor
+from evenstage.process.process import Junction, Junctions, Polarity, Process, Transistor
 from evenstage.process.supply import supply_for_threshold, supply_notice
 
 #: Name, type and parameters by lower-case name (SI values) of one ``.model`` card.
@@ -57,6 +58,9 @@ class _Card:
     lateral: float
     overlap_source: float
     overlap_drain: float
+    overlap_bulk: float
+    c_drain: float
+    c_source: float
     c_area: float
     c_edge: float
     phi: float
@@ -106,7 +110,7 @@ def process_from_models(
     usable = [card for card in cards if _usable(card, supply, length)]
     if {card.polarity for card in usable} != {"n", "p"}:
         return None
-    bare = tuple(card.pattern.text for card in usable if card.c_area == card.c_edge == 0)
+    bare = tuple(card.pattern.text for card in usable if _is_bare(card))
     if bare:
         notices.append(_bare_notice(bare))
     return Process(
@@ -136,6 +140,8 @@ def _card(facts: ModelFacts) -> _Card | None:
     if polarity is None or values.get("level", 1.0) != 1 or not sufficient:
         return None
     grade = values.get("mj", 0.5)
+    # What is given for the whole device stands for the bottom of both its junctions.
+    replaced = max(values.get("cbd", 0.0), values.get("cbs", 0.0)) > 0
     return _Card(
         pattern=model_pattern(name),
         polarity=polarity,
@@ -146,7 +152,10 @@ def _card(facts: ModelFacts) -> _Card | None:
         lateral=values.get("ld", 0.0),
         overlap_source=values.get("cgso", 0.0),
         overlap_drain=values.get("cgdo", 0.0),
-        c_area=values.get("cj", 0.0),
+        overlap_bulk=values.get("cgbo", 0.0),
+        c_drain=values.get("cbd", 0.0),
+        c_source=values.get("cbs", 0.0),
+        c_area=0.0 if replaced else values.get("cj", 0.0),
         c_edge=values.get("cjsw", 0.0),
         phi=values.get("pb", 0.8),
         grade_area=grade,
@@ -156,7 +165,8 @@ def _card(facts: ModelFacts) -> _Card | None:
 
 def _usable(card: _Card, supply: float, length: float) -> bool:
     """Tell whether the laws hold: it conducts, has a channel, and no constant is negative."""
-    amounts = (card.lateral, card.overlap_source, card.overlap_drain, card.c_area, card.c_edge)
+    overlaps = (card.lateral, card.overlap_source, card.overlap_drain, card.overlap_bulk)
+    amounts = (*overlaps, card.c_drain, card.c_source, card.c_area, card.c_edge)
     return (
         0 < card.threshold < 0.9 * supply
         and 0 <= card.modulation * supply < 1
@@ -171,12 +181,11 @@ def _transistor(card: _Card, supply: float, length: float) -> Transistor:
     current = level1.saturation_current(card.kp, 1 / channel, supply - card.threshold)
     resistance = math.log(2) * level1.effective_resistance(current, supply, card.modulation)
     c_gate = card.c_ox * channel + card.overlap_source + 2 * card.overlap_drain
-    junction = Junction(
-        area=card.c_area * level1.junction_factor(card.phi, card.grade_area, 0.0, supply),
-        edge=card.c_edge * level1.junction_factor(card.phi, card.grade_edge, 0.0, supply),
-    )
+    near, far = _junction(card, 0.0, supply / 2), _junction(card, supply / 2, supply)
+    rise, fall = (near, far) if card.polarity == "n" else (far, near)
+    whole = _junction(card, 0.0, supply)
     reach = _DIFFUSION_REACH * length
-    bare = junction.area == junction.edge == 0
+    bare = _is_bare(card)
     v = card.threshold / supply
     return Transistor(
         models=(card.pattern,),
@@ -184,14 +193,32 @@ def _transistor(card: _Card, supply: float, length: float) -> Transistor:
         length=length,
         r_w=resistance,
         c_gate=c_gate,
-        c_drain=c_gate if bare else junction.area * reach + junction.edge + 2 * card.overlap_drain,
-        c_drain_fixed=2 * reach * junction.edge,
+        c_gate_fixed=card.overlap_bulk * channel,
+        c_drain=c_gate if bare else whole.area * reach + whole.edge + whole.overlap,
+        c_drain_fixed=2 * reach * whole.edge + whole.drain_fixed,
         stack=1.0,
         slope=level1.ramp_delay_share(v),
         shape=_ramp(card, supply, channel) / resistance,
         shape_carry=_CARRY,
-        junction=None if bare else junction,
+        junctions=None if bare else Junctions(rise=rise, fall=fall),
     )
+
+
+def _junction(card: _Card, least: float, most: float) -> Junction:
+    """Return the junction constants over a range of reverse bias."""
+    bottom = level1.junction_factor(card.phi, card.grade_area, least, most)
+    return Junction(
+        area=card.c_area * bottom,
+        edge=card.c_edge * level1.junction_factor(card.phi, card.grade_edge, least, most),
+        overlap=2 * card.overlap_drain,
+        drain_fixed=card.c_drain * bottom,
+        source_fixed=card.c_source * bottom,
+    )
+
+
+def _is_bare(card: _Card) -> bool:
+    """Tell whether a card says nothing about its junctions."""
+    return max(card.c_area, card.c_edge, card.c_drain, card.c_source) == 0
 
 
 def _ramp(card: _Card, supply: float, channel: float) -> float:

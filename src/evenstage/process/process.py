@@ -21,18 +21,43 @@ WidthMeaning = Literal["total", "finger", "fins"]
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Junction:
-    """Source and drain capacitance per area and per edge, linearised over the swing.
+    """Source and drain capacitance of cards that give areas and perimeters.
 
     Parameters
     ----------
     area : float
-        F/m^2, multiplies AD or AS.
+        F/m^2, multiplies AD or AS; linearised over the swing.
     edge : float
-        F/m, multiplies PD or PS.
+        F/m, multiplies PD or PS; linearised likewise.
+    overlap : float
+        F/m, multiplies the width: the gate's overlap, counted twice because it moves against.
+    drain_fixed, source_fixed : float
+        F per device.
     """
 
     area: float
     edge: float
+    overlap: float = 0.0
+    drain_fixed: float = 0.0
+    source_fixed: float = 0.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Junctions:
+    """Junction constants over the part of the swing that a 50 % delay sees.
+
+    A junction holds more near zero bias. An n transistor's drain works there while the output
+    rises to half the supply, and far from it while the output falls to half; a p transistor's the
+    other way round. The mean of both is that of the whole swing.
+
+    Parameters
+    ----------
+    rise, fall : Junction
+        While the output rises and while it falls.
+    """
+
+    rise: Junction
+    fall: Junction
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -57,7 +82,7 @@ class Transistor:
         Transition constants of the arc model: with input transition T and Elmore delay E, delay
         ``E + slope T^slope_power E^(1 - slope_power)``, output transition
         ``sqrt((shape E)^2 + (shape_carry T)^2)``.
-    junction : Junction, optional
+    junctions : Junctions, optional
         Used in place of ``c_drain`` where a card gives areas and perimeters.
     width_parameter, width_is, fingers_parameter : str
         Which card parameter holds the width, what it means, which one holds the finger count.
@@ -81,7 +106,7 @@ class Transistor:
     slope_power: float = 1.0
     shape: float = 0.0
     shape_carry: float = 0.0
-    junction: Junction | None = None
+    junctions: Junctions | None = None
     width_parameter: str = "w"
     width_is: WidthMeaning = "total"
     fingers_parameter: str | None = None
