@@ -140,7 +140,7 @@ def random_card(pick: random.Random) -> str:
 
 def tame_card(pick: random.Random) -> str:
     """Return a card that is most likely right."""
-    nodes = " ".join(pick.choice(WORDS[:13]) for _ in range(4))
+    nodes = " ".join(pick.choice(WORDS[:13]) for _ in range(pick.choice([4, 4, 4, 5, 6])))
     if pick.random() < 0.2:
         nodes = pick.choice(["(%s)", "( %s )", "(%s)\n+ "]) % nodes
     names = pick.choice(["", "w", "wl", "lw", "wlm", ["w", "off"]])

@@ -230,7 +230,7 @@ def _pieces(statement: Statement, text: bytes) -> list[_Piece]:
             pieces.append(_Piece(terminal(mark.terminal), None))
         else:
             role = _role(statement, pieces)
-            pieces.append(_Piece(_possessive(mark.terminal), role))
+            pieces.append(_Piece(_guard(statement, pieces) + _possessive(mark.terminal), role))
         position += 1
     return pieces
 
@@ -245,6 +245,17 @@ def _continues_run(marks: tuple[Mark, ...], position: int) -> bool:
 
 def _begins_run(rule: str, mark: Mark, before: _Piece) -> bool:
     return mark.terminal == "WORD" and rule == "call" and before.pattern not in _BEFORE_TARGET
+
+
+def _guard(statement: Statement, before: list[_Piece]) -> str:
+    """Return what keeps a word from being a sign where the grammar would rather have that.
+
+    From the sixth word of a transistor on, ``off`` may stand in the place of a word.
+    """
+    words = sum(piece.role == "node" for piece in before)
+    bracketed = any(piece.pattern == terminal("OPEN") for piece in before)
+    signs = statement.rule == "transistor" and words > 4 and not bracketed
+    return f"(?!{terminal('OFF')})" if signs and before[-1].pattern != "=" else ""
 
 
 def _role(statement: Statement, before: list[_Piece]) -> Role:
