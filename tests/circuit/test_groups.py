@@ -6,8 +6,10 @@ import random
 from typing import TYPE_CHECKING
 
 import networkx as nx
+import numpy as np
 from hypothesis import given, settings
 
+from evenstage.circuit.apart import set_apart
 from evenstage.circuit.gate import recognise_network
 from evenstage.circuit.groups import group
 from evenstage.circuit.supplies import find_supplies
@@ -15,15 +17,25 @@ from support.blocks import block, circuit_of, devices_of, inverter, nand, plain_
 from support.random_blocks import RandomBlock, random_blocks
 
 if TYPE_CHECKING:
+    from evenstage.circuit.groups import AlikeGroups
     from evenstage.netlist.devices import Devices
+
+
+def grouped(devices: Devices) -> tuple[AlikeGroups, ...]:
+    """Return the groups of a block, as recognition makes them."""
+    supplies = find_supplies(devices)
+    apart, levels = set_apart(devices, supplies)
+    logic = np.ones(len(devices), bool)
+    for some in apart:
+        logic[some.devices] = False
+    return group(devices, supplies, logic, levels)
 
 
 def groups(devices: Devices) -> set[frozenset[str]]:
     """Return the names of the transistors of each group."""
-    found = group(devices, find_supplies(devices))
     return {
         frozenset(name(devices, device) for device in members)
-        for some in found.alike
+        for some in grouped(devices)
         for members in some.devices.tolist()
     }
 
@@ -67,7 +79,7 @@ class TestGroup:
     def test_every_row_is_drawn_as_its_network_says(self, drawn: RandomBlock) -> None:
         devices = devices_of(drawn.text(), plain_process())
         supplies = find_supplies(devices)
-        for some in group(devices, supplies).alike:
+        for some in grouped(devices):
             for members, nets in zip(some.devices.tolist(), some.nets.tolist(), strict=True):
                 for device, switch in zip(members, some.network, strict=True):
                     ends = (devices.drain, devices.gate, devices.source)
@@ -95,13 +107,11 @@ class TestGroup:
             ]
         )
         devices = devices_of(block(cards, "a d"), plain_process())
-        found = group(devices, find_supplies(devices))
-        assert [len(some.devices) for some in found.alike] == [2, 1]
-        assert found.alike[0].devices[:, 0].tolist() == [0, 6]
+        found = grouped(devices)
+        assert [len(some.devices) for some in found] == [2, 1]
+        assert found[0].devices[:, 0].tolist() == [0, 6]
 
     def test_a_transistor_between_supplies_is_in_no_group(self) -> None:
         cards = inverter("i", "a", "y", 1, 2) + "\nmc vdd vss vdd vdd px w=9u l=0.1u"
         devices = devices_of(block(cards, "a y"), plain_process())
-        found = group(devices, find_supplies(devices))
-        assert [name(devices, device) for device in found.across.tolist()] == ["mc"]
-        assert len(found.alike) == 1
+        assert groups(devices) == {frozenset({"min", "mip"})}

@@ -15,6 +15,7 @@ from evenstage.circuit.names import Names
 from evenstage.circuit.tables import AlikeGates, Pins, arcs_of, pins_of
 
 if TYPE_CHECKING:
+    from evenstage.circuit.apart import Apart
     from evenstage.circuit.arcs import Arcs
     from evenstage.circuit.network import BoolArray
     from evenstage.circuit.supplies import Supplies
@@ -59,8 +60,8 @@ class Circuit:
     alike : tuple of AlikeGates
         Gates by form; every gate in exactly one.
     not_understood : tuple of NotUnderstood
-    across : IntArray
-        Devices between supplies (decoupling, dummies): they only load their gate net.
+    apart : tuple of Apart
+        Devices outside all logic (decoupling, dummies, ties): they only load their nets.
     outside_cap : FloatArray, F, shape (nets,)
         What the brief, or the default of four unit inverters, hangs on outputs.
     gate_output : IntArray, shape (gates,)
@@ -79,7 +80,7 @@ class Circuit:
     supplies: Supplies
     alike: tuple[AlikeGates, ...] = field(repr=False)
     not_understood: tuple[NotUnderstood, ...]
-    across: IntArray = field(repr=False)
+    apart: tuple[Apart, ...] = field(repr=False)
     outside_cap: FloatArray = field(repr=False)
     gate_output: IntArray = field(repr=False)
     gate_instance: IntArray = field(repr=False)
@@ -101,17 +102,27 @@ class Circuit:
         return wire_capacitance(self.devices)
 
     @cached_property
-    def other_cap(self) -> FloatArray:
-        """Gates of transistors that belong to no recognised gate, F, shape (nets,)."""
-        parts = [self.across, *(some.devices.ravel() for some in self.not_understood)]
-        strange = np.concatenate(parts)
+    def strange_cap(self) -> FloatArray:
+        """Gates of transistors that were not understood, F, shape (nets,)."""
+        strange = _joined([some.devices.ravel() for some in self.not_understood])
         cap = self.electrical.gate.today[strange]
         return at_nets(self.devices.gate[strange], cap, len(self.devices.net_names))
 
     @cached_property
+    def apart_cap(self) -> FloatArray:
+        """Gates, drains and sources of transistors outside all logic, F, shape (nets,)."""
+        which, nets = _joined([some.devices for some in self.apart]), len(self.devices.net_names)
+        values, devices = self.electrical, self.devices
+        return (
+            at_nets(devices.gate[which], values.gate.today[which], nets)
+            + at_nets(devices.drain[which], values.drain.today[which], nets)
+            + at_nets(devices.source[which], values.source.today[which], nets)
+        )
+
+    @cached_property
     def fixed_cap(self) -> FloatArray:
         """Everything outside recognised gates that loads a net, F, shape (nets,)."""
-        return self.wire_cap + self.other_cap + self.outside_cap
+        return self.wire_cap + self.apart_cap + self.strange_cap + self.outside_cap
 
     @cached_property
     def pins(self) -> Pins:
@@ -133,7 +144,7 @@ class Circuit:
     @cached_property
     def arcs(self) -> Arcs:
         """Arcs of all gates."""
-        return arcs_of(self.alike, self.electrical, self.wire_cap)
+        return arcs_of(self.alike, self.electrical, self.wire_cap + self.apart_cap)
 
     @cached_property
     def net_cap(self) -> FloatArray:
@@ -265,6 +276,10 @@ class Circuit:
         driver = np.full(len(self.devices.net_names), -1, np.int32)
         driver[self.gate_output] = np.arange(len(self))
         return driver
+
+
+def _joined(parts: list[IntArray]) -> IntArray:
+    return np.concatenate([np.zeros(0, np.int32), *parts])
 
 
 def wire_capacitance(devices: Devices) -> FloatArray:

@@ -1,6 +1,7 @@
 """Channel-connected groups, and which of them are drawn alike.
 
-Transistors whose drains and sources meet, other than in a supply, form a group. Written down device
+Transistors whose drains and sources meet, other than in a supply, form a group;
+those outside all logic (`evenstage.circuit.apart`) are in none. Written down device
 by device with its nets numbered as they appear, a group becomes a row of small integers; equal rows
 mean equal networks. All of it is array work: nothing here loops over devices or nets.
 """
@@ -17,6 +18,8 @@ from scipy.sparse.csgraph import connected_components
 from evenstage.circuit.network import HIGH, LOW, Switch
 
 if TYPE_CHECKING:
+    from evenstage.circuit.apart import Levels
+    from evenstage.circuit.network import BoolArray
     from evenstage.circuit.supplies import Supplies
     from evenstage.netlist.devices import Devices, IntArray
 
@@ -40,46 +43,45 @@ class AlikeGroups:
     nets: IntArray
 
 
-@dataclass(frozen=True)
-class Grouping:
-    """Every device of a block in its group.
+def group(
+    devices: Devices, supplies: Supplies, logic: BoolArray, levels: Levels
+) -> tuple[AlikeGroups, ...]:
+    """Group devices of a block by channel connection.
 
     Parameters
     ----------
-    alike : tuple of AlikeGroups
+    devices : Devices
+    supplies : Supplies
+        Where channels end.
+    logic : BoolArray, shape (devices,)
+        Devices to group: at least one channel end of each is no supply.
+    levels : Levels
+        Nets that never move, as gates see them.
+
+    Returns
+    -------
+    tuple of AlikeGroups
         In the order of their first device.
-    across : IntArray
-        Devices with both channel ends on supplies; they belong to no group.
     """
-
-    alike: tuple[AlikeGroups, ...]
-    across: IntArray
-
-
-def group(devices: Devices, supplies: Supplies) -> Grouping:
-    """Group the devices of a block by channel connection."""
-    drain_is_supply = supplies.is_supply[devices.drain]
-    source_is_supply = supplies.is_supply[devices.source]
-    across = np.flatnonzero(drain_is_supply & source_is_supply).astype(np.int32)
-    label = _labels(devices, supplies)
-    members = np.flatnonzero(~(drain_is_supply & source_is_supply))
+    members = np.flatnonzero(logic)
+    label = _labels(devices, supplies, logic)
     order = members[np.argsort(label[members], kind="stable")].astype(np.int32)
     ordered_label = label[order]
     starts = np.flatnonzero(np.diff(ordered_label, prepend=-1))
     sizes = np.diff(starts, append=len(order))
-    numbers = _local_nets(devices, supplies, order, ordered_label)
+    numbers = _local_nets(devices, (supplies, levels), order, ordered_label)
     alike: list[AlikeGroups] = []
     for size in np.unique(sizes):
         rows = starts[sizes == size][:, None] + np.arange(size)
         alike.extend(_alike(devices, order[rows], numbers[rows]))
     alike.sort(key=lambda groups: int(groups.devices[0, 0]))
-    return Grouping(tuple(alike), across)
+    return tuple(alike)
 
 
-def _labels(devices: Devices, supplies: Supplies) -> IntArray:
+def _labels(devices: Devices, supplies: Supplies, logic: BoolArray) -> IntArray:
     """Return each device's group, numbered by first device."""
     nets = len(devices.net_names)
-    inner = ~(supplies.is_supply[devices.drain] | supplies.is_supply[devices.source])
+    inner = logic & ~(supplies.is_supply[devices.drain] | supplies.is_supply[devices.source])
     ends = (devices.drain[inner], devices.source[inner])
     links = coo_array((np.ones(len(ends[0]), np.int8), ends), shape=(nets, nets))
     _, component = connected_components(links, directed=False)
@@ -91,13 +93,19 @@ def _labels(devices: Devices, supplies: Supplies) -> IntArray:
     return result
 
 
-def _local_nets(devices: Devices, supplies: Supplies, order: IntArray, label: IntArray) -> IntArray:
+def _local_nets(
+    devices: Devices, still: tuple[Supplies, Levels], order: IntArray, label: IntArray
+) -> IntArray:
     """Return drain, gate and source of each ordered device as local nets, shape (devices, 3)."""
+    supplies, levels = still
     nets = np.stack([devices.drain[order], devices.gate[order], devices.source[order]], axis=1)
     flat = nets.ravel().astype(np.int64)
     pair = np.repeat(label.astype(np.int64), 3) * len(devices.net_names) + flat
-    signal = ~supplies.is_supply[flat]
-    local = np.where(supplies.is_high[flat], HIGH, LOW).astype(np.int32)
+    is_gate = np.tile([False, True, False], len(order))
+    high = np.where(is_gate, levels.high[flat], supplies.is_high[flat])
+    low = np.where(is_gate, levels.low[flat], supplies.is_low[flat])
+    signal = ~(high | low)
+    local = np.where(high, HIGH, LOW).astype(np.int32)
     unique, first, inverse = np.unique(pair[signal], return_index=True, return_inverse=True)
     # Number the nets of each group by first appearance: sort (group, first place), count from the
     # group's first.

@@ -66,6 +66,25 @@ class Unknown:
     names: tuple[str, ...]
 
 
+@dataclass(frozen=True, slots=True)
+class Outside:
+    """Transistors outside all logic that play one part in one subcircuit.
+
+    Parameters
+    ----------
+    subcircuit, role : str
+    devices : int
+        How many.
+    names : tuple of str
+        The transistors, at most `evenstage.circuit.names.NAMES_MAX`.
+    """
+
+    subcircuit: str
+    role: str
+    devices: int
+    names: tuple[str, ...]
+
+
 @dataclass(frozen=True, kw_only=True)
 class Inventory:
     """The contents of a block.
@@ -80,6 +99,8 @@ class Inventory:
         Supply nets.
     entries : tuple of Entry
         By subcircuit, callers first, then by kind and first occurrence.
+    outside : tuple of Outside
+        By subcircuit, then by role.
     not_understood : tuple of Unknown
     notices : tuple of Notice
     circuit : Circuit
@@ -94,6 +115,7 @@ class Inventory:
     high: tuple[str, ...]
     low: tuple[str, ...]
     entries: tuple[Entry, ...]
+    outside: tuple[Outside, ...]
     not_understood: tuple[Unknown, ...]
     notices: tuple[Notice, ...]
     circuit: Circuit = field(repr=False, compare=False)
@@ -112,6 +134,7 @@ def take_inventory(circuit: Circuit) -> Inventory:
         high=tuple(names[net] for net in np.flatnonzero(supplies.is_high).tolist()),
         low=tuple(names[net] for net in np.flatnonzero(supplies.is_low).tolist()),
         entries=_entries(circuit),
+        outside=_outside(circuit),
         not_understood=_unknown(circuit),
         notices=circuit.notices,
         circuit=circuit,
@@ -147,6 +170,19 @@ def _entry(circuit: Circuit, gate: int, count: int) -> Entry:
         function=circuit.gate_function(gate),
         inputs=tuple(circuit.local_name(gate, local) for local in form.network.inputs),
     )
+
+
+def _outside(circuit: Circuit) -> tuple[Outside, ...]:
+    devices = circuit.devices
+    found = []
+    for some in circuit.apart:
+        holder = devices.instance_subcircuit[devices.instance[some.devices]]
+        for subcircuit in np.unique(holder).tolist():
+            which = some.devices[holder == subcircuit]
+            names = device_names(devices, which)
+            name = devices.subcircuits[subcircuit]
+            found.append((subcircuit, some.role, Outside(name, some.role, len(which), names)))
+    return tuple(outside for _, _, outside in sorted(found, key=lambda one: one[:2]))
 
 
 def _unknown(circuit: Circuit) -> tuple[Unknown, ...]:

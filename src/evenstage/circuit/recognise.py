@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.circuit.apart import set_apart
 from evenstage.circuit.circuit import Circuit, NotUnderstood
 from evenstage.circuit.groups import group
 from evenstage.circuit.names import device_names
@@ -54,8 +55,11 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
             f"'{devices.top or 'the top level'}' holds no transistors", code="no-transistors"
         )
     supplies = find_supplies(devices, brief)
-    grouping = group(devices, supplies)
-    found = sort_groups(devices, grouping.alike)
+    apart, levels = set_apart(devices, supplies)
+    logic = np.ones(len(devices), bool)
+    for part in apart:
+        logic[part.devices] = False
+    found = sort_groups(devices, group(devices, supplies, logic, levels))
     alike, strange = _numbered(found), _not_understood(found)
     output = np.empty(sum(len(some.gates) for some in alike), np.int32)
     for some in alike:
@@ -68,7 +72,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         supplies=supplies,
         alike=alike,
         not_understood=strange,
-        across=grouping.across,
+        apart=apart,
         outside_cap=np.zeros(len(devices.net_names)),
         gate_output=output,
         gate_instance=owner,
@@ -164,7 +168,7 @@ def _with_ends(circuit: Circuit, brief: Brief | None) -> Circuit:
 
 def _natural_ends(circuit: Circuit) -> dict[int, str]:
     """Return driven nets that are ports, load nothing, or enter what was not understood."""
-    strange = circuit.other_cap > 0
+    strange = circuit.strange_cap > 0
     is_output = ~strange
     is_output[circuit.pins.net] = False
     is_output[list(circuit.devices.ports)] = True

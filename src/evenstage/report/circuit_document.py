@@ -29,6 +29,15 @@ def inventory_body(inventory: Inventory) -> Document:
         "supplies": {"high": list(inventory.high), "low": list(inventory.low)},
         "subcircuits": _subcircuits(inventory.entries),
         "gates": _gates(inventory.circuit),
+        "outside_logic": [
+            {
+                "subcircuit": some.subcircuit,
+                "role": some.role,
+                "devices": some.devices,
+                "names": list(some.names),
+            }
+            for some in inventory.outside
+        ],
         "not_understood": [
             {
                 "reason": some.reason,

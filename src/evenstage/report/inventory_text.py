@@ -47,6 +47,7 @@ def inventory_report(
     lines = [*paper.paragraph(f"{inventory.source}, {block}"), ""]
     lines += paper.paragraph(_answer(inventory))
     lines += section("Gates", _entry_lines(paper, inventory.entries))
+    lines += section("Transistors outside all logic", _outside_lines(paper, inventory))
     lines += section("Not understood, timed as loads only", _unknown_lines(paper, inventory))
     lines += section("Supplies", _supply_lines(paper, inventory))
     if notices:
@@ -98,6 +99,25 @@ def _entry_lines(paper: Paper, entries: Sequence[Entry]) -> list[str]:
         left = sum(entry.count for entry in entries[most:])
         lines.append(f"  and {len(entries) - most} lines more, of {counted(left, 'gate')}")
     return lines
+
+
+def _outside_lines(paper: Paper, inventory: Inventory) -> list[str]:
+    if not inventory.outside:
+        return []
+    rows, before = [], None
+    for some in inventory.outside:
+        place = (some.subcircuit or "top level") if some.subcircuit != before else ""
+        names = listed(gathered(some.names, paper.times), _NAMES_SHOWN)
+        rows.append([place, some.role, str(some.devices), names])
+        before = some.subcircuit
+    columns = [
+        Column("subcircuit", kind="name"),
+        Column("part"),
+        Column("number", align="right"),
+        Column("transistors", kind="name"),
+    ]
+    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
+    return table.lines(rows)
 
 
 def _unknown_lines(paper: Paper, inventory: Inventory) -> list[str]:

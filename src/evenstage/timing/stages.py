@@ -188,11 +188,25 @@ def _fixed_loads(circuit: Circuit, net: int) -> list[SideBranch]:
         card, instance = devices.capacitor_card[index], devices.capacitor_instance[index]
         name = devices.card_path(int(card), int(instance))
         found.append(SideBranch(instance=name, pin="wire", cap=float(devices.capacitance[index])))
-    strange = np.flatnonzero((circuit.gate_of_device < 0) & (devices.gate == net))
-    for device in strange.tolist():
-        name = devices.card_path(int(devices.card[device]), int(devices.instance[device]))
-        cap = float(circuit.electrical.gate.today[device])
-        found.append(SideBranch(instance=name, pin="gate", cap=cap))
+    found += _other_transistors(circuit, net)
     if circuit.outside_cap[net] > 0:
         found.append(SideBranch(instance="", pin="load", cap=float(circuit.outside_cap[net])))
+    return found
+
+
+def _other_transistors(circuit: Circuit, net: int) -> list[SideBranch]:
+    """Return the transistors in no gate that load a net, by their gates or their channels."""
+    devices, values = circuit.devices, circuit.electrical
+    outside = np.flatnonzero(circuit.gate_of_device < 0)
+    apart = np.concatenate([np.zeros(0, np.int32), *(some.devices for some in circuit.apart)])
+    found = []
+    for pin, nets, capacitance, which in (
+        ("gate", devices.gate, values.gate, outside),
+        ("drain", devices.drain, values.drain, apart),
+        ("source", devices.source, values.source, apart),
+    ):
+        for device in which[nets[which] == net].tolist():
+            name = devices.card_path(int(devices.card[device]), int(devices.instance[device]))
+            cap = float(capacitance.today[device])
+            found.append(SideBranch(instance=name, pin=pin, cap=cap))
     return found
