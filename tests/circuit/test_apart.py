@@ -31,7 +31,7 @@ def roles(cards: str, ports: str = "a y") -> dict[str, str]:
         (["n", "vdd", "vss", "vss"], "dummy"),
         (["n", "vss", "y", "vss"], "gate as a capacitor"),
         (["p", "vdd", "a", "vdd"], "gate as a capacitor"),
-        (["n", "y", "vss", "vss"], "held off"),
+        (["n", "a", "vss", "vss"], "held off"),
         (["p", "y", "vdd", "a"], "held off"),
         (["n", "y", "a", "y"], "channel shorted"),
         (["p", "vdd", "a", "vss"], "between supplies"),
@@ -52,9 +52,15 @@ def test_a_dummy_between_two_gates_does_not_join_them() -> None:
     assert not circuit.not_understood
 
 
+def test_an_unused_input_of_a_gate_stays_in_the_gate() -> None:
+    circuit = circuit_of(block(nand("g", ["a", "vdd"], "y", 2, 2), "a y"))
+    assert circuit.apart == ()
+    assert len(circuit.gate_devices(0)) == 4
+
+
 def test_a_dummy_loads_what_it_touches() -> None:
     """Its drain of 3 um and a capacitor's gate of 5 um, at 1 fF a micron each."""
-    cards = [transistor("n", "y", "vss", "vss", 3, "x"), transistor("n", "vss", "y", "vss", 5, "c")]
+    cards = [transistor("n", "y", "vss", "k", 3, "x"), transistor("n", "vss", "y", "vss", 5, "c")]
     bare, loaded = (
         circuit_of(block("\n".join([INV, *more, inverter("j", "y", "z", 1, 2)]), "a z"))
         for more in ([], cards)
@@ -75,7 +81,7 @@ def test_a_dummy_on_an_inner_node_belongs_to_the_gate() -> None:
     stack = nand("g", ["a", "b"], "y", 2, 2)
     bare, loaded = (
         circuit_of(block(f"{stack}\n{more}", "a b y"))
-        for more in ("", transistor("n", "gn1", "vss", "vss", 4, "x"))
+        for more in ("", transistor("n", "gn1", "vss", "k", 4, "x"))
     )
     # Rising by b charges the inner node too: 4 fF through a p transistor of 1 kohm.
     paths = [analyse(circuit, start="b").paths[0] for circuit in (bare, loaded)]

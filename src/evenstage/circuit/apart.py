@@ -104,7 +104,7 @@ def _roles(
             ends & same & ~still,
             ends,
             tie,
-            off,
+            off & ~_unused_input(channels, supplies, off | tie),
             channels.shorted,
         ],
         [1, 2, 5, 7, 6, 3, 4],
