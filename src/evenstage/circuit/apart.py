@@ -113,6 +113,20 @@ def _roles(
     return result
 
 
+def _unused_input(channels: _Channels, supplies: Supplies, idle: BoolArray) -> BoolArray:
+    """Tell which devices lead from a supply to a net that others move.
+
+    Held off, such a device is the unused input of a gate as often as a dummy, and it joins nothing:
+    it stays in the gate.
+    """
+    devices, nets = channels.devices, len(supplies.is_high)
+    active = ~idle & ~channels.shorted
+    moved = _marked(nets, devices.drain[active]) | _marked(nets, devices.source[active])
+    moved &= ~supplies.is_supply
+    to_supply = supplies.is_supply[devices.drain] ^ supplies.is_supply[devices.source]
+    return to_supply & (moved[devices.drain] | moved[devices.source])
+
+
 def _held(channels: _Channels, supplies: Supplies, biased: BoolArray) -> tuple[Levels, BoolArray]:
     """Return the nets that never move, and the devices that hold those that are no supplies.
 
