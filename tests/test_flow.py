@@ -74,7 +74,7 @@ class TestUnitInverter:
     ) -> None:
         output, sizing = shrunk(netlist, question)
         assert min(change.new for change in sizing.changes) < 1e-6
-        again = flow.analyse(output, question)
+        again = flow.load(output, question).analysis
         assert again.yardstick == sizing.after.yardstick
         assert again.paths[0].delay == pytest.approx(sizing.after.paths[0].delay, rel=1e-12)
 
@@ -84,14 +84,15 @@ class TestUnitInverter:
         after = netlist.with_name("after.sp")
         after.write_bytes(CHAIN.replace("wn=1u", "wn=0.5u").encode())
         difference = flow.diff(netlist, after, question)
+        assert isinstance(difference, flow.Difference)
         assert difference.after.yardstick == difference.before.yardstick
 
     def test_a_netlist_alone_is_measured_by_its_own(
         self, netlist: Path, question: flow.Question
     ) -> None:
-        before = flow.analyse(netlist, question).yardstick
+        before = flow.load(netlist, question).analysis.yardstick
         netlist.write_bytes(CHAIN.replace("wn=1u", "wn=0.5u").encode())
-        assert flow.analyse(netlist, question).yardstick.input_cap == pytest.approx(
+        assert flow.load(netlist, question).analysis.yardstick.input_cap == pytest.approx(
             before.input_cap / 2
         )
 

@@ -115,8 +115,9 @@ def _run(asked: argparse.Namespace) -> None:
 
 def _inputs(asked: argparse.Namespace) -> list[Path]:
     """Return the files that a command reads, and the netlist that it writes."""
-    names = ("netlist", "before", "after", "process", "brief", "output")
-    return [path for name in names if (path := getattr(asked, name, None)) is not None]
+    names = ("netlist", "before", "after", "brief", "output")
+    others = [path for name in names if (path := getattr(asked, name, None)) is not None]
+    return [*asked.process, *others]
 
 
 def _print(text: str) -> None:
@@ -189,7 +190,8 @@ def _question(asked: argparse.Namespace) -> flow.Question:
     from evenstage import flow
 
     return flow.Question(
-        process=asked.process,
+        process=asked.process[0] if asked.process else None,
+        corners=tuple(asked.process[1:]),
         brief=asked.brief,
         top=asked.top,
         start=getattr(asked, "from", None),
@@ -258,7 +260,14 @@ def _command(
 def _shared(parser: argparse.ArgumentParser, *, paths: bool = True) -> None:
     """Add what every command takes, and what those on paths take."""
     add = parser.add_argument
-    add("--process", type=_file, metavar="FILE", help="what a micron of transistor is worth")
+    add(
+        "--process",
+        type=_file,
+        action="append",
+        default=[],
+        metavar="FILE",
+        help="what a micron of transistor is worth; again for each further corner",
+    )
     add("--brief", type=_file, metavar="FILE", help="what the netlist does not say: loads, limits")
     add("--top", metavar="NAME", help="the subcircuit to work on (the one nobody calls)")
     if paths:

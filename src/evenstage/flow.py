@@ -9,8 +9,9 @@ import numpy as np
 
 from evenstage.brief import Brief, read_brief
 from evenstage.circuit.inventory import Inventory, take_inventory
+from evenstage.circuit.recognise import in_process
 from evenstage.circuit.recognise import recognise as find_gates
-from evenstage.errors import Notice, OutputError, SettingsError
+from evenstage.errors import OutputError, SettingsError
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading.read import read
 from evenstage.netlist.rewriting.edits import rewrite
@@ -25,28 +26,18 @@ from evenstage.process.generic import at_length
 from evenstage.process.infer import infer_process
 from evenstage.process.read import read_process
 from evenstage.report.graph_document import graph_document
-from evenstage.report.machine import (
-    analysis_document,
-    difference_document,
-    inventory_document,
-    sizing_document,
-    to_json,
-)
-from evenstage.report.terminal import (
-    analysis_report,
-    difference_report,
-    inventory_report,
-    sizing_report,
-)
+from evenstage.report.results import Result, json, notices, text
 from evenstage.sizing.named import refuse_unknown_names
 from evenstage.sizing.resize import resize as find_widths
 from evenstage.sizing.results import Sizing
 from evenstage.sizing.wishes import Original, Wishes
 from evenstage.timing.analyse import analyse as find_paths
 from evenstage.timing.compare import compare
+from evenstage.timing.corners import Corners, CornersDifference, merged
 from evenstage.timing.results import Analysis, Difference
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
     from pathlib import Path
 
     from evenstage.circuit.circuit import Circuit
@@ -57,6 +48,8 @@ if TYPE_CHECKING:
 __all__ = [
     "Analysis",
     "Block",
+    "Corners",
+    "CornersDifference",
     "Difference",
     "Inventory",
     "Question",
@@ -75,8 +68,6 @@ __all__ = [
     "write_text",
 ]
 
-Result = Analysis | Sizing | Difference | Inventory
-
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Question:
@@ -86,6 +77,8 @@ class Question:
     ----------
     process, brief : Path, optional
         Their files.
+    corners : tuple of Path
+        Files of further processes.
     top : str, optional
         The subcircuit to work on.
     start, end : str, optional
@@ -96,6 +89,7 @@ class Question:
 
     process: Path | None = None
     brief: Path | None = None
+    corners: tuple[Path, ...] = ()
     top: str | None = None
     start: str | None = None
     end: str | None = None
@@ -138,6 +132,48 @@ def load(path: Path, question: Question, unit: Process | None = None) -> Block:
     return Block(circuit.devices.netlist, brief, circuit.process, analysis, record)
 
 
+def _in_corners(
+    path: Path, question: Question, units: Sequence[Process | None] = ()
+) -> tuple[Block, ...]:
+    """Return the block in each corner asked for, the netlist laid out once where that serves all.
+
+    Raises
+    ------
+    EvenstageError
+        As `load`.
+    """
+    first = load(path, question, units[0] if units else None)
+    blocks = [first]
+    for index, corner in enumerate(question.corners, 1):
+        process, unit = read_process(corner), units[index] if units else None
+        timing = first.analysis.timing
+        if timing is None or process.drawing != first.process.drawing:
+            blocks.append(load(path, replace(question, process=corner, corners=()), unit))
+            continue
+        process = _measured(process, timing.circuit.devices, first.record, unit)
+        circuit = in_process(timing.circuit, process, first.brief)
+        analysis = find_paths(
+            circuit, first.brief, start=question.start, end=question.end, count=question.count
+        )
+        blocks.append(replace(first, process=circuit.process, analysis=analysis))
+    return tuple(blocks)
+
+
+def _one_process(question: Question, command: str) -> None:
+    """Refuse further corners where a command knows only one.
+
+    Raises
+    ------
+    SettingsError
+        Where there are some.
+    """
+    if question.corners:
+        raise SettingsError(
+            f"{command} takes one process, got {1 + len(question.corners)}; give --process once",
+            code="several-corners",
+        )
+
+
 def _recognised(
     path: Path, question: Question, unit: Process | None = None
 ) -> tuple[Circuit, Brief, Record | None]:
@@ -162,21 +198,28 @@ def recognise(path: Path, question: Question, graph: Path | None = None) -> Inve
     OutputError
         Where the graph cannot be written.
     """
+    _one_process(question, "recognise")
     circuit, _, _ = _recognised(path, question)
     if graph is not None:
         write_text(graph, graph_document(circuit), force=True)
     return take_inventory(circuit)
 
 
-def analyse(path: Path, question: Question) -> Analysis:
-    """Find the slowest paths of a netlist; raises as `load`."""
-    return load(path, question).analysis
+def analyse(path: Path, question: Question) -> Analysis | Corners:
+    """Find the slowest paths of a netlist, over all corners asked for; raises as `load`."""
+    analyses = [block.analysis for block in _in_corners(path, question)]
+    return merged(analyses) if question.corners else analyses[0]
 
 
-def diff(before: Path, after: Path, question: Question) -> Difference:
-    """Compare two netlists of one design; raises as `load`."""
-    first = load(before, question)
-    return compare(first.analysis, load(after, question, first.process).analysis)
+def diff(before: Path, after: Path, question: Question) -> Difference | CornersDifference:
+    """Compare two netlists of one design, in all corners asked for; raises as `load`."""
+    first = _in_corners(before, question)
+    second = _in_corners(after, question, [block.process for block in first])
+    old, new = ([block.analysis for block in blocks] for blocks in (first, second))
+    differences = tuple(map(compare, old, new))
+    if not question.corners:
+        return differences[0]
+    return CornersDifference(before=merged(old), after=merged(new), differences=differences)
 
 
 def resize(
@@ -196,6 +239,7 @@ def resize(
     OutputError
         Where the output exists (without ``force``) or cannot be written.
     """
+    _one_process(question, "resize")
     if output is not None and output.exists() and not force:
         raise OutputError(
             f"'{output}' exists; choose another name, or say --force to overwrite it",
@@ -226,41 +270,6 @@ def write_text(path: Path, content: str, *, force: bool) -> None:
         Where it exists (without ``force``) or cannot be written.
     """
     write_files({path: content.encode("utf-8", "surrogateescape")}, force=force)
-
-
-def text(
-    result: Result, *, width: int = 100, unicode: bool = True, with_notices: bool = True
-) -> str:
-    """Return a result as a report for people, with or without its notices."""
-    if isinstance(result, Analysis):
-        return analysis_report(result, width=width, unicode=unicode, notices=with_notices)
-    if isinstance(result, Sizing):
-        return sizing_report(result, width=width, unicode=unicode, notices=with_notices)
-    if isinstance(result, Inventory):
-        return inventory_report(result, width=width, unicode=unicode, notices=with_notices)
-    return difference_report(result, width=width, unicode=unicode, notices=with_notices)
-
-
-def json(result: Result) -> str:
-    """Return a result as JSON text."""
-    if isinstance(result, Analysis):
-        return to_json(analysis_document(result))
-    if isinstance(result, Sizing):
-        return to_json(sizing_document(result))
-    if isinstance(result, Inventory):
-        return to_json(inventory_document(result))
-    return to_json(difference_document(result))
-
-
-def notices(result: Result) -> tuple[Notice, ...]:
-    """Return everything a result has to say besides itself, each once."""
-    if isinstance(result, Sizing):
-        some = (*result.before.notices, *result.notices)
-    elif isinstance(result, Difference):
-        some = (*result.before.notices, *result.after.notices)
-    else:
-        some = result.notices
-    return tuple(dict.fromkeys(some))
 
 
 def _inferred(

@@ -83,6 +83,30 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
     return _with_ends(circuit, brief) if alike else circuit
 
 
+def in_process(circuit: Circuit, process: Process, brief: Brief | None = None) -> Circuit:
+    """Return the gates of a block in another process, as if recognised there.
+
+    Parameters
+    ----------
+    circuit : Circuit
+    process : Process
+        With transistor types that cover the same models in the same order.
+    brief : Brief, optional
+        That of the circuit.
+    """
+    devices = circuit.devices
+    process = _with_unit(process, devices)
+    strange = _strange_notices(devices, circuit.not_understood)
+    moved = replace(
+        circuit,
+        process=process,
+        outside_cap=np.zeros(len(devices.net_names)),
+        ends={},
+        notices=(*devices.notices, *process.notices, *strange),
+    )
+    return _with_ends(moved, brief) if circuit.alike else moved
+
+
 def _numbered(found: Sorted) -> tuple[AlikeGates, ...]:
     """Give every gate a number: its rank by first device."""
     if not found.gates:

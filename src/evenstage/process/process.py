@@ -160,3 +160,15 @@ class Process:
     def first(self, polarity: Polarity) -> Transistor:
         """Return the first transistor type of a polarity; it makes the unit inverter."""
         return next(t for t in self.transistors if t.polarity == polarity)
+
+    @property
+    def drawing(self) -> tuple[object, ...]:
+        """What the layout of a netlist takes from it: equal for corners of one process."""
+        return tuple(
+            (
+                tuple(pattern.text for pattern in one.models),
+                *(one.polarity, one.length, one.width_parameter, one.width_is),
+                *(one.fingers_parameter, one.width_unit, one.width_min),
+            )
+            for one in self.transistors
+        )

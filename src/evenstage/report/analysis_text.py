@@ -38,7 +38,7 @@ def analysis_report(
     lines = [*paper.paragraph(block_name(analysis)), ""]
     lines += paper.paragraph(_answer(analysis))
     for number, path in enumerate(analysis.paths, 1):
-        lines += _path_section(paper, analysis, number, path)
+        lines += path_section(paper, analysis, number, path)
     if analysis.paths:
         lines += ["", *legend(paper, analysis.yardstick)]
         title = f"Path ends, {rank(analysis)} first"
@@ -57,12 +57,12 @@ def _answer(analysis: Analysis) -> str:
     return " ".join(
         [
             f"The {rank(analysis)} path, {route(slowest)}, {takes(slowest, analysis.yardstick)}.",
-            *_circumstances(slowest),
+            *circumstances(slowest),
         ]
     )
 
 
-def _circumstances(path: Path) -> list[str]:
+def circumstances(path: Path) -> list[str]:
     """Return sentences on when a path begins and must end, where there is something to say."""
     sentences = []
     arrival = engineering(path.delay, "s")
@@ -75,12 +75,27 @@ def _circumstances(path: Path) -> list[str]:
     return sentences
 
 
-def _path_section(paper: Paper, analysis: Analysis, number: int, path: Path) -> list[str]:
+def path_section(
+    paper: Paper, analysis: Analysis, number: int, path: Path, where: str = ""
+) -> list[str]:
+    """Return the lines of one path, the first with its side branches and efforts.
+
+    Parameters
+    ----------
+    paper : Paper
+    analysis : Analysis
+        In which the path was timed.
+    number : int
+        From 1.
+    path : Path
+    where : str
+        What to add to the route.
+    """
     if number == 1:
         lines = [
             f"The {rank(analysis)} path, stage by stage",
             *path_lines(paper, path, branches=True),
         ]
         return ["", *lines, "", *effort_lines(paper, path, analysis.yardstick)]
-    title = f"Path {number}: {route(path)}, {takes(path, analysis.yardstick)}"
+    title = f"Path {number}: {route(path)}{where}, {takes(path, analysis.yardstick)}"
     return ["", *paper.paragraph(title), *path_lines(paper, path, branches=False)]

@@ -71,7 +71,7 @@ def sizing_document(sizing: Sizing) -> Document:
         "already_done": sizing.already_done,
         "changes": [_change(change) for change in sizing.changes],
         "holds": [_hold(hold) for hold in sizing.holds],
-        "notices": [_notice(notice) for notice in sizing.notices],
+        "notices": [notice_document(notice) for notice in sizing.notices],
         "before": _analysis(sizing.before),
         "after": _analysis(sizing.after),
     }
@@ -113,7 +113,7 @@ def inventory_document(inventory: Inventory) -> Document:
     dict
         Plain values only; ``kind`` is ``circuit``.
     """
-    notices: Document = {"notices": [_notice(notice) for notice in inventory.notices]}
+    notices: Document = {"notices": [notice_document(notice) for notice in inventory.notices]}
     return _head("circuit") | inventory_body(inventory) | notices
 
 
@@ -149,7 +149,7 @@ def _analysis(analysis: Analysis) -> Document:
     return {
         "source": analysis.source,
         "top": analysis.top,
-        "process": _yardstick(analysis.yardstick),
+        "process": yardstick_document(analysis.yardstick),
         "counts": {
             "devices": counts.devices,
             "nets": counts.nets,
@@ -160,13 +160,14 @@ def _analysis(analysis: Analysis) -> Document:
         "switched_cap_f": analysis.switched_cap,
         "worst_transition_s": analysis.worst_transition,
         "input_caps": [{"net": net, "cap_f": cap} for net, cap in analysis.input_caps],
-        "notices": [_notice(notice) for notice in analysis.notices],
-        "paths": [_path(path) for path in analysis.paths],
-        "ends": [_end(end) for end in analysis.ends],
+        "notices": [notice_document(notice) for notice in analysis.notices],
+        "paths": [path_document(path) for path in analysis.paths],
+        "ends": [end_document(end) for end in analysis.ends],
     }
 
 
-def _yardstick(yardstick: Yardstick) -> Document:
+def yardstick_document(yardstick: Yardstick) -> Document:
+    """Return a unit inverter as plain values."""
     return {
         "name": yardstick.process,
         "tau_s": yardstick.tau,
@@ -181,10 +182,11 @@ def _yardstick(yardstick: Yardstick) -> Document:
 
 
 def _optional_path(path: Path | None) -> Document | None:
-    return None if path is None else _path(path)
+    return None if path is None else path_document(path)
 
 
-def _path(path: Path) -> Document:
+def path_document(path: Path) -> Document:
+    """Return a path as plain values."""
     return {
         "from": path.start,
         "from_edge": path.start_edge,
@@ -237,7 +239,8 @@ def _side_branch(branch: SideBranch) -> Document:
     return {"instance": branch.instance, "pin": branch.pin, "cap_f": branch.cap}
 
 
-def _end(end: PathEnd) -> Document:
+def end_document(end: PathEnd) -> Document:
+    """Return a path end as plain values."""
     return {
         "net": end.net,
         "edge": end.edge,
@@ -248,7 +251,8 @@ def _end(end: PathEnd) -> Document:
     }
 
 
-def _notice(notice: Notice) -> Document:
+def notice_document(notice: Notice) -> Document:
+    """Return a notice as plain values."""
     return {
         "code": notice.code,
         "message": notice.message,

@@ -3,8 +3,16 @@
 from __future__ import annotations
 
 from evenstage.report.analysis_text import analysis_report
+from evenstage.report.corners_text import corners_difference_report, corners_report
 from evenstage.report.difference_text import difference_report
 from evenstage.report.inventory_text import inventory_report
 from evenstage.report.sizing_text import sizing_report
 
-__all__ = ["analysis_report", "difference_report", "inventory_report", "sizing_report"]
+__all__ = [
+    "analysis_report",
+    "corners_difference_report",
+    "corners_report",
+    "difference_report",
+    "inventory_report",
+    "sizing_report",
+]

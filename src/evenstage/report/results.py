@@ -1,0 +1,76 @@
+"""Any result of a command as text, as JSON, and what it has to say besides."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any, Final
+
+from evenstage.circuit.inventory import Inventory
+from evenstage.report.corners_document import corners_difference_document, corners_document
+from evenstage.report.machine import (
+    analysis_document,
+    difference_document,
+    inventory_document,
+    sizing_document,
+    to_json,
+)
+from evenstage.report.terminal import (
+    analysis_report,
+    corners_difference_report,
+    corners_report,
+    difference_report,
+    inventory_report,
+    sizing_report,
+)
+from evenstage.sizing.results import Sizing
+from evenstage.timing.corners import Corners, CornersDifference
+from evenstage.timing.results import Analysis, Difference
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from evenstage.errors import Notice
+    from evenstage.report.circuit_document import Document
+
+Result = Analysis | Corners | Sizing | Difference | CornersDifference | Inventory
+
+# Each takes the result it stands beside.
+_REPORTS: Final[dict[type, Callable[..., str]]] = {
+    Analysis: analysis_report,
+    Corners: corners_report,
+    Sizing: sizing_report,
+    Difference: difference_report,
+    CornersDifference: corners_difference_report,
+    Inventory: inventory_report,
+}
+_DOCUMENTS: Final[dict[type, Callable[[Any], Document]]] = {
+    Analysis: analysis_document,
+    Corners: corners_document,
+    Sizing: sizing_document,
+    Difference: difference_document,
+    CornersDifference: corners_difference_document,
+    Inventory: inventory_document,
+}
+
+
+def text(
+    result: Result, *, width: int = 100, unicode: bool = True, with_notices: bool = True
+) -> str:
+    """Return a result as a report for people, with or without its notices."""
+    report = _REPORTS[type(result)]
+    return report(result, width=width, unicode=unicode, notices=with_notices)
+
+
+def json(result: Result) -> str:
+    """Return a result as JSON text."""
+    return to_json(_DOCUMENTS[type(result)](result))
+
+
+def notices(result: Result) -> tuple[Notice, ...]:
+    """Return everything a result has to say besides itself, each once."""
+    if isinstance(result, Sizing):
+        some = (*result.before.notices, *result.notices)
+    elif isinstance(result, Difference | CornersDifference):
+        some = (*result.before.notices, *result.after.notices)
+    else:
+        some = result.notices
+    return tuple(dict.fromkeys(some))
