@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Protocol
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Iterator, Mapping, Sequence
+    from pathlib import Path
 
     from evenstage.errors import Notice
     from evenstage.netlist.callees import Callees
@@ -259,7 +260,12 @@ class Netlist:
     Parameters
     ----------
     sources : tuple of SourceText
-        The main file first.
+        The main file first, each once, whatever its names.
+    names : Mapping of Path to tuple of Path
+        By the path of each source the names it goes by: links may stand for it. Absolute; the
+        first is that under which it was met first.
+    rooted : frozenset of Path
+        Paths of the sources that some card includes by a name from the root of the file system.
     callees : Callees
         What names mean that several definitions have.
     subcircuits : Mapping of str to Subcircuit
@@ -282,6 +288,8 @@ class Netlist:
     """
 
     sources: tuple[SourceText, ...] = field(repr=False)
+    names: Mapping[Path, tuple[Path, ...]] = field(repr=False)
+    rooted: frozenset[Path] = field(repr=False)
     callees: Callees
     subcircuits: Mapping[str, Subcircuit]
     top: Subcircuit
@@ -292,6 +300,11 @@ class Netlist:
     options: Mapping[str, float]
     notices: tuple[Notice, ...]
     _cards: CardStore = field(repr=False)
+
+    @property
+    def folder(self) -> Path:
+        """The folder the main file was named in."""
+        return self.names[self.sources[0].path][0].parent
 
     def card(self, number: int) -> Card:
         """Return the element card of a number."""

@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+import errno
+import os
 from typing import TYPE_CHECKING
 
 import pytest
 
 from evenstage.errors import NetlistError
 from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading import includes
 from evenstage.netlist.reading.read import read
 
 if TYPE_CHECKING:
@@ -176,3 +179,52 @@ def test_definitions_do_not_reach_across_files(
     folder: Path, top: str, inner: str, code: str
 ) -> None:
     assert f"({code})" in complaint(folder, top=top, a=inner)
+
+
+def test_links_stand_for_one_file_that_is_read_once(folder: Path) -> None:
+    (folder / "lib").mkdir()
+    (folder / "lib" / "real.sp").write_text(LEAF)
+    (folder / "soft.sp").symlink_to(folder / "lib" / "real.sp")
+    (folder / "hard.sp").hardlink_to(folder / "lib" / "real.sp")
+    netlist = written(
+        folder,
+        top="* t\n.inc soft.sp\n.inc hard.sp\n.inc lib/real.sp\nx1 a b v g inv\n",
+    )
+    assert [source.label for source in netlist.sources] == ["top.sp", "soft.sp"]
+    names = [name.relative_to(folder) for name in netlist.names[netlist.sources[1].path]]
+    assert list(map(str, names)) == ["soft.sp", "hard.sp", "lib/real.sp"]
+    assert len(elaborate(netlist)) == 1
+
+
+def test_beside_a_link_comes_before_beside_what_it_stands_for(folder: Path) -> None:
+    (folder / "store").mkdir()
+    (folder / "store" / "all.sp").write_text(".inc inv.sp\n.inc other.sp\n")
+    (folder / "store" / "inv.sp").write_text(LEAF.replace("1u", "9u"))
+    (folder / "store" / "other.sp").write_text(LEAF.replace("inv", "other"))
+    (folder / "all.sp").symlink_to("store/all.sp")
+    netlist = written(folder, top="* t\n.inc all.sp\nx1 a b v g inv\n", inv=LEAF)
+    assert [source.path.parent.name for source in netlist.sources[2:]] == [folder.name, "store"]
+    assert elaborate(netlist).width.tolist() == [1e-6]
+
+
+def test_a_cycle_through_a_link(folder: Path) -> None:
+    (folder / "again.sp").symlink_to("top.sp")
+    assert "this file is being read already" in complaint(folder, top="* t\n.inc again.sp\n")
+
+
+def test_what_is_no_file_is_refused(folder: Path) -> None:
+    os.mkfifo(folder / "pipe.sp")
+    assert complaint(folder, top="* t\n.inc pipe.sp\n") == (
+        "top.sp:2:6: cannot read 'pipe.sp': not a regular file (unreadable-file)\n"
+        "    .inc pipe.sp\n         ^^^^^^^"
+    )
+
+
+def test_a_file_that_must_not_be_read(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    def refuse(path: Path) -> bytes:
+        raise PermissionError(errno.EACCES, os.strerror(errno.EACCES), path)
+
+    (folder / "inv.sp").write_text(LEAF)
+    monkeypatch.setattr(includes, "read_file", refuse)
+    text = complaint(folder, top="* t\n.inc inv.sp\n")
+    assert text.startswith("top.sp:2:6: cannot read 'inv.sp': permission denied (unreadable-file)")

@@ -190,6 +190,12 @@ class TestFiles:
         outside = f"'{main.parents[1] / 'buf.sp'}' lies outside the folder of the main file"
         assert reasons(handles) == {"x3.mn": outside, "x3.mp": outside}
 
+    def test_files_included_by_their_full_path_stay(self, main: Path) -> None:
+        cell = main.parent / "cells" / "inv.sp"
+        main.write_bytes(f"title\n.include {cell}\nx1 a b vdd vss inv\n".encode())
+        why = f"'{cell}' is included by its full path, which leads to it for ever"
+        assert reasons(sized(read(main))) == {"mn": why, "mp": why}
+
     def test_an_included_file_gets_its_own_edits(self, main: Path) -> None:
         handles = sized(read(main), leaves={"inv", "buf"})
         texts = rewrite(handles.block.netlist, planned(handles, {"x1": 2, "x3": 2}).edits)

@@ -47,10 +47,39 @@ class TestOutputPaths:
     def test_keeps_included_files_in_their_place_beside_the_main_one(self, design: Path) -> None:
         out = design.parents[1] / "out"
         assert output_paths(read(design), out / "new.sp") == {
-            design: out / "new.sp",
-            design.parent / "cells" / "inv.sp": out / "cells" / "inv.sp",
-            design.parent / "cells" / "models.sp": out / "cells" / "models.sp",
+            design: (out / "new.sp",),
+            design.parent / "cells" / "inv.sp": (out / "cells" / "inv.sp",),
+            design.parent / "cells" / "models.sp": (out / "cells" / "models.sp",),
         }
+
+    def test_a_file_is_written_under_each_of_its_names(self, design: Path) -> None:
+        folder, out = design.parent, design.parents[1] / "out"
+        (folder / "soft.sp").symlink_to("cells/inv.sp")
+        (folder / "outer.sp").symlink_to(design.parents[1] / "models" / "pch.sp")
+        design.write_text("title\n.inc soft.sp\n.inc cells/inv.sp\n.inc outer.sp\n")
+        assert output_paths(read(design), out / "new.sp") == {
+            design: (out / "new.sp",),
+            folder / "cells" / "inv.sp": (out / "soft.sp", out / "cells" / "inv.sp"),
+            design.parents[1] / "models" / "pch.sp": (out / "outer.sp",),
+        }
+
+    def test_names_that_lead_to_one_file_are_one_place(self, design: Path) -> None:
+        folder = design.parent
+        (folder / "soft.sp").symlink_to("cells/inv.sp")
+        design.write_text("title\n.inc soft.sp\n.inc cells/inv.sp\n")
+        (places,) = list(output_paths(read(design), folder / "new.sp").values())[1:]
+        assert len(places) == 1
+
+    def test_a_link_to_the_main_file_has_its_includes_beside_it(self, design: Path) -> None:
+        linked = design.parents[1] / "project" / "main.sp"
+        linked.parent.mkdir()
+        linked.symlink_to(design)
+        out = design.parents[1] / "out"
+        places = output_paths(read(linked), out / "new.sp")
+        assert [p for some in places.values() for p in some][1:] == [
+            out / "cells" / "inv.sp",
+            out / "cells" / "models.sp",
+        ]
 
 
 class TestOutputFiles:

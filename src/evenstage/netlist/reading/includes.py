@@ -1,10 +1,15 @@
-"""Files that a netlist includes: where they are, and sections of library files."""
+"""Files that a netlist includes: where they are, and sections of library files.
+
+A file is looked for beside the file that includes it, under the name that one goes by; where that
+is a link and nothing is found, beside the file the link stands for. Links, symbolic and hard, stand
+for one file, which is read once.
+"""
 
 from __future__ import annotations
 
 import os
 import re
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from pathlib import Path
 from typing import TYPE_CHECKING, Final, TypeVar
 
@@ -31,15 +36,24 @@ class Includes:
         self._sources: dict[Path, SourceText] = {}
         self._units: dict[Path, object] = {}
         self._chain: list[tuple[Path, str]] = []
+        self._folders: list[Path] = []
+        self._files: dict[tuple[int, int], Path] = {}
+        #: The names each file goes by, by its path.
+        self.names: dict[Path, tuple[Path, ...]] = {}
+        #: Paths of the files that some card includes by a name from the root.
+        self.rooted: set[Path] = set()
 
     @property
     def sources(self) -> tuple[SourceText, ...]:
         """The files, the main one first."""
         return tuple(self._sources.values())
 
-    def add(self, source: SourceText) -> None:
-        """Take the main file."""
+    def add(self, source: SourceText, name: Path) -> None:
+        """Take the main file, and where it was asked for."""
         self._sources[source.path] = source
+        self.names[source.path] = (name,)
+        with suppress(OSError, ValueError):
+            self._same_file(source.path)
 
     def find(self, name: Span) -> SourceText:
         """Return the file an ``.include`` or ``.lib`` card names, relative to the card's file.
@@ -49,13 +63,12 @@ class Includes:
         NetlistError
             If it cannot be read.
         """
-        written = name.text.strip(_QUOTES)
-        path = self._real_path(name, written)
-        known = self._sources.get(path)
-        if known is not None:
-            return known
+        written = _written(name)
         label = os.path.normpath(Path(name.source.label).parent / written)
         try:
+            path = self._same_file(self._real_path(name, written))
+            if path in self._sources:
+                return self._named(path, written)
             data = read_file(path)
         except FileNotFoundError:
             message = f"there is no file '{label}' to include"
@@ -64,15 +77,32 @@ class Includes:
             message = f"cannot read '{label}': {why_not(error)}"
             raise NetlistError(message, code="unreadable-file", span=name) from None
         self._sources[path] = SourceText(path, data, label)
-        return self._sources[path]
+        return self._named(path, written)
 
     def _real_path(self, name: Span, written: str) -> Path:
-        """Return where a file really is, so that all its names stand for one file."""
-        try:
-            return Path(os.path.realpath(name.source.path.parent / written))
-        except ValueError:
-            message = f"cannot read '{written}': not a file name"
-            raise NetlistError(message, code="unreadable-file", span=name) from None
+        """Return where a file really is, all symbolic links followed."""
+        beside = self._name(written)
+        if not beside.exists():
+            beside = name.source.path.parent / written
+        return Path(os.path.realpath(beside))
+
+    def _name(self, written: str) -> Path:
+        """Return the name a card gives to a file, links in it left as they are."""
+        return Path(os.path.normpath(self._folders[-1] / written))
+
+    def _same_file(self, path: Path) -> Path:
+        """Return the path under which a file is known, another hard link to it perhaps."""
+        status = path.stat()
+        if not status.st_ino:  # a file system that tells files apart by their names alone
+            return path
+        return self._files.setdefault((status.st_dev, status.st_ino), path)
+
+    def _named(self, path: Path, written: str) -> SourceText:
+        """Take note of a name of a file and return the file."""
+        if Path(written).is_absolute():
+            self.rooted.add(path)
+        self.names[path] = tuple(dict.fromkeys((*self.names.get(path, ()), self._name(written))))
+        return self._sources[path]
 
     def unit(self, source: SourceText, make: Callable[[SourceText], _Unit]) -> _Unit:
         """Return what was made of a file, made once."""
@@ -100,9 +130,16 @@ class Includes:
         if len(self._chain) > _DEPTH:
             message = f"files are included more than {_DEPTH} deep"
             raise NetlistError(message, code="include-cycle", span=name)
+        named = self.names[source.path][0] if name is None else self._name(_written(name))
         self._chain.append(key)
+        self._folders.append(named.parent)
         yield
         self._chain.pop()
+        self._folders.pop()
+
+
+def _written(name: Span) -> str:
+    return name.text.strip(_QUOTES)
 
 
 def section_range(source: SourceText, text: bytes, name: Span, *, wanted: bool = False) -> range:

@@ -37,7 +37,7 @@ def read(path: Path | str) -> Netlist:
     except (OSError, ValueError) as error:
         message = f"cannot read '{path}': {why_not(error)}"
         raise NetlistError(message, code="unreadable-file") from None
-    return _read(SourceText(Path(os.path.realpath(path)), data, str(path)))
+    return _read(SourceText(Path(os.path.realpath(path)), data, str(path)), path)
 
 
 def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
@@ -62,11 +62,12 @@ def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
     >>> len(read_bytes(b".subckt inv a y vdd vss\n.ends\n", "inv.sp", Path()))
     0
     """
-    return _read(SourceText(Path(os.path.realpath(folder / label)), data, label))
+    name = folder / label
+    return _read(SourceText(Path(os.path.realpath(name)), data, label), name)
 
 
-def _read(source: SourceText) -> Netlist:
+def _read(source: SourceText, name: Path) -> Netlist:
     with without_collection():
         reader = Reader()
-        reader.read_main(source)
+        reader.read_main(source, Path(os.path.abspath(name)))  # noqa: PTH100 - links stay links
         return reader.finish()

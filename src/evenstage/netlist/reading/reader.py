@@ -26,6 +26,8 @@ from evenstage.progress import tell
 from evenstage.source import SourceText, Span
 
 if TYPE_CHECKING:
+    from pathlib import Path
+
     from evenstage.netlist.netlist import Parameter
     from evenstage.netlist.reading.statement import Mark
     from evenstage.netlist.reading.stored import ShapeColumns
@@ -74,15 +76,22 @@ class Reader:
         self._unknown: dict[str, tuple[int, Span]] = {}
         self._notices: list[Notice] = []
 
-    def read_main(self, source: SourceText) -> None:
+    def read_main(self, source: SourceText, name: Path | None = None) -> None:
         """Read the main file, whose first line may be a title.
+
+        Parameters
+        ----------
+        source : SourceText
+            The file.
+        name : Path, optional
+            Where it was asked for, absolute, if that is a link to it.
 
         Raises
         ------
         NetlistError
             If it, or a file it includes, is no netlist.
         """
-        self._includes.add(source)
+        self._includes.add(source, name or source.path)
         check_text(source)
         start = self._after_title(source)
         unit = Unit(source)
@@ -323,6 +332,8 @@ class Reader:
         models, local_models = self._models.settle(self._scopes, renamed, scope)
         return Netlist(
             sources=self._includes.sources,
+            names=self._includes.names,
+            rooted=frozenset(self._includes.rooted),
             callees=callees,
             subcircuits=self._scopes.subcircuits,
             top=top,

@@ -129,7 +129,7 @@ def _obstacle(block: SizedBlock, slot: Slot, origin: Origin) -> str:
     card = block.card(slot.card)
     caller = None if slot.caller is None else block.card(slot.caller)
     if origin.way != "default" and not block.is_editable(origin.parameter.span):
-        return _outside(origin.parameter.span)
+        return _outside(block, origin.parameter.span)
     if block.is_read_again(card) or (caller is not None and block.is_read_again(caller)):
         return "its file is included more than once, and one change would make several"
     for scope in (origin.scope, card.scope, "" if caller is None else caller.scope):
@@ -138,11 +138,13 @@ def _obstacle(block: SizedBlock, slot: Slot, origin: Origin) -> str:
     if origin.way == "shared" or caller is None:
         return ""
     if not block.is_editable(caller.span):
-        return _outside(caller.span)
+        return _outside(block, caller.span)
     return "" if origin.way == "default" else _no_copy(block, card, origin)
 
 
-def _outside(span: Span) -> str:
+def _outside(block: SizedBlock, span: Span) -> str:
+    if span.source.path in block.netlist.rooted:
+        return f"'{span.source.label}' is included by its full path, which leads to it for ever"
     return f"'{span.source.label}' lies outside the folder of the main file"
 
 

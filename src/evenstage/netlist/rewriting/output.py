@@ -2,7 +2,8 @@
 
 ``--output`` names the main file. Included files from its folder or below keep their place relative
 to it: changed ones always, unchanged ones where the output stands in another folder, so that
-relative includes go on working. Included files from elsewhere are never written.
+relative includes go on working. A file that goes by several names, links to it, is written under
+each of them. Included files from elsewhere are never written.
 """
 
 from __future__ import annotations
@@ -23,8 +24,8 @@ if TYPE_CHECKING:
     from evenstage.netlist.netlist import Netlist
 
 
-def output_paths(netlist: Netlist, output: Path) -> dict[Path, Path]:
-    """Return where each file of a netlist goes that may be written.
+def output_paths(netlist: Netlist, output: Path) -> dict[Path, tuple[Path, ...]]:
+    """Return the places where each file of a netlist goes that may be written.
 
     Parameters
     ----------
@@ -35,14 +36,18 @@ def output_paths(netlist: Netlist, output: Path) -> dict[Path, Path]:
 
     Returns
     -------
-    dict of Path to Path
-        By the path of the source, main file first; files outside the main file's folder do not
-        occur.
+    dict of Path to tuple of Path
+        By the path of the source, main file first; files with no name in the main file's folder do
+        not occur.
     """
-    main, *included = (source.path for source in netlist.sources)
-    inside = (path for path in included if path.is_relative_to(main.parent))
-    folder = output.absolute().parent
-    return {main: output, **{p: folder / p.relative_to(main.parent) for p in inside}}
+    folder, new_folder = netlist.folder, output.absolute().parent
+    places: dict[Path, tuple[Path, ...]] = {netlist.sources[0].path: (output,)}
+    for path, names in netlist.names.items():
+        inside = (name.relative_to(folder) for name in names if name.is_relative_to(folder))
+        by_file = {os.path.realpath(new_folder / name): new_folder / name for name in inside}
+        if by_file:
+            places.setdefault(path, tuple(by_file.values()))
+    return places
 
 
 def output_files(netlist: Netlist, texts: Mapping[Path, bytes], output: Path) -> dict[Path, bytes]:
@@ -61,19 +66,24 @@ def output_files(netlist: Netlist, texts: Mapping[Path, bytes], output: Path) ->
     main = netlist.sources[0].path
     return {
         target: data[path]
-        for path, target in output_paths(netlist, output).items()
+        for path, targets in output_paths(netlist, output).items()
+        for target in targets
         if path == main or not _holds(target, data[path])
     }
 
 
 def lost_includes(netlist: Netlist, output: Path) -> tuple[Notice, ...]:
     """Return a notice if files are included that cannot be found from the output's place."""
-    folder, new_folder = netlist.sources[0].path.parent, output.absolute().parent
-    outside = [s for s in netlist.sources if not s.path.is_relative_to(folder)]
+    folder, new_folder = netlist.folder, output.absolute().parent
     # An include that names its file from the root is found from anywhere.
-    rooted = {s.path for s in outside for o in netlist.sources if os.fsencode(s.path) in o.data}
-    lost = [s for s in outside if s.path not in rooted]
-    lost = [s for s in lost if (new_folder / os.path.relpath(s.path, folder)).resolve() != s.path]
+    lost = [
+        source
+        for source in netlist.sources
+        if source.path not in netlist.rooted
+        for name in netlist.names[source.path]
+        if not name.is_relative_to(folder)
+        and (new_folder / os.path.relpath(name, folder)).resolve() != source.path
+    ]
     if not lost:
         return ()
     message = (

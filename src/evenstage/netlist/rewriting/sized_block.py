@@ -141,7 +141,10 @@ class SizedBlock:
         return self._slots_of_card[card.number] == everybody and card.number in self._one_variable
 
     def is_editable(self, span: Span) -> bool:
-        """Tell whether a span's file lies in the folder of the main file or below it."""
+        """Tell whether a span's file lies in the folder of the main file or below it.
+
+        Included by a name from the root it would be read there whatever is written elsewhere.
+        """
         return span.source.path in self._editable
 
     def holds_definitions(self, scope: str) -> bool:
@@ -181,9 +184,10 @@ class SizedBlock:
 
     @cached_property
     def _editable(self) -> frozenset[Path]:
-        folder = self.netlist.sources[0].path.parent
-        paths = (source.path for source in self.netlist.sources)
-        return frozenset(path for path in paths if path.is_relative_to(folder))
+        main = self.netlist.sources[0].path
+        folders = (main.parent, self.netlist.folder.resolve())
+        paths = {source.path for source in self.netlist.sources} - self.netlist.rooted
+        return frozenset(p for p in paths if any(map(p.is_relative_to, folders))) | {main}
 
     @cached_property
     def _slots_of_card(self) -> Counter[int]:
