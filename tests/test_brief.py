@@ -22,6 +22,7 @@ fixed = ["xrow*.xdrv"]
 leaves = ["nand3"]
 transition_max = "400 ps"
 copies_per_leaf = 0
+case = "exact"
 aim = {delay = "1.2 ns", width = 1.25, spend = "energy"}
 
 [[input]]
@@ -92,6 +93,7 @@ class TestReadBrief:
         assert texts(brief.fixed + brief.leaves) == ["xrow*.xdrv", "nand3"]
         assert [texts(group) for group in brief.same_size] == [["xa", "xb"]]
         assert (brief.transition_max, brief.copies_per_leaf) == (400e-12, 0)
+        assert brief.case == "exact"
         assert (brief.aim_delay, brief.aim_width, brief.aim_spend) == (1.2e-9, 1.25, "energy")
 
     def test_inputs_and_outputs(self, read: Read) -> None:
@@ -159,7 +161,7 @@ class TestReadBrief:
                     "    supply.high = 'vdd'\n"
                     "    ^^^^^^^^^^^\n"
                     "known here: top, supplies, input, output, ignore, fixed, leaves, same_size,"
-                    " limit, transition_max, copies_per_leaf, aim"
+                    " limit, transition_max, copies_per_leaf, aim, case"
                 ),
             ),
             (

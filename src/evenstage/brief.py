@@ -104,6 +104,9 @@ class Brief:
         s; factor of today's total width.
     aim_spend : {"width", "energy"}
         What is kept small.
+    case : {"any", "exact"}, optional
+        Whether case counts in the names of nets; None: only where two ports of one subcircuit
+        differ by it alone.
     source : SourceText, optional
         The file.
     """
@@ -123,6 +126,7 @@ class Brief:
     aim_delay: float | None = None
     aim_width: float | None = None
     aim_spend: Literal["width", "energy"] = "width"
+    case: Literal["any", "exact"] | None = None
     source: SourceText | None = None
 
 
@@ -165,7 +169,11 @@ BRIEF_KEYS: Final[Mapping[str, Entry]] = {
             "spend": Text(choices=("width", "energy"), default="width"),
         }
     ),
+    "case": Text(choices=("any", "exact")),
 }
+
+
+_CASES: Final[Mapping[str, Literal["any", "exact"]]] = {"any": "any", "exact": "exact"}
 
 
 def read_brief(path: str | Path) -> Brief:
@@ -199,6 +207,7 @@ def read_brief(path: str | Path) -> Brief:
         aim_delay=aim.optional_number("delay"),
         aim_width=aim.optional_number("width"),
         aim_spend="energy" if aim.text("spend") == "energy" else "width",
+        case=_CASES.get(settings.optional_text("case") or ""),
         source=settings.where.places.source,
     )
 

@@ -178,7 +178,7 @@ def _recognised(
     path: Path, question: Question, unit: Process | None = None
 ) -> tuple[Circuit, Brief, Record | None]:
     brief = read_brief(question.brief) if question.brief else Brief()
-    netlist = read(path)
+    netlist = read(path, brief.case)
     given = read_process(question.process) if question.process else None
     devices = elaborate(netlist, question.top, given or _inferred(netlist), brief)
     record = find_record(netlist.sources[0])

@@ -205,6 +205,56 @@ class TestText:
         assert len(set(devices.gate.tolist())) == 1
         assert microns(devices) == [1.0, 2.0, 1.0, 2.0]
 
+    CASES = f"m1 Q a 0 0 nch {TAIL}\nm2 q b 0 0 nch {TAIL}\nm3 q Q 0 0 nch {TAIL}\n"
+
+    def test_nets_that_differ_by_case_alone_are_one_net_and_said(self) -> None:
+        """Case makes no difference in names of nets; where that joins nets a notice says so."""
+        devices = laid(self.CASES)
+        assert len({*devices.drain.tolist(), int(devices.gate[2])}) == 1
+        (said,) = [n for n in devices.netlist.notices if n.code == "case-of-nets"]
+        assert said.message == (
+            "nets whose names differ by case alone are one net: 'Q' and 'q'; "
+            'case = "exact" in the brief keeps them apart'
+        )
+        assert said.place == "top.sp:3:1"
+
+    def test_spellings_of_a_net_in_several_subcircuits_are_no_matter(self) -> None:
+        """Nets of different subcircuits may be spelt as they like."""
+        other = INV.upper().replace("INV", "BUF")
+        assert "case-of-nets" not in codes(laid(f"{INV}{other}x1 a b c d inv\nx2 a b c d buf\n"))
+
+    def test_case_can_be_made_to_count(self) -> None:
+        """The brief can say that case counts."""
+        netlist = read_bytes(f"* t\n{self.CASES}".encode(), "top.sp", Path(), "exact")
+        devices = elaborate(netlist)
+        names = [devices.net_names[int(net)] for net in (*devices.drain, devices.gate[2])]
+        assert names == ["Q", "q", "q", "Q"]
+        assert devices.drain[0] == devices.gate[2] != devices.drain[1] == devices.drain[2]
+        assert "case-of-nets" not in codes(devices)
+
+    EXACT = (
+        f".subckt buf A a VDD vdd\nm1 A a vdd vdd nch {TAIL}\nm2 A a VDD VDD pch {TAIL}\n.ends\n"
+        ".global G g\nx1 o i V v buf\nx2 O I V v buf\nm1 G g v V nch w=1u l=1u\n"
+    )
+
+    def test_ports_that_differ_by_case_alone_say_that_case_counts(self) -> None:
+        """Two such ports would be one net otherwise, so case counts, with a notice."""
+        devices = laid(self.EXACT)
+        names = devices.net_names
+        assert [names[int(n)] for n in devices.drain] == ["G", "o", "o", "O", "O"]
+        assert [names[int(n)] for n in devices.gate] == ["g", "i", "i", "I", "I"]
+        assert [names[int(n)] for n in devices.source] == ["v", "v", "V", "v", "V"]
+        assert {names[n] for n in devices.global_nets} >= {"G", "g"}
+        assert "case-of-nets" in codes(devices)
+
+    def test_case_can_be_made_not_to_count(self) -> None:
+        """If the brief says that case does not count, such ports are refused."""
+        with pytest.raises(EvenstageError) as caught:
+            read_bytes(f"* t\n{self.EXACT}".encode(), "top.sp", Path(), "any")
+        assert str(caught.value).startswith(
+            "top.sp:2:15: a port 'a' stands here twice, for 'case' is \"any\" in the brief"
+        )
+
     def test_slash_before_the_subcircuit(self) -> None:
         """A slash may stand between the nets and the name of the subcircuit."""
         card = only_card("XI1 a b VDD VSS / NOR3 $T=0 0\n")
@@ -284,7 +334,7 @@ class TestText:
     def test_a_port_twice_is_refused(self) -> None:
         """Two ports of one name would join nets of the caller."""
         assert "'s' has two ports named 'VSS' (duplicate-port)" in refusal(
-            ".subckt s a vss VSS\n.ends\n"
+            ".subckt s a VSS VSS\n.ends\n"
         )
 
     def test_files_beside_the_file_that_includes_them(self, tmp_path: Path) -> None:

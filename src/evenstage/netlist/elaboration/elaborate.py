@@ -103,7 +103,7 @@ class _Block:
 
     def _globals_used(self) -> tuple[str, ...]:
         """Return the global nets that occur, ``0`` among them, in the order of declaration."""
-        names = tuple({name.lower(): name for name in ("0", *self._netlist.global_names)}.values())
+        names = tuple(dict.fromkeys(("0", *self._netlist.global_names)))
         words = self._words(names)
         met = np.zeros(len(words), np.bool_)
         for outline in {id(t.outline): t.outline for t in self._templates}.values():

@@ -8,21 +8,26 @@ from typing import TYPE_CHECKING
 
 from evenstage.errors import NetlistError
 from evenstage.netlist.collection import without_collection
+from evenstage.netlist.reading.case import settle_case
 from evenstage.netlist.reading.files import read_file, why_not
 from evenstage.netlist.reading.reader import Reader
 from evenstage.source import SourceText
 
 if TYPE_CHECKING:
     from evenstage.netlist.netlist import Netlist
+    from evenstage.netlist.reading.case import Case
 
 
-def read(path: Path | str) -> Netlist:
+def read(path: Path | str, case: Case | None = None) -> Netlist:
     """Read a netlist and the files it includes.
 
     Parameters
     ----------
     path : Path or str
         The main file.
+    case : {"any", "exact"}, optional
+        Whether case counts in the names of nets; None: only if two ports of one subcircuit differ
+        by it alone.
 
     Raises
     ------
@@ -37,10 +42,10 @@ def read(path: Path | str) -> Netlist:
     except (OSError, ValueError) as error:
         message = f"cannot read '{path}': {why_not(error)}"
         raise NetlistError(message, code="unreadable-file") from None
-    return _read(SourceText(Path(os.path.realpath(path)), data, str(path)), path)
+    return _read(SourceText(Path(os.path.realpath(path)), data, str(path)), path, case)
 
 
-def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
+def read_bytes(data: bytes, label: str, folder: Path, case: Case | None = None) -> Netlist:
     r"""Read a netlist that is not (yet) a file.
 
     Parameters
@@ -51,6 +56,8 @@ def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
         What messages call it.
     folder : Path
         Where the files it includes are looked for.
+    case : {"any", "exact"}, optional
+        As for ``read``.
 
     Raises
     ------
@@ -63,11 +70,11 @@ def read_bytes(data: bytes, label: str, folder: Path) -> Netlist:
     0
     """
     name = folder / label
-    return _read(SourceText(Path(os.path.realpath(name)), data, label), name)
+    return _read(SourceText(Path(os.path.realpath(name)), data, label), name, case)
 
 
-def _read(source: SourceText, name: Path) -> Netlist:
+def _read(source: SourceText, name: Path, case: Case | None) -> Netlist:
     with without_collection():
         reader = Reader()
         reader.read_main(source, Path(os.path.abspath(name)))  # noqa: PTH100 - links stay links
-        return reader.finish()
+        return settle_case(reader.finish(), case, reader.clash)

@@ -289,7 +289,7 @@ class Reader:
     def _take_global(self, unit: Unit, statement: Statement) -> None:
         for mark in statement.marks[1:]:
             name = unit.span(mark).text
-            self._globals.setdefault(name.lower(), name)
+            self._globals.setdefault(name, name)
 
     def _take_option(self, unit: Unit, statement: Statement) -> None:
         self._options += _pairs(unit, statement.marks)
@@ -320,6 +320,11 @@ class Reader:
         self._begin_segment(unit)
 
     # The result.
+
+    @property
+    def clash(self) -> Span | None:
+        """The first port that differs from another of its definition by case alone."""
+        return self._scopes.clash
 
     def finish(self) -> Netlist:
         """Return what was read."""

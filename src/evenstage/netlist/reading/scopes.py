@@ -80,6 +80,8 @@ class Scopes:
         #: By the key of each definition that of the one around it, once they are settled.
         self.parents: dict[str, str] = {}
         self.notices: list[Notice] = []
+        #: The first port that differs from another of its definition by case alone.
+        self.clash: Span | None = None
 
     @property
     def current(self) -> str:
@@ -122,12 +124,15 @@ class Scopes:
         NetlistError
             If two ports have one name, or too many definitions are open.
         """
-        seen: set[str] = set()
+        seen: dict[str, set[str]] = {}
         for port in ports:
-            if port.text.lower() in seen:
+            spellings = seen.setdefault(port.text.lower(), set())
+            if port.text in spellings:
                 message = f"'{name.text}' has two ports named '{port.text}'"
                 raise NetlistError(message, code="duplicate-port", span=port)
-            seen.add(port.text.lower())
+            if spellings and self.clash is None:
+                self.clash = port
+            spellings.add(port.text)
         if self.depth >= _DEPTH:
             message = f"subcircuits are defined inside each other more than {_DEPTH} deep"
             raise NetlistError(message, code="unmatched-subckt", span=header)
