@@ -43,8 +43,15 @@ def test_confirms_what_the_optimiser_claims() -> None:
 def test_bound_of_equal_stages_by_hand() -> None:
     # sizes 1, 4 and load 16: each stage 4, no gradient, so the bound is the delay itself.
     question = chain_problem([1, 1], [1, 1], [1, 1], 1, 16)
+    sizes = np.array([1.0, 4.0])
     answer = replace(
-        solve(question, Fastest()), sizes=np.array([1.0, 4.0]), delay=10.0, spend=5.0, bound=10.0
+        solve(question, Fastest()),
+        sizes=sizes,
+        bound_sizes=sizes,
+        arrivals=np.array([0.0, 5.0, 10.0]),
+        delay=10.0,
+        spend=5.0,
+        bound=10.0,
     )
     found = check(question, Fastest(), replace(answer, gap=0.0))
     assert_allclose(found.bound, 10.0, rtol=1e-14, atol=0)
@@ -100,6 +107,19 @@ def test_refuses_broken_limits() -> None:
 def test_refuses_a_wrong_delay() -> None:
     wrong = replace(FASTEST, delay=FASTEST.delay * (1 - 1e-6))
     assert refusal(wrong) == "not confirmed that the delay is as stated"
+
+
+@pytest.mark.parametrize("node", ["start", "end"])
+def test_refuses_arrivals_that_come_too_early(node: str) -> None:
+    times = FASTEST.arrivals.copy()
+    times[QUESTION.start_node[0] if node == "start" else QUESTION.end_node] -= 1e-6
+    wrong = replace(FASTEST, arrivals=times, delay=FASTEST.delay - 1e-6 * (node == "end"))
+    assert refusal(wrong) == "not confirmed that no arrival is too early"
+
+
+def test_refuses_a_bound_measured_out_of_the_box() -> None:
+    wrong = replace(FASTEST, bound_sizes=QUESTION.upper * 1.1)
+    assert refusal(wrong) == "not confirmed that sizes are inside their bounds"
 
 
 def test_refuses_a_wrong_spend() -> None:

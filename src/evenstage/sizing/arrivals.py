@@ -43,6 +43,8 @@ class Levels:
         Arcs by level of their target, then by target.
     first : array of int, shape (levels + 1,)
         Where each level begins in `order`.
+    depth : array of int, shape (nodes,)
+        Level of each node; 0 for those no arc leads to.
     """
 
     nodes: int
@@ -50,6 +52,7 @@ class Levels:
     target: IntArray
     order: Index
     first: Index
+    depth: Index
 
     @classmethod
     def of(cls, nodes: int, source: IntArray, target: IntArray) -> Levels:
@@ -62,15 +65,16 @@ class Levels:
         """
         if np.any(source >= target) or np.any(source < 0) or np.any(target >= nodes):
             raise ValueError("node ids must be a topological order of the graph")
-        depth = [0] * nodes
+        known = [0] * nodes
         by_target = np.argsort(target, kind="stable")
         for u, v in zip(source[by_target].tolist(), target[by_target].tolist(), strict=True):
-            depth[v] = max(depth[v], depth[u] + 1)
-        level = np.array(depth, dtype=np.intp)[target]
+            known[v] = max(known[v], known[u] + 1)
+        depth = np.array(known, dtype=np.intp)
+        level = depth[target]
         order = np.lexsort((target, level))
         count = int(level.max(initial=0))
         first = np.searchsorted(level[order], np.arange(1, count + 2))
-        return cls(nodes=nodes, source=source, target=target, order=order, first=first)
+        return cls(nodes=nodes, source=source, target=target, order=order, first=first, depth=depth)
 
     def _slices(self) -> Iterator[Index]:
         for begin, end in zip(self.first[:-1], self.first[1:], strict=True):

@@ -1,10 +1,11 @@
 """An independent check of what an optimiser claims.
 
 Nothing here is shared with the optimiser but the delay model itself: timing, conservation of the
-flow and the lower bound are worked out again, plainly, from the sizes and multipliers alone. The
-bound is the one derived in :mod:`evenstage.sizing.bound`: for any unit flow and any prices >= 0,
-the weighted sum of delays, limits and spend is convex in the log sizes, hence above its tangent,
-and the tangent is least at a corner of the box.
+flow and the lower bound are confirmed plainly, from the sizes, arrivals and multipliers alone.
+Arrivals that leave every arc its delay prove the worst delay, however they were found. The bound is
+the one derived in :mod:`evenstage.sizing.bound`: for any unit flow and any prices >= 0, the
+weighted sum of delays, limits and spend is convex in the log sizes, hence above its tangent at any
+sizes of the box, and the tangent is least at a corner of the box.
 """
 
 from __future__ import annotations
@@ -24,6 +25,8 @@ if TYPE_CHECKING:
 
 #: Relative disagreement that rounding may explain.
 _ROUNDING: Final = 1e-9
+#: The same for one arc of a path of many.
+_EXACT: Final = 1e-13
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -36,6 +39,8 @@ class Certificate:
         Of the sizes, worked out again; s and spend.
     worst_limit : float
         The largest limit sum; at most 1. Zero without limits.
+    early : float
+        By how much an arrival comes before a start or an arc allows it, at worst, s.
     conservation_error : float
         The largest difference between a node's inflow and outflow.
     bound : float
@@ -47,6 +52,7 @@ class Certificate:
     delay: float
     spend: float
     worst_limit: float
+    early: float
     conservation_error: float
     bound: float
     gap: float
@@ -65,40 +71,47 @@ def check(problem: Problem, goal: Goal, solution: Solution) -> Certificate:
     NotConvergedError
         If a claim is not confirmed; the message says which.
     """
-    y = np.log(solution.sizes)
-    delays = _sums(problem.delay, y, len(problem.arc_source))
-    limits = _sums(problem.limit, y, problem.limits)
-    times = _timing(problem, delays)
-    ends = zip(problem.end_node.tolist(), problem.end_offset.tolist(), strict=True)
-    delay = max(times[node] + offset for node, offset in ends)
+    delays = _sums(problem.delay, solution.sizes, len(problem.arc_source))
+    limits = _sums(problem.limit, solution.sizes, problem.limits)
+    delay = float((solution.arrivals[problem.end_node] + problem.end_offset).max())
     spend = float(np.dot(problem.spend, solution.sizes)) + problem.spend_fixed
     entering, error = _conservation(problem, solution)
-    bound = _bound(problem, goal, solution, delays, limits, entering)
+    bound = _bound(problem, goal, solution, entering)
     objective = spend if isinstance(goal, Cheapest) else delay
-    length = 0.0 if isinstance(goal, Cheapest) else float(solution.flow @ delays)
-    unit = max(abs(objective), length)
+    length = float(solution.flow @ delays)
+    time = max(abs(delay), length)
+    unit = abs(objective) if isinstance(goal, Cheapest) else time
     found = Certificate(
         delay=delay,
         spend=spend,
         worst_limit=float(limits.max(initial=0.0)),
+        early=_early(problem, solution, delays),
         conservation_error=error,
         bound=bound,
         gap=max(objective - bound, 0.0) / unit if unit else 0.0,
     )
-    _confirm(problem, goal, solution, found, unit)
+    _confirm(problem, goal, solution, found, unit=unit, time=time)
     return found
 
 
 def _confirm(
-    problem: Problem, goal: Goal, solution: Solution, found: Certificate, unit: float
+    problem: Problem,
+    goal: Goal,
+    solution: Solution,
+    found: Certificate,
+    *,
+    unit: float,
+    time: float,
 ) -> None:
     x, slack = solution.sizes, 1.0 + _ROUNDING
     prices = (solution.flow, solution.end_flow, solution.limit_prices, solution.spend_price)
     claims = {
-        "sizes are inside their bounds": bool(
-            np.all(x >= problem.lower / slack) and np.all(x <= problem.upper * slack)
+        "sizes are inside their bounds": all(
+            bool(np.all(some >= problem.lower / slack) and np.all(some <= problem.upper * slack))
+            for some in (x, solution.bound_sizes)
         ),
         "limits are kept": found.worst_limit <= slack,
+        "no arrival is too early": found.early <= _EXACT * time,
         "the delay is as stated": abs(found.delay - solution.delay) <= _ROUNDING * abs(found.delay),
         "the spend is as stated": abs(found.spend - solution.spend) <= _ROUNDING * abs(found.spend),
         "the delay is as asked": not isinstance(goal, Cheapest)
@@ -116,29 +129,22 @@ def _confirm(
             raise NotConvergedError(f"not confirmed that {claim}", code="not-confirmed")
 
 
-def _sums(terms: Monomials, y: FloatArray, rows: int) -> FloatArray:
+def _sums(terms: Monomials, sizes: FloatArray, rows: int) -> FloatArray:
     """Add up each row's monomials."""
-    log_size = np.concatenate([y, [0.0]])
+    size = np.append(sizes, 1.0)
     total = np.zeros(rows)
-    ratio = np.exp(log_size[terms.plus] - log_size[terms.minus])
-    np.add.at(total, terms.row, terms.coefficient * ratio)
+    np.add.at(total, terms.row, terms.coefficient * size[terms.plus] / size[terms.minus])
     return total
 
 
-def _timing(problem: Problem, delays: FloatArray) -> list[float]:
-    """Return the latest arrival per node: arcs in the order of their targets."""
-    times = [-np.inf] * problem.nodes
-    starts = zip(problem.start_node.tolist(), problem.start_arrival.tolist(), strict=True)
-    for node, arrival in starts:
-        times[node] = max(times[node], arrival)
-    source, target, delay = (
-        problem.arc_source.tolist(),
-        problem.arc_target.tolist(),
-        delays.tolist(),
-    )
-    for arc in sorted(range(len(target)), key=target.__getitem__):
-        times[target[arc]] = max(times[target[arc]], times[source[arc]] + delay[arc])
-    return times
+def _early(problem: Problem, solution: Solution, delays: FloatArray) -> float:
+    """Return by how much arrivals come too early, at worst."""
+    times = solution.arrivals
+    starts = problem.start_arrival - times[problem.start_node]
+    reached = times[problem.arc_source] > -np.inf
+    source, target = problem.arc_source[reached], problem.arc_target[reached]
+    arcs = times[source] + delays[reached] - times[target]
+    return max(float(starts.max(initial=0.0)), float(arcs.max(initial=0.0)))
 
 
 def _conservation(problem: Problem, solution: Solution) -> tuple[float, float]:
@@ -158,29 +164,20 @@ def _conservation(problem: Problem, solution: Solution) -> tuple[float, float]:
     return float(into[start] @ latest[start]), error
 
 
-def _bound(
-    problem: Problem,
-    goal: Goal,
-    solution: Solution,
-    delays: FloatArray,
-    limits: FloatArray,
-    entering: float,
-) -> float:
-    """Return the least value over the box of the tangent at the solution's sizes."""
-    x, kappa, nu = solution.sizes, solution.limit_prices, solution.spend_price
-    y, n = np.log(x), len(x)
-    slope = np.zeros(n + 1)
+def _bound(problem: Problem, goal: Goal, solution: Solution, entering: float) -> float:
+    """Return the least value over the box of the tangent at the sizes given for it."""
+    x, kappa, nu = solution.bound_sizes, solution.limit_prices, solution.spend_price
+    size, slope = np.append(x, 1.0), np.zeros(len(x) + 1)
+    value = entering + float(solution.end_flow @ problem.end_offset) - float(kappa.sum())
     for terms, weight in ((problem.delay, solution.flow), (problem.limit, kappa)):
-        log_size = np.concatenate([y, [0.0]])
-        part = weight[terms.row] * terms.coefficient
-        part = part * np.exp(log_size[terms.plus] - log_size[terms.minus])
+        part = weight[terms.row] * terms.coefficient * size[terms.plus] / size[terms.minus]
         np.add.at(slope, terms.plus, part)
         np.subtract.at(slope, terms.minus, part)
-    slope = slope[:n] + nu * problem.spend * x
-    value = entering + float(solution.end_flow @ problem.end_offset) + float(solution.flow @ delays)
-    value += float(kappa @ (limits - 1.0)) + nu * (float(problem.spend @ x) + problem.spend_fixed)
-    corner = np.where(slope > 0.0, np.log(problem.lower), np.log(problem.upper))
-    value += float(slope @ (corner - y))
+        value += float(part.sum())
+    gradient = slope[:-1] + nu * problem.spend * x
+    value += nu * (float(problem.spend @ x) + problem.spend_fixed)
+    corner = np.where(gradient > 0.0, problem.lower, problem.upper)
+    value += float(gradient @ np.log(corner / x))
     match goal:
         case Cheapest(delay):
             return (value - delay) / nu

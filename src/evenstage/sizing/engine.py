@@ -23,7 +23,7 @@ from evenstage.errors import InfeasibleError, NotConvergedError
 from evenstage.sizing.certificate import check
 from evenstage.sizing.goals import Budget, Cheapest, Fastest
 from evenstage.sizing.infeasible import BudgetTooSmallError, LimitOutOfReachError
-from evenstage.sizing.interior_point import solve
+from evenstage.sizing.optimum import solve
 from evenstage.sizing.presolve import with_guard, without_room
 from evenstage.timing.sweep import end_offsets, sweep
 from evenstage.units import engineering
@@ -32,9 +32,9 @@ if TYPE_CHECKING:
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray
     from evenstage.sizing.goals import Goal
-    from evenstage.sizing.interior_point import Solution
     from evenstage.sizing.model import Limits, Model
     from evenstage.sizing.problem import Problem
+    from evenstage.sizing.solution import Solution
     from evenstage.sizing.wishes import Wishes
     from evenstage.timing.sweep import Timing
 

@@ -6,19 +6,19 @@ are put back towards `start` as far as the proof allows.
 
 from __future__ import annotations
 
-from dataclasses import replace
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
 from evenstage.errors import NotConvergedError
+from evenstage.sizing.feasible import limits_as_paths, refuse_hopeless
 from evenstage.sizing.goals import Budget, Cheapest, Fastest
 from evenstage.sizing.infeasible import (
     BudgetTooSmallError,
     DelayOutOfReachError,
     LimitOutOfReachError,
 )
-from evenstage.sizing.problem import Monomials, Problem, totals, worst_delay
+from evenstage.sizing.problem import worst_delay
 from evenstage.sizing.search import ACCEPTED_GAP, Search, keeps
 from evenstage.sizing.solution import Solution
 
@@ -26,7 +26,7 @@ if TYPE_CHECKING:
     from numpy.typing import ArrayLike
 
     from evenstage.sizing.goals import Goal
-    from evenstage.sizing.problem import FloatArray
+    from evenstage.sizing.problem import FloatArray, Problem
 
 __all__ = ["Solution", "solve"]
 
@@ -75,8 +75,7 @@ def solve(
     begin = np.asarray(middle if start is None else start, dtype=np.float64)
     begin = np.clip(begin, problem.lower, problem.upper)
     worst_delay(problem, begin)
-    _refuse_hopeless_limits(problem)
-    _refuse_hopeless_budget(problem, goal)
+    refuse_hopeless(problem, goal)
     from_where = begin
     if isinstance(goal, Cheapest) and not keeps(problem, goal, begin):
         from_where = _fast_enough(problem, goal, begin, tolerance, iterations)
@@ -100,27 +99,10 @@ def _fast_enough(
     raise _not_converged(problem, Fastest(), search)
 
 
-def _refuse_hopeless_limits(problem: Problem) -> None:
-    """Raise if some limit cannot be kept even alone, each size where it suits it best."""
-    low, high = np.append(problem.lower, 1.0), np.append(problem.upper, 1.0)
-    terms = problem.limit
-    ratio = np.where(terms.plus == terms.minus, 1.0, low[terms.plus] / high[terms.minus])
-    least = totals(terms.row, terms.coefficient * ratio, problem.limits)
-    if least.max(initial=0.0) > 1.0:
-        raise LimitOutOfReachError(int(least.argmax()), float(least.max()))
-
-
-def _refuse_hopeless_budget(problem: Problem, goal: Goal) -> None:
-    """Raise if the smallest sizes already cost too much."""
-    least = problem.cost(problem.lower)
-    if isinstance(goal, Budget) and goal.spend < least:
-        raise BudgetTooSmallError(goal.spend, least)
-
-
 def _not_converged(problem: Problem, goal: Goal, search: Search) -> Exception:
     """Return why a search came to no end: limits, budget, or the gap it came to."""
     if problem.limits:
-        limits = _limits_as_paths(problem)
+        limits = limits_as_paths(problem)
         middle = np.sqrt(limits.lower * limits.upper)
         closest = Search(limits, Fastest(), middle)
         closest.run(*_REASON, enough=1.0 - _EASE)
@@ -134,23 +116,4 @@ def _not_converged(problem: Problem, goal: Goal, search: Search) -> Exception:
     return NotConvergedError(
         f"the sizing came no closer than {search.gap:.1e} to a proven optimum",
         code="not-converged",
-    )
-
-
-def _limits_as_paths(problem: Problem) -> Problem:
-    """Return a problem whose worst delay is the largest limit sum: one arc per limit."""
-    count, none = problem.limits, np.zeros(0, dtype=np.int32)
-    ends = np.arange(1, count + 1, dtype=np.int32)
-    return replace(
-        problem,
-        nodes=count + 1,
-        start_node=np.zeros(1, dtype=np.int32),
-        start_arrival=np.zeros(1),
-        arc_source=np.zeros(count, dtype=np.int32),
-        arc_target=ends,
-        delay=problem.limit,
-        end_node=ends,
-        end_offset=np.zeros(count),
-        limit=Monomials(row=none, coefficient=np.zeros(0), plus=none, minus=none),
-        limits=0,
     )

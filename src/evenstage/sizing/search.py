@@ -16,7 +16,7 @@ import numpy as np
 from evenstage.sizing.bound import lower_bound
 from evenstage.sizing.central_path import central_path
 from evenstage.sizing.goals import Budget, Cheapest, Fastest
-from evenstage.sizing.problem import totals, worst_delay
+from evenstage.sizing.problem import arrivals, totals, worst_delay
 from evenstage.sizing.solution import Solution, relative_gap
 from evenstage.sizing.translation import Translation
 
@@ -160,6 +160,8 @@ class Search:
             end_flow=prices.end_flow,
             limit_prices=prices.limit_prices,
             spend_price=prices.spend_price,
+            arrivals=arrivals(q, sizes),
+            bound_sizes=sizes,
             iterations=self.iterations,
         )
 

@@ -36,8 +36,12 @@ class Solution:
         Seconds that the worst delay falls per unit by which a limit is raised.
     spend_price : float
         Seconds that the worst delay falls per unit of spend; 0 if spend was free.
+    arrivals : FloatArray, shape (nodes,)
+        Latest arrival at each node, s; minus infinity where no path leads.
+    bound_sizes : FloatArray, shape (n_sizes,)
+        Sizes in the box at which the bound is measured.
     iterations : int
-        Matrix factorisations it took.
+        Newton steps it took.
     """
 
     sizes: FloatArray
@@ -49,6 +53,8 @@ class Solution:
     end_flow: FloatArray
     limit_prices: FloatArray
     spend_price: float
+    arrivals: FloatArray
+    bound_sizes: FloatArray
     iterations: int
 
 

@@ -1,0 +1,242 @@
+"""From a warm block to the optimum: the temperature falls, and every stop yields an answer.
+
+At each temperature the smooth function of :mod:`evenstage.sizing.lagrangian` is minimised until its
+inexactness costs no more than its softness. Then
+
+1. the flow and prices there give a lower bound of the objective;
+2. the tangent of the path of minima, ``dy / dlog T = -H^-1 dg / dlog T``, points to where they go
+   as T vanishes. Sizes part of the way along it are timed plainly and kept if they are the best
+   that keep every constraint: they are worth a temperature two to four times as low;
+3. the temperature and the barriers fall together, less where the last step took long, and the next
+   minimisation begins where the tangent says.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+
+from evenstage.sizing.hessian import Hessian
+from evenstage.sizing.lagrangian import Weights
+from evenstage.sizing.newton import State, direction, minimised
+from evenstage.sizing.tangent import best_bound
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from evenstage.sizing.lagrangian import Point, Setup
+    from evenstage.sizing.problem import FloatArray
+    from evenstage.sizing.tangent import Bound
+
+#: Part by which it falls at first, and the range this is adapted in.
+_FALLS, _FASTEST_FALL, _SLOWEST_FALL = 0.35, 0.2, 0.6
+#: Newton steps at one temperature below which it may fall faster, and above which slower.
+_FEW, _MANY = 3, 8
+#: Newton steps at one temperature at most.
+_MOST_STEPS: Final = 40
+#: Parts of the tangent along which sizes are tried.
+_TRIED: Final = (0.5, 0.9)
+#: A tangent changes no size by more than this in the logarithm.
+_LONGEST: Final = 1.5
+#: Share of the softness that the barriers of limits and of the goal may cost each.
+_BARRIER: Final = 0.5
+#: First part of a slide, secant steps along it, and what part of the last miss they aim inside.
+_SLIDE, _SECANTS, _INSIDE = 0.05, 5, 1e-2
+#: How much of the grace is given in turn until sizes are inside.
+_GRACES: Final = (1.0, 1.5, 2.0)
+#: Factor of the deadline's price within which it counts as settled, so that T may fall.
+_SETTLED: Final = 2.0
+#: Damping to begin with.
+_FIRST_DAMPING: Final = 0.1
+#: Rounding ends the path at this temperature.
+_LEAST: Final = 1e-10
+
+
+@dataclass(kw_only=True)
+class Best:
+    """The best answer and the best bound so far.
+
+    Parameters
+    ----------
+    y : FloatArray, shape (n,), optional
+        Log sizes that keep all constraints.
+    objective : float
+        Theirs.
+    proof : Bound, optional
+        The highest lower bound.
+    """
+
+    y: FloatArray | None = None
+    objective: float = np.inf
+    proof: Bound | None = None
+
+    @property
+    def bound(self) -> float:
+        """The highest lower bound; minus infinity before there is any."""
+        return -np.inf if self.proof is None else self.proof.value
+
+    @property
+    def gap(self) -> float:
+        """Relative distance of objective and bound."""
+        if self.y is None or self.proof is None:
+            return np.inf
+        return max(self.objective - self.bound, 0.0) / max(abs(self.objective), 1e-12)
+
+    def offer(self, point: Point) -> None:
+        """Keep a point if it keeps the constraints and is better."""
+        if point.keeps and point.objective < self.objective:
+            self.y, self.objective = point.y, point.objective
+
+    def prove(self, point: Point) -> None:
+        """Keep the bound of a point if it is higher."""
+        found = best_bound(point)
+        if found.value > self.bound:
+            self.proof = found
+
+
+@dataclass(kw_only=True)
+class Walk:
+    """A walk along the path of minima.
+
+    Parameters
+    ----------
+    setup : Setup
+    best : Best
+        What is known already.
+    most : int
+        Most sweeps.
+    steps, work : int
+        Newton steps and sweeps so far.
+    """
+
+    setup: Setup
+    best: Best
+    most: int
+    steps: int = 0
+    work: int = 0
+
+    def run(self, point: Point, enough: Callable[[Point, Best], bool]) -> Point:
+        """Walk from a point inside all constraints until the best or a minimum is good enough.
+
+        Parameters
+        ----------
+        point : Point
+            With the weights to begin with.
+        enough : callable
+            Tells from a minimum and the best whether to end.
+
+        Returns
+        -------
+        Point
+            The last minimum.
+        """
+        state = State(point=point, prices=point.prices, damping=_FIRST_DAMPING)
+        falls, price = _FALLS, point.prices.goal
+        self.best.offer(point)
+        while True:
+            state = minimised(replace(state, steps=0, work=0), _MOST_STEPS)
+            point, before = state.point, price
+            price = point.prices.goal
+            self.best.offer(point)
+            self.best.prove(point)
+            tangent, work = self._tangent(state)
+            work += self._try_along(state, tangent)
+            self.steps += state.steps
+            self.work += state.work + work + 6
+            exhausted = self.work >= self.most or point.weights.temperature < _LEAST
+            if enough(point, self.best) or exhausted:
+                return point
+            falls = _adapted(falls, state.steps)
+            settled = point.question.deadline is None or price > before / _SETTLED
+            state = self._cooler(state, tangent, falls, settled=settled)
+            if not state.point.inside:
+                return point
+
+    def _tangent(self, state: State) -> tuple[FloatArray, int]:
+        """Return how sizes move as the temperature falls, per unit of its logarithm."""
+        hessian = Hessian(state.point, state.prices)
+        tangent, work = direction(state, hessian.cooling(), damped=False)
+        return np.clip(tangent, -_LONGEST, _LONGEST), work
+
+    def _try_along(self, state: State, tangent: FloatArray) -> int:
+        """Offer sizes along the tangent; for a deadline slide them to it. Return the work."""
+        point, r = state.point, self.setup.reduced
+        for part in _TRIED:
+            there = point.at(np.clip(point.y + part * tangent, r.lower, r.upper))
+            self.best.offer(there)
+        if self.setup.question.deadline is None:
+            return len(_TRIED)
+        slide, work = direction(state, -point.bill, damped=False)
+        return work + self._slide(there, np.clip(slide, -_LONGEST, _LONGEST))
+
+    def _slide(self, there: Point, slide: FloatArray) -> int:
+        """Offer sizes along a direction, where their worst delay is the deadline; return the work.
+
+        A secant needs few steps: along the direction the delay is all but linear.
+        """
+        deadline, r = self.setup.question.deadline, self.setup.reduced
+        assert deadline is not None
+        parts, excess = [0.0], [there.longest - deadline]
+        part = _SLIDE * (1.0 if excess[0] < 0.0 else -1.0)
+        for _ in range(_SECANTS):
+            moved = there.at(np.clip(there.y + part * slide, r.lower, r.upper))
+            self.best.offer(moved)
+            parts.append(part)
+            excess.append(moved.longest - deadline)
+            if excess[-1] == excess[-2]:
+                break
+            # A little inside, so that the last step does not miss by rounding.
+            ratio = (parts[-1] - parts[-2]) / (excess[-1] - excess[-2])
+            aim = -_INSIDE * abs(excess[-1])
+            part = float(np.clip(part + (aim - excess[-1]) * ratio, -1.0, 1.0))
+        return _SECANTS
+
+    def _cooler(self, state: State, tangent: FloatArray, falls: float, *, settled: bool) -> State:
+        """Return the first state at the next temperature; outside where there is none inside."""
+        point, r = state.point, self.setup.reduced
+        weights = _next_weights(point, falls)
+        if not settled:
+            weights = replace(point.weights, goal=falls * point.weights.goal)
+        y = np.clip(point.y + (1.0 - falls) * tangent, r.lower, r.upper)
+        for grace in _GRACES:
+            some = replace(weights, grace=grace * weights.grace)
+            stays, ahead = point.at(point.y, some), point.at(y, some)
+            found = ahead if ahead.value < stays.value else stays
+            if found.inside:
+                break
+        return State(point=found, prices=found.prices, damping=state.damping)
+
+
+def _next_weights(point: Point, falls: float) -> Weights:
+    """Return lower weights: each barrier costs a fixed share of what the softness will."""
+    temperature = falls * point.weights.temperature
+    delay, _ = point.factors(point.prices.goal)
+    spread = max(falls * point.spread, temperature)
+    weights = balanced(point, temperature, delay * spread, falls * point.weights.cost)
+    if point.question.deadline is None:
+        return weights
+    return replace(
+        weights, grace=spread, goal=max(weights.goal, _FASTEST_FALL * point.weights.goal)
+    )
+
+
+def balanced(point: Point, temperature: float, softness: float, cost: float) -> Weights:
+    """Return weights whose barriers cost a fixed share of the softness, in the objective's unit."""
+    limits = len(point.limit_slack)
+    return Weights(
+        temperature=temperature,
+        goal=_BARRIER * softness,
+        limit=_BARRIER * softness / max(limits, 1),
+        cost=cost,
+    )
+
+
+def _adapted(falls: float, steps: int) -> float:
+    """Return by what part the temperature falls next."""
+    if steps <= _FEW:
+        return max(falls * 0.8, _FASTEST_FALL)
+    if steps > _MANY:
+        return min(falls * 1.3, _SLOWEST_FALL)
+    return falls

@@ -1,0 +1,93 @@
+"""The best lower bound that one flow and its prices give.
+
+At fixed flow and prices the Lagrangian is a sum of exponentials, convex in the log sizes, and its
+tangent at *any* sizes of the box gives a bound (:mod:`evenstage.sizing.bound`). The nearer those
+are to the Lagrangian's own minimum over the box, the better the bound: a few Newton steps towards
+it are cheap, as they need no sweep over the graph.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.sizing.conjugate import conjugate_gradients
+from evenstage.sizing.sums import Curvature
+
+if TYPE_CHECKING:
+    from evenstage.sizing.lagrangian import Point
+    from evenstage.sizing.problem import FloatArray
+    from evenstage.sizing.reduced import Reduced
+    from evenstage.sizing.sums import SumsAt
+
+#: Newton steps, conjugate gradient iterations of each, and what they change sizes by at most.
+_STEPS, _ITERATIONS, _LONGEST = 3, 15, 1.0
+#: Relative curvature below which a size counts as flat.
+_FLAT = 1e-14
+
+
+@dataclass(frozen=True, kw_only=True)
+class Bound:
+    """A lower bound of the objective.
+
+    Parameters
+    ----------
+    value : float
+    point : Point
+        Whose flow and prices give it.
+    y : FloatArray, shape (n,)
+        Log sizes at which it is measured.
+    """
+
+    value: float
+    point: Point
+    y: FloatArray
+
+
+def best_bound(point: Point) -> Bound:
+    """Return the best bound found from a point's flow and prices."""
+    reduced, question, prices = point.reduced, point.question, point.prices
+    delay, cost = (prices.goal, 1.0) if question.deadline is not None else (1.0, prices.goal)
+    rows = point.rows(delay, prices.limit)
+    u, still = point.sums.weights(rows), float(prices.limit.sum())
+    still += delay * (question.deadline or 0.0) + cost * (question.budget or 0.0)
+    y, best = point.y, Bound(value=-np.inf, point=point, y=point.y)
+    for step in range(_STEPS + 1):
+        at = reduced.sums.at(y)
+        bill = cost * reduced.spend * at.x
+        value = float(rows @ at.values) + float(bill.sum()) + cost * reduced.spend_held - still
+        gradient = at.gradient(u) + bill
+        low, high = gradient * (y - reduced.lower), gradient * (y - reduced.upper)
+        value -= float(np.maximum(low, high).sum())
+        if value > best.value:
+            best = Bound(value=value, point=point, y=y)
+        if step < _STEPS:
+            y = _lower(reduced, at, u, gradient, bill, y)
+    return best
+
+
+def _lower(
+    reduced: Reduced,
+    at: SumsAt,
+    u: FloatArray,
+    gradient: FloatArray,
+    bill: FloatArray,
+    y: FloatArray,
+) -> FloatArray:
+    """Return log sizes after a Newton step towards the Lagrangian's minimum."""
+    held = ((y <= reduced.lower) & (gradient > 0.0)) | ((y >= reduced.upper) & (gradient < 0.0))
+    curvature = Curvature(at, u)
+    diagonal = curvature.diagonal + bill
+    scale = np.where(held, 0.0, 1.0 / np.maximum(diagonal, _FLAT * diagonal.max(initial=_FLAT)))
+
+    def product(v: FloatArray) -> FloatArray:
+        result = curvature.product(v, at.moved(v), None) + bill * v
+        return np.where(held, 0.0, result)
+
+    step, _ = conjugate_gradients(
+        product, lambda r: scale * r, np.where(held, 0.0, -gradient), most=_ITERATIONS
+    )
+    moved: FloatArray = y + np.clip(step, -_LONGEST, _LONGEST)
+    return np.clip(moved, reduced.lower, reduced.upper)
