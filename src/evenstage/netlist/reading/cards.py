@@ -254,8 +254,7 @@ class CardTable:
 
     def value_spans(self, numbers: Iterable[int], name: str) -> Iterator[Span | None]:
         """Give the bytes of one parameter of some cards; None where a card does not have it."""
-        groups = [stored.group(name) for stored in self._stored]
-        matchers = [shape.row.match for shape in self._shapes]
+        patterns = [shape.until(name) for shape in self._shapes]
         shape_of, starts = self._shape_of, self._starts
         first, beyond, base, text = 0, 0, 0, b""
         blocks, _ = self._segment_places[0]
@@ -265,8 +264,8 @@ class CardTable:
                 parameter = self[number].parameter(name)
                 yield None if parameter is None else parameter.span
                 continue
-            group = groups[shape]
-            if group is None:
+            pattern = patterns[shape]
+            if pattern is None:
                 yield None
                 continue
             if not first <= number < beyond:
@@ -274,9 +273,9 @@ class CardTable:
                 blocks, text = self._place(number)[0], b""
             if not base <= start < base + len(text):
                 base, text = blocks.at(start)
-            match = matchers[shape](text, start - base)
+            match = pattern.match(text, start - base)
             assert match is not None
-            yield Span(blocks.source, base + match.start(group), base + match.end(group))
+            yield Span(blocks.source, base + match.start(1), base + match.end(1))
 
     def _segment_of(self, number: int) -> tuple[int, int]:
         """Return the range of the cards around one that stand in the same place."""

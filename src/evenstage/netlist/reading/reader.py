@@ -12,15 +12,16 @@ from evenstage.netlist.grammar import ENCODING, terminal
 from evenstage.netlist.netlist import Netlist
 from evenstage.netlist.parameters import Scope
 from evenstage.netlist.reading.blocks import Blocks
+from evenstage.netlist.reading.brackets import plain_bracket
 from evenstage.netlist.reading.branches import Branches
 from evenstage.netlist.reading.canonical import BOM
 from evenstage.netlist.reading.cards import CardTable, parameter, plain_text
 from evenstage.netlist.reading.complaints import foreign_card
 from evenstage.netlist.reading.conditions import holds
 from evenstage.netlist.reading.includes import Includes, section_range
+from evenstage.netlist.reading.lessons import learn
 from evenstage.netlist.reading.models import ModelCards, WrittenModel, numbers_among
 from evenstage.netlist.reading.scopes import Scopes
-from evenstage.netlist.reading.shapes import learn, plain_bracket
 from evenstage.netlist.reading.statement import Statement, parse_statement
 from evenstage.progress import tell
 from evenstage.source import SourceText, Span

@@ -49,7 +49,7 @@ class ShapeColumns:
         self.rows: list[tuple[bytes, ...]] = []
         self._shape = shape
         self._tails: EqualTails | PlainTails | None = None
-        self._is_settled = not shape.tail
+        self._is_settled = len(shape.keys) < 2
         self.hashes = array("q")
         self._letter = shape.letter
         self._words = words
@@ -101,7 +101,7 @@ class ShapeColumns:
         elif self._shape.plain_tails and self._letter != "x":
             self._tails = PlainTails(self._shape, groups, self._values)
         if self._tails is not None:
-            self.match = re.compile(self._shape.joint).match
+            self.match = self._shape.joint.match
 
     def _store_tails(self, tails: EqualTails | PlainTails, texts: Sequence[bytes]) -> None:
         for name, numbers in zip(self._value_places, tails.numbers(texts), strict=True):
@@ -120,11 +120,6 @@ class ShapeColumns:
         self._run.extend(map(self._words.__getitem__, chain.from_iterable(words)))
         ends = accumulate(map(len, words), initial=self._run_ends.pop())
         self._run_ends.extend(ends)
-
-    def group(self, name: str) -> int | None:
-        """Return the group of a parameter in the ``row`` of the shape, if it has one."""
-        place = self._value_places.get(name)
-        return None if place is None else place + 1
 
     def columns(self, numbers: IntArray, first: int, last: int) -> Iterator[CardColumns]:
         """Give the rows ``[first, last)``, which are the cards of some numbers."""

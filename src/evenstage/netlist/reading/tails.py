@@ -5,7 +5,6 @@ The *tail* of a card is what stands there from its first parameter to its last v
 
 from __future__ import annotations
 
-import re
 from array import array
 from typing import TYPE_CHECKING, Final
 
@@ -42,7 +41,7 @@ class EqualTails(dict[bytes, int]):
         super().__init__()
         self._columns = [array("i") for _ in groups]
         self._groups = groups
-        self._match = re.compile(shape.tail).fullmatch
+        self._match = shape.tail.fullmatch
         self._take = values.kept if shape.letter == "x" else values.numbers_of
 
     def __missing__(self, text: bytes) -> int:
@@ -80,8 +79,9 @@ class PlainTails:
 
     def __init__(self, shape: Shape, groups: Sequence[int], values: Values) -> None:
         self._groups = groups
-        self._are_plain = re.compile(shape.plain_tails).fullmatch
-        self._match = re.compile(shape.tail).fullmatch
+        assert shape.plain_tails is not None
+        self._are_plain = shape.plain_tails.fullmatch
+        self._match = shape.tail.fullmatch
         self._values = values
         self._count = len(shape.keys)
         self._misses = 0
