@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from functools import cache
 from typing import TYPE_CHECKING, Final
 
 from evenstage.netlist.grammar import ENCODING, terminal
@@ -14,8 +15,6 @@ if TYPE_CHECKING:
 
 _LEARNABLE: Final = frozenset({"transistor", "call", "passive"})
 _SIGNS: Final = frozenset({"EQUAL", "SLASH", "PARAMS", "OPEN", "CLOSE", "OFF"})
-#: After these a call's next word is the subcircuit.
-_BEFORE_TARGET: Final = frozenset({"/", r"\)"})
 
 
 def learn(statement: Statement, text: bytes) -> Shape | None:
@@ -53,12 +52,18 @@ def _pieces(statement: Statement, text: bytes) -> list[Piece]:
             word = possessive("WORD")
             pieces.append(Piece(f"{word}(?:{BETWEEN_WORDS}{word})*", "nodes"))
         elif mark.terminal in _SIGNS:
-            pieces.append(Piece(terminal(mark.terminal), None))
+            pieces.append(Piece(_sign(mark.terminal), None))
         else:
             role = _role(statement, pieces)
             pieces.append(Piece(_guard(statement, pieces) + possessive(mark.terminal), role))
         position += 1
     return pieces
+
+
+@cache
+def _sign(name: str) -> str:
+    """Return the expression of a sign; where a word can begin, as with a slash, it is no sign."""
+    return f"(?!{possessive('WORD')}){terminal(name)}" if name == "SLASH" else terminal(name)
 
 
 def _is_key(marks: tuple[Mark, ...], position: int) -> bool:
@@ -70,7 +75,9 @@ def _continues_run(marks: tuple[Mark, ...], position: int) -> bool:
 
 
 def _begins_run(rule: str, mark: Mark, before: Piece) -> bool:
-    return mark.terminal == "WORD" and rule == "call" and before.pattern not in _BEFORE_TARGET
+    # After these signs a call's next word is the subcircuit.
+    ends = {_sign("SLASH"), _sign("CLOSE")}
+    return mark.terminal == "WORD" and rule == "call" and before.pattern not in ends
 
 
 def _guard(statement: Statement, before: list[Piece]) -> str:

@@ -13,7 +13,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass, replace
-from functools import cache, cached_property
+from functools import cache, cached_property, lru_cache
 from typing import TYPE_CHECKING, Final, Literal
 
 from evenstage.netlist.decimals import PLAIN
@@ -98,7 +98,7 @@ class Shape:
     @cached_property
     def row(self) -> re.Pattern[bytes]:
         """The same with a group for each role but ``key``, which saves time."""
-        return _card(_without(self.pieces, "key"))
+        return _card(tuple(_without(self.pieces, "key")))
 
     @cached_property
     def joint(self) -> re.Pattern[bytes]:
@@ -151,7 +151,9 @@ def _joined(pieces: Iterable[Piece]) -> str:
     return BETWEEN.join(p.pattern if p.role is None else f"({p.pattern})" for p in pieces)
 
 
-def _card(pieces: Iterable[Piece]) -> re.Pattern[bytes]:
+@lru_cache(maxsize=1 << 12)
+def _card(pieces: tuple[Piece, ...]) -> re.Pattern[bytes]:
+    """Return the expression of a card; compiling it takes as long as some fifty cards."""
     return re.compile((_joined(pieces) + END).encode(ENCODING))
 
 
