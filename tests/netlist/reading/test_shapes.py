@@ -71,6 +71,12 @@ def test_a_shape_that_reads_too_much_is_noticed(monkeypatch: pytest.MonkeyPatch)
     _card.cache_clear()
 
 
+def test_a_name_behind_a_comma_may_stand_before_a_continuation() -> None:
+    cards = [f"m1 a b c d nch w=1u,l{gap}=2u\n" for gap in ("", " ", "\n+ ", " $ it\n+")]
+    assert compare([*cards, *cards]).differences == ()
+    assert compare_brackets(card.replace("m1", ".subckt") for card in cards).differences == ()
+
+
 def test_a_slash_that_begins_a_word_is_no_sign() -> None:
     cases = ["x1 a b / inv\n", "x1 a b /inv\n", "x1 / inv\n", "x1 /inv\n", "x1 (a) /inv\n"]
     tally = compare([*cases, *cases])

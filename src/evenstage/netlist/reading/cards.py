@@ -245,7 +245,7 @@ class CardTable:
             nodes = [field for field in self._fields(number) if field[0] == "node"]
             _, start, end = nodes[position]
         else:
-            base, text = blocks.at(self._starts[number])
+            base, text, _ = blocks.at(self._starts[number])
             match = shape.groups.match(text, self._starts[number] - base)
             assert match is not None
             # The nets follow the name, which is the first group.
@@ -272,7 +272,7 @@ class CardTable:
                 first, beyond = self._segment_of(number)
                 blocks, text = self._place(number)[0], b""
             if not base <= start < base + len(text):
-                base, text = blocks.at(start)
+                base, text, _ = blocks.at(start)
             match = pattern.match(text, start - base)
             assert match is not None
             yield Span(blocks.source, base + match.start(1), base + match.end(1))
@@ -333,7 +333,7 @@ class CardTable:
         """Give the words of cards of one shape."""
         for number in numbers:
             start = self._starts[number]
-            base, text = self._place(number)[0].at(start)
+            base, text, _ = self._place(number)[0].at(start)
             match = shape.groups.match(text, start - base)
             assert match is not None
             yield match.groups()

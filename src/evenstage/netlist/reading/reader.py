@@ -36,9 +36,11 @@ if TYPE_CHECKING:
 #: A sequence of terminals is learned when it is met for this time: an expression takes as long to
 #: compile as some fifty cards take to parse.
 _LEARNED_AT: Final = 3
-#: Bytes of a card; a longer one is no card of a design, and reading it would fill the memory.
-_LONGEST: Final = 1 << 20
+#: Bytes of the first line that are looked at to tell a title from a card.
+_LOOK: Final = 1 << 14
 _BLANKS: Final = bytes(range(33)) + b","
+#: A first line that is not blank.
+_FIRST_LINE = re.compile(rb"[\x00-\x09\x0b\x0c\x0e-\x20]*+[^\r\n]++")
 _SKIP = re.compile(rb"[\x00-\x20,]*+")
 _ELEMENTS: Final = frozenset({"transistor", "call", "passive", "source", "element"})
 
@@ -101,18 +103,19 @@ class Reader:
 
     def _after_title(self, source: SourceText) -> int:
         """Return where the first line after the title begins; 0 if there is no title."""
-        title = re.match(terminal("TITLE").encode(ENCODING), source.data, re.IGNORECASE)
-        if title is None:
+        line = _FIRST_LINE.match(source.data)
+        title = re.compile(terminal("TITLE").encode(ENCODING), re.IGNORECASE)
+        if line is None or title.match(source.data, 0, min(line.end(), _LOOK)) is None:
             return 0
         start = len(BOM) if source.data.startswith(BOM) else 0
-        statement = _element_or_none(source, start, title.end())
+        statement = _element_or_none(source, start, line.end())
         if statement is None:
-            return title.end()
+            return line.end()
         if statement.rule == "call" and _calls_defined(statement, source):
             return 0
         message = "the first line is taken as the title, though it could be a card"
-        self._notices.append(Notice("title", message, Span(source, start, title.end()).place))
-        return title.end()
+        self._notices.append(Notice("title", message, Span(source, start, line.end()).place))
+        return line.end()
 
     # The loop over the cards of a file.
 
@@ -130,10 +133,11 @@ class Reader:
 
     def _read_block(self, unit: Unit, position: int, end: int) -> int:
         """Read the cards of a block from a position on; return where the next block begins."""
-        base, text = unit.blocks.at(position)
+        base, text, block_end = unit.blocks.at(position)
+        position = max(position, base)
+        if position >= end:
+            return end
         text = text[: end - base]
-        if len(text) > _LONGEST:
-            _refuse_long_cards(unit.source, base, text)
         skipped = _SKIP.match(text, position - base)
         assert skipped is not None
         place, learned = skipped.end(), self._learned
@@ -160,14 +164,14 @@ class Reader:
                 place = found.end()
                 found = match(text, place)
         self._table.extend(base, starts, kinds)
-        return base + place
+        return max(base + place, min(block_end, end))
 
     def _begin_segment(self, unit: Unit) -> None:
         self._table.begin_segment(unit.blocks, self._scopes.current)
 
     def _read_card(self, unit: Unit, position: int, end: int) -> int:
         """Read one card through the grammar; return where the next one begins."""
-        base, text = unit.blocks.at(position)
+        base, text, _ = unit.blocks.at(position)
         line_end = text.find(b"\n", position - base)
         if line_end < 0:
             line_end = len(text)
@@ -389,23 +393,6 @@ def check_text(source: SourceText) -> None:
         raise NetlistError(f"'{source.label}' is not a text file", code="not-text")
 
 
-def _refuse_long_cards(source: SourceText, base: int, text: bytes) -> None:
-    """Refuse cards so long that nobody drew them.
-
-    Raises
-    ------
-    NetlistError
-        If there is one.
-    """
-    start = 0
-    for line in text.split(b"\n"):
-        if len(line) > _LONGEST and len(line.strip(_BLANKS)) > _LONGEST:
-            first = base + start + len(line) - len(line.lstrip(_BLANKS))
-            message = f"this card is longer than {_LONGEST} bytes"
-            raise NetlistError(message, code="too-large", span=Span(source, first, first + 1))
-        start += len(line) + 1
-
-
 def _promote(shapes: list[ShapeColumns], rank: int) -> None:
     """Move a shape one place forward, so that the most used are tried first."""
     shapes[rank - 1], shapes[rank] = shapes[rank], shapes[rank - 1]
@@ -413,7 +400,7 @@ def _promote(shapes: list[ShapeColumns], rank: int) -> None:
 
 def _element_or_none(source: SourceText, start: int, end: int) -> Statement | None:
     """Return a line as an element card of a kind with a fixed form, if it could be one."""
-    if end - start > _LONGEST:
+    if end - start > _LOOK:
         return None
     lead = len(source.data[start:end]) - len(source.data[start:end].lstrip())
     try:

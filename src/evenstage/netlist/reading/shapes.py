@@ -28,6 +28,7 @@ BETWEEN: Final = r"[\x00-\x09\x0b-\x20,]*+"
 BETWEEN_WORDS: Final = r"[\x00-\x09\x0b-\x20,]++"
 #: Ends a card.
 END: Final = BETWEEN + r"(?:\n[\x00-\x20,]*+|\Z)"
+_NO_JOINT: Final = rf"(?!,[^\x00-\x20=,()'\"{{}}]*+{BETWEEN_WORDS}=)"
 _HAS_NUMBER = re.compile(r"[0-9.]")
 _QUANTIFIER = re.compile(r"(?<=[\])])(?:[*+]|\?)(?![+?])")
 
@@ -37,9 +38,11 @@ def possessive(name: str) -> str:
     """Return a terminal's expression with possessive quantifiers.
 
     That changes nothing: no terminal of an element card repeats a piece that could also begin what
-    comes after it.
+    comes after it. Where the joint of a continuation line may have stood between a name behind a
+    comma and its sign (``a=1,b =2``), the grammar decides.
     """
-    return _QUANTIFIER.sub(lambda match: match[0] + "+", terminal(name))
+    expression = _QUANTIFIER.sub(lambda match: match[0] + "+", terminal(name))
+    return expression + _NO_JOINT if name == "VALUE" else expression
 
 
 @dataclass(frozen=True, slots=True)
