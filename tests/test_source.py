@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
+from unittest.mock import patch
 
 import pytest
 from hypothesis import given, settings
@@ -35,15 +37,22 @@ class TestLines:
 
     def test_a_line_has_no_line_end(self) -> None:
         source = text(b"one\r\ntwo\rthree\n")
-        assert [source.line(number) for number in (1, 2, 3, 4)] == ["one", "two", "three", ""]
+        assert [source.line(offset) for offset in (0, 5, 15)] == ["one", "two", ""]
+        assert [source.line(offset) for offset in (3, 4, 8)] == ["one", "one", "two"]
 
+    @pytest.mark.parametrize("part", [1, 2, 3, 1000])
     @settings(max_examples=100, deadline=None)
-    @given(st.binary(max_size=60))
-    def test_lines_tile_the_file(self, data: bytes) -> None:
-        source = text(data)
-        lines = [source.line(number) for number in range(1, source.line_number(len(data)) + 1)]
-        kept = b"".join(line.encode("utf-8", "surrogateescape") for line in lines)
-        assert kept == data.replace(b"\r", b"").replace(b"\n", b"")
+    @given(data=st.text("a\r\n", max_size=30).map(str.encode))
+    def test_each_place_lies_in_the_line_that_splitting_gives(self, data: bytes, part: int) -> None:
+        pieces = re.split(rb"(\r\n|\n|\r)", data)
+        lines = list(zip(pieces[::2], [*pieces[1::2], b"$"], strict=True))
+        with patch("evenstage.source._PART", part):
+            source, offset = text(data), 0
+            for number, (line, end) in enumerate(lines, 1):
+                for _ in line + end:
+                    assert source.line_number(offset) == number
+                    assert source.line(offset) == line.decode()
+                    offset += 1
 
 
 class TestSpan:

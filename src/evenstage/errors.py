@@ -135,7 +135,7 @@ def excerpt(span: Span) -> list[str]:
     Of a line longer than some hundred columns only the part around the cause is shown.
     """
     source = span.source
-    line = source.line(source.line_number(span.start))
+    line = source.line(span.start)
     left = source.column(span.start) - 1
     marked = min(len(_LINE_END.split(span.text, maxsplit=1)[0]), len(line) - left)
     line, left = _window(line, left)

@@ -7,15 +7,17 @@ worked out only when a message is printed.
 from __future__ import annotations
 
 import re
-from bisect import bisect_right
 from dataclasses import dataclass, field
 from functools import cached_property
-from typing import TYPE_CHECKING
+from itertools import accumulate
+from typing import TYPE_CHECKING, Final
 
 if TYPE_CHECKING:
     from pathlib import Path
 
-_LINE_END = re.compile(rb"\r\n|\n|\r")
+_LINE_END = re.compile(rb"[\r\n]")
+#: Bytes between places where the lines before are known.
+_PART: Final = 1 << 16
 
 
 @dataclass(frozen=True)
@@ -37,25 +39,42 @@ class SourceText:
     label: str
 
     @cached_property
-    def _line_starts(self) -> list[int]:
-        """Offsets at which lines begin; a line ends at LF, CR LF or a lone CR."""
-        return [0, *(match.end() for match in _LINE_END.finditer(self.data))]
+    def _counts(self) -> list[int]:
+        """How many lines end before each part of the file; a list of all would outgrow the file."""
+        starts = range(0, len(self.data), _PART)
+        return [0, *accumulate(self._ends_between(start, start + _PART) for start in starts)]
+
+    def _ends_between(self, start: int, stop: int) -> int:
+        """Return how many lines end in a range; a line ends at LF, CR LF or a lone CR."""
+        count = self.data.count
+        stop = min(stop, len(self.data))
+        return (
+            count(b"\n", start, stop) + count(b"\r", start, stop) - count(b"\r\n", start, stop + 1)
+        )
 
     def line_number(self, offset: int) -> int:
         """Return the 1-based line that holds a byte offset."""
-        return bisect_right(self._line_starts, offset)
+        part = min(offset // _PART, len(self._counts) - 1)
+        return 1 + self._counts[part] + self._ends_between(part * _PART, offset)
+
+    def _line_start(self, offset: int) -> int:
+        """Return where the line of an offset begins."""
+        if self.data[offset - 1 : offset + 1] == b"\r\n" and offset:
+            offset -= 1
+        feed = self.data.rfind(b"\n", 0, offset)
+        return max(feed, self.data.rfind(b"\r", feed + 1, offset)) + 1
 
     def column(self, offset: int) -> int:
         """Return the 1-based column of a byte offset, in characters."""
-        start = self._line_starts[self.line_number(offset) - 1]
+        start = self._line_start(offset)
         return len(self.data[start:offset].decode("utf-8", "surrogateescape")) + 1
 
-    def line(self, number: int) -> str:
-        """Return the text of a 1-based line without its line end."""
-        start = self._line_starts[number - 1]
-        following = self._line_starts[number : number + 1]
-        end = following[0] if following else len(self.data)
-        return self.data[start:end].rstrip(b"\r\n").decode("utf-8", "surrogateescape")
+    def line(self, offset: int) -> str:
+        """Return the text of the line of a byte offset, without its line end."""
+        start = self._line_start(offset)
+        end = _LINE_END.search(self.data, start)
+        text = self.data[start : len(self.data) if end is None else end.start()]
+        return text.decode("utf-8", "surrogateescape")
 
 
 @dataclass(frozen=True, slots=True)
