@@ -98,6 +98,9 @@ class Brief:
         Groups of cards that share one size.
     transition_max : float, optional
         s; None: today's worst.
+    coupling : float
+        What a capacitor between two signals counts on each of them: 0 where the other moves along,
+        1 where it stands still, 2 where it moves against.
     copies_per_leaf : int
         How many sized copies of one leaf may be added; 0: all callers share one size.
     aim_delay, aim_width : float, optional
@@ -122,6 +125,7 @@ class Brief:
     leaves: tuple[Pattern, ...] = ()
     same_size: tuple[tuple[Pattern, ...], ...] = ()
     transition_max: float | None = None
+    coupling: float = 1.0
     copies_per_leaf: int = 4
     aim_delay: float | None = None
     aim_width: float | None = None
@@ -161,6 +165,7 @@ BRIEF_KEYS: Final[Mapping[str, Entry]] = {
     "same_size": Tables(keys={"cards": Names(required=True)}),
     "limit": Tables(keys={"cards": Names(required=True), "width_min": _WIDTH, "width_max": _WIDTH}),
     "transition_max": _TIME,
+    "coupling": Number(least=0, most=2, default=1.0),
     "copies_per_leaf": Integer(least=0, default=4),
     "aim": Table(
         keys={
@@ -203,6 +208,7 @@ def read_brief(path: str | Path) -> Brief:
         leaves=settings.names("leaves"),
         same_size=tuple(group.names("cards") for group in settings.tables("same_size")),
         transition_max=settings.optional_number("transition_max"),
+        coupling=settings.number("coupling"),
         copies_per_leaf=settings.integer("copies_per_leaf"),
         aim_delay=aim.optional_number("delay"),
         aim_width=aim.optional_number("width"),

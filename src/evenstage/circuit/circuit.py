@@ -9,16 +9,19 @@ from typing import TYPE_CHECKING
 import networkx as nx
 import numpy as np
 
+from evenstage.circuit.capacitance import at_nets, capacitor_values, on_nets, on_nodes
 from evenstage.circuit.electrical import Electrical, electrical
 from evenstage.circuit.function import inverted_text
 from evenstage.circuit.names import Names
 from evenstage.circuit.tables import AlikeGates, Pins, arcs_of, pins_of
+from evenstage.circuit.wiring import WireLoads, wire_loads
 
 if TYPE_CHECKING:
     from evenstage.circuit.apart import Apart
     from evenstage.circuit.arcs import Arcs
     from evenstage.circuit.network import BoolArray
     from evenstage.circuit.supplies import Supplies
+    from evenstage.circuit.wiring import Wiring
     from evenstage.errors import Notice
     from evenstage.netlist.devices import Devices, FloatArray, IntArray
     from evenstage.process.process import Process
@@ -73,6 +76,10 @@ class Circuit:
     ends : dict of int to str
         Nets where paths end, and why.
     notices : tuple of Notice
+    coupling : float
+        What a capacitor between two signals counts on each of them.
+    wiring : Wiring, optional
+        Nets with resistance; None where there are none.
     """
 
     devices: Devices
@@ -87,6 +94,8 @@ class Circuit:
     gate_is_leaf: BoolArray = field(repr=False)
     ends: dict[int, str]
     notices: tuple[Notice, ...]
+    coupling: float = 1.0
+    wiring: Wiring | None = field(default=None, repr=False)
 
     def __len__(self) -> int:
         return len(self.gate_output)
@@ -97,9 +106,23 @@ class Circuit:
         return electrical(self.devices, self.process)
 
     @cached_property
+    def capacitor_value(self) -> FloatArray:
+        """What each capacitor card counts for at its ends, F, shape (capacitors,)."""
+        return capacitor_values(self.devices, self.supplies.is_supply, self.coupling)
+
+    @cached_property
     def wire_cap(self) -> FloatArray:
-        """Capacitor cards on each net, F, shape (nets,); coupling counts fully at both ends."""
-        return wire_capacitance(self.devices)
+        """Capacitor cards on each net, F, shape (nets,)."""
+        return on_nets(self.devices, self.capacitor_value)
+
+    @cached_property
+    def wire_loads(self) -> WireLoads | None:
+        """What the wires amount to; None where no net has resistance."""
+        wires = self.devices.wires
+        if self.wiring is None or wires is None:
+            return None
+        cap = on_nodes(wires, self.electrical, self.capacitor_value, self.outside_cap)
+        return wire_loads(self.wiring, cap)
 
     @cached_property
     def strange_cap(self) -> FloatArray:
@@ -280,16 +303,3 @@ class Circuit:
 
 def _joined(parts: list[IntArray]) -> IntArray:
     return np.concatenate([np.zeros(0, np.int32), *parts])
-
-
-def wire_capacitance(devices: Devices) -> FloatArray:
-    """Return the sum of capacitor cards at each net, F, shape (nets,)."""
-    a, b = devices.capacitor_nets
-    value = np.where(a == b, 0.0, devices.capacitance)
-    nets = len(devices.net_names)
-    return at_nets(a, value, nets) + at_nets(b, value, nets)
-
-
-def at_nets(net: IntArray, value: FloatArray, nets: int) -> FloatArray:
-    """Add values up on the nets they belong to, shape (nets,)."""
-    return np.bincount(net, value, nets).astype(np.float64, copy=False)

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.brief import Brief
 from evenstage.circuit.apart import set_apart
 from evenstage.circuit.circuit import Circuit, NotUnderstood
 from evenstage.circuit.groups import group
@@ -15,6 +16,7 @@ from evenstage.circuit.ownership import leaves, owners
 from evenstage.circuit.sorting import sort_groups
 from evenstage.circuit.supplies import find_supplies
 from evenstage.circuit.tables import AlikeGates
+from evenstage.circuit.wiring import find_wiring
 from evenstage.errors import CircuitError, Notice
 from evenstage.pattern import select
 from evenstage.process.unit import unit_inverter
@@ -22,7 +24,6 @@ from evenstage.process.unit import unit_inverter
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from evenstage.brief import Brief
     from evenstage.circuit.sorting import Sorted
     from evenstage.netlist.devices import Devices, IntArray
     from evenstage.process.process import Process
@@ -79,8 +80,12 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         gate_is_leaf=leaves(devices, alike, owner),
         ends={},
         notices=(*devices.notices, *process.notices, *_strange_notices(devices, strange)),
+        coupling=brief.coupling if brief else Brief().coupling,
     )
-    return _with_ends(circuit, brief) if alike else circuit
+    if not alike:
+        return circuit
+    wiring = find_wiring(devices, circuit.gate_of_device, output, supplies.is_supply)
+    return _with_ends(replace(circuit, wiring=wiring), brief)
 
 
 def in_process(circuit: Circuit, process: Process, brief: Brief | None = None) -> Circuit:

@@ -42,6 +42,39 @@ class Model:
 
 
 @dataclass(frozen=True, kw_only=True)
+class Wires:
+    """Resistance along nets, and where on them everything hangs.
+
+    A net that resistors run along falls into nodes. Shapes: ``(nodes,)``, ``(r,)`` per resistor,
+    else as in `Devices`; node -1 stands for a net without resistance.
+
+    Parameters
+    ----------
+    net : IntArray, shape (nodes,)
+        Net each node belongs to.
+    ends : IntArray, shape (2, r)
+        Nodes each resistor joins.
+    resistance : FloatArray, ohm, shape (r,)
+        Above zero.
+    head : IntArray, shape (m,)
+        The node that carries each net's name: a port, where the net has one.
+    drain, gate, source : IntArray, shape (n,)
+        Nodes of each transistor.
+    capacitor : IntArray, shape (2, k)
+        Nodes of each C card.
+    """
+
+    net: IntArray
+    ends: IntArray
+    resistance: FloatArray
+    head: IntArray
+    drain: IntArray
+    gate: IntArray
+    source: IntArray
+    capacitor: IntArray
+
+
+@dataclass(frozen=True, kw_only=True)
 class Devices:
     """Transistors, capacitors, instances and nets of one elaborated block.
 
@@ -95,6 +128,8 @@ class Devices:
         Plus net, minus net and DC value (V) of every V card at the block's level.
     notices : tuple of Notice
         What was assumed while elaborating.
+    wires : Wires, optional
+        None where no net has resistance.
     """
 
     netlist: Netlist = field(repr=False)
@@ -128,6 +163,7 @@ class Devices:
     global_nets: frozenset[int]
     source_nets: tuple[tuple[int, int, float], ...]
     notices: tuple[Notice, ...]
+    wires: Wires | None = None
 
     def __len__(self) -> int:
         return len(self.card)

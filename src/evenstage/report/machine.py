@@ -231,6 +231,9 @@ def _stage(stage: Stage) -> Document:
         "on_path_cap_f": stage.on_path_cap,
         "self_cap_f": stage.self_cap,
         "width_m": stage.width,
+        "wire_delay_s": stage.wire_delay,
+        "wire_cap_f": stage.wire_cap,
+        "effective_cap_f": stage.effective_cap,
         "side_branches": [_side_branch(branch) for branch in stage.side_branches],
     }
 

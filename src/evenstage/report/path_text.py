@@ -142,7 +142,10 @@ def _details(
 ) -> list[list[str]]:
     """Return the lines under each stage: what found no column, and its side branches."""
     indent = table.start(kept.index(_GATE))
-    details = [_left_over(paper, row, kept, indent) for row in rows]
+    details = [
+        _left_over(paper, row, kept, indent) + _wire(paper, stage, indent)
+        for row, stage in zip(rows, path.stages, strict=True)
+    ]
     if not branches:
         return details
     loads = [_families(paper, stage) for stage in path.stages]
@@ -165,6 +168,17 @@ def _left_over(paper: Paper, row: Sequence[str], kept: Sequence[int], indent: in
     if _G not in kept:
         text = f"g {row[_G]}  h {row[_H]}  b {row[_B]}  {text}"
     return [(" " * indent + paper.shorten(text, paper.width - indent)).rstrip()]
+
+
+def _wire(paper: Paper, stage: Stage, indent: int) -> list[str]:
+    """Return what resistance along the net behind a stage does, where there is some."""
+    if stage.effective_cap is None and not stage.wire_delay:
+        return []
+    text = f"wire adds {engineering(stage.wire_delay, 's')}"
+    if stage.effective_cap is not None:
+        scale = Scale.of([stage.load_cap], "F", digits=3)
+        text += f", shows {scale.number(stage.effective_cap)} of {scale.text(stage.load_cap)}"
+    return [" " * (indent + 2) + paper.shorten(text, paper.width - indent - 2)]
 
 
 def _families(paper: Paper, stage: Stage) -> list[_Branch]:

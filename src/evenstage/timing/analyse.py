@@ -103,7 +103,7 @@ def _ends(timing: Timing) -> tuple[PathEnd, ...]:
     """Return every end with its later edge, the latest first; of equal ones the first net."""
     graph, circuit = timing.graph, timing.circuit
     charged = np.full(len(circuit.devices.net_names), -np.inf)
-    np.maximum.at(charged, graph.net[graph.end], timing.charged_arrival[graph.end])
+    np.maximum.at(charged, graph.net[graph.end], timing.end_charged_arrival)
     latest: dict[int, int] = {}
     for index, net in enumerate(graph.net[graph.end].tolist()):
         if net not in latest or timing.lateness[index] > timing.lateness[latest[net]]:
@@ -113,7 +113,7 @@ def _ends(timing: Timing) -> tuple[PathEnd, ...]:
         PathEnd(
             net=circuit.devices.net_names[graph.net[graph.end[index]]],
             edge=edge_name(rising=bool(graph.rising[graph.end[index]])),
-            delay=float(timing.arrival[graph.end[index]]),
+            delay=float(timing.end_arrival[index]),
             charged_delay=float(charged[graph.net[graph.end[index]]]),
             required=None
             if np.isnan(graph.end_required[index])

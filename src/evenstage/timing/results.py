@@ -67,9 +67,12 @@ class Stage:
     """One gate on a path; delays in s, capacitances in F, efforts dimensionless.
 
     ``stage_effort = logical_effort * electrical_effort * branching_effort`` and ``charged_delay =
-    tau * (stage_effort + parasitic_delay)``. ``arrival`` is that at the output along this path,
+    tau * (stage_effort + parasitic_delay)``. ``arrival`` is that at the next input along this path,
     ``delay`` its difference to the stage before. ``load_cap`` is what hangs outside the gate: the
     next input on the path, side branches and wire; ``on_path_cap`` the first of these alone.
+    ``wire_delay`` is the part of the delay that resistance along the net makes (before the first
+    stage, too), ``wire_cap`` the part of the load that is capacitor cards, and ``effective_cap``
+    what the driver sees of the load in the delay, None where nothing hides any of it.
     """
 
     instance: str
@@ -93,6 +96,9 @@ class Stage:
     self_cap: float
     width: float
     side_branches: tuple[SideBranch, ...]
+    wire_delay: float = 0.0
+    wire_cap: float = 0.0
+    effective_cap: float | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -3,8 +3,9 @@
 For an arc with path resistance R, charge q of its edge and input capacitance C_in, in units of tau:
 ``g = q R C_in / tau``, ``h = C_on / C_in``, ``b = C_total / C_on``, ``f = g h b`` and ``p = q own /
 tau``, with C_on the next input on the path and C_total all that hangs outside the gate, so that the
-charged delay is ``tau (f + p)`` exactly. Along a path ``F = G B H`` (Sutherland, Sproull and
-Harris, Logical Effort, 1999, chapters 1 and 3, from memory).
+charged delay is ``tau (f + p)`` exactly; the delay of a wire behind the gate counts in p. Along a
+path ``F = G B H`` (Sutherland, Sproull and Harris, Logical Effort, 1999, chapters 1 and 3, from
+memory).
 """
 
 from __future__ import annotations
@@ -13,7 +14,7 @@ import math
 import sys
 from dataclasses import dataclass
 from itertools import accumulate, islice
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
@@ -24,6 +25,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterable
 
     from evenstage.circuit.circuit import Circuit
+    from evenstage.netlist.devices import FloatArray
     from evenstage.timing.results import Edge
     from evenstage.timing.search import ArcPath
     from evenstage.timing.sweep import Timing
@@ -48,11 +50,14 @@ def describe(timing: Timing, arcs: ArcPath) -> Path:
     graph, unit = timing.graph, timing.unit
     first, last = int(graph.source[arcs[0]]), int(graph.target[arcs[-1]])
     begin = float(timing.start_arrival[np.flatnonzero(graph.start == first)[0]])
-    arrivals = accumulate(timing.delay[list(arcs)].tolist(), initial=begin)
+    wires = _wires(timing, arcs)
+    # An arc's delay begins with the wire before it, which is the stage's that drives the wire.
+    delays = timing.delay[list(arcs)] - timing.wire[list(arcs)] + wires.delay
+    arrivals = accumulate(delays.tolist(), initial=begin)
     stages = tuple(
-        _stage(timing, arc, following, arrival)
-        for arc, following, arrival in zip(
-            arcs, [*arcs[1:], None], islice(arrivals, 1, None), strict=True
+        _stage(timing, arc, following, arrival, wires.of(index))
+        for index, (arc, following, arrival) in enumerate(
+            zip(arcs, [*arcs[1:], None], islice(arrivals, 1, None), strict=True)
         )
     )
     log_effort = math.fsum(math.log(stage.stage_effort) for stage in stages)
@@ -82,6 +87,43 @@ def describe(timing: Timing, arcs: ArcPath) -> Path:
     )
 
 
+class _Wire(NamedTuple):
+    """The wire behind a stage: delay and charged delay, s, and the transition at its end, s."""
+
+    delay: float
+    charged: float
+    transition: float
+
+
+class _Wires(NamedTuple):
+    """The wires behind the stages of a path; shape (stages,)."""
+
+    delay: FloatArray
+    charged: FloatArray
+    transition: FloatArray
+
+    def of(self, stage: int) -> _Wire:
+        """Return the wire behind one stage."""
+        return _Wire(*(float(column[stage]) for column in self))
+
+
+def _wires(timing: Timing, arcs: ArcPath) -> _Wires:
+    """Return the wires behind the stages of a path; the first stage has the one before it too."""
+    end = np.flatnonzero(timing.graph.end == timing.graph.target[arcs[-1]])[:1]
+    inner = list(arcs[1:])
+    columns = (
+        (timing.wire, timing.end_wire),
+        (timing.charged_wire, timing.end_charged_wire),
+        (timing.sink_transition, timing.end_transition),
+    )
+    delay, charged, transition = (
+        np.concatenate([along[inner], behind[end]]) for along, behind in columns
+    )
+    delay[0] += timing.wire[arcs[0]]
+    charged[0] += timing.charged_wire[arcs[0]]
+    return _Wires(delay, charged, transition)
+
+
 def _product(factors: Iterable[float]) -> float:
     """Return a product, capped where very many stages drive it out of the range of floats."""
     logarithm = math.fsum(math.log(factor) for factor in factors)
@@ -89,7 +131,9 @@ def _product(factors: Iterable[float]) -> float:
     return math.exp(logarithm) if logarithm < math.log(largest) else largest
 
 
-def _stage(timing: Timing, graph_arc: int, following: int | None, arrival: float) -> Stage:
+def _stage(
+    timing: Timing, graph_arc: int, following: int | None, arrival: float, wire: _Wire
+) -> Stage:
     circuit, graph, unit = timing.circuit, timing.graph, timing.unit
     arcs, arc = circuit.arcs, int(graph.arc[graph_arc])
     gate, names = int(arcs.gate[arc]), circuit.devices.net_names
@@ -98,11 +142,15 @@ def _stage(timing: Timing, graph_arc: int, following: int | None, arrival: float
     rising = bool(arcs.rising[arc])
     charge = unit.charge_rise if rising else unit.charge_fall
     input_cap = _pin_cap(circuit, gate, int(arcs.input[arc]))
-    logical = charge * float(arcs.output_resistance[arc]) * input_cap / unit.tau
+    resistance = float(arcs.output_resistance[arc])
+    logical = charge * resistance * input_cap / unit.tau
+    hidden = float(timing.elmore[graph_arc] - timing.effective[graph_arc]) / resistance
+    net = int(arcs.output[arc])
     electrical, branching = load.on_path / input_cap, load.total / load.on_path
     own = float(arcs.own_today[arc])
     devices = circuit.gate_devices(gate)
-    target = int(graph.target[graph_arc])
+    plain = float(timing.charged[graph_arc] - timing.charged_wire[graph_arc])
+    has_wire = timing.wired is not None and timing.wired.drive[graph_arc] >= 0
     return Stage(
         instance=circuit.gate_name(gate),
         subcircuit=circuit.gate_subcircuit(gate),
@@ -111,20 +159,23 @@ def _stage(timing: Timing, graph_arc: int, following: int | None, arrival: float
         output=names[arcs.output[arc]],
         edge=edge_name(rising=rising),
         arrival=arrival,
-        delay=float(timing.delay[graph_arc]),
-        charged_delay=float(timing.charged[graph_arc]),
-        transition=float(timing.transition[target]),
+        delay=float(timing.delay[graph_arc] - timing.wire[graph_arc]) + wire.delay,
+        charged_delay=plain + wire.charged,
+        transition=wire.transition,
         logical_effort=logical,
         electrical_effort=electrical,
         branching_effort=branching,
         stage_effort=logical * electrical * branching,
-        parasitic_delay=charge * own / unit.tau,
+        parasitic_delay=(charge * own + wire.charged) / unit.tau,
         input_cap=input_cap,
         load_cap=load.total,
         on_path_cap=load.on_path,
         self_cap=_self_cap(circuit, gate),
         width=float(circuit.devices.width[devices] @ circuit.devices.multiplier[devices]),
         side_branches=load.branches,
+        wire_delay=wire.delay,
+        wire_cap=float(circuit.wire_cap[net]),
+        effective_cap=load.total - hidden if has_wire else None,
     )
 
 
@@ -187,7 +238,9 @@ def _fixed_loads(circuit: Circuit, net: int) -> list[SideBranch]:
     for index in np.flatnonzero((ends == net).any(axis=0) & (ends[0] != ends[1])).tolist():
         card, instance = devices.capacitor_card[index], devices.capacitor_instance[index]
         name = devices.card_path(int(card), int(instance))
-        found.append(SideBranch(instance=name, pin="wire", cap=float(devices.capacitance[index])))
+        found.append(
+            SideBranch(instance=name, pin="wire", cap=float(circuit.capacitor_value[index]))
+        )
     found += _other_transistors(circuit, net)
     if circuit.outside_cap[net] > 0:
         found.append(SideBranch(instance="", pin="load", cap=float(circuit.outside_cap[net])))

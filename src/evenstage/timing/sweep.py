@@ -14,12 +14,14 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from evenstage.timing.laws import arc_delay, arc_transition
+from evenstage.timing.wired import Ride, wire_elmore, wired_graph
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.timing.graph import TimingGraph
     from evenstage.timing.results import Yardstick
+    from evenstage.timing.wired import WiredGraph
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -31,22 +33,51 @@ class Timing:
     circuit : Circuit
     graph : TimingGraph
     unit : Yardstick
-    elmore, delay, charged : FloatArray, s, shape (arcs,)
-        Per graph arc: Elmore delay, 50 % delay with today's transitions, charged delay.
+    elmore, effective, delay, charged : FloatArray, s, shape (arcs,)
+        Per graph arc: Elmore delay with the whole and the effective capacitance; 50 % delay with
+        today's transitions, and charged delay, both with the wire before the arc.
     arrival, transition : FloatArray, s, shape (nodes,)
+        At the driver's end of the net.
     winner : IntArray, shape (nodes,)
         Graph arc the arrival came by; -1 at starts.
+    wire, charged_wire : FloatArray, s, shape (arcs,)
+        Part of the delays that is the wire before the arc.
+    sink_transition : FloatArray, s, shape (arcs,)
+        At the arc's input.
+    end_wire, end_charged_wire, end_transition : FloatArray, s, shape (ends,)
+        Delay of the wire from the driver to where the load of an end hangs, and the transition
+        there.
+    wired : WiredGraph, optional
+        None where no net has resistance.
     """
 
     circuit: Circuit = field(repr=False)
     graph: TimingGraph = field(repr=False)
     unit: Yardstick
     elmore: FloatArray = field(repr=False)
+    effective: FloatArray = field(repr=False)
     delay: FloatArray = field(repr=False)
     charged: FloatArray = field(repr=False)
     arrival: FloatArray = field(repr=False)
     transition: FloatArray = field(repr=False)
     winner: IntArray = field(repr=False)
+    wire: FloatArray = field(repr=False)
+    charged_wire: FloatArray = field(repr=False)
+    sink_transition: FloatArray = field(repr=False)
+    end_wire: FloatArray = field(repr=False)
+    end_charged_wire: FloatArray = field(repr=False)
+    end_transition: FloatArray = field(repr=False)
+    wired: WiredGraph | None = field(repr=False)
+
+    @cached_property
+    def end_arrival(self) -> FloatArray:
+        """Latest arrival at each end, wire and all, s, shape (ends,)."""
+        return self.arrival[self.graph.end] + self.end_wire
+
+    @cached_property
+    def end_charged_arrival(self) -> FloatArray:
+        """Latest arrival at each end in charged delay, wire and all, s, shape (ends,)."""
+        return self.charged_arrival[self.graph.end] + self.end_charged_wire
 
     @cached_property
     def charged_arrival(self) -> FloatArray:
@@ -61,12 +92,12 @@ class Timing:
     @property
     def worst(self) -> float:
         """Latest arrival at any path end, s."""
-        return float(self.arrival[self.graph.end].max())
+        return float(self.end_arrival.max())
 
     @property
     def worst_charged(self) -> float:
         """Latest charged arrival at any path end, s."""
-        return float(self.charged_arrival[self.graph.end].max())
+        return float(self.end_charged_arrival.max())
 
     @property
     def worst_transition(self) -> float:
@@ -76,7 +107,7 @@ class Timing:
     @cached_property
     def lateness(self) -> FloatArray:
         """How late each end is, s, shape (ends,): its arrival, and what its required time costs."""
-        return self.arrival[self.graph.end] + end_offsets(self.graph)
+        return self.end_arrival + end_offsets(self.graph)
 
 
 def end_offsets(graph: TimingGraph) -> FloatArray:
@@ -117,21 +148,59 @@ def latest_arrivals(graph: TimingGraph, delay: FloatArray, start_arrival: FloatA
 
 def sweep(circuit: Circuit, graph: TimingGraph, unit: Yardstick) -> Timing:
     """Add up the delays of a circuit along a graph."""
-    arcs, which = circuit.arcs, graph.arc
-    elmore = arcs.elmore(circuit.net_cap)[which]
-    charge = np.where(arcs.rising, unit.charge_rise, unit.charge_fall)[which]
-    flow = propagate(circuit, graph, elmore, start_arrivals(circuit, graph))
+    elmore = circuit.arcs.elmore(circuit.net_cap)[graph.arc]
+    charges = charges_of(circuit, graph, unit)
+    wired = wired_graph(circuit, graph)
+    flow = propagate(circuit, graph, elmore, start_arrivals(circuit, graph), wired)
+    before, behind = charged_wires(graph, charges, wired)
     return Timing(
         circuit=circuit,
         graph=graph,
         unit=unit,
         elmore=elmore,
+        effective=flow.effective,
         delay=flow.delay,
-        charged=charge * elmore,
+        charged=charges.arc * elmore + before,
         arrival=flow.arrival,
         transition=flow.transition,
         winner=flow.winner,
+        wire=flow.wire,
+        charged_wire=before,
+        sink_transition=flow.sink_transition,
+        end_wire=flow.end_wire,
+        end_charged_wire=behind,
+        end_transition=flow.end_transition,
+        wired=wired,
     )
+
+
+class GraphCharges(NamedTuple):
+    """Charged over Elmore delay: of arcs, and of the edges that begin arcs and that end paths."""
+
+    arc: FloatArray
+    before: FloatArray
+    end: FloatArray
+
+
+def charges_of(circuit: Circuit, graph: TimingGraph, unit: Yardstick) -> GraphCharges:
+    """Return what a slow edge is charged with along a graph; see the yardstick."""
+    of_edge = np.array([unit.charge_fall, unit.charge_rise])
+    rising = graph.rising.astype(np.intp)
+    return GraphCharges(
+        arc=of_edge[circuit.arcs.rising.astype(np.intp)][graph.arc],
+        before=of_edge[rising[graph.source]],
+        end=of_edge[rising[graph.end]],
+    )
+
+
+def charged_wires(
+    graph: TimingGraph, charges: GraphCharges, wired: WiredGraph | None
+) -> tuple[FloatArray, FloatArray]:
+    """Return the charged delay of the wire before each arc and each end, s."""
+    if wired is None:
+        return np.zeros(len(graph.arc)), np.zeros(len(graph.end))
+    found = wire_elmore(wired, graph)
+    return charges.before * found.arcs, charges.end * found.ends
 
 
 class Flow(NamedTuple):
@@ -139,20 +208,34 @@ class Flow(NamedTuple):
 
     Parameters
     ----------
-    delay : FloatArray, s, shape (arcs, ...)
+    delay, effective : FloatArray, s, shape (arcs, ...)
+        The latter the Elmore delay with the capacitance that the driver sees.
     arrival, transition : FloatArray, s, shape (nodes, ...)
     winner : IntArray, shape (nodes, ...)
         Graph arc the arrival came by; -1 at starts.
+    wire, sink_transition : FloatArray, s, shape (arcs, ...)
+        Delay of the wire before each arc, part of its delay, and the transition behind the wire.
+    end_wire, end_transition : FloatArray, s, shape (ends, ...)
+        Delay of the wire before each end, no part of the arrival, and the transition behind it.
     """
 
     delay: FloatArray
+    effective: FloatArray
     arrival: FloatArray
     transition: FloatArray
     winner: IntArray
+    wire: FloatArray
+    sink_transition: FloatArray
+    end_wire: FloatArray
+    end_transition: FloatArray
 
 
 def propagate(
-    circuit: Circuit, graph: TimingGraph, elmore: FloatArray, start_arrival: FloatArray
+    circuit: Circuit,
+    graph: TimingGraph,
+    elmore: FloatArray,
+    start_arrival: FloatArray,
+    wired: WiredGraph | None = None,
 ) -> Flow:
     """Add up given Elmore delays along a graph, with the transitions they make.
 
@@ -164,6 +247,8 @@ def propagate(
     elmore : FloatArray, s, shape (arcs, ...)
         Per graph arc; trailing axes are blocks swept side by side.
     start_arrival : FloatArray, s, shape (starts, ...)
+    wired : WiredGraph, optional
+        Wires along the graph, the same for all blocks.
     """
     arcs, which = circuit.arcs, graph.arc
     beside = elmore.shape[1:]
@@ -175,21 +260,52 @@ def propagate(
     arrival = np.full((len(graph), *beside), -np.inf)
     transition = np.zeros((len(graph), *beside))
     winner = np.full((len(graph), *beside), -1, np.int32)
-    delay = np.empty_like(elmore)
+    delay, at_input = np.empty_like(elmore), np.empty_like(elmore)
+    wire, seen = np.zeros_like(elmore), elmore if wired is None else elmore.copy()
     arrival[graph.start] = start_arrival
     transition[graph.start] = graph.start_transition.reshape(column)
+    ride = None
+    if wired is not None:
+        outside = start_arrival - graph.start_arrival.reshape(column)
+        ride = Ride(wired, graph, elmore, shape, outside)
     for some, first, node in graph.levels:
         source = graph.source[some]
         arriving = transition[source]
-        delay[some] = arc_delay(elmore[some], arriving, slope[some], power[some])
+        if ride is not None:
+            wire[some], arriving = ride.at_inputs(some, arriving)
+            seen[some] = ride.effective(some, arriving)
+        delay[some] = arc_delay(seen[some], arriving, slope[some], power[some])
+        if ride is not None:
+            delay[some] += wire[some]
         candidate = arrival[source] + delay[some]
         latest = np.maximum.reduceat(candidate, first, axis=0)
         by = _first_equal(candidate, latest, first)
         leaving = arc_transition(elmore[some], arriving, shape[some], carry[some])
+        at_input[some] = arriving
         arrival[node] = latest
         winner[node] = by + some.start
         transition[node] = np.take_along_axis(leaving, by, axis=0)
-    return Flow(delay, arrival, transition, winner)
+        if ride is not None:
+            ride.follow(node, winner[node], np.take_along_axis(arriving, by, axis=0))
+    end_wire, end_transition = _at_ends(graph, ride, shape, winner, transition)
+    return Flow(delay, seen, arrival, transition, winner, wire, at_input, end_wire, end_transition)
+
+
+def _at_ends(
+    graph: TimingGraph,
+    ride: Ride | None,
+    shape: FloatArray,
+    winner: IntArray,
+    transition: FloatArray,
+) -> tuple[FloatArray, FloatArray]:
+    """Return delay and transition behind the wires to the ends, s, shape (ends, ...)."""
+    at_driver = transition[graph.end]
+    if ride is None:
+        return np.zeros_like(at_driver), at_driver
+    by = winner[graph.end]
+    made = np.where(by >= 0, shape.reshape(-1)[np.maximum(by, 0)], 0.0)
+    late, added = ride.at_ends(made)
+    return late, np.sqrt(at_driver**2 + added)
 
 
 def _first_equal(candidate: FloatArray, latest: FloatArray, first: IntArray) -> IntArray:

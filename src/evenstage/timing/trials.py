@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.timing.sweep import end_offsets, latest_arrivals, propagate
+from evenstage.timing.sweep import charges_of, end_offsets, latest_arrivals, propagate
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
@@ -111,14 +111,16 @@ def _side_by_side(
     on_graph = elmore[graph.arc]
     drive = graph.start_drive[:, None] * load[graph.net[graph.start]]
     start = graph.start_arrival[:, None] + drive
-    flow = propagate(circuit, graph, on_graph, start)
-    charge = np.where(circuit.arcs.rising, unit.charge_rise, unit.charge_fall)[graph.arc]
-    charged = latest_arrivals(graph, charge[:, None] * on_graph, start)
+    flow = propagate(circuit, graph, on_graph, start, timing.wired)
+    charge = charges_of(circuit, graph, unit).arc[:, None]
+    before = timing.charged_wire[:, None]
+    charged = latest_arrivals(graph, charge * on_graph + before, start)[graph.end]
+    arrival = flow.arrival[graph.end] + flow.end_wire
     offset = end_offsets(graph)[:, None]
     return Trials(
-        worst=flow.arrival[graph.end].max(axis=0),
-        lateness=(flow.arrival[graph.end] + offset).max(axis=0),
-        charged_lateness=(charged[graph.end] + offset).max(axis=0),
+        worst=arrival.max(axis=0),
+        lateness=(arrival + offset).max(axis=0),
+        charged_lateness=(charged + timing.end_charged_wire[:, None] + offset).max(axis=0),
         worst_transition=flow.transition[graph.target].max(axis=0),
         net_cap=load[nets],
         elmore_use=(elmore / elmore_limit[:, None]).max(axis=0),

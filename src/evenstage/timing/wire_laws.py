@@ -83,6 +83,59 @@ def shielding(near: FloatArray, lag: FloatArray) -> FloatArray:
     return np.minimum(time / _LN2, 1.0)
 
 
+def effective(elmore: FloatArray, shield: FloatArray, transition: FloatArray) -> FloatArray:
+    """Return the Elmore delay of a driver with the effective capacitance of its net, s.
+
+    Parameters
+    ----------
+    elmore : FloatArray, s
+        With all capacitance.
+    shield : FloatArray
+        Effective over all capacitance, for a step.
+    transition : FloatArray, s
+        Of the input; the slower it is, the less is hidden.
+    """
+    step = step_share(elmore**2, transition)
+    mean = (1 - step) / _LN2
+    result: FloatArray = elmore * (mean + step * shield) / (mean + step)
+    return result
+
+
+def wire_delay(
+    elmore: FloatArray,
+    shield: FloatArray,
+    spread: FloatArray,
+    transition: FloatArray,
+    first: FloatArray,
+    second: FloatArray,
+) -> FloatArray:
+    """Return the delay from the driver's node to a sink, s.
+
+    Parameters
+    ----------
+    elmore, shield : FloatArray, s and dimensionless
+        As for `effective`.
+    spread : FloatArray, s^2
+        ``R A``, which the wire adds to the second moment at the driver.
+    transition : FloatArray, s
+        Of the driver's input.
+    first, second : FloatArray, s and s^2
+        W and V of the sink.
+    """
+    mean = elmore + first
+    moment = elmore**2 + spread + elmore * first + second
+    step = step_share(2 * moment - mean**2, transition)
+    at_sink = (1 - step) * mean / _LN2 + step * sink_delay(mean, moment)
+    step = step_share(elmore**2, transition)
+    at_driver = elmore * ((1 - step) / _LN2 + step * shield)
+    return np.maximum(at_sink - at_driver, 0.0)
+
+
+def added_variance(spread: FloatArray, first: FloatArray, second: FloatArray) -> FloatArray:
+    """Return what the wire to a sink adds to the variance of its driver's response, s^2."""
+    return np.maximum(2 * spread + 2 * second - first**2, 0.0)
+
+
 def sink_delay(first: FloatArray, second: FloatArray) -> FloatArray:
     """Return the 50 % delay of a response to a step from its moments, s."""
     return np.divide(first**2, np.sqrt(second), out=np.zeros_like(first), where=second > 0)

@@ -8,7 +8,7 @@ import numpy as np
 
 from evenstage.errors import ElaborationError, Notice
 from evenstage.netlist.collection import without_collection
-from evenstage.netlist.devices import Devices
+from evenstage.netlist.devices import Devices, Wires
 from evenstage.netlist.elaboration.extent import check_extent, check_templates
 from evenstage.netlist.elaboration.flatten import flatten, ranges, starts_of
 from evenstage.netlist.elaboration.geometry import Drawn, geometry
@@ -16,6 +16,7 @@ from evenstage.netlist.elaboration.library import Library
 from evenstage.netlist.elaboration.nets import Joints, NetNames
 from evenstage.netlist.elaboration.template import column_of
 from evenstage.netlist.elaboration.tops import AmbiguousTopError, choose_top
+from evenstage.netlist.elaboration.wires import find_nodes
 from evenstage.netlist.wording import counted, listed
 from evenstage.process.infer import infer_process
 from evenstage.progress import tell
@@ -29,6 +30,7 @@ if TYPE_CHECKING:
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.netlist.elaboration.flatten import Indices
     from evenstage.netlist.elaboration.template import Key, Template
+    from evenstage.netlist.elaboration.wires import Nodes
     from evenstage.netlist.netlist import Netlist
     from evenstage.process.process import Process
 
@@ -99,6 +101,7 @@ class _Block:
         ports = self._flat.net[: self._templates[0].outline.ports]
         self._ports: tuple[int, ...] = tuple(ports.tolist())
         self._notices: list[Notice] = []
+        self._nodes: Nodes | None = None
         self._net, self._kept = self._joined()
 
     def _globals_used(self) -> tuple[str, ...]:
@@ -143,8 +146,14 @@ class _Block:
         cards = np.concatenate([r.card for r in rows])[row]
         self._note_resistors(joints.joined, cards)
         chosen = joints.representative
-        kept = np.flatnonzero(chosen == np.arange(count))
-        return np.searchsorted(kept, chosen).astype(np.int32), kept.astype(np.int32)
+        kept = np.flatnonzero(chosen == np.arange(count)).astype(np.int32)
+        net = np.searchsorted(kept, chosen).astype(np.int32)
+        values = np.concatenate([template.resistance for template in self._templates])[row]
+        along = joints.joined
+        self._note_values(np.unique(cards[along & ~(values >= 0)]).tolist())
+        nodes = find_nodes(pairs[:, along], (values / self._flat.multiplier[instance])[along], net)
+        self._nodes = nodes if len(nodes.net) else None
+        return net, kept
 
     def _note_resistors(self, joined: NDArray[np.bool_], cards: IntArray) -> None:
         for rows, code, what in (
@@ -157,6 +166,47 @@ class _Block:
                 message = f"{counted(len(names), 'resistor')} {what} ({listed(names)})"
                 place = self._netlist.card(numbers[0]).span.place
                 self._notices.append(Notice(code, message, place, names))
+
+    def _note_values(self, numbers: Sequence[int]) -> None:
+        if numbers:
+            names = self._card_names(numbers)
+            message = (
+                f"{counted(len(names), 'resistor')} without a value taken as no resistance at all "
+                f"({listed(names)})"
+            )
+            place = self._netlist.card(numbers[0]).span.place
+            self._notices.append(Notice("resistor-unknown", message, place, names))
+
+    def _wires(self, instance: Indices, row: Indices, pins: Indices) -> Wires | None:
+        """Return the resistance along nets, and the nodes that everything hangs on.
+
+        Parameters
+        ----------
+        instance, row : Indices, shape (n,)
+            Of each transistor.
+        pins : Indices, shape (4, rows)
+            Local nets of each row.
+        """
+        nodes = self._nodes
+        if nodes is None:
+            return None
+        of_layout = nodes.of_layout
+        drain, gate, source = (
+            _ids(of_layout[self._flat.nets_of(instance, pin[row])]) for pin in pins[:3]
+        )
+        rows = [template.outline.capacitors for template in self._templates]
+        held, which = self._known_capacitors()
+        local = np.concatenate([r.nets for r in rows], axis=1)[:, which]
+        return Wires(
+            net=_ids(nodes.net),
+            ends=_ids(nodes.ends),
+            resistance=_frozen(nodes.resistance),
+            head=_ids(of_layout[self._kept]),
+            drain=drain,
+            gate=gate,
+            source=source,
+            capacitor=_ids(of_layout[self._flat.nets_of(held, local)]),
+        )
 
     def _card_names(self, numbers: Iterable[int]) -> tuple[str, ...]:
         return tuple(self._netlist.cards.full_names(numbers))
@@ -178,6 +228,7 @@ class _Block:
         calls = np.concatenate([template.multiplier for template in templates])
         with np.errstate(over="ignore"):
             multiplier = (sizes.multiplier * calls)[row] * flat.multiplier[instance]
+        wires = self._wires(instance, row, nets)
         del nets, calls
         if not np.isfinite(multiplier).all():
             message = "the multipliers along one instance path multiply to infinity"
@@ -222,6 +273,7 @@ class _Block:
             global_nets=frozenset(self._net[: len(self._global_names)].tolist()),
             source_nets=self._sources(),
             notices=(*self._notices, *sizes.notices, *self._card_notices()),
+            wires=wires,
         )
 
     def _drawn(self) -> Drawn:
@@ -246,12 +298,17 @@ class _Block:
         values = np.concatenate([template.capacitance for template in self._templates])
         cards = np.concatenate([r.card for r in rows])
         self._note_capacitors(np.unique(cards[~(values >= 0)]).tolist())
-        instance, row = self._spread(len(r) for r in rows)
-        known = values[row] >= 0
-        instance, row = instance[known], row[known]
+        instance, row = self._known_capacitors()
         local = np.concatenate([r.nets for r in rows], axis=1)[:, row]
         value = values[row] * self._flat.multiplier[instance]
         return self._nets_of(instance, local), _frozen(value), _ids(cards[row]), _ids(instance)
+
+    def _known_capacitors(self) -> tuple[Indices, Indices]:
+        """Return instance and row of every C card that has a value."""
+        instance, row = self._spread(len(t.outline.capacitors) for t in self._templates)
+        values = np.concatenate([template.capacitance for template in self._templates])
+        known = values[row] >= 0
+        return instance[known], row[known]
 
     def _note_capacitors(self, numbers: Sequence[int]) -> None:
         if numbers:

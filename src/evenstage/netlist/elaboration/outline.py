@@ -191,7 +191,7 @@ class _Body:
         self._mistakes = mistakes
         self._transistors = RowsBuilder(netlist, 4, geometry, mistakes)
         self._capacitors = RowsBuilder(netlist, 2, ("", "c", "m"), mistakes)
-        self._resistors = RowsBuilder(netlist, 2, (), mistakes)
+        self._resistors = RowsBuilder(netlist, 2, ("", "r", "m"), mistakes)
         self._calls: list[Call] = []
         self._sources: list[tuple[int, int, int]] = []
         self._others: dict[str, list[int]] = {}

@@ -52,6 +52,8 @@ class Template:
         Copies a caller adds to those its own parameters say.
     capacitance : FloatArray, F, shape (k,)
         Of each C card of the outline.
+    resistance : FloatArray, ohm, shape (r,)
+        Of each R card of the outline.
     callee : tuple of Key
         The template of each call that is an instance.
     calls : tuple of Call
@@ -67,6 +69,7 @@ class Template:
     columns: Mapping[str, Column]
     multiplier: FloatArray
     capacitance: FloatArray
+    resistance: FloatArray
     callees: tuple[Key, ...]
     calls: tuple[Call, ...]
     call_multiplier: FloatArray
@@ -122,7 +125,8 @@ class Binder:
             nets=devices.nets,
             columns=devices.columns,
             multiplier=devices.multiplier,
-            capacitance=self._capacitance(outline.capacitors, scope),
+            capacitance=np.multiply(*self._values(outline.capacitors, "c", scope)),
+            resistance=np.divide(*self._values(outline.resistors, "r", scope)),
             callees=tuple(callee for _, callee, _ in instances),
             calls=tuple(call for call, _, _ in instances),
             call_multiplier=np.array([m for *_, m in instances], np.float64),
@@ -155,17 +159,16 @@ class Binder:
     def _span(self, rows: Rows, name: str, row: int) -> Span:
         return value_span(self._netlist, int(rows.card[row]), name)
 
-    def _capacitance(self, rows: Rows, scope: Scope) -> FloatArray:
-        """Return the value of each C card, its multiplier included; NaN where it has none."""
+    def _values(self, rows: Rows, name: str, scope: Scope) -> tuple[FloatArray, FloatArray]:
+        """Return value and copies of each C or R card; the value NaN where it has none."""
         unnamed_column = rows.columns.get("", absent(len(rows)))
         known = tuple(f for f in unnamed_column.formulas if not _is_model(f[1], scope))
         columns = {**rows.columns, "": replace(unnamed_column, formulas=known)}
         columns = self._bound(replace(rows, columns=columns), scope)
         empty = absent(len(rows))
-        unnamed, named = (columns.get(name, empty).numbers for name in ("", "c"))
+        unnamed, named = (columns.get(key, empty).numbers for key in ("", name))
         copies = columns.get("m", empty).numbers
-        value = np.where(np.isnan(named), unnamed, named)
-        return value * np.where(np.isnan(copies), 1.0, copies)
+        return np.where(np.isnan(named), unnamed, named), np.where(np.isnan(copies), 1.0, copies)
 
     # Calls.
 
@@ -256,7 +259,7 @@ def _is_number(text: str) -> bool:
 
 
 def _is_model(text: str, scope: Scope) -> bool:
-    """Tell whether the word where a C card's value stands is no parameter, so its model."""
+    """Tell whether the word where a C or R card's value stands is no parameter, so its model."""
     return text.isidentifier() and text not in scope.names()
 
 
