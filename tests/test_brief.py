@@ -161,7 +161,7 @@ class TestReadBrief:
                     "    supply.high = 'vdd'\n"
                     "    ^^^^^^^^^^^\n"
                     "known here: top, supplies, input, output, ignore, fixed, leaves, same_size,"
-                    " limit, transition_max, copies_per_leaf, aim, case"
+                    " limit, transition_max, coupling, copies_per_leaf, aim, case"
                 ),
             ),
             (

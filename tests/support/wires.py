@@ -104,3 +104,56 @@ def ladder(sections: int, *, pi: bool, resistance: float = 1.0, capacitance: flo
         np.full(sections, resistance / sections),
         each,
     )
+
+
+def wire_cards(net: str, rc: Net, *, first: int = 0) -> list[str]:
+    """Return cards of a net: node 0 is called as the net, the others ``net:1``, ``net:2``, ..."""
+
+    def name(node: int) -> str:
+        return f"{net}:{node}" if node else net
+
+    ends = rc.ends.T.tolist()
+    cards = [
+        f"r{net}{first + k} {name(a)} {name(b)} {r:.17g}"
+        for k, ((a, b), r) in enumerate(zip(ends, rc.resistance.tolist(), strict=True))
+    ]
+    cards += [
+        f"c{net}{first + k} {name(k)} vss {c:.17g}"
+        for k, c in enumerate(rc.capacitance.tolist())
+        if c > 0
+    ]
+    return cards
+
+
+def wired_block(seed: int, gates: int = 7) -> str:
+    """Return a block of inverters and NANDs whose nets are random trees and meshes.
+
+    Drains, gates and the port ``y`` hang on nodes of their own choice.
+    """
+    rng = np.random.default_rng(seed)
+    cards, spots = [], {"i0": ["i0"], "i1": ["i1"]}
+    for index in range(gates):
+        out = f"n{index}"
+        rc = random_mesh(rng) if rng.random() < 0.4 else random_tree(rng, 9)
+        rc = Net(rc.ends, 400 * rc.resistance, 4e-15 * rc.capacitance)
+        cards += wire_cards(out, rc)
+        nodes = [out, *(f"{out}:{k}" for k in range(1, len(rc.capacitance)))]
+
+        def spot(among: list[str]) -> str:
+            return str(rng.choice(among))
+
+        width = float(rng.uniform(0.5, 4))
+        nets = list(spots)[-3:]
+        inputs = [spots[str(rng.choice(nets))] for _ in range(1 if rng.random() < 0.5 else 2)]
+        inner = "vss"
+        for k, pin in enumerate(inputs):
+            below = inner if k == 0 else f"s{index}"
+            above = spot(nodes) if k == len(inputs) - 1 else f"s{index}"
+            cards.append(f"mn{index}{k} {above} {spot(pin)} {below} vss nx w={width:.9g}u l=0.1u")
+            cards.append(
+                f"mp{index}{k} {spot(nodes)} {spot(pin)} vdd vdd px w={1.7 * width:.9g}u l=0.1u"
+            )
+        spots[out] = nodes
+    last = spots[f"n{gates - 1}"]
+    cards += [f"rend {last[-1]} y 250", "cend y vss 9f"]
+    return "* wires\n.global vdd vss\n.subckt top i0 i1 y\n" + "\n".join(cards) + "\n.ends\n"

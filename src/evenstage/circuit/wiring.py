@@ -42,6 +42,8 @@ class Wiring:
     head : IntArray, shape (drives + 1,)
         Copies of drive d are ``head[d]:head[d + 1]``.
     net : IntArray, shape (drives,)
+    rank : IntArray, shape (nodes,)
+        Place of each node among the copies of a drive of its net.
     network : RCNetwork
         Of the copies.
     named : IntArray, shape (drives,)
@@ -61,6 +63,7 @@ class Wiring:
     node: IntArray
     head: IntArray
     net: IntArray
+    rank: IntArray
     network: RCNetwork
     named: IntArray
     source_key: NDArray[np.int64]
@@ -127,6 +130,8 @@ def find_wiring(
     gates = int(gate_of_device.max(initial=-1)) + 1
     key, place = _sources(devices, wires, gate_of_device, outputs, is_supply)
     source_key, drive, net, driven = _merged(key, place, wires)
+    if not len(net):
+        return None
     order = np.argsort(wires.net, kind="stable").astype(np.int32)
     by_net = np.searchsorted(wires.net[order], np.stack([net, net + 1]))
     count = by_net[1] - by_net[0]
@@ -143,6 +148,7 @@ def find_wiring(
         node=node,
         head=head,
         net=net,
+        rank=rank,
         network=network,
         named=head[:-1] + rank[wires.head[net]],
         source_key=source_key,

@@ -369,7 +369,7 @@ class Engine:
         """Tell which sizes lie today on paths whose charged delay exceeds one (s)."""
         timing, graph, model = self.today, self.model.graph, self.model
         rest = np.full(len(graph), -np.inf)
-        rest[graph.end] = end_offsets(graph)
+        rest[graph.end] = end_offsets(graph) + timing.end_charged_wire
         for some, _, _ in reversed(graph.levels):
             later = rest[graph.target[some]] + timing.charged[some]
             np.maximum.at(rest, graph.source[some], later)
@@ -428,9 +428,8 @@ class Engine:
 
 def worst_charged(timing: Timing) -> float:
     """Return the worst charged arrival at any path end, required times counted in, s."""
-    end = timing.graph.end
-    offset = timing.lateness - timing.arrival[end]
-    return float((timing.charged_arrival[end] + offset).max())
+    offset = timing.lateness - timing.end_arrival
+    return float((timing.end_charged_arrival + offset).max())
 
 
 def _sizes_on_path(model: Model, arrival: FloatArray, delay: FloatArray) -> list[int]:

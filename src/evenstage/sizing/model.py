@@ -17,12 +17,14 @@ from scipy.sparse import coo_array, csr_array
 
 from evenstage.circuit.arcs import ranges
 from evenstage.sizing.problem import Monomials, Problem
+from evenstage.sizing.wire_terms import wire_terms
 from evenstage.timing.sweep import end_offsets
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.sizing.variables import Variables
+    from evenstage.sizing.wire_terms import WireTerms
     from evenstage.timing.graph import TimingGraph
     from evenstage.timing.results import Yardstick
 
@@ -110,7 +112,12 @@ class Model:
     ) -> Problem:
         """Return the programme for some bounds, costs per unit of size, and limits."""
         graph, driven = self.graph, np.flatnonzero(self.graph.start_drive > 0)
-        shift = len(driven)
+        shift, wired = len(driven), self._wires.ends
+        end_node = graph.end + np.int32(shift)
+        behind = np.arange(len(wired), dtype=np.int32) + np.int32(len(graph) + shift)
+        sources = [np.arange(shift), end_node[wired], graph.source + shift]
+        targets = [graph.start[driven] + shift, behind, graph.target + shift]
+        end_node[wired] = behind
         limit, count = self._limits(limits)
         begin_node = graph.start.astype(np.int64) + shift
         begin_node[driven] = np.arange(shift)
@@ -119,28 +126,32 @@ class Model:
             upper=upper,
             spend=spend,
             spend_fixed=0.0,
-            nodes=len(graph) + shift,
+            nodes=len(graph) + shift + len(wired),
             start_node=begin_node.astype(np.int32),
             start_arrival=graph.start_arrival,
-            arc_source=np.concatenate([np.arange(shift), graph.source + shift]).astype(np.int32),
-            arc_target=np.concatenate([graph.start[driven], graph.target]).astype(np.int32)
-            + np.int32(shift),
+            arc_source=np.concatenate(sources).astype(np.int32),
+            arc_target=np.concatenate(targets).astype(np.int32),
             delay=self._delays(driven),
-            end_node=graph.end + np.int32(shift),
+            end_node=end_node,
             end_offset=end_offsets(graph),
             limit=limit,
             limits=count,
         )
 
     def _delays(self, driven: IntArray) -> Monomials:
-        """Return the delays of the programme's arcs: outside drivers first, then the graph's."""
+        """Return the delays of the programme's arcs.
+
+        Outside drivers come first, then the wires to ends, then the graph's arcs, each with the
+        wire before it.
+        """
         charge = np.where(self.circuit.arcs.rising, self.unit.charge_rise, self.unit.charge_fall)
+        shift = len(driven) + len(self._wires.ends)
         elmore, which = self.elmore, self.graph.arc
         heads = np.searchsorted(elmore.row, np.arange(len(charge) + 1))
         count = np.diff(heads)[which]
         entry = ranges(heads[which], count)
         arcs = (
-            np.repeat(np.arange(len(which)) + len(driven), count),
+            np.repeat(np.arange(len(which)) + shift, count),
             elmore.coefficient[entry] * charge[elmore.row[entry]],
             elmore.plus[entry],
             elmore.minus[entry],
@@ -154,7 +165,17 @@ class Model:
             form.indices[outside],
             np.full(len(outside), len(self.variables)),
         )
-        return _monomials([drivers, arcs], len(self.variables))
+        wires = self._wires
+        constant = np.full(len(wires.row), len(self.variables), np.int32)
+        size = np.append(self.variables.partition.of_gate, len(self.variables)).astype(np.int32)
+        row = np.where(wires.is_end, len(driven) + wires.row, shift + wires.row)
+        along = (row, wires.delay, size[wires.gate], constant)
+        return _monomials([drivers, arcs, along], len(self.variables))
+
+    @cached_property
+    def _wires(self) -> WireTerms:
+        """Charged delay of the wires before the graph's arcs and to its ends."""
+        return wire_terms(self.circuit, self.graph, self.unit)
 
     def _limits(self, limits: Limits) -> tuple[Monomials, int]:
         """Return input ceilings and transition limits as sums that must stay below 1.

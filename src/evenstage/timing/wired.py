@@ -8,11 +8,11 @@ to where the load hangs.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from evenstage.timing.wire_laws import added_variance, effective, shielding, wire_delay
+from evenstage.timing.wire_laws import added_variance, crossing, effective, wire_delay
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
@@ -56,31 +56,50 @@ class WiredGraph:
         result: IntArray = wiring.sink[wiring.sink_head[drive] + sink]
         return result
 
-    def spread(self, drive: IntArray, resistance: FloatArray) -> FloatArray:
-        """Return ``R A`` of drives, s^2; zero without a wire."""
-        weighted = np.append(self.loads.weighted_first, 0.0)
-        result: FloatArray = resistance * weighted[drive]
-        return result
-
-    def shields(self, drive: IntArray, resistance: FloatArray, elmore: FloatArray) -> FloatArray:
-        """Return the effective over the whole capacitance under drives, for a step.
+    def far(self, drive: IntArray, resistance: FloatArray, elmore: FloatArray) -> Far:
+        """Return what drivers see of their wires.
 
         Parameters
         ----------
         drive : IntArray, shape (k,)
+            -1 for none.
         resistance : FloatArray, ohm, shape (k,)
         elmore : FloatArray, s, shape (k, ...)
         """
+        column = (-1, *(1 for _ in elmore.shape[1:]))
         a, b = (
-            np.append(weighted, 0.0)[drive].reshape(-1, *(1 for _ in elmore.shape[1:]))
+            np.append(weighted, 0.0)[drive].reshape(column)
             for weighted in (self.loads.weighted_first, self.loads.weighted_second)
         )
+        resistance = resistance.reshape(column)
         known = (b > 0) & (elmore > 0)
-        far = np.divide(a**2, b, out=np.zeros_like(a), where=b > 0)
-        share = far * resistance.reshape(a.shape) / np.where(known, elmore, 1.0)
-        lag = np.divide(b, a, out=np.zeros_like(a), where=a > 0) / np.where(known, elmore, 1.0)
-        near = np.clip(1 - share, 0.0, 1.0)
-        return np.where(known, shielding(near, np.where(known, lag, 0.0)), 1.0)
+        hidden = np.divide(a**2, b, out=np.zeros_like(a), where=b > 0) * resistance
+        near = np.clip(1 - hidden / np.where(known, elmore, 1.0), 0.0, 1.0)
+        lag = np.divide(b, a, out=np.zeros_like(a), where=a > 0) + np.zeros_like(elmore)
+        shield = np.ones_like(elmore)
+        some = elmore[known]
+        at_driver = crossing(some, lag[known], near[known], np.zeros_like(some))
+        shield[known] = np.minimum(at_driver / some, 1.0)
+        return Far(resistance * a + np.zeros_like(elmore), lag, near, shield)
+
+
+class Far(NamedTuple):
+    """What drivers see of their wires; shape as the Elmore delays of the drivers.
+
+    Parameters
+    ----------
+    spread : FloatArray, s^2
+        ``R A`` of `evenstage.timing.wire_laws`.
+    lag : FloatArray, s
+    near : FloatArray
+    shield : FloatArray
+        Effective over whole capacitance, for a step.
+    """
+
+    spread: FloatArray
+    lag: FloatArray
+    near: FloatArray
+    shield: FloatArray
 
 
 def wired_graph(circuit: Circuit, graph: TimingGraph) -> WiredGraph | None:
@@ -135,21 +154,18 @@ class Ride:
         self._shape = shape
         self._behind = np.flatnonzero(wired.sink >= 0)
         self._driving = np.flatnonzero(wired.drive >= 0)
-        self._shield = wired.shields(wired.drive, wired.resistance, elmore)
+        self._far = wired.far(wired.drive, wired.resistance, elmore)
         nodes = (len(graph), *elmore.shape[1:])
         self._drive = np.full(nodes, -1, np.int32)
-        self._node_elmore, self._node_spread = np.zeros(nodes), np.zeros(nodes)
-        self._node_shield, self._node_input = np.ones(nodes), np.zeros(nodes)
+        self._node_elmore, self._node_input = np.zeros(nodes), np.zeros(nodes)
+        self._node_far = Far(np.zeros(nodes), np.zeros(nodes), np.ones(nodes), np.ones(nodes))
         start, column = graph.start, (-1, *(1 for _ in nodes[1:]))
         self._drive[start] = wired.start_drive.reshape(column)
         self._node_elmore[start] = start_elmore
-        spread = wired.spread(wired.start_drive, wired.start_resistance)
-        self._node_spread[start] = spread.reshape(column)
-        self._node_shield[start] = wired.shields(
-            wired.start_drive, wired.start_resistance, self._node_elmore[start]
-        )
+        outside = wired.far(wired.start_drive, wired.start_resistance, self._node_elmore[start])
+        for kept, of_start in zip(self._node_far, outside, strict=True):
+            kept[start] = of_start
         self._node_input[start] = graph.start_transition.reshape(column)
-        self._spread = wired.spread(wired.drive, wired.resistance).reshape(column)
 
     def at_inputs(self, some: slice, transition: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Return the delay of the wire before each arc, s, and the transition behind it, s.
@@ -195,17 +211,15 @@ class Ride:
             copy = self._wired.copies(np.where(known, drive, 0), place)
         first = np.where(known, loads.first[copy], 0.0)
         second = np.where(known, loads.second[copy], 0.0)
-        spread = self._node_spread[node]
+        elmore, far = self._node_elmore[node], Far(*(kept[node] for kept in self._node_far))
+        added = np.where(known, added_variance(far.spread, first, second), 0.0)
+        behind = first > 0
+        step = np.zeros_like(first)
+        step[behind] = crossing(elmore[behind], far.lag[behind], far.near[behind], first[behind])
         late = wire_delay(
-            self._node_elmore[node],
-            self._node_shield[node],
-            spread,
-            self._node_input[node],
-            first,
-            second,
+            elmore, far.shield, step, self._node_input[node], first, elmore**2 + added
         )
-        added = np.where(known, added_variance(spread, first, second), 0.0)
-        return np.where(known, late, 0.0), shape**2 * added
+        return late, shape**2 * added
 
     def effective(self, some: slice, transition: FloatArray) -> FloatArray:
         """Return the Elmore delay of arcs with effective capacitances, s."""
@@ -215,7 +229,7 @@ class Ride:
         if not len(which):
             return elmore
         here, result = which - some.start, elmore.copy()
-        result[here] = effective(elmore[here], self._shield[which], transition[here])
+        result[here] = effective(elmore[here], self._far.shield[which], transition[here])
         return result
 
     def follow(self, node: IntArray, winner: IntArray, transition: FloatArray) -> None:
@@ -233,17 +247,9 @@ class Ride:
         self._node_input[node] = transition
         for kept, of_arc in (
             (self._node_elmore, self._elmore),
-            (self._node_shield, self._shield),
-            (self._node_spread, self._spread),
+            *zip(self._node_far, self._far, strict=True),
         ):
-            if of_arc.shape[1:] == winner.shape[1:]:
-                kept[node] = (
-                    np.take_along_axis(of_arc, winner, axis=0)
-                    if winner.ndim > 1
-                    else of_arc[winner]
-                )
-            else:
-                kept[node] = of_arc.reshape(len(of_arc))[winner]
+            kept[node] = np.take_along_axis(of_arc, winner, axis=0)
 
 
 @dataclass(frozen=True)
