@@ -21,6 +21,7 @@ supplies.low = ["vss"]
 fixed = ["xrow*.xdrv"]
 leaves = ["nand3"]
 transition_max = "400 ps"
+coupling = 1.5
 copies_per_leaf = 0
 case = "exact"
 aim = {delay = "1.2 ns", width = 1.25, spend = "energy"}
@@ -92,7 +93,8 @@ class TestReadBrief:
         assert texts(brief.supplies_high + brief.supplies_low) == ["vdd*", "vss"]
         assert texts(brief.fixed + brief.leaves) == ["xrow*.xdrv", "nand3"]
         assert [texts(group) for group in brief.same_size] == [["xa", "xb"]]
-        assert (brief.transition_max, brief.copies_per_leaf) == (400e-12, 0)
+        assert (brief.transition_max, brief.coupling) == (400e-12, 1.5)
+        assert brief.copies_per_leaf == 0
         assert brief.case == "exact"
         assert (brief.aim_delay, brief.aim_width, brief.aim_spend) == (1.2e-9, 1.25, "energy")
 
