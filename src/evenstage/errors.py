@@ -100,6 +100,10 @@ class NotConvergedError(EvenstageError):
     """The optimiser stopped before it could prove its answer."""
 
 
+class SimulationError(EvenstageError):
+    """A path could not be simulated."""
+
+
 class OutputError(EvenstageError):
     """A result could not be written."""
 

@@ -14,7 +14,7 @@ from typing import Final
 
 from evenstage.errors import Notice
 from evenstage.pattern import Pattern
-from evenstage.process.process import Polarity, Process, Transistor
+from evenstage.process.process import Channel, Polarity, Process, Transistor
 from evenstage.process.supply import SUPPLY_ASSUMED, supply_for_length, supply_notice
 from evenstage.units import engineering
 
@@ -30,6 +30,11 @@ _RATIO: Final = 2.2
 _SLOPE: Final[dict[Polarity, float]] = {"n": 0.20, "p": 0.22}
 _SHAPE: Final[dict[Polarity, float]] = {"n": 1.9, "p": 2.0}
 _STACK: Final[dict[Polarity, float]] = {"n": 0.6, "p": 0.9}
+
+#: Of the supply; of the gate capacitance.
+_THRESHOLD_SHARE: Final = 0.25
+_OVERLAP_SHARE: Final = 0.15
+_ALPHA: Final[dict[Polarity, float]] = {"n": 1.3, "p": 1.4}
 
 _GENERIC: Final = "generic-process"
 _SUPPLY_RULE: Final = "ten volts per micron of channel length"
@@ -89,6 +94,35 @@ def at_length(process: Process, length: float) -> Process:
     if assumed:
         notices += (supply_notice(supply, _SUPPLY_RULE),)
     return replace(process, transistors=scaled, supply=supply, notices=notices)
+
+
+def usual_channel(transistor: Transistor, supply: float) -> Channel:
+    """Return a transistor's channel with what its process does not say.
+
+    Threshold and overlaps then have the built-in shares of supply and gate capacitance, and so has
+    alpha its built-in value. The saturation voltage at full drive, ``alpha/2`` of the overdrive,
+    is right for a long channel (alpha 2) and common practice for others. The current stays unknown.
+
+    Parameters
+    ----------
+    transistor : Transistor
+    supply : float
+        V.
+    """
+    known = transistor.channel
+    threshold = _THRESHOLD_SHARE * supply if known.threshold is None else known.threshold
+    alpha = _ALPHA[transistor.polarity] if known.alpha is None else known.alpha
+    overlap = _OVERLAP_SHARE * transistor.c_gate
+    if transistor.c_drain < 2 * overlap:
+        overlap = transistor.c_drain / 2
+    return replace(
+        known,
+        threshold=threshold,
+        alpha=alpha,
+        saturation=known.saturation or alpha / 2 * (supply - threshold),
+        overlap_source=overlap if known.overlap_source is None else known.overlap_source,
+        overlap_drain=overlap if known.overlap_drain is None else known.overlap_drain,
+    )
 
 
 def usual_names(polarity: Polarity) -> tuple[Pattern, ...]:

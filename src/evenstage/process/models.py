@@ -27,7 +27,7 @@ from typing import Final
 from evenstage.errors import Notice
 from evenstage.pattern import Pattern
 from evenstage.process import level1
-from evenstage.process.process import Junction, Junctions, Polarity, Process, Transistor
+from evenstage.process.process import Channel, Junction, Junctions, Polarity, Process, Transistor
 from evenstage.process.supply import supply_for_threshold, supply_notice
 
 #: Name, type and parameters by lower-case name (SI values) of one ``.model`` card.
@@ -66,6 +66,8 @@ class _Card:
     phi: float
     grade_area: float
     grade_edge: float
+    body: float
+    surface: float
 
 
 def polarity_of(kind: str) -> Polarity | None:
@@ -160,6 +162,8 @@ def _card(facts: ModelFacts) -> _Card | None:
         phi=values.get("pb", 0.8),
         grade_area=grade,
         grade_edge=values.get("mjsw", 0.5),
+        body=values.get("gamma", 0.0),
+        surface=values.get("phi", 0.6),
     )
 
 
@@ -171,7 +175,8 @@ def _usable(card: _Card, supply: float, length: float) -> bool:
         0 < card.threshold < 0.9 * supply
         and 0 <= card.modulation * supply < 1
         and length > 2 * card.lateral
-        and card.phi > 0
+        and min(card.phi, card.surface) > 0
+        and card.body >= 0
         and min(*amounts, card.grade_area, card.grade_edge) >= 0
     )
 
@@ -201,6 +206,17 @@ def _transistor(card: _Card, supply: float, length: float) -> Transistor:
         shape=_ramp(card, supply, channel) / resistance,
         shape_carry=_CARRY,
         junctions=None if bare else Junctions(rise=rise, fall=fall),
+        channel=Channel(
+            threshold=card.threshold,
+            alpha=2.0,
+            current=current,
+            saturation=supply - card.threshold,
+            modulation=card.modulation,
+            body=card.body,
+            phi=card.surface,
+            overlap_source=card.overlap_source,
+            overlap_drain=card.overlap_drain,
+        ),
     )
 
 

@@ -61,6 +61,41 @@ class Junctions:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Channel:
+    """How the current of a transistor depends on its voltages; what is None is not known.
+
+    Estimates need none of it; see `evenstage.simulation.channel` for the law.
+
+    Parameters
+    ----------
+    threshold : float, optional
+        V, magnitude, without source bias.
+    alpha : float, optional
+        Power of the overdrive that the saturated current follows; 2 for a long channel.
+    current : float, optional
+        A/m: saturated current at full drive per width, at the transistor type's length.
+    saturation : float, optional
+        V; saturation voltage at full drive.
+    modulation : float
+        1/V; lambda, channel-length modulation.
+    body, phi : float
+        V^0.5 and V; how the threshold rises with the source's bias.
+    overlap_source, overlap_drain : float, optional
+        F/m, between the gate and each end; contained in ``c_gate`` once and twice.
+    """
+
+    threshold: float | None = None
+    alpha: float | None = None
+    current: float | None = None
+    saturation: float | None = None
+    modulation: float = 0.0
+    body: float = 0.0
+    phi: float = 0.6
+    overlap_source: float | None = None
+    overlap_drain: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Transistor:
     """One transistor type of a process; SI units, see the process file's key table in README.
 
@@ -84,6 +119,8 @@ class Transistor:
         ``sqrt((shape E)^2 + (shape_carry T)^2)``.
     junctions : Junctions, optional
         Used in place of ``c_drain`` where a card gives areas and perimeters.
+    channel : Channel
+        For simulation alone.
     width_parameter, width_is, fingers_parameter : str
         Which card parameter holds the width, what it means, which one holds the finger count.
     width_unit : float, optional
@@ -107,6 +144,7 @@ class Transistor:
     shape: float = 0.0
     shape_carry: float = 0.0
     junctions: Junctions | None = None
+    channel: Channel = Channel()
     width_parameter: str = "w"
     width_is: WidthMeaning = "total"
     fingers_parameter: str | None = None

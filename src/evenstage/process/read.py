@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Final, cast
 
 from evenstage.process.process import (
+    Channel,
     Junction,
     Junctions,
     Polarity,
@@ -44,6 +45,12 @@ _TRANSISTOR_KEYS: Final[Mapping[str, Entry]] = {
     "shape": Number(least=0, most=100, default=0.0),
     # From 1 on, transitions along a chain would grow without end.
     "shape_carry": Number(least=0, below=1, default=0.0),
+    "vto": Number(unit="V", least=-1000, most=1000),
+    "alpha": Number(least=1, most=2),
+    "kp": Number(unit="A/V^2", above=0, most=1),
+    "i_dsat": Number(unit="A/m", above=0, most=1e5),
+    "v_dsat": Number(unit="V", above=0, most=1000),
+    "cgdo": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST),
     "width_parameter": Text(default="w"),
     "width_is": Text(choices=("total", "finger", "fins"), default="total"),
     "fingers_parameter": Text(),
@@ -78,7 +85,8 @@ def read_process(path: str | Path) -> Process:
         If the file cannot be read, something in it is wrong, or a polarity is missing.
     """
     settings = read_settings(path, PROCESS_KEYS)
-    transistors = tuple(map(_transistor, settings.tables("transistor")))
+    supply = settings.number("supply")
+    transistors = tuple(_transistor(table, supply) for table in settings.tables("transistor"))
     for polarity in ("n", "p"):
         if all(transistor.polarity != polarity for transistor in transistors):
             raise settings.error(
@@ -86,7 +94,7 @@ def read_process(path: str | Path) -> Process:
             )
     return Process(
         name=settings.text("name"),
-        supply=settings.number("supply"),
+        supply=supply,
         transistors=transistors,
         unit_width=settings.optional_number("unit_width"),
         unit_ratio=settings.optional_number("unit_ratio"),
@@ -94,7 +102,7 @@ def read_process(path: str | Path) -> Process:
     )
 
 
-def _transistor(table: Settings) -> Transistor:
+def _transistor(table: Settings, supply: float) -> Transistor:
     table.check_order("width_min", "width_max")
     table.check_order("width_min", "finger_width_max")
     fingers = table.optional_text("fingers_parameter")
@@ -114,6 +122,7 @@ def _transistor(table: Settings) -> Transistor:
         slope_power=table.number("slope_power"),
         shape=table.number("shape"),
         shape_carry=table.number("shape_carry"),
+        channel=_channel(table, supply),
         width_parameter=table.text("width_parameter").lower(),
         width_is=cast("WidthMeaning", table.text("width_is")),
         fingers_parameter=None if fingers is None else fingers.lower(),
@@ -140,3 +149,35 @@ def _junctions(table: Settings) -> Junctions | None:
         )
     both = Junction(area=area, edge=edge, overlap=table.number("c_drain_overlap"))
     return Junctions(rise=both, fall=both)
+
+
+def _channel(table: Settings, supply: float) -> Channel:
+    """Return what a table says of currents; a threshold counts without its sign, as on cards."""
+    vto, kp = table.optional_number("vto"), table.optional_number("kp")
+    current, alpha = table.optional_number("i_dsat"), table.optional_number("alpha")
+    threshold = None if vto is None else abs(vto)
+    if threshold is not None and threshold >= supply:
+        raise table.error("vto", f"vto must be below the supply, {supply:g} V", "out-of-range")
+    overlap = table.optional_number("cgdo")
+    most = min(table.number("c_gate") / 3, table.number("c_drain") / 2)
+    if overlap is not None and overlap > most:
+        raise table.error(
+            "cgdo",
+            "cgdo must be at most half of c_drain and a third of c_gate, which contain it",
+            "out-of-range",
+        )
+    if kp is not None:
+        if current is not None:
+            raise table.error("kp", "kp and i_dsat both say the current; keep one", "two-currents")
+        if threshold is None:
+            raise table.error("kp", "kp needs vto beside it", "missing-vto")
+        alpha = 2.0 if alpha is None else alpha
+        current = kp / 2 / table.number("length") * (supply - threshold) ** alpha
+    return Channel(
+        threshold=threshold,
+        alpha=alpha,
+        current=current,
+        saturation=table.optional_number("v_dsat"),
+        overlap_source=overlap,
+        overlap_drain=overlap,
+    )

@@ -1,0 +1,124 @@
+"""What a simulation says: frozen values in SI units, the estimate beside each."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, Literal
+
+if TYPE_CHECKING:
+    from evenstage.errors import Notice
+    from evenstage.netlist.devices import FloatArray
+    from evenstage.timing.results import Analysis, Path, Stage
+
+SideBranches = Literal["gates", "capacitances"]
+
+
+@dataclass(frozen=True, slots=True)
+class SimulatedStage:
+    """One stage, estimated and simulated.
+
+    Parameters
+    ----------
+    estimate : Stage
+    delay : float
+        s, between the 50 % points of input and output.
+    transition : float, optional
+        s, 10 to 90 % of the output over 0.8; None where it does not swing so far.
+    """
+
+    estimate: Stage
+    delay: float
+    transition: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Traces:
+    """Voltages along a path; time 0 is where the input's ramp begins.
+
+    Parameters
+    ----------
+    nets : tuple of str
+        The start and each stage's output.
+    time : FloatArray, s, shape (times,)
+    voltage : FloatArray, V, shape (nets, times)
+    """
+
+    nets: tuple[str, ...]
+    time: FloatArray
+    voltage: FloatArray
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SimulatedPath:
+    """One path, estimated and simulated.
+
+    Parameters
+    ----------
+    estimate : Path
+    stages : tuple of SimulatedStage
+    delay : float
+        s, from the 50 % point of the start to that of the end.
+    held : tuple of (str, bool)
+        Side inputs and what they were held at.
+    devices, nodes, steps, side_gates : int
+        Sizes: transistors, unknown voltages, time steps, gates off the path.
+    traces : Traces
+    """
+
+    estimate: Path
+    stages: tuple[SimulatedStage, ...]
+    delay: float
+    held: tuple[tuple[str, bool], ...]
+    devices: int
+    nodes: int
+    steps: int
+    side_gates: int
+    traces: Traces = field(repr=False, compare=False)
+
+    @property
+    def estimated_delay(self) -> float:
+        """The estimate from the switching of the input, s."""
+        return self.estimate.delay - self.estimate.start_arrival
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SimulatedBlock:
+    """The paths of one netlist.
+
+    Parameters
+    ----------
+    analysis : Analysis
+    paths : tuple of SimulatedPath
+        Slowest by estimate first.
+    other_edge : SimulatedPath, optional
+        The first path with all edges turned round, where the gates have such arcs.
+    same_path : SimulatedPath, optional
+        After a change: the path that was the slowest before it, where that is another one now.
+    """
+
+    analysis: Analysis
+    paths: tuple[SimulatedPath, ...]
+    other_edge: SimulatedPath | None = None
+    same_path: SimulatedPath | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Simulation:
+    """Paths of a netlist simulated, or of two netlists of one design.
+
+    Parameters
+    ----------
+    before : SimulatedBlock
+    after : SimulatedBlock, optional
+    side_branches : {"gates", "capacitances"}
+        How they were simulated.
+    scaled : bool
+        Whether currents were chosen so that FO4 agrees: only ratios are evidence then.
+    notices : tuple of Notice
+    """
+
+    before: SimulatedBlock
+    after: SimulatedBlock | None
+    side_branches: SideBranches
+    scaled: bool
+    notices: tuple[Notice, ...]
