@@ -94,11 +94,11 @@ def _run(asked: argparse.Namespace) -> None:
     from evenstage import flow
 
     on_screen = asked.json == Path("-")
-    graph = getattr(asked, "graph", None)
+    written = getattr(asked, "graph", None) or getattr(asked, "waveforms", None)
     if asked.json and not on_screen:
         flow.check_place(asked.json, _inputs(asked))
-    if graph:
-        flow.check_place(graph, [*_inputs(asked), *([asked.json] if asked.json else [])])
+    if written:
+        flow.check_place(written, [*_inputs(asked), *([asked.json] if asked.json else [])])
     with shown_on(None if asked.quiet else sys.stderr):
         result = asked.command(asked)
     if on_screen:
@@ -180,6 +180,18 @@ def _resize(asked: argparse.Namespace) -> flow.Result:
     return flow.resize(asked.netlist, _question(asked), wishes, asked.output, force=asked.force)
 
 
+def _simulate(asked: argparse.Namespace) -> flow.Result:
+    from evenstage import flow
+
+    return flow.simulate(
+        asked.netlist,
+        _question(asked),
+        after=asked.after,
+        side_branches=asked.side_branches,
+        waveforms=asked.waveforms,
+    )
+
+
 def _diff(asked: argparse.Namespace) -> flow.Result:
     from evenstage import flow
 
@@ -229,6 +241,32 @@ def _parser() -> argparse.ArgumentParser:
     diff.add_argument("before", type=_file, metavar="BEFORE")
     diff.add_argument("after", type=_file, metavar="AFTER")
     _shared(diff)
+    simulate = _command(
+        commands,
+        "simulate",
+        _simulate,
+        "the slowest path as a nonlinear circuit, beside its estimate",
+    )
+    simulate.add_argument("netlist", type=_file, metavar="NETLIST")
+    simulate.add_argument(
+        "--after",
+        type=_file,
+        metavar="FILE",
+        help="the same design after a change, for the speed-up",
+    )
+    simulate.add_argument(
+        "--count", type=_count, default=1, metavar="K", help="how many slowest paths (1)"
+    )
+    simulate.add_argument(
+        "--side-branches",
+        choices=("gates", "capacitances"),
+        default="gates",
+        help="what hangs on a path: as gates (default), or as constant capacitances",
+    )
+    simulate.add_argument(
+        "--waveforms", type=_file, metavar="FILE", help="the voltages over time, as CSV"
+    )
+    _shared(simulate)
     recognise = _command(
         commands, "recognise", _recognise, "what each group of transistors is, and what it computes"
     )

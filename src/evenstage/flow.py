@@ -27,6 +27,9 @@ from evenstage.process.infer import infer_process
 from evenstage.process.read import read_process
 from evenstage.report.graph_document import graph_document
 from evenstage.report.results import Result, json, notices, text
+from evenstage.report.simulation_document import waveform_table
+from evenstage.simulation.results import Simulation
+from evenstage.simulation.simulate import simulate as run_simulation
 from evenstage.sizing.named import refuse_unknown_names
 from evenstage.sizing.resize import resize as find_widths
 from evenstage.sizing.results import Sizing
@@ -44,6 +47,7 @@ if TYPE_CHECKING:
     from evenstage.netlist.devices import Devices
     from evenstage.netlist.netlist import Netlist
     from evenstage.process.process import Process
+    from evenstage.simulation.results import SideBranches
 
 __all__ = [
     "Analysis",
@@ -54,6 +58,7 @@ __all__ = [
     "Inventory",
     "Question",
     "Result",
+    "Simulation",
     "Sizing",
     "Wishes",
     "analyse",
@@ -64,6 +69,7 @@ __all__ = [
     "notices",
     "recognise",
     "resize",
+    "simulate",
     "text",
     "write_text",
 ]
@@ -220,6 +226,43 @@ def diff(before: Path, after: Path, question: Question) -> Difference | CornersD
     if not question.corners:
         return differences[0]
     return CornersDifference(before=merged(old), after=merged(new), differences=differences)
+
+
+def simulate(
+    path: Path,
+    question: Question,
+    *,
+    after: Path | None = None,
+    side_branches: SideBranches = "gates",
+    waveforms: Path | None = None,
+) -> Simulation:
+    """Simulate the slowest paths of a netlist, and of the same design after a change.
+
+    Parameters
+    ----------
+    path : Path
+    question : Question
+    after : Path, optional
+        The changed netlist.
+    side_branches : {"gates", "capacitances"}
+        How what hangs on the paths is simulated.
+    waveforms : Path, optional
+        Where the voltages are written as CSV.
+
+    Raises
+    ------
+    EvenstageError
+        For every mistake in the inputs, and where no path can be simulated.
+    OutputError
+        Where the waveforms cannot be written.
+    """
+    _one_process(question, "simulate")
+    first = load(path, question)
+    second = None if after is None else load(after, question, first.process).analysis
+    result = run_simulation(first.analysis, second, side_branches=side_branches)
+    if waveforms is not None:
+        write_text(waveforms, waveform_table(result), force=True)
+    return result
 
 
 def resize(

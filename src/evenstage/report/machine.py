@@ -6,6 +6,7 @@ import json
 from typing import TYPE_CHECKING, Final
 
 from evenstage.report.circuit_document import inventory_body
+from evenstage.report.simulation_document import simulation_body
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -13,6 +14,7 @@ if TYPE_CHECKING:
     from evenstage.circuit.inventory import Inventory
     from evenstage.errors import Notice
     from evenstage.report.circuit_document import Document, JsonValue
+    from evenstage.simulation.results import Simulation
     from evenstage.sizing.results import Change, Sizing, StageHold
     from evenstage.timing.results import (
         Analysis,
@@ -115,6 +117,23 @@ def inventory_document(inventory: Inventory) -> Document:
     """
     notices: Document = {"notices": [notice_document(notice) for notice in inventory.notices]}
     return _head("circuit") | inventory_body(inventory) | notices
+
+
+def simulation_document(simulation: Simulation) -> Document:
+    """Return a simulation as the document scripts read.
+
+    Parameters
+    ----------
+    simulation : Simulation
+
+    Returns
+    -------
+    dict
+        Plain values only; ``kind`` is ``simulation``.
+    """
+    notices: Document = {"notices": [notice_document(notice) for notice in simulation.notices]}
+    process: Document = {"process": yardstick_document(simulation.before.analysis.yardstick)}
+    return _head("simulation") | process | simulation_body(simulation) | notices
 
 
 def to_json(document: Mapping[str, JsonValue]) -> str:

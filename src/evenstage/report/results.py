@@ -10,6 +10,7 @@ from evenstage.report.machine import (
     analysis_document,
     difference_document,
     inventory_document,
+    simulation_document,
     sizing_document,
     to_json,
 )
@@ -19,8 +20,10 @@ from evenstage.report.terminal import (
     corners_report,
     difference_report,
     inventory_report,
+    simulation_report,
     sizing_report,
 )
+from evenstage.simulation.results import Simulation
 from evenstage.sizing.results import Sizing
 from evenstage.timing.corners import Corners, CornersDifference
 from evenstage.timing.results import Analysis, Difference
@@ -31,7 +34,7 @@ if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.report.circuit_document import Document
 
-Result = Analysis | Corners | Sizing | Difference | CornersDifference | Inventory
+Result = Analysis | Corners | Sizing | Difference | CornersDifference | Inventory | Simulation
 
 # Each takes the result it stands beside.
 _REPORTS: Final[dict[type, Callable[..., str]]] = {
@@ -41,6 +44,7 @@ _REPORTS: Final[dict[type, Callable[..., str]]] = {
     Difference: difference_report,
     CornersDifference: corners_difference_report,
     Inventory: inventory_report,
+    Simulation: simulation_report,
 }
 _DOCUMENTS: Final[dict[type, Callable[[Any], Document]]] = {
     Analysis: analysis_document,
@@ -49,6 +53,7 @@ _DOCUMENTS: Final[dict[type, Callable[[Any], Document]]] = {
     Difference: difference_document,
     CornersDifference: corners_difference_document,
     Inventory: inventory_document,
+    Simulation: simulation_document,
 }
 
 
@@ -71,6 +76,10 @@ def notices(result: Result) -> tuple[Notice, ...]:
         some = (*result.before.notices, *result.notices)
     elif isinstance(result, Difference | CornersDifference):
         some = (*result.before.notices, *result.after.notices)
+    elif isinstance(result, Simulation):
+        blocks = (result.before, result.after)
+        told = (notice for one in blocks if one for notice in one.analysis.notices)
+        some = (*told, *result.notices)
     else:
         some = result.notices
     return tuple(dict.fromkeys(some))

@@ -6,6 +6,7 @@ from evenstage.report.analysis_text import analysis_report
 from evenstage.report.corners_text import corners_difference_report, corners_report
 from evenstage.report.difference_text import difference_report
 from evenstage.report.inventory_text import inventory_report
+from evenstage.report.simulation_text import simulation_report
 from evenstage.report.sizing_text import sizing_report
 
 __all__ = [
@@ -14,5 +15,6 @@ __all__ = [
     "corners_report",
     "difference_report",
     "inventory_report",
+    "simulation_report",
     "sizing_report",
 ]

@@ -31,7 +31,7 @@ if TYPE_CHECKING:
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.simulation.channel import Channels
 
-#: Entries of the inverse capacitance matrix below this share of their column's largest are left out.
+#: Entries of the inverse capacitance matrix below this share of their column's largest are dropped.
 _DROPPED = 1e-6
 
 #: Columns of the inverse that are worked out together.
@@ -107,7 +107,7 @@ class Equations:
     @cached_property
     def _inverse(self) -> csc_array[np.float64]:
         """The inverse of C without its small entries, shape (unknown, unknown)."""
-        parts = []
+        parts: list[csc_array[np.float64]] = []
         for first in range(0, self.unknown, _BLOCK):
             width = min(_BLOCK, self.unknown - first)
             right = np.zeros((self.unknown, width))
@@ -115,7 +115,8 @@ class Equations:
             column = self._factors.solve(right)
             small = np.abs(column) < _DROPPED * np.abs(column).max(axis=0)
             parts.append(csc_array(np.where(small, 0.0, column)))
-        return hstack(parts, format="csc")
+        inverse: csc_array[np.float64] = hstack(parts, format="csc")
+        return inverse
 
     @cached_property
     def _slots(self) -> tuple[csc_array[np.float64], IntArray, IntArray]:
@@ -134,7 +135,8 @@ class Equations:
         entries = np.bincount(slot[len(kept) :], still.data, len(used))
         head = np.searchsorted(used, np.arange(self.unknown + 1) * self.unknown)
         size = (self.unknown, self.unknown)
-        pattern = csc_array((entries, used % self.unknown, head), shape=size)
+        rows, data = used % self.unknown, entries.astype(np.float64)
+        pattern: csc_array[np.float64] = csc_array((data, rows, head), shape=size)
         return pattern, slot[: len(kept)], kept
 
     def currents(self, voltage: FloatArray) -> FloatArray:

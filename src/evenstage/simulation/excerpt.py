@@ -178,26 +178,21 @@ def _initial(circuit: Circuit, layout: Layout, levels: dict[int, Edge]) -> Float
     worth = np.full((2, len(part.net)), np.nan)
     worth[:, circuit.supplies.is_high[part.net]] = 1.0
     worth[:, circuit.supplies.is_low[part.net]] = 0.0
-    for row, net in enumerate(part.net.tolist()):
+    for place, net in enumerate(part.net.tolist()):
         if net in levels:
-            worth[:, row] = levels[net]
+            worth[:, place] = levels[net]
     given = ~np.isnan(worth[0])
     before, after = (part.settle(one[:, None])[:, 0] for one in worth)
     before = np.where(np.isnan(before), np.where(np.isnan(after), 0.0, 1.0 - after), before)
     supply, known = circuit.process.supply, known_channels(circuit.process)
-    bounds = tuple(
-        next(
-            one.threshold or 0.0
-            for one, kind in zip(known, circuit.process.transistors, strict=True)
-            if kind.polarity == polarity
-        )
-        for polarity in ("n", "p")
-    )
-    voltage = part.voltages(before, given, supply, (bounds[0], bounds[1]))
+    bounds = {
+        kind.polarity: one.threshold or 0.0
+        for kind, one in zip(circuit.process.transistors, known, strict=True)
+    }
+    voltage = part.voltages(before, given, supply, (bounds["n"], bounds["p"]))
     initial = np.zeros(layout.equations.unknown)
     unknown = layout.net[: layout.equations.unknown]
-    row = np.searchsorted(part.net, unknown)
-    row = np.minimum(row, len(part.net) - 1)
+    row = np.minimum(np.searchsorted(part.net, unknown), len(part.net) - 1)
     met = part.net[row] == unknown
     initial[met] = voltage[row[met]]
     return initial

@@ -9,6 +9,7 @@ in a unit of the circuit's own, so that numbers are near one.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -19,6 +20,8 @@ from evenstage.units import engineering
 
 if TYPE_CHECKING:
     from collections.abc import Callable
+
+    from scipy.integrate import DenseOutput
 
     from evenstage.netlist.devices import FloatArray
     from evenstage.simulation.equations import Equations
@@ -88,7 +91,7 @@ class _Run:
     def __post_init__(self) -> None:
         self.times: list[float] = []
         self.voltages: list[FloatArray] = []
-        self.pieces: list[object] = []
+        self.pieces: list[DenseOutput[np.float64]] = []
 
     def cover(self, begin: float, end: float) -> bool:
         """Integrate over a stretch without corners; tell whether enough is known."""
@@ -170,7 +173,7 @@ def integrate(
     run.voltages.append(np.array(initial, float))
     marks = [begin / unit, *corners, end / unit]
     with np.errstate(under="ignore", over="raise", invalid="raise", divide="raise"):
-        for here, there in zip(marks, marks[1:], strict=False):
+        for here, there in pairwise(marks):
             if there == marks[-1]:
                 run.finished = finished
             run.cover(here, there)

@@ -39,7 +39,8 @@ class Switches:
 
     def closed(self, worth: FloatArray) -> BoolArray:
         """Tell which devices conduct, shape (devices, vectors), for what the nodes are worth."""
-        return np.where(self.is_n[:, None], worth[self.gate] == 1, worth[self.gate] == 0)
+        result: BoolArray = worth[self.gate] == self.is_n[:, None]
+        return result
 
     def reached(self, roots: BoolArray, closed: BoolArray, stops: BoolArray) -> BoolArray:
         """Return the nodes that closed devices join to roots, shape (nodes, vectors).
@@ -69,13 +70,15 @@ class Switches:
         worth : FloatArray, shape (nodes, vectors)
             0 or 1 for the nodes that are given, the same nodes for all vectors; NaN for the others.
         """
-        given = ~np.isnan(worth).any(axis=1)[:, None]
+        given = ~np.isnan(worth).any(axis=1, keepdims=True)
+        high: BoolArray = given & (worth == 1)
+        low: BoolArray = given & (worth == 0)
+        stops = np.asarray(given)
         # A round settles at least one more net of a circuit that does not go round in circles.
         for _ in range(len(self.net)):
             closed = self.closed(worth)
-            ones = self.reached(given & (worth == 1), closed, given)
-            zeros = self.reached(given & (worth == 0), closed, given)
-            new = np.where(ones & ~zeros, 1.0, np.where(zeros & ~ones, 0.0, np.nan))
+            ones, zeros = (self.reached(roots, closed, stops) for roots in (high, low))
+            new: FloatArray = np.where(ones & ~zeros, 1.0, np.where(zeros & ~ones, 0.0, np.nan))
             if np.array_equal(new, worth, equal_nan=True):
                 break
             worth = new

@@ -25,7 +25,7 @@ def turned_round(timing: Timing, route: Route) -> Path | None:
         rising = not route.edges[net][1]
         here = np.flatnonzero((graph.net == net) & (graph.rising == rising))
         if place == 0:
-            fronts = {node: () for node in np.intersect1d(here, graph.start).tolist()}
+            fronts = dict.fromkeys(np.intersect1d(here, graph.start).tolist(), ())
             continue
         joining = arcs[np.isin(graph.target[arcs], here)]
         fronts = {

@@ -24,7 +24,6 @@ from evenstage.simulation.channel import Channels
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
-    from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.process.process import Channel, Process
 
@@ -59,12 +58,18 @@ def known_channels(process: Process) -> tuple[Channel, ...]:
     return tuple(usual_channel(kind, process.supply) for kind in process.transistors)
 
 
+def _column(entries: list[float], kind: IntArray) -> FloatArray:
+    """Return one entry for each device, of its type."""
+    result: FloatArray = np.array(entries, float)[kind]
+    return result
+
+
 def channels_of(process: Process, kind: IntArray, current: FloatArray) -> Channels:
     """Return channels of given types and saturated currents at full drive (A), one each."""
     kinds, known = process.transistors, known_channels(process)
 
     def column(entries: list[float]) -> FloatArray:
-        return np.array(entries, float)[kind]
+        return _column(entries, kind)
 
     threshold = column([one.threshold or 0.0 for one in known])
     alpha = column([one.alpha or 0.0 for one in known])
@@ -95,7 +100,7 @@ def parameters(circuit: Circuit, strength: float) -> Parameters:
     of_device = np.array([model.type_index for model in devices.models], int)[devices.model]
 
     def column(entries: list[float]) -> FloatArray:
-        return np.array(entries, float)[of_device]
+        return _column(entries, of_device)
 
     width = devices.width * devices.multiplier
     lengths = devices.length / column([kind.length for kind in kinds])
@@ -103,22 +108,25 @@ def parameters(circuit: Circuit, strength: float) -> Parameters:
     current = np.where(np.isnan(given), strength / values.resistance.today, given * width / lengths)
     over_source = column([one.overlap_source or 0.0 for one in known]) * width
     over_drain = column([one.overlap_drain or 0.0 for one in known]) * width
-    by_area = np.array([kind.junction is not None for kind in kinds], bool)[of_device]
-    drain_known = by_area & ~np.isnan(devices.drain_area + devices.drain_edge)
-    source_known = by_area & ~np.isnan(devices.source_area + devices.source_edge)
+    by_area = column([0.0 if k.junctions is None else k.junctions.rise.overlap for k in kinds])
+    no_area = column([1.0 if k.junctions is None else 0.0 for k in kinds]) > 0
+    drain_wide = no_area | np.isnan(devices.drain_area + devices.drain_edge)
+    source_wide = no_area | np.isnan(devices.source_area + devices.source_edge)
     return Parameters(
         channels=channels_of(process, of_device, current),
-        gate_bulk=np.maximum(values.gate.today - over_source - 2 * over_drain, 0.0),
+        gate_bulk=_rest(values.gate.today, over_source + 2 * over_drain),
         gate_source=over_source,
         gate_drain=over_drain,
-        drain_bulk=_without(values.drain.today, 2 * over_drain, drain_known),
-        source_bulk=_without(values.source.today, 2 * over_source, source_known),
+        drain_bulk=_rest(values.drain.today, np.where(drain_wide, 2 * over_drain, by_area * width)),
+        source_bulk=_rest(
+            values.source.today, np.where(source_wide, 2 * over_source, by_area * width)
+        ),
     )
 
 
-def _without(whole: FloatArray, part: FloatArray, is_junction: BoolArray) -> FloatArray:
-    """Return a diffusion without the overlap; one known by its area holds none."""
-    return np.where(is_junction, whole, np.maximum(whole - part, 0.0))
+def _rest(whole: FloatArray, part: FloatArray) -> FloatArray:
+    """Return a capacitance without the overlap in it."""
+    return np.maximum(whole - part, 0.0)
 
 
 def assumption_notices(process: Process) -> tuple[Notice, ...]:

@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from typing import TYPE_CHECKING, Literal
+from typing import TYPE_CHECKING, Final, Literal
 
 if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.netlist.devices import FloatArray
     from evenstage.timing.results import Analysis, Path, Stage
+
+#: Simulated delays that differ by less are equal.
+_ALIKE: Final = 1e-3
 
 SideBranches = Literal["gates", "capacitances"]
 
@@ -100,6 +103,17 @@ class SimulatedBlock:
     paths: tuple[SimulatedPath, ...]
     other_edge: SimulatedPath | None = None
     same_path: SimulatedPath | None = None
+
+    @property
+    def ranks_alike(self) -> bool:
+        """Whether no path is simulated slower than one that is estimated slower, to 0.1 %."""
+        delays = [path.delay for path in self.paths]
+        return all(
+            later.estimated_delay == earlier.estimated_delay
+            or delays[j] <= delays[i] * (1 + _ALIKE)
+            for i, earlier in enumerate(self.paths)
+            for j, later in enumerate(self.paths[i:], i)
+        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

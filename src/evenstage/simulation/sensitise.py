@@ -86,8 +86,8 @@ def side_inputs(
 
 def _cannot(circuit: Circuit, gate: int) -> SimulationError:
     return SimulationError(
-        f"the path cannot switch at '{circuit.gate_name(gate)}' ({circuit.gate_function(gate)}): its"
-        " side inputs on the path itself hold it; it may be a false path, to be left out with"
+        f"the path cannot switch at '{circuit.gate_name(gate)}' ({circuit.gate_function(gate)}):"
+        " its side inputs on the path itself hold it; it may be a false path, to be left out with"
         " [[ignore]] in the brief",
         code="cannot-switch",
     )
@@ -222,12 +222,14 @@ def _slowness(
         np.arange(nodes), part.gate
     )
     conductance = part.closed(after) / values.resistance.today[devices][:, None]
-    matrix = np.zeros((vectors, nodes, nodes))
+    # The part of each device in the matrix, as one long row, so that a product adds them up.
+    element = np.zeros((len(devices), nodes, nodes))
+    device = np.arange(len(devices))
     for a, b in ((part.drain, part.source), (part.source, part.drain)):
-        np.add.at(matrix, (slice(None), a, a), conductance.T)
-        np.add.at(matrix, (slice(None), a, b), -conductance.T)
+        element[device, a, a] += 1.0
+        element[device, a, b] -= 1.0
     free = np.flatnonzero(~given)
-    inner = matrix[:, free[:, None], free]
+    inner = np.tensordot(conductance.T, element[:, free[:, None], free], axes=1)
     inner[:, np.arange(len(free)), np.arange(len(free))] += _LEAK
     right = np.broadcast_to((free == output).astype(float)[:, None], (vectors, len(free), 1))
     shared = np.linalg.solve(inner, right)[:, :, 0]
