@@ -75,6 +75,11 @@ class TestStatus:
             ["recognise", "pair.sp", "--graph", "pair.sp"],
             ["recognise", "pair.sp", "--graph", "out", "--json", "out"],
             ["analyse", "pair.sp", "--json", "."],
+            ["simulate", "pair.sp", "--after", "none.sp"],
+            ["simulate", "pair.sp", "--from", "none"],
+            ["simulate", "pair.sp", "--waveforms", "pair.sp"],
+            ["simulate", "pair.sp", "--waveforms", "none/out.csv"],
+            ["simulate", "pair.sp", "--waveforms", "out", "--json", "out"],
         ],
     )
     def test_input_is_wrong(
@@ -114,6 +119,8 @@ class TestStatus:
             ["resize", "pair.sp", "--scope", "all"],
             ["resize", "pair.sp", "--output", "-"],
             ["diff", "pair.sp"],
+            ["simulate", "pair.sp", "--side-branches", "some"],
+            ["simulate", "pair.sp", "--count", "0"],
         ],
     )
     def test_command_line_is_wrong(
@@ -150,6 +157,19 @@ class TestStatus:
         monkeypatch.setattr(flow, "analyse", interrupt)
         assert main(["analyse", str(netlist)]) == 130
         assert capsys.readouterr().err == "interrupted; no file is left half-written\n"
+
+
+class TestSimulate:
+    def test_writes_report_json_and_waveforms(
+        self, netlist: Path, capsys: pytest.CaptureFixture[str]
+    ) -> None:
+        files = ["--json", "out.json", "--waveforms", "out.csv"]
+        assert main(["simulate", str(netlist), "--after", str(netlist), *files]) == 0
+        assert "1.000 times as fast simulated" in " ".join(capsys.readouterr().out.split())
+        assert json.loads(Path("out.json").read_bytes())["kind"] == "simulation"
+        table = Path("out.csv").read_text("ascii").splitlines()
+        assert table[0] == "netlist,path,net,time_s,voltage_v"
+        assert {line.split(",")[2] for line in table[1:]} == {"a", "b", "y"}
 
 
 class TestNotices:
