@@ -98,3 +98,28 @@ class TestResized:
             assert getattr(after, name).today == pytest.approx(
                 before.scaling * factor + before.fixed, rel=1e-12
             )
+
+
+class TestEdges:
+    def test_an_output_rises_and_falls_through_its_own_junctions(self) -> None:
+        """An inverter: each arc counts what both junctions hold over its part of the swing."""
+        near, far = Junction(area=3e-3, edge=0.0), Junction(area=1e-3, edge=0.0)
+        process = plain_process()
+        n, p = process.transistors
+        process = replace(
+            process,
+            transistors=(
+                replace(n, junctions=Junctions(rise=near, fall=far)),
+                replace(p, junctions=Junctions(rise=far, fall=near)),
+            ),
+        )
+        areas = "ad=1p as=0 pd=0 ps=0"
+        text = (
+            f"* t\nmn y a vss vss nx w=1u l=0.1u {areas}\nmp y a vdd vdd px w=2u l=0.1u "
+            f"{areas.replace('1p', '2p')}\n"
+        )
+        arcs = circuit_of(text, process).arcs
+        own = dict(zip(arcs.rising.tolist(), arcs.own_today.tolist(), strict=True))
+        resistance = 1e-3 / 1e-6
+        assert own[True] == pytest.approx(resistance * (3e-15 + 2e-15))
+        assert own[False] == pytest.approx(resistance * (1e-15 + 6e-15))

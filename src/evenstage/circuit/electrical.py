@@ -7,6 +7,7 @@ A quantity ``q`` of a device whose width is multiplied by ``x`` becomes ``scalin
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -57,12 +58,12 @@ class Electrical:
     shape: FloatArray
     shape_carry: FloatArray
 
-    @property
+    @cached_property
     def drain(self) -> Scaled:
         """Drain capacitance over the whole swing."""
         return _mean(self.rise.drain, self.fall.drain)
 
-    @property
+    @cached_property
     def source(self) -> Scaled:
         """Source capacitance over the whole swing."""
         return _mean(self.rise.source, self.fall.source)
@@ -76,6 +77,8 @@ def electrical(devices: Devices, process: Process) -> Electrical:
         table = np.array([getattr(kind, name) for kind in kinds], float)
         return table[devices.model] if len(devices) else np.zeros(0)
 
+    rise = _diffusion(devices, kinds, "rise")
+    alike = all(k.junctions is None or k.junctions.rise == k.junctions.fall for k in kinds)
     copies = devices.multiplier
     length = devices.length / constant("length")
     width = devices.width
@@ -86,8 +89,8 @@ def electrical(devices: Devices, process: Process) -> Electrical:
         gate=Scaled(
             constant("c_gate") * width * length * copies, constant("c_gate_fixed") * copies
         ),
-        rise=_diffusion(devices, process, "rise"),
-        fall=_diffusion(devices, process, "fall"),
+        rise=rise,
+        fall=rise if alike else _diffusion(devices, kinds, "fall"),
         stack=constant("stack"),
         slope=constant("slope"),
         slope_power=constant("slope_power"),
@@ -97,11 +100,14 @@ def electrical(devices: Devices, process: Process) -> Electrical:
 
 
 def _mean(one: Scaled, other: Scaled) -> Scaled:
+    if one is other:
+        return one
     return Scaled((one.scaling + other.scaling) / 2, (one.fixed + other.fixed) / 2)
 
 
-def _diffusion(devices: Devices, process: Process, edge: Literal["rise", "fall"]) -> Diffusion:
-    kinds = [process.transistors[model.type_index] for model in devices.models]
+def _diffusion(
+    devices: Devices, kinds: Sequence[Transistor], edge: Literal["rise", "fall"]
+) -> Diffusion:
     given = [None if kind.junctions is None else getattr(kind.junctions, edge) for kind in kinds]
     drains = (devices.drain_area, devices.drain_edge, "drain_fixed")
     sources = (devices.source_area, devices.source_edge, "source_fixed")

@@ -15,7 +15,7 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
-    from evenstage.circuit.electrical import Electrical
+    from evenstage.circuit.electrical import Diffusion, Electrical
     from evenstage.circuit.gate import ArcForm, GateForm
     from evenstage.netlist.devices import FloatArray, IntArray
 
@@ -123,9 +123,14 @@ def _arcs_of_form(some: AlikeGates, values: Electrical, node_cap: FloatArray) ->
     """Return one bundle per arc of a form, for all its gates."""
     network = some.form.network
     res = _switch_resistance(some, values)
-    cap = _node_capacitance(some, values, node_cap)
+    fall = _node_capacitance(some, values.fall, node_cap)
+    alike = values.rise is values.fall
+    rise = fall if alike else _node_capacitance(some, values.rise, node_cap)
     first_device = [network.switch_of_device.index(i) for i in range(len(network.switches))]
-    return [_alike_arcs(some, arc, values, (res, cap), first_device) for arc in some.form.arcs]
+    return [
+        _alike_arcs(some, arc, values, (res, rise if arc.rising else fall), first_device)
+        for arc in some.form.arcs
+    ]
 
 
 def _alike_arcs(
@@ -204,7 +209,7 @@ def _switch_resistance(some: AlikeGates, values: Electrical) -> Scaled:
     return Scaled(scaling, inverse)
 
 
-def _node_capacitance(some: AlikeGates, values: Electrical, node_cap: FloatArray) -> Scaled:
+def _node_capacitance(some: AlikeGates, ends: Diffusion, node_cap: FloatArray) -> Scaled:
     """Return the capacitance of each inner node, output included, shape ``(k, nodes)``.
 
     Drains and sources of all the gate's devices; on inner nodes capacitor cards too (on the output
@@ -217,7 +222,7 @@ def _node_capacitance(some: AlikeGates, values: Electrical, node_cap: FloatArray
     at_source = _incidence([row_of_net[s.b] if s.b >= 0 else -1 for s in form.drawn], len(rows))
     inner = [-1 if net == form.output else row for net, row in enumerate(row_of_net)]
     wires = node_cap[some.nets] @ _incidence(inner, len(rows))
-    drain, source = values.drain, values.source
+    drain, source = ends.drain, ends.source
     return Scaled(
         drain.scaling[some.devices] @ at_drain + source.scaling[some.devices] @ at_source,
         drain.fixed[some.devices] @ at_drain + source.fixed[some.devices] @ at_source + wires,
