@@ -216,3 +216,69 @@ def test_a_chain_of_fo4_inverters_takes_fo4_per_stage_with_slopes() -> None:
     timing = time(circuit)
     delays = timing.delay[timing.winner[timing.graph.end]]
     np.testing.assert_allclose(delays, timing.unit.fo4, rtol=1e-9, atol=0)
+
+
+def third(value: float) -> float:
+    """Return a published figure that counts widths over the three of the unit inverter."""
+    return value / 3
+
+
+class TestRatioedGates:
+    """Pseudo-nMOS: the load has a third of the unit drive, the network four thirds.
+
+    So the network, less the load, drives as the unit inverter does (Sutherland, Sproull and Harris,
+    section 10.1, from memory; recomputed). Of one input, in the order of the edges fall and rise.
+    """
+
+    @pytest.mark.parametrize(
+        ("cards", "fall", "rise"),
+        [
+            ([("y", "a", "vss", 4 / 3)], 4 / 9, 4 / 3),
+            ([("y", "a", "vss", 4 / 3), ("y", "b", "vss", 4 / 3)], 4 / 9, 4 / 3),
+            ([("y", "a", "m", 8 / 3), ("m", "b", "vss", 8 / 3)], 8 / 9, 8 / 3),
+        ],
+        ids=["inverter", "nor2", "nand2"],
+    )
+    def test_efforts(
+        self, cards: list[tuple[str, str, str, float]], fall: float, rise: float
+    ) -> None:
+        load = network("p", "l", [("y", "vss", "vdd", 2 / 3)])
+        found = efforts(network("n", "d", cards) + "\n" + load)
+        assert found["a", "fall"][0] == pytest.approx(fall)
+        assert found["a", "rise"][0] == pytest.approx(rise)
+
+
+class TestDynamicGates:
+    """Dynamic gates with a precharge transistor of width 1 (the same, section 8.1, from memory).
+
+    The output goes to a buffer, as in domino logic. Recomputed: ``g`` the input width that gives
+    unit drive, ``p`` the drains on the output, both over the three of the unit inverter.
+    """
+
+    @pytest.mark.parametrize(
+        ("stack", "g", "p"),
+        [
+            ([("x", "a", "vss", 1)], third(1), third(2)),
+            ([("x", "a", "m", 2), ("m", "b", "vss", 2)], third(2), third(3)),
+            ([("x", "a", "vss", 1), ("x", "b", "vss", 1)], third(1), third(3)),
+            ([("x", "a", "m", 2), ("m", "ck", "vss", 2)], third(2), third(3)),
+            (
+                [("x", "a", "m", 3), ("m", "b", "k", 3), ("k", "ck", "vss", 3)],
+                third(3), third(4),
+            ),
+            (
+                [("x", "a", "m", 2), ("x", "b", "m", 2), ("m", "ck", "vss", 2)],
+                third(2), third(5),
+            ),
+        ],
+        ids=["inverter", "nand2", "nor2", "footed inverter", "footed nand2", "footed nor2"],
+    )  # fmt: skip
+    def test_efforts(self, stack: list[tuple[str, str, str, float]], g: float, p: float) -> None:
+        cards = [
+            shared_diffusion(network("n", "d", stack)),
+            network("p", "l", [("x", "ck", "vdd", 1)]),
+            inverter("i", "x", "y", 1, 4),
+        ]
+        found = efforts("\n".join(cards))
+        assert found["a", "fall"] == pytest.approx((g, p))
+        assert ("a", "rise") not in found

@@ -10,6 +10,7 @@ from __future__ import annotations
 import json
 from collections import Counter
 from dataclasses import replace
+from functools import lru_cache
 from pathlib import Path
 from typing import TYPE_CHECKING, TypedDict
 
@@ -38,7 +39,9 @@ class Cell(TypedDict):
     power: list[str]
     ground: list[str]
     combinational: bool
+    sequential: bool
     tristate: bool
+    transistors: int
 
 
 pytestmark = pytest.mark.skipif(
@@ -72,6 +75,7 @@ def files(library: str) -> list[Path]:
     )
 
 
+@lru_cache
 def circuits(library: str) -> dict[str, Circuit | str]:
     """Return each cell's circuit, or why there is none."""
     facts = cells_of(library)
@@ -135,3 +139,85 @@ def test_combinational_cells_compute_their_published_functions(
             why[circuit.not_understood[0].reason] += 1
     assert len(whole) == static, why
     assert all("pass transistors" in reason for reason in why)
+
+
+#: What the special cells of both libraries are, by the stem of their names; common names of the
+#: field, the libraries' own documents where the name says less.
+KINDS = {
+    "dff": "flip-flop", "sdff": "flip-flop", "dfr": "flip-flop", "sdf": "flip-flop",
+    "lat": "latch", "dlh": "latch", "dll": "latch",
+    "icgt": "clock gate", "lgcp": "clock gate", "slgcp": "clock gate",
+    "hold": "bus keeper", "sighold": "bus keeper",
+    "fillcap": "decoupling", "decap": "decoupling", "tie": "tie",
+}  # fmt: skip
+CLOCKS = {"CLK": True, "CLKN": False, "E": True, "GATE": True, "GATE_N": False}
+"""Level of the clock pins after which, or during which, a cell shows its data."""
+WRITES = {"RN", "SETN", "RESET_B", "SET_B"}
+"""Set and reset pins; all act when low."""
+
+
+def kind_of(name: str) -> str | None:
+    """Return what a special cell is called, None for what is no special cell."""
+    stem = name.removeprefix("gf180mcu_fd_sc_mcu7t5v0__").removeprefix("sg13g2_")
+    fits = [start for start in KINDS if stem.startswith(start)]
+    return KINDS[max(fits, key=len)] if fits else None
+
+
+def found_kinds(circuit: Circuit) -> list[str]:
+    """Return what a cell was taken for: its storage, or what stands outside all logic."""
+    stored = [element.kind for element in circuit.storage.elements]
+    return stored or sorted({part.role for part in circuit.apart})
+
+
+@pytest.mark.parametrize(("library", "special"), [("ihp_sg13g2", 21), ("gf180_7t", 62)])
+def test_special_cells_are_named_as_what_they_are(library: str, special: int) -> None:
+    """Every sequential cell, bus keeper, tie and decoupling cell is named right, and no other so.
+
+    A cell holds one storage element, however many latches it is drawn of.
+    """
+    facts, right, wrong = cells_of(library), [], {}
+    for name, circuit in circuits(library).items():
+        if isinstance(circuit, str):
+            continue
+        wanted, found = kind_of(name), found_kinds(circuit)
+        if found == ([wanted] if wanted else []):
+            right.append(name)
+        else:
+            wrong[name] = found
+        assert facts[name]["sequential"] == (wanted in {"flip-flop", "latch", "clock gate"})
+    assert not wrong
+    assert sum(kind_of(name) is not None for name in right) == special
+
+
+@pytest.mark.parametrize("library", ["ihp_sg13g2", "gf180_7t"])
+def test_sequential_cells_have_their_clock_data_set_and_reset(library: str) -> None:
+    """By the pins of the libraries' own lists; the level of a clock by its name."""
+    facts = cells_of(library)
+    for name, circuit in circuits(library).items():
+        cell = facts[name]
+        if isinstance(circuit, str) or not cell["sequential"]:
+            continue
+        (element,) = circuit.storage.elements
+        names = circuit.devices.net_names
+        (clock, level), *others = ((names[net].upper(), level) for net, level in element.clocks)
+        assert not others
+        writes = {names[net].upper(): level for net, level in element.writes}
+        pins = {pin.upper() for pin in cell["inputs"]}
+        if element.kind == "clock gate":
+            # Its latch is open while the clock it gates is at rest.
+            assert (clock, level) in {("CLK", False), ("CLKN", True)}, name
+        else:
+            assert CLOCKS[clock] == level, name
+        assert writes == dict.fromkeys(pins & WRITES, False), name
+        data = {names[net].upper() for net in element.data}
+        assert data, name
+        # Data enter by pins, or through a gate before the first latch.
+        assert data <= pins - writes.keys() - {clock} or data.isdisjoint(pins), name
+
+
+@pytest.mark.parametrize("library", ["ihp_sg13g2", "gf180_7t"])
+def test_no_combinational_cell_holds_anything(library: str) -> None:
+    facts = cells_of(library)
+    for name, circuit in circuits(library).items():
+        if not isinstance(circuit, str) and facts[name]["combinational"]:
+            assert not circuit.storage.elements, name

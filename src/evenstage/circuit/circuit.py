@@ -20,6 +20,7 @@ if TYPE_CHECKING:
     from evenstage.circuit.apart import Apart
     from evenstage.circuit.arcs import Arcs
     from evenstage.circuit.network import BoolArray
+    from evenstage.circuit.storage.elements import Storage
     from evenstage.circuit.supplies import Supplies
     from evenstage.circuit.wiring import Wiring
     from evenstage.errors import Notice
@@ -28,6 +29,8 @@ if TYPE_CHECKING:
 
 NET = "net"
 """Edge attribute of `Circuit.graph`: id of the net that joins two gates."""
+STORED = "stored"
+"""Why paths end at a net of `Circuit.ends` where a storage element takes data in."""
 OUTPUT = "output"
 """Node attribute of `Circuit.graph`: id of the net a gate drives."""
 
@@ -65,6 +68,8 @@ class Circuit:
     not_understood : tuple of NotUnderstood
     apart : tuple of Apart
         Devices outside all logic (decoupling, dummies, ties): they only load their nets.
+    storage : Storage
+        Loops of nets: storage elements, and loops that are none.
     outside_cap : FloatArray, F, shape (nets,)
         What the brief, or the default of four unit inverters, hangs on outputs.
     gate_output : IntArray, shape (gates,)
@@ -88,6 +93,7 @@ class Circuit:
     alike: tuple[AlikeGates, ...] = field(repr=False)
     not_understood: tuple[NotUnderstood, ...]
     apart: tuple[Apart, ...] = field(repr=False)
+    storage: Storage = field(repr=False)
     outside_cap: FloatArray = field(repr=False)
     gate_output: IntArray = field(repr=False)
     gate_instance: IntArray = field(repr=False)
@@ -237,6 +243,10 @@ class Circuit:
         """
         net = int(self.alike[self.gate_form[gate]].nets[self.gate_row[gate], local])
         instance = int(self.gate_instance[gate])
+        return self._names.local(instance, net)
+
+    def net_name_inside(self, instance: int, net: int) -> str:
+        """Return the name a net has in the subcircuit of an instance."""
         return self._names.local(instance, net)
 
     def net_id(self, name: str) -> int | None:

@@ -38,11 +38,14 @@ class Context:
         An input, and a channel end that the gate driving this input listens to.
     seen : tuple of int
         Channel ends that are ports or close switches of other groups.
+    ports : tuple of int
+        Channel ends that are ports.
     """
 
     complements: tuple[Relation, ...] = ()
     feedback: tuple[Relation, ...] = ()
     seen: tuple[int, ...] = ()
+    ports: tuple[int, ...] = ()
 
 
 class Surroundings:
@@ -81,18 +84,20 @@ class Surroundings:
             self._complement[here][:, :, None] == some.nets[:, None, :],
             self._listens(here, some.nets[:, ends]),
             self._seen(some, ends),
+            self._is_port[some.nets[:, ends]],
         ]
         table = np.concatenate([fact.reshape(len(here), -1) for fact in facts], axis=1)
         kinds, inverse = np.unique(table, axis=0, return_inverse=True)
         sizes = np.cumsum([fact[0].size for fact in facts])[:-1]
         result = []
         for index, kind in enumerate(kinds):
-            complements, feedback, seen = np.split(kind, sizes)
+            complements, feedback, seen, ports = np.split(kind, sizes)
             locals_ = range(some.nets.shape[1])
             context = Context(
                 _pairs(complements, inputs, locals_),
                 _pairs(feedback, inputs, ends),
-                tuple(end for end, is_seen in zip(ends, seen.tolist(), strict=True) if is_seen),
+                tuple(np.array(ends)[seen].tolist()),
+                tuple(np.array(ends)[ports].tolist()),
             )
             result.append((context, np.flatnonzero(inverse == index).astype(np.int32)))
         return result

@@ -9,6 +9,10 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from evenstage.circuit.gate import recognise_network
+from evenstage.circuit.kinds.dynamic import dynamic
+from evenstage.circuit.kinds.floating import floating
+from evenstage.circuit.kinds.kept import kept
+from evenstage.circuit.kinds.ratioed import ratioed
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -28,4 +32,5 @@ def complementary(devices: tuple[Switch, ...], context: Context) -> GateForm | U
     )
 
 
-FAMILIES: tuple[Family, ...] = (complementary,)
+PLAIN: tuple[Family, ...] = (complementary, dynamic, ratioed, floating)
+FAMILIES: tuple[Family, ...] = (complementary, kept(PLAIN), *PLAIN[1:])

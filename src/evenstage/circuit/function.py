@@ -139,3 +139,16 @@ def inverted_text(expression: Expression, name: Callable[[int], str]) -> str:
     """Return the text of the complement, as a static gate computes it: ``!(a & b)``."""
     inner = text(expression, name)
     return f"!{inner}" if isinstance(expression, Literal) else f"!({inner})"
+
+
+def dual(expression: Expression) -> Expression:
+    """Return an expression with conjunction and disjunction swapped.
+
+    Where the literals of a pull-up network mean "input is 0", its dual says when it does not
+    conduct.
+    """
+    if isinstance(expression, And):
+        return Or(tuple(dual(term) for term in expression.terms))
+    if isinstance(expression, Or):
+        return And(tuple(dual(term) for term in expression.terms))
+    return expression

@@ -10,7 +10,7 @@ node by node, by another; which of them is slowest depends on the sizes.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import lru_cache
 from typing import TYPE_CHECKING
 
@@ -45,12 +45,34 @@ class ArcForm:
         Switches from the output to the supply.
     moved : tuple of (int, int)
         Node and the number of path switches, counted from the supply, its charge flows through.
+    load : tuple of int
+        Switches of a path to the other supply that conducts all the while and is overpowered.
     """
 
     input: int
     rising: bool
     path: tuple[int, ...]
     moved: tuple[tuple[int, int], ...]
+    load: tuple[int, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Weak:
+    """Devices that hold the output until they are overpowered: a keeper or a load.
+
+    Parameters
+    ----------
+    supply : int
+        Where they hold the output.
+    devices : tuple of tuple of int
+        Drawn devices from the output to the supply: in series, at each place those in parallel.
+    is_keeper : bool
+        Whether a gate that listens to the output turns them on and off.
+    """
+
+    supply: int
+    devices: tuple[tuple[int, ...], ...]
+    is_keeper: bool
 
 
 @dataclass(frozen=True)
@@ -70,6 +92,10 @@ class GateForm:
     arcs : tuple of ArcForm
     kind : str
         What it is called.
+    weak : tuple of Weak
+        Its keepers and loads.
+    floats : bool
+        Whether its output is left alone for some inputs, and what keeps it then stores it.
     """
 
     drawn: tuple[Switch, ...]
@@ -78,6 +104,8 @@ class GateForm:
     pull_down: Expression
     arcs: tuple[ArcForm, ...]
     kind: str = "static gate"
+    weak: tuple[Weak, ...] = ()
+    floats: bool = False
 
 
 @dataclass(frozen=True)
@@ -88,7 +116,7 @@ class Unrecognised:
 
 
 @dataclass(frozen=True)
-class _Pulls:
+class Pulls:
     """Truth tables of both pulls over all vectors, and the vectors that can occur."""
 
     up: BoolArray
@@ -128,20 +156,43 @@ def recognise_network(
     pulls = _pulls(network, output, relations)
     if isinstance(pulls, Unrecognised):
         return pulls
-    arcs = tuple(
-        arc
-        for row in range(len(network.inputs))
-        for rising in (True, False)
-        for arc in _arcs(network, output, pulls, row, relations, rising=rising)
-    )
+    arcs = all_arcs(network, output, pulls, relations)
     if not arcs:
         return Unrecognised("no input moves its output")
     return GateForm(devices, network, output, conduction(network, output, LOW, "n"), arcs)
 
 
-def _pulls(network: Network, output: int, relations: tuple[Relation, ...]) -> _Pulls | Unrecognised:
+def all_arcs(
+    network: Network,
+    output: int,
+    pulls: Pulls,
+    relations: tuple[Relation, ...],
+    weak: frozenset[int] = frozenset(),
+) -> tuple[ArcForm, ...]:
+    """Return the arcs of all inputs of a network towards both edges of its output.
+
+    Weak switches give way to others: the pulls must say so, and what they hold against an arc is
+    its load.
+    """
+    return tuple(
+        replace(arc, load=_load(network, output, arc, weak)) if weak else arc
+        for row in range(len(network.inputs))
+        for rising in (True, False)
+        for arc in _arcs(network, output, pulls, row, relations, rising=rising)
+    )
+
+
+def _load(network: Network, output: int, arc: ArcForm, weak: frozenset[int]) -> tuple[int, ...]:
+    """Return the shortest weak path towards the other supply that always conducts."""
+    against = LOW if arc.rising else HIGH
+    if against not in network.at_node:
+        return ()
+    return min(network.paths(output, against, weak), key=len, default=())
+
+
+def _pulls(network: Network, output: int, relations: tuple[Relation, ...]) -> Pulls | Unrecognised:
     up, down = network.conducts(output, HIGH, "p"), network.conducts(output, LOW, "n")
-    possible = _possible(network, relations)
+    possible = possible_vectors(network, relations)
     anyhow_up, anyhow_down = network.conducts(output, HIGH), network.conducts(output, LOW)
     if ((anyhow_up != up) | (anyhow_down != down))[possible].any():
         return Unrecognised("an n switch pulls up or a p switch pulls down")
@@ -151,10 +202,10 @@ def _pulls(network: Network, output: int, relations: tuple[Relation, ...]) -> _P
         return Unrecognised("pull-up and pull-down conduct together: not complementary")
     if not (up | down)[possible].all():
         return Unrecognised("neither pull conducts for some inputs: it can float")
-    return _Pulls(up, down, possible)
+    return Pulls(up, down, possible)
 
 
-def _possible(network: Network, relations: tuple[Relation, ...]) -> BoolArray:
+def possible_vectors(network: Network, relations: tuple[Relation, ...]) -> BoolArray:
     """Tell which vectors can occur when some inputs are complements of others."""
     possible = np.ones(network.vectors.shape[1], bool)
     rows = {net: row for row, net in enumerate(network.inputs)}
@@ -167,7 +218,7 @@ def _possible(network: Network, relations: tuple[Relation, ...]) -> BoolArray:
 def _arcs(
     network: Network,
     output: int,
-    pulls: _Pulls,
+    pulls: Pulls,
     row: int,
     relations: tuple[Relation, ...],
     *,
@@ -179,7 +230,9 @@ def _arcs(
     columns = np.arange(network.vectors.shape[1])
     after = columns[network.vectors[row] != rising]
     before = after ^ (1 << row)
-    decides = ~pull[before] & pull[after] & ~against[after] & _possible(network, others)[after]
+    decides = (
+        ~pull[before] & pull[after] & ~against[after] & possible_vectors(network, others)[after]
+    )
     single: dict[ArcForm, None] = {}
     shared: dict[ArcForm, None] = {}
     for old, new in zip(before[decides], after[decides], strict=True):

@@ -11,9 +11,10 @@ from evenstage.circuit.names import device_names
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
+    from evenstage.circuit.storage.elements import Element
     from evenstage.circuit.tables import AlikeGates
     from evenstage.errors import Notice
-    from evenstage.netlist.devices import IntArray
+    from evenstage.netlist.devices import Devices, IntArray
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,6 +68,34 @@ class Unknown:
 
 
 @dataclass(frozen=True, slots=True)
+class Stored:
+    """Storage elements of one kind in one subcircuit, and loops that are none.
+
+    Parameters
+    ----------
+    subcircuit, kind : str
+    count : int
+        How many.
+    instance : str
+        Path of the instance that holds the first; empty for the block itself.
+    nets, data : tuple of str
+        Of the first: nets of its loops, and nets that are stored; in the names of its subcircuit.
+    clocks, writes : tuple of (str, bool)
+        Likewise: its clocks with the level that lets data through (of a flip-flop the level after
+        its edge), and what sets or resets it with the level that does.
+    """
+
+    subcircuit: str
+    kind: str
+    count: int
+    instance: str
+    nets: tuple[str, ...]
+    data: tuple[str, ...]
+    clocks: tuple[tuple[str, bool], ...]
+    writes: tuple[tuple[str, bool], ...]
+
+
+@dataclass(frozen=True, slots=True)
 class Outside:
     """Transistors outside all logic that play one part in one subcircuit.
 
@@ -99,6 +128,8 @@ class Inventory:
         Supply nets.
     entries : tuple of Entry
         By subcircuit, callers first, then by kind and first occurrence.
+    stored : tuple of Stored
+        By subcircuit, then by kind.
     outside : tuple of Outside
         By subcircuit, then by role.
     not_understood : tuple of Unknown
@@ -115,6 +146,7 @@ class Inventory:
     high: tuple[str, ...]
     low: tuple[str, ...]
     entries: tuple[Entry, ...]
+    stored: tuple[Stored, ...]
     outside: tuple[Outside, ...]
     not_understood: tuple[Unknown, ...]
     notices: tuple[Notice, ...]
@@ -134,6 +166,7 @@ def take_inventory(circuit: Circuit) -> Inventory:
         high=tuple(names[net] for net in np.flatnonzero(supplies.is_high).tolist()),
         low=tuple(names[net] for net in np.flatnonzero(supplies.is_low).tolist()),
         entries=_entries(circuit),
+        stored=_stored(circuit),
         outside=_outside(circuit),
         not_understood=_unknown(circuit),
         notices=circuit.notices,
@@ -170,6 +203,52 @@ def _entry(circuit: Circuit, gate: int, count: int) -> Entry:
         function=circuit.gate_function(gate),
         inputs=tuple(circuit.local_name(gate, local) for local in form.network.inputs),
     )
+
+
+def _stored(circuit: Circuit) -> tuple[Stored, ...]:
+    devices = circuit.devices
+    at_net = np.zeros(len(devices.net_names), np.int32)
+    for ends in (devices.source, devices.drain):
+        at_net[ends[::-1]] = np.arange(len(devices))[::-1]
+    by_place: dict[tuple[int, str], list[tuple[int, Element]]] = {}
+    for element in circuit.storage.elements:
+        nets = [net for loop in element.loops for net in loop.nets]
+        instance = _common(devices, devices.instance[at_net[nets]].tolist())
+        place = int(devices.instance_subcircuit[instance]), element.kind
+        by_place.setdefault(place, []).append((instance, element))
+    return tuple(
+        _stored_entry(circuit, kind, members) for (_, kind), members in sorted(by_place.items())
+    )
+
+
+def _stored_entry(circuit: Circuit, kind: str, members: list[tuple[int, Element]]) -> Stored:
+    devices, (instance, first) = circuit.devices, members[0]
+
+    def named(net: int) -> str:
+        return circuit.net_name_inside(instance, net)
+
+    return Stored(
+        subcircuit=devices.subcircuits[int(devices.instance_subcircuit[instance])],
+        kind=kind,
+        count=len(members),
+        instance=devices.instance_path(instance),
+        nets=tuple(named(net) for loop in first.loops for net in loop.nets),
+        data=tuple(map(named, first.data)),
+        clocks=tuple((named(net), level) for net, level in first.clocks),
+        writes=tuple((named(net), level) for net, level in first.writes),
+    )
+
+
+def _common(devices: Devices, instances: list[int]) -> int:
+    """Return the innermost instance that holds all of some."""
+    lines: list[list[int]] = []
+    for instance in dict.fromkeys(instances):
+        line = [instance]
+        while line[-1] > 0:
+            line.append(int(devices.instance_parent[line[-1]]))
+        lines.append(line[::-1])
+    shared: list[int] = [level[0] for level in zip(*lines, strict=False) if len(set(level)) == 1]
+    return shared[-1]
 
 
 def _outside(circuit: Circuit) -> tuple[Outside, ...]:

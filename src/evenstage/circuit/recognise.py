@@ -9,15 +9,19 @@ import numpy as np
 
 from evenstage.brief import Brief
 from evenstage.circuit.apart import set_apart
-from evenstage.circuit.circuit import Circuit, NotUnderstood
+from evenstage.circuit.circuit import STORED, Circuit, NotUnderstood
 from evenstage.circuit.groups import group
-from evenstage.circuit.names import device_names
+from evenstage.circuit.names import NAMES_MAX, device_names
 from evenstage.circuit.ownership import leaves, owners
 from evenstage.circuit.sorting import sort_groups
+from evenstage.circuit.storage.elements import TOO_LARGE, find_storage
+from evenstage.circuit.storage.reading import OSCILLATES
+from evenstage.circuit.strength import ratio_notices
 from evenstage.circuit.supplies import find_supplies
 from evenstage.circuit.tables import AlikeGates
 from evenstage.circuit.wiring import find_wiring
 from evenstage.errors import CircuitError, Notice
+from evenstage.netlist.wording import counted
 from evenstage.pattern import select
 from evenstage.process.unit import unit_inverter
 
@@ -25,6 +29,7 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from evenstage.circuit.sorting import Sorted
+    from evenstage.circuit.storage.elements import Storage
     from evenstage.netlist.devices import Devices, IntArray
     from evenstage.process.process import Process
 
@@ -74,18 +79,19 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         alike=alike,
         not_understood=strange,
         apart=apart,
+        storage=find_storage(devices, found.gates, [some for _, some in found.strange]),
         outside_cap=np.zeros(len(devices.net_names)),
         gate_output=output,
         gate_instance=owner,
         gate_is_leaf=leaves(devices, alike, owner),
         ends={},
-        notices=(*devices.notices, *process.notices, *_strange_notices(devices, strange)),
+        notices=(),
         coupling=brief.coupling if brief else Brief().coupling,
     )
-    if not alike:
-        return circuit
-    wiring = find_wiring(devices, circuit.gate_of_device, output, supplies.is_supply)
-    return _with_ends(replace(circuit, wiring=wiring), brief)
+    if alike:
+        wiring = find_wiring(devices, circuit.gate_of_device, output, supplies.is_supply)
+        circuit = replace(circuit, wiring=wiring)
+    return _complete(circuit, brief)
 
 
 def in_process(circuit: Circuit, process: Process, brief: Brief | None = None) -> Circuit:
@@ -99,17 +105,27 @@ def in_process(circuit: Circuit, process: Process, brief: Brief | None = None) -
     brief : Brief, optional
         That of the circuit.
     """
-    devices = circuit.devices
-    process = _with_unit(process, devices)
-    strange = _strange_notices(devices, circuit.not_understood)
     moved = replace(
         circuit,
-        process=process,
-        outside_cap=np.zeros(len(devices.net_names)),
+        process=_with_unit(process, circuit.devices),
+        outside_cap=np.zeros(len(circuit.devices.net_names)),
         ends={},
-        notices=(*devices.notices, *process.notices, *strange),
     )
-    return _with_ends(moved, brief) if circuit.alike else moved
+    return _complete(moved, brief)
+
+
+def _complete(circuit: Circuit, brief: Brief | None) -> Circuit:
+    """Say what was noticed, and find where paths end."""
+    devices = circuit.devices
+    notices = (
+        *devices.notices,
+        *circuit.process.notices,
+        *_strange_notices(devices, circuit.not_understood),
+        *_loop_notices(devices, circuit.storage),
+        *ratio_notices(circuit),
+    )
+    circuit = replace(circuit, notices=notices)
+    return _with_ends(circuit, brief) if circuit.alike else circuit
 
 
 def _numbered(found: Sorted) -> tuple[AlikeGates, ...]:
@@ -151,6 +167,23 @@ def _strange_notices(devices: Devices, strange: Sequence[NotUnderstood]) -> list
                 device_names(devices, every),
             )
         )
+    return notices
+
+
+def _loop_notices(devices: Devices, storage: Storage) -> list[Notice]:
+    """Name the loops that hold nothing and are cut."""
+    told = {
+        OSCILLATES: ("loop-oscillates", "has no stable state, as in a ring oscillator"),
+        TOO_LARGE: ("loop-not-read", "is too large to be read"),
+    }
+    notices = []
+    for element in storage.elements:
+        if element.kind in told:
+            code, what = told[element.kind]
+            nets = [net for loop in element.loops for net in loop.nets]
+            names = tuple(devices.net_names[net] for net in nets[:NAMES_MAX])
+            message = f"a loop of {counted(len(nets), 'net')} {what}; it is cut where a path enters"
+            notices.append(Notice(code, message, names=names))
     return notices
 
 
@@ -202,10 +235,12 @@ def _natural_ends(circuit: Circuit) -> dict[int, str]:
     is_output[circuit.pins.net] = False
     is_output[list(circuit.devices.ports)] = True
     driven = circuit.gate_output
+    stored = circuit.storage.loop_of_net() >= 0
     entering = driven[strange[driven] & ~is_output[driven]]
     return {
         **dict.fromkeys(driven[is_output[driven]].tolist(), "output"),
         **dict.fromkeys(entering.tolist(), "enters what was not understood"),
+        **dict.fromkeys(driven[stored[driven] & ~is_output[driven]].tolist(), STORED),
     }
 
 

@@ -19,6 +19,9 @@ if TYPE_CHECKING:
     from evenstage.circuit.gate import ArcForm, GateForm
     from evenstage.netlist.devices import FloatArray, IntArray
 
+CONTENTION_MAX = 20.0
+"""Most that a load may slow the edge against it: beyond, the output hardly moves."""
+
 _Kind = TypeVar("_Kind", bound=np.generic)
 
 
@@ -151,11 +154,17 @@ def _alike_arcs(
     towards = list(reversed(arc.path))
     r_x = np.cumsum(res.scaling[:, towards] * factor[:, ::-1], axis=1)
     r_0 = np.cumsum(res.fixed[:, towards] * factor[:, ::-1], axis=1)
+    if arc.load:
+        fight = _contention(r_x[:, -1] + r_0[:, -1], res.today[:, list(arc.load)].sum(axis=1))
+        r_x, r_0 = r_x * fight[:, None], r_0 * fight[:, None]
     rows = {node: row for row, node in enumerate(form.network.inner_nodes)}
     nodes = [rows[node] for node, _ in arc.moved]
     depth = [count - 1 for _, count in arc.moved]
     c_x, c_0 = cap.scaling[:, nodes], cap.fixed[:, nodes]
-    switching = next(i for i in arc.path if form.network.switches[i].gate == arc.input)
+    # A load that has been overpowered is not switched: the edge through it begins in the network.
+    switching = next(
+        (i for i in arc.path if form.network.switches[i].gate == arc.input), arc.path[0]
+    )
     device = some.devices[:, first_device[switching]]
     scaling, fixed = r_x[:, -1], r_0[:, -1]
     net = some.nets[:, form.output]
@@ -191,6 +200,15 @@ def _alike_arcs(
         shape=values.shape[device],
         shape_carry=values.shape_carry[device],
     )
+
+
+def _contention(pull: FloatArray, load: FloatArray) -> FloatArray:
+    """Return by how much a load slows a pull: the difference of the conductances drives.
+
+    ``1 / R = 1 / pull - 1 / load``; both change together with the size of the gate. A load as
+    strong as the pull would leave nothing, and a notice says so; here `CONTENTION_MAX` is kept.
+    """
+    return 1 / np.maximum(1 - pull / load, 1 / CONTENTION_MAX)
 
 
 def _switch_resistance(some: AlikeGates, values: Electrical) -> Scaled:

@@ -29,6 +29,19 @@ def inventory_body(inventory: Inventory) -> Document:
         "supplies": {"high": list(inventory.high), "low": list(inventory.low)},
         "subcircuits": _subcircuits(inventory.entries),
         "gates": _gates(inventory.circuit),
+        "storage": [
+            {
+                "subcircuit": some.subcircuit,
+                "kind": some.kind,
+                "count": some.count,
+                "instance": some.instance,
+                "nets": list(some.nets),
+                "data": list(some.data),
+                "clocks": [{"net": net, "level": int(high)} for net, high in some.clocks],
+                "set_reset": [{"net": net, "level": int(high)} for net, high in some.writes],
+            }
+            for some in inventory.stored
+        ],
         "outside_logic": [
             {
                 "subcircuit": some.subcircuit,

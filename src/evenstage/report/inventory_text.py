@@ -5,6 +5,7 @@ from __future__ import annotations
 from itertools import islice
 from typing import TYPE_CHECKING, Final
 
+from evenstage.circuit.storage.elements import FLIP_FLOP
 from evenstage.report.block_text import finished, notice_lines
 from evenstage.report.families import gathered
 from evenstage.report.paper import Paper
@@ -18,6 +19,7 @@ if TYPE_CHECKING:
 
 _ENTRIES_SHOWN: Final = 60
 _NAMES_SHOWN: Final = 8
+_NETS_SHOWN: Final = 4
 _SUPPLIES_SHOWN: Final = 6
 _FAMILY_CODE: Final = "not-understood"
 
@@ -47,6 +49,7 @@ def inventory_report(
     lines = [*paper.paragraph(f"{inventory.source}, {block}"), ""]
     lines += paper.paragraph(_answer(inventory))
     lines += section("Gates", _entry_lines(paper, inventory.entries))
+    lines += section("Storage and other loops", _stored_lines(paper, inventory))
     lines += section("Transistors outside all logic", _outside_lines(paper, inventory))
     lines += section("Not understood, timed as loads only", _unknown_lines(paper, inventory))
     lines += section("Supplies", _supply_lines(paper, inventory))
@@ -99,6 +102,42 @@ def _entry_lines(paper: Paper, entries: Sequence[Entry]) -> list[str]:
         left = sum(entry.count for entry in entries[most:])
         lines.append(f"  and {len(entries) - most} lines more, of {counted(left, 'gate')}")
     return lines
+
+
+def _stored_lines(paper: Paper, inventory: Inventory) -> list[str]:
+    """Return a table of storage elements, one line per subcircuit and kind."""
+    if not inventory.stored:
+        return []
+    rows, before = [], None
+    for some in inventory.stored:
+        place = (some.subcircuit or "top level") if some.subcircuit != before else ""
+        clocks = ", ".join(_clock(some.kind, name, high=high) for name, high in some.clocks)
+        writes = ", ".join(_level(name, high=high) for name, high in some.writes)
+        nets = listed(some.nets, _NETS_SHOWN)
+        data = listed(some.data, _NETS_SHOWN)
+        rows.append([place, some.kind, str(some.count), clocks, data, writes, nets])
+        before = some.subcircuit
+    columns = [
+        Column("subcircuit", kind="name"),
+        Column("kind"),
+        Column("number", align="right"),
+        Column("clock", kind="name"),
+        Column("data", kind="name"),
+        Column("set, reset", kind="name"),
+        Column("nets of the first", kind="name"),
+    ]
+    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
+    return table.lines(rows)
+
+
+def _clock(kind: str, name: str, *, high: bool) -> str:
+    if kind == FLIP_FLOP:
+        return f"{name} {'rising' if high else 'falling'}"
+    return _level(name, high=high)
+
+
+def _level(name: str, *, high: bool) -> str:
+    return f"{name} {'high' if high else 'low'}"
 
 
 def _outside_lines(paper: Paper, inventory: Inventory) -> list[str]:

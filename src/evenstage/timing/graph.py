@@ -13,10 +13,12 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
+from evenstage.circuit.circuit import STORED
 from evenstage.errors import Notice
 from evenstage.timing.endpoints import arrivals_from_outside, endpoints, no_path, required_times
 from evenstage.timing.ignores import Expansion, expand
 from evenstage.timing.loops import cut_loops
+from evenstage.timing.storage import Boundaries, boundaries, bounded
 
 if TYPE_CHECKING:
     from evenstage.brief import Brief
@@ -134,8 +136,11 @@ def timing_graph(
         Where a pattern of the brief fits nothing.
     """
     found = endpoints(circuit, start, end)
-    kept, notices = _usable_arcs(circuit, found)
-    expansion = _on_paths(expand(circuit, kept, brief, found.starts, found.ends))
+    limits = boundaries(circuit)
+    kept, notices = _usable_arcs(circuit, found, limits)
+    whole = expand(circuit, kept, brief, found.starts, found.ends)
+    stored = [net for net, why in circuit.ends.items() if why == STORED] if end is None else []
+    expansion = _on_paths(bounded(whole, limits, found.ends, np.array(stored, np.int32)))
     if not len(expansion.start) or not len(expansion.end):
         raise no_path(circuit, found, start=start, end=end)
     levels = _levels(len(expansion.net), expansion.source, expansion.target)
@@ -167,17 +172,29 @@ def timing_graph(
     )
 
 
-def _usable_arcs(circuit: Circuit, found: Endpoints) -> tuple[IntArray, list[Notice]]:
+def _usable_arcs(
+    circuit: Circuit, found: Endpoints, limits: Boundaries
+) -> tuple[IntArray, list[Notice]]:
     """Return the circuit arcs left after cutting loops and whatever drives a start."""
     arcs = circuit.arcs
     is_start = np.zeros(len(circuit.devices.net_names), bool)
     is_start[found.starts] = True
-    kept = np.flatnonzero(~is_start[arcs.output] & (circuit.driver_of_net[arcs.output] >= 0))
-    cut = cut_loops(arcs.input[kept], arcs.output[kept], found.starts, len(is_start))
+    usable = ~is_start[arcs.output] & (circuit.driver_of_net[arcs.output] >= 0) & ~limits.held
+    kept = np.flatnonzero(usable)
+    # Where storage ends paths no loop is closed.
+    running = np.flatnonzero(usable & ~limits.captured & ~limits.around)
+    cut = cut_loops(
+        2 * arcs.input[running] + arcs.input_rising[running],
+        2 * arcs.output[running] + arcs.rising[running],
+        (2 * found.starts[:, None] + np.arange(2)).ravel(),
+        2 * len(is_start),
+    )
     notices = []
     if cut.cut.any():
         names = circuit.devices.net_names
-        pairs = np.unique(np.stack([arcs.input[kept], arcs.output[kept]])[:, cut.cut], axis=1)
+        gone = running[cut.cut]
+        pairs = np.unique(np.stack([arcs.input[gone], arcs.output[gone]]), axis=1)
+        kept = np.setdiff1d(kept, gone)
         told = tuple(f"{names[a]} -> {names[b]}" for a, b in pairs.T.tolist())
         notices.append(
             Notice(
@@ -187,7 +204,7 @@ def _usable_arcs(circuit: Circuit, found: Endpoints) -> tuple[IntArray, list[Not
                 names=told,
             )
         )
-    return kept[~cut.cut].astype(np.int32), notices
+    return kept.astype(np.int32), notices
 
 
 def _on_paths(all_: Expansion) -> Expansion:

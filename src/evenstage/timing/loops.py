@@ -22,20 +22,21 @@ class Cut:
 
 
 def cut_loops(source: IntArray, target: IntArray, starts: IntArray, nets: int) -> Cut:
-    """Choose arcs between nets whose removal leaves no loop.
+    """Choose arcs between nodes whose removal leaves no loop.
 
-    Inside each strongly connected part a depth-first walk runs from the nets where signals enter
-    it, in order of their ids (from the smallest net where nothing enters); arcs that close a loop
+    Nodes are edges of nets: a loop that rising edges close only through falling ones is none.
+    Inside each strongly connected part a depth-first walk runs from the nodes where signals enter
+    it, in order of their ids (from the smallest where nothing enters); arcs that close a loop
     of the walk are cut. The order of the cards decides nothing but those ids.
 
     Parameters
     ----------
     source, target : IntArray, shape (arcs,)
-        Net ids.
+        Node ids.
     starts : IntArray
-        Nets where paths begin.
+        Nodes where paths begin.
     nets : int
-        Number of nets.
+        Number of nodes.
     """
     links = coo_array((np.ones(len(source), np.int8), (source, target)), shape=(nets, nets))
     _, part = connected_components(links, directed=True, connection="strong")

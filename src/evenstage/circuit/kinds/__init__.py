@@ -1,0 +1,1 @@
+"""Kinds of gates beside the static complementary ones."""

@@ -1,0 +1,60 @@
+"""Gates of two pull networks that leave their output alone for some inputs.
+
+Tri-state and clocked inverters, and the C-element, which moves when all its inputs agree and keeps
+its output while they differ (Muller and Bartky, A theory of asynchronous circuits, 1959, from
+memory).
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from evenstage.circuit.function import conduction
+from evenstage.circuit.gate import GateForm, Pulls, Unrecognised, all_arcs, possible_vectors
+from evenstage.circuit.kinds.paths import single_output
+from evenstage.circuit.network import HIGH, LOW, merge
+
+if TYPE_CHECKING:
+    from evenstage.circuit.context import Context
+    from evenstage.circuit.network import Network, Switch
+
+TRI_STATE = "tri-state gate"
+C_ELEMENT = "C-element"
+
+
+def floating(devices: tuple[Switch, ...], context: Context) -> GateForm | Unrecognised:
+    """Recognise a gate whose output floats for some inputs."""
+    network = merge(devices)
+    output = single_output(network, context)
+    if output is None:
+        return Unrecognised("not one output alone")
+    up, down = network.conducts(output, HIGH, "p"), network.conducts(output, LOW, "n")
+    possible = possible_vectors(network, context.complements)
+    anyhow_up, anyhow_down = network.conducts(output, HIGH), network.conducts(output, LOW)
+    if ((anyhow_up != up) | (anyhow_down != down))[possible].any():
+        return Unrecognised("an n switch pulls up or a p switch pulls down")
+    if (up & down)[possible].any():
+        return Unrecognised("pull-up and pull-down conduct together: not complementary")
+    if not (up & possible).any() or not (down & possible).any():
+        return Unrecognised("its output is only pulled one way")
+    arcs = all_arcs(network, output, Pulls(up, down, possible), context.complements)
+    if not arcs:
+        return Unrecognised("no input moves its output")
+    return GateForm(
+        drawn=devices,
+        network=network,
+        output=output,
+        pull_down=conduction(network, output, LOW, "n"),
+        arcs=arcs,
+        kind=C_ELEMENT if is_c_element(network, output) else TRI_STATE,
+        floats=True,
+    )
+
+
+def is_c_element(network: Network, output: int) -> bool:
+    """Tell whether an output rises when all of several inputs are 0 and falls when all are 1."""
+    if len(network.inputs) < 2 or HIGH not in network.at_node or LOW not in network.at_node:
+        return False
+    up, down = network.conducts(output, HIGH, "p"), network.conducts(output, LOW, "n")
+    none, every = ~network.vectors.any(axis=0), network.vectors.all(axis=0)
+    return bool((up == none).all() and (down == every).all())

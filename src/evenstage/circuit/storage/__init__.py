@@ -1,0 +1,1 @@
+"""Loops of nets that hold a value, and what they are."""

@@ -1,0 +1,259 @@
+"""The storage elements of a block: loops that hold, latches joined to flip-flops."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.circuit.storage.loops import Feedback
+from evenstage.circuit.storage.reading import (
+    C_ELEMENT,
+    CELL,
+    LATCH,
+    SENSE_AMPLIFIER,
+    SET_RESET,
+    read_loop,
+)
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
+
+    from evenstage.circuit.gate import GateForm
+    from evenstage.circuit.groups import AlikeGroups
+    from evenstage.circuit.network import BoolArray
+    from evenstage.circuit.storage.phases import Phases
+    from evenstage.circuit.storage.reading import Reading
+    from evenstage.netlist.devices import Devices, IntArray
+
+FLIP_FLOP = "flip-flop"
+CLOCK_GATE = "clock gate"
+TOO_LARGE = "loop too large to be read"
+
+STORING = frozenset({FLIP_FLOP, CLOCK_GATE, LATCH, SET_RESET, C_ELEMENT, CELL, SENSE_AMPLIFIER})
+"""Kinds that end and start paths."""
+
+
+@dataclass(frozen=True, slots=True)
+class Loop:
+    """One loop of nets.
+
+    Parameters
+    ----------
+    nets : tuple of int
+    clocks : tuple of (int, bool)
+        Net, and the level that lets data in.
+    data : tuple of int
+        Nets that are stored.
+    writes : tuple of (int, bool)
+        Nets that set or reset, with the level that does.
+    """
+
+    nets: tuple[int, ...]
+    clocks: tuple[tuple[int, bool], ...] = ()
+    data: tuple[int, ...] = ()
+    writes: tuple[tuple[int, bool], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Element:
+    """A storage element, or a loop that is none.
+
+    Parameters
+    ----------
+    kind : str
+    loops : tuple of Loop
+        Of a flip-flop two, first that which its data enter.
+    """
+
+    kind: str
+    loops: tuple[Loop, ...]
+
+    @property
+    def stores(self) -> bool:
+        """Whether it holds a value."""
+        return self.kind in STORING
+
+    @property
+    def clocks(self) -> tuple[tuple[int, bool], ...]:
+        """Net, and the level that shows the data; of a flip-flop the level after its edge."""
+        return self.loops[-1].clocks
+
+    @property
+    def data(self) -> tuple[int, ...]:
+        """Nets that are stored."""
+        return self.loops[0].data
+
+    @property
+    def writes(self) -> tuple[tuple[int, bool], ...]:
+        """Nets that set or reset, with the level that does."""
+        if len(self.loops) == 1:
+            return self.loops[0].writes
+        first, second = self.loops
+        clock = second.clocks[0][0]
+        others = tuple(one for one in first.clocks if one[0] != clock)
+        return tuple(dict.fromkeys((*first.writes, *others, *second.writes)))
+
+
+@dataclass(frozen=True)
+class Storage:
+    """The loops of a block.
+
+    Parameters
+    ----------
+    elements : tuple of Element
+        By their first nets.
+    phases : Phases
+        Which nets follow which through inverters.
+    """
+
+    elements: tuple[Element, ...]
+    phases: Phases
+
+    def loops(self) -> list[Loop]:
+        """Return the loops that store."""
+        return [loop for one in self.elements if one.stores for loop in one.loops]
+
+    def loop_of_net(self) -> IntArray:
+        """Return the number of the loop that each net is in, -1 for none, shape (nets,)."""
+        found = np.full(len(self.phases.root), -1, np.int32)
+        for number, loop in enumerate(self.loops()):
+            found[list(loop.nets)] = number
+        return found
+
+
+def find_storage(
+    devices: Devices,
+    gates: Sequence[tuple[GateForm, AlikeGroups]],
+    strange: Sequence[AlikeGroups],
+) -> Storage:
+    """Find the loops of a block and read them."""
+    feedback = Feedback(devices, gates, strange)
+    held = _held_by_keepers(gates, len(devices.net_names))
+    found = []
+    for loop in feedback.loops():
+        if len(loop) == 1 and held[loop[0]]:
+            continue
+        nets = tuple(loop.tolist())
+        drawn = feedback.members(loop)
+        reading = read_loop(drawn[0]) if drawn is not None else None
+        if drawn is None or reading is None:
+            found.append(Element(TOO_LARGE, (Loop(nets),)))
+        else:
+            found.append(_element(reading, nets, drawn[1]))
+    elements = _clock_gates(_flip_flops(found, devices.net_names), gates, feedback.phases.root)
+    return Storage(elements, feedback.phases)
+
+
+def _held_by_keepers(gates: Sequence[tuple[GateForm, AlikeGroups]], nets: int) -> BoolArray:
+    """Tell which nets are outputs whose value a keeper holds, and which store nothing by it."""
+    held = np.zeros(nets, bool)
+    for form, some in gates:
+        if form.weak and not form.floats:
+            held[some.nets[:, form.output]] = True
+    return held
+
+
+def _element(reading: Reading, nets: tuple[int, ...], signals: list[int]) -> Element:
+    loop = Loop(
+        nets,
+        clocks=tuple((signals[number], level) for number, level in reading.clocks),
+        data=tuple(signals[number] for number in reading.data),
+        writes=tuple((signals[number], level) for number, level in reading.writes),
+    )
+    return Element(reading.kind, (loop,))
+
+
+def _flip_flops(found: Sequence[Element], names: Sequence[str]) -> tuple[Element, ...]:
+    """Join two latches to a flip-flop where one stores the other while its clock holds that."""
+    second_of = _second_of(found, _places(found, names))
+    firsts = set(second_of.values())
+    result = [
+        replace(one, kind=FLIP_FLOP, loops=(*found[second_of[index]].loops, *one.loops))
+        if index in second_of
+        else one
+        for index, one in enumerate(found)
+        if index not in firsts
+    ]
+    return tuple(sorted(result, key=lambda one: min(min(loop.nets) for loop in one.loops)))
+
+
+def _places(found: Sequence[Element], names: Sequence[str]) -> list[str]:
+    """Return the path of the instance that holds the first net of each latch."""
+    return [
+        names[one.loops[0].nets[0]].rpartition(".")[0] if one.kind == LATCH else "" for one in found
+    ]
+
+
+def _second_of(found: Sequence[Element], places: Sequence[str]) -> dict[int, int]:
+    """Return for each latch that shows what another stored that other one.
+
+    In a chain of latches of both phases every second one does. Those of one instance belong
+    together; else a chain is paired from its beginning.
+    """
+    first_of = {
+        net: at for at, one in enumerate(found) if one.kind == LATCH for net in one.loops[0].nets
+    }
+    feeding: dict[int, list[int]] = {}
+    for index, one in enumerate(found):
+        if one.kind == LATCH and len(one.clocks) == 1:
+            clock, level = one.clocks[0]
+            others = {first_of[net] for net in one.data if net in first_of} - {index}
+            fits = [other for other in sorted(others) if (clock, not level) in found[other].clocks]
+            if fits:
+                feeding[index] = fits
+    depth = _depths(feeding)
+    pairs = [(index, other) for index, others in feeding.items() for other in others]
+    pairs.sort(key=lambda pair: (places[pair[0]] != places[pair[1]], depth[pair[0]], pair))
+    joined: dict[int, int] = {}
+    firsts: set[int] = set()
+    for index, other in pairs:
+        if not {index, other} & (joined.keys() | firsts):
+            joined[index] = other
+            firsts.add(other)
+    return joined
+
+
+def _depths(feeding: Mapping[int, Sequence[int]]) -> dict[int, int]:
+    """Return how far down its chain each latch stands; on a ring of latches 0."""
+    followers: dict[int, list[int]] = {}
+    for index, others in feeding.items():
+        for other in others:
+            followers.setdefault(other, []).append(index)
+    depth = dict.fromkeys(feeding, 0)
+    waiting = [(one, 0) for one in followers if one not in feeding]
+    while waiting:
+        one, at = waiting.pop()
+        for follower in followers.get(one, ()):
+            if depth[follower] == 0:
+                depth[follower] = at + 1
+                waiting.append((follower, at + 1))
+    return depth
+
+
+def _clock_gates(
+    found: Sequence[Element], gates: Sequence[tuple[GateForm, AlikeGroups]], root: IntArray
+) -> tuple[Element, ...]:
+    """Name the latches whose value and clock meet in one gate."""
+    latches = {
+        one.loops[0].nets[0]: one.clocks[0][0] for one in found if one.kind == LATCH and one.clocks
+    }
+    wanted = np.array(sorted(latches.items()), np.int64).reshape(-1, 2)
+    looped = np.zeros(len(root), bool)
+    looped[[net for one in found for loop in one.loops for net in loop.nets]] = True
+    met = set()
+    for form, some in gates:
+        if len(form.network.inputs) < 2 or not len(wanted):
+            continue
+        roots = root[some.nets[:, list(form.network.inputs)]]
+        for column in range(roots.shape[1]):
+            place = np.searchsorted(wanted[:, 0], roots[:, column]).clip(max=len(wanted) - 1)
+            is_latch = wanted[place, 0] == roots[:, column]
+            with_clock = (roots == wanted[place, 1][:, None]).any(axis=1)
+            outside = ~looped[some.nets[:, form.output]]
+            met.update(roots[is_latch & with_clock & outside, column].tolist())
+    return tuple(
+        replace(one, kind=CLOCK_GATE) if one.kind == LATCH and one.loops[0].nets[0] in met else one
+        for one in found
+    )

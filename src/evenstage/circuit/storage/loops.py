@@ -1,0 +1,212 @@
+"""Loops of nets in a block: which nets feed back on themselves through any group of transistors."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import connected_components
+
+from evenstage.circuit.function import Literal
+from evenstage.circuit.storage.phases import Phases, phases
+from evenstage.circuit.storage.reading import Member
+from evenstage.circuit.storage.switching import Wiring, influence
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator, Sequence
+
+    from evenstage.circuit.gate import GateForm
+    from evenstage.circuit.groups import AlikeGroups
+    from evenstage.circuit.network import BoolArray, Switch
+    from evenstage.netlist.devices import Devices, IntArray
+
+_NETS_MAX = 64
+"""A group with more nets is a bit line or an array, and is not looked into."""
+
+
+@dataclass(frozen=True)
+class _Drawing:
+    """Groups drawn alike, and how their nets are used in all of them."""
+
+    network: tuple[Switch, ...]
+    nets: IntArray
+    gates: tuple[int, ...]
+    ends: tuple[int, ...]
+
+
+class Feedback:
+    """The groups of a block as signals see them.
+
+    Parameters
+    ----------
+    devices : Devices
+    gates : sequence of (GateForm, AlikeGroups)
+        Recognised groups.
+    strange : sequence of AlikeGroups
+        The others.
+    """
+
+    def __init__(
+        self,
+        devices: Devices,
+        gates: Sequence[tuple[GateForm, AlikeGroups]],
+        strange: Sequence[AlikeGroups],
+    ) -> None:
+        nets = len(devices.net_names)
+        self._devices = devices
+        self.phases = _phases(gates, nets)
+        self._drawings = [
+            _drawing(some)
+            for some in (*(some for _, some in gates), *strange)
+            if some.nets.shape[1] <= _NETS_MAX
+        ]
+        self._drawing_of = np.full(nets, -1, np.int32)
+        self._row_of = np.zeros(nets, np.int32)
+        self._local_of = np.zeros(nets, np.int32)
+        for number, some in enumerate(self._drawings):
+            for local in some.ends:
+                own = some.nets[:, local]
+                self._drawing_of[own] = number
+                self._row_of[own] = np.arange(len(own))
+                self._local_of[own] = local
+        self._free = self._free_ends(nets)
+        self._plain = {
+            id(some.nets): form.output for form, some in gates if form.kind == "static gate"
+        }
+
+    def _free_ends(self, nets: int) -> BoolArray:
+        """Tell which channel ends the outside drives.
+
+        They are ports that close no switch and that no supply reaches but through nets that do.
+        """
+        devices = self._devices
+        is_port, closes = np.zeros(nets, bool), np.zeros(nets, bool)
+        is_port[list(devices.ports)] = True
+        closes[devices.gate] = True
+        pulled = np.zeros(nets, bool)
+        for some in self._drawings:
+            stops = {end for end in some.ends if (closes | is_port)[some.nets[:, end]].any()}
+            for end in _reached(some.network, stops):
+                pulled[some.nets[:, end]] = True
+        return is_port & ~pulled & ~closes
+
+    def loops(self) -> list[IntArray]:
+        """Return the nets of each loop, ascending; loops in the order of their first nets."""
+        nets = len(self._devices.net_names)
+        pairs = [pair for some in self._drawings for pair in self._edges(some)]
+        if not pairs:
+            return []
+        source = np.concatenate([pair[0] for pair in pairs])
+        target = np.concatenate([pair[1] for pair in pairs])
+        links = coo_array((np.ones(len(source), np.int8), (source, target)), shape=(nets, nets))
+        _, part = connected_components(links, directed=True, connection="strong")
+        looped = np.zeros(nets, bool)
+        looped[source[source == target]] = True
+        looped |= (np.bincount(part, minlength=nets) > 1)[part]
+        members = np.flatnonzero(looped)
+        order = members[np.argsort(part[members], kind="stable")].astype(np.int32)
+        cuts = np.flatnonzero(np.diff(part[order])) + 1
+        found = np.split(order, cuts) if len(order) else []
+        return sorted(found, key=lambda loop: int(loop[0]))
+
+    def _edges(self, some: _Drawing) -> Iterator[tuple[IntArray, IntArray]]:
+        """Yield the nets that signals come from and the channel ends they move."""
+        output = self._plain.get(id(some.nets))
+        if output is not None:
+            for gate in some.gates:
+                yield self.phases.root[some.nets[:, gate]], some.nets[:, output]
+            return
+        for rows, wiring, signals in self._wirings(some):
+            for end, numbers in influence(wiring).items():
+                for number in numbers:
+                    yield signals[:, number], some.nets[rows, end]
+
+    def _wirings(self, some: _Drawing) -> Iterator[tuple[IntArray, Wiring, IntArray]]:
+        """Yield rows of a drawing whose signals are tied alike; the net of each signal."""
+        if not some.gates:
+            return
+        roots = self.phases.root[some.nets[:, some.gates]]
+        inverted = self.phases.inverted[some.nets[:, some.gates]]
+        free = self._free[some.nets[:, some.ends]]
+        # The number of each input's signal: the first input with the same root.
+        first = (roots[:, :, None] == roots[:, None, :]).argmax(axis=2)
+        table = np.concatenate([first, inverted, free], axis=1)
+        kinds, inverse = np.unique(table, axis=0, return_inverse=True)
+        inputs = len(some.gates)
+        for index, kind in enumerate(kinds.tolist()):
+            rows = np.flatnonzero(inverse == index)
+            ranks = {place: rank for rank, place in enumerate(sorted(set(kind[:inputs])))}
+            signal = [(-1, False)] * some.nets.shape[1]
+            for gate, place, phase in zip(some.gates, kind, kind[inputs:], strict=False):
+                signal[gate] = (ranks[place], bool(phase))
+            ends = [
+                end for end, is_free in zip(some.ends, kind[2 * inputs :], strict=True) if is_free
+            ]
+            wiring = Wiring(
+                some.network,
+                tuple(signal),
+                tuple((end, len(ranks) + rank) for rank, end in enumerate(ends)),
+            )
+            nets = [roots[rows][:, sorted(set(kind[:inputs]))], some.nets[rows][:, ends]]
+            yield rows, wiring, np.concatenate(nets, axis=1)
+
+    def members(self, loop: IntArray) -> tuple[tuple[Member, ...], list[int]] | None:
+        """Return the loop as it is read, and the net of each of its signals."""
+        signals = {int(net): number for number, net in enumerate(loop)}
+        members = []
+        for net in loop.tolist():
+            if self._drawing_of[net] < 0:
+                return None
+            some = self._drawings[int(self._drawing_of[net])]
+            here = some.nets[int(self._row_of[net])]
+            signal = [(-1, False)] * len(here)
+            for gate in some.gates:
+                root = int(self.phases.root[here[gate]])
+                number = signals.setdefault(root, len(signals))
+                signal[gate] = (number, bool(self.phases.inverted[here[gate]]))
+            free = tuple(
+                (end, signals.setdefault(int(here[end]), len(signals)))
+                for end in some.ends
+                if self._free[here[end]]
+            )
+            members.append(
+                Member(Wiring(some.network, tuple(signal), free), int(self._local_of[net]))
+            )
+        return tuple(members), list(signals)
+
+
+def _phases(gates: Sequence[tuple[GateForm, AlikeGroups]], nets: int) -> Phases:
+    pairs = [
+        (some.nets[:, form.output], some.nets[:, form.pull_down.net])
+        for form, some in gates
+        if isinstance(form.pull_down, Literal) and form.kind == "static gate"
+    ]
+    none = np.zeros(0, np.int32)
+    return phases(
+        np.concatenate([none, *(output for output, _ in pairs)]),
+        np.concatenate([none, *(source for _, source in pairs)]),
+        nets,
+    )
+
+
+def _reached(network: tuple[Switch, ...], stops: set[int]) -> set[int]:
+    """Return the nets that supplies reach without passing through some of them."""
+    reached: set[int] = set()
+    growing = True
+    while growing:
+        growing = False
+        for switch in network:
+            for here, there in ((switch.a, switch.b), (switch.b, switch.a)):
+                opens = here < 0 or (here in reached and here not in stops)
+                if opens and there >= 0 and there not in reached:
+                    reached.add(there)
+                    growing = True
+    return reached
+
+
+def _drawing(some: AlikeGroups) -> _Drawing:
+    gates = dict.fromkeys(s.gate for s in some.network if s.gate >= 0)
+    ends = dict.fromkeys(net for s in some.network for net in (s.a, s.b) if net >= 0)
+    return _Drawing(some.network, some.nets, tuple(gates), tuple(ends))

@@ -1,0 +1,151 @@
+"""Gates beside the static ones: what they are called, compute, and how hard they drive."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import pytest
+
+from evenstage.timing.analyse import analyse
+from support.blocks import block, circuit_of, inverter, nand, network, transistor
+
+if TYPE_CHECKING:
+    from evenstage.circuit.circuit import Circuit
+
+FOOTED = network("n", "d", [("x", "a", "m", 2), ("m", "ck", "vss", 2)])
+PRECHARGE = transistor("p", "x", "ck", "vdd", 1, "pre")
+BUFFER = inverter("i", "x", "y", 1, 4)
+
+
+def circuit(*cards: str, ports: str) -> Circuit:
+    return circuit_of(block("\n".join(cards), ports))
+
+
+def kinds(found: Circuit) -> dict[str, tuple[str, str]]:
+    """Return kind and function of each gate by its output."""
+    names = found.devices.net_names
+    return {
+        names[net]: (found.gate_kind(gate), found.gate_function(gate))
+        for gate, net in enumerate(found.gate_output.tolist())
+    }
+
+
+def codes(found: Circuit) -> set[str]:
+    return {notice.code for notice in found.notices}
+
+
+class TestRatioed:
+    def test_a_p_load_that_always_conducts(self) -> None:
+        cards = nand("g", ["a", "b"], "k", 2, 2).split("\n")[:2]
+        load = transistor("p", "k", "vss", "vdd", 1, "l")
+        assert kinds(circuit(*cards, load, inverter("i", "k", "y", 1, 2), ports="a b y")) == {
+            "k": ("ratioed gate", "!(a & b)"),
+            "y": ("static gate", "!k"),
+        }
+
+    def test_the_mirror_image(self) -> None:
+        cards = network("p", "d", [("y", "a", "vdd", 4), ("y", "b", "vdd", 4)])
+        load = transistor("n", "y", "vdd", "vss", 0.3, "l")
+        assert kinds(circuit(cards, load, ports="a b y")) == {"y": ("ratioed gate", "!(a & b)")}
+
+    def test_the_load_that_is_too_strong_is_named(self) -> None:
+        down = transistor("n", "y", "a", "vss", 1, "d")
+        fine, poor = (
+            circuit(down, transistor("p", "y", "vss", "vdd", width, "l"), ports="a y")
+            for width in (0.6, 0.8)
+        )
+        assert "strong-load" not in codes(fine)
+        (notice,) = (notice for notice in poor.notices if notice.code == "strong-load")
+        assert "is 2.5 times that of the pull" in notice.message
+        assert notice.names == ("md",)
+
+    def test_a_load_that_wins_leaves_no_delay_without_bound(self) -> None:
+        found = circuit(
+            transistor("n", "y", "a", "vss", 1, "d"),
+            transistor("p", "y", "vss", "vdd", 9, "l"),
+            ports="a y",
+        )
+        assert analyse(found).paths[0].delay < 1e-9
+
+
+class TestDynamic:
+    def test_with_a_foot(self) -> None:
+        found = circuit(FOOTED, PRECHARGE, BUFFER, ports="a ck y")
+        assert kinds(found)["x"] == ("dynamic gate, footed", "!(a & ck)")
+
+    def test_without_a_foot(self) -> None:
+        found = circuit(
+            network("n", "d", [("x", "a", "vss", 1), ("x", "b", "vss", 1)]),
+            PRECHARGE,
+            BUFFER,
+            ports="a b ck y",
+        )
+        assert kinds(found)["x"] == ("dynamic gate, unfooted", "!(a | b)")
+
+    def test_only_evaluation_counts(self) -> None:
+        """The output of the buffer rises, by the data or by the clock, and never falls."""
+        found = analyse(circuit(FOOTED, PRECHARGE, BUFFER, ports="a ck y"), count=9)
+        assert {(path.start, path.start_edge, path.edge) for path in found.paths} == {
+            ("a", "rise", "rise"),
+            ("ck", "rise", "rise"),
+        }
+
+    def test_an_output_stage_driven_apart_is_not_taken_for_one(self) -> None:
+        found = circuit(
+            transistor("p", "pad", "pg", "vdd", 8, "u"),
+            transistor("n", "pad", "ng", "vss", 4, "d"),
+            ports="pg ng pad",
+        )
+        assert "conduct together" in found.not_understood[0].reason
+
+
+class TestKept:
+    KEEPER = transistor("p", "x", "y", "vdd", 0.4, "k")
+
+    def test_a_keeper_loads_and_is_no_arc(self) -> None:
+        bare, kept = (
+            circuit(FOOTED, PRECHARGE, BUFFER, *more, ports="a ck y")
+            for more in ([], [self.KEEPER])
+        )
+        assert kinds(kept)["x"] == ("dynamic gate, footed, kept", "!(a & ck)")
+        assert kept.storage.elements == ()
+        names = kept.devices.net_names
+        pairs = {
+            (names[a], names[b]) for a, b in zip(kept.arcs.input, kept.arcs.output, strict=True)
+        }
+        assert pairs == {("a", "x"), ("ck", "x"), ("x", "y")}
+        x, y = kept.net_id("x"), kept.net_id("y")
+        assert y is not None
+        assert kept.net_cap[y] == pytest.approx(0.4e-15)
+        # Its drain of 0.4 um beside 3 um of the gate's own, through the 1 kohm of the stack.
+        own = [
+            found.arcs.own_today[(found.arcs.output == x) & (found.arcs.input == found.net_id("a"))]
+            for found in (bare, kept)
+        ]
+        assert own[1].max() - own[0].max() == pytest.approx(0.4e-12)
+
+    def test_a_strong_keeper_is_named(self) -> None:
+        """It has 2 kohm/um against 1 kohm of the stack: two micron are as strong."""
+        weak, strong = (
+            circuit(
+                FOOTED, PRECHARGE, BUFFER, transistor("p", "x", "y", "vdd", w, "k"), ports="a ck y"
+            )
+            for w in (0.9, 1.6)
+        )
+        assert "strong-keeper" not in codes(weak)
+        (notice,) = (notice for notice in strong.notices if notice.code == "strong-keeper")
+        assert "1.2 times" in notice.message
+
+    def test_a_c_element_with_its_keeper(self) -> None:
+        found = circuit(
+            network("n", "d", [("x", "a", "m", 4), ("m", "b", "vss", 4), ("x", "y", "vss", 0.2)]),
+            network("p", "u", [("x", "a", "k", 8), ("k", "b", "vdd", 8), ("x", "y", "vdd", 0.4)]),
+            BUFFER,
+            ports="a b y",
+        )
+        assert kinds(found)["x"][0] == "C-element, kept"
+        assert [element.kind for element in found.storage.elements] == ["C-element"]
+        found_paths = analyse(found, count=9).paths
+        assert {(path.start, path.edge) for path in found_paths} == {
+            (start, edge) for start in "ab" for edge in ("rise", "fall")
+        }
