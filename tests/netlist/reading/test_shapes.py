@@ -81,3 +81,10 @@ def test_a_slash_that_begins_a_word_is_no_sign() -> None:
     cases = ["x1 a b / inv\n", "x1 a b /inv\n", "x1 / inv\n", "x1 /inv\n", "x1 (a) /inv\n"]
     tally = compare([*cases, *cases])
     assert (tally.accepted, tally.differences) == (2 * len(cases), ())
+
+
+@pytest.mark.parametrize("remark", ["$ b)", "; b)", "//x b)"])
+def test_a_remark_may_begin_inside_the_parentheses_of_an_expression(remark: str) -> None:
+    cases = [f"c1 a b (a {remark}\n", f"m1 a b c d nch w=f(1, {remark}\n+ 2) l=1u\n"]
+    cases += [f"m1 a b c d nch w=f(g( 1 ),{remark[:-1]}) l=1u\n"]
+    assert compare([*cases, *cases]).differences == ()

@@ -29,6 +29,8 @@ BETWEEN_WORDS: Final = r"[\x00-\x09\x0b-\x20,]++"
 #: Ends a card.
 END: Final = BETWEEN + r"(?:\n[\x00-\x20,]*+|\Z)"
 _NO_JOINT: Final = rf"(?!,[^\x00-\x20=,()'\"{{}}]*+{BETWEEN_WORDS}=)"
+#: What lets a FORMULA hold blanks.
+_SPACED: Final = "|[\x00-\x09\x0b\x0c\x0e-\x20]" + r"(?![$;]|\/\/)"
 _HAS_NUMBER = re.compile(r"[0-9.]")
 _QUANTIFIER = re.compile(r"(?<=[\])])(?:[*+]|\?)(?![+?])")
 
@@ -38,10 +40,14 @@ def possessive(name: str) -> str:
     """Return a terminal's expression with possessive quantifiers.
 
     That changes nothing: no terminal of an element card repeats a piece that could also begin what
-    comes after it. Where the joint of a continuation line may have stood between a name behind a
-    comma and its sign (``a=1,b =2``), the grammar decides.
+    comes after it. The grammar decides where the joint of a continuation line may have stood in a
+    place it would not allow: between a name behind a comma and its sign (``a=1,b =2``), and inside
+    the parentheses of an expression.
     """
     expression = _QUANTIFIER.sub(lambda match: match[0] + "+", terminal(name))
+    if name == "FORMULA":
+        assert _SPACED in expression
+        return expression.replace(_SPACED, "")
     return expression + _NO_JOINT if name == "VALUE" else expression
 
 
