@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 from evenstage.errors import ElaborationError, NetlistError
 from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.parameters import Scope
-from evenstage.netlist.reading.cards import plain_text
+from evenstage.netlist.reading.fields import plain_text
 from evenstage.netlist.values import parse_value
 
 if TYPE_CHECKING:

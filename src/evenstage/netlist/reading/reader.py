@@ -5,7 +5,7 @@ from __future__ import annotations
 import re
 from typing import TYPE_CHECKING, Final
 
-from evenstage.errors import NetlistError, Notice
+from evenstage.errors import Notice
 from evenstage.netlist.expression import FUNCTIONS
 from evenstage.netlist.functions import Function, read_function
 from evenstage.netlist.grammar import ENCODING, terminal
@@ -14,13 +14,14 @@ from evenstage.netlist.parameters import Scope
 from evenstage.netlist.reading.blocks import Blocks
 from evenstage.netlist.reading.brackets import plain_bracket
 from evenstage.netlist.reading.branches import Branches
-from evenstage.netlist.reading.canonical import BOM
-from evenstage.netlist.reading.cards import CardTable, parameter, plain_text
+from evenstage.netlist.reading.cards import CardTable
 from evenstage.netlist.reading.complaints import foreign_card
 from evenstage.netlist.reading.conditions import holds
+from evenstage.netlist.reading.fields import parameter, plain_text
 from evenstage.netlist.reading.includes import Includes, section_range
 from evenstage.netlist.reading.lessons import learn
 from evenstage.netlist.reading.models import ModelCards, WrittenModel, numbers_among
+from evenstage.netlist.reading.opening import after_title, check_text
 from evenstage.netlist.reading.scopes import Scopes
 from evenstage.netlist.reading.statement import Statement, parse_statement
 from evenstage.progress import tell
@@ -36,11 +37,7 @@ if TYPE_CHECKING:
 #: A sequence of terminals is learned when it is met for this time: an expression takes as long to
 #: compile as some fifty cards take to parse.
 _LEARNED_AT: Final = 3
-#: Bytes of the first line that are looked at to tell a title from a card.
-_LOOK: Final = 1 << 14
 _BLANKS: Final = bytes(range(33)) + b","
-#: A first line that is not blank.
-_FIRST_LINE = re.compile(rb"[\x00-\x09\x0b\x0c\x0e-\x20]*+[^\r\n]++")
 _SKIP = re.compile(rb"[\x00-\x20,]*+")
 _ELEMENTS: Final = frozenset({"transistor", "call", "passive", "source", "element"})
 
@@ -96,26 +93,11 @@ class Reader:
         """
         self._includes.add(source, name or source.path)
         check_text(source)
-        start = self._after_title(source)
+        start, notice = after_title(source)
+        self._notices += [] if notice is None else [notice]
         unit = Unit(source)
         with self._includes.entered(source, None, None):
             self._read_range(unit, start, len(source.data))
-
-    def _after_title(self, source: SourceText) -> int:
-        """Return where the first line after the title begins; 0 if there is no title."""
-        line = _FIRST_LINE.match(source.data)
-        title = re.compile(terminal("TITLE").encode(ENCODING), re.IGNORECASE)
-        if line is None or title.match(source.data, 0, min(line.end(), _LOOK)) is None:
-            return 0
-        start = len(BOM) if source.data.startswith(BOM) else 0
-        statement = _element_or_none(source, start, line.end())
-        if statement is None:
-            return line.end()
-        if statement.rule == "call" and _calls_defined(statement, source):
-            return 0
-        message = "the first line is taken as the title, though it could be a card"
-        self._notices.append(Notice("title", message, Span(source, start, line.end()).place))
-        return line.end()
 
     # The loop over the cards of a file.
 
@@ -378,43 +360,9 @@ _DOT_CARDS: Final = {
 }
 
 
-def check_text(source: SourceText) -> None:
-    """Refuse what is no text.
-
-    Raises
-    ------
-    NetlistError
-        If the bytes hold a NUL.
-    """
-    if source.data.startswith((b"\xff\xfe", b"\xfe\xff")):
-        message = f"'{source.label}' is in UTF-16; save it as UTF-8"
-        raise NetlistError(message, code="not-text")
-    if b"\0" in source.data:
-        raise NetlistError(f"'{source.label}' is not a text file", code="not-text")
-
-
 def _promote(shapes: list[ShapeColumns], rank: int) -> None:
     """Move a shape one place forward, so that the most used are tried first."""
     shapes[rank - 1], shapes[rank] = shapes[rank], shapes[rank - 1]
-
-
-def _element_or_none(source: SourceText, start: int, end: int) -> Statement | None:
-    """Return a line as an element card of a kind with a fixed form, if it could be one."""
-    if end - start > _LOOK:
-        return None
-    lead = len(source.data[start:end]) - len(source.data[start:end].lstrip())
-    try:
-        statement = parse_statement(source, start + lead, end)
-    except NetlistError:
-        return None
-    return statement if statement.rule in _ELEMENTS - {"element"} else None
-
-
-def _calls_defined(statement: Statement, source: SourceText) -> bool:
-    """Tell whether the subcircuit a line would call is defined in the same file."""
-    words = [mark for mark in statement.marks if mark.terminal == "WORD"]
-    name = re.escape(source.data[words[-1].start : words[-1].end])
-    return re.search(rb"(?im)^[ \t]*\.subckt[ \t]+" + name + rb"(?![^\s])", source.data) is not None
 
 
 def _block_end(unit: Unit, position: int) -> int | None:
