@@ -4,8 +4,9 @@ Run by hand::
 
     PYTHONPATH=src python tests/benchmarks/fuzz_netlists.py --minutes 10
 
-Every case must end within a time (of the processor) and a memory as a block of devices or as an error of the program's
-own family. Cases that end otherwise are printed with the seed that makes them again.
+Every case must end within a time of the processor and within a memory, as a block of devices or as
+an error of the program's own family. Cases that end otherwise are printed with the seed that makes
+them again.
 """
 
 from __future__ import annotations
