@@ -328,3 +328,36 @@ def test_the_optimum_of_a_nand_chain_beats_any_neighbour() -> None:
         for nudge in (0.95, 1.05):
             tried = np.where(circuit.gate_of_device == gate, best * nudge, best)
             assert analyse(circuit.resized(tried)).paths[0].charged_delay >= reached * (1 - 1e-5)
+
+
+class TestWhatIsTold:
+    CALLS = "x1 x0 x1 {leaf}\nx2 x1 x2 {leaf}\nx3 x2 x3 {leaf}\ncl x3 vss 90f"
+
+    def codes(self, sizing: Sizing) -> list[str]:
+        return [notice.code for notice in sizing.notices]
+
+    def test_a_width_that_hangs_on_another_may_miss_the_grid_and_is_told(self) -> None:
+        leaf = LEAF_WITH_WIDTHS.replace("wn=1u wp=2u", "w=1u").replace("w=wn", "w=w")
+        text = block(self.CALLS.format(leaf="invp"), "x0 x3 vdd vss")
+        grid = plain_process(shape=1.6, slope=0.2, width_step=1e-8)
+        odd = resized(leaf.replace("w=wp", "w='2.003*w'") + text, process=grid)
+        (told,) = [notice for notice in odd.notices if notice.code == "off-grid"]
+        assert "is off the grid of the process: the width hangs on 'w'" in told.message
+        assert told.names == ("mp",)
+        even = resized(leaf.replace("w=wp", "w='2*w'") + text, process=grid)
+        assert even.changes
+        assert "off-grid" not in self.codes(even)
+
+    def test_a_leaf_whose_callers_all_leave_it_stays_and_is_told(self) -> None:
+        calls = "x1 x0 x1 inv\nx2 x1 x2 inv\ncl x2 vss 90f"
+        first = InputBrief(nets=pats("x0"), capacitance_max=30e-15)
+        sizing = resized(
+            LEAF + block(calls, "x0 x2 vdd vss"), Wishes(reclaim=True), Brief(inputs=(first,))
+        )
+        assert {change.instance for change in sizing.changes} == {"x1", "x2"}
+        (told,) = [notice for notice in sizing.notices if notice.code == "leaf-uncalled"]
+        assert told.names == ("inv",)
+        assert "stays in the file: 'inv'" in told.message
+
+    def test_a_process_without_transitions_limits_none(self) -> None:
+        assert resized(chain([1, 1, 1], 60), process=plain_process()).changes

@@ -195,3 +195,27 @@ class TestLoops:
         found = analysis(block(CHAIN + "\n" + ring, "x0 x4 vdd vss"))
         notice = next(notice for notice in found.notices if notice.code == "not-on-a-path")
         assert len(notice.names) == 3
+
+
+class TestUndrivenNets:
+    """A net inside the block that nothing drives starts paths, and that is told."""
+
+    TWO = f"{nand('g', ('a', 'q'), 'y', 1, 1)}\n"
+
+    def told(self, text: str, brief: Brief | None = None) -> list[tuple[str, ...]]:
+        return [n.names for n in analysis(text, brief).notices if n.code == "undriven-net"]
+
+    def test_are_told(self) -> None:
+        assert self.told(block(self.TWO, "a y vdd vss")) == [("q",)]
+
+    def test_ports_are_none(self) -> None:
+        assert self.told(block(self.TWO, "a q y vdd vss")) == []
+
+    def test_the_brief_can_say_that_they_are_meant(self) -> None:
+        brief = Brief(inputs=(InputBrief(nets=pats("q")),))
+        assert self.told(block(self.TWO, "a y vdd vss"), brief) == []
+
+    def test_at_the_top_level_only_those_of_instances(self) -> None:
+        text = f".global vdd vss\n.subckt two a y\n{self.TWO}.ends\nx1 a y two\n"
+        assert self.told(text) == [("x1.q",)]
+        assert self.told(f".global vdd vss\n{self.TWO}") == []

@@ -10,6 +10,7 @@ import numpy as np
 from evenstage.brief import Brief
 from evenstage.errors import Notice
 from evenstage.netlist.rewriting.handles import width_handles
+from evenstage.netlist.rewriting.sized_block import Slot
 from evenstage.netlist.rewriting.widths import WidthPlan
 from evenstage.sizing.changes import Writing
 from evenstage.sizing.copies import shared_sizes
@@ -24,8 +25,11 @@ from evenstage.sizing.variables import variables
 from evenstage.sizing.verdict import refuse_broken, worth_writing
 from evenstage.sizing.wishes import Original, Wishes
 from evenstage.timing.analyse import report
+from evenstage.units import engineering
 
 if TYPE_CHECKING:
+    from collections.abc import Iterator
+
     from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.sizing.partition import Partition
     from evenstage.timing.results import Analysis
@@ -151,7 +155,13 @@ class _Job:
             changes=writing.changes(plan),
             holds=stage_holds(engine, answer, written.timing),
             already_done=False,
-            notices=(*free.notices, *rounding.handles.notices(), *self._refused(plan)),
+            notices=(
+                *free.notices,
+                *rounding.handles.notices(),
+                *self._refused(plan),
+                *_left(plan),
+                *_off_grid(plan, rounding.handles),
+            ),
             kept=kept_for_later(circuit, engine.limits, self.original, engine.cost_today),
             edits=plan.edits,
         )
@@ -163,3 +173,36 @@ class _Job:
             Notice("width-not-written", reason, card.span.place, (card.name,))
             for card, reason in ((netlist.card(wish.card), reason) for wish, reason in plan.refused)
         ]
+
+
+def _left(plan: WidthPlan) -> Iterator[Notice]:
+    """Give a notice if leaves stay in the text that nobody calls any more."""
+    if plan.left:
+        names = ", ".join(f"'{name}'" for name in plan.left)
+        message = f"all callers call sized copies now; the leaf as drawn stays in the file: {names}"
+        yield Notice("leaf-uncalled", message, names=plan.left)
+
+
+def _off_grid(plan: WidthPlan, handles: WidthHandles) -> Iterator[Notice]:
+    """Give a notice if written widths miss the grid that the process sets.
+
+    Widths that hang on one number keep their ratio, and only one of them can be put on the grid.
+    """
+    missed = []
+    for written in plan.written:
+        handle = handles[Slot(written.card, written.caller)]
+        on_grid = handle.drawable(written.new)
+        if handle.transistor.width_step is not None and not np.isclose(
+            on_grid, written.new, rtol=1e-6, atol=0
+        ):
+            missed.append(written)
+    if missed:
+        netlist = handles.block.netlist
+        names = tuple(dict.fromkeys(netlist.card_name(written.card) for written in missed))
+        message = (
+            f"{engineering(missed[0].new, 'm')} is off the grid of the process: the width hangs on "
+            f"'{missed[0].parameter}', which sets others too and keeps their ratio "
+            f"({', '.join(names[:8])})"
+        )
+        place = f"{missed[0].file}:{missed[0].line}"
+        yield Notice("off-grid", message, place, names)

@@ -236,7 +236,8 @@ class Rounding:
         limits = self.engine.limits
         if limits.strict:
             return limits.transition
-        return max(limits.transition, self.engine.today.worst_transition)
+        # A process without shapes has no transitions, so none is too slow.
+        return max(limits.transition, self.engine.today.worst_transition) or np.inf
 
     def _over_ceiling(self, timing: Timing) -> IntArray:
         """Return the nets whose input capacitance exceeds its ceiling."""

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.errors import NoPathError
+from evenstage.errors import NoPathError, Notice
 from evenstage.pattern import Pattern, select
 
 if TYPE_CHECKING:
@@ -74,6 +74,49 @@ def block_inputs(circuit: Circuit) -> IntArray:
     has_pin[circuit.pins.net] = True
     undriven = circuit.driver_of_net < 0
     return np.flatnonzero(has_pin & undriven & ~circuit.supplies.is_supply).astype(np.int32)
+
+
+def undriven(circuit: Circuit, brief: Brief | None, found: Endpoints) -> tuple[Notice, ...]:
+    """Return a notice if nets inside the block start paths that nothing drives.
+
+    Such a net is no port and stands below the block's own level, or the block has ports; no
+    channel, source or entry of the brief says where its signal comes from.
+    """
+    devices = circuit.devices
+    explained = np.zeros(len(devices.net_names), bool)
+    explained[[*devices.ports, *devices.global_nets]] = True
+    explained[devices.drain] = explained[devices.source] = True
+    for plus, minus, _ in devices.source_nets:
+        explained[[plus, minus]] = True
+    nets = found.inputs[~explained[found.inputs]].tolist()
+    names = [devices.net_names[net] for net in nets]
+    if not devices.ports:
+        names = [n for n, inside in zip(names, _inside(circuit, nets), strict=True) if inside]
+    given = [pattern for some in (brief.inputs if brief else ()) for pattern in some.nets]
+    names = [name for name in names if not any(pattern.fits(name) for pattern in given)]
+    if not names:
+        return ()
+    what = "one net inside the block" if len(names) == 1 else f"{len(names)} nets inside the block"
+    message = (
+        f"{what} that nothing drives, taken as inputs: {', '.join(names[:8])}"
+        f"{' and others' if len(names) > 8 else ''}; [[input]] in the brief says that this is meant"
+    )
+    return (Notice("undriven-net", message, names=tuple(names)),)
+
+
+def _inside(circuit: Circuit, nets: list[int]) -> list[bool]:
+    """Tell which nets belong to an instance, by the path before their names."""
+    devices = circuit.devices
+    gate_of_net = np.full(len(devices.net_names), -1)
+    gate_of_net[circuit.pins.net] = circuit.pins.gate
+    found = []
+    for net in nets:
+        name = devices.net_names[net]
+        instance = int(circuit.gate_instance[int(gate_of_net[net])])
+        while instance > 0 and not name.startswith(f"{devices.instance_path(instance)}."):
+            instance = int(devices.instance_parent[instance])
+        found.append(instance > 0)
+    return found
 
 
 def _asked(circuit: Circuit, wanted: str, among: IntArray, what: str) -> IntArray:

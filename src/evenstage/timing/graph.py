@@ -15,7 +15,13 @@ import numpy as np
 
 from evenstage.circuit.circuit import STORED
 from evenstage.errors import Notice
-from evenstage.timing.endpoints import arrivals_from_outside, endpoints, no_path, required_times
+from evenstage.timing.endpoints import (
+    arrivals_from_outside,
+    endpoints,
+    no_path,
+    required_times,
+    undriven,
+)
 from evenstage.timing.ignores import Expansion, expand
 from evenstage.timing.loops import cut_loops
 from evenstage.timing.storage import Boundaries, boundaries, bounded
@@ -168,7 +174,7 @@ def timing_graph(
         end=number[expansion.end],
         end_required=required_times(circuit, brief, expansion.net[expansion.end]),
         whole=found.whole,
-        notices=tuple(notices),
+        notices=(*notices, *undriven(circuit, brief, found)),
     )
 
 

@@ -273,6 +273,11 @@ class _Sizes:
         card = self._netlist.card(int(self._drawn.card[row]))
         name = self._transistor(row).width_parameter
         message = f"'{card.name}' has no width; expected {name}=value on its card"
+        if name.lower() != "nfin" and card.parameter("nfin") is not None:
+            message += (
+                "; it counts fins: in the process file, give its type width_parameter = 'nfin', "
+                "width_is = 'fins' and the width of one fin as width_unit"
+            )
         return ElaborationError(message, code="missing-width", span=card.span)
 
     def _bad_width(self, row: int) -> ElaborationError:

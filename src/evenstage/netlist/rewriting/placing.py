@@ -189,6 +189,13 @@ class Placing:
         body = self.block.netlist.subcircuits[member].body
         return body is not None and self.block.is_editable(body)
 
+    @property
+    def left(self) -> tuple[str, ...]:
+        """The name of the leaf as first drawn if it had callers and they all go to copies."""
+        root = self.family.root
+        calling = [caller for caller, _ in self._place.items() if self._member(caller) == root]
+        return (self._name(root),) if calling and root not in self._place.values() else ()
+
     def edits(self, elsewhere: Iterable[Respelling]) -> list[Edit]:
         """Return what is added and taken out, and who is said to call what."""
         netlist = self.block.netlist

@@ -42,8 +42,8 @@ def settle_defaults(block: SizedBlock, entries: Mapping[Key, Entry]) -> dict[Key
 
 def settle(
     block: SizedBlock, entries: Mapping[Key, Entry], defaults: Mapping[Key, Respelling]
-) -> list[Edit]:
-    """Return the edits that write everything entered.
+) -> tuple[list[Edit], list[str]]:
+    """Return the edits that write everything entered, and the leaves nobody calls any more.
 
     Parameters
     ----------
@@ -70,7 +70,8 @@ def settle(
     gone = [edit.span for edit in structure if not edit.text]
     kept = [r for r in (*everywhere, *inside) if not any(_is_within(r.span, g) for g in gone)]
     # At one place a copy comes before the comment of the card that follows it.
-    return [*structure, *edits_of(kept)]
+    left = [name for placing in placings for name in placing.left]
+    return [*structure, *edits_of(kept)], left
 
 
 def _all_agree(block: SizedBlock, scope: str, wished: Mapping[Key, Respelling]) -> bool:

@@ -84,11 +84,14 @@ class WidthPlan:
         In the order of the wishes.
     refused : tuple of (WidthWish, str)
         What stays as it is, and why.
+    left : tuple of str
+        Leaves that stay in the text though all their callers call copies now.
     """
 
     edits: tuple[Edit, ...]
     written: tuple[WrittenWidth, ...]
     refused: tuple[tuple[WidthWish, str], ...]
+    left: tuple[str, ...] = ()
 
 
 def plan_widths(handles: WidthHandles, wishes: Iterable[WidthWish]) -> WidthPlan:
@@ -121,10 +124,12 @@ def plan_widths(handles: WidthHandles, wishes: Iterable[WidthWish]) -> WidthPlan
         else:
             keys.append((wish, entered))
     defaults = settle_defaults(block, ledger.entries)
+    edits, left = settle(block, ledger.entries, defaults)
     return WidthPlan(
-        edits=tuple(settle(block, ledger.entries, defaults)),
+        edits=tuple(edits),
         written=tuple(_written(wish, ledger.entries[k].value, defaults.get(k)) for wish, k in keys),
         refused=tuple(refused),
+        left=tuple(left),
     )
 
 
