@@ -200,7 +200,7 @@ class TestLoops:
 class TestUndrivenNets:
     """A net inside the block that nothing drives starts paths, and that is told."""
 
-    TWO = f"{nand('g', ('a', 'q'), 'y', 1, 1)}\n"
+    TWO = f"{nand('g', ['a', 'q'], 'y', 1, 1)}\n"
 
     def told(self, text: str, brief: Brief | None = None) -> list[tuple[str, ...]]:
         return [n.names for n in analysis(text, brief).notices if n.code == "undriven-net"]
