@@ -566,7 +566,7 @@ class TestDevices:
     def test_sizes_that_cannot_be(self, size: str, code: str, read_as: str) -> None:
         """A size no transistor has is refused with how it was read and what sets the unit."""
         text = refusal(f"m1 d g s b nch {size}\n")
-        assert f"must be between 0.2 nm and 0.3 m, got {read_as}; width_unit in" in text
+        assert f"must be between 0.2 nm and 1 km, got {read_as}; width_unit in" in text
         assert text.endswith(f"({code})")
 
     def test_a_unit_that_makes_no_sense(self) -> None:

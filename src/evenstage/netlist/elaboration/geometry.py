@@ -34,8 +34,8 @@ if TYPE_CHECKING:
 _NOT_METRES: Final = 2e-3
 #: A median length, or width, from here on is not in microns but in nanometres.
 _NOT_MICRONS: Final = {"l": 8.0, "w": 80.0}
-#: No width or length of a transistor lies beyond (an atom; a wafer).
-_THINKABLE: Final = (2e-10, 0.3)
+#: No width or length of a transistor lies beyond (an atom; what textbooks scale to).
+_THINKABLE: Final = (2e-10, 1000.0)
 _MICRON: Final = 1e-6
 _NANOMETRE: Final = 1e-9
 _SPELT: Final = {
@@ -293,7 +293,7 @@ class _Sizes:
         parameter = self._netlist.card(number).parameter(name)
         shown = "a default" if parameter is None else f"'{parameter.text}'"
         message = (
-            f"a {noun} must be between 0.2 nm and 0.3 m, got {shown}, which is read as "
+            f"a {noun} must be between 0.2 nm and 1 km, got {shown}, which is read as "
             f"{metres[row]:.3g} m; width_unit in the process file says what a number without a "
             "suffix is worth"
         )
