@@ -13,11 +13,9 @@ from numpy.testing import assert_allclose
 from evenstage.brief import Brief, InputBrief, OutputBrief
 from evenstage.pattern import Pattern
 from evenstage.sizing.hessian import Hessian
-from evenstage.sizing.lagrangian import Point, Question, Setup, Weights
+from evenstage.sizing.lagrangian import Point, Weights
 from evenstage.sizing.model import Limits
-from evenstage.sizing.neighbours import Neighbours
-from evenstage.sizing.reduced import Reduced
-from evenstage.sizing.sweeps import sweeps
+from evenstage.sizing.setup import Question, Setup
 from support.blocks import plain_process
 from support.models import model_of
 from support.problems import random_problem
@@ -51,14 +49,8 @@ def real_problem(block: RandomBlock) -> Problem:
 def point_of(problem: Problem, question: Question) -> Point:
     """Return the point at sizes 1."""
     sizes = np.ones(len(problem.lower))
-    reduced = Reduced.of(problem, sizes)
-    setup = Setup(
-        reduced=reduced,
-        sweeps=sweeps(reduced.graph),
-        neighbours=Neighbours(reduced),
-        question=question,
-    )
-    return Point(setup, WEIGHTS, reduced.log_sizes(sizes))
+    setup = Setup.of(problem, sizes).asking(question)
+    return Point(setup, WEIGHTS, setup.reduced.log_sizes(sizes))
 
 
 @pytest.mark.parametrize("question", QUESTIONS, ids=["fastest", "cheapest", "budget"])

@@ -13,7 +13,6 @@ from numpy.testing import assert_allclose
 from evenstage.sizing.compiled import Compiled
 from evenstage.sizing.levelled import Levelled
 from evenstage.sizing.softmax import Graph
-from evenstage.sizing.sweeps import sweeps
 
 if TYPE_CHECKING:
     from evenstage.sizing.problem import FloatArray
@@ -95,13 +94,3 @@ def test_flow_is_a_unit_and_conserved(way: type[Levelled | Compiled]) -> None:
     out = np.bincount(graph.source, soft.flow, graph.nodes)
     assert_allclose(into[1:-1], out[1:-1], rtol=1e-12, atol=1e-15)
     assert_allclose([out[0], into[-1]], 1.0, rtol=1e-12, atol=0)
-
-
-def test_large_graphs_are_swept_by_compiled_loops() -> None:
-    assert isinstance(sweeps(random_graph(1)), Levelled)
-    assert isinstance(sweeps(random_graph(1, inner=3000)), Compiled)
-
-
-def test_without_numba_numpy_does_it_all(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr("evenstage.sizing.sweeps.find_spec", lambda _: None)
-    assert isinstance(sweeps(random_graph(1, inner=3000)), Levelled)

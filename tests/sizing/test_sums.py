@@ -51,17 +51,17 @@ def test_derivatives_are_those_of_differences(seed: int) -> None:
     assert_allclose(at.gradient(u), terms.gradient(y, weight), rtol=1e-10, atol=1e-10)
     change = (ahead.gradient(u) - behind.gradient(u)) / (2 * STEP)
     curvature = Curvature(at, u)
-    assert_allclose(curvature.product(v, moved, None), change, rtol=1e-5, atol=1e-5)
-    du = at.weights(1.0 + weight)
-    both = curvature.product(v, moved, du)
-    assert_allclose(both, change + at.gradient(du), rtol=1e-5, atol=1e-5)
+    assert_allclose(curvature.product(v, moved), change, rtol=1e-5, atol=1e-5)
+    both = curvature.product(v, moved, 1.0 + weight)
+    more = at.gradient(at.weights(1.0 + weight))
+    assert_allclose(both, change + more, rtol=1e-5, atol=1e-5)
 
 
 def test_diagonal_is_that_of_products() -> None:
     sums = Sums.of(anything(4), 12, 5)
     at = sums.at(np.linspace(-1.0, 1.0, 5))
     curvature = Curvature(at, at.weights(np.arange(12.0)))
-    units = [curvature.product(e, at.moved(e), None)[k] for k, e in enumerate(np.eye(5))]
+    units = [curvature.product(e, at.moved(e))[k] for k, e in enumerate(np.eye(5))]
     assert_allclose(curvature.diagonal, units, rtol=1e-12, atol=0)
 
 

@@ -26,8 +26,9 @@ from evenstage.sizing.tangent import best_bound
 if TYPE_CHECKING:
     from collections.abc import Callable
 
-    from evenstage.sizing.lagrangian import Point, Setup
+    from evenstage.sizing.lagrangian import Point
     from evenstage.sizing.problem import FloatArray
+    from evenstage.sizing.setup import Setup
     from evenstage.sizing.tangent import Bound
 
 #: Part by which it falls at first, and the range this is adapted in.
@@ -42,10 +43,10 @@ _TRIED: Final = (0.5, 0.9)
 _LONGEST: Final = 1.5
 #: Share of the softness that the barriers of limits and of the goal may cost each.
 _BARRIER: Final = 0.5
-#: First part of a slide, secant steps along it, and what part of the last miss they aim inside.
-_SLIDE, _SECANTS, _INSIDE = 0.05, 5, 1e-2
-#: How much of the grace is given in turn until sizes are inside.
-_GRACES: Final = (1.0, 1.5, 2.0)
+#: Secant steps along it to a deadline, what part of the last miss they aim inside, and how far.
+_SECANTS, _INSIDE, _FARTHEST = 4, 1e-2, 2.0
+#: Parts of the way to the fastest sizes tried in turn to get inside a deadline.
+_TOWARDS: Final = (0.003, 0.01, 0.03, 0.1, 0.3, 1.0)
 #: Factor of the deadline's price within which it counts as settled, so that T may fall.
 _SETTLED: Final = 2.0
 #: Damping to begin with.
@@ -66,11 +67,15 @@ class Best:
         Theirs.
     proof : Bound, optional
         The highest lower bound.
+    fast : FloatArray, shape (n,), optional
+        Log sizes of the least worst delay met, and that delay.
     """
 
     y: FloatArray | None = None
     objective: float = np.inf
     proof: Bound | None = None
+    fast: FloatArray | None = None
+    least: float = np.inf
 
     @property
     def bound(self) -> float:
@@ -85,13 +90,15 @@ class Best:
         return max(self.objective - self.bound, 0.0) / max(abs(self.objective), 1e-12)
 
     def offer(self, point: Point) -> None:
-        """Keep a point if it keeps the constraints and is better."""
+        """Keep a point if it keeps the constraints and is better, or if it is faster."""
+        if point.longest < self.least and (point.limit_slack > 0.0).all():
+            self.fast, self.least = point.y, point.longest
         if point.keeps and point.objective < self.objective:
             self.y, self.objective = point.y, point.objective
 
-    def prove(self, point: Point) -> None:
-        """Keep the bound of a point if it is higher."""
-        found = best_bound(point)
+    def prove(self, point: Point, tolerance: float) -> None:
+        """Keep the bound of a point if it is higher; `tolerance` is the relative gap wanted."""
+        found = best_bound(point, tolerance * abs(point.objective))
         if found.value > self.bound:
             self.proof = found
 
@@ -105,6 +112,8 @@ class Walk:
     setup : Setup
     best : Best
         What is known already.
+    tolerance : float
+        Relative gap wanted.
     most : int
         Most sweeps.
     steps, work : int
@@ -113,6 +122,7 @@ class Walk:
 
     setup: Setup
     best: Best
+    tolerance: float
     most: int
     steps: int = 0
     work: int = 0
@@ -140,9 +150,9 @@ class Walk:
             point, before = state.point, price
             price = point.prices.goal
             self.best.offer(point)
-            self.best.prove(point)
+            self.best.prove(point, self.tolerance)
             tangent, work = self._tangent(state)
-            work += self._try_along(state, tangent)
+            work += self._try_along(point, tangent)
             self.steps += state.steps
             self.work += state.work + work + 6
             exhausted = self.work >= self.most or point.weights.temperature < _LEAST
@@ -160,38 +170,30 @@ class Walk:
         tangent, work = direction(state, hessian.cooling(), damped=False)
         return np.clip(tangent, -_LONGEST, _LONGEST), work
 
-    def _try_along(self, state: State, tangent: FloatArray) -> int:
-        """Offer sizes along the tangent; for a deadline slide them to it. Return the work."""
-        point, r = state.point, self.setup.reduced
+    def _try_along(self, point: Point, tangent: FloatArray) -> int:
+        """Offer sizes along the tangent, up to where they miss a deadline; return the work."""
+        r, deadline = self.setup.reduced, self.setup.question.deadline
+        parts, excess = [0.0], [point.longest - (deadline or 0.0)]
         for part in _TRIED:
             there = point.at(np.clip(point.y + part * tangent, r.lower, r.upper))
             self.best.offer(there)
-        if self.setup.question.deadline is None:
-            return len(_TRIED)
-        slide, work = direction(state, -point.bill, damped=False)
-        return work + self._slide(there, np.clip(slide, -_LONGEST, _LONGEST))
-
-    def _slide(self, there: Point, slide: FloatArray) -> int:
-        """Offer sizes along a direction, where their worst delay is the deadline; return the work.
-
-        A secant needs few steps: along the direction the delay is all but linear.
-        """
-        deadline, r = self.setup.question.deadline, self.setup.reduced
-        assert deadline is not None
-        parts, excess = [0.0], [there.longest - deadline]
-        part = _SLIDE * (1.0 if excess[0] < 0.0 else -1.0)
-        for _ in range(_SECANTS):
-            moved = there.at(np.clip(there.y + part * slide, r.lower, r.upper))
-            self.best.offer(moved)
             parts.append(part)
-            excess.append(moved.longest - deadline)
-            if excess[-1] == excess[-2]:
-                break
+            excess.append(there.longest - (deadline or 0.0))
+        if deadline is None:
+            return len(_TRIED)
+        for trial in range(_SECANTS):
+            rise = excess[-1] - excess[-2]
+            if rise == 0.0 or parts[-1] == parts[-2]:
+                return len(_TRIED) + trial
             # A little inside, so that the last step does not miss by rounding.
-            ratio = (parts[-1] - parts[-2]) / (excess[-1] - excess[-2])
             aim = -_INSIDE * abs(excess[-1])
-            part = float(np.clip(part + (aim - excess[-1]) * ratio, -1.0, 1.0))
-        return _SECANTS
+            part = parts[-1] + (aim - excess[-1]) * (parts[-1] - parts[-2]) / rise
+            part = min(max(part, 0.0), _FARTHEST)
+            there = point.at(np.clip(point.y + part * tangent, r.lower, r.upper))
+            self.best.offer(there)
+            parts.append(part)
+            excess.append(there.longest - deadline)
+        return len(_TRIED) + _SECANTS
 
     def _cooler(self, state: State, tangent: FloatArray, falls: float, *, settled: bool) -> State:
         """Return the first state at the next temperature; outside where there is none inside."""
@@ -200,13 +202,25 @@ class Walk:
         if not settled:
             weights = replace(point.weights, goal=falls * point.weights.goal)
         y = np.clip(point.y + (1.0 - falls) * tangent, r.lower, r.upper)
-        for grace in _GRACES:
-            some = replace(weights, grace=grace * weights.grace)
-            stays, ahead = point.at(point.y, some), point.at(y, some)
-            found = ahead if ahead.value < stays.value else stays
-            if found.inside:
-                break
+        stays, ahead = point.at(point.y, weights), point.at(y, weights)
+        found = ahead if ahead.value < stays.value else stays
+        if not found.inside:
+            found = self._brought_inside(found)
         return State(point=found, prices=found.prices, damping=state.damping)
+
+    def _brought_inside(self, point: Point) -> Point:
+        """Return a point on the way to the fastest known, inside all constraints if there is one.
+
+        All constraints are convex: if the far end is inside, some way towards it is enough.
+        """
+        fast = self.best.fast
+        if fast is None:
+            return point
+        for part in _TOWARDS:
+            found = point.at((1.0 - part) * point.y + part * fast)
+            if found.inside:
+                return found
+        return found
 
 
 def _next_weights(point: Point, falls: float) -> Weights:
@@ -217,9 +231,8 @@ def _next_weights(point: Point, falls: float) -> Weights:
     weights = balanced(point, temperature, delay * spread, falls * point.weights.cost)
     if point.question.deadline is None:
         return weights
-    return replace(
-        weights, grace=spread, goal=max(weights.goal, _FASTEST_FALL * point.weights.goal)
-    )
+    grace = falls * (point.soft.worst - point.longest)
+    return replace(weights, grace=grace, goal=max(weights.goal, _FASTEST_FALL * point.weights.goal))
 
 
 def balanced(point: Point, temperature: float, softness: float, cost: float) -> Weights:

@@ -30,13 +30,11 @@ from evenstage.sizing.infeasible import (
     DelayOutOfReachError,
     LimitOutOfReachError,
 )
-from evenstage.sizing.lagrangian import Point, Question, Setup, Weights
-from evenstage.sizing.neighbours import Neighbours
+from evenstage.sizing.lagrangian import Point, Weights
 from evenstage.sizing.newton import State, minimised
 from evenstage.sizing.problem import arrivals, worst_delay
-from evenstage.sizing.reduced import Reduced
+from evenstage.sizing.setup import Question, Setup
 from evenstage.sizing.solution import Solution, relative_gap
-from evenstage.sizing.sweeps import sweeps
 
 if TYPE_CHECKING:
     from evenstage.sizing.goals import Goal
@@ -112,7 +110,7 @@ def inside_limits(problem: Problem, start: FloatArray) -> FloatArray:
         return start
     limits = limits_as_paths(problem)
     job = _Job(limits, Fastest(), start, _REASON, _MOST)
-    walk = Walk(setup=job.setup(Question()), best=Best(), most=_MOST)
+    walk = Walk(setup=job.base, best=Best(), tolerance=_REASON, most=_MOST)
     unit = job.reduced.time
     fits = (1.0 - _PLENTY) / unit
     walk.run(job.first(walk.setup), lambda _, best: best.objective < fits or best.gap < _REASON)
@@ -138,20 +136,10 @@ class _Job:
     most: int
 
     def __post_init__(self) -> None:
-        self.reduced = Reduced.of(self.problem, self.start)
-        self.sweeps = sweeps(self.reduced.graph)
-        self.neighbours = Neighbours(self.reduced)
+        self.base = Setup.of(self.problem, self.start)
+        self.reduced = self.base.reduced
         self.y = self.reduced.log_sizes(self.start)
         self.steps = 0
-
-    def setup(self, question: Question) -> Setup:
-        """Return a setup for a question about this problem."""
-        return Setup(
-            reduced=self.reduced,
-            sweeps=self.sweeps,
-            neighbours=self.neighbours,
-            question=question,
-        )
 
     def first(self, setup: Setup, cost: float = 0.0) -> Point:
         """Return the first point of a walk that is not about cost."""
@@ -167,9 +155,9 @@ class _Job:
             case Budget(spend):
                 budget = (spend / self.reduced.money) * (1.0 - _ROUNDING)
                 self.y = self._inside_budget(budget, spend)
-                return self._answer(self.first(self.setup(Question(budget=budget))))
+                return self._answer(self.first(self.base.asking(Question(budget=budget))))
             case _:
-                return self._answer(self.first(self.setup(Question())))
+                return self._answer(self.first(self.base))
 
     def _answer(self, point: Point) -> Solution:
         """Walk to the end and return what was found."""
@@ -188,17 +176,17 @@ class _Job:
         return self._solution(walk.best)
 
     def _walk(self, setup: Setup) -> Walk:
-        return Walk(setup=setup, best=Best(), most=self.most)
+        return Walk(setup=setup, best=Best(), tolerance=self.tolerance, most=self.most)
 
     def _cheapest(self, delay: float) -> Solution:
         r = self.reduced
         deadline = (delay - r.origin) / r.time
         deadline -= _ROUNDING * abs(deadline)
-        walk = self._walk(self.setup(Question(deadline=deadline)))
+        walk = self._walk(self.base.asking(Question(deadline=deadline)))
         plain = Point(walk.setup, Weights(temperature=_FIRST, goal=0.0, limit=0.0), self.y)
         walk.best.offer(plain)
         cost = _COST_COUNTS * plain.longest / plain.cost
-        point = self.first(self.setup(Question()), cost)
+        point = self.first(self.base, cost)
         while walk.work < self.most and walk.best.gap > self.tolerance:
             inside = self._inside_deadline(point, deadline, delay)
             last = walk.run(_about_cost(inside, walk.setup), self._closed)
@@ -214,11 +202,12 @@ class _Job:
         best, inside = Best(), None
         for trial in range(_PRICES):
             point = minimised(State(point=point, prices=point.prices, damping=0.1), _STEPS).point
-            best.prove(point)
+            best.prove(point, self.tolerance)
+            best.offer(point)
             if best.bound > deadline:
                 fastest = replace(self, goal=Fastest()).run()
                 raise DelayOutOfReachError(delay, fastest.delay)
-            keeps = point.soft.worst - point.spread < deadline
+            keeps = point.longest < deadline
             inside = point if keeps else inside
             if inside is not None and (not keeps or trial >= _DEARER):
                 return inside
@@ -232,7 +221,7 @@ class _Job:
 
     def _inside_budget(self, budget: float, spend: float) -> FloatArray:
         """Return log sizes that keep a budget with some slack."""
-        setup = self.setup(Question())
+        setup = self.base
         none = Weights(temperature=_FIRST, goal=0.0, limit=0.0, cost=0.0)
 
         def inside(y: FloatArray, least: float) -> bool:
@@ -252,11 +241,11 @@ class _Job:
     def _cheapest_at_all(self, budget: float, spend: float) -> FloatArray:
         """Return log sizes inside the limits that cost less than a budget."""
         longest = Point(
-            self.setup(Question()),
+            self.base,
             Weights(temperature=_FIRST, goal=0.0, limit=0.0, cost=0.0),
             self.reduced.upper,
         ).longest
-        setup = self.setup(Question(deadline=100.0 * max(longest, 1.0)))
+        setup = self.base.asking(Question(deadline=100.0 * max(longest, 1.0)))
         walk = self._walk(setup)
         point = Point(
             setup, Weights(temperature=_FIRST, goal=_FIRST, limit=_FIRST, cost=0.0), self.y
@@ -322,12 +311,13 @@ def _about_cost(point: Point, setup: Setup) -> Point:
     """Return a minimum of delay and priced cost as one of cost with a deadline."""
     weights, epsilon = point.weights, point.weights.cost
     assert setup.question.deadline is not None
-    slack = setup.question.deadline + point.spread - point.soft.worst
+    grace = point.soft.worst - point.longest
+    slack = setup.question.deadline - point.longest
     same = Weights(
         temperature=weights.temperature,
         goal=slack / epsilon,
         limit=weights.limit / epsilon,
-        grace=point.spread,
+        grace=grace,
     )
     return Point(setup, same, point.y)
 

@@ -48,10 +48,10 @@ class Hessian:
         rows = np.empty(len(moved.rows))
         rows[:arcs] = self.delay * point.soft.product(moved.rows[:arcs])
         rows[arcs:] = self.stiff * moved.rows[arcs:]
-        result = self.curvature.product(v, moved, point.sums.weights(rows))
+        result = self.curvature.product(v, moved, rows)
         if self.cost:
             result += self.cost * point.bill * v
-        if self.point.question.constrained:
+        if self.goal_stiff:
             normal = self.normal
             result += (self.goal_stiff * float(normal @ v)) * normal
         return result

@@ -25,51 +25,9 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 if TYPE_CHECKING:
-    from evenstage.sizing.neighbours import Neighbours
     from evenstage.sizing.problem import FloatArray
-    from evenstage.sizing.reduced import Reduced
-    from evenstage.sizing.softmax import Soft, Sweeps
-
-
-@dataclass(frozen=True, kw_only=True)
-class Question:
-    """A goal in the units of a reduced problem; both None: the fastest.
-
-    Parameters
-    ----------
-    deadline : float, optional
-        Least cost for this worst delay.
-    budget : float, optional
-        Least worst delay for this cost.
-    """
-
-    deadline: float | None = None
-    budget: float | None = None
-
-    @property
-    def constrained(self) -> bool:
-        """Whether the goal has a constraint of its own."""
-        return self.deadline is not None or self.budget is not None
-
-
-@dataclass(frozen=True, kw_only=True)
-class Setup:
-    """A question about a reduced problem, with what works it out.
-
-    Parameters
-    ----------
-    reduced : Reduced
-    sweeps : Sweeps
-        Of its graph.
-    neighbours : Neighbours
-        Of its arcs.
-    question : Question
-    """
-
-    reduced: Reduced
-    sweeps: Sweeps
-    neighbours: Neighbours
-    question: Question
+    from evenstage.sizing.setup import Setup
+    from evenstage.sizing.softmax import Soft
 
 
 @dataclass(frozen=True, kw_only=True)

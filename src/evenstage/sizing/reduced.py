@@ -8,7 +8,7 @@ Limits follow the arcs as further sums.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
@@ -75,8 +75,18 @@ class Reduced:
     money: float
 
     @classmethod
-    def of(cls, problem: Problem, sizes: FloatArray) -> Reduced:
-        """Reduce a problem; sizes that cannot move are taken from `sizes`, inside the box."""
+    def of(cls, problem: Problem, sizes: FloatArray, *, by_level: bool) -> Reduced:
+        """Reduce a problem.
+
+        Parameters
+        ----------
+        problem : Problem
+        sizes : FloatArray, shape (n_sizes,)
+            Inside the box; what cannot move is where it is here.
+        by_level : bool
+            Whether nodes are ordered by level, or stay in the order they have: there neighbours
+            usually stand close together, which loops over nodes gain from.
+        """
         q = problem
         moving = q.lower < q.upper
         free = np.flatnonzero(moving)
@@ -88,7 +98,7 @@ class Reduced:
         origin = float(q.start_arrival[starts].min())
         time = float((arrival[live]).max()) - origin or 1.0
         money = q.cost(sizes) or 1.0
-        graph, order = _graph(q, np.flatnonzero(live), arcs, starts, ends)
+        graph, order = _graph(q, np.flatnonzero(live), arcs, starts, ends, by_level=by_level)
         code = np.concatenate([arcs, -1 - starts, len(q.arc_source) + ends])
         limit = np.flatnonzero(_most(q) > 1.0 - _NEVER)
         row = np.full(len(q.arc_source), -1, np.int64)
@@ -110,7 +120,7 @@ class Reduced:
             held=held,
             lower=np.log(q.lower[free]),
             upper=np.log(q.upper[free]),
-            sums=Sums(**{**vars(sums), "constant": sums.constant + constant}),
+            sums=replace(sums, constant=sums.constant + constant),
             graph=graph,
             arc=code[order],
             limit=limit,
@@ -157,9 +167,11 @@ def _most(q: Problem) -> FloatArray:
     return totals(terms.row, value, q.limits)
 
 
-def _graph(q: Problem, live: Index, arcs: Index, starts: Index, ends: Index) -> tuple[Graph, Index]:
-    """Return the graph between source and sink, nodes by level, and the order of its arcs."""
-    depth = q.levels.depth[live]
+def _graph(
+    q: Problem, live: Index, arcs: Index, starts: Index, ends: Index, *, by_level: bool
+) -> tuple[Graph, Index]:
+    """Return the graph between source and sink and the order of its arcs."""
+    depth = q.levels.depth[live] if by_level else np.zeros(len(live), np.intp)
     by_depth = np.argsort(depth, kind="stable")
     number = np.zeros(q.nodes, np.int64)
     number[live[by_depth]] = 1 + np.arange(len(live))

@@ -51,7 +51,8 @@ class Graph:
     source, target : IntArray, shape (arcs,)
         source < target.
     level : IntArray, shape (levels + 1,)
-        Where each level of nodes begins, the source's included: no arc stays inside a level.
+        Where each level of nodes begins, the source's included, if nodes are ordered by level: no
+        arc stays inside a level.
     """
 
     first: IntArray

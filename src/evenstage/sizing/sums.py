@@ -184,6 +184,39 @@ class SumsAt:
         result += self.x * u[g + n :] - self.inverse * u[g : g + n]
         return result
 
+    def bent(
+        self,
+        alone: FloatArray,
+        weight: FloatArray,
+        v: FloatArray,
+        moved: Moved,
+        rows: FloatArray | None,
+    ) -> FloatArray:
+        """Return what :meth:`Curvature.product` is, shape (n,).
+
+        Parameters
+        ----------
+        alone : FloatArray, shape (n,)
+            Second derivatives in each size with all forms' drivers held.
+        weight : FloatArray, shape (forms,)
+            Weight of each form.
+        v, moved : FloatArray and Moved
+            A direction, and how the sums move along it.
+        rows : FloatArray, shape (rows,), optional
+            Row weights.
+        """
+        sums, g, n = self.sums, self.sums.forms, self.sums.sizes
+        pull, push = -weight * moved.behind, weight * moved.form
+        result: FloatArray = alone * v
+        if rows is not None:
+            u = self.weights(rows)
+            pull += u[:g]
+            push += u[:g] * self.form
+            result += self.x * u[g + n :] - self.inverse * u[g : g + n]
+        result += gathered(self.parts, pull)
+        result -= totals(sums.driver, push, n)
+        return result
+
     @cached_property
     def falling(self) -> FloatArray:
         """What of each sum falls with the row's driver: minus its derivative, shape (rows,)."""
@@ -236,19 +269,9 @@ class Curvature:
         self._alone += at.x * u[g + n :] + at.inverse * u[g : g + n]
         self.diagonal: FloatArray = self._alone + totals(sums.driver, self.form * at.form, n)
 
-    def product(self, v: FloatArray, moved: Moved, du: FloatArray | None) -> FloatArray:
-        """Return the Hessian times v plus the gradient at weights du, shape (n,)."""
-        at, sums = self.at, self.at.sums
-        g, n = sums.forms, sums.sizes
-        pull, push = -self.form * moved.behind, self.form * moved.form
-        result: FloatArray = self._alone * v
-        if du is not None:
-            pull += du[:g]
-            push += du[:g] * at.form
-            result += at.x * du[g + n :] - at.inverse * du[g : g + n]
-        result += gathered(at.parts, pull)
-        result -= totals(sums.driver, push, n)
-        return result
+    def product(self, v: FloatArray, moved: Moved, rows: FloatArray | None = None) -> FloatArray:
+        """Return the Hessian times v, shape (n,), plus the gradient for row weights, if given."""
+        return self.at.bent(self._alone, self.form, v, moved, rows)
 
 
 class _Forms:

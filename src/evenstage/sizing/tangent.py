@@ -24,6 +24,9 @@ if TYPE_CHECKING:
 
 #: Newton steps, conjugate gradient iterations of each, and what they change sizes by at most.
 _STEPS, _ITERATIONS, _LONGEST = 3, 15, 1.0
+#: Steps are made where softness costs less than so many times what is wanted, and until the
+#: tangent costs less than this part of it.
+_WORTH, _LITTLE = 20.0, 0.05
 #: Relative curvature below which a size counts as flat.
 _FLAT = 1e-14
 
@@ -46,24 +49,34 @@ class Bound:
     y: FloatArray
 
 
-def best_bound(point: Point) -> Bound:
-    """Return the best bound found from a point's flow and prices."""
+def best_bound(point: Point, wanted: float) -> Bound:
+    """Return the best bound found from a point's flow and prices.
+
+    Parameters
+    ----------
+    point : Point
+    wanted : float
+        Distance of point and bound, in the objective's unit, that would be worth steps for.
+    """
     reduced, question, prices = point.reduced, point.question, point.prices
     delay, cost = (prices.goal, 1.0) if question.deadline is not None else (1.0, prices.goal)
     rows = point.rows(delay, prices.limit)
     u, still = point.sums.weights(rows), float(prices.limit.sum())
     still += delay * (question.deadline or 0.0) + cost * (question.budget or 0.0)
     y, best = point.y, Bound(value=-np.inf, point=point, y=point.y)
-    for step in range(_STEPS + 1):
+    steps = _STEPS if point.softness < _WORTH * wanted else 0
+    for step in range(steps + 1):
         at = reduced.sums.at(y)
         bill = cost * reduced.spend * at.x
         value = float(rows @ at.values) + float(bill.sum()) + cost * reduced.spend_held - still
         gradient = at.gradient(u) + bill
         low, high = gradient * (y - reduced.lower), gradient * (y - reduced.upper)
-        value -= float(np.maximum(low, high).sum())
-        if value > best.value:
-            best = Bound(value=value, point=point, y=y)
-        if step < _STEPS:
+        lost = float(np.maximum(low, high).sum())
+        if value - lost > best.value:
+            best = Bound(value=value - lost, point=point, y=y)
+        if lost < _LITTLE * wanted:
+            break
+        if step < steps:
             y = _lower(reduced, at, u, gradient, bill, y)
     return best
 
@@ -83,7 +96,7 @@ def _lower(
     scale = np.where(held, 0.0, 1.0 / np.maximum(diagonal, _FLAT * diagonal.max(initial=_FLAT)))
 
     def product(v: FloatArray) -> FloatArray:
-        result = curvature.product(v, at.moved(v), None) + bill * v
+        result = curvature.product(v, at.moved(v)) + bill * v
         return np.where(held, 0.0, result)
 
     step, _ = conjugate_gradients(
