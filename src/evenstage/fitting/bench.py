@@ -1,0 +1,135 @@
+"""A bench: one block in which every measured cell stands once, its pins on nets of their own.
+
+The block is built as text and goes the way of every netlist, through reading, elaboration and
+recognition, so that a cell on the bench is what it is in a design.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.brief import Brief
+from evenstage.circuit.recognise import recognise
+from evenstage.circuit.supplies import find_supplies
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read_bytes
+from evenstage.pattern import Pattern
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable
+    from pathlib import Path
+
+    from evenstage.circuit.circuit import Circuit
+    from evenstage.netlist.netlist import Netlist
+    from evenstage.process.process import Process
+
+_HIGH, _LOW, _TOP = "bench_high", "bench_low", "bench_of_cells"
+
+
+@dataclass(frozen=True)
+class Cell:
+    """A cell with the part each of its ports plays.
+
+    Parameters
+    ----------
+    name : str
+        As the netlist writes it.
+    ports : tuple of str
+        In order.
+    high, low : frozenset of str
+        Supply ports.
+    """
+
+    name: str
+    ports: tuple[str, ...]
+    high: frozenset[str]
+    low: frozenset[str]
+
+    @property
+    def signals(self) -> tuple[str, ...]:
+        """The ports that are no supplies, in order."""
+        return tuple(port for port in self.ports if port not in self.high | self.low)
+
+
+@dataclass(frozen=True)
+class Bench:
+    """Cells side by side.
+
+    Parameters
+    ----------
+    cells : tuple of Cell
+    circuit : Circuit
+        Nothing but what is measured hangs on its outputs.
+    """
+
+    cells: tuple[Cell, ...]
+    circuit: Circuit
+
+    def net(self, cell: int, port: str) -> int:
+        """Return the net id of a cell's port.
+
+        Raises
+        ------
+        KeyError
+            Where it has no such port.
+        """
+        wanted = next((name for name in self.cells[cell].signals if name.lower() == port.lower()))
+        net = self.circuit.net_id(_net(cell, wanted))
+        assert net is not None
+        return net
+
+
+def look_at(netlist: Netlist, name: str, process: Process, brief: Brief | None = None) -> Cell:
+    """Find the ports and supplies of a subcircuit.
+
+    Raises
+    ------
+    EvenstageError
+        Where it does not elaborate, or its supplies cannot be found.
+    """
+    devices = elaborate(netlist, name, process, brief)
+    supplies = find_supplies(devices, brief)
+    ports = tuple(devices.net_names[net] for net in devices.ports)
+    high, low = (
+        frozenset(port for port, net in zip(ports, devices.ports, strict=True) if some[net])
+        for some in (supplies.is_high, supplies.is_low)
+    )
+    return Cell(devices.top, ports, high, low)
+
+
+def build_bench(path: Path, cells: Iterable[Cell], process: Process) -> Bench:
+    """Put cells of a netlist file on a bench.
+
+    Raises
+    ------
+    EvenstageError
+        Where the file cannot be read, or holds no gate.
+    """
+    cells = tuple(cells)
+    lines = [f'.include "{path.resolve()}"', f".subckt {_TOP} {_HIGH} {_LOW}"]
+    lines += [
+        f"x{number} {' '.join(_at(number, cell, port) for port in cell.ports)} {cell.name}"
+        for number, cell in enumerate(cells)
+    ]
+    text = "\n".join([*lines, ".ends", ""]).encode("utf-8", "surrogateescape")
+    netlist = read_bytes(text, f"bench of {path.name}", path.parent)
+    brief = Brief(
+        supplies_high=(Pattern(_HIGH),),
+        supplies_low=(Pattern(_LOW),),
+    )
+    devices = elaborate(netlist, _TOP, process, brief)
+    circuit = recognise(devices, process, brief)
+    return Bench(cells, replace(circuit, outside_cap=np.zeros(len(devices.net_names))))
+
+
+def _at(number: int, cell: Cell, port: str) -> str:
+    if port in cell.high:
+        return _HIGH
+    return _LOW if port in cell.low else _net(number, port)
+
+
+def _net(number: int, port: str) -> str:
+    return f"c{number}_{port}"

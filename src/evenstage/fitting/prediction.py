@@ -1,0 +1,190 @@
+"""What the arc model says of measured arcs: the program's own sweep, one start per measurement.
+
+For every measured arc the timing graph from its input to its output is taken, as an analysis would
+take it; each measurement is one copy of it with its own transition and load. All copies are swept
+at once.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING, Any, NamedTuple
+
+import numpy as np
+
+from evenstage.errors import NoPathError
+from evenstage.timing.graph import TimingGraph, timing_graph
+from evenstage.timing.sweep import propagate
+from evenstage.timing.yardstick import yardstick
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from numpy.typing import NDArray
+
+    from evenstage.circuit.network import BoolArray
+    from evenstage.fitting.bench import Bench
+    from evenstage.fitting.measurements import Measurements, Query
+    from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.process.process import Process
+
+
+class Predicted(NamedTuple):
+    """Predictions, shape ``(n,)`` each: delay (s), output transition (s), input capacitance (F)."""
+
+    delay: FloatArray
+    output_transition: FloatArray
+    input_cap: FloatArray
+
+
+@dataclass(frozen=True, kw_only=True)
+class Predictor:
+    """Measurements as one timing graph.
+
+    Parameters
+    ----------
+    bench : Bench
+    graph : TimingGraph
+        One copy of an arc's own graph per measurement.
+    load : FloatArray, F, shape (graph arcs,)
+        What the measurement hangs on the arc's output.
+    end : IntArray, shape (n,)
+        Node of each measurement's output edge.
+    input_net : IntArray, shape (n,)
+    stages : IntArray, shape (n,)
+        Most stages between input and output.
+    """
+
+    bench: Bench
+    graph: TimingGraph
+    load: FloatArray
+    end: IntArray
+    input_net: IntArray
+    stages: IntArray
+
+    def __call__(self, process: Process) -> Predicted:
+        """Predict every measurement from the constants of a process."""
+        circuit = replace(self.bench.circuit, process=process)
+        arcs, which = circuit.arcs, self.graph.arc
+        load = circuit.net_cap[arcs.output[which]] + self.load
+        elmore = arcs.resistance.today[which] * load + arcs.own_today[which]
+        flow = propagate(circuit, self.graph, elmore, self.graph.start_arrival)
+        return Predicted(
+            flow.arrival[self.end], flow.transition[self.end], circuit.net_cap[self.input_net]
+        )
+
+
+def graph_of(bench: Bench, query: Query) -> TimingGraph | None:
+    """Return the timing graph of one measured arc; None where no path leads along it."""
+    number = next(i for i, c in enumerate(bench.cells) if c.name.lower() == query.subcircuit.lower())
+    circuit = bench.circuit
+    names = circuit.devices.net_names
+    start, end = (names[bench.net(number, port)] for port in (query.input, query.output))
+    try:
+        graph = timing_graph(circuit, yardstick(circuit.process), start=start, end=end)
+    except NoPathError:
+        return None
+    return graph if (graph.rising[graph.end] == query.rising).any() else None
+
+
+def build_predictor(bench: Bench, measured: Measurements) -> tuple[Predictor, BoolArray]:
+    """Prepare the prediction of measurements.
+
+    Returns
+    -------
+    Predictor
+    BoolArray, shape (rows,)
+        The rows that it predicts; the others run along no path.
+    """
+    graphs = [graph_of(bench, query) for query in measured.queries]
+    known = np.array([graph is not None for graph in graphs], bool)[measured.query]
+    rows = measured.only(known)
+    parts = [
+        _copies(graph, measured.queries[index].rising, np.flatnonzero(rows.query == index))
+        for index, graph in enumerate(graphs)
+        if graph is not None
+    ]
+    return _joined(bench, [part for part in parts if len(part.row)], rows), known
+
+
+class _Copies(NamedTuple):
+    """A graph once per measurement: ``row`` are the measurements, nodes come copy by copy."""
+
+    graph: TimingGraph
+    row: IntArray
+    level: IntArray
+    end: int
+
+
+def _copies(graph: TimingGraph, rising: bool, row: IntArray) -> _Copies:
+    level = np.zeros(len(graph), np.int32)
+    level[graph.target] = 1 + np.searchsorted(
+        graph.level_ends, np.arange(len(graph.target)), side="right"
+    )
+    end = int(graph.end[graph.rising[graph.end] == rising][0])
+    return _Copies(graph, row, level, end)
+
+
+def _joined(bench: Bench, parts: list[_Copies], rows: Measurements) -> Predictor:
+    """Put all copies into one graph, its nodes ordered by level."""
+    sizes = [len(part.graph) * len(part.row) for part in parts]
+    begins = np.cumsum([0, *sizes])[:-1].tolist()
+
+    def nodes(pick: Callable[[TimingGraph], IntArray]) -> IntArray:
+        """Return nodes of every copy by their number in the joined graph."""
+        return np.concatenate(
+            [
+                (begin + len(p.graph) * np.arange(len(p.row))[:, None] + pick(p.graph)).ravel()
+                for begin, p in zip(begins, parts, strict=True)
+            ]
+        )
+
+    def spread(pick: Callable[[TimingGraph], NDArray[Any]]) -> NDArray[Any]:
+        """Return what each copy's graph says of its nodes or arcs."""
+        return np.concatenate([np.tile(pick(p.graph), len(p.row)) for p in parts])
+
+    level = np.concatenate([np.tile(p.level, len(p.row)) for p in parts])
+    order = np.argsort(level, kind="stable")
+    number = np.empty(len(order), np.int32)
+    number[order] = np.arange(len(order))
+    target = number[nodes(lambda graph: graph.target)]
+    by_target = np.argsort(target, kind="stable")
+    start_row = np.concatenate([np.repeat(p.row, len(p.graph.start)) for p in parts])
+    arc_row = np.concatenate([np.repeat(p.row, len(p.graph.arc)) for p in parts])[by_target]
+    end_of_row = np.empty(len(rows), np.int32)
+    for begin, p in zip(begins, parts, strict=True):
+        end_of_row[p.row] = number[begin + len(p.graph) * np.arange(len(p.row)) + p.end]
+    arc = spread(lambda graph: graph.arc)[by_target]
+    net = spread(lambda graph: graph.net)[order]
+    arc_level = level[order][target[by_target]]
+    starts = number[nodes(lambda graph: graph.start)]
+    graph = TimingGraph(
+        net=net,
+        rising=spread(lambda graph: graph.rising)[order],
+        source=number[nodes(lambda graph: graph.source)][by_target],
+        target=target[by_target],
+        arc=arc,
+        level_ends=np.searchsorted(
+            arc_level, np.arange(1, int(level.max(initial=0)) + 1), side="right"
+        ).astype(np.int32),
+        start=starts,
+        start_arrival=np.zeros(len(starts)),
+        start_transition=rows.transition[start_row],
+        start_drive=np.zeros(len(starts)),
+        end=end_of_row,
+        end_required=np.full(len(rows), np.nan),
+        whole=False,
+    )
+    output = bench.circuit.arcs.output[arc]
+    input_of_row = np.empty(len(rows), np.int32)
+    input_of_row[start_row] = net[starts]
+    stages = np.empty(len(rows), np.int32)
+    stages[:] = level[order][end_of_row]
+    return Predictor(
+        bench=bench,
+        graph=graph,
+        load=np.where(output == net[end_of_row[arc_row]], rows.load[arc_row], 0.0),
+        end=end_of_row,
+        input_net=input_of_row,
+        stages=stages,
+    )
