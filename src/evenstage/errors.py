@@ -104,6 +104,10 @@ class SimulationError(EvenstageError):
     """A path could not be simulated."""
 
 
+class FitError(EvenstageError):
+    """The measurements are wrong, or too few to fit a process to."""
+
+
 class OutputError(EvenstageError):
     """A result could not be written."""
 

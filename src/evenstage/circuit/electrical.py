@@ -57,6 +57,8 @@ class Electrical:
     slope_power: FloatArray
     shape: FloatArray
     shape_carry: FloatArray
+    slope_stack: FloatArray
+    shape_stack: FloatArray
 
     @cached_property
     def drain(self) -> Scaled:
@@ -96,6 +98,8 @@ def electrical(devices: Devices, process: Process) -> Electrical:
         slope_power=constant("slope_power"),
         shape=constant("shape"),
         shape_carry=constant("shape_carry"),
+        slope_stack=constant("slope_stack"),
+        shape_stack=constant("shape_stack"),
     )
 
 

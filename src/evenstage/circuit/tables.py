@@ -149,7 +149,8 @@ def _alike_arcs(
     """
     form, (res, cap) = some.form, parts
     stack = values.stack[some.devices[:, [first_device[i] for i in arc.path]]]
-    factor = (1 + stack * (len(arc.path) - 1)) / len(arc.path)
+    more = len(arc.path) - 1
+    factor = (1 + stack * more) / len(arc.path)
     # Cumulated from the supply: entry d is the resistance of the last d + 1 switches of the path.
     towards = list(reversed(arc.path))
     r_x = np.cumsum(res.scaling[:, towards] * factor[:, ::-1], axis=1)
@@ -195,9 +196,9 @@ def _alike_arcs(
         own_resistance_owner=own[1],
         own_capacitance=own[2],
         own_capacitance_owner=own[3],
-        slope=values.slope[device],
+        slope=values.slope[device] / (1 + values.slope_stack[device] * more),
         slope_power=values.slope_power[device],
-        shape=values.shape[device],
+        shape=values.shape[device] / (1 + values.shape_stack[device] * more),
         shape_carry=values.shape_carry[device],
     )
 

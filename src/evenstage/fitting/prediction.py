@@ -12,16 +12,18 @@ from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 
+from evenstage.circuit.arcs import ranges
 from evenstage.errors import NoPathError
 from evenstage.timing.graph import TimingGraph, timing_graph
 from evenstage.timing.sweep import propagate
 from evenstage.timing.yardstick import yardstick
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
+    from collections.abc import Callable, Sequence
 
     from numpy.typing import NDArray
 
+    from evenstage.circuit.arcs import Arcs
     from evenstage.circuit.network import BoolArray
     from evenstage.fitting.bench import Bench
     from evenstage.fitting.measurements import Measurements, Query
@@ -46,8 +48,8 @@ class Predictor:
     bench : Bench
     graph : TimingGraph
         One copy of an arc's own graph per measurement.
-    load : FloatArray, F, shape (graph arcs,)
-        What the measurement hangs on the arc's output.
+    output, load : IntArray and FloatArray, F, shape (graph arcs,)
+        The measured net of the copy that an arc belongs to, and what hangs on it.
     end : IntArray, shape (n,)
         Node of each measurement's output edge.
     input_net : IntArray, shape (n,)
@@ -57,6 +59,7 @@ class Predictor:
 
     bench: Bench
     graph: TimingGraph
+    output: IntArray
     load: FloatArray
     end: IntArray
     input_net: IntArray
@@ -66,8 +69,9 @@ class Predictor:
         """Predict every measurement from the constants of a process."""
         circuit = replace(self.bench.circuit, process=process)
         arcs, which = circuit.arcs, self.graph.arc
-        load = circuit.net_cap[arcs.output[which]] + self.load
-        elmore = arcs.resistance.today[which] * load + arcs.own_today[which]
+        elmore = arcs.elmore(circuit.net_cap)[which]
+        loaded, charge = _loaded(arcs, which, self.output)
+        np.add.at(elmore, loaded, arcs.charges.resistance[charge] * self.load[loaded])
         flow = propagate(circuit, self.graph, elmore, self.graph.start_arrival)
         return Predicted(
             flow.arrival[self.end], flow.transition[self.end], circuit.net_cap[self.input_net]
@@ -87,24 +91,24 @@ def graph_of(bench: Bench, query: Query) -> TimingGraph | None:
     return graph if (graph.rising[graph.end] == query.rising).any() else None
 
 
-def build_predictor(bench: Bench, measured: Measurements) -> tuple[Predictor, BoolArray]:
+def build_predictor(
+    bench: Bench, graphs: Sequence[TimingGraph | None], rows: Measurements
+) -> Predictor:
     """Prepare the prediction of measurements.
 
-    Returns
-    -------
-    Predictor
-    BoolArray, shape (rows,)
-        The rows that it predicts; the others run along no path.
+    Parameters
+    ----------
+    bench : Bench
+    graphs : sequence of TimingGraph
+        One for each query of the measurements that has rows; see `graph_of`.
+    rows : Measurements
     """
-    graphs = [graph_of(bench, query) for query in measured.queries]
-    known = np.array([graph is not None for graph in graphs], bool)[measured.query]
-    rows = measured.only(known)
     parts = [
-        _copies(graph, measured.queries[index].rising, np.flatnonzero(rows.query == index))
+        _copies(graph, rows.queries[index].rising, np.flatnonzero(rows.query == index))
         for index, graph in enumerate(graphs)
         if graph is not None
     ]
-    return _joined(bench, [part for part in parts if len(part.row)], rows), known
+    return _joined(bench, [part for part in parts if len(part.row)], rows)
 
 
 class _Copies(NamedTuple):
@@ -175,16 +179,24 @@ def _joined(bench: Bench, parts: list[_Copies], rows: Measurements) -> Predictor
         end_required=np.full(len(rows), np.nan),
         whole=False,
     )
-    output = bench.circuit.arcs.output[arc]
     input_of_row = np.empty(len(rows), np.int32)
     input_of_row[start_row] = net[starts]
-    stages = np.empty(len(rows), np.int32)
-    stages[:] = level[order][end_of_row]
     return Predictor(
         bench=bench,
         graph=graph,
-        load=np.where(output == net[end_of_row[arc_row]], rows.load[arc_row], 0.0),
+        output=net[end_of_row][arc_row],
+        load=rows.load[arc_row],
         end=end_of_row,
         input_net=input_of_row,
-        stages=stages,
+        stages=level[order][end_of_row],
     )
+
+
+def _loaded(arcs: Arcs, arc: IntArray, net: IntArray) -> tuple[IntArray, IntArray]:
+    """Return which of some arcs charge a net of their own, and by which charges."""
+    head = arcs.charges.head
+    count = np.diff(head)[arc]
+    row = np.repeat(np.arange(len(arc), dtype=np.int32), count)
+    charge = ranges(head[arc], count)
+    here = arcs.charges.net[charge] == net[row]
+    return row[here], charge[here]

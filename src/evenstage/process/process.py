@@ -117,6 +117,9 @@ class Transistor:
         Transition constants of the arc model: with input transition T and Elmore delay E, delay
         ``E + slope T^slope_power E^(1 - slope_power)``, output transition
         ``sqrt((shape E)^2 + (shape_carry T)^2)``.
+    slope_stack, shape_stack : float
+        Where n conducting devices are in series, slope and shape are divided by ``1 + slope_stack
+        (n - 1)`` and ``1 + shape_stack (n - 1)``: a slow input hides some of what the stack costs.
     junctions : Junctions, optional
         Used in place of ``c_drain`` where a card gives areas and perimeters.
     channel : Channel
@@ -143,6 +146,8 @@ class Transistor:
     slope_power: float = 1.0
     shape: float = 0.0
     shape_carry: float = 0.0
+    slope_stack: float = 0.0
+    shape_stack: float = 0.0
     junctions: Junctions | None = None
     channel: Channel = Channel()
     width_parameter: str = "w"

@@ -48,6 +48,36 @@ class _Inverter:
         return self.r_fall * load, self.r_rise * load
 
 
+@dataclass(frozen=True, slots=True)
+class Chain:
+    """A stage of an endless chain of unit inverters, each driving so many copies of itself.
+
+    ``rise`` and ``fall`` are the transitions that repeat, ``delay`` the mean of both edges; s.
+    """
+
+    delay: float
+    rise: float
+    fall: float
+
+
+def chain(process: Process, fanout: float) -> Chain:
+    """Return delay and transitions along an endless chain of unit inverters.
+
+    Parameters
+    ----------
+    process : Process
+        With ``unit_width`` and ``unit_ratio`` filled in.
+    fanout : float
+        How many copies of itself each stage drives.
+    """
+    n, p = process.first("n"), process.first("p")
+    e_fall, e_rise = _unit(process).elmore(fanout)
+    t_fall, t_rise = _transitions(n, p, e_fall, e_rise)
+    rise = e_rise + p.slope * t_fall**p.slope_power * e_rise ** (1 - p.slope_power)
+    fall = e_fall + n.slope * t_rise**n.slope_power * e_fall ** (1 - n.slope_power)
+    return Chain((rise + fall) / 2, t_rise, t_fall)
+
+
 def yardstick(process: Process) -> Yardstick:
     """Measure the unit inverter of a process.
 

@@ -1,0 +1,162 @@
+"""A fitted process as text: the constants, how far to trust them, and where the model misses."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Final
+
+from evenstage.report.block_text import finished, notice_lines
+from evenstage.report.paper import Paper
+from evenstage.report.table import Column, first_that_fits
+from evenstage.report.words import counted, labelled, section
+from evenstage.units import engineering
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from evenstage.fitting.results import Confusion, Fit, FittedConstant, Residuals
+
+#: Units of the constants as the process file has them.
+_UNITS: Final = {
+    "r_w": "ohm*m",
+    "r_fixed": "ohm",
+    "c_gate": "F/m",
+    "c_gate_fixed": "F",
+    "c_drain": "F/m",
+    "c_drain_fixed": "F",
+}
+
+
+def fit_report(fit: Fit, *, width: int = 100, unicode: bool = False, notices: bool = True) -> str:
+    """Return a fit as text.
+
+    Parameters
+    ----------
+    fit : Fit
+    width : int
+        Character cells per line, 80 to 160.
+    unicode : bool
+        Whether the output can show more than ASCII.
+    notices : bool
+        Whether the notices are printed too.
+
+    Returns
+    -------
+    str
+        Lines without trailing blanks, the last one ended too.
+    """
+    paper = Paper(width, unicode)
+    lines = [*paper.paragraph(f"{fit.source}, cells of {fit.cells}"), ""]
+    lines += paper.paragraph(_answer(fit))
+    lines += section("Constants", _constant_lines(paper, fit.constants))
+    lines += section("What the measurements do not tell apart", _confused(paper, fit.confusions))
+    lines += section("Predicted against measured", _residual_lines(paper, fit))
+    lines += section("The fit", _base_lines(paper, fit))
+    if notices:
+        lines += section("Notices", notice_lines(paper, fit.notices))
+    return finished(paper, lines)
+
+
+def _answer(fit: Fit) -> str:
+    """Return the one thing to know first."""
+    parts = [
+        f"{one.median:.1%} for {name} (19 of 20 within {one.high:.1%})"
+        for one, name in ((fit.single, "one stage"), (fit.several, "several"))
+        if one is not None
+    ]
+    where = f" Written to {fit.output}." if fit.output else ""
+    return (
+        f"Delays are met to a median of {' and '.join(parts)}, over {fit.used} of "
+        f"{counted(fit.measured, 'measurement')}.{where}"
+    ).replace("%", " %")
+
+
+def _constant_lines(paper: Paper, constants: Sequence[FittedConstant]) -> list[str]:
+    rows, before = [], ""
+    for one in constants:
+        unit = _UNITS.get(one.key, "")
+        error = "" if one.error is None else f"{paper.plus_minus} {one.error:.2g}"
+        remark = "" if one.told == "measured" else one.told
+        shown = one.models if one.models != before else ""
+        rows.append([shown, one.key, f"{one.value:.4g}", error, unit, remark])
+        before = one.models
+    columns = [
+        Column("models", kind="name"),
+        Column("constant"),
+        Column("value", align="right"),
+        Column("error", align="right"),
+        Column("unit"),
+        Column("", kind="name"),
+    ]
+    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
+    return [
+        *table.lines(rows),
+        "",
+        *paper.paragraph(
+            "error: standard error, residuals taken as independent; the model's own error is not "
+            "in it.",
+            indent=2,
+        ),
+    ]
+
+
+def _confused(paper: Paper, confusions: Sequence[Confusion]) -> list[str]:
+    lines = []
+    for one in confusions:
+        names = [f"{key} ({polarity})" for polarity, key in one.constants]
+        if len(names) == 1:
+            text = f"{names[0]} is hardly told: it may be off by {one.spread:.0%} of its scale"
+        else:
+            text = (
+                f"{', '.join(names[:-1])} and {names[-1]}: their sum of effects is known, each "
+                f"alone may be off by {one.spread:.0%} of its scale"
+            )
+        lines += paper.paragraph(text.replace("%", " %") + ".", indent=2, hanging=4)
+    return lines
+
+
+def _residual_lines(paper: Paper, fit: Fit) -> list[str]:
+    rows = [_residual_row(one) for one in fit.gates]
+    rows += [_residual_row(one) for one in (fit.single, fit.several) if one is not None]
+    columns = [
+        Column("gate", kind="name"),
+        Column("stages", align="right"),
+        Column("rows", align="right"),
+        Column("bias %", align="right"),
+        Column("median %", align="right"),
+        Column("19 of 20 %", align="right"),
+        Column("transition %", align="right"),
+    ]
+    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
+    return [
+        *table.lines(rows),
+        "",
+        *paper.paragraph(
+            "of the larger of the measured delay and that of an inverter driving one; transition: "
+            "median for the output's.",
+            indent=2,
+        ),
+    ]
+
+
+def _residual_row(one: Residuals) -> list[str]:
+    return [
+        f"all of {one.name}" if one.name.endswith(("stage", "stages")) else one.name,
+        str(one.stages),
+        str(one.count),
+        f"{100 * one.bias:+.1f}",
+        f"{100 * one.median:.1f}",
+        f"{100 * one.high:.1f}",
+        "" if one.transition is None else f"{100 * one.transition:.1f}",
+    ]
+
+
+def _base_lines(paper: Paper, fit: Fit) -> list[str]:
+    least, most = (engineering(t, "s") for t in (fit.transition_least, fit.transition_most))
+    window = (
+        f"transitions from {least} to {most}, as in chains of inverters that drive one to sixteen "
+        f"of themselves; {fit.used} of {counted(fit.measured, 'row')} lie there"
+    )
+    return [
+        *labelled(paper, "window", window),
+        *labelled(paper, "process", f"{fit.process.name}: FO4 {engineering(fit.fo4, 's')}"),
+    ]
