@@ -115,7 +115,7 @@ def _run(asked: argparse.Namespace) -> None:
 
 def _inputs(asked: argparse.Namespace) -> list[Path]:
     """Return the files that a command reads, and the netlist that it writes."""
-    names = ("netlist", "before", "after", "brief", "output")
+    names = ("netlist", "before", "after", "measurements", "cells", "brief", "output")
     others = [path for name in names if (path := getattr(asked, name, None)) is not None]
     return [*asked.process, *others]
 
@@ -198,6 +198,14 @@ def _diff(asked: argparse.Namespace) -> flow.Result:
     return flow.diff(asked.before, asked.after, _question(asked))
 
 
+def _fit_process(asked: argparse.Namespace) -> flow.Result:
+    from evenstage import flow
+
+    return flow.fit(
+        asked.measurements, asked.cells, _question(asked), asked.output, force=asked.force
+    )
+
+
 def _question(asked: argparse.Namespace) -> flow.Question:
     from evenstage import flow
 
@@ -275,6 +283,19 @@ def _parser() -> argparse.ArgumentParser:
         "--graph", type=_file, metavar="FILE", help="the graph of gates, as GraphML"
     )
     _shared(recognise, paths=False)
+    fit = _command(commands, "fit", _fit_process, "process constants from delays that you measured")
+    fit.add_argument("measurements", type=_file, metavar="MEASUREMENTS")
+    fit.add_argument(
+        "--netlist",
+        type=_file,
+        dest="cells",
+        required=True,
+        metavar="CELLS",
+        help="the netlist that holds the measured cells",
+    )
+    fit.add_argument("--output", type=_output, metavar="FILE", help="the process file to write")
+    fit.add_argument("--force", action="store_true", help="overwrite the output")
+    _shared(fit, paths=False)
     return parser
 
 

@@ -12,6 +12,10 @@ from evenstage.circuit.inventory import Inventory, take_inventory
 from evenstage.circuit.recognise import in_process
 from evenstage.circuit.recognise import recognise as find_gates
 from evenstage.errors import OutputError, SettingsError
+from evenstage.fitting.cells import measured_cells
+from evenstage.fitting.fit import fit as fit_process
+from evenstage.fitting.reading import read_measurements
+from evenstage.fitting.results import Fit
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading.read import read
 from evenstage.netlist.rewriting.edits import rewrite
@@ -25,6 +29,7 @@ from evenstage.netlist.rewriting.record import Record, digest, find_record, reco
 from evenstage.process.generic import at_length
 from evenstage.process.infer import infer_process
 from evenstage.process.read import read_process
+from evenstage.process.write import process_text
 from evenstage.report.graph_document import graph_document
 from evenstage.report.results import Result, json, notices, text
 from evenstage.report.simulation_document import waveform_table
@@ -55,6 +60,7 @@ __all__ = [
     "Corners",
     "CornersDifference",
     "Difference",
+    "Fit",
     "Inventory",
     "Question",
     "Result",
@@ -64,6 +70,7 @@ __all__ = [
     "analyse",
     "check_place",
     "diff",
+    "fit",
     "json",
     "load",
     "notices",
@@ -283,11 +290,7 @@ def resize(
         Where the output exists (without ``force``) or cannot be written.
     """
     _one_process(question, "resize")
-    if output is not None and output.exists() and not force:
-        raise OutputError(
-            f"'{output}' exists; choose another name, or say --force to overwrite it",
-            code="output-exists",
-        )
+    _refuse_existing(output, force=force)
     block = load(path, question)
     wishes = _with_aims(wishes or Wishes(), block.brief)
     record = block.record
@@ -302,6 +305,53 @@ def resize(
     texts = _texts(block, sizing, record, asked)
     write_files(output_files(block.netlist, texts, output), force=force)
     return replace(sizing, notices=(*sizing.notices, *lost_includes(block.netlist, output)))
+
+
+def fit(
+    measurements: Path,
+    cells: Path,
+    question: Question,
+    output: Path | None = None,
+    *,
+    force: bool = False,
+) -> Fit:
+    """Fit a process to measured delays and, where an output is named, write it as a process file.
+
+    Raises
+    ------
+    EvenstageError
+        For every mistake in the inputs, and where too little was measured.
+    OutputError
+        Where the output exists (without ``force``) or cannot be written.
+    """
+    _one_process(question, "fit")
+    _refuse_existing(output, force=force)
+    measured, netlist = read_measurements(measurements), read(cells)
+    brief = read_brief(question.brief) if question.brief else Brief()
+    given = read_process(question.process) if question.process else None
+    found = measured_cells(measured, netlist, given or _inferred(netlist), brief)
+    first = elaborate(netlist, found[0].name, given or _inferred(netlist), brief)
+    begin = given or _settled(netlist, first)
+    result = fit_process(measured, found, cells, begin, source=str(measurements))
+    if output is None:
+        return result
+    write_text(output, process_text(result.process, result.head), force=force)
+    return replace(result, output=output)
+
+
+def _refuse_existing(output: Path | None, *, force: bool) -> None:
+    """Refuse at once what could not be written in the end.
+
+    Raises
+    ------
+    OutputError
+        Where the output exists.
+    """
+    if output is not None and output.exists() and not force:
+        raise OutputError(
+            f"'{output}' exists; choose another name, or say --force to overwrite it",
+            code="output-exists",
+        )
 
 
 def write_text(path: Path, content: str, *, force: bool) -> None:

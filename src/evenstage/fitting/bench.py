@@ -68,15 +68,13 @@ class Bench:
     cells: tuple[Cell, ...]
     circuit: Circuit
 
-    def net(self, cell: int, port: str) -> int:
-        """Return the net id of a cell's port.
+    def number(self, name: str) -> int:
+        """Return the place of a cell, known by its name in any case."""
+        return next(i for i, cell in enumerate(self.cells) if cell.name.lower() == name.lower())
 
-        Raises
-        ------
-        KeyError
-            Where it has no such port.
-        """
-        wanted = next((name for name in self.cells[cell].signals if name.lower() == port.lower()))
+    def net(self, cell: int, port: str) -> int:
+        """Return the net id of a signal port of a cell, known by its name in any case."""
+        wanted = next(name for name in self.cells[cell].signals if name.lower() == port.lower())
         net = self.circuit.net_id(_net(cell, wanted))
         assert net is not None
         return net
@@ -116,10 +114,7 @@ def build_bench(path: Path, cells: Iterable[Cell], process: Process) -> Bench:
     ]
     text = "\n".join([*lines, ".ends", ""]).encode("utf-8", "surrogateescape")
     netlist = read_bytes(text, f"bench of {path.name}", path.parent)
-    brief = Brief(
-        supplies_high=(Pattern(_HIGH),),
-        supplies_low=(Pattern(_LOW),),
-    )
+    brief = Brief(supplies_high=(Pattern(_HIGH),), supplies_low=(Pattern(_LOW),))
     devices = elaborate(netlist, _TOP, process, brief)
     circuit = recognise(devices, process, brief)
     return Bench(cells, replace(circuit, outside_cap=np.zeros(len(devices.net_names))))

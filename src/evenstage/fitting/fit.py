@@ -15,6 +15,7 @@ from evenstage.fitting.prediction import build_predictor, graph_of
 from evenstage.fitting.results import Fit, FittedConstant, Residuals
 from evenstage.fitting.solver import Problem, errors
 from evenstage.pattern import Pattern
+from evenstage.process.generic import GENERIC_NOTICE
 from evenstage.timing.yardstick import yardstick
 
 if TYPE_CHECKING:
@@ -26,7 +27,7 @@ if TYPE_CHECKING:
     from evenstage.fitting.constants import Unknown
     from evenstage.fitting.measurements import Measurements
     from evenstage.fitting.solver import Solution
-    from evenstage.netlist.devices import FloatArray
+    from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.process.process import Process
 
 _HIGH: Final = 0.95
@@ -77,7 +78,8 @@ def fit(
     measurable = is_measured(solution.jacobian)
     free = measurable & ~at_bound(unknowns, solution.at)
     names = [_name(unknown, solution.process) for unknown in unknowns]
-    notices = [*process.notices, *_left_out(measured, known)]
+    notices = [notice for notice in process.notices if notice.code != GENERIC_NOTICE]
+    notices += _left_out(measured, known)
     if not solution.settled:
         notices.append(_unsettled())
     return Fit(
@@ -104,7 +106,7 @@ class _Table:
     def __init__(
         self,
         rows: Measurements,
-        stages: FloatArray,
+        stages: IntArray,
         delay: FloatArray,
         transition: FloatArray,
     ) -> None:

@@ -24,7 +24,6 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from evenstage.circuit.arcs import Arcs
-    from evenstage.circuit.network import BoolArray
     from evenstage.fitting.bench import Bench
     from evenstage.fitting.measurements import Measurements, Query
     from evenstage.netlist.devices import FloatArray, IntArray
@@ -80,10 +79,9 @@ class Predictor:
 
 def graph_of(bench: Bench, query: Query) -> TimingGraph | None:
     """Return the timing graph of one measured arc; None where no path leads along it."""
-    number = next(i for i, c in enumerate(bench.cells) if c.name.lower() == query.subcircuit.lower())
-    circuit = bench.circuit
+    cell, circuit = bench.number(query.subcircuit), bench.circuit
     names = circuit.devices.net_names
-    start, end = (names[bench.net(number, port)] for port in (query.input, query.output))
+    start, end = (names[bench.net(cell, port)] for port in (query.input, query.output))
     try:
         graph = timing_graph(circuit, yardstick(circuit.process), start=start, end=end)
     except NoPathError:
@@ -104,7 +102,7 @@ def build_predictor(
     rows : Measurements
     """
     parts = [
-        _copies(graph, rows.queries[index].rising, np.flatnonzero(rows.query == index))
+        _copies(graph, rows.queries[index], np.flatnonzero(rows.query == index))
         for index, graph in enumerate(graphs)
         if graph is not None
     ]
@@ -120,12 +118,12 @@ class _Copies(NamedTuple):
     end: int
 
 
-def _copies(graph: TimingGraph, rising: bool, row: IntArray) -> _Copies:
+def _copies(graph: TimingGraph, query: Query, row: IntArray) -> _Copies:
     level = np.zeros(len(graph), np.int32)
     level[graph.target] = 1 + np.searchsorted(
         graph.level_ends, np.arange(len(graph.target)), side="right"
     )
-    end = int(graph.end[graph.rising[graph.end] == rising][0])
+    end = int(graph.end[graph.rising[graph.end] == query.rising][0])
     return _Copies(graph, row, level, end)
 
 

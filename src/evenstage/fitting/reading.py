@@ -9,7 +9,6 @@ from __future__ import annotations
 import difflib
 import re
 from dataclasses import dataclass
-from pathlib import Path
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
@@ -21,6 +20,7 @@ from evenstage.units import parse_quantity
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
+    from pathlib import Path
 
     from evenstage.netlist.devices import FloatArray
 
@@ -182,8 +182,8 @@ def _query(row: dict[str, _Field]) -> Query:
     for name in _TEXTS:
         if not row[name].text:
             raise FitError(f"{name} is empty", code="empty-field", span=row[name].span)
-    texts = (row[name].text for name in ("subcircuit", "input", "output"))
-    return Query(*texts, rising=_EDGES[edge.text.lower()])
+    subcircuit, start, end = (row[name].text for name in ("subcircuit", "input", "output"))
+    return Query(subcircuit, start, end, _EDGES[edge.text.lower()])
 
 
 def _number(field: _Field | None, name: str, unit: str) -> float:

@@ -127,3 +127,11 @@ class Fit:
     fo4: float
     notices: tuple[Notice, ...]
     output: Path | None = field(default=None)
+
+    @property
+    def head(self) -> tuple[str, ...]:
+        """Where the process comes from, as the process file says it."""
+        return (
+            f"Fitted to {self.used} of {self.measured} measurements in {self.source},",
+            f"cells of {self.cells}. An estimate, not sign-off.",
+        )

@@ -59,6 +59,9 @@ _SLOW_INPUT: Final = 4.0
 _TURNS: Final = 6
 _STEPS: Final = 60
 
+#: Nearer to zero than this an unknown is zero.
+_NEAR_ZERO: Final = 1e-4
+
 #: Step of the differences that make the Jacobian; unknowns are of the size of one.
 _DIFFERENCE: Final = 1e-6
 
@@ -163,17 +166,17 @@ class Problem:
         rows = self.rows
         inside: BoolArray = (rows.delay > 0) & (rows.transition <= _SLOW_INPUT * rows.delay)
         window = self._first_window(inside)
-        at = starts(self.unknowns)
+        at, least = starts(self.unknowns), bounds(self.unknowns)[0]
         for turn in range(_TURNS):
             tell("fitting", turn / _TURNS)
             solution = self._solved(inside, at, window)
-            window, at = window_of(solution.process), solution.at
+            window, at = window_of(solution.process), np.maximum(solution.at, least + _NEAR_ZERO)
             before, inside = inside, window.holds(rows)
             if (inside == before).all():
                 break
         settled = bool((inside == before).all())
         return Solution(
-            solution.process, at, solution.jacobian, solution.variance, window, settled
+            solution.process, solution.at, solution.jacobian, solution.variance, window, settled
         )
 
     def _first_window(self, inside: BoolArray) -> Window:
@@ -224,12 +227,18 @@ class Problem:
         )
         free = max(len(rows) - len(self.unknowns), 1)
         return Solution(
-            with_constants(start, self.unknowns, result.x),
-            result.x,
-            result.jac,
+            with_constants(start, self.unknowns, _landed(result.x, least)),
+            _landed(result.x, least),
+            np.asarray(result.jac),
             2 * float(result.cost) / free,
             window,
         )
+
+
+def _landed(at: FloatArray, least: FloatArray) -> FloatArray:
+    """Put unknowns that stand at a bound of zero on it: the method stays a little inside."""
+    result: FloatArray = np.where((least == 0) & (at < _NEAR_ZERO), 0.0, at)
+    return result
 
 
 def _too_few(rows: int, unknowns: int) -> FitError:

@@ -36,7 +36,8 @@ _THRESHOLD_SHARE: Final = 0.25
 _OVERLAP_SHARE: Final = 0.15
 _ALPHA: Final[dict[Polarity, float]] = {"n": 1.3, "p": 1.4}
 
-_GENERIC: Final = "generic-process"
+#: Code of the notice that the built-in constants were taken.
+GENERIC_NOTICE: Final = "generic-process"
 _SUPPLY_RULE: Final = "ten volts per micron of channel length"
 
 # Model names as designers choose them; a subcircuit that is nowhere defined counts as a transistor
@@ -89,7 +90,7 @@ def at_length(process: Process, length: float) -> Process:
     )
     assumed = any(notice.code == SUPPLY_ASSUMED for notice in process.notices)
     supply = supply_for_length(length) if assumed else process.supply
-    kept = tuple(n for n in process.notices if n.code not in {SUPPLY_ASSUMED, _GENERIC})
+    kept = tuple(n for n in process.notices if n.code not in {SUPPLY_ASSUMED, GENERIC_NOTICE})
     notices = (_generic_notice(length), *kept)
     if assumed:
         notices += (supply_notice(supply, _SUPPLY_RULE),)
@@ -158,7 +159,7 @@ def _n_resistance() -> float:
 
 def _generic_notice(length: float) -> Notice:
     return Notice(
-        _GENERIC,
+        GENERIC_NOTICE,
         "no process file and no usable .model card: constants of the built-in generic process for a"
         f" channel length of {engineering(length, 'm')}; efforts and ratios mean something,"
         " absolute times are rough",

@@ -74,7 +74,7 @@ def _constant_lines(paper: Paper, constants: Sequence[FittedConstant]) -> list[s
     rows, before = [], ""
     for one in constants:
         unit = _UNITS.get(one.key, "")
-        error = "" if one.error is None else f"{paper.plus_minus} {one.error:.2g}"
+        error = "" if one.error is None else f"{one.error:.2g}"
         remark = "" if one.told == "measured" else one.told
         shown = one.models if one.models != before else ""
         rows.append([shown, one.key, f"{one.value:.4g}", error, unit, remark])

@@ -6,6 +6,7 @@ import json
 from typing import TYPE_CHECKING, Final
 
 from evenstage.report.circuit_document import inventory_body
+from evenstage.report.fit_document import fit_body
 from evenstage.report.simulation_document import simulation_body
 
 if TYPE_CHECKING:
@@ -13,6 +14,7 @@ if TYPE_CHECKING:
 
     from evenstage.circuit.inventory import Inventory
     from evenstage.errors import Notice
+    from evenstage.fitting.results import Fit
     from evenstage.report.circuit_document import Document, JsonValue
     from evenstage.simulation.results import Simulation
     from evenstage.sizing.results import Change, Sizing, StageHold
@@ -134,6 +136,22 @@ def simulation_document(simulation: Simulation) -> Document:
     notices: Document = {"notices": [notice_document(notice) for notice in simulation.notices]}
     process: Document = {"process": yardstick_document(simulation.before.analysis.yardstick)}
     return _head("simulation") | process | simulation_body(simulation) | notices
+
+
+def fit_document(fit: Fit) -> Document:
+    """Return a fitted process as the document scripts read.
+
+    Parameters
+    ----------
+    fit : Fit
+
+    Returns
+    -------
+    dict
+        Plain values only; ``kind`` is ``fit``. Constants have the units of the process file.
+    """
+    notices: Document = {"notices": [notice_document(notice) for notice in fit.notices]}
+    return _head("fit") | fit_body(fit) | notices
 
 
 def to_json(document: Mapping[str, JsonValue]) -> str:

@@ -5,10 +5,12 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Any, Final
 
 from evenstage.circuit.inventory import Inventory
+from evenstage.fitting.results import Fit
 from evenstage.report.corners_document import corners_difference_document, corners_document
 from evenstage.report.machine import (
     analysis_document,
     difference_document,
+    fit_document,
     inventory_document,
     simulation_document,
     sizing_document,
@@ -19,6 +21,7 @@ from evenstage.report.terminal import (
     corners_difference_report,
     corners_report,
     difference_report,
+    fit_report,
     inventory_report,
     simulation_report,
     sizing_report,
@@ -34,7 +37,7 @@ if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.report.circuit_document import Document
 
-Result = Analysis | Corners | Sizing | Difference | CornersDifference | Inventory | Simulation
+Result = Analysis | Corners | Sizing | Difference | CornersDifference | Inventory | Simulation | Fit
 
 # Each takes the result it stands beside.
 _REPORTS: Final[dict[type, Callable[..., str]]] = {
@@ -45,6 +48,7 @@ _REPORTS: Final[dict[type, Callable[..., str]]] = {
     CornersDifference: corners_difference_report,
     Inventory: inventory_report,
     Simulation: simulation_report,
+    Fit: fit_report,
 }
 _DOCUMENTS: Final[dict[type, Callable[[Any], Document]]] = {
     Analysis: analysis_document,
@@ -54,6 +58,7 @@ _DOCUMENTS: Final[dict[type, Callable[[Any], Document]]] = {
     CornersDifference: corners_difference_document,
     Inventory: inventory_document,
     Simulation: simulation_document,
+    Fit: fit_document,
 }
 
 
