@@ -53,6 +53,10 @@ class Cell:
         """The ports that are no supplies, in order."""
         return tuple(port for port in self.ports if port not in self.high | self.low)
 
+    def place(self, port: str) -> int:
+        """Return the place of a signal port among them, known by its name in any case."""
+        return [signal.lower() for signal in self.signals].index(port.lower())
+
 
 @dataclass(frozen=True)
 class Bench:
@@ -72,10 +76,9 @@ class Bench:
         """Return the place of a cell, known by its name in any case."""
         return next(i for i, cell in enumerate(self.cells) if cell.name.lower() == name.lower())
 
-    def net(self, cell: int, port: str) -> int:
-        """Return the net id of a signal port of a cell, known by its name in any case."""
-        wanted = next(name for name in self.cells[cell].signals if name.lower() == port.lower())
-        net = self.circuit.net_id(_net(cell, wanted))
+    def net(self, cell: int, place: int) -> int:
+        """Return the net id of a signal port of a cell, by its place among them."""
+        net = self.circuit.net_id(_net(cell, place))
         assert net is not None
         return net
 
@@ -123,8 +126,13 @@ def build_bench(path: Path, cells: Iterable[Cell], process: Process) -> Bench:
 def _at(number: int, cell: Cell, port: str) -> str:
     if port in cell.high:
         return _HIGH
-    return _LOW if port in cell.low else _net(number, port)
+    return _LOW if port in cell.low else _net(number, cell.signals.index(port))
 
 
-def _net(number: int, port: str) -> str:
-    return f"c{number}_{port}"
+def nets_at(place: int) -> str:
+    """Return a pattern that fits the nets of the signal ports at one place of every cell."""
+    return f"pin{place}_*"
+
+
+def _net(number: int, place: int) -> str:
+    return f"pin{place}_{number}"

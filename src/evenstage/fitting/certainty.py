@@ -2,8 +2,8 @@
 
 Around the solution the residuals change by ``J dx``. Along a right-singular vector of J with
 singular value sigma the unknowns can move by ``s/sigma``, s the standard deviation of a residual,
-before the fit is worse by what chance would make it; the covariance is ``s^2 (J^T J)^-1`` (Golub and
-Van Loan, Matrix Computations, section 5.5, from memory). Where that move is large and several
+before the fit is worse by what chance would make it; the covariance is ``s^2 (J^T J)^-1`` (Golub
+and Van Loan, Matrix Computations, section 5.5, from memory). Where that move is large and several
 constants take part in it, only one combination of them is known.
 """
 
@@ -63,13 +63,12 @@ def standard_errors(jacobian: FloatArray, variance: float, free: BoolArray) -> F
         Those that may move; the others get zero.
     """
     _, sigma, directions = np.linalg.svd(jacobian[:, free], full_matrices=False)
-    with np.errstate(divide="ignore"):
-        along = np.where(sigma > _NOTHING * sigma.max(initial=0.0), 1 / sigma, np.inf)
-    parts = np.where(np.abs(directions) > _NOTHING, directions, 0.0)
+    held = sigma > _NOTHING * sigma.max(initial=0.0)
+    parts = directions**2
+    loose = (parts[~held] > _NOTHING).any(axis=0)
+    spread = np.sqrt(variance * (parts[held] / sigma[held, None] ** 2).sum(axis=0))
     found = np.zeros(len(free))
-    with np.errstate(invalid="ignore"):
-        spread = np.nan_to_num(parts * along[:, None], nan=0.0, posinf=np.inf, neginf=np.inf)
-    found[free] = np.sqrt(variance * (spread**2).sum(axis=0))
+    found[free] = np.where(loose, np.inf, spread)
     return found
 
 

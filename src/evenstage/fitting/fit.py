@@ -11,7 +11,7 @@ from evenstage.errors import Notice
 from evenstage.fitting.bench import build_bench
 from evenstage.fitting.certainty import at_bound, find_confusions, is_measured, standard_errors
 from evenstage.fitting.constants import unknowns_of
-from evenstage.fitting.prediction import build_predictor, graph_of
+from evenstage.fitting.prediction import arc_graphs, build_predictor
 from evenstage.fitting.results import Fit, FittedConstant, Residuals
 from evenstage.fitting.solver import Problem, errors
 from evenstage.pattern import Pattern
@@ -64,7 +64,7 @@ def fit(
         Where the cells cannot be recognised.
     """
     bench = build_bench(netlist, cells, process)
-    graphs = [graph_of(bench, query) for query in measured.queries]
+    graphs = arc_graphs(bench, measured.queries)
     known = np.array([graph is not None for graph in graphs], bool)[measured.query]
     rows = measured.only(known)
     types = _types(bench)

@@ -14,6 +14,7 @@ import numpy as np
 
 from evenstage.circuit.arcs import ranges
 from evenstage.errors import NoPathError
+from evenstage.fitting.bench import nets_at
 from evenstage.timing.graph import TimingGraph, timing_graph
 from evenstage.timing.sweep import propagate
 from evenstage.timing.yardstick import yardstick
@@ -24,6 +25,7 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from evenstage.circuit.arcs import Arcs
+    from evenstage.circuit.network import BoolArray
     from evenstage.fitting.bench import Bench
     from evenstage.fitting.measurements import Measurements, Query
     from evenstage.netlist.devices import FloatArray, IntArray
@@ -77,32 +79,107 @@ class Predictor:
         )
 
 
-def graph_of(bench: Bench, query: Query) -> TimingGraph | None:
-    """Return the timing graph of one measured arc; None where no path leads along it."""
-    cell, circuit = bench.number(query.subcircuit), bench.circuit
-    names = circuit.devices.net_names
-    start, end = (names[bench.net(cell, port)] for port in (query.input, query.output))
+class ArcGraph(NamedTuple):
+    """The timing graph of one measured arc.
+
+    ``net``, ``rising`` and ``level`` (arcs on the longest way there) say what each node is;
+    ``source``, ``target`` and ``arc`` (index into ``Circuit.arcs``) what each arc is; then come the
+    nodes it starts at and the one it ends at.
+    """
+
+    net: IntArray
+    rising: BoolArray
+    level: IntArray
+    source: IntArray
+    target: IntArray
+    arc: IntArray
+    start: IntArray
+    end: int
+
+
+def arc_graphs(bench: Bench, queries: Sequence[Query]) -> tuple[ArcGraph | None, ...]:
+    """Return the timing graph of each measured arc; None where no path leads along it.
+
+    All cells measured from one place among their pins to another are looked at together.
+    """
+    alike: dict[tuple[int, int], list[tuple[int, int]]] = {}
+    for index, query in enumerate(queries):
+        number = bench.number(query.subcircuit)
+        cell = bench.cells[number]
+        places = cell.place(query.input), cell.place(query.output)
+        alike.setdefault(places, []).append((index, number))
+    found: dict[int, ArcGraph | None] = {}
+    for (start, end), some in alike.items():
+        graph = _between(bench, start, end)
+        if graph is not None:
+            cell_of_node = _cells(bench, graph, start, {number for _, number in some})
+            for index, number in some:
+                nodes = np.flatnonzero(cell_of_node == number)
+                found[index] = _part(graph, nodes, rising=queries[index].rising)
+    return tuple(found.get(index) for index in range(len(queries)))
+
+
+def _between(bench: Bench, start: int, end: int) -> TimingGraph | None:
+    circuit = bench.circuit
+    unit = yardstick(circuit.process)
     try:
-        graph = timing_graph(circuit, yardstick(circuit.process), start=start, end=end)
+        return timing_graph(circuit, unit, start=nets_at(start), end=nets_at(end))
     except NoPathError:
         return None
-    return graph if (graph.rising[graph.end] == query.rising).any() else None
+
+
+def _cells(bench: Bench, graph: TimingGraph, start: int, numbers: set[int]) -> IntArray:
+    """Return the cell each node belongs to, -1 for cells not asked for, shape (nodes,)."""
+    of_net = np.full(len(bench.circuit.devices.net_names), -1, np.int32)
+    for number in sorted(numbers):
+        of_net[bench.net(number, start)] = number
+    found = np.full(len(graph), -1, np.int32)
+    found[graph.start] = of_net[graph.net[graph.start]]
+    for some, first, node in graph.levels:
+        found[node] = found[graph.source[some][first]]
+    return found
+
+
+def _part(graph: TimingGraph, nodes: IntArray, *, rising: bool) -> ArcGraph | None:
+    """Return what a graph holds of some nodes; None where no end has the wanted edge."""
+    number = np.full(len(graph), -1, np.int32)
+    number[nodes] = np.arange(len(nodes))
+    ends = number[graph.end[graph.rising[graph.end] == rising]]
+    ends = ends[ends >= 0]
+    if not len(ends):
+        return None
+    level = np.zeros(len(graph), np.int32)
+    level[graph.target] = 1 + np.searchsorted(
+        graph.level_ends, np.arange(len(graph.target)), side="right"
+    )
+    mine = np.flatnonzero(number[graph.target] >= 0)
+    starts = number[graph.start]
+    return ArcGraph(
+        net=graph.net[nodes],
+        rising=graph.rising[nodes],
+        level=level[nodes],
+        source=number[graph.source[mine]],
+        target=number[graph.target[mine]],
+        arc=graph.arc[mine],
+        start=starts[starts >= 0],
+        end=int(ends[0]),
+    )
 
 
 def build_predictor(
-    bench: Bench, graphs: Sequence[TimingGraph | None], rows: Measurements
+    bench: Bench, graphs: Sequence[ArcGraph | None], rows: Measurements
 ) -> Predictor:
     """Prepare the prediction of measurements.
 
     Parameters
     ----------
     bench : Bench
-    graphs : sequence of TimingGraph
-        One for each query of the measurements that has rows; see `graph_of`.
+    graphs : sequence of ArcGraph
+        One for each query of the measurements that has rows; see `arc_graphs`.
     rows : Measurements
     """
     parts = [
-        _copies(graph, rows.queries[index], np.flatnonzero(rows.query == index))
+        _Copies(graph, np.flatnonzero(rows.query == index))
         for index, graph in enumerate(graphs)
         if graph is not None
     ]
@@ -112,40 +189,29 @@ def build_predictor(
 class _Copies(NamedTuple):
     """A graph once per measurement: ``row`` are the measurements, nodes come copy by copy."""
 
-    graph: TimingGraph
+    graph: ArcGraph
     row: IntArray
-    level: IntArray
-    end: int
-
-
-def _copies(graph: TimingGraph, query: Query, row: IntArray) -> _Copies:
-    level = np.zeros(len(graph), np.int32)
-    level[graph.target] = 1 + np.searchsorted(
-        graph.level_ends, np.arange(len(graph.target)), side="right"
-    )
-    end = int(graph.end[graph.rising[graph.end] == query.rising][0])
-    return _Copies(graph, row, level, end)
 
 
 def _joined(bench: Bench, parts: list[_Copies], rows: Measurements) -> Predictor:
     """Put all copies into one graph, its nodes ordered by level."""
-    sizes = [len(part.graph) * len(part.row) for part in parts]
+    sizes = [len(part.graph.net) * len(part.row) for part in parts]
     begins = np.cumsum([0, *sizes])[:-1].tolist()
 
-    def nodes(pick: Callable[[TimingGraph], IntArray]) -> IntArray:
+    def nodes(pick: Callable[[ArcGraph], IntArray]) -> IntArray:
         """Return nodes of every copy by their number in the joined graph."""
         return np.concatenate(
             [
-                (begin + len(p.graph) * np.arange(len(p.row))[:, None] + pick(p.graph)).ravel()
+                (begin + len(p.graph.net) * np.arange(len(p.row))[:, None] + pick(p.graph)).ravel()
                 for begin, p in zip(begins, parts, strict=True)
             ]
         )
 
-    def spread(pick: Callable[[TimingGraph], NDArray[Any]]) -> NDArray[Any]:
+    def spread(pick: Callable[[ArcGraph], NDArray[Any]]) -> NDArray[Any]:
         """Return what each copy's graph says of its nodes or arcs."""
         return np.concatenate([np.tile(pick(p.graph), len(p.row)) for p in parts])
 
-    level = np.concatenate([np.tile(p.level, len(p.row)) for p in parts])
+    level = np.concatenate([np.tile(p.graph.level, len(p.row)) for p in parts])
     order = np.argsort(level, kind="stable")
     number = np.empty(len(order), np.int32)
     number[order] = np.arange(len(order))
@@ -155,7 +221,7 @@ def _joined(bench: Bench, parts: list[_Copies], rows: Measurements) -> Predictor
     arc_row = np.concatenate([np.repeat(p.row, len(p.graph.arc)) for p in parts])[by_target]
     end_of_row = np.empty(len(rows), np.int32)
     for begin, p in zip(begins, parts, strict=True):
-        end_of_row[p.row] = number[begin + len(p.graph) * np.arange(len(p.row)) + p.end]
+        end_of_row[p.row] = number[begin + len(p.graph.net) * np.arange(len(p.row)) + p.graph.end]
     arc = spread(lambda graph: graph.arc)[by_target]
     net = spread(lambda graph: graph.net)[order]
     arc_level = level[order][target[by_target]]

@@ -37,17 +37,17 @@ if TYPE_CHECKING:
     from evenstage.fitting.bench import Bench
     from evenstage.fitting.constants import Unknown
     from evenstage.fitting.measurements import Measurements
-    from evenstage.fitting.prediction import Predicted
+    from evenstage.fitting.prediction import ArcGraph, Predicted
     from evenstage.netlist.devices import FloatArray
     from evenstage.process.process import Process
-    from evenstage.timing.graph import TimingGraph
 
 _LIGHT_FANOUT: Final = 1.0
 _HEAVY_FANOUT: Final = 16.0
 _SPARE: Final = 1.2
 
-#: Weight of an output transition and of an input capacitance; a delay has 1.
-_HALF: Final = 0.5
+#: Weights of an output transition and of an input capacitance; a delay has 1.
+_OF_TRANSITION: Final = 0.5
+_OF_CAP: Final = 0.5
 
 #: Residuals well beyond this count by their size, not by its square.
 _ROBUST: Final = 0.1
@@ -151,7 +151,7 @@ class Problem:
     """Measurements of a bench, and what is to be found from them."""
 
     bench: Bench
-    graphs: Sequence[TimingGraph | None]
+    graphs: Sequence[ArcGraph | None]
     rows: Measurements
     unknowns: Sequence[Unknown]
 
@@ -203,8 +203,8 @@ class Problem:
             found = errors(predictor(process), rows, window)
             parts = (
                 found.delay,
-                _HALF * found.output_transition,
-                _HALF * found.input_cap[once],
+                _OF_TRANSITION * found.output_transition,
+                _OF_CAP * found.input_cap[once],
             )
             return np.concatenate(parts)
 
