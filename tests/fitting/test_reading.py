@@ -47,7 +47,8 @@ class TestReadMeasurements:
             (
                 HEADER + "inv,a,y,up,40p,3f,12p\n",
                 (
-                    "delays.csv:2:9: edge must be rise or fall (of the output), got 'up' (bad-edge)\n"
+                    "delays.csv:2:9: edge must be rise or fall (of the output), got 'up' "
+                    "(bad-edge)\n"
                     "    inv,a,y,up,40p,3f,12p\n"
                     "            ^^"
                 ),
@@ -128,8 +129,8 @@ class TestReadMeasurements:
             (
                 "# nothing\n\n",
                 (
-                    "'delays.csv' is empty; its first line must name the columns: subcircuit, input, "
-                    "output, edge, transition, load, delay (no-measurements)"
+                    "'delays.csv' is empty; its first line must name the columns: subcircuit, "
+                    "input, output, edge, transition, load, delay (no-measurements)"
                 ),
             ),
         ],
