@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -137,6 +138,34 @@ class TestLevel1:
         path = simulated(text, some, brief).before.paths[0]
         assert_allclose(path.delay, 1.61057 * 100e-12 / 2e-3, rtol=2e-3, atol=0)
         assert not simulated(text, some, brief).scaled
+
+
+class TestWires:
+    def test_a_line_takes_its_share_of_r_c(self) -> None:
+        # A distributed line behind an ideal source: 0.379 R C to 50 % (series solution).
+        sections, resistance, cap = 25, 20e3, 200e-15
+        nodes = ["p", *(f"p{i}" for i in range(1, sections)), "q"]
+        cards = [inverter("big", "a", "p", 2000.0, 4000.0), inverter("end", "q", "y", 0.1, 0.2)]
+        for i, (here, there) in enumerate(pairwise(nodes)):
+            cards.append(f"r{i} {here} {there} {resistance / sections:.9g}")
+            cards += [
+                f"c{i}{side} {node} vss {cap / sections / 2:.9g}"
+                for side, node in (("a", here), ("b", there))
+            ]
+        brief = Brief(inputs=(InputBrief(nets=(Pattern("a"),), transition=1e-13),))
+        path = simulated(block("\n".join(cards), "a y"), process(), brief).before.paths[0]
+        assert path.nodes > sections
+        assert_allclose(path.stages[0].delay, 0.379 * resistance * cap, rtol=0.03, atol=0)
+        assert_allclose(path.estimated_delay, path.delay, rtol=0.15, atol=0)
+
+    def test_an_input_is_driven_where_its_name_stands(self) -> None:
+        cards = [inverter("i", "far", "y", 1.0, 2.0), "r1 a far 50k", "c1 y vss 1f"]
+        brief = Brief(inputs=(InputBrief(nets=(Pattern("a"),), transition=1e-13),))
+        slow = simulated(block("\n".join(cards), "a y"), process(), brief).before.paths[0]
+        cards[1] = "r1 a far 1"
+        fast = simulated(block("\n".join(cards), "a y"), process(), brief).before.paths[0]
+        # The gate's 3 fF behind 50 kohm are 150 ps; it switches near half of that.
+        assert 70e-12 < slow.delay - fast.delay < 150e-12
 
 
 class TestInnerNodes:

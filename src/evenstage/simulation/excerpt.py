@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.simulation.layout import lay_out
+from evenstage.simulation.layout import LOW, OUTSIDE, lay_out
 from evenstage.simulation.logic import switches
 from evenstage.simulation.parameters import known_channels
 from evenstage.simulation.ramps import Ramps
@@ -41,6 +41,9 @@ class Excerpt:
     layout : Layout
     ramps : Ramps
     initial : FloatArray, V, shape (unknown,)
+    watched : tuple of int
+        Node at which each net of the route is seen: where the next gate's switching transistors
+        hang, and where the last net's name is.
     held : dict of int to bool
         Side inputs and what they are held at.
     side_gates : int
@@ -51,6 +54,7 @@ class Excerpt:
     layout: Layout
     ramps: Ramps
     initial: FloatArray
+    watched: tuple[int, ...]
     held: Levels
     side_gates: int
 
@@ -102,21 +106,35 @@ def excerpt(
     devices = np.concatenate([circuit.gate_devices(gate) for gate in (*route.gates, *side)])
     levels = {net: (level, level) for net, level in held.items()} | _bulks(circuit, devices)
     start = route.nets[0]
-    if drive == 0:
-        levels[start] = route.edges[start]
-    given = np.array(sorted(levels), np.int64)
-    layout = lay_out(
-        circuit, parameters, devices, given, drive=(start, drive) if drive > 0 else None
-    )
-    levels |= {-1: (False, False), -2: route.edges[start]}
+    constant = np.array(sorted(levels), np.int64)
+    layout = lay_out(circuit, parameters, devices, constant, start, drive=drive)
+    levels |= {LOW: (False, False), OUTSIDE: route.edges[start], start: route.edges[start]}
     return Excerpt(
         route=route,
         layout=layout,
         ramps=_ramps(circuit, layout, levels, transition),
-        initial=_initial(circuit, layout, levels | {start: route.edges[start]}),
+        initial=_initial(circuit, layout, levels),
+        watched=_watched(circuit, route, layout),
         held=held,
         side_gates=len(side),
     )
+
+
+def _watched(circuit: Circuit, route: Route, layout: Layout) -> tuple[int, ...]:
+    """Return the node at which each net of a route is seen; the start where it is driven."""
+    block, places = circuit.devices, layout.places
+    is_n = np.array([model.polarity == "n" for model in block.models], bool)[block.model]
+    found = [int(places.named[route.nets[0]])]
+    for net, gate in zip(route.nets[1:], (*route.gates[1:], None), strict=True):
+        place = int(places.named[net])
+        if gate is not None:
+            own = circuit.gate_devices(gate)
+            own = own[block.gate[own] == net]
+            switching = own[is_n[own] == route.edges[net][1]]
+            among = switching if len(switching) else own
+            place = int(places.gate[among[0]]) if len(among) else place
+        found.append(place)
+    return tuple(layout.node(place) for place in found)
 
 
 def _side_gates(

@@ -175,7 +175,7 @@ class _Bench:
             with_gates=self._with_gates,
         )
         supply, unknown = circuit.process.supply, part.layout.equations.unknown
-        on_path = np.array([part.layout.node(net) for net in route.nets])
+        on_path = np.array(part.watched)
         moving = on_path[on_path < unknown]
         goal = np.array([route.edges[int(net)][1] for net in part.layout.net[moving]]) * supply
 
@@ -206,7 +206,7 @@ def _measured(timing: Timing, path: Path, part: Excerpt, waves: Waveforms) -> Si
     """
     circuit, route, layout = timing.circuit, part.route, part.layout
     supply, unknown = circuit.process.supply, layout.equations.unknown
-    nodes = [layout.node(net) for net in route.nets]
+    nodes = part.watched
     crossings: list[float] = []
     for net, node in zip(route.nets, nodes, strict=True):
         rising = route.edges[net][1]
