@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.circuit.function import Literal
+from evenstage.circuit.rows import distinct_rows
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
@@ -54,21 +55,36 @@ class Surroundings:
     Parameters
     ----------
     devices : Devices
-    gates : iterable of (GateForm, AlikeGroups)
+    gates : sequence of (GateForm, AlikeGroups)
         Recognised so far.
+    others : iterable of AlikeGroups
+        Those that will be asked about.
     """
 
-    def __init__(self, devices: Devices, gates: Iterable[tuple[GateForm, AlikeGroups]]) -> None:
+    def __init__(
+        self,
+        devices: Devices,
+        gates: Sequence[tuple[GateForm, AlikeGroups]],
+        others: Iterable[AlikeGroups],
+    ) -> None:
         nets = len(devices.net_names)
         self._nets = nets
         self._complement = np.full(nets, -1, np.int32)
-        heard = []
+        asked = np.zeros(nets, bool)
+        for some in others:
+            for local in {s.gate for s in some.network if s.gate >= 0}:
+                asked[some.nets[:, local]] = True
+        heard = [np.zeros(0, np.int64)]
         for form, some in gates:
             driven = some.nets[:, form.output]
             if isinstance(form.pull_down, Literal):
                 self._complement[driven] = some.nets[:, form.pull_down.net]
-            heard += [driven.astype(np.int64) * nets + some.nets[:, i] for i in form.network.inputs]
-        self._heard = np.unique(np.concatenate(heard)) if heard else np.zeros(0, np.int64)
+            rows = np.flatnonzero(asked[driven])
+            heard += [
+                driven[rows].astype(np.int64) * nets + some.nets[rows, local]
+                for local in (form.network.inputs if len(rows) else ())
+            ]
+        self._heard = np.sort(np.concatenate(heard))
         self._gates_on = np.bincount(devices.gate, minlength=nets)
         self._is_port = np.zeros(nets, bool)
         self._is_port[list(devices.ports)] = True
@@ -87,11 +103,11 @@ class Surroundings:
             self._is_port[some.nets[:, ends]],
         ]
         table = np.concatenate([fact.reshape(len(here), -1) for fact in facts], axis=1)
-        kinds, inverse = np.unique(table, axis=0, return_inverse=True)
+        kinds, inverse = distinct_rows(table)
         sizes = np.cumsum([fact[0].size for fact in facts])[:-1]
         result = []
         for index, kind in enumerate(kinds):
-            complements, feedback, seen, ports = np.split(kind, sizes)
+            complements, feedback, seen, ports = np.split(kind.astype(bool), sizes)
             locals_ = range(some.nets.shape[1])
             context = Context(
                 _pairs(complements, inputs, locals_),
@@ -105,7 +121,11 @@ class Surroundings:
     def _listens(self, inputs: IntArray, ends: IntArray) -> BoolArray:
         """Tell whether the gate that drives an input has a net among its own inputs."""
         pairs = inputs.astype(np.int64)[:, :, None] * self._nets + ends[:, None, :]
-        return np.isin(pairs, self._heard)
+        if not len(self._heard):
+            return np.zeros(pairs.shape, bool)
+        place = np.searchsorted(self._heard, pairs.ravel()).clip(max=len(self._heard) - 1)
+        found: BoolArray = (self._heard[place] == pairs.ravel()).reshape(pairs.shape)
+        return found
 
     def _seen(self, some: AlikeGroups, ends: Sequence[int]) -> BoolArray:
         own = np.zeros(some.nets.shape[1], np.int64)

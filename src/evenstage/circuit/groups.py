@@ -16,6 +16,7 @@ from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
 from evenstage.circuit.network import HIGH, LOW, Switch
+from evenstage.circuit.rows import distinct_rows
 
 if TYPE_CHECKING:
     from evenstage.circuit.apart import Levels
@@ -125,7 +126,7 @@ def _alike(devices: Devices, members: IntArray, numbers: IntArray) -> list[Alike
     is_p = np.array([model.polarity == "p" for model in devices.models])
     polarity = is_p[devices.model[members]].astype(np.int32)
     rows = np.concatenate([polarity[:, :, None], numbers], axis=2).reshape(groups, 4 * size)
-    kinds, inverse = np.unique(rows, axis=0, return_inverse=True)
+    kinds, inverse = distinct_rows(rows)
     order = np.argsort(inverse, kind="stable")
     cuts = np.searchsorted(inverse[order], np.arange(1, len(kinds)))
     result = []

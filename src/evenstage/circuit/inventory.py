@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.circuit.names import device_names
+from evenstage.circuit.storage.elements import first_device
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
@@ -207,9 +208,7 @@ def _entry(circuit: Circuit, gate: int, count: int) -> Entry:
 
 def _stored(circuit: Circuit) -> tuple[Stored, ...]:
     devices = circuit.devices
-    at_net = np.zeros(len(devices.net_names), np.int32)
-    for ends in (devices.source, devices.drain):
-        at_net[ends[::-1]] = np.arange(len(devices))[::-1]
+    at_net = first_device(devices)
     by_place: dict[tuple[int, str], list[tuple[int, Element]]] = {}
     for element in circuit.storage.elements:
         nets = [net for loop in element.loops for net in loop.nets]

@@ -61,7 +61,7 @@ def _static(alike: Sequence[AlikeGroups]) -> Sorted:
 
 def _in_context(devices: Devices, found: Sorted) -> Sorted:
     """Try again the networks that are something else once their surroundings are known."""
-    surroundings = Surroundings(devices, found.gates)
+    surroundings = Surroundings(devices, found.gates, [some for _, some in found.strange])
     gates, strange = list(found.gates), []
     for reason, some in found.strange:
         for context, rows in surroundings.split(some):

@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.circuit.network import LOW
+from evenstage.circuit.tables import arcs_of
 from evenstage.errors import Notice
 
 if TYPE_CHECKING:
@@ -69,11 +70,12 @@ def ratios(circuit: Circuit, some: AlikeGates, weak: Weak) -> FloatArray:
         (1 / (1 / own[:, list(parallel)]).sum(axis=1) for parallel in weak.devices),
         np.zeros(len(own)),
     )
-    arcs = circuit.arcs
-    pull = np.zeros(len(circuit))
+    arcs = arcs_of((some,), circuit.electrical, circuit.wire_cap + circuit.apart_cap)
+    pull = np.zeros(len(own))
     against = arcs.rising == (weak.supply == LOW)
-    np.maximum.at(pull, arcs.gate[against], arcs.output_resistance[against])
-    mine = pull[some.gates]
+    row = np.searchsorted(some.gates, arcs.gate[against])
+    np.maximum.at(pull, row, arcs.output_resistance[against])
+    mine = pull
     if not weak.is_keeper:
         # Arcs are slowed by their load already: 1 / net = 1 / pull - 1 / load.
         mine = mine * held / (mine + held)

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.circuit.storage.loops import Feedback
+from evenstage.circuit.storage.loops import DrawnLoops, Feedback
 from evenstage.circuit.storage.reading import (
     C_ELEMENT,
     CELL,
@@ -24,7 +24,6 @@ if TYPE_CHECKING:
     from evenstage.circuit.groups import AlikeGroups
     from evenstage.circuit.network import BoolArray
     from evenstage.circuit.storage.phases import Phases
-    from evenstage.circuit.storage.reading import Reading
     from evenstage.netlist.devices import Devices, IntArray
 
 FLIP_FLOP = "flip-flop"
@@ -131,18 +130,15 @@ def find_storage(
     """Find the loops of a block and read them."""
     feedback = Feedback(devices, gates, strange)
     held = _held_by_keepers(gates, len(devices.net_names))
-    found = []
-    for loop in feedback.loops():
-        if len(loop) == 1 and held[loop[0]]:
-            continue
-        nets = tuple(loop.tolist())
-        drawn = feedback.members(loop)
-        reading = read_loop(drawn[0]) if drawn is not None else None
-        if drawn is None or reading is None:
-            found.append(Element(TOO_LARGE, (Loop(nets),)))
-        else:
-            found.append(_element(reading, nets, drawn[1]))
-    elements = _clock_gates(_flip_flops(found, devices.net_names), gates, feedback.phases.root)
+    found = [
+        element
+        for some in feedback.drawn_loops()
+        for element in _elements(some)
+        if not (len(element.loops[0].nets) == 1 and held[element.loops[0].nets[0]])
+    ]
+    found.sort(key=lambda one: one.loops[0].nets[0])
+    joined = _flip_flops(found, _instances(devices, found))
+    elements = _clock_gates(joined, gates, feedback.phases.root)
     return Storage(elements, feedback.phases)
 
 
@@ -155,19 +151,48 @@ def _held_by_keepers(gates: Sequence[tuple[GateForm, AlikeGroups]], nets: int) -
     return held
 
 
-def _element(reading: Reading, nets: tuple[int, ...], signals: list[int]) -> Element:
-    loop = Loop(
-        nets,
-        clocks=tuple((signals[number], level) for number, level in reading.clocks),
-        data=tuple(signals[number] for number in reading.data),
-        writes=tuple((signals[number], level) for number, level in reading.writes),
-    )
-    return Element(reading.kind, (loop,))
+def _elements(some: DrawnLoops) -> list[Element]:
+    """Return the elements of loops drawn alike: they are read once."""
+    reading = read_loop(some.members) if some.members is not None else None
+    if reading is None:
+        return [Element(TOO_LARGE, (Loop(tuple(nets)),)) for nets in some.nets.tolist()]
+    return [
+        Element(
+            reading.kind,
+            (
+                Loop(
+                    tuple(nets),
+                    clocks=tuple((signals[number], level) for number, level in reading.clocks),
+                    data=tuple(signals[number] for number in reading.data),
+                    writes=tuple((signals[number], level) for number, level in reading.writes),
+                ),
+            ),
+        )
+        for nets, signals in zip(some.nets.tolist(), some.signals.tolist(), strict=True)
+    ]
 
 
-def _flip_flops(found: Sequence[Element], names: Sequence[str]) -> tuple[Element, ...]:
+def _instances(devices: Devices, found: Sequence[Element]) -> list[int]:
+    """Return the instance of the first transistor on the first net of each element."""
+    at_net = first_device(devices)
+    first = [one.loops[0].nets[0] for one in found]
+    instances: list[int] = devices.instance[at_net[first]].tolist()
+    return instances
+
+
+def first_device(devices: Devices) -> IntArray:
+    """Return the first transistor with a channel end on each net; 0 for none, shape (nets,)."""
+    found = np.full(len(devices.net_names), len(devices), np.int64)
+    every = np.arange(len(devices))
+    for ends in (devices.drain, devices.source):
+        np.minimum.at(found, ends, every)
+    result: IntArray = np.where(found < len(devices), found, 0).astype(np.int32)
+    return result
+
+
+def _flip_flops(found: Sequence[Element], places: Sequence[int]) -> tuple[Element, ...]:
     """Join two latches to a flip-flop where one stores the other while its clock holds that."""
-    second_of = _second_of(found, _places(found, names))
+    second_of = _second_of(found, places)
     firsts = set(second_of.values())
     result = [
         replace(one, kind=FLIP_FLOP, loops=(*found[second_of[index]].loops, *one.loops))
@@ -179,14 +204,7 @@ def _flip_flops(found: Sequence[Element], names: Sequence[str]) -> tuple[Element
     return tuple(sorted(result, key=lambda one: min(min(loop.nets) for loop in one.loops)))
 
 
-def _places(found: Sequence[Element], names: Sequence[str]) -> list[str]:
-    """Return the path of the instance that holds the first net of each latch."""
-    return [
-        names[one.loops[0].nets[0]].rpartition(".")[0] if one.kind == LATCH else "" for one in found
-    ]
-
-
-def _second_of(found: Sequence[Element], places: Sequence[str]) -> dict[int, int]:
+def _second_of(found: Sequence[Element], places: Sequence[int]) -> dict[int, int]:
     """Return for each latch that shows what another stored that other one.
 
     In a chain of latches of both phases every second one does. Those of one instance belong
@@ -209,7 +227,7 @@ def _second_of(found: Sequence[Element], places: Sequence[str]) -> dict[int, int
     joined: dict[int, int] = {}
     firsts: set[int] = set()
     for index, other in pairs:
-        if not {index, other} & (joined.keys() | firsts):
+        if joined.keys().isdisjoint((index, other)) and firsts.isdisjoint((index, other)):
             joined[index] = other
             firsts.add(other)
     return joined

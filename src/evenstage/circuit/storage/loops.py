@@ -10,8 +10,9 @@ from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
 from evenstage.circuit.function import Literal
+from evenstage.circuit.rows import distinct_rows
 from evenstage.circuit.storage.phases import Phases, phases
-from evenstage.circuit.storage.reading import Member
+from evenstage.circuit.storage.reading import BITS_MAX, Member
 from evenstage.circuit.storage.switching import Wiring, influence
 
 if TYPE_CHECKING:
@@ -34,6 +35,24 @@ class _Drawing:
     nets: IntArray
     gates: tuple[int, ...]
     ends: tuple[int, ...]
+
+
+@dataclass(frozen=True)
+class DrawnLoops:
+    """Loops drawn alike, with the same signals tied together.
+
+    Parameters
+    ----------
+    members : tuple of Member, optional
+        The loop as it is read; None for one that is too large.
+    nets : IntArray, shape (loops, nets of a loop)
+    signals : IntArray, shape (loops, signals)
+        Net of each signal.
+    """
+
+    members: tuple[Member, ...] | None
+    nets: IntArray
+    signals: IntArray
 
 
 class Feedback:
@@ -133,7 +152,7 @@ class Feedback:
         # The number of each input's signal: the first input with the same root.
         first = (roots[:, :, None] == roots[:, None, :]).argmax(axis=2)
         table = np.concatenate([first, inverted, free], axis=1)
-        kinds, inverse = np.unique(table, axis=0, return_inverse=True)
+        kinds, inverse = distinct_rows(table)
         inputs = len(some.gates)
         for index, kind in enumerate(kinds.tolist()):
             rows = np.flatnonzero(inverse == index)
@@ -152,29 +171,72 @@ class Feedback:
             nets = [roots[rows][:, sorted(set(kind[:inputs]))], some.nets[rows][:, ends]]
             yield rows, wiring, np.concatenate(nets, axis=1)
 
-    def members(self, loop: IntArray) -> tuple[tuple[Member, ...], list[int]] | None:
-        """Return the loop as it is read, and the net of each of its signals."""
-        signals = {int(net): number for number, net in enumerate(loop)}
-        members = []
-        for net in loop.tolist():
-            if self._drawing_of[net] < 0:
-                return None
-            some = self._drawings[int(self._drawing_of[net])]
-            here = some.nets[int(self._row_of[net])]
-            signal = [(-1, False)] * len(here)
-            for gate in some.gates:
-                root = int(self.phases.root[here[gate]])
-                number = signals.setdefault(root, len(signals))
-                signal[gate] = (number, bool(self.phases.inverted[here[gate]]))
-            free = tuple(
-                (end, signals.setdefault(int(here[end]), len(signals)))
-                for end in some.ends
-                if self._free[here[end]]
+    def drawn_loops(self) -> Iterator[DrawnLoops]:
+        """Yield the loops of a block, those drawn alike together."""
+        by_size: dict[int, list[IntArray]] = {}
+        for loop in self.loops():
+            by_size.setdefault(len(loop), []).append(loop)
+        for loops in by_size.values():
+            nets = np.stack(loops)
+            if nets.shape[1] > BITS_MAX:
+                yield from (DrawnLoops(None, loop[None, :], loop[None, :]) for loop in nets)
+                continue
+            place = np.concatenate([self._drawing_of[nets], self._local_of[nets]], axis=1)
+            kinds, inverse = distinct_rows(place)
+            for index, kind in enumerate(kinds.tolist()):
+                yield from self._alike(nets[inverse == index], kind[: nets.shape[1]])
+
+    def _alike(self, loops: IntArray, drawings: list[int]) -> Iterator[DrawnLoops]:
+        """Yield loops through the same drawings, those with signals tied alike together."""
+        columns, inverted, free, count = [loops], [], [], loops.shape[1]
+        parts = [self._drawings[number] for number in drawings]
+        for member, some in enumerate(parts):
+            here = some.nets[self._row_of[loops[:, member]]]
+            columns += [self.phases.root[here[:, some.gates]], here[:, some.ends]]
+            inverted.append(self.phases.inverted[here[:, some.gates]])
+            free.append(self._free[here[:, some.ends]])
+        table = np.concatenate(columns, axis=1)
+        # The first column with the same net, for every column.
+        first = np.stack(
+            [(table == table[:, [c]]).argmax(axis=1) for c in range(table.shape[1])], axis=1
+        )
+        facts = np.concatenate([first, *inverted, *free], axis=1)
+        kinds, inverse = distinct_rows(facts)
+        for index, kind in enumerate(kinds.tolist()):
+            rows = np.flatnonzero(inverse == index)
+            members, used = _members(kind, parts, table.shape[1], count)
+            yield DrawnLoops(
+                tuple(
+                    Member(wiring, int(self._local_of[net]))
+                    for wiring, net in zip(members, loops[rows[0]].tolist(), strict=True)
+                ),
+                loops[rows],
+                table[rows][:, used],
             )
-            members.append(
-                Member(Wiring(some.network, tuple(signal), free), int(self._local_of[net]))
-            )
-        return tuple(members), list(signals)
+
+
+def _members(
+    kind: list[int], parts: list[_Drawing], width: int, count: int
+) -> tuple[list[Wiring], list[int]]:
+    """Return the wiring of each net of a loop, and the table columns that hold its signals."""
+    first, rest = kind[:width], iter(kind[width:])
+    inverted = [[bool(next(rest)) for _ in some.gates] for some in parts]
+    free = [[bool(next(rest)) for _ in some.ends] for some in parts]
+    number = {column: column for column in range(count)}
+    wirings, at = [], count
+    for some, phases_, is_free in zip(parts, inverted, free, strict=True):
+        nets = 1 + max((*some.gates, *some.ends))
+        signal = [(-1, False)] * nets
+        for gate, phase in zip(some.gates, phases_, strict=True):
+            signal[gate] = (number.setdefault(first[at], len(number)), phase)
+            at += 1
+        ends = []
+        for end, outside in zip(some.ends, is_free, strict=True):
+            if outside:
+                ends.append((end, number.setdefault(first[at], len(number))))
+            at += 1
+        wirings.append(Wiring(some.network, tuple(signal), tuple(ends)))
+    return wirings, list(number)
 
 
 def _phases(gates: Sequence[tuple[GateForm, AlikeGroups]], nets: int) -> Phases:
