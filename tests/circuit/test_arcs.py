@@ -7,25 +7,27 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from evenstage.circuit.arcs import NO_OWNER, Bundle, joined, ranges
+from evenstage.circuit.arcs import NO_OWNER, Arcs, joined, ranges, uniform
 
 
-def bundle(gates: list[int], charges: int, terms: int, seed: int) -> Bundle:
+def table(gates: list[int], charges: int, terms: int, seed: int) -> Arcs:
     random, k = np.random.default_rng(seed), len(gates)
+    nets, owners = np.arange(5, dtype=np.int32), np.arange(-1, 4, dtype=np.int32)
+    charge = [
+        (random.choice(nets, k), random.choice(owners, k), random.uniform(1, 2, k))
+        for _ in range(charges)
+    ]
+    term = [(random.uniform(1, 2, k), random.choice(owners, k)) * 2 for _ in range(terms)]
+    charged, own = uniform(k, charge, term)
     constants = random.uniform(0.1, 1, (4, k))
-    return Bundle(
+    return Arcs(
         gate=np.array(gates, np.int32),
-        input=random.integers(0, 5, k, np.int32),
-        output=random.integers(0, 5, k, np.int32),
-        rising=bool(seed % 2),
-        input_rising=bool(seed % 3),
-        charge_net=random.integers(0, 5, (k, charges), np.int32),
-        charge_owner=random.integers(-1, 4, (k, charges), np.int32),
-        charge_resistance=random.uniform(1, 2, (k, charges)),
-        own_resistance=random.uniform(1, 2, (k, terms)),
-        own_resistance_owner=random.integers(-1, 4, (k, terms), np.int32),
-        own_capacitance=random.uniform(1, 2, (k, terms)),
-        own_capacitance_owner=random.integers(-1, 4, (k, terms), np.int32),
+        input=random.choice(nets, k),
+        output=random.choice(nets, k),
+        rising=np.full(k, bool(seed % 2)),
+        input_rising=np.full(k, bool(seed % 3)),
+        charges=charged,
+        own=own,
         slope=constants[0],
         slope_power=constants[1],
         shape=constants[2],
@@ -33,12 +35,12 @@ def bundle(gates: list[int], charges: int, terms: int, seed: int) -> Bundle:
     )
 
 
-BUNDLES = st.lists(
+TABLES = st.lists(
     st.builds(
-        bundle,
+        table,
         st.lists(st.integers(0, 3), min_size=1, max_size=4),
         st.integers(1, 3),
-        st.integers(0, 3),
+        st.integers(1, 3),
         st.integers(1, 1000),
     ),
     min_size=1,
@@ -47,37 +49,39 @@ BUNDLES = st.lists(
 
 
 class TestJoined:
-    @given(BUNDLES)
-    def test_each_arc_keeps_its_sum(self, bundles: list[Bundle]) -> None:
-        arcs, cap = joined(bundles), np.linspace(1, 2, 5)
-        rows = [(int(b.gate[k]), b, k) for b in bundles for k in range(len(b.gate))]
+    @given(TABLES)
+    def test_each_arc_keeps_its_sum(self, tables: list[Arcs]) -> None:
+        arcs, cap = joined(tables), np.linspace(1, 2, 5)
+        rows = [(int(t.gate[k]), t, k) for t in tables for k in range(len(t))]
         rows.sort(key=lambda row: row[0])
         assert arcs.gate.tolist() == [gate for gate, _, _ in rows]
-        expected = [
-            sum(r * cap[n] for r, n in zip(b.charge_resistance[k], b.charge_net[k], strict=True))
-            + sum(b.own_resistance[k] * b.own_capacitance[k])
-            for _, b, k in rows
-        ]
+        expected = []
+        for _, part, k in rows:
+            charge = range(part.charges.head[k], part.charges.head[k + 1])
+            term = range(part.own.head[k], part.own.head[k + 1])
+            total = sum(part.charges.resistance[i] * cap[part.charges.net[i]] for i in charge)
+            total += sum(part.own.resistance[i] * part.own.capacitance[i] for i in term)
+            expected.append(total)
         assert arcs.elmore(cap) == pytest.approx(expected, rel=1e-12)
         beside = arcs.elmore(np.stack([cap, 2 * cap], axis=1))
         assert beside[:, 0] == pytest.approx(expected, rel=1e-12)
         assert beside[:, 1] == pytest.approx(arcs.elmore(2 * cap), rel=1e-12)
-        assert arcs.rising.tolist() == [b.rising for _, b, _ in rows]
-        assert arcs.slope.tolist() == [b.slope[k] for _, b, k in rows]
+        assert arcs.rising.tolist() == [bool(t.rising[k]) for _, t, k in rows]
+        assert arcs.slope.tolist() == [t.slope[k] for _, t, k in rows]
 
-    @given(BUNDLES)
-    def test_gates_along_are_those_of_the_charges(self, bundles: list[Bundle]) -> None:
-        arcs = joined(bundles)
+    @given(TABLES)
+    def test_gates_along_are_those_of_the_charges(self, tables: list[Arcs]) -> None:
+        arcs = joined(tables)
         last = len(arcs) - 1
         owners = arcs.charges.owner[arcs.charges.arc == last].tolist()
         along = arcs.gates_along(np.array([last], np.int32)).tolist()
         assert along == [owner for owner in owners if owner != NO_OWNER]
 
-    @given(BUNDLES)
+    @given(TABLES)
     def test_output_resistance_counts_the_charges_of_the_output_alone(
-        self, bundles: list[Bundle]
+        self, tables: list[Arcs]
     ) -> None:
-        arcs = joined(bundles)
+        arcs = joined(tables)
         step = np.zeros(5)
         for net in range(5):
             step[:] = np.arange(5) == net

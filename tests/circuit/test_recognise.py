@@ -83,20 +83,23 @@ class TestGates:
         kinds = [circuit.gate_kind(gate) for gate in range(len(circuit))]
         assert kinds == ["tri-state gate", "static gate"]
 
-    def test_a_tapped_inner_node_is_not_static(self) -> None:
+    def test_a_tapped_inner_node_makes_a_stage_of_one_gate(self) -> None:
         cards = nand("n", ["a", "b"], "y", 2, 2) + "\n" + inverter("i", "nn1", "z", 1, 2)
         circuit = circuit_of(block(cards, "a b y z vdd vss"))
-        assert functions(circuit) == {"z": "!nn1"}
-        assert [some.reason for some in circuit.not_understood] == [
-            "an inner node of its networks is used as a signal"
-        ]
+        assert functions(circuit) == {"y": "!(a & b)", "z": "!nn1"}
+        assert not circuit.not_understood
+        (stage,) = circuit.stages
+        assert stage.gates.shape == (1, 1)
+        driven = {circuit.devices.net_names[net] for net in circuit.driven.tolist()}
+        assert driven == {"y", "nn1", "z"}
 
-    def test_only_the_tapped_one_of_equal_gates_is_set_aside(self) -> None:
+    def test_only_the_tapped_one_of_equal_gates_is_a_stage(self) -> None:
         leaf = ".subckt g a b y t\nmn1 y a t vss nx w=2u l=0.1u\nmn2 t b vss vss nx w=2u l=0.1u\n"
         leaf += "mp1 y a vdd vdd px w=2u l=0.1u\nmp2 y b vdd vdd px w=2u l=0.1u\n.ends\n"
         calls = "x1 a b y1 t1 g\nx2 a b y2 t2 g\n" + inverter("i", "t2", "z", 1, 2)
         circuit = circuit_of(f"{HEAD}{leaf}.subckt top a b y1 y2 z\n{calls}\n.ends\n")
-        assert set(functions(circuit)) == {"y1", "z"}
+        assert set(functions(circuit)) == {"y1", "y2", "z"}
+        assert [len(stage.gates) for stage in circuit.stages] == [1]
 
     def test_a_gate_no_input_moves_is_none(self) -> None:
         """Its p network leads nowhere, so that the output is always low."""
@@ -122,7 +125,7 @@ class TestNotices:
             if notice.code == "not-understood"
             for name in notice.names
         }
-        assert named == {"min", "mip", "mt1", "mt2", "mk"}
+        assert named == {"mk"}
         gated = (circuit.gate_of_device >= 0).sum()
         assert gated + len(named) == len(circuit.devices)
 

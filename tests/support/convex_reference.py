@@ -46,20 +46,20 @@ def reference_objective(problem: Problem, goal: Goal) -> float:
 
 
 def _sums(terms: Monomials, y: cp.Variable, rows: int) -> cp.Expression:
-    """Return each row's sum of monomials as a convex expression."""
-    count, sizes = len(terms.row), y.size
-    entry = np.arange(count)
-    up, down = terms.plus < sizes, terms.minus < sizes
+    """Return each row's sum of monomials as a convex expression; equal ratios are one cone."""
+    pairs, ratio = np.unique(np.stack([terms.plus, terms.minus]), axis=1, return_inverse=True)
+    entry, sizes = np.arange(pairs.shape[1]), y.size
+    up, down = pairs < sizes
     exponent = csr_array(
         (
             np.concatenate([np.ones(up.sum()), -np.ones(down.sum())]),
             (
                 np.concatenate([entry[up], entry[down]]),
-                np.concatenate([terms.plus[up], terms.minus[down]]),
+                np.concatenate([pairs[0, up], pairs[1, down]]),
             ),
         ),
-        shape=(count, sizes),
+        shape=(len(entry), sizes),
     )
-    add = csr_array((np.ones(count), (terms.row, entry)), shape=(rows, count))
-    sums: cp.Expression = cp.Constant(add) @ exp(exponent @ y + np.log(terms.coefficient))
+    add = csr_array((terms.coefficient, (terms.row, ratio)), shape=(rows, len(entry)))
+    sums: cp.Expression = cp.Constant(add) @ exp(exponent @ y)
     return sums

@@ -29,6 +29,12 @@ if TYPE_CHECKING:
 
 _Kind = TypeVar("_Kind", bound=np.generic)
 
+Charge = tuple["IntArray", "IntArray", "FloatArray"]
+"""Net, owner and resistance of one charge of many arcs."""
+OwnTerm = tuple["FloatArray", "IntArray", "FloatArray", "IntArray"]
+"""Resistance and its owner, capacitance and its owner, of one term of many arcs."""
+Lists = tuple["Charges", "OwnTerms"]
+
 NO_OWNER = -1
 """Owner of a resistance or capacitance that does not scale."""
 
@@ -155,66 +161,49 @@ class Arcs:
         return found
 
 
-@dataclass(frozen=True)
-class Bundle:
-    """One arc of many alike stages; shape ``(k,)`` or, of charges and terms, ``(k, each)``."""
-
-    gate: IntArray
-    input: IntArray
-    output: IntArray
-    rising: bool
-    input_rising: bool
-    charge_net: IntArray
-    charge_owner: IntArray
-    charge_resistance: FloatArray
-    own_resistance: FloatArray
-    own_resistance_owner: IntArray
-    own_capacitance: FloatArray
-    own_capacitance_owner: IntArray
-    slope: FloatArray
-    slope_power: FloatArray
-    shape: FloatArray
-    shape_carry: FloatArray
+def uniform(count: int, charge: Sequence[Charge], own: Sequence[OwnTerm]) -> Lists:
+    """Return charges and own terms of arcs that all have the same ones, columns (arcs,)."""
+    heads = [np.arange(count + 1, dtype=np.int32) * len(some) for some in (charge, own)]
+    c, o = (
+        [np.stack(column, axis=1).ravel() for column in zip(*some, strict=True)]
+        for some in (charge, own)
+    )
+    return Charges(heads[0], *c), OwnTerms(heads[1], *o)
 
 
-def joined(bundles: Sequence[Bundle]) -> Arcs:
-    """Put bundles into one table, ordered by gate; those of one gate in the order given."""
-    gate = _column([b.gate for b in bundles])
-    order = np.argsort(gate, kind="stable")
-    each = [len(b.gate) for b in bundles]
+def joined(parts: Sequence[Arcs]) -> Arcs:
+    """Put tables into one, ordered by gate; arcs of one gate in the order given."""
+    order = np.argsort(np.concatenate([part.gate for part in parts]), kind="stable")
 
     def ordered(columns: Sequence[NDArray[_Kind]]) -> NDArray[_Kind]:
-        return _column(columns)[order]
+        return np.concatenate(columns)[order]
 
-    def flags(values: Sequence[bool]) -> BoolArray:
-        result: BoolArray = np.repeat(np.array(values, bool), each)[order]
-        return result
-
-    charge_head, charge = _csr([b.charge_net.shape for b in bundles], order)
-    own_head, own = _csr([b.own_resistance.shape for b in bundles], order)
+    charges, own = [part.charges for part in parts], [part.own for part in parts]
+    charge_head, charge = _csr([some.head for some in charges], order)
+    own_head, term = _csr([some.head for some in own], order)
     return Arcs(
-        gate=gate[order],
-        input=ordered([b.input for b in bundles]),
-        output=ordered([b.output for b in bundles]),
-        rising=flags([b.rising for b in bundles]),
-        input_rising=flags([b.input_rising for b in bundles]),
+        gate=ordered([part.gate for part in parts]),
+        input=ordered([part.input for part in parts]),
+        output=ordered([part.output for part in parts]),
+        rising=ordered([part.rising for part in parts]),
+        input_rising=ordered([part.input_rising for part in parts]),
         charges=Charges(
             head=charge_head,
-            net=_column([b.charge_net for b in bundles])[charge],
-            owner=_column([b.charge_owner for b in bundles])[charge],
-            resistance=_column([b.charge_resistance for b in bundles])[charge],
+            net=np.concatenate([some.net for some in charges])[charge],
+            owner=np.concatenate([some.owner for some in charges])[charge],
+            resistance=np.concatenate([some.resistance for some in charges])[charge],
         ),
         own=OwnTerms(
             head=own_head,
-            resistance=_column([b.own_resistance for b in bundles])[own],
-            resistance_owner=_column([b.own_resistance_owner for b in bundles])[own],
-            capacitance=_column([b.own_capacitance for b in bundles])[own],
-            capacitance_owner=_column([b.own_capacitance_owner for b in bundles])[own],
+            resistance=np.concatenate([some.resistance for some in own])[term],
+            resistance_owner=np.concatenate([some.resistance_owner for some in own])[term],
+            capacitance=np.concatenate([some.capacitance for some in own])[term],
+            capacitance_owner=np.concatenate([some.capacitance_owner for some in own])[term],
         ),
-        slope=ordered([b.slope for b in bundles]),
-        slope_power=ordered([b.slope_power for b in bundles]),
-        shape=ordered([b.shape for b in bundles]),
-        shape_carry=ordered([b.shape_carry for b in bundles]),
+        slope=ordered([part.slope for part in parts]),
+        slope_power=ordered([part.slope_power for part in parts]),
+        shape=ordered([part.shape for part in parts]),
+        shape_carry=ordered([part.shape_carry for part in parts]),
     )
 
 
@@ -228,14 +217,9 @@ def ranges(begin: NDArray[np.integer], count: NDArray[np.integer]) -> IntArray:
     return result
 
 
-def _column(parts: Sequence[NDArray[_Kind]]) -> NDArray[_Kind]:
-    """Put the columns of several tables under each other, the entries of a row in a row."""
-    return np.concatenate([part.ravel() for part in parts])
-
-
-def _csr(shapes: Sequence[tuple[int, ...]], order: NDArray[np.intp]) -> tuple[IntArray, IntArray]:
-    """Return where the entries of each ordered arc begin, and their places in the bundles."""
-    count = np.repeat([shape[1] for shape in shapes], [shape[0] for shape in shapes])
+def _csr(heads: Sequence[IntArray], order: NDArray[np.intp]) -> tuple[IntArray, IntArray]:
+    """Return where the entries of each ordered arc begin, and their places in the tables."""
+    count = np.concatenate([np.diff(head) for head in heads])
     begin = np.cumsum(count) - count
     head = np.concatenate([[0], np.cumsum(count[order])]).astype(np.int32)
     return head, ranges(begin[order], count[order])

@@ -11,8 +11,9 @@ import numpy as np
 
 from evenstage.circuit.capacitance import at_nets, capacitor_values, on_nets, on_nodes
 from evenstage.circuit.electrical import Electrical, electrical
-from evenstage.circuit.function import inverted_text
+from evenstage.circuit.function import inverted_text, text
 from evenstage.circuit.names import Names
+from evenstage.circuit.stage_tables import AlikeStages, stage_arcs, stage_pins
 from evenstage.circuit.tables import AlikeGates, Pins, arcs_of, pins_of
 from evenstage.circuit.wiring import WireLoads, wire_loads
 
@@ -65,6 +66,10 @@ class Circuit:
     supplies : Supplies
     alike : tuple of AlikeGates
         Gates by form; every gate in exactly one.
+    stages : tuple of AlikeStages
+        Groups that are several gates; their arcs run through more than one.
+    drive : FloatArray, ohm, shape (nets,)
+        Resistance of what drives each net from outside.
     not_understood : tuple of NotUnderstood
     apart : tuple of Apart
         Devices outside all logic (decoupling, dummies, ties): they only load their nets.
@@ -91,6 +96,8 @@ class Circuit:
     process: Process
     supplies: Supplies
     alike: tuple[AlikeGates, ...] = field(repr=False)
+    stages: tuple[AlikeStages, ...] = field(repr=False)
+    drive: FloatArray = field(repr=False)
     not_understood: tuple[NotUnderstood, ...]
     apart: tuple[Apart, ...] = field(repr=False)
     storage: Storage = field(repr=False)
@@ -156,7 +163,8 @@ class Circuit:
     @cached_property
     def pins(self) -> Pins:
         """Input pins of all gates."""
-        return pins_of(self.alike, self.electrical)
+        channels = [pins for some in self.stages for pins in stage_pins(some, self.electrical)]
+        return pins_of(self.alike, self.electrical, channels)
 
     @cached_property
     def _pins_by_net(self) -> tuple[IntArray, IntArray]:
@@ -173,7 +181,9 @@ class Circuit:
     @cached_property
     def arcs(self) -> Arcs:
         """Arcs of all gates."""
-        return arcs_of(self.alike, self.electrical, self.wire_cap + self.apart_cap)
+        values, inner = self.electrical, self.wire_cap + self.apart_cap
+        through = [stage_arcs(some, values, self.drive) for some in self.stages]
+        return arcs_of(self.alike, values, inner, through)
 
     @cached_property
     def net_cap(self) -> FloatArray:
@@ -233,7 +243,13 @@ class Circuit:
     def gate_function(self, gate: int) -> str:
         """Return the Boolean function of a gate in net names local to its instance."""
         form = self.alike[self.gate_form[gate]].form
-        return inverted_text(form.pull_down, lambda local: self.local_name(gate, local))
+
+        def name(local: int) -> str:
+            return self.local_name(gate, local)
+
+        if form.function is not None:
+            return text(form.function, name)
+        return inverted_text(form.pull_down, name)
 
     def local_name(self, gate: int, local: int) -> str:
         """Return a local net of a gate by the name it has where the gate is drawn.
@@ -301,14 +317,31 @@ class Circuit:
         for gate, net in zip(self.pins.gate.tolist(), self.pins.net.tolist(), strict=True):
             if driver[net] >= 0:
                 graph.add_edge(int(driver[net]), gate, **{NET: net})
+        for some in self.stages:
+            for part, node in dict.fromkeys((arc.part, arc.output) for arc in some.form.arcs):
+                pairs = zip(some.gates[:, part].tolist(), some.nets[:, node].tolist(), strict=True)
+                for gate, net in pairs:
+                    heard = self.pins.gate[self.pins_on(net)].tolist()
+                    graph.add_edges_from((gate, other, {NET: net}) for other in heard)
         return graph
 
     @cached_property
     def driver_of_net(self) -> IntArray:
-        """Gate that drives each net, -1 for none, shape (nets,)."""
+        """Gate that drives each net, one of several, -1 for none, shape (nets,)."""
         driver = np.full(len(self.devices.net_names), -1, np.int32)
-        driver[self.gate_output] = np.arange(len(self))
+        alone = np.ones(len(self), bool)
+        for stage in self.stages:
+            alone[stage.gates] = False
+            for sink in stage.form.sinks:
+                driver[stage.nets[:, sink.node]] = stage.gates[:, sink.part]
+        driver[self.gate_output[alone]] = np.flatnonzero(alone)
         return driver
+
+    @cached_property
+    def driven(self) -> IntArray:
+        """Nets that arcs end at, by the gate that drives them, then by id."""
+        nets = np.flatnonzero(self.driver_of_net >= 0)
+        return nets[np.argsort(self.driver_of_net[nets], kind="stable")].astype(np.int32)
 
 
 def _joined(parts: list[IntArray]) -> IntArray:

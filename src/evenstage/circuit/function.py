@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Iterable
@@ -32,7 +32,32 @@ class Or:
     terms: tuple[Expression, ...]
 
 
-Expression = Literal | And | Or
+@dataclass(frozen=True, slots=True)
+class Not:
+    """The complement of its term."""
+
+    term: Expression
+
+
+@dataclass(frozen=True, slots=True)
+class When:
+    """Its term where the condition holds; elsewhere nothing drives."""
+
+    term: Expression
+    condition: Expression
+
+
+@dataclass(frozen=True, slots=True)
+class Each:
+    """Several terms that each hold under their own condition."""
+
+    terms: tuple[Expression, ...]
+
+
+Expression = Literal | And | Or | Not | When | Each
+
+ONE: Final = And(())
+ZERO: Final = Or(())
 
 _Edge = tuple[int, int, Expression]
 
@@ -52,7 +77,9 @@ def conduction(network: Network, start: int, end: int, polarity: str) -> Express
     edges = _folded(edges, (start, end))
     if len(edges) == 1 and {edges[0][0], edges[0][1]} == {start, end}:
         return edges[0][2]
-    return _or(_and(edges[i][2] for i in path) for path in sorted(_edge_paths(edges, start, end)))
+    return disjunction(
+        conjunction(edges[i][2] for i in path) for path in sorted(_edge_paths(edges, start, end))
+    )
 
 
 def _folded(edges: list[_Edge], ends: tuple[int, int]) -> list[_Edge]:
@@ -68,7 +95,7 @@ def _parallel(edges: list[_Edge]) -> list[_Edge]:
     bundles: dict[tuple[int, int], list[Expression]] = {}
     for a, b, expression in edges:
         bundles.setdefault((min(a, b), max(a, b)), []).append(expression)
-    return [(a, b, _or(expressions)) for (a, b), expressions in bundles.items()]
+    return [(a, b, disjunction(expressions)) for (a, b), expressions in bundles.items()]
 
 
 def _series(edges: list[_Edge], ends: tuple[int, int]) -> list[_Edge]:
@@ -86,7 +113,7 @@ def _series(edges: list[_Edge], ends: tuple[int, int]) -> list[_Edge]:
         first, second = (edges[index] for index in touching)
         a = first[1] if first[0] == node else first[0]
         b = second[1] if second[0] == node else second[0]
-        rest.insert(touching[0], (a, b, _and((first[2], second[2]))))
+        rest.insert(touching[0], (a, b, conjunction((first[2], second[2]))))
         return rest
     return edges
 
@@ -104,12 +131,14 @@ def _edge_paths(edges: list[_Edge], start: int, end: int) -> Iterable[tuple[int,
                 stack.append((far, (*path, index), visited | {far}))
 
 
-def _and(terms: Iterable[Expression]) -> Expression:
+def conjunction(terms: Iterable[Expression]) -> Expression:
+    """Return the conjunction of some terms, conjunctions among them dissolved."""
     flat = _flat(terms, And)
     return flat[0] if len(flat) == 1 else And(flat)
 
 
-def _or(terms: Iterable[Expression]) -> Expression:
+def disjunction(terms: Iterable[Expression]) -> Expression:
+    """Return the disjunction of some terms, disjunctions among them dissolved."""
     flat = _flat(terms, Or)
     return flat[0] if len(flat) == 1 else Or(flat)
 
@@ -125,6 +154,12 @@ def text(expression: Expression, name: Callable[[int], str]) -> str:
     """Return an expression with ``&`` binding tighter than ``|``, in the names of its nets."""
     if isinstance(expression, Literal):
         return name(expression.net)
+    if isinstance(expression, Not):
+        return inverted_text(expression.term, name)
+    if isinstance(expression, When):
+        return f"{text(expression.term, name)} when {text(expression.condition, name)}"
+    if isinstance(expression, Each):
+        return ", ".join(text(term, name) for term in expression.terms)
     if not expression.terms:
         return "1" if isinstance(expression, And) else "0"
     if isinstance(expression, Or):

@@ -96,6 +96,8 @@ class GateForm:
         Its keepers and loads.
     floats : bool
         Whether its output is left alone for some inputs, and what keeps it then stores it.
+    function : Expression, optional
+        What it makes of its inputs, where that is not the complement of ``pull_down``.
     """
 
     drawn: tuple[Switch, ...]
@@ -106,6 +108,7 @@ class GateForm:
     kind: str = "static gate"
     weak: tuple[Weak, ...] = ()
     floats: bool = False
+    function: Expression | None = None
 
 
 @dataclass(frozen=True)

@@ -146,17 +146,19 @@ class Network:
                     stack.append((following, (*path, index), (*visited, following)))
 
 
-def merge(devices: Sequence[Switch]) -> Network:
+def merge(devices: Sequence[Switch], apart: frozenset[int] = frozenset()) -> Network:
     """Merge the fingers of a drawn network.
 
     Parameters
     ----------
     devices : sequence of Switch
         As drawn: local nets count from 0; supplies are HIGH and LOW.
+    apart : frozenset of int
+        Nets that are signals: never merged with others.
     """
     nets = 1 + max((max(d.a, d.gate, d.b) for d in devices), default=-1)
     active = [d.a != d.b and not _held_off(d) for d in devices]
-    node_of_net = _merged_nodes(devices, active, nets)
+    node_of_net = _merged_nodes(devices, active, nets, apart)
     switches: dict[tuple[str, int, int, int], int] = {}
     switch_of_device = []
     for device, is_active in zip(devices, active, strict=True):
@@ -181,7 +183,9 @@ def _at(node_of_net: Sequence[int], net: int) -> int:
     return node_of_net[net] if net >= 0 else net
 
 
-def _merged_nodes(devices: Sequence[Switch], active: list[bool], nets: int) -> tuple[int, ...]:
+def _merged_nodes(
+    devices: Sequence[Switch], active: list[bool], nets: int, apart: frozenset[int]
+) -> tuple[int, ...]:
     """Return for each net the smallest net of its class under the coarsest stable partition."""
     touching: dict[int, list[tuple[Switch, int]]] = {}
     for device, is_active in zip(devices, active, strict=True):
@@ -191,7 +195,7 @@ def _merged_nodes(devices: Sequence[Switch], active: list[bool], nets: int) -> t
     polarity = {net: {d.polarity for d, _ in near} for net, near in touching.items()}
     # Only nodes inside one pull network may merge: anything pulled both ways is an output, and a
     # net that is also an input is seen from outside.
-    seen_outside = {device.gate for device in devices}
+    seen_outside = apart | {device.gate for device in devices}
     inner = [n for n in range(nets) if len(polarity.get(n, ())) == 1 and n not in seen_outside]
     block = {net: net for net in range(nets)} | {HIGH: HIGH, LOW: LOW} | dict.fromkeys(inner, -3)
     while True:

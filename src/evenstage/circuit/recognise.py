@@ -14,6 +14,9 @@ from evenstage.circuit.groups import group
 from evenstage.circuit.names import NAMES_MAX, device_names
 from evenstage.circuit.ownership import leaves, owners
 from evenstage.circuit.sorting import sort_groups
+from evenstage.circuit.stage_notices import stage_notices
+from evenstage.circuit.stage_sorting import sort_stages
+from evenstage.circuit.stage_tables import AlikeStages
 from evenstage.circuit.storage.elements import TOO_LARGE, find_storage
 from evenstage.circuit.storage.reading import OSCILLATES
 from evenstage.circuit.strength import ratio_notices
@@ -26,9 +29,11 @@ from evenstage.pattern import select
 from evenstage.process.unit import unit_inverter
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Iterator, Sequence
 
-    from evenstage.circuit.sorting import Sorted
+    from evenstage.circuit.gate import GateForm
+    from evenstage.circuit.groups import AlikeGroups
+    from evenstage.circuit.stage import StageForm
     from evenstage.circuit.storage.elements import Storage
     from evenstage.netlist.devices import Devices, IntArray
     from evenstage.process.process import Process
@@ -66,7 +71,9 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
     for part in apart:
         logic[part.devices] = False
     found = sort_groups(devices, group(devices, supplies, logic, levels))
-    alike, strange = _numbered(found), _not_understood(found)
+    more = sort_stages(devices, found, brief)
+    alike, stages = _numbered(found.gates, more.stages)
+    strange = _not_understood(more.strange)
     output = np.empty(sum(len(some.gates) for some in alike), np.int32)
     for some in alike:
         output[some.gates] = some.nets[:, some.form.output]
@@ -77,6 +84,8 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         process=process,
         supplies=supplies,
         alike=alike,
+        stages=stages,
+        drive=np.zeros(len(devices.net_names)),
         not_understood=strange,
         apart=apart,
         storage=find_storage(devices, found.gates, [some for _, some in found.strange]),
@@ -89,7 +98,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         coupling=brief.coupling if brief else Brief().coupling,
     )
     if alike:
-        wiring = find_wiring(devices, circuit.gate_of_device, output, supplies.is_supply)
+        wiring = find_wiring(devices, circuit.gate_of_device, circuit.driven, supplies.is_supply)
         circuit = replace(circuit, wiring=wiring)
     return _complete(circuit, brief)
 
@@ -123,29 +132,43 @@ def _complete(circuit: Circuit, brief: Brief | None) -> Circuit:
         *_strange_notices(devices, circuit.not_understood),
         *_loop_notices(devices, circuit.storage),
         *ratio_notices(circuit),
+        *stage_notices(devices, circuit.stages),
     )
     circuit = replace(circuit, notices=notices)
-    return _with_ends(circuit, brief) if circuit.alike else circuit
+    return _with_surroundings(circuit, brief) if circuit.alike else circuit
 
 
-def _numbered(found: Sorted) -> tuple[AlikeGates, ...]:
-    """Give every gate a number: its rank by first device."""
-    if not found.gates:
-        return ()
-    first = np.concatenate([some.devices.min(axis=1) for _, some in found.gates])
+def _numbered(
+    gates: Sequence[tuple[GateForm, AlikeGroups]], stages: Sequence[tuple[StageForm, AlikeGroups]]
+) -> tuple[tuple[AlikeGates, ...], tuple[AlikeStages, ...]]:
+    """Give every gate, those that are parts of stages too, a number: its rank by first device."""
+    parts = [(part, columns, some) for form, some in stages for part, columns in _parts(form)]
+    every = [(form, some.devices, some.nets) for form, some in gates]
+    every += [(part, some.devices[:, list(columns)], some.nets) for part, columns, some in parts]
+    if not every:
+        return (), ()
+    first = np.concatenate([devices.min(axis=1) for _, devices, _ in every])
     number = np.empty(len(first), np.int32)
     number[np.argsort(first, kind="stable")] = np.arange(len(first))
-    result, at = [], 0
-    for form, some in found.gates:
-        mine = number[at : at + len(some.devices)]
+    ends = np.cumsum([len(devices) for _, devices, _ in every])
+    numbers = np.split(number, ends[:-1])
+    alike = []
+    for (form, devices, nets), mine in zip(every, numbers, strict=True):
         order = np.argsort(mine)
-        result.append(AlikeGates(form, mine[order], some.devices[order], some.nets[order]))
-        at += len(mine)
-    return tuple(result)
+        alike.append(AlikeGates(form, mine[order], devices[order], nets[order]))
+    of_parts, result = iter(numbers[len(gates) :]), []
+    for stage, some in stages:
+        mine = np.stack([next(of_parts) for _ in stage.parts], axis=1)
+        result.append(AlikeStages(stage, mine, some.devices, some.nets))
+    return tuple(alike), tuple(result)
 
 
-def _not_understood(found: Sorted) -> tuple[NotUnderstood, ...]:
-    every = [NotUnderstood(some.devices, reason) for reason, some in found.strange]
+def _parts(form: StageForm) -> Iterator[tuple[GateForm, tuple[int, ...]]]:
+    return zip(form.parts, form.columns, strict=True)
+
+
+def _not_understood(strange: Sequence[tuple[str, AlikeGroups]]) -> tuple[NotUnderstood, ...]:
+    every = [NotUnderstood(some.devices, reason) for reason, some in strange]
     return tuple(sorted(every, key=lambda some: int(some.devices[0, 0])))
 
 
@@ -187,6 +210,18 @@ def _loop_notices(devices: Devices, storage: Storage) -> list[Notice]:
     return notices
 
 
+def _with_surroundings(circuit: Circuit, brief: Brief | None) -> Circuit:
+    """Take in what the brief says of the outside, and find where paths end."""
+    drive = np.zeros(len(circuit.devices.net_names))
+    sources = [some.nets[:, list(some.form.sources)].ravel() for some in circuit.stages]
+    nets = np.unique(np.concatenate([np.zeros(0, np.int32), *sources]))
+    names = [circuit.devices.net_names[net] for net in nets.tolist()]
+    for some in brief.inputs if brief else ():
+        fits = [any(pattern.fits(name) for pattern in some.nets) for name in names]
+        drive[nets[np.array(fits, bool)]] = some.drive
+    return _with_ends(replace(circuit, drive=drive), brief)
+
+
 def _with_unit(process: Process, devices: Devices) -> Process:
     """Fill in the unit inverter: the smallest n width where the process does not say."""
     is_n = np.array([model.polarity == "n" for model in devices.models], bool)
@@ -200,11 +235,12 @@ def _with_ends(circuit: Circuit, brief: Brief | None) -> Circuit:
     """Find where paths end and what hangs there."""
     devices = circuit.devices
     outputs = brief.outputs if brief else ()
-    names = [devices.net_names[net] for net in circuit.gate_output.tolist()] if outputs else []
+    driven = circuit.driven
+    names = [devices.net_names[net] for net in driven.tolist()] if outputs else []
     outside = np.full(len(devices.net_names), np.nan)
     ends = _natural_ends(circuit)
     for output in outputs:
-        chosen = circuit.gate_output[select(output.nets, names, "driven net")]
+        chosen = driven[select(output.nets, names, "driven net")]
         ends.update(dict.fromkeys(chosen.tolist(), "output"))
         if output.load is not None:
             outside[chosen] = output.load
@@ -234,7 +270,7 @@ def _natural_ends(circuit: Circuit) -> dict[int, str]:
     is_output = ~strange
     is_output[circuit.pins.net] = False
     is_output[list(circuit.devices.ports)] = True
-    driven = circuit.gate_output
+    driven = circuit.driven
     stored = circuit.storage.loop_of_net() >= 0
     entering = driven[strange[driven] & ~is_output[driven]]
     return {

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, TypeVar
 
 import numpy as np
 
-from evenstage.circuit.arcs import NO_OWNER, Arcs, Bundle, joined
+from evenstage.circuit.arcs import NO_OWNER, Arcs, joined, uniform
 from evenstage.circuit.electrical import Scaled
 
 if TYPE_CHECKING:
@@ -17,6 +17,7 @@ if TYPE_CHECKING:
 
     from evenstage.circuit.electrical import Diffusion, Electrical
     from evenstage.circuit.gate import ArcForm, GateForm
+    from evenstage.circuit.network import Network
     from evenstage.netlist.devices import FloatArray, IntArray
 
 CONTENTION_MAX = 20.0
@@ -57,7 +58,7 @@ class Pins:
     cap: Scaled
 
 
-def pins_of(alike: tuple[AlikeGates, ...], values: Electrical) -> Pins:
+def pins_of(alike: tuple[AlikeGates, ...], values: Electrical, more: Sequence[Pins] = ()) -> Pins:
     """Collect the pins of all gates, ordered by gate.
 
     Parameters
@@ -65,8 +66,10 @@ def pins_of(alike: tuple[AlikeGates, ...], values: Electrical) -> Pins:
     alike : tuple of AlikeGates
         At least one.
     values : Electrical
+    more : sequence of Pins
+        Channels that load nets from outside.
     """
-    parts = [part for some in alike for part in _pins_of_form(some, values)]
+    parts = [*(part for some in alike for part in _pins_of_form(some, values)), *more]
     order = np.argsort(np.concatenate([part.gate for part in parts]), kind="stable")
     return Pins(
         gate=_joined([part.gate for part in parts], order),
@@ -76,7 +79,12 @@ def pins_of(alike: tuple[AlikeGates, ...], values: Electrical) -> Pins:
     )
 
 
-def arcs_of(alike: tuple[AlikeGates, ...], values: Electrical, node_cap: FloatArray) -> Arcs:
+def arcs_of(
+    alike: tuple[AlikeGates, ...],
+    values: Electrical,
+    node_cap: FloatArray,
+    more: Sequence[Arcs] = (),
+) -> Arcs:
     """Collect the arcs of all gates, ordered by gate.
 
     Parameters
@@ -86,8 +94,12 @@ def arcs_of(alike: tuple[AlikeGates, ...], values: Electrical, node_cap: FloatAr
     values : Electrical
     node_cap : FloatArray, F, shape (nets,)
         Capacitor cards on each net; on inner nodes they belong to the gate.
+    more : sequence of Arcs
+        Those of stages.
     """
-    return joined([bundle for some in alike for bundle in _arcs_of_form(some, values, node_cap)])
+    with_arcs = [some for some in alike if some.form.arcs]
+    plain = (part for some in with_arcs for part in _arcs_of_form(some, values, node_cap))
+    return joined([*plain, *more])
 
 
 def _joined(columns: Sequence[NDArray[_Kind]], order: NDArray[np.intp]) -> NDArray[_Kind]:
@@ -122,10 +134,10 @@ def _pins_of_form(some: AlikeGates, values: Electrical) -> list[Pins]:
     ]
 
 
-def _arcs_of_form(some: AlikeGates, values: Electrical, node_cap: FloatArray) -> list[Bundle]:
-    """Return one bundle per arc of a form, for all its gates."""
+def _arcs_of_form(some: AlikeGates, values: Electrical, node_cap: FloatArray) -> list[Arcs]:
+    """Return one table per arc of a form, for all its gates."""
     network = some.form.network
-    res = _switch_resistance(some, values)
+    res = switch_resistance(network, some.devices, values)
     fall = _node_capacitance(some, values.fall, node_cap)
     alike = values.rise is values.fall
     rise = fall if alike else _node_capacitance(some, values.rise, node_cap)
@@ -142,7 +154,7 @@ def _alike_arcs(
     values: Electrical,
     parts: tuple[Scaled, Scaled],
     first_device: list[int],
-) -> Bundle:
+) -> Arcs:
     """Return one arc of a form for all its gates.
 
     The parts are the resistance of each switch and the capacitance of each node.
@@ -181,21 +193,15 @@ def _alike_arcs(
         terms.append((fixed, none, (r_0[:, depth] * c_x).sum(axis=1) / whole, some.gates))
         if c_0.any():
             terms.append((fixed, none, (r_0[:, depth] * c_0).sum(axis=1) / whole, none))
-    charge = [np.stack(column, axis=1) for column in zip(*charges, strict=True)]
-    own = [np.stack(column, axis=1) for column in zip(*terms, strict=True)]
-    return Bundle(
+    charged, own = uniform(len(net), charges, terms)
+    return Arcs(
         gate=some.gates,
         input=some.nets[:, arc.input],
         output=net,
-        rising=arc.rising,
-        input_rising=not arc.rising,
-        charge_net=charge[0],
-        charge_owner=charge[1],
-        charge_resistance=charge[2],
-        own_resistance=own[0],
-        own_resistance_owner=own[1],
-        own_capacitance=own[2],
-        own_capacitance_owner=own[3],
+        rising=np.full(len(net), arc.rising),
+        input_rising=np.full(len(net), not arc.rising),
+        charges=charged,
+        own=own,
         slope=values.slope[device] / (1 + values.slope_stack[device] * more),
         slope_power=values.slope_power[device],
         shape=values.shape[device] / (1 + values.shape_stack[device] * more),
@@ -212,17 +218,16 @@ def _contention(pull: FloatArray, load: FloatArray) -> FloatArray:
     return 1 / np.maximum(1 - pull / load, 1 / CONTENTION_MAX)
 
 
-def _switch_resistance(some: AlikeGates, values: Electrical) -> Scaled:
+def switch_resistance(network: Network, devices: IntArray, values: Electrical) -> Scaled:
     """Return the resistance of each merged switch, shape ``(k, switches)``: fingers in parallel.
 
     What scales and what stays are put in parallel apart, so that the sum keeps its form when the
     gate grows. That is exact for equal fingers; unequal ones with fixed parts come out a little low
     (fingers of 1 and 3 widths whose fixed parts are a tenth of the narrow one: by 3 %).
     """
-    network = some.form.network
     member = _incidence(network.switch_of_device, len(network.switches))
-    scaling = 1.0 / ((1.0 / values.resistance.scaling[some.devices]) @ member)
-    fixed = values.resistance.fixed[some.devices]
+    scaling = 1.0 / ((1.0 / values.resistance.scaling[devices]) @ member)
+    fixed = values.resistance.fixed[devices]
     conductance = np.divide(1.0, fixed, out=np.zeros_like(fixed), where=fixed > 0) @ member
     inverse = np.divide(1.0, conductance, out=np.zeros_like(conductance), where=conductance > 0)
     return Scaled(scaling, inverse)

@@ -249,6 +249,7 @@ def path_document(path: Path) -> Document:
 def _stage(stage: Stage) -> Document:
     return {
         "instance": stage.instance,
+        "through": list(stage.through),
         "subcircuit": stage.subcircuit,
         "function": stage.function,
         "input": stage.input,

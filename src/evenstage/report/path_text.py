@@ -143,7 +143,9 @@ def _details(
     """Return the lines under each stage: what found no column, and its side branches."""
     indent = table.start(kept.index(_GATE))
     details = [
-        _left_over(paper, row, kept, indent) + _wire(paper, stage, indent)
+        _left_over(paper, row, kept, indent)
+        + _through(paper, stage, indent)
+        + _wire(paper, stage, indent)
         for row, stage in zip(rows, path.stages, strict=True)
     ]
     if not branches:
@@ -159,6 +161,14 @@ def _details(
         [*detail, *(layout.line(*row) for row in load)]
         for detail, load in zip(details, texts, strict=True)
     ]
+
+
+def _through(paper: Paper, stage: Stage, indent: int) -> list[str]:
+    """Return the gates besides its own that a stage runs through, if any."""
+    if not stage.through:
+        return []
+    text = f"through {', '.join(stage.through)}"
+    return [" " * indent + paper.shorten(text, paper.width - indent)]
 
 
 def _left_over(paper: Paper, row: Sequence[str], kept: Sequence[int], indent: int) -> list[str]:
@@ -202,7 +212,7 @@ def _family(paper: Paper, group: Sequence[SideBranch], load: float) -> _Branch:
     cap = sum(branch.cap for branch in group)
     name = family_name([branch.instance for branch in group])
     pin = group[0].pin
-    what = f"{name} {pin}" if pin in {"wire", "load"} else f"{name} pin {pin}"
+    what = f"{name} {pin}" if pin in {"wire", "load", "on the way"} else f"{name} pin {pin}"
     if not name:
         what = "load outside the block" if pin == "load" else f"{pin} outside the block"
     many = f"{len(group)} {paper.times} " if len(group) > 1 else ""

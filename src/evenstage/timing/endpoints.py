@@ -64,7 +64,7 @@ def endpoints(circuit: Circuit, start: str | None, end: str | None) -> Endpoints
     if start is not None:
         starts = _asked(circuit, start, np.flatnonzero(has_pin), "an input of any gate")
     if end is not None:
-        ends = _asked(circuit, end, np.unique(circuit.gate_output), "driven by any gate")
+        ends = _asked(circuit, end, np.unique(circuit.driven), "driven by any gate")
     return Endpoints(inputs, starts, ends, start is None and end is None)
 
 
@@ -167,10 +167,10 @@ def required_times(circuit: Circuit, brief: Brief | None, nets: IntArray) -> Flo
     """
     required = np.full(len(nets), np.nan)
     given = brief.outputs if brief else ()
-    names = [circuit.devices.net_names[net] for net in circuit.gate_output] if given else []
+    names = [circuit.devices.net_names[net] for net in circuit.driven] if given else []
     for some in given:
         if some.required is not None:
-            chosen = circuit.gate_output[select(some.nets, names, "driven net")]
+            chosen = circuit.driven[select(some.nets, names, "driven net")]
             required[np.isin(nets, chosen)] = some.required
     return required
 

@@ -103,7 +103,7 @@ def _rules(circuit: Circuit, brief: Brief | None) -> list[_Rule]:
         _Rule(
             _chosen(circuit, ignore.start, every, "net"),
             _chosen(circuit, ignore.through, every, "net"),
-            _chosen(circuit, ignore.end, circuit.gate_output, "driven net"),
+            _chosen(circuit, ignore.end, circuit.driven, "driven net"),
         )
         for ignore in (brief.ignores if brief else ())
     ]

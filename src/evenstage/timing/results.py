@@ -64,7 +64,7 @@ class SideBranch:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Stage:
-    """One gate on a path; delays in s, capacitances in F, efforts dimensionless.
+    """One stage on a path; delays in s, capacitances in F, efforts dimensionless.
 
     ``stage_effort = logical_effort * electrical_effort * branching_effort`` and ``charged_delay =
     tau * (stage_effort + parasitic_delay)``. ``arrival`` is that at the next input along this path,
@@ -73,6 +73,7 @@ class Stage:
     ``wire_delay`` is the part of the delay that resistance along the net makes (before the first
     stage, too), ``wire_cap`` the part of the load that is capacitor cards, and ``effective_cap``
     what the driver sees of the load in the delay, None where nothing hides any of it.
+    ``instance`` is the gate whose input switches, ``through`` the others that the signal takes.
     """
 
     instance: str
@@ -99,6 +100,7 @@ class Stage:
     wire_delay: float = 0.0
     wire_cap: float = 0.0
     effective_cap: float | None = None
+    through: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

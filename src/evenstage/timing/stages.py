@@ -3,9 +3,10 @@
 For an arc with path resistance R, charge q of its edge and input capacitance C_in, in units of tau:
 ``g = q R C_in / tau``, ``h = C_on / C_in``, ``b = C_total / C_on``, ``f = g h b`` and ``p = q own /
 tau``, with C_on the next input on the path and C_total all that hangs outside the gate, so that the
-charged delay is ``tau (f + p)`` exactly; the delay of a wire behind the gate counts in p. Along a
-path ``F = G B H`` (Sutherland, Sproull and Harris, Logical Effort, 1999, chapters 1 and 3, from
-memory).
+charged delay is ``tau (f + p)`` exactly; the delay of a wire behind the gate counts in p. Where a
+stage charges further nets through a part of R, as behind pass transistors, these count in C_total
+by their part. Along a path ``F = G B H`` (Sutherland, Sproull and Harris, Logical Effort, 1999,
+chapters 1 and 3, from memory).
 """
 
 from __future__ import annotations
@@ -138,7 +139,7 @@ def _stage(
     arcs, arc = circuit.arcs, int(graph.arc[graph_arc])
     gate, names = int(arcs.gate[arc]), circuit.devices.net_names
     follower = None if following is None else int(arcs.gate[graph.arc[following]])
-    load = _load(circuit, int(arcs.output[arc]), follower)
+    load = _load(circuit, arc, follower)
     rising = bool(arcs.rising[arc])
     charge = unit.charge_rise if rising else unit.charge_fall
     input_cap = _pin_cap(circuit, gate, int(arcs.input[arc]))
@@ -176,6 +177,13 @@ def _stage(
         wire_delay=wire.delay,
         wire_cap=float(circuit.wire_cap[net]),
         effective_cap=load.total - hidden if has_wire else None,
+        through=tuple(
+            dict.fromkeys(
+                circuit.gate_name(other)
+                for other in arcs.gates_along(np.array([arc], np.int32)).tolist()
+                if other != gate
+            )
+        ),
     )
 
 
@@ -196,12 +204,14 @@ def _self_cap(circuit: Circuit, gate: int) -> float:
     return float((drain + source).sum())
 
 
-def _load(circuit: Circuit, net: int, follower: int | None) -> _Load:
-    """Return what loads a net: the follower's pin, or what ends the path, and the side branches.
+def _load(circuit: Circuit, arc: int, follower: int | None) -> _Load:
+    """Return what loads an arc: the follower's pin, or what ends the path, and the side branches.
 
     At a path end the load outside is on the path. Where nothing is outside, the wire is, then all.
     """
+    net = int(circuit.arcs.output[arc])
     on_pins, fixed = _pin_loads(circuit, net), _fixed_loads(circuit, net)
+    fixed += _loads_on_the_way(circuit, arc)
     total = sum(branch.cap for _, branch in on_pins) + sum(branch.cap for branch in fixed)
     if follower is not None:
         on_path = sum(branch.cap for gate, branch in on_pins if gate == follower)
@@ -213,6 +223,24 @@ def _load(circuit: Circuit, net: int, follower: int | None) -> _Load:
         branches += [branch for branch in fixed if branch not in outside]
     branches.sort(key=lambda branch: (-branch.cap, branch.instance, branch.pin))
     return _Load(on_path, total, tuple(branches))
+
+
+def _loads_on_the_way(circuit: Circuit, arc: int) -> list[SideBranch]:
+    """Return the other nets an arc charges, each by the part of the resistance it is behind."""
+    arcs, charges = circuit.arcs, circuit.arcs.charges
+    some = slice(int(charges.head[arc]), int(charges.head[arc + 1]))
+    shares: dict[int, float] = {}
+    for net, resistance in zip(
+        charges.net[some].tolist(), charges.resistance[some].tolist(), strict=True
+    ):
+        if net != arcs.output[arc]:
+            shares[net] = shares.get(net, 0.0) + resistance
+    whole, names = float(arcs.output_resistance[arc]), circuit.devices.net_names
+    return [
+        SideBranch(instance=names[net], pin="on the way", cap=share / whole * float(cap))
+        for net, share in shares.items()
+        if (cap := circuit.net_cap[net]) > 0
+    ]
 
 
 def _pin_loads(circuit: Circuit, net: int) -> list[tuple[int, SideBranch]]:

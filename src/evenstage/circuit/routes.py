@@ -1,0 +1,194 @@
+"""Routes of a signal through a divided network, and what else moves with it.
+
+A route leads from a node through passes that can conduct together to a driver. Drivers never fight:
+an input setting that would join two that may differ is taken not to occur (of the drivers of a bus
+one is enabled at a time). What hangs on a route through further passes moves along; every setting
+of the inputs left free is looked at, and of those that move comparable sets the largest is kept.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from evenstage.circuit.literals import Condition, Cube, consistent
+from evenstage.circuit.network import HIGH, LOW
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator, Sequence
+
+    from evenstage.circuit.dividing import Division, Driver, Way
+
+_STEPS_MAX = 200_000
+"""Steps one group may take: far beyond a 64-way multiplexer tree."""
+
+
+class TooManyRoutesError(Exception):
+    """A network with more routes than are looked at."""
+
+
+@dataclass(frozen=True, slots=True)
+class Route:
+    """A way from a node through passes to a driver.
+
+    Parameters
+    ----------
+    nodes : tuple of int
+        From the node to that of the driver.
+    passes : tuple of int
+        Between them, in the same order.
+    driver : Driver
+    cube : Cube
+        When all passes conduct.
+    """
+
+    nodes: tuple[int, ...]
+    passes: tuple[int, ...]
+    driver: Driver
+    cube: Cube
+
+
+class Router:
+    """The routes of one divided network.
+
+    Parameters
+    ----------
+    division : Division
+    """
+
+    def __init__(self, division: Division) -> None:
+        self._division = division
+        self._steps = 0
+
+    def routes(self, node: int) -> Iterator[Route]:
+        """Yield the routes to a node that can conduct, in drawing order.
+
+        Raises
+        ------
+        TooManyRoutesError
+        """
+        division = self._division
+        stack: list[tuple[tuple[int, ...], tuple[int, ...], Cube]] = [((node,), (), frozenset())]
+        while stack:
+            self._step()
+            nodes, passes, cube = stack.pop()
+            here = nodes[-1]
+            drivers = division.drivers_at.get(here, ())
+            for driver in drivers:
+                yield Route(nodes, passes, driver, cube)
+            if any(driver.always for driver in drivers):
+                continue
+            for index in reversed(division.passes_at.get(here, ())):
+                one = division.passes[index]
+                far = one.other(here)
+                wider = consistent(cube, () if one.condition is None else (one.condition,))
+                if far not in nodes and wider is not None:
+                    stack.append(((*nodes, far), (*passes, index), wider))
+
+    def beside(
+        self, depth: dict[int, int], route: Route, way: Way, supply: int
+    ) -> list[dict[int, int]]:
+        """Return the sets of nodes that can move with a route; each with its depth.
+
+        A node that another driver holds at the same supply is there with depth 0.
+
+        Parameters
+        ----------
+        depth : dict of int to int
+            Nodes of the route with the number of steps, from the supply, that charge them.
+        route : Route
+        way : Way
+            Of its driver, to the supply.
+        supply : int
+
+        Raises
+        ------
+        TooManyRoutesError
+        """
+        cube = consistent(route.cube, way.cube)
+        if cube is None:
+            return []
+        found: list[dict[int, int]] = []
+        waiting = [(depth, cube)]
+        while waiting:
+            self._step()
+            nodes, known = waiting.pop()
+            if not self._can_be(nodes, known, route.driver, supply):
+                continue
+            undecided: tuple[int, int, Condition | None] | None = None
+            for index, near, far in self._hanging(nodes, route):
+                condition = self._division.passes[index].condition
+                if condition is None or condition in known:
+                    undecided = (near, far, None)
+                    break
+                if (condition[0], not condition[1]) not in known:
+                    undecided = undecided or (near, far, condition)
+            if undecided is None:
+                found.append(nodes)
+                continue
+            near, far, condition = undecided
+            if condition is not None:
+                waiting.append((nodes, known | {(condition[0], not condition[1])}))
+                known |= {condition}
+            held = any(driver.always for driver in self._division.drivers_at.get(far, ()))
+            waiting.append(({**nodes, far: 0 if held else nodes[near]}, known))
+        return _largest(found)
+
+    def _hanging(self, nodes: dict[int, int], route: Route) -> Iterator[tuple[int, int, int]]:
+        """Yield the passes that lead from moving nodes to others: index, near and far end."""
+        on_route = set(route.passes)
+        for near, depth in nodes.items():
+            for index in self._division.passes_at.get(near, ()) if depth else ():
+                far = self._division.passes[index].other(near)
+                if index not in on_route and far not in nodes:
+                    yield index, near, far
+
+    def _can_be(self, nodes: dict[int, int], known: Cube, own: Driver, supply: int) -> bool:
+        """Tell whether no other driver of some nodes need conduct, nor this one the other way.
+
+        One that always drives is let be where it is known to pull the same way.
+        """
+        against = LOW if supply == HIGH else HIGH
+        clauses = [way.cube for way in own.ways(against)]
+        for node in nodes:
+            for driver in self._division.drivers_at.get(node, ()):
+                if driver.always and driver is not own:
+                    if not all(_is_off(way.cube, known) for way in driver.ways(against)):
+                        return False
+                elif driver is not own:
+                    clauses += [way.cube for way in (*driver.up, *driver.down)]
+        return self._all_off(clauses, known)
+
+    def _all_off(self, cubes: Sequence[Cube], known: Cube) -> bool:
+        """Tell whether inputs not known yet can be chosen so that none of some cubes holds."""
+        self._step()
+        for place, cube in enumerate(cubes):
+            if _is_off(cube, known):
+                continue
+            return any(
+                self._all_off(cubes[place + 1 :], known | {(net, not value)})
+                for net, value in sorted(cube - known)
+            )
+        return True
+
+    def _step(self) -> None:
+        self._steps += 1
+        if self._steps > _STEPS_MAX:
+            raise TooManyRoutesError
+
+
+def _is_off(cube: Cube, known: Cube) -> bool:
+    return any((net, not value) in known for net, value in cube)
+
+
+def _largest(found: list[dict[int, int]]) -> list[dict[int, int]]:
+    """Drop the sets that another one holds, of equal ones the later."""
+    return [
+        nodes
+        for place, nodes in enumerate(found)
+        if not any(
+            nodes.items() <= other.items() and (nodes != other or at < place)
+            for at, other in enumerate(found)
+            if at != place
+        )
+    ]

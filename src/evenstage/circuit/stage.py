@@ -1,0 +1,452 @@
+"""What a group of several nodes is as a stage: drivers, passes, and arcs through both.
+
+An arc runs from an input of a driving gate, or from a control of a pass, along the route to a node
+that is seen outside. It charges every node of the route, and what conducting passes tie to it,
+through the part of the route that their charge flows through. When a control closes a pass, the
+nodes between it and the driver have settled before.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from functools import lru_cache
+from typing import TYPE_CHECKING
+
+import networkx as nx
+
+from evenstage.circuit.dividing import Division, Driver, Pass, Way, divide, outside, sum_of
+from evenstage.circuit.function import ONE, ZERO, Each, Expression, Literal, Not, When
+from evenstage.circuit.gate import GateForm, Unrecognised, recognise_network
+from evenstage.circuit.literals import Cube, Literals, consistent
+from evenstage.circuit.network import HIGH, LOW, Network, Switch, merge
+from evenstage.circuit.routes import Route, Router, TooManyRoutesError
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator, Sequence
+
+SWITCHES_MAX = 2000
+"""Larger groups are arrays of cells, not stages."""
+_PARALLEL_MAX = 4
+"""Transistors at one node that are taken for one pull network."""
+
+
+@dataclass(frozen=True, slots=True)
+class Facts:
+    """What is known around a group; all nets are local.
+
+    Parameters
+    ----------
+    ties : tuple of (int, int, bool)
+        Two nets, and whether they are equal rather than complements.
+    seen : tuple of int
+        Channel ends that are ports or close switches, of this or of other groups.
+    gating : tuple of int
+        Channel ends that close switches.
+    open : tuple of int
+        Channel ends that the outside may drive.
+    inputs, outputs : tuple of int
+        Channel ends that the brief calls so.
+    """
+
+    ties: tuple[tuple[int, int, bool], ...] = ()
+    seen: tuple[int, ...] = ()
+    gating: tuple[int, ...] = ()
+    open: tuple[int, ...] = ()
+    inputs: tuple[int, ...] = ()
+    outputs: tuple[int, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Step:
+    """Switches in parallel that a route runs through, and the part of the stage they belong to."""
+
+    part: int
+    switches: tuple[int, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class StageArc:
+    """One way one input edge moves one output.
+
+    Parameters
+    ----------
+    part : int
+        Whose input moves.
+    input, output : int
+        Local net, node.
+    input_rising, rising : bool
+    steps : tuple of Step
+        From the output to the supply.
+    moved : tuple of (int, int)
+        Node and the number of steps, counted from the supply, its charge flows through.
+    switching : int
+        The switch that closes; -1 where the outside drives.
+    source : int
+        Node that the outside drives, -1 for none.
+    """
+
+    part: int
+    input: int
+    output: int
+    input_rising: bool
+    rising: bool
+    steps: tuple[Step, ...]
+    moved: tuple[tuple[int, int], ...]
+    switching: int
+    source: int
+
+
+@dataclass(frozen=True, slots=True)
+class Sink:
+    """A node seen outside: when it is high, and when low; both as sums over its routes.
+
+    ``part`` is one that drives it; ``weak_high`` and ``weak_low`` tell that a single pass
+    transistor may leave that level short of the supply.
+    """
+
+    node: int
+    part: int
+    high: tuple[Cube, ...]
+    low: tuple[Cube, ...]
+    weak_high: bool
+    weak_low: bool
+
+
+@dataclass(frozen=True, eq=False)
+class StageForm:
+    """A network recognised as a stage of drivers and passes.
+
+    Parameters
+    ----------
+    drawn : tuple of Switch
+    network : Network
+    columns : tuple of tuple of int
+        For each part, its devices among the drawn.
+    parts : tuple of GateForm
+        Each part as a gate without arcs of its own.
+    arcs : tuple of StageArc
+    sinks : tuple of Sink
+    sources : tuple of int
+        Nodes that the outside drives.
+    assumed : tuple of (int, int)
+        Inputs taken for complements without proof.
+    both_ways : tuple of int
+        Parts that pass signals in both directions.
+    """
+
+    drawn: tuple[Switch, ...]
+    network: Network
+    columns: tuple[tuple[int, ...], ...]
+    parts: tuple[GateForm, ...]
+    arcs: tuple[StageArc, ...]
+    sinks: tuple[Sink, ...]
+    sources: tuple[int, ...]
+    assumed: tuple[tuple[int, int], ...]
+    both_ways: tuple[int, ...]
+
+
+@lru_cache(maxsize=4096)
+def recognise_stage(devices: tuple[Switch, ...], facts: Facts) -> StageForm | Unrecognised:
+    """Recognise one network as a stage, or say why it is none.
+
+    No reason is given for a network that passes nothing on: why it is no gate says more.
+    """
+    if len(devices) > SWITCHES_MAX:
+        return Unrecognised(f"{len(devices)} transistors in one group, above {SWITCHES_MAX}")
+    seen = frozenset(facts.seen) | frozenset(facts.inputs) | frozenset(facts.outputs)
+    network = merge(devices, seen | frozenset(facts.open))
+    terminals = [node for node in network.inner_nodes if node in seen or node in facts.open]
+    division = divide(network, terminals, Literals(facts.ties))
+    if isinstance(division, Unrecognised):
+        return division if len(network.driven_nodes) > 1 else Unrecognised("")
+    sources = _sources(division, facts)
+    if isinstance(sources, Unrecognised):
+        return sources
+    drivers = division.drivers + tuple(outside(node, division.literals) for node in sources)
+    division = Division(network, division.literals, drivers, division.passes, division.assumed)
+    sinks = [node for node in terminals if node in seen and node not in sources]
+    if not sinks:
+        return Unrecognised("")
+    try:
+        form = _Builder(division, devices, sinks, sources).form()
+        return form if division.passes or isinstance(form, StageForm) else Unrecognised("")
+    except TooManyRoutesError:
+        return Unrecognised("its pass transistors offer too many routes")
+
+
+def _sources(division: Division, facts: Facts) -> tuple[int, ...] | Unrecognised:
+    """Return the nodes that the outside drives, or say that this cannot be told.
+
+    An open node without a pull network is driven from outside if the brief says so or if it closes
+    switches. The others are outputs where something else reaches them, inputs where something in
+    the block waits for them.
+    """
+    driven = division.drivers_at
+    candidates = [n for n in facts.open if n in division.passes_at and n not in driven]
+    sources = {n for n in candidates if n in facts.inputs or n in facts.gating}
+    sources -= set(facts.outputs)
+    graph: nx.Graph[int] = nx.Graph()
+    graph.add_nodes_from(division.passes_at)
+    graph.add_edges_from(one.ends for one in division.passes)
+    fed = sources | set(driven)
+    waiting = set(facts.seen) - fed - set(candidates)
+    rest = [n for n in candidates if n not in sources and n not in facts.outputs]
+    more = set()
+    for node in rest:
+        around = nx.node_connected_component(graph, node)
+        if around & fed:
+            continue
+        if not around & (waiting | set(facts.outputs)):
+            return Unrecognised(
+                "nothing tells which of its open ends drive; name the block's inputs in the brief"
+            )
+        more.add(node)
+    return tuple(sorted(sources | more))
+
+
+class _Builder:
+    """The stage of one division, put together."""
+
+    def __init__(
+        self,
+        division: Division,
+        devices: tuple[Switch, ...],
+        sinks: Sequence[int],
+        sources: tuple[int, ...],
+    ) -> None:
+        self._division, self._devices = division, devices
+        self._sinks, self._sources = sinks, sources
+        self._router = Router(division)
+        self._pulling = [driver for driver in division.drivers if not driver.is_outside]
+        self._groups = _joined_drivers(self._pulling)
+        drivers = [tuple(i for d in some for i in d.switches) for some in self._groups]
+        switches = drivers + [p.switches for p in division.passes]
+        self._whole = recognise_network(devices)
+        if isinstance(self._whole, GateForm):
+            switches = [tuple(range(len(division.network.switches)))]
+        self._part_of = {index: part for part, some in enumerate(switches) for index in some}
+        self._count = len(switches)
+        self._ways_taken: set[tuple[int, int]] = set()
+
+    def form(self) -> StageForm | Unrecognised:
+        """Return the stage."""
+        arcs: dict[StageArc, None] = {}
+        sinks = []
+        for node in self._sinks:
+            high = list(self._towards(node, HIGH, arcs))
+            low = list(self._towards(node, LOW, arcs))
+            if not high or not low:
+                return Unrecognised("a node of it that is seen outside is only pulled one way")
+            part = next((arc.part for arc in arcs if arc.output == node), 0)
+            sinks.append(
+                Sink(
+                    node=node,
+                    part=part,
+                    high=tuple(dict.fromkeys(cube for cube, _ in high)),
+                    low=tuple(dict.fromkeys(cube for cube, _ in low)),
+                    weak_high=any(is_weak for _, is_weak in high),
+                    weak_low=any(is_weak for _, is_weak in low),
+                )
+            )
+        if not arcs:
+            return Unrecognised("nothing drives a node of it that is seen outside")
+        links = nx.DiGraph((arc.input, arc.output) for arc in arcs)
+        if not nx.is_directed_acyclic_graph(links):
+            return Unrecognised("it feeds back into itself")
+        columns = self._columns()
+        return StageForm(
+            drawn=self._devices,
+            network=self._division.network,
+            columns=columns,
+            parts=self._parts(columns),
+            arcs=tuple(arcs),
+            sinks=tuple(sinks),
+            sources=self._sources,
+            assumed=self._division.assumed,
+            both_ways=self._both_ways(),
+        )
+
+    def _towards(
+        self, node: int, supply: int, arcs: dict[StageArc, None]
+    ) -> Iterator[tuple[Cube, bool]]:
+        """Add the arcs that pull a node to a supply; yield when each route does, and if weakly."""
+        for route in self._router.routes(node):
+            for way in route.driver.ways(supply):
+                cube = consistent(route.cube, way.cube)
+                if cube is None:
+                    continue
+                depth = self._depths(route, len(way.path))
+                sets = self._router.beside(depth, route, way, supply)
+                if not sets:
+                    continue
+                self._note_direction(route)
+                alone = any(0 not in nodes.values() for nodes in sets)
+                yield cube, alone and self._is_weak(route, supply)
+                for arc in self._arcs(route, way, supply, sets):
+                    arcs.setdefault(arc)
+
+    def _depths(self, route: Route, below: int) -> dict[int, int]:
+        """Return how many steps, from the supply, charge each node of a route."""
+        last = len(route.nodes) - 1
+        return {node: below + last - place for place, node in enumerate(route.nodes)}
+
+    def _arcs(
+        self, route: Route, way: Way, supply: int, sets: list[dict[int, int]]
+    ) -> Iterator[StageArc]:
+        passes = [Step(self._part_of[p.switches[0]], p.switches) for p in self._passes(route)]
+        steps = (*passes, *(Step(self._part_of[i], (i,)) for i in way.path))
+        rising, switches = supply == HIGH, self._division.network.switches
+        source = route.driver.node if route.driver.is_outside else -1
+        for nodes in sets:
+            for switch, moved in self._moves(route, way, nodes, rising=rising):
+                by = None if switch < 0 else switches[switch]
+                yield StageArc(
+                    part=steps[-1].part if by is None else self._part_of[switch],
+                    input=source if by is None else by.gate,
+                    output=route.nodes[0],
+                    input_rising=rising if by is None else by.polarity == "n",
+                    rising=rising,
+                    steps=steps,
+                    moved=tuple(sorted(moved.items())),
+                    switching=switch,
+                    source=source,
+                )
+
+    def _moves(
+        self, route: Route, way: Way, nodes: dict[int, int], *, rising: bool
+    ) -> Iterator[tuple[int, dict[int, int]]]:
+        """Yield the switches that start a move, -1 for the outside, and the nodes that move."""
+        switches = self._division.network.switches
+        moving = {node: depth for node, depth in nodes.items() if depth}
+        if route.driver.is_outside:
+            yield -1, moving
+        for arc in route.driver.arcs:
+            if arc.path == way.path and arc.rising == rising:
+                inner = {node: d for node, d in arc.moved if node != route.driver.node}
+                yield next(i for i in arc.path if switches[i].gate == arc.input), moving | inner
+        depth = self._depths(route, len(way.path))
+        for place, one in enumerate(self._passes(route)):
+            least = depth[route.nodes[place]]
+            for switch in one.switches:
+                if switches[switch].gate >= 0:
+                    yield switch, {node: d for node, d in moving.items() if d >= least}
+
+    def _passes(self, route: Route) -> list[Pass]:
+        return [self._division.passes[index] for index in route.passes]
+
+    def _is_weak(self, route: Route, supply: int) -> bool:
+        """Tell whether a pass on a route conducts only through the polarity that passes weakly."""
+        return any(not (one.p if supply == HIGH else one.n) for one in self._passes(route))
+
+    def _note_direction(self, route: Route) -> None:
+        for place, index in enumerate(route.passes):
+            self._ways_taken.add((index, route.nodes[place]))
+
+    def _both_ways(self) -> tuple[int, ...]:
+        """Return the parts that pass signals in both directions."""
+        return tuple(
+            self._part_of[one.switches[0]]
+            for index, one in enumerate(self._division.passes)
+            if all((index, end) in self._ways_taken for end in one.ends)
+        )
+
+    def _columns(self) -> tuple[tuple[int, ...], ...]:
+        """Return the devices of each part; those that never conduct go with a neighbour."""
+        network = self._division.network
+        owner = [self._part_of.get(index, -1) for index in network.switch_of_device]
+        at_net: dict[int, int] = {}
+        for device, part in zip(self._devices, owner, strict=True):
+            for net in (device.a, device.b):
+                if net >= 0 and part >= 0:
+                    at_net.setdefault(net, part)
+        for column, device in enumerate(self._devices):
+            if owner[column] < 0:
+                near = [at_net[net] for net in (device.a, device.b) if net in at_net]
+                owner[column] = near[0] if near else 0
+        return tuple(
+            tuple(c for c, part in enumerate(owner) if part == wanted)
+            for wanted in range(self._count)
+        )
+
+    def _parts(self, columns: tuple[tuple[int, ...], ...]) -> tuple[GateForm, ...]:
+        """Return the parts as gates of their own: the whole where only an inner node is seen."""
+        if isinstance(self._whole, GateForm):
+            return (replace(self._whole, arcs=()),)
+        told = [
+            (some[0].node, _kind(some), _function(some), [i for d in some for i in d.switches])
+            for some in self._groups
+        ]
+        for one in self._division.passes:
+            output = self._far_end(one)
+            told.append((output, one.kind, self._passing(one, output), list(one.switches)))
+        return tuple(self._gate(*part, some) for part, some in zip(told, columns, strict=True))
+
+    def _gate(
+        self,
+        output: int,
+        kind: str,
+        function: Expression,
+        indices: list[int],
+        columns: tuple[int, ...],
+    ) -> GateForm:
+        """Return one part as a gate."""
+        whole = self._division.network
+        switches = tuple(whole.switches[index] for index in indices)
+        inputs = tuple(dict.fromkeys(s.gate for s in switches if s.gate >= 0))
+        return GateForm(
+            drawn=tuple(self._devices[column] for column in columns),
+            network=Network(switches, (), whole.node_of_net, inputs),
+            output=output,
+            pull_down=function.term if isinstance(function, Not) else ZERO,
+            arcs=(),
+            kind=kind,
+            function=function,
+        )
+
+    def _far_end(self, one: Pass) -> int:
+        """Return the end that a signal leaves a pass at: the one nearer to an output."""
+        index = self._division.passes.index(one)
+        leaves = [end for end in one.ends if (index, end) in self._ways_taken]
+        return leaves[0] if leaves else one.ends[1]
+
+    def _passing(self, one: Pass, output: int) -> Expression:
+        """Return what a pass does, as text: its other end, and when."""
+        control = ONE if one.condition is None else sum_of([frozenset({one.condition})])
+        return When(Literal(one.other(output)), control)
+
+
+def _joined_drivers(drivers: Sequence[Driver]) -> list[list[Driver]]:
+    """Group drivers into parts: transistors at one node that each pull one way are one part.
+
+    Where they are many they are the rows of an array, and each is a part.
+    """
+    single: dict[int, list[Driver]] = {}
+    for driver in drivers:
+        if len(driver.switches) == 1 and not driver.always:
+            single.setdefault(driver.node, []).append(driver)
+    joined: list[list[Driver]] = []
+    for driver in drivers:
+        some = single.get(driver.node, [])
+        if driver not in some or len(some) > _PARALLEL_MAX:
+            joined.append([driver])
+        elif driver is some[0]:
+            joined.append(some)
+    return joined
+
+
+def _kind(drivers: Sequence[Driver]) -> str:
+    """Return what one or several drivers of a node are called together."""
+    kinds = {driver.kind for driver in drivers}
+    return kinds.pop() if len(kinds) == 1 else "tri-state gate"
+
+
+def _function(drivers: Sequence[Driver]) -> Expression:
+    """Return what one or several drivers make of their inputs, and when they drive."""
+    if len(drivers) == 1:
+        return drivers[0].function
+    up, down = ([w.cube for d in drivers for w in d.ways(s)] for s in (HIGH, LOW))
+    if not down:
+        return When(ONE, sum_of(up))
+    if not up:
+        return When(ZERO, sum_of(down))
+    return Each((When(ZERO, sum_of(down)), When(ONE, sum_of(up))))

@@ -1,0 +1,133 @@
+"""Groups that are no single gate to stages: what is known around each, and what it is then."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from evenstage.circuit.function import Literal
+from evenstage.circuit.sorting import rows_of
+from evenstage.circuit.stage import Facts, StageForm, recognise_stage
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator, Sequence
+
+    from evenstage.brief import Brief
+    from evenstage.circuit.groups import AlikeGroups
+    from evenstage.circuit.network import BoolArray
+    from evenstage.circuit.sorting import Sorted
+    from evenstage.netlist.devices import Devices, IntArray
+    from evenstage.pattern import Pattern
+
+_DOUBLINGS = 32
+"""Chains of inverters are followed over 2 to this power of them; what goes on is a loop."""
+
+
+@dataclass(frozen=True)
+class StagesFound:
+    """Groups that are stages, and groups that are nothing known and why."""
+
+    stages: tuple[tuple[StageForm, AlikeGroups], ...]
+    strange: tuple[tuple[str, AlikeGroups], ...]
+
+
+def sort_stages(devices: Devices, found: Sorted, brief: Brief | None) -> StagesFound:
+    """Recognise the stages among groups that are no single gate.
+
+    Parameters
+    ----------
+    devices : Devices
+    found : Sorted
+        The gates, whose inverters tell which signals are complements, and the groups left over.
+    brief : Brief, optional
+        Its inputs and outputs tell which way open ends go.
+    """
+    stages, strange = [], []
+    if found.strange:
+        around = _Around(devices, found, brief)
+        for reason, some in found.strange:
+            for facts, rows in around.split(some):
+                form = recognise_stage(some.network, facts)
+                part = rows_of(some, rows)
+                if isinstance(form, StageForm):
+                    stages.append((form, part))
+                else:
+                    strange.append((form.reason or reason, part))
+    return StagesFound(tuple(stages), tuple(strange))
+
+
+class _Around:
+    """What is known of every net of a block; columns of shape ``(nets,)``."""
+
+    def __init__(self, devices: Devices, found: Sorted, brief: Brief | None) -> None:
+        nets = len(devices.net_names)
+        self._root, self._same = _roots(found, nets)
+        self._gating = np.bincount(devices.gate, minlength=nets) > 0
+        self._open = np.zeros(nets, bool)
+        self._open[list(devices.ports)] = True
+        self._open[[net for plus, minus, _ in devices.source_nets for net in (plus, minus)]] = True
+        self._seen = self._gating | self._open
+        ends = np.unique(np.concatenate([some.nets.ravel() for _, some in found.strange]))
+        names = [devices.net_names[net] for net in ends.tolist()]
+        inputs = [p for one in (brief.inputs if brief else ()) for p in one.nets]
+        outputs = [p for one in (brief.outputs if brief else ()) for p in one.nets]
+        self._input = _named(nets, ends, names, inputs)
+        self._output = _named(nets, ends, names, outputs)
+        self._open |= self._input
+
+    def split(self, some: AlikeGroups) -> Iterator[tuple[Facts, IntArray]]:
+        """Yield the distinct facts that equal groups stand in, each with the rows of its groups."""
+        ends = list(dict.fromkeys(n for s in some.network for n in (s.a, s.b) if n >= 0))
+        asked = list(dict.fromkeys([s.gate for s in some.network if s.gate >= 0] + ends))
+        root, same = self._root[some.nets[:, asked]], self._same[some.nets[:, asked]]
+        first = np.stack([(root == column[:, None]).argmax(axis=1) for column in root.T], axis=1)
+        straight = same == np.take_along_axis(same, first, axis=1)
+        here = some.nets[:, ends]
+        marks = [
+            column[here]
+            for column in (self._seen, self._gating, self._open, self._input, self._output)
+        ]
+        table = np.concatenate([first, straight, *marks], axis=1)
+        kinds, inverse = np.unique(table, axis=0, return_inverse=True)
+        for index, kind in enumerate(kinds.tolist()):
+            ties = zip(asked, kind[: len(asked)], kind[len(asked) :], strict=False)
+            flags = [
+                tuple(end for end, flag in zip(ends, kind[begin:], strict=False) if flag)
+                for begin in range(2 * len(asked), len(kind), len(ends))
+            ]
+            facts = Facts(
+                tuple((a, asked[b], bool(is_same)) for a, b, is_same in ties if a != asked[b]),
+                *flags,
+            )
+            yield facts, np.flatnonzero(inverse == index).astype(np.int32)
+
+
+def _named(
+    nets: int, among: IntArray, names: Sequence[str], patterns: Sequence[Pattern]
+) -> BoolArray:
+    """Tell which nets some patterns name; what fits none is told elsewhere."""
+    found = np.zeros(nets, bool)
+    if patterns:
+        found[among] = [any(p.fits(name) for p in patterns) for name in names]
+    return found
+
+
+def _roots(found: Sorted, nets: int) -> tuple[IntArray, BoolArray]:
+    """Return for each net where the chain of inverters before it begins, and whether it is equal.
+
+    Nets in or behind a loop of inverters stand for themselves.
+    """
+    parent, same = np.arange(nets, dtype=np.int32), np.ones(nets, bool)
+    for form, some in found.gates:
+        if isinstance(form.pull_down, Literal) and form.kind == "static gate":
+            driven = some.nets[:, form.output]
+            parent[driven], same[driven] = some.nets[:, form.pull_down.net], False
+    drawn = parent
+    for _ in range(_DOUBLINGS):
+        if (parent[parent] == parent).all():
+            break
+        same, parent = same == same[parent], parent[parent]
+    settled = drawn[parent] == parent
+    return np.where(settled, parent, np.arange(nets, dtype=np.int32)), same | ~settled
