@@ -92,9 +92,7 @@ def test_json_names_every_gate_and_what_is_left(inventory: Inventory) -> None:
     assert document["outside_logic"][0]["names"] == ["md1", "md2"]
     (left,) = document["not_understood"]
     assert left["names"] == ["modd"]
-    assert left["reason"] == (
-        "nothing tells which of its open ends drive; name the block's inputs in the brief"
-    )
+    assert left["reason"] == "no node is pulled both up and down"
 
 
 def test_the_graph_is_read_back_as_the_gates_and_their_nets() -> None:
