@@ -72,6 +72,7 @@ def stage_arcs(some: AlikeStages, values: Electrical, drive: FloatArray) -> Arcs
     # What the outside drives arrives with its own transition and meets no threshold.
     outside = np.tile(switching < 0, count)
     arcs = form.arcs
+    more = np.tile([len(arc.steps) - 1 for arc in arcs], count)
     return Arcs(
         gate=gates[:, [arc.part for arc in arcs]].ravel(),
         input=some.nets[:, [arc.input for arc in arcs]].ravel(),
@@ -91,9 +92,11 @@ def stage_arcs(some: AlikeStages, values: Electrical, drive: FloatArray) -> Arcs
             capacitance=np.divide(moved, whole, out=np.zeros_like(moved), where=whole > 0).ravel(),
             capacitance_owner=gates[:, sums.own.other].ravel(),
         ),
-        slope=np.where(outside, 0.0, values.slope[device]),
+        slope=np.where(
+            outside, 0.0, values.slope[device] / (1 + values.slope_stack[device] * more)
+        ),
         slope_power=np.where(outside, 1.0, values.slope_power[device]),
-        shape=values.shape[device],
+        shape=values.shape[device] / (1 + values.shape_stack[device] * more),
         shape_carry=np.where(outside, 1.0, values.shape_carry[device]),
     )
 
