@@ -129,3 +129,34 @@ def _leaf(number: int, inputs: int) -> Iterator[str]:
     yield "mpo y z vdd vdd pch w='wn*k*4' l=lmin"
     yield "mno y z vss vss nch w='wn*k*2' l=lmin"
     yield f".ends leaf{number}"
+
+
+def layered(stages: int, depth: int, seed: int = 7) -> bytes:
+    """Return a flat block of inverters and three times as many NANDs in layers, every net read.
+
+    Each layer reads the one before; the last is the block's outputs. Three and a half transistors
+    a stage.
+    """
+    pick = random.Random(seed)
+    wide = stages // depth
+    lines = ["* an invented block, in layers", ".global vdd vss"]
+    outs = [f"o{k}" for k in range(wide)]
+    lines.append(f".subckt layers {' '.join(f'i{k}' for k in range(wide))}")
+    lines += [f"+ {' '.join(outs[k : k + 20])}" for k in range(0, wide, 20)]
+    above = [f"i{k}" for k in range(wide)]
+    for layer in range(depth):
+        here = outs if layer == depth - 1 else [f"n{layer}_{k}" for k in range(wide)]
+        first = pick.sample(above, wide)
+        second = pick.sample(above, wide)
+        for k, out in enumerate(here):
+            w = pick.choice(_WIDTHS)
+            name = f"{layer}_{k}"
+            lines.append(f"mp{name} {out} {first[k]} vdd vdd pch w={w} l=0.06u")
+            if k % 4 == 0:
+                lines.append(f"mn{name} {out} {first[k]} vss vss nch w={w} l=0.06u")
+                continue
+            lines.append(f"mq{name} {out} {second[k]} vdd vdd pch w={w} l=0.06u")
+            lines.append(f"mn{name} {out} {first[k]} x{name} vss nch w={w} l=0.06u")
+            lines.append(f"ms{name} x{name} {second[k]} vss vss nch w={w} l=0.06u")
+        above = here
+    return "\n".join([*lines, ".ends", ".end", ""]).encode()

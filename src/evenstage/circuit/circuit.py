@@ -179,6 +179,27 @@ class Circuit:
         return order[int(head[net]) : int(head[net + 1])]
 
     @cached_property
+    def _capacitors_by_net(self) -> tuple[IntArray, IntArray]:
+        """Capacitor cards by net, then by number, and where those of each net begin."""
+        a, b = self.devices.capacitor_nets
+        between = np.flatnonzero(a != b)
+        card, net = np.tile(between, 2), np.concatenate([a[between], b[between]])
+        order = np.lexsort((card, net))
+        nets = np.arange(len(self.devices.net_names) + 1)
+        return card[order].astype(np.int32), np.searchsorted(net[order], nets)
+
+    def capacitors_on(self, net: int) -> IntArray:
+        """Return the capacitor cards between a net and another, by number."""
+        order, head = self._capacitors_by_net
+        return order[int(head[net]) : int(head[net + 1])]
+
+    @cached_property
+    def loose_devices(self) -> tuple[IntArray, IntArray]:
+        """Devices in no gate, and those of them that lie outside all logic."""
+        apart = _joined([some.devices for some in self.apart])
+        return np.flatnonzero(self.gate_of_device < 0).astype(np.int32), apart
+
+    @cached_property
     def arcs(self) -> Arcs:
         """Arcs of all gates."""
         values, inner = self.electrical, self.wire_cap + self.apart_cap

@@ -19,14 +19,14 @@ if TYPE_CHECKING:
     from evenstage.process.process import Junction, Process, Transistor
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Scaled:
     """A quantity per device in two parts, shape ``(n,)`` each."""
 
     scaling: FloatArray
     fixed: FloatArray
 
-    @property
+    @cached_property
     def today(self) -> FloatArray:
         """The quantity at today's width."""
         return self.scaling + self.fixed

@@ -10,7 +10,7 @@ import numpy as np
 from evenstage.errors import CircuitError, Notice
 from evenstage.timing.graph import timing_graph
 from evenstage.timing.results import Analysis, Counts, PathEnd
-from evenstage.timing.search import slowest_paths
+from evenstage.timing.search import latest_path, slowest_paths
 from evenstage.timing.stages import describe, edge_name
 from evenstage.timing.sweep import Timing, sweep
 from evenstage.timing.yardstick import yardstick
@@ -70,7 +70,9 @@ def report(timing: Timing, count: int = 1) -> Analysis:
     """Put the results of a timing together; ``count`` slowest paths."""
     circuit, graph = timing.circuit, timing.graph
     devices = circuit.devices
-    paths = tuple(describe(timing, arcs) for arcs in islice(slowest_paths(timing), count))
+    # The slowest path alone is the one the latest arrival came by: no need to search.
+    slowest = [latest_path(timing)] if count == 1 else islice(slowest_paths(timing), count)
+    paths = tuple(describe(timing, arcs) for arcs in slowest)
     start_nets = dict.fromkeys(graph.net[graph.start].tolist())
     reached = np.unique(circuit.arcs.gate[graph.arc])
     notices = [*circuit.notices, *graph.notices]
@@ -108,10 +110,13 @@ def _ends(timing: Timing) -> tuple[PathEnd, ...]:
     for index, net in enumerate(graph.net[graph.end].tolist()):
         if net not in latest or timing.lateness[index] > timing.lateness[latest[net]]:
             latest[net] = index
-    order = sorted(latest.values(), key=lambda index: (-timing.lateness[index], index))
+    lateness = timing.lateness.tolist()
+    order = sorted(latest.values(), key=lambda index: (-lateness[index], index))
+    # Names are found fastest in the order of the text.
+    names = {net: circuit.devices.net_names[net] for net in sorted(latest)}
     return tuple(
         PathEnd(
-            net=circuit.devices.net_names[graph.net[graph.end[index]]],
+            net=names[int(graph.net[graph.end[index]])],
             edge=edge_name(rising=bool(graph.rising[graph.end[index]])),
             delay=float(timing.end_arrival[index]),
             charged_delay=float(charged[graph.net[graph.end[index]]]),

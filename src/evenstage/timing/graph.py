@@ -12,7 +12,10 @@ from itertools import pairwise
 from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
+from scipy.sparse import coo_array
+from scipy.sparse.csgraph import breadth_first_order
 
+from evenstage.circuit.arcs import ranges
 from evenstage.circuit.circuit import STORED
 from evenstage.errors import Notice
 from evenstage.timing.endpoints import (
@@ -46,11 +49,14 @@ class Level(NamedTuple):
         Where the arcs of each target begin, counted within the slice.
     node : IntArray, shape (k,)
         The targets.
+    owner : IntArray, shape (arcs,)
+        Place in ``node`` of each arc's target.
     """
 
     arcs: slice
     first: IntArray
     node: IntArray
+    owner: IntArray
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -107,8 +113,14 @@ class TimingGraph:
         bounds = [0, *self.level_ends.tolist()]
         heads = np.flatnonzero(np.diff(self.target, prepend=-1))
         cuts = np.searchsorted(heads, bounds).tolist()
+        owner = np.repeat(np.arange(len(heads)), np.diff([*heads.tolist(), len(self.target)]))
         return tuple(
-            Level(slice(begin, end), heads[low:high] - begin, self.target[heads[low:high]])
+            Level(
+                slice(begin, end),
+                heads[low:high] - begin,
+                self.target[heads[low:high]],
+                owner[begin:end] - low,
+            )
             for (begin, end), (low, high) in zip(pairwise(bounds), pairwise(cuts), strict=True)
             if end > begin
         )
@@ -234,36 +246,31 @@ def _on_paths(all_: Expansion) -> Expansion:
 
 def _reached(count: int, source: IntArray, target: IntArray, roots: IntArray) -> BoolArray:
     """Return the nodes that arcs lead to from the roots, the roots included."""
-    order = np.argsort(source, kind="stable")
-    head = np.searchsorted(source[order], np.arange(count + 1))
-    followers = target[order].tolist()
-    heads = head.tolist()
-    reached = [False] * count
-    waiting = roots.tolist()
-    for root in waiting:
-        reached[root] = True
-    while waiting:
-        node = waiting.pop()
-        for follower in followers[heads[node] : heads[node + 1]]:
-            if not reached[follower]:
-                reached[follower] = True
-                waiting.append(follower)
-    return np.array(reached, bool)
+    # One node more, before all roots, makes it a single search.
+    begin = np.concatenate([source, np.full(len(roots), count)])
+    end = np.concatenate([target, roots])
+    arcs = coo_array((np.ones(len(begin), np.int8), (begin, end)), shape=(count + 1, count + 1))
+    order = breadth_first_order(arcs.tocsr(), count, return_predecessors=False)
+    reached = np.zeros(count + 1, bool)
+    reached[order] = True
+    return reached[:count]
 
 
 def _levels(count: int, source: IntArray, target: IntArray) -> IntArray:
-    """Return the number of arcs on the longest way to each node, shape (nodes,)."""
+    """Return the number of arcs on the longest way to each node, shape (nodes,).
+
+    All nodes of a level are settled at once: those whose last arc comes from the level before.
+    """
     order = np.argsort(source, kind="stable")
-    heads = np.searchsorted(source[order], np.arange(count + 1)).tolist()
-    followers = target[order].tolist()
-    waiting_for = np.bincount(target, minlength=count).tolist()
-    level = [0] * count
-    ready = [node for node in range(count) if not waiting_for[node]]
-    while ready:
-        node = ready.pop()
-        for follower in followers[heads[node] : heads[node + 1]]:
-            level[follower] = max(level[follower], level[node] + 1)
-            waiting_for[follower] -= 1
-            if not waiting_for[follower]:
-                ready.append(follower)
-    return np.array(level, np.int32)
+    followers = target[order]
+    heads = np.searchsorted(source[order], np.arange(count + 1)).astype(np.int32)
+    width = np.diff(heads)
+    waiting_for = np.bincount(target, minlength=count)
+    level = np.zeros(count, np.int32)
+    ready, depth = np.flatnonzero(waiting_for == 0), 0
+    while len(ready):
+        level[ready] = depth
+        following = followers[ranges(heads[ready], width[ready])]
+        np.subtract.at(waiting_for, following, 1)
+        ready, depth = np.unique(following[waiting_for[following] == 0]), depth + 1
+    return level

@@ -34,6 +34,11 @@ def winning_path(timing: Timing, node: int) -> ArcPath:
     return tuple(reversed(path))
 
 
+def latest_path(timing: Timing) -> ArcPath:
+    """Return the path to the latest end (required times counted in); of equal ones the first."""
+    return winning_path(timing, int(timing.graph.end[int(timing.lateness.argmax())]))
+
+
 def slowest_paths(timing: Timing) -> Iterator[ArcPath]:
     """Yield the paths of a block, the latest end (required times counted in) first."""
     graph = timing.graph

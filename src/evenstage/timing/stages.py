@@ -262,8 +262,7 @@ def _pin_loads(circuit: Circuit, net: int) -> list[tuple[int, SideBranch]]:
 def _fixed_loads(circuit: Circuit, net: int) -> list[SideBranch]:
     """Return the capacitor cards, transistors outside gates, and outside load on a net."""
     devices, found = circuit.devices, []
-    ends = devices.capacitor_nets
-    for index in np.flatnonzero((ends == net).any(axis=0) & (ends[0] != ends[1])).tolist():
+    for index in circuit.capacitors_on(net).tolist():
         card, instance = devices.capacitor_card[index], devices.capacitor_instance[index]
         name = devices.card_path(int(card), int(instance))
         found.append(
@@ -278,8 +277,7 @@ def _fixed_loads(circuit: Circuit, net: int) -> list[SideBranch]:
 def _other_transistors(circuit: Circuit, net: int) -> list[SideBranch]:
     """Return the transistors in no gate that load a net, by their gates or their channels."""
     devices, values = circuit.devices, circuit.electrical
-    outside = np.flatnonzero(circuit.gate_of_device < 0)
-    apart = np.concatenate([np.zeros(0, np.int32), *(some.devices for some in circuit.apart)])
+    outside, apart = circuit.loose_devices
     found = []
     for pin, nets, capacitance, which in (
         ("gate", devices.gate, values.gate, outside),

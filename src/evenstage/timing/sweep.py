@@ -140,7 +140,7 @@ def latest_arrivals(graph: TimingGraph, delay: FloatArray, start_arrival: FloatA
     """
     arrival = np.full((len(graph), *delay.shape[1:]), -np.inf)
     arrival[graph.start] = start_arrival
-    for some, first, node in graph.levels:
+    for some, first, node, _ in graph.levels:
         candidate = arrival[graph.source[some]] + delay[some]
         arrival[node] = np.maximum.reduceat(candidate, first, axis=0)
     return arrival
@@ -268,25 +268,26 @@ def propagate(
     if wired is not None:
         outside = start_arrival - graph.start_arrival.reshape(column)
         ride = Ride(wired, graph, elmore, shape, outside)
-    for some, first, node in graph.levels:
+    for some, first, node, owner in graph.levels:
         source = graph.source[some]
         arriving = transition[source]
         if ride is not None:
             wire[some], arriving = ride.at_inputs(some, arriving)
             seen[some] = ride.effective(some, arriving)
-        delay[some] = arc_delay(seen[some], arriving, slope[some], power[some])
+        late = arc_delay(seen[some], arriving, slope[some], power[some])
         if ride is not None:
-            delay[some] += wire[some]
-        candidate = arrival[source] + delay[some]
+            late = late + wire[some]
+        candidate = arrival[source] + late
         latest = np.maximum.reduceat(candidate, first, axis=0)
-        by = _first_equal(candidate, latest, first)
-        leaving = arc_transition(elmore[some], arriving, shape[some], carry[some])
-        at_input[some] = arriving
+        by = _first_equal(candidate, latest[owner], first)
+        brought = _chosen(arriving, by)
+        made, shaped, carried = (_chosen(column[some], by) for column in (elmore, shape, carry))
+        transition[node] = arc_transition(made, brought, shaped, carried)
+        delay[some], at_input[some] = late, arriving
         arrival[node] = latest
         winner[node] = by + some.start
-        transition[node] = np.take_along_axis(leaving, by, axis=0)
         if ride is not None:
-            ride.follow(node, winner[node], np.take_along_axis(arriving, by, axis=0))
+            ride.follow(node, winner[node], brought)
     end_wire, end_transition = _at_ends(graph, ride, shape, winner, transition)
     return Flow(delay, seen, arrival, transition, winner, wire, at_input, end_wire, end_transition)
 
@@ -309,10 +310,26 @@ def _at_ends(
 
 
 def _first_equal(candidate: FloatArray, latest: FloatArray, first: IntArray) -> IntArray:
-    """Return the first position in each run of candidates that equals the run's maximum."""
-    runs = np.repeat(latest, np.diff(first, append=len(candidate)), axis=0)
+    """Return the first position in each run of candidates that equals the run's maximum.
+
+    Parameters
+    ----------
+    candidate, latest : FloatArray, s, shape (k, ...)
+        The latter the maximum of each candidate's run.
+    first : IntArray
+        Where the runs begin.
+    """
     place = np.arange(len(candidate)).reshape(-1, *(1 for _ in candidate.shape[1:]))
-    result: IntArray = np.minimum.reduceat(
-        np.where(candidate == runs, place, len(candidate)), first, axis=0
-    )
+    equal = np.where(candidate == latest, place, len(candidate))
+    result: IntArray = np.minimum.reduceat(equal, first, axis=0)
     return result
+
+
+def _chosen(values: FloatArray, by: IntArray) -> FloatArray:
+    """Return the values at chosen positions; blocks side by side may share one column."""
+    if values.ndim == 1:
+        return values[by]
+    if values.shape[1] == 1:
+        return values[:, 0][by]
+    chosen: FloatArray = np.take_along_axis(values, by, axis=0)
+    return chosen
