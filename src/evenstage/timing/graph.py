@@ -49,14 +49,11 @@ class Level(NamedTuple):
         Where the arcs of each target begin, counted within the slice.
     node : IntArray, shape (k,)
         The targets.
-    owner : IntArray, shape (arcs,)
-        Place in ``node`` of each arc's target.
     """
 
     arcs: slice
     first: IntArray
     node: IntArray
-    owner: IntArray
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -113,16 +110,18 @@ class TimingGraph:
         bounds = [0, *self.level_ends.tolist()]
         heads = np.flatnonzero(np.diff(self.target, prepend=-1))
         cuts = np.searchsorted(heads, bounds).tolist()
-        owner = np.repeat(np.arange(len(heads)), np.diff([*heads.tolist(), len(self.target)]))
         return tuple(
-            Level(
-                slice(begin, end),
-                heads[low:high] - begin,
-                self.target[heads[low:high]],
-                owner[begin:end] - low,
-            )
+            Level(slice(begin, end), heads[low:high] - begin, self.target[heads[low:high]])
             for (begin, end), (low, high) in zip(pairwise(bounds), pairwise(cuts), strict=True)
             if end > begin
+        )
+
+    @cached_property
+    def owners(self) -> tuple[IntArray, ...]:
+        """For each level the place of each arc's target among the level's nodes."""
+        return tuple(
+            np.repeat(np.arange(len(node)), np.diff(first, append=some.stop - some.start))
+            for some, first, node in self.levels
         )
 
 

@@ -140,7 +140,7 @@ def latest_arrivals(graph: TimingGraph, delay: FloatArray, start_arrival: FloatA
     """
     arrival = np.full((len(graph), *delay.shape[1:]), -np.inf)
     arrival[graph.start] = start_arrival
-    for some, first, node, _ in graph.levels:
+    for some, first, node in graph.levels:
         candidate = arrival[graph.source[some]] + delay[some]
         arrival[node] = np.maximum.reduceat(candidate, first, axis=0)
     return arrival
@@ -268,7 +268,7 @@ def propagate(
     if wired is not None:
         outside = start_arrival - graph.start_arrival.reshape(column)
         ride = Ride(wired, graph, elmore, shape, outside)
-    for some, first, node, owner in graph.levels:
+    for (some, first, node), owner in zip(graph.levels, graph.owners, strict=True):
         source = graph.source[some]
         arriving = transition[source]
         if ride is not None:
