@@ -40,20 +40,32 @@ xgate clk ce  r0  ckgate
 xroot r0  r1      ckinv m=2
 cw1 r1 vss 9f
 xspin r1  r2      ckinv m=5
-cw2 r2 vss 48f                              $ the spine itself, 240 um
+
+* the spine itself, 240 um, driven in its middle; wires 0.35 ohm and 0.2 fF per um
+rs1 r2 r2:n 42
+rs2 r2 r2:s 42
+cs0 r2   vss 24f
+cs1 r2:n vss 12f
+cs2 r2:s vss 12f
 
 * branch drivers; polarity: gate, root, spine, branch, leaf -- five inversions
-xbn r2 bn ckinv m=4
-xbe r2 be ckinv m=4
-xbs r2 bs ckinv m=4
-xbw r2 bw ckinv m=4
+xbn r2:n bn ckinv m=4
+xbe r2:s be ckinv m=4
+xbs r2:s bs ckinv m=4
+xbw r2:n bw ckinv m=4
 cbn bn vss 22f
-cbe be vss 118f                             $ 590 um where the others have some 100
+
+* to the east 590 um; the others' 100 um or so are left as capacitance alone
+re1 be   be:1 103
+re2 be:1 be:2 103
+ce0 be   vss 29f
+ce1 be:1 vss 60f
+ce2 be:2 vss 29f
 cbs bs vss 19f
 cbw bw vss 25f
 
 xnorth bn kn<0> kn<1> kn<2> kn<3> branch
-xeast  be ke<0> ke<1> ke<2> ke<3> branch
+xeast  be:2 ke<0> ke<1> ke<2> ke<3> branch
 xsouth bs ks<0> ks<1> ks<2> ks<3> branch
 xwest  bw kw<0> kw<1> kw<2> kw<3> branch
 .ends spine

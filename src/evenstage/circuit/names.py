@@ -33,7 +33,7 @@ class Names:
         self._ports: dict[int, dict[int, str]] = {}
 
     def net_id(self, name: str) -> int | None:
-        """Return the id of a net by its full name, in any case."""
+        """Return the id of a net by its full name or that of a part of it, in any case."""
         return self._ids.get(name.lower())
 
     def local(self, instance: int, net: int) -> str:
@@ -46,7 +46,10 @@ class Names:
 
     @cached_property
     def _ids(self) -> dict[str, int]:
-        return {name.lower(): net for net, name in enumerate(self._devices.net_names)}
+        devices = self._devices
+        parts = zip(devices.joined_names, devices.joined_net.tolist(), strict=True)
+        joined = {name.lower(): net for name, net in parts}
+        return joined | {name.lower(): net for net, name in enumerate(devices.net_names)}
 
     def _ports_of(self, instance: int) -> dict[int, str]:
         """Return the ports of an instance by the net they are tied to, the first of several."""

@@ -130,6 +130,10 @@ class Devices:
         What was assumed while elaborating.
     wires : Wires, optional
         None where no net has resistance.
+    joined_names : Sequence of str
+        Full names of nets as written that resistors make one with others.
+    joined_net : IntArray
+        The net each of them is now.
     """
 
     netlist: Netlist = field(repr=False)
@@ -164,6 +168,8 @@ class Devices:
     source_nets: tuple[tuple[int, int, float], ...]
     notices: tuple[Notice, ...]
     wires: Wires | None = None
+    joined_names: Sequence[str] = field(default=(), repr=False)
+    joined_net: IntArray = field(default_factory=lambda: np.zeros(0, np.int32), repr=False)
 
     def __len__(self) -> int:
         return len(self.card)

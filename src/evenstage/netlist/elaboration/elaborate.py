@@ -24,8 +24,6 @@ from evenstage.progress import tell
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
 
-    from numpy.typing import NDArray
-
     from evenstage.brief import Brief
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.netlist.elaboration.flatten import Indices
@@ -93,15 +91,12 @@ class _Block:
         check_extent(self._templates, callees)
         self._global_names = self._globals_used()
         self._flat = flatten(self._templates, callees, self._words(self._global_names))
-        local = [template.outline.nets for template in self._templates]
-        count = len(self._flat.slot_of_net)
-        self._names = NetNames(
-            self._netlist, self._flat, local, self._global_names, np.arange(count, dtype=np.int32)
-        )
+        self._names = self._named(np.arange(len(self._flat.slot_of_net), dtype=np.int32))
         ports = self._flat.net[: self._templates[0].outline.ports]
         self._ports: tuple[int, ...] = tuple(ports.tolist())
         self._notices: list[Notice] = []
         self._nodes: Nodes | None = None
+        self._members: Indices = np.zeros(0, np.int32)
         self._net, self._kept = self._joined()
 
     def _globals_used(self) -> tuple[str, ...]:
@@ -144,38 +139,31 @@ class _Block:
         pairs = self._flat.nets_of(instance, local)
         joints = Joints(pairs, count, len(self._global_names), frozenset(self._ports), self._names)
         cards = np.concatenate([r.card for r in rows])[row]
-        self._note_resistors(joints.joined, cards)
+        along = joints.joined
+        wires = "taken as wires: the nets at their ends are one"
+        apart = "left out: they would join a high and a low supply"
+        self._note(cards[along], "resistor-joined", "resistor", wires)
+        self._note(cards[~along], "resistor-left-out", "resistor", apart)
         chosen = joints.representative
         kept = np.flatnonzero(chosen == np.arange(count)).astype(np.int32)
         net = np.searchsorted(kept, chosen).astype(np.int32)
         values = np.concatenate([template.resistance for template in self._templates])[row]
-        along = joints.joined
-        self._note_values(np.unique(cards[along & ~(values >= 0)]).tolist())
+        unknown = cards[along & ~(values >= 0)]
+        nothing = "without a value taken as no resistance at all"
+        self._note(unknown, "resistor-unknown", "resistor", nothing)
+        self._members = np.unique(pairs[:, along])
         nodes = find_nodes(pairs[:, along], (values / self._flat.multiplier[instance])[along], net)
         self._nodes = nodes if len(nodes.net) else None
         return net, kept
 
-    def _note_resistors(self, joined: NDArray[np.bool_], cards: IntArray) -> None:
-        for rows, code, what in (
-            (joined, "resistor-joined", "taken as wires: the nets at their ends are one"),
-            (~joined, "resistor-left-out", "left out: they would join a high and a low supply"),
-        ):
-            numbers = np.unique(cards[rows]).tolist()
-            if numbers:
-                names = self._card_names(numbers)
-                message = f"{counted(len(names), 'resistor')} {what} ({listed(names)})"
-                place = self._netlist.card(numbers[0]).span.place
-                self._notices.append(Notice(code, message, place, names))
-
-    def _note_values(self, numbers: Sequence[int]) -> None:
+    def _note(self, cards: Indices, code: str, noun: str, what: str) -> None:
+        """Take a notice about some cards, if there are any."""
+        numbers = np.unique(cards).tolist()
         if numbers:
             names = self._card_names(numbers)
-            message = (
-                f"{counted(len(names), 'resistor')} without a value taken as no resistance at all "
-                f"({listed(names)})"
-            )
+            message = f"{counted(len(names), noun)} {what} ({listed(names)})"
             place = self._netlist.card(numbers[0]).span.place
-            self._notices.append(Notice("resistor-unknown", message, place, names))
+            self._notices.append(Notice(code, message, place, names))
 
     def _wires(self, instance: Indices, row: Indices, pins: Indices) -> Wires | None:
         """Return the resistance along nets, and the nodes that everything hangs on.
@@ -262,19 +250,20 @@ class _Block:
             instance_card=_ids(flat.card),
             instance_subcircuit=_ids(index[flat.template]),
             subcircuits=subcircuits,
-            net_names=NetNames(
-                self._netlist,
-                flat,
-                [template.outline.nets for template in templates],
-                self._global_names,
-                self._kept,
-            ),
+            net_names=self._named(self._kept),
             ports=tuple(int(self._net[port]) for port in self._ports),
             global_nets=frozenset(self._net[: len(self._global_names)].tolist()),
             source_nets=self._sources(),
             notices=(*self._notices, *sizes.notices, *self._card_notices()),
             wires=wires,
+            joined_names=self._named(self._members),
+            joined_net=_ids(self._net[self._members]),
         )
+
+    def _named(self, nets: Indices) -> NetNames:
+        """Return the names of some nets of the layout."""
+        local = [template.outline.nets for template in self._templates]
+        return NetNames(self._netlist, self._flat, local, self._global_names, nets)
 
     def _drawn(self) -> Drawn:
         templates = self._templates
@@ -297,7 +286,8 @@ class _Block:
         rows = [template.outline.capacitors for template in self._templates]
         values = np.concatenate([template.capacitance for template in self._templates])
         cards = np.concatenate([r.card for r in rows])
-        self._note_capacitors(np.unique(cards[~(values >= 0)]).tolist())
+        unknown = cards[~(values >= 0)]
+        self._note(unknown, "capacitor-unknown", "capacitor", "without a value left out")
         instance, row = self._known_capacitors()
         local = np.concatenate([r.nets for r in rows], axis=1)[:, row]
         value = values[row] * self._flat.multiplier[instance]
@@ -309,15 +299,6 @@ class _Block:
         values = np.concatenate([template.capacitance for template in self._templates])
         known = values[row] >= 0
         return instance[known], row[known]
-
-    def _note_capacitors(self, numbers: Sequence[int]) -> None:
-        if numbers:
-            names = self._card_names(numbers)
-            message = (
-                f"{counted(len(names), 'capacitor')} without a value left out ({listed(names)})"
-            )
-            place = self._netlist.card(numbers[0]).span.place
-            self._notices.append(Notice("capacitor-unknown", message, place, names))
 
     def _sources(self) -> tuple[tuple[int, int, float], ...]:
         """Return nets and DC value of the V cards of the block's own level."""
