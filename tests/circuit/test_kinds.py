@@ -152,3 +152,42 @@ class TestKept:
         assert {(path.start, path.edge) for path in found_paths} == {
             (start, edge) for start in "ab" for edge in ("rise", "fall")
         }
+
+
+class TestCrossCoupled:
+    """A level shifter: a differential pair of n transistors under cross-coupled p loads."""
+
+    PAIR = "\n".join([
+        network("n", "x", [("l", "a", "vss", 4), ("r", "ab", "vss", 4)]),
+        "mpl l r vddh vddh px w=1u l=0.1u", "mpr r l vddh vddh px w=1u l=0.1u",
+    ])  # fmt: skip
+    HIGH = "mpo y r vddh vddh px w=2u l=0.1u\nmno y r vss vss nx w=1u l=0.1u"
+
+    def test_both_sides_are_named_and_hold_nothing(self) -> None:
+        found = circuit(inverter("i", "a", "ab", 1, 2), self.PAIR, self.HIGH, ports="a y vddh")
+        assert kinds(found)["l"] == ("cross-coupled pull-up", "!a")
+        assert kinds(found)["r"] == ("cross-coupled pull-up", "!ab")
+        assert [one.kind for one in found.storage.elements] == ["loop that never holds"]
+
+    def test_a_side_rises_after_the_other_has_fallen(self) -> None:
+        found = circuit(inverter("i", "a", "ab", 1, 2), self.PAIR, self.HIGH, ports="a y vddh")
+        routes = {
+            tuple(f"{s.output}{s.edge[0]}" for s in path.stages)
+            for path in analyse(found, count=9).paths
+        }
+        assert ("lf", "rr", "yf") in routes
+        assert "loop-cut" not in codes(found)
+
+    def test_the_load_fights_the_fall(self) -> None:
+        """Four micron of n, 1/4 kohm, against one of p, 2 kohm: 1 / (4 - 0.5) kohm is left."""
+        found = circuit(inverter("i", "a", "ab", 1, 2), self.PAIR, self.HIGH, ports="a y vddh")
+        falls = (found.arcs.output == found.net_id("l")) & ~found.arcs.rising
+        assert found.arcs.output_resistance[falls] == pytest.approx(1e3 / 3.5)
+
+    def test_a_net_between_supplies_is_named_unless_it_is_shifted(self) -> None:
+        low = inverter("i", "a", "ab", 1, 2)
+        shifted = circuit(low, self.PAIR, self.HIGH, ports="a y vddh")
+        assert "supply-crossed" not in codes(shifted)
+        found = circuit(low, self.HIGH.replace(" r ", " ab "), ports="a y vddh")
+        (notice,) = (notice for notice in found.notices if notice.code == "supply-crossed")
+        assert "'ab' leads from 'vdd' to 'vddh'" in notice.message

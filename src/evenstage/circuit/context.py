@@ -16,7 +16,7 @@ from evenstage.circuit.function import Literal
 from evenstage.circuit.rows import distinct_rows
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Sequence
+    from collections.abc import Sequence
 
     from evenstage.circuit.gate import GateForm, Relation
     from evenstage.circuit.groups import AlikeGroups
@@ -25,6 +25,9 @@ if TYPE_CHECKING:
 
 NETS_MAX = 256
 """A group with more nets is a bit line or an array; nothing is asked about its surroundings."""
+
+_MUTUAL_MAX = 24
+"""Larger groups that nobody has recognised are not sides of a cross-coupled pair."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,6 +40,8 @@ class Context:
         An input, and the net that it is the complement of (another input, or a channel end).
     feedback : tuple of (int, int)
         An input, and a channel end that the gate driving this input listens to.
+    mutual : tuple of (int, int)
+        Likewise, where what drives the input is not recognised yet.
     seen : tuple of int
         Channel ends that are ports or close switches of other groups.
     ports : tuple of int
@@ -45,6 +50,7 @@ class Context:
 
     complements: tuple[Relation, ...] = ()
     feedback: tuple[Relation, ...] = ()
+    mutual: tuple[Relation, ...] = ()
     seen: tuple[int, ...] = ()
     ports: tuple[int, ...] = ()
 
@@ -57,7 +63,7 @@ class Surroundings:
     devices : Devices
     gates : sequence of (GateForm, AlikeGroups)
         Recognised so far.
-    others : iterable of AlikeGroups
+    others : sequence of AlikeGroups
         Those that will be asked about.
     """
 
@@ -65,7 +71,7 @@ class Surroundings:
         self,
         devices: Devices,
         gates: Sequence[tuple[GateForm, AlikeGroups]],
-        others: Iterable[AlikeGroups],
+        others: Sequence[AlikeGroups],
     ) -> None:
         nets = len(devices.net_names)
         self._nets = nets
@@ -74,31 +80,39 @@ class Surroundings:
         for some in others:
             for local in {s.gate for s in some.network if s.gate >= 0}:
                 asked[some.nets[:, local]] = True
-        heard = [np.zeros(0, np.int64)]
+        heard, unsure = [], []
         for form, some in gates:
             driven = some.nets[:, form.output]
             if isinstance(form.pull_down, Literal):
                 self._complement[driven] = some.nets[:, form.pull_down.net]
-            rows = np.flatnonzero(asked[driven])
-            heard += [
-                driven[rows].astype(np.int64) * nets + some.nets[rows, local]
-                for local in (form.network.inputs if len(rows) else ())
-            ]
-        self._heard = np.sort(np.concatenate(heard))
+            heard += self._pairs(asked, some, form.network.inputs, form.output)
+        for some in others:
+            if len(some.network) <= _MUTUAL_MAX:
+                inputs, ends = _inputs(some), _ends(some)
+                unsure += [p for end in ends for p in self._pairs(asked, some, inputs, end)]
+        self._heard, self._unsure = _sorted(heard), _sorted(unsure)
         self._gates_on = np.bincount(devices.gate, minlength=nets)
         self._is_port = np.zeros(nets, bool)
         self._is_port[list(devices.ports)] = True
+
+    def _pairs(
+        self, asked: BoolArray, some: AlikeGroups, inputs: Sequence[int], end: int
+    ) -> list[IntArray]:
+        """Return an asked-for net and each input of the group that drives it, as one number."""
+        driven = some.nets[:, end]
+        rows = np.flatnonzero(asked[driven])
+        return [driven[rows].astype(np.int64) * self._nets + some.nets[rows, i] for i in inputs]
 
     def split(self, some: AlikeGroups) -> list[tuple[Context, IntArray]]:
         """Return the contexts that equal groups stand in, each with the rows of its groups."""
         if some.nets.shape[1] > NETS_MAX:
             return [(Context(), np.arange(len(some.devices), dtype=np.int32))]
-        inputs = list(dict.fromkeys(s.gate for s in some.network if s.gate >= 0))
-        ends = list(dict.fromkeys(n for s in some.network for n in (s.a, s.b) if n >= 0))
+        inputs, ends = _inputs(some), _ends(some)
         here = some.nets[:, inputs]
         facts = [
             self._complement[here][:, :, None] == some.nets[:, None, :],
-            self._listens(here, some.nets[:, ends]),
+            self._listens(self._heard, here, some.nets[:, ends]),
+            self._listens(self._unsure, here, some.nets[:, ends]),
             self._seen(some, ends),
             self._is_port[some.nets[:, ends]],
         ]
@@ -107,24 +121,25 @@ class Surroundings:
         sizes = np.cumsum([fact[0].size for fact in facts])[:-1]
         result = []
         for index, kind in enumerate(kinds):
-            complements, feedback, seen, ports = np.split(kind.astype(bool), sizes)
+            complements, feedback, mutual, seen, ports = np.split(kind.astype(bool), sizes)
             locals_ = range(some.nets.shape[1])
             context = Context(
                 _pairs(complements, inputs, locals_),
                 _pairs(feedback, inputs, ends),
+                _pairs(mutual, inputs, ends),
                 tuple(np.array(ends)[seen].tolist()),
                 tuple(np.array(ends)[ports].tolist()),
             )
             result.append((context, np.flatnonzero(inverse == index).astype(np.int32)))
         return result
 
-    def _listens(self, inputs: IntArray, ends: IntArray) -> BoolArray:
-        """Tell whether the gate that drives an input has a net among its own inputs."""
+    def _listens(self, heard: IntArray, inputs: IntArray, ends: IntArray) -> BoolArray:
+        """Tell whether what drives an input has a net among its own inputs."""
         pairs = inputs.astype(np.int64)[:, :, None] * self._nets + ends[:, None, :]
-        if not len(self._heard):
+        if not len(heard):
             return np.zeros(pairs.shape, bool)
-        place = np.searchsorted(self._heard, pairs.ravel()).clip(max=len(self._heard) - 1)
-        found: BoolArray = (self._heard[place] == pairs.ravel()).reshape(pairs.shape)
+        place = np.searchsorted(heard, pairs.ravel()).clip(max=len(heard) - 1)
+        found: BoolArray = (heard[place] == pairs.ravel()).reshape(pairs.shape)
         return found
 
     def _seen(self, some: AlikeGroups, ends: Sequence[int]) -> BoolArray:
@@ -133,6 +148,18 @@ class Surroundings:
         nets = some.nets[:, ends]
         found: BoolArray = self._is_port[nets] | (self._gates_on[nets] > own[ends])
         return found
+
+
+def _inputs(some: AlikeGroups) -> list[int]:
+    return list(dict.fromkeys(s.gate for s in some.network if s.gate >= 0))
+
+
+def _ends(some: AlikeGroups) -> list[int]:
+    return list(dict.fromkeys(n for s in some.network for n in (s.a, s.b) if n >= 0))
+
+
+def _sorted(parts: list[IntArray]) -> IntArray:
+    return np.sort(np.concatenate([np.zeros(0, np.int64), *parts]))
 
 
 def _pairs(

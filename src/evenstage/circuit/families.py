@@ -9,6 +9,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from evenstage.circuit.gate import recognise_network
+from evenstage.circuit.kinds.cross_coupled import cross_coupled
 from evenstage.circuit.kinds.dynamic import dynamic
 from evenstage.circuit.kinds.floating import floating
 from evenstage.circuit.kinds.kept import kept
@@ -33,4 +34,4 @@ def complementary(devices: tuple[Switch, ...], context: Context) -> GateForm | U
 
 
 PLAIN: tuple[Family, ...] = (complementary, dynamic, ratioed, floating)
-FAMILIES: tuple[Family, ...] = (complementary, kept(PLAIN), *PLAIN[1:])
+FAMILIES: tuple[Family, ...] = (complementary, kept(PLAIN), cross_coupled, *PLAIN[1:])

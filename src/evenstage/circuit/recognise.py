@@ -10,6 +10,7 @@ import numpy as np
 from evenstage.brief import Brief
 from evenstage.circuit.apart import set_apart
 from evenstage.circuit.circuit import STORED, Circuit, NotUnderstood
+from evenstage.circuit.domains import domain_notices
 from evenstage.circuit.groups import group
 from evenstage.circuit.names import NAMES_MAX, device_names
 from evenstage.circuit.ownership import leaves, owners
@@ -133,6 +134,7 @@ def _complete(circuit: Circuit, brief: Brief | None) -> Circuit:
         *_loop_notices(devices, circuit.storage),
         *ratio_notices(circuit),
         *stage_notices(devices, circuit.stages),
+        *domain_notices(circuit),
     )
     circuit = replace(circuit, notices=notices)
     return _with_surroundings(circuit, brief) if circuit.alike else circuit
@@ -271,7 +273,9 @@ def _natural_ends(circuit: Circuit) -> dict[int, str]:
     is_output[circuit.pins.net] = False
     is_output[list(circuit.devices.ports)] = True
     driven = circuit.driven
-    stored = circuit.storage.loop_of_net() >= 0
+    stored = np.zeros(len(circuit.devices.net_names), bool)
+    for loop in circuit.storage.loops():
+        stored[list(loop.nets)] = loop.captures
     entering = driven[strange[driven] & ~is_output[driven]]
     return {
         **dict.fromkeys(driven[is_output[driven]].tolist(), "output"),

@@ -52,7 +52,7 @@ def boundaries(circuit: Circuit) -> Boundaries:
     """Find the arcs that enter and close the storage loops of a circuit."""
     arcs, storage = circuit.arcs, circuit.storage
     loops, loop = storage.loops(), storage.loop_of_net()
-    clocked = np.array([bool(one.clocks and one.data) for one in loops], bool)
+    clocked = np.array([one.captures for one in loops], bool)
     into, source = loop[arcs.output], storage.phases.root[arcs.input]
     inside = into >= 0
     own = inside & ((loop[arcs.input] == into) | (loop[source] == into))

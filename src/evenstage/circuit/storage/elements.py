@@ -54,6 +54,11 @@ class Loop:
     data: tuple[int, ...] = ()
     writes: tuple[tuple[int, bool], ...] = ()
 
+    @property
+    def captures(self) -> bool:
+        """Whether data end here until a clock lets them out."""
+        return bool(self.clocks and self.data)
+
 
 @dataclass(frozen=True, slots=True)
 class Element:
