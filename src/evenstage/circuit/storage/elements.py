@@ -137,12 +137,17 @@ def find_storage(
     held = _held_by_keepers(gates, len(devices.net_names))
     found = [
         element
-        for some in feedback.drawn_loops()
+        for some in feedback.drawn(feedback.near_loops())
         for element in _elements(some)
         if not (len(element.loops[0].nets) == 1 and held[element.loops[0].nets[0]])
     ]
+    ends = held.copy()
+    for element in found:
+        ends[list(element.loops[0].nets)] = True
+    far = feedback.drawn(feedback.far_loops(ends))
+    found += [element for some in far for element in _elements(some)]
     found.sort(key=lambda one: one.loops[0].nets[0])
-    joined = _flip_flops(found, _instances(devices, found))
+    joined = _flip_flops(found, _second_of(found, feedback, _instances(devices, found)))
     elements = _clock_gates(joined, gates, feedback.phases.root)
     return Storage(elements, feedback.phases)
 
@@ -195,9 +200,8 @@ def first_device(devices: Devices) -> IntArray:
     return result
 
 
-def _flip_flops(found: Sequence[Element], places: Sequence[int]) -> tuple[Element, ...]:
+def _flip_flops(found: Sequence[Element], second_of: Mapping[int, int]) -> tuple[Element, ...]:
     """Join two latches to a flip-flop where one stores the other while its clock holds that."""
-    second_of = _second_of(found, places)
     firsts = set(second_of.values())
     result = [
         replace(one, kind=FLIP_FLOP, loops=(*found[second_of[index]].loops, *one.loops))
@@ -209,11 +213,13 @@ def _flip_flops(found: Sequence[Element], places: Sequence[int]) -> tuple[Elemen
     return tuple(sorted(result, key=lambda one: min(min(loop.nets) for loop in one.loops)))
 
 
-def _second_of(found: Sequence[Element], places: Sequence[int]) -> dict[int, int]:
+def _second_of(
+    found: Sequence[Element], feedback: Feedback, places: Sequence[int]
+) -> dict[int, int]:
     """Return for each latch that shows what another stored that other one.
 
-    In a chain of latches of both phases every second one does. Those of one instance belong
-    together; else a chain is paired from its beginning.
+    In a chain of latches of both phases every second one does. Those that a transmission gate
+    joins belong together, then those of one instance; else a chain is paired from its beginning.
     """
     first_of = {
         net: at for at, one in enumerate(found) if one.kind == LATCH for net in one.loops[0].nets
@@ -228,7 +234,18 @@ def _second_of(found: Sequence[Element], places: Sequence[int]) -> dict[int, int
                 feeding[index] = fits
     depth = _depths(feeding)
     pairs = [(index, other) for index, others in feeding.items() for other in others]
-    pairs.sort(key=lambda pair: (places[pair[0]] != places[pair[1]], depth[pair[0]], pair))
+    groups = {
+        index: {feedback.group_of(net) for net in found[index].loops[0].nets}
+        for index in {index for pair in pairs for index in pair}
+    }
+    pairs.sort(
+        key=lambda pair: (
+            groups[pair[0]].isdisjoint(groups[pair[1]]),
+            places[pair[0]] != places[pair[1]],
+            depth[pair[0]],
+            pair,
+        )
+    )
     joined: dict[int, int] = {}
     firsts: set[int] = set()
     for index, other in pairs:

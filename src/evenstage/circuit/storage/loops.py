@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -95,6 +96,10 @@ class Feedback:
             id(some.nets): form.output for form, some in gates if form.kind == "static gate"
         }
 
+    def group_of(self, net: int) -> tuple[int, int]:
+        """Return what is equal for channel ends of one group of transistors."""
+        return int(self._drawing_of[net]), int(self._row_of[net])
+
     def _free_ends(self, nets: int) -> BoolArray:
         """Tell which channel ends the outside drives.
 
@@ -111,24 +116,42 @@ class Feedback:
                 pulled[some.nets[:, end]] = True
         return is_port & ~pulled & ~closes
 
-    def loops(self) -> list[IntArray]:
-        """Return the nets of each loop, ascending; loops in the order of their first nets."""
+    @cached_property
+    def _influences(self) -> tuple[IntArray, IntArray]:
+        """Nets that signals come from and the nets they move, each pair once."""
         nets = len(self._devices.net_names)
+        none = np.zeros(0, np.int32)
         pairs = [pair for some in self._drawings for pair in self._edges(some)]
-        if not pairs:
-            return []
-        source = np.concatenate([pair[0] for pair in pairs])
-        target = np.concatenate([pair[1] for pair in pairs])
-        links = coo_array((np.ones(len(source), np.int8), (source, target)), shape=(nets, nets))
-        _, part = connected_components(links, directed=True, connection="strong")
-        looped = np.zeros(nets, bool)
-        looped[source[source == target]] = True
-        looped |= (np.bincount(part, minlength=nets) > 1)[part]
-        members = np.flatnonzero(looped)
-        order = members[np.argsort(part[members], kind="stable")].astype(np.int32)
-        cuts = np.flatnonzero(np.diff(part[order])) + 1
-        found = np.split(order, cuts) if len(order) else []
-        return sorted(found, key=lambda loop: int(loop[0]))
+        source = np.concatenate([none, *(pair[0] for pair in pairs)])
+        target = np.concatenate([none, *(pair[1] for pair in pairs)])
+        links = coo_array(
+            (np.ones(len(source), np.int8), (source, target)), shape=(nets, nets)
+        ).tocsr()
+        links.sum_duplicates()
+        rows = np.repeat(np.arange(nets, dtype=np.int32), np.diff(links.indptr))
+        return rows, links.indices.astype(np.int32)
+
+    def near_loops(self) -> list[IntArray]:
+        """Return the loops of nets that move themselves, and of nets that move each other.
+
+        A latch is one of them, whatever logic leads from its output back to its data.
+        """
+        nets = len(self._devices.net_names)
+        source, target = self._influences
+        alone = np.zeros(nets, bool)
+        alone[source[source == target]] = True
+        both = ~alone[source] & ~alone[target]
+        source, target = source[both], target[both]
+        here = source.astype(np.int64) * nets + target
+        mutual = np.isin(target.astype(np.int64) * nets + source, here)
+        pairs = _parts(source[mutual], target[mutual], nets)
+        return [*(np.array([net], np.int32) for net in np.flatnonzero(alone)), *pairs]
+
+    def far_loops(self, without: BoolArray) -> list[IntArray]:
+        """Return the loops that lead through none of some nets, shape (nets,)."""
+        source, target = self._influences
+        kept = ~without[source] & ~without[target] & (source != target)
+        return _parts(source[kept], target[kept], len(without))
 
     def _edges(self, some: _Drawing) -> Iterator[tuple[IntArray, IntArray]]:
         """Yield the nets that signals come from and the channel ends they move."""
@@ -171,10 +194,10 @@ class Feedback:
             nets = [roots[rows][:, sorted(set(kind[:inputs]))], some.nets[rows][:, ends]]
             yield rows, wiring, np.concatenate(nets, axis=1)
 
-    def drawn_loops(self) -> Iterator[DrawnLoops]:
-        """Yield the loops of a block, those drawn alike together."""
+    def drawn(self, found: Sequence[IntArray]) -> Iterator[DrawnLoops]:
+        """Yield loops of a block, those drawn alike together."""
         by_size: dict[int, list[IntArray]] = {}
-        for loop in self.loops():
+        for loop in found:
             by_size.setdefault(len(loop), []).append(loop)
         for loops in by_size.values():
             nets = np.stack(loops)
@@ -213,6 +236,16 @@ class Feedback:
                 loops[rows],
                 table[rows][:, used],
             )
+
+
+def _parts(source: IntArray, target: IntArray, nets: int) -> list[IntArray]:
+    """Return the nets that reach each other, ascending, where they are several."""
+    links = coo_array((np.ones(len(source), np.int8), (source, target)), shape=(nets, nets))
+    _, part = connected_components(links, directed=True, connection="strong")
+    members = np.flatnonzero((np.bincount(part, minlength=nets) > 1)[part])
+    order = members[np.argsort(part[members], kind="stable")].astype(np.int32)
+    cuts = np.flatnonzero(np.diff(part[order])) + 1
+    return np.split(order, cuts) if len(order) else []
 
 
 def _members(
