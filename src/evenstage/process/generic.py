@@ -113,9 +113,7 @@ def usual_channel(transistor: Transistor, supply: float) -> Channel:
     known = transistor.channel
     threshold = _THRESHOLD_SHARE * supply if known.threshold is None else known.threshold
     alpha = _ALPHA[transistor.polarity] if known.alpha is None else known.alpha
-    overlap = _OVERLAP_SHARE * transistor.c_gate
-    if transistor.c_drain < 2 * overlap:
-        overlap = transistor.c_drain / 2
+    overlap = min(_OVERLAP_SHARE * transistor.c_gate, transistor.c_drain)
     return replace(
         known,
         threshold=threshold,

@@ -216,6 +216,7 @@ def _transistor(card: _Card, supply: float, length: float) -> Transistor:
             phi=card.surface,
             overlap_source=card.overlap_source,
             overlap_drain=card.overlap_drain,
+            overlap_count=2.0,
         ),
     )
 

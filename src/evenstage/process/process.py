@@ -81,7 +81,11 @@ class Channel:
     body, phi : float
         V^0.5 and V; how the threshold rises with the source's bias.
     overlap_source, overlap_drain : float, optional
-        F/m, between the gate and each end; contained in ``c_gate`` once and twice.
+        F/m, between the gate and each end; both contained in ``c_gate``.
+    overlap_count : float
+        How often ``c_gate`` and ``c_drain`` contain the drain's overlap. Once as a driver sees it:
+        up to half its swing the next drain has hardly begun to move; twice by the rule for ends
+        that move against each other.
     """
 
     threshold: float | None = None
@@ -93,6 +97,7 @@ class Channel:
     phi: float = 0.6
     overlap_source: float | None = None
     overlap_drain: float | None = None
+    overlap_count: float = 1.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -51,6 +51,10 @@ _TRANSISTOR_KEYS: Final[Mapping[str, Entry]] = {
     "i_dsat": Number(unit="A/m", above=0, most=1e5),
     "v_dsat": Number(unit="V", above=0, most=1000),
     "cgdo": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST),
+    "cgso": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST),
+    "lambda": Number(least=0, most=10, default=0.0),
+    "gamma": Number(least=0, most=10, default=0.0),
+    "phi": Number(unit="V", above=0, most=10, default=0.6),
     "slope_stack": Number(least=0, most=10, default=0.0),
     "shape_stack": Number(least=0, most=10, default=0.0),
     "width_parameter": Text(default="w"),
@@ -162,12 +166,12 @@ def _channel(table: Settings, supply: float) -> Channel:
     threshold = None if vto is None else abs(vto)
     if threshold is not None and threshold >= supply:
         raise table.error("vto", f"vto must be below the supply, {supply:g} V", "out-of-range")
-    overlap = table.optional_number("cgdo")
-    most = min(table.number("c_gate") / 3, table.number("c_drain") / 2)
-    if overlap is not None and overlap > most:
+    drain, source = table.optional_number("cgdo"), table.optional_number("cgso")
+    both = (drain or 0.0) + (drain or 0.0 if source is None else source)
+    if both > table.number("c_gate") or (drain or 0.0) > table.number("c_drain"):
         raise table.error(
-            "cgdo",
-            "cgdo must be at most half of c_drain and a third of c_gate, which contain it",
+            "cgso" if drain is None else "cgdo",
+            "overlaps must not exceed what contains them: cgdo c_drain, cgdo and cgso c_gate",
             "out-of-range",
         )
     if kp is not None:
@@ -182,6 +186,9 @@ def _channel(table: Settings, supply: float) -> Channel:
         alpha=alpha,
         current=current,
         saturation=table.optional_number("v_dsat"),
-        overlap_source=overlap,
-        overlap_drain=overlap,
+        modulation=table.number("lambda"),
+        body=table.number("gamma"),
+        phi=table.number("phi"),
+        overlap_source=drain if source is None else source,
+        overlap_drain=drain,
     )

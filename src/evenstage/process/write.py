@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import fields
 from typing import TYPE_CHECKING, Final
 
-from evenstage.process.process import Transistor
+from evenstage.process.process import Channel, Transistor
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
@@ -16,7 +16,20 @@ if TYPE_CHECKING:
 _ALWAYS: Final = frozenset({"length", "r_w", "c_gate", "c_drain"})
 
 #: What a file has no key for, and what is written apart.
-_APART: Final = frozenset({"models", "polarity", "junctions"})
+_APART: Final = frozenset({"models", "polarity", "junctions", "channel"})
+
+#: The keys of what a channel knows.
+_CHANNEL_KEYS: Final = {
+    "threshold": "vto",
+    "alpha": "alpha",
+    "current": "i_dsat",
+    "saturation": "v_dsat",
+    "modulation": "lambda",
+    "body": "gamma",
+    "phi": "phi",
+    "overlap_source": "cgso",
+    "overlap_drain": "cgdo",
+}
 
 _DIGITS: Final = 6
 
@@ -52,6 +65,10 @@ def _transistor_lines(transistor: Transistor) -> list[str]:
             continue
         shown = _number(value) if isinstance(value, float) else _quoted(value)
         lines.append(f"{field.name} = {shown}")
+    for field in fields(Channel):
+        value = getattr(transistor.channel, field.name)
+        if field.name in _CHANNEL_KEYS and value != field.default:
+            lines.append(f"{_CHANNEL_KEYS[field.name]} = {_number(value)}")
     if transistor.junctions is not None:
         same = transistor.junctions.rise
         lines += [

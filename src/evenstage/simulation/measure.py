@@ -62,7 +62,7 @@ class GateDelays:
     delay, output_transition : FloatArray, s
         50 to 50 %; 10 to 90 % over 0.8.
     input_cap : FloatArray, F
-        Charge that the input takes over its swing, per supply.
+        Charge that the input takes up to half its swing, per half the supply.
     notices : tuple of Notice
         What could not be measured.
     """
@@ -114,7 +114,7 @@ def measure_gates(
     rows = [arc for arc in arcs for _ in range(points)]
     ramp = np.tile(np.repeat(np.array(transitions) * mean, len(loads)), len(arcs))
     load = np.tile(np.array(loads), len(arcs) * len(transitions))
-    load *= np.repeat([_input_cap(arc) for arc in arcs], points)
+    load *= np.repeat([_pin_cap(circuit, arc) for arc in arcs], points)
     waves, node = _run(circuit, unit, rows, ramp, load)
     return _read_off(circuit, rows, waves, (node, ramp, load))
 
@@ -137,21 +137,28 @@ def _arcs(circuit: Circuit, some: Parameters, gate: int) -> list[Excerpt]:
     return found
 
 
-def _input_cap(arc: Excerpt) -> float:
-    """Return the charge an input takes over its swing, per supply, F.
+def _pin_cap(circuit: Circuit, arc: Excerpt) -> float:
+    """Return the gate capacitance on an arc's input, F: what loads are counted in."""
+    devices = arc.layout.devices
+    here = circuit.devices.gate[devices] == arc.route.nets[0]
+    return float(circuit.electrical.gate.today[devices[here]].sum())
 
-    What is at the other end of a capacitor counts as it stands before and after the edge: twice
-    where it moves against the input.
+
+def _input_cap(arc: Excerpt, first: int, waves: Waveforms, ramp: float) -> float:
+    """Return the charge an input takes up to half its swing, per half the supply, F.
+
+    That is what decides when a driver gets there. What is at the other end of a capacitor counts as
+    far as it has moved by then: an output that moves against the input adds to it.
     """
-    equations = arc.layout.equations
-    entry = arc.watched[0]
-    rises = arc.route.edges[arc.route.nets[0]][1]
-    moves = np.zeros(equations.unknown + equations.given)
-    moves[arc.watched[1]] = 1.0 if arc.route.edges[arc.route.nets[1]][1] else -1.0
-    moves[entry] = 1.0 if rises else -1.0
+    equations, entry = arc.layout.equations, arc.watched[0]
+    inner = waves.at(np.array([0.0, ramp / 2]))[first : first + equations.unknown]
+    share = np.array([0.0, 0.5])
+    outer = arc.ramps.before[:, None] + (arc.ramps.after - arc.ramps.before)[:, None] * share
+    moved = np.diff(np.concatenate([inner, outer]), axis=1)[:, 0]
     a, b = equations.capacitor_ends
-    across = np.abs(moves[a] - moves[b]) * ((a == entry) | (b == entry))
-    return float(equations.capacitance @ across)
+    here = (a == entry) != (b == entry)
+    across = np.abs(moved[a] - moved[b])[here]
+    return float(equations.capacitance[here] @ across / abs(moved[entry]))
 
 
 def _run(
@@ -210,7 +217,11 @@ def _read_off(
     swing = np.array([np.nan if one is None else one for one in leaving], float)
     kept = np.flatnonzero(~np.isnan(delay) & ~np.isnan(swing))
     lost = len(rows) - len(kept)
-    input_cap = np.array([_input_cap(row) for row in rows])
+    first = node - np.array([row.watched[1] for row in rows])
+    input_cap = np.array([
+        _input_cap(row, begin, waves, width)
+        for row, begin, width in zip(rows, first.tolist(), ramp.tolist(), strict=True)
+    ])  # fmt: skip
     return GateDelays(
         gate=np.array([row.route.gates[0] for row in rows])[kept],
         input=nets[kept, 0],

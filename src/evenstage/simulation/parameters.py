@@ -1,8 +1,8 @@
 """What the transistors of a block are worth in a simulation: currents and linear capacitances.
 
-The gate capacitance of the estimate is what a driver sees of a gate whose drain moves against it:
-the overlap with the drain counts twice in it, and likewise in ``c_drain``. Here the overlaps are
-capacitors between gate and drain or source, and what is left goes to the bulk.
+The gate capacitance of the estimate is what a driver sees of a gate: the overlaps are part of it,
+that with the drain once (from a card: twice); and likewise of ``c_drain``. Here the
+overlaps are capacitors between gate and drain or source, and what is left goes to the bulk.
 
 Where a process says no currents, they follow its resistances, ``current = strength / R`` for every
 device, contacts included, and one ``strength`` is chosen so that an inverter that drives four of
@@ -108,19 +108,18 @@ def parameters(circuit: Circuit, strength: float) -> Parameters:
     current = np.where(np.isnan(given), strength / values.resistance.today, given * width / lengths)
     over_source = column([one.overlap_source or 0.0 for one in known]) * width
     over_drain = column([one.overlap_drain or 0.0 for one in known]) * width
+    counted = column([one.overlap_count for one in known]) * over_drain
     by_area = column([0.0 if k.junctions is None else k.junctions.rise.overlap for k in kinds])
     no_area = column([1.0 if k.junctions is None else 0.0 for k in kinds]) > 0
     drain_wide = no_area | np.isnan(devices.drain_area + devices.drain_edge)
     source_wide = no_area | np.isnan(devices.source_area + devices.source_edge)
     return Parameters(
         channels=channels_of(process, of_device, current),
-        gate_bulk=_rest(values.gate.today, over_source + 2 * over_drain),
+        gate_bulk=_rest(values.gate.today, over_source + counted),
         gate_source=over_source,
         gate_drain=over_drain,
-        drain_bulk=_rest(values.drain.today, np.where(drain_wide, 2 * over_drain, by_area * width)),
-        source_bulk=_rest(
-            values.source.today, np.where(source_wide, 2 * over_source, by_area * width)
-        ),
+        drain_bulk=_rest(values.drain.today, np.where(drain_wide, counted, by_area * width)),
+        source_bulk=_rest(values.source.today, np.where(source_wide, counted, by_area * width)),
     )
 
 

@@ -114,8 +114,9 @@ def _chain(process: Process, strength: float) -> Equations:
     )
     current = np.where(np.isnan(per_width), strength / resistance, per_width * width)
     over = np.array([known[index].overlap_drain or 0.0 for index in pair]) * width
-    still = of_pair("c_gate") * width + of_pair("c_gate_fixed") - 2 * over
-    drain = of_pair("c_drain") * width + of_pair("c_drain_fixed") - 2 * over
+    counted = np.array([known[index].overlap_count for index in pair]) * over
+    still = of_pair("c_gate") * width + of_pair("c_gate_fixed") - counted
+    drain = of_pair("c_drain") * width + of_pair("c_drain_fixed") - counted
     stage = np.repeat(np.arange(_STAGES), 2)
     size = _FANOUT**stage
     rail = np.tile([_STAGES, _STAGES + 1], _STAGES)
