@@ -121,6 +121,11 @@ class TestStatus:
             ["diff", "pair.sp"],
             ["simulate", "pair.sp", "--side-branches", "some"],
             ["simulate", "pair.sp", "--count", "0"],
+            ["fit"],
+            ["fit", "some.csv"],
+            ["fit", "--netlist", "pair.sp"],
+            ["fit", "--simulated", "pair.sp", "--netlist", "pair.sp"],
+            ["fit", "some.csv", "--netlist", "pair.sp", "--simulated", "pair.sp"],
         ],
     )
     def test_command_line_is_wrong(

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Final
 import pytest
 
 from evenstage import flow
-from evenstage.errors import SettingsError
+from evenstage.errors import FitError, SettingsError
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -103,3 +103,32 @@ def test_a_brief_with_two_aims_is_refused(tmp_path: Path) -> None:
     brief.write_text('[aim]\ndelay = "1n"\nwidth = 1.5\n')
     with pytest.raises(SettingsError, match="aims at a delay and at a width"):
         flow.resize(netlist, flow.Question(brief=brief))
+
+
+class TestFitSimulated:
+    def test_estimates_then_agree_with_simulations(
+        self, netlist: Path, question: flow.Question, tmp_path: Path
+    ) -> None:
+        output = tmp_path / "fitted.toml"
+        found = flow.fit_simulated(netlist, question, output)
+        assert found.measured == 3 * 2 * 25
+        assert found.single is not None
+        assert found.single.median < 0.05
+        path = flow.simulate(netlist, flow.Question(process=output)).before.paths[0]
+        assert abs(path.estimated_delay / path.delay - 1) < 0.1
+
+    def test_the_file_says_the_currents(
+        self, netlist: Path, question: flow.Question, tmp_path: Path
+    ) -> None:
+        output = tmp_path / "fitted.toml"
+        flow.fit_simulated(netlist, question, output)
+        assert not flow.simulate(netlist, flow.Question(process=output)).scaled
+
+    def test_a_netlist_without_cells_is_refused(
+        self, tmp_path: Path, question: flow.Question
+    ) -> None:
+        path = tmp_path / "bare.sp"
+        path.write_bytes(b"* bare\n.subckt load a vss\nc1 a vss 1f\n.ends\n")
+        with pytest.raises(FitError) as caught:
+            flow.fit_simulated(path, question)
+        assert caught.value.code == "no-leaf"

@@ -51,7 +51,7 @@ def main(arguments: Sequence[str]) -> int:
         0 done; 1 the input is wrong or cannot be met; 2 usage; 3 a fault of ours; 130 interrupted.
     """
     try:
-        asked = _parser().parse_args(arguments)
+        asked = _parsed(arguments)
     except SystemExit as stop:
         return int(stop.code or 0)
     try:
@@ -115,7 +115,7 @@ def _run(asked: argparse.Namespace) -> None:
 
 def _inputs(asked: argparse.Namespace) -> list[Path]:
     """Return the files that a command reads, and the netlist that it writes."""
-    names = ("netlist", "before", "after", "measurements", "cells", "brief", "output")
+    names = ("netlist", "before", "after", "measurements", "cells", "simulated", "brief", "output")
     others = [path for name in names if (path := getattr(asked, name, None)) is not None]
     return [*asked.process, *others]
 
@@ -201,6 +201,10 @@ def _diff(asked: argparse.Namespace) -> flow.Result:
 def _fit_process(asked: argparse.Namespace) -> flow.Result:
     from evenstage import flow
 
+    if asked.simulated is not None:
+        return flow.fit_simulated(
+            asked.simulated, _question(asked), asked.output, force=asked.force
+        )
     return flow.fit(
         asked.measurements, asked.cells, _question(asked), asked.output, force=asked.force
     )
@@ -218,6 +222,17 @@ def _question(asked: argparse.Namespace) -> flow.Question:
         end=getattr(asked, "to", None),
         count=getattr(asked, "count", 1),
     )
+
+
+def _parsed(arguments: Sequence[str]) -> argparse.Namespace:
+    """Return the arguments read, where those of ``fit`` say one source of delays and no more."""
+    parser = _parser()
+    asked = parser.parse_args(arguments)
+    if asked.command is _fit_process and (asked.measurements is None) == (asked.simulated is None):
+        parser.error("fit: give MEASUREMENTS with --netlist CELLS, or --simulated NETLIST")
+    if asked.command is _fit_process and (asked.measurements is None) != (asked.cells is None):
+        parser.error("fit: MEASUREMENTS and --netlist CELLS go together")
+    return asked
 
 
 def _parser() -> argparse.ArgumentParser:
@@ -284,12 +299,17 @@ def _parser() -> argparse.ArgumentParser:
     )
     _shared(recognise, paths=False)
     fit = _command(commands, "fit", _fit_process, "process constants from delays that you measured")
-    fit.add_argument("measurements", type=_file, metavar="MEASUREMENTS")
+    fit.add_argument("measurements", type=_file, nargs="?", metavar="MEASUREMENTS")
+    fit.add_argument(
+        "--simulated",
+        type=_file,
+        metavar="NETLIST",
+        help="in their place: the netlist whose cells are measured by simulation",
+    )
     fit.add_argument(
         "--netlist",
         type=_file,
         dest="cells",
-        required=True,
         metavar="CELLS",
         help="the netlist that holds the measured cells",
     )

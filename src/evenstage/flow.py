@@ -12,10 +12,12 @@ from evenstage.circuit.inventory import Inventory, take_inventory
 from evenstage.circuit.recognise import in_process
 from evenstage.circuit.recognise import recognise as find_gates
 from evenstage.errors import OutputError, SettingsError
-from evenstage.fitting.cells import measured_cells
+from evenstage.fitting.cells import leaf_cells, measured_cells
 from evenstage.fitting.fit import fit as fit_process
 from evenstage.fitting.reading import read_measurements
 from evenstage.fitting.results import Fit
+from evenstage.fitting.sized import sized_bench
+from evenstage.fitting.tabulate import tabulate
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading.read import read
 from evenstage.netlist.rewriting.edits import rewrite
@@ -33,8 +35,11 @@ from evenstage.process.write import process_text
 from evenstage.report.graph_document import graph_document
 from evenstage.report.results import Result, json, notices, text
 from evenstage.report.simulation_document import waveform_table
+from evenstage.simulation.measure import measure_gates
+from evenstage.simulation.parameters import assumption_notices
 from evenstage.simulation.results import Simulation
 from evenstage.simulation.simulate import simulate as run_simulation
+from evenstage.simulation.strength import with_currents
 from evenstage.sizing.named import refuse_unknown_names
 from evenstage.sizing.resize import resize as find_widths
 from evenstage.sizing.results import Sizing
@@ -43,6 +48,7 @@ from evenstage.timing.analyse import analyse as find_paths
 from evenstage.timing.compare import compare
 from evenstage.timing.corners import Corners, CornersDifference, merged
 from evenstage.timing.results import Analysis, Difference
+from evenstage.timing.yardstick import yardstick
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -71,6 +77,7 @@ __all__ = [
     "check_place",
     "diff",
     "fit",
+    "fit_simulated",
     "json",
     "load",
     "notices",
@@ -333,8 +340,52 @@ def fit(
     first = elaborate(netlist, found[0].name, given or _inferred(netlist), brief)
     begin = given or _settled(netlist, first)
     result = fit_process(measured, found, cells, begin, source=str(measurements))
-    if output is None:
-        return result
+    return result if output is None else _with_output(result, output, force=force)
+
+
+def fit_simulated(
+    cells: Path, question: Question, output: Path | None = None, *, force: bool = False
+) -> Fit:
+    """Fit a process to the simulated delays of all cells of a netlist that are one gate each.
+
+    The process then says its currents too, so that simulations with it are those it was fitted to.
+
+    Raises
+    ------
+    EvenstageError
+        For every mistake in the inputs, and where no cell can be simulated.
+    OutputError
+        Where the output exists (without ``force``) or cannot be written.
+    """
+    _one_process(question, "fit")
+    _refuse_existing(output, force=force)
+    netlist = read(cells)
+    brief = read_brief(question.brief) if question.brief else Brief()
+    given = read_process(question.process) if question.process else None
+    found = leaf_cells(netlist, given or _inferred(netlist), brief)
+    first = elaborate(netlist, found[0].name, given or _inferred(netlist), brief)
+    begin = given or _settled(netlist, first)
+    bench = sized_bench(cells, found, begin)
+    unit = yardstick(bench.circuit.process)
+    exact = with_currents(bench.circuit.process, unit)
+    bench = replace(bench, circuit=replace(bench.circuit, process=exact))
+    delays = measure_gates(bench.circuit, unit, range(len(bench.circuit)))
+    measured = tabulate(
+        bench,
+        (delays.input, delays.output, delays.rising),
+        (delays.transition, delays.load),
+        (delays.delay, delays.output_transition, delays.input_cap),
+    )
+    start = replace(begin, transistors=exact.transistors)
+    source = f"simulated delays of {cells}"
+    result = fit_process(measured, found, cells, start, source=source, bench=bench)
+    said = (*result.notices, *assumption_notices(begin), *delays.notices)
+    result = replace(result, notices=tuple(dict.fromkeys(said)))
+    return result if output is None else _with_output(result, output, force=force)
+
+
+def _with_output(result: Fit, output: Path, *, force: bool) -> Fit:
+    """Write the process file of a fit."""
     write_text(output, process_text(result.process, result.head), force=force)
     return replace(result, output=output)
 

@@ -75,9 +75,11 @@ class TestMeasureGates:
         assert (np.diff(delay, axis=1) > 0).all()
 
     def test_input_takes_the_capacitance_of_the_process(self, measured: GateDelays) -> None:
-        # 1 fF per micron, overlaps counted twice where drains move against the gate.
+        # 1 fF per micron, and what the output has moved already.
         inverter_rows = measured.gate == measured.gate[0]
-        assert_allclose(measured.input_cap[inverter_rows], 3e-15, rtol=1e-9, atol=0)
+        found = measured.input_cap[inverter_rows]
+        assert_allclose(found, 3e-15, rtol=0.03, atol=0)
+        assert (found > 3e-15).all()
 
     def test_agrees_with_a_path_of_one_stage(self, measured: GateDelays) -> None:
         some = bench()

@@ -3,15 +3,18 @@
 from __future__ import annotations
 
 import difflib
+from contextlib import suppress
 from typing import TYPE_CHECKING
 
-from evenstage.errors import FitError
+from evenstage.brief import Brief
+from evenstage.circuit.recognise import recognise
+from evenstage.errors import CircuitError, ElaborationError, FitError
 from evenstage.fitting.bench import Cell, look_at
+from evenstage.netlist.elaboration.elaborate import elaborate
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
-    from evenstage.brief import Brief
     from evenstage.fitting.measurements import Measurements
     from evenstage.netlist.netlist import Netlist
     from evenstage.process.process import Process
@@ -45,6 +48,32 @@ def measured_cells(
             cells[name] = look_at(netlist, query.subcircuit, process, brief)
         _check_pins(cells[name], (query.input, query.output), first.get(number))
     return tuple(cells.values())
+
+
+def leaf_cells(netlist: Netlist, process: Process, brief: Brief | None = None) -> tuple[Cell, ...]:
+    """Find the subcircuits that are one gate each and nothing else, as drawn by default.
+
+    Raises
+    ------
+    FitError
+        ``no-leaf`` where there are none.
+    """
+    given = brief or Brief()
+    supplies = Brief(supplies_high=given.supplies_high, supplies_low=given.supplies_low)
+    cells = []
+    for subcircuit in netlist.subcircuits.values():
+        # What does not stand on its own is no cell: it needs parameters, or has no supply.
+        with suppress(ElaborationError, CircuitError):
+            devices = elaborate(netlist, subcircuit.name, process, supplies)
+            circuit = recognise(devices, process, supplies)
+            if len(circuit) == 1 and not circuit.not_understood:
+                cells.append(look_at(netlist, subcircuit.name, process, supplies))
+    if not cells:
+        raise FitError(
+            f"'{netlist.sources[0].label}' has no subcircuit that is one gate with its widths",
+            code="no-leaf",
+        )
+    return tuple(cells)
 
 
 def _check_pins(cell: Cell, pins: Iterable[str], place: Span | None) -> None:

@@ -40,6 +40,7 @@ def fit(
     process: Process,
     *,
     source: str = "measurements",
+    bench: Bench | None = None,
 ) -> Fit:
     """Fit the constants of a process to measurements of cells.
 
@@ -55,6 +56,8 @@ def fit(
         What was not measured stays as it is there.
     source : str
         What the measurements are called in reports.
+    bench : Bench, optional
+        Where the cells were measured; None: as the file draws them.
 
     Raises
     ------
@@ -63,7 +66,7 @@ def fit(
     EvenstageError
         Where the cells cannot be recognised.
     """
-    bench = build_bench(netlist, cells, process)
+    bench = bench or build_bench(netlist, cells, process)
     graphs = arc_graphs(bench, measured.queries)
     known = np.array([graph is not None for graph in graphs], bool)[measured.query]
     rows = measured.only(known)

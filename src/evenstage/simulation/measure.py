@@ -7,12 +7,13 @@ fall into small blocks, and one integration measures them all.
 from __future__ import annotations
 
 from contextlib import suppress
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
 from evenstage.errors import Notice, SimulationError
+from evenstage.progress import tell
 from evenstage.simulation.beside import side_by_side, with_load
 from evenstage.simulation.crossings import last_crossing, transition
 from evenstage.simulation.excerpt import Route, excerpt
@@ -46,6 +47,9 @@ _PATIENCE: Final = 2000.0
 
 _ARRIVED: Final = 0.04
 
+#: Points that are integrated together; more only make each step dearer.
+_TOGETHER: Final = 1500
+
 
 @dataclass(frozen=True, kw_only=True)
 class GateDelays:
@@ -63,8 +67,8 @@ class GateDelays:
         50 to 50 %; 10 to 90 % over 0.8.
     input_cap : FloatArray, F
         Charge that the input takes up to half its swing, per half the supply.
-    notices : tuple of Notice
-        What could not be measured.
+    lost : int
+        Points left out: the output did not swing from rail to rail.
     """
 
     gate: IntArray
@@ -76,7 +80,15 @@ class GateDelays:
     delay: FloatArray
     output_transition: FloatArray
     input_cap: FloatArray
-    notices: tuple[Notice, ...]
+    lost: int
+
+    @property
+    def notices(self) -> tuple[Notice, ...]:
+        """What could not be measured."""
+        if not self.lost:
+            return ()
+        message = f"{self.lost} points were left out: the output did not swing from rail to rail"
+        return (Notice("not-measured", message),)
 
 
 def measure_gates(
@@ -115,8 +127,24 @@ def measure_gates(
     ramp = np.tile(np.repeat(np.array(transitions) * mean, len(loads)), len(arcs))
     load = np.tile(np.array(loads), len(arcs) * len(transitions))
     load *= np.repeat([_pin_cap(circuit, arc) for arc in arcs], points)
-    waves, node = _run(circuit, unit, rows, ramp, load)
-    return _read_off(circuit, rows, waves, (node, ramp, load))
+    found = []
+    for begin in range(0, len(rows), _TOGETHER):
+        tell("measuring", begin / len(rows))
+        some_rows = slice(begin, begin + _TOGETHER)
+        chosen = rows[some_rows], ramp[some_rows], load[some_rows]
+        waves, node = _run(circuit, unit, *chosen)
+        found.append(_read_off(circuit, chosen[0], waves, (node, *chosen[1:])))
+    return _joined(found)
+
+
+def _joined(parts: Sequence[GateDelays]) -> GateDelays:
+    """Put the rows of several runs under each other."""
+    columns = {
+        column.name: np.concatenate([getattr(part, column.name) for part in parts])
+        for column in fields(GateDelays)
+        if column.name != "lost"
+    }
+    return GateDelays(**columns, lost=sum(part.lost for part in parts))
 
 
 def _arcs(circuit: Circuit, some: Parameters, gate: int) -> list[Excerpt]:
@@ -216,7 +244,6 @@ def _read_off(
     delay = np.array([np.nan if at is None else at for at in crossing], float) - ramp / 2
     swing = np.array([np.nan if one is None else one for one in leaving], float)
     kept = np.flatnonzero(~np.isnan(delay) & ~np.isnan(swing))
-    lost = len(rows) - len(kept)
     first = node - np.array([row.watched[1] for row in rows])
     input_cap = np.array([
         _input_cap(row, begin, waves, width)
@@ -232,12 +259,5 @@ def _read_off(
         delay=delay[kept],
         output_transition=swing[kept],
         input_cap=input_cap[kept],
-        notices=(_lost(lost),) if lost else (),
-    )
-
-
-def _lost(count: int) -> Notice:
-    return Notice(
-        "not-measured",
-        f"{count} points were left out: the output did not swing from rail to rail",
+        lost=len(rows) - len(kept),
     )

@@ -7,6 +7,7 @@ fall.
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
@@ -52,6 +53,32 @@ def strength(process: Process, unit: Yardstick) -> float:
     for _ in range(_ROUNDS if known else 1):
         found *= fo4(process, unit, found) / unit.fo4
     return found
+
+
+def with_currents(process: Process, unit: Yardstick) -> Process:
+    """Return a process that says all its channels need; currents that it does not say follow r_w.
+
+    Contacts are left out, so with fixed resistances FO4 comes out a little shorter.
+
+    Parameters
+    ----------
+    process : Process
+        With its unit inverter filled in.
+    unit : Yardstick
+        Of the same process.
+    """
+    missing = any(kind.channel.current is None for kind in process.transistors)
+    level = strength(process, unit) if missing else 0.0
+    kinds = tuple(
+        replace(
+            kind,
+            channel=channel
+            if channel.current is not None
+            else replace(channel, current=level / kind.r_w),
+        )
+        for kind, channel in zip(process.transistors, known_channels(process), strict=True)
+    )
+    return replace(process, transistors=kinds)
 
 
 def fo4(process: Process, unit: Yardstick, strength: float) -> float:
