@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from evenstage.timing.wire_laws import added_variance, crossing, effective, wire_delay
+from evenstage.timing.wire_laws import added_square, added_variance, crossing, effective, wire_delay
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
@@ -219,7 +219,8 @@ class Ride:
         late = wire_delay(
             elmore, far.shield, step, self._node_input[node], first, elmore**2 + added
         )
-        return late, shape**2 * added
+        made = np.where(known, added_square(shape, far.spread, first, second), 0.0)
+        return late, made
 
     def effective(self, some: slice, transition: FloatArray) -> FloatArray:
         """Return the Elmore delay of arcs with effective capacitances, s."""
