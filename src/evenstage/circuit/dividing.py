@@ -120,6 +120,27 @@ class Pass:
 
 
 @dataclass(frozen=True)
+class Link:
+    """What may tie two nodes: a pass, or a switch inside the pull network of a driver.
+
+    Parameters
+    ----------
+    ends : (int, int)
+    condition : Condition, optional
+        When it does; None: always.
+    owner : Pass or Driver
+    """
+
+    ends: tuple[int, int]
+    condition: Condition | None
+    owner: Pass | Driver
+
+    def other(self, node: int) -> int:
+        """Return the end that is not ``node``."""
+        return self.ends[1] if node == self.ends[0] else self.ends[0]
+
+
+@dataclass(frozen=True)
 class Division:
     """A network divided.
 
@@ -145,6 +166,22 @@ class Division:
         found: dict[int, list[Driver]] = {}
         for driver in self.drivers:
             found.setdefault(driver.node, []).append(driver)
+        return found
+
+    @cached_property
+    def links_at(self) -> dict[int, list[Link]]:
+        """Links by node; those to supplies are left out."""
+        links = [Link(one.ends, one.condition, one) for one in self.passes]
+        for driver in self.drivers:
+            for index in driver.switches:
+                switch = self.network.switches[index]
+                if switch.a >= 0 and switch.b >= 0:
+                    condition = closing(switch, self.literals)
+                    links.append(Link((switch.a, switch.b), condition, driver))
+        found: dict[int, list[Link]] = {}
+        for link in links:
+            for end in link.ends:
+                found.setdefault(end, []).append(link)
         return found
 
     @cached_property
@@ -280,6 +317,21 @@ def _driver(
         function=_function(own, node, *ways, always=always),
         always=always,
     )
+
+
+def enabled_function(
+    network: Network, output: int, complements: Iterable[tuple[int, int]]
+) -> Expression | None:
+    """Return what a gate that can float makes of its inputs, and when it drives.
+
+    None where nothing is common to all ways to both supplies.
+    """
+    literals = Literals((a, b, False) for a, b in complements)
+    indices = list(range(len(network.switches)))
+    up, down = (_ways(network, output, supply, indices, literals) for supply in (HIGH, LOW))
+    if not up or not down or not _enable(up, down):
+        return None
+    return _function(network, output, up, down, always=False)
 
 
 def outside(node: int, literals: Literals) -> Driver:

@@ -23,6 +23,13 @@ _STEPS_MAX = 200_000
 """Steps one group may take: far beyond a 64-way multiplexer tree."""
 
 
+_TOLD_APART = 8
+"""Conditions that may exclude each other up to which sets of nodes beside a route are told apart.
+
+With more of them everything that moves in some setting is taken together: an upper bound.
+"""
+
+
 class TooManyRoutesError(Exception):
     """A network with more routes than are looked at."""
 
@@ -54,11 +61,17 @@ class Router:
     Parameters
     ----------
     division : Division
+
+    Attributes
+    ----------
+    is_bounded : bool
+        Whether somewhere an upper bound was taken for what moves.
     """
 
     def __init__(self, division: Division) -> None:
         self._division = division
         self._steps = 0
+        self.is_bounded = False
 
     def routes(self, node: int) -> Iterator[Route]:
         """Yield the routes to a node that can conduct, in drawing order.
@@ -108,40 +121,98 @@ class Router:
         cube = consistent(route.cube, way.cube)
         if cube is None:
             return []
+        tied = self._tied(depth, cube, route)
+        if not self._can_be(tied, cube, route.driver, supply):
+            return []
+        most, conditions = self._all_beside(tied, cube, route, supply)
+        everything = consistent(cube, conditions)
+        if everything is not None:
+            together = self._tied(most, everything, route)
+            if self._can_be(together, everything, route.driver, supply):
+                return [together]
+        if len(conditions) > _TOLD_APART:
+            self.is_bounded = True
+            return [most]
+        return self._each_beside(tied, cube, route, supply)
+
+    def _each_beside(
+        self, tied: dict[int, int], cube: Cube, route: Route, supply: int
+    ) -> list[dict[int, int]]:
+        """Return the largest sets of nodes that move together in some setting."""
         found: list[dict[int, int]] = []
-        waiting = [(depth, cube)]
+        waiting = [(tied, cube)]
         while waiting:
             self._step()
             nodes, known = waiting.pop()
             if not self._can_be(nodes, known, route.driver, supply):
                 continue
-            undecided: tuple[int, int, Condition | None] | None = None
-            for index, near, far in self._hanging(nodes, route):
-                condition = self._division.passes[index].condition
-                if condition is None or condition in known:
-                    undecided = (near, far, None)
-                    break
-                if (condition[0], not condition[1]) not in known:
-                    undecided = undecided or (near, far, condition)
-            if undecided is None:
+            link = next(self._undecided(nodes, known, route), None)
+            if link is None:
                 found.append(nodes)
                 continue
-            near, far, condition = undecided
-            if condition is not None:
-                waiting.append((nodes, known | {(condition[0], not condition[1])}))
-                known |= {condition}
-            held = any(driver.always for driver in self._division.drivers_at.get(far, ()))
-            waiting.append(({**nodes, far: 0 if held else nodes[near]}, known))
+            closed, near, far = link
+            off = known | {_opposite(closed)}
+            waiting.append((self._tied(nodes, off, route), off))
+            wider = {**nodes, far: self._depth(far, nodes[near])}
+            waiting.append((self._tied(wider, known | {closed}, route), known | {closed}))
         return _largest(found)
 
-    def _hanging(self, nodes: dict[int, int], route: Route) -> Iterator[tuple[int, int, int]]:
-        """Yield the passes that lead from moving nodes to others: index, near and far end."""
-        on_route = set(route.passes)
+    def _all_beside(
+        self, tied: dict[int, int], cube: Cube, route: Route, supply: int
+    ) -> tuple[dict[int, int], Cube]:
+        """Return every node that can move with a route in some setting, and what ties them."""
+        nodes, conditions = dict(tied), set[Condition]()
+        growing = True
+        while growing:
+            growing = False
+            for closed, near, far in list(self._undecided(nodes, cube, route)):
+                self._step()
+                known = cube | {closed}
+                wider = {**tied, far: self._depth(far, nodes[near])}
+                wider = self._tied(wider, known, route)
+                if far not in nodes and self._can_be(wider, known, route.driver, supply):
+                    nodes |= {node: depth for node, depth in wider.items() if node not in nodes}
+                    conditions.add(closed)
+                    growing = True
+        return nodes, frozenset(conditions)
+
+    def _tied(self, nodes: dict[int, int], known: Cube, route: Route) -> dict[int, int]:
+        """Return some nodes with all that links known to conduct tie to them."""
+        found = dict(nodes)
+        growing = True
+        while growing:
+            growing = False
+            for condition, near, far in list(self._hanging(found, route)):
+                if condition is None or condition in known:
+                    found.setdefault(far, self._depth(far, found[near]))
+                    growing = True
+        return found
+
+    def _undecided(
+        self, nodes: dict[int, int], known: Cube, route: Route
+    ) -> Iterator[tuple[Condition, int, int]]:
+        """Yield the links that may tie further nodes: condition, near and far end."""
+        for condition, near, far in self._hanging(nodes, route):
+            if condition is not None and not known & {condition, _opposite(condition)}:
+                yield condition, near, far
+
+    def _depth(self, node: int, near: int) -> int:
+        """Return the depth of a node tied to another: 0 where a driver holds it."""
+        held = any(driver.always for driver in self._division.drivers_at.get(node, ()))
+        return 0 if held else near
+
+    def _hanging(
+        self, nodes: dict[int, int], route: Route
+    ) -> Iterator[tuple[Condition | None, int, int]]:
+        """Yield the links that lead from moving nodes to others: condition, near and far end.
+
+        What hangs inside the route's own driver depends on the edge and is known there.
+        """
         for near, depth in nodes.items():
-            for index in self._division.passes_at.get(near, ()) if depth else ():
-                far = self._division.passes[index].other(near)
-                if index not in on_route and far not in nodes:
-                    yield index, near, far
+            for link in self._division.links_at.get(near, ()) if depth else ():
+                far = link.other(near)
+                if far not in nodes and link.owner is not route.driver:
+                    yield link.condition, near, far
 
     def _can_be(self, nodes: dict[int, int], known: Cube, own: Driver, supply: int) -> bool:
         """Tell whether no other driver of some nodes need conduct, nor this one the other way.
@@ -161,7 +232,6 @@ class Router:
 
     def _all_off(self, cubes: Sequence[Cube], known: Cube) -> bool:
         """Tell whether inputs not known yet can be chosen so that none of some cubes holds."""
-        self._step()
         for place, cube in enumerate(cubes):
             if _is_off(cube, known):
                 continue
@@ -175,6 +245,10 @@ class Router:
         self._steps += 1
         if self._steps > _STEPS_MAX:
             raise TooManyRoutesError
+
+
+def _opposite(condition: Condition) -> Condition:
+    return condition[0], not condition[1]
 
 
 def _is_off(cube: Cube, known: Cube) -> bool:

@@ -132,6 +132,8 @@ class StageForm:
         Inputs taken for complements without proof.
     both_ways : tuple of int
         Parts that pass signals in both directions.
+    bounded : tuple of int
+        Nodes that arcs end at, where more is taken to move with them than can at once.
     """
 
     drawn: tuple[Switch, ...]
@@ -143,6 +145,7 @@ class StageForm:
     sources: tuple[int, ...]
     assumed: tuple[tuple[int, int], ...]
     both_ways: tuple[int, ...]
+    bounded: tuple[int, ...]
 
 
 @lru_cache(maxsize=4096)
@@ -178,30 +181,29 @@ def _sources(division: Division, facts: Facts) -> tuple[int, ...] | Unrecognised
     """Return the nodes that the outside drives, or say that this cannot be told.
 
     An open node without a pull network is driven from outside if the brief says so or if it closes
-    switches. The others are outputs where something else reaches them, inputs where something in
-    the block waits for them.
+    switches. Of the others those are inputs that reach a node in the block that waits for a signal;
+    those that something drives without such a node in between are outputs.
     """
     driven = division.drivers_at
     candidates = [n for n in facts.open if n in division.passes_at and n not in driven]
     sources = {n for n in candidates if n in facts.inputs or n in facts.gating}
     sources -= set(facts.outputs)
-    graph: nx.Graph[int] = nx.Graph()
-    graph.add_nodes_from(division.passes_at)
-    graph.add_edges_from(one.ends for one in division.passes)
-    fed = sources | set(driven)
-    waiting = set(facts.seen) - fed - set(candidates)
     rest = [n for n in candidates if n not in sources and n not in facts.outputs]
-    more = set()
+    waiting = set(facts.seen) - sources - set(driven) - set(rest)
+    held = sources | {node for node, some in driven.items() if any(d.always for d in some)}
+    between: nx.Graph[int] = nx.Graph()
+    between.add_nodes_from(node for node in division.passes_at if node not in held)
+    between.add_edges_from(one.ends for one in division.passes if not held.intersection(one.ends))
+    touched = {end for one in division.passes if held.intersection(one.ends) for end in one.ends}
     for node in rest:
-        around = nx.node_connected_component(graph, node)
-        if around & fed:
-            continue
-        if not around & (waiting | set(facts.outputs)):
+        around = nx.node_connected_component(between, node)
+        if around & waiting:
+            sources.add(node)
+        elif not around & (touched | set(driven)):
             return Unrecognised(
                 "nothing tells which of its open ends drive; name the block's inputs in the brief"
             )
-        more.add(node)
-    return tuple(sorted(sources | more))
+    return tuple(sorted(sources))
 
 
 class _Builder:
@@ -264,6 +266,7 @@ class _Builder:
             sources=self._sources,
             assumed=self._division.assumed,
             both_ways=self._both_ways(),
+            bounded=tuple(sink.node for sink in sinks) if self._router.is_bounded else (),
         )
 
     def _towards(

@@ -22,6 +22,10 @@ _WEAK = (
     "single pass transistors leave levels a threshold short of the supply; that edge is timed with "
     "twice their resistance, and gates that listen there may draw current"
 )
+_BOUNDED = (
+    "so many settings of other drivers may tie further nodes to a signal that all those nodes are "
+    "taken to move with it at once, an upper bound"
+)
 _BOTH_WAYS = "signals may pass in both directions; each is timed"
 
 
@@ -50,6 +54,7 @@ def _assumptions(some: AlikeStages) -> Iterator[tuple[str, str, IntArray]]:
         ("assumed-complement", _ASSUMED, assumed),
         ("weak-level", _WEAK, weak),
         ("both-ways", _BOTH_WAYS, both_ways),
+        ("upper-bound", _BOUNDED, list(form.bounded)),
     ):
         if nets:
             yield code, message, some.nets[:, nets]

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from evenstage.circuit.dividing import enabled_function
 from evenstage.circuit.function import conduction
 from evenstage.circuit.gate import GateForm, Pulls, Unrecognised, all_arcs, possible_vectors
 from evenstage.circuit.kinds.paths import single_output
@@ -48,6 +49,7 @@ def floating(devices: tuple[Switch, ...], context: Context) -> GateForm | Unreco
         arcs=arcs,
         kind=C_ELEMENT if is_c_element(network, output) else TRI_STATE,
         floats=True,
+        function=enabled_function(network, output, context.complements),
     )
 
 
