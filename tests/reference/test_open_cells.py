@@ -1,8 +1,7 @@
 """Recognition against the published functions of two openly licensed cell libraries.
 
 The libraries and their Liberty files are not part of the project: the tests skip where the folder
-beside the checkout is absent. What is no static complementary gate is named in a notice and counts
-as not recognised.
+beside the checkout is absent.
 """
 
 from __future__ import annotations

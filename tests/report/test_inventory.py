@@ -70,7 +70,7 @@ def test_copies_of_a_subcircuit_are_one_entry(inventory: Inventory) -> None:
     assert found == [
         ("inv", "static gate", 2, "!a"),
         ("latch", "static gate", 4, "!ck"),
-        ("latch", "tri-state gate, kept", 2, "!(ck & d)"),
+        ("latch", "tri-state gate, kept", 2, "!d when ck"),
     ]
 
 
