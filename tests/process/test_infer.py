@@ -48,3 +48,45 @@ class TestFromLevel1Cards:
         index = process.type_of("nmos_x")
         assert index is not None
         assert process.transistors[index].r_w == process.first("n").r_w
+
+
+class TestFromOtherLevels:
+    BSIM = {  # noqa: RUF012 -- a constant
+        "level": 54.0,
+        "toxe": 4e-9,
+        "cgso": 0.1e-9,
+        "cgdo": 0.12e-9,
+        "cjs": 1e-3,
+        "cjsws": 0.2e-9,
+        "pbs": 0.8,
+        "mjs": 0.5,
+        "mjsws": 0.33,
+        "vth0": 0.4,
+    }
+
+    def test_capacitances_that_mean_the_same_are_taken(self) -> None:
+        """They equal those of a level-1 card with the same parameters."""
+        names = {"toxe": "tox", "cjs": "cj", "cjsws": "cjsw", "pbs": "pb", "mjs": "mj"}
+        same = {names.get(key, key): value for key, value in self.BSIM.items()}
+        same |= {"mjsw": 0.33, "level": 1.0, "vto": 0.4, "kp": 100e-6}
+        models = [("a", "nmos", self.BSIM), ("b", "pmos", self.BSIM)]
+        process = infer_process(models, 1.8, 130e-9)
+        level1 = infer_process([("a", "nmos", same), ("b", "pmos", same)], 1.8, 130e-9)
+        for one, other in ((process, level1),):
+            for polarity in ("n", "p"):
+                mine, theirs = one.first(polarity), other.first(polarity)
+                for key in ("c_gate", "c_drain", "c_drain_fixed", "junctions"):
+                    assert getattr(mine, key) == getattr(theirs, key)
+        assert process.first("n").r_w == infer_process([], 1.8, 130e-9).first("n").r_w
+        told = next(n for n in process.notices if n.code == "capacitances-taken")
+        assert told.names == ("a", "b")
+        assert "(toxe, cgso, cgdo, cjs, cjsws, pbs, mjs, mjsws)" in told.message
+        assert "r_w" in told.message
+
+    def test_an_oxide_alone_makes_the_gate(self) -> None:
+        process = infer_process([("a", "nmos", {"level": 8.0, "tox": 4e-9})], 1.8, 130e-9)
+        generic = infer_process([], 1.8, 130e-9)
+        c_gate = 3.9 * 8.8541878128e-12 / 4e-9 * 130e-9
+        assert process.first("n").c_gate == c_gate
+        assert process.first("n").c_drain == generic.first("n").c_drain
+        assert process.first("p").c_gate == generic.first("p").c_gate

@@ -164,7 +164,8 @@ class TestReadProcess:
                 "r_w = 4.4e-3\n",
                 "",
                 (
-                    "p.toml:10:1: r_w is missing in [[transistor]] (missing-key)\n"
+                    "p.toml:10:1: r_w is missing in [[transistor]]; give it, or currents: i_dsat, "
+                    "i_high and i_low, or kp with vto (missing-key)\n"
                     "    [[transistor]]\n"
                     "    ^^^^^^^^^^^^^^"
                 ),

@@ -2,17 +2,21 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Final
 
 from evenstage.errors import Notice
-from evenstage.process.generic import generic, usual_names
-from evenstage.process.models import model_pattern, polarity_of, process_from_models
+from evenstage.process.generic import at_length, generic, usual_names
+from evenstage.process.models import (
+    model_pattern,
+    polarity_of,
+    process_from_models,
+    with_capacitances,
+)
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
 
-    from evenstage.pattern import Pattern
     from evenstage.process.models import ModelFacts
     from evenstage.process.process import Polarity, Process, Transistor
 
@@ -24,8 +28,9 @@ def infer_process(
 ) -> Process:
     """Return the process that the ``.model`` cards of a netlist describe, or the generic one.
 
-    Level-1 cards that suffice give constants. Every other MOS card tells a polarity, and what has
-    no card is known by its name; both take the constants of the first type of their polarity.
+    Level-1 cards that suffice give constants. Every other MOS card tells a polarity and the
+    capacitances that mean the same at every level, and what has no card is known by its name; all
+    else they take from the first type of their polarity.
 
     Parameters
     ----------
@@ -39,40 +44,72 @@ def infer_process(
     facts = list(models)
     derived = process_from_models(facts, supply, length)
     if derived is None:
-        return _extended(generic(supply), _unknown_cards(facts, ()))
-    unknown = _unknown_cards(facts, derived.transistors)
-    names = tuple(pattern.text for polarity in _POLARITIES for pattern in unknown[polarity])
-    process = _extended(derived, unknown)
-    if not names:
-        return process
-    return replace(process, notices=(*process.notices, _borrowed_notice(names)))
+        base = generic(supply)
+        # Oxide and channel make a gate only together: the length must be known by now.
+        base = at_length(base, length) if length else base
+        known: tuple[Transistor, ...] = ()
+    else:
+        base, known = derived, derived.transistors
+    cards = [_from_card(base, some) for some in _unknown_cards(facts, known)]
+    by_name = (
+        replace(base.first(polarity), models=usual_names(polarity)) for polarity in _POLARITIES
+    )
+    by_card = [
+        card.transistor for polarity in _POLARITIES for card in cards if card.is_of(polarity)
+    ]
+    process = replace(base, transistors=(*known, *by_card, *by_name))
+    return replace(process, notices=(*process.notices, *_notices(base, cards)))
+
+
+@dataclass(frozen=True, slots=True)
+class _Card:
+    """A transistor type after a card that gave no constants, and which parameters it gave."""
+
+    transistor: Transistor
+    taken: tuple[str, ...]
+
+    @property
+    def name(self) -> str:
+        return self.transistor.models[0].text
 
 
 def _unknown_cards(
     facts: Sequence[ModelFacts], known: Sequence[Transistor]
-) -> dict[Polarity, tuple[Pattern, ...]]:
-    """Return, by polarity, the names of the MOS cards that gave no constants."""
+) -> list[tuple[Polarity, ModelFacts]]:
+    """Return the MOS cards that gave no constants, one for each name."""
     covered = {pattern.text.lower() for transistor in known for pattern in transistor.models}
-    names: dict[Polarity, tuple[Pattern, ...]] = {"n": (), "p": ()}
-    for name, kind, _ in facts:
-        polarity, pattern = polarity_of(kind), model_pattern(name)
-        if polarity is not None and pattern.text.lower() not in covered:
-            covered.add(pattern.text.lower())
-            names[polarity] += (pattern,)
-    return names
+    found: list[tuple[Polarity, ModelFacts]] = []
+    for some in facts:
+        polarity, name = polarity_of(some[1]), model_pattern(some[0]).text.lower()
+        if polarity is not None and name not in covered:
+            covered.add(name)
+            found.append((polarity, some))
+    return found
 
 
-def _extended(process: Process, cards: dict[Polarity, tuple[Pattern, ...]]) -> Process:
-    """Cover names beyond the process's own; a card says more than a name, so cards come first."""
-    known = process.transistors if process.origin == "models" else ()
-    by_card = (_renamed(process, polarity, cards[polarity]) for polarity in _POLARITIES)
-    by_name = (_renamed(process, polarity, usual_names(polarity)) for polarity in _POLARITIES)
-    added = (transistor for transistor in (*by_card, *by_name) if transistor.models)
-    return replace(process, transistors=(*known, *added))
+def _from_card(base: Process, card: tuple[Polarity, ModelFacts]) -> _Card:
+    """Return the first type of a polarity with the capacitances that a card gives."""
+    polarity, facts = card
+    return _Card(*with_capacitances(base.first(polarity), facts, base.supply))
 
 
-def _renamed(process: Process, polarity: Polarity, names: tuple[Pattern, ...]) -> Transistor:
-    return replace(process.first(polarity), models=names)
+def _notices(base: Process, cards: Sequence[_Card]) -> list[Notice]:
+    found = []
+    cards = sorted(cards, key=lambda card: card.transistor.polarity)
+    bare = [card.name for card in cards if not card.taken]
+    if bare and base.origin == "models":
+        found.append(_borrowed_notice(tuple(bare)))
+    used = [card for card in cards if card.taken]
+    if used:
+        taken = ", ".join(dict.fromkeys(key for card in used for key in card.taken))
+        message = (
+            f"model cards that are not sufficient level-1 cards give their capacitances ({taken}); "
+            f"resistance and slopes are those of {base.name}: give r_w, or currents, in a process "
+            "file, or fit them to measurements"
+        )
+        names = tuple(card.name for card in used)
+        found.append(Notice("capacitances-taken", message, names=names))
+    return found
 
 
 def _borrowed_notice(names: tuple[str, ...]) -> Notice:

@@ -21,8 +21,8 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
-from typing import Final
+from dataclasses import dataclass, replace
+from typing import Final, NamedTuple
 
 from evenstage.errors import Notice
 from evenstage.pattern import Pattern
@@ -185,27 +185,22 @@ def _transistor(card: _Card, supply: float, length: float) -> Transistor:
     channel = length - 2 * card.lateral
     current = level1.saturation_current(card.kp, 1 / channel, supply - card.threshold)
     resistance = math.log(2) * level1.effective_resistance(current, supply, card.modulation)
-    c_gate = card.c_ox * channel + card.overlap_source + 2 * card.overlap_drain
-    near, far = _junction(card, 0.0, supply / 2), _junction(card, supply / 2, supply)
-    rise, fall = (near, far) if card.polarity == "n" else (far, near)
-    whole = _junction(card, 0.0, supply)
-    reach = _DIFFUSION_REACH * length
-    bare = _is_bare(card)
     v = card.threshold / supply
+    drain = _drain(card, supply, length)
     return Transistor(
         models=(card.pattern,),
         polarity=card.polarity,
         length=length,
         r_w=resistance,
-        c_gate=c_gate,
+        c_gate=_gate(card, channel),
         c_gate_fixed=card.overlap_bulk * channel,
-        c_drain=c_gate if bare else whole.area * reach + whole.edge + whole.overlap,
-        c_drain_fixed=2 * reach * whole.edge + whole.drain_fixed,
+        c_drain=drain.per_width or _gate(card, channel),
+        c_drain_fixed=drain.fixed,
         stack=1.0,
         slope=level1.ramp_delay_share(v),
         shape=_ramp(card, supply, channel) / resistance,
         shape_carry=_CARRY,
-        junctions=None if bare else Junctions(rise=rise, fall=fall),
+        junctions=drain.junctions,
         channel=Channel(
             threshold=card.threshold,
             alpha=2.0,
@@ -219,6 +214,107 @@ def _transistor(card: _Card, supply: float, length: float) -> Transistor:
             overlap_count=2.0,
         ),
     )
+
+
+def _gate(card: _Card, channel: float) -> float:
+    """Return the gate capacitance per width."""
+    return card.c_ox * channel + card.overlap_source + 2 * card.overlap_drain
+
+
+class _Drain(NamedTuple):
+    """Capacitance of a drain per width and per device, and what makes it of areas."""
+
+    per_width: float
+    fixed: float
+    junctions: Junctions | None
+
+
+def _drain(card: _Card, supply: float, length: float) -> _Drain:
+    """Return what a card says of drains; nothing where it says nothing."""
+    if _is_bare(card):
+        return _Drain(0.0, 0.0, None)
+    near, far = _junction(card, 0.0, supply / 2), _junction(card, supply / 2, supply)
+    rise, fall = (near, far) if card.polarity == "n" else (far, near)
+    whole, reach = _junction(card, 0.0, supply), _DIFFUSION_REACH * length
+    return _Drain(
+        whole.area * reach + whole.edge + whole.overlap,
+        2 * reach * whole.edge + whole.drain_fixed,
+        Junctions(rise=rise, fall=fall),
+    )
+
+
+#: Names that later levels have for parameters of level 1 with the same meaning and unit.
+_LATER_NAMES: Final = {
+    "tox": ("tox", "toxe"),
+    "cgso": ("cgso",),
+    "cgdo": ("cgdo",),
+    "cj": ("cj", "cjs"),
+    "cjsw": ("cjsw", "cjsws"),
+    "pb": ("pb", "pbs"),
+    "mj": ("mj", "mjs"),
+    "mjsw": ("mjsw", "mjsws"),
+}
+
+
+def with_capacitances(
+    transistor: Transistor, facts: ModelFacts, supply: float
+) -> tuple[Transistor, tuple[str, ...]]:
+    """Return a transistor with the capacitances of a card of any level, and what was taken.
+
+    Oxide, overlaps and junctions mean the same at every level; all else stays as it is.
+
+    Parameters
+    ----------
+    transistor : Transistor
+        Whose other constants count.
+    facts : ModelFacts
+    supply : float
+        V, the swing that junctions are linearised over.
+    """
+    name, _, values = facts
+    found = {
+        key: (later, values[later])
+        for key, names in _LATER_NAMES.items()
+        for later in names
+        if values.get(later, 0.0) > 0
+    }
+    told = {key: value for key, (_, value) in found.items()}
+    card = _Card(
+        pattern=model_pattern(name),
+        polarity=transistor.polarity,
+        threshold=0.0,
+        kp=0.0,
+        modulation=0.0,
+        c_ox=level1.oxide_capacitance(told["tox"]) if "tox" in told else 0.0,
+        lateral=0.0,
+        overlap_source=told.get("cgso", 0.0),
+        overlap_drain=told.get("cgdo", 0.0),
+        overlap_bulk=0.0,
+        c_drain=0.0,
+        c_source=0.0,
+        c_area=told.get("cj", 0.0),
+        c_edge=told.get("cjsw", 0.0),
+        phi=told.get("pb", 0.8),
+        grade_area=told.get("mj", 0.5),
+        grade_edge=told.get("mjsw", 0.33),
+        body=0.0,
+        surface=0.6,
+    )
+    changed, taken = transistor, []
+    if card.c_ox > 0:
+        changed = replace(changed, c_gate=_gate(card, transistor.length), c_gate_fixed=0.0)
+        taken += ["tox", "cgso", "cgdo"]
+    drain = _drain(card, supply, transistor.length)
+    if drain.junctions is not None:
+        changed = replace(
+            changed,
+            c_drain=drain.per_width,
+            c_drain_fixed=drain.fixed,
+            junctions=drain.junctions,
+        )
+        taken += ["cgdo", "cj", "cjsw", "pb", "mj", "mjsw"]
+    names = dict.fromkeys(found[key][0] for key in taken if key in found)
+    return replace(changed, models=(card.pattern,)), tuple(names)
 
 
 def _junction(card: _Card, least: float, most: float) -> Junction:

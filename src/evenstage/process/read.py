@@ -4,6 +4,14 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final, cast
 
+from evenstage.process import level1
+from evenstage.process.currents import (
+    Derived,
+    from_alpha_power,
+    from_effective_current,
+    from_long_channel,
+    from_saturation_current,
+)
 from evenstage.process.process import (
     Channel,
     Junction,
@@ -30,25 +38,28 @@ _TRANSISTOR_KEYS: Final[Mapping[str, Entry]] = {
     "models": Names(required=True),
     "polarity": Text(choices=("n", "p"), required=True),
     "length": Number(unit="m", above=0, most=1e-3, required=True),
-    "r_w": Number(unit="ohm*m", above=0, most=_RESISTANCE_MOST, required=True),
+    "r_w": Number(unit="ohm*m", above=0, most=_RESISTANCE_MOST),
     "r_fixed": Number(unit="ohm", least=0, default=0.0),
     "stack": Number(above=0, most=2, default=1.0),
-    "c_gate": Number(unit="F/m", above=0, most=_CAPACITANCE_MOST, required=True),
+    "c_gate": Number(unit="F/m", above=0, most=_CAPACITANCE_MOST),
+    "tox": Number(unit="m", above=0, most=1e-6),
     "c_gate_fixed": Number(unit="F", least=0, most=_FIXED_MOST, default=0.0),
     "c_drain": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST, required=True),
     "c_drain_fixed": Number(unit="F", least=0, most=_FIXED_MOST, default=0.0),
     "c_drain_area": Number(unit="F/m^2", least=0, most=1.0),
     "c_drain_edge": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST),
     "c_drain_overlap": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST, default=0.0),
-    "slope": Number(least=0, most=10, default=0.0),
+    "slope": Number(least=0, most=10),
     "slope_power": Number(above=0, most=1, default=1.0),
-    "shape": Number(least=0, most=100, default=0.0),
+    "shape": Number(least=0, most=100),
     # From 1 on, transitions along a chain would grow without end.
     "shape_carry": Number(least=0, below=1, default=0.0),
     "vto": Number(unit="V", least=-1000, most=1000),
     "alpha": Number(least=1, most=2),
     "kp": Number(unit="A/V^2", above=0, most=1),
     "i_dsat": Number(unit="A/m", above=0, most=1e5),
+    "i_high": Number(unit="A/m", above=0, most=1e5),
+    "i_low": Number(unit="A/m", above=0, most=1e5),
     "v_dsat": Number(unit="V", above=0, most=1000),
     "cgdo": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST),
     "cgso": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST),
@@ -112,23 +123,27 @@ def _transistor(table: Settings, supply: float) -> Transistor:
     table.check_order("width_min", "width_max")
     table.check_order("width_min", "finger_width_max")
     fingers = table.optional_text("fingers_parameter")
+    c_gate = _gate(table)
+    channel = _channel(table, supply, c_gate)
+    derived = _derived(table, supply, channel)
+    slope, shape = table.optional_number("slope"), table.optional_number("shape")
     return Transistor(
         models=table.names("models"),
         polarity=cast("Polarity", table.text("polarity")),
         length=table.number("length"),
-        r_w=table.number("r_w"),
+        r_w=derived.r_w,
         r_fixed=table.number("r_fixed"),
         stack=table.number("stack"),
-        c_gate=table.number("c_gate"),
+        c_gate=c_gate,
         c_gate_fixed=table.number("c_gate_fixed"),
         c_drain=table.number("c_drain"),
         c_drain_fixed=table.number("c_drain_fixed"),
         junctions=_junctions(table),
-        slope=table.number("slope"),
+        slope=(derived.slope or 0.0) if slope is None else slope,
         slope_power=table.number("slope_power"),
-        shape=table.number("shape"),
+        shape=(derived.shape or 0.0) if shape is None else shape,
         shape_carry=table.number("shape_carry"),
-        channel=_channel(table, supply),
+        channel=channel,
         slope_stack=table.number("slope_stack"),
         shape_stack=table.number("shape_stack"),
         width_parameter=table.text("width_parameter").lower(),
@@ -159,7 +174,48 @@ def _junctions(table: Settings) -> Junctions | None:
     return Junctions(rise=both, fall=both)
 
 
-def _channel(table: Settings, supply: float) -> Channel:
+def _gate(table: Settings) -> float:
+    """Return c_gate, given or from the oxide: ``C_ox L`` and both overlaps, the drain's twice."""
+    given, oxide = table.optional_number("c_gate"), table.optional_number("tox")
+    if given is not None:
+        return given
+    if oxide is None:
+        raise table.header_error(
+            "c_gate is missing in [[transistor]]; give it, or the oxide's thickness as tox",
+            "missing-key",
+        )
+    overlap = table.optional_number("cgdo") or 0.0
+    return level1.oxide_capacitance(oxide) * table.number("length") + 3 * overlap
+
+
+def _derived(table: Settings, supply: float, channel: Channel) -> Derived:
+    """Return r_w, given or from currents, and what follows with it; see `currents`."""
+    high, low = table.optional_number("i_high"), table.optional_number("i_low")
+    if (high is None) != (low is None):
+        given, missing = ("i_high", "i_low") if low is None else ("i_low", "i_high")
+        message = f"{given} comes without {missing}; an effective current needs both"
+        raise table.error(given, message, "half-given")
+    resistance = table.optional_number("r_w")
+    if resistance is not None:
+        return Derived(resistance)
+    if high is not None and low is not None:
+        return from_effective_current(high, low, supply)
+    if channel.current is None:
+        raise table.header_error(
+            "r_w is missing in [[transistor]]; give it, or currents: i_dsat, i_high and i_low, or "
+            "kp with vto",
+            "missing-key",
+        )
+    if channel.threshold is None or channel.alpha is None:
+        return from_saturation_current(channel.current, supply, table.number("lambda"))
+    if table.optional_number("kp") is not None and channel.alpha == 2:
+        return from_long_channel(channel.current, channel.threshold, supply)
+    overdrive = supply - channel.threshold
+    saturation = channel.saturation or channel.alpha / 2 * overdrive
+    return from_alpha_power(channel.current, channel.threshold, channel.alpha, saturation, supply)
+
+
+def _channel(table: Settings, supply: float, c_gate: float) -> Channel:
     """Return what a table says of currents; a threshold counts without its sign, as on cards."""
     vto, kp = table.optional_number("vto"), table.optional_number("kp")
     current, alpha = table.optional_number("i_dsat"), table.optional_number("alpha")
@@ -168,7 +224,7 @@ def _channel(table: Settings, supply: float) -> Channel:
         raise table.error("vto", f"vto must be below the supply, {supply:g} V", "out-of-range")
     drain, source = table.optional_number("cgdo"), table.optional_number("cgso")
     both = (drain or 0.0) + (drain or 0.0 if source is None else source)
-    if both > table.number("c_gate") or (drain or 0.0) > table.number("c_drain"):
+    if both > c_gate or (drain or 0.0) > table.number("c_drain"):
         raise table.error(
             "cgso" if drain is None else "cgdo",
             "overlaps must not exceed what contains them: cgdo c_drain, cgdo and cgso c_gate",
