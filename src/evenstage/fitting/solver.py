@@ -4,7 +4,7 @@ With predictions p and measurements m the residuals are
 
     (p - m)/max(m, d1)                delays,
     (p - m)/(2 max(m, t1))            output transitions,
-    (p - m)/(2 m)                     input capacitances, once per arc,
+    (p - m)/(2 m)                     input capacitances,
 
 where d1 and t1 are delay and transition of an inverter driving one copy of itself. Their
 soft-L1 loss ``2 s^2 (sqrt(1 + (r/s)^2) - 1)``, s a tenth, is made least within bounds by a trust
@@ -194,7 +194,6 @@ class Problem:
         if len(rows) < len(self.unknowns):
             raise _too_few(len(rows), len(self.unknowns))
         predictor = build_predictor(self.bench, self.graphs, rows)
-        once = np.unique(rows.query, return_index=True)[1]
         start = self.bench.circuit.process
         least, most = bounds(self.unknowns)
 
@@ -204,7 +203,7 @@ class Problem:
             parts = (
                 found.delay,
                 _OF_TRANSITION * found.output_transition,
-                _OF_CAP * found.input_cap[once],
+                _OF_CAP * found.input_cap,
             )
             return np.concatenate(parts)
 

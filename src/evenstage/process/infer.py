@@ -54,9 +54,8 @@ def infer_process(
     by_name = (
         replace(base.first(polarity), models=usual_names(polarity)) for polarity in _POLARITIES
     )
-    by_card = [
-        card.transistor for polarity in _POLARITIES for card in cards if card.is_of(polarity)
-    ]
+    in_order = sorted(cards, key=lambda card: card.transistor.polarity)
+    by_card = (card.transistor for card in in_order)
     process = replace(base, transistors=(*known, *by_card, *by_name))
     return replace(process, notices=(*process.notices, *_notices(base, cards)))
 
