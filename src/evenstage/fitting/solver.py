@@ -4,7 +4,7 @@ With predictions p and measurements m the residuals are
 
     (p - m)/max(m, d1)                delays,
     (p - m)/(2 max(m, t1))            output transitions,
-    (p - m)/(2 m)                     input capacitances,
+    3 (p - m)/(4 m)                   input capacitances,
 
 where d1 and t1 are delay and transition of an inverter driving one copy of itself. Their
 soft-L1 loss ``2 s^2 (sqrt(1 + (r/s)^2) - 1)``, s a tenth, is made least within bounds by a trust
@@ -47,7 +47,7 @@ _SPARE: Final = 1.2
 
 #: Weights of an output transition and of an input capacitance; a delay has 1.
 _OF_TRANSITION: Final = 0.5
-_OF_CAP: Final = 0.5
+_OF_CAP: Final = 0.75
 
 #: Residuals well beyond this count by their size, not by its square.
 _ROBUST: Final = 0.1

@@ -184,8 +184,10 @@ def _gate(table: Settings) -> float:
             "c_gate is missing in [[transistor]]; give it, or the oxide's thickness as tox",
             "missing-key",
         )
-    overlap = table.optional_number("cgdo") or 0.0
-    return level1.oxide_capacitance(oxide) * table.number("length") + 3 * overlap
+    drain = table.optional_number("cgdo") or 0.0
+    source = table.optional_number("cgso")
+    overlaps = (drain if source is None else source) + 2 * drain
+    return level1.oxide_capacitance(oxide) * table.number("length") + overlaps
 
 
 def _derived(table: Settings, supply: float, channel: Channel) -> Derived:
