@@ -21,7 +21,7 @@ from evenstage.sizing.infeasible import (
     DelayOutOfReachError,
     LimitOutOfReachError,
 )
-from support.problems import Arc, Term, chain_problem, problem, random_problem
+from support.problems import Arc, Term, chain_problem, problem, random_problem, tied
 
 if TYPE_CHECKING:
     from evenstage.sizing.problem import FloatArray, Problem
@@ -32,22 +32,6 @@ GAP = 1e-4
 def start_of(question: Problem) -> FloatArray:
     """Return the smallest sizes."""
     return question.lower.copy()
-
-
-def tied(question: Problem, seed: int) -> Problem:
-    """Return a problem in which some sizes are one, and some cannot move."""
-    rng = np.random.default_rng(seed)
-    n = len(question.lower)
-    index = np.append(np.where(rng.random(n) < 0.3, rng.integers(0, n, n), np.arange(n)), n)
-    lower, upper = question.lower.copy(), question.upper.copy()
-    fixed = rng.random(n) < 0.15
-    lower[fixed] = upper[fixed] = rng.uniform(1.0, 8.0, int(fixed.sum()))
-    question = replace(question, lower=lower, upper=upper)
-    delay, limit = (
-        replace(terms, plus=index[terms.plus], minus=index[terms.minus])
-        for terms in (question.delay, question.limit)
-    )
-    return replace(question, delay=delay, limit=limit)
 
 
 @given(seed=st.integers(0, 10**6), gates=st.integers(5, 40))
@@ -75,14 +59,6 @@ def test_agrees_with_the_interior_point(seed: int, gates: int) -> None:
 @settings(max_examples=6, deadline=None)
 def test_ties_and_fixed_sizes(seed: int) -> None:
     question = tied(random_problem(seed, 30, depth=6), seed)
-    limits = question.limit_sums(np.sqrt(question.lower * question.upper))
-    question = replace(
-        question,
-        limit=replace(
-            question.limit,
-            coefficient=question.limit.coefficient / (2.0 * limits)[question.limit.row],
-        ),
-    )
     answer = solve(question, Fastest(), start=start_of(question), tolerance=GAP)
     still = question.lower == question.upper
     assert_array_equal(answer.sizes[still], question.lower[still])

@@ -7,6 +7,8 @@ optimiser.
 
 from __future__ import annotations
 
+import contextlib
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import cvxpy as cp
@@ -15,6 +17,7 @@ from cvxpy.atoms.elementwise.exp import exp
 from scipy.sparse import csr_array
 
 from evenstage.sizing.goals import Budget, Cheapest
+from evenstage.sizing.problem import worst_delay
 
 if TYPE_CHECKING:
     from evenstage.sizing.goals import Goal
@@ -22,7 +25,45 @@ if TYPE_CHECKING:
 
 
 def reference_objective(problem: Problem, goal: Goal) -> float:
-    """Return the optimal delay or, for the cheapest, the optimal spend."""
+    """Return the optimal delay or, for the cheapest, the optimal spend.
+
+    Where the solver gives up, as it does on some larger circuits, other units may help it.
+
+    Raises
+    ------
+    cvxpy.error.SolverError
+        Where it gives up in all units.
+    """
+    sizes = np.sqrt(problem.lower * problem.upper)
+    whole = (abs(worst_delay(problem, sizes)) or 1.0, problem.cost(sizes) or 1.0)
+    for time, money in ((1.0, 1.0), whole):
+        with contextlib.suppress(cp.error.SolverError):
+            optimum = _plain_objective(*_scaled(problem, goal, time, money))
+            return optimum * (money if isinstance(goal, Cheapest) else time)
+    raise cp.error.SolverError
+
+
+def _scaled(problem: Problem, goal: Goal, time: float, money: float) -> tuple[Problem, Goal]:
+    """Return the same question in other units."""
+    match goal:
+        case Cheapest(delay):
+            goal = Cheapest(delay / time)
+        case Budget(spend):
+            goal = Budget(spend / money)
+    delay_terms = replace(problem.delay, coefficient=problem.delay.coefficient / time)
+    changed = replace(
+        problem,
+        delay=delay_terms,
+        start_arrival=problem.start_arrival / time,
+        end_offset=problem.end_offset / time,
+        spend=problem.spend / money,
+        spend_fixed=problem.spend_fixed / money,
+    )
+    return changed, goal
+
+
+def _plain_objective(problem: Problem, goal: Goal) -> float:
+    """Return the optimum of a question in its own units."""
     y, t, worst = cp.Variable(len(problem.lower)), cp.Variable(problem.nodes), cp.Variable()
     spend = problem.spend @ exp(y) + problem.spend_fixed
     delays = _sums(problem.delay, y, len(problem.arc_source))

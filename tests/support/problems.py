@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -150,6 +150,25 @@ def random_problem(
         spend_fixed=10.0,
         limits=ceilings,
     )
+
+
+def tied(question: Problem, seed: int) -> Problem:
+    """Return a problem in which some sizes are one, some cannot move, and some limits are tight."""
+    rng = np.random.default_rng(seed)
+    n = len(question.lower)
+    index = np.append(np.where(rng.random(n) < 0.3, rng.integers(0, n, n), np.arange(n)), n)
+    lower, upper = question.lower.copy(), question.upper.copy()
+    fixed = rng.random(n) < 0.15
+    lower[fixed] = upper[fixed] = rng.uniform(1.0, 8.0, int(fixed.sum()))
+    question = replace(question, lower=lower, upper=upper)
+    delay, limit = (
+        replace(terms, plus=index[terms.plus], minus=index[terms.minus])
+        for terms in (question.delay, question.limit)
+    )
+    question = replace(question, delay=delay, limit=limit)
+    middle = question.limit_sums(np.sqrt(lower * upper))
+    tight = replace(limit, coefficient=limit.coefficient / (2.0 * middle)[limit.row])
+    return replace(question, limit=tight)
 
 
 def _wiring(

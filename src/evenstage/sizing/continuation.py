@@ -20,7 +20,7 @@ import numpy as np
 
 from evenstage.sizing.hessian import Hessian
 from evenstage.sizing.lagrangian import Weights
-from evenstage.sizing.newton import State, direction, minimised
+from evenstage.sizing.newton import State, direction, is_enough, minimised
 from evenstage.sizing.tangent import best_bound
 
 if TYPE_CHECKING:
@@ -37,6 +37,8 @@ _FALLS, _FASTEST_FALL, _SLOWEST_FALL = 0.35, 0.2, 0.6
 _FEW, _MANY = 3, 8
 #: Newton steps at one temperature at most.
 _MOST_STEPS: Final = 40
+#: How often this is done at one temperature for a minimum that is hard to reach.
+_ROUNDS: Final = 5
 #: Parts of the tangent along which sizes are tried.
 _TRIED: Final = (0.5, 0.9)
 #: A tangent changes no size by more than this in the logarithm.
@@ -143,7 +145,7 @@ class Walk:
             The last minimum.
         """
         state = State(point=point, prices=point.prices, damping=_FIRST_DAMPING)
-        falls, price = _FALLS, point.prices.goal
+        falls, price, rounds = _FALLS, np.inf, 0
         self.best.offer(point)
         while True:
             state = minimised(replace(state, steps=0, work=0), _MOST_STEPS)
@@ -158,8 +160,12 @@ class Walk:
             exhausted = self.work >= self.most or point.weights.temperature < _LEAST
             if enough(point, self.best) or exhausted:
                 return point
+            rounds = 0 if is_enough(point) else rounds + 1
+            if 0 < rounds < _ROUNDS:
+                continue
             falls = _adapted(falls, state.steps)
-            settled = point.question.deadline is None or price > before / _SETTLED
+            idle = price * point.spread < self.tolerance * point.objective
+            settled = point.question.deadline is None or idle or price > before / _SETTLED
             state = self._cooler(state, tangent, falls, settled=settled)
             if not state.point.inside:
                 return point

@@ -53,7 +53,7 @@ _STEPS: Final = 40
 #: Part of the room between smallest cost and budget that a first point leaves.
 _FREE: Final = 0.3
 #: A gap that is still an answer when the work is done.
-ACCEPTED_GAP: Final = 1e-3
+ACCEPTED_GAP: Final = 5e-3
 #: Most sweeps of one walk.
 _MOST: Final = 20_000
 #: Precision at which a wish counts as proved impossible.
@@ -81,7 +81,7 @@ def solve(
     tolerance : float
         Relative gap between answer and bound at which to stop.
     most : int
-        Most sweeps of one walk; a gap up to 1e-3 is accepted then.
+        Most sweeps of one walk; a gap up to 5e-3 is accepted then.
 
     Raises
     ------
@@ -90,7 +90,7 @@ def solve(
     NoPathError
         If no path end can be reached.
     NotConvergedError
-        If the gap stayed above both `tolerance` and 1e-3.
+        If the gap stayed above both `tolerance` and 5e-3.
     """
     worst_delay(problem, start)
     refuse_hopeless(problem, goal)

@@ -77,7 +77,7 @@ def minimised(state: State, most: int) -> State:
     """
     for _ in range(most):
         point = state.point
-        if point.reach(point.gradient) <= _ENOUGH * point.softness:
+        if is_enough(point):
             break
         moved = _stepped(state)
         if moved.point is point:
@@ -86,6 +86,11 @@ def minimised(state: State, most: int) -> State:
             moved = replace(moved, damping=_MOST_DAMPING)
         state = moved
     return state
+
+
+def is_enough(point: Point) -> bool:
+    """Tell whether a point is near enough to the minimum for its temperature."""
+    return point.reach(point.gradient) <= _ENOUGH * point.softness
 
 
 def direction(state: State, right: FloatArray, *, damped: bool) -> tuple[FloatArray, int]:

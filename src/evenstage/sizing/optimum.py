@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 
 from evenstage.sizing import cooling, interior_point
+from evenstage.sizing.goals import Cheapest
 from evenstage.sizing.solution import Solution
 
 if TYPE_CHECKING:
@@ -20,10 +21,10 @@ if TYPE_CHECKING:
     from evenstage.sizing.goals import Goal
     from evenstage.sizing.problem import Problem
 
-#: Monomials up to which the interior point is used.
-_SMALL: Final = 6_000
-#: The smallest gap that cooling is asked for.
-_FINEST: Final = 1e-4
+#: Monomials up to which the interior point is used: beyond, its factors may fill.
+_SMALL: Final = 10_000
+#: The smallest gaps that cooling is asked for: of delay, and of spend, which is the steeper one.
+_FINEST_DELAY, _FINEST_SPEND = 1e-4, 1e-3
 
 
 def solve(
@@ -43,7 +44,8 @@ def solve(
         Where to begin, clipped to the box: sizes near the answer save time, and sizes that do not
         matter stay near them. Default: the middle of the box.
     tolerance : float
-        Relative gap between answer and bound to stop at. Large problems stop at 1e-4 at the latest.
+        Relative gap between answer and bound to stop at. Large problems stop at 1e-4 of a delay
+        or 1e-3 of a spend.
 
     Raises
     ------
@@ -61,7 +63,8 @@ def solve(
     sizes = np.clip(np.asarray(begin, dtype=np.float64), problem.lower, problem.upper)
     if is_small(problem):
         return interior_point.solve(problem, goal, start=sizes, tolerance=tolerance)
-    return cooling.solve(problem, goal, start=sizes, tolerance=max(tolerance, _FINEST))
+    finest = _FINEST_SPEND if isinstance(goal, Cheapest) else _FINEST_DELAY
+    return cooling.solve(problem, goal, start=sizes, tolerance=max(tolerance, finest))
 
 
 def is_small(problem: Problem) -> bool:
