@@ -15,6 +15,7 @@ from evenstage.sizing.problem import FloatArray, Problem, worst_delay
 from evenstage.timing.sweep import Timing, sweep
 from support.blocks import inverter, plain_process
 from support.models import model_of
+from support.pass_networks import bus, rotator, tree
 from support.random_blocks import RandomBlock, random_blocks
 
 PROCESS = plain_process(
@@ -70,6 +71,22 @@ class TestDelays:
         sizes = drawn_sizes(model, data)
         delays = problem_of(model).arc_delays(sizes)
         assert delays == pytest.approx(timed(model, sizes).charged, rel=1e-9)
+
+    @pytest.mark.parametrize(
+        "text",
+        [tree(2), tree(2, driven=False), rotator(1), bus(3)],
+        ids=["tree", "bare", "rotator", "bus"],
+    )
+    @given(data=st.data())
+    @settings(max_examples=10, deadline=None)
+    def test_every_arc_through_passes(self, text: str, data: st.DataObject) -> None:
+        """Resistances and capacitances of one arc belong to several sizes."""
+        brief = Brief(inputs=(InputBrief(nets=(Pattern("d*"),), arrival=2e-11, drive=900.0),))
+        model = model_of(text, PROCESS, brief)
+        sizes = drawn_sizes(model, data)
+        delays = problem_of(model).arc_delays(sizes)
+        after = timed(model, sizes)
+        assert delays[len(delays) - len(after.charged) :] == pytest.approx(after.charged, rel=1e-9)
 
     def test_a_card_that_repeats_along_the_path(self) -> None:
         """A row of four calls of one pair: the same size drives and loads."""

@@ -350,13 +350,20 @@ class Circuit:
     def driver_of_net(self) -> IntArray:
         """Gate that drives each net, one of several, -1 for none, shape (nets,)."""
         driver = np.full(len(self.devices.net_names), -1, np.int32)
-        alone = np.ones(len(self), bool)
+        alone = ~self.is_part
         for stage in self.stages:
-            alone[stage.gates] = False
             for sink in stage.form.sinks:
                 driver[stage.nets[:, sink.node]] = stage.gates[:, sink.part]
         driver[self.gate_output[alone]] = np.flatnonzero(alone)
         return driver
+
+    @cached_property
+    def is_part(self) -> BoolArray:
+        """Which gates are parts of a stage of several, or of one seen at inner nodes."""
+        found = np.zeros(len(self), bool)
+        for stage in self.stages:
+            found[stage.gates] = True
+        return found
 
     @cached_property
     def driven(self) -> IntArray:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -182,7 +182,15 @@ def _entries(circuit: Circuit) -> tuple[Entry, ...]:
         for subcircuit, first, count in _by_subcircuit(circuit, some)
     ]
     found.sort()
-    return tuple(_entry(circuit, first, count) for _, _, first, count in found)
+    alike: dict[Entry, int] = {}
+    instance: dict[Entry, str] = {}
+    for _, _, first, count in found:
+        entry = _entry(circuit, first, count)
+        # Parts of stages are drawn in different places of them and yet are alike.
+        key = replace(entry, count=0, instance="")
+        alike[key] = alike.get(key, 0) + count
+        instance.setdefault(key, entry.instance)
+    return tuple(replace(key, count=n, instance=instance[key]) for key, n in alike.items())
 
 
 def _by_subcircuit(circuit: Circuit, some: AlikeGates) -> list[tuple[int, int, int]]:

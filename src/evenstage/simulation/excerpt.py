@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.errors import SimulationError
 from evenstage.simulation.layout import LOW, OUTSIDE, lay_out
 from evenstage.simulation.logic import switches
 from evenstage.simulation.parameters import known_channels
@@ -97,8 +98,9 @@ def excerpt(
     Raises
     ------
     SimulationError
-        ``cannot-switch``, see `side_inputs`.
+        ``cannot-switch``, see `side_inputs`, or where pass transistors are on the path.
     """
+    _refuse_stages(circuit, route)
     held = side_inputs(circuit, list(route.gates), list(route.nets[1:]), route.edges)
     side: list[int] = []
     if with_gates:
@@ -118,6 +120,18 @@ def excerpt(
         held=held,
         side_gates=len(side),
     )
+
+
+def _refuse_stages(circuit: Circuit, route: Route) -> None:
+    """Refuse paths through stages of several gates: what they are tied to is not cut out."""
+    for gate in route.gates:
+        if circuit.is_part[gate]:
+            raise SimulationError(
+                f"'{circuit.gate_name(gate)}' ({circuit.gate_function(gate)}) is part of a stage of"
+                " several gates, as around pass transistors; such paths are not simulated: simulate"
+                " the written netlist with the foundry's models",
+                code="cannot-switch",
+            )
 
 
 def _watched(circuit: Circuit, route: Route, layout: Layout) -> tuple[int, ...]:
@@ -142,15 +156,15 @@ def _side_gates(
 ) -> tuple[list[int], Levels]:
     """Return the gates that hang on the path, and all values held, theirs included.
 
-    A gate whose output is held, or whose other inputs another such gate drives, is left to be a
-    capacitance.
+    A gate whose output is held, whose other inputs another such gate drives, or that is part of a
+    stage of several, is left to be a capacitance.
     """
     on_path = route.nets if loads_start else route.nets[1:]
     loading = circuit.gate_of_device[np.isin(circuit.devices.gate, on_path)]
     found: list[int] = []
     driven: set[int] = set()
     for gate in np.unique(loading[loading >= 0]).tolist():
-        if gate in route.gates:
+        if gate in route.gates or circuit.is_part[gate]:
             continue
         output = int(circuit.gate_output[gate])
         inputs = gate_inputs(circuit, gate, switches(circuit, circuit.gate_devices(gate)))

@@ -213,10 +213,11 @@ class Model:
         """Return the Elmore delay up to which an arc keeps a transition limit, s, shape (arcs,).
 
         If every stage keeps ``shape E <= sqrt(1 - carry^2) T`` and no input is slower than T, then
-        no edge is: the carried part adds at most ``carry T``.
+        no edge is: the carried part adds at most ``carry T``. Where the whole transition of the
+        input rides on, as from outside through pass transistors, each may make half of ``T^2``.
         """
         arcs = self.circuit.arcs
-        share = np.sqrt(np.maximum(1 - arcs.shape_carry**2, 0.0))
+        share = np.sqrt(np.where(arcs.shape_carry < 1, 1 - arcs.shape_carry**2, 0.5))
         shaped = arcs.shape > 0
         most = np.full(len(arcs.gate), np.inf)
         most[shaped] = share[shaped] / arcs.shape[shaped] * limits.transition * limits.share
