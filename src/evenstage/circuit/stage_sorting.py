@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.circuit.function import Literal
+from evenstage.circuit.rows import distinct_rows
 from evenstage.circuit.sorting import rows_of
 from evenstage.circuit.stage import Facts, StageForm, recognise_stage
 
@@ -70,9 +71,10 @@ class _Around:
         self._open[[net for plus, minus, _ in devices.source_nets for net in (plus, minus)]] = True
         self._seen = self._gating | self._open
         ends = np.unique(np.concatenate([some.nets.ravel() for _, some in found.strange]))
-        names = [devices.net_names[net] for net in ends.tolist()]
         inputs = [p for one in (brief.inputs if brief else ()) for p in one.nets]
         outputs = [p for one in (brief.outputs if brief else ()) for p in one.nets]
+        # Names are put together on demand, and that takes its time.
+        names = [devices.net_names[net] for net in ends.tolist()] if inputs or outputs else []
         self._input = _named(nets, ends, names, inputs)
         self._output = _named(nets, ends, names, outputs)
         self._open |= self._input
@@ -90,7 +92,7 @@ class _Around:
             for column in (self._seen, self._gating, self._open, self._input, self._output)
         ]
         table = np.concatenate([first, straight, *marks], axis=1)
-        kinds, inverse = np.unique(table, axis=0, return_inverse=True)
+        kinds, inverse = distinct_rows(table)
         for index, kind in enumerate(kinds.tolist()):
             ties = zip(asked, kind[: len(asked)], kind[len(asked) :], strict=False)
             flags = [
