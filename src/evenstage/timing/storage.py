@@ -65,7 +65,7 @@ def boundaries(circuit: Circuit) -> Boundaries:
     captured = is_clocked & ~own & (level == 0) & ~written
     part = _parts(circuit, ~captured)
     inner = own & (part[arcs.input] == part[arcs.output])
-    entered = _entries(circuit, np.where(is_clocked & ~own, into, -1))
+    entered = _entries(circuit, loops, np.where(is_clocked & ~own, into, -1))
     held = is_clocked & ((inner & entered[arcs.output]) | (level < 0))
     return Boundaries(captured, held, inner & ~is_clocked, part)
 
@@ -95,9 +95,15 @@ def _writes(loops: Sequence[Loop], into: IntArray, source: IntArray) -> BoolArra
     return np.isin(into.astype(np.int64) * nets + source, np.array(keys, np.int64))
 
 
-def _entries(circuit: Circuit, into: IntArray) -> BoolArray:
-    """Tell of each net whether it is the one where its loop is entered; the first of several."""
+def _entries(circuit: Circuit, loops: Sequence[Loop], into: IntArray) -> BoolArray:
+    """Tell of each net whether it is the one where its loop is entered.
+
+    The first of several, and the first of its nets where no arc enters a loop.
+    """
     found = np.zeros(len(circuit.devices.net_names), bool)
+    closed = np.ones(len(loops), bool)
+    closed[into[into >= 0]] = False
+    found[[loops[number].nets[0] for number in np.flatnonzero(closed).tolist()]] = True
     arcs = np.flatnonzero(into >= 0)
     outputs = circuit.arcs.output[arcs]
     order = np.lexsort((outputs, into[arcs]))

@@ -161,8 +161,9 @@ class Feedback:
                 yield self.phases.root[some.nets[:, gate]], some.nets[:, output]
             return
         for rows, wiring, signals in self._wirings(some):
+            outside = {end for end, _ in wiring.free}
             for end, numbers in influence(wiring).items():
-                for number in numbers:
+                for number in numbers if end not in outside else ():
                     yield signals[:, number], some.nets[rows, end]
 
     def _wirings(self, some: _Drawing) -> Iterator[tuple[IntArray, Wiring, IntArray]]:
