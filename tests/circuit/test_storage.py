@@ -87,6 +87,39 @@ class TestKinds:
         assert told(found) == [("latch", "s", "ck", "d", "")]
         assert "tri-state gate, kept" in {found.gate_kind(g) for g in range(len(found))}
 
+    def test_latch_that_a_transmission_gate_overpowers(self) -> None:
+        cards = [
+            CLOCK, inverter("d", "d", "db", 1, 2), gate("t", "db", "ck", "ckb", "s"),
+            inverter("s", "s", "q", 1, 2), inverter("f", "q", "s", 0.2, 0.4),
+        ]  # fmt: skip
+        found = circuit("\n".join(cards), "d ck q")
+        assert told(found) == [("latch", "s", "ck", "d", "")]
+        assert routes(found) == {
+            ("d", "s-"), ("d", "s+"),
+            ("ck", "s+", "q-"), ("ck", "s-", "q+"),
+            ("ck", "ckb-", "s+", "q-"), ("ck", "ckb-", "s-", "q+"),
+        }  # fmt: skip
+
+    def test_memory_cell(self) -> None:
+        cards = [
+            inverter("1", "a", "b", 1, 1), inverter("2", "b", "a", 1, 1),
+            transistor("n", "bl", "wl", "a", 1, "p1"), transistor("n", "blb", "wl", "b", 1, "p2"),
+        ]  # fmt: skip
+        (found,) = told(circuit("\n".join(cards), "bl blb wl"))
+        assert found[:3] == ("latch", "a b", "wl")
+
+    def test_a_level_restorer_stores_nothing_where_one_of_two_passes(self) -> None:
+        cards = [
+            inverter("s", "s", "sb", 1, 2), transistor("n", "a", "s", "x", 1, "p1"),
+            transistor("n", "b", "sb", "x", 1, "p2"), transistor("p", "x", "y", "vdd", 0.2, "k"),
+            inverter("o", "x", "y", 1, 2), inverter("i", "c", "a", 1, 2), inverter("j", "d", "b", 1, 2),
+        ]  # fmt: skip
+        found = circuit("\n".join(cards), "c d s y")
+        assert [one[0] for one in told(found)] == ["loop that never holds"]
+        (keeper,) = np.flatnonzero(found.devices.gate == found.net_id("y")).tolist()
+        assert found.gate_of_device[keeper] >= 0
+        assert found.net_cap[found.net_id("y") or 0] == pytest.approx(0.2e-15)
+
     def test_flip_flop(self) -> None:
         assert told(circuit(FLIP_FLOP, "d ck q")) == [("flip-flop", "m mq s", "ck", "d", "")]
 

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.circuit.context import Surroundings
 from evenstage.circuit.function import Literal
+from evenstage.circuit.kinds.kept import with_nets, without_keepers
 from evenstage.circuit.rows import distinct_rows
 from evenstage.circuit.sorting import rows_of
 from evenstage.circuit.stage import Facts, StageForm, recognise_stage
@@ -16,8 +18,10 @@ if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
 
     from evenstage.brief import Brief
+    from evenstage.circuit.context import Context
+    from evenstage.circuit.gate import Unrecognised
     from evenstage.circuit.groups import AlikeGroups
-    from evenstage.circuit.network import BoolArray
+    from evenstage.circuit.network import BoolArray, Switch
     from evenstage.circuit.sorting import Sorted
     from evenstage.netlist.devices import Devices, IntArray
     from evenstage.pattern import Pattern
@@ -48,15 +52,41 @@ def sort_stages(devices: Devices, found: Sorted, brief: Brief | None) -> StagesF
     stages, strange = [], []
     if found.strange:
         around = _Around(devices, found, brief)
-        for reason, some in found.strange:
-            for facts, rows in around.split(some):
-                form = recognise_stage(some.network, facts)
-                part = rows_of(some, rows)
-                if isinstance(form, StageForm):
-                    stages.append((form, part))
-                else:
-                    strange.append((form.reason or reason, part))
+        surroundings = Surroundings(devices, found.gates, [some for _, some in found.strange])
+        for reason, whole in found.strange:
+            for context, placed in surroundings.split(whole):
+                some = rows_of(whole, placed)
+                for facts, rows in around.split(some):
+                    form = _recognised(some.network, facts, context)
+                    part = rows_of(some, rows)
+                    if isinstance(form, StageForm):
+                        stages.append((form, part))
+                    else:
+                        strange.append((form.reason or reason, part))
     return StagesFound(tuple(stages), tuple(strange))
+
+
+def _recognised(
+    network: tuple[Switch, ...], facts: Facts, context: Context
+) -> StageForm | Unrecognised:
+    """Recognise a stage without its keepers if it has some, which whatever drives overpowers."""
+    rest, keepers = without_keepers(network, context)
+    form = recognise_stage(rest, facts)
+    if not keepers:
+        return form
+    if not isinstance(form, StageForm):
+        return recognise_stage(network, facts)
+    parts = (
+        replace(
+            part,
+            drawn=tuple(network[column] for column in columns),
+            network=with_nets(part.network, network),
+        )
+        for part, columns in zip(form.parts, form.columns, strict=True)
+    )
+    return replace(
+        form, drawn=network, network=with_nets(form.network, network), parts=tuple(parts)
+    )
 
 
 class _Around:

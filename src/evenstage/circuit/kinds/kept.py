@@ -29,14 +29,9 @@ def kept(families: Sequence[Family]) -> Family:
     """Return the kind of those networks that are of other kinds once their keepers are left out."""
 
     def family(devices: tuple[Switch, ...], context: Context) -> GateForm | Unrecognised:
-        keepers = _keepers(merge(devices), context)
+        rest, keepers = without_keepers(devices, context)
         if not keepers:
             return Unrecognised("no device of it listens to its own output")
-        holding = {d for keeper in keepers for place in keeper.devices for d in place}
-        rest = tuple(
-            _held_off(device) if index in holding else device
-            for index, device in enumerate(devices)
-        )
         alone = replace(context, feedback=())
         for other in families:
             form = other(rest, alone)
@@ -44,7 +39,7 @@ def kept(families: Sequence[Family]) -> Family:
                 return replace(
                     form,
                     drawn=devices,
-                    network=_with_nets(form.network, devices),
+                    network=with_nets(form.network, devices),
                     kind=f"{form.kind}, kept",
                     weak=(*form.weak, *keepers),
                 )
@@ -53,7 +48,19 @@ def kept(families: Sequence[Family]) -> Family:
     return family
 
 
-def _with_nets(network: Network, devices: tuple[Switch, ...]) -> Network:
+def without_keepers(
+    devices: tuple[Switch, ...], context: Context
+) -> tuple[tuple[Switch, ...], tuple[Weak, ...]]:
+    """Return a drawing with its keepers held off, and the keepers."""
+    keepers = _keepers(merge(devices), context)
+    holding = {d for keeper in keepers for place in keeper.devices for d in place}
+    rest = tuple(
+        _held_off(device) if index in holding else device for index, device in enumerate(devices)
+    )
+    return rest, keepers
+
+
+def with_nets(network: Network, devices: tuple[Switch, ...]) -> Network:
     """Return a network that knows of the nets that only keepers touch."""
     known = network.node_of_net
     nets = 1 + max(max(d.a, d.gate, d.b) for d in devices)
