@@ -112,7 +112,8 @@ class TestKinds:
         cards = [
             inverter("s", "s", "sb", 1, 2), transistor("n", "a", "s", "x", 1, "p1"),
             transistor("n", "b", "sb", "x", 1, "p2"), transistor("p", "x", "y", "vdd", 0.2, "k"),
-            inverter("o", "x", "y", 1, 2), inverter("i", "c", "a", 1, 2), inverter("j", "d", "b", 1, 2),
+            inverter("o", "x", "y", 1, 2), inverter("i", "c", "a", 1, 2),
+            inverter("j", "d", "b", 1, 2),
         ]  # fmt: skip
         found = circuit("\n".join(cards), "c d s y")
         assert [one[0] for one in told(found)] == ["loop that never holds"]
