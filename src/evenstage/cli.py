@@ -205,8 +205,15 @@ def _fit_process(asked: argparse.Namespace) -> flow.Result:
         return flow.fit_simulated(
             asked.simulated, _question(asked), asked.output, force=asked.force
         )
+    if asked.deck is not None:
+        return flow.write_deck(asked.deck, asked.cells, _question(asked), force=asked.force)
     return flow.fit(
-        asked.measurements, asked.cells, _question(asked), asked.output, force=asked.force
+        asked.measurements,
+        asked.cells,
+        _question(asked),
+        asked.output,
+        results=asked.results,
+        force=asked.force,
     )
 
 
@@ -228,10 +235,14 @@ def _parsed(arguments: Sequence[str]) -> argparse.Namespace:
     """Return the arguments read, where those of ``fit`` say one source of delays and no more."""
     parser = _parser()
     asked = parser.parse_args(arguments)
-    if asked.command is _fit_process and (asked.measurements is None) == (asked.simulated is None):
-        parser.error("fit: give MEASUREMENTS with --netlist CELLS, or --simulated NETLIST")
-    if asked.command is _fit_process and (asked.measurements is None) != (asked.cells is None):
-        parser.error("fit: MEASUREMENTS and --netlist CELLS go together")
+    if asked.command is _fit_process:
+        given = (asked.measurements, asked.simulated, asked.deck)
+        if sum(one is not None for one in given) != 1:
+            parser.error(
+                "fit: give MEASUREMENTS or --deck FILE with --netlist CELLS, or --simulated NETLIST"
+            )
+        if (asked.simulated is None) != (asked.cells is not None):
+            parser.error("fit: MEASUREMENTS or --deck FILE and --netlist CELLS go together")
     return asked
 
 
@@ -305,6 +316,18 @@ def _parser() -> argparse.ArgumentParser:
         type=_file,
         metavar="NETLIST",
         help="in their place: the netlist whose cells are measured by simulation",
+    )
+    fit.add_argument(
+        "--deck",
+        type=_output,
+        metavar="FILE",
+        help="write a deck that measures the cells, and beside it the table it fills",
+    )
+    fit.add_argument(
+        "--results",
+        type=_file,
+        metavar="FILE",
+        help="what the simulator printed, for the names in the table",
     )
     fit.add_argument(
         "--netlist",

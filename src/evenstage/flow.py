@@ -12,9 +12,10 @@ from evenstage.circuit.inventory import Inventory, take_inventory
 from evenstage.circuit.recognise import in_process
 from evenstage.circuit.recognise import recognise as find_gates
 from evenstage.errors import OutputError, SettingsError
-from evenstage.fitting.cells import leaf_cells, measured_cells
+from evenstage.fitting.cells import leaf_cells, measured_cells, standing_alone
+from evenstage.fitting.deck import Deck, measuring_deck
 from evenstage.fitting.fit import fit as fit_process
-from evenstage.fitting.reading import read_measurements
+from evenstage.fitting.reading import read_measurements, read_results
 from evenstage.fitting.results import Fit
 from evenstage.fitting.sized import sized_bench
 from evenstage.fitting.tabulate import tabulate
@@ -65,6 +66,7 @@ __all__ = [
     "Block",
     "Corners",
     "CornersDifference",
+    "Deck",
     "Difference",
     "Fit",
     "Inventory",
@@ -85,6 +87,7 @@ __all__ = [
     "resize",
     "simulate",
     "text",
+    "write_deck",
     "write_text",
 ]
 
@@ -320,6 +323,7 @@ def fit(
     question: Question,
     output: Path | None = None,
     *,
+    results: Path | None = None,
     force: bool = False,
 ) -> Fit:
     """Fit a process to measured delays and, where an output is named, write it as a process file.
@@ -333,7 +337,8 @@ def fit(
     """
     _one_process(question, "fit")
     _refuse_existing(output, force=force)
-    measured, netlist = read_measurements(measurements), read(cells)
+    told = read_results(results) if results else None
+    measured, netlist = read_measurements(measurements, told), read(cells)
     brief = read_brief(question.brief) if question.brief else Brief()
     given = read_process(question.process) if question.process else None
     found = measured_cells(measured, netlist, given or _inferred(netlist), brief)
@@ -382,6 +387,35 @@ def fit_simulated(
     said = (*result.notices, *assumption_notices(begin), *delays.notices)
     result = replace(result, notices=tuple(dict.fromkeys(said)))
     return result if output is None else _with_output(result, output, force=force)
+
+
+def write_deck(deck: Path, cells: Path, question: Question, *, force: bool = False) -> Deck:
+    """Write a measuring deck for the cells of a netlist, and beside it the table it fills.
+
+    Raises
+    ------
+    EvenstageError
+        For every mistake in the inputs.
+    OutputError
+        Where one of the files exists (without ``force``) or cannot be written.
+    """
+    _one_process(question, "fit")
+    table = deck.with_suffix(".csv")
+    if table == deck:
+        message = f"'{deck}' is the table's name; give the deck another ending, such as .sp"
+        raise OutputError(message, code="output-exists")
+    for path in (deck, table):
+        check_place(path, [cells])
+    netlist = read(cells)
+    brief = read_brief(question.brief) if question.brief else Brief()
+    given = read_process(question.process) if question.process else None
+    found = standing_alone(netlist, given or _inferred(netlist), brief)
+    first = elaborate(netlist, found[0].name, given or _inferred(netlist), brief)
+    result = measuring_deck(found, cells, given or _settled(netlist, first))
+    texts = {deck: result.text, table: result.table}
+    files = {path: text.encode("utf-8", "surrogateescape") for path, text in texts.items()}
+    write_files(files, force=force)
+    return replace(result, output=deck, table_output=table)
 
 
 def _with_output(result: Fit, output: Path, *, force: bool) -> Fit:

@@ -127,26 +127,16 @@ def measure(
     names: Sequence[str] = tuple(INPUTS),
     transitions: Sequence[float] = (20e-12, 50e-12, 120e-12, 250e-12),
     loads: Sequence[float] = (1e-15, 6e-15, 20e-15, 60e-15),
+    rows: Measurements | None = None,
 ) -> tuple[Measurements, tuple[Cell, ...]]:
-    """Return what a process says of some cells of a netlist file, as measurements."""
-    asked = queries(names)
-    query, transition, load = (
-        grid.ravel()
-        for grid in np.meshgrid(np.arange(len(asked)), transitions, loads, indexing="ij")
-    )
-    nothing = np.full(len(query), np.nan)
-    empty = Measurements(
-        queries=asked,
-        query=query.astype(np.int32),
-        transition=transition,
-        load=load,
-        delay=nothing,
-        output_transition=nothing,
-        input_cap=nothing,
-    )
+    """Return what a process says of some cells of a netlist file, as measurements.
+
+    Of given rows their arcs, transitions and loads count, in place of names and grid.
+    """
+    empty = rows if rows is not None else _grid(names, transitions, loads)
     cells = measured_cells(empty, read(path), process)
     bench = build_bench(path, cells, process)
-    predictor = build_predictor(bench, arc_graphs(bench, asked), empty)
+    predictor = build_predictor(bench, arc_graphs(bench, empty.queries), empty)
     found = predictor(bench.circuit.process)
     return (
         replace(
@@ -156,4 +146,24 @@ def measure(
             input_cap=found.input_cap,
         ),
         cells,
+    )
+
+
+def _grid(
+    names: Sequence[str], transitions: Sequence[float], loads: Sequence[float]
+) -> Measurements:
+    asked = queries(names)
+    query, transition, load = (
+        grid.ravel()
+        for grid in np.meshgrid(np.arange(len(asked)), transitions, loads, indexing="ij")
+    )
+    nothing = np.full(len(query), np.nan)
+    return Measurements(
+        queries=asked,
+        query=query.astype(np.int32),
+        transition=transition,
+        load=load,
+        delay=nothing,
+        output_transition=nothing,
+        input_cap=nothing,
     )

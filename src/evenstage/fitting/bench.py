@@ -41,12 +41,15 @@ class Cell:
         In order.
     high, low : frozenset of str
         Supply ports.
+    is_leaf : bool
+        Whether it calls no other subcircuit.
     """
 
     name: str
     ports: tuple[str, ...]
     high: frozenset[str]
     low: frozenset[str]
+    is_leaf: bool = True
 
     @property
     def signals(self) -> tuple[str, ...]:
@@ -98,7 +101,7 @@ def look_at(netlist: Netlist, name: str, process: Process, brief: Brief | None =
         frozenset(port for port, net in zip(ports, devices.ports, strict=True) if some[net])
         for some in (supplies.is_high, supplies.is_low)
     )
-    return Cell(devices.top, ports, high, low)
+    return Cell(devices.top, ports, high, low, len(devices.instance_parent) == 1)
 
 
 def build_bench(path: Path, cells: Iterable[Cell], process: Process) -> Bench:

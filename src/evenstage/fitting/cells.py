@@ -76,6 +76,32 @@ def leaf_cells(netlist: Netlist, process: Process, brief: Brief | None = None) -
     return tuple(cells)
 
 
+def standing_alone(
+    netlist: Netlist, process: Process, brief: Brief | None = None
+) -> tuple[Cell, ...]:
+    """Find the subcircuits with supplies that call no other subcircuit, in their order.
+
+    Raises
+    ------
+    FitError
+        ``no-leaf`` where there are none.
+    """
+    given = brief or Brief()
+    supplies = Brief(supplies_high=given.supplies_high, supplies_low=given.supplies_low)
+    cells = []
+    for subcircuit in netlist.subcircuits.values():
+        with suppress(ElaborationError, CircuitError):
+            cell = look_at(netlist, subcircuit.name, process, supplies)
+            if cell.is_leaf and cell.high and cell.low:
+                cells.append(cell)
+    if not cells:
+        raise FitError(
+            f"'{netlist.sources[0].label}' has no subcircuit with supplies that calls no other",
+            code="no-leaf",
+        )
+    return tuple(cells)
+
+
 def _check_pins(cell: Cell, pins: Iterable[str], place: Span | None) -> None:
     signals = {port.lower() for port in cell.signals}
     for pin in pins:

@@ -19,7 +19,7 @@ from evenstage.source import SourceText, Span
 from evenstage.units import parse_quantity
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Sequence
+    from collections.abc import Iterator, Mapping, Sequence
     from pathlib import Path
 
     from evenstage.netlist.devices import FloatArray
@@ -40,6 +40,10 @@ _EDGES: Final = {"rise": True, "fall": False}
 _MOST: Final = {"s": 1e-3, "F": 1e-6}
 
 _LINE: Final = re.compile(rb"[^\r\n]*")
+_NAME: Final = re.compile(r"[A-Za-z_]\w*")
+_RESULT: Final = re.compile(
+    r"(?<!\S)([A-Za-z_]\w*)\s*=\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)(?!\S)"
+)
 _FIELD: Final = re.compile(rb'\s*(?:"(?P<quoted>(?:[^"]|"")*)"|(?P<plain>[^,"]*?))\s*(?=,|$)')
 
 
@@ -49,13 +53,33 @@ class _Field:
     span: Span
 
 
-def read_measurements(path: Path) -> Measurements:
+def read_results(path: Path) -> dict[str, float]:
+    """Read what a simulator printed of its measurements: every ``name = number``.
+
+    Parameters
+    ----------
+    path : Path
+        Any text; names are kept in lower case, of equal ones the last counts.
+
+    Raises
+    ------
+    FitError
+        If the file cannot be read.
+    """
+    text = _source(path).data.decode("utf-8", "surrogateescape")
+    return {name.lower(): float(number) for name, number in _RESULT.findall(text)}
+
+
+def read_measurements(path: Path, results: Mapping[str, float] | None = None) -> Measurements:
     """Read a table of measurements.
 
     Parameters
     ----------
     path : Path
         Comma-separated text with the columns of ``COLUMNS``; the last two may be missing.
+    results : mapping of str to float, optional
+        Numbers that the table holds by name, in lower case; see `read_results`. Rows whose delay is
+        a name without a number are left out.
 
     Raises
     ------
@@ -72,6 +96,8 @@ def read_measurements(path: Path) -> Measurements:
         )
     columns = _columns(header)
     found = [_fields(columns, row) for row in rows]
+    if results is not None:
+        found = [filled for row in found if (filled := _filled(row, results)) is not None]
     if not found:
         raise FitError(f"'{path}' holds no measurement below its header", code="no-measurements")
     return _measurements(found)
@@ -150,6 +176,16 @@ def _fields(columns: dict[str, int], row: Sequence[_Field]) -> dict[str, _Field]
             span=Span(row[0].span.source, row[0].span.start, row[-1].span.end),
         )
     return {name: row[place] for name, place in columns.items()}
+
+
+def _filled(row: dict[str, _Field], results: Mapping[str, float]) -> dict[str, _Field] | None:
+    """Put results in the place of their names; None where the delay was not measured."""
+    filled = dict(row)
+    for name in ("delay", "output_transition", "input_capacitance"):
+        if name in row and _NAME.fullmatch(row[name].text):
+            number = results.get(row[name].text.lower())
+            filled[name] = _Field("" if number is None else repr(number), row[name].span)
+    return filled if filled["delay"].text else None
 
 
 def _measurements(rows: Sequence[dict[str, _Field]]) -> Measurements:

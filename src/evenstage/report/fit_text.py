@@ -13,6 +13,7 @@ from evenstage.units import engineering
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from evenstage.fitting.deck import Deck
     from evenstage.fitting.results import Confusion, Fit, FittedConstant, Residuals
 
 #: Units of the constants as the process file has them.
@@ -53,6 +54,22 @@ def fit_report(fit: Fit, *, width: int = 100, unicode: bool = False, notices: bo
     lines += section("The fit", _base_lines(paper, fit))
     if notices:
         lines += section("Notices", notice_lines(paper, fit.notices))
+    return finished(paper, lines)
+
+
+def deck_report(
+    deck: Deck, *, width: int = 100, unicode: bool = False, notices: bool = True
+) -> str:
+    """Return what a measuring deck measures as text; arguments as for `fit_report`."""
+    paper = Paper(width, unicode)
+    lines = paper.paragraph(
+        f"{deck.output} measures {counted(deck.arcs, 'arc')} of {counted(len(deck.cells), 'cell')} "
+        f"at {deck.measurements // deck.arcs} points each. Add your models to it, let your "
+        f"simulator run it, and keep what it prints; {deck.table_output} holds the names of the "
+        "results. Then: evenstage fit TABLE --results PRINTED --netlist CELLS --output FILE."
+    )
+    if notices:
+        lines += section("Notices", notice_lines(paper, deck.notices))
     return finished(paper, lines)
 
 

@@ -14,6 +14,7 @@ if TYPE_CHECKING:
 
     from evenstage.circuit.inventory import Inventory
     from evenstage.errors import Notice
+    from evenstage.fitting.deck import Deck
     from evenstage.fitting.results import Fit
     from evenstage.report.circuit_document import Document, JsonValue
     from evenstage.simulation.results import Simulation
@@ -152,6 +153,28 @@ def fit_document(fit: Fit) -> Document:
     """
     notices: Document = {"notices": [notice_document(notice) for notice in fit.notices]}
     return _head("fit") | fit_body(fit) | notices
+
+
+def deck_document(deck: Deck) -> Document:
+    """Return what a measuring deck measures as the document scripts read.
+
+    Parameters
+    ----------
+    deck : Deck
+
+    Returns
+    -------
+    dict
+        Plain values only; ``kind`` is ``deck``.
+    """
+    return _head("deck") | {
+        "output": str(deck.output),
+        "table": str(deck.table_output),
+        "cells": list(deck.cells),
+        "arcs": deck.arcs,
+        "measurements": deck.measurements,
+        "notices": [notice_document(notice) for notice in deck.notices],
+    }
 
 
 def to_json(document: Mapping[str, JsonValue]) -> str:

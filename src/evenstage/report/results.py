@@ -5,10 +5,12 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Any, Final
 
 from evenstage.circuit.inventory import Inventory
+from evenstage.fitting.deck import Deck
 from evenstage.fitting.results import Fit
 from evenstage.report.corners_document import corners_difference_document, corners_document
 from evenstage.report.machine import (
     analysis_document,
+    deck_document,
     difference_document,
     fit_document,
     inventory_document,
@@ -20,6 +22,7 @@ from evenstage.report.terminal import (
     analysis_report,
     corners_difference_report,
     corners_report,
+    deck_report,
     difference_report,
     fit_report,
     inventory_report,
@@ -37,7 +40,17 @@ if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.report.circuit_document import Document
 
-Result = Analysis | Corners | Sizing | Difference | CornersDifference | Inventory | Simulation | Fit
+Result = (
+    Analysis
+    | Corners
+    | Sizing
+    | Difference
+    | CornersDifference
+    | Inventory
+    | Simulation
+    | Fit
+    | Deck
+)
 
 # Each takes the result it stands beside.
 _REPORTS: Final[dict[type, Callable[..., str]]] = {
@@ -49,6 +62,7 @@ _REPORTS: Final[dict[type, Callable[..., str]]] = {
     Inventory: inventory_report,
     Simulation: simulation_report,
     Fit: fit_report,
+    Deck: deck_report,
 }
 _DOCUMENTS: Final[dict[type, Callable[[Any], Document]]] = {
     Analysis: analysis_document,
@@ -59,6 +73,7 @@ _DOCUMENTS: Final[dict[type, Callable[[Any], Document]]] = {
     Inventory: inventory_document,
     Simulation: simulation_document,
     Fit: fit_document,
+    Deck: deck_document,
 }
 
 
