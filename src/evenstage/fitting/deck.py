@@ -109,7 +109,7 @@ def measuring_deck(cells: Sequence[Cell], netlist: Path, process: Process) -> De
         for row, (arc, transition, fanout) in enumerate(product(arcs, transitions, _FANOUTS))
     ]
     stop = 3 * max(transitions) + _SETTLING * chains[-1].delay
-    notices = []
+    notices = list(process.notices)
     if lost:
         message = (
             f"{len(lost)} cells left out: no output that at most {INPUTS_MAX} inputs decide "
