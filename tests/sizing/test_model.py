@@ -9,7 +9,7 @@ from hypothesis import strategies as st
 
 from evenstage.brief import Brief, InputBrief, OutputBrief
 from evenstage.pattern import Pattern
-from evenstage.sizing.engine import worst_charged
+from evenstage.sizing.limiting import worst_charged
 from evenstage.sizing.model import Limits, Model
 from evenstage.sizing.problem import FloatArray, Problem, worst_delay
 from evenstage.timing.sweep import Timing, sweep

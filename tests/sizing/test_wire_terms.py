@@ -9,7 +9,7 @@ from numpy.testing import assert_allclose
 from evenstage.brief import Brief, InputBrief, OutputBrief
 from evenstage.pattern import Pattern
 from evenstage.sizing import wire_terms as module
-from evenstage.sizing.engine import worst_charged
+from evenstage.sizing.limiting import worst_charged
 from evenstage.sizing.model import Limits, Model
 from evenstage.sizing.problem import worst_delay
 from evenstage.sizing.resize import resize

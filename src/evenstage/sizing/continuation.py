@@ -156,7 +156,7 @@ class Walk:
             tangent, work = self._tangent(state)
             work += self._try_along(point, tangent)
             self.steps += state.steps
-            self.work += state.work + work + 6
+            self.work += state.work + work
             exhausted = self.work >= self.most or point.weights.temperature < _LEAST
             if enough(point, self.best) or exhausted:
                 return point
@@ -243,7 +243,7 @@ def _next_weights(point: Point, falls: float) -> Weights:
 
 def balanced(point: Point, temperature: float, softness: float, cost: float) -> Weights:
     """Return weights whose barriers cost a fixed share of the softness, in the objective's unit."""
-    limits = len(point.limit_slack)
+    limits = int(np.count_nonzero(point.near))
     return Weights(
         temperature=temperature,
         goal=_BARRIER * softness,

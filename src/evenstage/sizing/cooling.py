@@ -291,7 +291,7 @@ class _Job:
 
     def _prices(self, proof: Point) -> Prices:
         """Return a proof's flow and prices in the units of the problem."""
-        r, prices = self.reduced, proof.prices
+        r, prices = self.reduced, proof.proof_prices
         flow, start_flow, end_flow = r.flows(proof.soft.flow)
         limit = np.zeros(self.problem.limits)
         unit, price = r.time, prices.goal * r.time / r.money

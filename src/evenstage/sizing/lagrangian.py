@@ -20,14 +20,20 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
 if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
     from evenstage.sizing.problem import FloatArray
     from evenstage.sizing.setup import Setup
     from evenstage.sizing.softmax import Soft
+
+
+#: Slack below which a limit counts as near.
+_NEAR: Final = 0.5
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -169,11 +175,22 @@ class Point:
         """How far the soft worst delay is above the flow's mean: T times the entropy."""
         return max(self.soft.worst - float(self.soft.flow @ self.delay), 0.0)
 
+    @cached_property
+    def near(self) -> NDArray[np.bool_]:
+        """Tell which limits are near enough to count, shape (m,)."""
+        near: NDArray[np.bool_] = self.limit_slack < _NEAR
+        return near
+
+    @property
+    def proof_prices(self) -> Prices:
+        """Prices for a bound: limits far from binding have none."""
+        return Prices(goal=self.prices.goal, limit=np.where(self.near, self.prices.limit, 0.0))
+
     @property
     def softness(self) -> float:
         """What softness and barriers cost in the gap, in the objective's unit."""
         delay, _ = self.factors(self.prices.goal)
-        barriers = self.weights.limit * len(self.limit_slack)
+        barriers = self.weights.limit * np.count_nonzero(self.near)
         if self.question.constrained:
             barriers += self.weights.goal
         return delay * self.spread + barriers

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.sizing.engine import worst_charged
+from evenstage.sizing.limiting import worst_charged
 from evenstage.sizing.problem import totals
 from evenstage.timing.sweep import sweep
 from evenstage.timing.trials import tried

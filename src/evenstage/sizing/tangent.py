@@ -58,7 +58,7 @@ def best_bound(point: Point, wanted: float) -> Bound:
     wanted : float
         Distance of point and bound, in the objective's unit, that would be worth steps for.
     """
-    reduced, question, prices = point.reduced, point.question, point.prices
+    reduced, question, prices = point.reduced, point.question, point.proof_prices
     delay, cost = (prices.goal, 1.0) if question.deadline is not None else (1.0, prices.goal)
     rows = point.rows(delay, prices.limit)
     u, still = point.sums.weights(rows), float(prices.limit.sum())

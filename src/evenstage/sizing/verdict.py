@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from evenstage.errors import InfeasibleError
-from evenstage.sizing.engine import worst_charged
+from evenstage.sizing.limiting import worst_charged
 from evenstage.sizing.limits import broken_today
 from evenstage.units import engineering
 

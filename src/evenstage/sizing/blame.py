@@ -1,0 +1,87 @@
+"""What holds an answer back, or makes a wish impossible, in a designer's words."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+
+from evenstage.errors import InfeasibleError
+from evenstage.sizing.limiting import limiting
+from evenstage.units import engineering
+
+if TYPE_CHECKING:
+    from evenstage.circuit.network import BoolArray
+    from evenstage.sizing.infeasible import BudgetTooSmallError, LimitOutOfReachError
+    from evenstage.sizing.model import Limits, Model
+    from evenstage.sizing.problem import Problem
+    from evenstage.sizing.solution import Solution
+
+#: Relative room below which a limit counts as used up.
+_FULL: Final = 1e-5
+
+
+def limit_out_of_reach(
+    model: Model, limits: Limits, error: LimitOutOfReachError
+) -> InfeasibleError:
+    """Say which input or which gate cannot keep its limit."""
+    nets, circuit = limits.ceiling_net, model.circuit
+    if error.limit_row < len(nets):
+        name = circuit.devices.net_names[nets[error.limit_row]]
+        ceiling = float(limits.ceiling[error.limit_row])
+        return InfeasibleError(
+            f"input '{name}' may show {engineering(ceiling, 'F')}, but the smallest widths "
+            f"allowed there show {engineering(error.least * ceiling, 'F')}",
+            code="input-over-ceiling",
+        )
+    row = model.transition_row(limits)
+    gate = int(circuit.arcs.gate[np.flatnonzero(row == error.limit_row)[0]])
+    limit = engineering(limits.transition, "s")
+    return InfeasibleError(
+        f"gate '{circuit.gate_name(gate)}' cannot keep the transition limit of {limit}: "
+        f"within the widths allowed its edges take {error.least:.3g} times as long",
+        code="transition-out-of-reach",
+    )
+
+
+def budget_too_small(spend: str, error: BudgetTooSmallError) -> InfeasibleError:
+    """Say what the smallest widths come to."""
+    what, unit = ("total width", "m") if spend == "width" else ("capacitance", "F")
+    return InfeasibleError(
+        f"a {what} of {engineering(error.asked, unit, 4)} is out of reach: the smallest widths "
+        f"allowed come to {engineering(error.least, unit, 4)}",
+        code="budget-too-small",
+    )
+
+
+def blame(problem: Problem, model: Model, limits: Limits, solution: Solution) -> str:
+    """Say which limits hold the fastest answer back."""
+    variables, nets = model.variables, limits.ceiling_net
+    held_up, full = limiting(model, solution), used_up(problem, solution)
+    circuit, row = model.circuit, model.transition_row(limits)
+    pins, gates = circuit.pins, held_up[variables.partition.of_gate]
+    on_path = np.zeros(len(circuit.devices.net_names), bool)
+    on_path[pins.net[gates[pins.gate]]] = True
+    inputs = nets[full[: len(nets)] & on_path[nets]]
+    arcs = gates[circuit.arcs.gate] & (row >= 0) & full[row]
+    at_top = held_up & variables.free & (solution.sizes > variables.upper * (1 - 1e-6))
+    stuck = int((held_up & ~variables.free).sum())
+    held = []
+    if len(inputs):
+        name = circuit.devices.net_names[inputs[0]]
+        held.append(f"the input capacitance allowed on '{name}'")
+    if arcs.any():
+        held.append("the transition limit")
+    if at_top.any():
+        held.append(f"the largest widths allowed ({int(at_top.sum())} sizes)")
+    if stuck:
+        held.append(f"{stuck} sizes on the limiting paths that are fixed")
+    if solution.spend_price > 0:
+        held.append("the budget")
+    return "it is held by " + (", ".join(held) or "the topology: no limit is active")
+
+
+def used_up(problem: Problem, solution: Solution) -> BoolArray:
+    """Tell which limits a solution leaves no room, shape (limits,)."""
+    used: BoolArray = problem.limit.sums(np.log(solution.sizes), problem.limits) > 1 - _FULL
+    return used
