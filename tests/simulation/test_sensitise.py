@@ -9,6 +9,7 @@ import pytest
 from evenstage.brief import Brief
 from evenstage.errors import SimulationError
 from evenstage.simulation.excerpt import route_of
+from evenstage.simulation.groups import Groups
 from evenstage.simulation.sensitise import choices, side_inputs
 from evenstage.timing.analyse import analyse
 from support.blocks import circuit_of, plain_process
@@ -47,8 +48,9 @@ def circuit(body: str) -> Circuit:
 
 def held(some: Circuit, start: str) -> dict[str, bool]:
     """Return the side inputs of the slowest path by name."""
-    route = route_of(some, analyse(some, start=start).paths[0])
-    found = side_inputs(some, list(route.gates), list(route.nets[1:]), route.edges)
+    groups = Groups(some)
+    route = route_of(groups, analyse(some, start=start).paths[0])
+    found = side_inputs(groups, list(dict.fromkeys(route.groups)), route.edges)
     return {some.devices.net_names[net]: level for net, level in found.items()}
 
 
@@ -63,7 +65,8 @@ class TestSideInputs:
         a, output = some.net_id("a"), some.net_id("y")
         assert a is not None
         assert output is not None
-        found = choices(some, int(some.driver_of_net[output]), output, {a: (True, False)})
+        groups = Groups(some)
+        found = choices(groups, int(groups.of_net[output]), {a: (True, False)})
         first = {some.devices.net_names[net]: level for net, level in found[0].levels.items()}
         assert first["b"]
         assert first["c"] != first["d"]
@@ -85,3 +88,22 @@ class TestSideInputs:
         some = circuit(".subckt top a y\nx1 a p inv\nx2 p a q nand2\nx3 q y inv\n.ends\n")
         with pytest.raises(SimulationError, match=r"cannot switch at 'x2' \(!\(a & b\)\)"):
             held(some, start="a")
+
+    def test_a_transmission_gate_opens_for_one_of_its_data(self) -> None:
+        # z takes x where s is low; the drivers of x and y belong to the selector's group.
+        text = (
+            ".subckt top x y s z\nx1 x p inv\nx2 y q inv\nx3 s sb inv\n"
+            "m1 p sb z vss nx w=1u l=0.1u\nm2 p s z vdd px w=1u l=0.1u\n"
+            "m3 q s z vss nx w=1u l=0.1u\nm4 q sb z vdd px w=1u l=0.1u\nx4 z out inv\n.ends\n"
+        )
+        some = circuit(text)
+        groups = Groups(some)
+        x, z, p = (some.net_id(name) for name in ("x", "z", "p"))
+        assert x is not None
+        assert z is not None
+        assert p is not None
+        assert groups.of_net[p] == groups.of_net[z]
+        found = choices(groups, int(groups.of_net[z]), {x: (False, True), z: (True, False)})
+        level = {some.devices.net_names[net]: value for net, value in found[0].levels.items()}
+        assert level["sb"]
+        assert not level["s"]

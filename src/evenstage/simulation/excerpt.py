@@ -3,33 +3,40 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
-from evenstage.errors import SimulationError
 from evenstage.simulation.layout import LOW, OUTSIDE, lay_out
 from evenstage.simulation.logic import switches
 from evenstage.simulation.parameters import known_channels
 from evenstage.simulation.ramps import Ramps
-from evenstage.simulation.sensitise import choices, gate_inputs, side_inputs
+from evenstage.simulation.sensitise import choices, side_inputs
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.simulation.groups import Groups
     from evenstage.simulation.layout import Layout
     from evenstage.simulation.parameters import Parameters
     from evenstage.simulation.sensitise import Edge, Levels
     from evenstage.timing.results import Path
 
 
+#: Side branches of more transistors are taken as capacitances.
+_SIDE_MOST: Final = 100
+
+
 @dataclass(frozen=True, kw_only=True)
 class Route:
-    """A path in ids: its nets, start included, what they do, and the gates between them."""
+    """A path in ids: its nets, start included, what they do, and the group that drives each.
+
+    ``groups`` stand beside the nets after the start; see `evenstage.simulation.groups`.
+    """
 
     nets: tuple[int, ...]
     edges: dict[int, Edge]
-    gates: tuple[int, ...]
+    groups: tuple[int, ...]
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -60,20 +67,21 @@ class Excerpt:
     side_gates: int
 
 
-def route_of(circuit: Circuit, path: Path) -> Route:
-    """Return the ids of a path's nets and gates."""
+def route_of(groups: Groups, path: Path) -> Route:
+    """Return the ids of a path's nets and groups."""
+    circuit = groups.circuit
     names = [path.start, *(stage.output for stage in path.stages)]
     rising = [path.start_edge == "rise", *(stage.edge == "rise" for stage in path.stages)]
     nets = [net for name in names if (net := circuit.net_id(name)) is not None]
     return Route(
         nets=tuple(nets),
         edges={net: (not rises, rises) for net, rises in zip(nets, rising, strict=True)},
-        gates=tuple(int(circuit.driver_of_net[net]) for net in nets[1:]),
+        groups=tuple(int(groups.of_net[net]) for net in nets[1:]),
     )
 
 
 def excerpt(
-    circuit: Circuit,
+    groups: Groups,
     parameters: Parameters,
     route: Route,
     *,
@@ -85,7 +93,8 @@ def excerpt(
 
     Parameters
     ----------
-    circuit : Circuit
+    groups : Groups
+        Of the circuit.
     parameters : Parameters
     route : Route
     transition : float
@@ -98,14 +107,14 @@ def excerpt(
     Raises
     ------
     SimulationError
-        ``cannot-switch``, see `side_inputs`, or where pass transistors are on the path.
+        ``cannot-switch``, see `side_inputs`.
     """
-    _refuse_stages(circuit, route)
-    held = side_inputs(circuit, list(route.gates), list(route.nets[1:]), route.edges)
+    circuit, along = groups.circuit, tuple(dict.fromkeys(route.groups))
+    held = side_inputs(groups, along, route.edges)
     side: list[int] = []
     if with_gates:
-        side, held = _side_gates(circuit, route, held, loads_start=drive > 0)
-    devices = np.concatenate([circuit.gate_devices(gate) for gate in (*route.gates, *side)])
+        side, held = _side_groups(groups, route, held, loads_start=drive > 0)
+    devices = np.concatenate([groups.devices(group) for group in (*along, *side)])
     levels = {net: (level, level) for net, level in held.items()} | _bulks(circuit, devices)
     start = route.nets[0]
     constant = np.array(sorted(levels), np.int64)
@@ -116,33 +125,21 @@ def excerpt(
         layout=layout,
         ramps=_ramps(circuit, layout, levels, transition),
         initial=_initial(circuit, layout, levels),
-        watched=_watched(circuit, route, layout),
+        watched=_watched(groups, route, layout),
         held=held,
         side_gates=len(side),
     )
 
 
-def _refuse_stages(circuit: Circuit, route: Route) -> None:
-    """Refuse paths through stages of several gates: what they are tied to is not cut out."""
-    for gate in route.gates:
-        if circuit.is_part[gate]:
-            raise SimulationError(
-                f"'{circuit.gate_name(gate)}' ({circuit.gate_function(gate)}) is part of a stage of"
-                " several gates, as around pass transistors; such paths are not simulated: simulate"
-                " the written netlist with the foundry's models",
-                code="cannot-switch",
-            )
-
-
-def _watched(circuit: Circuit, route: Route, layout: Layout) -> tuple[int, ...]:
+def _watched(groups: Groups, route: Route, layout: Layout) -> tuple[int, ...]:
     """Return the node at which each net of a route is seen; the start where it is driven."""
-    block, places = circuit.devices, layout.places
+    block, places = groups.circuit.devices, layout.places
     is_n = np.array([model.polarity == "n" for model in block.models], bool)[block.model]
     found = [int(places.named[route.nets[0]])]
-    for net, gate in zip(route.nets[1:], (*route.gates[1:], None), strict=True):
+    for net, group in zip(route.nets[1:], (*route.groups[1:], None), strict=True):
         place = int(places.named[net])
-        if gate is not None:
-            own = circuit.gate_devices(gate)
+        if group is not None:
+            own = groups.devices(group)
             own = own[block.gate[own] == net]
             switching = own[is_n[own] == route.edges[net][1]]
             among = switching if len(switching) else own
@@ -151,32 +148,28 @@ def _watched(circuit: Circuit, route: Route, layout: Layout) -> tuple[int, ...]:
     return tuple(layout.node(place) for place in found)
 
 
-def _side_gates(
-    circuit: Circuit, route: Route, held: Levels, *, loads_start: bool
+def _side_groups(
+    groups: Groups, route: Route, held: Levels, *, loads_start: bool
 ) -> tuple[list[int], Levels]:
-    """Return the gates that hang on the path, and all values held, theirs included.
+    """Return the groups that hang on the path, and all values held, theirs included.
 
-    A gate whose output is held, whose other inputs another such gate drives, or that is part of a
-    stage of several, is left to be a capacitance.
+    One that drives a net which is held, or an input of which another of them drives, or that is
+    very large, is left to be a capacitance.
     """
-    on_path = route.nets if loads_start else route.nets[1:]
-    loading = circuit.gate_of_device[np.isin(circuit.devices.gate, on_path)]
+    block, on_path = groups.circuit.devices, route.nets if loads_start else route.nets[1:]
     found: list[int] = []
-    driven: set[int] = set()
-    for gate in np.unique(loading[loading >= 0]).tolist():
-        if gate in route.gates or circuit.is_part[gate]:
+    for group in np.unique(groups.of_device[np.isin(block.gate, on_path)]).tolist():
+        if group < 0 or group in route.groups:
             continue
-        output = int(circuit.gate_output[gate])
-        inputs = gate_inputs(circuit, gate, switches(circuit, circuit.gate_devices(gate)))
-        if output in held or output in route.edges or driven & set(inputs):
+        inputs = groups.inputs(group)
+        driven = {int(groups.of_net[net]) for net in inputs if net not in route.edges}
+        holds = any(int(groups.of_net[net]) == group for net in held)
+        if holds or driven & set(found) or len(groups.devices(group)) > _SIDE_MOST:
             continue
-        offered = choices(circuit, gate, output, route.edges, held)
+        offered = choices(groups, group, route.edges, held)
         rest = dict.fromkeys((n for n in inputs if n not in held and n not in route.edges), False)
-        if output in rest:
-            continue
         held = held | (offered[0].levels if offered else rest)
-        found.append(gate)
-        driven.add(output)
+        found.append(group)
     return found, held
 
 

@@ -17,11 +17,10 @@ from evenstage.progress import tell
 from evenstage.simulation.beside import side_by_side, with_load
 from evenstage.simulation.crossings import last_crossing, transition
 from evenstage.simulation.excerpt import Route, excerpt
+from evenstage.simulation.groups import Groups
 from evenstage.simulation.integrate import integrate
-from evenstage.simulation.logic import switches
 from evenstage.simulation.parameters import parameters
 from evenstage.simulation.ramps import Ramps
-from evenstage.simulation.sensitise import gate_inputs
 from evenstage.simulation.strength import strength
 
 if TYPE_CHECKING:
@@ -118,7 +117,8 @@ def measure_gates(
         ``simulation-stopped``, or ``no-arc`` where nothing can be measured.
     """
     some = parameters(circuit, strength(circuit.process, unit))
-    arcs = [arc for gate in gates for arc in _arcs(circuit, some, gate)]
+    groups = Groups(circuit)
+    arcs = [arc for gate in gates for arc in _arcs(groups, some, int(circuit.gate_output[gate]))]
     if not arcs:
         raise SimulationError("no input of the gates to measure moves an output", code="no-arc")
     mean = (unit.transition_rise + unit.transition_fall) / 2
@@ -147,20 +147,19 @@ def _joined(parts: Sequence[GateDelays]) -> GateDelays:
     return GateDelays(**columns, lost=sum(part.lost for part in parts))
 
 
-def _arcs(circuit: Circuit, some: Parameters, gate: int) -> list[Excerpt]:
-    """Return each edge of each input of a gate that moves its output, as a path of one stage."""
-    part = switches(circuit, circuit.gate_devices(gate))
-    output = int(circuit.gate_output[gate])
+def _arcs(groups: Groups, some: Parameters, output: int) -> list[Excerpt]:
+    """Return each edge of each input that moves an output, as a path of one stage."""
+    group = int(groups.of_net[output])
     found = []
-    for net in gate_inputs(circuit, gate, part):
+    for net in groups.inputs(group):
         for rising in (False, True):
             for inverts in (True, False):
                 edges = {net: (not rising, rising)}
                 edges[output] = (rising, not rising) if inverts else (not rising, rising)
-                route = Route(nets=(net, output), edges=edges, gates=(gate,))
+                route = Route(nets=(net, output), edges=edges, groups=(group,))
                 with suppress(SimulationError):
                     found.append(
-                        excerpt(circuit, some, route, transition=1.0, drive=0.0, with_gates=False)
+                        excerpt(groups, some, route, transition=1.0, drive=0.0, with_gates=False)
                     )
     return found
 
@@ -250,7 +249,7 @@ def _read_off(
         for row, begin, width in zip(rows, first.tolist(), ramp.tolist(), strict=True)
     ])  # fmt: skip
     return GateDelays(
-        gate=np.array([row.route.gates[0] for row in rows])[kept],
+        gate=circuit.driver_of_net[nets[kept, 1]],
         input=nets[kept, 0],
         output=nets[kept, 1],
         rising=rising[kept],

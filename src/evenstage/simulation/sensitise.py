@@ -21,11 +21,12 @@ from evenstage.errors import SimulationError
 from evenstage.simulation.logic import switches
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.simulation.groups import Groups
     from evenstage.simulation.logic import Switches
 
 Levels = dict[int, bool]
@@ -34,8 +35,8 @@ Levels = dict[int, bool]
 Edge = tuple[bool, bool]
 """What a net is worth before and after."""
 
-#: Gates with more side inputs than this have their first so many varied, the others held low.
-_VARIED_MOST: Final = 10
+#: Groups with more side inputs than this have their first so many varied, the others held low.
+_VARIED_MOST: Final = 12
 
 #: A conductance that keeps nodes without any apart from the others, S.
 _LEAK: Final = 1e-12
@@ -49,30 +50,27 @@ class Choice:
     slowness: float
 
 
-def side_inputs(
-    circuit: Circuit, gates: list[int], outputs: list[int], edges: Mapping[int, Edge]
-) -> Levels:
+def side_inputs(groups: Groups, along: Sequence[int], edges: Mapping[int, Edge]) -> Levels:
     """Return values of the side inputs that let a path switch, by net.
 
     Parameters
     ----------
-    circuit : Circuit
-    gates, outputs : list of int
-        Gates along the path, and the net each of them drives.
+    groups : Groups
+    along : sequence of int
+        The groups along the path, each once.
     edges : mapping
-        Of the nets on the path, its start included.
+        Of the nets on the path, its start first.
 
     Raises
     ------
     SimulationError
         ``cannot-switch`` where there are none.
     """
-    offers = [
-        choices(circuit, gate, output, edges) for gate, output in zip(gates, outputs, strict=True)
-    ]
-    for gate, offered in zip(gates, offers, strict=True):
+    start = next(iter(edges))
+    offers = [choices(groups, group, edges, start=start) for group in along]
+    for group, offered in zip(along, offers, strict=True):
         if not offered:
-            raise _cannot(circuit, gate)
+            raise _cannot(groups, group)
     found = _agreed(offers)
     if found is None:
         raise SimulationError(
@@ -84,7 +82,9 @@ def side_inputs(
     return found
 
 
-def _cannot(circuit: Circuit, gate: int) -> SimulationError:
+def _cannot(groups: Groups, group: int) -> SimulationError:
+    circuit = groups.circuit
+    gate = int(circuit.gate_of_device[groups.devices(group)].max())
     return SimulationError(
         f"the path cannot switch at '{circuit.gate_name(gate)}' ({circuit.gate_function(gate)}):"
         " its side inputs on the path itself hold it; it may be a false path, to be left out with"
@@ -120,52 +120,63 @@ def _fits(levels: Levels, known: Levels) -> bool:
 
 
 def choices(
-    circuit: Circuit,
-    gate: int,
-    output: int,
+    groups: Groups,
+    group: int,
     edges: Mapping[int, Edge],
     held: Mapping[int, bool] | None = None,
+    *,
+    start: int | None = None,
 ) -> list[Choice]:
-    """Return the values of a gate's side inputs under which it passes the edge on, slowest first.
+    """Return the values of a group's side inputs under which it passes the edge on, slowest first.
 
     Parameters
     ----------
-    circuit : Circuit
-    gate, output : int
+    groups : Groups
+    group : int
     edges : mapping
-        Of nets that switch; where the output is among them it must do as they say.
+        Of nets that switch. Those of the group must do as they say; where it has none, any of its
+        nets has to switch.
     held : mapping, optional
         Values of nets that are decided already.
+    start : int, optional
+        A net that is driven from outside, whatever else drives it.
     """
-    part = switches(circuit, circuit.gate_devices(gate))
-    inputs = gate_inputs(circuit, gate, part)
+    circuit, devices = groups.circuit, groups.devices(group)
+    part = switches(circuit, devices)
     decided = held or {}
+    # What the path drives in the group is no input of it, whatever else it may be.
+    driven = {net for net in edges if groups.of_net[net] == group} - {start}
+    inputs = [net for net in groups.inputs(group, start) if net not in driven]
     side = [net for net in inputs if net not in edges and net not in decided]
     vectors = _vectors(len(side))
-    before, after = (
-        _given(
-            circuit, part, {net: edge[i] for net, edge in edges.items() if net in inputs}, decided
-        )
-        for i in (0, 1)
-    )
     rows = np.searchsorted(part.net, side)
-    worth = [np.repeat(one[:, None], vectors.shape[1], axis=1) for one in (before, after)]
-    for one in worth:
-        one[rows] = vectors
-    settled = [part.settle(one) for one in worth]
-    at = int(np.searchsorted(part.net, output))
-    was, now = (one[at] for one in settled)
-    passes = (
-        (was == 1 - now)
-        if output not in edges
-        else ((was == edges[output][0]) & (now == edges[output][1]))
-    )
-    found = np.flatnonzero(passes)
+    settled = []
+    for place in (0, 1):
+        known = {net: edges[net][place] for net in inputs if net in edges}
+        one = _given(circuit, part, known, decided)
+        worth = np.repeat(one[:, None], vectors.shape[1], axis=1)
+        worth[rows] = vectors
+        settled.append(part.settle(worth))
+    own = groups.of_net[part.net] == group
+    wanted = [
+        (row, edges[net])
+        for row, net in enumerate(part.net.tolist())
+        if own[row] and net in edges and net != start
+    ]
+    if wanted:
+        passes = np.ones(vectors.shape[1], bool)
+        for row, edge in wanted:
+            passes &= (settled[0][row] == edge[0]) & (settled[1][row] == edge[1])
+        outputs = [row for row, _ in wanted]
+    else:
+        moves = own[:, None] & (settled[0] == 1 - settled[1])
+        passes = moves.any(axis=0)
+        outputs = [int(np.flatnonzero(own)[0])]
+    found = np.flatnonzero(passes & _together(groups, part, inputs, edges, settled[0]))
     if not len(found):
         return []
-    slowness = _slowness(
-        circuit, circuit.gate_devices(gate), part, [o[:, found] for o in settled], at
-    )
+    given = ~own | np.isin(part.net, inputs)
+    slowness = _slowness(circuit, devices, part, [o[:, found] for o in settled], outputs[-1], given)
     order = np.lexsort((found, -slowness))
     return [
         Choice(
@@ -176,17 +187,27 @@ def choices(
     ]
 
 
-def gate_inputs(circuit: Circuit, gate: int, part: Switches) -> list[int]:
-    """Return the nets that decide what a gate does, ascending.
-
-    Those on its transistors' gates, and channel ends that come from elsewhere: from another gate or
-    from a port.
-    """
-    nets, driver = part.net, circuit.driver_of_net[part.net]
-    on_gate = np.isin(np.arange(len(nets)), part.gate)
-    foreign = (driver >= 0) | np.isin(nets, np.array(circuit.devices.ports, int))
-    wanted = (on_gate | foreign) & (driver != gate) & ~circuit.supplies.is_supply[nets]
-    return [int(net) for net in nets[wanted]]
+def _together(
+    groups: Groups,
+    part: Switches,
+    inputs: Sequence[int],
+    edges: Mapping[int, Edge],
+    worth: FloatArray,
+) -> BoolArray:
+    """Tell under which vectors inputs that one gate makes of another go together, as s and !s."""
+    fitting = np.ones(worth.shape[1], bool)
+    still = [net for net in inputs if net not in edges]
+    for net in still:
+        maker = int(groups.of_net[net])
+        causes = groups.inputs(maker) if len(groups.devices(maker)) else []
+        if len(causes) != 1 or causes[0] not in still:
+            continue
+        inner = switches(groups.circuit, groups.devices(maker))
+        known = [_given(groups.circuit, inner, {causes[0]: level}, {}) for level in (False, True)]
+        answer = inner.settle(np.stack(known, axis=1))[np.searchsorted(inner.net, net)]
+        cause, effect = worth[np.searchsorted(part.net, [causes[0], net])]
+        fitting &= effect == np.where(cause == 1, answer[1], answer[0])
+    return fitting
 
 
 def _vectors(count: int) -> BoolArray:
@@ -212,15 +233,17 @@ def _given(
 
 
 def _slowness(
-    circuit: Circuit, devices: IntArray, part: Switches, worth: list[FloatArray], output: int
+    circuit: Circuit,
+    devices: IntArray,
+    part: Switches,
+    worth: list[FloatArray],
+    output: int,
+    given: BoolArray,
 ) -> FloatArray:
     """Return the Elmore delay to the output after the edge, s, shape (vectors,)."""
     before, after = worth
     nodes, vectors = after.shape
     values = circuit.electrical
-    given = circuit.supplies.is_supply[part.net] | (part.net != part.net[output]) & np.isin(
-        np.arange(nodes), part.gate
-    )
     conductance = part.closed(after) / values.resistance.today[devices][:, None]
     # The part of each device in the matrix, as one long row, so that a product adds them up.
     element = np.zeros((len(devices), nodes, nodes))

@@ -12,6 +12,7 @@ from evenstage.errors import Notice, SimulationError
 from evenstage.progress import tell
 from evenstage.simulation.crossings import last_crossing, transition
 from evenstage.simulation.excerpt import excerpt, route_of
+from evenstage.simulation.groups import Groups
 from evenstage.simulation.integrate import integrate
 from evenstage.simulation.other_edge import turned_round
 from evenstage.simulation.parameters import SCALED, assumption_notices, parameters
@@ -29,6 +30,7 @@ from evenstage.units import engineering
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import FloatArray
     from evenstage.simulation.excerpt import Excerpt
     from evenstage.simulation.integrate import Accuracy, Waveforms
@@ -123,7 +125,7 @@ def _block(analysis: Analysis, bench: _Bench) -> tuple[SimulatedBlock, list[Noti
             if error.code != "cannot-switch" or (not paths and path is analysis.paths[-1]):
                 raise
             notices.append(_left_out(path, error))
-    other = turned_round(timing, route_of(timing.circuit, paths[0].estimate))
+    other = turned_round(timing, route_of(bench.groups(timing.circuit), paths[0].estimate))
     turned = None
     if other is not None:
         try:
@@ -153,20 +155,26 @@ class _Bench:
         self._with_gates = side_branches == "gates"
         self._accuracy = accuracy
         self._parameters: dict[int, Parameters] = {}
+        self._groups: dict[int, Groups] = {}
+
+    def groups(self, circuit: Circuit) -> Groups:
+        """Return the groups of a circuit, found once."""
+        return self._groups.setdefault(id(circuit), Groups(circuit))
 
     def run(self, timing: Timing, path: Path) -> SimulatedPath:
         """Simulate one path."""
         circuit, unit = timing.circuit, timing.unit
         if id(circuit) not in self._parameters:
             self._parameters[id(circuit)] = parameters(circuit, self._strength)
-        route = route_of(circuit, path)
+        groups = self.groups(circuit)
+        route = route_of(groups, path)
         graph = timing.graph
         start = np.flatnonzero(
             (graph.net[graph.start] == route.nets[0])
             & (graph.rising[graph.start] == (path.start_edge == "rise"))
         )[0]
         part = excerpt(
-            circuit,
+            groups,
             self._parameters[id(circuit)],
             route,
             transition=float(graph.start_transition[start]),
