@@ -102,6 +102,11 @@ class TestChain:
         ratio = caps.before.paths[0].delay / gates.before.paths[0].delay
         assert 0.95 < ratio < 0.99
 
+    def test_a_process_without_transitions_gets_a_step(self) -> None:
+        path = simulated(CHAIN, plain_process()).before.paths[0]
+        assert path.delay > 0
+        assert len(path.stages) == 6
+
     def test_both_edges_are_simulated(self) -> None:
         found = simulated(CHAIN, process()).before
         assert found.other_edge is not None

@@ -110,7 +110,10 @@ class _Run:
             jac=lambda t, v: unit * self.equations.jacobian(v, first + rate * (t - begin)),
         )
         while solver.status == "running":
-            problem = solver.step()
+            try:
+                problem = solver.step()
+            except FloatingPointError as error:
+                raise self._stopped(f"numbers left their range ({error})") from None
             if problem is not None or not np.isfinite(solver.y).all():
                 raise self._stopped(problem or "a voltage is no finite number")
             self.times.append(solver.t)

@@ -121,7 +121,8 @@ def measure_gates(
     arcs = [arc for gate in gates for arc in _arcs(groups, some, int(circuit.gate_output[gate]))]
     if not arcs:
         raise SimulationError("no input of the gates to measure moves an output", code="no-arc")
-    mean = (unit.transition_rise + unit.transition_fall) / 2
+    # A process without shapes knows no transitions.
+    mean = (unit.transition_rise + unit.transition_fall) / 2 or unit.fo4
     points = len(transitions) * len(loads)
     rows = [arc for arc in arcs for _ in range(points)]
     ramp = np.tile(np.repeat(np.array(transitions) * mean, len(loads)), len(arcs))

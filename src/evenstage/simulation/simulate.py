@@ -23,7 +23,7 @@ from evenstage.simulation.results import (
     Simulation,
     Traces,
 )
-from evenstage.simulation.strength import strength
+from evenstage.simulation.strength import STEEPEST, strength
 from evenstage.timing.compare import compare
 from evenstage.units import engineering
 
@@ -177,7 +177,7 @@ class _Bench:
             groups,
             self._parameters[id(circuit)],
             route,
-            transition=float(graph.start_transition[start]),
+            transition=max(float(graph.start_transition[start]), STEEPEST * unit.fo4),
             # The estimate's resistances hold the ln 2 of an RC response.
             drive=float(graph.start_drive[start]) / math.log(2),
             with_gates=self._with_gates,

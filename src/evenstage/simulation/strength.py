@@ -24,6 +24,9 @@ if TYPE_CHECKING:
     from evenstage.process.process import Polarity, Process
     from evenstage.timing.results import Yardstick
 
+#: A step is a ramp of this many FO4: shorter ones change nothing.
+STEEPEST: Final = 0.01
+
 _STAGES: Final = 7
 _FANOUT: Final = 4.0
 _PAIR: Final[tuple[Polarity, ...]] = ("n", "p")
@@ -102,7 +105,7 @@ def fo4(process: Process, unit: Yardstick, strength: float) -> float:
         np.array([0.0, supply, 0.0]),
         np.array([0.0, supply, supply]),
         0.0,
-        unit.transition_rise,
+        max(unit.transition_rise, STEEPEST * unit.fo4),
     )
     waves = integrate(
         _chain(process, strength),
