@@ -23,6 +23,7 @@ ORDER: Final = (
     ),
     ("process",),
     ("netlist",),
+    ("logic",),
     ("circuit",),
     ("timing",),
     ("sizing", "simulation", "fitting"),

@@ -11,6 +11,7 @@ import numpy as np
 
 from evenstage.circuit.capacitance import at_nets, capacitor_values, on_nets, on_nodes
 from evenstage.circuit.electrical import Electrical, electrical
+from evenstage.circuit.evaluation import evaluate_circuit, net_function
 from evenstage.circuit.function import inverted_text, text
 from evenstage.circuit.names import Names
 from evenstage.circuit.stage_tables import AlikeStages, stage_arcs, stage_pins
@@ -18,8 +19,13 @@ from evenstage.circuit.tables import AlikeGates, Pins, arcs_of, pins_of
 from evenstage.circuit.wiring import WireLoads, wire_loads
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+    from numpy.typing import ArrayLike
+
     from evenstage.circuit.apart import Apart
     from evenstage.circuit.arcs import Arcs
+    from evenstage.circuit.evaluation import NetFunction, NetValues
     from evenstage.circuit.network import BoolArray
     from evenstage.circuit.storage.elements import Storage
     from evenstage.circuit.supplies import Supplies
@@ -324,6 +330,14 @@ class Circuit:
             source_edge=edges[1],
         )
         return replace(self, devices=devices)
+
+    def evaluate(self, inputs: Mapping[str, ArrayLike]) -> NetValues:
+        """Return what every net is worth under input vectors; see `evaluate_circuit`."""
+        return evaluate_circuit(self, inputs)
+
+    def function(self, net: str) -> NetFunction:
+        """Return a net in terms of the block's inputs; see `net_function`."""
+        return net_function(self, net)
 
     def graph(self) -> nx.DiGraph[int]:
         """Return the graph of gates: an edge where one gate's output is another's input.

@@ -1,0 +1,1 @@
+"""Transistors as switches: what every net is worth, and what that proves."""
