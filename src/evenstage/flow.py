@@ -11,7 +11,7 @@ from evenstage.brief import Brief, read_brief
 from evenstage.circuit.inventory import Inventory, take_inventory
 from evenstage.circuit.recognise import in_process
 from evenstage.circuit.recognise import recognise as find_gates
-from evenstage.errors import OutputError, SettingsError
+from evenstage.errors import EvenstageError, OutputError, SettingsError
 from evenstage.fitting.cells import leaf_cells, measured_cells, standing_alone
 from evenstage.fitting.deck import Deck, measuring_deck
 from evenstage.fitting.fit import fit as fit_process
@@ -19,6 +19,7 @@ from evenstage.fitting.reading import read_measurements, read_results
 from evenstage.fitting.results import Fit
 from evenstage.fitting.sized import sized_bench
 from evenstage.fitting.tabulate import tabulate
+from evenstage.logic.same import StructureCheck, compare_structure
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading.read import read
 from evenstage.netlist.rewriting.edits import rewrite
@@ -56,6 +57,7 @@ if TYPE_CHECKING:
     from pathlib import Path
 
     from evenstage.circuit.circuit import Circuit
+    from evenstage.errors import Notice
     from evenstage.netlist.devices import Devices
     from evenstage.netlist.netlist import Netlist
     from evenstage.process.process import Process
@@ -314,7 +316,34 @@ def resize(
         return sizing
     texts = _texts(block, sizing, record, asked)
     write_files(output_files(block.netlist, texts, output), force=force)
-    return replace(sizing, notices=(*sizing.notices, *lost_includes(block.netlist, output)))
+    lost = lost_includes(block.netlist, output)
+    structure = _read_back(block, output, lost) if texts else None
+    return replace(sizing, notices=(*sizing.notices, *lost), structure=structure)
+
+
+def _read_back(block: Block, output: Path, lost: Sequence[Notice]) -> StructureCheck:
+    """Read a written netlist and compare it with the one it was made of.
+
+    Raises
+    ------
+    RuntimeError
+        Where it cannot be read, or differs in more than widths: a fault of ours.
+    """
+    assert block.analysis.timing is not None
+    before = block.analysis.timing.circuit.devices
+    if lost:
+        reason = "it includes files that are not found from its place"
+        return StructureCheck(same=None, reason=reason, transistors=0)
+    try:
+        written = read(output, block.brief.case)
+        after = elaborate(written, before.top or None, block.process, block.brief)
+        check = compare_structure(before, after)
+        reason = check.reason
+    except EvenstageError as error:
+        reason = str(error)
+    if reason:
+        raise RuntimeError(f"do not use '{output}': it is not the netlist it was made of: {reason}")
+    return check
 
 
 def fit(

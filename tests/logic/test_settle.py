@@ -35,8 +35,11 @@ class Drawn:
         a, g, b, is_n, ohm = (list(column) for column in zip(*self.switches, strict=True))
         supply = np.full(len(NETS), X, np.int8)
         supply[:2] = 0, 1
+        drain, gate, source = (np.array([NETS.index(net) for net in some]) for some in (a, g, b))
         return Switches(
-            *(np.array([NETS.index(net) for net in some]) for some in (a, g, b)),
+            drain,
+            gate,
+            source,
             np.array(is_n),
             np.array(ohm),
             np.array([self.cap.get(net, 0.0) for net in NETS]),
@@ -94,8 +97,9 @@ def _resistance(
             if end not in known or known[end] == level
         ]
         if len(ends) == 2:
-            old = graph.get_edge_data(*ends, default={"weight": np.inf})["weight"]
-            graph.add_edge(*ends, weight=min(cost, old))
+            one, other = ends
+            old = graph[one][other]["weight"] if graph.has_edge(one, other) else np.inf
+            graph.add_edge(one, other, weight=min(cost, old))
     try:
         return float(nx.dijkstra_path_length(graph, net, "root"))
     except nx.NetworkXNoPath:

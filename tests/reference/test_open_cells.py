@@ -179,6 +179,26 @@ def drives(circuit: Circuit, net: int, truth: dict[int, bool | str]) -> tuple[bo
     return high or low, high
 
 
+@pytest.mark.parametrize(("library", "outputs"), [("ihp_sg13g2", 52), ("gf180_7t", 149)])
+def test_outputs_as_switches_have_their_published_functions(library: str, outputs: int) -> None:
+    """Of every combinational cell, tri-state ones included, whatever its gates were taken for."""
+    facts, right = cells_of(library), 0
+    for name, circuit in circuits(library).items():
+        cell = facts[name]
+        if isinstance(circuit, str) or not cell["combinational"] or not cell["inputs"]:
+            continue
+        vectors = all_vectors(cell["inputs"])
+        found = circuit.evaluate(vectors)
+        for output, function in cell["functions"].items():
+            expected = function_values(function, vectors)
+            assert found[output].tolist() == expected.astype(int).tolist(), f"{name}.{output}"
+            written = circuit.function(output)
+            assert written.undecided == "0"
+            assert (function_values(str(written), vectors) == expected).all(), str(written)
+            right += 1
+    assert right == outputs
+
+
 #: What the special cells of both libraries are, by the stem of their names; common names of the
 #: field, the libraries' own documents where the name says less.
 KINDS = {

@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 import pytest
 
 from evenstage.errors import Notice
+from evenstage.logic.same import StructureCheck
 from evenstage.sizing.results import Change, Sizing, StageHold
 from evenstage.timing.results import (
     Analysis,
@@ -268,6 +269,7 @@ def sizing(analysis: Analysis) -> Sizing:
         ),
         already_done=False,
         notices=(Notice("fixed-outside", "3 cards lie outside the main file's folder"),),
+        structure=StructureCheck(same=True, reason="", transistors=analysis.counts.devices),
     )
 
 

@@ -12,6 +12,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from evenstage.errors import Notice
+from evenstage.logic.same import StructureCheck
 from evenstage.report.machine import (
     analysis_document,
     difference_document,
@@ -225,7 +226,13 @@ class Anything:
             holds=self.some(self.hold, 4),
             already_done=self.random.random() < 0.5,
             notices=self.some(self.notice, 2),
+            structure=self.maybe(self.structure),
         )
+
+    def structure(self) -> StructureCheck:
+        same = self.random.choice([True, None])
+        reason = "" if same else self.name()
+        return StructureCheck(same=same, reason=reason, transistors=self.number())
 
     def width_difference(self) -> WidthDifference:
         return WidthDifference(

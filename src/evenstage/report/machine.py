@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.fitting.deck import Deck
     from evenstage.fitting.results import Fit
+    from evenstage.logic.same import StructureCheck
     from evenstage.report.circuit_document import Document, JsonValue
     from evenstage.simulation.results import Simulation
     from evenstage.sizing.results import Change, Sizing, StageHold
@@ -74,12 +75,19 @@ def sizing_document(sizing: Sizing) -> Document:
         "free_cards": sizing.free_cards,
         "fixed_cards": sizing.fixed_cards,
         "already_done": sizing.already_done,
+        "structure": _structure(sizing.structure),
         "changes": [_change(change) for change in sizing.changes],
         "holds": [_hold(hold) for hold in sizing.holds],
         "notices": [notice_document(notice) for notice in sizing.notices],
         "before": _analysis(sizing.before),
         "after": _analysis(sizing.after),
     }
+
+
+def _structure(check: StructureCheck | None) -> Document | None:
+    if check is None:
+        return None
+    return {"same": check.same, "reason": check.reason, "transistors": check.transistors}
 
 
 def difference_document(difference: Difference) -> Document:

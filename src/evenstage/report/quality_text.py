@@ -12,6 +12,7 @@ from evenstage.units import engineering
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from evenstage.logic.same import StructureCheck
     from evenstage.report.paper import Paper
     from evenstage.sizing.results import Sizing
     from evenstage.timing.results import Analysis, PathEnd
@@ -38,7 +39,18 @@ def quality_lines(paper: Paper, sizing: Sizing) -> list[str]:
         *labelled(paper, "goal", sizing.goal + ("" if sizing.already_done else cards)),
         *labelled(paper, "bound", _bound(sizing)),
         *labelled(paper, "proof", proof),
+        *(labelled(paper, "function", _function(sizing.structure)) if sizing.structure else ()),
     ]
+
+
+def _function(check: StructureCheck) -> str:
+    """Return what came of reading the written netlist back."""
+    if check.same is None:
+        return f"the written netlist was not read back: {check.reason}"
+    return (
+        "unchanged: the written netlist was read back, and its "
+        f"{counted(check.transistors, 'transistor')} differ from those before in widths alone"
+    )
 
 
 def _bound(sizing: Sizing) -> str:

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Literal
 
 if TYPE_CHECKING:
     from evenstage.errors import Notice
+    from evenstage.logic.same import StructureCheck
     from evenstage.netlist.rewriting.edits import Edit
     from evenstage.sizing.wishes import Original
     from evenstage.timing.results import Analysis
@@ -103,6 +104,8 @@ class Sizing:
         The limits the sizes were found within, for later runs to keep.
     edits : tuple of Edit
         What writes the new widths into the text.
+    structure : StructureCheck, optional
+        How the written netlist, read back, compares with the old one; None where none was written.
     """
 
     before: Analysis
@@ -123,3 +126,4 @@ class Sizing:
     notices: tuple[Notice, ...]
     kept: Original | None = None
     edits: tuple[Edit, ...] = field(default=(), repr=False)
+    structure: StructureCheck | None = None
