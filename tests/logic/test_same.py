@@ -73,7 +73,7 @@ class TestCompareStructure:
             ("5f", "6f", "capacitors have other values"),
             ("cw k", "cw y", "capacitors lie between other nets"),
             ("rw b b2 10", "rw b b2 20", "wires differ"),
-            ("top a b y", "top b a y", "ports are other nets"),
+            ("top a b y", "top b a y", "the ports are others, or in another order"),
         ],
     )
     def test_everything_else_is_a_difference(self, old: str, new: str, reason: str) -> None:
@@ -116,8 +116,13 @@ class TestReadBack:
         main = path.read_text().split(".subckt top")
         (tmp_path / "lib" / "leaf.sp").write_text(main[0])
         design = tmp_path / "design" / "main.sp"
-        top = main[1].replace("x2 n2 n3 inv", "mn n3 n2 vss vss nmos w=1u l=0.1u")
-        top = top.replace("x3", "mp n3 n2 vdd vdd pmos w=2u l=0.1u\nx3")
+        top = main[1]
+        for k in (2, 3, 4):
+            n, p = (
+                f"m{kind}{k} n{k + 1} n{k} {rail} {rail} {kind}mos w={width}u l=0.1u"
+                for kind, rail, width in (("n", "vss", 1), ("p", "vdd", 2))
+            )
+            top = top.replace(f"x{k} n{k} n{k + 1} inv", f"{n}\n{p}")
         design.write_text(f"* a design\n.include ../lib/leaf.sp\n.subckt top{top}")
         (tmp_path / "a" / "b").mkdir(parents=True)
         sizing = flow.resize(design, flow.Question(), output=tmp_path / "a" / "b" / "new.sp")
@@ -127,7 +132,7 @@ class TestReadBack:
 
     @pytest.mark.parametrize(
         ("old", "new", "reason"),
-        [(b"mn y a", b"mn a y", "drain on another net"), (b".ends", b".end", "unclosed")],
+        [(b"mn y a", b"mn a y", "drain on another net"), (b".ends", b".end", "closes")],
     )
     def test_another_function_is_a_fault(
         self,

@@ -58,6 +58,9 @@ def _differences(before: Devices, after: Devices) -> Iterator[str]:
         if old != new:
             yield f"{old} {what} before, {new} after"
             return
+    names = ([block.net_names[net] for net in block.ports] for block in (before, after))
+    if before.ports != after.ports or next(names) != next(names):
+        yield "the ports are others, or in another order"
     if not np.array_equal(before.instance_parent, after.instance_parent):
         yield "instances stand in others"
     if name := _renamed(before, after, before.instance_card, after.instance_card):
@@ -92,7 +95,6 @@ def _rest(before: Devices, after: Devices) -> Iterator[str]:
     pairs: list[tuple[str, IntArray | FloatArray, IntArray | FloatArray]] = [
         ("capacitors lie between other nets", before.capacitor_nets, after.capacitor_nets),
         ("capacitors have other values", before.capacitance, after.capacitance),
-        ("ports are other nets", np.array(before.ports), np.array(after.ports)),
         ("sources differ", np.array(before.source_nets), np.array(after.source_nets)),
     ]
     if (before.wires is None) != (after.wires is None):
@@ -104,10 +106,6 @@ def _rest(before: Devices, after: Devices) -> Iterator[str]:
             for column in columns
         ]
     yield from (what for what, old, new in pairs if not np.array_equal(old, new))
-    if [before.net_names[net] for net in before.ports] != [
-        after.net_names[net] for net in after.ports
-    ]:
-        yield "ports have other names"
 
 
 def _renamed(before: Devices, after: Devices, old: IntArray, new: IntArray) -> str:
