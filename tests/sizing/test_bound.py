@@ -15,7 +15,7 @@ from evenstage.sizing.goals import Budget, Cheapest, Fastest
 from evenstage.sizing.interior_point import solve
 from evenstage.sizing.problem import worst_delay
 from evenstage.sizing.translation import Translation
-from support.problems import chain_problem, random_problem
+from support.problems import chain_problem, random_problem, tied
 
 GATES = 12
 
@@ -36,6 +36,25 @@ def test_no_sizes_beat_it_whatever_the_multipliers(seed: int, nu: float) -> None
     priced = replace(prices, spend_price=nu)
     assert lower_bound(question, Budget(spend), sizes, priced) <= delay * (1 + 1e-12)
     assert lower_bound(question, Cheapest(delay), sizes, priced) <= spend * (1 + 1e-12)
+
+
+@given(seed=st.integers(0, 10**6), part=st.floats(0.0, 1.0), nu=st.floats(1e-3, 1.0))
+def test_holds_with_ties_fixed_sizes_and_tight_limits(seed: int, part: float, nu: float) -> None:
+    question = tied(random_problem(seed, GATES, depth=3), seed)
+    rng = np.random.default_rng(seed)
+    low, high = np.log(question.lower), np.log(question.upper)
+    sizes, other = np.exp(low + rng.uniform(0.0, 1.0, (2, GATES)) * (high - low))
+    middle = np.sqrt(question.lower * question.upper)
+    # Limits are convex in the log sizes, and the middle keeps them with room.
+    other = middle * (other / middle) ** part
+    if question.limit_sums(other).max(initial=0.0) > 1.0:
+        other = middle
+    shape = Translation(question, Fastest(), sizes)
+    rows = shape.programme.rows + 2 * shape.programme.sizes
+    prices = replace(shape.prices(rng.exponential(size=rows)), spend_price=nu)
+    delay, spend = worst_delay(question, other), question.cost(other)
+    assert lower_bound(question, Budget(spend), sizes, prices) <= delay * (1 + 1e-12)
+    assert lower_bound(question, Cheapest(delay), sizes, prices) <= spend * (1 + 1e-12)
 
 
 def test_is_tight_at_the_optimum_by_hand() -> None:
