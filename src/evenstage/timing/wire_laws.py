@@ -62,7 +62,10 @@ _CLOSE: Final = 1e-12
 #: Keeps the fast pole finite.
 _LEAST: Final = 1e-30
 
-#: Steps that bring the 50 % point to rounding: Newton's, halving where they would leave the bounds.
+#: Relative step from which on the 50 % point stays as it is.
+_SETTLED: Final = 1e-14
+
+#: Most steps to the 50 % point: Newton's, or halving where those would leave the bounds.
 _STEPS: Final = 40
 
 
@@ -96,7 +99,11 @@ def crossing(
         step = time + np.divide(
             missing, steepness, out=np.full_like(time, np.inf), where=steepness > 0
         )
-        time = np.where((step > low) & (step < high), step, (low + high) / 2)
+        following = np.where((step > low) & (step < high), step, (low + high) / 2)
+        settled = np.abs(following - time) <= _SETTLED * following
+        time = following
+        if settled.all():
+            break
     result: FloatArray = whole * time / _LN2
     return result
 

@@ -67,11 +67,16 @@ class TestNodes:
         wires = wires_of("r1 a a:1 0\nr2 a a:1 9\nr3 a a:2 5\nm1 y a:2 0 0 nch w=1u l=1u")
         assert wires.resistance.tolist() == [5]
 
-    def test_what_has_no_value_is_told(self) -> None:
-        devices = block("r1 a a:1 rpoly w=1u\nr2 a a:2 5\nm1 y a:1 a:2 0 nch w=1u l=1u")
+    @pytest.mark.parametrize("value", ["rpoly w=1u", "-5", "3 m=0", "nan"])
+    def test_what_has_no_value_is_told(self, value: str) -> None:
+        devices = block(f"r1 a a:1 {value}\nr2 a a:2 5\nm1 y a:1 a:2 0 nch w=1u l=1u")
         assert [n.names for n in devices.notices if n.code == "resistor-unknown"] == [("r1",)]
         assert devices.wires is not None
         assert devices.wires.resistance.tolist() == [5]
+
+    def test_beyond_all_wires_it_is_as_good_as_open(self) -> None:
+        wires = wires_of("r1 a a:2 1e300\nm1 y a:2 0 0 nch w=1u l=1u")
+        assert wires.resistance.tolist() == [1e15]
 
     @pytest.mark.parametrize("text", ["r1 a b 10\n", ""])
     def test_a_block_without_wires_has_none(self, text: str) -> None:

@@ -126,7 +126,7 @@ class Binder:
             columns=devices.columns,
             multiplier=devices.multiplier,
             capacitance=np.multiply(*self._values(outline.capacitors, "c", scope)),
-            resistance=np.divide(*self._values(outline.resistors, "r", scope)),
+            resistance=self._resistance(outline.resistors, scope),
             callees=tuple(callee for _, callee, _ in instances),
             calls=tuple(call for call, _, _ in instances),
             call_multiplier=np.array([m for *_, m in instances], np.float64),
@@ -158,6 +158,11 @@ class Binder:
 
     def _span(self, rows: Rows, name: str, row: int) -> Span:
         return value_span(self._netlist, int(rows.card[row]), name)
+
+    def _resistance(self, rows: Rows, scope: Scope) -> FloatArray:
+        """Return the resistance of each R card; NaN where it has none."""
+        value, copies = self._values(rows, "r", scope)
+        return np.divide(value, copies, out=np.full_like(value, np.nan), where=copies > 0)
 
     def _values(self, rows: Rows, name: str, scope: Scope) -> tuple[FloatArray, FloatArray]:
         """Return value and copies of each C or R card; the value NaN where it has none."""

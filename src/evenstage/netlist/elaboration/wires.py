@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 import numpy as np
 from scipy.sparse import coo_array
@@ -12,6 +12,10 @@ from scipy.sparse.csgraph import connected_components
 if TYPE_CHECKING:
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.netlist.elaboration.flatten import Indices
+
+
+#: Ohm; more is as good as open, and its squares would leave the range of floats.
+_MOST: Final = 1e15
 
 
 @dataclass(frozen=True)
@@ -68,6 +72,6 @@ def find_nodes(pairs: Indices, resistance: FloatArray, net: Indices) -> Nodes:
     return Nodes(
         of_layout=of_layout,
         ends=numbered.reshape(2, -1).astype(np.int32),
-        resistance=resistance[kept],
+        resistance=np.minimum(resistance[kept], _MOST),
         net=net_of_node,
     )
