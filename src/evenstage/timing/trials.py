@@ -2,7 +2,8 @@
 
 A gate's resistance and its capacitances depend on its own widths alone. So one block in which all
 changes are made at once holds everything that any of them needs: a trial takes its own gates from
-there and all others from the block as it is. Trials are swept side by side.
+there and all others from the block as it is. Trials are swept side by side. Wires keep the delay
+they have in the block as it is: what a changed pin weighs tells in its driver's delay alone.
 """
 
 from __future__ import annotations

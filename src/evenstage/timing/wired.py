@@ -189,7 +189,7 @@ class Ride:
         return late, arriving
 
     def at_ends(self, shape: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Return the delay to where the load of each end hangs, s, and what its variance adds, s^2.
+        """Return the delay to each end's load, s, and the added square of the transition, s^2.
 
         Parameters
         ----------
@@ -254,14 +254,14 @@ class Ride:
 
 
 @dataclass(frozen=True)
-class WireCharges:
-    """Charged Elmore delay of wires at today's sizes, s: before arcs ``(arcs,)`` and ends."""
+class WireElmore:
+    """Elmore delay of wires, s: before arcs, shape ``(arcs,)``, and ends, shape ``(ends,)``."""
 
     arcs: FloatArray
     ends: FloatArray
 
 
-def wire_elmore(wired: WiredGraph, graph: TimingGraph) -> WireCharges:
+def wire_elmore(wired: WiredGraph, graph: TimingGraph) -> WireElmore:
     """Return the Elmore delay of the wire before each arc and each end, s."""
     loads, wiring = wired.loads, wired.loads.wiring
     before, end = wired.node_drive[graph.source], wired.node_drive[graph.end]
@@ -269,4 +269,4 @@ def wire_elmore(wired: WiredGraph, graph: TimingGraph) -> WireCharges:
     known: BoolArray = (before >= 0) & (wired.sink >= 0)
     arcs[known] = loads.first[wired.copies(before[known], wired.sink[known])]
     ends[end >= 0] = loads.first[wiring.named[end[end >= 0]]]
-    return WireCharges(arcs, ends)
+    return WireElmore(arcs, ends)
