@@ -270,9 +270,9 @@ def propagate(
         ride = Ride(wired, graph, elmore, shape, outside)
     for (some, first, node), owner in zip(graph.levels, graph.owners, strict=True):
         source = graph.source[some]
-        arriving = transition[source]
+        arriving = shown = transition[source]
         if ride is not None:
-            wire[some], arriving = ride.at_inputs(some, arriving)
+            wire[some], arriving, shown = ride.at_inputs(some, arriving)
             seen[some] = ride.effective(some, arriving)
         late = arc_delay(seen[some], arriving, slope[some], power[some])
         if ride is not None:
@@ -283,7 +283,7 @@ def propagate(
         brought = _chosen(arriving, by)
         made, shaped, carried = (_chosen(column[some], by) for column in (elmore, shape, carry))
         transition[node] = arc_transition(made, brought, shaped, carried)
-        delay[some], at_input[some] = late, arriving
+        delay[some], at_input[some] = late, shown
         arrival[node] = latest
         winner[node] = by + some.start
         if ride is not None:

@@ -12,7 +12,15 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from evenstage.timing.wire_laws import added_square, added_variance, crossing, effective, wire_delay
+from evenstage.timing.wire_laws import (
+    RAMP,
+    TRANSITION,
+    added_square,
+    added_variance,
+    crossing,
+    effective,
+    wire_delay,
+)
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
@@ -167,8 +175,10 @@ class Ride:
             kept[start] = of_start
         self._node_input[start] = graph.start_transition.reshape(column)
 
-    def at_inputs(self, some: slice, transition: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Return the delay of the wire before each arc, s, and the transition behind it, s.
+    def at_inputs(
+        self, some: slice, transition: FloatArray
+    ) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """Return delay of the wire before each arc, and ramp and transition behind it, s.
 
         Parameters
         ----------
@@ -177,16 +187,17 @@ class Ride:
         transition : FloatArray, s, shape (k, ...)
             At the driver's end.
         """
-        late, arriving = np.zeros_like(transition), transition
+        late, ramp, whole = np.zeros_like(transition), transition, transition
         begin, end = np.searchsorted(self._behind, [some.start, some.stop])
         which = self._behind[begin:end]
         if len(which):
-            here, arriving = which - some.start, transition.copy()
-            late[here], added = self._wire(
+            here, ramp, whole = which - some.start, transition.copy(), transition.copy()
+            late[here], steep, slow = self._wire(
                 self._graph.source[which], self._wired.sink[which], self._shape[which]
             )
-            arriving[here] = np.sqrt(arriving[here] ** 2 + added)
-        return late, arriving
+            ramp[here] = np.sqrt(transition[here] ** 2 + steep)
+            whole[here] = np.sqrt(transition[here] ** 2 + slow)
+        return late, ramp, whole
 
     def at_ends(self, shape: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Return the delay to each end's load, s, and the added square of the transition, s^2.
@@ -196,12 +207,13 @@ class Ride:
         shape : FloatArray, shape (ends, ...)
             Transition over Elmore delay.
         """
-        return self._wire(self._graph.end, None, shape)
+        late, _, added = self._wire(self._graph.end, None, shape)
+        return late, added
 
     def _wire(
         self, node: IntArray, sink: IntArray | None, shape: FloatArray
-    ) -> tuple[FloatArray, FloatArray]:
-        """Return delay and added square of the transition from nodes to sinks or named nodes."""
+    ) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """Return delay and added squares of ramp and transition from nodes to sinks or ends."""
         drive, loads = self._drive[node], self._wired.loads
         known = drive >= 0
         if sink is None:
@@ -219,8 +231,11 @@ class Ride:
         late = wire_delay(
             elmore, far.shield, step, self._node_input[node], first, elmore**2 + added
         )
-        made = np.where(known, added_square(shape, far.spread, first, second), 0.0)
-        return late, made
+        ramp, whole = (
+            np.where(known, added_square(shape, far.spread, first, second, resistive=factor), 0.0)
+            for factor in (RAMP, TRANSITION)
+        )
+        return late, ramp, whole
 
     def effective(self, some: slice, transition: FloatArray) -> FloatArray:
         """Return the Elmore delay of arcs with effective capacitances, s."""
