@@ -19,8 +19,8 @@ if TYPE_CHECKING:
 
     from evenstage.circuit.dividing import Division, Driver, Way
 
-_STEPS_MAX = 200_000
-"""Steps one group may take: far beyond a 64-way multiplexer tree."""
+_STEPS_MAX = 50_000
+"""Steps one group may take; a rotator of 32 lanes in five ranks takes 4,000."""
 
 
 _TOLD_APART = 8

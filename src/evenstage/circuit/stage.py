@@ -24,7 +24,7 @@ from evenstage.circuit.routes import Route, Router, TooManyRoutesError
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
 
-SWITCHES_MAX = 2000
+SWITCHES_MAX = 4000
 """Larger groups are arrays of cells, not stages."""
 _PARALLEL_MAX = 4
 """Transistors at one node that are taken for one pull network."""
