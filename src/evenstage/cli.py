@@ -52,6 +52,7 @@ def main(arguments: Sequence[str]) -> int:
     """
     try:
         asked = _parsed(arguments)
+        asked.arguments = tuple(arguments)
     except SystemExit as stop:
         return int(stop.code or 0)
     try:
@@ -97,10 +98,19 @@ def _run(asked: argparse.Namespace) -> None:
     written = getattr(asked, "graph", None) or getattr(asked, "waveforms", None)
     if asked.json and not on_screen:
         flow.check_place(asked.json, _inputs(asked))
+    others = [path for path in (asked.json, written) if path and path != Path("-")]
+    page = getattr(asked, "html", None)
     if written:
         flow.check_place(written, [*_inputs(asked), *([asked.json] if asked.json else [])])
+    if page:
+        flow.check_place(page, [*_inputs(asked), *others])
     with shown_on(None if asked.quiet else sys.stderr):
         result = asked.command(asked)
+    if page:
+        origin = flow.origin(
+            __version__, asked.arguments, _inputs(asked), getattr(asked, "delay", None)
+        )
+        flow.write_text(page, flow.html(result, origin), force=True)
     if on_screen:
         _print(flow.json(result))
         for notice in () if asked.quiet else flow.notices(result):
@@ -308,7 +318,7 @@ def _parser() -> argparse.ArgumentParser:
     recognise.add_argument(
         "--graph", type=_file, metavar="FILE", help="the graph of gates, as GraphML"
     )
-    _shared(recognise, paths=False)
+    _shared(recognise, paths=False, page=False)
     fit = _command(commands, "fit", _fit_process, "process constants from delays that you measured")
     fit.add_argument("measurements", type=_file, nargs="?", metavar="MEASUREMENTS")
     fit.add_argument(
@@ -359,8 +369,8 @@ def _command(
     return parser
 
 
-def _shared(parser: argparse.ArgumentParser, *, paths: bool = True) -> None:
-    """Add what every command takes, and what those on paths take."""
+def _shared(parser: argparse.ArgumentParser, *, paths: bool = True, page: bool = True) -> None:
+    """Add what every command takes, what those on paths take, and those that make a page."""
     add = parser.add_argument
     add(
         "--process",
@@ -375,6 +385,8 @@ def _shared(parser: argparse.ArgumentParser, *, paths: bool = True) -> None:
     if paths:
         add("--from", metavar="NET", help="only paths that begin there; * and ? are wild")
         add("--to", metavar="NET", help="only paths that end there; * and ? are wild")
+    if page:
+        add("--html", type=_file, metavar="FILE", help="a page to hold a review on")
     add("--json", type=_file, metavar="FILE", help="the result for scripts; - is standard output")
     add("--quiet", action="store_true", help="no notices, no progress")
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -35,6 +36,8 @@ from evenstage.process.infer import infer_process
 from evenstage.process.read import read_process
 from evenstage.process.write import process_text
 from evenstage.report.graph_document import graph_document
+from evenstage.report.page import render
+from evenstage.report.page.origin import FileDigest, Origin
 from evenstage.report.results import Result, json, notices, text
 from evenstage.report.simulation_document import waveform_table
 from evenstage.simulation.measure import measure_gates
@@ -53,7 +56,7 @@ from evenstage.timing.results import Analysis, Difference
 from evenstage.timing.yardstick import yardstick
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Iterable, Sequence
     from pathlib import Path
 
     from evenstage.circuit.circuit import Circuit
@@ -61,6 +64,7 @@ if TYPE_CHECKING:
     from evenstage.netlist.devices import Devices
     from evenstage.netlist.netlist import Netlist
     from evenstage.process.process import Process
+    from evenstage.report.page.render import Reviewable
     from evenstage.simulation.results import SideBranches
 
 __all__ = [
@@ -72,6 +76,7 @@ __all__ = [
     "Difference",
     "Fit",
     "Inventory",
+    "Origin",
     "Question",
     "Result",
     "Simulation",
@@ -82,9 +87,11 @@ __all__ = [
     "diff",
     "fit",
     "fit_simulated",
+    "html",
     "json",
     "load",
     "notices",
+    "origin",
     "recognise",
     "resize",
     "simulate",
@@ -466,6 +473,35 @@ def _refuse_existing(output: Path | None, *, force: bool) -> None:
             f"'{output}' exists; choose another name, or say --force to overwrite it",
             code="output-exists",
         )
+
+
+def origin(
+    version: str, arguments: Sequence[str], files: Iterable[Path], delay: float | None = None
+) -> Origin:
+    """Return where a result comes from, with the digests of the files that are there.
+
+    Parameters
+    ----------
+    version : str
+    arguments : sequence of str
+        Of the command line.
+    files : iterable of Path
+        Read or written.
+    delay : float, optional
+        s, asked for.
+    """
+    named = dict.fromkeys(files)
+    digests = tuple(
+        FileDigest(str(path), hashlib.sha256(path.read_bytes()).hexdigest())
+        for path in named
+        if path.is_file()
+    )
+    return Origin(version, tuple(arguments), digests, delay)
+
+
+def html(result: Reviewable, origin: Origin) -> str:
+    """Return a result as one self-contained page."""
+    return render.html(result, origin)
 
 
 def write_text(path: Path, content: str, *, force: bool) -> None:

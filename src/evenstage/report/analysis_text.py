@@ -36,7 +36,7 @@ def analysis_report(
     """
     paper = Paper(width, unicode)
     lines = [*paper.paragraph(block_name(analysis)), ""]
-    lines += paper.paragraph(_answer(analysis))
+    lines += paper.paragraph(analysis_answer(analysis))
     for number, path in enumerate(analysis.paths, 1):
         lines += path_section(paper, analysis, number, path)
     if analysis.paths:
@@ -49,7 +49,7 @@ def analysis_report(
     return finished(paper, lines)
 
 
-def _answer(analysis: Analysis) -> str:
+def analysis_answer(analysis: Analysis) -> str:
     """Return the one thing to know first."""
     if not analysis.paths:
         return "There is no path to report."

@@ -37,7 +37,7 @@ _Gates = list["Change"]
 
 def change_lines(paper: Paper, changes: Sequence[Change]) -> list[str]:
     """Return the changes in the order of the text; of very many those that buy most."""
-    gates = _alike(changes)
+    gates = alike_changes(changes)
     kept = _largest(gates)
     shown = [change for gate in kept for change in gate]
     if not shown:
@@ -59,7 +59,7 @@ def change_lines(paper: Paper, changes: Sequence[Change]) -> list[str]:
     return lines
 
 
-def _alike(changes: Sequence[Change]) -> list[_Gates]:
+def alike_changes(changes: Sequence[Change]) -> list[_Gates]:
     """Return the changes by gate, gates of one family that change alike together."""
     gates: dict[str, list[Change]] = {}
     for change in changes:

@@ -44,7 +44,7 @@ def corners_report(
         Lines without trailing blanks, the last one ended too.
     """
     paper, worst = Paper(width, unicode), corners.worst
-    lines = [*paper.paragraph(block_name(worst)), "", *paper.paragraph(_answer(corners))]
+    lines = [*paper.paragraph(block_name(worst)), "", *paper.paragraph(corners_answer(corners))]
     lines += section("Corners", _corner_lines(paper, corners))
     for number, path in enumerate(corners.paths, 1):
         where = f" in {path.corner}"
@@ -66,19 +66,26 @@ def corners_difference_report(
     notices: bool = True,
 ) -> str:
     """Return two netlists in several processes as text; parameters as for `corners_report`."""
-    paper, old, new = Paper(width, unicode), difference.before, difference.after
-    was, now = old.paths[0], new.paths[0]
-    answer = (
-        f"Over {counted(len(new.analyses), 'corner')} the {rank(new.worst)} path "
-        f"{moves(was.delay, now.delay)}; it was in {was.corner} and is in {now.corner}, "
-        "where the netlists compare as follows."
-    )
+    paper = Paper(width, unicode)
+    answer = corners_difference_answer(difference)
     lines = [*paper.paragraph(answer), *section("Corners", _moved_lines(paper, difference)), ""]
     rest = difference_report(difference.worst, width=width, unicode=unicode, notices=notices)
     return "\n".join(lines) + "\n" + rest
 
 
-def _answer(corners: Corners) -> str:
+def corners_difference_answer(difference: CornersDifference) -> str:
+    """Return how the slowest path over all corners moves."""
+    old, new = difference.before, difference.after
+    was, now = old.paths[0], new.paths[0]
+    return (
+        f"Over {counted(len(new.analyses), 'corner')} the {rank(new.worst)} path "
+        f"{moves(was.delay, now.delay)}; it was in {was.corner} and is in {now.corner}, "
+        "where the netlists compare as follows."
+    )
+
+
+def corners_answer(corners: Corners) -> str:
+    """Return the one thing to know first."""
     slowest, worst = corners.paths[0], corners.worst
     answer = (
         f"The {rank(worst)} path over {counted(len(corners.analyses), 'corner')}, "

@@ -51,7 +51,7 @@ def difference_report(
     before, after = difference.before, difference.after
     lines = labelled(paper, "before", block_name(before))
     lines += labelled(paper, "after", block_name(after))
-    lines += ["", *paper.paragraph(_answer(difference))]
+    lines += ["", *paper.paragraph(difference_answer(difference))]
     lines += _paths(paper, difference)
     lines += section("The blocks", total_lines(paper, before, after))
     lines += section("Widths that differ", difference_lines(paper, difference.widths))
@@ -61,7 +61,8 @@ def difference_report(
     return finished(paper, lines)
 
 
-def _answer(difference: Difference) -> str:
+def difference_answer(difference: Difference) -> str:
+    """Return the one thing to know first."""
     old, new = difference.before.paths[0], difference.after.paths[0]
     both = sum(w.before is not None and w.after is not None for w in difference.widths)
     slowest = f"{rank(difference.before)} path {moves(old.delay, new.delay)}"

@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from evenstage.fitting.results import Confusion, Fit, FittedConstant, Residuals
 
 #: Units of the constants as the process file has them.
-_UNITS: Final = {
+UNITS: Final = {
     "r_w": "ohm*m",
     "r_fixed": "ohm",
     "c_gate": "F/m",
@@ -47,7 +47,7 @@ def fit_report(fit: Fit, *, width: int = 100, unicode: bool = False, notices: bo
     """
     paper = Paper(width, unicode)
     lines = [*paper.paragraph(f"{fit.source}, cells of {fit.cells}"), ""]
-    lines += paper.paragraph(_answer(fit))
+    lines += paper.paragraph(fit_answer(fit))
     lines += section("Constants", _constant_lines(paper, fit.constants))
     lines += section("What the measurements do not tell apart", _confused(paper, fit.confusions))
     lines += section("Predicted against measured", _residual_lines(paper, fit))
@@ -73,7 +73,7 @@ def deck_report(
     return finished(paper, lines)
 
 
-def _answer(fit: Fit) -> str:
+def fit_answer(fit: Fit) -> str:
     """Return the one thing to know first."""
     parts = [
         f"{one.median:.1%} for {name} (19 of 20 within {one.high:.1%})"
@@ -90,7 +90,7 @@ def _answer(fit: Fit) -> str:
 def _constant_lines(paper: Paper, constants: Sequence[FittedConstant]) -> list[str]:
     rows, before = [], ""
     for one in constants:
-        unit = _UNITS.get(one.key, "")
+        unit = UNITS.get(one.key, "")
         error = "" if one.error is None else f"{one.error:.2g}"
         remark = "" if one.told == "measured" else one.told
         shown = one.models if one.models != before else ""
@@ -117,18 +117,24 @@ def _constant_lines(paper: Paper, constants: Sequence[FittedConstant]) -> list[s
 
 
 def _confused(paper: Paper, confusions: Sequence[Confusion]) -> list[str]:
-    lines = []
-    for one in confusions:
-        names = [f"{key} ({polarity})" for polarity, key in one.constants]
-        if len(names) == 1:
-            text = f"{names[0]} is hardly told: it may be off by {one.spread:.0%} of its scale"
-        else:
-            text = (
-                f"{', '.join(names[:-1])} and {names[-1]}: their sum of effects is known, each "
-                f"alone may be off by {one.spread:.0%} of its scale"
-            )
-        lines += paper.paragraph(text.replace("%", " %") + ".", indent=2, hanging=4)
-    return lines
+    return [
+        line
+        for one in confusions
+        for line in paper.paragraph(confusion_text(one), indent=2, hanging=4)
+    ]
+
+
+def confusion_text(one: Confusion) -> str:
+    """Return which constants the measurements do not tell apart, and how far they may be off."""
+    names = [f"{key} ({polarity})" for polarity, key in one.constants]
+    if len(names) == 1:
+        text = f"{names[0]} is hardly told: it may be off by {one.spread:.0%} of its scale"
+    else:
+        text = (
+            f"{', '.join(names[:-1])} and {names[-1]}: their sum of effects is known, each "
+            f"alone may be off by {one.spread:.0%} of its scale"
+        )
+    return text.replace("%", " %") + "."
 
 
 def _residual_lines(paper: Paper, fit: Fit) -> list[str]:

@@ -174,6 +174,19 @@ def _head(axis: TimeAxis, width: Scale) -> list[list[str]]:
 
 def total_lines(paper: Paper, before: Analysis, after: Analysis) -> list[str]:
     """Return what two blocks differ in as wholes, and which inputs have changed."""
+    rows = total_rows(paper, before, after)
+    columns = [
+        Column("", kind="name"),
+        Column("before", align="right"),
+        Column("after", align="right"),
+        Column("change", align="right"),
+    ]
+    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
+    return table.lines(rows)
+
+
+def total_rows(paper: Paper, before: Analysis, after: Analysis) -> list[list[str]]:
+    """Return a row for each total and each changed input: name, before, after, change."""
     rows = [
         _total("worst delay", "s", _worst(before), _worst(after)),
         _total("worst charged delay", "s", worst_charged(before), worst_charged(after)),
@@ -190,14 +203,7 @@ def total_lines(paper: Paper, before: Analysis, after: Analysis) -> list[str]:
     for (_, was, now), nets in changed.items():
         many = f"{len(nets)} {paper.times} " if len(nets) > 1 else ""
         rows.append(_total(f"input {many}{family_name(nets)}", "F", was, now))
-    columns = [
-        Column("", kind="name"),
-        Column("before", align="right"),
-        Column("after", align="right"),
-        Column("change", align="right"),
-    ]
-    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
-    return table.lines(rows)
+    return rows
 
 
 def worst_charged(analysis: Analysis) -> float:

@@ -50,7 +50,7 @@ _NARROW: Final = tuple(c for c in _NO_FUNCTION if c not in {_G, _H, _B})
 
 
 @dataclass(frozen=True, slots=True)
-class _Branch:
+class Branch:
     """Side branches of one family on one stage."""
 
     what: str
@@ -150,7 +150,7 @@ def _details(
     ]
     if not branches:
         return details
-    loads = [_families(paper, stage) for stage in path.stages]
+    loads = [branch_families(paper, stage) for stage in path.stages]
     everything = [branch for load in loads for branch in load]
     scale = Scale.of((branch.cap for branch in everything), "F", digits=3)
     texts = [[_branch_row(branch, scale) for branch in load] for load in loads]
@@ -191,7 +191,7 @@ def _wire(paper: Paper, stage: Stage, indent: int) -> list[str]:
     return [" " * (indent + 2) + paper.shorten(text, paper.width - indent - 2)]
 
 
-def _families(paper: Paper, stage: Stage) -> list[_Branch]:
+def branch_families(paper: Paper, stage: Stage) -> list[Branch]:
     """Return the fattest families of a stage's side branches and the sum of the others."""
     members: dict[tuple[str, str], list[SideBranch]] = {}
     for branch in stage.side_branches:
@@ -205,10 +205,10 @@ def _families(paper: Paper, stage: Stage) -> list[_Branch]:
     cap = sum(family.cap for family in rest)
     count = sum(family.count for family in rest)
     share = _share(cap, stage.load_cap)
-    return [*families[:first], _Branch(f"and {count} more", count, cap, share)]
+    return [*families[:first], Branch(f"and {count} more", count, cap, share)]
 
 
-def _family(paper: Paper, group: Sequence[SideBranch], load: float) -> _Branch:
+def _family(paper: Paper, group: Sequence[SideBranch], load: float) -> Branch:
     cap = sum(branch.cap for branch in group)
     name = family_name([branch.instance for branch in group])
     pin = group[0].pin
@@ -216,14 +216,14 @@ def _family(paper: Paper, group: Sequence[SideBranch], load: float) -> _Branch:
     if not name:
         what = "load outside the block" if pin == "load" else f"{pin} outside the block"
     many = f"{len(group)} {paper.times} " if len(group) > 1 else ""
-    return _Branch(many + what, len(group), cap, _share(cap, load))
+    return Branch(many + what, len(group), cap, _share(cap, load))
 
 
 def _share(cap: float, load: float) -> float:
     return cap / load if load > 0 else 0.0
 
 
-def _branch_row(branch: _Branch, scale: Scale) -> list[str]:
+def _branch_row(branch: Branch, scale: Scale) -> list[str]:
     return [f"+ {branch.what}", scale.text(branch.cap), f"{100 * branch.share:.0f} %"]
 
 

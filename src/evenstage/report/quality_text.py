@@ -30,16 +30,21 @@ _SAME: Final = 0.005
 
 def quality_lines(paper: Paper, sizing: Sizing) -> list[str]:
     """Return goal, bound and distance to it in words."""
+    return [line for part in quality_parts(sizing) for line in labelled(paper, *part)]
+
+
+def quality_parts(sizing: Sizing) -> list[tuple[str, str]]:
+    """Return goal, bound and distance to it, each a label and a sentence."""
     cards = f" ({counted(sizing.free_cards, 'size')} free to move, {sizing.fixed_cards} fixed)"
     proof = (
         f"the best sizes off the grid are proved to lie within {_gap(sizing.gap)} of the bound; "
         f"putting widths on the grid costs {_loss(sizing.rounding_loss)}"
     )
     return [
-        *labelled(paper, "goal", sizing.goal + ("" if sizing.already_done else cards)),
-        *labelled(paper, "bound", _bound(sizing)),
-        *labelled(paper, "proof", proof),
-        *(labelled(paper, "function", _function(sizing.structure)) if sizing.structure else ()),
+        ("goal", sizing.goal + ("" if sizing.already_done else cards)),
+        ("bound", _bound(sizing)),
+        ("proof", proof),
+        *([("function", _function(sizing.structure))] if sizing.structure else []),
     ]
 
 

@@ -34,7 +34,7 @@ _LEGEND: Final = (
     "simulation. Simulated are transistors after a simple law (level 1 or alpha-power) with "
     "constant capacitances, not the foundry's models."
 )
-_BY_CONSTRUCTION: Final = (
+BY_CONSTRUCTION: Final = (
     "The currents were chosen so that the unit inverter's FO4 agrees: absolute times agree by "
     "construction, only ratios between stages, paths and netlists are evidence."
 )
@@ -67,9 +67,9 @@ def simulation_report(
     else:
         lines = labelled(paper, "before", block_name(before.analysis))
         lines += labelled(paper, "after", block_name(after.analysis))
-    lines += ["", *paper.paragraph(_answer(simulation))]
+    lines += ["", *paper.paragraph(simulation_answer(simulation))]
     if simulation.scaled:
-        lines += paper.paragraph(_BY_CONSTRUCTION)
+        lines += paper.paragraph(BY_CONSTRUCTION)
     lines += _block_lines(paper, before, "" if after is None else " before")
     if after is not None:
         lines += _block_lines(paper, after, " after")
@@ -83,7 +83,8 @@ def simulation_report(
     return finished(paper, lines)
 
 
-def _answer(simulation: Simulation) -> str:
+def simulation_answer(simulation: Simulation) -> str:
+    """Return the one thing to know first."""
     old = simulation.before.paths[0]
     name = rank(simulation.before.analysis)
     if simulation.after is None:

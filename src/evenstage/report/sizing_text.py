@@ -26,7 +26,7 @@ from evenstage.units import engineering
 if TYPE_CHECKING:
     from evenstage.sizing.results import Hold, Sizing
 
-_HOLDS: Final[dict[Hold, str]] = {
+HOLDS: Final[dict[Hold, str]] = {
     "": "",
     "lower": "least width",
     "upper": "greatest width",
@@ -60,7 +60,7 @@ def sizing_report(
     paper = Paper(width, unicode)
     before, after = sizing.before, sizing.after
     lines = [*paper.paragraph(block_name(before)), ""]
-    lines += paper.paragraph(_answer(sizing))
+    lines += paper.paragraph(sizing_answer(sizing))
     lines += section("How good the widths are", quality_lines(paper, sizing))
     lines += section("Changes", _changes(paper, sizing))
     lines += _stages(paper, sizing)
@@ -71,7 +71,7 @@ def sizing_report(
     return finished(paper, lines)
 
 
-def _answer(sizing: Sizing) -> str:
+def sizing_answer(sizing: Sizing) -> str:
     """Return what to know first."""
     before, after = sizing.before, sizing.after
     old, new = before.paths[0], after.paths[0]
@@ -106,7 +106,7 @@ def _changes(paper: Paper, sizing: Sizing) -> list[str]:
 def _stages(paper: Paper, sizing: Sizing) -> list[str]:
     """Return the slowest paths before and after, or the one path where nothing changes."""
     old, new = sizing.before.paths[0], sizing.after.paths[0]
-    holds = {hold.instance: _HOLDS[hold.hold] for hold in sizing.holds if hold.hold}
+    holds = {hold.instance: HOLDS[hold.hold] for hold in sizing.holds if hold.hold}
     if not sizing.changes:
         lines = path_lines(paper, new, branches=True)
         if holds:

@@ -38,7 +38,7 @@ def difference_lines(paper: Paper, widths: Sequence[WidthDifference]) -> list[st
         return []
     known = [value for w in widths for value in (w.before, w.after) if value is not None]
     scale = Scale.of(known, "m").trimmed(known)
-    blocks = [_rows(paper, instances, scale) for instances in _alike(widths)]
+    blocks = [_rows(paper, instances, scale) for instances in alike_differences(widths)]
     shown = blocks[:_SHOWN]
     rows = [row for block in shown for row in block]
     _, table = first_that_fits(paper, [(_COLUMNS, rows)], indent=2)
@@ -49,7 +49,7 @@ def difference_lines(paper: Paper, widths: Sequence[WidthDifference]) -> list[st
     return lines
 
 
-def _alike(widths: Sequence[WidthDifference]) -> list[_Instances]:
+def alike_differences(widths: Sequence[WidthDifference]) -> list[_Instances]:
     """Return the differences by instance, instances of one family that differ alike together."""
     instances: dict[str, list[WidthDifference]] = {}
     for width in widths:

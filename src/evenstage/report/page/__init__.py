@@ -1,0 +1,1 @@
+"""A result as one self-contained page for a review."""
