@@ -66,6 +66,19 @@ def shrunk(netlist: Path, question: flow.Question) -> tuple[Path, Sizing]:
     return output, flow.resize(netlist, question, wishes, output)
 
 
+class TestCurve:
+    def test_only_where_asked_for_and_again_after_it_is_done(
+        self, netlist: Path, question: flow.Question
+    ) -> None:
+        output, sizing = shrunk(netlist, question)
+        assert sizing.trade_off is None
+        wishes = flow.Wishes(margin=9.0, scope="block", reclaim=True)
+        again = flow.resize(output, question, wishes, curve=True)
+        assert again.already_done
+        assert again.trade_off is not None
+        assert again.trade_off.today_spend == pytest.approx(sizing.total_width_after, rel=1e-9)
+
+
 class TestUnitInverter:
     """It stays that of the netlist as first drawn, or delays would move without a cause."""
 

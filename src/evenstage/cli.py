@@ -187,7 +187,14 @@ def _resize(asked: argparse.Namespace) -> flow.Result:
         scope=asked.scope,
         reclaim=asked.reclaim,
     )
-    return flow.resize(asked.netlist, _question(asked), wishes, asked.output, force=asked.force)
+    return flow.resize(
+        asked.netlist,
+        _question(asked),
+        wishes,
+        asked.output,
+        force=asked.force,
+        curve=asked.curve,
+    )
 
 
 def _simulate(asked: argparse.Namespace) -> flow.Result:
@@ -418,6 +425,11 @@ def _wishes(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument(
         "--reclaim", action="store_true", help="also make smaller what is off the slowest paths"
+    )
+    parser.add_argument(
+        "--curve",
+        action="store_true",
+        help="also the least width for a dozen delays, from today's to the least possible",
     )
     parser.add_argument("--force", action="store_true", help="overwrite the output")
 

@@ -48,6 +48,7 @@ from evenstage.simulation.strength import with_currents
 from evenstage.sizing.named import refuse_unknown_names
 from evenstage.sizing.resize import resize as find_widths
 from evenstage.sizing.results import Sizing
+from evenstage.sizing.trade_off import trade_off
 from evenstage.sizing.wishes import Original, Wishes
 from evenstage.timing.analyse import analyse as find_paths
 from evenstage.timing.compare import compare
@@ -298,8 +299,11 @@ def resize(
     output: Path | None = None,
     *,
     force: bool = False,
+    curve: bool = False,
 ) -> Sizing:
     """Find new widths and, where an output is named, write the netlist with them.
+
+    With ``curve`` the least spend for a dozen delays is found too.
 
     Raises
     ------
@@ -314,11 +318,14 @@ def resize(
     wishes = _with_aims(wishes or Wishes(), block.brief)
     record = block.record
     asked = _asked(question, wishes)
+    original = _original(record, wishes.spend)
     if record is not None and record.key == digest(block.netlist, asked):
         sizing = _already_done(block, record, wishes)
     else:
-        original = _original(record, wishes.spend)
         sizing = find_widths(block.analysis, block.brief, wishes, original)
+    if curve:
+        curved = trade_off(block.analysis, block.brief, wishes, original)
+        sizing = replace(sizing, trade_off=curved)
     if output is None:
         return sizing
     texts = _texts(block, sizing, record, asked)

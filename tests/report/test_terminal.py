@@ -11,6 +11,7 @@ import pytest
 from evenstage.errors import Notice
 from evenstage.report.block_text import CAUTION
 from evenstage.report.terminal import analysis_report, difference_report, sizing_report
+from evenstage.sizing.results import TradeOff, TradeOffPoint
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
@@ -43,6 +44,29 @@ class TestGolden:
         self, difference: Difference, golden: Callable[[str, str], None], width: int
     ) -> None:
         golden(f"difference_{width}", difference_report(difference, width=width))
+
+    def test_trade_off(self, sizing: Sizing, golden: Callable[[str, str], None]) -> None:
+        points = tuple(
+            TradeOffPoint(
+                charged_delay=delay * 1e-12,
+                delay=(delay - 9) * 1e-12,
+                spend=spend * 1e-6,
+                bound=spend * 0.99999e-6,
+                gap=1e-5,
+                one_percent_buys=buys,
+            )
+            for delay, spend, buys in ((600.0, 80.0, None), (500.0, 95.0, 2e-12), (460, 160.0, 0))
+        )
+        curve = TradeOff(
+            spend="width",
+            today_charged_delay=600e-12,
+            today_spend=100e-6,
+            points=points,
+            knee=1,
+        )
+        text = sizing_report(replace(sizing, trade_off=curve))
+        begin = text.index("Width against delay")
+        golden("trade_off", text[begin : text.index("The slowest path", begin)])
 
     def test_unicode(self, sizing: Sizing, golden: Callable[[str, str], None]) -> None:
         text = analysis_report(sizing.before, unicode=True) + sizing_report(sizing, unicode=True)

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Final
 from evenstage.report.circuit_document import inventory_body
 from evenstage.report.fit_document import fit_body
 from evenstage.report.simulation_document import simulation_body
+from evenstage.report.trade_off import trade_off_body
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -78,6 +79,7 @@ def sizing_document(sizing: Sizing) -> Document:
         "structure": _structure(sizing.structure),
         "changes": [_change(change) for change in sizing.changes],
         "holds": [_hold(hold) for hold in sizing.holds],
+        "trade_off": None if sizing.trade_off is None else trade_off_body(sizing.trade_off),
         "notices": [notice_document(notice) for notice in sizing.notices],
         "before": _analysis(sizing.before),
         "after": _analysis(sizing.after),

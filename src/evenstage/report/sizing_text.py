@@ -11,6 +11,7 @@ from evenstage.report.paper import Paper
 from evenstage.report.path_text import path_lines
 from evenstage.report.quality_text import quality_lines
 from evenstage.report.scale import percent
+from evenstage.report.trade_off import trade_off_section
 from evenstage.report.words import (
     block_name,
     counted,
@@ -63,6 +64,8 @@ def sizing_report(
     lines += paper.paragraph(sizing_answer(sizing))
     lines += section("How good the widths are", quality_lines(paper, sizing))
     lines += section("Changes", _changes(paper, sizing))
+    if sizing.trade_off is not None:
+        lines += section(*trade_off_section(paper, sizing.trade_off))
     lines += _stages(paper, sizing)
     block = total_lines(paper, before, after) if sizing.changes else block_lines(paper, before)
     lines += section("The block", block)

@@ -154,17 +154,16 @@ class Engine:
 
     def _run(self) -> Continuous:
         """Find the continuous answer for the limits as they are."""
-        fastest, lower, upper = self._least_delay()
+        fastest, lower, upper = self.least_delay()
         least, drawn = fastest.delay, worst_charged(self.today)
-        active = lower < upper
         if self.wishes.delay is not None:
-            return self._for_delay(fastest, active, lower, upper)
+            return self._for_delay(fastest, lower, upper)
         deadline = least * (1 + max(self.wishes.margin, AGREES))
         if self.wishes.width is None:
             deadline = min(deadline, max(drawn, least * (1 + AGREES)))
         late = float(self.today.lateness.max())
         for _ in range(6):
-            answer = self._within(deadline, fastest, active, lower, upper)
+            answer = self.within(deadline, fastest, lower, upper)
             reached = float(self.timed(answer.sizes).lateness.max())
             tighter = max(least * (1 + AGREES), deadline * late / reached * (1 - 10 * AGREES))
             # No faster in charged delay than today must not mean slower in arrivals.
@@ -173,28 +172,37 @@ class Engine:
             deadline = tighter
         return answer
 
-    def _within(
+    def within(
         self,
         deadline: float,
         fastest: Solution,
-        active: BoolArray,
         lower: FloatArray,
         upper: FloatArray,
+        start: FloatArray | None = None,
     ) -> Continuous:
         """Find the least spend for a deadline.
 
         At the least delay itself sizes on the limiting paths have no room: they stay as they are.
+
+        Parameters
+        ----------
+        deadline : float
+            s; worst charged delay.
+        fastest : Solution
+            The least delay, from which the search starts where no ``start`` is given.
+        lower, upper, start : FloatArray, shape (sizes,)
+            Bounds, and sizes near the answer.
         """
         exact = (deadline < fastest.delay * (1 + 2 * AGREES)) & limiting(self.model, fastest)
         solution = self._solve(
             Cheapest(deadline),
             np.where(exact, fastest.sizes, lower),
             np.where(exact, fastest.sizes, upper),
-            fastest.sizes,
+            fastest.sizes if start is None else start,
         )
         return Continuous(
             sizes=solution.sizes,
-            active=active,
+            active=lower < upper,
             lower=lower,
             upper=upper,
             solution=solution,
@@ -205,9 +213,7 @@ class Engine:
             deadline=deadline,
         )
 
-    def _for_delay(
-        self, fastest: Solution, active: BoolArray, lower: FloatArray, upper: FloatArray
-    ) -> Continuous:
+    def _for_delay(self, fastest: Solution, lower: FloatArray, upper: FloatArray) -> Continuous:
         """Find the least spend whose 50 % arrivals meet the wished delay."""
         wanted = self.wishes.delay or 0.0
         possible = self.timed(fastest.sizes).lateness.max()
@@ -222,7 +228,7 @@ class Engine:
         floor = fastest.delay * (1 + AGREES)
         deadline, best = max(floor, wanted * fastest.delay / possible), None
         for _ in range(12):
-            answer = self._within(deadline, fastest, active, lower, upper)
+            answer = self.within(deadline, fastest, lower, upper)
             reached = float(self.timed(answer.sizes).lateness.max())
             best = answer if reached <= wanted else best
             following = max(floor, deadline * wanted * (1 - AGREES / 4) / reached)
@@ -249,8 +255,16 @@ class Engine:
         circuit = model.circuit.resized(model.variables.factors(sizes))
         return sweep(circuit, model.graph, model.unit)
 
-    def _least_delay(self) -> tuple[Solution, FloatArray, FloatArray]:
-        """Find the least delay, and the bounds within which sizes may move for it."""
+    def least_delay(self) -> tuple[Solution, FloatArray, FloatArray]:
+        """Find the least delay, and the bounds within which sizes may move for it.
+
+        Raises
+        ------
+        InfeasibleError
+            Where a limit cannot be kept.
+        NotConvergedError
+            Where the proof fails.
+        """
         free = self.model.variables.free
         start = np.ones(len(free))
         everything = self._solve(

@@ -12,12 +12,11 @@ from evenstage.errors import Notice
 from evenstage.netlist.rewriting.handles import width_handles
 from evenstage.netlist.rewriting.sized_block import Slot
 from evenstage.netlist.rewriting.widths import WidthPlan
+from evenstage.sizing.block_engine import engine_of
 from evenstage.sizing.changes import Writing
 from evenstage.sizing.copies import shared_sizes
-from evenstage.sizing.engine import Engine
 from evenstage.sizing.holds import stage_holds
-from evenstage.sizing.limits import kept_for_later, limits_of, spend_of
-from evenstage.sizing.model import Model
+from evenstage.sizing.limits import kept_for_later
 from evenstage.sizing.partition import partition
 from evenstage.sizing.results import Sizing
 from evenstage.sizing.rounding import Drawn, Rounding
@@ -31,6 +30,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterator
 
     from evenstage.netlist.rewriting.handles import WidthHandles
+    from evenstage.sizing.engine import Engine
     from evenstage.sizing.partition import Partition
     from evenstage.timing.results import Analysis
     from evenstage.timing.sweep import Timing
@@ -121,17 +121,8 @@ class _Job:
         return rounding, drawn
 
     def _engine(self, parts: Partition, handles: WidthHandles) -> Engine:
-        circuit = self.timing.circuit
-        free = variables(circuit, self.brief, parts, handles, self.original.smallest)
-        spend = spend_of(circuit, free, self.wishes.spend)
-        return Engine(
-            model=Model(circuit, self.timing.graph, self.timing.unit, free),
-            limits=limits_of(self.timing, self.brief, self.original, free),
-            spend=spend.per_size,
-            spend_fixed=spend.fixed,
-            wishes=self.wishes,
-            cost_today=self.original.spend or spend.today,
-        )
+        free = variables(self.timing.circuit, self.brief, parts, handles, self.original.smallest)
+        return engine_of(self.timing, self.brief, self.wishes, self.original, free)
 
     def _sizing(self, writing: Writing, plan: WidthPlan, written: Drawn) -> Sizing:
         rounding, circuit = writing.rounding, self.timing.circuit

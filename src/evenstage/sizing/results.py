@@ -69,6 +69,57 @@ class StageHold:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class TradeOffPoint:
+    """The least spend for one delay.
+
+    Parameters
+    ----------
+    charged_delay : float
+        s; worst charged delay, which the bound is about.
+    delay : float
+        s; worst arrival of the same sizes.
+    spend : float
+        m of total width, or F of switched capacitance.
+    bound : float
+        No sizes within the limits do with less spend at this charged delay.
+    gap : float
+        Relative distance of ``spend`` to it, confirmed by the checker.
+    one_percent_buys : float or None
+        s; how much less charged delay one percent more spend buys, to first order; None where the
+        delay holds nothing back.
+    """
+
+    charged_delay: float
+    delay: float
+    spend: float
+    bound: float
+    gap: float
+    one_percent_buys: float | None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class TradeOff:
+    """The least spend for each delay from today's to the least possible, off the grid.
+
+    Parameters
+    ----------
+    spend : {"width", "energy"}
+    today_charged_delay, today_spend : float
+        s, and m or F; the block as drawn.
+    points : tuple of TradeOffPoint
+        The slowest first.
+    knee : int or None
+        The point beyond which speed becomes dear; None where there is no such point.
+    """
+
+    spend: Literal["width", "energy"]
+    today_charged_delay: float
+    today_spend: float
+    points: tuple[TradeOffPoint, ...]
+    knee: int | None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Sizing:
     """New widths and what they buy.
 
@@ -106,6 +157,8 @@ class Sizing:
         What writes the new widths into the text.
     structure : StructureCheck, optional
         How the written netlist, read back, compares with the old one; None where none was written.
+    trade_off : TradeOff, optional
+        Spend against delay, where it was asked for.
     """
 
     before: Analysis
@@ -127,3 +180,4 @@ class Sizing:
     kept: Original | None = None
     edits: tuple[Edit, ...] = field(default=(), repr=False)
     structure: StructureCheck | None = None
+    trade_off: TradeOff | None = None
