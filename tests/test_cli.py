@@ -144,6 +144,10 @@ class TestStatus:
         assert main(arguments) == 0
         assert "evenstage" in capsys.readouterr().out
 
+    def test_schema_is_printed(self, capsys: pytest.CaptureFixture[str]) -> None:
+        assert main(["--json-schema"]) == 0
+        assert json.loads(capsys.readouterr().out)["$defs"]["analysis"]["type"] == "object"
+
     def test_fault_of_ours(
         self, netlist: Path, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
     ) -> None:

@@ -53,10 +53,9 @@ def main(arguments: Sequence[str]) -> int:
     try:
         asked = _parsed(arguments)
         asked.arguments = tuple(arguments)
+        _run(asked)
     except SystemExit as stop:
         return int(stop.code or 0)
-    try:
-        _run(asked)
     except EvenstageError as error:
         _say(str(error))
         return WRONG_INPUT
@@ -271,6 +270,9 @@ def _parser() -> argparse.ArgumentParser:
         allow_abbrev=False,
     )
     parser.add_argument("--version", action="version", version=f"evenstage {__version__}")
+    parser.add_argument(
+        "--json-schema", action=_Schema, nargs=0, help="print the JSON Schema of --json, and leave"
+    )
     commands = parser.add_subparsers(title="commands", metavar="COMMAND", required=True)
     analyse = _command(commands, "analyse", _analyse, "the slowest paths, stage by stage")
     analyse.add_argument("netlist", type=_file, metavar="NETLIST")
@@ -357,6 +359,16 @@ def _parser() -> argparse.ArgumentParser:
     fit.add_argument("--force", action="store_true", help="overwrite the output")
     _shared(fit, paths=False)
     return parser
+
+
+class _Schema(argparse.Action):
+    """Print the published JSON Schema and leave."""
+
+    def __call__(self, parser: argparse.ArgumentParser, *_: object) -> None:
+        from evenstage import flow
+
+        _print(flow.schema_text())
+        parser.exit()
 
 
 def _command(

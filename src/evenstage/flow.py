@@ -38,6 +38,7 @@ from evenstage.process.write import process_text
 from evenstage.report.graph_document import graph_document
 from evenstage.report.page import render
 from evenstage.report.page.origin import FileDigest, Origin
+from evenstage.report.published import schema_text
 from evenstage.report.results import Result, json, notices, text
 from evenstage.report.simulation_document import waveform_table
 from evenstage.simulation.measure import measure_gates
@@ -95,6 +96,7 @@ __all__ = [
     "origin",
     "recognise",
     "resize",
+    "schema_text",
     "simulate",
     "text",
     "write_deck",
