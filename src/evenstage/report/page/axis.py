@@ -58,11 +58,12 @@ class Axis:
         return [value for value in inside if self.at(value) <= 0.95]
 
     def label(self, value: float) -> str:
-        """Return a round value as it stands on the axis."""
+        """Return a round value as it stands on the axis; all of a linear axis have one look."""
         shown = value / self.scale.factor
-        decimals = max(0, -math.floor(math.log10(shown) + 1e-9)) if 0 < shown < 1 else 0
-        digits = plain(shown, decimals)
-        return digits if float(digits) == float(f"{shown:.9g}") else plain(shown, decimals + 1)
+        if self.logarithmic:
+            return plain(shown, max(0, -math.floor(math.log10(shown) + 1e-9)))
+        step = _step((self.most - self.least) / self.scale.factor / 5)
+        return plain(shown, max(0, -math.floor(math.log10(step) + 1e-9)))
 
     def ruler(self, name: str) -> Element:
         """Return the axis with its labels, 18 px high."""

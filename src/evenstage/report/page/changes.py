@@ -41,7 +41,7 @@ def change_table(changes: Sequence[Change]) -> Table | None:
         Heading(f"new, {width.unit}", "number"),
         Heading("factor", "number"),
         Heading(f"alone, {alone.unit}", "number"),
-        Heading("written in"),
+        Heading("written in", "name"),
         Heading("why"),
     )
     if not any(one.why for group in shown for one in group):
@@ -50,7 +50,9 @@ def change_table(changes: Sequence[Change]) -> Table | None:
     remark = "alone: change of the worst delay if only that gate changed."
     if left:
         remark += f" {left} more groups of gates that buy less are in the JSON."
-    return Table("Changes", headings, rows, remark=remark, sortable=True)
+    return Table(
+        "Gates that change, those that buy most first", headings, rows, remark=remark, sortable=True
+    )
 
 
 def _change_rows(group: Sequence[Change], width: Scale, alone: Scale) -> list[tuple[Cell, ...]]:
@@ -104,7 +106,7 @@ def difference_table(widths: Sequence[WidthDifference]) -> Table | None:
     )
     left = len(groups) - len(shown)
     remark = f"{left} more groups are in the JSON." if left else ""
-    return Table("Widths that differ", headings, rows, remark=remark, sortable=True)
+    return Table("Widths, instance by instance", headings, rows, remark=remark, sortable=True)
 
 
 def _difference_rows(group: Sequence[WidthDifference], scale: Scale) -> list[tuple[Cell, ...]]:

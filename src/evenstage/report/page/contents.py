@@ -30,7 +30,7 @@ from evenstage.report.page.waveforms import waveform_parts
 from evenstage.report.pair_text import total_rows, worst_charged
 from evenstage.report.paper import Paper
 from evenstage.report.quality_text import quality_parts
-from evenstage.report.scale import Scale, percent, plain
+from evenstage.report.scale import Scale, figure, percent, plain
 from evenstage.report.simulation_text import BY_CONSTRUCTION, simulation_answer
 from evenstage.report.sizing_text import HOLDS, sizing_answer
 from evenstage.report.words import (
@@ -239,7 +239,7 @@ def _path_sections(
     if not after.stages or (before is not None and not before.stages):
         return []
     both = sides(before, after, holds)
-    figure = path_figure(both)
+    drawing = path_figure(both)
     name = f"The {rank(analysis)} path"
     if before is None:
         lead, title = f"{route(after)}.".capitalize(), name
@@ -248,7 +248,7 @@ def _path_sections(
     else:
         lead = f"Before: {route(before)}. After: {route(after)}."
         title = f"{name} before, and the one after"
-    drawn = (figure,) if figure else ()
+    drawn = (drawing,) if drawing else ()
     if before is None:
         lead = f"{route(after)}."
     return [
@@ -263,7 +263,7 @@ def _effort(path: Path) -> str:
         f"At a stage effort of {path.best_stage_effort:.2f} in each of its "
         f"{counted(len(path.stages), 'stage')} the path's charged delay would be "
         f"{engineering(path.least_delay, 's')}; it is {engineering(path.charged_delay, 's')}. "
-        f"The best number of stages for its effort of {path.path_effort:.3g} is "
+        f"The best number of stages for its effort of {figure(path.path_effort)} is "
         f"{path.best_stage_count}."
     )
 
@@ -286,7 +286,7 @@ def _totals(before: Analysis, after: Analysis) -> Table:
         Heading(""),
         *(Heading(title, "number") for title in ("before", "after", "change")),
     )
-    return Table("Totals", headings, tuple(cells(*row) for row in rows))
+    return Table("Totals", headings, tuple(cells(*row) for row in rows), names=False)
 
 
 def _path_list(paths: Sequence[Path], analysis: Analysis) -> tuple[Part, ...]:
@@ -295,7 +295,7 @@ def _path_list(paths: Sequence[Path], analysis: Analysis) -> tuple[Part, ...]:
     scale = Scale.of((path.delay for path in paths), "s")
     rows = tuple(
         cells(
-            f"{number}  {_PAPER.shorten(route(path), 70)}",
+            f"{number:<4}{_PAPER.shorten(route(path), 70)}",
             scale.number(duration(path)),
             plain(duration(path) / analysis.yardstick.fo4, 1),
             str(len(path.stages)),

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
+from evenstage.report.families import family_name, family_of
 from evenstage.report.page.axis import Axis
 from evenstage.report.page.element import element, picture, share, text
 from evenstage.report.page.parts import Cell, Figure, Heading, Table
@@ -111,29 +112,38 @@ def _strip(name: str, analysis: Analysis, axis: Axis, goals: Sequence[float], ea
 
 
 def _end_table(analysis: Analysis) -> Table:
+    """Return the latest ends; those that differ in numbers only share a row."""
     paper = Paper(unicode=True)
     scale = Scale.of((end.delay for end in analysis.ends), "s")
-    rows = tuple(
-        (
-            Cell(paper.shorten(end.net, 44)),
-            Cell(f"{paper.edge(end.edge)} {end.edge}"),
-            Cell(scale.number(end.delay), sort=repr(end.delay)),
-            Cell(
-                "" if end.required is None else punctuality(end.delay, end.required),
-                sort="" if end.required is None else repr(end.delay - end.required),
-            ),
-            Cell(end.why),
-        )
-        for end in analysis.ends[:_ROWS]
-    )
-    left = len(analysis.ends) - len(rows)
-    least = scale.text(min(end.delay for end in analysis.ends))
+    groups: dict[tuple[object, ...], list[PathEnd]] = {}
+    for end in analysis.ends:
+        alike = (scale.text(end.delay), end.edge, end.required, end.why)
+        groups.setdefault((family_of(end.net), *alike), []).append(end)
+    shown = list(groups.values())[:_ROWS]
     headings = (
         Heading("path end"),
+        Heading("how many", "number"),
         Heading("edge"),
         Heading(f"arrival, {scale.unit}", "number"),
         Heading("against its goal", "number"),
         Heading("what it is"),
     )
-    remark = f"{left} more, down to {least}, are in the JSON." if left > 0 else ""
+    left = len(analysis.ends) - sum(map(len, shown))
+    least = scale.text(min(end.delay for end in analysis.ends))
+    remark = f"{left} more, down to {least}, are in the JSON." if left else ""
+    rows = tuple(_end_row(group, paper, scale) for group in shown)
     return Table("The latest path ends", headings, rows, remark=remark, sortable=True)
+
+
+def _end_row(group: Sequence[PathEnd], paper: Paper, scale: Scale) -> tuple[Cell, ...]:
+    end = group[0]
+    name = family_name([one.net for one in group])
+    late = "" if end.required is None else punctuality(end.delay, end.required)
+    return (
+        Cell(paper.shorten(name, 44)),
+        Cell(str(len(group))),
+        Cell(f"{paper.edge(end.edge)} {end.edge}"),
+        Cell(scale.number(end.delay), sort=repr(end.delay)),
+        Cell(late, sort="" if end.required is None else repr(end.delay - end.required)),
+        Cell(end.why),
+    )

@@ -33,7 +33,7 @@ class Heading:
     """The head of a column; ``axis`` is drawn under its title."""
 
     title: str
-    align: Literal["text", "number", "chart"] = "text"
+    align: Literal["text", "name", "number", "chart"] = "text"
     axis: Element | None = None
 
 
@@ -48,7 +48,10 @@ class Cell:
 
 @dataclass(frozen=True, slots=True)
 class Table:
-    """A table with its caption; the first cell of each row names it."""
+    """A table with its caption.
+
+    The first cell of each row tells what it is about: by a name of the netlist where ``names``.
+    """
 
     caption: str
     headings: tuple[Heading, ...]
@@ -56,6 +59,7 @@ class Table:
     legend: tuple[Element, ...] = ()
     remark: str = ""
     sortable: bool = False
+    names: bool = True
     kind: Literal["table"] = "table"
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from functools import cache
 from typing import TYPE_CHECKING, Any, Final
 
@@ -33,6 +34,8 @@ if TYPE_CHECKING:
 
 Reviewable = Analysis | Corners | Sizing | Difference | CornersDifference | Simulation | Fit
 
+_UNIT: Final = re.compile(r"(?<=\d) (?=%|[afpnumkMG]?[sFmV]\b)")
+
 # Each takes the result it stands beside.
 _PAGES: Final[dict[type, Callable[[Any, Origin], Page]]] = {
     Analysis: analysis_page,
@@ -63,8 +66,16 @@ def html(result: Reviewable, origin: Origin) -> str:
     if text.isprintable():
         return text
     return "".join(
-        sign if sign.isprintable() or sign == "\n" else "\N{REPLACEMENT CHARACTER}" for sign in text
+        sign
+        if sign.isprintable() or sign in "\n\N{NO-BREAK SPACE}"
+        else "\N{REPLACEMENT CHARACTER}"
+        for sign in text
     )
+
+
+def _together(text: str) -> str:
+    """Return a text in which no line breaks between a number and its unit."""
+    return _UNIT.sub("\N{NO-BREAK SPACE}", text)
 
 
 @cache
@@ -77,4 +88,5 @@ def _template() -> Template:
         lstrip_blocks=True,
         keep_trailing_newline=True,
     )
+    environment.filters["together"] = _together
     return environment.get_template("page.html")

@@ -49,8 +49,8 @@ def time_table(sides: Sides) -> Table:
     ]
     headings = (
         Heading("stage"),
-        Heading("output"),
-        Heading("switches", "chart", axis.ruler("Time")),
+        Heading("output", "name"),
+        Heading(f"switches, {axis.scale.unit}", "chart", axis.ruler("Time")),
         *(Heading(f"delay {when}, {delay.unit}".replace(" ,", ","), "number") for when in whens),
         *(Heading(f"width {when}, {width.unit}".replace(" ,", ","), "number") for when in whens),
     )
@@ -77,7 +77,7 @@ def effort_table(sides: Sides) -> Table:
         Heading("stage"),
         Heading("stage effort", "chart", axis.ruler("Stage effort")),
         *(Heading(f"f {when}".strip(), "number") for when in whens),
-        Heading("g × h × b" + (" after" if two else "")),
+        Heading("g × h × b" + (" after" if two else ""), "name"),
         Heading("far off, held by" if sides.holds else "far off"),
     )
     legend: tuple[Element, ...] = (key("best", f"best stage effort {shown.number(best)}"),)
@@ -114,8 +114,8 @@ def load_table(sides: Sides, tau: float) -> Table:
     headings = [
         Heading("stage"),
         Heading("when"),
-        Heading("charged delay", "chart", time.ruler("Charged delay")),
-        Heading("capacitance", "chart", load.ruler("Capacitance")),
+        Heading(f"charged delay, {time.scale.unit}", "chart", time.ruler("Charged delay")),
+        Heading(f"capacitance, {load.scale.unit}", "chart", load.ruler("Capacitance")),
     ]
     legend = tuple(
         key(f"part {kind}", name) for kind, name in zip(_KINDS, _KIND_NAMES, strict=True)
@@ -123,7 +123,7 @@ def load_table(sides: Sides, tau: float) -> Table:
     if sides.before is None:
         headings.pop(1)
         rows = [(row[0], *row[2:]) for row in rows]
-    return _table("Where time and load go", tuple(headings), rows, legend)
+    return _table("Charged delay and capacitance of each stage", tuple(headings), rows, legend)
 
 
 def _table(
@@ -140,11 +140,11 @@ def _table(
 def _stage_cell(pair: Pair) -> Cell:
     gates = dict.fromkeys(one.stage.instance for one in pair.seen)
     shown = [_EDGES.shorten(gate, 28) for gate in gates]
-    return Cell(f"{pair.number}  " + "\n".join(shown))
+    return Cell(f"{pair.number:<4}" + "\n    ".join(shown))
 
 
 def _output(one: Seen) -> str:
-    return f"{_EDGES.edge(one.stage.edge)} {_EDGES.shorten(one.stage.output, 20)}"
+    return f"{_EDGES.edge(one.stage.edge)}\N{NO-BREAK SPACE}{_EDGES.shorten(one.stage.output, 18)}"
 
 
 def _figure(pair: Pair, when: str, shown: object, name: str) -> str:

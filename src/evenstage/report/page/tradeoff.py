@@ -161,4 +161,4 @@ def _point_table(points: Sequence[TradePoint], bound: float | None) -> Table:
         Heading(f"worst charged delay, {delay.unit}", "number"),
         Heading(f"total width, {width.unit}", "number"),
     )
-    return Table("The same in numbers", headings, tuple(rows))
+    return Table("The same in numbers", headings, tuple(rows), names=False)

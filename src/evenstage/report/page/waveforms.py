@@ -149,7 +149,7 @@ def _stage_table(path: SimulatedPath, when: str) -> Table:
     delay = Scale.of([*delays, path.delay, path.estimated_delay], "s")
     rows = [
         (
-            Cell(f"{place}  {_PAPER.shorten(one.estimate.instance, 28)}"),
+            Cell(f"{place:<4}{_PAPER.shorten(one.estimate.instance, 28)}"),
             Cell(_PAPER.edge(one.estimate.edge) + " " + _PAPER.shorten(one.estimate.output, 20)),
             Cell(delay.number(one.estimate.delay)),
             Cell(delay.number(one.delay)),
