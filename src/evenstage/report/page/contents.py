@@ -128,7 +128,7 @@ def sizing_page(sizing: Sizing, origin: Origin) -> Page:
     sections = [
         Section("quality", "How good the widths are", _quality(sizing)),
         *_path_sections(old, after.paths[0], after, holds),
-        Section("trade", "Total width against delay", _trade(sizing)),
+        Section("trade", "What speed costs", _trade(sizing)),
         Section("changes", "Changes", (table,) if table else ()),
         Section("ends", "Path ends", end_parts(both, origin.delay)),
         Section("block", "The block", (_totals(before, after),)),
@@ -273,11 +273,24 @@ def _quality(sizing: Sizing) -> tuple[Part, ...]:
 
 
 def _trade(sizing: Sizing) -> tuple[Part, ...]:
-    points = [TradePoint(sizing.total_width_before, worst_charged(sizing.before), "today")]
+    """Return what is known of the trade: today, the answer, the bound, and the curve if asked."""
+    curve = sizing.trade_off
+    what = curve.spend if curve else "width"
+    points = [_point(sizing.before, what, "today")]
     if sizing.changes:
-        points.append(TradePoint(sizing.total_width_after, worst_charged(sizing.after), "answer"))
+        points.append(_point(sizing.after, what, "answer"))
+    if curve is not None:
+        points += [TradePoint(one.spend, one.charged_delay) for one in curve.points]
+        if curve.knee is not None:
+            knee = curve.points[curve.knee]
+            points.append(TradePoint(knee.spend, knee.charged_delay, "knee"))
     least = sizing.least_delay if sizing.least_delay > 0 else None
-    return trade_parts(points, least)
+    return trade_parts(points, least, what)
+
+
+def _point(analysis: Analysis, what: str, label: str) -> TradePoint:
+    spend = analysis.total_width if what == "width" else analysis.switched_cap
+    return TradePoint(spend, worst_charged(analysis), label)
 
 
 def _totals(before: Analysis, after: Analysis) -> Table:

@@ -56,12 +56,9 @@ def end_parts(
         for _, analysis in analyses
     )
     strips = tuple(_strip(name, one, axis, goals, each) for name, one in analyses)
-    caption = (
-        f"Each dot is {counted(each, 'path end')} at its latest arrival"
-        f"{' or fewer' if each > 1 else ''}; the marked line is when they are required."
-    )
-    if not goals:
-        caption = caption.split(";", maxsplit=1)[0] + "; no time is required."
+    dot = "is one path end" if each == 1 else f"stands for up to {each} path ends"
+    caption = f"Each dot {dot}, at the latest arrival."
+    caption += " The marked line is when they are required." if goals else " No time is required."
     legend = (key("best", "required at"),) if goals else ()
     return Figure(strips, caption, legend), _end_table(analyses[-1][1])
 
@@ -120,7 +117,7 @@ def _end_table(analysis: Analysis) -> Table:
         alike = (scale.text(end.delay), end.edge, end.required, end.why)
         groups.setdefault((family_of(end.net), *alike), []).append(end)
     shown = list(groups.values())[:_ROWS]
-    headings = (
+    headings: tuple[Heading, ...] = (
         Heading("path end"),
         Heading("how many", "number"),
         Heading("edge"),
@@ -132,6 +129,8 @@ def _end_table(analysis: Analysis) -> Table:
     least = scale.text(min(end.delay for end in analysis.ends))
     remark = f"{left} more, down to {least}, are in the JSON." if left else ""
     rows = tuple(_end_row(group, paper, scale) for group in shown)
+    if all(end.required is None for end in analysis.ends):
+        headings, rows = (*headings[:4], *headings[5:]), tuple((*r[:4], *r[5:]) for r in rows)
     return Table("The latest path ends", headings, rows, remark=remark, sortable=True)
 
 

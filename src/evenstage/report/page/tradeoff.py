@@ -1,4 +1,4 @@
-"""Total width against delay: what is known of the trade between them."""
+"""Total width, or switched capacitance, against delay: what is known of the trade."""
 
 from __future__ import annotations
 
@@ -24,6 +24,9 @@ _RIGHT: Final = 24
 _TOP: Final = 30
 _BOTTOM: Final = 46
 
+#: What is spent, and the unit it is measured in.
+_SPENT: Final = {"width": ("total width", "m"), "energy": ("switched capacitance", "F")}
+
 
 @dataclass(frozen=True, slots=True)
 class TradePoint:
@@ -31,18 +34,20 @@ class TradePoint:
 
     Parameters
     ----------
-    width, delay : float
-        m and s.
+    spend, delay : float
+        m of total width or F of switched capacitance; s, the worst charged delay.
     label : str
         Empty for a point that is there for the curve alone.
     """
 
-    width: float
+    spend: float
     delay: float
     label: str = ""
 
 
-def trade_parts(points: Sequence[TradePoint], bound: float | None) -> tuple[Part, ...]:
+def trade_parts(
+    points: Sequence[TradePoint], bound: float | None, what: str = "width"
+) -> tuple[Part, ...]:
     """Return the points on a plane of delay and total width, and the same as a table.
 
     Parameters
@@ -51,25 +56,31 @@ def trade_parts(points: Sequence[TradePoint], bound: float | None) -> tuple[Part
         With unlabelled ones they make a curve.
     bound : float, optional
         s; no widths within the limits are faster.
+    what : str
+        What is spent: ``width`` or ``energy``.
     """
     if not points:
         return ()
     delays = [*(point.delay for point in points), *([bound] if bound else [])]
-    widths = [point.width for point in points]
-    across, upward = _axis(delays, "s"), _axis(widths, "m")
-    drawn = [*_frame(across, upward)]
+    name, unit = _SPENT[what]
+    widths = [point.spend for point in points]
+    across, upward = _axis(delays, "s"), _axis(widths, unit)
+    drawn = [*_frame(across, upward, what)]
     if bound:
         x = _x(across, bound)
         drawn.append(element("line", x1=x, x2=x, y1=_TOP, y2=_HEIGHT - _BOTTOM, class_="best"))
         drawn.append(text(x + 6, _TOP - 10, "least possible delay", "strong"))
     curve = sorted((point for point in points if not point.label), key=lambda p: p.delay)
     if len(curve) > 1:
-        places = [f"{number(_x(across, p.delay))},{number(_y(upward, p.width))}" for p in curve]
+        places = [f"{number(_x(across, p.delay))},{number(_y(upward, p.spend))}" for p in curve]
         drawn.append(element("polyline", points=" ".join(places), class_="curve"))
+        for p in curve:
+            x, y = _x(across, p.delay), _y(upward, p.spend)
+            drawn.append(element("circle", cx=x, cy=y, r=2.5, class_="joint"))
     named = [point for point in points if point.label]
     drawn.extend(_markers(named, across, upward))
-    label = "Total width against delay: " + "; ".join(
-        f"{p.label} {engineering(p.delay, 's')}, {engineering(p.width, 'm')}" for p in named
+    label = f"{name} against delay: ".capitalize() + "; ".join(
+        f"{p.label} {engineering(p.delay, 's')}, {engineering(p.spend, unit)}" for p in named
     )
     chart = picture(
         label,
@@ -79,8 +90,10 @@ def trade_parts(points: Sequence[TradePoint], bound: float | None) -> tuple[Part
         height=_HEIGHT,
         viewBox=f"0 0 {_WIDTH} {_HEIGHT}",
     )
-    caption = "Worst charged delay to the right, total transistor width upwards."
-    return Figure((chart,), caption), _point_table(named, bound)
+    caption = f"Worst charged delay to the right, {name} upwards."
+    if len(curve) > 1:
+        caption += " The curve is the least for each delay, off the grid."
+    return Figure((chart,), caption), _point_table([*named, *curve], bound, (name, unit))
 
 
 def _axis(values: Sequence[float], unit: str) -> Axis:
@@ -97,13 +110,13 @@ def _y(axis: Axis, value: float) -> float:
     return _HEIGHT - _BOTTOM - axis.at(value) * (_HEIGHT - _TOP - _BOTTOM)
 
 
-def _frame(across: Axis, upward: Axis) -> list[Element]:
+def _frame(across: Axis, upward: Axis, what: str) -> list[Element]:
     floor, right = _HEIGHT - _BOTTOM, _WIDTH - _RIGHT
     drawn = [
         element("line", x1=_LEFT, x2=right, y1=floor, y2=floor, class_="frame"),
         element("line", x1=_LEFT, x2=_LEFT, y1=_TOP, y2=floor, class_="frame"),
         text(right, _HEIGHT - 8, f"delay, {across.scale.unit}", "tick", "end"),
-        text(0, 14, f"width, {upward.scale.unit}", "tick"),
+        text(0, 14, f"{what}, {upward.scale.unit}", "tick"),
     ]
     for value in across.ticks():
         x = _x(across, value)
@@ -121,7 +134,7 @@ def _markers(points: Sequence[TradePoint], across: Axis, upward: Axis) -> list[E
     drawn: list[Element] = []
     taken: list[tuple[float, float, float]] = []
     for place, point in enumerate(points):
-        x, y = _x(across, point.delay), _y(upward, point.width)
+        x, y = _x(across, point.delay), _y(upward, point.spend)
         long = 7.5 * len(point.label)
         to_right = x + 14 + long < _WIDTH - _RIGHT
         left = x + 12 if to_right else x - 12 - long
@@ -148,17 +161,21 @@ def _marker(place: int, x: float, y: float) -> Element:
     return element("polygon", points=corners, class_="dot after")
 
 
-def _point_table(points: Sequence[TradePoint], bound: float | None) -> Table:
+def _point_table(
+    points: Sequence[TradePoint], bound: float | None, spent: tuple[str, str]
+) -> Table:
+    name, unit = spent
     delay = Scale.of([*(p.delay for p in points), *([bound] if bound else [])], "s")
-    width = Scale.of((p.width for p in points), "m")
+    width = Scale.of((p.spend for p in points), unit)
     rows = [
-        (Cell(p.label), Cell(delay.number(p.delay)), Cell(width.number(p.width))) for p in points
+        (Cell(p.label or "on the curve"), Cell(delay.number(p.delay)), Cell(width.number(p.spend)))
+        for p in points
     ]
     if bound:
         rows.append((Cell("least possible delay"), Cell(delay.number(bound)), Cell("–")))
     headings = (
         Heading("widths"),
         Heading(f"worst charged delay, {delay.unit}", "number"),
-        Heading(f"total width, {width.unit}", "number"),
+        Heading(f"{name}, {width.unit}", "number"),
     )
     return Table("The same in numbers", headings, tuple(rows), names=False)
