@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import io
+import re
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 import pytest
 
+from evenstage import flow
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading.read import read_bytes
 from evenstage.netlist.rewriting.edits import rewrite
@@ -16,6 +18,9 @@ from support.large_netlists import flat
 
 if TYPE_CHECKING:
     from collections.abc import Callable
+
+
+GAP: Final = re.compile(r"sizing, at most (\S+) % from the best")
 
 
 class Terminal(io.StringIO):
@@ -73,6 +78,21 @@ class TestTell:
         assert reading == sorted(reading)
         assert all(0 <= done < 1 for done in reading)
 
+    @pytest.mark.parametrize("small", [True, False])
+    def test_sizing_tells_its_gap_falling(
+        self, *, small: bool, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+    ) -> None:
+        """By either optimiser."""
+        monkeypatch.setattr("evenstage.sizing.optimum.is_small", lambda _: small)
+        heard: list[str] = []
+        (tmp_path / "flat.sp").write_bytes(flat(1200))
+        with listening(lambda stage, _: heard.append(stage)):
+            flow.resize(tmp_path / "flat.sp", flow.Question())
+        assert heard.index("recognising") < heard.index("timing") < heard.index("sizing")
+        gaps = [float(found[1]) for one in heard if (found := GAP.fullmatch(one))]
+        assert len(gaps) > 3
+        assert min(gaps) < 0.02 < max(gaps)
+
 
 class TestShownOn:
     def test_short_work_shows_nothing(self, clock: Callable[[float], None]) -> None:
@@ -103,6 +123,18 @@ class TestShownOn:
                 tell("reading", 0.1)
                 clock(0.01)
             assert terminal.getvalue().count("reading") == 2
+
+    @pytest.mark.parametrize("stream", [None, io.StringIO(), Terminal()])
+    def test_interrupt_says_what_it_interrupted(self, stream: io.StringIO | None) -> None:
+        def interrupted() -> None:
+            with shown_on(stream):
+                tell("reading", 0.1)
+                tell("laying out", 0.9)
+                raise KeyboardInterrupt
+
+        with pytest.raises(KeyboardInterrupt) as caught:
+            interrupted()
+        assert caught.value.__notes__ == ["laying out"]
 
     def test_line_goes_when_the_work_fails(self, clock: Callable[[float], None]) -> None:
         terminal = Terminal()

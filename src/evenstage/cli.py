@@ -59,8 +59,9 @@ def main(arguments: Sequence[str]) -> int:
     except EvenstageError as error:
         _say(str(error))
         return WRONG_INPUT
-    except KeyboardInterrupt:
-        _say("interrupted; no file is left half-written")
+    except KeyboardInterrupt as stop:
+        stage = "".join(f" while {note}" for note in getattr(stop, "__notes__", ()))
+        _say(f"interrupted{stage}; no file is left half-written")
         return INTERRUPTED
     except BrokenPipeError:
         # Whoever read the report has read enough.

@@ -35,6 +35,7 @@ from evenstage.process.generic import at_length
 from evenstage.process.infer import infer_process
 from evenstage.process.read import read_process
 from evenstage.process.write import process_text
+from evenstage.progress import tell
 from evenstage.report.graph_document import graph_document
 from evenstage.report.page import render
 from evenstage.report.page.origin import FileDigest, Origin
@@ -332,6 +333,7 @@ def resize(
         return sizing
     texts = _texts(block, sizing, record, asked)
     write_files(output_files(block.netlist, texts, output), force=force)
+    tell(f"checking '{output}', which is written")
     lost = lost_includes(block.netlist, output)
     structure = _read_back(block, output, lost) if texts else None
     return replace(sizing, notices=(*sizing.notices, *lost), structure=structure)

@@ -42,6 +42,24 @@ def tell(stage: str, done: float | None = None) -> None:
         listener(stage, done)
 
 
+def tell_gap(gap: float) -> None:
+    """Say how far a sizing can still be from the best.
+
+    Parameters
+    ----------
+    gap : float
+        Relative distance of the best sizes so far to the best bound so far; infinite before both.
+
+    Examples
+    --------
+    >>> with listening(lambda stage, done: print(stage)):
+    ...     tell_gap(0.0042)
+    sizing, at most 0.42 % from the best
+    """
+    percent = 100 * max(gap, 1e-5)
+    tell(f"sizing, at most {percent:.2g} % from the best" if gap < 1.0 else "sizing")
+
+
 @contextmanager
 def listening(listener: Listener) -> Iterator[None]:
     """Let somebody hear of the work inside.
@@ -63,33 +81,38 @@ def listening(listener: Listener) -> Iterator[None]:
 def shown_on(stream: TextIO | None) -> Iterator[None]:
     """Show the progress of the work inside in one line of a terminal, gone afterwards.
 
+    An interrupt of the work leaves with a note that says which stage it was in.
+
     Parameters
     ----------
     stream : TextIO, optional
         Nothing is shown where it is None or no terminal.
     """
-    if stream is None or not stream.isatty():
-        yield
-        return
-    line = _Line(stream)
+    line = _Line(stream if stream is not None and stream.isatty() else None)
     try:
         with listening(line.show):
             yield
+    except KeyboardInterrupt as stop:
+        if line.stage:
+            stop.add_note(line.stage)
+        raise
     finally:
         line.clear()
 
 
 class _Line:
-    """One line of a terminal, written over itself."""
+    """One line of a terminal, if there is one, written over itself; and the stage last told."""
 
-    def __init__(self, stream: TextIO) -> None:
+    def __init__(self, stream: TextIO | None) -> None:
+        self.stage = ""
         self._stream = stream
         self._width = 0
         self._due = time.monotonic() + _PATIENCE
 
     def show(self, stage: str, done: float | None) -> None:
         """Write a stage, unless the line was written a moment ago."""
-        if time.monotonic() >= self._due:
+        self.stage = stage
+        if self._stream is not None and time.monotonic() >= self._due:
             self._write(stage if done is None else f"{stage} {min(max(done, 0.0), 1.0):4.0%}")
             self._due = time.monotonic() + _PAUSE
 
@@ -100,6 +123,7 @@ class _Line:
             self._write("")
 
     def _write(self, text: str) -> None:
+        assert self._stream is not None
         with suppress(OSError, ValueError):  # a closed terminal must not end the work
             self._stream.write(f"\r{text:<{self._width}}")
             self._stream.flush()

@@ -28,6 +28,7 @@ from evenstage.errors import CircuitError, Notice
 from evenstage.netlist.wording import counted
 from evenstage.pattern import select
 from evenstage.process.unit import unit_inverter
+from evenstage.progress import tell
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
@@ -66,6 +67,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         raise CircuitError(
             f"'{devices.top or 'the top level'}' holds no transistors", code="no-transistors"
         )
+    tell("recognising")
     supplies = find_supplies(devices, brief)
     apart, levels = set_apart(devices, supplies)
     logic = np.ones(len(devices), bool)

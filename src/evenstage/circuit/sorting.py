@@ -11,6 +11,7 @@ from evenstage.circuit.context import Context, Surroundings
 from evenstage.circuit.families import FAMILIES
 from evenstage.circuit.gate import GateForm, recognise_network
 from evenstage.circuit.groups import AlikeGroups
+from evenstage.progress import tell
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -50,7 +51,8 @@ def sort_groups(devices: Devices, alike: Sequence[AlikeGroups]) -> Sorted:
 
 def _static(alike: Sequence[AlikeGroups]) -> Sorted:
     gates, strange = [], []
-    for some in alike:
+    for done, some in enumerate(alike):
+        tell("recognising", done / len(alike))
         form = recognise_network(some.network)
         if isinstance(form, GateForm):
             gates.append((form, some))

@@ -13,6 +13,7 @@ from evenstage.circuit.kinds.kept import with_nets, without_keepers
 from evenstage.circuit.rows import distinct_rows
 from evenstage.circuit.sorting import rows_of
 from evenstage.circuit.stage import Facts, StageForm, recognise_stage
+from evenstage.progress import tell
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
@@ -53,7 +54,8 @@ def sort_stages(devices: Devices, found: Sorted, brief: Brief | None) -> StagesF
     if found.strange:
         around = _Around(devices, found, brief)
         surroundings = Surroundings(devices, found.gates, [some for _, some in found.strange])
-        for reason, whole in found.strange:
+        for done, (reason, whole) in enumerate(found.strange):
+            tell("recognising stages", done / len(found.strange))
             for context, placed in surroundings.split(whole):
                 some = rows_of(whole, placed)
                 for facts, rows in around.split(some):

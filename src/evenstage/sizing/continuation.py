@@ -18,6 +18,7 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
+from evenstage.progress import tell_gap
 from evenstage.sizing.hessian import Hessian
 from evenstage.sizing.lagrangian import Weights
 from evenstage.sizing.newton import State, direction, is_enough, minimised
@@ -153,6 +154,7 @@ class Walk:
             price = point.prices.goal
             self.best.offer(point)
             self.best.prove(point, self.tolerance)
+            tell_gap(self.best.gap)
             tangent, work = self._tangent(state)
             work += self._try_along(point, tangent)
             self.steps += state.steps

@@ -12,6 +12,7 @@ from evenstage.errors import Notice
 from evenstage.netlist.rewriting.handles import width_handles
 from evenstage.netlist.rewriting.sized_block import Slot
 from evenstage.netlist.rewriting.widths import WidthPlan
+from evenstage.progress import tell
 from evenstage.sizing.block_engine import engine_of
 from evenstage.sizing.changes import Writing
 from evenstage.sizing.copies import shared_sizes
@@ -95,6 +96,7 @@ class _Job:
 
     def run(self) -> Sizing:
         """Do it."""
+        tell("sizing")
         rounding, drawn = self._rounded()
         writing = Writing(self.timing, self.analysis.paths[0], rounding)
         plan = writing.plan(drawn.slot_width)

@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
+from evenstage.progress import tell_gap
 from evenstage.sizing.bound import lower_bound
 from evenstage.sizing.central_path import central_path
 from evenstage.sizing.goals import Budget, Cheapest, Fastest
@@ -83,6 +84,7 @@ class Search:
             self.iterations += 1
             self._try(shape.sizes(point.z))
             self._prove(shape.prices(point.price))
+            tell_gap(self.gap)
             narrow, since = (self.gap, 0) if self.gap < 0.5 * narrow else (narrow, since + 1)
             # Half the tolerance: the other half is for tidying up.
             if self.gap <= 0.5 * tolerance or self.objective <= enough:

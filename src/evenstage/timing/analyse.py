@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.errors import CircuitError, Notice
+from evenstage.progress import tell
 from evenstage.timing.graph import timing_graph
 from evenstage.timing.results import Analysis, Counts, PathEnd
 from evenstage.timing.search import latest_path, slowest_paths
@@ -42,6 +43,7 @@ def time(
     if not len(circuit):
         reasons = dict.fromkeys(some.reason for some in circuit.not_understood)
         raise CircuitError("; ".join(["no gate found", *reasons]), code="no-gate")
+    tell("timing")
     unit = yardstick(circuit.process)
     return sweep(circuit, timing_graph(circuit, unit, brief, start=start, end=end), unit)
 
