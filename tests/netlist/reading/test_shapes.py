@@ -88,3 +88,9 @@ def test_a_remark_may_begin_inside_the_parentheses_of_an_expression(remark: str)
     cases = [f"c1 a b (a {remark}\n", f"m1 a b c d nch w=f(1, {remark}\n+ 2) l=1u\n"]
     cases += [f"m1 a b c d nch w=f(g( 1 ),{remark[:-1]}) l=1u\n"]
     assert compare([*cases, *cases]).differences == ()
+
+
+@pytest.mark.parametrize("quote", ["'", '"'])
+def test_a_sign_behind_a_continuation_is_no_remark_while_a_quote_is_open(quote: str) -> None:
+    case = f"d3 it{quote}s a b\n+$ m = {quote}a $ b{quote} $ end\n"
+    assert compare([case, case]) == (2, 0, ())
