@@ -237,6 +237,7 @@ def _fit_process(asked: argparse.Namespace) -> flow.Result:
 def _question(asked: argparse.Namespace) -> flow.Question:
     from evenstage import flow
 
+    conflicts = getattr(asked, "conflicts", None)
     return flow.Question(
         process=asked.process[0] if asked.process else None,
         corners=tuple(asked.process[1:]),
@@ -245,6 +246,7 @@ def _question(asked: argparse.Namespace) -> flow.Question:
         start=getattr(asked, "from", None),
         end=getattr(asked, "to", None),
         count=getattr(asked, "count", 1),
+        **({} if conflicts is None else {"conflicts": conflicts}),
     )
 
 
@@ -279,6 +281,12 @@ def _parser() -> argparse.ArgumentParser:
     analyse.add_argument("netlist", type=_file, metavar="NETLIST")
     analyse.add_argument(
         "--count", type=_count, default=1, metavar="K", help="how many slowest paths (1)"
+    )
+    analyse.add_argument(
+        "--conflicts",
+        type=_conflicts,
+        metavar="N",
+        help="give up the search for a path's input vector after N conflicts (20000; 0: no search)",
     )
     _shared(analyse)
     resize = _command(commands, "resize", _resize, "new widths, written into a new netlist")
@@ -478,6 +486,13 @@ def _positive(text: str) -> float:
         message = f"must be positive, got '{text}'"
         raise argparse.ArgumentTypeError(message)
     return value
+
+
+def _conflicts(text: str) -> int:
+    if not text.isascii() or not text.isdigit():
+        message = f"must be a whole number, 0 or more, got '{text}'"
+        raise argparse.ArgumentTypeError(message)
+    return int(text)
 
 
 def _percent(text: str) -> float:

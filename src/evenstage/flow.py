@@ -56,6 +56,7 @@ from evenstage.timing.analyse import analyse as find_paths
 from evenstage.timing.compare import compare
 from evenstage.timing.corners import Corners, CornersDifference, merged
 from evenstage.timing.results import Analysis, Difference
+from evenstage.timing.vectors import CONFLICTS, with_vectors
 from evenstage.timing.yardstick import yardstick
 
 if TYPE_CHECKING:
@@ -121,6 +122,8 @@ class Question:
         Nets that paths must start from or end at.
     count : int
         How many slowest paths are wanted.
+    conflicts : int
+        After so many the search for the vector of one path is given up; 0: no search.
     """
 
     process: Path | None = None
@@ -130,6 +133,7 @@ class Question:
     start: str | None = None
     end: str | None = None
     count: int = 1
+    conflicts: int = CONFLICTS
 
 
 @dataclass(frozen=True, slots=True)
@@ -243,7 +247,8 @@ def recognise(path: Path, question: Question, graph: Path | None = None) -> Inve
 
 def analyse(path: Path, question: Question) -> Analysis | Corners:
     """Find the slowest paths of a netlist, over all corners asked for; raises as `load`."""
-    analyses = [block.analysis for block in _in_corners(path, question)]
+    blocks = _in_corners(path, question)
+    analyses = [with_vectors(block.analysis, question.conflicts) for block in blocks]
     return merged(analyses) if question.corners else analyses[0]
 
 

@@ -11,7 +11,7 @@ from evenstage.circuit.capacitance import at_nets
 from evenstage.errors import CircuitError, SettingsError
 from evenstage.logic.cover import cover
 from evenstage.logic.evaluate import evaluate, input_table
-from evenstage.logic.order import find_groups
+from evenstage.logic.order import fan_in, find_groups
 from evenstage.logic.switches import UNKNOWN, switches_of
 from evenstage.pattern import nearest_names
 
@@ -166,18 +166,12 @@ def net_function(circuit: Circuit, name: str) -> NetFunction:
     net = _net(circuit, name)
     every = switches(circuit)
     given = circuit.supplies.is_supply.copy()
-    outside = _inputs(circuit, every)
+    outside = outside_nets(circuit, every)
     outside[net] = False
     given |= outside
     groups = find_groups(every, given)
-    reached = np.zeros(groups.count, bool)
-    if groups.of_net[net] >= 0:
-        reached[groups.of_net[net]] = True
-    while True:
-        further = np.unique(groups.awaited[reached[groups.waits]])
-        if reached[further].all():
-            break
-        reached[further] = True
+    own = groups.of_net[[net]]
+    reached = fan_in(groups, own[own >= 0])
     part = every.some((groups.of_device >= 0) & reached[groups.of_device])
     touched = np.unique(np.concatenate([part.drain, part.gate, part.source]))
     leaves = touched[~circuit.supplies.is_supply[touched] & (groups.of_net[touched] < 0)]
@@ -193,7 +187,7 @@ def net_function(circuit: Circuit, name: str) -> NetFunction:
     return NetFunction(names[net], tuple(names[leaf] for leaf in leaves.tolist()), table)
 
 
-def _inputs(circuit: Circuit, every: Switches) -> BoolArray:
+def outside_nets(circuit: Circuit, every: Switches) -> BoolArray:
     """Tell which nets are decided from outside, shape (nets,): ports no gate and no supply drives.
 
     A port that pass transistors alone join to other nets is one too.

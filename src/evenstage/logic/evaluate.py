@@ -41,7 +41,9 @@ class Evaluation:
     names: Sequence[str] = field(repr=False)
 
 
-def evaluate(switches: Switches, inputs: Mapping[int, Values]) -> Evaluation:
+def evaluate(
+    switches: Switches, inputs: Mapping[int, Values], *, strong: bool = True
+) -> Evaluation:
     """Return what every net is worth.
 
     Loops of groups are settled in unit delays from the values before; what goes on changing there
@@ -53,6 +55,8 @@ def evaluate(switches: Switches, inputs: Mapping[int, Values]) -> Evaluation:
     inputs : mapping of int to Values, shape (steps, vectors) each
         Values of nets, by id. Vectors are independent of each other; along the steps, storage and
         charge are kept. In the first step they are unknown.
+    strong : bool
+        Whether strengths are wanted; without, all are ``KEPT``.
     """
     given = switches.supply != UNKNOWN
     given[list(inputs)] = True
@@ -70,7 +74,8 @@ def evaluate(switches: Switches, inputs: Mapping[int, Values]) -> Evaluation:
                 now[net] = wanted[step, part]
             for batch in order:
                 _settle_batch(switches, batch, now)
-                strength[batch.nets[: batch.free], step, part] = strengths(switches, batch, now)
+                if strong:
+                    strength[batch.nets[: batch.free], step, part] = strengths(switches, batch, now)
             values[:, step, part] = now
     strength[given] = GIVEN
     for array in (values, strength):

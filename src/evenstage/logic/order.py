@@ -100,6 +100,26 @@ def find_groups(switches: Switches, given: BoolArray) -> Groups:
     return Groups(of_net, of_device, waits, awaited, len(found))
 
 
+def fan_in(groups: Groups, seeds: IntArray) -> BoolArray:
+    """Tell which groups some groups wait for, themselves included, shape (groups,)."""
+    return _closure(groups.count, groups.awaited, groups.waits, seeds)
+
+
+def fan_out(groups: Groups, seeds: IntArray) -> BoolArray:
+    """Tell which groups wait for some groups, themselves included, shape (groups,)."""
+    return _closure(groups.count, groups.waits, groups.awaited, seeds)
+
+
+def _closure(count: int, target: IntArray, source: IntArray, seeds: IntArray) -> BoolArray:
+    reached = np.zeros(count, bool)
+    reached[seeds] = True
+    while True:
+        further = target[reached[source]]
+        if reached[further].all():
+            return reached
+        reached[further] = True
+
+
 def batches(switches: Switches, given: BoolArray) -> tuple[Batch, ...]:
     """Return the groups in an order in which each finds all it waits for settled."""
     groups = find_groups(switches, given)

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 from evenstage.report.block_text import block_lines, end_lines, finished, notice_lines
 from evenstage.report.paper import Paper
 from evenstage.report.path_text import effort_lines, legend, path_lines
+from evenstage.report.vector_text import false_lines, vector_lines
 from evenstage.report.words import block_name, punctuality, rank, route, section, takes
 from evenstage.units import engineering
 
@@ -43,6 +44,9 @@ def analysis_report(
         lines += ["", *legend(paper, analysis.yardstick)]
         title = f"Path ends, {rank(analysis)} first"
         lines += section(title, end_lines(paper, analysis.ends))
+    if analysis.false_paths:
+        title = "False paths, slower but never taken: no input vector lets them switch"
+        lines += section(title, false_lines(paper, analysis.false_paths))
     lines += section("The block", block_lines(paper, analysis))
     if notices:
         lines += section("Notices", notice_lines(paper, analysis.notices))
@@ -96,6 +100,12 @@ def path_section(
             f"The {rank(analysis)} path, stage by stage",
             *path_lines(paper, path, branches=True),
         ]
-        return ["", *lines, "", *effort_lines(paper, path, analysis.yardstick)]
+        efforts = effort_lines(paper, path, analysis.yardstick)
+        return ["", *lines, "", *efforts, *vector_lines(paper, path)]
     title = f"Path {number}: {route(path)}{where}, {takes(path, analysis.yardstick)}"
-    return ["", *paper.paragraph(title), *path_lines(paper, path, branches=False)]
+    return [
+        "",
+        *paper.paragraph(title),
+        *path_lines(paper, path, branches=False),
+        *vector_lines(paper, path),
+    ]

@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.fitting.deck import Deck
     from evenstage.fitting.results import Fit
+    from evenstage.logic.paths import PathVector
     from evenstage.logic.same import StructureCheck
     from evenstage.report.circuit_document import Document, JsonValue
     from evenstage.simulation.results import Simulation
@@ -232,6 +233,7 @@ def _analysis(analysis: Analysis) -> Document:
         "input_caps": [{"net": net, "cap_f": cap} for net, cap in analysis.input_caps],
         "notices": [notice_document(notice) for notice in analysis.notices],
         "paths": [path_document(path) for path in analysis.paths],
+        "false_paths": [path_document(path) for path in analysis.false_paths],
         "ends": [end_document(end) for end in analysis.ends],
     }
 
@@ -275,8 +277,16 @@ def path_document(path: Path) -> Document:
         "best_stage_effort": path.best_stage_effort,
         "best_stage_count": path.best_stage_count,
         "least_delay_s": path.least_delay,
+        "vector": _vector(path.vector),
         "stages": [_stage(stage) for stage in path.stages],
     }
+
+
+def _vector(vector: PathVector | None) -> Document | None:
+    if vector is None:
+        return None
+    held: Document = {name: int(level) for name, level in vector.held}
+    return {"verdict": vector.verdict, "held": held, "reason": vector.reason}
 
 
 def _stage(stage: Stage) -> Document:

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Literal
 
 if TYPE_CHECKING:
     from evenstage.errors import Notice
+    from evenstage.logic.paths import PathVector
     from evenstage.timing.sweep import Timing
 
 Edge = Literal["rise", "fall"]
@@ -110,6 +111,7 @@ class Path:
     ``delay`` is the arrival at its end; it counts from ``start_arrival``, when the input switches
     (plus the delay of an outside driver, where the brief gives one). ``best_stage_effort``,
     ``best_stage_count`` and ``least_delay`` are the textbook answers with today's branching.
+    ``vector`` is what lets the path switch; None where nobody looked.
     """
 
     start: str
@@ -130,6 +132,7 @@ class Path:
     best_stage_count: int
     least_delay: float
     stages: tuple[Stage, ...]
+    vector: PathVector | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -184,6 +187,8 @@ class Analysis:
     notices : tuple of Notice
     timing : Timing, optional
         What everything was read off: circuit, graph and arrivals in columns; not compared.
+    false_paths : tuple of Path
+        Slower than the last of ``paths``, but no input vector lets them switch; slowest first.
     """
 
     source: str
@@ -198,6 +203,7 @@ class Analysis:
     input_caps: tuple[tuple[str, float], ...]
     notices: tuple[Notice, ...]
     timing: Timing | None = field(default=None, repr=False, compare=False)
+    false_paths: tuple[Path, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -1,0 +1,90 @@
+"""A vector for each reported path; false paths apart, and the next ones in their place."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from itertools import islice
+from typing import TYPE_CHECKING, Final
+
+from evenstage.circuit.evaluation import outside_nets, switches
+from evenstage.errors import Notice
+from evenstage.logic.clauses import has_solver
+from evenstage.logic.paths import PathLogic
+from evenstage.timing.search import slowest_paths
+from evenstage.timing.stages import describe
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator
+
+    from evenstage.circuit.circuit import Circuit
+    from evenstage.timing.results import Analysis, Path
+
+CONFLICTS: Final = 20_000
+"""Conflicts after which the search for one path's vector is given up: some seconds."""
+DEVICES_MOST: Final = 200_000
+"""In larger blocks nobody looks for vectors unasked."""
+FALSE_MOST: Final = 100
+"""So many false paths are passed over."""
+
+
+def with_vectors(analysis: Analysis, conflicts: int = CONFLICTS) -> Analysis:
+    """Return an analysis whose paths carry their vectors, false ones replaced by the next slowest.
+
+    Parameters
+    ----------
+    analysis : Analysis
+        With its timing.
+    conflicts : int
+        After so many conflicts the search for one path is given up; 0: nothing is searched.
+    """
+    if not conflicts or analysis.timing is None:
+        return analysis
+    circuit = analysis.timing.circuit
+    if not has_solver():
+        return _noted(
+            analysis,
+            "no-solver",
+            "no input vectors were looked for: the SAT library is missing; install "
+            "evenstage[logic], or say --conflicts 0",
+        )
+    if len(circuit.devices) > DEVICES_MOST:
+        return _noted(
+            analysis,
+            "no-vectors",
+            f"no input vectors were looked for: the block has more than {DEVICES_MOST} transistors",
+        )
+    logic = path_logic(circuit)
+    kept: list[Path] = []
+    false: list[Path] = []
+    for path in _slowest(analysis):
+        vector = logic.vector(_nets(circuit, path), conflicts)
+        (false if vector.verdict == "false" else kept).append(replace(path, vector=vector))
+        if len(kept) == len(analysis.paths) or len(false) > FALSE_MOST:
+            break
+    if not kept:
+        kept, false = false[: len(analysis.paths)], false[len(analysis.paths) :]
+    return replace(analysis, paths=tuple(kept), false_paths=tuple(false))
+
+
+def path_logic(circuit: Circuit) -> PathLogic:
+    """Return a circuit as a block whose paths can be examined."""
+    every = switches(circuit)
+    return PathLogic(every, circuit.supplies.is_supply | outside_nets(circuit, every))
+
+
+def _slowest(analysis: Analysis) -> Iterator[Path]:
+    """Give the paths that are described already, then all further ones."""
+    yield from analysis.paths
+    assert analysis.timing is not None
+    for arcs in islice(slowest_paths(analysis.timing), len(analysis.paths), None):
+        yield describe(analysis.timing, arcs)
+
+
+def _nets(circuit: Circuit, path: Path) -> tuple[tuple[int, bool], ...]:
+    named = [(path.start, path.start_edge), *((s.output, s.edge) for s in path.stages)]
+    found = [(circuit.net_id(name), edge == "rise") for name, edge in named]
+    return tuple((net, rises) for net, rises in found if net is not None)
+
+
+def _noted(analysis: Analysis, code: str, message: str) -> Analysis:
+    return replace(analysis, notices=(*analysis.notices, Notice(code, message)))
