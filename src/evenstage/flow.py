@@ -56,7 +56,7 @@ from evenstage.timing.analyse import analyse as find_paths
 from evenstage.timing.compare import compare
 from evenstage.timing.corners import Corners, CornersDifference, merged
 from evenstage.timing.results import Analysis, Difference
-from evenstage.timing.vectors import CONFLICTS, with_vectors
+from evenstage.timing.vectors import CONFLICTS, false_path_notices, with_vectors
 from evenstage.timing.yardstick import yardstick
 
 if TYPE_CHECKING:
@@ -248,7 +248,11 @@ def recognise(path: Path, question: Question, graph: Path | None = None) -> Inve
 def analyse(path: Path, question: Question) -> Analysis | Corners:
     """Find the slowest paths of a netlist, over all corners asked for; raises as `load`."""
     blocks = _in_corners(path, question)
-    analyses = [with_vectors(block.analysis, question.conflicts) for block in blocks]
+    # In several corners each path stands once, with its worst: false ones stay and say so.
+    analyses = [
+        with_vectors(block.analysis, question.conflicts, replacing=not question.corners)
+        for block in blocks
+    ]
     return merged(analyses) if question.corners else analyses[0]
 
 
@@ -331,9 +335,14 @@ def resize(
         sizing = _already_done(block, record, wishes)
     else:
         sizing = find_widths(block.analysis, block.brief, wishes, original)
+<<<<<<< HEAD
     if curve:
         curved = trade_off(block.analysis, block.brief, wishes, original)
         sizing = replace(sizing, trade_off=curved)
+=======
+        told = false_path_notices(block.analysis)
+        sizing = replace(sizing, notices=(*sizing.notices, *told))
+>>>>>>> a37f9b5 (Print vectors and false paths in reports; examine paths of resize)
     if output is None:
         return sizing
     texts = _texts(block, sizing, record, asked)

@@ -160,7 +160,7 @@ class TestReport:
     def test_false_paths_stand_apart(self, netlist: Path) -> None:
         result = flow.analyse(netlist, flow.Question(start="c0", count=3))
         text = flow.text(result)
-        assert "False paths, slower but never taken" in text
+        assert "False paths, passed over" in text
         assert "  c0 rising to co rising" in text
         assert "none for c0 1 to 0 alone; the path may switch together with others" in text
         assert "  vector    c0 0 to 1 with " in text
@@ -168,6 +168,15 @@ class TestReport:
         assert [path["vector"]["verdict"] for path in document["false_paths"]] == ["false"]
         assert document["paths"][0]["vector"]["verdict"] == "together"
         assert document["paths"][-1]["vector"]["held"]["p0"] == 1
+
+    def test_resizing_counts_a_false_path_and_says_so(self, netlist: Path) -> None:
+        sizing = flow.resize(netlist, flow.Question(start="c0"))
+        assert (sizing.before.paths[0].start_edge, len(sizing.before.paths[0].stages)) == (
+            "rise",
+            10,
+        )
+        (told,) = (notice for notice in sizing.notices if notice.code == "false-path")
+        assert "no input vector lets the slowest path switch, from 'c0' to 'co'" in told.message
 
     def test_nothing_is_said_where_nobody_asks(self, netlist: Path) -> None:
         text = flow.text(flow.analyse(netlist, flow.Question(start="c0", conflicts=0)))

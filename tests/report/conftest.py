@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 import pytest
 
 from evenstage.errors import Notice
+from evenstage.logic.paths import PathVector
 from evenstage.logic.same import StructureCheck
 from evenstage.sizing.results import Change, Sizing, StageHold
 from evenstage.timing.results import (
@@ -182,8 +183,18 @@ def decoder_path(driver: float, row: int = 63) -> Path:
 
 def decoder_analysis(driver: float, *, source: str = "rowdec.sp") -> Analysis:
     """Return the analysis of the invented row decoder."""
-    path = decoder_path(driver)
-    second = replace(decoder_path(driver, row=62), start="a2", required=None)
+    held = (("en", True), ("a0", False), *((f"q{i}", True) for i in range(4)))
+    path = replace(decoder_path(driver), vector=PathVector(verdict="switches", held=held))
+    second = replace(
+        decoder_path(driver, row=62),
+        start="a2",
+        required=None,
+        vector=PathVector(verdict="together"),
+    )
+    false = tuple(
+        replace(decoder_path(driver, row=row), vector=PathVector(verdict="false"))
+        for row in range(10, 17)
+    )
     ends = [
         PathEnd(
             net=f"wl[{63 - i}]",
@@ -209,6 +220,7 @@ def decoder_analysis(driver: float, *, source: str = "rowdec.sp") -> Analysis:
         worst_transition=184e-12,
         total_width=1.2e-3 + 8e9 * driver,
         switched_cap=2.9e-12 + 16 * driver,
+        false_paths=false,
         input_caps=(("clk", 7.2e-15), *((f"a{i}", (3 + i / 4) * 1e-15) for i in range(6))),
         notices=(
             *joined,

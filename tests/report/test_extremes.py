@@ -12,6 +12,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from evenstage.errors import Notice
+from evenstage.logic.paths import PathVector
 from evenstage.logic.same import StructureCheck
 from evenstage.report.machine import (
     analysis_document,
@@ -126,6 +127,13 @@ class Anything:
             side_branches=self.some(self.branch, 6),
         )
 
+    def vector(self) -> PathVector:
+        return PathVector(
+            verdict=self.random.choice(["switches", "false", "together", "unknown"]),
+            held=self.some(lambda: (self.name(), self.random.random() < 0.5), 40),
+            reason=self.name(),
+        )
+
     def path(self) -> Path:
         return Path(
             start=self.name(),
@@ -146,6 +154,7 @@ class Anything:
             best_stage_count=self.number(),
             least_delay=self.time(),
             stages=self.some(self.stage, 6),
+            vector=self.maybe(self.vector),
         )
 
     def end(self) -> PathEnd:
@@ -183,6 +192,7 @@ class Anything:
                 stages=self.number(),
             ),
             paths=(self.path(), *self.some(self.path, 2)),
+            false_paths=self.some(self.path, 8),
             ends=self.some(self.end, 14),
             worst_transition=self.time(),
             total_width=self.width(),

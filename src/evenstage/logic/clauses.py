@@ -63,7 +63,7 @@ class Clauses:
 
     def solve(self, conflicts: int) -> dict[int, bool] | bool | None:
         """Return values of all nets before the edge; False: there are none; None: given up."""
-        from pysat.solvers import Solver  # noqa: PLC0415 - an optional dependency
+        from pysat.solvers import Solver  # noqa: PLC0415 - loaded when somebody asks
 
         with Solver(name="glucose4", bootstrap_with=self._clauses) as solver:
             solver.conf_budget(conflicts)

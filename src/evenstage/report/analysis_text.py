@@ -45,7 +45,7 @@ def analysis_report(
         title = f"Path ends, {rank(analysis)} first"
         lines += section(title, end_lines(paper, analysis.ends))
     if analysis.false_paths:
-        title = "False paths, slower but never taken: no input vector lets them switch"
+        title = "False paths, passed over: no input vector lets them switch"
         lines += section(title, false_lines(paper, analysis.false_paths))
     lines += section("The block", block_lines(paper, analysis))
     if notices:

@@ -188,7 +188,7 @@ class Analysis:
     timing : Timing, optional
         What everything was read off: circuit, graph and arrivals in columns; not compared.
     false_paths : tuple of Path
-        Slower than the last of ``paths``, but no input vector lets them switch; slowest first.
+        Passed over for ``paths``: no input vector lets them switch; slowest first.
     """
 
     source: str

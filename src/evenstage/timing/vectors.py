@@ -27,7 +27,9 @@ FALSE_MOST: Final = 100
 """So many false paths are passed over."""
 
 
-def with_vectors(analysis: Analysis, conflicts: int = CONFLICTS) -> Analysis:
+def with_vectors(
+    analysis: Analysis, conflicts: int = CONFLICTS, *, replacing: bool = True
+) -> Analysis:
     """Return an analysis whose paths carry their vectors, false ones replaced by the next slowest.
 
     Parameters
@@ -36,6 +38,8 @@ def with_vectors(analysis: Analysis, conflicts: int = CONFLICTS) -> Analysis:
         With its timing.
     conflicts : int
         After so many conflicts the search for one path is given up; 0: nothing is searched.
+    replacing : bool
+        Whether false paths are replaced; if not, they stay, and say that they are.
     """
     if not conflicts or analysis.timing is None:
         return analysis
@@ -44,8 +48,8 @@ def with_vectors(analysis: Analysis, conflicts: int = CONFLICTS) -> Analysis:
         return _noted(
             analysis,
             "no-solver",
-            "no input vectors were looked for: the SAT library is missing; install "
-            "evenstage[logic], or say --conflicts 0",
+            "no input vectors were looked for: the SAT library cannot be loaded; install "
+            "python-sat, or say --conflicts 0",
         )
     if len(circuit.devices) > DEVICES_MOST:
         return _noted(
@@ -58,12 +62,30 @@ def with_vectors(analysis: Analysis, conflicts: int = CONFLICTS) -> Analysis:
     false: list[Path] = []
     for path in _slowest(analysis):
         vector = logic.vector(_nets(circuit, path), conflicts)
-        (false if vector.verdict == "false" else kept).append(replace(path, vector=vector))
+        apart = replacing and vector.verdict == "false"
+        (false if apart else kept).append(replace(path, vector=vector))
         if len(kept) == len(analysis.paths) or len(false) > FALSE_MOST:
             break
     if not kept:
         kept, false = false[: len(analysis.paths)], false[len(analysis.paths) :]
     return replace(analysis, paths=tuple(kept), false_paths=tuple(false))
+
+
+def false_path_notices(analysis: Analysis) -> tuple[Notice, ...]:
+    """Return a notice where the slowest path is false."""
+    if analysis.timing is None or not has_solver():
+        return ()
+    circuit = analysis.timing.circuit
+    if len(circuit.devices) > DEVICES_MOST:
+        return ()
+    path = analysis.paths[0]
+    if path_logic(circuit).vector(_nets(circuit, path), CONFLICTS).verdict != "false":
+        return ()
+    message = (
+        f"no input vector lets the slowest path switch, from '{path.start}' to '{path.end}'; the "
+        "widths count it all the same, and [[ignore]] in the brief leaves it out"
+    )
+    return (Notice("false-path", message, names=tuple(stage.output for stage in path.stages)),)
 
 
 def path_logic(circuit: Circuit) -> PathLogic:
