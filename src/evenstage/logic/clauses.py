@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from importlib import import_module
 from importlib.util import find_spec
 from typing import TYPE_CHECKING
 
@@ -39,18 +40,21 @@ class Clauses:
                 for value in (True, False):
                     for cube in cover(relation.table == value):
                         self._add(
-                            [-self._literal(relation.inputs[k], level, after) for k, level in cube],
-                            self._literal(net, value, after),
+                            [
+                                -self._literal(relation.inputs[k], value=level, after=after)
+                                for k, level in cube
+                            ],
+                            self._literal(net, value=value, after=after),
                         )
 
-    def fix(self, net: int, value: bool, *, after: bool) -> None:  # noqa: FBT001 - a value
+    def fix(self, net: int, *, value: bool, after: bool) -> None:
         """Give a net a value."""
-        self._add([], self._literal(net, value, after))
+        self._add([], self._literal(net, value=value, after=after))
 
     def hold(self, net: int) -> None:
         """Keep a net as it is."""
         if self._moved[net]:
-            before, after = (self._literal(net, True, when) for when in (False, True))
+            before, after = (self._literal(net, value=True, after=when) for when in (False, True))
             self._add([-before], after)
             self._add([before], -after)
 
@@ -58,14 +62,14 @@ class Clauses:
         """Forbid vectors of a relation's inputs after the edge."""
         for cube in cover(where):
             self._clauses.append(
-                [-self._literal(relation.inputs[k], level, True) for k, level in cube]
+                [-self._literal(relation.inputs[k], value=level, after=True) for k, level in cube]
             )
 
     def solve(self, conflicts: int) -> dict[int, bool] | bool | None:
         """Return values of all nets before the edge; False: there are none; None: given up."""
-        from pysat.solvers import Solver  # noqa: PLC0415 - loaded when somebody asks
-
-        with Solver(name="glucose4", bootstrap_with=self._clauses) as solver:
+        # Loaded when somebody asks: the command line must start at once.
+        solvers = import_module("pysat.solvers")
+        with solvers.Solver(name="glucose4", bootstrap_with=self._clauses) as solver:
             solver.conf_budget(conflicts)
             found = solver.solve_limited()
             if found is None:
@@ -79,7 +83,7 @@ class Clauses:
             if not (after and self._moved[net])
         }
 
-    def _literal(self, net: int, value: bool, after: bool) -> int:  # noqa: FBT001 - a value
+    def _literal(self, net: int, *, value: bool, after: bool) -> int:
         key = (net, after or not self._moved[net])
         number = self._number.setdefault(key, len(self._number) + 1)
         return number if value else -number

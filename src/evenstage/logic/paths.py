@@ -175,8 +175,8 @@ class _Query:
         """Return values of nets before the start switches; False: there are none; None: unknown."""
         clauses = Clauses(self.relations, moved)
         for net, rising in self.path:
-            clauses.fix(net, rising, after=True)
-            clauses.fix(net, not rising, after=False)
+            clauses.fix(net, value=rising, after=True)
+            clauses.fix(net, value=not rising, after=False)
         for net in self._sides:
             clauses.hold(net)
         return clauses.solve(self.conflicts)
@@ -185,7 +185,7 @@ class _Query:
         """Tell whether some vector lets the path decide; None: unknown."""
         clauses = Clauses(self.relations, np.zeros(len(self.logic.part(self.cone).supply), bool))
         for net, rising in self.path:
-            clauses.fix(net, rising, after=True)
+            clauses.fix(net, value=rising, after=True)
         for position, relation in self._arcs() or ():
             clauses.forbid(relation, ~relation.matters(position))
         found = clauses.solve(self.conflicts)
