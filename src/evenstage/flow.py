@@ -335,14 +335,11 @@ def resize(
         sizing = _already_done(block, record, wishes)
     else:
         sizing = find_widths(block.analysis, block.brief, wishes, original)
-<<<<<<< HEAD
+    told = false_path_notices(block.analysis)
+    sizing = replace(sizing, notices=(*sizing.notices, *told))
     if curve:
         curved = trade_off(block.analysis, block.brief, wishes, original)
         sizing = replace(sizing, trade_off=curved)
-=======
-        told = false_path_notices(block.analysis)
-        sizing = replace(sizing, notices=(*sizing.notices, *told))
->>>>>>> a37f9b5 (Print vectors and false paths in reports; examine paths of resize)
     if output is None:
         return sizing
     texts = _texts(block, sizing, record, asked)

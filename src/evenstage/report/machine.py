@@ -285,7 +285,7 @@ def path_document(path: Path) -> Document:
 def _vector(vector: PathVector | None) -> Document | None:
     if vector is None:
         return None
-    held: Document = {name: int(level) for name, level in vector.held}
+    held: list[JsonValue] = [{"net": net, "level": int(level)} for net, level in vector.held]
     return {"verdict": vector.verdict, "held": held, "reason": vector.reason}
 
 
