@@ -18,7 +18,7 @@ SOURCE: Final = Path(__file__).parents[2] / "src"
 #: Top to bottom; rooms of one line do not know each other. ``__init__`` is the package's own file.
 ORDER: Final = (
     (
-        *("errors", "units", "source", "pattern", "progress"),
+        *("errors", "units", "source", "pattern", "progress", "tabular"),
         *("toml_places", "schema", "settings", "brief"),
     ),
     ("process",),

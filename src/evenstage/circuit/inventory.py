@@ -9,6 +9,7 @@ import numpy as np
 
 from evenstage.circuit.names import device_names
 from evenstage.circuit.storage.elements import first_device
+from evenstage.tabular import Row, Tabular, row
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
@@ -116,7 +117,7 @@ class Outside:
 
 
 @dataclass(frozen=True, kw_only=True)
-class Inventory:
+class Inventory(Tabular):
     """The contents of a block.
 
     Parameters
@@ -152,6 +153,24 @@ class Inventory:
     not_understood: tuple[Unknown, ...]
     notices: tuple[Notice, ...]
     circuit: Circuit = field(repr=False, compare=False)
+
+    @property
+    def headline(self) -> str:
+        """How much was recognised, in one line."""
+        left = sum(unknown.devices for unknown in self.not_understood)
+        return (
+            f"{self.top or self.source}: {self.gates} gates of {self.devices} transistors, "
+            f"{left} not understood"
+        )
+
+    def tables(self) -> dict[str, list[Row]]:
+        """Return the gates by subcircuit and kind, storage, and what was not understood."""
+        return {
+            "gates": [row(entry) | {"inputs": ", ".join(entry.inputs)} for entry in self.entries],
+            "storage": [row(some) | {"data": ", ".join(some.data)} for some in self.stored],
+            "outside_logic": [row(some) for some in self.outside],
+            "not_understood": [row(some) for some in self.not_understood],
+        }
 
 
 def take_inventory(circuit: Circuit) -> Inventory:

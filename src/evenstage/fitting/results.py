@@ -5,6 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
+from evenstage.tabular import Row, Tabular, row
+
 if TYPE_CHECKING:
     from pathlib import Path
 
@@ -86,7 +88,7 @@ class Confusion:
 
 
 @dataclass(frozen=True, kw_only=True)
-class Fit:
+class Fit(Tabular):
     """A process fitted to measurements.
 
     Parameters
@@ -135,3 +137,15 @@ class Fit:
             f"Fitted to {self.used} of {self.measured} measurements in {self.source},",
             f"cells of {self.cells}. An estimate, not sign-off.",
         )
+
+    @property
+    def headline(self) -> str:
+        """How much was fitted, in one line."""
+        return f"{self.process.name}: fitted to {self.used} of {self.measured} measurements"
+
+    def tables(self) -> dict[str, list[Row]]:
+        """Return the constants in the units of the process file, and the residuals by gate."""
+        return {
+            "constants": [row(one) for one in self.constants],
+            "gates": [row(one) for one in self.gates],
+        }

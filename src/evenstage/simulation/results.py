@@ -5,6 +5,9 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Final, Literal
 
+from evenstage.tabular import Row, Tabular, row
+from evenstage.units import engineering
+
 if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.netlist.devices import FloatArray
@@ -117,7 +120,7 @@ class SimulatedBlock:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Simulation:
+class Simulation(Tabular):
     """Paths of a netlist simulated, or of two netlists of one design.
 
     Parameters
@@ -136,3 +139,33 @@ class Simulation:
     side_branches: SideBranches
     scaled: bool
     notices: tuple[Notice, ...]
+
+    @property
+    def headline(self) -> str:
+        """The first path, estimated and simulated, in one line."""
+        path = self.before.paths[0]
+        return (
+            f"{path.estimate.start} to {path.estimate.end}: estimated "
+            f"{engineering(path.estimated_delay, 's')}, simulated {engineering(path.delay, 's')}"
+        )
+
+    def tables(self) -> dict[str, list[Row]]:
+        """Return the stages of all paths, simulated values beside the estimates; SI units.
+
+        Paths and stages are numbered from 1.
+        """
+        blocks = {"stages_before": self.before, "stages_after": self.after}
+        return {
+            name: [
+                row(
+                    stage.estimate,
+                    path=number,
+                    stage=place,
+                    simulated_delay=stage.delay,
+                    simulated_transition=stage.transition,
+                )
+                for number, path in enumerate(block.paths if block else (), 1)
+                for place, stage in enumerate(path.stages, 1)
+            ]
+            for name, block in blocks.items()
+        }

@@ -5,6 +5,9 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
+from evenstage.tabular import Row, Tabular, row
+from evenstage.units import engineering
+
 if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.logic.same import StructureCheck
@@ -120,7 +123,7 @@ class TradeOff:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Sizing:
+class Sizing(Tabular):
     """New widths and what they buy.
 
     Parameters
@@ -181,3 +184,32 @@ class Sizing:
     edits: tuple[Edit, ...] = field(default=(), repr=False)
     structure: StructureCheck | None = None
     trade_off: TradeOff | None = None
+
+    @property
+    def headline(self) -> str:
+        """What the widths buy, in one line."""
+        old, new = self.before.paths[0].delay, self.after.paths[0].delay
+        growth = self.total_width_after / self.total_width_before - 1
+        return (
+            f"{self.goal}: {engineering(old, 's')} before, {engineering(new, 's')} after; "
+            f"{len(self.changes)} widths change, total width {growth:+.1%}"
+        )
+
+    def tables(self) -> dict[str, list[Row]]:
+        """Return the changes, the stages before and after with what holds them, the trade-off.
+
+        SI units; stages are numbered from 1.
+        """
+        before = enumerate(self.before.paths[0].stages, 1)
+        after = enumerate(self.after.paths[0].stages, 1)
+        holds = [hold.hold for hold in self.holds] or [""] * len(self.after.paths[0].stages)
+        curve = self.trade_off.points if self.trade_off else ()
+        return {
+            "changes": [row(change, factor=change.factor) for change in self.changes],
+            "stages_before": [row(stage, stage=place) for place, stage in before],
+            "stages_after": [
+                row(stage, stage=place, hold=hold)
+                for (place, stage), hold in zip(after, holds, strict=True)
+            ],
+            "trade_off": [row(point) for point in curve],
+        }

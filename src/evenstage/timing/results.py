@@ -5,6 +5,11 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
+import networkx as nx
+
+from evenstage.tabular import Row, Tabular, row
+from evenstage.units import engineering
+
 if TYPE_CHECKING:
     from evenstage.errors import Notice
     from evenstage.logic.paths import PathVector
@@ -161,7 +166,7 @@ class Counts:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Analysis:
+class Analysis(Tabular):
     """The slowest paths of a block.
 
     Parameters
@@ -205,6 +210,54 @@ class Analysis:
     timing: Timing | None = field(default=None, repr=False, compare=False)
     false_paths: tuple[Path, ...] = ()
 
+    @property
+    def headline(self) -> str:
+        """The slowest path in one line."""
+        slowest = self.paths[0]
+        return (
+            f"{self.top or self.source}: {slowest.start} to {slowest.end} takes "
+            f"{engineering(slowest.delay, 's')} through {len(slowest.stages)} stages"
+        )
+
+    def tables(self) -> dict[str, list[Row]]:
+        """Return paths, their stages and side branches, and path ends; SI units.
+
+        Paths and stages are numbered from 1.
+        """
+        stages = [
+            (number, place, stage)
+            for number, path in enumerate(self.paths, 1)
+            for place, stage in enumerate(path.stages, 1)
+        ]
+        return {
+            "stages": [row(stage, path=number, stage=place) for number, place, stage in stages],
+            "side_branches": [
+                row(branch, path=number, stage=place)
+                for number, place, stage in stages
+                for branch in stage.side_branches
+            ],
+            "paths": [row(path, path=number) for number, path in enumerate(self.paths, 1)],
+            "ends": [row(end) for end in self.ends],
+        }
+
+    def graph(self) -> nx.DiGraph[tuple[str, str]]:
+        """Return the paths as one graph.
+
+        A node is a net and its edge, as in ``("y", "rise")``, with both as attributes and the
+        ``arrival`` there; an edge is a stage, with all plain values of it and the number of the
+        slowest ``path`` it is on, from 1.
+        """
+        found: nx.DiGraph[tuple[str, str]] = nx.DiGraph()
+        for number, path in reversed(list(enumerate(self.paths, 1))):
+            here = (path.start, path.start_edge)
+            found.add_node(here, net=here[0], edge=here[1], arrival=path.start_arrival)
+            for stage in path.stages:
+                there = (stage.output, stage.edge)
+                found.add_node(there, net=there[0], edge=there[1], arrival=stage.arrival)
+                found.add_edge(here, there, **row(stage, path=number))
+                here = there
+        return found
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class WidthDifference:
@@ -218,7 +271,7 @@ class WidthDifference:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Difference:
+class Difference(Tabular):
     """Two netlists of one design side by side.
 
     Parameters
@@ -245,3 +298,22 @@ class Difference:
     same_path_before: Path | None
     only_before: tuple[str, ...]
     only_after: tuple[str, ...]
+
+    @property
+    def headline(self) -> str:
+        """Both slowest paths in one line."""
+        old, new = self.before.paths[0].delay, self.after.paths[0].delay
+        return (
+            f"{engineering(old, 's')} before, {engineering(new, 's')} after; "
+            f"{len(self.widths)} widths differ"
+        )
+
+    def tables(self) -> dict[str, list[Row]]:
+        """Return the widths that differ, and the stages of both slowest paths; SI units."""
+        stages = {
+            f"stages_{when}": [
+                row(stage, stage=place) for place, stage in enumerate(analysis.paths[0].stages, 1)
+            ]
+            for when, analysis in (("before", self.before), ("after", self.after))
+        }
+        return {"widths": [row(width) for width in self.widths], **stages}
