@@ -186,6 +186,7 @@ def _resize(asked: argparse.Namespace) -> flow.Result:
         margin=asked.margin / 100,
         scope=asked.scope,
         reclaim=asked.reclaim,
+        changes=asked.changes,
     )
     return flow.resize(
         asked.netlist,
@@ -446,6 +447,9 @@ def _wishes(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument(
         "--reclaim", action="store_true", help="also make smaller what is off the slowest paths"
+    )
+    parser.add_argument(
+        "--changes", type=_count, metavar="N", help="change at most so many cards, the best found"
     )
     parser.add_argument(
         "--curve",

@@ -253,6 +253,7 @@ def sizing(analysis: Analysis) -> Sizing:
             old=old,
             new=new,
             alone=-41e-12 if predriver else 0.4e-12,
+            last=-44e-12 if predriver else -9.7e-12,
             why="drives 16 rows and a wire" if predriver else "drives the word line",
         )
 

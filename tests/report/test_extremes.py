@@ -212,6 +212,7 @@ class Anything:
             old=self.width(),
             new=self.width(),
             alone=self.random.choice([-1, 1]) * self.time(),
+            last=self.random.choice([-1, 1]) * self.time(),
             why=self.name(),
         )
 

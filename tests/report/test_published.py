@@ -100,6 +100,12 @@ def test_a_trade_off_keeps_it(cells: Path) -> None:
     assert mistakes(document, closed(PUBLISHED)) == []
 
 
+def test_few_changes_keep_it(cells: Path) -> None:
+    document = of(flow.resize(cells, flow.Question(), flow.Wishes(changes=1)))
+    assert document["few_changes"]["points"]
+    assert mistakes(document, closed(PUBLISHED)) == []
+
+
 def test_a_simulated_pair_keeps_it(cells: Path) -> None:
     document = of(flow.simulate(cells, flow.Question(), after=cells))
     assert document["before"] == document["after"]

@@ -11,7 +11,7 @@ import pytest
 from evenstage.errors import Notice
 from evenstage.report.block_text import CAUTION
 from evenstage.report.terminal import analysis_report, difference_report, sizing_report
-from evenstage.sizing.results import TradeOff, TradeOffPoint
+from evenstage.sizing.results import FewChanges, FewChangesPoint, TradeOff, TradeOffPoint
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
@@ -67,6 +67,17 @@ class TestGolden:
         text = sizing_report(replace(sizing, trade_off=curve))
         begin = text.index("Width against delay")
         golden("trade_off", text[begin : text.index("The slowest path", begin)])
+
+    def test_few_changes(self, sizing: Sizing, golden: Callable[[str, str], None]) -> None:
+        points = tuple(
+            FewChangesPoint(cards=cards, charged_delay=delay * 1e-12)
+            for cards, delay in ((1, 590.0), (2, 540.0), (5, 480.0), (9, 452.0))
+        )
+        few = FewChanges(asked=5, today_charged_delay=600e-12, bound=450e-12, points=points)
+        text = sizing_report(replace(sizing, few=few))
+        begin = text.index("Delay against the number")
+        golden("few_changes", text[begin : text.index("The slowest path", begin)])
+        assert "with only the chosen cards changed (5 at most) no sizes" in one_line(text)
 
     def test_unicode(self, sizing: Sizing, golden: Callable[[str, str], None]) -> None:
         text = analysis_report(sizing.before, unicode=True) + sizing_report(sizing, unicode=True)
@@ -149,6 +160,11 @@ class TestSizingReport:
             "The slowest path falls from 189 ps to 151 ps (-20 %); 2 cards change; total width "
             "+1.2 %. The same path is the slowest: a3 rising to wl[63] rising."
         )
+
+    def test_changes_that_help_only_together_say_so(self, sizing: Sizing) -> None:
+        changes = tuple(replace(change, alone=2e-12) for change in sizing.changes)
+        assert "No change helps alone" in one_line(sizing_report(replace(sizing, changes=changes)))
+        assert "No change helps alone" not in one_line(sizing_report(sizing))
 
     def test_another_path_may_be_slowest_now(self, sizing: Sizing) -> None:
         after = replace(sizing.after, paths=sizing.after.paths[::-1])
@@ -233,7 +249,9 @@ class TestSizingReport:
         )
         text = sizing_report(replace(sizing, changes=changes))
         assert "3 cards change" in text
-        assert re.search(r"^  x0:2 x24 +mn1 mn2 +w .*-41\.0  rowdec\.sp:10-12", text, re.MULTILINE)
+        assert re.search(
+            r"^  x0:2 x24 +mn1 mn2 +w .*-41\.0 +-44\.0  rowdec\.sp:10-12", text, re.MULTILINE
+        )
 
     def test_paths_of_other_gates_pair_by_kind(self, sizing: Sizing) -> None:
         moved = tuple(

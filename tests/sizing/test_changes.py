@@ -56,6 +56,29 @@ class TestChanges:
             expected = alone.worst - timing.worst
             assert change.alone == pytest.approx(expected, rel=1e-6, abs=1e-9 * timing.worst)
 
+    @given(random_blocks(most=8))
+    @settings(max_examples=12, deadline=None)
+    def test_last_is_the_block_with_all_changes_against_all_but_this(
+        self, drawn: RandomBlock
+    ) -> None:
+        found = resized(drawn.text())
+        timing = found.before.timing
+        assert timing is not None
+        circuit = timing.circuit
+        names = [circuit.devices.netlist.card_name(card) for card in circuit.devices.card.tolist()]
+
+        def worst_without(instance: str) -> float:
+            factor = np.ones(len(circuit.devices))
+            for other in found.changes:
+                if other.instance != instance:
+                    factor[names.index(other.card)] = other.factor
+            return sweep(circuit.resized(factor), timing.graph, timing.unit).worst
+
+        everything = worst_without("")
+        for change in found.changes:
+            expected = everything - worst_without(change.instance)
+            assert change.last == pytest.approx(expected, rel=1e-6, abs=1e-9 * timing.worst)
+
     def test_a_shared_card_counts_its_occurrences(self) -> None:
         found = resized(ROWS, Brief(copies_per_leaf=4))
         rows = [change for change in found.changes if change.instance.startswith("xr")]

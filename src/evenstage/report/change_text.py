@@ -26,10 +26,11 @@ _COLUMNS: Final = (
     Column("new", align="right"),
     Column("factor", align="right"),
     Column("alone", align="right"),
+    Column("last", align="right"),
     Column("written in", kind="name"),
     Column("why"),
 )
-_PLACE, _WHY = 8, 9
+_PLACE, _WHY = 9, 10
 
 #: The changes of gates that differ in the numbers of their names only.
 _Gates = list["Change"]
@@ -44,9 +45,10 @@ def change_lines(paper: Paper, changes: Sequence[Change]) -> list[str]:
         return []
     widths = [value for change in shown for value in (change.old, change.new)]
     width = Scale.of(widths, "m").trimmed(widths)
-    alone = Scale.of((change.alone for change in shown), "s", digits=3)
+    effects = [effect for change in shown for effect in (change.alone, change.last)]
+    alone = Scale.of(effects, "s", digits=3)
     rows = [row for gate in kept for row in _gate_rows(paper, gate, width, alone)]
-    units = ["", "", "", "", width.unit, width.unit, "", alone.unit, "", ""]
+    units = ["", "", "", "", width.unit, width.unit, "", alone.unit, alone.unit, "", ""]
     everything = range(len(_COLUMNS))
     choices = [everything, everything[:_WHY], everything[:_PLACE]]
     options = [([_COLUMNS[i] for i in c], [[row[i] for i in c] for row in rows]) for c in choices]
@@ -66,7 +68,7 @@ def alike_changes(changes: Sequence[Change]) -> list[_Gates]:
         gates.setdefault(change.instance, []).append(change)
     families: dict[tuple[object, ...], _Gates] = {}
     for instance, gate in gates.items():
-        alike = [(c.card, c.parameter, c.old, c.new, c.alone, c.why) for c in gate]
+        alike = [(c.card, c.parameter, c.old, c.new, c.alone, c.last, c.why) for c in gate]
         families.setdefault((family_of(instance), *alike), []).extend(gate)
     return list(families.values())
 
@@ -86,7 +88,7 @@ def _gate_rows(paper: Paper, gate: _Gates, width: Scale, alone: Scale) -> list[l
     places = {change.instance: change.occurrences for change in gate}
     many = sum(places.values())
     names = [family_name(instances), f"{paper.times}{many}" if many > 1 else ""]
-    buys = _signed(alone.number(gate[0].alone))
+    buys = [_signed(alone.number(effect)) for effect in (gate[0].alone, gate[0].last)]
     return [
         [
             *(["", ""] if row else names),
@@ -95,7 +97,7 @@ def _gate_rows(paper: Paper, gate: _Gates, width: Scale, alone: Scale) -> list[l
             width.number(old),
             width.number(new),
             factor(paper, old, new),
-            "" if row else buys,
+            *(["", ""] if row else buys),
             _place(cards),
             cards[0].why,
         ]

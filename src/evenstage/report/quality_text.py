@@ -69,10 +69,17 @@ def _bound(sizing: Sizing) -> str:
     scale = Scale.of([sizing.bound, reached], unit)
     least = f"; the fastest possible would be {engineering(sizing.least_delay, 's')}"
     return (
-        f"no sizes within the limits can {wish} {scale.text(sizing.bound)}; the written ones are "
+        f"{_who(sizing)} can {wish} {scale.text(sizing.bound)}; the written ones are "
         f"at {scale.text(reached)}{_distance(sizing.bound, reached)}"
         f"{'' if sizing.bound_on == 'delay' else least}"
     )
+
+
+def _who(sizing: Sizing) -> str:
+    """Return which sizes a bound is about."""
+    if sizing.few is None:
+        return "no sizes within the limits"
+    return f"with only the chosen cards changed ({sizing.few.asked} at most) no sizes"
 
 
 def _reached(after: Analysis, sizing: Sizing) -> float:

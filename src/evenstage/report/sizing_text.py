@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING, Final
 
 from evenstage.report.block_text import block_lines, finished, notice_lines
 from evenstage.report.change_text import card_count, change_lines
+from evenstage.report.few_changes import few_changes_section
 from evenstage.report.pair_text import pair_lines, total_lines
 from evenstage.report.paper import Paper
 from evenstage.report.path_text import path_lines
@@ -64,6 +65,8 @@ def sizing_report(
     lines += paper.paragraph(sizing_answer(sizing))
     lines += section("How good the widths are", quality_lines(paper, sizing))
     lines += section("Changes", _changes(paper, sizing))
+    if sizing.few is not None:
+        lines += section(*few_changes_section(paper, sizing.few))
     if sizing.trade_off is not None:
         lines += section(*trade_off_section(paper, sizing.trade_off))
     lines += _stages(paper, sizing)
@@ -102,7 +105,15 @@ def _changes(paper: Paper, sizing: Sizing) -> list[str]:
     lines = change_lines(paper, sizing.changes)
     if not lines:
         return []
-    text = "alone: change of the worst delay if only that gate changed; drawn widths of one copy."
+    text = (
+        "alone: how the worst delay moves if only that gate changes; last: how it moves by that "
+        "gate when all others have changed. Less is faster. Drawn widths of one copy."
+    )
+    if all(change.alone >= 0 for change in sizing.changes):
+        text += (
+            " No change helps alone: a wider gate loads the one before it until that is wider too. "
+            "Together they do."
+        )
     return [*lines, "", *paper.paragraph(text, indent=2)]
 
 

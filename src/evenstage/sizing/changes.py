@@ -15,6 +15,7 @@ from evenstage.timing.search import slowest_paths
 from evenstage.timing.trials import tried
 
 if TYPE_CHECKING:
+    from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import FloatArray
     from evenstage.sizing.partition import Partition
     from evenstage.sizing.rounding import Rounding
@@ -77,7 +78,12 @@ class Writing:
         parts, circuit = self._parts, self.timing.circuit
         occurrences = np.bincount(parts.slot_of_device[parts.slot_of_device >= 0]).tolist()
         gate_of_slot = circuit.gate_of_device[parts.first_device].tolist()
-        alone, handle = self._alone(self.width(plan)), parts.handle[parts.of_slot].tolist()
+        width = self.width(plan)
+        alone, last, handle = (
+            self._alone(width),
+            self._last(width),
+            parts.handle[parts.of_slot].tolist(),
+        )
         numbered = [(self._number[Slot(w.card, w.caller)], w) for w in plan.written]
         numbered.sort(key=lambda pair: (handle[pair[0]], pair[1].card))
         return tuple(
@@ -91,6 +97,7 @@ class Writing:
                 old=written.old,
                 new=written.new,
                 alone=float(alone[parts.of_slot[slot]]),
+                last=float(last[parts.of_slot[slot]]),
                 why=self._why(slot),
             )
             for slot, written in numbered
@@ -128,17 +135,27 @@ class Writing:
 
     def _alone(self, width: FloatArray) -> FloatArray:
         """Return how much each size moves the worst delay by itself, s, shape (sizes,)."""
-        parts, circuit = self._parts, self.timing.circuit
+        after = self.timing.circuit.resized(self.rounding.factors(width))
+        return self._moved(self.timing, after, width)
+
+    def _last(self, width: FloatArray) -> FloatArray:
+        """Return how much each size moves the worst delay after all others, s, shape (sizes,)."""
+        after = self.rounding.timed(width)
+        return -self._moved(after, self.timing.circuit, width)
+
+    def _moved(self, timing: Timing, changed: Circuit, width: FloatArray) -> FloatArray:
+        """Return how the worst delay moves with each size that differs in a changed circuit, s."""
+        parts = self._parts
         change = np.zeros(len(parts))
         sizes = np.unique(parts.of_slot[width != self.rounding.drawn])
         trial = np.full(len(parts), -1, np.int32)
         trial[sizes] = np.arange(len(sizes))
         trials = tried(
-            self.timing,
-            circuit.resized(self.rounding.factors(width)),
+            timing,
+            changed,
             trial[parts.of_gate],
             nets=np.zeros(0, np.int32),
-            elmore_limit=np.full(len(circuit.arcs.gate), np.inf),
+            elmore_limit=np.full(len(timing.circuit.arcs.gate), np.inf),
         )
-        change[sizes] = trials.worst - self.timing.worst
+        change[sizes] = trials.worst - timing.worst
         return change

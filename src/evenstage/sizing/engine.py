@@ -242,7 +242,7 @@ class Engine:
 
         None where there are none: the least delay leaves no room.
         """
-        problem = with_guard(self._problem(answer.lower, answer.upper, answer.limits), guard)
+        problem = with_guard(self.problem(answer.lower, answer.upper, answer.limits), guard)
         goal = Cheapest(answer.deadline * (1 - guard))
         try:
             return solve(problem, goal, start=answer.sizes, tolerance=_LOOSE).sizes
@@ -291,6 +291,18 @@ class Engine:
             moving = moving | joining
             start = fastest.sizes
 
+    def quickest(self, lower: FloatArray, upper: FloatArray, start: FloatArray) -> Solution:
+        """Find the least delay within other bounds, to a loose gap.
+
+        Raises
+        ------
+        InfeasibleError
+            Where a limit or the budget cannot be kept.
+        NotConvergedError
+            Where the proof fails.
+        """
+        return self._solve(self._first_goal(), lower, upper, start, _LOOSE)
+
     def _first_goal(self) -> Goal:
         if self.wishes.width is None:
             return Fastest()
@@ -312,9 +324,10 @@ class Engine:
         variables = self.model.variables
         return np.where(down, variables.lower, 1.0), np.where(up, variables.upper, 1.0)
 
-    def _problem(
+    def problem(
         self, lower: FloatArray, upper: FloatArray, limits: Limits | None = None
     ) -> Problem:
+        """Return the programme for some bounds."""
         problem = self.model.problem(lower, upper, self.spend, limits or self.limits)
         return without_room(replace(problem, spend_fixed=self.spend_fixed))
 
@@ -331,7 +344,7 @@ class Engine:
         start: FloatArray,
         tolerance: float = _TIGHT,
     ) -> Solution:
-        problem = self._problem(lower, upper)
+        problem = self.problem(lower, upper)
         begin = np.clip(start, problem.lower, problem.upper)
         try:
             solution = solve(problem, goal, start=begin, tolerance=tolerance)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -16,6 +16,7 @@ from evenstage.progress import tell
 from evenstage.sizing.block_engine import engine_of
 from evenstage.sizing.changes import Writing
 from evenstage.sizing.copies import shared_sizes
+from evenstage.sizing.few import choose_few
 from evenstage.sizing.holds import stage_holds
 from evenstage.sizing.limits import kept_for_later
 from evenstage.sizing.partition import partition
@@ -33,6 +34,7 @@ if TYPE_CHECKING:
     from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.sizing.engine import Engine
     from evenstage.sizing.partition import Partition
+    from evenstage.sizing.results import FewChanges
     from evenstage.timing.results import Analysis
     from evenstage.timing.sweep import Timing
 
@@ -97,7 +99,7 @@ class _Job:
     def run(self) -> Sizing:
         """Do it."""
         tell("sizing")
-        rounding, drawn = self._rounded()
+        rounding, drawn, few = self._rounded()
         writing = Writing(self.timing, self.analysis.paths[0], rounding)
         plan = writing.plan(drawn.slot_width)
         written = rounding.drawn_at(writing.width(plan))
@@ -105,22 +107,24 @@ class _Job:
             plan = WidthPlan(edits=(), written=(), refused=plan.refused)
             written = Drawn(rounding.drawn, self.timing, rounding.engine.cost_drawn)
         refuse_broken(written.timing, rounding.engine)
-        return self._sizing(writing, plan, written)
+        return replace(self._sizing(writing, plan, written), few=few)
 
-    def _rounded(self) -> tuple[Rounding, Drawn]:
+    def _rounded(self) -> tuple[Rounding, Drawn, FewChanges | None]:
         """Optimise and round; tie sizes until every leaf keeps to its copies."""
         circuit, copies = self.timing.circuit, self.brief.copies_per_leaf
         parts = partition(circuit, self.brief)
         for _ in range(_ROUNDS):
             handles = width_handles(circuit.devices, circuit.process, parts.variable_of, copies)
-            engine = self._engine(parts, handles)
+            engine, few = self._engine(parts, handles), None
+            if self.wishes.changes is not None:
+                engine, few = choose_few(engine, self.wishes.changes)
             rounding = Rounding(engine, engine.run(), handles)
             drawn = rounding.run()
             label = shared_sizes(parts, handles, drawn.slot_width / rounding.drawn, copies)
             if len(np.unique(label)) == len(parts):
                 break
             parts = parts.tied(label)
-        return rounding, drawn
+        return rounding, drawn, few
 
     def _engine(self, parts: Partition, handles: WidthHandles) -> Engine:
         free = variables(self.timing.circuit, self.brief, parts, handles, self.original.smallest)

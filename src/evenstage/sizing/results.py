@@ -39,6 +39,8 @@ class Change:
         m, drawn width of one copy.
     alone : float
         s; change of the block's worst delay if only this gate's widths changed (negative: faster).
+    last : float
+        s; change of the worst delay by this gate's widths when all others have changed already.
     why : str
         One short reason for the comment in the netlist.
     """
@@ -52,6 +54,7 @@ class Change:
     old: float
     new: float
     alone: float
+    last: float
     why: str
 
     @property
@@ -123,6 +126,36 @@ class TradeOff:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class FewChangesPoint:
+    """The least worst charged delay found, s, with so many cards changed, the others as drawn."""
+
+    cards: int
+    charged_delay: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FewChanges:
+    """How much delay each number of changed cards buys, off the grid.
+
+    Parameters
+    ----------
+    asked : int
+        How many cards may change.
+    today_charged_delay : float
+        s.
+    bound : float
+        s; no sizes within the limits have a smaller worst charged delay, however many change.
+    points : tuple of FewChangesPoint
+        The fewest cards first; delays never rise.
+    """
+
+    asked: int
+    today_charged_delay: float
+    bound: float
+    points: tuple[FewChangesPoint, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Sizing(Tabular):
     """New widths and what they buy.
 
@@ -162,6 +195,9 @@ class Sizing(Tabular):
         How the written netlist, read back, compares with the old one; None where none was written.
     trade_off : TradeOff, optional
         Spend against delay, where it was asked for.
+    few : FewChanges, optional
+        Delay against the number of changes, where that was limited; ``bound`` is then that of the
+        cards chosen.
     """
 
     before: Analysis
@@ -184,6 +220,7 @@ class Sizing(Tabular):
     edits: tuple[Edit, ...] = field(default=(), repr=False)
     structure: StructureCheck | None = None
     trade_off: TradeOff | None = None
+    few: FewChanges | None = None
 
     @property
     def headline(self) -> str:
@@ -196,7 +233,7 @@ class Sizing(Tabular):
         )
 
     def tables(self) -> dict[str, list[Row]]:
-        """Return the changes, the stages before and after with what holds them, the trade-off.
+        """Return the changes, the stages before and after with what holds them, the curves.
 
         SI units; stages are numbered from 1.
         """
@@ -204,6 +241,7 @@ class Sizing(Tabular):
         after = enumerate(self.after.paths[0].stages, 1)
         holds = [hold.hold for hold in self.holds] or [""] * len(self.after.paths[0].stages)
         curve = self.trade_off.points if self.trade_off else ()
+        few = self.few.points if self.few else ()
         return {
             "changes": [row(change, factor=change.factor) for change in self.changes],
             "stages_before": [row(stage, stage=place) for place, stage in before],
@@ -212,4 +250,5 @@ class Sizing(Tabular):
                 for (place, stage), hold in zip(after, holds, strict=True)
             ],
             "trade_off": [row(point) for point in curve],
+            "few_changes": [row(point) for point in few],
         }

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Literal
 
 if TYPE_CHECKING:
@@ -29,6 +29,8 @@ class Wishes:
         Whether gates off the limiting paths may get smaller.
     spend : {"width", "energy"}
         What is kept small: total width or switched capacitance.
+    changes : int, optional
+        How many cards may change.
     """
 
     delay: float | None = None
@@ -37,10 +39,14 @@ class Wishes:
     scope: Literal["path", "block"] = "path"
     reclaim: bool = False
     spend: Literal["width", "energy"] = "width"
+    changes: int | None = None
 
     @property
     def words(self) -> str:
         """The question in words."""
+        if self.changes is not None:
+            some = "1 changed card" if self.changes == 1 else f"{self.changes} changed cards"
+            return f"{replace(self, changes=None).words}, with at most {some}"
         if self.delay is not None:
             return f"least {self.spend} for a delay of {self.delay * 1e12:.4g} ps"
         if self.width is not None:
