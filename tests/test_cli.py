@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import shlex
 import subprocess
 import sys
 from pathlib import Path
@@ -11,7 +12,7 @@ from typing import IO, Final
 import pytest
 
 from evenstage import flow
-from evenstage.cli import main
+from evenstage.cli import _parsed, main
 from evenstage.errors import Notice
 
 #: Two inverters; the second one is too small for its load, and nothing else is odd.
@@ -143,6 +144,25 @@ class TestStatus:
     ) -> None:
         assert main(arguments) == 0
         assert "evenstage" in capsys.readouterr().out
+
+    @pytest.mark.parametrize(
+        "command", ["analyse", "resize", "diff", "simulate", "recognise", "fit"]
+    )
+    def test_help_shows_examples_that_work_and_keeps_to_the_columns(
+        self,
+        capsys: pytest.CaptureFixture[str],
+        monkeypatch: pytest.MonkeyPatch,
+        command: str,
+    ) -> None:
+        monkeypatch.setenv("COLUMNS", "80")
+        main([command, "--help"])
+        shown = capsys.readouterr().out
+        examples = [line for line in shown.splitlines() if line.startswith("  evenstage ")]
+        assert examples
+        for example in examples:
+            asked = _parsed(shlex.split(example)[1:])
+            assert asked.command.__name__.startswith(f"_{command}")
+        assert max(map(len, shown.splitlines())) <= 80
 
     def test_schema_is_printed(self, capsys: pytest.CaptureFixture[str]) -> None:
         assert main(["--json-schema"]) == 0

@@ -12,9 +12,10 @@ import sys
 import traceback
 from contextlib import suppress
 from pathlib import Path
-from typing import TYPE_CHECKING, TextIO
+from typing import TYPE_CHECKING, Final, TextIO
 
 from evenstage import __version__
+from evenstage.completion import completion
 from evenstage.errors import EvenstageError, OutputError
 from evenstage.progress import shown_on
 from evenstage.units import parse_number
@@ -29,7 +30,35 @@ DONE, WRONG_INPUT, WRONG_USAGE, OUR_FAULT, INTERRUPTED = 0, 1, 2, 3, 130
 #: Longest delay that can be meant, s; beyond it a suffix was forgotten.
 _DELAY_MOST = 1e-3
 
-_CAUTION = "Figures are estimates, not sign-off: simulate at all corners before you rely on them."
+_CAUTION = """\
+Figures are estimates, not sign-off: simulate at all corners before you rely on
+them."""
+
+#: What the help of each command shows it at.
+_EXAMPLES: Final = {
+    "analyse": (
+        "the three slowest paths that end at a word line:\n"
+        "  evenstage analyse decoder.sp --process kit.toml --to 'wl*' --count 3\n"
+    ),
+    "resize": (
+        "the least width that meets 450 ps, written into a new netlist:\n"
+        "  evenstage resize decoder.sp --process kit.toml --delay 450p --output faster.sp\n"
+    ),
+    "diff": ("what a sizing changed:\n  evenstage diff decoder.sp faster.sp --process kit.toml\n"),
+    "simulate": (
+        "how much faster a new netlist is, claimed and simulated:\n"
+        "  evenstage simulate decoder.sp --process kit.toml --after faster.sp\n"
+    ),
+    "recognise": (
+        "what was understood, and the graph of gates as a file:\n"
+        "  evenstage recognise decoder.sp --graph gates.graphml\n"
+    ),
+    "fit": (
+        "a process file from delays measured, and from simulated ones:\n"
+        "  evenstage fit delays.csv --netlist cells.sp --output kit.toml\n"
+        "  evenstage fit --simulated cells.sp --output kit.toml\n"
+    ),
+}
 
 
 def run() -> None:
@@ -270,12 +299,20 @@ def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
         prog="evenstage",
         description="Find the slowest path of a transistor netlist, and widths that make it fast.",
-        epilog=_CAUTION,
+        epilog=f"evenstage COMMAND --help shows each with an example.\n\n{_CAUTION}",
+        formatter_class=argparse.RawDescriptionHelpFormatter,
         allow_abbrev=False,
     )
     parser.add_argument("--version", action="version", version=f"evenstage {__version__}")
     parser.add_argument(
         "--json-schema", action=_Schema, nargs=0, help="print the JSON Schema of --json, and leave"
+    )
+    parser.add_argument(
+        "--completion",
+        action=_Completion,
+        choices=("bash", "fish", "zsh"),
+        metavar="SHELL",
+        help="print what teaches bash, fish or zsh to complete, and leave",
     )
     commands = parser.add_subparsers(title="commands", metavar="COMMAND", required=True)
     analyse = _command(commands, "analyse", _analyse, "the slowest paths, stage by stage")
@@ -371,6 +408,16 @@ def _parser() -> argparse.ArgumentParser:
     return parser
 
 
+class _Completion(argparse.Action):
+    """Print the completion for a shell and leave."""
+
+    def __call__(
+        self, parser: argparse.ArgumentParser, _: object, shell: object, *__: object
+    ) -> None:
+        _print(completion(parser, str(shell)))
+        parser.exit()
+
+
 class _Schema(argparse.Action):
     """Print the published JSON Schema and leave."""
 
@@ -391,7 +438,8 @@ def _command(
         name,
         help=words,
         description=f"{words[0].upper()}{words[1:]}.",
-        epilog=_CAUTION,
+        epilog=f"example: {_EXAMPLES[name]}\n{_CAUTION}",
+        formatter_class=argparse.RawDescriptionHelpFormatter,
         allow_abbrev=False,
     )
     parser.set_defaults(command=command)

@@ -30,6 +30,7 @@ ORDER: Final = (
     ("report",),
     ("flow",),
     ("__init__",),
+    ("completion",),
     ("cli",),
     ("__main__",),
 )
@@ -47,6 +48,7 @@ CLI_IMPORTS: Final = frozenset(
         *("__future__", "argparse", "collections", "contextlib", "importlib", "os", "pathlib"),
         *("signal", "sys", "traceback", "typing"),
         *("evenstage", "evenstage.errors", "evenstage.flow", "evenstage.progress"),
+        "evenstage.completion",
         "evenstage.units",
     }
 )
