@@ -6,6 +6,7 @@ import random
 import re
 from dataclasses import replace
 from typing import TYPE_CHECKING, TypeVar
+from xml.etree.ElementTree import fromstring
 
 import pytest
 from hypothesis import given, settings
@@ -20,6 +21,8 @@ from evenstage.report.machine import (
     sizing_document,
     to_json,
 )
+from evenstage.report.page.origin import Origin
+from evenstage.report.page.render import html
 from evenstage.report.paper import cells
 from evenstage.report.terminal import analysis_report, difference_report, sizing_report
 from evenstage.sizing.results import Change, Sizing, StageHold
@@ -305,6 +308,20 @@ class TestLines:
         text = difference_report(difference, width=width, unicode=unicode)
         assert_well_set(text, width, unicode=unicode)
         assert to_json(difference_document(difference)).isascii()
+
+
+class TestPages:
+    @given(SEEDS, st.sampled_from([Anything.analysis, Anything.sizing, Anything.difference]))
+    @QUICK
+    def test_can_be_written(
+        self, seed: int, make: Callable[[Anything], Analysis | Sizing | Difference]
+    ) -> None:
+        page = html(make(Anything(seed)), Origin("1.0", (), ()))
+        assert page.encode("utf-8").endswith(b"</html>\n")
+        assert re.search(r'="(?:nan|-?inf)', page) is None
+        assert re.search(r' (?:width|height|r)="-', page) is None
+        for drawn in re.findall(r"<svg.*?</svg>", page, re.DOTALL):
+            fromstring(drawn)
 
 
 class TestLongPath:

@@ -31,9 +31,20 @@ class Axis:
     unit: str = ""
     logarithmic: bool = False
 
+    def __post_init__(self) -> None:
+        if not self.most > self.least:
+            # One value alone: an axis must have a length all the same.
+            long = abs(self.least) or (1e-12 if self.unit else 1.0)
+            object.__setattr__(self, "most", self.least + long)
+
     def at(self, value: float) -> float:
-        """Return where a value lies, 0 at the left and 1 at the right end."""
+        """Return where a value lies, 0 at the left and 1 at the right end, within both."""
+        return min(max(self._at(value), 0.0), 1.0)
+
+    def _at(self, value: float) -> float:
         if self.logarithmic:
+            if value <= 0:
+                return 0.0
             return math.log(value / self.least) / math.log(self.most / self.least)
         return (value - self.least) / (self.most - self.least)
 

@@ -42,6 +42,7 @@ def end_parts(
     goal : float, optional
         s, asked for on the command line.
     """
+    analyses = [(name, analysis) for name, analysis in analyses if analysis.ends]
     ends = [end for _, analysis in analyses for end in analysis.ends]
     if not ends:
         return ()

@@ -31,8 +31,8 @@ _EDGES: Final = Paper(unicode=True)
 
 def time_table(sides: Sides) -> Table:
     """Return when each stage switches, on one time axis."""
-    paths = [path for path in (sides.before, sides.after) if path is not None]
-    axis = Axis(min(path.start_arrival for path in paths), max(path.delay for path in paths), "s")
+    starts, ends = ([getattr(one, side) for one in sides.seen] for side in ("start", "end"))
+    axis = Axis(min(starts), max(ends), "s")
     delay = Scale.of((one.stage.delay for one in sides.seen), "s", digits=3, least=1)
     width = Scale.of((one.stage.width for one in sides.seen), "m", digits=3)
     two = sides.before is not None
@@ -62,7 +62,7 @@ def effort_table(sides: Sides) -> Table:
     """Return each stage's effort against the best one, and what holds it."""
     efforts = [one.stage.stage_effort for one in sides.seen if one.stage.stage_effort > 0]
     best = sides.after.best_stage_effort
-    values = [*efforts, best]
+    values = [*efforts, *([best] if best > 0 else [])] or [1.0]
     axis = Axis(min(values) / 1.25, max(values) * 1.25, logarithmic=True)
     shown = Scale.of(values, digits=2, least=1)
     two = sides.before is not None
