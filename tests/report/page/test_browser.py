@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import re
 from pathlib import Path
 from typing import TYPE_CHECKING, Final
 
@@ -106,17 +107,37 @@ def pages(tmp_path_factory: pytest.TempPathFactory) -> dict[str, Path]:
         "analyse": ["analyse", old, "--count", "4"],
         "diff": ["diff", old, new],
         "simulate": ["simulate", old, "--after", new],
+        "fit": ["fit", "--simulated", old],
+        "corners": ["analyse", old, "--process", str(fast_corner(sample, folder))],
     }.items():
         made[name] = folder / f"{name}.html"
-        assert main([*asked, *files(sample), "--html", str(made[name])]) == 0
+        given = files(sample)[: 2 if name == "fit" else 4]
+        assert main([*asked, *given, "--html", str(made[name])]) == 0
     return made
+
+
+def fast_corner(sample: Path, folder: Path) -> Path:
+    """Return the sample's process under another name."""
+    text = (sample / "process.toml").read_text("utf-8")
+    path = folder / "fast.toml"
+    path.write_text(
+        re.sub(r'^name = "', 'name = "fast ', text, count=1, flags=re.MULTILINE), "utf-8"
+    )
+    return path
 
 
 def files(sample: Path) -> list[str]:
     return ["--process", str(sample / "process.toml"), "--brief", str(sample / "brief.toml")]
 
 
-NAMES: Final = [*(sample.name for sample in SAMPLES), "analyse", "diff", "simulate"]
+NAMES: Final = [
+    *(sample.name for sample in SAMPLES),
+    "analyse",
+    "diff",
+    "simulate",
+    "fit",
+    "corners",
+]
 
 
 class TestLook:
@@ -153,7 +174,7 @@ class TestUse:
 
     @pytest.mark.skipif(not AXE.is_file(), reason="axe-core is not installed")
     @pytest.mark.parametrize("scheme", ["light", "dark"])
-    @pytest.mark.parametrize("name", ["row_decoder", "carry_chain", "analyse", "simulate", "diff"])
+    @pytest.mark.parametrize("name", ["row_decoder", "carry_chain", *NAMES[-5:]])
     def test_an_accessibility_checker_finds_nothing(
         self, browser: Browser, pages: dict[str, Path], name: str, scheme: str
     ) -> None:

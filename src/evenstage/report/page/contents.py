@@ -101,7 +101,7 @@ def corners_page(corners: Corners, origin: Origin) -> Page:
         Heading("FO4", "number"),
         Heading(""),
     )
-    table = Table("Corners", headings, rows)
+    table = Table("Latest arrival in each corner", headings, rows)
     sections = [
         Section("corners", "Corners", (table,)),
         *_path_sections(None, corners.paths[0], worst),

@@ -79,7 +79,7 @@ def constant_parts(fit: Fit) -> tuple[Part, ...]:
         Heading("how it is known"),
     )
     confused = tuple(Paragraph(confusion_text(one), "Not told apart") for one in fit.confusions)
-    return (Table("Constants", headings, rows, sortable=True), *confused)
+    return (Table("Fitted constants", headings, rows, sortable=True), *confused)
 
 
 def _range(one: Residuals, axis: Axis) -> Element:
