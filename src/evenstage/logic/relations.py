@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 
 from evenstage.logic.evaluate import evaluate, input_table
+from evenstage.logic.settle import WEAK
 from evenstage.logic.switches import UNKNOWN, Switches
 
 if TYPE_CHECKING:
@@ -16,7 +17,7 @@ if TYPE_CHECKING:
     from evenstage.logic.switches import BoolArray, Values
     from evenstage.netlist.devices import IntArray
 
-INPUTS_MOST: Final = 14
+INPUTS_MOST: Final = 12
 """Groups with more inputs have no table: anything may come out of them."""
 _MATTER_MOST: Final = 7
 """Of tables with more inputs, any input is taken to matter anywhere."""
@@ -126,15 +127,27 @@ class Relations:
         drain, source = (np.searchsorted(nets, some[which]) for some in (every.drain, every.source))
         gate = seen[np.searchsorted(nets, every.gate[which])]
         supply = np.concatenate([every.supply[nets], np.full(len(inputs), UNKNOWN)])
-        columns = (drain, gate, source, every.is_n[which], every.resistance[which], supply)
-        key = b"|".join(np.ascontiguousarray(one).tobytes() for one in (*columns, seen[place], own))
-        if key not in self._known:
-            part = Switches(
-                *columns[:5],
-                np.ones(len(supply)),
-                supply.astype(np.int8),
-                [""] * len(supply),
-            )
-            vectors = dict(zip(seen[place].tolist(), input_table(len(inputs)), strict=True))
-            self._known[key] = evaluate(part, vectors, strong=False).values[: len(nets), 0][own]
-        return self._known[key]
+        ohm = every.resistance[which]
+        columns = (drain, gate, source, every.is_n[which], supply, seen[place], own)
+        drawn = b"|".join(np.ascontiguousarray(one).tobytes() for one in columns)
+        sized = drawn + ohm.tobytes()
+        for key in (drawn, sized):
+            if key in self._known:
+                return self._known[key]
+        part = Switches(
+            drain,
+            gate,
+            source,
+            every.is_n[which],
+            ohm,
+            np.ones(len(supply)),
+            supply.astype(np.int8),
+            [""] * len(supply),
+        )
+        vectors = dict(zip(seen[place].tolist(), input_table(len(inputs)), strict=True))
+        found = evaluate(part, vectors)
+        table: Values = found.values[: len(nets), 0][own]
+        # Where nothing is driven against anything, sizes do not matter.
+        fights = bool((found.strength[: len(nets)][own] == WEAK).any())
+        self._known[sized if fights else drawn] = table
+        return table
