@@ -13,7 +13,7 @@ import pytest
 from evenstage.errors import Notice
 from evenstage.logic.paths import PathVector
 from evenstage.logic.same import StructureCheck
-from evenstage.sizing.results import Change, Sizing, StageHold
+from evenstage.sizing.results import Change, LimitPrice, Sizing, StageHold
 from evenstage.timing.results import (
     Analysis,
     Counts,
@@ -281,6 +281,12 @@ def sizing(analysis: Analysis) -> Sizing:
             for stage, hold in zip(after.paths[0].stages, row_holds, strict=True)
         ),
         already_done=False,
+        prices=(
+            LimitPrice(limit="input", name="a3", buys=7.1e-12),
+            LimitPrice(limit="fixed", name="xpre0.xnand", buys=2.2e-12),
+            LimitPrice(limit="fixed", name="xpre1.xnand", buys=2.2e-12),
+            LimitPrice(limit="transition", name="", buys=0.4e-12),
+        ),
         notices=(Notice("fixed-outside", "3 cards lie outside the main file's folder"),),
         structure=StructureCheck(same=True, reason="", transistors=analysis.counts.devices),
     )

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Final
 from evenstage.report.circuit_document import inventory_body
 from evenstage.report.few_changes import few_changes_body
 from evenstage.report.fit_document import fit_body
+from evenstage.report.prices import price_document
 from evenstage.report.simulation_document import simulation_body
 from evenstage.report.trade_off import trade_off_body
 
@@ -82,6 +83,7 @@ def sizing_document(sizing: Sizing) -> Document:
         "changes": [_change(change) for change in sizing.changes],
         "holds": [_hold(hold) for hold in sizing.holds],
         "trade_off": None if sizing.trade_off is None else trade_off_body(sizing.trade_off),
+        "prices": [price_document(price, sizing.bound_on) for price in sizing.prices],
         "few_changes": None if sizing.few is None else few_changes_body(sizing.few),
         "notices": [notice_document(notice) for notice in sizing.notices],
         "before": _analysis(sizing.before),

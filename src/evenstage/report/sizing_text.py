@@ -10,6 +10,7 @@ from evenstage.report.few_changes import few_changes_section
 from evenstage.report.pair_text import pair_lines, total_lines
 from evenstage.report.paper import Paper
 from evenstage.report.path_text import path_lines
+from evenstage.report.prices import price_lines
 from evenstage.report.quality_text import quality_lines
 from evenstage.report.scale import percent
 from evenstage.report.trade_off import trade_off_section
@@ -64,6 +65,7 @@ def sizing_report(
     lines = [*paper.paragraph(block_name(before)), ""]
     lines += paper.paragraph(sizing_answer(sizing))
     lines += section("How good the widths are", quality_lines(paper, sizing))
+    lines += section("What more room would buy", price_lines(paper, sizing))
     lines += section("Changes", _changes(paper, sizing))
     if sizing.few is not None:
         lines += section(*few_changes_section(paper, sizing.few))

@@ -20,6 +20,7 @@ from evenstage.sizing.few import choose_few
 from evenstage.sizing.holds import stage_holds
 from evenstage.sizing.limits import kept_for_later
 from evenstage.sizing.partition import partition
+from evenstage.sizing.prices import limit_prices
 from evenstage.sizing.results import Sizing
 from evenstage.sizing.rounding import Drawn, Rounding
 from evenstage.sizing.variables import variables
@@ -151,6 +152,7 @@ class _Job:
             fixed_cards=int((~free.free).sum()),
             changes=writing.changes(plan),
             holds=stage_holds(engine, answer, written.timing),
+            prices=limit_prices(engine, answer),
             already_done=False,
             notices=(
                 *free.notices,

@@ -155,6 +155,28 @@ class FewChanges:
     points: tuple[FewChangesPoint, ...]
 
 
+PricedLimit = Literal["input", "transition", "greatest width", "least width", "fixed", "budget"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LimitPrice:
+    """What ten percent more room at a limit would buy at most.
+
+    Parameters
+    ----------
+    limit : str
+        Which kind.
+    name : str
+        The input, or the gate; empty where the limit is the block's.
+    buys : float
+        s of the worst charged delay; m or F where the least width or energy was asked for.
+    """
+
+    limit: PricedLimit
+    name: str
+    buys: float
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Sizing(Tabular):
     """New widths and what they buy.
@@ -195,6 +217,8 @@ class Sizing(Tabular):
         How the written netlist, read back, compares with the old one; None where none was written.
     trade_off : TradeOff, optional
         Spend against delay, where it was asked for.
+    prices : tuple of LimitPrice
+        What limits would buy in what the bound is about, the dearest first.
     few : FewChanges, optional
         Delay against the number of changes, where that was limited; ``bound`` is then that of the
         cards chosen.
@@ -221,6 +245,7 @@ class Sizing(Tabular):
     structure: StructureCheck | None = None
     trade_off: TradeOff | None = None
     few: FewChanges | None = None
+    prices: tuple[LimitPrice, ...] = ()
 
     @property
     def headline(self) -> str:
