@@ -193,6 +193,13 @@ def read_brief(path: str | Path) -> Brief:
     ------
     SettingsError
         If the file cannot be read or something in it is wrong.
+
+    Examples
+    --------
+    >>> folder = "sample_netlists/pad_predriver"
+    >>> brief = read_brief(f"{folder}/brief.toml")
+    >>> [output.load for output in brief.outputs]
+    [1.6e-12, 6.4e-13]
     """
     settings = read_settings(path, BRIEF_KEYS)
     supplies, aim = settings.table("supplies"), settings.table("aim")

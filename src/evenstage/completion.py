@@ -54,7 +54,7 @@ def completion(parser: argparse.ArgumentParser, shell: str) -> str:
     --------
     >>> some = argparse.ArgumentParser("evenstage")
     >>> analyse = some.add_subparsers().add_parser("analyse", description="The paths.")
-    >>> print(completion(some, "fish").splitlines()[1])
+    >>> print(completion(some, "fish").splitlines()[2])
     complete -c evenstage -n __fish_use_subcommand -f -a analyse -d 'The paths'
     """
     commands = [_Command("", "", tuple(_options(parser))), *_commands(parser)]

@@ -62,6 +62,17 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         ``no-supply`` or ``no-transistors``.
     SettingsError
         Where a pattern of the brief fits no net.
+
+    Examples
+    --------
+    >>> from evenstage import elaborate, read, read_brief, read_process
+    >>> folder = "sample_netlists/pad_predriver"
+    >>> process = read_process(f"{folder}/process.toml")
+    >>> brief = read_brief(f"{folder}/brief.toml")
+    >>> devices = elaborate(read(f"{folder}/netlist.sp"), None, process, brief)
+    >>> circuit = recognise(devices, process, brief)
+    >>> len(circuit), circuit.gate_name(1), circuit.gate_kind(1), circuit.gate_function(1)
+    (13, 'xp0', 'static gate', '!(a & b)')
     """
     if not len(devices):
         raise CircuitError(

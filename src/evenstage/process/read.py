@@ -100,6 +100,13 @@ def read_process(path: str | Path) -> Process:
     ------
     SettingsError
         If the file cannot be read, something in it is wrong, or a polarity is missing.
+
+    Examples
+    --------
+    >>> folder = "sample_netlists/pad_predriver"
+    >>> process = read_process(f"{folder}/process.toml")
+    >>> process.name, [transistor.polarity for transistor in process.transistors]
+    ('invented 350 nm input-output', ['n', 'p'])
     """
     settings = read_settings(path, PROCESS_KEYS)
     supply = settings.number("supply")

@@ -254,7 +254,7 @@ class Sizing(Tabular):
         growth = self.total_width_after / self.total_width_before - 1
         return (
             f"{self.goal}: {engineering(old, 's')} before, {engineering(new, 's')} after; "
-            f"{len(self.changes)} widths change, total width {growth:+.1%}"
+            f"{len(self.changes)} widths change, total width {100 * growth:+.0f} %"
         )
 
     def tables(self) -> dict[str, list[Row]]:

@@ -64,6 +64,20 @@ def analyse(
         Where no path is left.
     SettingsError
         Where a pattern of the brief fits nothing.
+
+    Examples
+    --------
+    >>> from evenstage import elaborate, read, read_brief, read_process, recognise
+    >>> folder = "sample_netlists/pad_predriver"
+    >>> process = read_process(f"{folder}/process.toml")
+    >>> brief = read_brief(f"{folder}/brief.toml")
+    >>> devices = elaborate(read(f"{folder}/netlist.sp"), None, process, brief)
+    >>> analysis = analyse(recognise(devices, process, brief), brief)
+    >>> analysis.headline
+    'predrv: d to pg takes 907 ps through 7 stages'
+    >>> slowest = max(analysis.paths[0].stages, key=lambda stage: stage.delay)
+    >>> slowest.instance, f"{slowest.stage_effort:.1f}"
+    ('xp6', '11.2')
     """
     return report(time(circuit, brief, start=start, end=end), count)
 

@@ -59,6 +59,14 @@ def elaborate(
     ------
     ElaborationError
         If the cards do not fit together.
+
+    Examples
+    --------
+    >>> from evenstage import read
+    >>> folder = "sample_netlists/pad_predriver"
+    >>> devices = elaborate(read(f"{folder}/netlist.sp"))
+    >>> devices.top, len(devices), [devices.net_names[port] for port in devices.ports]
+    ('predrv', 30, ['d', 'oe', 'pg', 'ng', 'vdd', 'vss'])
     """
     if process is None:
         facts = ((model.name, model.kind, model.values) for model in netlist.models.values())

@@ -33,6 +33,15 @@ def read(path: Path | str, case: Case | None = None) -> Netlist:
     ------
     NetlistError
         If a file cannot be read or its text is no netlist.
+
+    Examples
+    --------
+    >>> folder = "sample_netlists/pad_predriver"
+    >>> [source.path.name for source in read(f"{folder}/netlist.sp").sources]
+    ['netlist.sp']
+    >>> read("missing.sp")
+    Traceback (most recent call last):
+    evenstage.errors.NetlistError: there is no file 'missing.sp' (missing-file)
     """
     path = Path(path)
     try:

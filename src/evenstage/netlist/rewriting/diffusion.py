@@ -27,7 +27,7 @@ def edge_factor(area: float, edge: float, old: float, new: float) -> float:
     Examples
     --------
     >>> edge_factor(0.3e-12, 2.6e-6, 1e-6, 2e-6)  # E = 0.3 um, k = 2: 2.6 um become 4.6 um
-    1.76923076923...
+    1.7692307692307694
     """
     extension = 0.0 if math.isnan(area) else area / old
     edges_per_width = (edge - 2 * extension) / old

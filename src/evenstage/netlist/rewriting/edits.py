@@ -96,6 +96,17 @@ def rewrite(netlist: Netlist, edits: Iterable[Edit]) -> dict[Path, bytes]:
     ------
     ValueError
         If two edits overlap: a fault of ours.
+
+    Examples
+    --------
+    >>> from evenstage import analyse, elaborate, read_process, recognise, resize
+    >>> from evenstage.netlist.reading.read import read
+    >>> folder = "sample_netlists/pad_predriver"
+    >>> netlist, process = read(f"{folder}/netlist.sp"), read_process(f"{folder}/process.toml")
+    >>> circuit = recognise(elaborate(netlist, process=process), process)
+    >>> for path, text in rewrite(netlist, resize(analyse(circuit)).edits).items():
+    ...     print(path.name, len(text) > len(netlist.sources[0].data))
+    netlist.sp True
     """
     tell("writing")
     with without_collection():
