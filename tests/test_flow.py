@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import TYPE_CHECKING, Final
 
 import pytest
@@ -77,6 +78,21 @@ class TestCurve:
         assert again.already_done
         assert again.trade_off is not None
         assert again.trade_off.today_spend == pytest.approx(sizing.total_width_after, rel=1e-9)
+
+
+class TestSpend:
+    def test_the_option_is_the_aim_of_a_brief(
+        self, netlist: Path, question: flow.Question, tmp_path: Path
+    ) -> None:
+        brief = tmp_path / "brief.toml"
+        brief.write_text('[aim]\nspend = "energy"\n')
+        wishes = flow.Wishes(delay=1e-9)
+        asked = flow.resize(netlist, question, wishes, spend="energy")
+        aimed = flow.resize(netlist, replace(question, brief=brief), wishes)
+        assert asked.bound_on == aimed.bound_on == "energy"
+        assert asked.bound == aimed.bound <= asked.after.switched_cap * (1 + 1e-9)
+        width = flow.resize(netlist, replace(question, brief=brief), wishes, spend="width")
+        assert width.bound_on == "width"
 
 
 class TestUnitInverter:

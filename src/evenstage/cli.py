@@ -224,6 +224,7 @@ def _resize(asked: argparse.Namespace) -> flow.Result:
         asked.output,
         force=asked.force,
         curve=asked.curve,
+        spend=asked.spend,
     )
 
 
@@ -495,6 +496,11 @@ def _wishes(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument(
         "--reclaim", action="store_true", help="also make smaller what is off the slowest paths"
+    )
+    parser.add_argument(
+        "--spend",
+        choices=("width", "energy"),
+        help="what is kept small: total width, or switched capacitance (the brief's aim.spend)",
     )
     parser.add_argument(
         "--changes", type=_count, metavar="N", help="change at most so many cards, the best found"

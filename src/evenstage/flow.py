@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
@@ -312,10 +312,12 @@ def resize(
     *,
     force: bool = False,
     curve: bool = False,
+    spend: Literal["width", "energy"] | None = None,
 ) -> Sizing:
     """Find new widths and, where an output is named, write the netlist with them.
 
-    With ``curve`` the least spend for a dozen delays is found too.
+    With ``curve`` the least spend for a dozen delays is found too. ``spend`` says what is kept
+    small; default: what the brief says.
 
     Raises
     ------
@@ -328,6 +330,7 @@ def resize(
     _refuse_existing(output, force=force)
     block = load(path, question)
     wishes = _with_aims(wishes or Wishes(), block.brief)
+    wishes = replace(wishes, spend=spend or wishes.spend)
     record = block.record
     asked = _asked(question, wishes)
     original = _original(record, wishes.spend)
