@@ -277,6 +277,16 @@ class TestOutput:
         assert main(["resize", str(netlist), "--output", "out.sp", "--force"]) == 0
         assert b"evenstage record" in Path("out.sp").read_bytes()
 
+    def test_without_it_the_reader_is_told(
+        self, netlist: Path, capsys: pytest.CaptureFixture[str]
+    ) -> None:
+        told = "no netlist was written: name one with --output FILE\n"
+        main(["resize", str(netlist)])
+        assert capsys.readouterr().err == told
+        main(["resize", str(netlist), "--quiet"])
+        main(["resize", str(netlist), "--output", "out.sp"])
+        assert capsys.readouterr().err == ""
+
     def test_without_it_nothing_is_written(self, netlist: Path) -> None:
         assert main(["resize", str(netlist)]) == 0
         assert names(Path()) == {netlist.name}

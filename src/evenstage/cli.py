@@ -150,6 +150,8 @@ def _run(asked: argparse.Namespace) -> None:
     _print(
         flow.text(result, width=_width(), unicode=_unicode(), with_notices=not asked.quiet),
     )
+    if asked.command is _resize and asked.output is None and not asked.quiet:
+        _say("no netlist was written: name one with --output FILE")
 
 
 def _inputs(asked: argparse.Namespace) -> list[Path]:

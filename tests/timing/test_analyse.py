@@ -131,8 +131,12 @@ class TestWhichPathsCount:
             analysis(self.TEXT, start="in2", end="out2")
 
     def test_unknown_net(self) -> None:
-        with pytest.raises(NoPathError, match="no net 'zz'"):
+        with pytest.raises(NoPathError, match=r"no net 'zz' in [^;]*$"):
             analysis(self.TEXT, end="zz")
+
+    def test_misspelt_net_is_told_the_nearest(self) -> None:
+        with pytest.raises(NoPathError, match=r"no net 'oot1' .*; did you mean 'out1'"):
+            analysis(self.TEXT, end="oot1")
 
     def test_ignored_from_to_leaves_the_rest(self) -> None:
         brief = Brief(ignores=(IgnoreBrief(start=pats("in1"), end=pats("out1")),))

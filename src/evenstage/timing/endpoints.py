@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from evenstage.errors import NoPathError, Notice
-from evenstage.pattern import Pattern, select
+from evenstage.pattern import Pattern, nearest_names, select
 
 if TYPE_CHECKING:
     from evenstage.brief import Brief
@@ -126,8 +126,10 @@ def _asked(circuit: Circuit, wanted: str, among: IntArray, what: str) -> IntArra
     if not chosen:
         known = circuit.net_id(wanted)
         problem = f"net '{wanted}' is not {what}" if known is not None else f"no net '{wanted}'"
+        near = nearest_names(wanted, (names[net] for net in among.tolist()), 1)
+        hint = f"; did you mean '{near[0]}'?" if near else ""
         raise NoPathError(
-            f"{problem} in '{circuit.devices.top or 'the top level'}'", code="no-path"
+            f"{problem} in '{circuit.devices.top or 'the top level'}'{hint}", code="no-path"
         )
     return np.array(chosen, np.int32)
 
