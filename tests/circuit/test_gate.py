@@ -77,6 +77,23 @@ class TestArcs:
         moved = {(a.input, a.rising): dict(a.moved) for a in form(AOI21).arcs}
         assert moved[C, False] == {Y: 1, M: 1}
 
+    def test_nodes_behind_a_switch_of_the_idle_pull_are_told_apart(self) -> None:
+        """With a high the output rises by b, and drags the inner node along through a's n switch.
+
+        Where c pulls the output low, the idle stack's node falls through n switches: in full.
+        """
+        behind = {(a.input, a.rising): dict(a.behind) for a in form(NAND2).arcs}
+        assert behind == {(A, False): {}, (B, False): {}, (A, True): {}, (B, True): {M: 0}}
+        assert all(not arc.behind for arc in form(AOI21).arcs if arc.input == C and not arc.rising)
+
+    def test_a_node_two_switches_behind_counts_with_the_first(self) -> None:
+        devices = (
+            *(n(Y, A, M), n(M, B, Q), n(Q, C, LOW)),
+            *(p(Y, A, HIGH), p(Y, B, HIGH), p(Y, C, HIGH)),
+        )
+        (last,) = (arc for arc in form(devices).arcs if arc.input == C and arc.rising)
+        assert dict(last.behind) == {M: 0, Q: 0}
+
     def test_what_another_setting_outdoes_is_dropped(self) -> None:
         rising_c = [arc for arc in form(AOI21).arcs if arc.input == C and arc.rising]
         assert {arc.path for arc in rising_c} == {(3, 4), (3, 5)}

@@ -257,6 +257,25 @@ class TestDelays:
         assert net is not None
         assert circuit.net_cap[net] == pytest.approx(2e-15)
 
+    @pytest.mark.parametrize(
+        "more",
+        ["", transmission_gate("t", "x", "w", "s", "sb") + "\n" + inverter("i", "w", "y", 1, 2)],
+        ids=["gate", "stage"],
+    )
+    def test_what_a_weak_level_charges_counts_in_part(self, more: str) -> None:
+        """Rising by b, the inner node of two 3 um ends hangs on x through a's n transistor.
+
+        A quarter of its 6 fF is left, at the 2 kohm um of a p transistor of 2 um.
+        """
+        text = block(nand("g", ["a", "b"], "x", 3, 2) + "\n" + more, "a b s sb x y vdd vss")
+        whole, part = (circuit_of(text, plain_process(weak_swing=share)) for share in (1.0, 0.25))
+        arcs = part.arcs
+        less = whole.arcs.elmore(whole.net_cap) - arcs.elmore(part.net_cap)
+        through = (arcs.input == part.net_id("b")) & arcs.rising
+        assert through.any()
+        assert less[through] == pytest.approx(0.75 * 6e-15 * 1e3)
+        assert less[~through] == pytest.approx(0.0, abs=1e-20)
+
 
 class TestWhatIsSaid:
     def test_controls_that_nothing_makes_complements(self) -> None:

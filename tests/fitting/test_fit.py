@@ -20,7 +20,7 @@ if TYPE_CHECKING:
 
 KEYS = (
     *("r_w", "stack", "c_gate", "slope", "slope_power", "shape", "shape_carry"),
-    *("slope_stack", "shape_stack"),
+    *("slope_stack", "shape_stack", "weak_swing"),
 )
 
 
@@ -52,6 +52,7 @@ def elsewhere() -> Process:
                 shape_carry=0.0,
                 slope_stack=0.0,
                 shape_stack=0.0,
+                weak_swing=1.0,
             )
             for one in start.transistors
         ),
@@ -88,10 +89,23 @@ class TestFit:
         found = fit(measured, cells, netlist, truth())
         told = {(one.polarity, one.key): one.told for one in found.constants}
         for polarity in "np":
-            for key in ("stack", "slope_stack", "shape_stack"):
+            for key in ("stack", "slope_stack", "shape_stack", "weak_swing"):
                 assert told[polarity, key] == "not measured"
         assert told["n", "r_w"] == "measured"
-        assert_allclose(found.process.transistors[0].stack, 0.8, rtol=1e-12, atol=0)
+        for one, true in zip(found.process.transistors, truth().transistors, strict=True):
+            for key in ("stack", "slope_stack", "shape_stack", "weak_swing"):
+                assert getattr(one, key) == getattr(true, key)
+
+    def test_what_nobody_measured_stays_where_the_fit_would_begin_elsewhere(
+        self, netlist: Path
+    ) -> None:
+        measured, cells = measure(netlist, truth(), names=("inv", "inv3"))
+        found = fit(measured, cells, netlist, elsewhere())
+        given = elsewhere().transistors[0]
+        told = {(one.polarity, one.key): one for one in found.constants}
+        for key in ("slope_stack", "shape_stack", "weak_swing"):
+            assert getattr(found.process.transistors[0], key) == getattr(given, key)
+            assert told["n", key].value == getattr(given, key)
 
     def test_constants_that_act_together_are_named_together(self, netlist: Path) -> None:
         """Of one size, a part that scales and one that stays cannot be told apart."""
@@ -108,5 +122,5 @@ class TestFit:
         measured, cells = measure(
             netlist, truth(), names=("inv",), transitions=(50e-12,), loads=(6e-15, 12e-15)
         )
-        with pytest.raises(FitError, match=r"4 measurements are within .* 24 constants"):
+        with pytest.raises(FitError, match=r"4 measurements are within .* 18 constants"):
             fit(measured, cells, netlist, truth())

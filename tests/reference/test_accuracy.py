@@ -6,13 +6,19 @@ transistors, at the characterised points whose transitions and loads occur in pr
 from 0.8 times that of a chain of inverters driving one to 1.2 times that of one driving eight,
 loads from 0.35 to 12 times the inverter's own input at equal drive. Delays below half that of an
 inverter driving one are left out: relative error means nothing there.
+
+Where something is asked between the points of a table, prediction and reference are both read at
+the points and by the makers' own linear rule. The first library has two transitions, 31 and 161 ps,
+and two loads, 1 and 23 fF, around an inverter that drives four of itself; delay bends over both,
+and the chord lies 10 % below the prediction itself. How far a chord lies below what is there shows
+in the second library, whose tables are closer: see `TestReading`.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
 from functools import cached_property
-from typing import TYPE_CHECKING, Final
+from typing import TYPE_CHECKING, Final, NamedTuple
 
 import numpy as np
 import pytest
@@ -20,16 +26,18 @@ from numpy.testing import assert_allclose
 from scipy.stats import spearmanr
 
 from evenstage.fitting.fit import fit
-from evenstage.fitting.measurements import Measurements, Query
 from evenstage.fitting.prediction import arc_graphs, build_predictor
 from evenstage.pattern import Pattern
 from evenstage.process.process import Process, Transistor
-from support.open_timing import OPEN_CELLS, OpenLibrary
+from support.open_timing import OPEN_CELLS, OpenLibrary, Table, along_a_chain
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Callable, Mapping, Sequence
+    from pathlib import Path
 
+    from evenstage.circuit.network import BoolArray
     from evenstage.fitting.bench import Bench
+    from evenstage.fitting.measurements import Measurements, Query
     from evenstage.fitting.prediction import ArcGraph, Predicted
     from evenstage.fitting.results import Fit
     from evenstage.netlist.devices import FloatArray, IntArray
@@ -53,16 +61,35 @@ CALIBRATION: Final = {
     ),
 }
 
-#: What was reached: median and 95th percentile in percent for arcs of one stage, of several, and
-#: for random paths; the largest error of inverter chains in percent; rank correlations, both kinds.
-#: Aimed at: 6/20 (first library 25), 5/15, 3/8, 10; 0.97, 0.985.
-REACHED: Final = {
-    "ihp_sg13g2": ((5.1, 12.6), (4.0, 14.2), (2.8, 8.7), 9.8, (0.991, 0.928)),
-    "gf180_7t": ((3.8, 13.0), (5.9, 16.4), (2.8, 7.7), 7.1, (0.992, 0.989)),
+
+class Figures(NamedTuple):
+    """Median and 95th percentile of the error, percent: of arcs of one stage, of several, and of
+    random paths; the largest of inverter chains, percent; rank correlations, both kinds of arc.
+    """
+
+    one: tuple[float, float]
+    several: tuple[float, float]
+    paths: tuple[float, float]
+    chains: float
+    order: tuple[float, float]
+
+
+#: What must be reached.
+MUST: Final = {
+    "ihp_sg13g2": Figures((6, 25), (5, 15), (3, 8), 10, (0.97, 0.985)),
+    "gf180_7t": Figures((6, 20), (5, 15), (3, 8), 10, (0.97, 0.985)),
 }
 
+#: What is reached.
+REACHED: Final = {
+    "ihp_sg13g2": Figures((3.1, 10.6), (2.7, 7.9), (2.8, 7.1), 3.0, (0.989, 0.985)),
+    "gf180_7t": Figures((3.8, 13.0), (5.9, 16.0), (2.7, 7.6), 7.3, (0.993, 0.990)),
+}
+
+#: What is missed.
+MISSED: Final = {"ihp_sg13g2": {"order"}, "gf180_7t": {"several"}}
+
 _CHAINS: Final = ("inv_1", "inv_2", "inv_4")
-_CHAIN_TURNS: Final = 6
 _PATHS: Final = 200
 _STAGES: Final = 6
 _SEED: Final = 20260817
@@ -111,22 +138,9 @@ class Judged:
         return tuple(self.library.tables)
 
     @cached_property
-    def graphs(self) -> Sequence[ArcGraph | None]:
-        return arc_graphs(self.bench, self.queries)
-
-    def predict(self, query: Sequence[int], transition: FloatArray, load: FloatArray) -> Predicted:
-        """Predict some arcs, each under its own transition and load."""
-        unknown = np.full(len(query), np.nan)
-        rows = Measurements(
-            queries=self.queries,
-            query=np.array(query, np.int32),
-            transition=transition,
-            load=load,
-            delay=unknown,
-            output_transition=unknown,
-            input_cap=unknown,
-        )
-        return build_predictor(self.bench, self.graphs, rows)(self.process)
+    def graphs(self) -> Sequence[ArcGraph]:
+        found = arc_graphs(self.bench, self.queries)
+        return [graph for graph in found if graph is not None]
 
     @cached_property
     def process(self) -> Process:
@@ -135,125 +149,141 @@ class Judged:
         return replace(self.fit.process, unit_width=unit.unit_width, unit_ratio=unit.unit_ratio)
 
     @cached_property
-    def held_out(self) -> Measurements:
-        """The points judged."""
-        library = self.library
-        light, heavy = library.chain("inv_1", 1), library.chain("inv_1", 8)
-        fitted_on = {library.cell(short) for short in CALIBRATION[library.name].split()}
-        every = library.measurements(cell for cell in library.cells if cell not in fitted_on)
-        drive = np.array([library.drive(query.subcircuit) for query in every.queries])
-        unit = library.unit_input()
-        fanout = every.load / (unit * drive[every.query])
-        return every.only(
-            (every.transition >= 0.8 * light[1])
-            & (every.transition <= 1.2 * heavy[1])
-            & (fanout >= 0.35)
-            & (fanout <= 12)
-            & (every.delay > 0.5 * light[0])
-        )
+    def rows(self) -> Measurements:
+        """All points of all tables."""
+        return self.library.measurements(self.library.cells)
 
     @cached_property
-    def errors(self) -> tuple[FloatArray, FloatArray]:
-        """Relative errors of the delays judged, of one stage and of several."""
-        rows = self.held_out
-        graphs = arc_graphs(self.bench, rows.queries)
-        predictor = build_predictor(self.bench, graphs, rows)
-        error = predictor(self.process).delay / rows.delay - 1
-        single = predictor.stages == 1
-        return error[single], error[~single]
+    def predicted(self) -> Predicted:
+        """The prediction of all points."""
+        assert len(self.graphs) == len(self.queries)
+        return build_predictor(self.bench, self.graphs, self.rows)(self.process)
 
-    def rank_correlations(self) -> tuple[float, float]:
+    @cached_property
+    def tables(self) -> dict[Query, Table]:
+        """The prediction in the shape of the library's tables."""
+        found, begin = {}, 0
+        for query, table in self.library.tables.items():
+            shape, part = table.delay.shape, slice(begin, begin + table.delay.size)
+            begin += table.delay.size
+            found[query] = replace(
+                table,
+                delay=self.predicted.delay[part].reshape(shape),
+                output_transition=self.predicted.output_transition[part].reshape(shape),
+            )
+        return found
+
+    @cached_property
+    def single(self) -> BoolArray:
+        """Which arcs run through one stage."""
+        return np.array([graph.level.max() == 1 for graph in self.graphs])
+
+    @cached_property
+    def held_out(self) -> BoolArray:
+        """Which arcs are of cells that nothing was fitted to."""
+        fitted_on = {self.library.cell(short) for short in CALIBRATION[self.library.name].split()}
+        return np.array([query.subcircuit not in fitted_on for query in self.queries])
+
+    def figures(self) -> Figures:
+        """Return what is reached."""
+        inside, single = self._inside(), self.single[self.rows.query]
+        error = self.predicted.delay[inside] / self.rows.delay[inside] - 1
+        one, several = (percent(error[which[inside]]) for which in (single, ~single))
+        chains = 100 * float(np.abs(self._chain_errors()).max())
+        return Figures(one, several, percent(self._path_errors()), chains, self._order())
+
+    def _inside(self) -> BoolArray:
+        """Return the points judged."""
+        library, rows = self.library, self.rows
+        light, heavy = library.chain("inv_1", 1), library.chain("inv_1", 8)
+        drive = np.array([library.drive(query.subcircuit) for query in self.queries])
+        fanout = rows.load / (library.unit_input() * drive[rows.query])
+        inside: BoolArray = (
+            self.held_out[rows.query]
+            & (rows.transition >= 0.8 * light[1])
+            & (rows.transition <= 1.2 * heavy[1])
+            & (fanout >= 0.35)
+            & (fanout <= 12)
+            & (rows.delay > 0.5 * light[0])
+        )
+        return inside
+
+    def _order(self) -> tuple[float, float]:
         """Compare the order of held-out arcs at a fan-out of four, one stage and several."""
         library = self.library
-        transition = library.chain("inv_1", 4)[1]
-        unit = library.unit_input()
-        fitted_on = {library.cell(short) for short in CALIBRATION[library.name].split()}
-        chosen = [i for i, q in enumerate(self.queries) if q.subcircuit not in fitted_on]
-        loads = np.array([4 * unit * library.drive(self.queries[i].subcircuit) for i in chosen])
-        found = self.predict(chosen, np.full(len(chosen), transition), loads).delay
-        true = np.array(
-            [
-                library.tables[self.queries[i]].at(transition, load)[0]
-                for i, load in zip(chosen, loads.tolist(), strict=True)
-            ]
-        )
-        single = np.array([graph.level.max() == 1 for i in chosen if (graph := self.graphs[i])])
-        one, several = (
-            float(spearmanr(found[which], true[which]).statistic) for which in (single, ~single)
-        )
+        transition, unit = library.chain("inv_1", 4)[1], library.unit_input()
+
+        def correlation(which: BoolArray) -> float:
+            chosen = [self.queries[index] for index in np.flatnonzero(which)]
+            loads = [4 * unit * library.drive(query.subcircuit) for query in chosen]
+            found, true = (
+                [tables[q].at(transition, load)[0] for q, load in zip(chosen, loads, strict=True)]
+                for tables in (self.tables, library.tables)
+            )
+            return float(spearmanr(found, true).statistic)
+
+        one, several = (correlation(self.held_out & kind) for kind in (self.single, ~self.single))
         return one, several
 
-    def chain_errors(self) -> FloatArray:
+    def _chain_errors(self) -> FloatArray:
         """Return relative errors of delays along chains of inverters that each drive four."""
-        rise, fall = (
-            [self.queries.index(self._inverter(short, rising=rising)) for short in _CHAINS]
-            for rising in (True, False)
-        )
-        load = np.array([4 * self._pin_cap(self.queries[index]) for index in rise])
-        transition = np.array([self.library.chain(short, 4)[1] for short in _CHAINS])
-        for _ in range(_CHAIN_TURNS):
-            up = self.predict(rise, transition, load)
-            down = self.predict(fall, up.output_transition, load)
-            transition = down.output_transition
-        known = np.array([self.library.chain(short, 4)[0] for short in _CHAINS])
-        error: FloatArray = (up.delay + down.delay) / 2 / known - 1
-        return error
+        errors = []
+        for short in _CHAINS:
+            rise, fall = (inverter(self.library, short, rising=rising) for rising in (True, False))
+            load = 4 * self._pin_cap(rise)
+            found, _ = along_a_chain(self.tables[rise], self.tables[fall], load)
+            errors.append(found / self.library.chain(short, 4)[0] - 1)
+        return np.array(errors)
 
-    def _inverter(self, short: str, *, rising: bool) -> Query:
-        cell = self.library.cell(short)
-        return next(q for q in self.queries if q.subcircuit == cell and q.rising == rising)
-
-    def path_errors(self) -> FloatArray:
+    def _path_errors(self) -> FloatArray:
         """Return relative errors of the delays of random paths, transitions handed on.
 
         Each stage drives one to four of the next stage's pin; the prediction takes the program's
         own pin capacitance, the reference the library's.
         """
         library, rng = self.library, np.random.default_rng(_SEED)
-        fitted_on = {library.cell(short) for short in CALIBRATION[library.name].split()}
-        usable = [
-            index
-            for index, query in enumerate(self.queries)
-            if query.subcircuit not in fitted_on and query in library.senses
-        ]
         by_edge: dict[bool, list[int]] = {True: [], False: []}
-        for index in usable:
-            by_edge[self._input_rises(self.queries[index])].append(index)
+        for index in np.flatnonzero(self.held_out).tolist():
+            if self.queries[index] in library.senses:
+                by_edge[self._input_rises(self.queries[index])].append(index)
         rises = rng.integers(2, size=_PATHS).astype(bool)
         stages = []
         for _ in range(_STAGES + 1):
             chosen = [by_edge[bool(edge)][rng.integers(len(by_edge[bool(edge)]))] for edge in rises]
-            stages.append(chosen)
+            stages.append([self.queries[index] for index in chosen])
             rises = np.array([self.queries[index].rising for index in chosen])
         copies = rng.integers(1, _LOADS_MOST + 1, size=(_STAGES, _PATHS))
-        return self._along(stages, copies)
+        found, reference = (
+            self._along(stages, copies, tables, pin)
+            for tables, pin in (
+                (self.tables, self._pin_cap),
+                (library.tables, lambda q: library.input_cap(q.subcircuit, q.input)),
+            )
+        )
+        return found / reference - 1
 
     def _input_rises(self, query: Query) -> bool:
         return query.rising == (self.library.senses[query] == "positive_unate")
 
-    def _along(self, stages: Sequence[Sequence[int]], copies: IntArray) -> FloatArray:
-        library = self.library
-        start = np.full(_PATHS, library.chain("inv_1", 4)[1])
-        guessed, true = start, start
-        found, reference = np.zeros(_PATHS), np.zeros(_PATHS)
-        for stage in range(_STAGES):
-            following = [self.queries[index] for index in stages[stage + 1]]
-            ours = copies[stage] * np.array([self._pin_cap(query) for query in following])
-            theirs = copies[stage] * np.array(
-                [library.input_cap(query.subcircuit, query.input) for query in following]
-            )
-            step = self.predict(stages[stage], guessed, ours)
-            found, guessed = found + step.delay, step.output_transition
-            told = np.array(
-                [
-                    library.tables[self.queries[index]].at(transition, load)
-                    for index, transition, load in zip(
-                        stages[stage], true.tolist(), theirs.tolist(), strict=True
-                    )
-                ]
-            )
-            reference, true = reference + told[:, 0], told[:, 1]
-        return found / reference - 1
+    def _along(
+        self,
+        stages: Sequence[Sequence[Query]],
+        copies: IntArray,
+        tables: Mapping[Query, Table],
+        pin: Callable[[Query], float],
+    ) -> FloatArray:
+        """Return the delays of paths by some tables and capacitances of pins."""
+        total = np.zeros(_PATHS)
+        transitions = [self.library.chain("inv_1", 4)[1]] * _PATHS
+        for count, here, following in zip(copies, stages, stages[1:], strict=False):
+            loads = [float(n) * pin(query) for n, query in zip(count, following, strict=True)]
+            told = [
+                tables[query].at(transition, load)
+                for query, transition, load in zip(here, transitions, loads, strict=True)
+            ]
+            total += [delay for delay, _ in told]
+            transitions = [leaving for _, leaving in told]
+        return total
 
     @cached_property
     def _net_cap(self) -> FloatArray:
@@ -265,16 +295,20 @@ class Judged:
         return float(self._net_cap[self.bench.net(number, place)])
 
 
-@pytest.fixture(scope="module", params=LIBRARIES)
-def judged(request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory) -> Judged:
-    name = str(request.param)
+def judge(name: str, folder: Path) -> Judged:
+    """Fit a process to the calibration cells of a library."""
     library = OpenLibrary(name)
-    path, start = library.netlist(tmp_path_factory.mktemp(name)), beginning(name)
+    path, start = library.netlist(folder), beginning(name)
     chosen = [library.cell(short) for short in CALIBRATION[name].split()]
     cells, _ = library.on_bench(chosen, path, start)
     result = fit(library.measurements(chosen), cells, path, start, source=name)
     _, bench = library.on_bench(library.cells, path, start)
     return Judged(library, result, bench)
+
+
+def inverter(library: OpenLibrary, short: str, *, rising: bool) -> Query:
+    cell = library.cell(short)
+    return next(q for q in library.tables if q.subcircuit == cell and q.rising == rising)
 
 
 def percent(error: FloatArray) -> tuple[float, float]:
@@ -283,22 +317,51 @@ def percent(error: FloatArray) -> tuple[float, float]:
     return float(np.median(size)), float(np.quantile(size, 0.95))
 
 
+def missed(found: Figures, must: Figures) -> set[str]:
+    """Name the figures that are not what they must be."""
+    names = {
+        name
+        for name in ("one", "several", "paths", "chains")
+        if (np.array(getattr(found, name)) > getattr(must, name)).any()
+    }
+    return names | ({"order"} if (np.array(found.order) < must.order).any() else set())
+
+
 class TestAccuracy:
     """Within a tenth of what was reached, worse or better: else the table is old."""
 
-    def test_arcs(self, judged: Judged) -> None:
-        reached = REACHED[judged.library.name]
-        for error, known in zip(judged.errors, reached[:2], strict=True):
-            assert_allclose(percent(error), known, rtol=0.1, atol=0)
+    @pytest.mark.parametrize("name", LIBRARIES)
+    def test_what_was_reached_is_reached(self, name: str, tmp_path: Path) -> None:
+        """One test a library, so that each process is fitted once wherever tests run."""
+        found, known = judge(name, tmp_path).figures(), REACHED[name]
+        for kind in ("one", "several", "paths", "chains"):
+            assert_allclose(getattr(found, kind), getattr(known, kind), rtol=0.1, atol=0)
+        assert_allclose(found.order, known.order, rtol=0, atol=0.003)
+        assert missed(found, MUST[name]) == MISSED[name]
 
-    def test_paths(self, judged: Judged) -> None:
-        known = REACHED[judged.library.name][2]
-        assert_allclose(percent(judged.path_errors()), known, rtol=0.1, atol=0)
 
-    def test_chains_of_inverters(self, judged: Judged) -> None:
-        error = 100 * np.abs(judged.chain_errors())
-        assert_allclose(error.max(), REACHED[judged.library.name][3], rtol=0.1, atol=0)
+class TestReading:
+    @pytest.mark.parametrize("short", _CHAINS)
+    def test_a_table_with_few_points_makes_chains_fast(self, short: str) -> None:
+        """Every other transition and no load between the least and the fifth, as in the first."""
+        library = OpenLibrary("gf180_7t")
+        rise, fall = (
+            library.tables[inverter(library, short, rising=rising)] for rising in (True, False)
+        )
+        load = 4 * library.input_cap(library.cell(short), "I")
+        whole, thin = (
+            along_a_chain(*tables, load)[0] for tables in ((rise, fall), (few(rise), few(fall)))
+        )
+        assert -0.09 < thin / whole - 1 < -0.05
 
-    def test_order(self, judged: Judged) -> None:
-        known = REACHED[judged.library.name][4]
-        assert_allclose(judged.rank_correlations(), known, rtol=0, atol=0.005)
+
+def few(table: Table) -> Table:
+    """Return a table with few of its points."""
+    rows, columns = np.array([0, 2, 4, 7, 9]), np.array([0, 4, 5, 6, 7, 8, 9])
+    there = np.ix_(rows, columns)
+    return Table(
+        transition=table.transition[rows],
+        load=table.load[columns],
+        delay=table.delay[there],
+        output_transition=table.output_transition[there],
+    )

@@ -37,6 +37,7 @@ class Constants(TypedDict, total=False):
     slope_power: float
     shape: float
     shape_carry: float
+    weak_swing: float
     junctions: Junctions
     width_min: float
     width_max: float

@@ -96,6 +96,7 @@ def truth() -> Process:
         shape_carry=0.3,
         slope_stack=0.2,
         shape_stack=0.15,
+        weak_swing=0.6,
     )
     p = replace(
         n,
@@ -108,6 +109,7 @@ def truth() -> Process:
         slope=0.35,
         shape=2.4,
         shape_carry=0.25,
+        weak_swing=0.8,
     )
     return Process(name="invented", supply=1.2, transistors=(n, p))
 

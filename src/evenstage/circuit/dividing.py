@@ -401,7 +401,11 @@ def closing(switch: Switch, literals: Literals) -> Condition:
 
 
 def _renumbered(arc: ArcForm, indices: list[int]) -> ArcForm:
-    return replace(arc, path=tuple(indices[i] for i in arc.path))
+    return replace(
+        arc,
+        path=tuple(indices[i] for i in arc.path),
+        behind=tuple((node, indices[i]) for node, i in arc.behind),
+    )
 
 
 def _passes(

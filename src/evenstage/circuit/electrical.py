@@ -59,6 +59,7 @@ class Electrical:
     shape_carry: FloatArray
     slope_stack: FloatArray
     shape_stack: FloatArray
+    weak_swing: FloatArray
 
     @cached_property
     def drain(self) -> Scaled:
@@ -100,6 +101,7 @@ def electrical(devices: Devices, process: Process) -> Electrical:
         shape_carry=constant("shape_carry"),
         slope_stack=constant("slope_stack"),
         shape_stack=constant("shape_stack"),
+        weak_swing=constant("weak_swing"),
     )
 
 

@@ -45,6 +45,9 @@ class ArcForm:
         Switches from the output to the supply.
     moved : tuple of (int, int)
         Node and the number of path switches, counted from the supply, its charge flows through.
+    behind : tuple of (int, int)
+        Those of them that a switch of the idle pull ties to the output, and that switch: it passes
+        towards the wrong supply, n upwards or p downwards.
     load : tuple of int
         Switches of a path to the other supply that conducts all the while and is overpowered.
     """
@@ -53,6 +56,7 @@ class ArcForm:
     rising: bool
     path: tuple[int, ...]
     moved: tuple[tuple[int, int], ...]
+    behind: tuple[tuple[int, int], ...] = ()
     load: tuple[int, ...] = ()
 
 
@@ -243,8 +247,8 @@ def _arcs(
         was_closed = frozenset(np.flatnonzero(network.closed[:, old]).tolist())
         ways = list(network.paths(output, supply, closed))
         path = min(ways, key=len)
-        moved = _moved(network, path, closed, _tied(network, supply, was_closed))
-        form = ArcForm(network.inputs[row], rising, path, moved)
+        moved, behind = _moved(network, path, closed, _tied(network, supply, was_closed))
+        form = ArcForm(network.inputs[row], rising, path, moved, behind)
         (single if len(ways) == 1 else shared)[form] = None
     return _not_outdone(list(single) or list(shared))
 
@@ -264,18 +268,20 @@ def _tied(network: Network, start: int, closed: frozenset[int]) -> set[int]:
 
 def _moved(
     network: Network, path: tuple[int, ...], closed: frozenset[int], settled: set[int]
-) -> tuple[tuple[int, int], ...]:
+) -> tuple[tuple[tuple[int, int], ...], tuple[tuple[int, int], ...]]:
     """Return the nodes whose charge moves, each with how many path switches it flows through.
 
     A node beside the path is charged through the path node nearest to the output that it is tied
-    to, which is the slowest reading where a mesh offers several.
+    to, which is the slowest reading where a mesh offers several. Nodes behind a switch of the other
+    polarity than the path's are named once more with the first such switch.
     """
+    polarity = network.switches[path[-1]].polarity
     node = _start(network, path)
     on_path = [(node, len(path))]
     for left, index in zip(range(len(path) - 1, 0, -1), path[:-1], strict=True):
         node = network.switches[index].other(node)
         on_path.append((node, left))
-    found = dict(on_path)
+    found, behind = dict(on_path), dict[int, int]()
     for root, depth in on_path:
         waiting = [root]
         while waiting:
@@ -284,8 +290,13 @@ def _moved(
                 far = network.switches[index].other(here)
                 if index in closed and far >= 0 and far not in found:
                     found[far] = depth
+                    if here in behind or network.switches[index].polarity != polarity:
+                        behind[far] = behind.get(here, index)
                     waiting.append(far)
-    return tuple(sorted((node, depth) for node, depth in found.items() if node not in settled))
+    for node in settled & found.keys():
+        found.pop(node)
+        behind.pop(node, None)
+    return tuple(sorted(found.items())), tuple(sorted(behind.items()))
 
 
 def _start(network: Network, path: tuple[int, ...]) -> int:
@@ -300,9 +311,10 @@ def _start(network: Network, path: tuple[int, ...]) -> int:
 def _not_outdone(forms: list[ArcForm]) -> list[ArcForm]:
     kept = []
     for index, form in enumerate(forms):
-        mine = dict(form.moved)
+        mine, behind = dict(form.moved), dict(form.behind)
         outdone = any(
             other.path == form.path
+            and dict(other.behind).keys() & mine.keys() <= behind.keys()
             and all(dict(other.moved).get(node, 0) >= depth for node, depth in mine.items())
             and (other.moved != form.moved or position < index)
             for position, other in enumerate(forms)

@@ -79,6 +79,9 @@ class StageArc:
         From the output to the supply.
     moved : tuple of (int, int)
         Node and the number of steps, counted from the supply, its charge flows through.
+    behind : tuple of (int, int)
+        Inner nodes of drivers among them that a switch of the idle pull ties to the output, and
+        that switch.
     switching : int
         The switch that closes; -1 where the outside drives.
     source : int
@@ -92,6 +95,7 @@ class StageArc:
     rising: bool
     steps: tuple[Step, ...]
     moved: tuple[tuple[int, int], ...]
+    behind: tuple[tuple[int, int], ...]
     switching: int
     source: int
 
@@ -301,7 +305,7 @@ class _Builder:
         rising, switches = supply == HIGH, self._division.network.switches
         source = route.driver.node if route.driver.is_outside else -1
         for nodes in sets:
-            for switch, moved in self._moves(route, way, nodes, rising=rising):
+            for switch, moved, behind in self._moves(route, way, nodes, rising=rising):
                 by = None if switch < 0 else switches[switch]
                 yield StageArc(
                     part=steps[-1].part if by is None else self._part_of[switch],
@@ -311,28 +315,33 @@ class _Builder:
                     rising=rising,
                     steps=steps,
                     moved=tuple(sorted(moved.items())),
+                    behind=behind,
                     switching=switch,
                     source=source,
                 )
 
     def _moves(
         self, route: Route, way: Way, nodes: dict[int, int], *, rising: bool
-    ) -> Iterator[tuple[int, dict[int, int]]]:
-        """Yield the switches that start a move, -1 for the outside, and the nodes that move."""
+    ) -> Iterator[tuple[int, dict[int, int], tuple[tuple[int, int], ...]]]:
+        """Yield the switches that start a move, -1 for the outside, and the nodes that move.
+
+        Those behind a switch of the idle pull are named once more with that switch.
+        """
         switches = self._division.network.switches
         moving = {node: depth for node, depth in nodes.items() if depth}
         if route.driver.is_outside:
-            yield -1, moving
+            yield -1, moving, ()
         for arc in route.driver.arcs:
             if arc.path == way.path and arc.rising == rising:
                 inner = {node: d for node, d in arc.moved if node != route.driver.node}
-                yield next(i for i in arc.path if switches[i].gate == arc.input), moving | inner
+                switching = next(i for i in arc.path if switches[i].gate == arc.input)
+                yield switching, moving | inner, arc.behind
         depth = self._depths(route, len(way.path))
         for place, one in enumerate(self._passes(route)):
             least = depth[route.nodes[place]]
             for switch in one.switches:
                 if switches[switch].gate >= 0:
-                    yield switch, {node: d for node, d in moving.items() if d >= least}
+                    yield switch, {node: d for node, d in moving.items() if d >= least}, ()
 
     def _passes(self, route: Route) -> list[Pass]:
         return [self._division.passes[index] for index in route.passes]

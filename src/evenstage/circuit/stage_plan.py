@@ -37,12 +37,16 @@ class Resistor(NamedTuple):
 
 
 class Capacitor(NamedTuple):
-    """One entry of the vector of capacitances: of one part's channels on a node."""
+    """One entry of the vector of capacitances: of one part's channels on a node.
+
+    ``behind`` is the switch of the idle pull that ties the node to the output, -1 for none.
+    """
 
     node: int
     part: int
     rising: bool
     scales: bool
+    behind: int = -1
 
 
 class Present(NamedTuple):
@@ -192,19 +196,21 @@ class _Planner:
         rows: tuple[_Rows, _Rows],
     ) -> None:
         found: dict[int, list[tuple[int, int]]] = {}
+        behind = dict(arc.behind)
         for node, depth in arc.moved:
             shared = [resistor for resistor, place in places if place < depth]
             if shared:
-                for other, capacitor in self._capacitors_at(node, rising=arc.rising):
+                here = self._capacitors_at(node, behind.get(node, -1), rising=arc.rising)
+                for other, capacitor in here:
                     found.setdefault(other, []).extend((one, capacitor) for one in shared)
         for other, entries in found.items():
             rows[0].add(owner, other, entries)
             rows[1].add(owner, other, [(resistor, 0) for resistor, _ in places])
 
-    def _capacitors_at(self, node: int, *, rising: bool) -> Iterator[tuple[int, int]]:
+    def _capacitors_at(self, node: int, behind: int, *, rising: bool) -> Iterator[tuple[int, int]]:
         """Yield owner and place of the capacitances on a node."""
         for part in self._parts_at.get(node, ()):
-            one = Capacitor(node, part, rising, scales=True)
+            one = Capacitor(node, part, rising, scales=True, behind=behind)
             yield part, self._capacitors.setdefault(one, len(self._capacitors))
             if self._present.fixed_capacitance:
                 fixed = one._replace(scales=False)

@@ -188,13 +188,15 @@ def _vector_of_capacitances(
     some: AlikeStages, values: Electrical, capacitors: tuple[Capacitor, ...]
 ) -> FloatArray:
     """Return the capacitance of every entry, F, shape (k, entries)."""
-    columns = []
+    columns, first = [], _first_devices(some.form)
     for one in capacitors:
         edge: Diffusion = values.rise if one.rising else values.fall
         total = np.zeros(len(some.gates))
         for end, quantity in enumerate((edge.drain, edge.source)):
             at = some.devices[:, _columns_at(some.form, one.node, one.part, end)]
             total += (quantity.scaling if one.scales else quantity.fixed)[at].sum(axis=1)
+        if one.behind >= 0:
+            total *= values.weak_swing[some.devices[:, first[one.behind]]]
         columns.append(total)
     return np.column_stack(columns)
 

@@ -173,7 +173,8 @@ def _alike_arcs(
     rows = {node: row for row, node in enumerate(form.network.inner_nodes)}
     nodes = [rows[node] for node, _ in arc.moved]
     depth = [count - 1 for _, count in arc.moved]
-    c_x, c_0 = cap.scaling[:, nodes], cap.fixed[:, nodes]
+    part = _counted(some, arc, values, first_device)
+    c_x, c_0 = part * cap.scaling[:, nodes], part * cap.fixed[:, nodes]
     # A load that has been overpowered is not switched: the edge through it begins in the network.
     switching = next(
         (i for i in arc.path if form.network.switches[i].gate == arc.input), arc.path[0]
@@ -207,6 +208,19 @@ def _alike_arcs(
         shape=values.shape[device] / (1 + values.shape_stack[device] * more),
         shape_carry=values.shape_carry[device],
     )
+
+
+def _counted(
+    some: AlikeGates, arc: ArcForm, values: Electrical, first_device: list[int]
+) -> FloatArray:
+    """Return which part of each moved node counts, shape ``(k, moved)`` or ``(1, moved)``."""
+    if not arc.behind:
+        return np.ones((1, len(arc.moved)))
+    part = np.ones((len(some.gates), len(arc.moved)))
+    column = {node: column for column, (node, _) in enumerate(arc.moved)}
+    for node, switch in arc.behind:
+        part[:, column[node]] = values.weak_swing[some.devices[:, first_device[switch]]]
+    return part
 
 
 def _contention(pull: FloatArray, load: FloatArray) -> FloatArray:

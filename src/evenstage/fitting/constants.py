@@ -33,10 +33,20 @@ _NUMBERS: Final = {
     "shape_carry": (0.0, 0.95),
     "slope_stack": (0.0, 3.0),
     "shape_stack": (0.0, 3.0),
+    "weak_swing": (0.0, 1.0),
 }
 
 #: Where plain numbers start if the process to begin with leaves the plain linear model.
-_STARTS: Final = {"slope": 0.3, "slope_power": 0.7, "shape": 2.0, "shape_carry": 0.3}
+_STARTS: Final = {
+    "slope": 0.3,
+    "slope_power": 0.7,
+    "shape": 2.0,
+    "shape_carry": 0.3,
+    "weak_swing": 0.5,
+}
+
+#: Plain numbers that the plain linear model takes as 1; the others it takes as 0.
+_ONES: Final = frozenset({"slope_power", "weak_swing"})
 
 #: Constant parts, each with the constant whose value at the scale's width is its scale, and the
 #: most it can be of that.
@@ -128,7 +138,7 @@ def _fixed(process: Process, key: str, types: tuple[int, ...], width: float) -> 
 def _number(transistor: Transistor, key: str, index: int) -> Unknown:
     least, most = _NUMBERS[key]
     given = getattr(transistor, key)
-    is_plain = given == 0 or (key == "slope_power" and given == 1)
+    is_plain = given == (1 if key in _ONES else 0)
     start = _STARTS.get(key, 0.1) if is_plain else given
     margin = 1e-3 * (most - least)
     return Unknown(key, (index,), 1.0, min(max(start, least + margin), most - margin), least, most)

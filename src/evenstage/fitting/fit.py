@@ -203,7 +203,7 @@ def _constants(
                 models=" ".join(models),
                 polarity=polarity,
                 key=key,
-                value=unknown.value(at),
+                value=getattr(solution.process.transistors[unknown.types[0]], unknown.key),
                 error=error if free[row] and np.isfinite(error) else None,
                 told=told,
             )

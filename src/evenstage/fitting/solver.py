@@ -25,21 +25,24 @@ import numpy as np
 from scipy.optimize import least_squares
 
 from evenstage.errors import FitError
+from evenstage.fitting.certainty import is_measured
 from evenstage.fitting.constants import bounds, starts, with_constants
 from evenstage.fitting.prediction import build_predictor
 from evenstage.progress import tell
 from evenstage.timing.yardstick import chain
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Callable, Sequence
 
     from evenstage.circuit.network import BoolArray
     from evenstage.fitting.bench import Bench
     from evenstage.fitting.constants import Unknown
     from evenstage.fitting.measurements import Measurements
-    from evenstage.fitting.prediction import ArcGraph, Predicted
+    from evenstage.fitting.prediction import ArcGraph, Predicted, Predictor
     from evenstage.netlist.devices import FloatArray
     from evenstage.process.process import Process
+
+    _Function = Callable[[FloatArray], FloatArray]
 
 _LIGHT_FANOUT: Final = 1.0
 _HEAVY_FANOUT: Final = 16.0
@@ -191,14 +194,49 @@ class Problem:
 
     def _solved(self, inside: BoolArray, at: FloatArray, window: Window) -> Solution:
         rows = self.rows.only(inside)
-        if len(rows) < len(self.unknowns):
+        if not len(rows):
             raise _too_few(len(rows), len(self.unknowns))
         predictor = build_predictor(self.bench, self.graphs, rows)
-        start = self.bench.circuit.process
         least, most = bounds(self.unknowns)
+        # What nothing depends on stays as it is given and is no part of the search.
+        live = is_measured(
+            _jacobian(self._residuals(self.unknowns, predictor, rows, window), most)(at)
+        )
+        found = [unknown for unknown, is_live in zip(self.unknowns, live, strict=True) if is_live]
+        if len(rows) < len(found):
+            raise _too_few(len(rows), len(found))
+        residuals = self._residuals(found, predictor, rows, window)
+        result = least_squares(
+            residuals,
+            at[live],
+            jac=_jacobian(residuals, most[live]),
+            bounds=(least[live], most[live]),
+            loss="soft_l1",
+            f_scale=_ROBUST,
+            ftol=_TOLERANCE,
+            xtol=_TOLERANCE,
+            max_nfev=_STEPS,
+        )
+        landed = at.copy()
+        landed[live] = _landed(result.x, least[live])
+        gradients = np.zeros((len(result.fun), len(at)))
+        gradients[:, live] = np.asarray(result.jac)
+        return Solution(
+            with_constants(self.bench.circuit.process, found, landed[live]),
+            landed,
+            gradients,
+            2 * float(result.cost) / max(len(rows) - len(found), 1),
+            window,
+        )
+
+    def _residuals(
+        self, unknowns: Sequence[Unknown], predictor: Predictor, rows: Measurements, window: Window
+    ) -> _Function:
+        """Return the residuals as a function of some unknowns."""
+        start = self.bench.circuit.process
 
         def residuals(at: FloatArray) -> FloatArray:
-            process = with_constants(start, self.unknowns, at)
+            process = with_constants(start, unknowns, at)
             found = errors(predictor(process), rows, window)
             parts = (
                 found.delay,
@@ -207,31 +245,20 @@ class Problem:
             )
             return np.concatenate(parts)
 
-        def jacobian(at: FloatArray) -> FloatArray:
-            here = residuals(at)
-            steps = np.where(at + _DIFFERENCE > most, -_DIFFERENCE, _DIFFERENCE)
-            moved = [residuals(at + step) - here for step in np.diag(steps)]
-            return np.stack(moved, axis=1) / steps
+        return residuals
 
-        result = least_squares(
-            residuals,
-            at,
-            jac=jacobian,
-            bounds=(least, most),
-            loss="soft_l1",
-            f_scale=_ROBUST,
-            ftol=_TOLERANCE,
-            xtol=_TOLERANCE,
-            max_nfev=_STEPS,
-        )
-        free = max(len(rows) - len(self.unknowns), 1)
-        return Solution(
-            with_constants(start, self.unknowns, _landed(result.x, least)),
-            _landed(result.x, least),
-            np.asarray(result.jac),
-            2 * float(result.cost) / free,
-            window,
-        )
+
+def _jacobian(residuals: _Function, most: FloatArray) -> _Function:
+    """Return the Jacobian of residuals by differences, inside the bounds."""
+
+    def jacobian(at: FloatArray) -> FloatArray:
+        here = residuals(at)
+        steps = np.where(at + _DIFFERENCE > most, -_DIFFERENCE, _DIFFERENCE)
+        moved = [residuals(at + step) - here for step in np.diag(steps)]
+        result: FloatArray = np.stack(moved, axis=1) / steps
+        return result
+
+    return jacobian
 
 
 def _landed(at: FloatArray, least: FloatArray) -> FloatArray:

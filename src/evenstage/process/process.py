@@ -125,6 +125,10 @@ class Transistor:
     slope_stack, shape_stack : float
         Where n conducting devices are in series, slope and shape are divided by ``1 + slope_stack
         (n - 1)`` and ``1 + shape_stack (n - 1)``: a slow input hides some of what the stack costs.
+    weak_swing : float
+        How much counts of the capacitance behind a transistor that conducts towards the wrong
+        supply, n upwards and p downwards, beside the pull that moves the output: it passes a weak
+        level and lags behind the output.
     junctions : Junctions, optional
         Used in place of ``c_drain`` where a card gives areas and perimeters.
     channel : Channel
@@ -153,6 +157,7 @@ class Transistor:
     shape_carry: float = 0.0
     slope_stack: float = 0.0
     shape_stack: float = 0.0
+    weak_swing: float = 1.0
     junctions: Junctions | None = None
     channel: Channel = Channel()
     width_parameter: str = "w"
