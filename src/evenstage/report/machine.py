@@ -73,6 +73,7 @@ def sizing_document(sizing: Sizing) -> Document:
         "bound_m": sizing.bound if sizing.bound_on == "width" else None,
         "bound_f": sizing.bound if sizing.bound_on == "energy" else None,
         "gap": sizing.gap,
+        "sharing_loss": sizing.sharing_loss,
         "rounding_loss": sizing.rounding_loss,
         "least_delay_s": sizing.least_delay,
         "total_width_m": {"before": sizing.total_width_before, "after": sizing.total_width_after},

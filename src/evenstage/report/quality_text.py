@@ -37,7 +37,8 @@ def quality_parts(sizing: Sizing) -> list[tuple[str, str]]:
     """Return goal, bound and distance to it, each a label and a sentence."""
     cards = f" ({counted(sizing.free_cards, 'size')} free to move, {sizing.fixed_cards} fixed)"
     proof = (
-        f"the best sizes off the grid are proved to lie within {_gap(sizing.gap)} of the bound; "
+        f"the best sizes off the grid are proved to lie within {_gap(sizing.gap)} of the bound"
+        f"{_sharing(sizing.sharing_loss)}; "
         f"putting widths on the grid costs {_loss(sizing.rounding_loss)}"
     )
     return [
@@ -46,6 +47,13 @@ def quality_parts(sizing: Sizing) -> list[tuple[str, str]]:
         ("proof", proof),
         *([("function", _function(sizing.structure))] if sizing.structure else []),
     ]
+
+
+def _sharing(loss: float) -> str:
+    """Return how much of the gap is there because copies of a leaf share sizes."""
+    return (
+        f", {_gap(loss)} of it because copies of a leaf share sizes" if loss >= _SAME / 100 else ""
+    )
 
 
 def _function(check: StructureCheck) -> str:

@@ -33,9 +33,10 @@ if TYPE_CHECKING:
     from collections.abc import Iterator
 
     from evenstage.netlist.rewriting.handles import WidthHandles
-    from evenstage.sizing.engine import Engine
+    from evenstage.sizing.engine import Continuous, Engine
     from evenstage.sizing.partition import Partition
     from evenstage.sizing.results import FewChanges
+    from evenstage.sizing.solution import Solution
     from evenstage.timing.results import Analysis
     from evenstage.timing.sweep import Timing
 
@@ -115,7 +116,7 @@ class _Job:
     def run(self) -> Sizing:
         """Do it."""
         tell("sizing")
-        rounding, drawn, few = self._rounded()
+        rounding, drawn, few, loosest = self._rounded()
         writing = Writing(self.timing, self.analysis.paths[0], rounding)
         plan = writing.plan(drawn.slot_width)
         written = rounding.drawn_at(writing.width(plan))
@@ -123,44 +124,53 @@ class _Job:
             plan = WidthPlan(edits=(), written=(), refused=plan.refused)
             written = Drawn(rounding.drawn, self.timing, rounding.engine.cost_drawn)
         refuse_broken(written.timing, rounding.engine)
-        return replace(self._sizing(writing, plan, written), few=few)
+        return replace(self._sizing(writing, plan, written, loosest), few=few)
 
-    def _rounded(self) -> tuple[Rounding, Drawn, FewChanges | None]:
-        """Optimise and round; tie sizes until every leaf keeps to its copies."""
+    def _rounded(self) -> tuple[Rounding, Drawn, FewChanges | None, Continuous]:
+        """Optimise and round; tie sizes until every leaf keeps to its copies.
+
+        Last is the answer whose bounds count: the first, in which no copies share a size yet,
+        unless the bounds are about the cards chosen last.
+        """
         circuit, copies = self.timing.circuit, self.brief.copies_per_leaf
-        parts = partition(circuit, self.brief)
+        parts, first = partition(circuit, self.brief), None
         for _ in range(_ROUNDS):
             handles = width_handles(circuit.devices, circuit.process, parts.variable_of, copies)
             engine, few = self._engine(parts, handles), None
             if self.wishes.changes is not None:
                 engine, few = choose_few(engine, self.wishes.changes)
             rounding = Rounding(engine, engine.run(), handles)
+            first = first or rounding.answer
             drawn = rounding.run()
             label = shared_sizes(parts, handles, drawn.slot_width / rounding.drawn, copies)
             if len(np.unique(label)) == len(parts):
                 break
             parts = parts.tied(label)
-        return rounding, drawn, few
+        return rounding, drawn, few, rounding.answer if few or first is None else first
 
     def _engine(self, parts: Partition, handles: WidthHandles) -> Engine:
         free = variables(self.timing.circuit, self.brief, parts, handles, self.original.smallest)
         return engine_of(self.timing, self.brief, self.wishes, self.original, free)
 
-    def _sizing(self, writing: Writing, plan: WidthPlan, written: Drawn) -> Sizing:
+    def _sizing(
+        self, writing: Writing, plan: WidthPlan, written: Drawn, loosest: Continuous
+    ) -> Sizing:
         rounding, circuit = writing.rounding, self.timing.circuit
         answer, engine = rounding.answer, rounding.engine
         on_spend = self.wishes.delay is not None
-        proof = answer.solution if on_spend else answer.fastest
+        proof, best = ((one.solution if on_spend else one.fastest) for one in (answer, loosest))
+        shared = _sharing_loss(best, proof, on_spend=on_spend)
         free = engine.model.variables
         return Sizing(
             before=self.analysis,
             after=report(written.timing, len(self.analysis.paths)),
             goal=self.wishes.words,
-            bound=proof.bound,
+            bound=best.bound,
             bound_on=self.wishes.spend if on_spend else "delay",
-            gap=proof.gap,
+            gap=best.gap + shared,
+            sharing_loss=shared,
             rounding_loss=max(0.0, written.cost / answer.solution.spend - 1),
-            least_delay=answer.least_delay,
+            least_delay=loosest.least_delay,
             total_width_before=circuit.total_width,
             total_width_after=written.timing.circuit.total_width,
             free_cards=int(free.free.sum()),
@@ -187,6 +197,12 @@ class _Job:
             Notice("width-not-written", reason, card.span.place, (card.name,))
             for card, reason in ((netlist.card(wish.card), reason) for wish, reason in plan.refused)
         ]
+
+
+def _sharing_loss(best: Solution, shared: Solution, *, on_spend: bool) -> float:
+    """Return by how much, relatively, an answer is worse for copies that share sizes."""
+    free, tied = (one.spend if on_spend else one.delay for one in (best, shared))
+    return max(0.0, tied - free) / max(abs(free), abs(tied))
 
 
 def _left(plan: WidthPlan) -> Iterator[Notice]:

@@ -222,6 +222,9 @@ class Sizing(Tabular):
     few : FewChanges, optional
         Delay against the number of changes, where that was limited; ``bound`` is then that of the
         cards chosen.
+    sharing_loss : float
+        The part of the gap that is there because copies of a leaf share sizes; the bound is that of
+        sizes of their own.
     """
 
     before: Analysis
@@ -246,6 +249,7 @@ class Sizing(Tabular):
     trade_off: TradeOff | None = None
     few: FewChanges | None = None
     prices: tuple[LimitPrice, ...] = ()
+    sharing_loss: float = 0.0
 
     @property
     def headline(self) -> str:
