@@ -153,6 +153,10 @@ class Arcs:
         result: FloatArray = through @ net_cap + self.own_today.reshape(beside)
         return result
 
+    def take(self, which: IntArray) -> Arcs:
+        """Return some of the arcs, in that order."""
+        return _chosen([self], which.astype(np.intp))
+
     def gates_along(self, which: IntArray) -> IntArray:
         """Return the gates that some arcs run through, arc by arc, one as often as it charges."""
         head = self.charges.head
@@ -173,7 +177,11 @@ def uniform(count: int, charge: Sequence[Charge], own: Sequence[OwnTerm]) -> Lis
 
 def joined(parts: Sequence[Arcs]) -> Arcs:
     """Put tables into one, ordered by gate; arcs of one gate in the order given."""
-    order = np.argsort(np.concatenate([part.gate for part in parts]), kind="stable")
+    return _chosen(parts, np.argsort(np.concatenate([part.gate for part in parts]), kind="stable"))
+
+
+def _chosen(parts: Sequence[Arcs], order: NDArray[np.intp]) -> Arcs:
+    """Put arcs of several tables into one, in an order of all of them under each other."""
 
     def ordered(columns: Sequence[NDArray[_Kind]]) -> NDArray[_Kind]:
         return np.concatenate(columns)[order]

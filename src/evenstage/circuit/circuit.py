@@ -14,8 +14,9 @@ from evenstage.circuit.electrical import Electrical, electrical
 from evenstage.circuit.evaluation import evaluate_circuit, net_function
 from evenstage.circuit.function import inverted_text, text
 from evenstage.circuit.names import Names
-from evenstage.circuit.stage_tables import AlikeStages, stage_arcs, stage_pins
-from evenstage.circuit.tables import AlikeGates, Pins, arcs_of, pins_of
+from evenstage.circuit.opening import arcs_with_stages
+from evenstage.circuit.stage_tables import AlikeStages, stage_pins
+from evenstage.circuit.tables import AlikeGates, Pins, pins_of
 from evenstage.circuit.wiring import WireLoads, wire_loads
 
 if TYPE_CHECKING:
@@ -209,8 +210,7 @@ class Circuit:
     def arcs(self) -> Arcs:
         """Arcs of all gates."""
         values, inner = self.electrical, self.wire_cap + self.apart_cap
-        through = [stage_arcs(some, values, self.drive) for some in self.stages]
-        return arcs_of(self.alike, values, inner, through)
+        return arcs_with_stages(self.alike, self.stages, values, inner, self.drive)
 
     @cached_property
     def net_cap(self) -> FloatArray:

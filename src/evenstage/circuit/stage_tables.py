@@ -163,6 +163,16 @@ def _vector_of_resistances(
     )
 
 
+def polarity_over_both(
+    form: StageForm, of_switch: Scaled, one: Resistor, polarity: str
+) -> FloatArray:
+    """Return the resistance of one polarity of a pass over that of both, shape (k,)."""
+    own = tuple(i for i in one.switches if form.network.switches[i].polarity == polarity)
+    alone = _in_parallel(form, of_switch, one._replace(switches=own))
+    result: FloatArray = alone / _in_parallel(form, of_switch, one)
+    return result
+
+
 def _in_parallel(form: StageForm, of_switch: Scaled, one: Resistor) -> FloatArray:
     """Return the resistance of a step's switches, those that pass weakly with more."""
     resistance = of_switch.scaling if one.scales else of_switch.fixed

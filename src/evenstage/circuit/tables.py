@@ -79,27 +79,19 @@ def pins_of(alike: tuple[AlikeGates, ...], values: Electrical, more: Sequence[Pi
     )
 
 
-def arcs_of(
-    alike: tuple[AlikeGates, ...],
-    values: Electrical,
-    node_cap: FloatArray,
-    more: Sequence[Arcs] = (),
-) -> Arcs:
+def arcs_of(alike: Sequence[AlikeGates], values: Electrical, node_cap: FloatArray) -> Arcs:
     """Collect the arcs of all gates, ordered by gate.
 
     Parameters
     ----------
-    alike : tuple of AlikeGates
-        At least one.
+    alike : sequence of AlikeGates
+        At least one with arcs.
     values : Electrical
     node_cap : FloatArray, F, shape (nets,)
         Capacitor cards on each net; on inner nodes they belong to the gate.
-    more : sequence of Arcs
-        Those of stages.
     """
     with_arcs = [some for some in alike if some.form.arcs]
-    plain = (part for some in with_arcs for part in _arcs_of_form(some, values, node_cap))
-    return joined([*plain, *more])
+    return joined([part for some in with_arcs for part in _arcs_of_form(some, values, node_cap)])
 
 
 def _joined(columns: Sequence[NDArray[_Kind]], order: NDArray[np.intp]) -> NDArray[_Kind]:

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
+from evenstage.simulation.following import followers
 from evenstage.simulation.layout import LOW, OUTSIDE, lay_out
 from evenstage.simulation.logic import switches
 from evenstage.simulation.parameters import known_channels
@@ -31,12 +32,14 @@ _SIDE_MOST: Final = 100
 class Route:
     """A path in ids: its nets, start included, what they do, and the group that drives each.
 
-    ``groups`` stand beside the nets after the start; see `evenstage.simulation.groups`.
+    ``groups`` stand beside the nets after the start; see `evenstage.simulation.groups`. ``beside``
+    are the groups of nets that move along; ``edges`` tells what these do too.
     """
 
     nets: tuple[int, ...]
     edges: dict[int, Edge]
     groups: tuple[int, ...]
+    beside: tuple[int, ...] = ()
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -73,11 +76,10 @@ def route_of(groups: Groups, path: Path) -> Route:
     names = [path.start, *(stage.output for stage in path.stages)]
     rising = [path.start_edge == "rise", *(stage.edge == "rise" for stage in path.stages)]
     nets = [net for name in names if (net := circuit.net_id(name)) is not None]
-    return Route(
-        nets=tuple(nets),
-        edges={net: (not rises, rises) for net, rises in zip(nets, rising, strict=True)},
-        groups=tuple(int(groups.of_net[net]) for net in nets[1:]),
-    )
+    edges = {net: (not rises, rises) for net, rises in zip(nets, rising, strict=True)}
+    along = tuple(int(groups.of_net[net]) for net in nets[1:])
+    more, beside = followers(groups, along, edges)
+    return Route(nets=tuple(nets), edges=edges | more, groups=along, beside=beside)
 
 
 def excerpt(
@@ -109,7 +111,7 @@ def excerpt(
     SimulationError
         ``cannot-switch``, see `side_inputs`.
     """
-    circuit, along = groups.circuit, tuple(dict.fromkeys(route.groups))
+    circuit, along = groups.circuit, tuple(dict.fromkeys((*route.groups, *route.beside)))
     held = side_inputs(groups, along, route.edges)
     side: list[int] = []
     if with_gates:
@@ -159,7 +161,7 @@ def _side_groups(
     block, on_path = groups.circuit.devices, route.nets if loads_start else route.nets[1:]
     found: list[int] = []
     for group in np.unique(groups.of_device[np.isin(block.gate, on_path)]).tolist():
-        if group < 0 or group in route.groups:
+        if group < 0 or group in route.groups or group in route.beside:
             continue
         inputs = groups.inputs(group)
         driven = {int(groups.of_net[net]) for net in inputs if net not in route.edges}

@@ -43,6 +43,17 @@ class Groups:
         return np.maximum(self.of_net[block.drain], self.of_net[block.source])
 
     @cached_property
+    def complements(self) -> tuple[tuple[int, int], ...]:
+        """Pairs of nets that the two polarities of transmission gates take for complements."""
+        pairs = {
+            (int(nets[a]), int(nets[b]))
+            for some in self.circuit.stages
+            for a, b in some.form.assumed
+            for nets in some.nets
+        }
+        return tuple(sorted(pairs))
+
+    @cached_property
     def _in_order(self) -> IntArray:
         return np.argsort(self.of_device, kind="stable")
 

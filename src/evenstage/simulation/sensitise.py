@@ -194,7 +194,10 @@ def _together(
     edges: Mapping[int, Edge],
     worth: FloatArray,
 ) -> BoolArray:
-    """Tell under which vectors inputs that one gate makes of another go together, as s and !s."""
+    """Tell under which vectors inputs go together, as s and !s.
+
+    Where one gate makes one of the other, or transmission gates take them for complements.
+    """
     fitting = np.ones(worth.shape[1], bool)
     still = [net for net in inputs if net not in edges]
     for net in still:
@@ -207,6 +210,10 @@ def _together(
         answer = inner.settle(np.stack(known, axis=1))[np.searchsorted(inner.net, net)]
         cause, effect = worth[np.searchsorted(part.net, [causes[0], net])]
         fitting &= effect == np.where(cause == 1, answer[1], answer[0])
+    for pair in groups.complements:
+        if all(net in still for net in pair):
+            one, other = worth[np.searchsorted(part.net, pair)]
+            fitting &= one != other
     return fitting
 
 

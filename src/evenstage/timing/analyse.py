@@ -90,7 +90,8 @@ def report(timing: Timing, count: int = 1) -> Analysis:
     slowest = [latest_path(timing)] if count == 1 else islice(slowest_paths(timing), count)
     paths = tuple(describe(timing, arcs) for arcs in slowest)
     start_nets = dict.fromkeys(graph.net[graph.start].tolist())
-    reached = np.unique(circuit.arcs.gate[graph.arc])
+    arcs = circuit.arcs
+    reached = np.union1d(arcs.gate[graph.arc], arcs.gates_along(np.unique(graph.arc)))
     notices = [*circuit.notices, *graph.notices]
     if graph.whole and len(reached) < len(circuit):
         notices.append(_unreached(circuit, reached))
