@@ -13,7 +13,7 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from evenstage.circuit.circuit import Circuit
-    from evenstage.circuit.stage import Sink
+    from evenstage.circuit.stage_form import Sink
     from evenstage.netlist.devices import IntArray
 
 

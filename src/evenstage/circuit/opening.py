@@ -39,7 +39,7 @@ if TYPE_CHECKING:
     from evenstage.circuit.arcs import Arcs
     from evenstage.circuit.electrical import Electrical, Scaled
     from evenstage.circuit.network import BoolArray
-    from evenstage.circuit.stage import StageArc, StageForm
+    from evenstage.circuit.stage_form import StageArc, StageForm
     from evenstage.circuit.stage_tables import AlikeStages
     from evenstage.circuit.tables import AlikeGates
     from evenstage.netlist.devices import FloatArray, IntArray

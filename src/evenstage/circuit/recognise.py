@@ -35,7 +35,7 @@ if TYPE_CHECKING:
 
     from evenstage.circuit.gate import GateForm
     from evenstage.circuit.groups import AlikeGroups
-    from evenstage.circuit.stage import StageForm
+    from evenstage.circuit.stage_form import StageForm
     from evenstage.circuit.storage.elements import Storage
     from evenstage.netlist.devices import Devices, IntArray
     from evenstage.process.process import Process

@@ -17,7 +17,7 @@ from evenstage.circuit.network import HIGH, LOW
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
 
-    from evenstage.circuit.dividing import Division, Driver, Way
+    from evenstage.circuit.division import Division, Driver, Way
 
 _STEPS_MAX = 50_000
 """Steps one group may take; a rotator of 32 lanes in five ranks takes 4,000."""

@@ -8,18 +8,21 @@ nodes between it and the driver have settled before.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from functools import lru_cache
 from typing import TYPE_CHECKING
 
 import networkx as nx
 
-from evenstage.circuit.dividing import Division, Driver, Pass, Way, divide, outside, sum_of
+from evenstage.circuit.dividing import divide
+from evenstage.circuit.division import Division, Driver, Pass, Way
+from evenstage.circuit.drivers import outside, sum_of
 from evenstage.circuit.function import ONE, ZERO, Each, Expression, Literal, Not, When
 from evenstage.circuit.gate import GateForm, Unrecognised, recognise_network
 from evenstage.circuit.literals import Cube, Literals, consistent
 from evenstage.circuit.network import HIGH, LOW, Network, Switch, merge
 from evenstage.circuit.routes import Route, Router, TooManyRoutesError
+from evenstage.circuit.stage_form import Facts, Sink, StageArc, StageForm, Step
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
@@ -28,128 +31,6 @@ SWITCHES_MAX = 4000
 """Larger groups are arrays of cells, not stages."""
 _PARALLEL_MAX = 4
 """Transistors at one node that are taken for one pull network."""
-
-
-@dataclass(frozen=True, slots=True)
-class Facts:
-    """What is known around a group; all nets are local.
-
-    Parameters
-    ----------
-    ties : tuple of (int, int, bool)
-        Two nets, and whether they are equal rather than complements.
-    seen : tuple of int
-        Channel ends that are ports or close switches, of this or of other groups.
-    gating : tuple of int
-        Channel ends that close switches.
-    open : tuple of int
-        Channel ends that the outside may drive.
-    inputs, outputs : tuple of int
-        Channel ends that the brief calls so.
-    """
-
-    ties: tuple[tuple[int, int, bool], ...] = ()
-    seen: tuple[int, ...] = ()
-    gating: tuple[int, ...] = ()
-    open: tuple[int, ...] = ()
-    inputs: tuple[int, ...] = ()
-    outputs: tuple[int, ...] = ()
-
-
-@dataclass(frozen=True, slots=True)
-class Step:
-    """Switches in parallel that a route runs through, and the part of the stage they belong to."""
-
-    part: int
-    switches: tuple[int, ...]
-
-
-@dataclass(frozen=True, slots=True)
-class StageArc:
-    """One way one input edge moves one output.
-
-    Parameters
-    ----------
-    part : int
-        Whose input moves.
-    input, output : int
-        Local net, node.
-    input_rising, rising : bool
-    steps : tuple of Step
-        From the output to the supply.
-    moved : tuple of (int, int)
-        Node and the number of steps, counted from the supply, its charge flows through.
-    behind : tuple of (int, int)
-        Inner nodes of drivers among them that a switch of the idle pull ties to the output, and
-        that switch.
-    switching : int
-        The switch that closes; -1 where the outside drives.
-    source : int
-        Node that the outside drives, -1 for none.
-    """
-
-    part: int
-    input: int
-    output: int
-    input_rising: bool
-    rising: bool
-    steps: tuple[Step, ...]
-    moved: tuple[tuple[int, int], ...]
-    behind: tuple[tuple[int, int], ...]
-    switching: int
-    source: int
-
-
-@dataclass(frozen=True, slots=True)
-class Sink:
-    """A node seen outside: when it is high, and when low; both as sums over its routes.
-
-    ``part`` is one that drives it; ``weak_high`` and ``weak_low`` tell that a single pass
-    transistor may leave that level short of the supply.
-    """
-
-    node: int
-    part: int
-    high: tuple[Cube, ...]
-    low: tuple[Cube, ...]
-    weak_high: bool
-    weak_low: bool
-
-
-@dataclass(frozen=True, eq=False)
-class StageForm:
-    """A network recognised as a stage of drivers and passes.
-
-    Parameters
-    ----------
-    drawn : tuple of Switch
-    network : Network
-    columns : tuple of tuple of int
-        For each part, its devices among the drawn.
-    parts : tuple of GateForm
-        Each part as a gate without arcs of its own.
-    arcs : tuple of StageArc
-    sinks : tuple of Sink
-    sources : tuple of int
-        Nodes that the outside drives.
-    assumed : tuple of (int, int)
-        Inputs taken for complements without proof.
-    both_ways : tuple of int
-        Parts that pass signals in both directions.
-    bounded : tuple of int
-        Nodes that arcs end at, where more is taken to move with them than can at once.
-    """
-
-    drawn: tuple[Switch, ...]
-    network: Network
-    columns: tuple[tuple[int, ...], ...]
-    parts: tuple[GateForm, ...]
-    arcs: tuple[StageArc, ...]
-    sinks: tuple[Sink, ...]
-    sources: tuple[int, ...]
-    assumed: tuple[tuple[int, int], ...]
-    both_ways: tuple[int, ...]
-    bounded: tuple[int, ...]
 
 
 @lru_cache(maxsize=4096)

@@ -18,7 +18,7 @@ from evenstage.circuit.arcs import NO_OWNER
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
 
-    from evenstage.circuit.stage import StageArc, StageForm
+    from evenstage.circuit.stage_form import StageArc, StageForm
     from evenstage.netlist.devices import IntArray
 
 

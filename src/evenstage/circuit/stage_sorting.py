@@ -12,7 +12,8 @@ from evenstage.circuit.function import Literal
 from evenstage.circuit.kinds.kept import with_nets, without_keepers
 from evenstage.circuit.rows import distinct_rows
 from evenstage.circuit.sorting import rows_of
-from evenstage.circuit.stage import Facts, StageForm, recognise_stage
+from evenstage.circuit.stage import recognise_stage
+from evenstage.circuit.stage_form import Facts, StageForm
 from evenstage.progress import tell
 
 if TYPE_CHECKING:

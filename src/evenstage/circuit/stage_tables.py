@@ -15,7 +15,7 @@ from evenstage.circuit.tables import Pins, switch_resistance
 
 if TYPE_CHECKING:
     from evenstage.circuit.electrical import Diffusion, Electrical
-    from evenstage.circuit.stage import StageForm
+    from evenstage.circuit.stage_form import StageForm
     from evenstage.circuit.stage_plan import Capacitor, Resistor, Sums
     from evenstage.netlist.devices import FloatArray, IntArray
 

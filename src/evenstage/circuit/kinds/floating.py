@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from evenstage.circuit.dividing import enabled_function
+from evenstage.circuit.drivers import enabled_function
 from evenstage.circuit.function import conduction
 from evenstage.circuit.gate import GateForm, Pulls, Unrecognised, all_arcs, possible_vectors
 from evenstage.circuit.kinds.paths import single_output
