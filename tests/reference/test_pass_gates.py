@@ -56,3 +56,15 @@ def test_paths_by_the_select_lines(rotator: Simulation) -> None:
         )
     )  # fmt: skip
     assert abs(claimed - found) < 0.05
+
+
+def test_paths_by_the_data(fitted: Path) -> None:
+    """Through three ranks, both edges, within 9 %."""
+    question = flow.Question(
+        process=fitted, brief=ROTATOR / "brief.toml", count=1, start="d<2>", end="q<6>"
+    )
+    found = flow.simulate(ROTATOR / "netlist.sp", question).before
+    assert found.other_edge is not None
+    assert len(found.paths[0].estimate.stages[0].through) == 3
+    assert off(found.paths[0]) < 0.09
+    assert off(found.other_edge) < 0.03
