@@ -89,6 +89,27 @@ class TestSelector:
         begins = set(arcs.input[arcs.output == circuit.net_id("w")].tolist())
         assert {circuit.net_id("s"), circuit.net_id("b")} <= begins
 
+    def test_the_share_depends_on_no_width(self) -> None:
+        """Else sizes would stand in it, and the sums were none of monomials."""
+        circuit = circuit_of(SELECTOR)
+        redrawn = circuit.resized(np.linspace(0.5, 3, len(circuit.devices)))
+        found = []
+        for one in (circuit, redrawn):
+            (stage,) = one.stages
+            plain = stage_arcs(stage, one.electrical, one.drive)
+            late, alone = (
+                arcs.elmore(one.net_cap)[
+                    (arcs.input == one.net_id("s"))
+                    & (arcs.output == one.net_id("w"))
+                    & arcs.input_rising
+                    & arcs.rising
+                ].max()
+                for arcs in (one.arcs, plain)
+            )
+            to_b = (one.arcs.output == one.net_id("b")) & one.arcs.input_rising
+            found.append((late - alone) / one.arcs.elmore(one.net_cap)[to_b].max())
+        assert found == pytest.approx([1 / 3, 1 / 3], rel=1e-9)
+
     def test_sums_stay_right_at_other_widths(self) -> None:
         """What a gate's size divides and multiplies is told apart: as the circuit redrawn."""
         circuit = circuit_of(SELECTOR)

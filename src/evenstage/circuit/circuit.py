@@ -210,7 +210,8 @@ class Circuit:
     def arcs(self) -> Arcs:
         """Arcs of all gates."""
         values, inner = self.electrical, self.wire_cap + self.apart_cap
-        return arcs_with_stages(self.alike, self.stages, values, inner, self.drive)
+        width = self.devices.width * self.devices.multiplier
+        return arcs_with_stages(self.alike, self.stages, values, inner, self.drive, width)
 
     @cached_property
     def net_cap(self) -> FloatArray:

@@ -13,9 +13,10 @@ it stands for. (An RC response is ``1 - exp(-integral of dt / RC)``, whatever R 
 begins at the first control, carries ``w`` of the inverter's delay beside its own, and none begins
 at the second.
 
-For sums of monomials w must not depend on sizes. It is that of a route whose steps and nodes are
-all alike: with k the resistance of the first transistor over that of both, m nodes that move, and D
-their steps to the supply added up, ``w = (k - 1) m / (D + (k - 1) m)``.
+For sums of monomials w must not depend on widths. It is that of a route whose steps and nodes are
+all alike, through a gate of two equally wide transistors: with k the resistance of the first over
+that of both, m nodes that move, and D their steps to the supply added up,
+``w = (k - 1) m / (D + (k - 1) m)``.
 """
 
 from __future__ import annotations
@@ -27,9 +28,8 @@ import numpy as np
 
 from evenstage.circuit.arcs import Charges, OwnTerms, joined, ranges
 from evenstage.circuit.function import Literal
-from evenstage.circuit.stage_plan import Resistor
-from evenstage.circuit.stage_tables import polarity_over_both, stage_arcs
-from evenstage.circuit.tables import arcs_of, switch_resistance
+from evenstage.circuit.stage_tables import WEAK, first_devices, stage_arcs
+from evenstage.circuit.tables import arcs_of
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
@@ -37,7 +37,7 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from evenstage.circuit.arcs import Arcs
-    from evenstage.circuit.electrical import Electrical, Scaled
+    from evenstage.circuit.electrical import Electrical
     from evenstage.circuit.network import BoolArray
     from evenstage.circuit.stage_form import StageArc, StageForm
     from evenstage.circuit.stage_tables import AlikeStages
@@ -91,6 +91,7 @@ def arcs_with_stages(
     values: Electrical,
     node_cap: FloatArray,
     drive: FloatArray,
+    width: FloatArray,
 ) -> Arcs:
     """Return the arcs of all gates and stages, ordered by gate.
 
@@ -104,6 +105,8 @@ def arcs_with_stages(
         See `arcs_of`.
     drive : FloatArray, ohm, shape (nets,)
         See `stage_arcs`.
+    width : FloatArray, m, shape (devices,)
+        With copies.
     """
     through = [stage_arcs(some, values, drive) for some in stages]
     if not any(some.form.arcs for some in alike):
@@ -113,13 +116,13 @@ def arcs_with_stages(
         return plain
     inverters = Inverters(alike, plain, len(node_cap))
     beside = (
-        opened_in_turn(arcs, some, values, inverters)
+        opened_in_turn(arcs, some, values.resistance.scaling * width, inverters)
         for arcs, some in zip(through, stages, strict=True)
     )
     return joined([plain, *beside])
 
 
-def opened_in_turn(arcs: Arcs, some: AlikeStages, values: Electrical, inverters: Inverters) -> Arcs:
+def opened_in_turn(arcs: Arcs, some: AlikeStages, r_w: FloatArray, inverters: Inverters) -> Arcs:
     """Return the arcs of stages of one form with those of controls that follow each other joined.
 
     Parameters
@@ -127,13 +130,14 @@ def opened_in_turn(arcs: Arcs, some: AlikeStages, values: Electrical, inverters:
     arcs : Arcs
         Of these stages, stage by stage.
     some : AlikeStages
-    values : Electrical
+    r_w : FloatArray, ohm m, shape (devices,)
+        Resistance of a width in each device's length.
     inverters : Inverters
     """
     shape = (len(some.gates), len(some.form.arcs))
     maker, share = np.full(shape, -1), np.zeros(shape)
     kept = np.ones(shape, bool)
-    of_switch = switch_resistance(some.form.network, some.devices, values)
+    of_switch = r_w[some.devices[:, first_devices(some.form)]]
     for column, arc in enumerate(some.form.arcs):
         pair = _controls(some.form, arc)
         if pair is None:
@@ -165,12 +169,19 @@ def _controls(form: StageForm, arc: StageArc) -> tuple[int, int] | None:
     return own.gate, min(others)
 
 
-def _share(form: StageForm, of_switch: Scaled, arc: StageArc) -> FloatArray:
-    """Return w of one arc, shape (k,)."""
+def _share(form: StageForm, of_switch: FloatArray, arc: StageArc) -> FloatArray:
+    """Return w of one arc, shape (k,).
+
+    ``of_switch`` is the resistance of a width of each switch, ohm m, shape (k, switches).
+    """
     step = next(one for one in arc.steps if arc.switching in one.switches)
-    polarity = form.network.switches[arc.switching].polarity
-    one = Resistor(step.switches, len(arc.steps), arc.rising, scales=True)
-    more = (polarity_over_both(form, of_switch, one, polarity) - 1) * len(arc.moved)
+    polarity = [form.network.switches[i].polarity for i in step.switches]
+    own, other = (
+        of_switch[:, step.switches[polarity.index(one)]]
+        * (WEAK if (one == "n") == arc.rising else 1.0)
+        for one in ("np" if form.network.switches[arc.switching].polarity == "n" else "pn")
+    )
+    more = own / other * len(arc.moved)
     result: FloatArray = more / (sum(depth for _, depth in arc.moved) + more)
     return result
 

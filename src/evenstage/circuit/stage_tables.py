@@ -68,7 +68,7 @@ def stage_arcs(some: AlikeStages, values: Electrical, drive: FloatArray) -> Arcs
     whole = _summed(sums.whole, resistance)
     moved = _summed(sums.own, resistance, capacitance)
     switching = np.array([arc.switching for arc in form.arcs])
-    device = some.devices[:, _first_devices(form)[np.maximum(switching, 0)]].ravel()
+    device = some.devices[:, first_devices(form)[np.maximum(switching, 0)]].ravel()
     # What the outside drives arrives with its own transition and meets no threshold.
     outside = np.tile(switching < 0, count)
     arcs = form.arcs
@@ -139,8 +139,8 @@ def _ends(values: Electrical) -> tuple[Scaled, ...]:
     return values.rise.drain, values.rise.source, values.fall.drain, values.fall.source
 
 
-def _first_devices(form: StageForm) -> IntArray:
-    """Return the first drawn device of each switch."""
+def first_devices(form: StageForm) -> IntArray:
+    """Return the first drawn device of each switch, shape (switches,)."""
     network = form.network
     places = [network.switch_of_device.index(i) for i in range(len(network.switches))]
     return np.array(places, np.int32)
@@ -152,7 +152,7 @@ def _vector_of_resistances(
     """Return the resistance of every entry, ohm, shape (k, entries)."""
     form = some.form
     of_switch = switch_resistance(form.network, some.devices, values)
-    stack = values.stack[some.devices[:, _first_devices(form)]]
+    stack = values.stack[some.devices[:, first_devices(form)]]
     return np.column_stack(
         [
             drive[some.nets[:, one.source]]
@@ -161,16 +161,6 @@ def _vector_of_resistances(
             for one in resistors
         ]
     )
-
-
-def polarity_over_both(
-    form: StageForm, of_switch: Scaled, one: Resistor, polarity: str
-) -> FloatArray:
-    """Return the resistance of one polarity of a pass over that of both, shape (k,)."""
-    own = tuple(i for i in one.switches if form.network.switches[i].polarity == polarity)
-    alone = _in_parallel(form, of_switch, one._replace(switches=own))
-    result: FloatArray = alone / _in_parallel(form, of_switch, one)
-    return result
 
 
 def _in_parallel(form: StageForm, of_switch: Scaled, one: Resistor) -> FloatArray:
@@ -198,7 +188,7 @@ def _vector_of_capacitances(
     some: AlikeStages, values: Electrical, capacitors: tuple[Capacitor, ...]
 ) -> FloatArray:
     """Return the capacitance of every entry, F, shape (k, entries)."""
-    columns, first = [], _first_devices(some.form)
+    columns, first = [], first_devices(some.form)
     for one in capacitors:
         edge: Diffusion = values.rise if one.rising else values.fall
         total = np.zeros(len(some.gates))
