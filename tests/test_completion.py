@@ -46,7 +46,7 @@ class TestBash:
             ("resi", ["resize"]),
             ("--vers", ["--version"]),
             ("--completion ''", ["bash", "fish", "zsh"]),
-            ("resize --s", ["--scope"]),
+            ("resize --s", ["--scope", "--spend"]),
             ("resize --scope ''", ["path", "block"]),
             ("resize --scope b", ["block"]),
             ("analyse --scope ''", ["de coder.sp", "decoder.sp"]),
