@@ -92,8 +92,8 @@ def effort_table(sides: Sides) -> Table:
 def load_table(sides: Sides, tau: float) -> Table:
     """Return what each stage's charged delay and load consist of.
 
-    The share of a load in the delay is that in the stage effort; what the wire's resistance adds
-    counts as wire.
+    The delay that loads cause is shared among them in proportion to their capacitances; what a
+    wire's resistance adds is not told apart.
     """
     stages = [one.stage for one in sides.seen]
     times = {stage: _time_parts(stage, tau) for stage in stages}
