@@ -12,7 +12,8 @@ from typing import IO, Final
 import pytest
 
 from evenstage import flow
-from evenstage.cli import _parsed, main
+from evenstage.arguments import parsed
+from evenstage.cli import main
 from evenstage.errors import Notice
 
 #: Two inverters; the second one is too small for its load, and nothing else is odd.
@@ -160,8 +161,8 @@ class TestStatus:
         examples = [line for line in shown.splitlines() if line.startswith("  evenstage ")]
         assert examples
         for example in examples:
-            asked = _parsed(shlex.split(example)[1:])
-            assert asked.command.__name__.startswith(f"_{command}")
+            asked = parsed(shlex.split(example)[1:])
+            assert asked.command == command
         assert max(map(len, shown.splitlines())) <= 80
 
     def test_schema_is_printed(self, capsys: pytest.CaptureFixture[str]) -> None:
@@ -232,7 +233,7 @@ class TestNotices:
         self, netlist: Path, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
     ) -> None:
         notice = Notice("include-lost", "a file cannot be found from there")
-        monkeypatch.setattr(flow, "lost_includes", lambda *_: (notice,))
+        monkeypatch.setattr(flow.sizing, "lost_includes", lambda *_: (notice,))
         assert main(["resize", str(netlist), "--output", "out.sp"]) == 0
         assert notice.message in capsys.readouterr().out
 
@@ -372,7 +373,7 @@ class TestSurroundings:
 
     @pytest.mark.parametrize(
         ("place", "stage"),
-        [("evenstage.flow.find_widths", "timing"), ("os.fsync", "writing")],
+        [("evenstage.flow.sizing.find_widths", "timing"), ("os.fsync", "writing")],
     )
     def test_interrupt_leaves_no_output(self, netlist: Path, place: str, stage: str) -> None:
         """The program interrupts itself at a chosen moment, as Ctrl-C would."""

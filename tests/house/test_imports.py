@@ -31,6 +31,7 @@ ORDER: Final = (
     ("flow",),
     ("__init__",),
     ("completion",),
+    ("arguments",),
     ("cli",),
     ("__main__",),
 )
@@ -48,8 +49,7 @@ CLI_IMPORTS: Final = frozenset(
         *("__future__", "argparse", "collections", "contextlib", "importlib", "os", "pathlib"),
         *("signal", "sys", "traceback", "typing"),
         *("evenstage", "evenstage.errors", "evenstage.flow", "evenstage.progress"),
-        "evenstage.completion",
-        "evenstage.units",
+        "evenstage.arguments",
     }
 )
 

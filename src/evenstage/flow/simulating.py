@@ -1,0 +1,52 @@
+"""The slowest paths simulated, and their voltages written."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from evenstage.flow.files import write_text
+from evenstage.flow.loading import Question, load, one_process
+from evenstage.report.simulation_document import waveform_table
+from evenstage.simulation.simulate import simulate as run_simulation
+
+if TYPE_CHECKING:
+    from pathlib import Path
+
+    from evenstage.simulation.results import SideBranches, Simulation
+
+
+def simulate(
+    path: Path,
+    question: Question,
+    *,
+    after: Path | None = None,
+    side_branches: SideBranches = "gates",
+    waveforms: Path | None = None,
+) -> Simulation:
+    """Simulate the slowest paths of a netlist, and of the same design after a change.
+
+    Parameters
+    ----------
+    path : Path
+    question : Question
+    after : Path, optional
+        The changed netlist.
+    side_branches : {"gates", "capacitances"}
+        How what hangs on the paths is simulated.
+    waveforms : Path, optional
+        Where the voltages are written as CSV.
+
+    Raises
+    ------
+    EvenstageError
+        For every mistake in the inputs, and where no path can be simulated.
+    OutputError
+        Where the waveforms cannot be written.
+    """
+    one_process(question, "simulate")
+    first = load(path, question)
+    second = None if after is None else load(after, question, first.process).analysis
+    result = run_simulation(first.analysis, second, side_branches=side_branches)
+    if waveforms is not None:
+        write_text(waveforms, waveform_table(result), force=True)
+    return result

@@ -1,0 +1,193 @@
+"""New widths found, written, read back and compared."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from typing import TYPE_CHECKING, Literal
+
+from evenstage.errors import EvenstageError, SettingsError
+from evenstage.flow.files import refuse_existing
+from evenstage.flow.loading import Block, Question, load, one_process
+from evenstage.logic.same import StructureCheck, compare_structure
+from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.read import read
+from evenstage.netlist.rewriting.edits import rewrite
+from evenstage.netlist.rewriting.output import lost_includes, output_files, write_files
+from evenstage.netlist.rewriting.record import Record, digest, record_edit
+from evenstage.progress import tell
+from evenstage.sizing.resize import resize as find_widths
+from evenstage.sizing.results import Sizing
+from evenstage.sizing.trade_off import trade_off
+from evenstage.sizing.wishes import Original, Wishes
+from evenstage.timing.vectors import false_path_notices
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+    from pathlib import Path
+
+    from evenstage.brief import Brief
+    from evenstage.errors import Notice
+
+
+def resize(
+    path: Path,
+    question: Question,
+    wishes: Wishes | None = None,
+    output: Path | None = None,
+    *,
+    force: bool = False,
+    curve: bool = False,
+    spend: Literal["width", "energy"] | None = None,
+) -> Sizing:
+    """Find new widths and, where an output is named, write the netlist with them.
+
+    With ``curve`` the least spend for a dozen delays is found too. ``spend`` says what is kept
+    small; default: what the brief says.
+
+    Raises
+    ------
+    EvenstageError
+        For every mistake in the inputs and every wish that cannot be met.
+    OutputError
+        Where the output exists (without ``force``) or cannot be written.
+    """
+    one_process(question, "resize")
+    refuse_existing(output, force=force)
+    block = load(path, question)
+    wishes = _with_aims(wishes or Wishes(), block.brief)
+    wishes = replace(wishes, spend=spend or wishes.spend)
+    record = block.record
+    asked = _asked(question, wishes)
+    original = _original(record, wishes.spend)
+    if record is not None and record.key == digest(block.netlist, asked):
+        sizing = _already_done(block, record, wishes)
+    else:
+        sizing = find_widths(block.analysis, block.brief, wishes, original)
+    told = false_path_notices(block.analysis)
+    sizing = replace(sizing, notices=(*sizing.notices, *told))
+    if curve:
+        curved = trade_off(block.analysis, block.brief, wishes, original)
+        sizing = replace(sizing, trade_off=curved)
+    if output is None:
+        return sizing
+    texts = _texts(block, sizing, record, asked)
+    write_files(output_files(block.netlist, texts, output), force=force)
+    tell(f"checking '{output}', which is written")
+    lost = lost_includes(block.netlist, output)
+    structure = _read_back(block, output, lost) if texts else None
+    return replace(sizing, notices=(*sizing.notices, *lost), structure=structure)
+
+
+def _read_back(block: Block, output: Path, lost: Sequence[Notice]) -> StructureCheck:
+    """Read a written netlist and compare it with the one it was made of.
+
+    Raises
+    ------
+    RuntimeError
+        Where it cannot be read, or differs in more than widths: a fault of ours.
+    """
+    assert block.analysis.timing is not None
+    before = block.analysis.timing.circuit.devices
+    if lost:
+        reason = "it includes files that are not found from its place"
+        return StructureCheck(same=None, reason=reason, transistors=0)
+    try:
+        written = read(output, block.brief.case)
+        after = elaborate(written, before.top or None, block.process, block.brief)
+        check = compare_structure(before, after)
+        reason = check.reason
+    except EvenstageError as error:
+        reason = str(error)
+    if reason:
+        raise RuntimeError(f"do not use '{output}': it is not the netlist it was made of: {reason}")
+    return check
+
+
+def _with_aims(wishes: Wishes, brief: Brief) -> Wishes:
+    """Take the aims of the brief where the command line has none.
+
+    Raises
+    ------
+    SettingsError
+        Where the brief aims at a delay and at a width.
+    """
+    wishes = replace(wishes, spend=brief.aim_spend)
+    if wishes.delay is None and wishes.width is None:
+        if brief.aim_delay is not None and brief.aim_width is not None:
+            raise SettingsError(
+                "the brief aims at a delay and at a width; keep one of aim.delay and aim.width",
+                code="two-aims",
+            )
+        return replace(wishes, delay=brief.aim_delay, width=brief.aim_width)
+    return wishes
+
+
+def _asked(question: Question, wishes: Wishes) -> str:
+    """Return all that decides an answer besides the netlist, as text."""
+    files = [path.read_bytes().hex() if path else "" for path in (question.process, question.brief)]
+    return repr((wishes, question.top, question.start, question.end, files))
+
+
+def _original(record: Record | None, spend: str) -> Original:
+    """Return the limits an earlier run recorded."""
+    if record is None:
+        return Original()
+    return Original(
+        ceilings=record.ceilings,
+        transition=record.transition,
+        smallest=record.smallest,
+        spend=record.total_width if spend == "width" else record.switched_cap,
+    )
+
+
+def _texts(block: Block, sizing: Sizing, record: Record | None, asked: str) -> dict[Path, bytes]:
+    """Return the files that change, the record at the head of the first among them."""
+    if not sizing.edits:
+        return {}
+    key = digest(block.netlist, asked, rewrite(block.netlist, sizing.edits))
+    head = record_edit(block.netlist, _record(sizing, record, key))
+    return rewrite(block.netlist, (head, *sizing.edits))
+
+
+def _record(sizing: Sizing, earlier: Record | None, key: str) -> Record:
+    """Return what later runs are told; what was first drawn stays what it was."""
+    before, kept = sizing.before, sizing.kept or Original()
+    first = earlier or before
+    return Record(
+        key=key,
+        delay_before=earlier.delay_before if earlier else before.paths[0].delay,
+        delay_after=sizing.after.paths[0].delay,
+        least_delay=sizing.least_delay,
+        total_width=first.total_width,
+        switched_cap=first.switched_cap,
+        transition=kept.transition or before.worst_transition,
+        bound=sizing.bound,
+        bound_on=sizing.bound_on,
+        gap=sizing.gap,
+        rounding_loss=sizing.rounding_loss,
+        ceilings=kept.ceilings,
+        smallest=kept.smallest,
+    )
+
+
+def _already_done(block: Block, record: Record, wishes: Wishes) -> Sizing:
+    """Return the sizing of a netlist that an earlier run wrote with the same wishes."""
+    analysis = block.analysis
+    return Sizing(
+        before=analysis,
+        after=analysis,
+        goal=wishes.words,
+        bound=record.bound,
+        bound_on=record.bound_on,
+        gap=record.gap,
+        rounding_loss=record.rounding_loss,
+        least_delay=record.least_delay,
+        total_width_before=analysis.total_width,
+        total_width_after=analysis.total_width,
+        free_cards=0,
+        fixed_cards=0,
+        changes=(),
+        holds=(),
+        already_done=True,
+        notices=(),
+    )
