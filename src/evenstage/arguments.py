@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import argparse
-import sys
 from pathlib import Path
 from typing import TYPE_CHECKING, Final
 
@@ -49,9 +48,7 @@ _EXAMPLES: Final = {
 }
 
 
-def parsed(
-    arguments: Sequence[str], show: Callable[[str], object] = sys.stdout.write
-) -> argparse.Namespace:
+def parsed(arguments: Sequence[str], show: Callable[[str], object] = print) -> argparse.Namespace:
     """Return the arguments read, where those of ``fit`` say one source of delays and no more.
 
     Parameters
