@@ -9,7 +9,6 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass, field
 from functools import cached_property
-from itertools import accumulate
 from typing import TYPE_CHECKING, Final
 
 if TYPE_CHECKING:
@@ -40,9 +39,18 @@ class SourceText:
 
     @cached_property
     def _counts(self) -> list[int]:
-        """How many lines end before each part of the file; a list of all would outgrow the file."""
-        starts = range(0, len(self.data), _PART)
-        return [0, *accumulate(self._ends_between(start, start + _PART) for start in starts)]
+        """How many lines end before each part of the file, as far as anybody has asked.
+
+        A list of all lines would outgrow the file.
+        """
+        return [0]
+
+    def _ends_before(self, part: int) -> int:
+        """Return how many lines end before a part."""
+        counts = self._counts
+        for known in range(len(counts) - 1, part):
+            counts.append(counts[known] + self._ends_between(known * _PART, (known + 1) * _PART))
+        return counts[part]
 
     def _ends_between(self, start: int, stop: int) -> int:
         """Return how many lines end in a range; a line ends at LF, CR LF or a lone CR."""
@@ -54,8 +62,8 @@ class SourceText:
 
     def line_number(self, offset: int) -> int:
         """Return the 1-based line that holds a byte offset."""
-        part = min(offset // _PART, len(self._counts) - 1)
-        return 1 + self._counts[part] + self._ends_between(part * _PART, offset)
+        part = offset // _PART
+        return 1 + self._ends_before(part) + self._ends_between(part * _PART, offset)
 
     def _line_start(self, offset: int) -> int:
         """Return where the line of an offset begins."""

@@ -218,6 +218,13 @@ class TestText:
         )
         assert said.place == "top.sp:3:1"
 
+    def test_nets_that_differ_by_case_far_below_are_said(self) -> None:
+        """A first look that finds too few to show is followed by a longer one."""
+        between = "* nothing\n" * 10_000
+        devices = laid(f"m1 P p 0 0 nch {TAIL}\n{between}{self.CASES.replace('m', 'mm')}")
+        (said,) = [n for n in devices.netlist.notices if n.code == "case-of-nets"]
+        assert said.names == ("'P' and 'p'", "'Q' and 'q'")
+
     def test_spellings_of_a_net_in_several_subcircuits_are_no_matter(self) -> None:
         """Nets of different subcircuits may be spelt as they like."""
         other = INV.upper().replace("INV", "BUF")

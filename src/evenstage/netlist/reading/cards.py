@@ -56,7 +56,8 @@ class CardTable:
         self._odd_columns: dict[int, CardColumns] = {}
         self._segments: list[int] = []
         self._segment_places: list[tuple[Blocks, str]] = []
-        self._word_numbers = Words()
+        self.word_numbers = Words()
+        self._kept: dict[bytes, int] = {}
         self._scopes_with_repeats: frozenset[str] = frozenset()
 
     def __len__(self) -> int:
@@ -78,7 +79,7 @@ class CardTable:
     def add_shape(self, shape: Shape) -> ShapeColumns:
         """Take note of a shape and return what takes its cards."""
         self._shapes.append(shape)
-        self._stored.append(ShapeColumns(len(self._stored), shape, self._word_numbers, self.values))
+        self._stored.append(ShapeColumns(len(self._stored), shape, self.word_numbers, self.values))
         return self._stored[-1]
 
     def extend(self, base: int, starts: list[int], shapes: list[int]) -> None:
@@ -111,7 +112,7 @@ class CardTable:
 
     def _numbered(self, group: CardGroup) -> CardColumns:
         """Turn the words of a group into numbers."""
-        number = self._word_numbers.__getitem__
+        number = self.word_numbers.__getitem__
         take = self.values.kept if group.letter == "x" else self.values.numbers_of
         texts = {**group.parameters, **({"": group.values} if group.values else {})}
         return CardColumns(
@@ -125,7 +126,7 @@ class CardTable:
         )
 
     def finish(self, names: Iterable[str]) -> None:
-        """Forget what only reading needs.
+        """Make ready to be asked.
 
         Parameters
         ----------
@@ -134,16 +135,18 @@ class CardTable:
         """
         self.store(waiting=1)
         self._scopes_with_repeats = self._find_repeats()
-        words = self._word_numbers
-        kept = Words({name: words[name] for name in map(_folded, names)})
+        words = self.word_numbers
+        self._kept = {name: words[name] for name in map(_folded, names)}
         self.words = WordList(words)
-        words.clear()
-        words.update(kept)
         self.values.finish()
         shape_of = np.frombuffer(self._shape_of, np.int32) if len(self) else np.zeros(0, np.int32)
         order = np.argsort(shape_of, kind="stable").astype(np.int32)
         ends = np.cumsum(np.bincount(shape_of + 1, minlength=len(self._shapes) + 1))
         self._numbers = [order[a:b] for a, b in pairwise([0, *ends])]
+
+    def release(self) -> None:
+        """Forget the numbers of words nobody will ask for: they are large."""
+        self.word_numbers.clear()
 
     def _find_repeats(self) -> frozenset[str]:
         """Return the scopes in which several cards may have one name."""
@@ -166,7 +169,7 @@ class CardTable:
 
     def word_number(self, name: str) -> int:
         """Return the number of a word by lower-case name, one of those kept."""
-        return self._word_numbers[_folded(name)]
+        return self._kept[_folded(name)]
 
     def may_repeat(self, scope: str) -> bool:
         """Tell whether several cards of a subcircuit may have one name."""

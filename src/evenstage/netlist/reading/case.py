@@ -17,7 +17,7 @@ from evenstage.errors import NetlistError, Notice
 from evenstage.netlist.intake import WordList
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Iterator, Sequence
+    from collections.abc import Iterable, Iterator, Mapping, Sequence
 
     from numpy.typing import NDArray
 
@@ -34,21 +34,25 @@ if TYPE_CHECKING:
 
 Case = Literal["any", "exact"]
 
-#: Bytes looked through for names that differ by case where that only makes a notice. What is
-#: longer a program has written, and that spells a net one way.
-_LOOKED_THROUGH: Final = 2 << 20
-#: Nets of one definition looked at for it.
-_LOOKED_AT: Final = 5000
+#: Bytes looked through for names that differ by case where that only makes a notice, and nets of
+#: one definition looked at: more only where that finds too few to show. What is longer a program
+#: has written, and that spells a net one way.
+_LOOKS: Final = ((1 << 16, 500), (2 << 20, 5000))
+_SHOWN: Final = 4
 _SIGNS: Final = bytes.maketrans(b",=()'\"{}", b" " * 8)
 
 
-def settle_case(netlist: Netlist, case: Case | None, clash: Span | None) -> Netlist:
+def settle_case(
+    netlist: Netlist, numbers: Mapping[bytes, int], case: Case | None, clash: Span | None
+) -> Netlist:
     """Return a netlist in which nets that differ by case alone are one net or several.
 
     Parameters
     ----------
     netlist : Netlist
         In which they are one.
+    numbers : Mapping of bytes to int
+        Of its words.
     case : {"any", "exact"}, optional
         Whether case counts; None: as the ports say.
     clash : Span, optional
@@ -63,13 +67,13 @@ def settle_case(netlist: Netlist, case: Case | None, clash: Span | None) -> Netl
         message = f"a port '{clash.text}' stands here twice, for 'case' is \"any\" in the brief"
         raise NetlistError(message, code="duplicate-port", span=clash)
     if case == "exact" or clash is not None:
-        cards = ExactCards(netlist.cards, _spelt_otherwise(netlist, None), netlist)
+        cards = ExactCards(netlist.cards, _spelt_otherwise(netlist, numbers), netlist)
         return replace(netlist, _cards=cards, notices=(*netlist.notices, *_counts(case, clash)))
     names = {name.lower(): name for name in reversed(netlist.global_names)}
     return replace(
         netlist,
         global_names=tuple(name for name in netlist.global_names if name in names.values()),
-        notices=(*netlist.notices, *_makes_none(netlist)),
+        notices=(*netlist.notices, *_makes_none(netlist, numbers)),
     )
 
 
@@ -84,38 +88,53 @@ def _counts(case: Case | None, clash: Span | None) -> tuple[Notice, ...]:
     return (Notice("case-of-nets", message, clash.place, (clash.text,)),)
 
 
-def _makes_none(netlist: Netlist) -> tuple[Notice, ...]:
+def _makes_none(netlist: Netlist, numbers: Mapping[bytes, int]) -> tuple[Notice, ...]:
     """Return a notice that nets of some definition are one which are spelt in several ways."""
-    words = _spelt_otherwise(netlist, _LOOKED_THROUGH)
-    if len(words) == 0:
-        return ()
-    found: dict[str, None] = {}
-    place = ""
-    for subcircuit in (netlist.top, *netlist.subcircuits.values()):
-        for spellings, number in _within(netlist, subcircuit, words):
-            if len(spellings) > 1:
-                place = place or netlist.card(number).span.place
-                found[" and ".join(f"'{name}'" for name in sorted(spellings))] = None
+    found: dict[str, str] = {}
+    for most, nets in _LOOKS:
+        found = _spelt_apart(netlist, _spelt_otherwise(netlist, numbers, most), nets)
+        if len(found) > _SHOWN or sum(len(source.data) for source in netlist.sources) <= most:
+            break
     if not found:
         return ()
-    shown = "; ".join(islice(found, 4)) + ("; ..." if len(found) > 4 else "")
+    shown = "; ".join(islice(found, _SHOWN)) + ("; ..." if len(found) > _SHOWN else "")
     message = (
         f"nets whose names differ by case alone are one net: {shown}; "
         'case = "exact" in the brief keeps them apart'
     )
-    return (Notice("case-of-nets", message, place, tuple(found)),)
+    return (Notice("case-of-nets", message, next(iter(found.values())), tuple(found)),)
+
+
+def _spelt_apart(netlist: Netlist, words: NDArray[np.int32], nets: int) -> dict[str, str]:
+    """Return the spellings of nets that have several in one definition, each with a place.
+
+    Parameters
+    ----------
+    netlist : Netlist
+        In which they are one net.
+    words : array of int32
+        Those that may be meant.
+    nets : int
+        How many are looked at in each definition.
+    """
+    found: dict[str, str] = {}
+    for subcircuit in (netlist.top, *netlist.subcircuits.values()) if len(words) else ():
+        for spellings, number in _within(netlist, subcircuit, words, nets):
+            if len(spellings) > 1:
+                text = " and ".join(f"'{name}'" for name in sorted(spellings))
+                found.setdefault(text, netlist.card(number).span.place)
+    return found
 
 
 def _within(
-    netlist: Netlist, subcircuit: Subcircuit, words: NDArray[np.int32]
+    netlist: Netlist, subcircuit: Subcircuit, words: NDArray[np.int32], nets: int
 ) -> Iterator[tuple[set[str], int]]:
     """Give the spellings of some words among the nets of a definition, and a card with each."""
     spelt: dict[int, set[str]] = {}
     last: dict[int, int] = {}
     ports = {port.lower(): port for port in subcircuit.ports}
-    for word, number, position in islice(
-        _occurrences(netlist.cards, subcircuit.cards, words), _LOOKED_AT
-    ):
+    cards = subcircuit.cards[:nets]
+    for word, number, position in islice(_occurrences(netlist.cards, cards, words), nets):
         name = netlist.node_name(number, position)
         known = spelt.setdefault(word, {ports.get(name.lower(), name)})
         if name not in known:
@@ -134,23 +153,22 @@ def _occurrences(
         yield from zip(*(column.tolist() for column in found), strict=True)
 
 
-def _spelt_otherwise(netlist: Netlist, most: int | None) -> NDArray[np.int32]:
-    """Return the words of the netlist that its text spells in several ways."""
+def _spelt_otherwise(
+    netlist: Netlist, numbers: Mapping[bytes, int], most: int | None = None
+) -> NDArray[np.int32]:
+    """Return the words of the netlist that the first bytes of its text spell in several ways."""
     spelt: dict[bytes, bytes] = {}
     several: set[bytes] = set()
     for source in netlist.sources:
         data = source.data[:most]
+        most = None if most is None else most - len(data)
         if data.islower() or data.isupper():
             continue
         for token in set(data.translate(_SIGNS).split()):
             lower = token.lower()
             if spelt.setdefault(lower, token) != token:
                 several.add(lower)
-    if not several:
-        return np.zeros(0, np.int32)
-    words = netlist.cards.words
-    every = words.some(np.arange(len(words)))
-    return np.array([k for k, word in enumerate(every) if word in several], np.int32)
+    return np.array(sorted(numbers[word] for word in several if word in numbers), np.int32)
 
 
 @dataclass(frozen=True)

@@ -86,4 +86,6 @@ def _read(source: SourceText, name: Path, case: Case | None) -> Netlist:
     with without_collection():
         reader = Reader()
         reader.read_main(source, Path(os.path.abspath(name)))  # noqa: PTH100 - links stay links
-        return settle_case(reader.finish(), case, reader.clash)
+        netlist = settle_case(reader.finish(), reader.word_numbers, case, reader.clash)
+        reader.release()
+        return netlist

@@ -28,6 +28,7 @@ from evenstage.progress import tell
 from evenstage.source import SourceText, Span
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
     from pathlib import Path
 
     from evenstage.netlist.netlist import Parameter
@@ -312,6 +313,15 @@ class Reader:
     def clash(self) -> Span | None:
         """The first port that differs from another of its definition by case alone."""
         return self._scopes.clash
+
+    @property
+    def word_numbers(self) -> Mapping[bytes, int]:
+        """The numbers of all words on the cards, until ``release``."""
+        return self._table.word_numbers
+
+    def release(self) -> None:
+        """Forget what the netlist does not need."""
+        self._table.release()
 
     def finish(self) -> Netlist:
         """Return what was read."""
