@@ -7,18 +7,21 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from evenstage.circuit.arcs import NO_OWNER, Arcs, joined, ranges, uniform
+from evenstage.circuit.arcs import NO_OWNER, Arcs, Charges, OwnTerms, joined, ranges
 
 
 def table(gates: list[int], charges: int, terms: int, seed: int) -> Arcs:
     random, k = np.random.default_rng(seed), len(gates)
     nets, owners = np.arange(5, dtype=np.int32), np.arange(-1, 4, dtype=np.int32)
-    charge = [
-        (random.choice(nets, k), random.choice(owners, k), random.uniform(1, 2, k))
-        for _ in range(charges)
-    ]
-    term = [(random.uniform(1, 2, k), random.choice(owners, k)) * 2 for _ in range(terms)]
-    charged, own = uniform(k, charge, term)
+    heads = [np.arange(k + 1, dtype=np.int32) * count for count in (charges, terms)]
+    charged = Charges(
+        heads[0],
+        random.choice(nets, k * charges),
+        random.choice(owners, k * charges),
+        random.uniform(1, 2, k * charges),
+    )
+    of_terms = [random.uniform(1, 2, k * terms), random.choice(owners, k * terms)]
+    own = OwnTerms(heads[1], *of_terms, *of_terms)
     constants = random.uniform(0.1, 1, (4, k))
     return Arcs(
         gate=np.array(gates, np.int32),

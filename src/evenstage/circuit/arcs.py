@@ -29,12 +29,6 @@ if TYPE_CHECKING:
 
 _Kind = TypeVar("_Kind", bound=np.generic)
 
-Charge = tuple["IntArray", "IntArray", "FloatArray"]
-"""Net, owner and resistance of one charge of many arcs."""
-OwnTerm = tuple["FloatArray", "IntArray", "FloatArray", "IntArray"]
-"""Resistance and its owner, capacitance and its owner, of one term of many arcs."""
-Lists = tuple["Charges", "OwnTerms"]
-
 NO_OWNER = -1
 """Owner of a resistance or capacitance that does not scale."""
 
@@ -163,16 +157,6 @@ class Arcs:
         owner = self.charges.owner[ranges(head[which], head[which + 1] - head[which])]
         found: IntArray = owner[owner != NO_OWNER]
         return found
-
-
-def uniform(count: int, charge: Sequence[Charge], own: Sequence[OwnTerm]) -> Lists:
-    """Return charges and own terms of arcs that all have the same ones, columns (arcs,)."""
-    heads = [np.arange(count + 1, dtype=np.int32) * len(some) for some in (charge, own)]
-    c, o = (
-        [np.stack(column, axis=1).ravel() for column in zip(*some, strict=True)]
-        for some in (charge, own)
-    )
-    return Charges(heads[0], *c), OwnTerms(heads[1], *o)
 
 
 def joined(parts: Sequence[Arcs]) -> Arcs:

@@ -11,13 +11,14 @@ node by node, by another; which of them is slowest depends on the sizes.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from functools import lru_cache
+from functools import cached_property, lru_cache
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from evenstage.circuit.function import Expression, conduction
 from evenstage.circuit.network import HIGH, LOW, Network, Switch, merge
+from evenstage.circuit.truth import ones, packed
 
 if TYPE_CHECKING:
     from evenstage.circuit.network import BoolArray
@@ -130,6 +131,11 @@ class Pulls:
     down: BoolArray
     possible: BoolArray
 
+    @cached_property
+    def bits(self) -> tuple[int, int]:
+        """Pull-up and pull-down, as `evenstage.circuit.truth` writes them."""
+        return packed(self.up), packed(self.down)
+
 
 @lru_cache(maxsize=4096)
 def recognise_network(
@@ -232,25 +238,32 @@ def _arcs(
     rising: bool,
 ) -> list[ArcForm]:
     """Return the arcs of one input towards one output edge that no other outdoes."""
-    supply, pull, against = (HIGH, pulls.up, pulls.down) if rising else (LOW, pulls.down, pulls.up)
+    supply = HIGH if rising else LOW
     others = tuple(r for r in relations if network.inputs[row] not in r)
-    columns = np.arange(network.vectors.shape[1])
-    after = columns[network.vectors[row] != rising]
-    before = after ^ (1 << row)
-    decides = (
-        ~pull[before] & pull[after] & ~against[after] & possible_vectors(network, others)[after]
-    )
     single: dict[ArcForm, None] = {}
     shared: dict[ArcForm, None] = {}
-    for old, new in zip(before[decides], after[decides], strict=True):
-        closed = frozenset(np.flatnonzero(network.closed[:, new]).tolist())
-        was_closed = frozenset(np.flatnonzero(network.closed[:, old]).tolist())
+    for new in ones(_decisive(network, pulls, row, others, rising=rising)):
+        closed = network.closed_under(new)
+        was_closed = network.closed_under(new ^ (1 << row))
         ways = list(network.paths(output, supply, closed))
         path = min(ways, key=len)
         moved, behind = _moved(network, path, closed, _tied(network, supply, was_closed))
         form = ArcForm(network.inputs[row], rising, path, moved, behind)
         (single if len(ways) == 1 else shared)[form] = None
     return _not_outdone(list(single) or list(shared))
+
+
+def _decisive(
+    network: Network, pulls: Pulls, row: int, relations: tuple[Relation, ...], *, rising: bool
+) -> int:
+    """Return the vectors that an edge of one input leads to and that begin to pull, as bits."""
+    pull, against = pulls.bits if rising else pulls.bits[::-1]
+    step = 1 << row
+    is_set = packed(network.vectors[row])
+    # Whether the other level of the input pulled already, moved to where it leads to.
+    before, after = (pull >> step, ~is_set) if rising else (pull << step, is_set)
+    possible = packed(possible_vectors(network, relations)) if relations else -1
+    return ~before & pull & ~against & after & possible
 
 
 def _tied(network: Network, start: int, closed: frozenset[int]) -> set[int]:

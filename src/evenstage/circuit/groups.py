@@ -67,16 +67,42 @@ def group(
     members = np.flatnonzero(logic)
     label = _labels(devices, supplies, logic)
     order = members[np.argsort(label[members], kind="stable")].astype(np.int32)
-    ordered_label = label[order]
-    starts = np.flatnonzero(np.diff(ordered_label, prepend=-1))
+    starts = np.flatnonzero(np.diff(label[order], prepend=-1))
     sizes = np.diff(starts, append=len(order))
-    numbers = _local_nets(devices, (supplies, levels), order, ordered_label)
+    places = _Places.of(devices, supplies, levels)
     alike: list[AlikeGroups] = []
     for size in np.unique(sizes):
         rows = starts[sizes == size][:, None] + np.arange(size)
-        alike.extend(_alike(devices, order[rows], numbers[rows]))
+        alike.extend(_alike(places, order[rows]))
     alike.sort(key=lambda groups: int(groups.devices[0, 0]))
     return tuple(alike)
+
+
+@dataclass(frozen=True)
+class _Places:
+    """What every device hangs on, nets that never move as `HIGH` and `LOW`.
+
+    Parameters
+    ----------
+    is_p : BoolArray, shape (devices,)
+    nets, seen : tuple of IntArray, shape (devices,) each
+        Drain, gate and source as net ids, and with what never moves put in.
+    """
+
+    is_p: BoolArray
+    nets: tuple[IntArray, IntArray, IntArray]
+    seen: tuple[IntArray, IntArray, IntArray]
+
+    @classmethod
+    def of(cls, devices: Devices, supplies: Supplies, levels: Levels) -> _Places:
+        """Return the places of a block's devices."""
+        own = np.arange(len(devices.net_names), dtype=np.int32)
+        channel = np.where(supplies.is_high, HIGH, np.where(supplies.is_low, LOW, own))
+        gate = np.where(levels.high, HIGH, np.where(levels.low, LOW, own))
+        is_p = np.array([model.polarity == "p" for model in devices.models], bool)[devices.model]
+        nets = (devices.drain, devices.gate, devices.source)
+        seen = (channel[devices.drain], gate[devices.gate], channel[devices.source])
+        return cls(is_p, nets, seen)
 
 
 def _labels(devices: Devices, supplies: Supplies, logic: BoolArray) -> IntArray:
@@ -94,55 +120,38 @@ def _labels(devices: Devices, supplies: Supplies, logic: BoolArray) -> IntArray:
     return result
 
 
-def _local_nets(
-    devices: Devices, still: tuple[Supplies, Levels], order: IntArray, label: IntArray
-) -> IntArray:
-    """Return drain, gate and source of each ordered device as local nets, shape (devices, 3)."""
-    supplies, levels = still
-    nets = np.stack([devices.drain[order], devices.gate[order], devices.source[order]], axis=1)
-    flat = nets.ravel().astype(np.int64)
-    pair = np.repeat(label.astype(np.int64), 3) * len(devices.net_names) + flat
-    is_gate = np.tile([False, True, False], len(order))
-    high = np.where(is_gate, levels.high[flat], supplies.is_high[flat])
-    low = np.where(is_gate, levels.low[flat], supplies.is_low[flat])
-    signal = ~(high | low)
-    local = np.where(high, HIGH, LOW).astype(np.int32)
-    unique, first, inverse = np.unique(pair[signal], return_index=True, return_inverse=True)
-    # Number the nets of each group by first appearance: sort (group, first place), count from the
-    # group's first.
-    by_place = np.lexsort((first, unique // len(devices.net_names)))
-    owner = (unique // len(devices.net_names))[by_place]
-    begins = np.flatnonzero(np.diff(owner, prepend=-1))
-    rank = np.empty(len(unique), np.int32)
-    counts = np.diff(begins, append=len(owner))
-    rank[by_place] = np.arange(len(owner)) - np.repeat(begins, counts)
-    local[signal] = rank[inverse]
-    return local.reshape(-1, 3)
+def _numbered(nets: IntArray) -> IntArray:
+    """Return nets of each row numbered as they first appear; `HIGH` and `LOW` stay as they are."""
+    order = np.argsort(nets, axis=1, kind="stable").astype(np.int32)
+    ordered = np.take_along_axis(nets, order, axis=1)
+    place = np.arange(nets.shape[1], dtype=np.int32)
+    # Of equal nets the stable order has the first in front: carry its place to the others.
+    begins = np.diff(ordered, axis=1, prepend=LOW - 1) != 0
+    front = np.maximum.accumulate(np.where(begins, place, 0), axis=1)
+    first = np.empty_like(order)
+    np.put_along_axis(first, order, np.take_along_axis(order, front, axis=1), axis=1)
+    rank = np.cumsum((first == place) & (nets >= 0), axis=1, dtype=np.int32) - 1
+    return np.where(nets >= 0, np.take_along_axis(rank, first, axis=1), nets)
 
 
-def _alike(devices: Devices, members: IntArray, numbers: IntArray) -> list[AlikeGroups]:
+def _alike(places: _Places, members: IntArray) -> list[AlikeGroups]:
     """Split groups of one size, shape (groups, size), into those with equal networks."""
     groups, size = members.shape
-    is_p = np.array([model.polarity == "p" for model in devices.models])
-    polarity = is_p[devices.model[members]].astype(np.int32)
-    rows = np.concatenate([polarity[:, :, None], numbers], axis=2).reshape(groups, 4 * size)
+    seen, terminals = (
+        np.stack([end[members] for end in ends], axis=2).reshape(groups, 3 * size)
+        for ends in (places.seen, places.nets)
+    )
+    numbers = _numbered(seen).reshape(groups, size, 3)
+    rows = np.concatenate([places.is_p[members][:, :, None], numbers], axis=2)
+    rows = rows.reshape(groups, 4 * size)
     kinds, inverse = distinct_rows(rows)
     order = np.argsort(inverse, kind="stable")
     cuts = np.searchsorted(inverse[order], np.arange(1, len(kinds)))
     result = []
-    for kind, which in zip(kinds, np.split(members[order], cuts), strict=True):
+    for kind, rows_of_kind in zip(kinds, np.split(order, cuts), strict=True):
         table = kind.reshape(size, 4)
         network = tuple(Switch("p" if p else "n", d, g, s) for p, d, g, s in table.tolist())
-        result.append(AlikeGroups(network, which, _net_ids(devices, which, table)))
+        locals_, first = np.unique(table[:, 1:], return_index=True)
+        nets = terminals[rows_of_kind[:, None], first[locals_ >= 0]]
+        result.append(AlikeGroups(network, members[rows_of_kind], nets))
     return result
-
-
-def _net_ids(devices: Devices, members: IntArray, table: IntArray) -> IntArray:
-    """Return the net ids of local nets, shape (groups, local nets)."""
-    columns = np.stack([devices.drain, devices.gate, devices.source])
-    places = table[:, 1:]
-    nets = np.empty((len(members), int(places.max(initial=-1)) + 1), np.int32)
-    for local in range(nets.shape[1]):
-        device, terminal = np.argwhere(places == local)[0]
-        nets[:, local] = columns[terminal][members[:, device]]
-    return nets

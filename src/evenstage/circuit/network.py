@@ -21,8 +21,12 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from evenstage.circuit.truth import packed, unpacked
+
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
+
+    from evenstage.netlist.devices import IntArray
 
 BoolArray = NDArray[np.bool_]
 
@@ -83,6 +87,12 @@ class Network:
         return tuple(sorted(node for node in self.at_node if node >= 0))
 
     @cached_property
+    def first_devices(self) -> IntArray:
+        """The first drawn device of each switch, shape ``(switches,)``."""
+        places = [self.switch_of_device.index(index) for index in range(len(self.switches))]
+        return np.array(places, np.int32)
+
+    @cached_property
     def driven_nodes(self) -> tuple[int, ...]:
         """Nodes where a p and an n switch meet: the places that can be pulled both ways."""
         return tuple(
@@ -107,28 +117,35 @@ class Network:
             table[index] = level if switch.polarity == "n" else np.logical_not(level)
         return table
 
+    @cached_property
+    def closed_bits(self) -> tuple[int, ...]:
+        """When each switch is closed, as `evenstage.circuit.truth` writes it."""
+        return tuple(packed(row) for row in self.closed)
+
+    def closed_under(self, vector: int) -> frozenset[int]:
+        """Return the switches that one input vector closes."""
+        return frozenset(i for i, bits in enumerate(self.closed_bits) if bits >> vector & 1)
+
     def conducts(self, start: int, end: int, polarities: str = "np") -> BoolArray:
         """Tell for each vector whether closed switches join two nodes, shape ``(2**inputs,)``.
 
         The way never leads through a supply, and only through switches of the given polarities.
         """
-        reached = {node: np.zeros(self.vectors.shape[1], bool) for node in self.at_node}
-        if start not in reached or end not in reached:
-            return np.zeros(self.vectors.shape[1], bool)
-        reached[start] = np.ones(self.vectors.shape[1], bool)
-        usable = [(i, s) for i, s in enumerate(self.switches) if s.polarity in polarities]
-        growing = True
-        while growing:
-            growing = False
-            for index, switch in usable:
-                for here, there in ((switch.a, switch.b), (switch.b, switch.a)):
-                    if here < 0 and here != start:
-                        continue
-                    wider = reached[there] | (reached[here] & self.closed[index])
-                    if (wider != reached[there]).any():
-                        reached[there] = wider
-                        growing = True
-        return reached[end]
+        vectors = 1 << len(self.inputs)
+        if start not in self.at_node or end not in self.at_node:
+            return np.zeros(vectors, bool)
+        reached = {**dict.fromkeys(self.at_node, 0), start: (1 << vectors) - 1}
+        usable = [s.polarity in polarities for s in self.switches]
+        waiting = [start]
+        while waiting:
+            here = waiting.pop()
+            for index in self.at_node[here] if here >= 0 or here == start else ():
+                there = self.switches[index].other(here)
+                more = reached[here] & self.closed_bits[index] & ~reached[there]
+                if more and usable[index]:
+                    reached[there] |= more
+                    waiting.append(there)
+        return unpacked(reached[end], vectors)
 
     def paths(self, start: int, end: int, usable: frozenset[int]) -> Iterator[tuple[int, ...]]:
         """Yield the simple paths between two nodes through usable switches, in drawing order."""

@@ -28,8 +28,8 @@ import numpy as np
 
 from evenstage.circuit.arcs import Charges, OwnTerms, joined, ranges
 from evenstage.circuit.function import Literal
-from evenstage.circuit.stage_tables import WEAK, first_devices, stage_arcs
-from evenstage.circuit.tables import arcs_of
+from evenstage.circuit.gate_arcs import arcs_of
+from evenstage.circuit.stage_tables import WEAK, stage_arcs
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
@@ -137,7 +137,7 @@ def opened_in_turn(arcs: Arcs, some: AlikeStages, r_w: FloatArray, inverters: In
     shape = (len(some.gates), len(some.form.arcs))
     maker, share = np.full(shape, -1), np.zeros(shape)
     kept = np.ones(shape, bool)
-    of_switch = r_w[some.devices[:, first_devices(some.form)]]
+    of_switch = r_w[some.devices[:, some.form.network.first_devices]]
     for column, arc in enumerate(some.form.arcs):
         pair = _controls(some.form, arc)
         if pair is None:

@@ -44,11 +44,13 @@ def leaves(devices: Devices, alike: tuple[AlikeGates, ...], owner: IntArray) -> 
 
 def _depths(devices: Devices) -> IntArray:
     """Return how deep each instance lies; the block itself at 0."""
-    depth = np.zeros(len(devices.instance_parent), np.int32)
-    waiting = np.flatnonzero(devices.instance_parent == 0)
+    parent = devices.instance_parent
+    depth = np.zeros(len(parent), np.int32)
+    waiting = parent == 0
     level = 1
-    while waiting.size:
+    while waiting.any():
         depth[waiting] = level
-        waiting = np.flatnonzero(np.isin(devices.instance_parent, waiting))
+        # The block has no parent: its -1 must not stand for the last instance.
+        waiting = waiting[parent] & (parent >= 0)
         level += 1
     return depth

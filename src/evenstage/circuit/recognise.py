@@ -9,6 +9,7 @@ import numpy as np
 
 from evenstage.brief import Brief
 from evenstage.circuit.apart import set_apart
+from evenstage.circuit.carrying import carry
 from evenstage.circuit.circuit import STORED, Circuit, NotUnderstood
 from evenstage.circuit.domains import domain_notices
 from evenstage.circuit.groups import group
@@ -113,7 +114,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
     )
     if alike:
         wiring = find_wiring(devices, circuit.gate_of_device, circuit.driven, supplies.is_supply)
-        circuit = replace(circuit, wiring=wiring)
+        circuit = carry(circuit, replace(circuit, wiring=wiring))
     return _complete(circuit, brief)
 
 
@@ -134,7 +135,7 @@ def in_process(circuit: Circuit, process: Process, brief: Brief | None = None) -
         outside_cap=np.zeros(len(circuit.devices.net_names)),
         ends={},
     )
-    return _complete(moved, brief)
+    return _complete(carry(circuit, moved), brief)
 
 
 def _complete(circuit: Circuit, brief: Brief | None) -> Circuit:
@@ -149,7 +150,7 @@ def _complete(circuit: Circuit, brief: Brief | None) -> Circuit:
         *stage_notices(devices, circuit.stages),
         *domain_notices(circuit),
     )
-    circuit = replace(circuit, notices=notices)
+    circuit = carry(circuit, replace(circuit, notices=notices))
     return _with_surroundings(circuit, brief) if circuit.alike else circuit
 
 
@@ -234,7 +235,7 @@ def _with_surroundings(circuit: Circuit, brief: Brief | None) -> Circuit:
     for some in brief.inputs if brief else ():
         fits = [any(pattern.fits(name) for pattern in some.nets) for name in names]
         drive[nets[np.array(fits, bool)]] = some.drive
-    return _with_ends(replace(circuit, drive=drive), brief)
+    return _with_ends(carry(circuit, replace(circuit, drive=drive)), brief)
 
 
 def _with_unit(process: Process, devices: Devices) -> Process:
@@ -259,24 +260,22 @@ def _with_ends(circuit: Circuit, brief: Brief | None) -> Circuit:
         ends.update(dict.fromkeys(chosen.tolist(), "output"))
         if output.load is not None:
             outside[chosen] = output.load
-    bare = [
-        net
-        for net, why in ends.items()
-        if why == "output" and np.isnan(outside[net]) and circuit.net_cap[net] == 0
-    ]
+    shown = np.array([net for net, why in ends.items() if why == "output"], np.int32)
+    bare = shown[np.isnan(outside[shown]) & (circuit.net_cap[shown] == 0)]
     outside[bare] = _DEFAULT_FANOUT * _unit_input(circuit.process)
     notice = Notice(
         "default-load",
         f"outputs that nothing loads get {_DEFAULT_FANOUT} unit inverters each: {len(bare)} of "
         "them",
-        names=tuple(devices.net_names[net] for net in bare),
+        names=tuple(devices.net_names[net] for net in bare[:NAMES_MAX].tolist()),
     )
-    return replace(
+    finished = replace(
         circuit,
         outside_cap=np.nan_to_num(outside),
         ends=dict(sorted(ends.items())),
-        notices=(*circuit.notices, notice) if bare else circuit.notices,
+        notices=(*circuit.notices, notice) if len(bare) else circuit.notices,
     )
+    return carry(circuit, finished)
 
 
 def _natural_ends(circuit: Circuit) -> dict[int, str]:

@@ -10,8 +10,9 @@ from scipy.sparse import csr_array
 
 from evenstage.circuit.arcs import NO_OWNER, Arcs, Charges, OwnTerms
 from evenstage.circuit.electrical import Scaled
+from evenstage.circuit.gate_arcs import switch_resistance
 from evenstage.circuit.stage_plan import Present, plan
-from evenstage.circuit.tables import Pins, switch_resistance
+from evenstage.circuit.tables import Pins
 
 if TYPE_CHECKING:
     from evenstage.circuit.electrical import Diffusion, Electrical
@@ -68,7 +69,7 @@ def stage_arcs(some: AlikeStages, values: Electrical, drive: FloatArray) -> Arcs
     whole = _summed(sums.whole, resistance)
     moved = _summed(sums.own, resistance, capacitance)
     switching = np.array([arc.switching for arc in form.arcs])
-    device = some.devices[:, first_devices(form)[np.maximum(switching, 0)]].ravel()
+    device = some.devices[:, form.network.first_devices[np.maximum(switching, 0)]].ravel()
     # What the outside drives arrives with its own transition and meets no threshold.
     outside = np.tile(switching < 0, count)
     arcs = form.arcs
@@ -139,20 +140,13 @@ def _ends(values: Electrical) -> tuple[Scaled, ...]:
     return values.rise.drain, values.rise.source, values.fall.drain, values.fall.source
 
 
-def first_devices(form: StageForm) -> IntArray:
-    """Return the first drawn device of each switch, shape (switches,)."""
-    network = form.network
-    places = [network.switch_of_device.index(i) for i in range(len(network.switches))]
-    return np.array(places, np.int32)
-
-
 def _vector_of_resistances(
     some: AlikeStages, values: Electrical, drive: FloatArray, resistors: tuple[Resistor, ...]
 ) -> FloatArray:
     """Return the resistance of every entry, ohm, shape (k, entries)."""
     form = some.form
     of_switch = switch_resistance(form.network, some.devices, values)
-    stack = values.stack[some.devices[:, first_devices(form)]]
+    stack = values.stack[some.devices[:, form.network.first_devices]]
     return np.column_stack(
         [
             drive[some.nets[:, one.source]]
@@ -188,7 +182,7 @@ def _vector_of_capacitances(
     some: AlikeStages, values: Electrical, capacitors: tuple[Capacitor, ...]
 ) -> FloatArray:
     """Return the capacitance of every entry, F, shape (k, entries)."""
-    columns, first = [], first_devices(some.form)
+    columns, first = [], some.form.network.first_devices
     for one in capacitors:
         edge: Diffusion = values.rise if one.rising else values.fall
         total = np.zeros(len(some.gates))

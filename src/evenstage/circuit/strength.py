@@ -14,8 +14,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.circuit.gate_arcs import arcs_of
 from evenstage.circuit.network import LOW
-from evenstage.circuit.tables import arcs_of
 from evenstage.errors import Notice
 
 if TYPE_CHECKING:

@@ -7,7 +7,7 @@ from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
-from scipy.sparse import coo_array
+from scipy.sparse import coo_array, csr_array
 from scipy.sparse.csgraph import connected_components
 
 from evenstage.circuit.function import Literal
@@ -110,8 +110,9 @@ class Feedback:
         is_port[list(devices.ports)] = True
         closes[devices.gate] = True
         pulled = np.zeros(nets, bool)
+        seen = closes | is_port
         for some in self._drawings:
-            stops = {end for end in some.ends if (closes | is_port)[some.nets[:, end]].any()}
+            stops = {end for end in some.ends if seen[some.nets[:, end]].any()}
             for end in _reached(some.network, stops):
                 pulled[some.nets[:, end]] = True
         return is_port & ~pulled & ~closes
@@ -141,10 +142,9 @@ class Feedback:
         alone = np.zeros(nets, bool)
         alone[source[source == target]] = True
         both = ~alone[source] & ~alone[target]
-        source, target = source[both], target[both]
-        here = source.astype(np.int64) * nets + target
-        mutual = np.isin(target.astype(np.int64) * nets + source, here)
-        pairs = _parts(source[mutual], target[mutual], nets)
+        links = csr_array((both[both].view(np.int8), (source[both], target[both])), (nets, nets))
+        source, target = links.multiply(links.T).nonzero()
+        pairs = _parts(source, target, nets)
         return [*(np.array([net], np.int32) for net in np.flatnonzero(alone)), *pairs]
 
     def far_loops(self, without: BoolArray) -> list[IntArray]:
