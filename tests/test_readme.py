@@ -135,7 +135,7 @@ def documented(command: str) -> set[str]:
 
 class TestOptions:
     @pytest.mark.parametrize(
-        "command", ["analyse", "resize", "diff", "recognise", "simulate", "fit"]
+        "command", ["analyse", "resize", "diff", "recognise", "simulate", "fit", "report"]
     )
     def test_are_those_of_the_program(self, command: str, tmp_path: Path) -> None:
         offered = set(re.findall(r"--[a-z-]+", shown(f"evenstage {command} --help", tmp_path)))

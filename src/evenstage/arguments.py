@@ -40,6 +40,9 @@ _EXAMPLES: Final = {
         "what was understood, and the graph of gates as a file:\n"
         "  evenstage recognise decoder.sp --graph gates.graphml\n"
     ),
+    "report": (
+        "a page from a result that was kept:\n  evenstage report result.json --html page.html\n"
+    ),
     "fit": (
         "a process file from delays measured, and from simulated ones:\n"
         "  evenstage fit delays.csv --netlist cells.sp --output kit.toml\n"
@@ -193,6 +196,11 @@ def _parser(show: Callable[[str], object]) -> argparse.ArgumentParser:
     fit.add_argument("--output", type=_output, metavar="FILE", help="the process file to write")
     fit.add_argument("--force", action="store_true", help="overwrite the output")
     _shared(fit, paths=False)
+    report = _command(commands, "report", "a result that was kept as JSON, shown again")
+    report.add_argument("result", type=_file, metavar="FILE")
+    report.add_argument("--html", type=_file, metavar="FILE", help="a page to hold a review on")
+    report.add_argument("--quiet", action="store_true", help="no notices, no progress")
+    report.set_defaults(json=None, process=[])
     return parser
 
 

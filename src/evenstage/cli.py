@@ -89,29 +89,18 @@ def _run(asked: argparse.Namespace) -> None:
     from evenstage import flow
 
     on_screen = asked.json == Path("-")
-    written = getattr(asked, "graph", None) or getattr(asked, "waveforms", None)
-    if asked.json and not on_screen:
-        flow.check_place(asked.json, _inputs(asked))
-    others = [path for path in (asked.json, written) if path and path != Path("-")]
     page = getattr(asked, "html", None)
-    if written:
-        flow.check_place(written, [*_inputs(asked), *([asked.json] if asked.json else [])])
-    if page:
-        flow.check_place(page, [*_inputs(asked), *others])
-    with shown_on(None if asked.quiet else sys.stderr):
-        result = _COMMANDS[asked.command](asked)
-    if page:
-        origin = flow.origin(
-            __version__, asked.arguments, _inputs(asked), getattr(asked, "delay", None)
-        )
+    _check_places(asked)
+    result, origin = _answer(asked)
+    if page and origin is not None:
         flow.write_text(page, flow.html(result, origin), force=True)
     if on_screen:
-        _print(flow.json(result))
+        _print(flow.json(result, origin))
         for notice in () if asked.quiet else flow.notices(result):
             _say(f"notice: {notice}")
         return
     if asked.json:
-        flow.write_text(asked.json, flow.json(result), force=True)
+        flow.write_text(asked.json, flow.json(result, origin), force=True)
     _print(
         flow.text(result, width=_width(), unicode=_unicode(), with_notices=not asked.quiet),
     )
@@ -119,9 +108,44 @@ def _run(asked: argparse.Namespace) -> None:
         _say("no netlist was written: name one with --output FILE")
 
 
+def _check_places(asked: argparse.Namespace) -> None:
+    """Refuse at once to write over what is read, or twice to one file."""
+    from evenstage import flow
+
+    taken = _inputs(asked)
+    for name in ("json", "graph", "waveforms", "html"):
+        path = getattr(asked, name, None)
+        if path and path != Path("-"):
+            flow.check_place(path, taken)
+            taken.append(path)
+
+
+def _answer(asked: argparse.Namespace) -> tuple[flow.Result, flow.Origin | None]:
+    """Return the result of a command, and where it comes from if that is written anywhere."""
+    from evenstage import flow
+
+    if asked.command == "report":
+        return flow.report(asked.result, __version__, asked.arguments)
+    with shown_on(None if asked.quiet else sys.stderr):
+        result = _COMMANDS[asked.command](asked)
+    if not asked.json and not getattr(asked, "html", None):
+        return result, None
+    return result, flow.origin(__version__, asked.arguments, _inputs(asked), result)
+
+
 def _inputs(asked: argparse.Namespace) -> list[Path]:
     """Return the files that a command reads, and the netlist that it writes."""
-    names = ("netlist", "before", "after", "measurements", "cells", "simulated", "brief", "output")
+    names = (
+        "netlist",
+        "before",
+        "after",
+        "measurements",
+        "cells",
+        "simulated",
+        "brief",
+        "output",
+        "result",
+    )
     others = [path for name in names if (path := getattr(asked, name, None)) is not None]
     return [*asked.process, *others]
 

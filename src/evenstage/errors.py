@@ -10,6 +10,7 @@ if TYPE_CHECKING:
     from evenstage.source import Span
 
 _LINE_END = re.compile(r"[\r\n]")
+_STEERING = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f]")
 _TAB = 8
 #: How many mistakes of one run are told.
 _TOLD = 20
@@ -108,6 +109,10 @@ class FitError(EvenstageError):
     """The measurements are wrong, or too few to fit a process to."""
 
 
+class DocumentError(EvenstageError):
+    """A file is no result that was written as JSON."""
+
+
 class OutputError(EvenstageError):
     """A result could not be written."""
 
@@ -160,8 +165,8 @@ def _short(text: str) -> str:
 
 
 def _printable(text: str) -> str:
-    """Return a text with ``?`` for bytes that were not UTF-8."""
-    return text.encode("utf-8", "replace").decode()
+    """Return a text with ``?`` for bytes that are not UTF-8, and signs that steer terminals."""
+    return _STEERING.sub("?", text.encode("utf-8", "replace").decode())
 
 
 def _window(line: str, left: int) -> tuple[str, int]:

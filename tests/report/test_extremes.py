@@ -15,13 +15,13 @@ from hypothesis import strategies as st
 from evenstage.errors import Notice
 from evenstage.logic.paths import PathVector
 from evenstage.logic.same import StructureCheck
-from evenstage.report.machine import (
-    analysis_document,
-    difference_document,
-    sizing_document,
+from evenstage.report.document.convert import (
+    document as document_of,
+)
+from evenstage.report.document.convert import (
     to_json,
 )
-from evenstage.report.page.origin import Origin
+from evenstage.report.origin import Origin
 from evenstage.report.page.render import html
 from evenstage.report.paper import cells
 from evenstage.report.terminal import analysis_report, difference_report, sizing_report
@@ -289,7 +289,7 @@ class TestLines:
         analysis = Anything(seed).analysis()
         text = analysis_report(analysis, width=width, unicode=unicode)
         assert_well_set(text, width, unicode=unicode)
-        assert to_json(analysis_document(analysis)).isascii()
+        assert to_json(document_of(analysis)).isascii()
 
     @given(SEEDS, PAPERS)
     @QUICK
@@ -298,7 +298,7 @@ class TestLines:
         sizing = Anything(seed).sizing()
         text = sizing_report(sizing, width=width, unicode=unicode)
         assert_well_set(text, width, unicode=unicode)
-        assert to_json(sizing_document(sizing)).isascii()
+        assert to_json(document_of(sizing)).isascii()
 
     @given(SEEDS, PAPERS)
     @QUICK
@@ -307,7 +307,7 @@ class TestLines:
         difference = Anything(seed).difference()
         text = difference_report(difference, width=width, unicode=unicode)
         assert_well_set(text, width, unicode=unicode)
-        assert to_json(difference_document(difference)).isascii()
+        assert to_json(document_of(difference)).isascii()
 
 
 class TestPages:

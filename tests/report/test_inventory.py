@@ -10,8 +10,9 @@ import networkx as nx
 import pytest
 
 from evenstage.circuit.inventory import Inventory, take_inventory
+from evenstage.report.document.convert import document as document_of
+from evenstage.report.document.convert import to_json
 from evenstage.report.graph_document import graph_document
-from evenstage.report.machine import inventory_document, to_json
 from evenstage.report.terminal import inventory_report
 from support.blocks import circuit_of, inverter, nand, network, nor, transistor
 
@@ -81,7 +82,7 @@ def test_storage_is_told_in_the_names_of_its_subcircuit(inventory: Inventory) ->
 
 
 def test_json_names_every_gate_and_what_is_left(inventory: Inventory) -> None:
-    document = json.loads(to_json(inventory_document(inventory)))
+    document = json.loads(to_json(document_of(inventory)))
     assert document["kind"] == "circuit"
     gates = {gate["instance"]: gate for gate in document["gates"]}
     assert len(gates) == len(document["gates"]) == document["counts"]["gates"] == 14

@@ -12,8 +12,9 @@ import numpy as np
 import pytest
 
 from evenstage.errors import Notice
-from evenstage.report.machine import simulation_document, to_json
-from evenstage.report.simulation_document import waveform_table
+from evenstage.report.document.convert import document as document_of
+from evenstage.report.document.convert import to_json
+from evenstage.report.document.simulation import waveform_table
 from evenstage.report.terminal import simulation_report
 from evenstage.simulation.results import (
     SimulatedBlock,
@@ -121,7 +122,7 @@ class TestRanking:
 
 class TestJson:
     def test_holds_estimate_and_simulation_of_every_stage(self, two: Simulation) -> None:
-        document = json.loads(to_json(simulation_document(two)))
+        document = json.loads(to_json(document_of(two)))
         assert document["kind"] == "simulation"
         old, new = document["before"]["paths"][0], document["after"]["paths"][0]
         ratio = old["simulated_delay_s"] / new["simulated_delay_s"]

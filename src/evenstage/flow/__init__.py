@@ -7,12 +7,14 @@ from evenstage.flow.files import html, origin, write_text
 from evenstage.flow.fitting import fit, fit_simulated, write_deck
 from evenstage.flow.loading import Block, Question, load
 from evenstage.flow.paths import analyse, diff, recognise
+from evenstage.flow.reporting import report
 from evenstage.flow.simulating import simulate
 from evenstage.flow.sizing import resize
 from evenstage.netlist.rewriting.output import check_place
-from evenstage.report.page.origin import Origin
+from evenstage.report.document.convert import Result
+from evenstage.report.origin import Origin
 from evenstage.report.published import schema_text
-from evenstage.report.results import Result, json, notices, text
+from evenstage.report.results import json, notices, text
 from evenstage.simulation.results import Simulation
 from evenstage.sizing.results import Sizing
 from evenstage.sizing.wishes import Wishes
@@ -45,6 +47,7 @@ __all__ = [
     "notices",
     "origin",
     "recognise",
+    "report",
     "resize",
     "schema_text",
     "simulate",

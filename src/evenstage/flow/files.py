@@ -8,15 +8,20 @@ from typing import TYPE_CHECKING
 from evenstage.circuit.inventory import Inventory
 from evenstage.errors import OutputError
 from evenstage.fitting.deck import Deck
+from evenstage.fitting.results import Fit
 from evenstage.netlist.rewriting.output import write_files
+from evenstage.report.origin import FileDigest, Origin
 from evenstage.report.page import render
-from evenstage.report.page.origin import FileDigest, Origin
+from evenstage.simulation.results import Simulation
+from evenstage.sizing.results import Sizing
+from evenstage.timing.corners import Corners, CornersDifference
+from evenstage.timing.results import Analysis, Difference
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
     from pathlib import Path
 
-    from evenstage.report.results import Result
+    from evenstage.report.document.convert import Result
 
 
 def write_text(path: Path, content: str, *, force: bool) -> None:
@@ -45,10 +50,8 @@ def refuse_existing(output: Path | None, *, force: bool) -> None:
         )
 
 
-def origin(
-    version: str, arguments: Sequence[str], files: Iterable[Path], delay: float | None = None
-) -> Origin:
-    """Return where a result comes from, with the digests of the files that are there.
+def origin(version: str, arguments: Sequence[str], files: Iterable[Path], result: Result) -> Origin:
+    """Return where a result comes from, with the digests of all files that are there.
 
     Parameters
     ----------
@@ -56,17 +59,35 @@ def origin(
     arguments : sequence of str
         Of the command line.
     files : iterable of Path
-        Read or written.
-    delay : float, optional
-        s, asked for.
+        Named there, read or written.
+    result : Result
+        Names the files that netlists include, and the process.
     """
-    named = dict.fromkeys(files)
+    blocks = [analysis.timing.circuit for analysis in _analyses(result) if analysis.timing]
+    process = result.process if isinstance(result, Fit) else blocks[-1].process if blocks else None
+    known = {path.resolve(): (str(path), path.read_bytes()) for path in files if path.is_file()}
+    for circuit in blocks:
+        for source in circuit.devices.netlist.sources:
+            known.setdefault(source.path, (source.label, source.data))
     digests = tuple(
-        FileDigest(str(path), hashlib.sha256(path.read_bytes()).hexdigest())
-        for path in named
-        if path.is_file()
+        FileDigest(label, hashlib.sha256(data).hexdigest()) for label, data in known.values()
     )
-    return Origin(version, tuple(arguments), digests, delay)
+    return Origin(version, tuple(arguments), digests, process)
+
+
+def _analyses(result: Result) -> tuple[Analysis, ...]:
+    """Return the analyses that a result holds, the one that its page is about last."""
+    if isinstance(result, Analysis):
+        return (result,)
+    if isinstance(result, Corners):
+        return (*result.analyses, result.worst)
+    if isinstance(result, Sizing | Difference):
+        return (result.before, result.after)
+    if isinstance(result, CornersDifference):
+        return (*result.before.analyses, result.after.worst)
+    if isinstance(result, Simulation):
+        return tuple(block.analysis for block in (result.before, result.after) if block)
+    return ()
 
 
 def html(result: Result, origin: Origin) -> str:

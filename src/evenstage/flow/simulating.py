@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 from evenstage.flow.files import write_text
 from evenstage.flow.loading import Question, load, one_process
-from evenstage.report.simulation_document import waveform_table
+from evenstage.report.document.simulation import waveform_table
 from evenstage.simulation.simulate import simulate as run_simulation
 
 if TYPE_CHECKING:

@@ -64,7 +64,7 @@ def resize(
     else:
         sizing = find_widths(block.analysis, block.brief, wishes, original)
     told = false_path_notices(block.analysis)
-    sizing = replace(sizing, notices=(*sizing.notices, *told))
+    sizing = replace(sizing, notices=(*sizing.notices, *told), asked_delay=wishes.delay)
     if curve:
         curved = trade_off(block.analysis, block.brief, wishes, original)
         sizing = replace(sizing, trade_off=curved)

@@ -1,4 +1,4 @@
-"""Delay against the number of changed cards, as text and for scripts."""
+"""Delay against the number of changed cards."""
 
 from __future__ import annotations
 
@@ -8,7 +8,6 @@ from evenstage.report.scale import Scale, percent, plain
 from evenstage.report.table import Column, lay_out
 
 if TYPE_CHECKING:
-    from evenstage.report.circuit_document import Document
     from evenstage.report.paper import Paper
     from evenstage.sizing.results import FewChanges, FewChangesPoint
 
@@ -22,18 +21,6 @@ _COLUMNS: Final = (
     Column("of all gain", align="right"),
     Column("", kind="chart", least=12, most=40),
 )
-
-
-def few_changes_body(few: FewChanges) -> Document:
-    """Return delay against the number of changes as plain values."""
-    return {
-        "asked": few.asked,
-        "today": {"charged_delay_s": few.today_charged_delay},
-        "bound_s": few.bound,
-        "points": [
-            {"cards": point.cards, "charged_delay_s": point.charged_delay} for point in few.points
-        ],
-    }
 
 
 def few_changes_section(paper: Paper, few: FewChanges) -> tuple[str, list[str]]:

@@ -1,4 +1,4 @@
-"""What limits would buy if they left more room, as text and for scripts."""
+"""What limits would buy if they left more room."""
 
 from __future__ import annotations
 
@@ -8,9 +8,8 @@ from evenstage.report.scale import Scale
 from evenstage.report.words import listed
 
 if TYPE_CHECKING:
-    from evenstage.report.circuit_document import Document
     from evenstage.report.paper import Paper
-    from evenstage.sizing.results import LimitPrice, PricedLimit, Sizing
+    from evenstage.sizing.results import PricedLimit, Sizing
 
 _UNIT: Final = {"delay": "s", "width": "m", "energy": "F"}
 _WORDS: Final[dict[PricedLimit, str]] = {
@@ -24,18 +23,6 @@ _WORDS: Final[dict[PricedLimit, str]] = {
 #: Lines, and names on one of them.
 _LINES: Final = 6
 _NAMES: Final = 3
-
-
-def price_document(price: LimitPrice, bound_on: str) -> Document:
-    """Return a price as plain values; of the units two are null."""
-    return {
-        "limit": price.limit,
-        "name": price.name,
-        **{
-            f"buys_{unit.lower()}": price.buys if on == bound_on else None
-            for on, unit in _UNIT.items()
-        },
-    }
 
 
 def price_lines(paper: Paper, sizing: Sizing) -> list[str]:

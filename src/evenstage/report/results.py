@@ -2,22 +2,12 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any, Final
+from typing import TYPE_CHECKING, Final
 
 from evenstage.circuit.inventory import Inventory
 from evenstage.fitting.deck import Deck
 from evenstage.fitting.results import Fit
-from evenstage.report.corners_document import corners_difference_document, corners_document
-from evenstage.report.machine import (
-    analysis_document,
-    deck_document,
-    difference_document,
-    fit_document,
-    inventory_document,
-    simulation_document,
-    sizing_document,
-    to_json,
-)
+from evenstage.report.document.convert import Result, document, to_json
 from evenstage.report.terminal import (
     analysis_report,
     corners_difference_report,
@@ -38,19 +28,7 @@ if TYPE_CHECKING:
     from collections.abc import Callable
 
     from evenstage.errors import Notice
-    from evenstage.report.circuit_document import Document
-
-Result = (
-    Analysis
-    | Corners
-    | Sizing
-    | Difference
-    | CornersDifference
-    | Inventory
-    | Simulation
-    | Fit
-    | Deck
-)
+    from evenstage.report.origin import Origin
 
 # Each takes the result it stands beside.
 _REPORTS: Final[dict[type, Callable[..., str]]] = {
@@ -64,17 +42,6 @@ _REPORTS: Final[dict[type, Callable[..., str]]] = {
     Fit: fit_report,
     Deck: deck_report,
 }
-_DOCUMENTS: Final[dict[type, Callable[[Any], Document]]] = {
-    Analysis: analysis_document,
-    Corners: corners_document,
-    Sizing: sizing_document,
-    Difference: difference_document,
-    CornersDifference: corners_difference_document,
-    Inventory: inventory_document,
-    Simulation: simulation_document,
-    Fit: fit_document,
-    Deck: deck_document,
-}
 
 
 def text(
@@ -85,9 +52,9 @@ def text(
     return report(result, width=width, unicode=unicode, notices=with_notices)
 
 
-def json(result: Result) -> str:
-    """Return a result as JSON text."""
-    return to_json(_DOCUMENTS[type(result)](result))
+def json(result: Result, origin: Origin | None = None) -> str:
+    """Return a result as JSON text, with where it comes from."""
+    return to_json(document(result, origin))
 
 
 def notices(result: Result) -> tuple[Notice, ...]:

@@ -1,4 +1,4 @@
-"""Spend against delay, as text and for scripts."""
+"""Spend against delay."""
 
 from __future__ import annotations
 
@@ -8,46 +8,14 @@ from evenstage.report.scale import Scale, percent, plain
 from evenstage.report.table import Column, first_that_fits
 
 if TYPE_CHECKING:
-    from evenstage.report.circuit_document import Document
     from evenstage.report.paper import Paper
-    from evenstage.sizing.results import TradeOff, TradeOffPoint
+    from evenstage.sizing.results import TradeOff
 
 _UNIT: Final = {"width": "m", "energy": "F"}
 _SPENT: Final = {"width": "total width", "energy": "switched cap."}
 
 #: Cells of the longest bar, of a narrow paper and at most.
 _BAR: Final = (12, 40)
-
-
-def trade_off_body(curve: TradeOff) -> Document:
-    """Return a trade-off as plain values; of ``spend_m`` and ``spend_f`` one is null."""
-    return {
-        "spend": curve.spend,
-        "today": {
-            "charged_delay_s": curve.today_charged_delay,
-            **_spend(curve, "spend", curve.today_spend),
-        },
-        "knee": curve.knee,
-        "points": [_point(curve, point) for point in curve.points],
-    }
-
-
-def _point(curve: TradeOff, point: TradeOffPoint) -> Document:
-    return {
-        "charged_delay_s": point.charged_delay,
-        "delay_s": point.delay,
-        **_spend(curve, "spend", point.spend),
-        **_spend(curve, "bound", point.bound),
-        "gap": point.gap,
-        "one_percent_buys_s": point.one_percent_buys,
-    }
-
-
-def _spend(curve: TradeOff, name: str, value: float) -> Document:
-    return {
-        f"{name}_m": value if curve.spend == "width" else None,
-        f"{name}_f": value if curve.spend == "energy" else None,
-    }
 
 
 def trade_off_section(paper: Paper, curve: TradeOff) -> tuple[str, list[str]]:

@@ -5,6 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Final, Literal
 
+import numpy as np
+
 from evenstage.tabular import Row, Tabular, row
 from evenstage.units import engineering
 
@@ -52,6 +54,21 @@ class Traces:
     nets: tuple[str, ...]
     time: FloatArray
     voltage: FloatArray
+
+    def thinned(self, most: int = 400) -> Traces:
+        """Return at most so many times, those between which the voltages move most.
+
+        The first and the last time stay; what is thin enough stays as it is.
+        """
+        if len(self.time) <= most:
+            return self
+        span = (self.time[-1] - self.time[0]) or 1.0
+        swing = float(np.ptp(self.voltage)) or 1.0
+        moves = np.abs(np.diff(self.voltage, axis=1)).max(axis=0) / swing
+        along = np.concatenate([[0.0], np.cumsum(np.diff(self.time) / span + moves)])
+        wanted = np.linspace(0.0, along[-1], most)
+        kept = np.unique(np.minimum(np.searchsorted(along, wanted), len(along) - 1))
+        return Traces(self.nets, self.time[kept], self.voltage[:, kept])
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

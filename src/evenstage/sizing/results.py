@@ -222,6 +222,8 @@ class Sizing(Tabular):
     few : FewChanges, optional
         Delay against the number of changes, where that was limited; ``bound`` is then that of the
         cards chosen.
+    asked_delay : float, optional
+        s, where the least width or energy for a delay was wanted.
     sharing_loss : float
         The part of the gap that is there because copies of a leaf share sizes; the bound is that of
         sizes of their own.
@@ -250,6 +252,7 @@ class Sizing(Tabular):
     few: FewChanges | None = None
     prices: tuple[LimitPrice, ...] = ()
     sharing_loss: float = 0.0
+    asked_delay: float | None = None
 
     @property
     def headline(self) -> str:

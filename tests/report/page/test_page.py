@@ -11,9 +11,9 @@ import pytest
 
 from evenstage.cli import main
 from evenstage.report.block_text import CAUTION
+from evenstage.report.origin import FileDigest, Origin
 from evenstage.report.page.axis import Axis
 from evenstage.report.page.element import element
-from evenstage.report.page.origin import FileDigest, Origin
 from evenstage.report.page.render import html
 from evenstage.report.page.symbols import symbol_of
 

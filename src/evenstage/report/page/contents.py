@@ -11,7 +11,7 @@ from evenstage.report.families import gathered
 from evenstage.report.fit_text import fit_answer
 from evenstage.report.page.changes import change_table, difference_table
 from evenstage.report.page.ends import end_parts
-from evenstage.report.page.origin import origin_parts
+from evenstage.report.page.origin_parts import origin_parts
 from evenstage.report.page.parts import (
     Heading,
     KeyFigure,
@@ -50,7 +50,7 @@ if TYPE_CHECKING:
 
     from evenstage.errors import Notice
     from evenstage.fitting.results import Fit
-    from evenstage.report.page.origin import Origin
+    from evenstage.report.origin import Origin
     from evenstage.report.page.parts import Part
     from evenstage.simulation.results import Simulation
     from evenstage.sizing.results import Sizing
@@ -130,7 +130,7 @@ def sizing_page(sizing: Sizing, origin: Origin) -> Page:
         *_path_sections(old, after.paths[0], after, holds),
         Section("trade", "What speed costs", _trade(sizing)),
         Section("changes", "Changes", (table,) if table else ()),
-        Section("ends", "Path ends", end_parts(both, origin.delay)),
+        Section("ends", "Path ends", end_parts(both, sizing.asked_delay)),
         Section("block", "The block", (_totals(before, after),)),
         _origin_section(origin, after),
     ]
@@ -213,7 +213,7 @@ def fit_page(fit: Fit, origin: Origin) -> Page:
     sections = [
         Section("residuals", "Predicted against measured", residual_parts(fit)),
         Section("constants", "Constants", constant_parts(fit)),
-        Section("origin", "How to make this page again", origin_parts(origin, fit.process, None)),
+        Section("origin", "How to make this page again", origin_parts(origin, None)),
     ]
     return Page(
         subject=f"{fit.source}, cells of {fit.cells}",
@@ -381,7 +381,5 @@ def _told(notice: Notice) -> str:
 
 
 def _origin_section(origin: Origin, analysis: Analysis) -> Section:
-    timing = analysis.timing
-    process = None if timing is None else timing.circuit.process
-    parts = origin_parts(origin, process, analysis.yardstick)
+    parts = origin_parts(origin, analysis.yardstick)
     return Section("origin", "How to make this page again", parts)

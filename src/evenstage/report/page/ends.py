@@ -40,7 +40,7 @@ def end_parts(
     analyses : sequence of (str, Analysis)
         Each with its name: nothing, or before and after.
     goal : float, optional
-        s, asked for on the command line.
+        s, asked for.
     """
     analyses = [(name, analysis) for name, analysis in analyses if analysis.ends]
     ends = [end for _, analysis in analyses for end in analysis.ends]

@@ -29,10 +29,9 @@ if TYPE_CHECKING:
 
     from jinja2 import Template
 
-    from evenstage.report.page.origin import Origin
+    from evenstage.report.document.convert import Reviewable
+    from evenstage.report.origin import Origin
     from evenstage.report.page.parts import Page
-
-Reviewable = Analysis | Corners | Sizing | Difference | CornersDifference | Simulation | Fit
 
 _UNIT: Final = re.compile(r"(?<=\d) (?=%|[afpnumkMG]?[sFmV]\b)")
 

@@ -31,7 +31,7 @@ _PAPER: Final = Paper(unicode=True)
 
 def waveform_parts(path: SimulatedPath, when: str = "") -> tuple[Part, ...]:
     """Return the voltages of one path, and its stages estimated and simulated."""
-    return _figure(path.traces, when), _stage_table(path, when)
+    return _figure(path.traces.thinned(), when), _stage_table(path, when)
 
 
 def _figure(traces: Traces, when: str) -> Figure:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import shlex
-from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final
 
 from evenstage.report.page.parts import Cell, Heading, Paragraph, Table, cells
@@ -12,6 +11,7 @@ from evenstage.units import engineering
 
 if TYPE_CHECKING:
     from evenstage.process.process import Process
+    from evenstage.report.origin import Origin
     from evenstage.report.page.parts import Part
     from evenstage.timing.results import Yardstick
 
@@ -19,38 +19,7 @@ if TYPE_CHECKING:
 _FILES: Final = 60
 
 
-@dataclass(frozen=True, slots=True)
-class FileDigest:
-    """A file that was read or written, as the user named it, and its SHA-256 in hexadecimal."""
-
-    name: str
-    sha256: str
-
-
-@dataclass(frozen=True, slots=True)
-class Origin:
-    """Where a result comes from.
-
-    Parameters
-    ----------
-    version : str
-        Of the program.
-    arguments : tuple of str
-        Of the command line, without the program's name.
-    files : tuple of FileDigest
-    delay : float, optional
-        s, asked for on the command line.
-    """
-
-    version: str
-    arguments: tuple[str, ...]
-    files: tuple[FileDigest, ...]
-    delay: float | None = None
-
-
-def origin_parts(
-    origin: Origin, process: Process | None, yardstick: Yardstick | None
-) -> tuple[Part, ...]:
+def origin_parts(origin: Origin, yardstick: Yardstick | None) -> tuple[Part, ...]:
     """Return version, command line, digests and process constants."""
     parts: list[Part] = [
         Paragraph(f"evenstage {origin.version}", "Program"),
@@ -65,8 +34,8 @@ def origin_parts(
         parts.append(Paragraph(told, "Yardstick"))
     if origin.files:
         parts.append(_files(origin))
-    if process is not None:
-        parts.append(_constants(process))
+    if origin.process is not None:
+        parts.append(_constants(origin.process))
     return tuple(parts)
 
 

@@ -2,21 +2,17 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, TypeAlias
+from typing import TYPE_CHECKING
+
+from evenstage.report.document.timing import NOTICES
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
-
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.inventory import Entry, Inventory
-
-JsonValue: TypeAlias = (
-    "bool | int | float | str | Sequence[JsonValue] | Mapping[str, JsonValue] | None"
-)
-Document: TypeAlias = dict[str, JsonValue]
+    from evenstage.report.document.shape import Document
 
 
-def inventory_body(inventory: Inventory) -> Document:
+def write_inventory(inventory: Inventory) -> Document:
     """Return what is in a block as plain values, every gate by name."""
     return {
         "source": inventory.source,
@@ -60,6 +56,7 @@ def inventory_body(inventory: Inventory) -> Document:
             }
             for some in inventory.not_understood
         ],
+        "notices": NOTICES.write(inventory.notices),
     }
 
 

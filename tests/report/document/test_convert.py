@@ -8,16 +8,16 @@ from typing import TYPE_CHECKING, Any, Literal
 
 import pytest
 
-from evenstage.report.machine import (
-    analysis_document,
-    difference_document,
-    sizing_document,
+from evenstage.report.document.convert import (
+    document as document_of,
+)
+from evenstage.report.document.convert import (
     to_json,
 )
 from evenstage.timing.results import Analysis, Path, Stage
 
 if TYPE_CHECKING:
-    from evenstage.report.circuit_document import Document
+    from evenstage.report.document.shape import Document
     from evenstage.sizing.results import Sizing
     from evenstage.timing.results import Difference
 
@@ -43,7 +43,7 @@ def read_back(document: Document) -> Any:  # noqa: ANN401 - JSON read back is an
 
 class TestAnalysisDocument:
     def test_promised_keys_exist(self, analysis: Analysis) -> None:
-        document = read_back(analysis_document(analysis))
+        document = read_back(document_of(analysis))
         head = [document[key] for key in ("program", "format", "kind")]
         assert head == ["evenstage", 1, "analysis"]
         assert {"name", "tau_s", "p_inv", "fo4_s"} <= document["process"].keys()
@@ -54,7 +54,7 @@ class TestAnalysisDocument:
         assert stage["side_branches"] == [{"instance": "xpre1.xnand", "pin": "b", "cap_f": 2.5e-15}]
 
     def test_numbers_survive_to_the_last_bit(self, analysis: Analysis) -> None:
-        document = read_back(analysis_document(analysis))
+        document = read_back(document_of(analysis))
         path, told = analysis.paths[0], document["paths"][0]
         assert told["delay_s"] == path.delay
         assert told["path_effort"] == path.path_effort
@@ -66,24 +66,24 @@ class TestAnalysisDocument:
     def test_nothing_is_left_out(
         self, analysis: Analysis, kind: type[Path | Analysis], key: str | None
     ) -> None:
-        document = read_back(analysis_document(analysis))
+        document = read_back(document_of(analysis))
         told = document if key is None else document[key][0]
-        extra = {None: 3, "paths": 0}[key]
+        extra = {None: 4, "paths": 0}[key]
         values = [field for field in fields(kind) if field.compare]
         assert len(told) == len(values) + extra
 
     def test_every_value_of_a_stage_is_told(self, analysis: Analysis) -> None:
-        stage = read_back(analysis_document(analysis))["paths"][0]["stages"][0]
+        stage = read_back(document_of(analysis))["paths"][0]["stages"][0]
         assert len(stage) == len(fields(Stage))
 
     def test_required_time_may_be_missing(self, analysis: Analysis) -> None:
-        document = read_back(analysis_document(analysis))
+        document = read_back(document_of(analysis))
         assert [end["required_s"] for end in document["ends"][1:3]] == [None, 250e-12]
 
 
 class TestSizingDocument:
     def test_promised_keys_exist(self, sizing: Sizing) -> None:
-        document = read_back(sizing_document(sizing))
+        document = read_back(document_of(sizing))
         assert document["kind"] == "sizing"
         assert document["bound_s"] == sizing.bound
         assert document["gap"] == sizing.gap
@@ -99,7 +99,7 @@ class TestSizingDocument:
     def test_bound_has_its_unit_in_the_key(
         self, sizing: Sizing, bound_on: Literal["delay", "width", "energy"], key: str
     ) -> None:
-        document = sizing_document(replace(sizing, bound_on=bound_on, bound=0.5))
+        document = document_of(replace(sizing, bound_on=bound_on, bound=0.5))
         given = {name: document[name] for name in ("bound_s", "bound_m", "bound_f")}
         assert {name for name, value in given.items() if value is not None} == {key}
         assert given[key] == 0.5
@@ -107,14 +107,14 @@ class TestSizingDocument:
 
 class TestDifferenceDocument:
     def test_card_of_one_netlist_has_no_factor(self, difference: Difference) -> None:
-        document = read_back(difference_document(difference))
+        document = read_back(document_of(difference))
         assert document["kind"] == "difference"
         both, only = document["widths"][0], document["widths"][-1]
         assert (both["before_m"], both["after_m"], both["factor"]) == (1.2e-6, 2.4e-6, 2.0)
         assert (only["before_m"], only["after_m"], only["factor"]) == (None, 0.8e-6, None)
 
     def test_path_that_no_longer_exists_is_null(self, difference: Difference) -> None:
-        document = read_back(difference_document(replace(difference, same_path_after=None)))
+        document = read_back(document_of(replace(difference, same_path_after=None)))
         assert document["same_path_after"] is None
         assert document["same_path_before"]["from"] == "a2"
 
@@ -123,14 +123,14 @@ class TestToJson:
     @pytest.mark.parametrize("bad", [float("nan"), float("inf"), -float("inf")])
     def test_no_number_without_value_ever_leaves(self, analysis: Analysis, bad: float) -> None:
         with pytest.raises(ValueError, match="JSON"):
-            to_json(analysis_document(replace(analysis, total_width=bad)))
+            to_json(document_of(replace(analysis, total_width=bad)))
 
     def test_odd_bytes_of_a_name_survive_as_ascii(self, analysis: Analysis) -> None:
         name = b"top\xff\xc3\xa9".decode("utf-8", "surrogateescape")
-        text = to_json(analysis_document(replace(analysis, top=name)))
+        text = to_json(document_of(replace(analysis, top=name)))
         assert text.isascii()
         assert json.loads(text)["top"] == name
 
     def test_same_result_gives_same_text(self, sizing: Sizing) -> None:
-        assert to_json(sizing_document(sizing)) == to_json(sizing_document(replace(sizing)))
-        assert to_json(sizing_document(sizing)).endswith("\n}\n")
+        assert to_json(document_of(sizing)) == to_json(document_of(replace(sizing)))
+        assert to_json(document_of(sizing)).endswith("\n}\n")

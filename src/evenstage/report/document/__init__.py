@@ -1,0 +1,1 @@
+"""Results as JSON documents, written and read: SI units, the unit in the key."""
