@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from dataclasses import replace
 from pathlib import Path
 from typing import Final
 from xml.etree import ElementTree as ET
@@ -44,6 +45,10 @@ def analysis() -> flow.Analysis:
 def results(analysis: flow.Analysis, tmp_path_factory: pytest.TempPathFactory) -> list[flow.Result]:
     cells = tmp_path_factory.mktemp("cells") / "cells.sp"
     cells.write_text(CELL)
+    slow = cells.with_name("slow.toml")
+    process = (SAMPLE / "process.toml").read_text("utf-8")
+    slow.write_text(process.replace('name = "', 'name = "slow ', 1), "utf-8")
+    corners = replace(ASKED, corners=(slow,))
     return [
         analysis,
         flow.resize(NETLIST, ASKED),
@@ -51,13 +56,15 @@ def results(analysis: flow.Analysis, tmp_path_factory: pytest.TempPathFactory) -
         flow.recognise(NETLIST, ASKED),
         flow.simulate(NETLIST, flow.Question(process=ASKED.process, brief=ASKED.brief)),
         flow.fit_simulated(cells, flow.Question()),
+        flow.analyse(NETLIST, corners),
+        flow.diff(NETLIST, NETLIST, corners),
     ]
 
 
 class TestTables:
     def test_rows_of_a_table_have_the_same_plain_columns(self, results: list[flow.Result]) -> None:
         for result in results:
-            assert not isinstance(result, flow.Deck | flow.Corners | flow.CornersDifference)
+            assert not isinstance(result, flow.Deck)
             for rows in result.tables().values():
                 assert len({tuple(row) for row in rows}) <= 1
                 assert json.loads(json.dumps(rows)) == rows
@@ -82,6 +89,12 @@ class TestTables:
             )
         assert [row["hold"] for row in tables["stages_after"]] == [h.hold for h in sizing.holds]
 
+    def test_corners_tell_each_corner_s_arrival(self, results: list[flow.Result]) -> None:
+        corners = results[-2]
+        assert isinstance(corners, flow.Corners)
+        last = corners.tables()["ends"][0]
+        assert [last[f"{name} arrival"] for name in corners.names] == list(corners.ends[0].delays)
+
 
 class TestGraph:
     def test_longest_way_is_the_slowest_path(self, analysis: flow.Analysis) -> None:
@@ -104,7 +117,7 @@ class TestGraph:
 class TestNotebook:
     def test_every_result_shows_its_headline_and_tables(self, results: list[flow.Result]) -> None:
         for result in results:
-            assert not isinstance(result, flow.Deck | flow.Corners | flow.CornersDifference)
+            assert not isinstance(result, flow.Deck)
             shown = result._repr_html_()
             tree = ET.fromstring(shown)  # well-formed
             assert tree.findtext("p/strong") == result.headline

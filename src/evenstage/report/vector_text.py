@@ -19,11 +19,14 @@ _SHOWN: Final = 5
 
 def vector_lines(paper: Paper, path: Path) -> list[str]:
     """Return the vector of a path as lines; none where nobody looked for it."""
-    return labelled(paper, "vector", _words(path)) if path.vector is not None else []
+    words = vector_words(path)
+    return labelled(paper, "vector", words) if words else []
 
 
-def _words(path: Path) -> str:
-    assert path.vector is not None
+def vector_words(path: Path) -> str:
+    """Return the vector of a path in words; empty where nobody looked for it."""
+    if path.vector is None:
+        return ""
     edge = f"{path.start} {'0 to 1' if path.start_edge == 'rise' else '1 to 0'}"
     if path.vector.verdict == "switches":
         held = ", ".join(f"{name} = {int(level)}" for name, level in path.vector.held)

@@ -11,6 +11,8 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from evenstage.errors import SettingsError
+from evenstage.tabular import Row, Tabular, row
+from evenstage.units import engineering
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
@@ -39,7 +41,7 @@ class CornerEnd:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Corners:
+class Corners(Tabular):
     """A block in several processes.
 
     Parameters
@@ -75,9 +77,31 @@ class Corners:
         """What was assumed in any corner, each once."""
         return tuple(dict.fromkeys(n for one in self.analyses for n in one.notices))
 
+    @property
+    def headline(self) -> str:
+        """The slowest path over all corners, in one line."""
+        return f"{self.worst.headline} in {self.worst.yardstick.process}"
+
+    def tables(self) -> dict[str, list[Row]]:
+        """Return the slowest paths, and each path end with its arrival in every corner; SI units.
+
+        Paths are numbered from 1.
+        """
+        return {
+            "paths": [row(path, path=number) for number, path in enumerate(self.paths, 1)],
+            "ends": [
+                row(one.end, corner=one.corner)
+                | {
+                    f"{name} arrival": delay
+                    for name, delay in zip(self.names, one.delays, strict=True)
+                }
+                for one in self.ends
+            ],
+        }
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class CornersDifference:
+class CornersDifference(Tabular):
     """Two netlists of one design side by side in several processes.
 
     Parameters
@@ -95,6 +119,24 @@ class CornersDifference:
     def worst(self) -> Difference:
         """The difference in the corner that limits the second netlist."""
         return self.differences[self.after.names.index(self.after.worst.yardstick.process)]
+
+    @property
+    def headline(self) -> str:
+        """Both slowest paths over all corners, in one line."""
+        old, new = self.before.paths[0].delay, self.after.paths[0].delay
+        return f"{engineering(old, 's')} before, {engineering(new, 's')} after, over all corners"
+
+    def tables(self) -> dict[str, list[Row]]:
+        """Return the widths that differ, and the worst delay of each corner; SI units."""
+        corners: list[Row] = [
+            {
+                "corner": one.before.yardstick.process,
+                "delay_before": max((end.delay for end in one.before.ends), default=None),
+                "delay_after": max((end.delay for end in one.after.ends), default=None),
+            }
+            for one in self.differences
+        ]
+        return {"widths": self.worst.tables()["widths"], "corners": corners}
 
 
 def merged(analyses: Sequence[Analysis]) -> Corners:

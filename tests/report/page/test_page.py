@@ -16,6 +16,7 @@ from evenstage.report.page.axis import Axis
 from evenstage.report.page.element import element
 from evenstage.report.page.render import html
 from evenstage.report.page.symbols import symbol_of
+from evenstage.report.vector_text import vector_words
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -71,6 +72,12 @@ class TestPages:
         read(page)
         assert "The slowest path" in page
         assert CAUTION.split(":", maxsplit=1)[0] in page
+
+    def test_analysis_tells_vectors_and_false_paths(self, analysis: Analysis) -> None:
+        page = html(analysis, ORIGIN)
+        assert vector_words(analysis.paths[0]).split(",")[0] in page
+        assert 'id="false"' in page
+        assert 'id="false"' not in html(replace(analysis, false_paths=()), ORIGIN)
 
     def test_sizing_shows_changes_and_bound(self, sizing: Sizing) -> None:
         page = html(sizing, ORIGIN)

@@ -33,6 +33,7 @@ from evenstage.report.quality_text import quality_parts
 from evenstage.report.scale import Scale, figure, percent, plain
 from evenstage.report.simulation_text import BY_CONSTRUCTION, simulation_answer
 from evenstage.report.sizing_text import HOLDS, sizing_answer
+from evenstage.report.vector_text import vector_words
 from evenstage.report.words import (
     block_name,
     counted,
@@ -69,6 +70,7 @@ def analysis_page(analysis: Analysis, origin: Origin) -> Page:
     sections = [
         *(_path_sections(None, path, analysis) if path else ()),
         Section("others", "Other paths", _path_list(analysis.paths[1:], analysis)),
+        Section("false", "False paths", _false_paths(analysis)),
         Section("ends", "Path ends", end_parts([("", analysis)])),
         _origin_section(origin, analysis),
     ]
@@ -248,7 +250,9 @@ def _path_sections(
     else:
         lead = f"Before: {route(before)}. After: {route(after)}."
         title = f"{name} before, and the one after"
-    drawn = (drawing,) if drawing else ()
+    words = vector_words(after)
+    told = (Paragraph(f"{words}.", "Input vector"),) if words else ()
+    drawn = (*told, drawing) if drawing else told
     if before is None:
         lead = f"{route(after)}."
     return [
@@ -303,8 +307,11 @@ def _totals(before: Analysis, after: Analysis) -> Table:
 
 
 def _path_list(paths: Sequence[Path], analysis: Analysis) -> tuple[Part, ...]:
-    if not paths:
-        return ()
+    return (_path_table("The next slowest paths", paths, analysis, 2),) if paths else ()
+
+
+def _path_table(title: str, paths: Sequence[Path], analysis: Analysis, first: int) -> Table:
+    """Return paths, numbered from some number on, with how long they take."""
     scale = Scale.of((path.delay for path in paths), "s")
     rows = tuple(
         cells(
@@ -313,7 +320,7 @@ def _path_list(paths: Sequence[Path], analysis: Analysis) -> tuple[Part, ...]:
             plain(duration(path) / analysis.yardstick.fo4, 1),
             str(len(path.stages)),
         )
-        for number, path in enumerate(paths[:_PATHS_SHOWN], 2)
+        for number, path in enumerate(paths[:_PATHS_SHOWN], first)
     )
     headings = (
         Heading("path"),
@@ -321,7 +328,14 @@ def _path_list(paths: Sequence[Path], analysis: Analysis) -> tuple[Part, ...]:
     )
     left = len(paths) - len(rows)
     remark = f"{left} more are in the JSON." if left else ""
-    return (Table("The next slowest paths", headings, rows, remark=remark, sortable=True),)
+    return Table(title, headings, rows, remark=remark, sortable=True)
+
+
+def _false_paths(analysis: Analysis) -> tuple[Part, ...]:
+    if not analysis.false_paths:
+        return ()
+    told = "Passed over, since no input vector lets them switch."
+    return (Paragraph(told), _path_table("Slower, but false", analysis.false_paths, analysis, 1))
 
 
 def _latest(analysis: Analysis) -> float:
