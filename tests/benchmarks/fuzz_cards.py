@@ -6,7 +6,7 @@ Run by hand::
 
 The suite reads 20,000 of them (``tests/netlist/reading/test_shapes.py``). A quarter of the cases
 are of three cards, the others of one; half are read in blocks so small that their edges fall
-everywhere. Differences are printed.
+everywhere, and numbers are taken from each of them at once. Differences are printed.
 """
 
 from __future__ import annotations
@@ -16,7 +16,7 @@ import random
 import sys
 from collections import Counter
 
-from evenstage.netlist.reading import blocks
+from evenstage.netlist.reading import blocks, cards, stored
 from evenstage.netlist.reading import reader as reader_module
 from support.random_cards import edited_card, few_cards, random_bracket, random_card, tame_card
 from support.two_readings import compare, compare_brackets
@@ -30,11 +30,14 @@ def run(cases: int, seed: int) -> int:
     """Compare some cases; return how many are read in two ways."""
     pick = random.Random(seed)
     setattr(reader_module, "_LEARNED_AT", 1)  # noqa: B010 - a constant to all others
-    large = blocks._SIZE
+    usual = blocks._SIZE, cards._LOT, stored._MANY
     counts: Counter[str] = Counter()
     lot = 0
     while lot * LOT < cases:
-        setattr(blocks, "_SIZE", SMALL if lot % 2 else large)  # noqa: B010 - likewise
+        size, least, many = (SMALL, 1, 1) if lot % 2 else usual
+        setattr(blocks, "_SIZE", size)  # noqa: B010 - likewise
+        setattr(cards, "_LOT", least)  # noqa: B010 - likewise
+        setattr(stored, "_MANY", many)  # noqa: B010 - likewise
         make = MAKERS[lot // 2 % len(MAKERS)]
         for kind, tally in (
             (make.__name__, compare([make(pick) for _ in range(LOT)])),

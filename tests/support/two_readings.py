@@ -27,6 +27,7 @@ from evenstage.netlist.reading.cards import CardTable
 from evenstage.netlist.reading.reader import Reader, Unit
 from evenstage.netlist.reading.statement import statement_of
 from evenstage.source import SourceText
+from support.columns_said import both_said
 from support.random_cards import LESSON
 
 if TYPE_CHECKING:
@@ -107,10 +108,13 @@ def by_program(texts: Sequence[bytes]) -> list[list[Said]] | None:
     netlist = reader.finish()
     starts = list(accumulate(map(len, texts), initial=len(LESSON)))
     said: list[list[Said]] = [[] for _ in texts]
+    by_columns, by_cards = both_said(netlist)
     for number in range(LESSON.count(b"\n") - 1, len(netlist)):
         card = netlist.card(number)
         case = bisect_right(starts, card.span.start) - 1
-        said[case].append(_said(card, starts[case]))
+        # What differs between its columns and itself makes a card unlike any other.
+        apart = () if by_columns[number] == by_cards[number] else (by_columns[number],)
+        said[case].append((*_said(card, starts[case]), *apart))
     return said
 
 

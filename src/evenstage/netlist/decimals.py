@@ -19,12 +19,22 @@ if TYPE_CHECKING:
 #: A number without sign and exponent, with one of the common scale factors or none.
 PLAIN: Final = rb"(?:[0-9]++(?:\.[0-9]++)?+|\.[0-9]++)[fpnuk]?+"
 
-_ZERO, _POINT = b"0."
+_ZERO: Final = np.uint8(ord("0"))
+#: A point, as far from the zero as bytes go round.
+_POINT: Final = np.uint8((ord(".") - ord("0")) % 256)
 _DIGITS: Final = 15
-_TENS: Final = np.array([float(f"1e{power}") for power in range(23)])
-_WEIGHTS: Final = 10 ** np.arange(_DIGITS, dtype=np.int64)
+_EXACT: Final = 22
+#: What a number of some power of ten is multiplied with and divided by; negative powers count from
+#: the end.
+_UP: Final = np.array(
+    [float(f"1e{min(power, _EXACT)}") for power in range(_EXACT + 1)] + [1.0] * _EXACT
+)
+_DOWN: Final = np.array(
+    [1.0] * (_EXACT + 1) + [float(f"1e{power}") for power in range(_EXACT, 0, -1)]
+)
+#: By a letter's distance from the zero.
 _POWERS: Final = np.zeros(256, np.int64)
-_POWERS[list(b"fpnuk")] = (-15, -12, -9, -6, 3)
+_POWERS[np.frombuffer(b"fpnuk", np.uint8) - _ZERO] = (-15, -12, -9, -6, 3)
 
 
 def decimals(text: bytes) -> tuple[FloatArray, NDArray[np.bool_]] | None:
@@ -45,24 +55,28 @@ def decimals(text: bytes) -> tuple[FloatArray, NDArray[np.bool_]] | None:
     None
         If a number has too many digits for this.
     """
-    view = np.frombuffer(text, np.uint8)
-    digits = view - np.uint8(_ZERO)
-    at = np.flatnonzero(digits < 10)
-    gaps = np.diff(at)
-    pointed = (gaps == 2) & (view[at[:-1] + 1] == _POINT)
-    starts = np.append(0, np.flatnonzero((gaps != 1) & ~pointed) + 1)
-    ends = np.append(starts[1:], len(at))
+    digits = np.frombuffer(text, np.uint8) - _ZERO
+    inside = (digits < 10) | (digits == _POINT)
+    edges = np.flatnonzero(inside[1:] != inside[:-1]) + 1
+    if inside[0]:
+        edges = np.append(0, edges)
+    starts, ends = edges[::2], edges[1::2]
+    whole = np.zeros(len(starts), np.int64)
+    behind = np.zeros(len(starts), np.int64)
+    pointed = np.zeros(len(starts), np.bool_)
     lengths = ends - starts
-    if lengths.max() > _DIGITS:
+    if lengths.max() > _DIGITS + 1:
         return None
-    weights = _WEIGHTS[np.repeat(ends, lengths) - np.arange(1, len(at) + 1)]
-    whole = np.add.reduceat(digits[at] * weights, starts)
-    behind = np.where(view[at[starts] - 1] == _POINT, lengths, 0)
-    points = np.flatnonzero(pointed)
-    number = np.searchsorted(starts, points, "right") - 1
-    behind[number] = ends[number] - points - 1
-    scale = _POWERS[view[at[ends - 1] + 1]]
+    # Digit by digit, all numbers at once, takes a quarter of what adding up weighted digits does.
+    for place in range(lengths.max()):
+        sign = digits.take(starts + place, mode="clip")
+        here = place < lengths
+        is_digit = here & (sign != _POINT)
+        whole = np.where(is_digit, 10 * whole + sign, whole)
+        behind += is_digit & pointed
+        pointed |= here & ~is_digit
+    scale = _POWERS[digits[ends]]
     power = scale - behind
-    if power.min() <= -len(_TENS):
+    if (lengths - pointed).max() > _DIGITS or power.min() < -_EXACT:
         return None
-    return whole * _TENS[np.maximum(power, 0)] / _TENS[np.maximum(-power, 0)], scale != 0
+    return whole * _UP[power] / _DOWN[power], scale != 0

@@ -7,9 +7,9 @@ from typing import TYPE_CHECKING
 
 import pytest
 
-from evenstage.netlist.reading import blocks
+from evenstage.netlist.reading import blocks, cards, stored
 from evenstage.netlist.reading import reader as reader_module
-from evenstage.netlist.reading.shapes import _card
+from evenstage.netlist.reading.shapes import _compiled
 from support.random_cards import edited_card, few_cards, random_bracket, random_card, tame_card
 from support.two_readings import by_grammar, by_program, compare, compare_brackets
 
@@ -19,6 +19,8 @@ if TYPE_CHECKING:
 MAKERS = [(tame_card, 0.7), (few_cards, 0.4), (edited_card, 0.3), (random_card, 0.2)]
 #: Cases read together, and how often: 20,000 in all, a quarter of them of three cards.
 _LOT, _LOTS = 250, 10
+#: Bytes of a block so small that edges of blocks fall everywhere.
+_SMALL = 100
 
 
 @pytest.fixture(autouse=True)
@@ -26,7 +28,7 @@ def quick_learner(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(reader_module, "_LEARNED_AT", 1)
 
 
-@pytest.mark.parametrize("size", [blocks._SIZE, 100])
+@pytest.mark.parametrize("size", [blocks._SIZE, _SMALL])
 @pytest.mark.parametrize(("make", "least"), MAKERS)
 def test_fast_reading_is_the_grammars_reading(
     make: Callable[[random.Random], str],
@@ -35,6 +37,9 @@ def test_fast_reading_is_the_grammars_reading(
     monkeypatch: pytest.MonkeyPatch,
 ) -> None:
     monkeypatch.setattr(blocks, "_SIZE", size)
+    if size == _SMALL:
+        monkeypatch.setattr(cards, "_LOT", 1)
+        monkeypatch.setattr(stored, "_MANY", 1)
     pick = random.Random(20261 + size)
     accepted = 0
     for _ in range(_LOTS):
@@ -63,12 +68,12 @@ def test_a_card_that_is_read_otherwise_is_noticed() -> None:
 
 
 def test_a_shape_that_reads_too_much_is_noticed(monkeypatch: pytest.MonkeyPatch) -> None:
-    _card.cache_clear()
+    _compiled.cache_clear()
     monkeypatch.setattr("evenstage.netlist.reading.shapes.END", r"[^\n]*+\n*+")
     wrong = ["m1 a b c d nch )\n"]
     assert compare(wrong).differences == (b".fence\n" + wrong[0].encode() + b"\n",)
     assert compare(["m1 a b c d nch\n"]).differences == ()
-    _card.cache_clear()
+    _compiled.cache_clear()
 
 
 def test_a_name_behind_a_comma_may_stand_before_a_continuation() -> None:

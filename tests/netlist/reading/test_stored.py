@@ -10,60 +10,18 @@ import numpy as np
 import pytest
 
 from evenstage.netlist.elaboration.elaborate import elaborate
-from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.reading import reader as reader_module
 from evenstage.netlist.reading.read import read_bytes
-from evenstage.netlist.values import Style, plain_value
+from support.columns_said import both_said
 
 if TYPE_CHECKING:
-    from evenstage.netlist.netlist import Card, CardColumns, Netlist
-
-Said = tuple[str, tuple[bytes, ...], bytes, dict[str, tuple[float, int]]]
-
-
-def folded(text: str) -> bytes:
-    return text.encode("utf-8", "surrogateescape").lower()
-
-
-def worth(text: str) -> tuple[float, int]:
-    """Return number and style of a value; of expressions no number."""
-    try:
-        value = plain_value(text)
-    except FormulaError:
-        value = None
-    return (0.0, Style.COMPUTED) if value is None else (value.number, value.style)
-
-
-def said_by_card(card: Card) -> Said:
-    values = {p.name: worth(p.text.lower()) for p in card.parameters}
-    if card.value is not None:
-        values[""] = worth(card.value.text.lower())
-    return card.letter, tuple(map(folded, card.nodes)), folded(card.target), values
-
-
-def said_by_columns(netlist: Netlist, cards: CardColumns) -> dict[int, Said]:
-    words, values = netlist.cards.words, netlist.cards.values
-    said = {}
-    for row, number in enumerate(cards.numbers.tolist()):
-        nodes = tuple(words.some(cards.nodes[:, row]))
-        target = words[int(cards.targets[row])] if len(cards.targets) else b""
-        pairs = {}
-        for name, column in cards.values.items():
-            numbers, styles = values.worth(column[row : row + 1])
-            computed = styles[0] == Style.COMPUTED
-            pairs[name] = (0.0 if computed else float(numbers[0]), int(styles[0]))
-        said[number] = cards.letter, nodes, target, pairs
-    return said
+    from evenstage.netlist.netlist import Netlist
 
 
 def check(netlist: Netlist) -> None:
     """Compare all cards with their columns."""
-    said: dict[int, Said] = {}
-    for cards in netlist.cards.columns(range(len(netlist))):
-        said |= said_by_columns(netlist, cards)
-    assert [said[n] for n in range(len(netlist))] == [
-        said_by_card(netlist.card(n)) for n in range(len(netlist))
-    ]
+    by_columns, by_cards = both_said(netlist)
+    assert by_columns == by_cards
 
 
 def random_lines(pick: random.Random, count: int) -> list[str]:
@@ -90,6 +48,13 @@ def random_lines(pick: random.Random, count: int) -> list[str]:
         lambda i: f"v{i} {some(2)} dc 1.8",
     ]
     return [pick.choice(makers)(i) for i in range(count)]
+
+
+def test_cards_may_have_no_nets() -> None:
+    lines = ["* t", ".subckt inv", ".ends", *(f"x{i} () inv" for i in range(5)), ""]
+    netlist = read_bytes("\n".join(lines).encode(), "t.sp", Path())
+    check(netlist)
+    assert len(elaborate(netlist)) == 0
 
 
 @pytest.mark.parametrize("seed", range(6))

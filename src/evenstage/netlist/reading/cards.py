@@ -97,10 +97,11 @@ class CardTable:
         starts.clear()
         shapes.clear()
 
-    def store(self, waiting: int = _LOT) -> None:
+    def store(self, waiting: int | None = None) -> None:
         """Turn the words of cards into numbers, where so many cards of a shape wait."""
+        waiting = _LOT if waiting is None else waiting
         for stored in self._stored:
-            if len(stored.rows) >= waiting:
+            if stored.waiting() >= waiting:
                 stored.store()
 
     def append_odd(self, statement: Statement) -> None:

@@ -24,6 +24,7 @@ from evenstage.netlist.reading.models import ModelCards, WrittenModel, numbers_a
 from evenstage.netlist.reading.opening import after_title, check_text
 from evenstage.netlist.reading.scopes import Scopes
 from evenstage.netlist.reading.statement import Statement, parse_statement
+from evenstage.netlist.reading.stored import ShapeColumns
 from evenstage.progress import tell
 from evenstage.source import SourceText, Span
 
@@ -33,7 +34,6 @@ if TYPE_CHECKING:
 
     from evenstage.netlist.netlist import Parameter
     from evenstage.netlist.reading.statement import Mark
-    from evenstage.netlist.reading.stored import ShapeColumns
 
 #: A sequence of terminals is learned when it is met for this time: an expression takes as long to
 #: compile as some fifty cards take to parse.
@@ -109,6 +109,9 @@ class Reader:
         while position < end:
             tell("reading", position / len(unit.source.data))
             position = self._read_block(unit, position, end)
+            # The shapes that are met most are tried first.
+            for shapes in filter(None, self._learned):
+                shapes.sort(key=ShapeColumns.waiting, reverse=True)
             self._table.store()
         self._branches.check_closed(conditions)
         self._scopes.check_closed(depth)
@@ -124,28 +127,21 @@ class Reader:
         skipped = _SKIP.match(text, position - base)
         assert skipped is not None
         place, learned = skipped.end(), self._learned
+        size = len(text)
         starts: list[int] = []
         kinds: list[int] = []
-        while place < len(text):
-            shapes = learned[text[place]]
-            for shape in shapes:
+        while place < size:
+            for shape in learned[text[place]]:
                 found = shape.match(text, place)
                 if found is not None:
+                    starts.append(place)
+                    kinds.append(shape.number)
+                    shape.take(found.groups())
+                    place = found.end()
                     break
             else:
                 self._table.extend(base, starts, kinds)
                 place = self._read_card(unit, base + place, end) - base
-                continue
-            if shape is not shapes[0]:
-                _promote(shapes, shapes.index(shape))
-            match, number, take = shape.match, shape.number, shape.rows.append
-            # Most cards are like the one before.
-            while found is not None:
-                starts.append(place)
-                kinds.append(number)
-                take(found.groups())
-                place = found.end()
-                found = match(text, place)
         self._table.extend(base, starts, kinds)
         return max(base + place, min(block_end, end))
 
@@ -212,7 +208,7 @@ class Reader:
         stored = self._table.add_shape(shape)
         found = shape.row.match(block.text, statement.marks[0].start - block.start)
         assert found is not None
-        stored.rows.append(found.groups())
+        stored.take(found.groups())
         self._learned[ord(shape.letter)].append(stored)
         self._table.extend(statement.marks[0].start, [0], [stored.number])
 
@@ -368,11 +364,6 @@ _DOT_CARDS: Final = {
     "endl": Reader._take_other,  # noqa: SLF001
     "other": Reader._take_other,  # noqa: SLF001
 }
-
-
-def _promote(shapes: list[ShapeColumns], rank: int) -> None:
-    """Move a shape one place forward, so that the most used are tried first."""
-    shapes[rank - 1], shapes[rank] = shapes[rank], shapes[rank - 1]
 
 
 def _block_end(unit: Unit, position: int) -> int | None:

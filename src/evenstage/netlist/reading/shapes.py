@@ -116,21 +116,23 @@ class Shape:
         return _card((*self.pieces[: -len(self._tail)], whole))
 
     @cached_property
-    def tail(self) -> re.Pattern[bytes]:
-        """Matches what that group holds, with a group for each value."""
-        return re.compile(_joined(_without(self._tail, "key")).encode(ENCODING))
-
-    @cached_property
-    def plain_tails(self) -> re.Pattern[bytes] | None:
-        """Matches some of those, each with a line feed, that hold plain decimals alone.
+    def plain_joint(self) -> re.Pattern[bytes] | None:
+        """The same with two groups, the first for parameters that are plain decimals alone.
 
         None where there can be none, or where a parameter's name holds a digit.
         """
         plain = [_plain(piece) if piece.role == "value" else piece for piece in self._tail]
         if not all(piece.pattern for piece in plain) or _HAS_NUMBER.search("".join(self.keys)):
             return None
-        lines = f"(?:{_joined(_without(plain, 'key', 'value'))}\n)++"
-        return re.compile(lines.encode(ENCODING))
+        tails = (_joined(_without(tail, "key", "value")) for tail in (plain, self._tail))
+        either = "|".join(f"({tail}){END}" for tail in tails)
+        head = _joined(self.pieces[: -len(self._tail)])
+        return _compiled(f"{head}{BETWEEN}(?:{either})")
+
+    @cached_property
+    def tail(self) -> re.Pattern[bytes]:
+        """Matches what that group holds, with a group for each value."""
+        return re.compile(_joined(_without(self._tail, "key")).encode(ENCODING))
 
     @property
     def _tail(self) -> tuple[Piece, ...]:
@@ -160,10 +162,15 @@ def _joined(pieces: Iterable[Piece]) -> str:
     return BETWEEN.join(p.pattern if p.role is None else f"({p.pattern})" for p in pieces)
 
 
-@lru_cache(maxsize=1 << 12)
 def _card(pieces: tuple[Piece, ...]) -> re.Pattern[bytes]:
-    """Return the expression of a card; compiling it takes as long as some fifty cards."""
-    return re.compile((_joined(pieces) + END).encode(ENCODING))
+    """Return the expression of a card."""
+    return _compiled(_joined(pieces) + END)
+
+
+@lru_cache(maxsize=1 << 12)
+def _compiled(expression: str) -> re.Pattern[bytes]:
+    """Compile an expression; that takes as long as reading some fifty cards."""
+    return re.compile(expression.encode(ENCODING))
 
 
 def _plain(piece: Piece) -> Piece:
@@ -175,7 +182,7 @@ def _plain_values() -> dict[str, str]:
     """Return the expression of a plain decimal for each terminal that may hold one."""
     number = PLAIN.decode(ENCODING)
     written = {
-        "VALUE": rf"{number}(?=[\x00-\x20,])",
+        "VALUE": rf"{number}(?=[\x00-\x20]|\Z)",
         "QUOTED": f"'{number}'",
         "STRING": f'"{number}"',
         "BRACED": rf"\{{{number}\}}",

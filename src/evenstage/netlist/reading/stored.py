@@ -44,9 +44,10 @@ class ShapeColumns:
 
     def __init__(self, number: int, shape: Shape, words: Words, values: Values) -> None:
         self.number = number
-        #: Matches a card; its groups are to be put among the rows.
+        #: Matches a card; its groups are to be taken.
         self.match = shape.row.match
-        self.rows: list[tuple[bytes, ...]] = []
+        self._rows: list[tuple[bytes, ...]] = []
+        self.take = self._rows.append
         self._shape = shape
         self._tails: EqualTails | PlainTails | None = None
         self._is_settled = len(shape.keys) < 2
@@ -69,10 +70,14 @@ class ShapeColumns:
         if self._arguments:
             self._columns[""] = array("i")
 
+    def waiting(self) -> int:
+        """Return how many rows have been taken, but not yet stored."""
+        return len(self._rows)
+
     def store(self) -> None:
         """Turn the rows that wait into numbers."""
-        columns = list(zip(*self.rows, strict=True))
-        self.rows.clear()
+        columns = list(zip(*self._rows, strict=True))
+        self._rows.clear()
         number = self._words.__getitem__
         self.hashes.extend(map(hash, columns[0]))
         for column, place in zip(self._nodes, self._node_places, strict=True):
@@ -84,7 +89,7 @@ class ShapeColumns:
         if self._arguments:
             self._store_values("", main_argument([columns[i] for i in self._arguments]))
         if self._tails is not None:
-            self._store_tails(self._tails, columns[-1])
+            self._store_tails(self._tails, columns)
             return
         for name, place in self._value_places.items():
             self._store_values(name, columns[place])
@@ -98,13 +103,16 @@ class ShapeColumns:
         groups = [place - first for place in self._value_places.values()]
         if _ALIKE * len(set(zip(*values, strict=True))) <= len(values[0]):
             self._tails = EqualTails(self._shape, groups, self._values)
-        elif self._shape.plain_tails and self._letter != "x":
-            self._tails = PlainTails(self._shape, groups, self._values)
-        if self._tails is not None:
             self.match = self._shape.joint.match
+        elif self._shape.plain_joint and self._letter != "x":
+            self._tails = PlainTails(self._shape, groups, self._values)
+            self.match = self._shape.plain_joint.match
 
-    def _store_tails(self, tails: EqualTails | PlainTails, texts: Sequence[bytes]) -> None:
-        for name, numbers in zip(self._value_places, tails.numbers(texts), strict=True):
+    def _store_tails(
+        self, tails: EqualTails | PlainTails, columns: Sequence[Sequence[bytes]]
+    ) -> None:
+        texts = columns[-1:] if isinstance(tails, EqualTails) else columns[-2:]
+        for name, numbers in zip(self._value_places, tails.numbers(*texts), strict=True):
             self._columns[name].frombytes(numbers.tobytes())
         if not tails.is_useful:
             self._tails, self.match = None, self._shape.row.match
@@ -126,7 +134,9 @@ class ShapeColumns:
         values = {name: _view(column)[first:last] for name, column in self._columns.items()}
         targets = _view(self._targets)[first:last]
         if self._run_place is None:
-            nodes = np.stack([_view(column)[first:last] for column in self._nodes])
+            nodes = np.empty((len(self._nodes), last - first), np.int32)
+            for row, column in zip(nodes, self._nodes, strict=True):
+                row[:] = _view(column)[first:last]
             yield self._made(numbers, nodes, targets, values)
             return
         ends = _view(self._run_ends)[first : last + 1]

@@ -67,6 +67,8 @@ class EqualTails(dict[bytes, int]):
 class PlainTails:
     """Tails whose values are plain decimals, converted some hundred cards at once.
 
+    There are two columns of them, as ``Shape.plain_joint`` gives them: the plain and the others.
+
     Parameters
     ----------
     shape : Shape
@@ -79,8 +81,6 @@ class PlainTails:
 
     def __init__(self, shape: Shape, groups: Sequence[int], values: Values) -> None:
         self._groups = groups
-        assert shape.plain_tails is not None
-        self._are_plain = shape.plain_tails.fullmatch
         self._match = shape.tail.fullmatch
         self._values = values
         self._count = len(shape.keys)
@@ -91,13 +91,18 @@ class PlainTails:
         """Whether few lots hold something unusual."""
         return self._misses < _PATIENCE
 
-    def numbers(self, texts: Sequence[bytes]) -> list[IntArray]:
-        """Return the numbers of the values of some cards, in columns."""
-        lines = b"\n".join(texts) + b"\n"
-        found = self._values.add_decimals(lines) if self._are_plain(lines) else None
+    def numbers(self, plain: Sequence[bytes], others: Sequence[bytes]) -> list[IntArray]:
+        """Return the numbers of the values of some cards, in columns.
+
+        Parameters
+        ----------
+        plain, others : Sequence of bytes
+            Of each card one is None.
+        """
+        found = None if any(others) else self._values.add_decimals(b"\n".join(plain) + b"\n")
         if found is None:
             self._misses += 1
-            return self._apart(texts)
+            return self._apart([a or b for a, b in zip(plain, others, strict=True)])
         self._misses = max(self._misses - 1, 0)
         rows = np.arange(found.start, found.stop, dtype=np.int32).reshape(-1, self._count)
         return [rows[:, group - 1] for group in self._groups]
