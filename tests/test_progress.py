@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import io
 import re
+import time
 from pathlib import Path
 from typing import TYPE_CHECKING, Final
 
@@ -114,6 +115,19 @@ class TestShownOn:
         assert terminal.screen == ""
         assert terminal.getvalue().endswith("\r")
         assert "\n" not in terminal.getvalue()
+
+    def test_seconds_are_counted_where_nothing_is_told(self) -> None:
+        terminal = Terminal()
+        with shown_on(terminal):
+            tell("sizing")
+            deadline = time.monotonic() + 10
+            while terminal.screen != "sizing, for 1 s" and time.monotonic() < deadline:
+                time.sleep(0.05)
+            assert terminal.screen == "sizing, for 1 s"
+        assert terminal.screen == ""
+        written = terminal.getvalue()
+        time.sleep(1.1)
+        assert terminal.getvalue() == written
 
     def test_line_changes_at_most_ten_times_a_second(self, clock: Callable[[float], None]) -> None:
         terminal = Terminal()

@@ -9,6 +9,7 @@ from __future__ import annotations
 import time
 from contextlib import contextmanager, suppress
 from contextvars import ContextVar
+from threading import Event, Lock, Thread
 from typing import TYPE_CHECKING, Final
 
 if TYPE_CHECKING:
@@ -22,6 +23,8 @@ if TYPE_CHECKING:
 _PATIENCE: Final = 1.0
 #: Between two changes of the line, s.
 _PAUSE: Final = 0.1
+#: Between two looks at whether anything was told, s.
+_TICK: Final = 0.5
 
 
 _listener: ContextVar[Listener | None] = ContextVar("listener", default=None)
@@ -101,26 +104,50 @@ def shown_on(stream: TextIO | None) -> Iterator[None]:
 
 
 class _Line:
-    """One line of a terminal, if there is one, written over itself; and the stage last told."""
+    """One line of a terminal, if there is one, written over itself; and the stage last told.
+
+    Where nobody tells anything for a while, the line counts the seconds.
+    """
 
     def __init__(self, stream: TextIO | None) -> None:
         self.stage = ""
+        self._text = ""
         self._stream = stream
         self._width = 0
-        self._due = time.monotonic() + _PATIENCE
+        self._told = time.monotonic()
+        self._due = self._told + _PATIENCE
+        self._writing = Lock()
+        self._ended = Event()
+        if stream is not None:
+            Thread(target=self._count, daemon=True).start()
 
     def show(self, stage: str, done: float | None) -> None:
         """Write a stage, unless the line was written a moment ago."""
         self.stage = stage
-        if self._stream is not None and time.monotonic() >= self._due:
-            self._write(stage if done is None else f"{stage} {min(max(done, 0.0), 1.0):4.0%}")
-            self._due = time.monotonic() + _PAUSE
+        if self._stream is None:
+            return
+        with self._writing:
+            self._text = stage if done is None else f"{stage} {min(max(done, 0.0), 1.0):4.0%}"
+            self._told = time.monotonic()
+            if self._told >= self._due:
+                self._write(self._text)
+                self._due = self._told + _PAUSE
 
     def clear(self) -> None:
         """Leave an empty line."""
-        if self._width:
-            self._write("")
-            self._write("")
+        self._ended.set()
+        with self._writing:
+            if self._width:
+                self._write("")
+                self._write("")
+
+    def _count(self) -> None:
+        """Say for how long nothing was told, each second, until the work has ended."""
+        while not self._ended.wait(_TICK):
+            with self._writing:
+                silent = time.monotonic() - self._told
+                if self._text and silent >= _PATIENCE and not self._ended.is_set():
+                    self._write(f"{self._text}, for {silent:.0f} s")
 
     def _write(self, text: str) -> None:
         assert self._stream is not None
