@@ -212,6 +212,11 @@ def ranges(begin: NDArray[np.integer], count: NDArray[np.integer]) -> IntArray:
 def _csr(heads: Sequence[IntArray], order: NDArray[np.intp]) -> tuple[IntArray, IntArray]:
     """Return where the entries of each ordered arc begin, and their places in the tables."""
     count = np.concatenate([np.diff(head) for head in heads])
+    most = int(count.max(initial=0))
+    if most == count.min(initial=0):
+        # The common case, in half the time: all have as many.
+        head = np.arange(len(order) + 1, dtype=np.int32) * most
+        return head, (order[:, None] * most + np.arange(most)).ravel()
     begin = np.cumsum(count) - count
     head = np.concatenate([[0], np.cumsum(count[order])]).astype(np.int32)
     return head, ranges(begin[order], count[order])

@@ -15,7 +15,7 @@ import numpy as np
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from evenstage.netlist.devices import Devices, FloatArray
+    from evenstage.netlist.devices import Devices, FloatArray, IntArray
     from evenstage.process.process import Junction, Process, Transistor
 
 
@@ -29,7 +29,27 @@ class Scaled:
     @cached_property
     def today(self) -> FloatArray:
         """The quantity at today's width."""
-        return self.scaling + self.fixed
+        return self.scaling + self.fixed if self.fixed.any() else self.scaling
+
+
+@dataclass(frozen=True)
+class Constant:
+    """A constant of the transistor types, looked up per device.
+
+    Parameters
+    ----------
+    of_model : FloatArray, shape (models,)
+    model : IntArray, shape (n,)
+        Of each device.
+    """
+
+    of_model: FloatArray
+    model: IntArray
+
+    def __getitem__(self, devices: IntArray | int) -> FloatArray:
+        """Return the values of some devices, shape as given."""
+        found: FloatArray = self.of_model[self.model[devices]]
+        return found
 
 
 @dataclass(frozen=True)
@@ -52,14 +72,14 @@ class Electrical:
     gate: Scaled
     rise: Diffusion
     fall: Diffusion
-    stack: FloatArray
-    slope: FloatArray
-    slope_power: FloatArray
-    shape: FloatArray
-    shape_carry: FloatArray
-    slope_stack: FloatArray
-    shape_stack: FloatArray
-    weak_swing: FloatArray
+    stack: Constant
+    slope: Constant
+    slope_power: Constant
+    shape: Constant
+    shape_carry: Constant
+    slope_stack: Constant
+    shape_stack: Constant
+    weak_swing: Constant
 
     @cached_property
     def drain(self) -> Scaled:
@@ -76,21 +96,22 @@ def electrical(devices: Devices, process: Process) -> Electrical:
     """Return resistance, capacitance and transition constants of every device."""
     kinds = [process.transistors[model.type_index] for model in devices.models]
 
-    def constant(name: str) -> FloatArray:
-        table = np.array([getattr(kind, name) for kind in kinds], float)
-        return table[devices.model] if len(devices) else np.zeros(0)
+    def constant(name: str) -> Constant:
+        return _constant(devices, [getattr(kind, name) for kind in kinds])
 
     rise = _diffusion(devices, kinds, "rise")
     alike = all(k.junctions is None or k.junctions.rise == k.junctions.fall for k in kinds)
     copies = devices.multiplier
-    length = devices.length / constant("length")
+    length = devices.length / _column(constant("length"))
     width = devices.width
     return Electrical(
         resistance=Scaled(
-            constant("r_w") * length / (width * copies), constant("r_fixed") / copies
+            _column(constant("r_w")) * length / (width * copies),
+            _column(constant("r_fixed"), 1 / copies),
         ),
         gate=Scaled(
-            constant("c_gate") * width * length * copies, constant("c_gate_fixed") * copies
+            _column(constant("c_gate")) * width * length * copies,
+            _column(constant("c_gate_fixed"), copies),
         ),
         rise=rise,
         fall=rise if alike else _diffusion(devices, kinds, "fall"),
@@ -105,6 +126,17 @@ def electrical(devices: Devices, process: Process) -> Electrical:
     )
 
 
+def _constant(devices: Devices, values: Sequence[float]) -> Constant:
+    return Constant(np.array(values, float), devices.model)
+
+
+def _column(constant: Constant, factor: FloatArray | float = 1.0) -> FloatArray:
+    """Return a constant of every device times a factor; a constant of zero takes no room."""
+    if not constant.of_model.any():
+        return np.broadcast_to(0.0, len(constant.model))
+    return constant.of_model[constant.model] * factor
+
+
 def _mean(one: Scaled, other: Scaled) -> Scaled:
     if one is other:
         return one
@@ -115,38 +147,44 @@ def _diffusion(
     devices: Devices, kinds: Sequence[Transistor], edge: Literal["rise", "fall"]
 ) -> Diffusion:
     given = [None if kind.junctions is None else getattr(kind.junctions, edge) for kind in kinds]
-    drains = (devices.drain_area, devices.drain_edge, "drain_fixed")
-    sources = (devices.source_area, devices.source_edge, "source_fixed")
-    return Diffusion(_end(devices, kinds, given, *drains), _end(devices, kinds, given, *sources))
+    by_width = Scaled(
+        _column(_constant(devices, [kind.c_drain for kind in kinds]), devices.width)
+        * devices.multiplier,
+        _column(_constant(devices, [kind.c_drain_fixed for kind in kinds]), devices.multiplier),
+    )
+    drawn = (
+        (devices.drain_area, devices.drain_edge, "drain_fixed"),
+        (devices.source_area, devices.source_edge, "source_fixed"),
+    )
+    return Diffusion(*(_end(devices, given, end, by_width) for end in drawn))
 
 
 def _end(
     devices: Devices,
-    kinds: Sequence[Transistor],
     junctions: Sequence[Junction | None],
-    area: FloatArray,
-    edge: FloatArray,
-    fixed: str,
+    drawn: tuple[FloatArray, FloatArray, str],
+    by_width: Scaled,
 ) -> Scaled:
     """Return drain or source capacitance: of its area and perimeter where both are known.
 
     With ``E = area / W`` the extent of the diffusion, the perimeter ``2 E + k W`` has a part that
     does not grow with the width.
     """
+    area, edge, fixed = drawn
+    if all(one is None for one in junctions) or np.isnan(area).all():
+        return by_width
 
-    def constant(name: str) -> FloatArray:
+    def column(name: str) -> FloatArray:
         table = [np.nan if one is None else getattr(one, name) for one in junctions]
-        return np.array(table, float)[devices.model]
+        return _column(_constant(devices, table))
 
-    per_width = np.array([kind.c_drain for kind in kinds], float)[devices.model]
-    by_width = np.array([kind.c_drain_fixed for kind in kinds], float)[devices.model]
-    side = constant("edge")
+    side, copies = column("edge"), devices.multiplier
     extent = area / devices.width
     growing_edge = np.maximum(edge - 2 * extent, 0.0)
-    scaling = constant("area") * area + side * growing_edge + constant("overlap") * devices.width
-    staying = side * np.minimum(2 * extent, edge) + constant(fixed)
+    scaling = column("area") * area + side * growing_edge + column("overlap") * devices.width
+    staying = side * np.minimum(2 * extent, edge) + column(fixed)
     known = ~np.isnan(scaling)
     return Scaled(
-        np.where(known, scaling, per_width * devices.width) * devices.multiplier,
-        np.where(known, staying, by_width) * devices.multiplier,
+        np.where(known, scaling * copies, by_width.scaling),
+        np.where(known, staying * copies, by_width.fixed),
     )

@@ -114,10 +114,13 @@ def _sums(
     ]
     terms = []
     for r, r_owner in zip(along, owners, strict=True):
-        whole, at_step = r[:, -1], r.reshape(-1, count)[plan.step]
+        whole = r[:, -1]
         # What is zero for all of them is left out; what does not scale is so at any width.
         stays: BoolArray = np.asarray(whole.any(axis=1))
-        for c, c_owner in zip(cap, owners, strict=True) if stays.any() else ():
+        if not stays.any():
+            continue
+        at_step = r.reshape(-1, count)[plan.step]
+        for c, c_owner in zip(cap, owners, strict=True):
             moved = plan.added(at_step * c) if c.any() else np.zeros_like(whole)
             has = stays if c_owner is owners[0] else stays & moved.any(axis=1)
             part = np.divide(moved, whole, out=np.zeros_like(moved), where=whole > 0)
@@ -172,6 +175,8 @@ def _along_paths(
     factor[plan.path == NOTHING] = 0.0
     scaling, fixed = (
         np.cumsum(np.ascontiguousarray(part.T)[plan.path] * factor, axis=1)
+        if part.any()
+        else np.zeros(factor.shape)
         for part in (res.scaling, res.fixed)
     )
     for row, arc in enumerate(plan.arcs):
@@ -190,15 +195,14 @@ def _at_nodes(
 
     What scales, and what stays, as far as it moves.
     """
-    rising = plan.rising[plan.of_arc]
+    fall, rise = caps
     scaling, fixed = (
-        np.where(
-            rising[:, None],
-            np.ascontiguousarray(rise.T)[plan.node],
-            np.ascontiguousarray(fall.T)[plan.node],
-        )
-        for fall, rise in zip(*((cap.scaling, cap.fixed) for cap in caps), strict=True)
+        np.ascontiguousarray(part.T)[plan.node] for part in (fall.scaling, fall.fixed)
     )
+    if rise is not fall:
+        up = plan.rising[plan.of_arc]
+        scaling[up] = rise.scaling.T[plan.node[up]]
+        fixed[up] = rise.fixed.T[plan.node[up]]
     weak = np.flatnonzero(plan.behind != NOTHING)
     part = values.weak_swing[device[plan.behind[weak]]]
     scaling[weak] *= part
@@ -225,6 +229,8 @@ def switch_resistance(network: Network, devices: IntArray, values: Electrical) -
     member = _incidence(network.switch_of_device, len(network.switches))
     scaling = 1.0 / ((1.0 / values.resistance.scaling[devices]) @ member)
     fixed = values.resistance.fixed[devices]
+    if not fixed.any():
+        return Scaled(scaling, np.broadcast_to(0.0, scaling.shape))
     conductance = np.divide(1.0, fixed, out=np.zeros_like(fixed), where=fixed > 0) @ member
     inverse = np.divide(1.0, conductance, out=np.zeros_like(conductance), where=conductance > 0)
     return Scaled(scaling, inverse)

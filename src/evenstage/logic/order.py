@@ -155,7 +155,7 @@ def _levels(waits: IntArray, awaited: IntArray, count: int) -> IntArray:
     follower = waits[by_awaited]
     head = np.searchsorted(awaited[by_awaited], np.arange(count + 1))
     open_ends = np.bincount(waits, minlength=count)
-    level = np.zeros(count, np.int64)
+    level, met = np.zeros((2, count), np.int64)
     ready = np.flatnonzero(open_ends == 0)
     depth = 0
     while len(ready):
@@ -166,8 +166,11 @@ def _levels(waits: IntArray, awaited: IntArray, count: int) -> IntArray:
             head[ready] - np.cumsum(lengths) + lengths, lengths
         )
         open_ends -= np.bincount(follower[place], minlength=count)
-        reached = np.unique(follower[place])
-        ready = reached[open_ends[reached] == 0]
+        ready = follower[place]
+        ready = ready[open_ends[ready] == 0]
+        # Each once: the place it is met at last.
+        met[ready] = np.arange(len(ready))
+        ready = ready[met[ready] == np.arange(len(ready))]
     return level
 
 

@@ -19,6 +19,7 @@ from evenstage.timing.yardstick import yardstick
 if TYPE_CHECKING:
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
+    from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import IntArray
 
 
@@ -90,8 +91,7 @@ def report(timing: Timing, count: int = 1) -> Analysis:
     slowest = [latest_path(timing)] if count == 1 else islice(slowest_paths(timing), count)
     paths = tuple(describe(timing, arcs) for arcs in slowest)
     start_nets = dict.fromkeys(graph.net[graph.start].tolist())
-    arcs = circuit.arcs
-    reached = np.union1d(arcs.gate[graph.arc], arcs.gates_along(np.unique(graph.arc)))
+    reached = np.flatnonzero(_on_paths(circuit, graph.arc))
     notices = [*circuit.notices, *graph.notices]
     if graph.whole and len(reached) < len(circuit):
         notices.append(_unreached(circuit, reached))
@@ -144,6 +144,16 @@ def _ends(timing: Timing) -> tuple[PathEnd, ...]:
         )
         for index in order
     )
+
+
+def _on_paths(circuit: Circuit, which: IntArray) -> BoolArray:
+    """Tell which gates some arcs run through, shape (gates,)."""
+    arcs = circuit.arcs
+    counts, found = np.zeros(len(arcs), bool), np.zeros(len(circuit), bool)
+    counts[which] = True
+    found[arcs.gate[which]] = True
+    found[arcs.gates_along(np.flatnonzero(counts))] = True
+    return found
 
 
 def _unreached(circuit: Circuit, reached: IntArray) -> Notice:

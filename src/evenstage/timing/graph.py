@@ -265,11 +265,14 @@ def _levels(count: int, source: IntArray, target: IntArray) -> IntArray:
     heads = np.searchsorted(source[order], np.arange(count + 1)).astype(np.int32)
     width = np.diff(heads)
     waiting_for = np.bincount(target, minlength=count)
-    level = np.zeros(count, np.int32)
+    level, place = np.zeros((2, count), np.int32)
     ready, depth = np.flatnonzero(waiting_for == 0), 0
     while len(ready):
         level[ready] = depth
         following = followers[ranges(heads[ready], width[ready])]
         np.subtract.at(waiting_for, following, 1)
-        ready, depth = np.unique(following[waiting_for[following] == 0]), depth + 1
+        ready = following[waiting_for[following] == 0]
+        # Each once: the place it is met at last.
+        place[ready] = np.arange(len(ready))
+        ready, depth = ready[place[ready] == np.arange(len(ready))], depth + 1
     return level

@@ -39,7 +39,7 @@ class Boundaries:
     around : BoolArray, shape (arcs,)
         From one net of a loop without a clock to another.
     part : IntArray, shape (nets,)
-        Nets that reach each other have the same number.
+        Nets that reach each other have the same number; all have one where nothing stores.
     """
 
     captured: BoolArray
@@ -52,6 +52,9 @@ def boundaries(circuit: Circuit) -> Boundaries:
     """Find the arcs that enter and close the storage loops of a circuit."""
     arcs, storage = circuit.arcs, circuit.storage
     loops, loop = storage.loops(), storage.loop_of_net()
+    if not loops:
+        none = np.zeros(len(arcs), bool)
+        return Boundaries(none, none, none, np.zeros(len(loop), np.int32))
     clocked = np.array([one.captures for one in loops], bool)
     into, source = loop[arcs.output], storage.phases.root[arcs.input]
     inside = into >= 0
@@ -83,7 +86,7 @@ def _clock_levels(
             for net, opens in one.clocks
             if opens == level
         ]
-        mine = np.isin(into.astype(np.int64) * nets + source, np.array(keys, np.int64))
+        mine = _is_pair(into, source, nets, keys)
         found[mine] = np.where(rising[mine] == level, 1, -1)
     return found
 
@@ -92,7 +95,16 @@ def _writes(loops: Sequence[Loop], into: IntArray, source: IntArray) -> BoolArra
     """Tell which arcs begin at a net that sets or resets their loop."""
     nets = int(source.max(initial=0)) + 1
     keys = [number * nets + net for number, one in enumerate(loops) for net, _ in one.writes]
-    return np.isin(into.astype(np.int64) * nets + source, np.array(keys, np.int64))
+    return _is_pair(into, source, nets, keys)
+
+
+def _is_pair(into: IntArray, source: IntArray, nets: int, keys: Sequence[int]) -> BoolArray:
+    """Tell which arcs lead into a loop (-1: none) from a net that some keys name with it."""
+    found = np.zeros(len(into), bool)
+    inside = np.flatnonzero(into >= 0)
+    pair = into[inside].astype(np.int64) * nets + source[inside]
+    found[inside] = np.isin(pair, np.array(keys, np.int64))
+    return found
 
 
 def _entries(circuit: Circuit, loops: Sequence[Loop], into: IntArray) -> BoolArray:
