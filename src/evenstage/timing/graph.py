@@ -26,6 +26,7 @@ from evenstage.timing.endpoints import (
     undriven,
 )
 from evenstage.timing.ignores import Expansion, expand
+from evenstage.timing.knockout import rounds_of
 from evenstage.timing.loops import cut_loops
 from evenstage.timing.storage import Boundaries, boundaries, bounded
 
@@ -35,6 +36,7 @@ if TYPE_CHECKING:
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.timing.endpoints import Endpoints
+    from evenstage.timing.knockout import Rounds
     from evenstage.timing.results import Yardstick
 
 
@@ -117,11 +119,11 @@ class TimingGraph:
         )
 
     @cached_property
-    def owners(self) -> tuple[IntArray, ...]:
-        """For each level the place of each arc's target among the level's nodes."""
+    def rounds(self) -> tuple[Rounds, ...]:
+        """For each level how the arrivals at each of its nodes meet."""
         return tuple(
-            np.repeat(np.arange(len(node)), np.diff(first, append=some.stop - some.start))
-            for some, first, node in self.levels
+            rounds_of(np.diff(first, append=some.stop - some.start))
+            for some, first, _ in self.levels
         )
 
 

@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
+from evenstage.timing.knockout import latest
 from evenstage.timing.laws import arc_delay, arc_transition
 from evenstage.timing.wired import Ride, wire_elmore, wired_graph
 
@@ -140,9 +141,8 @@ def latest_arrivals(graph: TimingGraph, delay: FloatArray, start_arrival: FloatA
     """
     arrival = np.full((len(graph), *delay.shape[1:]), -np.inf)
     arrival[graph.start] = start_arrival
-    for some, first, node in graph.levels:
-        candidate = arrival[graph.source[some]] + delay[some]
-        arrival[node] = np.maximum.reduceat(candidate, first, axis=0)
+    for (some, _, node), rounds in zip(graph.levels, graph.rounds, strict=True):
+        arrival[node], _ = latest(arrival[graph.source[some]] + delay[some], rounds)
     return arrival
 
 
@@ -268,7 +268,7 @@ def propagate(
     if wired is not None:
         outside = start_arrival - graph.start_arrival.reshape(column)
         ride = Ride(wired, graph, elmore, shape, outside)
-    for (some, first, node), owner in zip(graph.levels, graph.owners, strict=True):
+    for (some, _, node), rounds in zip(graph.levels, graph.rounds, strict=True):
         source = graph.source[some]
         arriving = shown = transition[source]
         if ride is not None:
@@ -277,14 +277,11 @@ def propagate(
         late = arc_delay(seen[some], arriving, slope[some], power[some])
         if ride is not None:
             late = late + wire[some]
-        candidate = arrival[source] + late
-        latest = np.maximum.reduceat(candidate, first, axis=0)
-        by = _first_equal(candidate, latest[owner], first)
+        arrival[node], by = latest(arrival[source] + late, rounds)
         brought = _chosen(arriving, by)
         made, shaped, carried = (_chosen(column[some], by) for column in (elmore, shape, carry))
         transition[node] = arc_transition(made, brought, shaped, carried)
         delay[some], at_input[some] = late, shown
-        arrival[node] = latest
         winner[node] = by + some.start
         if ride is not None:
             ride.follow(node, winner[node], brought)
@@ -307,22 +304,6 @@ def _at_ends(
     made = np.where(by >= 0, shape.reshape(-1)[np.maximum(by, 0)], 0.0)
     late, added = ride.at_ends(made)
     return late, np.sqrt(at_driver**2 + added)
-
-
-def _first_equal(candidate: FloatArray, latest: FloatArray, first: IntArray) -> IntArray:
-    """Return the first position in each run of candidates that equals the run's maximum.
-
-    Parameters
-    ----------
-    candidate, latest : FloatArray, s, shape (k, ...)
-        The latter the maximum of each candidate's run.
-    first : IntArray
-        Where the runs begin.
-    """
-    place = np.arange(len(candidate)).reshape(-1, *(1 for _ in candidate.shape[1:]))
-    equal = np.where(candidate == latest, place, len(candidate))
-    result: IntArray = np.minimum.reduceat(equal, first, axis=0)
-    return result
 
 
 def _chosen(values: FloatArray, by: IntArray) -> FloatArray:
