@@ -10,7 +10,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 from scipy.cluster.hierarchy import fcluster, linkage
@@ -24,6 +24,8 @@ if TYPE_CHECKING:
     from evenstage.netlist.rewriting.families import Family
     from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.sizing.partition import Partition
+
+Text = Literal["copy", "leaf", "kept"]
 
 _EQUAL = 1e-4
 """Sizes closer than this in the logarithm count as one."""
@@ -54,7 +56,7 @@ def shared_sizes(
     moving = np.zeros(len(parts), bool)
     moving[parts.of_slot[np.abs(factor - 1) > _AS_DRAWN]] = True
     for leaves in _calls_by_family(parts, handles).values():
-        members = [_Member(calls, moving, log_size, root) for root, calls in leaves]
+        members = [_Member(calls, moving, log_size, text) for text, calls in leaves]
         for member, sizes in zip(members, _sizes_allowed(members, copies), strict=True):
             if sizes < member.sizes:
                 member.tie(label, sizes)
@@ -73,14 +75,14 @@ class _Member:
         Whether each size changes.
     log_size : FloatArray, shape (sizes,)
         By how much, in the logarithm.
-    is_root : bool
-        Whether it is the leaf itself.
+    text : {"copy", "leaf", "kept"}
+        A sized copy; the leaf itself; or the leaf itself where it has to stay as drawn.
     """
 
     calls: IntArray
     moving: NDArray[np.bool_]
     log_size: FloatArray
-    is_root: bool
+    text: Text
 
     @cached_property
     def changing(self) -> IntArray:
@@ -100,8 +102,11 @@ class _Member:
 
     def copies(self, sizes: int) -> int:
         """Return how many copies so many sizes need; a leaf all calls agree on is no copy."""
-        agreed = self.is_root and (self.some_stay or sizes == 1)
-        return sizes - 1 if agreed else sizes
+        if self.text == "copy" or not len(self.changing):
+            return sizes if self.text == "copy" else 0
+        if sizes == 1:
+            return int(self.text == "kept")
+        return sizes - self.some_stay
 
     def tie(self, label: IntArray, sizes: int) -> None:
         """Give the calls so few sizes; of those that stay all change if there is one for all."""
@@ -127,21 +132,25 @@ def _sizes_allowed(members: Sequence[_Member], copies: int) -> list[int]:
 
 def _calls_by_family(
     parts: Partition, handles: WidthHandles
-) -> dict[Family, list[tuple[bool, IntArray]]]:
+) -> dict[Family, list[tuple[Text, IntArray]]]:
     """Return the sizes of the calls of each leaf that would have to be copied, ascending.
 
-    A leaf and its copies stand together, each with whether it is the leaf itself.
+    A leaf and its copies stand together, each with what its text may become.
     """
+    block = handles.block
     found: dict[str, set[int]] = {}
+    detached: set[str] = set()
     for slot, size in parts.variable_of.items():
         if slot.caller is None:
             continue
-        if any(origin.way in {"leaf", "detached"} for origin in handles[slot].origins):
-            scope = handles.block.netlist.card(slot.card).scope
-            found.setdefault(scope, set()).add(size)
-    families: dict[Family, list[tuple[bool, IntArray]]] = {}
+        ways = {origin.way for origin in handles[slot].origins}
+        if ways & {"leaf", "detached"}:
+            found.setdefault(leaf := block.leaf(slot), set()).add(size)
+            detached.update([leaf] if "detached" in ways else [])
+    families: dict[Family, list[tuple[Text, IntArray]]] = {}
     for leaf, members in found.items():
-        family = handles.block.family(leaf)
-        calls = np.array(sorted(members))
-        families.setdefault(family, []).append((leaf == family.root, calls))
+        family = block.family(leaf)
+        stays = leaf in detached or block.is_called_elsewhere(leaf)
+        text: Text = "copy" if leaf != family.root else "kept" if stays else "leaf"
+        families.setdefault(family, []).append((text, np.array(sorted(members))))
     return families

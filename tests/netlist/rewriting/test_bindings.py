@@ -7,7 +7,8 @@ from pathlib import Path
 import pytest
 
 from evenstage.netlist.reading.read import read_bytes
-from evenstage.netlist.rewriting.bindings import Bindings, Place, names_in
+from evenstage.netlist.rewriting.bindings import Bindings, Place
+from evenstage.netlist.rewriting.mentions import names_in
 from evenstage.netlist.rewriting.tracing import Tracer
 
 TEXT = b"""title
@@ -28,7 +29,7 @@ x4 a y mid wm=wg
 
 @pytest.fixture(scope="module")
 def bindings() -> Bindings:
-    return Bindings(read_bytes(TEXT, "a.sp", Path()))
+    return Bindings.of(read_bytes(TEXT, "a.sp", Path()))
 
 
 def number(bindings: Bindings, name: str) -> int:
@@ -111,5 +112,5 @@ class TestTracer:
 
     def test_circles_have_no_roots(self) -> None:
         text = b"t\n.param a='b' b='a'\nr1 x y 'a'\n"
-        tracer = Tracer(Bindings(read_bytes(text, "a.sp", Path())))
+        tracer = Tracer(Bindings.of(read_bytes(text, "a.sp", Path())))
         assert tracer.roots("a", "", (None,)) == []

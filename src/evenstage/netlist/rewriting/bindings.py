@@ -7,35 +7,15 @@ differ from call to call, so a name is looked at together with the X card that c
 
 from __future__ import annotations
 
-from collections import defaultdict
-from dataclasses import dataclass
-from functools import cached_property, lru_cache
-from typing import TYPE_CHECKING, Final, NamedTuple
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, NamedTuple, Self
 
-from evenstage.netlist.expression import FormulaError
-from evenstage.netlist.values import parse_value
+from evenstage.netlist.rewriting.mentions import Mentions, names_in
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Iterator, Mapping, Sequence
+    from collections.abc import Callable, Iterator, Mapping
 
-    from evenstage.netlist.netlist import Card, CardGroup, Netlist, Parameter
-
-_CARDS_KEPT: Final = 1 << 16
-
-
-def names_in(text: str) -> tuple[str, ...]:
-    """Return the lower-case parameter names of a value; () where it has none.
-
-    Examples
-    --------
-    >>> names_in("'int((NF+1)/2)*w/nf*0.29u'"), names_in("0.6u")
-    (('nf', 'w'), ())
-    """
-    try:
-        formula = parse_value(text).formula
-    except FormulaError:
-        return ()
-    return () if formula is None else tuple(sorted(formula.names))
+    from evenstage.netlist.netlist import Card, Netlist, Parameter
 
 
 class Place(NamedTuple):
@@ -56,14 +36,6 @@ class Use(NamedTuple):
     card: int
     name: str
     caller: int | None
-
-
-class _Mention(NamedTuple):
-    """A value that uses a name: of a card, or (None) of a parameter of a scope."""
-
-    scope: str
-    card: int | None
-    name: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -91,34 +63,59 @@ class Binding:
     callers: tuple[int | None, ...]
 
 
+Ways = tuple[int | None, ...]
+
+
 @dataclass(frozen=True)
 class Bindings:
     """The parameter names of a whole netlist.
 
     Parameters
     ----------
-    netlist : Netlist
-        The text.
+    text : Mentions
+        Its values.
     transistors : frozenset of int
         Numbers of the cards that are transistors: a call of a wrapped one is not followed.
+    only : Mapping of str to tuple of int
+        The calls that count of some scopes, where not all do.
     """
 
-    netlist: Netlist
+    text: Mentions
     transistors: frozenset[int] = frozenset()
+    only: Mapping[str, Ways] = field(default_factory=dict)
 
-    @cached_property
+    @classmethod
+    def of(cls, netlist: Netlist, transistors: frozenset[int] = frozenset()) -> Self:
+        """Return those of a netlist."""
+        return cls(Mentions(netlist), transistors)
+
+    @property
+    def netlist(self) -> Netlist:
+        """The text."""
+        return self.text.netlist
+
+    @property
     def card(self) -> Callable[[int], Card]:
-        """Gives the card of a number; cards asked for lately are kept."""
-        return lru_cache(maxsize=_CARDS_KEPT)(self.netlist.card)
+        """Gives the card of a number."""
+        return self.text.card
 
-    def callers(self, scope: str) -> tuple[int | None, ...]:
+    def callers(self, scope: str) -> Ways:
         """Return the numbers of the X cards that call a scope; ``(None,)`` if there is none."""
-        return self._callers.get(scope, (None,))
+        found = self.only.get(scope)
+        return self.text.callers.get(scope, (None,)) if found is None else found
+
+    def calls(self, scope: str) -> tuple[tuple[int, str], ...]:
+        """Return the X cards of a scope that call subcircuits, each with what it calls."""
+        return tuple(
+            (number, callee)
+            for number, callee in self.text.calls(scope)
+            if number not in self.transistors
+        )
 
     def binding(self, place: Place) -> Binding | None:
         """Return what gives a name its value, or None if nothing does."""
         scope, name, caller = place
-        inside = self._inside[scope].get(name)
+        inside = self.text.inside[scope].get(name)
         if inside is not None:
             return self._in_scope(place, inside, "inside")
         if caller is not None:
@@ -126,7 +123,7 @@ class Bindings:
             passed = card.parameter(name)
             if passed is not None:
                 return Binding(place, passed, "passed", card.scope, self.callers(card.scope))
-        default = self._defaults[scope].get(name)
+        default = self.text.defaults[scope].get(name)
         if default is not None:
             return self._in_scope(place, default, "default")
         return self.binding(Place("", name, None)) if scope else None
@@ -142,68 +139,6 @@ class Bindings:
                     seen.add(found)
                     pending.append(found)
 
-    @cached_property
-    def _inside(self) -> Mapping[str, Mapping[str, Parameter]]:
-        scopes = {**self.netlist.subcircuits, "": self.netlist.top}
-        return {name: {p.name: p for p in s.assignments} for name, s in scopes.items()}
-
-    @cached_property
-    def _defaults(self) -> Mapping[str, Mapping[str, Parameter]]:
-        scopes = {**self.netlist.subcircuits, "": self.netlist.top}
-        return {name: {p.name: p for p in s.defaults} for name, s in scopes.items()}
-
-    @cached_property
-    def _callers(self) -> Mapping[str, tuple[int, ...]]:
-        callers: defaultdict[str, list[int]] = defaultdict(list)
-        for _, group in self._groups():
-            if group.letter == "x":
-                for number, target in zip(group.numbers, self._meant(group), strict=True):
-                    callers[target].append(number)
-        known = self.netlist.subcircuits.keys() & callers.keys()
-        return {name: tuple(sorted(callers[name])) for name in known}
-
-    def _meant(self, group: CardGroup) -> Sequence[str]:
-        """Return the keys of what some X cards call."""
-        callees = self.netlist.callees
-        if callees.local or callees.spellings:
-            return [self.netlist.callee(self.netlist.card(number)) for number in group.numbers]
-        return [_text(target) for target in group.targets]
-
-    @cached_property
-    def _mentions(self) -> Mapping[tuple[str, str], list[_Mention]]:
-        """By scope and name: the values that use that name of that scope."""
-        mentions: defaultdict[tuple[str, str], list[_Mention]] = defaultdict(list)
-        for scope, inside in self._inside.items():
-            for parameter in (*inside.values(), *self._defaults[scope].values()):
-                names = names_in(parameter.text)
-                where = "" if names == (parameter.name,) else scope
-                for name in names:
-                    mentions[where, name].append(_Mention(scope, None, parameter.name))
-        for scope, group in self._groups():
-            for parameter_name, texts in (*group.parameters.items(), ("", group.values)):
-                names_of = {text: names_in(_text(text)) for text in set(texts)}
-                if not any(names_of.values()):
-                    continue
-                for number, text in zip(group.numbers, texts, strict=True):
-                    for name in names_of[text]:
-                        mentions[scope, name].append(_Mention(scope, number, parameter_name))
-        return mentions
-
-    def _groups(self) -> Iterator[tuple[str, CardGroup]]:
-        """Yield all cards that count, in columns, with their scope."""
-        for scope, subcircuit in {**self.netlist.subcircuits, "": self.netlist.top}.items():
-            for group in self.netlist.card_groups(subcircuit.cards):
-                yield scope, group
-
-    @cached_property
-    def _scopes_naming(self) -> Mapping[str, list[str]]:
-        """By name: the subcircuits in which it may stand for the top level's."""
-        scopes: defaultdict[str, list[str]] = defaultdict(list)
-        for scope, name in self._mentions:
-            if scope:
-                scopes[name].append(scope)
-        return scopes
-
     def _in_scope(self, place: Place, parameter: Parameter, kind: str) -> Binding:
         """Return a binding of the scope itself; ``w=w`` takes the top level's w."""
         if place.scope and names_in(parameter.text) == (place.name,):
@@ -213,7 +148,7 @@ class Bindings:
     def _direct(self, place: Place) -> Iterator[Use | Place]:
         """Yield what uses a name in one step."""
         scope, name, caller = place
-        for mention in self._mentions.get((scope, name), ()):
+        for mention in self.text.of_name.get((scope, name), ()):
             if mention.card is not None:
                 yield self._on_card(mention.card, mention.name, caller)
                 continue
@@ -221,7 +156,7 @@ class Bindings:
             for way in ways:
                 yield from self._unless_passed(Place(mention.scope, mention.name, way))
         if not scope:
-            for inner in self._scopes_naming.get(name, ()):
+            for inner in self.text.scopes_naming.get(name, ()):
                 for way in self.callers(inner):
                     binding = self.binding(Place(inner, name, way))
                     if binding is not None and not binding.place.scope:
@@ -247,7 +182,3 @@ class Bindings:
         """Tell whether a card calls a subcircuit that is more than a wrapped transistor."""
         known = self.netlist.callee(card) in self.netlist.subcircuits
         return card.letter == "x" and known and card.number not in self.transistors
-
-
-def _text(word: bytes) -> str:
-    return word.decode("utf-8", "surrogateescape")

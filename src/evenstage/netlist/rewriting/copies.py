@@ -21,11 +21,6 @@ if TYPE_CHECKING:
 _COPY_ENDING: Final = re.compile(r"_s\d+$")
 
 
-def wishes_key(changes: Iterable[Respelling]) -> tuple[tuple[int, int, str, str], ...]:
-    """Return what is equal for changes that write the same text."""
-    return tuple(sorted((r.span.start, r.span.end, r.name, r.new) for r in changes))
-
-
 @dataclass(frozen=True, slots=True)
 class LeafCopy:
     """A copy to be made.
@@ -40,12 +35,15 @@ class LeafCopy:
         Numbers of the X cards that will call it.
     changes : tuple of Respelling
         Inside it, with spans on the original.
+    inside : str
+        The definition in whose copy these cards stand, where that is one.
     """
 
     leaf: Subcircuit
     name: str
     callers: tuple[int, ...]
     changes: tuple[Respelling, ...]
+    inside: str = ""
 
 
 def insertions(
@@ -123,7 +121,9 @@ def _widths(changes: list[Respelling]) -> str:
     return ", ".join(f"{' '.join(cards)} {note}" for note, cards in cards_of.items())
 
 
-def content(leaf: Subcircuit, changes: Iterable[Respelling]) -> bytes:
+def content(
+    leaf: Subcircuit, changes: Iterable[Respelling], called: Iterable[tuple[Span, bytes]] = ()
+) -> bytes:
     """Return what a leaf says after some changes, whatever its name, blanks and comments.
 
     Parameters
@@ -132,10 +132,13 @@ def content(leaf: Subcircuit, changes: Iterable[Respelling]) -> bytes:
         The leaf.
     changes : iterable of Respelling
         Those outside it count for nothing.
+    called : iterable of (Span, bytes)
+        What stands for the names of the subcircuits it calls.
     """
     text, moved = _cut_out(leaf)
     names = [span for span in (leaf.name_span, leaf.end_name_span) if span is not None]
     edits = [Edit(moved(span), b"?") for span in names]
+    edits += [Edit(moved(span), words) for span, words in called]
     edits += [replace(r, span=moved(r.span)).edit for r in _inside(leaf, changes)]
     return b" ".join(canonical(apply_edits(text, edits)).split())
 
@@ -177,7 +180,7 @@ def _insertion(netlist: Netlist, copy: LeafCopy, elsewhere: Sequence[Respelling]
         name="",
         old=copy.leaf.name,
         new=copy.name,
-        why=calling_words(netlist, copy.callers),
+        why=calling_words(netlist, copy.callers) + (f" in {copy.inside}" if copy.inside else ""),
     )
     inside = (*_inside(copy.leaf, elsewhere), *copy.changes)
     edits = edits_of(replace(r, span=moved(r.span)) for r in (named, *inside))

@@ -181,8 +181,7 @@ def _fin(block: SizedBlock, slot: Slot, width: float) -> float | None:
     count = block.own_width(card)
     if count is None or block.transistor(slot.card).width_is != "fins":
         return None
-    way = slot.caller if slot.caller is not None else block.bindings.callers(card.scope)[0]
-    return width / block.tracer.value_on_card(card, count, way)
+    return width / block.tracer_of(slot).value_on_card(card, count, block.way(slot))
 
 
 def _fingers_may_change(

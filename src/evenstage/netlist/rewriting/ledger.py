@@ -35,7 +35,7 @@ class Entry:
     Parameters
     ----------
     scope : str
-        Subcircuit whose transistor wants it, in lower case.
+        The leaf it is wanted for, else the subcircuit of the transistor, in lower case.
     value : SpeltValue
         What is written.
     """
@@ -78,7 +78,7 @@ class Ledger:
         """
         step = self.block.transistor(slot.card).width_step or 0.0
         room = max(_STEPS * step, _SHARE * width)
-        scope = self.block.card(slot.card).scope
+        scope = self.block.leaf(slot)
         keyed = {_key(slot, value): Entry(scope, value) for value in spelt}
         for key, entry in keyed.items():
             entered = self.entries.get(key, entry).value

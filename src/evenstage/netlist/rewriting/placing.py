@@ -10,26 +10,18 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Literal, NamedTuple
 
-from evenstage.netlist.rewriting.copies import (
-    LeafCopy,
-    content,
-    free_name,
-    insertions,
-    retargeting,
-    wishes_key,
-)
-from evenstage.netlist.rewriting.families import recall, removal
+from evenstage.netlist.rewriting.copies import retargeting
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Mapping, Sequence
+    from collections.abc import Collection, Mapping, Sequence
 
-    from evenstage.netlist.rewriting.edits import Edit
     from evenstage.netlist.rewriting.families import Family
     from evenstage.netlist.rewriting.ledger import Entry
     from evenstage.netlist.rewriting.respelling import Respelling
     from evenstage.netlist.rewriting.sized_block import SizedBlock
+    from evenstage.netlist.rewriting.stock import Stock
 
 
 @dataclass(frozen=True, slots=True)
@@ -40,46 +32,109 @@ class _Group:
     callers: tuple[int, ...]
 
 
+class _Decision(NamedTuple):
+    """What is done for a group: a member has its text, is changed, or is copied."""
+
+    way: Literal["there", "change", "copy"]
+    member: str
+
+
 @dataclass
 class Placing:
     """The callers of one family.
 
     Parameters
     ----------
-    block : SizedBlock
-        The block.
+    stock : Stock
+        The definitions.
     family : Family
         The leaf and its copies.
     wished : Mapping of int to sequence of Entry
         What each caller wants changed in the definition it calls.
-    shared : sequence of Respelling
-        What changes for everybody.
+    calls : dict of int to str
+        The definition that each caller will call, once ``place`` has decided.
     """
 
-    block: SizedBlock
+    stock: Stock
     family: Family
     wished: Mapping[int, Sequence[Entry]]
-    shared: Sequence[Respelling]
-    _texts: dict[object, bytes] = field(default_factory=dict, repr=False)
-    _place: dict[int, str] = field(default_factory=dict, repr=False)
-    _changed_members: set[str] = field(default_factory=set, repr=False)
-    in_place: list[Respelling] = field(default_factory=list)
-    new: list[LeafCopy] = field(default_factory=list)
+    calls: dict[int, str] = field(default_factory=dict)
 
-    def place(self, taken: set[str]) -> None:
-        """Decide for every caller; ``taken`` are names no new copy may have.
+    @property
+    def block(self) -> SizedBlock:
+        """The block."""
+        return self.stock.block
+
+    def place(self) -> None:
+        """Decide for every caller.
 
         Raises
         ------
         ValueError
             If the family would have more copies than allowed: a fault of ours.
         """
+        plan = self._decided(in_place_first=False)
+        if self._copies_in(plan) > self.block.copies_per_leaf:
+            plan = self._decided(in_place_first=True)
         for member in self.family.members:
-            self._place.update(dict.fromkeys(self._staying(member), member))
+            self.calls.update(dict.fromkeys(self._staying(member), member))
+        for group, decision in zip(self._groups, plan, strict=True):
+            self.calls.update(dict.fromkeys(group.callers, self._done(group, decision)))
+        count, allowed = len(self._called() - {self.family.root}), self.block.copies_per_leaf
+        if count > allowed and self._called() & self.stock.copies.keys():
+            raise ValueError(f"{count} copies of {self.family.root}, {allowed} allowed")
+
+    def _called(self) -> set[str]:
+        """Return the definitions that sizing variables call."""
+        sized = self.block.sized_callers
+        return {member for caller, member in self.calls.items() if caller in sized}
+
+    def _decided(self, *, in_place_first: bool) -> list[_Decision]:
+        """Return what is done for each group.
+
+        Parameters
+        ----------
+        in_place_first : bool
+            Whether a member is changed for a group even if another one has its text already, or it
+            has a text itself that others want. That takes fewer copies where they are scarce.
+        """
+        changed, held = set(self.stock.changed), set(self.stock.held)
+        wanted = set() if in_place_first else {group.text for group in self._groups}
+        plan: list[_Decision] = []
         for group in self._groups:
-            member = self._with_text(group) or self._changed(group) or self._copied(group, taken)
-            self._place.update(dict.fromkeys(group.callers, member))
-        self._check()
+            there = self._with_text(group, changed)
+            member = self._to_change(group, changed | held, wanted)
+            if there is not None and not (in_place_first and member):
+                held.add(there)
+                plan.append(_Decision("there", there))
+            elif member is not None:
+                changed.add(member)
+                plan.append(_Decision("change", member))
+            else:
+                plan.append(_Decision("copy", self._member(group.callers[0])))
+        return plan
+
+    def _copies_in(self, plan: Sequence[_Decision]) -> int:
+        """Return how many copies sizing variables would call."""
+        sized, root = self.block.sized_callers, self.family.root
+        staying = {
+            member for member in self.family.copies if sized.intersection(self._staying(member))
+        }
+        there = {one.member for one in plan if one.way != "copy" and one.member != root}
+        return len(staying | there) + sum(one.way == "copy" for one in plan)
+
+    def _done(self, group: _Group, decision: _Decision) -> str:
+        """Do what was decided for a group; return what it will call."""
+        if decision.way == "there":
+            self.stock.held.add(decision.member)
+            return decision.member
+        if decision.way == "copy":
+            changes = self._changes(group.callers[0])
+            return self.stock.copy(decision.member, changes, group.callers)
+        first = next(c for c in group.callers if self._member(c) == decision.member)
+        changes, detached = self._changes(first), self._detaches([first])
+        self.stock.change(decision.member, changes, detached=detached)
+        return decision.member
 
     @cached_property
     def _groups(self) -> list[_Group]:
@@ -92,18 +147,7 @@ class Placing:
 
     def _wanted(self, caller: int) -> bytes:
         """Return the text a caller wants."""
-        member, changes = self._member(caller), self._changes(caller)
-        key = (member, wishes_key(changes))
-        if key not in self._texts:
-            leaf = self.block.netlist.subcircuits[member]
-            self._texts[key] = content(leaf, (*self.shared, *changes))
-        return self._texts[key]
-
-    def _text(self, member: str) -> bytes:
-        """Return the text a member has for all who want nothing."""
-        if member not in self._texts:
-            self._texts[member] = content(self.block.netlist.subcircuits[member], self.shared)
-        return self._texts[member]
+        return self.stock.text(self._member(caller), self._changes(caller))
 
     def _member(self, caller: int) -> str:
         return self.block.netlist.callee(self.block.card(caller))
@@ -118,95 +162,49 @@ class Placing:
         """Return the callers of a member that want nothing."""
         return [caller for caller in self._callers(member) if caller not in self.wished]
 
-    def _with_text(self, group: _Group) -> str | None:
+    def _with_text(self, group: _Group, changed: Collection[str]) -> str | None:
         """Return a member that has a group's text already; one that keeps callers first."""
-        fitting = [
-            member
-            for member in self.family.members
-            if member not in self._changed_members and self._text(member) == group.text
-        ]
+        fitting = [m for m in self.stock.having(self.family, group.text) if m not in changed]
         return min(fitting, key=lambda member: not self._staying(member), default=None)
 
-    def _changed(self, group: _Group) -> str | None:
-        """Return a member that a group's text can be written into, and write it there."""
+    def _to_change(
+        self, group: _Group, touched: Collection[str], wanted: Collection[bytes]
+    ) -> str | None:
+        """Return a member that a group's text can be written into."""
         calling: dict[str, list[int]] = {}
         for caller in group.callers:
             calling.setdefault(self._member(caller), []).append(caller)
         for member in sorted(calling, key=lambda m: (-len(calling[m]), calling[m])):
-            if self._may_change(member, calling[member]):
-                self._changed_members.add(member)
-                self.in_place += self._changes(calling[member][0])
+            free = member not in touched and self.stock.text(member) not in wanted
+            if free and self._may_change(member, calling[member]):
                 return member
         return None
 
     def _may_change(self, member: str, callers: Sequence[int]) -> bool:
-        wanted = {group.text for group in self._groups}
-        if member in self._changed_members or self._staying(member) or self._text(member) in wanted:
+        if self._staying(member):
             return False
         if member != self.family.root:
             return True
-        detached = any(e.value.way == "detached" for c in callers for e in self.wished[c])
-        return not detached and set(callers) == set(self._callers(member))
+        return not self._detaches(callers) and set(callers) == set(self._callers(member))
 
-    def _copied(self, group: _Group, taken: set[str]) -> str:
-        """Add a copy with a group's text and return its name."""
-        first = group.callers[0]
-        leaf = self.block.netlist.subcircuits[self._member(first)]
-        name = free_name(leaf.name_span.text if leaf.name_span else leaf.name, taken)
-        self.new.append(LeafCopy(leaf, name, group.callers, self._changes(first)))
-        return name
-
-    def _check(self) -> None:
-        kept = {member for member in self._place.values() if member in self.family.copies}
-        count = len(kept) + len(self.new)
-        if self.new and count > self.block.copies_per_leaf:
-            allowed = self.block.copies_per_leaf
-            raise ValueError(f"{count} copies of {self.family.root}, {allowed} allowed")
+    def _detaches(self, callers: Sequence[int]) -> bool:
+        """Tell whether some callers want a number in the place of an expression."""
+        return any(e.value.way == "detached" for c in callers for e in self.wished[c])
 
     # What follows.
 
     def moves(self) -> list[Respelling]:
         """Return what makes the X cards call other definitions than so far."""
         return [
-            retargeting(self.block.netlist, caller, self._name(target), self._changes(caller))
-            for caller, target in sorted(self._place.items())
+            retargeting(self.block.netlist, caller, self.stock.shown(target), self._changes(caller))
+            for caller, target in sorted(self.calls.items())
             if target != self._member(caller)
         ]
-
-    def _name(self, member: str) -> str:
-        known = self.block.netlist.subcircuits.get(member)
-        return member if known is None or known.name_span is None else known.name_span.text
-
-    @cached_property
-    def unused(self) -> tuple[str, ...]:
-        """The copies that nobody calls any more and that may be edited."""
-        used = set(self._place.values())
-        return tuple(
-            member for member in self.family.copies if member not in used and self._may_go(member)
-        )
-
-    def _may_go(self, member: str) -> bool:
-        body = self.block.netlist.subcircuits[member].body
-        return body is not None and self.block.is_editable(body)
 
     @property
     def left(self) -> tuple[str, ...]:
         """The name of the leaf as first drawn if it had callers and they all go to copies."""
         root = self.family.root
-        calling = [caller for caller, _ in self._place.items() if self._member(caller) == root]
-        return (self._name(root),) if calling and root not in self._place.values() else ()
-
-    def edits(self, elsewhere: Iterable[Respelling]) -> list[Edit]:
-        """Return what is added and taken out, and who is said to call what."""
-        netlist = self.block.netlist
-        callers_of: dict[str, list[int]] = {}
-        for caller, member in sorted(self._place.items()):
-            callers_of.setdefault(member, []).append(caller)
-        told = [
-            edit
-            for member in self.family.copies
-            if set(callers := callers_of.get(member, [])) - set(self._callers(member))
-            for edit in recall(netlist, netlist.subcircuits[member], tuple(callers))
-        ]
-        gone = [removal(netlist.subcircuits[member]) for member in self.unused]
-        return [*gone, *insertions(netlist, self.new, tuple(elsewhere)), *told]
+        calling = [caller for caller in self.calls if self._member(caller) == root]
+        gone = bool(calling) and root not in self.calls.values()
+        return (self.stock.shown(root),) if gone else ()

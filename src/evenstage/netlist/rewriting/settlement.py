@@ -6,13 +6,16 @@ from collections import defaultdict
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
-from evenstage.netlist.rewriting.copies import taken_names
+from evenstage.netlist.rewriting.calls import Calls
+from evenstage.netlist.rewriting.copies import insertions
+from evenstage.netlist.rewriting.families import removal
 from evenstage.netlist.rewriting.placing import Placing
 from evenstage.netlist.rewriting.respelling import Respelling, edits_of
+from evenstage.netlist.rewriting.stock import Stock
 from evenstage.source import Span
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Mapping
 
     from evenstage.netlist.rewriting.edits import Edit
     from evenstage.netlist.rewriting.families import Family
@@ -62,13 +65,24 @@ def settle(
     shared = [e.value.respelling for e in entries.values() if e.value.way == "shared"]
     # Calls that agree share one respelling of the default.
     shared += dict.fromkeys(defaults.values())
-    placings = _placings(block, entries, shared)
+    stock = Stock(block, shared)
+    placings = [Placing(stock, *wished) for wished in _by_family(block, entries).items()]
+    # What leaves with subcircuits change or call decides what else may become of these.
+    for placing in sorted(placings, key=lambda p: block.below(p.family.root).is_flat):
+        placing.place()
     moves = [move for placing in placings for move in placing.moves()]
-    everywhere = [*shared, *moves]
-    structure = [edit for placing in placings for edit in placing.edits(everywhere)]
-    inside = [change for placing in placings for change in placing.in_place]
+    everywhere = (*shared, *moves)
+    calls = Calls(stock, {c: target for p in placings for c, target in p.calls.items()})
+    unused = calls.unused()
+    structure = [
+        *(removal(stock.definition(name)) for name in unused),
+        *insertions(block.netlist, stock.copies.values(), everywhere),
+        *calls.told(unused),
+    ]
     gone = [edit.span for edit in structure if not edit.text]
-    kept = [r for r in (*everywhere, *inside) if not any(_is_within(r.span, g) for g in gone)]
+    kept = [
+        r for r in (*everywhere, *stock.in_place) if not any(_is_within(r.span, g) for g in gone)
+    ]
     # At one place a copy comes before the comment of the card that follows it.
     left = [name for placing in placings for name in placing.left]
     return [*structure, *edits_of(kept)], left
@@ -92,18 +106,6 @@ def _passed(block: SizedBlock, key: Key, default: Respelling) -> Respelling:
     assert key.caller is not None
     span = block.card(key.caller).span
     return replace(default, span=Span(span.source, span.end, span.end))
-
-
-def _placings(
-    block: SizedBlock, entries: Mapping[Key, Entry], shared: Sequence[Respelling]
-) -> list[Placing]:
-    """Return where the callers of all leaves are placed that want something inside them."""
-    wished = _by_family(block, entries)
-    taken = taken_names(block.netlist) if wished else set()
-    placings = [Placing(block, family, by_caller, shared) for family, by_caller in wished.items()]
-    for placing in placings:
-        placing.place(taken)
-    return placings
 
 
 def _by_family(

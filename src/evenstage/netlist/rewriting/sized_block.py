@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections import Counter
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Final, NamedTuple
 
 import numpy as np
 
+from evenstage.netlist.rewriting.below import find_below
 from evenstage.netlist.rewriting.bindings import Bindings
 from evenstage.netlist.rewriting.families import Family, find_families
 from evenstage.netlist.rewriting.fingers import Drawing
@@ -18,18 +19,24 @@ if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
     from pathlib import Path
 
-    from evenstage.netlist.devices import Devices, IntArray
+    from evenstage.netlist.devices import Devices, FloatArray, IntArray
     from evenstage.netlist.netlist import Card, Netlist, Parameter
+    from evenstage.netlist.rewriting.below import Below
+    from evenstage.netlist.rewriting.bindings import Ways
     from evenstage.process.process import Process, Transistor
     from evenstage.source import Span
+
+#: Relative difference below which two sizes are one.
+_SAME: Final = 1e-9
 
 
 class Slot(NamedTuple):
     """One width of one sizing variable.
 
     ``card`` is the number of the transistor card, or of the X card that calls a wrapped transistor.
-    ``caller`` is the number of the X card that calls the leaf holding it, where that call is the
-    sizing variable; None: the card has one width for all callers of its subcircuit.
+    ``caller`` is the number of the X card that calls the leaf holding it, itself or in a subcircuit
+    that the leaf calls, where that call is the sizing variable; None: the card has one width for
+    all callers of its subcircuit.
     """
 
     card: int
@@ -102,30 +109,85 @@ class SizedBlock:
     def device(self, slot: Slot) -> int:
         """Return the first device of a slot.
 
-        On a call that reaches the card only through further calls it is the card's first device.
-
         Raises
         ------
         KeyError
             If the block has none: a fault of ours.
         """
-        on_call = None
-        if slot.caller is not None:
-            on_call = self._device_of_call.get((slot.card, slot.caller))
-        return self._device_of_card[slot.card] if on_call is None else on_call
+        if slot.caller is None:
+            return self._device_of_card[slot.card]
+        return self._device_of_call[slot.card, slot.caller]
 
     def drawing(self, slot: Slot) -> Drawing:
         """Return how a slot is drawn."""
         device = self.device(slot)
         return Drawing(float(self.devices.width[device]), float(self.devices.fingers[device]))
 
-    def has_one_width(self, slot: Slot) -> bool:
-        """Tell whether all devices of a slot are equally wide."""
+    def is_drawn_once(self, slot: Slot) -> bool:
+        """Tell whether all devices of a slot have the same width, areas and edges."""
         mine = self.devices.card == slot.card
         if slot.caller is not None:
             mine &= self._callers == slot.caller
-        widths = self.devices.width[mine]
-        return bool(np.ptp(widths) <= 1e-9 * widths.max())
+        of = self.devices
+        columns = (of.width, of.drain_area, of.source_area, of.drain_edge, of.source_edge)
+        return all(_is_constant(column[mine]) for column in columns)
+
+    # Leaves and what they call.
+
+    def leaf(self, slot: Slot) -> str:
+        """Return the subcircuit whose call is the sizing variable, or else the card's own."""
+        caller = self.card(slot.card if slot.caller is None else slot.caller)
+        return caller.scope if slot.caller is None else self.netlist.callee(caller)
+
+    def below(self, leaf: str) -> Below:
+        """Return what a leaf calls, directly and through others."""
+        if leaf not in self._below:
+            self._below[leaf] = find_below(self.bindings, leaf)
+        return self._below[leaf]
+
+    @cached_property
+    def _below(self) -> dict[str, Below]:
+        return {}
+
+    def way(self, slot: Slot) -> int | None:
+        """Return the X card that calls the subcircuit of a slot's first device."""
+        if slot.caller is None:
+            return self.bindings.callers(self.card(slot.card).scope)[0]
+        return int(self._direct_callers[self.device(slot)])
+
+    def ways(self, slot: Slot) -> Ways:
+        """Return the X cards that call the subcircuit of a slot's card, where they count for it."""
+        scope = self.card(slot.card).scope
+        if slot.caller is not None and self.leaf(slot) == scope:
+            return (slot.caller,)
+        return self.tracer_of(slot).bindings.callers(scope)
+
+    def tracer_of(self, slot: Slot) -> Tracer:
+        """Return what finds the numbers behind a width, by way of its leaf's call alone."""
+        leaf = self.leaf(slot)
+        if slot.caller is None or leaf == self.card(slot.card).scope:
+            return self.tracer
+        if slot.caller not in self._tracers:
+            only = {**self.below(leaf).callers, leaf: (slot.caller,)}
+            self._tracers[slot.caller] = Tracer(replace(self.bindings, only=only))
+        return self._tracers[slot.caller]
+
+    @cached_property
+    def _tracers(self) -> dict[int, Tracer]:
+        return {}
+
+    def leaf_around(self, scope: str) -> str | None:
+        """Return a leaf that calls a subcircuit on its way to transistors sized with the leaf."""
+        return self._leaf_around.get(scope)
+
+    @cached_property
+    def _leaf_around(self) -> Mapping[str, str]:
+        direct = set(zip(self.devices.card.tolist(), self._direct_callers.tolist(), strict=True))
+        deep = (s for s in self.variable_of if s.caller is not None and tuple(s) not in direct)
+        found: dict[str, str] = {}
+        for leaf in dict.fromkeys(map(self.leaf, deep)):
+            found.update(dict.fromkeys(self.below(leaf).order[:-1], leaf))
+        return found
 
     def own_width(self, card: Card) -> Parameter | None:
         """Return the width as a transistor card gives it, or None if it does not."""
@@ -135,10 +197,44 @@ class SizedBlock:
         """Return the lower-case name of the parameter that holds a transistor card's width."""
         return self.transistor(card.number).width_parameter.lower()
 
-    def is_one_for_all(self, card: Card) -> bool:
-        """Tell whether all callers of a card's leaf belong to one variable."""
-        everybody = len(self.bindings.callers(card.scope))
-        return self._slots_of_card[card.number] == everybody and card.number in self._one_variable
+    def is_one_for_all(self, slot: Slot, scope: str) -> bool:
+        """Tell whether all callers of a slot's leaf belong to one variable.
+
+        The definition that holds what changes, ``scope``, must serve nobody else.
+        """
+        leaf = self.leaf(slot)
+        callers = self.bindings.callers(leaf)
+        variables = {self.variable_of.get(Slot(slot.card, caller)) for caller in callers}
+        one = len(variables) == 1 and None not in variables
+        return one and (scope == leaf or scope in self.below(leaf).owned(self.bindings))
+
+    def copies_called(self, family: Family) -> int:
+        """Return how many copies of a leaf some sizing variables call."""
+        return sum(
+            any(caller in self.sized_callers for caller in self.bindings.callers(copy))
+            for copy in family.copies
+        )
+
+    def is_called_elsewhere(self, leaf: str) -> bool:
+        """Tell whether a leaf is called by cards that are no sizing variables."""
+        return any(caller not in self.sized_callers for caller in self.bindings.callers(leaf))
+
+    @cached_property
+    def sizing_scopes(self) -> frozenset[str]:
+        """The definitions that hold cards with sizes of their own: calls of leaves, transistors."""
+        holders = {slot.card if slot.caller is None else slot.caller for slot in self.variable_of}
+        return frozenset(map(self.netlist.cards.scope, holders))
+
+    @cached_property
+    def sized_callers(self) -> frozenset[int]:
+        """The X cards that are sizing variables."""
+        return frozenset(slot.caller for slot in self.variable_of if slot.caller is not None)
+
+    def body(self, name: str) -> Span:
+        """Return the text of a definition."""
+        body = self.netlist.subcircuits[name].body
+        assert body is not None
+        return body
 
     def is_editable(self, span: Span) -> bool:
         """Tell whether a span's file lies in the folder of the main file or below it.
@@ -164,7 +260,7 @@ class SizedBlock:
     @cached_property
     def bindings(self) -> Bindings:
         """The parameter names of the text."""
-        return Bindings(self.netlist, frozenset(self._device_of_card))
+        return Bindings.of(self.netlist, frozenset(self._device_of_card))
 
     @cached_property
     def tracer(self) -> Tracer:
@@ -172,9 +268,21 @@ class SizedBlock:
         return Tracer(self.bindings)
 
     @cached_property
-    def _callers(self) -> IntArray:
+    def _direct_callers(self) -> IntArray:
         """Number of the X card that calls each transistor's subcircuit, -1 for the block's own."""
         return self.devices.instance_card[self.devices.instance]
+
+    @cached_property
+    def _callers(self) -> IntArray:
+        """Number of the X card whose size each transistor has; else that of its subcircuit."""
+        parent, card = self.devices.instance_parent, self.devices.instance_card
+        caller = np.where(np.isin(card, list(self.sized_callers)), card, -1)
+        # Outermost calls count: each round takes over what the level above has found.
+        waiting = np.flatnonzero((parent > 0) & (caller[parent] >= 0))
+        while waiting.size:
+            caller[waiting] = caller[parent[waiting]]
+            waiting = np.flatnonzero(np.isin(parent, waiting))
+        return np.where(caller < 0, card, caller)[self.devices.instance]
 
     @cached_property
     def _readings(self) -> Counter[tuple[Path, int]]:
@@ -190,17 +298,6 @@ class SizedBlock:
         return frozenset(p for p in paths if any(map(p.is_relative_to, folders))) | {main}
 
     @cached_property
-    def _slots_of_card(self) -> Counter[int]:
-        return Counter(slot.card for slot in self.variable_of)
-
-    @cached_property
-    def _one_variable(self) -> frozenset[int]:
-        """The cards whose slots all belong to one variable."""
-        pairs = {(slot.card, variable) for slot, variable in self.variable_of.items()}
-        counts = Counter(card for card, _ in pairs)
-        return frozenset(card for card, count in counts.items() if count == 1)
-
-    @cached_property
     def _device_of_card(self) -> dict[int, int]:
         cards, firsts = np.unique(self.devices.card, return_index=True)
         return dict(zip(cards.tolist(), firsts.tolist(), strict=True))
@@ -210,6 +307,15 @@ class SizedBlock:
         pairs = np.stack([self.devices.card, self._callers])
         pairs, firsts = np.unique(pairs, axis=1, return_index=True)
         return dict(zip(zip(*pairs.tolist(), strict=True), firsts.tolist(), strict=True))
+
+
+def _is_constant(values: FloatArray) -> bool:
+    """Tell whether values are equal but for noise, or all unknown."""
+    known = values[~np.isnan(values)]
+    if not len(known):
+        return True
+    spread = float(np.ptp(known))
+    return len(known) == len(values) and spread <= _SAME * float(np.abs(known).max())
 
 
 def _is_inside(inner: Span, outer: Span) -> bool:

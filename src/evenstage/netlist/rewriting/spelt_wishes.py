@@ -6,9 +6,9 @@ import math
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
-from evenstage.netlist.rewriting.bindings import names_in
 from evenstage.netlist.rewriting.diffusion import SIDES, edge_factor
 from evenstage.netlist.rewriting.fingers import Drawing, fingers_needed, written_ratio
+from evenstage.netlist.rewriting.mentions import names_in
 from evenstage.netlist.rewriting.respelling import Respelling
 from evenstage.netlist.rewriting.spelling import is_number, respell, respell_count, shortest
 from evenstage.netlist.values import parse_value
@@ -103,8 +103,7 @@ class _Wish:
         value = parse_value(origin.model).number
         before, old = value, origin.parameter.text
         if origin.way == "detached":
-            caller = self.handle.slot.caller
-            before = self.block.tracer.value_on_card(self.card, origin.parameter, caller)
+            before = self._value(origin.parameter)
             old += f" = {respell(origin.model, value, before)}"
         if self.handle.transistor.width_is == "fins":
             text = respell_count(origin.model, value, max(1, round(before * ratio)))
@@ -166,9 +165,13 @@ class _Wish:
             return None if zero else respell(parameter.text, 1.0, growth)
         if self.local != "detached" or not names_in(parameter.text):
             return None
-        caller = self.handle.slot.caller
-        value = self.block.tracer.value_on_card(self.card, parameter, caller) * growth
+        value = self._value(parameter) * growth
         return None if math.isnan(value) else f"{shortest(value)}".lower()
+
+    def _value(self, parameter: Parameter) -> float:
+        """Return what a parameter of the card means now, in its text's own unit."""
+        slot = self.handle.slot
+        return self.block.tracer_of(slot).value_on_card(self.card, parameter, self.block.way(slot))
 
     @property
     def _end(self) -> Span:

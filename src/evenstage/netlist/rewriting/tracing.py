@@ -8,7 +8,8 @@ from itertools import islice, product
 from typing import TYPE_CHECKING, Final
 
 from evenstage.netlist.expression import FormulaError
-from evenstage.netlist.rewriting.bindings import Bindings, Place, names_in
+from evenstage.netlist.rewriting.bindings import Bindings, Place
+from evenstage.netlist.rewriting.mentions import names_in
 from evenstage.netlist.rewriting.spelling import is_number
 from evenstage.netlist.values import parse_value
 
