@@ -8,12 +8,15 @@ smallest.
 
 from __future__ import annotations
 
+from collections import Counter
 from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 from scipy.cluster.hierarchy import fcluster, linkage
+
+from evenstage.netlist.rewriting.handles import copy_texts
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -98,7 +101,7 @@ class _Member:
     def sizes(self) -> int:
         """How many sizes its calls ask for."""
         distinct = np.unique(np.rint(self.log_size[self.changing] / _EQUAL))
-        return len(distinct) + self.some_stay
+        return max(len(distinct) + self.some_stay, 1)
 
     def copies(self, sizes: int) -> int:
         """Return how many copies so many sizes need; a leaf all calls agree on is no copy."""
@@ -135,22 +138,20 @@ def _calls_by_family(
 ) -> dict[Family, list[tuple[Text, IntArray]]]:
     """Return the sizes of the calls of each leaf that would have to be copied, ascending.
 
-    A leaf and its copies stand together, each with what its text may become.
+    A leaf and its copies stand together, each with what its text may become; so do the calls of
+    one that cannot share a copy whatever their sizes.
     """
     block = handles.block
-    found: dict[str, set[int]] = {}
-    detached: set[str] = set()
-    for slot, size in parts.variable_of.items():
-        if slot.caller is None:
-            continue
-        ways = {origin.way for origin in handles[slot].origins}
-        if ways & {"leaf", "detached"}:
-            found.setdefault(leaf := block.leaf(slot), set()).add(size)
-            detached.update([leaf] if "detached" in ways else [])
+    texts = copy_texts(block, handles.values())
+    leaves = Counter(text.leaf for text in texts)
     families: dict[Family, list[tuple[Text, IntArray]]] = {}
-    for leaf, members in found.items():
+    for (leaf, drawn), slots in texts.items():
         family = block.family(leaf)
-        stays = leaf in detached or block.is_called_elsewhere(leaf)
+        stays = drawn or leaves[leaf] > 1 or block.is_called_elsewhere(leaf)
         text: Text = "copy" if leaf != family.root else "kept" if stays else "leaf"
-        families.setdefault(family, []).append((text, np.array(sorted(members))))
+        sizes = sorted({parts.variable_of[slot] for slot in slots})
+        families.setdefault(family, []).append((text, np.array(sizes)))
+    for family in families:
+        idle = [c for c in family.copies if not leaves[c] and block.is_called_for_size(c)]
+        families[family] += [("copy", np.zeros(0, np.int64))] * len(idle)
     return families

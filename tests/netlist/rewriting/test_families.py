@@ -69,6 +69,11 @@ class TestFinding:
         family = Family("inv", ("inv_s1", "inv_s2"))
         assert find_families(netlist) == dict.fromkeys(["inv", "inv_s1", "inv_s2"], family)
 
+    def test_a_copy_of_a_copy_that_is_gone_is_the_leafs(self) -> None:
+        text = INVERTER + leaf(b"inv_s2", 2, b"x3", b"inv_s1")
+        netlist = read_bytes(b"t\n" + text, "a.sp", Path("/design"))
+        assert find_families(netlist)["inv_s2"] == Family("inv", ("inv_s2",))
+
     @pytest.mark.parametrize(
         "text",
         [
@@ -77,6 +82,7 @@ class TestFinding:
             INVERTER.replace(b"inv", b"nand") + leaf(b"inv_s1", 2, b"x2"),
             INVERTER + leaf(b"inv_s1", 2, b"x2").replace(b".subckt", b"* mine\n.subckt"),
             leaf(b"inv_s1", 2, b"x2", b"inv_s2") + leaf(b"inv_s2", 2, b"x2", b"inv_s1"),
+            leaf(b"inv_s2", 2, b"x2", b"inv_s1"),
             leaf(b"inv_s1", 2, b"x2", b"inv_s1"),
         ],
     )

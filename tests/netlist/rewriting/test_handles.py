@@ -135,16 +135,33 @@ class TestReasons:
         assert why == {"'inv' holds further definitions and cannot be copied"}
         assert reasons(sized(text.replace(b"x2", b"*x2"), leaves={"inv"})) == {}
 
-    def test_a_width_deeper_inside_a_named_leaf(self) -> None:
+    def test_a_width_deeper_inside_a_leaf_has_the_leafs_size(self) -> None:
         text = (
             b"t\n" + INVERTER + b".subckt buf a y vdd vss\nx1 a b vdd vss inv\n"
-            b"x2 b y vdd vss inv\n.ends\nxb a y vdd vss buf\n"
+            b"x2 b y vdd vss inv\n.ends\nxb a y vdd vss buf\nxc y z vdd vss inv\n"
         )
         block = sized(text).block
-        xb = next(n for n in range(len(block.netlist)) if block.netlist.card(n).name == "xb")
-        deeper = WidthHandles(replace(block, variable_of={Slot(0, xb): 0}))
-        assert set(deeper.cannot_change().values()) == {
-            "it stands in a subcircuit that its leaf calls"
+        number = {block.netlist.card(n).name: n for n in range(len(block.netlist))}
+        mn = number["mn"]
+        inside, beside = Slot(mn, number["xb"]), Slot(mn, number["xc"])
+        handles = WidthHandles(replace(block, variable_of={inside: 0, beside: 1}))
+        assert handles.cannot_change() == {}
+        assert [origin.way for origin in handles[inside].origins] == ["leaf"]
+
+    def test_cards_that_a_leaf_calls_and_others_size_keep_their_widths(self) -> None:
+        """The subcircuit stands in the leaf, and in the block as well."""
+        text = (
+            b"t\n" + INVERTER + b".subckt one a y vdd vss\nx1 a y vdd vss inv\n.ends\n"
+            b".subckt buf a y vdd vss\nx1 a b vdd vss one\nx2 b y vdd vss one\n.ends\n"
+            b"xb a y vdd vss buf\nxc y z vdd vss one\n"
+        )
+        block = sized(text).block
+        number = {block.netlist.card(n).name: n for n in range(len(block.netlist))}
+        one = block.netlist.subcircuits["one"].cards[0]
+        inside, beside = Slot(number["mn"], number["xb"]), Slot(number["mn"], one)
+        handles = WidthHandles(replace(block, variable_of={inside: 0, beside: 1}))
+        assert handles.cannot_change() == {
+            beside: "'one' stands in the leaf 'buf' too, which has sizes of its own"
         }
 
     def test_a_subcircuit_defined_twice_alike_stays(self) -> None:

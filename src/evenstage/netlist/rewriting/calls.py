@@ -42,6 +42,13 @@ class Calls:
         return {**self.placed, **self.stock.moved}
 
     @cached_property
+    def _coming(self) -> Mapping[str, list[int]]:
+        coming: dict[str, list[int]] = {}
+        for caller, target in self._targets.items():
+            coming.setdefault(target, []).append(caller)
+        return coming
+
+    @cached_property
     def _families(self) -> dict[Family, None]:
         """The families of all leaves concerned, and of all that these call."""
         leaves = {self._before(caller) for caller in self.placed} | set(self.placed.values())
@@ -58,8 +65,7 @@ class Calls:
     def _callers(self, name: str, gone: Collection[str]) -> list[int]:
         """Return the cards of the text that call a definition in the end."""
         staying = [c for c in self._callers_before(name) if self._targets.get(c, name) == name]
-        coming = [c for c, target in self._targets.items() if target == name]
-        found = sorted({*staying, *coming})
+        found = sorted({*staying, *self._coming.get(name, ())})
         return [caller for caller in found if self._block.card(caller).scope not in gone]
 
     @cached_property

@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 
     from evenstage.netlist.netlist import Netlist, Subcircuit
 
-_COPY_NAME: Final = re.compile(r".+_s\d+", re.DOTALL)
+_COPY_NAME: Final = re.compile(r"(.+)_s\d+", re.DOTALL)
 _NAMED_CALLERS: Final = 3
 
 
@@ -49,8 +49,7 @@ def find_families(netlist: Netlist) -> Mapping[str, Family]:
     copied_from = {
         name: origin
         for name, subcircuit in netlist.subcircuits.items()
-        if (origin := netlist.callees.key(name, _origin(subcircuit))) in netlist.subcircuits
-        and origin != name
+        if (origin := _known_origin(netlist, name, _origin(subcircuit))) and origin != name
     }
     copies: dict[str, list[str]] = {}
     for name in copied_from:
@@ -59,6 +58,16 @@ def find_families(netlist: Netlist) -> Mapping[str, Family]:
             copies.setdefault(root, []).append(name)
     families = (Family(root, tuple(names)) for root, names in copies.items())
     return {member: family for family in families for member in family.members}
+
+
+def _known_origin(netlist: Netlist, name: str, origin: str) -> str:
+    """Return the definition another was copied from; that one's own origin where it is gone."""
+    match = _COPY_NAME.fullmatch(origin)
+    for known in (origin, match[1] if match else ""):
+        key = netlist.callees.key(name, known)
+        if key in netlist.subcircuits:
+            return key
+    return ""
 
 
 def _root(name: str, copied_from: Mapping[str, str]) -> str | None:

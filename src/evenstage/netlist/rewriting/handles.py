@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
-from typing import TYPE_CHECKING
+from dataclasses import dataclass, field, replace
+from functools import cached_property
+from typing import TYPE_CHECKING, NamedTuple
 
 from evenstage.errors import Notice
 from evenstage.netlist.rewriting.fingers import Drawing, drawable, widest
@@ -13,9 +14,10 @@ from evenstage.netlist.rewriting.sized_block import SizedBlock, Slot
 from evenstage.netlist.rewriting.spelling import is_number
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator
+    from collections.abc import Iterable, Iterator
 
     from evenstage.netlist.devices import Devices
+    from evenstage.netlist.rewriting.families import Family
     from evenstage.process.process import Process, Transistor
 
 
@@ -48,6 +50,11 @@ class WidthHandle:
     fingers_may_change: bool = False
     fin: float | None = None
     reason: str = ""
+
+    @property
+    def is_detached(self) -> bool:
+        """Whether a number takes the place of an expression in a copy of the leaf."""
+        return any(origin.way == "detached" for origin in self.origins)
 
     @property
     def width_max(self) -> float | None:
@@ -98,10 +105,37 @@ class WidthHandles(Mapping[Slot, WidthHandle]):
     def __getitem__(self, slot: Slot) -> WidthHandle:
         if slot not in self:
             raise KeyError(slot)
+        found = self._alone(slot)
+        if found.is_detached and slot in self._beyond_the_copies:
+            leaf = self.block.leaf(slot)
+            reason = f"its width is a parameter's, and '{leaf}' has all the copies it may have"
+            return replace(found, origins=(), reason=reason)
+        return found
+
+    def _alone(self, slot: Slot) -> WidthHandle:
+        """Return a slot's handle as if no other call needed a copy of its leaf."""
         known = self._found.get(slot)
         if known is None:
             known = self._found[slot] = _find(self.block, slot)
         return known
+
+    @cached_property
+    def _beyond_the_copies(self) -> frozenset[Slot]:
+        """The slots whose calls would need more copies than there may be, whatever their sizes.
+
+        Where numbers take the place of expressions, calls with other widths drawn never share one.
+        """
+        texts: dict[Family, dict[CopyText, list[Slot]]] = {}
+        for text, slots in copy_texts(self.block, map(self._alone, self)).items():
+            texts.setdefault(self.block.family(text.leaf), {})[text] = slots
+        beyond: list[Slot] = []
+        for family, slots_of in texts.items():
+            plain = {text.leaf for text in slots_of if not text.drawn}
+            called = {c for c in family.copies if self.block.is_called_for_size(c)}
+            left = max(self.block.copies_per_leaf - len(plain | called), 0)
+            drawn = [slots for text, slots in slots_of.items() if text.drawn]
+            beyond += (slot for slots in drawn[left:] for slot in slots)
+        return frozenset(beyond)
 
     def __contains__(self, slot: object) -> bool:
         return slot in self.block.variable_of
@@ -128,6 +162,40 @@ class WidthHandles(Mapping[Slot, WidthHandle]):
         names = tuple(dict.fromkeys(card.name for card in cards))
         place = cards[0].span.place
         return Notice("width-fixed", f"{names[0]} keeps its width: {reason}", place, names)
+
+
+class CopyText(NamedTuple):
+    """What calls of a leaf have in common whose copies can be one: the leaf, and drawn widths.
+
+    ``drawn`` holds the transistor cards on which numbers take the place of expressions, each with
+    its width, m.
+    """
+
+    leaf: str
+    drawn: tuple[tuple[int, float], ...]
+
+
+def copy_texts(block: SizedBlock, handles: Iterable[WidthHandle]) -> dict[CopyText, list[Slot]]:
+    """Return the slots that change in copies of their leaf, those together whose copies can be one.
+
+    Parameters
+    ----------
+    block : SizedBlock
+        The block.
+    handles : iterable of WidthHandle
+        Of its slots.
+    """
+    of_call: dict[int, list[WidthHandle]] = {}
+    for handle in handles:
+        inside = any(origin.way in {"leaf", "detached"} for origin in handle.origins)
+        if handle.slot.caller is not None and inside:
+            of_call.setdefault(handle.slot.caller, []).append(handle)
+    found: dict[CopyText, list[Slot]] = {}
+    for some in of_call.values():
+        drawn = [(h.slot.card, h.drawing.width) for h in some if h.is_detached]
+        text = CopyText(block.leaf(some[0].slot), tuple(sorted(drawn)))
+        found.setdefault(text, []).extend(handle.slot for handle in some)
+    return found
 
 
 def width_handles(

@@ -126,7 +126,7 @@ class Placing:
     def _done(self, group: _Group, decision: _Decision) -> str:
         """Do what was decided for a group; return what it will call."""
         if decision.way == "there":
-            self.stock.held.add(decision.member)
+            self.stock.hold(decision.member)
             return decision.member
         if decision.way == "copy":
             changes = self._changes(group.callers[0])

@@ -202,18 +202,28 @@ class SizedBlock:
 
         The definition that holds what changes, ``scope``, must serve nobody else.
         """
-        leaf = self.leaf(slot)
+        key = slot.card, self.leaf(slot), scope
+        if key not in self._one_for_all:
+            self._one_for_all[key] = self._agrees(*key)
+        return self._one_for_all[key]
+
+    @cached_property
+    def _one_for_all(self) -> dict[tuple[int, str, str], bool]:
+        return {}
+
+    def _agrees(self, card: int, leaf: str, scope: str) -> bool:
         callers = self.bindings.callers(leaf)
-        variables = {self.variable_of.get(Slot(slot.card, caller)) for caller in callers}
+        variables = {self.variable_of.get(Slot(card, caller)) for caller in callers}
         one = len(variables) == 1 and None not in variables
         return one and (scope == leaf or scope in self.below(leaf).owned(self.bindings))
 
     def copies_called(self, family: Family) -> int:
         """Return how many copies of a leaf some sizing variables call."""
-        return sum(
-            any(caller in self.sized_callers for caller in self.bindings.callers(copy))
-            for copy in family.copies
-        )
+        return sum(map(self.is_called_for_size, family.copies))
+
+    def is_called_for_size(self, leaf: str) -> bool:
+        """Tell whether a sizing variable calls a definition."""
+        return any(caller in self.sized_callers for caller in self.bindings.callers(leaf))
 
     def is_called_elsewhere(self, leaf: str) -> bool:
         """Tell whether a leaf is called by cards that are no sizing variables."""

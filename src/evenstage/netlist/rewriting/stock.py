@@ -117,6 +117,8 @@ class Stock:
                 continue
             if one == name or (one in owned and self._may_change(one, detached=detached)):
                 self.in_place += made
+                text = self._all_texts(name, changes)[one]
+                self._copied.setdefault((self.block.family(one).root, text), one)
                 self.moved.update(_targets(below, one, renamed))
             else:
                 callers = below.callers[one]
@@ -202,8 +204,14 @@ class Stock:
             known = copy.name.lower()
             self.copies[known] = copy
             self._copied[self.block.family(original).root, text] = known
-        self.held.add(known)
+        self.hold(known)
         return known
+
+    def hold(self, name: str) -> None:
+        """Keep a definition, with all that it calls, as it is now."""
+        self.held.add(name)
+        if name not in self.copies:
+            self.held.update(self.block.below(name).order)
 
     def _free_name(self, name: str) -> str:
         if not self._taken:
