@@ -59,6 +59,15 @@ class OutputBrief:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class ClockBrief:
+    """Clocks, and how long each of their levels lasts, s; None: unsaid."""
+
+    nets: tuple[Pattern, ...]
+    high: float | None = None
+    low: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class IgnoreBrief:
     """Paths to leave out: from, through and to nets that match; an empty tuple matches all."""
 
@@ -88,7 +97,7 @@ class Brief:
         The subcircuit to work on.
     supplies_high, supplies_low : tuple of Pattern
         Supply nets; empty: found.
-    inputs, outputs, ignores, limits : tuple
+    inputs, outputs, clocks, ignores, limits : tuple
         See the classes.
     fixed : tuple of Pattern
         Cards that must not change.
@@ -119,6 +128,7 @@ class Brief:
     supplies_low: tuple[Pattern, ...] = ()
     inputs: tuple[InputBrief, ...] = ()
     outputs: tuple[OutputBrief, ...] = ()
+    clocks: tuple[ClockBrief, ...] = ()
     ignores: tuple[IgnoreBrief, ...] = ()
     limits: tuple[LimitBrief, ...] = ()
     fixed: tuple[Pattern, ...] = ()
@@ -159,6 +169,7 @@ BRIEF_KEYS: Final[Mapping[str, Entry]] = {
             "required": _TIME,
         }
     ),
+    "clock": Tables(keys={"nets": Names(required=True), "high": _TIME, "low": _TIME}),
     "ignore": Tables(keys={"from": Names(), "through": Names(), "to": Names()}),
     "fixed": Names(),
     "leaves": Names(),
@@ -209,6 +220,7 @@ def read_brief(path: str | Path) -> Brief:
         supplies_low=supplies.names("low"),
         inputs=tuple(map(_input, settings.tables("input"))),
         outputs=tuple(map(_output, settings.tables("output"))),
+        clocks=tuple(map(_clock, settings.tables("clock"))),
         ignores=tuple(map(_ignore, settings.tables("ignore"))),
         limits=tuple(map(_limit, settings.tables("limit"))),
         fixed=settings.names("fixed"),
@@ -240,6 +252,14 @@ def _output(table: Settings) -> OutputBrief:
         nets=table.names("nets"),
         load=table.optional_number("load"),
         required=table.optional_number("required"),
+    )
+
+
+def _clock(table: Settings) -> ClockBrief:
+    return ClockBrief(
+        nets=table.names("nets"),
+        high=table.optional_number("high"),
+        low=table.optional_number("low"),
     )
 
 

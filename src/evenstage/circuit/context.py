@@ -14,13 +14,16 @@ import numpy as np
 
 from evenstage.circuit.function import Literal
 from evenstage.circuit.rows import distinct_rows
+from evenstage.pattern import select
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from evenstage.brief import Brief
     from evenstage.circuit.gate import GateForm, Relation
     from evenstage.circuit.groups import AlikeGroups
     from evenstage.circuit.network import BoolArray
+    from evenstage.circuit.network import Switch
     from evenstage.netlist.devices import Devices, IntArray
 
 NETS_MAX = 256
@@ -46,6 +49,8 @@ class Context:
         Channel ends that are ports or close switches of other groups.
     ports : tuple of int
         Channel ends that are ports.
+    clocks : tuple of int
+        Inputs that are clocks: the brief says so, or a dynamic gate is precharged by them.
     """
 
     complements: tuple[Relation, ...] = ()
@@ -53,6 +58,7 @@ class Context:
     mutual: tuple[Relation, ...] = ()
     seen: tuple[int, ...] = ()
     ports: tuple[int, ...] = ()
+    clocks: tuple[int, ...] = ()
 
 
 class Surroundings:
@@ -65,6 +71,8 @@ class Surroundings:
         Recognised so far.
     others : sequence of AlikeGroups
         Those that will be asked about.
+    clocks : IntArray
+        Nets that the brief says are clocks.
     """
 
     def __init__(
@@ -72,6 +80,7 @@ class Surroundings:
         devices: Devices,
         gates: Sequence[tuple[GateForm, AlikeGroups]],
         others: Sequence[AlikeGroups],
+        clocks: IntArray,
     ) -> None:
         nets = len(devices.net_names)
         self._nets = nets
@@ -94,6 +103,29 @@ class Surroundings:
         self._gates_on = np.bincount(devices.gate, minlength=nets)
         self._is_port = np.zeros(nets, bool)
         self._is_port[list(devices.ports)] = True
+        self._is_clock = np.zeros(nets, bool)
+        self._is_clock[clocks] = True
+        for form, some in gates:
+            for local in form.precharging_clocks:
+                self._is_clock[some.nets[:, local]] = True
+        self._infer_clocks(others)
+
+    def _infer_clocks(self, others: Sequence[AlikeGroups]) -> None:
+        """Mark the clocks of gates of one p, two n and two inputs (or the mirror image).
+
+        Such a gate is dynamic, with the input of both polarities as its clock, or a single-phase
+        stage, with the other one. What no static gate drives is a signal; the clock then is the
+        other input, if it turns more transistors.
+        """
+        driven = np.zeros(self._nets, bool)
+        for some in others:
+            driven[some.nets[:, _ends(some)]] = True
+        for some in others:
+            pair = _half_clocked(some.network)
+            if pair is not None:
+                both, alone = some.nets[:, pair[0]], some.nets[:, pair[1]]
+                more = self._gates_on[alone] > self._gates_on[both]
+                self._is_clock[alone[driven[both] & ~driven[alone] & more]] = True
 
     def _pairs(
         self, asked: BoolArray, some: AlikeGroups, inputs: Sequence[int], end: int
@@ -115,13 +147,16 @@ class Surroundings:
             self._listens(self._unsure, here, some.nets[:, ends]),
             self._seen(some, ends),
             self._is_port[some.nets[:, ends]],
+            self._is_clock[here],
         ]
         table = np.concatenate([fact.reshape(len(here), -1) for fact in facts], axis=1)
         kinds, inverse = distinct_rows(table)
         sizes = np.cumsum([fact[0].size for fact in facts])[:-1]
         result = []
         for index, kind in enumerate(kinds):
-            complements, feedback, mutual, seen, ports = np.split(kind.astype(bool), sizes)
+            complements, feedback, mutual, seen, ports, clocks = np.split(
+                kind.astype(bool), sizes
+            )
             locals_ = range(some.nets.shape[1])
             context = Context(
                 _pairs(complements, inputs, locals_),
@@ -129,6 +164,7 @@ class Surroundings:
                 _pairs(mutual, inputs, ends),
                 tuple(np.array(ends)[seen].tolist()),
                 tuple(np.array(ends)[ports].tolist()),
+                tuple(np.array(inputs)[clocks].tolist()) if inputs else (),
             )
             result.append((context, np.flatnonzero(inverse == index).astype(np.int32)))
         return result
@@ -148,6 +184,30 @@ class Surroundings:
         nets = some.nets[:, ends]
         found: BoolArray = self._is_port[nets] | (self._gates_on[nets] > own[ends])
         return found
+
+
+def named_clocks(devices: Devices, brief: Brief | None) -> IntArray:
+    """Return the nets that a brief calls clocks.
+
+    Raises
+    ------
+    SettingsError
+        Where a pattern fits no net.
+    """
+    patterns = [pattern for one in (brief.clocks if brief else ()) for pattern in one.nets]
+    # Names are put together on demand, and that takes its time.
+    names = devices.net_names if patterns else ()
+    return np.array(select(patterns, names, "net"), np.int32)
+
+
+def _half_clocked(network: Sequence[Switch]) -> tuple[int, int] | None:
+    """Return the input of both polarities of a clocked gate of three transistors, and the other."""
+    of = {p: [s.gate for s in network if s.polarity == p] for p in "np"}
+    one, two = sorted(of.values(), key=len)
+    if len(one) != 1 or len(two) != 2 or min(*one, *two) < 0 or one[0] not in two:
+        return None
+    alone = [gate for gate in two if gate != one[0]]
+    return (one[0], alone[0]) if alone else None
 
 
 def _inputs(some: AlikeGroups) -> list[int]:

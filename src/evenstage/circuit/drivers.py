@@ -9,6 +9,7 @@ from evenstage.circuit.division import Driver, Way, closing
 from evenstage.circuit.function import (
     ONE,
     ZERO,
+    Each,
     Expression,
     Literal,
     Not,
@@ -58,7 +59,7 @@ def driver_of(
         return Unrecognised("a transistor that is always on pulls one of its nodes")
     always = bool((up | down)[possible].all())
     ways = [_ways(own, node, supply, indices, literals) for supply in (HIGH, LOW)]
-    if not always and ways[0] and ways[1] and not _enable(*ways):
+    if not always and ways[0] and ways[1] and not enable_of(*ways):
         return Unrecognised("neither pull conducts for some inputs: it can float")
     arcs = all_arcs(own, node, Pulls(up, down, possible), relations)
     return Driver(
@@ -78,13 +79,17 @@ def enabled_function(
 ) -> Expression | None:
     """Return what a gate that can float makes of its inputs, and when it drives.
 
-    None where nothing is common to all ways to both supplies.
+    Where nothing is common to all ways to both supplies each level has a condition of its own, and
+    the output keeps its level while neither holds. None where there are no such ways.
     """
     literals = Literals((a, b, False) for a, b in complements)
     indices = list(range(len(network.switches)))
     up, down = (_ways(network, output, supply, indices, literals) for supply in (HIGH, LOW))
-    if not up or not down or not _enable(up, down):
+    if not up or not down:
         return None
+    if not enable_of(up, down):
+        levels = ((ZERO, down), (ONE, up))
+        return Each(tuple(When(to, sum_of([w.cube for w in ways])) for to, ways in levels), kept=True)
     return _function(network, output, up, down, always=False)
 
 
@@ -114,11 +119,11 @@ def _function(
         return When(ONE, sum_of(ups))
     if not ups:
         return When(ZERO, sum_of(downs))
-    common = _enable(up, down)
+    common = enable_of(up, down)
     return When(Not(sum_of([cube - common for cube in downs])), sum_of([common]))
 
 
-def _enable(up: Sequence[Way], down: Sequence[Way]) -> Cube:
+def enable_of(up: Sequence[Way], down: Sequence[Way]) -> Cube:
     """Return what all ways to both supplies have in common: when a tri-state gate drives."""
     return frozenset.intersection(*(way.cube for way in (*up, *down)))
 

@@ -49,9 +49,10 @@ class When:
 
 @dataclass(frozen=True, slots=True)
 class Each:
-    """Several terms that each hold under their own condition."""
+    """Several terms that each hold under their own condition; elsewhere the value may be kept."""
 
     terms: tuple[Expression, ...]
+    kept: bool = False
 
 
 Expression = Literal | And | Or | Not | When | Each
@@ -159,7 +160,8 @@ def text(expression: Expression, name: Callable[[int], str]) -> str:
     if isinstance(expression, When):
         return f"{text(expression.term, name)} when {text(expression.condition, name)}"
     if isinstance(expression, Each):
-        return ", ".join(text(term, name) for term in expression.terms)
+        terms = ", ".join(text(term, name) for term in expression.terms)
+        return f"{terms}, else kept" if expression.kept else terms
     if not expression.terms:
         return "1" if isinstance(expression, And) else "0"
     if isinstance(expression, Or):
@@ -172,6 +174,8 @@ def text(expression: Expression, name: Callable[[int], str]) -> str:
 
 def inverted_text(expression: Expression, name: Callable[[int], str]) -> str:
     """Return the text of the complement, as a static gate computes it: ``!(a & b)``."""
+    if isinstance(expression, Not):
+        return text(expression.term, name)
     inner = text(expression, name)
     return f"!{inner}" if isinstance(expression, Literal) else f"!({inner})"
 

@@ -103,6 +103,8 @@ class GateForm:
         Whether its output is left alone for some inputs, and what keeps it then stores it.
     function : Expression, optional
         What it makes of its inputs, where that is not the complement of ``pull_down``.
+    precharge : tuple of ArcForm
+        Of a dynamic gate: how its output gets back to where it evaluates from.
     """
 
     drawn: tuple[Switch, ...]
@@ -114,6 +116,13 @@ class GateForm:
     weak: tuple[Weak, ...] = ()
     floats: bool = False
     function: Expression | None = None
+    precharge: tuple[ArcForm, ...] = ()
+
+    @cached_property
+    def precharging_clocks(self) -> tuple[int, ...]:
+        """Local nets that turn the precharge of a dynamic gate on."""
+        along = {switch for arc in self.precharge for switch in arc.path}
+        return tuple(sorted({self.network.switches[switch].gate for switch in along}))
 
 
 @dataclass(frozen=True)

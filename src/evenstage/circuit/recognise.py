@@ -11,6 +11,7 @@ from evenstage.brief import Brief
 from evenstage.circuit.apart import set_apart
 from evenstage.circuit.carrying import carry
 from evenstage.circuit.circuit import STORED, Circuit, NotUnderstood
+from evenstage.circuit.context import named_clocks
 from evenstage.circuit.domains import domain_notices
 from evenstage.circuit.groups import group
 from evenstage.circuit.names import NAMES_MAX, device_names
@@ -85,8 +86,9 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
     logic = np.ones(len(devices), bool)
     for part in apart:
         logic[part.devices] = False
-    found = sort_groups(devices, group(devices, supplies, logic, levels))
-    more = sort_stages(devices, found, brief)
+    clocks = named_clocks(devices, brief)
+    found = sort_groups(devices, group(devices, supplies, logic, levels), clocks)
+    more = sort_stages(devices, found, brief, clocks)
     alike, stages = _numbered(found.gates, more.stages)
     strange = _not_understood(more.strange)
     output = np.empty(sum(len(some.gates) for some in alike), np.int32)

@@ -31,17 +31,19 @@ class Sorted:
     strange: tuple[tuple[str, AlikeGroups], ...]
 
 
-def sort_groups(devices: Devices, alike: Sequence[AlikeGroups]) -> Sorted:
+def sort_groups(devices: Devices, alike: Sequence[AlikeGroups], clocks: IntArray) -> Sorted:
     """Recognise static gates first, then whatever shows in the light of those already known.
 
     Parameters
     ----------
     devices : Devices
     alike : sequence of AlikeGroups
+    clocks : IntArray
+        Nets that the brief says are clocks.
     """
     found = _tapped(devices, _static(alike))
     for _ in range(_ROUNDS):
-        again = _tapped(devices, _in_context(devices, found))
+        again = _tapped(devices, _in_context(devices, found, clocks))
         done = len(again.gates) == len(found.gates)
         found = again
         if done or not found.strange:
@@ -61,9 +63,10 @@ def _static(alike: Sequence[AlikeGroups]) -> Sorted:
     return Sorted(tuple(gates), tuple(strange))
 
 
-def _in_context(devices: Devices, found: Sorted) -> Sorted:
+def _in_context(devices: Devices, found: Sorted, clocks: IntArray) -> Sorted:
     """Try again the networks that are something else once their surroundings are known."""
-    surroundings = Surroundings(devices, found.gates, [some for _, some in found.strange])
+    others = [some for _, some in found.strange]
+    surroundings = Surroundings(devices, found.gates, others, clocks)
     gates, strange = list(found.gates), []
     for reason, some in found.strange:
         for context, rows in surroundings.split(some):

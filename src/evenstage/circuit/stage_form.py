@@ -119,6 +119,8 @@ class StageForm:
         Parts that pass signals in both directions.
     bounded : tuple of int
         Nodes that arcs end at, where more is taken to move with them than can at once.
+    precharge : tuple of StageArc
+        How its dynamic nodes get back to where they evaluate from.
     """
 
     drawn: tuple[Switch, ...]
@@ -131,3 +133,4 @@ class StageForm:
     assumed: tuple[tuple[int, int], ...]
     both_ways: tuple[int, ...]
     bounded: tuple[int, ...]
+    precharge: tuple[StageArc, ...] = ()

@@ -40,7 +40,9 @@ class StagesFound:
     strange: tuple[tuple[str, AlikeGroups], ...]
 
 
-def sort_stages(devices: Devices, found: Sorted, brief: Brief | None) -> StagesFound:
+def sort_stages(
+    devices: Devices, found: Sorted, brief: Brief | None, clocks: IntArray
+) -> StagesFound:
     """Recognise the stages among groups that are no single gate.
 
     Parameters
@@ -50,11 +52,14 @@ def sort_stages(devices: Devices, found: Sorted, brief: Brief | None) -> StagesF
         The gates, whose inverters tell which signals are complements, and the groups left over.
     brief : Brief, optional
         Its inputs and outputs tell which way open ends go.
+    clocks : IntArray
+        Nets that it says are clocks.
     """
     stages, strange = [], []
     if found.strange:
         around = _Around(devices, found, brief)
-        surroundings = Surroundings(devices, found.gates, [some for _, some in found.strange])
+        others = [some for _, some in found.strange]
+        surroundings = Surroundings(devices, found.gates, others, clocks)
         for done, (reason, whole) in enumerate(found.strange):
             tell("recognising stages", done / len(found.strange))
             for context, placed in surroundings.split(whole):

@@ -6,6 +6,8 @@ from typing import TYPE_CHECKING
 
 from evenstage.report.block_text import block_lines, end_lines, finished, notice_lines
 from evenstage.report.paper import Paper
+from evenstage.report.precharge_text import TITLE as PRECHARGE
+from evenstage.report.precharge_text import precharge_lines
 from evenstage.report.path_text import effort_lines, legend, path_lines
 from evenstage.report.vector_text import false_lines, vector_lines
 from evenstage.report.words import block_name, punctuality, rank, route, section, takes
@@ -47,6 +49,7 @@ def analysis_report(
     if analysis.false_paths:
         title = "False paths, passed over: no input vector lets them switch"
         lines += section(title, false_lines(paper, analysis.false_paths))
+    lines += section(PRECHARGE, precharge_lines(paper, analysis.precharges))
     lines += section("The block", block_lines(paper, analysis))
     if notices:
         lines += section("Notices", notice_lines(paper, analysis.notices))

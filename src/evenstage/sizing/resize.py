@@ -163,7 +163,7 @@ class _Job:
         free = engine.model.variables
         return Sizing(
             before=self.analysis,
-            after=report(written.timing, len(self.analysis.paths)),
+            after=report(written.timing, len(self.analysis.paths), self.brief),
             goal=self.wishes.words,
             bound=best.bound,
             bound_on=self.wishes.spend if on_spend else "delay",

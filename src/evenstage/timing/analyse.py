@@ -10,6 +10,7 @@ import numpy as np
 from evenstage.errors import CircuitError, Notice
 from evenstage.progress import tell
 from evenstage.timing.graph import timing_graph
+from evenstage.timing.precharge import late_precharges, precharges
 from evenstage.timing.results import Analysis, Counts, PathEnd
 from evenstage.timing.search import latest_path, slowest_paths
 from evenstage.timing.stages import describe, edge_name
@@ -80,11 +81,14 @@ def analyse(
     >>> slowest.instance, f"{slowest.stage_effort:.1f}"
     ('xp6', '11.2')
     """
-    return report(time(circuit, brief, start=start, end=end), count)
+    return report(time(circuit, brief, start=start, end=end), count, brief)
 
 
-def report(timing: Timing, count: int = 1) -> Analysis:
-    """Put the results of a timing together; ``count`` slowest paths."""
+def report(timing: Timing, count: int = 1, brief: Brief | None = None) -> Analysis:
+    """Put the results of a timing together; ``count`` slowest paths.
+
+    Precharge is told where the whole block is meant, and not only paths between some nets.
+    """
     circuit, graph = timing.circuit, timing.graph
     devices = circuit.devices
     # The slowest path alone is the one the latest arrival came by: no need to search.
@@ -92,7 +96,8 @@ def report(timing: Timing, count: int = 1) -> Analysis:
     paths = tuple(describe(timing, arcs) for arcs in slowest)
     start_nets = dict.fromkeys(graph.net[graph.start].tolist())
     reached = np.flatnonzero(_on_paths(circuit, graph.arc))
-    notices = [*circuit.notices, *graph.notices]
+    charging = precharges(circuit, brief) if graph.whole else ()
+    notices = [*circuit.notices, *graph.notices, *late_precharges(charging)]
     if graph.whole and len(reached) < len(circuit):
         notices.append(_unreached(circuit, reached))
     return Analysis(
@@ -115,6 +120,7 @@ def report(timing: Timing, count: int = 1) -> Analysis:
         ),
         notices=tuple(notices),
         timing=timing,
+        precharges=charging,
     )
 
 

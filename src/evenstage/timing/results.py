@@ -156,6 +156,45 @@ class PathEnd:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Precharge:
+    """How a dynamic node gets back to where it evaluates from; no path of the block.
+
+    Parameters
+    ----------
+    net : str
+    edge : Edge
+    instance : str
+        The gate that precharges it.
+    devices : tuple of str
+        The transistors that do.
+    clock : str
+        Where the latest signal that leads to it comes from, as a rule the clock.
+    clock_edge : Edge
+    delay : float
+        s, from that edge to half the supply.
+    transition : float
+        s, of the ramp.
+    phase : float, optional
+        s, how long the level after that edge lasts; None where the brief does not say.
+    """
+
+    net: str
+    edge: Edge
+    instance: str
+    devices: tuple[str, ...]
+    clock: str
+    clock_edge: Edge
+    delay: float
+    transition: float
+    phase: float | None
+
+    @property
+    def complete(self) -> float:
+        """When the node is at the supply: at the end of its ramp, s."""
+        return self.delay + self.transition / 2
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Counts:
     """Sizes of a block."""
 
@@ -194,6 +233,8 @@ class Analysis(Tabular):
         What everything was read off: circuit, graph and arrivals in columns; not compared.
     false_paths : tuple of Path
         Passed over for ``paths``: no input vector lets them switch; slowest first.
+    precharges : tuple of Precharge
+        Of every dynamic node that a clock reaches, the latest first; apart from all paths.
     """
 
     source: str
@@ -209,6 +250,7 @@ class Analysis(Tabular):
     notices: tuple[Notice, ...]
     timing: Timing | None = field(default=None, repr=False, compare=False)
     false_paths: tuple[Path, ...] = ()
+    precharges: tuple[Precharge, ...] = ()
 
     @property
     def headline(self) -> str:
@@ -220,7 +262,7 @@ class Analysis(Tabular):
         )
 
     def tables(self) -> dict[str, list[Row]]:
-        """Return paths, their stages and side branches, and path ends; SI units.
+        """Return paths, their stages and side branches, path ends and precharges; SI units.
 
         Paths and stages are numbered from 1.
         """
@@ -238,6 +280,10 @@ class Analysis(Tabular):
             ],
             "paths": [row(path, path=number) for number, path in enumerate(self.paths, 1)],
             "ends": [row(end) for end in self.ends],
+            "precharges": [
+                row(one, complete=one.complete) | {"devices": ", ".join(one.devices)}
+                for one in self.precharges
+            ],
         }
 
     def graph(self) -> nx.DiGraph[tuple[str, str]]:

@@ -2,8 +2,9 @@
 
 With a foot, a transistor of the clock in the network, precharge and network never fight; without
 one the inputs must be low while the gate precharges, as those of domino logic are (Krambeck, Lee
-and Law, IEEE Journal of Solid-State Circuits 17(3), 1982). Only evaluation is an arc: during
-precharge nobody waits for the output.
+and Law, IEEE Journal of Solid-State Circuits 17(3), 1982). Only evaluation is an arc of the gate:
+during precharge nobody waits for the output, as long as it is done before its clock turns. What
+leads to precharge, its clock and where there is no foot the inputs that let go, is kept apart.
 """
 
 from __future__ import annotations
@@ -44,6 +45,10 @@ def dynamic(devices: tuple[Switch, ...], context: Context) -> GateForm | Unrecog
     return Unrecognised("no clock alone precharges its output")
 
 
+def _is_port(network: Network, output: int, context: Context) -> bool:
+    return any(network.node_of_net[net] == output for net in context.ports)
+
+
 def _clock(network: Network, output: int, supply: int, polarity: str) -> int | None:
     """Return the input that alone pulls the output to a supply, if one does."""
     ends = [s for s in network.switches if supply in (s.a, s.b)]
@@ -72,15 +77,19 @@ def _evaluated(
         return Unrecognised("only its clock moves its output")
     charging = ~level if supply == HIGH else level
     footed = not (pull & charging)[possible].any()
-    if not footed and set(context.ports) & {
-        n for n, o in enumerate(network.node_of_net) if o == output
-    }:
-        return Unrecognised("a driver of a port, with each of its transistors driven apart")
+    others = {s.gate for s in network.switches if supply not in (s.a, s.b) and s.gate != clock}
+    if clock not in context.clocks:
+        if others and others <= set(context.clocks):
+            return Unrecognised("what would precharge it is no clock, and its other input is one")
+        if not footed and len(others) == 1 and _is_port(network, output, context):
+            return Unrecognised("a driver of a port, with each of its transistors driven apart")
     never = np.zeros_like(pull)
     pulls = Pulls(never, pull, possible) if supply == HIGH else Pulls(pull, never, possible)
     arcs = all_arcs(network, output, pulls, context.complements)
     if not arcs:
         return Unrecognised("no input moves its output")
+    charged = charging & ~pull
+    back = Pulls(charged, pull, possible) if supply == HIGH else Pulls(pull, charged, possible)
     return GateForm(
         drawn=devices,
         network=network,
@@ -90,4 +99,9 @@ def _evaluated(
         else dual(conduction(network, output, HIGH, "p")),
         arcs=arcs,
         kind=FOOTED if footed else UNFOOTED,
+        precharge=tuple(
+            arc
+            for arc in all_arcs(network, output, back, context.complements)
+            if arc.rising == (supply == HIGH)
+        ),
     )

@@ -1,8 +1,10 @@
 """Gates of two pull networks that leave their output alone for some inputs.
 
-Tri-state and clocked inverters, and the C-element, which moves when all its inputs agree and keeps
-its output while they differ (Muller and Bartky, A theory of asynchronous circuits, 1959, from
-memory).
+Tri-state and clocked inverters; the C-element, which moves when all its inputs agree and keeps its
+output while they differ (Muller and Bartky, A theory of asynchronous circuits, 1959, from memory);
+and stages of true single-phase clocking, in which the clock is in one of the two networks only, so
+that one edge waits for it and the other does not (Yuan and Svensson, High-speed CMOS circuit
+technique, IEEE Journal of Solid-State Circuits 24(1), 1989, from memory).
 """
 
 from __future__ import annotations
@@ -21,6 +23,7 @@ if TYPE_CHECKING:
 
 TRI_STATE = "tri-state gate"
 C_ELEMENT = "C-element"
+SINGLE_PHASE = "single-phase stage"
 
 
 def floating(devices: tuple[Switch, ...], context: Context) -> GateForm | Unrecognised:
@@ -47,10 +50,18 @@ def floating(devices: tuple[Switch, ...], context: Context) -> GateForm | Unreco
         output=output,
         pull_down=conduction(network, output, LOW, "n"),
         arcs=arcs,
-        kind=C_ELEMENT if is_c_element(network, output) else TRI_STATE,
+        kind=_kind(network, output, context),
         floats=True,
         function=enabled_function(network, output, context.complements),
     )
+
+
+def _kind(network: Network, output: int, context: Context) -> str:
+    if is_c_element(network, output):
+        return C_ELEMENT
+    by_polarity = [{s.gate for s in network.switches if s.polarity == p} for p in "np"]
+    alone = by_polarity[0] ^ by_polarity[1]
+    return SINGLE_PHASE if len(alone) == 1 and alone <= set(context.clocks) else TRI_STATE
 
 
 def is_c_element(network: Network, output: int) -> bool:
