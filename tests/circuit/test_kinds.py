@@ -6,6 +6,8 @@ from typing import TYPE_CHECKING
 
 import pytest
 
+from evenstage.brief import Brief, ClockBrief
+from evenstage.pattern import Pattern
 from evenstage.timing.analyse import analyse
 from support.blocks import block, circuit_of, inverter, nand, network, transistor
 
@@ -59,6 +61,16 @@ class TestRatioed:
         assert "is 2.5 times that of the pull" in notice.message
         assert notice.names == ("md",)
 
+    def test_the_output_moves_whole_when_the_pull_lets_go(self) -> None:
+        """A load of 4 kohm charges 1 fF of the pull's drain and half of one of its own."""
+        found = circuit(
+            transistor("n", "y", "a", "vss", 1, "d"),
+            transistor("p", "y", "vss", "vdd", 0.5, "l"),
+            ports="a y",
+        )
+        rises = found.arcs.rising
+        assert found.arcs.own_today[rises] == pytest.approx(4e3 * 1.5e-15)
+
     def test_a_load_that_wins_leaves_no_delay_without_bound(self) -> None:
         found = circuit(
             transistor("n", "y", "a", "vss", 1, "d"),
@@ -100,6 +112,51 @@ class TestDynamic:
         assert [part.kind for stage in found.stages for part in stage.form.parts] == [
             "tri-state gate"
         ]
+
+    def test_a_port_that_a_network_pulls_down_is_precharged(self) -> None:
+        found = circuit(
+            network("n", "d", [("x", "a", "vss", 1), ("x", "b", "vss", 1)]),
+            PRECHARGE,
+            ports="a b ck x",
+        )
+        assert kinds(found)["x"] == ("dynamic gate, unfooted", "!(a | b)")
+
+    def test_a_port_of_one_transistor_each_way_is_one_too_if_the_brief_names_the_clock(
+        self,
+    ) -> None:
+        text = block(transistor("n", "x", "a", "vss", 1, "d") + "\n" + PRECHARGE, "a ck x")
+        brief = Brief(clocks=(ClockBrief(nets=(Pattern("ck"),)),))
+        assert kinds(circuit_of(text, None, brief))["x"] == ("dynamic gate, unfooted", "!a")
+
+
+class TestSinglePhase:
+    """A register of true single-phase clocking: three clocked stages and an inverter."""
+
+    CARDS = (
+        network("p", "a", [("x", "d", "k", 4), ("k", "ck", "vdd", 4)]),
+        transistor("n", "x", "d", "vss", 2, "a"),
+        transistor("p", "y", "ck", "vdd", 2, "b"),
+        network("n", "b", [("y", "x", "j", 2), ("j", "ck", "vss", 2)]),
+        transistor("p", "q", "y", "vdd", 4, "c"),
+        network("n", "c", [("q", "ck", "h", 2), ("h", "y", "vss", 2)]),
+        inverter("o", "q", "z", 1, 2),
+    )
+
+    def test_its_clock_is_told_from_its_data(self) -> None:
+        found = kinds(circuit(*self.CARDS, ports="d ck z"))
+        assert found["x"] == ("single-phase stage", "0 when d, 1 when !d & !ck, else kept")
+        assert found["y"] == ("dynamic gate, footed", "!(x & ck)")
+        assert found["q"] == ("single-phase stage", "0 when y & ck, 1 when !y, else kept")
+
+    def test_data_end_before_the_clock_and_the_clock_runs_on(self) -> None:
+        found = circuit(*self.CARDS, ports="d ck z")
+        (latch,) = found.storage.elements
+        assert (latch.kind, latch.loops[0].nets) == ("dynamic latch", (found.net_id("x"),))
+        routes = {
+            (path.start, *(s.output for s in path.stages)) for path in analyse(found, count=9).paths
+        }
+        assert {("d", "x"), ("ck", "y", "q", "z"), ("ck", "q", "z")} <= routes
+        assert not any(route[0] == "d" and len(route) > 2 for route in routes)
 
 
 class TestKept:
@@ -146,7 +203,10 @@ class TestKept:
             BUFFER,
             ports="a b y",
         )
-        assert kinds(found)["x"][0] == "C-element, kept"
+        assert kinds(found)["x"] == (
+            "C-element, kept",
+            "0 when a & b, 1 when !a & !b, else kept",
+        )
         assert [element.kind for element in found.storage.elements] == ["C-element"]
         found_paths = analyse(found, count=9).paths
         assert {(path.start, path.edge) for path in found_paths} == {

@@ -7,7 +7,9 @@ from typing import TYPE_CHECKING
 import numpy as np
 import pytest
 
+from evenstage.brief import Brief, ClockBrief
 from evenstage.circuit.storage.phases import phases
+from evenstage.pattern import Pattern
 from evenstage.timing.analyse import analyse
 from support.blocks import block, circuit_of, inverter, nand, network, nor, transistor
 
@@ -168,6 +170,47 @@ class TestKinds:
         found = circuit_of(text)
         assert [one[0] for one in told(found)] == ["flip-flop", "flip-flop"]
         assert [one[3] for one in told(found)] == ["d", "x1.s"]
+
+
+class TestDynamicLatches:
+    """A transmission gate or a clocked inverter into a gate, and no feedback."""
+
+    GATES = "\n".join([
+        CLOCK, inverter("d", "d", "db", 1, 2), gate("t1", "db", "ckb", "ck", "m"),
+        inverter("m", "m", "mq", 1, 2), gate("t2", "mq", "ck", "ckb", "s"),
+        inverter("s", "s", "q", 1, 2),
+    ])  # fmt: skip
+
+    def test_transmission_gates(self) -> None:
+        assert told(circuit(self.GATES, "d ck q")) == [
+            ("dynamic latch", "m", "/ck", "d", ""),
+            ("dynamic latch", "s", "ck", "m", ""),
+        ]
+
+    def test_data_end_on_the_net_and_the_clock_leaves_it(self) -> None:
+        found = routes(circuit(self.GATES, "d ck q"))
+        assert {route[0] for route in found if route[-1][0] == "q"} == {"ck"}
+        assert {route for route in found if route[0] == "d"} == {("d", "m+"), ("d", "m-")}
+
+    def test_a_clocked_inverter(self) -> None:
+        cards = [CLOCK, clocked("i", "d", "ck", "ckb", "s"), inverter("o", "s", "q", 1, 2)]
+        assert told(circuit("\n".join(cards), "d ck q")) == [("dynamic latch", "s", "ck", "d", "")]
+
+    def test_a_multiplexer_and_a_port_store_nothing(self) -> None:
+        mux = [
+            CLOCK, inverter("a", "a", "an", 1, 2), inverter("b", "b", "bn", 1, 2),
+            gate("1", "an", "ck", "ckb", "w"), gate("2", "bn", "ckb", "ck", "w"),
+            inverter("o", "w", "y", 1, 2),
+        ]  # fmt: skip
+        assert told(circuit("\n".join(mux), "a b ck y")) == []
+        port = CLOCK + "\n" + clocked("i", "d", "ck", "ckb", "s")
+        assert told(circuit(port, "d ck s")) == []
+
+    def test_only_clocks_that_the_brief_names(self) -> None:
+        for name, count in (("ck", 2), ("d", 0)):
+            brief = Brief(clocks=(ClockBrief(nets=(Pattern(name),)),))
+            found = circuit_of(block(self.GATES, "d ck q"), None, brief)
+            assert len(found.storage.elements) == count
 
 
 class TestPaths:

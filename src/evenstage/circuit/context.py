@@ -22,8 +22,7 @@ if TYPE_CHECKING:
     from evenstage.brief import Brief
     from evenstage.circuit.gate import GateForm, Relation
     from evenstage.circuit.groups import AlikeGroups
-    from evenstage.circuit.network import BoolArray
-    from evenstage.circuit.network import Switch
+    from evenstage.circuit.network import BoolArray, Switch
     from evenstage.netlist.devices import Devices, IntArray
 
 NETS_MAX = 256
@@ -154,9 +153,7 @@ class Surroundings:
         sizes = np.cumsum([fact[0].size for fact in facts])[:-1]
         result = []
         for index, kind in enumerate(kinds):
-            complements, feedback, mutual, seen, ports, clocks = np.split(
-                kind.astype(bool), sizes
-            )
+            complements, feedback, mutual, seen, ports, clocks = np.split(kind.astype(bool), sizes)
             locals_ = range(some.nets.shape[1])
             context = Context(
                 _pairs(complements, inputs, locals_),

@@ -89,7 +89,9 @@ def enabled_function(
         return None
     if not enable_of(up, down):
         levels = ((ZERO, down), (ONE, up))
-        return Each(tuple(When(to, sum_of([w.cube for w in ways])) for to, ways in levels), kept=True)
+        return Each(
+            tuple(When(to, sum_of([w.cube for w in ways])) for to, ways in levels), kept=True
+        )
     return _function(network, output, up, down, always=False)
 
 

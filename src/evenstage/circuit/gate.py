@@ -256,7 +256,10 @@ def _arcs(
         was_closed = network.closed_under(new ^ (1 << row))
         ways = list(network.paths(output, supply, closed))
         path = min(ways, key=len)
-        moved, behind = _moved(network, path, closed, _tied(network, supply, was_closed))
+        # What fights a load is at neither supply: it moves as soon as it lets go.
+        other = LOW if rising else HIGH
+        settled = _tied(network, supply, was_closed) - _tied(network, other, was_closed)
+        moved, behind = _moved(network, path, closed, settled)
         form = ArcForm(network.inputs[row], rising, path, moved, behind)
         (single if len(ways) == 1 else shared)[form] = None
     return _not_outdone(list(single) or list(shared))

@@ -20,6 +20,7 @@ from evenstage.circuit.sorting import sort_groups
 from evenstage.circuit.stage_notices import stage_notices
 from evenstage.circuit.stage_sorting import sort_stages
 from evenstage.circuit.stage_tables import AlikeStages
+from evenstage.circuit.storage.dynamic import with_dynamic
 from evenstage.circuit.storage.elements import TOO_LARGE, find_storage
 from evenstage.circuit.storage.reading import OSCILLATES
 from evenstage.circuit.strength import ratio_notices
@@ -96,6 +97,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         output[some.gates] = some.nets[:, some.form.output]
     process = _with_unit(process, devices)
     owner = owners(devices, alike)
+    loops = find_storage(devices, found.gates, [some for _, some in found.strange])
     circuit = Circuit(
         devices=devices,
         process=process,
@@ -105,7 +107,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         drive=np.zeros(len(devices.net_names)),
         not_understood=strange,
         apart=apart,
-        storage=find_storage(devices, found.gates, [some for _, some in found.strange]),
+        storage=with_dynamic(loops, devices, alike, stages, clocks),
         outside_cap=np.zeros(len(devices.net_names)),
         gate_output=output,
         gate_instance=owner,

@@ -6,9 +6,9 @@ from typing import TYPE_CHECKING
 
 from evenstage.report.block_text import block_lines, end_lines, finished, notice_lines
 from evenstage.report.paper import Paper
+from evenstage.report.path_text import effort_lines, legend, path_lines
 from evenstage.report.precharge_text import TITLE as PRECHARGE
 from evenstage.report.precharge_text import precharge_lines
-from evenstage.report.path_text import effort_lines, legend, path_lines
 from evenstage.report.vector_text import false_lines, vector_lines
 from evenstage.report.words import block_name, punctuality, rank, route, section, takes
 from evenstage.units import engineering

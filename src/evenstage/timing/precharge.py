@@ -107,9 +107,7 @@ def _origins(timing: Timing, graph: TimingGraph) -> IntArray:
     return origin
 
 
-def _phases(
-    circuit: Circuit, brief: Brief | None, nets: IntArray, rising: BoolArray
-) -> FloatArray:
+def _phases(circuit: Circuit, brief: Brief | None, nets: IntArray, rising: BoolArray) -> FloatArray:
     """Return how long the level lasts that each edge of a net begins, s; NaN where unsaid."""
     found = np.full(len(nets), np.nan)
     given = brief.clocks if brief else ()

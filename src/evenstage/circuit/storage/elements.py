@@ -26,11 +26,14 @@ if TYPE_CHECKING:
     from evenstage.circuit.storage.phases import Phases
     from evenstage.netlist.devices import Devices, IntArray
 
+DYNAMIC = "dynamic latch"
 FLIP_FLOP = "flip-flop"
 CLOCK_GATE = "clock gate"
 TOO_LARGE = "loop too large to be read"
 
-STORING = frozenset({FLIP_FLOP, CLOCK_GATE, LATCH, SET_RESET, C_ELEMENT, CELL, SENSE_AMPLIFIER})
+STORING = frozenset(
+    {FLIP_FLOP, CLOCK_GATE, LATCH, DYNAMIC, SET_RESET, C_ELEMENT, CELL, SENSE_AMPLIFIER}
+)
 """Kinds that end and start paths."""
 
 

@@ -22,6 +22,7 @@ from evenstage.report.page.parts import (
     cells,
 )
 from evenstage.report.page.path_drawing import path_figure
+from evenstage.report.page.precharge import precharge_parts
 from evenstage.report.page.residuals import constant_parts, residual_parts
 from evenstage.report.page.sides import sides
 from evenstage.report.page.stage_tables import effort_table, load_table, time_table
@@ -29,6 +30,7 @@ from evenstage.report.page.tradeoff import TradePoint, trade_parts
 from evenstage.report.page.waveforms import waveform_parts
 from evenstage.report.pair_text import total_rows, worst_charged
 from evenstage.report.paper import Paper
+from evenstage.report.precharge_text import TITLE as PRECHARGE
 from evenstage.report.quality_text import quality_parts
 from evenstage.report.scale import Scale, figure, percent, plain
 from evenstage.report.simulation_text import BY_CONSTRUCTION, simulation_answer
@@ -72,6 +74,7 @@ def analysis_page(analysis: Analysis, origin: Origin) -> Page:
         Section("others", "Other paths", _path_list(analysis.paths[1:], analysis)),
         Section("false", "False paths", _false_paths(analysis)),
         Section("ends", "Path ends", end_parts([("", analysis)])),
+        Section("precharge", PRECHARGE, precharge_parts(analysis.precharges)),
         _origin_section(origin, analysis),
     ]
     return Page(
