@@ -162,8 +162,8 @@ class TestReadBrief:
                     " (unknown-key)\n"
                     "    supply.high = 'vdd'\n"
                     "    ^^^^^^^^^^^\n"
-                    "known here: top, supplies, input, output, clock, ignore, fixed, leaves, same_size,"
-                    " limit, transition_max, coupling, copies_per_leaf, aim, case"
+                    "known here: top, supplies, input, output, clock, ignore, fixed, leaves,"
+                    " same_size, limit, transition_max, coupling, copies_per_leaf, aim, case"
                 ),
             ),
             (

@@ -7,6 +7,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.circuit.carrying import carry
+
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.tables import AlikeGates
@@ -45,7 +47,7 @@ def precharging(circuit: Circuit) -> Circuit | None:
         for some in circuit.stages
     )
     ends = dict.fromkeys(np.unique(np.concatenate(nets)).tolist(), PRECHARGED)
-    return replace(circuit, alike=alike, stages=stages, ends=ends)
+    return carry(circuit, replace(circuit, alike=alike, stages=stages, ends=ends))
 
 
 def _precharged(some: AlikeGates) -> AlikeGates:

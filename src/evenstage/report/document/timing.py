@@ -26,6 +26,7 @@ from evenstage.timing.results import (
     Edge,
     Path,
     PathEnd,
+    Precharge,
     SideBranch,
     Stage,
     WidthDifference,
@@ -137,6 +138,20 @@ END: Final = Shape(
     Field("why", "why", TEXT),
 )
 
+_PRECHARGE: Final = Shape(
+    Precharge,
+    Field("net", "net", TEXT),
+    Field("edge", "edge", EDGE),
+    Field("instance", "instance", TEXT),
+    Field("devices", "devices", many(TEXT)),
+    Field("clock", "clock", TEXT),
+    Field("clock_edge", "clock_edge", EDGE),
+    Field("delay_s", "delay", NUMBER),
+    Field("transition_s", "transition", NUMBER),
+    Told("complete_s", lambda one: one.complete),
+    Field("phase_s", "phase", optional(NUMBER)),
+)
+
 _COUNTS: Final = Shape(
     Counts,
     Field("devices", "devices", WHOLE),
@@ -159,6 +174,7 @@ ANALYSIS: Final = Shape(
     Field("paths", "paths", PATHS),
     Field("false_paths", "false_paths", PATHS),
     Field("ends", "ends", many(END.kind)),
+    Field("precharges", "precharges", many(_PRECHARGE.kind)),
 )
 
 
