@@ -25,7 +25,7 @@ import pytest
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.grammar import ENCODING, parser
 from evenstage.netlist.reading.read import read, read_bytes
-from evenstage.netlist.rewriting.edits import Edit, rewrite
+from evenstage.netlist.rewriting.edits import EditColumns, rewrite
 from support.large_netlists import extracted, flat, hierarchical
 
 if TYPE_CHECKING:
@@ -147,8 +147,11 @@ def rewriting() -> Iterator[Row]:
     netlist = read_text(flat(count))
 
     def all_widths() -> None:
-        spans = netlist.cards.value_spans(range(len(netlist)), "w")
-        rewrite(netlist, [Edit(span, b"1.25u") for span in spans if span is not None])
+        found = netlist.cards.value_places(range(len(netlist)), "w")
+        rewrite(
+            netlist,
+            [EditColumns(p.source, p.starts, p.ends, [b"1.25u"] * len(p.starts)) for p in found],
+        )
 
     yield Row("rewriting 10^6 widths", seconds(all_widths) * _MILLION / len(netlist), "s", 4.0)
 

@@ -142,6 +142,26 @@ class CardColumns:
     values: Mapping[str, IntArray]
 
 
+@dataclass(frozen=True, slots=True)
+class ValuePlaces:
+    """Where one parameter stands on cards of one file.
+
+    Parameters
+    ----------
+    source : SourceText
+        The file.
+    numbers : IntArray, shape (n,)
+        Of the cards.
+    starts, ends : IntArray, shape (n,)
+        Bytes ``[start, end)`` of the value on each.
+    """
+
+    source: SourceText
+    numbers: IntArray
+    starts: IntArray
+    ends: IntArray
+
+
 class CardStore(Protocol):
     """All element cards of a netlist: one by one as objects, or many at once in columns."""
 
@@ -179,8 +199,8 @@ class CardStore(Protocol):
         """Return the name of a card as written."""
         ...
 
-    def value_spans(self, numbers: Iterable[int], name: str) -> Iterator[Span | None]:
-        """Give the bytes of one parameter of some cards; None where a card does not have it."""
+    def value_places(self, numbers: Sequence[int], name: str) -> Iterator[ValuePlaces]:
+        """Give the places of one parameter on cards of ascending numbers, where they have it."""
         ...
 
     def full_names(self, numbers: Iterable[int]) -> Iterator[str]:

@@ -12,6 +12,7 @@ import pytest
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading import reader as reader_module
 from evenstage.netlist.reading.read import read_bytes
+from evenstage.source import Span
 from support.columns_said import both_said
 
 if TYPE_CHECKING:
@@ -97,12 +98,17 @@ def test_values_converted_together_are_worth_the_same(spelling: str) -> None:
     check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))
 
 
-def test_spans_of_a_parameter_of_many_cards() -> None:
+def test_places_of_a_parameter_of_many_cards() -> None:
     lines = random_lines(random.Random(9), 300)
+    lines[150:200] = [".subckt sub a b", *lines[150:200], ".ends"]
     netlist = read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path())
-    found = list(netlist.cards.value_spans(range(len(netlist)), "w"))
-    asked = [netlist.card(number).parameter("w") for number in range(len(netlist))]
-    assert found == [None if one is None else one.span for one in asked]
+    found = [
+        (number, Span(places.source, start, end))
+        for places in netlist.cards.value_places(range(len(netlist)), "w")
+        for number, start, end in zip(places.numbers, places.starts, places.ends, strict=True)
+    ]
+    asked = [(number, netlist.card(number).parameter("w")) for number in range(len(netlist))]
+    assert found == [(number, one.span) for number, one in asked if one is not None]
 
 
 def test_names_of_many_cards() -> None:

@@ -5,11 +5,12 @@ from __future__ import annotations
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from evenstage.netlist.rewriting.edits import Edit, apply_edits
+from evenstage.netlist.rewriting.edits import Edit, EditColumns, apply_edits
 from evenstage.source import SourceText, Span
 
 if TYPE_CHECKING:
@@ -33,6 +34,12 @@ def sources_and_edits(draw: st.DrawFn) -> tuple[SourceText, list[Edit]]:
     ]
 
 
+def in_columns(source: SourceText, edits: list[Edit]) -> EditColumns:
+    starts, ends = ([getattr(e.span, edge) for e in edits] for edge in ("start", "end"))
+    texts = [edit.text for edit in edits]
+    return EditColumns(source, np.array(starts, np.int64), np.array(ends, np.int64), texts)
+
+
 class TestApplyEdits:
     @quick
     @given(st.binary())
@@ -52,6 +59,8 @@ class TestApplyEdits:
         expected += source.data[at:]
         random.shuffle(edits)
         assert apply_edits(source, edits) == expected
+        many = edits[: random.randrange(len(edits) + 1)]
+        assert apply_edits(source, [*edits[len(many) :], in_columns(source, many)]) == expected
 
     def test_insertions_at_one_place_keep_their_order_and_stand_before_a_replacement(self) -> None:
         source = source_of(b"abc")

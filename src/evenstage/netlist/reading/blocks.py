@@ -91,7 +91,8 @@ class Blocks:
         data = self.source.data
         index = bisect_right(self._starts, position)
         floor = self._ends[index - 1] if index else 0
-        line = max(data.rfind(b"\n", floor, position), data.rfind(b"\r", floor, position)) + 1
+        feed = data.rfind(b"\n", floor, position)
+        line = max(feed, data.rfind(b"\r", max(feed, floor), position)) + 1
         start = self._behind_idle_lines(position if line == 0 else line)
         if index < len(self._starts) and start >= self._starts[index]:
             return index

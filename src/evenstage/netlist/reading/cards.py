@@ -8,17 +8,16 @@ from __future__ import annotations
 
 import re
 from array import array
-from bisect import bisect_right
+from bisect import bisect_left, bisect_right
 from itertools import pairwise
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from evenstage.netlist.intake import Values, WordList, Words
-from evenstage.netlist.netlist import CardColumns, CardGroup
+from evenstage.netlist.netlist import CardColumns, CardGroup, ValuePlaces
 from evenstage.netlist.reading.fields import card_of, fields_of_shape, fields_of_statement
 from evenstage.netlist.reading.stored import ShapeColumns, main_argument
-from evenstage.source import Span
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Iterator, Mapping, Sequence
@@ -237,30 +236,42 @@ class CardTable:
             start, end = (base + edge for edge in match.span(position + 2))
         return blocks.source.data[start:end].decode("utf-8", "surrogateescape")
 
-    def value_spans(self, numbers: Iterable[int], name: str) -> Iterator[Span | None]:
-        """Give the bytes of one parameter of some cards; None where a card does not have it."""
+    def value_places(self, numbers: Sequence[int], name: str) -> Iterator[ValuePlaces]:
+        """Give the places of one parameter on some cards, those that have it; see ``CardStore``."""
         patterns = [shape.until(name) for shape in self._shapes]
-        shape_of, starts = self._shape_of, self._starts
-        first, beyond, base, text = 0, 0, 0, b""
-        blocks, _ = self._segment_places[0]
+        first = 0
+        while first < len(numbers):
+            last = bisect_left(numbers, self._segment_of(numbers[first])[1], first)
+            found = self._values_on(numbers[first:last], name, patterns)
+            yield ValuePlaces(self._place(numbers[first])[0].source, *found)
+            first = last
+
+    def _values_on(
+        self, numbers: Sequence[int], name: str, patterns: Sequence[re.Pattern[bytes] | None]
+    ) -> tuple[IntArray, IntArray, IntArray]:
+        """Return which cards of a segment have a parameter, where it starts and where it ends."""
+        having, starts, ends = array("q"), array("q"), array("q")
+        blocks, _ = self._place(numbers[0])
+        shape_of, card_starts = self._shape_of, self._starts
+        base = beyond = 0
         for number in numbers:
-            shape, start = shape_of[number], starts[number]
-            if shape == _ODD:
-                parameter = self[number].parameter(name)
-                yield None if parameter is None else parameter.span
-                continue
-            pattern = patterns[shape]
-            if pattern is None:
-                yield None
-                continue
-            if not first <= number < beyond:
-                first, beyond = self._segment_of(number)
-                blocks, text = self._place(number)[0], b""
-            if not base <= start < base + len(text):
-                base, text, _ = blocks.at(start)
-            match = pattern.match(text, start - base)
-            assert match is not None
-            yield Span(blocks.source, base + match.start(1), base + match.end(1))
+            shape, start = shape_of[number], card_starts[number]
+            pattern = None if shape == _ODD else patterns[shape]
+            if pattern is not None:
+                if not base <= start < beyond:
+                    base, text, _ = blocks.at(start)
+                    beyond = base + len(text)
+                match = pattern.match(text, start - base)
+                assert match is not None
+                first, last = match.span(1)
+                having.append(number)
+                starts.append(base + first)
+                ends.append(base + last)
+            elif shape == _ODD and (parameter := self[number].parameter(name)) is not None:
+                having.append(number)
+                starts.append(parameter.span.start)
+                ends.append(parameter.span.end)
+        return _long_view(having), _long_view(starts), _long_view(ends)
 
     def _segment_of(self, number: int) -> tuple[int, int]:
         """Return the range of the cards around one that stand in the same place."""
@@ -371,3 +382,7 @@ def _run_groups(
 
 def _folded(text: str) -> bytes:
     return text.encode("utf-8", "surrogateescape").lower()
+
+
+def _long_view(column: array[int]) -> IntArray:
+    return np.frombuffer(column, np.int64) if column else np.zeros(0, np.int64)

@@ -29,6 +29,7 @@ if TYPE_CHECKING:
         CardStore,
         Netlist,
         Subcircuit,
+        ValuePlaces,
     )
     from evenstage.source import Span
 
@@ -268,9 +269,9 @@ class ExactCards:
         """Return the name of a card as written."""
         return self.cards.name(number)
 
-    def value_spans(self, numbers: Iterable[int], name: str) -> Iterator[Span | None]:
-        """Give the bytes of one parameter of some cards; None where a card does not have it."""
-        return self.cards.value_spans(numbers, name)
+    def value_places(self, numbers: Sequence[int], name: str) -> Iterator[ValuePlaces]:
+        """Give the places of one parameter on cards of ascending numbers, where they have it."""
+        return self.cards.value_places(numbers, name)
 
     def full_names(self, numbers: Iterable[int]) -> Iterator[str]:
         """Give the names of some cards as written, behind those of their subcircuits."""

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from functools import cache
 from typing import TYPE_CHECKING, Final
 
 from evenstage.errors import Notice
@@ -370,12 +371,14 @@ def _block_end(unit: Unit, position: int) -> int | None:
     """Return where a block in another language ends, if one begins here."""
     if unit.source.data[position] != ord("."):
         return None
-    for name in ("CONTROL", "DATA", "ALTER"):
-        pattern = re.compile(terminal(name).encode(ENCODING), re.IGNORECASE)
-        match = pattern.match(unit.source.data, position)
-        if match is not None:
-            return match.end()
-    return None
+    matches = (pattern.match(unit.source.data, position) for pattern in _foreign_blocks())
+    return next((match.end() for match in matches if match is not None), None)
+
+
+@cache
+def _foreign_blocks() -> tuple[re.Pattern[bytes], ...]:
+    names = ("CONTROL", "DATA", "ALTER")
+    return tuple(re.compile(terminal(n).encode(ENCODING), re.IGNORECASE) for n in names)
 
 
 def _word_end(text: bytes, position: int) -> int:

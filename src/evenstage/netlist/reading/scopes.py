@@ -319,4 +319,5 @@ def _begins(opened: _Open) -> str:
 
 def line_start(source: SourceText, offset: int) -> int:
     """Return where the line of an offset begins."""
-    return max(source.data.rfind(b"\n", 0, offset), source.data.rfind(b"\r", 0, offset)) + 1
+    feed = source.data.rfind(b"\n", 0, offset)
+    return max(feed, source.data.rfind(b"\r", feed + 1, offset)) + 1

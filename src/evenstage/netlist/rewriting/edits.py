@@ -3,18 +3,22 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from operator import attrgetter
+from itertools import chain
 from typing import TYPE_CHECKING
+
+import numpy as np
 
 from evenstage.netlist.collection import without_collection
 from evenstage.progress import tell
+from evenstage.source import Span
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable
+    from collections.abc import Iterable, Sequence
     from pathlib import Path
 
+    from evenstage.netlist.devices import IntArray
     from evenstage.netlist.netlist import Netlist
-    from evenstage.source import SourceText, Span
+    from evenstage.source import SourceText
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,18 +37,35 @@ class Edit:
     text: bytes
 
 
-_ends = attrgetter("span.start", "span.end")
+@dataclass(frozen=True, slots=True)
+class EditColumns:
+    """New bytes for many spans of one file.
+
+    Parameters
+    ----------
+    source : SourceText
+        The file.
+    starts, ends : IntArray, shape (n,)
+        The spans ``[start, end)``.
+    texts : sequence of bytes, n of them
+        What stands there afterwards.
+    """
+
+    source: SourceText
+    starts: IntArray
+    ends: IntArray
+    texts: Sequence[bytes]
 
 
-def apply_edits(source: SourceText, edits: Iterable[Edit]) -> bytes:
+def apply_edits(source: SourceText, edits: Iterable[Edit | EditColumns]) -> bytes:
     """Return a source's bytes with all edits spliced in.
 
     Parameters
     ----------
     source : SourceText
         The file; each edit must be of it.
-    edits : iterable of Edit
-        In any order; only insertions at one place keep theirs.
+    edits : iterable of Edit or EditColumns
+        In any order; only insertions at one place keep theirs, single ones first.
 
     Returns
     -------
@@ -64,28 +85,60 @@ def apply_edits(source: SourceText, edits: Iterable[Edit]) -> bytes:
     >>> apply_edits(source, [Edit(Span(source, 2, 6), b"1.25u")])
     b'w=1.25u l=60n'
     """
-    pieces: list[bytes] = []
-    data, done = source.data, 0
-    for edit in sorted(edits, key=_ends):
-        start, end = _ends(edit)
-        of_another = edit.span.source is not source and edit.span.source.path != source.path
-        if of_another or not done <= start <= end:
-            raise ValueError(f"edit at {edit.span.place} overlaps another or is of another file")
-        pieces += (data[done:start], edit.text)
-        done = end
-    pieces.append(data[done:])
+    columns = _together(source, edits)
+    if not len(columns.texts):
+        return source.data
+    order = np.lexsort((columns.ends, columns.starts))
+    starts, ends = columns.starts[order], columns.ends[order]
+    done = np.append(0, ends[:-1])
+    wrong = np.flatnonzero((done > starts) | (starts > ends))
+    if len(wrong):
+        place = Span(source, int(starts[wrong[0]]), int(ends[wrong[0]])).place
+        raise ValueError(f"edit at {place} overlaps another")
+    data, texts = source.data, columns.texts
+    kept = zip(done.tolist(), starts.tolist(), strict=True)
+    pieces = [data[ends[-1] :]] * (2 * len(order) + 1)
+    pieces[:-1:2] = [data[begin:end] for begin, end in kept]
+    pieces[1::2] = [texts[number] for number in order.tolist()]
     return b"".join(pieces)
 
 
-def rewrite(netlist: Netlist, edits: Iterable[Edit]) -> dict[Path, bytes]:
+def _together(source: SourceText, edits: Iterable[Edit | EditColumns]) -> EditColumns:
+    """Return the edits of a file in one, the single ones first."""
+    bulk: list[EditColumns] = []
+    single: list[Edit] = []
+    for edit in edits:
+        of = _source(edit)
+        if of is not source and of.path != source.path:
+            raise ValueError(f"an edit of {of.label}, another file than {source.label}")
+        if isinstance(edit, Edit):
+            single.append(edit)
+        else:
+            bulk.append(edit)
+    starts = np.array([edit.span.start for edit in single], np.int64)
+    ends = np.array([edit.span.end for edit in single], np.int64)
+    return EditColumns(
+        source,
+        np.concatenate([starts, *(edits.starts for edits in bulk)]),
+        np.concatenate([ends, *(edits.ends for edits in bulk)]),
+        [*(edit.text for edit in single), *chain.from_iterable(edits.texts for edits in bulk)],
+    )
+
+
+def _source(edit: Edit | EditColumns) -> SourceText:
+    """Return the file an edit is of."""
+    return edit.span.source if isinstance(edit, Edit) else edit.source
+
+
+def rewrite(netlist: Netlist, edits: Iterable[Edit | EditColumns]) -> dict[Path, bytes]:
     """Return the new contents of every file of a netlist that changes.
 
     Parameters
     ----------
     netlist : Netlist
         The netlist the edits' spans belong to.
-    edits : iterable of Edit
-        In any order; only insertions at one place keep theirs.
+    edits : iterable of Edit or EditColumns
+        In any order; only insertions at one place keep theirs, single ones first.
 
     Returns
     -------
@@ -110,12 +163,9 @@ def rewrite(netlist: Netlist, edits: Iterable[Edit]) -> dict[Path, bytes]:
     """
     tell("writing")
     with without_collection():
-        of_source: dict[int, list[Edit]] = {}
+        of_path: dict[Path, list[Edit | EditColumns]] = {}
         for edit in edits:
-            of_source.setdefault(id(edit.span.source), []).append(edit)
-        of_path: dict[Path, list[Edit]] = {}
-        for some in of_source.values():
-            of_path.setdefault(some[0].span.source.path, []).extend(some)
+            of_path.setdefault(_source(edit).path, []).append(edit)
         texts = {
             source.path: apply_edits(source, of_path[source.path])
             for source in netlist.sources
