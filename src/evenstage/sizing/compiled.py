@@ -14,6 +14,8 @@ from numba import njit
 from evenstage.sizing.softmax import LEAST_SHARE
 
 if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
     from evenstage.sizing.problem import FloatArray, IntArray
     from evenstage.sizing.softmax import Graph
 
@@ -112,6 +114,25 @@ def _product(
             through[source[arc]] += bent
 
 
+@njit(cache=True, nogil=True)
+def _carrying(
+    first: IntArray, source: IntArray, flow: FloatArray, least: float, kept: NDArray[np.bool_]
+) -> None:
+    nodes = len(first) - 1
+    reached = np.zeros(nodes, np.bool_)
+    reached[nodes - 1] = True
+    for node in range(nodes - 1, 0, -1):
+        if not reached[node]:
+            continue
+        most = 0.0
+        for arc in range(first[node], first[node + 1]):
+            most = max(most, flow[arc])
+        for arc in range(first[node], first[node + 1]):
+            if flow[arc] >= least or flow[arc] == most:
+                kept[arc] = True
+                reached[source[arc]] = True
+
+
 class Compiled:
     """Sweeps as compiled loops."""
 
@@ -128,6 +149,12 @@ class Compiled:
         graph, share = self.graph, np.empty(len(delay))
         worst = _soft(graph.first, graph.source, delay, temperature, self._arrival, share)
         return CompiledSoft(graph, float(worst), share, temperature)
+
+    def carrying(self, flow: FloatArray, least: float) -> NDArray[np.bool_]:
+        """Tell which arcs carry flow, shape (arcs,)."""
+        kept = np.zeros(len(flow), bool)
+        _carrying(self.graph.first, self.graph.source, flow, least, kept)
+        return kept
 
 
 class CompiledSoft:

@@ -46,7 +46,7 @@ def _taken(
 ) -> None:
     forms, sizes = len(form), len(falling)
     for row in range(len(rows)):
-        total = 0.0
+        total = rows[row]
         for k in range(pointer[row], pointer[row + 1]):
             c = column[k]
             if c < forms:
@@ -75,6 +75,51 @@ def _moved(
         for m in range(first[g], first[g + 1]):
             total += part[m] * v[plus[m]]
         moved[g] = total
+
+
+@njit(cache=True, nogil=True)
+def _weighted(
+    pointer: IntArray, column: IntArray, take: FloatArray, rows: FloatArray, weight: FloatArray
+) -> None:
+    for row in range(len(rows)):
+        some = rows[row]
+        if some != 0.0:
+            for k in range(pointer[row], pointer[row + 1]):
+                weight[column[k]] += take[k] * some
+
+
+@njit(cache=True, nogil=True)
+def _slope(
+    first: IntArray,
+    plus: IntArray,
+    driver: IntArray,
+    part: FloatArray,
+    form: FloatArray,
+    x: FloatArray,
+    inverse: FloatArray,
+    weight: FloatArray,
+    result: FloatArray,
+) -> None:
+    forms, sizes = len(driver), len(x)
+    for i in range(sizes):
+        result[i] = x[i] * weight[forms + sizes + i] - inverse[i] * weight[forms + i]
+    for g in range(forms):
+        some = weight[g]
+        if some != 0.0:
+            result[driver[g]] -= some * form[g]
+            for m in range(first[g], first[g + 1]):
+                result[plus[m]] += part[m] * some
+
+
+@njit(cache=True, nogil=True)
+def _pulled(
+    first: IntArray, plus: IntArray, part: FloatArray, weight: FloatArray, result: FloatArray
+) -> None:
+    for g in range(len(weight)):
+        some = weight[g]
+        if some != 0.0:
+            for m in range(first[g], first[g + 1]):
+                result[plus[m]] += part[m] * some
 
 
 @njit(cache=True, nogil=True)
@@ -130,7 +175,9 @@ class CompiledSums(Sums):
         part, form = np.empty(len(self.plus)), np.empty(self.forms)
         forms = (self.first, self.plus, self.driver)
         _worked_out(*forms, self.coefficient, self.base, x, inverse, part, form)
-        return CompiledSumsAt(self, x, inverse, part, form)
+        take, values = self.take, self.constant.copy()
+        _taken(take.indptr, take.indices, take.data, form, inverse, x, values)
+        return CompiledSumsAt(self, x, inverse, part, form, values)
 
 
 class CompiledSumsAt(SumsAt):
@@ -139,11 +186,30 @@ class CompiledSumsAt(SumsAt):
     def moved(self, v: FloatArray) -> Moved:
         """Return how everything moves along v, shape (n,)."""
         sums, take = self.sums, self.sums.take
-        form, behind, rows = np.empty(sums.forms), np.empty(sums.forms), np.empty(take.shape[0])
+        form, behind, rows = np.empty(sums.forms), np.empty(sums.forms), np.zeros(take.shape[0])
         _moved(sums.first, sums.plus, sums.driver, self.part, self.form, v, form, behind)
         falling, growing = -self.inverse * v, self.x * v
         _taken(take.indptr, take.indices, take.data, form, falling, growing, rows)
         return Moved(rows, form, behind)
+
+    def weights(self, w: FloatArray) -> FloatArray:
+        """Return u for row weights w, shape (forms + 2 n,)."""
+        take, weights = self.sums.take, np.zeros(self.sums.take.shape[1])
+        _weighted(take.indptr, take.indices, take.data, w, weights)
+        return weights
+
+    def pulled(self, weight: FloatArray) -> FloatArray:
+        """Return the parts at the size each grows with, times their forms' weights, shape (n,)."""
+        sums, result = self.sums, np.zeros(self.sums.sizes)
+        _pulled(sums.first, sums.plus, self.part, weight, result)
+        return result
+
+    def gradient(self, u: FloatArray) -> FloatArray:
+        """Return the gradient of the weighted sum, shape (n,)."""
+        sums, result = self.sums, np.empty(self.sums.sizes)
+        forms = (sums.first, sums.plus, sums.driver, self.part, self.form)
+        _slope(*forms, self.x, self.inverse, u, result)
+        return result
 
     def bent(
         self,

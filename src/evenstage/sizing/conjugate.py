@@ -13,7 +13,39 @@ import numpy as np
 if TYPE_CHECKING:
     from collections.abc import Callable
 
+    from evenstage.sizing.hessian import Hessian
     from evenstage.sizing.problem import FloatArray
+
+
+def by_products(
+    hessian: Hessian,
+    damping: FloatArray,
+    scale: FloatArray,
+    right: FloatArray,
+    residual: float,
+    most: int,
+) -> tuple[FloatArray, int]:
+    """Return an inexact solution of Newton's system on free sizes, and the products it took.
+
+    Parameters
+    ----------
+    hessian : Hessian
+    damping : FloatArray, shape (n,)
+        Added to its diagonal.
+    scale : FloatArray, shape (n,)
+        1 over the sum of both; 0 for sizes that stay.
+    right : FloatArray, shape (n,)
+        0 for sizes that stay.
+    residual, most : float and int
+        See :func:`conjugate_gradients`.
+    """
+    free = scale > 0.0
+
+    def product(v: FloatArray) -> FloatArray:
+        result: FloatArray = np.where(free, hessian.product(v) + damping * v, 0.0)
+        return result
+
+    return conjugate_gradients(product, lambda r: scale * r, right, residual=residual, most=most)
 
 
 def conjugate_gradients(

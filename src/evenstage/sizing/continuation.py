@@ -21,13 +21,15 @@ import numpy as np
 from evenstage.progress import tell_gap
 from evenstage.sizing.hessian import Hessian
 from evenstage.sizing.lagrangian import Weights
-from evenstage.sizing.newton import State, direction, is_enough, minimised
+from evenstage.sizing.narrowing import lowered, part_of
+from evenstage.sizing.newton import State, direction, is_enough
 from evenstage.sizing.tangent import best_bound
 
 if TYPE_CHECKING:
     from collections.abc import Callable
 
     from evenstage.sizing.lagrangian import Point
+    from evenstage.sizing.narrowing import Part
     from evenstage.sizing.problem import FloatArray
     from evenstage.sizing.setup import Setup
     from evenstage.sizing.tangent import Bound
@@ -99,9 +101,18 @@ class Best:
         if point.keeps and point.objective < self.objective:
             self.y, self.objective = point.y, point.objective
 
-    def prove(self, point: Point, tolerance: float) -> None:
-        """Keep the bound of a point if it is higher; `tolerance` is the relative gap wanted."""
-        found = best_bound(point, tolerance * abs(point.objective))
+    def prove(self, point: Point, tolerance: float, part: Part | None = None) -> None:
+        """Keep the bound of a point if it is higher.
+
+        Parameters
+        ----------
+        point : Point
+        tolerance : float
+            The relative gap wanted.
+        part : Part, optional
+            Of the point.
+        """
+        found = best_bound(point, tolerance * abs(point.objective), part)
         if found.value > self.bound:
             self.proof = found
 
@@ -149,13 +160,14 @@ class Walk:
         falls, price, rounds = _FALLS, np.inf, 0
         self.best.offer(point)
         while True:
-            state = minimised(replace(state, steps=0, work=0), _MOST_STEPS)
+            state = lowered(replace(state, steps=0, work=0), _MOST_STEPS)
             point, before = state.point, price
             price = point.prices.goal
             self.best.offer(point)
-            self.best.prove(point, self.tolerance)
+            part = part_of(point)
+            self.best.prove(point, self.tolerance, part)
             tell_gap(self.best.gap)
-            tangent, work = self._tangent(state)
+            tangent, work = _tangent(state, part)
             work += self._try_along(point, tangent)
             self.steps += state.steps
             self.work += state.work + work
@@ -171,12 +183,6 @@ class Walk:
             state = self._cooler(state, tangent, falls, settled=settled)
             if not state.point.inside:
                 return point
-
-    def _tangent(self, state: State) -> tuple[FloatArray, int]:
-        """Return how sizes move as the temperature falls, per unit of its logarithm."""
-        hessian = Hessian(state.point, state.prices)
-        tangent, work = direction(state, hessian.cooling(), damped=False)
-        return np.clip(tangent, -_LONGEST, _LONGEST), work
 
     def _try_along(self, point: Point, tangent: FloatArray) -> int:
         """Offer sizes along the tangent, up to where they miss a deadline; return the work."""
@@ -229,6 +235,16 @@ class Walk:
             if found.inside:
                 return found
         return found
+
+
+def _tangent(state: State, part: Part | None) -> tuple[FloatArray, int]:
+    """Return how sizes move as the temperature falls, per unit of its logarithm, and the work."""
+    if part is not None:
+        tangent, work = _tangent(part.state(state), None)
+        return part.spread(tangent, np.zeros(len(state.point.y))), work
+    hessian = Hessian(state.point, state.prices)
+    tangent, work = direction(state, hessian.cooling(), damped=False)
+    return np.clip(tangent, -_LONGEST, _LONGEST), work
 
 
 def _next_weights(point: Point, falls: float) -> Weights:

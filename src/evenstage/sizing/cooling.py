@@ -31,7 +31,8 @@ from evenstage.sizing.infeasible import (
     LimitOutOfReachError,
 )
 from evenstage.sizing.lagrangian import Point, Weights
-from evenstage.sizing.newton import State, minimised
+from evenstage.sizing.narrowing import lowered
+from evenstage.sizing.newton import State
 from evenstage.sizing.problem import arrivals, worst_delay
 from evenstage.sizing.setup import Question, Setup
 from evenstage.sizing.solution import Solution, relative_gap
@@ -201,7 +202,7 @@ class _Job:
         """
         best, inside = Best(), None
         for trial in range(_PRICES):
-            point = minimised(State(point=point, prices=point.prices, damping=0.1), _STEPS).point
+            point = lowered(State(point=point, prices=point.prices, damping=0.1), _STEPS).point
             best.prove(point, self.tolerance)
             best.offer(point)
             if best.bound > deadline:

@@ -17,6 +17,7 @@ from evenstage.sizing.problem import totals
 from evenstage.sizing.softmax import LEAST_SHARE
 
 if TYPE_CHECKING:
+    from numpy.typing import NDArray
     from scipy.sparse.linalg import SuperLU
 
     from evenstage.sizing.problem import FloatArray
@@ -70,6 +71,17 @@ class Levelled:
             share[arcs] = part / total[place]
         share[share < LEAST_SHARE] = 0.0
         return LevelledSoft(self.graph, float(arrival[-1]) * temperature, share, temperature)
+
+    def carrying(self, flow: FloatArray, least: float) -> NDArray[np.bool_]:
+        """Tell which arcs carry flow, shape (arcs,)."""
+        graph = self.graph
+        reached, kept = np.zeros(graph.nodes, bool), flow >= least
+        kept |= flow == np.maximum.reduceat(flow, graph.first[1:-1])[graph.target - 1]
+        reached[-1] = True
+        for _, arcs, source, _, _ in reversed(self._steps):
+            kept[arcs] &= reached[graph.target[arcs]]
+            reached[source[kept[arcs]]] = True
+        return kept
 
 
 class LevelledSoft:

@@ -14,7 +14,6 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
-from evenstage.sizing.conjugate import conjugate_gradients
 from evenstage.sizing.hessian import Hessian
 from evenstage.sizing.lagrangian import Prices
 
@@ -26,6 +25,9 @@ if TYPE_CHECKING:
 
 #: A step changes no size by more than this in the logarithm.
 _LONGEST_STEP: Final = 1.5
+#: Residual of a step relative to the gradient, and the most products it may take.
+_RESIDUAL: Final = 0.1
+_PRODUCTS: Final = 80
 #: A step goes at most this part of the way to where the tangent of a constraint ends.
 _TO_WALL: Final = 0.99
 #: Prices stay within this factor of what their barriers imply.
@@ -101,13 +103,9 @@ def direction(state: State, right: FloatArray, *, damped: bool) -> tuple[FloatAr
     diagonal = np.maximum(diagonal, 1e-14 * float(diagonal.max(initial=1e-300)))
     damping = (state.damping if damped else _LEAST_DAMPING) * diagonal
     free = free_sizes(point)
-
-    def product(v: FloatArray) -> FloatArray:
-        result: FloatArray = np.where(free, hessian.product(v) + damping * v, 0.0)
-        return result
-
     scale = np.where(free, 1.0 / (diagonal + damping), 0.0)
-    return conjugate_gradients(product, lambda r: scale * r, np.where(free, right, 0.0))
+    right = np.where(free, right, 0.0)
+    return point.setup.solve(hessian, damping, scale, right, _RESIDUAL, _PRODUCTS)
 
 
 def free_sizes(point: Point) -> NDArray[np.bool_]:

@@ -11,16 +11,24 @@ from dataclasses import dataclass, fields, replace
 from importlib.util import find_spec
 from typing import TYPE_CHECKING, Final
 
+from evenstage.sizing.conjugate import by_products
 from evenstage.sizing.levelled import Levelled
 from evenstage.sizing.neighbours import Neighbours
 from evenstage.sizing.reduced import Reduced
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
+    from evenstage.sizing.hessian import Hessian
     from evenstage.sizing.problem import FloatArray, Problem
     from evenstage.sizing.softmax import Sweeps
 
+    Solver = Callable[
+        [Hessian, FloatArray, FloatArray, FloatArray, float, int], tuple[FloatArray, int]
+    ]
+
 #: Arcs from which compiled loops are worth loading.
-_COMPILED_FROM: Final = 3_000
+_COMPILED_FROM: Final = 800
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -55,12 +63,16 @@ class Setup:
         Of its graph.
     neighbours : Neighbours
         Of its arcs.
+    solve : callable
+        Solves Newton's systems: :func:`evenstage.sizing.conjugate.by_products`, or the same in
+        compiled loops.
     question : Question
     """
 
     reduced: Reduced
     sweeps: Sweeps
     neighbours: Neighbours
+    solve: Solver
     question: Question
 
     @classmethod
@@ -73,6 +85,7 @@ class Setup:
             reduced=reduced,
             sweeps=Levelled(reduced.graph),
             neighbours=Neighbours(reduced),
+            solve=by_products,
             question=Question(),
         )
 
@@ -89,6 +102,7 @@ def worth_compiling(arcs: int) -> bool:
 def _compiled(problem: Problem, sizes: FloatArray) -> Setup:
     # Numba is slow to load.
     from evenstage.sizing.compiled import Compiled
+    from evenstage.sizing.compiled_directions import by_loops
     from evenstage.sizing.compiled_sums import CompiledSums
 
     reduced = Reduced.of(problem, sizes, by_level=False)
@@ -98,5 +112,6 @@ def _compiled(problem: Problem, sizes: FloatArray) -> Setup:
         reduced=reduced,
         sweeps=Compiled(reduced.graph),
         neighbours=Neighbours(reduced),
+        solve=by_loops,
         question=Question(),
     )

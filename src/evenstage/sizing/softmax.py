@@ -69,11 +69,20 @@ class Graph:
 class Sweeps(Protocol):
     """What a graph can work out for given delays, however it is done."""
 
+    def __init__(self, graph: Graph) -> None:
+        """Make a graph ready."""
+
     def longest(self, delay: FloatArray) -> float:
         """Return the length of the longest path."""
 
     def soft(self, delay: FloatArray, temperature: float) -> Soft:
         """Return soft arrivals at a temperature > 0."""
+
+    def carrying(self, flow: FloatArray, least: float) -> NDArray[np.bool_]:
+        """Tell which arcs carry flow, shape (arcs,): paths from source to sink and nothing else.
+
+        Those that carry at least so much, and before each the way most of its flow comes.
+        """
 
 
 class Soft(Protocol):

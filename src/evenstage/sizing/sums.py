@@ -25,7 +25,7 @@ from functools import cached_property
 from typing import TYPE_CHECKING, Final, NamedTuple
 
 import numpy as np
-from scipy.sparse import csr_array
+from scipy.sparse import csc_array, csr_array
 
 from evenstage.sizing.problem import totals
 
@@ -79,19 +79,25 @@ class Sums:
         size = np.append(self.driver, np.arange(n))[np.minimum(column, g + n - 1)]
         falls = column < g + n
         found = np.full(self.take.shape[0], -1, np.int32)
-        found[self._entry_row[falls]] = size[falls]
+        found[self.entry_row[falls]] = size[falls]
         return found
 
     @cached_property
-    def _entry_row(self) -> IntArray:
+    def entry_row(self) -> IntArray:
+        """Row of each entry of C."""
         rows = np.arange(self.take.shape[0], dtype=np.int32)
         return np.repeat(rows, np.diff(self.take.indptr))
 
     @cached_property
-    def squared(self) -> csr_array[np.float64]:
-        """C with its entries squared."""
-        take = self.take
-        return csr_array((take.data**2, take.indices, take.indptr), shape=take.shape)
+    def taken(self) -> csc_array[np.float64]:
+        """C, transposed."""
+        return csc_array(self.take.T)
+
+    @cached_property
+    def squared(self) -> csc_array[np.float64]:
+        """C with its entries squared, transposed."""
+        take = self.taken
+        return csc_array((take.data**2, take.indices, take.indptr), shape=take.shape)
 
     @property
     def forms(self) -> int:
@@ -141,11 +147,16 @@ class Sums:
         drive = inverse[self.driver]
         part = self.coefficient * x[self.plus]
         part *= drive[self.of_part]
-        form = totals(self.of_part, part, self.forms) if len(part) else np.zeros(self.forms)
-        form += self.base * drive
-        return SumsAt(self, x, inverse, part, form)
+        form = self.added(part) + self.base * drive
+        values = self.take @ np.concatenate([form, inverse, x]) + self.constant
+        return SumsAt(self, x, inverse, part, form, values)
+
+    def added(self, part: FloatArray) -> FloatArray:
+        """Return what parts of forms add up to, shape (forms,)."""
+        return np.add.reduceat(part, self.first[:-1]) if len(part) else np.zeros(self.forms)
 
 
+@dataclass(frozen=True)
 class SumsAt:
     """Sums at one point, and their derivatives.
 
@@ -156,31 +167,38 @@ class SumsAt:
         Sizes and what 1 is over them.
     part, form : FloatArray
         r and f.
+    values : FloatArray, shape (rows,)
+        The sums.
     """
 
-    def __init__(
-        self, sums: Sums, x: FloatArray, inverse: FloatArray, part: FloatArray, form: FloatArray
-    ) -> None:
-        self.sums, self.x, self.inverse, self.part, self.form = sums, x, inverse, part, form
-        self.values: FloatArray = sums.take @ np.concatenate([form, inverse, x]) + sums.constant
-        shape = (sums.forms, sums.sizes)
-        self.parts = csr_array((part, sums.plus, sums.first), shape=shape)
+    sums: Sums
+    x: FloatArray
+    inverse: FloatArray
+    part: FloatArray
+    form: FloatArray
+    values: FloatArray
 
     def moved(self, v: FloatArray) -> Moved:
         """Return how everything moves along v, shape (n,)."""
         sums, behind = self.sums, v[self.sums.driver]
-        form = self.parts @ v - self.form * behind
+        form = sums.added(self.part * v[sums.plus]) - self.form * behind
         rows = sums.take @ np.concatenate([form, -self.inverse * v, self.x * v])
         return Moved(rows, form, behind)
 
     def weights(self, w: FloatArray) -> FloatArray:
         """Return u for row weights w, shape (forms + 2 n,)."""
-        return gathered(self.sums.take, w)
+        weights: FloatArray = np.asarray(self.sums.taken @ w)
+        return weights
+
+    def pulled(self, weight: FloatArray) -> FloatArray:
+        """Return the parts at the size each grows with, times their forms' weights, shape (n,)."""
+        sums = self.sums
+        return totals(sums.plus, self.part * weight[sums.of_part], sums.sizes)
 
     def gradient(self, u: FloatArray) -> FloatArray:
         """Return the gradient of the weighted sum, shape (n,)."""
         sums, g, n = self.sums, self.sums.forms, self.sums.sizes
-        result = gathered(self.parts, u[:g]) - totals(sums.driver, u[:g] * self.form, n)
+        result = self.pulled(u[:g]) - totals(sums.driver, u[:g] * self.form, n)
         result += self.x * u[g + n :] - self.inverse * u[g : g + n]
         return result
 
@@ -213,7 +231,7 @@ class SumsAt:
             pull += u[:g]
             push += u[:g] * self.form
             result += self.x * u[g + n :] - self.inverse * u[g : g + n]
-        result += gathered(self.parts, pull)
+        result += self.pulled(pull)
         result -= totals(sums.driver, push, n)
         return result
 
@@ -230,18 +248,12 @@ class SumsAt:
         A row is taken to fall with one size only, and to grow with each size by one entry.
         """
         sums, g, n = self.sums, self.sums.forms, self.sums.sizes
-        u = gathered(sums.squared, w)
-        growing = gathered(self.parts_squared, u[:g]) + u[g + n :] * self.x**2
+        u = np.asarray(sums.squared @ w)
+        growing = totals(sums.plus, self.part**2 * u[sums.of_part], n) + u[g + n :] * self.x**2
         some = sums.row_driver >= 0
         falling = w[some] * self.falling[some] ** 2
         result: FloatArray = growing + totals(sums.row_driver[some], falling, n)
         return result
-
-    @cached_property
-    def parts_squared(self) -> csr_array[np.float64]:
-        """The parts, squared, by form and size."""
-        parts = self.parts
-        return csr_array((parts.data**2, parts.indices, parts.indptr), shape=parts.shape)
 
 
 class Moved(NamedTuple):
@@ -265,13 +277,13 @@ class Curvature:
     def __init__(self, at: SumsAt, u: FloatArray) -> None:
         sums, g, n = at.sums, at.sums.forms, at.sums.sizes
         self.at, self.form = at, u[:g]
-        self._alone = gathered(at.parts, self.form)
-        self._alone += at.x * u[g + n :] + at.inverse * u[g : g + n]
-        self.diagonal: FloatArray = self._alone + totals(sums.driver, self.form * at.form, n)
+        self.alone = at.pulled(self.form)
+        self.alone += at.x * u[g + n :] + at.inverse * u[g : g + n]
+        self.diagonal: FloatArray = self.alone + totals(sums.driver, self.form * at.form, n)
 
     def product(self, v: FloatArray, moved: Moved, rows: FloatArray | None = None) -> FloatArray:
         """Return the Hessian times v, shape (n,), plus the gradient for row weights, if given."""
-        return self.at.bent(self._alone, self.form, v, moved, rows)
+        return self.at.bent(self.alone, self.form, v, moved, rows)
 
 
 class _Forms:
@@ -357,12 +369,6 @@ def _alike(
     off = np.abs(coefficient[own] - scale * coefficient[its]) > 8 * _SAME * coefficient[own]
     alone = np.logical_or.reduceat(off | (plus[own] != plus[its]), begin)
     return np.where(alone, np.arange(len(begin)), leader)
-
-
-def gathered(matrix: csr_array[np.float64], weight: FloatArray) -> FloatArray:
-    """Return a matrix, transposed, times a vector."""
-    result: FloatArray = np.asarray(matrix.T @ weight)
-    return result
 
 
 def ranges(begin: Index, count: Index) -> Index:

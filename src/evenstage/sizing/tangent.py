@@ -18,9 +18,9 @@ from evenstage.sizing.sums import Curvature
 
 if TYPE_CHECKING:
     from evenstage.sizing.lagrangian import Point
+    from evenstage.sizing.narrowing import Part
     from evenstage.sizing.problem import FloatArray
     from evenstage.sizing.reduced import Reduced
-    from evenstage.sizing.sums import SumsAt
 
 #: Newton steps, conjugate gradient iterations of each, and what they change sizes by at most.
 _STEPS, _ITERATIONS, _LONGEST = 3, 15, 1.0
@@ -49,7 +49,7 @@ class Bound:
     y: FloatArray
 
 
-def best_bound(point: Point, wanted: float) -> Bound:
+def best_bound(point: Point, wanted: float, part: Part | None = None) -> Bound:
     """Return the best bound found from a point's flow and prices.
 
     Parameters
@@ -57,12 +57,15 @@ def best_bound(point: Point, wanted: float) -> Bound:
     point : Point
     wanted : float
         Distance of point and bound, in the objective's unit, that would be worth steps for.
+    part : Part, optional
+        What of the block the flow is on, where that is less than the whole: steps are made there.
     """
     reduced, question, prices = point.reduced, point.question, point.proof_prices
     delay, cost = (prices.goal, 1.0) if question.deadline is not None else (1.0, prices.goal)
     rows = point.rows(delay, prices.limit)
     u, still = point.sums.weights(rows), float(prices.limit.sum())
     still += delay * (question.deadline or 0.0) + cost * (question.budget or 0.0)
+    lowering = _Lowering(reduced if part is None else part.setup.reduced, cost)
     y, best = point.y, Bound(value=-np.inf, point=point, y=point.y)
     steps = _STEPS if point.softness < _WORTH * wanted else 0
     for step in range(steps + 1):
@@ -76,31 +79,44 @@ def best_bound(point: Point, wanted: float) -> Bound:
             best = Bound(value=value - lost, point=point, y=y)
         if lost < _LITTLE * wanted:
             break
-        if step < steps:
-            y = _lower(reduced, at, u, gradient, bill, y)
+        if step < steps and part is None:
+            y = lowering.after(y, rows)
+        elif step < steps and part is not None:
+            y = part.spread(lowering.after(y[part.sizes], rows[part.rows]), y)
     return best
 
 
-def _lower(
-    reduced: Reduced,
-    at: SumsAt,
-    u: FloatArray,
-    gradient: FloatArray,
-    bill: FloatArray,
-    y: FloatArray,
-) -> FloatArray:
-    """Return log sizes after a Newton step towards the Lagrangian's minimum."""
-    held = ((y <= reduced.lower) & (gradient > 0.0)) | ((y >= reduced.upper) & (gradient < 0.0))
-    curvature = Curvature(at, u)
-    diagonal = curvature.diagonal + bill
-    scale = np.where(held, 0.0, 1.0 / np.maximum(diagonal, _FLAT * diagonal.max(initial=_FLAT)))
+@dataclass(frozen=True)
+class _Lowering:
+    """Newton steps towards the minimum of a Lagrangian at fixed flow and prices.
 
-    def product(v: FloatArray) -> FloatArray:
-        result = curvature.product(v, at.moved(v)) + bill * v
-        return np.where(held, 0.0, result)
+    Parameters
+    ----------
+    reduced : Reduced
+    cost : float
+        Weight of the cost.
+    """
 
-    step, _ = conjugate_gradients(
-        product, lambda r: scale * r, np.where(held, 0.0, -gradient), most=_ITERATIONS
-    )
-    moved: FloatArray = y + np.clip(step, -_LONGEST, _LONGEST)
-    return np.clip(moved, reduced.lower, reduced.upper)
+    reduced: Reduced
+    cost: float
+
+    def after(self, y: FloatArray, rows: FloatArray) -> FloatArray:
+        """Return log sizes after a step, for given row weights."""
+        lower, upper = self.reduced.lower, self.reduced.upper
+        at = self.reduced.sums.at(y)
+        u, bill = at.weights(rows), self.cost * self.reduced.spend * at.x
+        gradient = at.gradient(u) + bill
+        held = ((y <= lower) & (gradient > 0.0)) | ((y >= upper) & (gradient < 0.0))
+        curvature = Curvature(at, u)
+        diagonal = curvature.diagonal + bill
+        scale = np.where(held, 0.0, 1.0 / np.maximum(diagonal, _FLAT * diagonal.max(initial=_FLAT)))
+
+        def product(v: FloatArray) -> FloatArray:
+            result = curvature.product(v, at.moved(v)) + bill * v
+            return np.where(held, 0.0, result)
+
+        step, _ = conjugate_gradients(
+            product, lambda r: scale * r, np.where(held, 0.0, -gradient), most=_ITERATIONS
+        )
+        moved: FloatArray = y + np.clip(step, -_LONGEST, _LONGEST)
+        return np.clip(moved, lower, upper)
