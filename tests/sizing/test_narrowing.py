@@ -63,7 +63,7 @@ def test_is_the_whole_to_those_it_has(
 def test_brings_the_whole_down(question: Question) -> None:
     point = cold_point(question)
     point = point.at(point.y, replace(COLD, temperature=2e-2, limit=1e-3))
-    state = lowered(State(point=point, prices=point.prices, damping=0.1), 100)
+    state = lowered([State(point=point, prices=point.prices, damping=0.1)], 100)
     assert is_enough(state.point)
     assert state.point.value < point.value
     assert len(state.prices.limit) == len(point.prices.limit)

@@ -71,7 +71,7 @@ def test_squares_are_those_of_gate_delays() -> None:
     at = Sums.of(question.delay, rows, n).at(np.linspace(0.0, 2.0, n))
     weight = np.linspace(0.0, 1.0, rows)
     jacobian = np.stack([at.moved(e).rows for e in np.eye(n)], axis=1)
-    assert_allclose(at.squares(weight), weight @ jacobian**2, rtol=1e-12, atol=1e-12)
+    assert_allclose(at.squares(weight, at.falling()), weight @ jacobian**2, rtol=1e-12, atol=1e-12)
 
 
 def test_one_load_is_worked_out_once() -> None:

@@ -19,6 +19,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.circuit.arcs import ranges
+
 if TYPE_CHECKING:
     from collections.abc import Iterator
 
@@ -39,20 +41,20 @@ class Levels:
         Number of nodes.
     source, target : IntArray, shape (a,)
         The graph; every arc has source < target.
-    order : array of int, shape (a,)
+    order : IntArray, shape (a,)
         Arcs by level of their target, then by target.
     first : array of int, shape (levels + 1,)
         Where each level begins in `order`.
-    depth : array of int, shape (nodes,)
+    depth : IntArray, shape (nodes,)
         Level of each node; 0 for those no arc leads to.
     """
 
     nodes: int
     source: IntArray
     target: IntArray
-    order: Index
+    order: IntArray
     first: Index
-    depth: Index
+    depth: IntArray
 
     @classmethod
     def of(cls, nodes: int, source: IntArray, target: IntArray) -> Levels:
@@ -65,18 +67,14 @@ class Levels:
         """
         if np.any(source >= target) or np.any(source < 0) or np.any(target >= nodes):
             raise ValueError("node ids must be a topological order of the graph")
-        known = [0] * nodes
-        by_target = np.argsort(target, kind="stable")
-        for u, v in zip(source[by_target].tolist(), target[by_target].tolist(), strict=True):
-            known[v] = max(known[v], known[u] + 1)
-        depth = np.array(known, dtype=np.intp)
+        depth = _depths(nodes, source, target)
         level = depth[target]
-        order = np.lexsort((target, level))
+        order = np.lexsort((target, level)).astype(np.int32)
         count = int(level.max(initial=0))
         first = np.searchsorted(level[order], np.arange(1, count + 2))
         return cls(nodes=nodes, source=source, target=target, order=order, first=first, depth=depth)
 
-    def _slices(self) -> Iterator[Index]:
+    def _slices(self) -> Iterator[IntArray]:
         for begin, end in zip(self.first[:-1], self.first[1:], strict=True):
             yield self.order[begin:end]
 
@@ -130,3 +128,19 @@ class Levels:
             arcs = self.order[begin:stop]
             seen[self.source[arcs[seen[self.target[arcs]]]]] = True
         return seen
+
+
+def _depths(nodes: int, source: IntArray, target: IntArray) -> IntArray:
+    """Return the level of each node: all arcs into a level are met before it is left."""
+    by_source = np.argsort(source, kind="stable").astype(np.int32)
+    out = np.bincount(source, minlength=nodes)
+    begin = np.cumsum(out) - out
+    missing = np.bincount(target, minlength=nodes)
+    depth = np.zeros(nodes, np.int32)
+    front, level = np.flatnonzero(missing == 0), 0
+    while len(front):
+        met = target[by_source[ranges(begin[front], out[front])]]
+        np.subtract.at(missing, met, 1)
+        front, level = np.unique(met[missing[met] == 0]), level + 1
+        depth[front] = level
+    return depth

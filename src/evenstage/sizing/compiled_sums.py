@@ -112,6 +112,58 @@ def _slope(
 
 
 @njit(cache=True, nogil=True)
+def _falling(
+    pointer: IntArray,
+    column: IntArray,
+    take: FloatArray,
+    form: FloatArray,
+    inverse: FloatArray,
+    rows: FloatArray,
+) -> None:
+    forms, sizes = len(form), len(inverse)
+    for row in range(len(rows)):
+        for k in range(pointer[row], pointer[row + 1]):
+            c = column[k]
+            if c < forms:
+                rows[row] += take[k] * form[c]
+            elif c < forms + sizes:
+                rows[row] += take[k] * inverse[c - forms]
+
+
+@njit(cache=True, nogil=True)
+def _squares(
+    entries: tuple[IntArray, IntArray, FloatArray],
+    forms: tuple[IntArray, IntArray, FloatArray],
+    row_driver: IntArray,
+    x: FloatArray,
+    w: FloatArray,
+    falling: FloatArray,
+    result: FloatArray,
+) -> None:
+    pointer, column, take = entries
+    first, plus, part = forms
+    count, sizes = len(first) - 1, len(x)
+    weight = np.zeros(count)
+    for row in range(len(w)):
+        some = w[row]
+        if some == 0.0:
+            continue
+        if row_driver[row] >= 0:
+            result[row_driver[row]] += some * falling[row] ** 2
+        for k in range(pointer[row], pointer[row + 1]):
+            c = column[k]
+            if c < count:
+                weight[c] += some * take[k] ** 2
+            elif c >= count + sizes:
+                grows = take[k] * x[c - count - sizes]
+                result[c - count - sizes] += some * grows**2
+    for g in range(count):
+        if weight[g] != 0.0:
+            for m in range(first[g], first[g + 1]):
+                result[plus[m]] += weight[g] * part[m] ** 2
+
+
+@njit(cache=True, nogil=True)
 def _pulled(
     first: IntArray, plus: IntArray, part: FloatArray, weight: FloatArray, result: FloatArray
 ) -> None:
@@ -209,6 +261,20 @@ class CompiledSumsAt(SumsAt):
         sums, result = self.sums, np.empty(self.sums.sizes)
         forms = (sums.first, sums.plus, sums.driver, self.part, self.form)
         _slope(*forms, self.x, self.inverse, u, result)
+        return result
+
+    def falling(self) -> FloatArray:
+        """Return what of each sum falls with the row's driver: minus its derivative."""
+        take, rows = self.sums.take, np.zeros(len(self.values))
+        _falling(take.indptr, take.indices, take.data, self.form, self.inverse, rows)
+        return rows
+
+    def squares(self, w: FloatArray, falling: FloatArray) -> FloatArray:
+        """Return the weighted sum of the rows' squared derivatives, nearly, shape (n,)."""
+        sums, result = self.sums, np.zeros(self.sums.sizes)
+        entries = (sums.take.indptr, sums.take.indices, sums.take.data)
+        forms = (sums.first, sums.plus, self.part)
+        _squares(entries, forms, sums.row_driver, self.x, w, falling, result)
         return result
 
     def bent(

@@ -156,11 +156,13 @@ class Walk:
         Point
             The last minimum.
         """
-        state = State(point=point, prices=point.prices, damping=_FIRST_DAMPING)
+        # Points of large blocks are large. They are handed on, lest one that has been left stays.
+        held = [State(point=point, prices=point.prices, damping=_FIRST_DAMPING)]
         falls, price, rounds = _FALLS, np.inf, 0
         self.best.offer(point)
+        del point
         while True:
-            state = lowered(replace(state, steps=0, work=0), _MOST_STEPS)
+            state = lowered(held, _MOST_STEPS)
             point, before = state.point, price
             price = point.prices.goal
             self.best.offer(point)
@@ -169,20 +171,25 @@ class Walk:
             tell_gap(self.best.gap)
             tangent, work = _tangent(state, part)
             work += self._try_along(point, tangent)
-            self.steps += state.steps
+            steps = state.steps
+            self.steps += steps
             self.work += state.work + work
             exhausted = self.work >= self.most or point.weights.temperature < _LEAST
             if enough(point, self.best) or exhausted:
                 return point
+            state = replace(state, steps=0, work=0)
             rounds = 0 if is_enough(point) else rounds + 1
             if 0 < rounds < _ROUNDS:
+                held.append(state)
+                del state, point, part, tangent
                 continue
-            falls = _adapted(falls, state.steps)
+            falls = _adapted(falls, steps)
             idle = price * point.spread < self.tolerance * point.objective
             settled = point.question.deadline is None or idle or price > before / _SETTLED
-            state = self._cooler(state, tangent, falls, settled=settled)
-            if not state.point.inside:
+            held.append(self._cooler(state, tangent, falls, settled=settled))
+            if not held[0].point.inside:
                 return point
+            del state, point, part, tangent
 
     def _try_along(self, point: Point, tangent: FloatArray) -> int:
         """Offer sizes along the tangent, up to where they miss a deadline; return the work."""

@@ -40,6 +40,7 @@ from evenstage.sizing.solution import Solution, relative_gap
 if TYPE_CHECKING:
     from evenstage.sizing.goals import Goal
     from evenstage.sizing.problem import FloatArray, Problem
+    from evenstage.sizing.tangent import Bound
 
 #: The temperature begins at this part of the longest path.
 _FIRST: Final = 0.01
@@ -121,7 +122,7 @@ def inside_limits(problem: Problem, start: FloatArray) -> FloatArray:
     if worst < 1.0 - _ROUNDING:
         return sizes
     if walk.best.bound * unit > 1.0 and walk.best.proof is not None:
-        _, _, end = job.reduced.flows(walk.best.proof.point.soft.flow)
+        _, _, end = job.reduced.flows(walk.best.proof.flow)
         raise LimitOutOfReachError(int(end.argmax()), worst)
     raise _not_converged(worst - walk.best.bound * unit)
 
@@ -156,14 +157,14 @@ class _Job:
             case Budget(spend):
                 budget = (spend / self.reduced.money) * (1.0 - _ROUNDING)
                 self.y = self._inside_budget(budget, spend)
-                return self._answer(self.first(self.base.asking(Question(budget=budget))))
+                return self._answer(self.base.asking(Question(budget=budget)))
             case _:
-                return self._answer(self.first(self.base))
+                return self._answer(self.base)
 
-    def _answer(self, point: Point) -> Solution:
+    def _answer(self, setup: Setup) -> Solution:
         """Walk to the end and return what was found."""
-        walk = self._walk(point.setup)
-        walk.run(point, self._closed)
+        walk = self._walk(setup)
+        walk.run(self.first(setup), self._closed)
         return self._proven(walk)
 
     def _closed(self, _: Point, best: Best) -> bool:
@@ -202,7 +203,7 @@ class _Job:
         """
         best, inside = Best(), None
         for trial in range(_PRICES):
-            point = lowered(State(point=point, prices=point.prices, damping=0.1), _STEPS).point
+            point = lowered([State(point=point, prices=point.prices, damping=0.1)], _STEPS).point
             best.prove(point, self.tolerance)
             best.offer(point)
             if best.bound > deadline:
@@ -269,7 +270,7 @@ class _Job:
         assert best.y is not None
         assert best.proof is not None
         sizes, at = r.sizes(best.y), r.sizes(best.proof.y)
-        prices = self._prices(best.proof.point)
+        prices = self._prices(best.proof)
         delay, spend = worst_delay(q, sizes), q.cost(sizes)
         cheapest = isinstance(self.goal, Cheapest)
         reached = spend if cheapest else delay
@@ -290,13 +291,13 @@ class _Job:
             iterations=self.steps,
         )
 
-    def _prices(self, proof: Point) -> Prices:
+    def _prices(self, proof: Bound) -> Prices:
         """Return a proof's flow and prices in the units of the problem."""
-        r, prices = self.reduced, proof.proof_prices
-        flow, start_flow, end_flow = r.flows(proof.soft.flow)
+        r, prices = self.reduced, proof.prices
+        flow, start_flow, end_flow = r.flows(proof.flow)
         limit = np.zeros(self.problem.limits)
         unit, price = r.time, prices.goal * r.time / r.money
-        if proof.question.deadline is not None:
+        if isinstance(self.goal, Cheapest):
             unit, price = r.time / prices.goal, r.time / (r.money * prices.goal)
         limit[r.limit] = prices.limit * unit
         return Prices(

@@ -71,14 +71,15 @@ class Hessian:
         """
         point, sums = self.point, self.point.sums
         none = np.zeros(len(self.stiff))
-        variance = sums.squares(point.rows(1.0, none))
-        variance += point.setup.neighbours.cross(sums, point.soft)
+        falling = sums.falling()
+        variance = sums.squares(point.rows(1.0, none), falling)
+        variance += point.setup.neighbours.cross(sums, point.soft, falling)
         variance -= point.delay_gradient**2
         diagonal = self.curvature.diagonal + self.cost * point.bill
         diagonal += self.delay * np.maximum(variance, 0.0) / point.weights.temperature
         if len(self.stiff):
             rows = np.concatenate([np.zeros(point.reduced.arcs), self.stiff])
-            diagonal += sums.squares(rows)
+            diagonal += sums.squares(rows, falling)
         return diagonal
 
     def cooling(self) -> FloatArray:

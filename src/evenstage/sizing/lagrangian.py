@@ -30,6 +30,7 @@ if TYPE_CHECKING:
     from evenstage.sizing.problem import FloatArray
     from evenstage.sizing.setup import Setup
     from evenstage.sizing.softmax import Soft
+    from evenstage.sizing.sums import SumsAt
 
 
 #: Slack below which a limit counts as near.
@@ -76,13 +77,17 @@ class Point:
     setup : Setup
     weights : Weights
     y : FloatArray, shape (n,)
+    sums : SumsAt, optional
+        The sums there, where they are known.
     """
 
-    def __init__(self, setup: Setup, weights: Weights, y: FloatArray) -> None:
+    def __init__(
+        self, setup: Setup, weights: Weights, y: FloatArray, sums: SumsAt | None = None
+    ) -> None:
         self.setup, self.weights, self.y = setup, weights, y
         self.reduced, self.question = setup.reduced, setup.question
         reduced = self.reduced
-        self.sums = reduced.sums.at(y)
+        self.sums = reduced.sums.at(y) if sums is None else sums
         self.delay = self.sums.values[: reduced.arcs]
         self.limit_slack: FloatArray = 1.0 - self.sums.values[reduced.arcs :]
         self.bill: FloatArray = reduced.spend * self.sums.x
@@ -202,7 +207,8 @@ class Point:
 
     def at(self, y: FloatArray, weights: Weights | None = None) -> Point:
         """Return the point at other log sizes."""
-        return Point(self.setup, weights or self.weights, y)
+        sums = self.sums if y is self.y else None
+        return Point(self.setup, weights or self.weights, y, sums)
 
 
 @dataclass(frozen=True, kw_only=True)

@@ -15,11 +15,11 @@ from typing import TYPE_CHECKING, Final, NamedTuple
 import numpy as np
 from scipy.sparse import csr_array
 
+from evenstage.circuit.arcs import ranges
 from evenstage.sizing.lagrangian import Point, Prices
 from evenstage.sizing.neighbours import Neighbours
 from evenstage.sizing.newton import State, is_enough, minimised
 from evenstage.sizing.softmax import Graph
-from evenstage.sizing.sums import Sums, ranges
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -27,13 +27,14 @@ if TYPE_CHECKING:
     from evenstage.sizing.problem import FloatArray
     from evenstage.sizing.reduced import Reduced
     from evenstage.sizing.setup import Setup
+    from evenstage.sizing.sums import Sums
 
     Index = NDArray[np.intp]
 
 #: Flow that counts: an arc with less is late by more than 27 temperatures.
 _LEAST_FLOW: Final = 1e-20
 #: A part is worth its making if it has no more than this share of the arcs.
-_WORTH: Final = 0.7
+_WORTH: Final = 0.6
 #: Steps on one part before the whole is timed: at first, and at most.
 _FIRST, _MOST = 4, 16
 
@@ -80,34 +81,33 @@ class Part:
         return replace(state, point=point, prices=Prices(goal=state.prices.goal, limit=limit))
 
 
-def lowered(state: State, most: int) -> State:
+def lowered(held: list[State], most: int) -> State:
     """Return a state whose inexactness costs no more than its softness, worked out on parts.
 
     Parameters
     ----------
-    state : State
-        Inside all constraints.
+    held : list of State
+        One, inside all constraints; it is taken out.
     most : int
         Most Newton steps.
     """
+    state = held.pop()
     last, together = state.steps + most, _FIRST
     while state.steps < last and not is_enough(state.point):
-        before, part = state, part_of(state.point)
-        if part is None:
-            state = minimised(state, 1)
-            if state.point is before.point:
-                break
-            continue
-        moved = minimised(part.state(state), min(together, last - state.steps))
-        joined = part.joined(moved)
-        if joined.point.value < state.point.value:
-            state, together = joined, min(2 * together, _MOST)
-        elif together > 1:
-            together = max(together // 4, 1)
-        else:
-            state = minimised(state, 1)
-            if state.point is before.point:
-                break
+        part = part_of(state.point)
+        if part is not None:
+            moved = minimised(part.state(state), min(together, last - state.steps))
+            joined = part.joined(moved)
+            if joined.point.value < state.point.value:
+                state, together = joined, min(2 * together, _MOST)
+                continue
+            if together > 1:
+                together = max(together // 4, 1)
+                continue
+        moved = minimised(state, 1)
+        if moved.point is state.point:
+            return moved
+        state = moved
     return state
 
 

@@ -147,6 +147,7 @@ def _searched(point: Point, step: FloatArray) -> tuple[Point | None, float, int]
         fall = float(point.gradient @ (y - point.y))
         if there.value <= point.value + _DECREASE * min(fall, 0.0):
             return there, length, trial + 1
+        del there  # large: it would stay while the next is made
         length *= _SHORTER
     return None, 0.0, _TRIALS
 

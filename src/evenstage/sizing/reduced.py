@@ -20,7 +20,7 @@ from evenstage.sizing.sums import Sums
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
-    from evenstage.sizing.problem import FloatArray
+    from evenstage.sizing.problem import FloatArray, IntArray
 
     Index = NDArray[np.intp]
 
@@ -46,7 +46,7 @@ class Reduced:
         Rows: arcs of `graph`, s / `time`, then limits.
     graph : Graph
         With source and sink.
-    arc : array of int, shape (arcs,)
+    arc : IntArray, shape (arcs,)
         Which arc of the problem each arc is; then starts and ends count on: -1 - k for start k of
         the problem, ``len(arc_source) + k`` for its end k.
     limit : array of int, shape (m,)
@@ -66,7 +66,7 @@ class Reduced:
     upper: FloatArray
     sums: Sums
     graph: Graph
-    arc: Index
+    arc: IntArray
     limit: Index
     spend: FloatArray
     spend_held: float
@@ -99,17 +99,17 @@ class Reduced:
         time = float((arrival[live]).max()) - origin or 1.0
         money = q.cost(sizes) or 1.0
         graph, order = _graph(q, np.flatnonzero(live), arcs, starts, ends, by_level=by_level)
-        code = np.concatenate([arcs, -1 - starts, len(q.arc_source) + ends])
+        code = np.concatenate([arcs, -1 - starts, len(q.arc_source) + ends]).astype(np.int32)
         limit = np.flatnonzero(_most(q) > 1.0 - _NEVER)
-        row = np.full(len(q.arc_source), -1, np.int64)
-        place = np.empty(len(order), np.int64)
+        row = np.full(len(q.arc_source), -1, np.int32)
+        place = np.empty(len(order), np.int32)
         place[order] = np.arange(len(order))
         row[arcs] = place[: len(arcs)]
         constant = np.zeros(len(order) + len(limit))
         known = place[len(arcs) : len(arcs) + len(starts)]
         constant[known] = (q.start_arrival[starts] - origin) / time
         constant[place[len(arcs) + len(starts) :]] = q.end_offset[ends] / time
-        limit_row = np.full(q.limits, -1, np.int64)
+        limit_row = np.full(q.limits, -1, np.int32)
         limit_row[limit] = len(order) + np.arange(len(limit))
         held = np.where(moving, 1.0, sizes)
         terms = _terms(q, free, held, row, limit_row, time)
@@ -169,21 +169,21 @@ def _most(q: Problem) -> FloatArray:
 
 def _graph(
     q: Problem, live: Index, arcs: Index, starts: Index, ends: Index, *, by_level: bool
-) -> tuple[Graph, Index]:
+) -> tuple[Graph, IntArray]:
     """Return the graph between source and sink and the order of its arcs."""
     depth = q.levels.depth[live] if by_level else np.zeros(len(live), np.intp)
     by_depth = np.argsort(depth, kind="stable")
-    number = np.zeros(q.nodes, np.int64)
+    number = np.zeros(q.nodes, np.int32)
     number[live[by_depth]] = 1 + np.arange(len(live))
-    sink = len(live) + 1
+    sink = np.int32(len(live) + 1)
     source = np.concatenate(
-        [number[q.arc_source[arcs]], np.zeros(len(starts), np.int64), number[q.end_node[ends]]]
+        [number[q.arc_source[arcs]], np.zeros(len(starts), np.int32), number[q.end_node[ends]]]
     )
     target = np.concatenate(
         [number[q.arc_target[arcs]], number[q.start_node[starts]], np.full(len(ends), sink)]
     )
-    order = np.argsort(target, kind="stable")
-    source, target = source[order].astype(np.int32), target[order].astype(np.int32)
+    order = np.argsort(target, kind="stable").astype(np.int32)
+    source, target = source[order], target[order]
     cuts = 1 + np.flatnonzero(np.diff(depth[by_depth]))
     return (
         Graph(
@@ -197,18 +197,49 @@ def _graph(
 
 
 def _terms(
-    q: Problem, free: Index, held: FloatArray, row: Index, limit_row: Index, time: float
+    q: Problem, free: Index, held: FloatArray, row: IntArray, limit_row: IntArray, time: float
 ) -> Monomials:
     """Return the monomials of arcs and limits that are left, with held sizes folded in."""
     n = len(free)
     number = np.full(len(q.lower) + 1, n, np.int32)
-    number[free] = np.arange(n)
+    number[free] = np.arange(n, dtype=np.int32)
     fixed = np.append(held, 1.0)
     found = []
     for terms, rows, unit in ((q.delay, row, time), (q.limit, limit_row, 1.0)):
-        kept = np.flatnonzero(rows[terms.row] >= 0)
-        plus, minus = terms.plus[kept], terms.minus[kept]
-        coefficient = terms.coefficient[kept] * (fixed[plus] / fixed[minus]) / unit
-        found.append((rows[terms.row[kept]], coefficient, number[plus], number[minus]))
-    row_of, coefficient, plus, minus = (np.concatenate(part) for part in zip(*found, strict=True))
-    return Monomials(row=row_of.astype(np.int32), coefficient=coefficient, plus=plus, minus=minus)
+        if len(terms.row):
+            found.append(_left(terms, rows, number, fixed, unit))
+    if len(found) == 1:
+        return found[0]
+    row_of, coefficient, plus, minus = (
+        np.concatenate([getattr(part, name) for part in found] or [np.zeros(0)])
+        for name in ("row", "coefficient", "plus", "minus")
+    )
+    return Monomials(
+        row=row_of.astype(np.int32),
+        coefficient=coefficient,
+        plus=plus.astype(np.int32),
+        minus=minus.astype(np.int32),
+    )
+
+
+def _left(
+    terms: Monomials, rows: IntArray, number: IntArray, fixed: FloatArray, unit: float
+) -> Monomials:
+    """Return the monomials of the rows that are left, in the numbers of what is left."""
+    row = rows[terms.row]
+    if (row < 0).any():
+        kept = np.flatnonzero(row >= 0)
+        row = row[kept]
+        terms = Monomials(
+            row=row,
+            coefficient=terms.coefficient[kept],
+            plus=terms.plus[kept],
+            minus=terms.minus[kept],
+        )
+    coefficient = terms.coefficient / unit
+    if (fixed != 1.0).any():
+        coefficient *= fixed[terms.plus]
+        coefficient /= fixed[terms.minus]
+    return Monomials(
+        row=row, coefficient=coefficient, plus=number[terms.plus], minus=number[terms.minus]
+    )

@@ -27,6 +27,7 @@ from typing import TYPE_CHECKING, Final, NamedTuple
 import numpy as np
 from scipy.sparse import csc_array, csr_array
 
+from evenstage.circuit.arcs import ranges
 from evenstage.sizing.problem import totals
 
 if TYPE_CHECKING:
@@ -111,8 +112,7 @@ class Sums:
         up, down = plus < sizes, minus < sizes
         still = plus == minus
         constant = totals(row[still], terms.coefficient[still], rows)
-        crossing = np.flatnonzero(up & down & ~still)
-        found = _Forms(row[crossing], terms.coefficient[crossing], plus[crossing], minus[crossing])
+        found = _Forms(terms, np.flatnonzero(up & down & ~still))
         inverse = np.flatnonzero(~up & down)
         base, left = found.shared(row[inverse], minus[inverse], terms.coefficient[inverse], sizes)
         rising = np.flatnonzero(up & ~down)
@@ -235,24 +235,30 @@ class SumsAt:
         result -= totals(sums.driver, push, n)
         return result
 
-    @cached_property
     def falling(self) -> FloatArray:
-        """What of each sum falls with the row's driver: minus its derivative, shape (rows,)."""
+        """Return what of each sum falls with the row's driver: minus its derivative."""
         part = np.concatenate([self.form, self.inverse, np.zeros(self.sums.sizes)])
         falling: FloatArray = self.sums.take @ part
         return falling
 
-    def squares(self, w: FloatArray) -> FloatArray:
+    def squares(self, w: FloatArray, falling: FloatArray) -> FloatArray:
         """Return the weighted sum of the rows' squared derivatives, nearly, shape (n,).
 
         A row is taken to fall with one size only, and to grow with each size by one entry.
+
+        Parameters
+        ----------
+        w : FloatArray, shape (rows,)
+            Weights.
+        falling : FloatArray, shape (rows,)
+            From the method of that name.
         """
         sums, g, n = self.sums, self.sums.forms, self.sums.sizes
         u = np.asarray(sums.squared @ w)
         growing = totals(sums.plus, self.part**2 * u[sums.of_part], n) + u[g + n :] * self.x**2
         some = sums.row_driver >= 0
-        falling = w[some] * self.falling[some] ** 2
-        result: FloatArray = growing + totals(sums.row_driver[some], falling, n)
+        fall = w[some] * falling[some] ** 2
+        result: FloatArray = growing + totals(sums.row_driver[some], fall, n)
         return result
 
 
@@ -293,11 +299,11 @@ class _Forms:
     `coefficient`, `driver` are the forms.
     """
 
-    def __init__(
-        self, row: IntArray, coefficient: FloatArray, plus: IntArray, minus: IntArray
-    ) -> None:
-        order = np.lexsort((plus, minus, row))
-        row, coefficient, plus, minus = row[order], coefficient[order], plus[order], minus[order]
+    def __init__(self, terms: Monomials, crossing: Index) -> None:
+        order = np.lexsort((terms.plus[crossing], terms.minus[crossing], terms.row[crossing]))
+        order = crossing[order].astype(np.int32)
+        row, coefficient = terms.row[order], terms.coefficient[order]
+        plus, minus = terms.plus[order], terms.minus[order]
         new = np.ones(len(row), bool)
         new[1:] = (row[1:] != row[:-1]) | (minus[1:] != minus[:-1])
         begin = np.flatnonzero(new)
@@ -369,10 +375,3 @@ def _alike(
     off = np.abs(coefficient[own] - scale * coefficient[its]) > 8 * _SAME * coefficient[own]
     alone = np.logical_or.reduceat(off | (plus[own] != plus[its]), begin)
     return np.where(alone, np.arange(len(begin)), leader)
-
-
-def ranges(begin: Index, count: Index) -> Index:
-    """Return the concatenation of ``range(begin, begin + count)`` for all entries."""
-    ends = np.cumsum(count)
-    total = int(ends[-1]) if len(ends) else 0
-    return np.arange(total) - np.repeat(ends - count, count) + np.repeat(begin, count)

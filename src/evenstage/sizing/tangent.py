@@ -17,7 +17,7 @@ from evenstage.sizing.conjugate import conjugate_gradients
 from evenstage.sizing.sums import Curvature
 
 if TYPE_CHECKING:
-    from evenstage.sizing.lagrangian import Point
+    from evenstage.sizing.lagrangian import Point, Prices
     from evenstage.sizing.narrowing import Part
     from evenstage.sizing.problem import FloatArray
     from evenstage.sizing.reduced import Reduced
@@ -38,14 +38,15 @@ class Bound:
     Parameters
     ----------
     value : float
-    point : Point
-        Whose flow and prices give it.
+    flow, prices : FloatArray, shape (arcs,), and Prices
+        That give it.
     y : FloatArray, shape (n,)
         Log sizes at which it is measured.
     """
 
     value: float
-    point: Point
+    flow: FloatArray
+    prices: Prices
     y: FloatArray
 
 
@@ -66,7 +67,8 @@ def best_bound(point: Point, wanted: float, part: Part | None = None) -> Bound:
     u, still = point.sums.weights(rows), float(prices.limit.sum())
     still += delay * (question.deadline or 0.0) + cost * (question.budget or 0.0)
     lowering = _Lowering(reduced if part is None else part.setup.reduced, cost)
-    y, best = point.y, Bound(value=-np.inf, point=point, y=point.y)
+    y, flow = point.y, point.soft.flow
+    best = Bound(value=-np.inf, flow=flow, prices=prices, y=y)
     steps = _STEPS if point.softness < _WORTH * wanted else 0
     for step in range(steps + 1):
         at = reduced.sums.at(y)
@@ -76,7 +78,7 @@ def best_bound(point: Point, wanted: float, part: Part | None = None) -> Bound:
         low, high = gradient * (y - reduced.lower), gradient * (y - reduced.upper)
         lost = float(np.maximum(low, high).sum())
         if value - lost > best.value:
-            best = Bound(value=value - lost, point=point, y=y)
+            best = Bound(value=value - lost, flow=flow, prices=prices, y=y)
         if lost < _LITTLE * wanted:
             break
         if step < steps and part is None:
