@@ -94,21 +94,29 @@ def lowered(held: list[State], most: int) -> State:
     state = held.pop()
     last, together = state.steps + most, _FIRST
     while state.steps < last and not is_enough(state.point):
-        part = part_of(state.point)
-        if part is not None:
-            moved = minimised(part.state(state), min(together, last - state.steps))
-            joined = part.joined(moved)
-            if joined.point.value < state.point.value:
-                state, together = joined, min(2 * together, _MOST)
-                continue
-            if together > 1:
-                together = max(together // 4, 1)
-                continue
-        moved = minimised(state, 1)
-        if moved.point is state.point:
-            return moved
-        state = moved
+        found, worth = _lowered_apart(state, min(together, last - state.steps))
+        if found is not None:
+            state, together = found, min(2 * together, _MOST)
+            del found  # points of large blocks are large
+            continue
+        if worth and together > 1:
+            together = max(together // 4, 1)
+            continue
+        found = minimised(state, 1)
+        if found.point is state.point:
+            return found
+        state = found
+        del found
     return state
+
+
+def _lowered_apart(state: State, steps: int) -> tuple[State | None, bool]:
+    """Return a lower state after some steps on a part, if there is one, and whether a part was."""
+    part = part_of(state.point)
+    if part is None:
+        return None, False
+    joined = part.joined(minimised(part.state(state), steps))
+    return (joined if joined.point.value < state.point.value else None), True
 
 
 def part_of(point: Point) -> Part | None:

@@ -112,8 +112,8 @@ class Reduced:
         limit_row = np.full(q.limits, -1, np.int32)
         limit_row[limit] = len(order) + np.arange(len(limit))
         held = np.where(moving, 1.0, sizes)
-        terms = _terms(q, free, held, row, limit_row, time)
-        sums = Sums.of(terms, len(constant), len(free))
+        rows = len(constant)
+        sums = Sums.of(_terms(q, free, held, row, limit_row, time), rows, len(free))
         return cls(
             problem=q,
             free=free,
