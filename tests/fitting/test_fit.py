@@ -20,7 +20,7 @@ if TYPE_CHECKING:
 
 KEYS = (
     *("r_w", "stack", "c_gate", "slope", "slope_power", "shape", "shape_carry"),
-    *("slope_stack", "shape_stack", "weak_swing"),
+    *("slope_stack", "shape_stack", "weak_swing", "drain_shared", "drain_inner"),
 )
 
 
@@ -50,9 +50,11 @@ def elsewhere() -> Process:
                 slope_power=1.0,
                 shape=0.0,
                 shape_carry=0.0,
-                slope_stack=0.0,
-                shape_stack=0.0,
+                slope_stack=1.0,
+                shape_stack=1.0,
                 weak_swing=1.0,
+                drain_shared=1.0,
+                drain_inner=1.0,
             )
             for one in start.transistors
         ),

@@ -82,12 +82,9 @@ MUST: Final = {
 
 #: What is reached.
 REACHED: Final = {
-    "ihp_sg13g2": Figures((3.1, 10.6), (2.7, 7.9), (2.8, 7.1), 3.0, (0.989, 0.985)),
-    "gf180_7t": Figures((3.8, 13.0), (5.9, 16.0), (2.7, 7.6), 7.3, (0.993, 0.990)),
+    "ihp_sg13g2": Figures((3.2, 10.6), (2.5, 7.2), (2.3, 6.5), 5.7, (0.991, 0.994)),
+    "gf180_7t": Figures((4.0, 12.1), (4.8, 13.9), (2.4, 6.9), 5.5, (0.994, 0.991)),
 }
-
-#: What is missed.
-MISSED: Final = {"ihp_sg13g2": {"order"}, "gf180_7t": {"several"}}
 
 _CHAINS: Final = ("inv_1", "inv_2", "inv_4")
 _PATHS: Final = 200
@@ -117,8 +114,8 @@ def beginning(library: str) -> Process:
             slope_power=0.65,
             shape=2.7,
             shape_carry=0.27,
-            slope_stack=0.2,
-            shape_stack=0.2,
+            slope_stack=0.6,
+            shape_stack=0.6,
         )
 
     kinds = one(n_name, "n", n_length, 1e4), one(p_name, "p", p_length, 2e4)
@@ -337,7 +334,7 @@ class TestAccuracy:
         for kind in ("one", "several", "paths", "chains"):
             assert_allclose(getattr(found, kind), getattr(known, kind), rtol=0.1, atol=0)
         assert_allclose(found.order, known.order, rtol=0, atol=0.003)
-        assert missed(found, MUST[name]) == MISSED[name]
+        assert not missed(found, MUST[name])
 
 
 class TestReading:

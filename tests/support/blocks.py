@@ -37,7 +37,11 @@ class Constants(TypedDict, total=False):
     slope_power: float
     shape: float
     shape_carry: float
+    slope_stack: float
+    shape_stack: float
     weak_swing: float
+    drain_shared: float
+    drain_inner: float
     junctions: Junctions
     width_min: float
     width_max: float

@@ -94,9 +94,11 @@ def truth() -> Process:
         slope_power=0.7,
         shape=2.2,
         shape_carry=0.3,
-        slope_stack=0.2,
-        shape_stack=0.15,
+        slope_stack=0.6,
+        shape_stack=0.7,
         weak_swing=0.6,
+        drain_shared=0.8,
+        drain_inner=0.5,
     )
     p = replace(
         n,

@@ -8,9 +8,15 @@ from dataclasses import replace
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from numpy.testing import assert_allclose, assert_array_equal
 
-from evenstage.timing.yardstick import best_stage_count, best_stage_effort, yardstick
-from support.blocks import plain_process
+from evenstage.timing.yardstick import (
+    arc_charges,
+    best_stage_count,
+    best_stage_effort,
+    yardstick,
+)
+from support.blocks import block, circuit_of, inverter, nand, plain_process
 
 
 class TestBestStageEffort:
@@ -91,3 +97,39 @@ class TestYardstick:
         elmore = 1e3 * 15e-15
         expected = math.hypot(1.5 * elmore, carry * unit.transition_rise)
         assert unit.transition_fall == pytest.approx(expected)
+
+
+class TestArcCharges:
+    """A stack is charged what its own edge costs an inverter behind it."""
+
+    PROCESS = plain_process(
+        slope=0.4, slope_power=0.7, shape=2.0, shape_carry=0.3, stack=0.9, shape_stack=0.4
+    )
+    TEXT = block(inverter("i", "a", "x", 1, 2) + "\n" + nand("g", ["a", "b"], "y", 1, 2), "a b x y")
+
+    def test_of_the_unit_inverter_it_is_the_charge_of_the_edge(self) -> None:
+        circuit, unit = circuit_of(self.TEXT, self.PROCESS), yardstick(self.PROCESS)
+        charge = arc_charges(circuit.arcs, circuit.process, unit)
+        single = circuit.arcs.shape == 2.0
+        rising = circuit.arcs.rising
+        assert single.sum() == 4
+        assert_allclose(charge[single & rising], unit.charge_rise, rtol=1e-14, atol=0)
+        assert_allclose(charge[single & ~rising], unit.charge_fall, rtol=1e-14, atol=0)
+
+    def test_of_a_stack_it_is_worked_out_as_the_next_stage_pays(self) -> None:
+        """With the inverter's Elmore delays before, in and behind the stack."""
+        circuit, unit = circuit_of(self.TEXT, self.PROCESS), yardstick(self.PROCESS)
+        charge = arc_charges(circuit.arcs, circuit.process, unit)
+        stack = circuit.arcs.shape != 2.0
+        shape = 2.0 * (1 + 0.4 * 0.9) / (1 + 0.9)
+        assert_allclose(circuit.arcs.shape[stack], shape, rtol=1e-14, atol=0)
+        elmore = 1e3 * 15e-15
+        leaving = math.hypot(shape * elmore, 0.3 * unit.transition_rise)
+        paid = elmore + 0.4 * leaving**0.7 * elmore**0.3
+        assert_allclose(charge[stack], paid / elmore, rtol=1e-12, atol=0)
+        assert (charge[stack] < unit.charge_fall).all()
+
+    def test_without_transitions_every_arc_counts_once(self) -> None:
+        process = plain_process()
+        circuit = circuit_of(self.TEXT, process)
+        assert_array_equal(arc_charges(circuit.arcs, process, yardstick(process)), 1.0)

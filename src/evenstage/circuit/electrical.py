@@ -12,6 +12,8 @@ from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
+from evenstage.circuit.sharing import shared_ends
+
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
@@ -81,6 +83,14 @@ class Electrical:
     shape_stack: Constant
     weak_swing: Constant
 
+    def slope_in_stack(self, device: IntArray, more: IntArray) -> FloatArray:
+        """Return the slope of devices with so many more in series, relative to one alone."""
+        return _in_stack(self.slope_stack[device], self.stack[device], more)
+
+    def shape_in_stack(self, device: IntArray, more: IntArray) -> FloatArray:
+        """Return the shape of devices with so many more in series, relative to one alone."""
+        return _in_stack(self.shape_stack[device], self.stack[device], more)
+
     @cached_property
     def drain(self) -> Scaled:
         """Drain capacitance over the whole swing."""
@@ -99,7 +109,8 @@ def electrical(devices: Devices, process: Process) -> Electrical:
     def constant(name: str) -> Constant:
         return _constant(devices, [getattr(kind, name) for kind in kinds])
 
-    rise = _diffusion(devices, kinds, "rise")
+    plain = _by_width(devices, kinds)
+    rise = _diffusion(devices, kinds, plain, "rise")
     alike = all(k.junctions is None or k.junctions.rise == k.junctions.fall for k in kinds)
     copies = devices.multiplier
     length = devices.length / _column(constant("length"))
@@ -114,7 +125,7 @@ def electrical(devices: Devices, process: Process) -> Electrical:
             _column(constant("c_gate_fixed"), copies),
         ),
         rise=rise,
-        fall=rise if alike else _diffusion(devices, kinds, "fall"),
+        fall=rise if alike else _diffusion(devices, kinds, plain, "fall"),
         stack=constant("stack"),
         slope=constant("slope"),
         slope_power=constant("slope_power"),
@@ -137,6 +148,12 @@ def _column(constant: Constant, factor: FloatArray | float = 1.0) -> FloatArray:
     return constant.of_model[constant.model] * factor
 
 
+def _in_stack(part: FloatArray, stack: FloatArray, more: IntArray) -> FloatArray:
+    """Return what is left where only a part of the stack factor counts."""
+    counted: FloatArray = (1 + part * stack * more) / (1 + stack * more)
+    return counted
+
+
 def _mean(one: Scaled, other: Scaled) -> Scaled:
     if one is other:
         return one
@@ -144,19 +161,39 @@ def _mean(one: Scaled, other: Scaled) -> Scaled:
 
 
 def _diffusion(
-    devices: Devices, kinds: Sequence[Transistor], edge: Literal["rise", "fall"]
+    devices: Devices,
+    kinds: Sequence[Transistor],
+    plain: Diffusion,
+    edge: Literal["rise", "fall"],
 ) -> Diffusion:
     given = [None if kind.junctions is None else getattr(kind.junctions, edge) for kind in kinds]
-    by_width = Scaled(
-        _column(_constant(devices, [kind.c_drain for kind in kinds]), devices.width)
-        * devices.multiplier,
-        _column(_constant(devices, [kind.c_drain_fixed for kind in kinds]), devices.multiplier),
+    drain = devices.drain_area, devices.drain_edge, "drain_fixed"
+    source = devices.source_area, devices.source_edge, "source_fixed"
+    return Diffusion(
+        _end(devices, given, drain, plain.drain), _end(devices, given, source, plain.source)
     )
-    drawn = (
-        (devices.drain_area, devices.drain_edge, "drain_fixed"),
-        (devices.source_area, devices.source_edge, "source_fixed"),
+
+
+def _by_width(devices: Devices, kinds: Sequence[Transistor]) -> Diffusion:
+    """Return the diffusion of devices whose areas nobody knows."""
+
+    def constant(name: str) -> Constant:
+        return _constant(devices, [getattr(kind, name) for kind in kinds])
+
+    alone = Scaled(
+        _column(constant("c_drain"), devices.width) * devices.multiplier,
+        _column(constant("c_drain_fixed"), devices.multiplier),
     )
-    return Diffusion(*(_end(devices, given, end, by_width) for end in drawn))
+    if all(kind.drain_shared == kind.drain_inner == 1 for kind in kinds):
+        return Diffusion(alone, alone)
+    shared, inner = (
+        constant(name).of_model[devices.model] for name in ("drain_shared", "drain_inner")
+    )
+    drain, source = (ends.factor(shared, inner) for ends in shared_ends(devices))
+    return Diffusion(
+        Scaled(alone.scaling * drain, alone.fixed * drain),
+        Scaled(alone.scaling * source, alone.fixed * source),
+    )
 
 
 def _end(

@@ -81,9 +81,9 @@ def _planned_arcs(
         input_rising=~rising,
         charges=charges,
         own=own,
-        slope=values.slope[switching] / (1 + values.slope_stack[switching] * more),
+        slope=values.slope[switching] * values.slope_in_stack(switching, more),
         slope_power=values.slope_power[switching],
-        shape=values.shape[switching] / (1 + values.shape_stack[switching] * more),
+        shape=values.shape[switching] * values.shape_in_stack(switching, more),
         shape_carry=values.shape_carry[switching],
     )
 

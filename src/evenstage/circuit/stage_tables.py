@@ -93,11 +93,9 @@ def stage_arcs(some: AlikeStages, values: Electrical, drive: FloatArray) -> Arcs
             capacitance=np.divide(moved, whole, out=np.zeros_like(moved), where=whole > 0).ravel(),
             capacitance_owner=gates[:, sums.own.other].ravel(),
         ),
-        slope=np.where(
-            outside, 0.0, values.slope[device] / (1 + values.slope_stack[device] * more)
-        ),
+        slope=np.where(outside, 0.0, values.slope[device] * values.slope_in_stack(device, more)),
         slope_power=np.where(outside, 1.0, values.slope_power[device]),
-        shape=values.shape[device] / (1 + values.shape_stack[device] * more),
+        shape=values.shape[device] * values.shape_in_stack(device, more),
         shape_carry=np.where(outside, 1.0, values.shape_carry[device]),
     )
 

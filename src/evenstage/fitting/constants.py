@@ -31,9 +31,11 @@ _NUMBERS: Final = {
     "slope_power": (0.45, 1.0),
     "shape": (0.1, 10.0),
     "shape_carry": (0.0, 0.95),
-    "slope_stack": (0.0, 3.0),
-    "shape_stack": (0.0, 3.0),
+    "slope_stack": (0.0, 1.5),
+    "shape_stack": (0.0, 1.5),
     "weak_swing": (0.0, 1.0),
+    "drain_shared": (0.2, 1.0),
+    "drain_inner": (0.1, 1.0),
 }
 
 #: Where plain numbers start if the process to begin with leaves the plain linear model.
@@ -42,11 +44,17 @@ _STARTS: Final = {
     "slope_power": 0.7,
     "shape": 2.0,
     "shape_carry": 0.3,
+    "slope_stack": 0.6,
+    "shape_stack": 0.6,
     "weak_swing": 0.5,
+    "drain_shared": 0.8,
+    "drain_inner": 0.5,
 }
 
 #: Plain numbers that the plain linear model takes as 1; the others it takes as 0.
-_ONES: Final = frozenset({"slope_power", "weak_swing"})
+_ONES: Final = frozenset(
+    {"slope_power", "slope_stack", "shape_stack", "weak_swing", "drain_shared", "drain_inner"}
+)
 
 #: Constant parts, each with the constant whose value at the scale's width is its scale, and the
 #: most it can be of that.

@@ -170,14 +170,17 @@ class Problem:
         inside: BoolArray = (rows.delay > 0) & (rows.transition <= _SLOW_INPUT * rows.delay)
         window = self._first_window(inside)
         at, least = starts(self.unknowns), bounds(self.unknowns)[0]
+        met: list[BoolArray] = []
         for turn in range(_TURNS):
             tell("fitting", turn / _TURNS)
             solution = self._solved(inside, at, window)
             window, at = window_of(solution.process), np.maximum(solution.at, least + _NEAR_ZERO)
-            before, inside = inside, window.holds(rows)
-            if (inside == before).all():
+            met.append(inside)
+            inside = window.holds(rows)
+            # Where a few rows go in and out in turn, more turns find nothing new.
+            if any((inside == one).all() for one in met):
                 break
-        settled = bool((inside == before).all())
+        settled = bool((inside == met[-1]).all())
         return Solution(
             solution.process, solution.at, solution.jacobian, solution.variance, window, settled
         )

@@ -123,12 +123,17 @@ class Transistor:
         ``E + slope T^slope_power E^(1 - slope_power)``, output transition
         ``sqrt((shape E)^2 + (shape_carry T)^2)``.
     slope_stack, shape_stack : float
-        Where n conducting devices are in series, slope and shape are divided by ``1 + slope_stack
-        (n - 1)`` and ``1 + shape_stack (n - 1)``: a slow input hides some of what the stack costs.
+        Which part of ``stack`` counts in what the input's transition adds, and in the output's
+        transition: slope and shape of n devices in series are those of one times ``(1 + slope_stack
+        stack (n - 1)) / (1 + stack (n - 1))``, and likewise. A slow input hides some of what the
+        stack costs.
     weak_swing : float
         How much counts of the capacitance behind a transistor that conducts towards the wrong
         supply, n upwards and p downwards, beside the pull that moves the output: it passes a weak
         level and lags behind the output.
+    drain_shared, drain_inner : float
+        What an end counts that shares its diffusion with a neighbour, relative to one that stands
+        alone: in general, and between two devices in series that nothing else meets.
     junctions : Junctions, optional
         Used in place of ``c_drain`` where a card gives areas and perimeters.
     channel : Channel
@@ -155,9 +160,11 @@ class Transistor:
     slope_power: float = 1.0
     shape: float = 0.0
     shape_carry: float = 0.0
-    slope_stack: float = 0.0
-    shape_stack: float = 0.0
+    slope_stack: float = 1.0
+    shape_stack: float = 1.0
     weak_swing: float = 1.0
+    drain_shared: float = 1.0
+    drain_inner: float = 1.0
     junctions: Junctions | None = None
     channel: Channel = Channel()
     width_parameter: str = "w"

@@ -19,6 +19,7 @@ from evenstage.circuit.arcs import ranges
 from evenstage.sizing.problem import Monomials, Problem
 from evenstage.sizing.wire_terms import wire_terms
 from evenstage.timing.sweep import end_offsets
+from evenstage.timing.yardstick import arc_charges
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
@@ -144,7 +145,7 @@ class Model:
         Outside drivers come first, then the wires to ends, then the graph's arcs, each with the
         wire before it.
         """
-        charge = np.where(self.circuit.arcs.rising, self.unit.charge_rise, self.unit.charge_fall)
+        charge = arc_charges(self.circuit.arcs, self.circuit.process, self.unit)
         shift = len(driven) + len(self._wires.ends)
         elmore, which = self.elmore, self.graph.arc
         heads = np.searchsorted(elmore.row, np.arange(len(charge) + 1))

@@ -1,6 +1,6 @@
 """One path in logical-effort terms, stage by stage.
 
-For an arc with path resistance R, charge q of its edge and input capacitance C_in, in units of tau:
+For an arc with path resistance R, charge q and input capacitance C_in, in units of tau:
 ``g = q R C_in / tau``, ``h = C_on / C_in``, ``b = C_total / C_on``, ``f = g h b`` and ``p = q own /
 tau``, with C_on the next input on the path and C_total all that hangs outside the gate, so that the
 charged delay is ``tau (f + p)`` exactly; the delay of a wire behind the gate counts in p. Where a
@@ -141,7 +141,7 @@ def _stage(
     follower = None if following is None else int(arcs.gate[graph.arc[following]])
     load = _load(circuit, arc, follower)
     rising = bool(arcs.rising[arc])
-    charge = unit.charge_rise if rising else unit.charge_fall
+    charge = float(timing.charge[graph_arc])
     input_cap = _pin_cap(circuit, gate, int(arcs.input[arc]))
     resistance = float(arcs.output_resistance[arc])
     logical = charge * resistance * input_cap / unit.tau

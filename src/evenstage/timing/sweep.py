@@ -16,6 +16,7 @@ import numpy as np
 from evenstage.timing.knockout import latest
 from evenstage.timing.laws import arc_delay, arc_transition
 from evenstage.timing.wired import Ride, wire_elmore, wired_graph
+from evenstage.timing.yardstick import arc_charges
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
@@ -69,6 +70,11 @@ class Timing:
     end_charged_wire: FloatArray = field(repr=False)
     end_transition: FloatArray = field(repr=False)
     wired: WiredGraph | None = field(repr=False)
+
+    @cached_property
+    def charge(self) -> FloatArray:
+        """Charged over Elmore delay of each graph arc, wires apart, shape (arcs,)."""
+        return charges_of(self.circuit, self.graph, self.unit).arc
 
     @cached_property
     def end_arrival(self) -> FloatArray:
@@ -187,7 +193,7 @@ def charges_of(circuit: Circuit, graph: TimingGraph, unit: Yardstick) -> GraphCh
     of_edge = np.array([unit.charge_fall, unit.charge_rise])
     rising = graph.rising.astype(np.intp)
     return GraphCharges(
-        arc=of_edge[circuit.arcs.rising.astype(np.intp)][graph.arc],
+        arc=arc_charges(circuit.arcs, circuit.process, unit)[graph.arc],
         before=of_edge[rising[graph.source]],
         end=of_edge[rising[graph.end]],
     )

@@ -15,6 +15,15 @@ with the power ``a`` of the receiving type. For ``a = 1`` and no carry this is `
 slope_n shape_p`` and ``q_fall = 1 + slope_p shape_n``. Delay per unit effort tau, parasitic delay
 p_inv and FO4 follow as in Sutherland, Sproull and Harris, Logical Effort, 1999, chapter 1 (from
 memory), in charged delays.
+
+A stage whose edges are rounder or sharper than the inverter's, as of devices in series, is charged
+what its own edge costs an inverter behind it. Its transition is ``s`` times as long as far as it is
+its own, ``T_s^2 = T^2 + (s^2 - 1) (shape E)^2`` with ``s`` its shape over that of the inverter at
+the same Elmore delay, so that
+
+    q_s = 1 + (q - 1) (T_s / T)^a.
+
+It stays one number for each arc, and the charged delay linear in the load.
 """
 
 from __future__ import annotations
@@ -23,11 +32,14 @@ import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+import numpy as np
 from scipy.optimize import brentq
 
 from evenstage.timing.results import Yardstick
 
 if TYPE_CHECKING:
+    from evenstage.circuit.arcs import Arcs
+    from evenstage.netlist.devices import FloatArray
     from evenstage.process.process import Process, Transistor
 
 _FANOUT = 4
@@ -109,6 +121,34 @@ def yardstick(process: Process) -> Yardstick:
         transition_rise=t_rise,
         transition_fall=t_fall,
     )
+
+
+def arc_charges(arcs: Arcs, process: Process, unit: Yardstick) -> FloatArray:
+    """Return charged over Elmore delay of each arc, shape (arcs,).
+
+    Parameters
+    ----------
+    arcs : Arcs
+    process : Process
+    unit : Yardstick
+        Of that process.
+    """
+    n, p = process.first("n"), process.first("p")
+    rise = unit.charge_rise, p, unit.transition_rise, unit.transition_fall, n.slope_power
+    fall = unit.charge_fall, n, unit.transition_fall, unit.transition_rise, p.slope_power
+    by_edge = [_charged(arcs.shape, *edge) for edge in (fall, rise)]
+    return np.where(arcs.rising, by_edge[1], by_edge[0])
+
+
+def _charged(
+    shape: FloatArray, charge: float, own: Transistor, made: float, before: float, power: float
+) -> FloatArray:
+    """Return the charge of one edge made with some shapes, by the inverter's transitions."""
+    if own.shape == 0 or made == 0:
+        return np.full(len(shape), charge)
+    carried = (own.shape_carry * before / made) ** 2
+    longer = np.sqrt(carried + (1 - carried) * (shape / own.shape) ** 2)
+    return 1 + (charge - 1) * longer**power
 
 
 def _unit(process: Process) -> _Inverter:
