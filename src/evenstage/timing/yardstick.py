@@ -136,19 +136,23 @@ def arc_charges(arcs: Arcs, process: Process, unit: Yardstick) -> FloatArray:
     n, p = process.first("n"), process.first("p")
     rise = unit.charge_rise, p, unit.transition_rise, unit.transition_fall, n.slope_power
     fall = unit.charge_fall, n, unit.transition_fall, unit.transition_rise, p.slope_power
-    by_edge = [_charged(arcs.shape, *edge) for edge in (fall, rise)]
-    return np.where(arcs.rising, by_edge[1], by_edge[0])
+    found = np.where(arcs.rising, unit.charge_rise, unit.charge_fall)
+    for rising, edge in ((True, rise), (False, fall)):
+        own = edge[1].shape
+        other = np.flatnonzero((arcs.rising == rising) & (arcs.shape != own))
+        if own and len(other):
+            found[other] = _charged(arcs.shape[other] / own, *edge)
+    return found
 
 
 def _charged(
-    shape: FloatArray, charge: float, own: Transistor, made: float, before: float, power: float
+    longer: FloatArray, charge: float, own: Transistor, made: float, before: float, power: float
 ) -> FloatArray:
-    """Return the charge of one edge made with some shapes, by the inverter's transitions."""
-    if own.shape == 0 or made == 0:
-        return np.full(len(shape), charge)
+    """Return the charge of edges whose own part is some times as long as the inverter's."""
     carried = (own.shape_carry * before / made) ** 2
-    longer = np.sqrt(carried + (1 - carried) * (shape / own.shape) ** 2)
-    return 1 + (charge - 1) * longer**power
+    transition = np.sqrt(carried + (1 - carried) * longer**2)
+    result: FloatArray = 1 + (charge - 1) * transition**power
+    return result
 
 
 def _unit(process: Process) -> _Inverter:
