@@ -8,9 +8,10 @@ import pytest
 
 from evenstage.brief import Brief
 from evenstage.errors import SimulationError
+from evenstage.simulation.choices import choices
 from evenstage.simulation.excerpt import route_of
 from evenstage.simulation.groups import Groups
-from evenstage.simulation.sensitise import choices, side_inputs
+from evenstage.simulation.sensitise import side_inputs
 from evenstage.timing.analyse import analyse
 from support.blocks import circuit_of, plain_process
 

@@ -7,20 +7,21 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
+from evenstage.simulation.choices import choices
 from evenstage.simulation.following import followers
 from evenstage.simulation.layout import LOW, OUTSIDE, lay_out
-from evenstage.simulation.logic import switches
+from evenstage.simulation.logic import moving, part_of
 from evenstage.simulation.parameters import known_channels
 from evenstage.simulation.ramps import Ramps
-from evenstage.simulation.sensitise import choices, side_inputs
+from evenstage.simulation.sensitise import side_inputs
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.simulation.choices import Edge, Levels
     from evenstage.simulation.groups import Groups
     from evenstage.simulation.layout import Layout
     from evenstage.simulation.parameters import Parameters
-    from evenstage.simulation.sensitise import Edge, Levels
     from evenstage.timing.results import Path
 
 
@@ -126,7 +127,7 @@ def excerpt(
         route=route,
         layout=layout,
         ramps=_ramps(circuit, layout, levels, transition),
-        initial=_initial(circuit, layout, levels),
+        initial=_initial(groups, layout, route, levels),
         watched=_watched(groups, route, layout),
         held=held,
         side_gates=len(side),
@@ -195,22 +196,18 @@ def _ramps(circuit: Circuit, layout: Layout, levels: dict[int, Edge], transition
     return Ramps(before, after, 0.0 * shape, transition * shape)
 
 
-def _initial(circuit: Circuit, layout: Layout, levels: dict[int, Edge]) -> FloatArray:
+def _initial(groups: Groups, layout: Layout, route: Route, levels: dict[int, Edge]) -> FloatArray:
     """Return where the unknown nodes stand before the edge.
 
     A node that nothing joins to a supply keeps a charge nobody knows; it gets the one that has to
     be moved by the edge.
     """
-    part = switches(circuit, layout.devices)
-    worth = np.full((2, len(part.net)), np.nan)
-    worth[:, circuit.supplies.is_high[part.net]] = 1.0
-    worth[:, circuit.supplies.is_low[part.net]] = 0.0
-    for place, net in enumerate(part.net.tolist()):
-        if net in levels:
-            worth[:, place] = levels[net]
-    given = ~np.isnan(worth[0])
-    before, after = (part.settle(one[:, None])[:, 0] for one in worth)
-    before = np.where(np.isnan(before), np.where(np.isnan(after), 0.0, 1.0 - after), before)
+    circuit, part = groups.circuit, part_of(groups.every, layout.devices)
+    # Stored values decide what others are worth, so the path's own nets are told, too.
+    told = moving({**levels, **route.edges})
+    before, after = np.moveaxis(part.evaluate(told).values[:, :, 0], 1, 0)
+    before = np.where(before >= 0, before, np.where(after >= 0, 1 - after, 0))
+    given = (part.switches.supply >= 0) | np.isin(part.net, [*levels])
     supply, known = circuit.process.supply, known_channels(circuit.process)
     bounds = {
         kind.polarity: one.threshold or 0.0

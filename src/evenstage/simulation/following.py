@@ -8,9 +8,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-import numpy as np
-
-from evenstage.simulation.logic import switches
+from evenstage.simulation.logic import moving
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
@@ -71,11 +69,7 @@ def _follow(
 
 def _made(groups: Groups, net: int, cause: int, edge: Edge) -> Edge:
     """Return what a group with one input makes of an edge; where it floats, nothing."""
-    circuit, maker = groups.circuit, int(groups.of_net[net])
-    inner = switches(circuit, groups.devices(maker))
-    worth = np.full((len(inner.net), 2), np.nan)
-    worth[circuit.supplies.is_high[inner.net]] = 1.0
-    worth[circuit.supplies.is_low[inner.net]] = 0.0
-    worth[np.searchsorted(inner.net, cause)] = edge
-    before, after = inner.settle(worth)[np.searchsorted(inner.net, net)].tolist()
+    part = groups.part(int(groups.of_net[net]))
+    node = part.node(net)
+    before, after = part.evaluate(moving({cause: edge})).values[node, :, 0].tolist()
     return before == 1, after == 1

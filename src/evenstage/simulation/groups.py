@@ -14,9 +14,14 @@ import numpy as np
 from scipy.sparse import coo_array
 from scipy.sparse.csgraph import connected_components
 
+from evenstage.circuit.evaluation import switches
+from evenstage.simulation.logic import part_of
+
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
+    from evenstage.logic.switches import Switches
     from evenstage.netlist.devices import IntArray
+    from evenstage.simulation.logic import Part
 
 
 @dataclass(frozen=True)
@@ -52,6 +57,15 @@ class Groups:
             for nets in some.nets
         }
         return tuple(sorted(pairs))
+
+    @cached_property
+    def every(self) -> Switches:
+        """All devices as switches between nets."""
+        return switches(self.circuit)
+
+    def part(self, group: int) -> Part:
+        """Return the devices of a group as switches."""
+        return part_of(self.every, self.devices(group))
 
     @cached_property
     def _in_order(self) -> IntArray:

@@ -1,9 +1,4 @@
-"""Circuits as switches: what nets are worth, 0 or 1, under many input vectors at once.
-
-A device is closed where its gate says so; a net is worth what closed devices join it to. It is not
-known where they join it to both values or to none (Bryant, "A switch-level model and simulator for
-MOS digital systems", IEEE Transactions on Computers C-33(2), 1984, from memory; without strengths).
-"""
+"""Some devices of a circuit as switches between their own nodes: values, and voltages for them."""
 
 from __future__ import annotations
 
@@ -12,80 +7,58 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from evenstage.logic.evaluate import Evaluation, evaluate
+from evenstage.logic.switches import Switches
+
 if TYPE_CHECKING:
-    from evenstage.circuit.circuit import Circuit
+    from collections.abc import Mapping
+
     from evenstage.circuit.network import BoolArray
+    from evenstage.logic.switches import Values
     from evenstage.netlist.devices import FloatArray, IntArray
 
 
 @dataclass(frozen=True)
-class Switches:
-    """Some devices of a circuit between numbered nodes, one for each net they touch.
+class Part:
+    """Some devices of a circuit, one node for each net they touch.
 
     Parameters
     ----------
     net : IntArray, shape (nodes,)
         Ascending.
-    drain, gate, source : IntArray, shape (devices,)
-        Nodes.
-    is_n : BoolArray, shape (devices,)
+    switches : Switches
+        The devices between nodes.
     """
 
     net: IntArray
-    drain: IntArray
-    gate: IntArray
-    source: IntArray
-    is_n: BoolArray
+    switches: Switches
 
-    def closed(self, worth: FloatArray) -> BoolArray:
-        """Tell which devices conduct, shape (devices, vectors), for what the nodes are worth."""
-        result: BoolArray = worth[self.gate] == self.is_n[:, None]
-        return result
+    def node(self, net: int) -> int | None:
+        """Return the node of a net; None: the part does not touch it."""
+        found = int(np.searchsorted(self.net, net))
+        return found if found < len(self.net) and self.net[found] == net else None
 
-    def reached(self, roots: BoolArray, closed: BoolArray, stops: BoolArray) -> BoolArray:
-        """Return the nodes that closed devices join to roots, shape (nodes, vectors).
+    def evaluate(self, known: Mapping[int, Values], *, strong: bool = False) -> Evaluation:
+        """Return what all nodes are worth; see `evenstage.logic.evaluate.evaluate`.
 
         Parameters
         ----------
-        roots : BoolArray, shape (nodes, vectors)
-        closed : BoolArray, shape (devices, vectors)
-        stops : BoolArray, shape (nodes, 1)
-            Nodes that no way leads through.
+        known : mapping of int to Values, shape (steps, vectors) each
+            What nets are worth that are given, by net; others than the part's do not matter.
+        strong : bool
         """
-        found = roots.copy()
-        while True:
-            wider = found.copy()
-            np.logical_or.at(wider, self.drain, found[self.source] & closed)
-            np.logical_or.at(wider, self.source, found[self.drain] & closed)
-            wider = np.where(stops, roots, wider)
-            if (wider == found).all():
-                return found
-            found = wider
-
-    def settle(self, worth: FloatArray) -> FloatArray:
-        """Return what all nodes are worth, shape (nodes, vectors).
-
-        Parameters
-        ----------
-        worth : FloatArray, shape (nodes, vectors)
-            0 or 1 for the nodes that are given, the same nodes for all vectors; NaN for the others.
-        """
-        given = ~np.isnan(worth).any(axis=1, keepdims=True)
-        high: BoolArray = given & (worth == 1)
-        low: BoolArray = given & (worth == 0)
-        stops = np.asarray(given)
-        # A round settles at least one more net of a circuit that does not go round in circles.
-        for _ in range(len(self.net)):
-            closed = self.closed(worth)
-            ones, zeros = (self.reached(roots, closed, stops) for roots in (high, low))
-            new: FloatArray = np.where(ones & ~zeros, 1.0, np.where(zeros & ~ones, 0.0, np.nan))
-            if np.array_equal(new, worth, equal_nan=True):
-                break
-            worth = new
-        return worth
+        rows = {net: self.node(net) for net in known}
+        given = {row: known[net] for net, row in rows.items() if row is not None}
+        found = evaluate(self.switches, given, strong=strong)
+        if given or not known:
+            return found
+        # Nothing that is given touches the part: it stands still, in as many steps and vectors.
+        shape = (len(self.net), *next(iter(known.values())).shape)
+        values, strength = (np.broadcast_to(a, shape) for a in (found.values, found.strength))
+        return Evaluation(values, strength, found.names)
 
     def voltages(
-        self, worth: FloatArray, given: BoolArray, supply: float, thresholds: tuple[float, float]
+        self, worth: Values, given: BoolArray, supply: float, thresholds: tuple[float, float]
     ) -> FloatArray:
         """Return the voltages of nodes for what they are worth, V, shape (nodes,).
 
@@ -94,31 +67,66 @@ class Switches:
 
         Parameters
         ----------
-        worth : FloatArray, shape (nodes,)
-            Settled.
+        worth : Values, shape (nodes,)
         given : BoolArray, shape (nodes,)
+            Nodes that are held from outside.
         supply : float
             V.
         thresholds : tuple of float
             V; of n and p channels.
         """
-        levels = np.where(np.isnan(worth), 0.5, worth) * supply
-        closed, stops = self.closed(worth[:, None]), given[:, None]
+        levels = np.where(worth < 0, 0.5, worth) * supply
+        closed = worth[self.switches.gate] == self.switches.is_n
         for carriers, value, short in (
-            (~self.is_n, 1, -thresholds[0]),
-            (self.is_n, 0, thresholds[1]),
+            (~self.switches.is_n, 1, -thresholds[0]),
+            (self.switches.is_n, 0, thresholds[1]),
         ):
-            roots = stops & (worth == value)[:, None]
-            whole = self.reached(roots, closed & carriers[:, None], stops)[:, 0]
+            whole = self._reached(given & (worth == value), closed & carriers, given)
             levels[(worth == value) & ~whole & ~given] += short
         return levels
 
+    def _reached(self, roots: BoolArray, closed: BoolArray, given: BoolArray) -> BoolArray:
+        """Return the nodes that closed devices join to roots, not through given nodes."""
+        found = roots
+        drain, source = self.switches.drain, self.switches.source
+        while True:
+            wider = found.copy()
+            wider[drain[found[source] & closed]] = True
+            wider[source[found[drain] & closed]] = True
+            wider = np.where(given, roots, wider)
+            if (wider == found).all():
+                return found
+            found = wider
 
-def switches(circuit: Circuit, devices: IntArray) -> Switches:
-    """Return some devices as switches."""
-    block = circuit.devices
-    ends = np.stack([block.drain[devices], block.gate[devices], block.source[devices]])
+
+def part_of(every: Switches, devices: IntArray) -> Part:
+    """Return some of a circuit's devices as a part of their own."""
+    ends = np.stack([every.drain[devices], every.gate[devices], every.source[devices]])
     net, node = np.unique(ends, return_inverse=True)
     drain, gate, source = node.reshape(ends.shape)
-    polarity = np.array([model.polarity == "n" for model in block.models], bool)
-    return Switches(net, drain, gate, source, polarity[block.model[devices]])
+    return Part(
+        net,
+        Switches(
+            drain,
+            gate,
+            source,
+            every.is_n[devices],
+            every.resistance[devices],
+            every.cap[net],
+            every.supply[net],
+            [""] * len(net),
+        ),
+    )
+
+
+def held_at(levels: Mapping[int, bool], vectors: int = 1, steps: int = 2) -> dict[int, Values]:
+    """Return values that stay as they are, for `Part.evaluate`."""
+    return {net: np.full((steps, vectors), level, np.int8) for net, level in levels.items()}
+
+
+def moving(edges: Mapping[int, tuple[bool, bool]], vectors: int = 1) -> dict[int, Values]:
+    """Return values of nets before and after an edge, for `Part.evaluate`."""
+    return {
+        net: np.repeat(np.array(edge, np.int8)[:, None], vectors, axis=1)
+        for net, edge in edges.items()
+    }
