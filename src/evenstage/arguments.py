@@ -112,12 +112,7 @@ def _parser(show: Callable[[str], object]) -> argparse.ArgumentParser:
     analyse.add_argument(
         "--count", type=_count, default=1, metavar="K", help="how many slowest paths (1)"
     )
-    analyse.add_argument(
-        "--conflicts",
-        type=_conflicts,
-        metavar="N",
-        help="give up the search for a path's input vector after N conflicts (20000; 0: no search)",
-    )
+    _search(analyse)
     _shared(analyse)
     resize = _command(commands, "resize", "new widths, written into a new netlist")
     resize.add_argument("netlist", type=_file, metavar="NETLIST")
@@ -157,6 +152,7 @@ def _parser(show: Callable[[str], object]) -> argparse.ArgumentParser:
     simulate.add_argument(
         "--waveforms", type=_file, metavar="FILE", help="the voltages over time, as CSV"
     )
+    _search(simulate)
     _shared(simulate)
     recognise = _command(
         commands, "recognise", "what each group of transistors is, and what it computes"
@@ -344,6 +340,16 @@ def _positive(text: str) -> float:
         message = f"must be positive, got '{text}'"
         raise argparse.ArgumentTypeError(message)
     return value
+
+
+def _search(command: argparse.ArgumentParser) -> None:
+    """Add what the search for vectors may cost."""
+    command.add_argument(
+        "--conflicts",
+        type=_conflicts,
+        metavar="N",
+        help="give up the search for a path's input vector after N conflicts (20000; 0: no search)",
+    )
 
 
 def _conflicts(text: str) -> int:

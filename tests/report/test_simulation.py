@@ -43,6 +43,7 @@ def simulated(path: Path, factor: float) -> SimulatedPath:
         stages=stages,
         delay=factor * (path.delay - path.start_arrival),
         held=(("b1", True), ("sel", False)),
+        by_vector=True,
         devices=42,
         nodes=21,
         steps=160,

@@ -210,7 +210,7 @@ class TestPassing:
         )
         with pytest.raises(SimulationError) as caught:
             simulated(text, process())
-        assert caught.value.code == "cannot-switch"
+        assert caught.value.code == "false-path"
 
     def test_times_are_finite_and_ordered(self) -> None:
         traces = simulated(CHAIN, process()).before.paths[0].traces

@@ -8,6 +8,7 @@ from evenstage.flow.files import write_text
 from evenstage.flow.loading import Question, load, one_process
 from evenstage.report.document.simulation import waveform_table
 from evenstage.simulation.simulate import simulate as run_simulation
+from evenstage.timing.vectors import with_vectors
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -45,8 +46,14 @@ def simulate(
     """
     one_process(question, "simulate")
     first = load(path, question)
-    second = None if after is None else load(after, question, first.process).analysis
-    result = run_simulation(first.analysis, second, side_branches=side_branches)
+    before = with_vectors(first.analysis, question.conflicts)
+    changed = None
+    if after is not None:
+        second = load(after, question, first.process).analysis
+        changed = with_vectors(second, question.conflicts)
+    result = run_simulation(
+        before, changed, side_branches=side_branches, conflicts=question.conflicts
+    )
     if waveforms is not None:
         write_text(waveforms, waveform_table(result), force=True)
     return result

@@ -102,6 +102,30 @@ class PathLogic:
         query = _Query(self, path, cone, relations, conflicts)
         return query.answer()
 
+    def standing(self, path: PathNets, held: Mapping[int, bool]) -> dict[int, bool]:
+        """Return what nets are worth that stand still as the path's start switches, by id.
+
+        Looked at are those that decide the path, and what hangs on it.
+
+        Parameters
+        ----------
+        path : PathNets
+        held : mapping of int to bool
+            What inputs are held at; the others are unknown.
+        """
+        nets = [net for net, _ in path]
+        hung = self._groups.of_device[np.isin(self._switches.gate, nets)]
+        seeds = np.concatenate([self._groups.of_net[nets[1:]], hung[hung >= 0]])
+        part = self.part(fan_in(self._groups, seeds))
+        start, rising = path[0]
+        inputs = {
+            net: np.full((2, 1), held.get(net, UNKNOWN), np.int8) for net in self.leaves(part)
+        }
+        inputs[start] = np.array([[not rising], [rising]], np.int8)
+        before, after = evaluate(part, inputs, strong=False).values[:, :, 0].T
+        still = np.flatnonzero((before == after) & (before != UNKNOWN) & (part.supply == UNKNOWN))
+        return dict(zip(still.tolist(), (before[still] == 1).tolist(), strict=True))
+
     def affected(self, start: int, cone: BoolArray) -> BoolArray:
         """Tell which nets a start can move, shape (nets,)."""
         devices = (self._groups.of_device >= 0) & cone[self._groups.of_device]

@@ -86,10 +86,10 @@ def simulation_report(
 def simulation_answer(simulation: Simulation) -> str:
     """Return the one thing to know first."""
     old = simulation.before.paths[0]
-    name = rank(simulation.before.analysis)
+    name = _first(simulation.before)
     if simulation.after is None:
         return (
-            f"The {name} path, {route(old.estimate)}, takes "
+            f"The {name}, {route(old.estimate)}, takes "
             f"{engineering(old.estimated_delay, 's')} as estimated and "
             f"{engineering(old.delay, 's')} as simulated: the estimate is {_off(old)}."
             f"{_ranking(simulation.before)}"
@@ -103,9 +103,17 @@ def simulation_answer(simulation: Simulation) -> str:
         (old.delay, new.delay),
     )
     return (
-        f"The {name} path ({which}) {moves(*estimated)} as estimated, and {moves(*simulated)} as "
+        f"The {name} ({which}) {moves(*estimated)} as estimated, and {moves(*simulated)} as "
         f"simulated: {_faster(*estimated)} claimed, {_faster(*simulated)} simulated."
     )
+
+
+def _first(block: SimulatedBlock) -> str:
+    """Return what the first path is that was simulated."""
+    path = f"{rank(block.analysis)} path"
+    if block.paths[0].estimate == block.analysis.paths[0]:
+        return path
+    return f"{path} of those that switch"
 
 
 def _faster(before: float, after: float) -> str:
@@ -132,7 +140,7 @@ def _ranking(block: SimulatedBlock) -> str:
 def _block_lines(paper: Paper, block: SimulatedBlock, when: str) -> list[str]:
     """Return the stages of a block's first path, and one line for each of the others."""
     first = block.paths[0]
-    title = f"The {rank(block.analysis)} path{when}, stage by stage"
+    title = f"The {_first(block)}{when}, stage by stage"
     lines = section(title, _stage_lines(paper, first))
     rows = [
         [str(place), route(path.estimate), *_figures(path, _scale([path]))]
@@ -216,5 +224,6 @@ def _how_lines(paper: Paper, simulation: Simulation) -> list[str]:
     )
     if path.held:
         held = [f"{net} {'high' if level else 'low'}" for net, level in path.held]
-        lines += labelled(paper, "held", listed(held, _HELD_SHOWN))
+        by = "by the path's vector" if path.by_vector else "to suit the path's own gates"
+        lines += labelled(paper, "held", f"{listed(held, _HELD_SHOWN)}; {by}")
     return lines

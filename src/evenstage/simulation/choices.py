@@ -1,7 +1,8 @@
 """Values of a gate's side inputs under which it passes an edge on, slowest first.
 
 Which are slowest is judged as the estimate does: by the Elmore delay of all nodes that have to move
-through the devices that conduct after the edge.
+through the devices that conduct after the edge. Of equally slow ones, the first is that in which
+most nodes stand where the output comes from.
 """
 
 from __future__ import annotations
@@ -145,7 +146,7 @@ class _Gate:
                 | {net: bool(level[found[i]]) for net, level in sorted(worth.items())},
                 float(slowness[i]),
             )
-            for i in np.lexsort((found, -slowness)).tolist()
+            for i in np.lexsort((found, -self._against(values[:, 0, found]), -slowness)).tolist()
         ]
 
     def _passing(self, known: Mapping[int, Values]) -> tuple[Values, BoolArray]:
@@ -161,6 +162,18 @@ class _Gate:
             passes = np.logical_and.reduce([wish.met_by_charge(found) for wish in self.wishes])
         return values, passes
 
+    def _against(self, before: Values) -> IntArray:
+        """Return how many nodes stand where the output comes from, shape (vectors,).
+
+        While the controls of passes cross, drivers that agree pull at what they share.
+        """
+        result: IntArray = (before[self._own] == before[self._output]).sum(axis=0)
+        return result
+
+    @property
+    def _output(self) -> int:
+        return self.wishes[-1].node if self.wishes else int(np.flatnonzero(self._own)[0])
+
     @property
     def _own(self) -> BoolArray:
         result: BoolArray = self.groups.of_net[self.part.net] == self.group
@@ -169,8 +182,9 @@ class _Gate:
     def _slowness(self, values: Values) -> FloatArray:
         circuit, part = self.groups.circuit, self.part
         given = ~self._own | np.isin(part.net, [*self.edges, *self.decided, *self.side])
-        output = self.wishes[-1].node if self.wishes else int(np.flatnonzero(self._own)[0])
-        return _slowness(circuit, self.groups.devices(self.group), part, values, output, given)
+        return _slowness(
+            circuit, self.groups.devices(self.group), part, values, self._output, given
+        )
 
 
 def _vectors(count: int) -> BoolArray:
@@ -201,10 +215,6 @@ def _slowness(
     inner[:, np.arange(len(free)), np.arange(len(free))] += _LEAK
     right = np.broadcast_to((free == output).astype(float)[:, None], (vectors, len(free), 1))
     shared = np.linalg.solve(inner, right)[:, :, 0]
-    cap = np.zeros(nodes)
-    np.add.at(cap, switches.drain, values.drain.today[devices])
-    np.add.at(cap, switches.source, values.source.today[devices])
-    cap[output] += circuit.net_cap[part.net[output]]
     moved = (before != after)[free]
-    result: FloatArray = (shared * cap[free] * moved.T).sum(axis=1)
+    result: FloatArray = (shared * switches.cap[free] * moved.T).sum(axis=1)
     return result

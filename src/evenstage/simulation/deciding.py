@@ -1,9 +1,10 @@
 """Side inputs of a large group that let an edge through, searched instead of tried one and all.
 
-A net is given a value only where it may still matter: where its transistor lies between the output
-and a transistor that is off (Goel, "An implicit enumeration algorithm to generate tests for
-combinational logic circuits", IEEE Transactions on Computers C-30(3), 1981, from memory). What is
-not known may be anything, so whatever is found holds for all values of the nets left free.
+First the switches between the output and the nearest one that moves are closed; then others that
+may still lead to the output are opened, nearest first; where that fails, choices are taken back
+(Goel, "An implicit enumeration algorithm to generate tests for combinational logic circuits", IEEE
+Transactions on Computers C-30(3), 1981, from memory). What is not known may be anything, so
+whatever is found holds for all values of the nets left free.
 """
 
 from __future__ import annotations
@@ -29,6 +30,9 @@ if TYPE_CHECKING:
 
 #: So many partial settings are looked at.
 _LOOKS_MOST: Final = 4000
+
+#: Of the ways from the output to something that moves so many are tried to be closed first.
+_ROUTES_MOST: Final = 2
 
 
 @dataclass(frozen=True)
@@ -80,6 +84,7 @@ class Search:
 
     def settings(self) -> Iterator[dict[int, bool]]:
         """Yield values of some of the free nets that let the edge through."""
+        wanted = self._wanted()
         stack: list[dict[int, bool]] = [{}]
         while stack and self.looks < _LOOKS_MOST:
             self.looks += 1
@@ -91,28 +96,69 @@ class Search:
                 continue
             if any(wish.lost(values) for wish in self.wishes):
                 continue
-            choice = self._choice(values)
+            ahead = [(net, level) for net, level in wanted.items() if net not in levels]
+            choice = ahead[0] if ahead else self._next(values)
             if choice is None:
                 continue
             net, level = choice
             stack += [levels | self.ties.spread({net: other}) for other in (not level, level)]
 
-    def _choice(self, values: Values) -> tuple[int, bool] | None:
-        """Return the free net nearest to what is wished, and the value that closes its switch."""
+    def _wanted(self) -> dict[int, bool]:
+        """Return values that close the switches from the output to one that moves, and beyond."""
         switches = self.part.switches
-        at_gate = values[switches.gate]
-        shut = (at_gate == np.where(switches.is_n, 0, 1)[:, None, None]).all(axis=(1, 2))
-        waiting = deque(wish.node for wish in self.wishes)
-        seen = set(waiting)
+        values = self.part.evaluate(self.known).values[:, :, 0]
+        moves = values[:, 0] != values[:, 1]
+        output = self.wishes[-1].node
+        way = self._ways(output, values)
+        entry = [(len(route), node, route) for node, route in way.items() if moves[node]]
+        for device in np.flatnonzero(moves[switches.gate]).tolist():
+            ends = int(switches.drain[device]), int(switches.source[device])
+            for near, far in (ends, ends[::-1]):
+                if near in way and device not in way[near]:
+                    rails = [
+                        route
+                        for node, route in self._ways(far, values, way[near]).items()
+                        if switches.supply[node] != UNKNOWN
+                    ]
+                    beyond = min(rails, key=len, default=())
+                    entry.append((len(way[near]), device, (*way[near], *beyond)))
+        found: dict[int, bool] = {}
+        for _, _, route in sorted(entry)[:_ROUTES_MOST]:
+            for device in route:
+                net = int(self.part.net[switches.gate[device]])
+                if net in self.ties.first and net not in found:
+                    found |= self.ties.spread({net: bool(switches.is_n[device])}) | found
+        return found
+
+    def _ways(
+        self, start: int, values: Values, without: Sequence[int] = ()
+    ) -> dict[int, tuple[int, ...]]:
+        """Return the devices on a shortest way to each node that may be joined to one."""
+        switches = self.part.switches
+        shut = (values[switches.gate] == np.where(switches.is_n, 0, 1)[:, None]).all(axis=1)
+        shut[list(without)] = True
+        found: dict[int, tuple[int, ...]] = {start: ()}
+        waiting = deque([start])
         while waiting:
             here = waiting.popleft()
-            touching = (switches.drain == here) | (switches.source == here)
-            for device in np.flatnonzero(touching & ~shut).tolist():
-                net = int(self.part.net[switches.gate[device]])
-                if net in self.ties.first and (at_gate[device, :, 0] == UNKNOWN).any():
-                    return net, bool(switches.is_n[device])
+            if switches.supply[here] != UNKNOWN:
+                continue
+            touching = ((switches.drain == here) | (switches.source == here)) & ~shut
+            for device in np.flatnonzero(touching).tolist():
                 for end in (int(switches.drain[device]), int(switches.source[device])):
-                    if end not in seen and switches.supply[end] == UNKNOWN:
-                        seen.add(end)
+                    if end not in found:
+                        found[end] = (*found[here], device)
                         waiting.append(end)
+        return found
+
+    def _next(self, values: Values) -> tuple[int, bool] | None:
+        """Return the free net nearest to the output that may matter, and what opens its switch."""
+        switches, flat = self.part.switches, values[:, :, 0]
+        way = self._ways(self.wishes[-1].node, flat)
+        for node in way:
+            touching = (switches.drain == node) | (switches.source == node)
+            for device in np.flatnonzero(touching).tolist():
+                net = int(self.part.net[switches.gate[device]])
+                if net in self.ties.first and (flat[switches.gate[device]] == UNKNOWN).any():
+                    return net, not switches.is_n[device]
         return None

@@ -91,6 +91,7 @@ def excerpt(
     transition: float,
     drive: float,
     with_gates: bool,
+    decided: Levels | None = None,
 ) -> Excerpt:
     """Cut a path out of a circuit.
 
@@ -106,6 +107,8 @@ def excerpt(
         ohm; resistance of the outside driver.
     with_gates : bool
         Whether side branches are simulated as gates; else they are capacitances.
+    decided : dict of int to bool, optional
+        What nets are worth that a vector decides.
 
     Raises
     ------
@@ -113,10 +116,11 @@ def excerpt(
         ``cannot-switch``, see `side_inputs`.
     """
     circuit, along = groups.circuit, tuple(dict.fromkeys((*route.groups, *route.beside)))
-    held = side_inputs(groups, along, route.edges)
+    told = decided or {}
+    held = side_inputs(groups, along, route.edges, told)
     side: list[int] = []
     if with_gates:
-        side, held = _side_groups(groups, route, held, loads_start=drive > 0)
+        side, held = _side_groups(groups, route, held, told, loads_start=drive > 0)
     devices = np.concatenate([groups.devices(group) for group in (*along, *side)])
     levels = {net: (level, level) for net, level in held.items()} | _bulks(circuit, devices)
     start = route.nets[0]
@@ -152,7 +156,7 @@ def _watched(groups: Groups, route: Route, layout: Layout) -> tuple[int, ...]:
 
 
 def _side_groups(
-    groups: Groups, route: Route, held: Levels, *, loads_start: bool
+    groups: Groups, route: Route, held: Levels, told: Levels, *, loads_start: bool
 ) -> tuple[list[int], Levels]:
     """Return the groups that hang on the path, and all values held, theirs included.
 
@@ -165,10 +169,12 @@ def _side_groups(
         if group < 0 or group in route.groups or group in route.beside:
             continue
         inputs = groups.inputs(group)
+        heard = {net: told[net] for net in inputs if net in told and net not in route.edges}
         driven = {int(groups.of_net[net]) for net in inputs if net not in route.edges}
         holds = any(int(groups.of_net[net]) == group for net in held)
         if holds or driven & set(found) or len(groups.devices(group)) > _SIDE_MOST:
             continue
+        held = heard | held
         offered = choices(groups, group, route.edges, held)
         rest = dict.fromkeys((n for n in inputs if n not in held and n not in route.edges), False)
         held = held | (offered[0].levels if offered else rest)

@@ -83,6 +83,8 @@ class SimulatedPath:
         s, from the 50 % point of the start to that of the end.
     held : tuple of (str, bool)
         Side inputs and what they were held at.
+    by_vector : bool
+        Whether an input vector says so; else they suit the path's own gates, each by itself.
     devices, nodes, steps, side_gates : int
         Sizes: transistors, unknown voltages, time steps, gates off the path.
     traces : Traces
@@ -92,6 +94,7 @@ class SimulatedPath:
     stages: tuple[SimulatedStage, ...]
     delay: float
     held: tuple[tuple[str, bool], ...]
+    by_vector: bool
     devices: int
     nodes: int
     steps: int

@@ -13,12 +13,14 @@ from typing import TYPE_CHECKING
 
 from evenstage.errors import SimulationError
 from evenstage.simulation.choices import choices
+from evenstage.simulation.ties import ties
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
 
     from evenstage.simulation.choices import Choice, Edge, Levels
     from evenstage.simulation.groups import Groups
+    from evenstage.simulation.ties import Ties
 
 
 def side_inputs(
@@ -50,7 +52,8 @@ def side_inputs(
     for group, offered in zip(along, offers, strict=True):
         if not offered:
             raise _cannot(groups, group, edges)
-    found = _agreed(offers)
+    beside = {net for offered in offers for choice in offered[:1] for net in choice.levels}
+    found = _agreed(offers, ties(groups, sorted(beside)))
     if found is None:
         raise SimulationError(
             "no values of the side inputs let exactly this path switch: two of its gates need"
@@ -78,8 +81,11 @@ def _cannot(groups: Groups, group: int, edges: Mapping[int, Edge]) -> Simulation
     )
 
 
-def _agreed(offers: list[list[Choice]]) -> Levels | None:
-    """Return one choice of each gate, the first that agree, as values by net."""
+def _agreed(offers: list[list[Choice]], tied: Ties) -> Levels | None:
+    """Return one choice of each gate, the first that agree, as values by net.
+
+    Nets that are tied to each other agree as one net does.
+    """
     held: list[Levels] = [{}]
     tried = [0]
     while len(held) <= len(offers):
@@ -95,7 +101,8 @@ def _agreed(offers: list[list[Choice]]) -> Levels | None:
                 return None
             continue
         tried[-1] = fitting + 1
-        held.append(known | offered[fitting].levels)
+        levels = known | offered[fitting].levels
+        held.append(tied.spread(levels) | levels)
         tried.append(0)
     return held[-1]
 

@@ -39,7 +39,11 @@ class Ties:
 
     def spread(self, levels: Mapping[int, bool]) -> dict[int, bool]:
         """Return what all nets of the classes are worth that some nets are of."""
-        known = {self.first[net]: level == self.same[net] for net, level in levels.items()}
+        known = {
+            self.first[net]: level == self.same[net]
+            for net, level in levels.items()
+            if net in self.first
+        }
         return {
             net: known[first] == self.same[net]
             for net, first in self.first.items()

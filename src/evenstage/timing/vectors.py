@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterator
 
     from evenstage.circuit.circuit import Circuit
+    from evenstage.logic.paths import PathVector
     from evenstage.timing.results import Analysis, Path
 
 CONFLICTS: Final = 20_000
@@ -71,13 +72,34 @@ def with_vectors(
     return replace(analysis, paths=tuple(kept), false_paths=tuple(false))
 
 
+def vector_of(
+    logic: PathLogic, circuit: Circuit, path: Path, conflicts: int = CONFLICTS
+) -> PathVector:
+    """Return the vector of a path: the one it carries, else what is found of it."""
+    if path.vector is not None:
+        return path.vector
+    return logic.vector(_nets(circuit, path), conflicts)
+
+
+def standing(logic: PathLogic, circuit: Circuit, path: Path, vector: PathVector) -> dict[int, bool]:
+    """Return what nets are worth that stand still while a vector lets a path switch, by id.
+
+    Nets that the vector leaves open are left out.
+    """
+    held = {net: value for name, value in vector.held if (net := circuit.net_id(name)) is not None}
+    return logic.standing(_nets(circuit, path), held)
+
+
+def can_look(circuit: Circuit) -> bool:
+    """Tell whether vectors are looked for: there is a solver, and the block is not too large."""
+    return has_solver() and len(circuit.devices) <= DEVICES_MOST
+
+
 def false_path_notices(analysis: Analysis) -> tuple[Notice, ...]:
     """Return a notice where the slowest path is false."""
-    if analysis.timing is None or not has_solver():
+    if analysis.timing is None or not can_look(analysis.timing.circuit):
         return ()
     circuit = analysis.timing.circuit
-    if len(circuit.devices) > DEVICES_MOST:
-        return ()
     path = analysis.paths[0]
     if path_logic(circuit).vector(_nets(circuit, path), CONFLICTS).verdict != "false":
         return ()

@@ -91,6 +91,7 @@ _PATH: Final = Shape(
     Field("time_steps", "steps", WHOLE),
     Field("side_gates", "side_gates", WHOLE),
     Field("held", "held", HELD),
+    Field("held_by_vector", "by_vector", TRUTH),
     Field("stages", "stages", many(_STAGE.kind)),
     Field("estimate", "estimate", PATH.kind),
     Field("traces", "traces", _TRACES.kind),
