@@ -28,8 +28,9 @@ if TYPE_CHECKING:
     from evenstage.simulation.logic import Part
     from evenstage.simulation.ties import Ties
 
-#: So many partial settings are looked at.
-_LOOKS_MOST: Final = 4000
+#: So many partial settings are looked at for the first that serves, and for others after it.
+_LOOKS_MOST: Final = 2000
+_LOOKS_MORE: Final = 32
 
 #: Of the ways from the output to something that moves so many are tried to be closed first.
 _ROUTES_MOST: Final = 2
@@ -62,7 +63,7 @@ class Wish:
         return bool(old == (not self.before) or new == (not self.after))
 
 
-@dataclass
+@dataclass(frozen=True)
 class Search:
     """A search in one group.
 
@@ -80,19 +81,19 @@ class Search:
     wishes: Sequence[Wish]
     known: Mapping[int, Values]
     ties: Ties
-    looks: int = 0
 
     def settings(self) -> Iterator[dict[int, bool]]:
         """Yield values of some of the free nets that let the edge through."""
-        wanted = self._wanted()
+        wanted, left = self._wanted(), _LOOKS_MOST
         stack: list[dict[int, bool]] = [{}]
-        while stack and self.looks < _LOOKS_MOST:
-            self.looks += 1
+        while stack and left:
+            left -= 1
             levels = stack.pop()
             found = self.part.evaluate({**self.known, **held_at(levels)}, strong=True)
             values = found.values
             if all(wish.met_by_charge(found)[0] for wish in self.wishes):
                 yield levels
+                left = min(left, _LOOKS_MORE)
                 continue
             if any(wish.lost(values) for wish in self.wishes):
                 continue
