@@ -73,11 +73,14 @@ class Weak:
         Drawn devices from the output to the supply: in series, at each place those in parallel.
     is_keeper : bool
         Whether a gate that listens to the output turns them on and off.
+    node : int
+        What they hold.
     """
 
     supply: int
     devices: tuple[tuple[int, ...], ...]
     is_keeper: bool
+    node: int
 
 
 @dataclass(frozen=True)

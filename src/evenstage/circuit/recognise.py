@@ -22,6 +22,7 @@ from evenstage.circuit.stage_sorting import sort_stages
 from evenstage.circuit.stage_tables import AlikeStages
 from evenstage.circuit.storage.dynamic import with_dynamic
 from evenstage.circuit.storage.elements import TOO_LARGE, find_storage
+from evenstage.circuit.storage.keepers import without_kept
 from evenstage.circuit.storage.reading import OSCILLATES
 from evenstage.circuit.strength import ratio_notices
 from evenstage.circuit.supplies import find_supplies
@@ -107,7 +108,9 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         drive=np.zeros(len(devices.net_names)),
         not_understood=strange,
         apart=apart,
-        storage=with_dynamic(loops, devices, alike, stages, clocks),
+        storage=with_dynamic(
+            without_kept(loops, devices, alike, stages), devices, alike, stages, clocks
+        ),
         outside_cap=np.zeros(len(devices.net_names)),
         gate_output=output,
         gate_instance=owner,

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
-    from evenstage.circuit.gate import GateForm
+    from evenstage.circuit.gate import GateForm, Weak
     from evenstage.circuit.literals import Cube
     from evenstage.circuit.network import Network, Switch
 
@@ -119,6 +119,8 @@ class StageForm:
         Parts that pass signals in both directions.
     bounded : tuple of int
         Nodes that arcs end at, where more is taken to move with them than can at once.
+    weak : tuple of Weak
+        Its keepers; whatever drives their nodes overpowers them.
     precharge : tuple of StageArc
         How its dynamic nodes get back to where they evaluate from.
     """
@@ -133,4 +135,5 @@ class StageForm:
     assumed: tuple[tuple[int, int], ...]
     both_ways: tuple[int, ...]
     bounded: tuple[int, ...]
+    weak: tuple[Weak, ...] = ()
     precharge: tuple[StageArc, ...] = ()

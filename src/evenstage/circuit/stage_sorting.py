@@ -93,7 +93,11 @@ def _recognised(
         for part, columns in zip(form.parts, form.columns, strict=True)
     )
     return replace(
-        form, drawn=network, network=with_nets(form.network, network), parts=tuple(parts)
+        form,
+        drawn=network,
+        network=with_nets(form.network, network),
+        parts=tuple(parts),
+        weak=keepers,
     )
 
 

@@ -16,11 +16,13 @@ import numpy as np
 
 from evenstage.circuit.gate_arcs import arcs_of
 from evenstage.circuit.network import LOW
+from evenstage.circuit.stage_tables import stage_arcs
 from evenstage.errors import Notice
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.gate import Weak
+    from evenstage.circuit.stage_tables import AlikeStages
     from evenstage.circuit.tables import AlikeGates
     from evenstage.netlist.devices import FloatArray, IntArray
 
@@ -39,7 +41,7 @@ def ratio_notices(circuit: Circuit) -> list[Notice]:
             ratio = ratios(circuit, some, weak)
             least = KEEPER_RATIO if weak.is_keeper else LOAD_RATIO
             poor[weak.is_keeper].append((some.gates[ratio < least], ratio[ratio < least]))
-    notices = []
+    notices = _beside_passes(circuit)
     for is_keeper, parts in poor.items():
         gates = np.concatenate([np.zeros(0, np.int32), *(gates for gates, _ in parts)])
         if not len(gates):
@@ -60,18 +62,66 @@ def ratio_notices(circuit: Circuit) -> list[Notice]:
     return notices
 
 
+def _beside_passes(circuit: Circuit) -> list[Notice]:
+    """Return a notice where keepers of nets that passes drive are too strong, naming the nets."""
+    nets, ratio = [np.zeros(0, np.int32)], [np.zeros(0)]
+    for some in circuit.stages:
+        for weak in some.form.weak:
+            found = stage_ratios(circuit, some, weak)
+            nets.append(some.nets[found < KEEPER_RATIO, weak.node])
+            ratio.append(found[found < KEEPER_RATIO])
+    every = np.unique(np.concatenate(nets))
+    if not len(every):
+        return []
+    what = "net has a keeper" if len(every) == 1 else "nets have keepers"
+    least = np.concatenate(ratio).min()
+    return [
+        Notice(
+            "strong-keeper",
+            f"{len(every)} {what} too strong for what drives them through passes: the resistance "
+            f"of the keeper is {least:.2g} times that of the route against it, at least "
+            f"{KEEPER_RATIO:g} are wanted",
+            names=tuple(circuit.devices.net_names[net] for net in every[:_NAMES_MAX].tolist()),
+        )
+    ]
+
+
+def stage_ratios(circuit: Circuit, some: AlikeStages, weak: Weak) -> FloatArray:
+    """Return the resistance of a keeper over the largest of a route against it, shape (k,).
+
+    Routes count from the node through their passes to the supply, or to the resistance of what
+    drives from outside. Infinite where nothing drives against it.
+    """
+    held, count = _resistance(circuit, some.devices, weak), len(some.form.arcs)
+    pull = np.zeros(len(held))
+    if count:
+        arcs = stage_arcs(some, circuit.electrical, circuit.drive)
+        against = np.array(
+            [a.output == weak.node and a.rising == (weak.supply == LOW) for a in some.form.arcs]
+        )
+        whole = np.where(against, arcs.output_resistance.reshape(-1, count), 0.0)
+        pull = whole.max(axis=1)
+    result: FloatArray = np.divide(held, pull, out=np.full(len(held), np.inf), where=pull > 0)
+    return result
+
+
+def _resistance(circuit: Circuit, devices: IntArray, weak: Weak) -> FloatArray:
+    """Return the resistance of a keeper or load in each gate or stage, ohm, shape (k,)."""
+    own = circuit.electrical.resistance.today[devices]
+    return sum(
+        (1 / (1 / own[:, list(parallel)]).sum(axis=1) for parallel in weak.devices),
+        np.zeros(len(own)),
+    )
+
+
 def ratios(circuit: Circuit, some: AlikeGates, weak: Weak) -> FloatArray:
     """Return the resistance of a keeper or load over the largest of a pull against it, shape (k,).
 
     Infinite where nothing pulls against it.
     """
-    own = circuit.electrical.resistance.today[some.devices]
-    held = sum(
-        (1 / (1 / own[:, list(parallel)]).sum(axis=1) for parallel in weak.devices),
-        np.zeros(len(own)),
-    )
+    held = _resistance(circuit, some.devices, weak)
     arcs = arcs_of((some,), circuit.electrical, circuit.wire_cap + circuit.apart_cap)
-    pull = np.zeros(len(own))
+    pull = np.zeros(len(held))
     against = arcs.rising == (weak.supply == LOW)
     row = np.searchsorted(some.gates, arcs.gate[against])
     np.maximum.at(pull, row, arcs.output_resistance[against])

@@ -71,6 +71,6 @@ def _form(
         else dual(conduction(network, output, HIGH, "p")),
         arcs=arcs,
         kind=KINDS[supply],
-        weak=(Weak(supply, drawn_path(network, path), is_keeper=False),),
+        weak=(Weak(supply, drawn_path(network, path), is_keeper=False, node=output),),
         floats=True,
     )

@@ -86,7 +86,7 @@ def _keepers(network: Network, context: Context) -> tuple[Weak, ...]:
                 continue
             paths = list(network.paths(node, supply, usable))
             found += [
-                Weak(supply, drawn_path(network, path), is_keeper=True)
+                Weak(supply, drawn_path(network, path), is_keeper=True, node=node)
                 for path in paths[:_PATHS_MAX]
                 if any(network.switches[i].gate in listening for i in path)
             ]

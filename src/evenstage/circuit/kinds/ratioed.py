@@ -58,7 +58,7 @@ def ratioed(devices: tuple[Switch, ...], context: Context) -> GateForm | Unrecog
         else dual(conduction(network, output, HIGH, "p")),
         arcs=arcs,
         kind=KIND,
-        weak=(Weak(supply, drawn_path(network, weak), is_keeper=False),),
+        weak=(Weak(supply, drawn_path(network, weak), is_keeper=False, node=output),),
     )
 
 

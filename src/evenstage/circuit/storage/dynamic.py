@@ -80,7 +80,7 @@ def with_dynamic(
         *(
             one
             for some in alike
-            if some.form.floats and some.form.arcs and not some.form.weak
+            if some.form.floats and some.form.arcs
             for latch in _of_gate(some.form)
             for one in _elements(latch, some.nets, facts)
         ),
