@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING, Final
 
 from evenstage.report.scale import Scale, percent, plain
 from evenstage.report.table import Column, lay_out
+from evenstage.report.words import counted
 
 if TYPE_CHECKING:
     from evenstage.report.paper import Paper
@@ -43,10 +44,15 @@ def few_changes_section(paper: Paper, few: FewChanges) -> tuple[str, list[str]]:
     table = lay_out(paper, _COLUMNS, rows, indent=2)
     sign = "\N{FULL BLOCK}" if paper.unicode else "="
     bars = [sign * round(share * table.widths[-1]) for share in shares]
+    every = (
+        f" Every set of up to {counted(few.asked, 'card')} was tried."
+        if few.every_set_tried
+        else ""
+    )
     text = (
         f"Today: {time.text(today)}. Each row is the best set of so many cards that was found, its "
-        "sizes proved for that set, off the grid. However many cards change, no sizes within the "
-        f"limits go below {time.text(few.bound)}."
+        f"sizes proved for that set, off the grid.{every} However many cards change, no sizes "
+        f"within the limits go below {time.text(few.bound)}."
     )
     lines = paper.paragraph(text, indent=2)
     if not rows:

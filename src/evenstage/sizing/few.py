@@ -7,14 +7,17 @@ grows if a size x goes back to 1. With A the sum of its terms that grow with x a
 fall, that is ``A (1/x - 1) + B (x - 1)``, at least 0 at an optimum. Those that matter least for
 each card go first; what is left is optimised anew. From nothing up: in the Lagrangian of the set
 so far a size that stands at 1 could gain ``A + B - 2 sqrt(A B)``, bounds apart; of those that
-promise most the best is taken. The better set of the two is improved by exchanging single cards.
-Going back and forth is the usual remedy where choosing the very best set is a combinatorial problem
-(Hastie, Tibshirani and Friedman, The Elements of Statistical Learning, 2nd ed. 2009, section 3.3).
+promise most the best is taken. The better set of the two is improved by exchanging single cards,
+then by pairs, since two gates in a row may each be of no use without the other. Going back and
+forth is the usual remedy where choosing the very best set is a combinatorial problem (Hastie,
+Tibshirani and Friedman, The Elements of Statistical Learning, 2nd ed. 2009, section 3.3). Where
+there are few sets in all, each is tried.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from itertools import combinations
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
@@ -35,12 +38,18 @@ if TYPE_CHECKING:
 _STAYS: Final = 2e-3
 #: Part of the sizes that goes at once while many are left; below so many they go one by one.
 _AT_ONCE, _FEW = 0.15, 12
+#: Of these so many are tried each time.
+_DROPPED: Final = 4
 #: Sets from nothing up are followed to so many cards, of so many candidates each time.
 _FORWARD, _TRIED = 12, 3
 #: Candidates in and out, and how many programmes, for exchanges.
 _IN, _OUT, _EXCHANGES = 5, 3, 45
 #: Monomials beyond which only the way down is gone.
 _LARGE: Final = 20_000
+#: Candidates in and programmes for exchanges of pairs, and up to how many monomials.
+_PAIR_IN, _PAIRS, _PAIRS_LARGE = 7, 60, 4_000
+#: Up to so many sets of so many monomials in all, every set is tried.
+_SETS, _WORK = 300, 300_000
 #: Relative gain that is one.
 _GAIN: Final = 1e-4
 _LEFT_ALONE = "left as it is, so that few cards change"
@@ -98,13 +107,17 @@ class _Choice:
         self.small = len(self.problem.delay.row) <= _LARGE
         #: The best set found of each number of cards.
         self.best: dict[int, _Set] = {}
+        self.every_set_tried = False
 
     def run(self) -> tuple[Engine, FewChanges]:
         """Search."""
         self._down()
-        if self.small:
+        if self._number_of_sets() <= min(_SETS, _WORK / max(len(self.problem.delay.row), 1)):
+            self._try_every_set()
+        elif self.small:
             self._up()
             self._exchange()
+            self._exchange_pairs()
         found = self._within(self.count)
         chosen = found.chosen if found else np.zeros(len(self.lower), bool)
         variables = self.engine.model.variables
@@ -127,7 +140,31 @@ class _Choice:
             today_charged_delay=today,
             bound=self.fastest.bound,
             points=tuple(points),
+            every_set_tried=self.every_set_tried,
         )
+
+    def _number_of_sets(self) -> int:
+        """Return how many sets there are of no more cards than asked for."""
+        ways = np.zeros(self.count + 1)
+        ways[0] = 1
+        for cards in self.cards[self.lower < self.upper].tolist():
+            if 0 < cards <= self.count:
+                ways[cards:] += ways[: len(ways) - cards].copy()
+        return int(min(ways.sum(), 1e9)) - 1
+
+    def _try_every_set(self) -> None:
+        """Optimise every set of no more cards than asked for."""
+        movable = np.flatnonzero(self.lower < self.upper).tolist()
+        start, known = np.ones(len(self.lower)), True
+        for number in range(1, self.count + 1):
+            for sizes in combinations(movable, number):
+                if int(self.cards[list(sizes)].sum()) <= self.count:
+                    some = self._solved(np.isin(np.arange(len(start)), sizes), start)
+                    if some is not None:
+                        self._keep(some)
+                    else:
+                        known = False
+        self.every_set_tried = known
 
     def _down(self) -> None:
         """Drop what matters least until one size is left."""
@@ -139,13 +176,24 @@ class _Choice:
             inside = np.flatnonzero(chosen)
             worth = self._loss(some.solution)[inside] / self.cards[inside]
             many = len(inside) > max(_FEW, self.count if self.count < 4 * _FEW else 0)
-            drop = int(np.ceil(_AT_ONCE * len(inside))) if many else 1
-            chosen = chosen.copy()
-            chosen[inside[np.argsort(worth, kind="stable")[:drop]]] = False
-            found = self._solved(chosen, some.solution.sizes)
-            if found is None:
+            order = inside[np.argsort(worth, kind="stable")]
+            if many:
+                dropped = [order[: int(np.ceil(_AT_ONCE * len(inside)))]]
+            else:
+                # The Lagrangian sees one loss at a time; where few are left, solving says more.
+                dropped = [order[place : place + 1] for place in range(min(_DROPPED, len(order)))]
+            trials = [self._without(some, sizes) for sizes in dropped[: None if self.small else 1]]
+            found = [trial for trial in trials if trial is not None]
+            if not found:
                 return
-            some = found
+            some = min(found, key=lambda trial: trial.solution.delay)
+            chosen = some.chosen
+
+    def _without(self, some: _Set, sizes: IntArray) -> _Set | None:
+        """Optimise a set without some of its sizes."""
+        chosen = some.chosen.copy()
+        chosen[sizes] = False
+        return self._solved(chosen, some.solution.sizes)
 
     def _up(self) -> None:
         """Add what promises most until there are enough."""
@@ -185,6 +233,46 @@ class _Choice:
                     break
             if not better:
                 return
+
+    def _exchange_pairs(self) -> None:
+        """Put two sizes at a time into the best set, and take out those that matter least then."""
+        if len(self.problem.delay.row) > _PAIRS_LARGE:
+            return
+        left = _PAIRS
+        while left > 0 and (some := self._within(self.count)) is not None:
+            better = False
+            for pair in combinations(self._missed(some), 2):
+                left -= 2
+                trial = self._exchanged(some, pair)
+                if trial and trial.solution.delay < some.solution.delay * (1 - _GAIN):
+                    self._keep(trial)
+                    better = True
+                if better or left <= 0:
+                    break
+            if not better:
+                return
+
+    def _missed(self, some: _Set) -> list[int]:
+        """Return sizes that are not in a set but matter, for it or when all change."""
+        worth = np.where(some.chosen, 0.0, self._loss(self.fastest))
+        matter = np.argsort(-worth, kind="stable")[:_PAIR_IN].tolist()
+        both = dict.fromkeys([*self._promising(some, self.count)[: _PAIR_IN // 2], *matter])
+        return [size for size in both if worth[size] > 0][:_PAIR_IN]
+
+    def _exchanged(self, some: _Set, pair: tuple[int, int]) -> _Set | None:
+        """Optimise a set with two more sizes, then without those of it that matter least."""
+        chosen = some.chosen.copy()
+        chosen[list(pair)] = True
+        wider = self._solved(chosen, some.solution.sizes)
+        if wider is None:
+            return None
+        inside = np.flatnonzero(chosen)
+        loss = self._loss(wider.solution)[inside] / self.cards[inside]
+        for size in inside[np.argsort(loss, kind="stable")].tolist():
+            if int(self.cards[chosen].sum()) <= self.count:
+                break
+            chosen[size] = False
+        return self._solved(chosen, wider.solution.sizes) if chosen.any() else None
 
     def _keep(self, some: _Set) -> None:
         known = self.best.get(self._count(some))

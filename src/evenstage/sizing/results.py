@@ -147,12 +147,15 @@ class FewChanges:
         s; no sizes within the limits have a smaller worst charged delay, however many change.
     points : tuple of FewChangesPoint
         The fewest cards first; delays never rise.
+    every_set_tried : bool
+        Whether no other set of at most so many cards as asked for can be faster.
     """
 
     asked: int
     today_charged_delay: float
     bound: float
     points: tuple[FewChangesPoint, ...]
+    every_set_tried: bool = False
 
 
 PricedLimit = Literal["input", "transition", "greatest width", "least width", "fixed", "budget"]

@@ -77,6 +77,7 @@ _FEW_CHANGES: Final = Shape(
     Field("asked", "asked", WHOLE),
     Within("today", (Field("charged_delay_s", "today_charged_delay", NUMBER),)),
     Field("bound_s", "bound", NUMBER),
+    Field("every_set_tried", "every_set_tried", TRUTH),
     Field("points", "points", many(_FEW_CHANGES_POINT.kind)),
 )
 
