@@ -12,8 +12,9 @@ from evenstage.units import engineering
 
 if TYPE_CHECKING:
     from evenstage.circuit.network import BoolArray
+    from evenstage.sizing.engine import Engine
     from evenstage.sizing.infeasible import BudgetTooSmallError, LimitOutOfReachError
-    from evenstage.sizing.model import Limits, Model
+    from evenstage.sizing.joint import Corner
     from evenstage.sizing.problem import Problem
     from evenstage.sizing.solution import Solution
 
@@ -21,24 +22,25 @@ if TYPE_CHECKING:
 _FULL: Final = 1e-5
 
 
-def limit_out_of_reach(
-    model: Model, limits: Limits, error: LimitOutOfReachError
-) -> InfeasibleError:
-    """Say which input or which gate cannot keep its limit."""
-    nets, circuit = limits.ceiling_net, model.circuit
-    if error.limit_row < len(nets):
-        name = circuit.devices.net_names[nets[error.limit_row]]
-        ceiling = float(limits.ceiling[error.limit_row])
+def limit_out_of_reach(engine: Engine, error: LimitOutOfReachError) -> InfeasibleError:
+    """Say which input or which gate cannot keep its limit, and in which corner of several."""
+    corner = next(c for c in engine.corners if c.rows.start <= error.limit_row < c.rows.stop)
+    limits, circuit = corner.limits, corner.model.circuit
+    nets, own = limits.ceiling_net, error.limit_row - corner.rows.start
+    where = f" in {circuit.process.name}" if len(engine.corners) > 1 else ""
+    if own < len(nets):
+        name = circuit.devices.net_names[nets[own]]
+        ceiling = float(limits.ceiling[own])
         return InfeasibleError(
-            f"input '{name}' may show {engineering(ceiling, 'F')}, but the smallest widths "
+            f"input '{name}' may show {engineering(ceiling, 'F')}{where}, but the smallest widths "
             f"allowed there show {engineering(error.least * ceiling, 'F')}",
             code="input-over-ceiling",
         )
-    row = model.transition_row(limits)
-    gate = int(circuit.arcs.gate[np.flatnonzero(row == error.limit_row)[0]])
+    row = corner.model.transition_row(limits)
+    gate = int(circuit.arcs.gate[np.flatnonzero(row == own)[0]])
     limit = engineering(limits.transition, "s")
     return InfeasibleError(
-        f"gate '{circuit.gate_name(gate)}' cannot keep the transition limit of {limit}: "
+        f"gate '{circuit.gate_name(gate)}' cannot keep the transition limit of {limit}{where}: "
         f"within the widths allowed its edges take {error.least:.3g} times as long",
         code="transition-out-of-reach",
     )
@@ -54,23 +56,31 @@ def budget_too_small(spend: str, error: BudgetTooSmallError) -> InfeasibleError:
     )
 
 
-def blame(problem: Problem, model: Model, limits: Limits, solution: Solution) -> str:
-    """Say which limits hold the fastest answer back."""
-    variables, nets = model.variables, limits.ceiling_net
-    held_up, full = limiting(model, solution), used_up(problem, solution)
-    circuit, row = model.circuit, model.transition_row(limits)
-    pins, gates = circuit.pins, held_up[variables.partition.of_gate]
-    on_path = np.zeros(len(circuit.devices.net_names), bool)
-    on_path[pins.net[gates[pins.gate]]] = True
-    inputs = nets[full[: len(nets)] & on_path[nets]]
-    arcs = gates[circuit.arcs.gate] & (row >= 0) & full[row]
+def blame(engine: Engine, problem: Problem, solution: Solution) -> str:
+    """Say which limits hold the fastest answer back.
+
+    Parameters
+    ----------
+    engine : Engine
+    problem : Problem
+        With all its limits, whatever the bounds.
+    solution : Solution
+        The fastest.
+    """
+    variables = engine.variables
+    held_up, full = limiting(engine.joint, solution), used_up(problem, solution)
+    inputs: list[str] = []
+    edges = False
+    for corner in engine.corners:
+        names, edge = _full(corner, held_up, full[corner.rows])
+        inputs += names
+        edges |= edge
     at_top = held_up & variables.free & (solution.sizes > variables.upper * (1 - 1e-6))
     stuck = int((held_up & ~variables.free).sum())
     held = []
     if len(inputs):
-        name = circuit.devices.net_names[inputs[0]]
-        held.append(f"the input capacitance allowed on '{name}'")
-    if arcs.any():
+        held.append(f"the input capacitance allowed on '{inputs[0]}'")
+    if edges:
         held.append("the transition limit")
     if at_top.any():
         held.append(f"the largest widths allowed ({int(at_top.sum())} sizes)")
@@ -79,6 +89,18 @@ def blame(problem: Problem, model: Model, limits: Limits, solution: Solution) ->
     if solution.spend_price > 0:
         held.append("the budget")
     return "it is held by " + (", ".join(held) or "the topology: no limit is active")
+
+
+def _full(corner: Corner, held_up: BoolArray, full: BoolArray) -> tuple[list[str], bool]:
+    """Return the full inputs of sizes that hold an answer up in a corner, and if edges are full."""
+    limits, circuit = corner.limits, corner.model.circuit
+    nets, row = limits.ceiling_net, corner.model.transition_row(limits)
+    pins, gates = circuit.pins, held_up[corner.model.variables.partition.of_gate]
+    on_path = np.zeros(len(circuit.devices.net_names), bool)
+    on_path[pins.net[gates[pins.gate]]] = True
+    inputs = nets[full[: len(nets)] & on_path[nets]]
+    arcs = gates[circuit.arcs.gate] & (row >= 0) & full[row]
+    return [circuit.devices.net_names[net] for net in inputs.tolist()], bool(arcs.any())
 
 
 def used_up(problem: Problem, solution: Solution) -> BoolArray:

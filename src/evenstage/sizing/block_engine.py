@@ -5,29 +5,34 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from evenstage.sizing.engine import Engine
+from evenstage.sizing.joint import Joint
 from evenstage.sizing.limits import limits_of, spend_of
 from evenstage.sizing.model import Model
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from evenstage.brief import Brief
+    from evenstage.sizing.timed import Timed
     from evenstage.sizing.variables import Variables
     from evenstage.sizing.wishes import Original, Wishes
-    from evenstage.timing.sweep import Timing
 
 
 def engine_of(
-    timing: Timing, brief: Brief, wishes: Wishes, original: Original, free: Variables
+    block: Timed, brief: Brief, wishes: Wishes, originals: Sequence[Original], free: Variables
 ) -> Engine:
     """Return the engine of a block.
 
+    What it costs, width or capacitance, is that in the first corner.
+
     Parameters
     ----------
-    timing : Timing
-        The block as drawn.
+    block : Timed
+        As drawn.
     brief : Brief
     wishes : Wishes
-    original : Original
-        Limits that an earlier run recorded.
+    originals : sequence of Original
+        For each corner the limits that an earlier run recorded.
     free : Variables
         Which sizes may move, and how far.
 
@@ -38,12 +43,15 @@ def engine_of(
     SettingsError
         Where a pattern of the brief fits no input.
     """
-    spend = spend_of(timing.circuit, free, wishes.spend)
+    spend = spend_of(block.corners[0].circuit, free, wishes.spend)
     return Engine(
-        model=Model(timing.circuit, timing.graph, timing.unit, free),
-        limits=limits_of(timing, brief, original, free),
+        joint=Joint(tuple(Model(one.circuit, one.graph, one.unit, free) for one in block.corners)),
+        limits=tuple(
+            limits_of(timing, brief, original, free)
+            for timing, original in zip(block.corners, originals, strict=True)
+        ),
         spend=spend.per_size,
         spend_fixed=spend.fixed,
         wishes=wishes,
-        cost_today=original.spend or spend.today,
+        cost_today=originals[0].spend or spend.today,
     )

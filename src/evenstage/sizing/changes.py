@@ -11,14 +11,14 @@ import numpy as np
 from evenstage.netlist.rewriting.sized_block import Slot
 from evenstage.netlist.rewriting.widths import WidthPlan, WidthWish, plan_widths
 from evenstage.sizing.results import Change
+from evenstage.sizing.size_trials import tried_sizes
 from evenstage.timing.search import slowest_paths
-from evenstage.timing.trials import tried
 
 if TYPE_CHECKING:
-    from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import FloatArray
     from evenstage.sizing.partition import Partition
     from evenstage.sizing.rounding import Rounding
+    from evenstage.sizing.timed import Timed
     from evenstage.timing.results import Path
     from evenstage.timing.sweep import Timing
 
@@ -33,9 +33,9 @@ class Writing:
     Parameters
     ----------
     timing : Timing
-        The block as drawn.
+        The block as drawn, in the corner that limits it.
     slowest : Path
-        Its slowest path.
+        Its slowest path there.
     rounding : Rounding
         What found the widths.
     """
@@ -105,7 +105,7 @@ class Writing:
 
     @property
     def _parts(self) -> Partition:
-        return self.rounding.engine.model.variables.partition
+        return self.rounding.engine.variables.partition
 
     @cached_property
     def _number(self) -> dict[Slot, int]:
@@ -120,7 +120,7 @@ class Writing:
         return {
             size: stage.stage_effort
             for arc, stage in reversed(list(stages))
-            for size in self._parts.of_gate[circuit.arcs.gates_along(arc)].tolist()
+            for size in self._parts.of_gate[circuit.arcs.gates_along(arc)].ravel().tolist()
         }
 
     def _why(self, slot: int) -> str:
@@ -135,27 +135,21 @@ class Writing:
 
     def _alone(self, width: FloatArray) -> FloatArray:
         """Return how much each size moves the worst delay by itself, s, shape (sizes,)."""
-        after = self.timing.circuit.resized(self.rounding.factors(width))
-        return self._moved(self.timing, after, width)
+        today = self.rounding.engine.today
+        return self._moved(today, self.rounding.factors(width), width)
 
     def _last(self, width: FloatArray) -> FloatArray:
         """Return how much each size moves the worst delay after all others, s, shape (sizes,)."""
         after = self.rounding.timed(width)
-        return -self._moved(after, self.timing.circuit, width)
+        return -self._moved(after, 1 / self.rounding.factors(width), width)
 
-    def _moved(self, timing: Timing, changed: Circuit, width: FloatArray) -> FloatArray:
-        """Return how the worst delay moves with each size that differs in a changed circuit, s."""
+    def _moved(self, block: Timed, factor: FloatArray, width: FloatArray) -> FloatArray:
+        """Return how the worst delay over corners moves with each size whose width differs, s."""
         parts = self._parts
         change = np.zeros(len(parts))
         sizes = np.unique(parts.of_slot[width != self.rounding.drawn])
-        trial = np.full(len(parts), -1, np.int32)
-        trial[sizes] = np.arange(len(sizes))
-        trials = tried(
-            timing,
-            changed,
-            trial[parts.of_gate],
-            nets=np.zeros(0, np.int32),
-            elmore_limit=np.full(len(timing.circuit.arcs.gate), np.inf),
-        )
-        change[sizes] = trials.worst - timing.worst
+        if len(sizes):
+            every = tried_sizes(block, factor, parts, sizes)
+            worst = np.max([trials.worst for trials in every], axis=0)
+            change[sizes] = worst - max(one.worst for one in block.corners)
         return change

@@ -31,22 +31,24 @@ from evenstage.sizing.limiting import (
     limiting,
     on_slowest_path,
     slower_than,
-    worst_charged,
 )
 from evenstage.sizing.optimum import solve
 from evenstage.sizing.presolve import with_guard, without_room
-from evenstage.timing.sweep import sweep
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray
     from evenstage.sizing.goals import Goal
+    from evenstage.sizing.joint import Corner, Joint
     from evenstage.sizing.model import Limits, Model
     from evenstage.sizing.problem import Problem
     from evenstage.sizing.solution import Solution
+    from evenstage.sizing.timed import Timed
+    from evenstage.sizing.variables import Variables
     from evenstage.sizing.wishes import Wishes
-    from evenstage.timing.sweep import Timing
 
 _NEAR_LIMITING_PATH = 1e-4
 """The same on the way to the answer, where the flow still spreads over paths close to limiting."""
@@ -72,8 +74,8 @@ class Continuous:
         Of the last programme.
     full : BoolArray, shape (limits,)
         Which limits of the programme leave no room.
-    limits : Limits
-        As the programme had them.
+    limits : tuple of Limits
+        As the programme had them, corner by corner.
     least_delay : float
         s; least worst charged delay.
     fastest : Solution
@@ -88,7 +90,7 @@ class Continuous:
     upper: FloatArray
     solution: Solution
     full: BoolArray
-    limits: Limits
+    limits: tuple[Limits, ...]
     least_delay: float
     fastest: Solution
     deadline: float
@@ -96,12 +98,13 @@ class Continuous:
 
 @dataclass(frozen=True)
 class Engine:
-    """A model with its limits and costs, ready for goals.
+    """A block in its corners with limits and costs, ready for goals.
 
     Parameters
     ----------
-    model : Model
-    limits : Limits
+    joint : Joint
+    limits : tuple of Limits
+        For each corner.
     spend : FloatArray, shape (sizes,)
         Cost of one unit of each size.
     spend_fixed : float
@@ -111,17 +114,32 @@ class Engine:
         Total cost that ``wishes.width`` multiplies.
     """
 
-    model: Model
-    limits: Limits
+    joint: Joint
+    limits: tuple[Limits, ...]
     spend: FloatArray
     spend_fixed: float
     wishes: Wishes
     cost_today: float
 
+    @property
+    def model(self) -> Model:
+        """The model of the first corner, for what is the same in all: cards, gates, sizes."""
+        return self.joint.first
+
+    @property
+    def variables(self) -> Variables:
+        """The sizes."""
+        return self.joint.variables
+
     @cached_property
-    def today(self) -> Timing:
+    def corners(self) -> list[Corner]:
+        """Every corner with its limits and its rows of the programme."""
+        return self.joint.corners(self.limits)
+
+    @property
+    def today(self) -> Timed:
         """The block as drawn."""
-        return sweep(self.model.circuit, self.model.graph, self.model.unit)
+        return self.joint.today
 
     @property
     def cost_drawn(self) -> float:
@@ -143,28 +161,35 @@ class Engine:
             Where the proof fails.
         """
         for share in _SHARES:
-            engine = replace(self, limits=replace(self.limits, share=share))
+            engine = replace(self, limits=tuple(replace(one, share=share) for one in self.limits))
             answer = engine._run()  # noqa: SLF001 -- the same engine with less room
-            slowest = max(self.limits.transition, self.today.worst_transition)
-            if self.limits.strict or engine.timed(answer.sizes).worst_transition <= slowest * (
-                1 + AGREES / 10
-            ):
+            if self._edges_kept(engine.timed(answer.sizes)):
                 break
         return answer
+
+    def _edges_kept(self, block: Timed) -> bool:
+        """Tell whether no edge is slower than its corner's limit, or than the slowest of today."""
+        every = zip(self.limits, self.today.corners, block.corners, strict=True)
+        return all(
+            limits.strict
+            or after.worst_transition
+            <= max(limits.transition, before.worst_transition) * (1 + AGREES / 10)
+            for limits, before, after in every
+        )
 
     def _run(self) -> Continuous:
         """Find the continuous answer for the limits as they are."""
         fastest, lower, upper = self.least_delay()
-        least, drawn = fastest.delay, worst_charged(self.today)
+        least, drawn = fastest.delay, self.today.charged
         if self.wishes.delay is not None:
             return self._for_delay(fastest, lower, upper)
         deadline = least * (1 + max(self.wishes.margin, AGREES))
         if self.wishes.width is None:
             deadline = min(deadline, max(drawn, least * (1 + AGREES)))
-        late = float(self.today.lateness.max())
+        late = self.today.lateness
         for _ in range(6):
             answer = self.within(deadline, fastest, lower, upper)
-            reached = float(self.timed(answer.sizes).lateness.max())
+            reached = self.timed(answer.sizes).lateness
             tighter = max(least * (1 + AGREES), deadline * late / reached * (1 - 10 * AGREES))
             # No faster in charged delay than today must not mean slower in arrivals.
             if reached <= late or tighter >= deadline:
@@ -193,7 +218,7 @@ class Engine:
         lower, upper, start : FloatArray, shape (sizes,)
             Bounds, and sizes near the answer.
         """
-        exact = (deadline < fastest.delay * (1 + 2 * AGREES)) & limiting(self.model, fastest)
+        exact = (deadline < fastest.delay * (1 + 2 * AGREES)) & limiting(self.joint, fastest)
         solution = self._solve(
             Cheapest(deadline),
             np.where(exact, fastest.sizes, lower),
@@ -216,9 +241,9 @@ class Engine:
     def _for_delay(self, fastest: Solution, lower: FloatArray, upper: FloatArray) -> Continuous:
         """Find the least spend whose 50 % arrivals meet the wished delay."""
         wanted = self.wishes.delay or 0.0
-        possible = self.timed(fastest.sizes).lateness.max()
+        possible = self.timed(fastest.sizes).lateness
         if possible > wanted * (1 + AGREES):
-            held = blame(self._unbounded(), self.model, self.limits, fastest)
+            held = blame(self, self._unbounded(), fastest)
             raise InfeasibleError(
                 f"a delay of {engineering(wanted, 's', 4)} cannot be met: the least possible "
                 f"within the limits is {engineering(possible, 's', 4)}, "
@@ -229,7 +254,7 @@ class Engine:
         deadline, best = max(floor, wanted * fastest.delay / possible), None
         for _ in range(12):
             answer = self.within(deadline, fastest, lower, upper)
-            reached = float(self.timed(answer.sizes).lateness.max())
+            reached = self.timed(answer.sizes).lateness
             best = answer if reached <= wanted else best
             following = max(floor, deadline * wanted * (1 - AGREES / 4) / reached)
             if wanted * (1 - AGREES) < reached <= wanted or following == deadline:
@@ -249,11 +274,9 @@ class Engine:
         except (InfeasibleError, NotConvergedError):
             return None
 
-    def timed(self, sizes: FloatArray) -> Timing:
+    def timed(self, sizes: FloatArray) -> Timed:
         """Time the block with some sizes, by the full arc model."""
-        model = self.model
-        circuit = model.circuit.resized(model.variables.factors(sizes))
-        return sweep(circuit, model.graph, model.unit)
+        return self.joint.timed(self.variables.factors(sizes))
 
     def least_delay(self) -> tuple[Solution, FloatArray, FloatArray]:
         """Find the least delay, and the bounds within which sizes may move for it.
@@ -265,25 +288,25 @@ class Engine:
         NotConvergedError
             Where the proof fails.
         """
-        free = self.model.variables.free
+        free = self.variables.free
         start = np.ones(len(free))
         everything = self._solve(
             self._first_goal(), *self._box(free, free), start, tolerance=_LOOSE
         )
         # No path that is slower today than the least delay of all can stay as it is.
         moving = free & (
-            on_slowest_path(self.model, self.today)
-            | beyond_limits(self.model, self.limits, self.today)
-            | slower_than(self.model, self.today, everything.delay)
+            on_slowest_path(self.joint, self.today)
+            | beyond_limits(self.joint, self.limits, self.today)
+            | slower_than(self.joint, self.today, everything.delay)
         )
         if self.wishes.scope == "block":
-            moving |= free & limiting(self.model, everything)
+            moving |= free & limiting(self.joint, everything)
         tolerance = _LOOSE
         while True:
             lower, upper = self._bounds(moving)
             fastest = self._solve(self._first_goal(), lower, upper, start, tolerance)
             share = ON_LIMITING_PATH if tolerance == _TIGHT else _NEAR_LIMITING_PATH
-            joining = limiting(self.model, fastest, share) & free & ~moving
+            joining = limiting(self.joint, fastest, share) & free & ~moving
             if not joining.any() and tolerance == _TIGHT:
                 return fastest, lower, upper
             # Who limits shows early; the proof is for the last.
@@ -314,27 +337,27 @@ class Engine:
         Those move freely. The others may grow where the scope is the block, and shrink only where
         that is asked for.
         """
-        free, wishes = self.model.variables.free, self.wishes
+        free, wishes = self.variables.free, self.wishes
         return self._box(
             limiting | (free & wishes.reclaim), limiting | (free & (wishes.scope == "block"))
         )
 
     def _box(self, down: BoolArray, up: BoolArray) -> tuple[FloatArray, FloatArray]:
         """Return the bounds when some sizes may go down and some up."""
-        variables = self.model.variables
+        variables = self.variables
         return np.where(down, variables.lower, 1.0), np.where(up, variables.upper, 1.0)
 
     def problem(
-        self, lower: FloatArray, upper: FloatArray, limits: Limits | None = None
+        self, lower: FloatArray, upper: FloatArray, limits: Sequence[Limits] = ()
     ) -> Problem:
         """Return the programme for some bounds."""
-        problem = self.model.problem(lower, upper, self.spend, limits or self.limits)
+        problem = self.joint.problem(lower, upper, self.spend, limits or self.limits)
         return without_room(replace(problem, spend_fixed=self.spend_fixed))
 
     def _unbounded(self) -> Problem:
         """Return the programme with all its limits, whatever the bounds."""
-        every = np.ones(len(self.model.variables))
-        return self.model.problem(every, every, self.spend, self.limits)
+        every = np.ones(len(self.variables))
+        return self.joint.problem(every, every, self.spend, self.limits)
 
     def _solve(
         self,
@@ -349,7 +372,7 @@ class Engine:
         try:
             solution = solve(problem, goal, start=begin, tolerance=tolerance)
         except LimitOutOfReachError as error:
-            raise limit_out_of_reach(self.model, self.limits, error) from error
+            raise limit_out_of_reach(self, error) from error
         except BudgetTooSmallError as error:
             raise budget_too_small(self.wishes.spend, error) from error
         check(problem, goal, solution)

@@ -23,7 +23,6 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 
 from evenstage.errors import InfeasibleError, NotConvergedError
-from evenstage.sizing.limiting import worst_charged
 from evenstage.sizing.problem import totals
 from evenstage.sizing.results import FewChanges, FewChangesPoint
 
@@ -90,7 +89,7 @@ def choose_few(engine: Engine, count: int) -> tuple[Engine, FewChanges]:
 
 def cards_of_sizes(engine: Engine) -> IntArray:
     """Return how many cards each size changes, as a report counts them, shape (sizes,)."""
-    parts, circuit = engine.model.variables.partition, engine.model.circuit
+    parts, circuit = engine.variables.partition, engine.model.circuit
     gate = circuit.gate_of_device[parts.first_device]
     pairs = np.unique(np.stack([parts.of_slot, gate]), axis=1)
     return np.bincount(pairs[0], minlength=len(parts)).astype(np.int32)
@@ -120,16 +119,16 @@ class _Choice:
             self._exchange_pairs()
         found = self._within(self.count)
         chosen = found.chosen if found else np.zeros(len(self.lower), bool)
-        variables = self.engine.model.variables
+        variables = self.engine.variables
         reason = tuple(
             why or ("" if here else _LEFT_ALONE)
             for why, here in zip(variables.reason, chosen.tolist(), strict=True)
         )
-        model = replace(self.engine.model, variables=replace(variables, reason=reason))
-        return replace(self.engine, model=model), self._curve()
+        joint = self.engine.joint.with_variables(replace(variables, reason=reason))
+        return replace(self.engine, joint=joint), self._curve()
 
     def _curve(self) -> FewChanges:
-        points, today = [], worst_charged(self.engine.today)
+        points, today = [], self.engine.today.charged
         best = today
         for cards, some in sorted(self.best.items()):
             # A set of fewer cards is one of more cards too.

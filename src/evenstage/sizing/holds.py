@@ -10,26 +10,38 @@ from evenstage.sizing.results import StageHold
 from evenstage.timing.search import slowest_paths
 
 if TYPE_CHECKING:
+    from evenstage.netlist.devices import IntArray
     from evenstage.sizing.engine import Continuous, Engine
+    from evenstage.sizing.joint import Corner
     from evenstage.sizing.results import Hold
-    from evenstage.timing.sweep import Timing
+    from evenstage.sizing.timed import Timed
 
 _AT_BOUND = 1e-4
 """Relative distance to a bound below which a size counts as held by it."""
 
 
-def stage_holds(engine: Engine, answer: Continuous, after: Timing) -> tuple[StageHold, ...]:
-    """Return one hold per stage of the slowest path after the resizing."""
+def stage_holds(engine: Engine, answer: Continuous, block: Timed) -> tuple[StageHold, ...]:
+    """Return one hold per stage of the slowest path over all corners after the resizing."""
+    after = block.corners[block.limiting]
     circuit, graph = after.circuit, after.graph
-    gates = [int(circuit.arcs.gate[graph.arc[arc]]) for arc in next(slowest_paths(after))]
+    found = [int(graph.arc[arc]) for arc in next(slowest_paths(after))]
     return tuple(
-        StageHold(instance=circuit.gate_name(gate), hold=_hold(engine, answer, gate))
-        for gate in gates
+        StageHold(
+            instance=circuit.gate_name(int(circuit.arcs.gate[arc])),
+            hold=_hold(
+                engine,
+                answer,
+                int(circuit.arcs.gate[arc]),
+                rising=bool(circuit.arcs.rising[arc]),
+            ),
+        )
+        for arc in found
     )
 
 
-def _hold(engine: Engine, answer: Continuous, gate: int) -> Hold:
-    size = int(engine.model.variables.partition.of_gate[gate])
+def _hold(engine: Engine, answer: Continuous, gate: int, *, rising: bool) -> Hold:
+    """Return what holds the side of a gate that makes an edge."""
+    size = int(engine.variables.partition.of_gate[gate, int(rising)])
     if not answer.active[size]:
         return "fixed"
     if answer.sizes[size] < answer.lower[size] * (1 + _AT_BOUND):
@@ -43,13 +55,23 @@ def _hold(engine: Engine, answer: Continuous, gate: int) -> Hold:
 
 def _on_full_input(engine: Engine, answer: Continuous, gate: int) -> bool:
     """Tell whether a gate loads an input whose ceiling is used up."""
-    nets, pins = engine.limits.ceiling_net, engine.model.circuit.pins
-    full = nets[answer.full[: len(nets)]]
-    return bool(np.isin(pins.net[pins.gate == gate], full).any())
+    pins = engine.model.circuit.pins
+    mine = pins.net[pins.gate == gate]
+    return any(
+        bool(np.isin(mine, _full_inputs(corner, answer)).any()) for corner in engine.corners
+    )
+
+
+def _full_inputs(corner: Corner, answer: Continuous) -> IntArray:
+    nets = corner.limits.ceiling_net
+    return nets[answer.full[corner.rows][: len(nets)]]
 
 
 def _makes_slowest_edge(engine: Engine, answer: Continuous, gate: int) -> bool:
     """Tell whether the transition limit of one of a gate's arcs is used up."""
-    row = engine.model.transition_row(answer.limits)
-    mine = row[(engine.model.circuit.arcs.gate == gate) & (row >= 0)]
-    return bool(answer.full[mine].any())
+    mine = engine.model.circuit.arcs.gate == gate
+    for corner, limits in zip(engine.corners, answer.limits, strict=True):
+        row = corner.model.transition_row(limits)
+        if answer.full[corner.rows][row[mine & (row >= 0)]].any():
+            return True
+    return False

@@ -9,10 +9,14 @@ import numpy as np
 from evenstage.timing.sweep import end_offsets
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from evenstage.circuit.network import BoolArray
-    from evenstage.netlist.devices import FloatArray
+    from evenstage.netlist.devices import FloatArray, IntArray
+    from evenstage.sizing.joint import Joint
     from evenstage.sizing.model import Limits, Model
     from evenstage.sizing.solution import Solution
+    from evenstage.sizing.timed import Timed
     from evenstage.timing.sweep import Timing
 
 #: Share of the unit flow above which a size counts as on a limiting path.
@@ -27,29 +31,42 @@ def worst_charged(timing: Timing) -> float:
     return float((timing.end_charged_arrival + offset).max())
 
 
-def limiting(model: Model, solution: Solution, share: float = ON_LIMITING_PATH) -> BoolArray:
-    """Tell which sizes carry flow: those of gates on limiting paths."""
-    graph = model.graph
-    flow = solution.flow[len(solution.flow) - len(graph.arc) :]
-    gates = model.circuit.arcs.gates_along(graph.arc[flow > share])
-    found = np.zeros(len(model.variables), bool)
-    found[model.variables.partition.of_gate[gates]] = True
+def limiting(joint: Joint, solution: Solution, share: float = ON_LIMITING_PATH) -> BoolArray:
+    """Tell which sizes carry flow: those of gates on limiting paths, in any corner."""
+    found = np.zeros(len(joint.variables), bool)
+    for model, flow in zip(joint.models, joint.flows(solution), strict=True):
+        found |= _sizes_along(model, model.graph.arc[flow > share])
     return found
 
 
-def on_slowest_path(model: Model, timing: Timing) -> BoolArray:
-    """Tell which sizes lie on today's slowest paths, by arrival and by charged delay."""
-    found = np.zeros(len(model.variables), bool)
-    for arrival, delay in (
-        (timing.arrival, timing.delay),
-        (timing.charged_arrival, timing.charged),
-    ):
-        found[_sizes_on_path(model, arrival, delay)] = True
+def on_slowest_path(joint: Joint, block: Timed) -> BoolArray:
+    """Tell which sizes lie on the slowest paths over all corners, by arrival and by charged delay.
+
+    Parameters
+    ----------
+    joint : Joint
+    block : Timed
+        As drawn.
+    """
+    found = np.zeros(len(joint.variables), bool)
+    late, charged = block.lateness, block.charged
+    for model, timing in zip(joint.models, block.corners, strict=True):
+        if timing.lateness.max() >= late:
+            found |= _sizes_on_path(model, timing.arrival, timing.delay)
+        if worst_charged(timing) >= charged:
+            found |= _sizes_on_path(model, timing.charged_arrival, timing.charged)
     return found
 
 
-def slower_than(model: Model, timing: Timing, delay: float) -> BoolArray:
-    """Tell which sizes lie today on paths whose charged delay exceeds one (s)."""
+def slower_than(joint: Joint, block: Timed, delay: float) -> BoolArray:
+    """Tell which sizes lie, in any corner, on paths whose charged delay exceeds one (s)."""
+    found = np.zeros(len(joint.variables), bool)
+    for model, timing in zip(joint.models, block.corners, strict=True):
+        found |= _slower_than(model, timing, delay)
+    return found
+
+
+def _slower_than(model: Model, timing: Timing, delay: float) -> BoolArray:
     graph = model.graph
     rest = np.full(len(graph), -np.inf)
     rest[graph.end] = end_offsets(graph) + timing.end_charged_wire
@@ -57,14 +74,18 @@ def slower_than(model: Model, timing: Timing, delay: float) -> BoolArray:
         later = rest[graph.target[some]] + timing.charged[some]
         np.maximum.at(rest, graph.source[some], later)
     through = timing.charged_arrival[graph.source] + timing.charged + rest[graph.target]
-    gates = model.circuit.arcs.gates_along(graph.arc[through > delay * (1 + AGREES)])
-    found = np.zeros(len(model.variables), bool)
-    found[model.variables.partition.of_gate[gates]] = True
+    return _sizes_along(model, graph.arc[through > delay * (1 + AGREES)])
+
+
+def beyond_limits(joint: Joint, limits: Sequence[Limits], block: Timed) -> BoolArray:
+    """Tell which sizes load an input over its ceiling, or make too slow an edge, in any corner."""
+    found = np.zeros(len(joint.variables), bool)
+    for model, some, timing in zip(joint.models, limits, block.corners, strict=True):
+        found |= _beyond_limits(model, some, timing)
     return found
 
 
-def beyond_limits(model: Model, limits: Limits, timing: Timing) -> BoolArray:
-    """Tell which sizes load an input over its ceiling, or make too slow an edge, today."""
+def _beyond_limits(model: Model, limits: Limits, timing: Timing) -> BoolArray:
     circuit, parts = model.circuit, model.variables.partition
     over = limits.ceiling_net[circuit.net_cap[limits.ceiling_net] > limits.ceiling * (1 + 1e-9)]
     gates = circuit.pins.gate[np.isin(circuit.pins.net, over)]
@@ -76,7 +97,14 @@ def beyond_limits(model: Model, limits: Limits, timing: Timing) -> BoolArray:
     return found
 
 
-def _sizes_on_path(model: Model, arrival: FloatArray, delay: FloatArray) -> list[int]:
+def _sizes_along(model: Model, arcs: IntArray) -> BoolArray:
+    """Tell which sizes some arcs of a circuit run through."""
+    found = np.zeros(len(model.variables), bool)
+    found[model.variables.partition.of_gate[model.circuit.arcs.gates_along(arcs)]] = True
+    return found
+
+
+def _sizes_on_path(model: Model, arrival: FloatArray, delay: FloatArray) -> BoolArray:
     """Return the sizes along the path that makes the latest arrival under some arc delays."""
     graph = model.graph
     node = int(graph.end[int(arrival[graph.end].argmax())])
@@ -87,6 +115,4 @@ def _sizes_on_path(model: Model, arrival: FloatArray, delay: FloatArray) -> list
         arc = int(some[int((arrival[graph.source[some]] + delay[some]).argmax())])
         found.append(arc)
         node = int(graph.source[arc])
-    gates = model.circuit.arcs.gates_along(graph.arc[found])
-    sizes: list[int] = model.variables.partition.of_gate[gates].tolist()
-    return sizes
+    return _sizes_along(model, graph.arc[found])

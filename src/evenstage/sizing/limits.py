@@ -20,9 +20,12 @@ from evenstage.sizing.wishes import Original
 from evenstage.timing.endpoints import block_inputs
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.devices import FloatArray
+    from evenstage.sizing.timed import Timed
     from evenstage.sizing.variables import Variables
     from evenstage.timing.sweep import Timing
 
@@ -79,8 +82,12 @@ def limits_of(timing: Timing, brief: Brief, original: Original, free: Variables)
     )
 
 
-def broken_today(timing: Timing, limits: Limits) -> bool:
-    """Tell whether the block as drawn is above an input ceiling or makes too slow an edge."""
+def broken_today(block: Timed, limits: Sequence[Limits]) -> bool:
+    """Tell whether the block as drawn breaks, in any corner, an input ceiling or its transition."""
+    return any(_broken(one, some) for one, some in zip(block.corners, limits, strict=True))
+
+
+def _broken(timing: Timing, limits: Limits) -> bool:
     over = timing.circuit.net_cap[limits.ceiling_net] > limits.ceiling * (1 + _ROOM)
     return bool(over.any()) or (limits.strict and timing.worst_transition > limits.transition)
 

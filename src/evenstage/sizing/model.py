@@ -139,6 +139,12 @@ class Model:
             limits=count,
         )
 
+    @property
+    def arcs(self) -> int:
+        """Number of the programme's arcs; the graph's are the last of them."""
+        driven = int((self.graph.start_drive > 0).sum())
+        return driven + len(self._wires.ends) + len(self.graph.arc)
+
     def _delays(self, driven: IntArray) -> Monomials:
         """Return the delays of the programme's arcs.
 
@@ -202,7 +208,12 @@ class Model:
             elmore.plus[kept],
             elmore.minus[kept],
         )
-        return _monomials([ceilings, transitions], n), len(nets) + int((number >= 0).sum())
+        return _monomials([ceilings, transitions], n), self.limit_count(limits)
+
+    def limit_count(self, limits: Limits) -> int:
+        """Return how many rows the limits take: input ceilings, then transitions."""
+        limited = np.isfinite(self.elmore_limit(limits))
+        return len(limits.ceiling_net) + int(limited.sum())
 
     def transition_row(self, limits: Limits) -> IntArray:
         """Return the row of the limit on each arc's transition, -1 for none, shape (arcs,)."""

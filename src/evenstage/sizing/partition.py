@@ -31,8 +31,8 @@ class Partition:
 
     Parameters
     ----------
-    of_gate : IntArray, shape (gates,)
-        Size of each gate.
+    of_gate : IntArray, shape (gates, 2)
+        Size of each gate's n transistors, and of its p transistors: one unless they are apart.
     of_device : IntArray, shape (devices,)
         Size of each device; -1 outside recognised gates.
     handle : IntArray, shape (sizes,)
@@ -51,6 +51,18 @@ class Partition:
 
     def __len__(self) -> int:
         return len(self.handle)
+
+    @cached_property
+    def side(self) -> IntArray:
+        """Which column of ``of_gate`` names each size: 1 where it is of p transistors alone."""
+        side = np.ones(len(self), np.int32)
+        side[self.of_gate[:, 0]] = 0
+        return side
+
+    @property
+    def is_apart(self) -> bool:
+        """Whether some gate's pull-up has a size of its own."""
+        return bool(self.side.any())
 
     @cached_property
     def first_device(self) -> IntArray:
@@ -100,7 +112,7 @@ def partition(circuit: Circuit, brief: Brief | None = None) -> Partition:
     slot_of_device = np.full(len(inside), -1, np.int32)
     slot_of_device[inside] = index
     return Partition(
-        of_gate=of_gate,
+        of_gate=np.stack([of_gate, of_gate], axis=1),
         of_device=np.append(of_gate, -1)[circuit.gate_of_device].astype(np.int32),
         handle=handle,
         slots=tuple(

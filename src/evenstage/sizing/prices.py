@@ -71,8 +71,10 @@ class _Prices:
         """Give each limit with its name and its price."""
         yield from self._inputs()
         yield from self._widths()
-        nets = len(self.answer.limits.ceiling_net)
-        yield "transition", "", float(self.proof.limit_prices[nets:].sum())
+        yield "transition", "", sum(
+            float(self.proof.limit_prices[corner.rows][len(corner.limits.ceiling_net) :].sum())
+            for corner in self.engine.corners
+        )
         if self.engine.wishes.width is not None and not self.on_spend:
             yield "budget", "", self.proof.spend_price * self.proof.spend
 
@@ -85,19 +87,31 @@ class _Prices:
         return slope + proof.spend_price * q.spend * proof.sizes
 
     def _inputs(self) -> Iterator[tuple[PricedLimit, str, float]]:
-        nets = self.answer.limits.ceiling_net
+        """Give each input with its price over all corners: its ceiling is let out in each."""
         names = self.engine.model.circuit.devices.net_names
-        limit, n = self.problem.limit, len(self.slope)
-        share = limit.values(np.log(self.proof.sizes))
-        variables = self.engine.model.variables
+        variables = self.engine.variables
         room = variables.free & (self.proof.sizes < variables.upper * (1 - _AT_BOUND))
         held = np.where(room & (self.answer.lower < self.answer.upper), -self.slope, 0.0)
+        share = self.problem.limit.values(np.log(self.proof.sizes))
         full = self.answer.full if self.on_spend else self._full()
-        for row, net in enumerate(nets.tolist()):
-            mine = np.flatnonzero((limit.row == row) & (limit.plus < n))
-            wanted = held[limit.plus[mine]] / np.maximum(share[mine], 1e-9)
-            forced = float(wanted.max(initial=0.0)) if full[row] else 0.0
-            yield "input", names[net], float(self.proof.limit_prices[row]) + forced
+        total: dict[int, tuple[float, float]] = {}
+        for corner in self.engine.corners:
+            for row, net in enumerate(corner.limits.ceiling_net.tolist(), corner.rows.start):
+                price, forced = total.get(net, (0.0, 0.0))
+                price += float(self.proof.limit_prices[row])
+                if full[row]:
+                    # One corner's ceiling forces the sizes; those of others only repeat it.
+                    forced = max(forced, self._forced(row, held, share))
+                total[net] = price, forced
+        for net, (price, forced) in total.items():
+            yield "input", names[net], price + forced
+
+    def _forced(self, row: int, held: FloatArray, share: FloatArray) -> float:
+        """Return what the sizes that a limit without room holds would pay for it, s."""
+        limit, n = self.problem.limit, len(self.slope)
+        mine = np.flatnonzero((limit.row == row) & (limit.plus < n))
+        wanted = held[limit.plus[mine]] / np.maximum(share[mine], 1e-9)
+        return float(wanted.max(initial=0.0))
 
     def _full(self) -> BoolArray:
         """Return which limits the fastest answer uses up."""
@@ -107,7 +121,7 @@ class _Prices:
 
     def _widths(self) -> Iterator[tuple[PricedLimit, str, float]]:
         """Give the bounds of sizes, and the sizes that must stay as they are."""
-        variables, x = self.engine.model.variables, self.proof.sizes
+        variables, x = self.engine.variables, self.proof.sizes
         circuit, parts = self.engine.model.circuit, variables.partition
         gate = circuit.gate_of_device[
             parts.first_device[np.unique(parts.of_slot, return_index=True)[1]]

@@ -9,59 +9,59 @@ import numpy as np
 
 from evenstage.brief import Brief
 from evenstage.errors import Notice
-from evenstage.netlist.rewriting.handles import width_handles
 from evenstage.netlist.rewriting.sized_block import Slot
 from evenstage.netlist.rewriting.widths import WidthPlan
 from evenstage.progress import tell
-from evenstage.sizing.block_engine import engine_of
+from evenstage.sizing.block import Block
 from evenstage.sizing.changes import Writing
 from evenstage.sizing.copies import shared_sizes
 from evenstage.sizing.few import choose_few
 from evenstage.sizing.holds import stage_holds
 from evenstage.sizing.limits import kept_for_later
-from evenstage.sizing.partition import partition
 from evenstage.sizing.prices import limit_prices
-from evenstage.sizing.results import Sizing
+from evenstage.sizing.results import SizedCorners, Sizing
 from evenstage.sizing.rounding import Drawn, Rounding
-from evenstage.sizing.variables import variables
 from evenstage.sizing.verdict import refuse_broken, worth_writing
-from evenstage.sizing.wishes import Original, Wishes
+from evenstage.sizing.wishes import Wishes
 from evenstage.timing.analyse import report
+from evenstage.timing.corners import merged
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator
+    from collections.abc import Iterator, Sequence
 
     from evenstage.netlist.rewriting.handles import WidthHandles
-    from evenstage.sizing.engine import Continuous, Engine
-    from evenstage.sizing.partition import Partition
+    from evenstage.sizing.engine import Continuous
     from evenstage.sizing.results import FewChanges
     from evenstage.sizing.solution import Solution
+    from evenstage.sizing.wishes import Original
+    from evenstage.timing.corners import Corners
     from evenstage.timing.results import Analysis
-    from evenstage.timing.sweep import Timing
 
 _ROUNDS = 6
 """How often sizes may be tied to keep to the copies a leaf may have."""
 
 
 def resize(
-    analysis: Analysis,
+    analysis: Analysis | Corners,
     brief: Brief | None = None,
     wishes: Wishes | None = None,
-    original: Original | None = None,
+    original: Original | Sequence[Original] | None = None,
 ) -> Sizing:
     """Find new widths for an analysed block.
 
     Parameters
     ----------
-    analysis : Analysis
-        From `evenstage.timing.analyse.analyse`.
+    analysis : Analysis or Corners
+        From `evenstage.timing.analyse.analyse`, or of several processes from
+        `evenstage.timing.corners.merged`: then one set of widths is found that serves all of them,
+        the worst corner as well as it can.
     brief : Brief, optional
         Fixed cards, same sizes, leaves and limits.
     wishes : Wishes, optional
         What is asked for; default: the fastest, with the least width within 1 % of it.
-    original : Original, optional
-        Limits an earlier run recorded; they count instead of today's.
+    original : Original or sequence of Original, optional
+        Limits an earlier run recorded, for each corner; they count instead of today's.
 
     Returns
     -------
@@ -77,7 +77,7 @@ def resize(
     SettingsError
         Where a pattern of the brief fits nothing.
     ValueError
-        Where the analysis carries no timing.
+        Where the analysis carries no timing, or its corners are not of one block.
 
     Examples
     --------
@@ -94,36 +94,28 @@ def resize(
     >>> widest.instance, widest.card, f"{widest.factor:.2f}"
     ('xp5', 'mn', '3.08')
     """
-    if analysis.timing is None:
-        message = "an analysis without its timing cannot be resized"
-        raise ValueError(message)
-    job = _Job(
-        analysis, analysis.timing, brief or Brief(), wishes or Wishes(), original or Original()
-    )
-    return job.run()
+    return _Job(Block.of(analysis, brief or Brief(), wishes or Wishes(), original)).run()
 
 
 @dataclass(frozen=True)
 class _Job:
     """One resizing."""
 
-    analysis: Analysis
-    timing: Timing
-    brief: Brief
-    wishes: Wishes
-    original: Original
+    block: Block
 
     def run(self) -> Sizing:
         """Do it."""
         tell("sizing")
         rounding, drawn, few, loosest = self._rounded()
-        writing = Writing(self.timing, self.analysis.paths[0], rounding)
+        today = rounding.engine.today
+        slowest = self.block.analyses[today.limiting].paths[0]
+        writing = Writing(today.corners[today.limiting], slowest, rounding)
         plan = writing.plan(drawn.slot_width)
         written = rounding.drawn_at(writing.width(plan))
-        if not worth_writing(self.timing, written, rounding.engine):
+        if not worth_writing(written, rounding.engine):
             plan = WidthPlan(edits=(), written=(), refused=plan.refused)
-            written = Drawn(rounding.drawn, self.timing, rounding.engine.cost_drawn)
-        refuse_broken(written.timing, rounding.engine)
+            written = Drawn(rounding.drawn, today, rounding.engine.cost_drawn)
+        refuse_broken(written.timed, rounding.engine)
         return replace(self._sizing(writing, plan, written, loosest), few=few)
 
     def _rounded(self) -> tuple[Rounding, Drawn, FewChanges | None, Continuous]:
@@ -132,13 +124,13 @@ class _Job:
         Last is the answer whose bounds count: the first, in which no copies share a size yet,
         unless the bounds are about the cards chosen last.
         """
-        circuit, copies = self.timing.circuit, self.brief.copies_per_leaf
-        parts, first = partition(circuit, self.brief), None
+        block, copies = self.block, self.block.brief.copies_per_leaf
+        parts, first = block.partition(), None
         for _ in range(_ROUNDS):
-            handles = width_handles(circuit.devices, circuit.process, parts.variable_of, copies)
-            engine, few = self._engine(parts, handles), None
-            if self.wishes.changes is not None:
-                engine, few = choose_few(engine, self.wishes.changes)
+            handles = block.handles(parts)
+            engine, few = block.engine(parts, handles), None
+            if block.wishes.changes is not None:
+                engine, few = choose_few(engine, block.wishes.changes)
             rounding = Rounding(engine, engine.run(), handles)
             first = first or rounding.answer
             drawn = rounding.run()
@@ -148,35 +140,36 @@ class _Job:
             parts = parts.tied(label)
         return rounding, drawn, few, rounding.answer if few or first is None else first
 
-    def _engine(self, parts: Partition, handles: WidthHandles) -> Engine:
-        free = variables(self.timing.circuit, self.brief, parts, handles, self.original.smallest)
-        return engine_of(self.timing, self.brief, self.wishes, self.original, free)
-
     def _sizing(
         self, writing: Writing, plan: WidthPlan, written: Drawn, loosest: Continuous
     ) -> Sizing:
-        rounding, circuit = writing.rounding, self.timing.circuit
+        rounding, circuit, wishes = writing.rounding, self.block.circuit, self.block.wishes
         answer, engine = rounding.answer, rounding.engine
-        on_spend = self.wishes.delay is not None
+        on_spend = wishes.delay is not None
         proof, best = ((one.solution if on_spend else one.fastest) for one in (answer, loosest))
         shared = _sharing_loss(best, proof, on_spend=on_spend)
-        free = engine.model.variables
+        free, limiting = engine.variables, written.timed.limiting
+        before = self.block.analyses
+        after = [
+            report(timing, len(old.paths), self.block.brief)
+            for timing, old in zip(written.timed.corners, before, strict=True)
+        ]
         return Sizing(
-            before=self.analysis,
-            after=report(written.timing, len(self.analysis.paths), self.brief),
-            goal=self.wishes.words,
+            before=before[limiting],
+            after=after[limiting],
+            goal=wishes.words,
             bound=best.bound,
-            bound_on=self.wishes.spend if on_spend else "delay",
+            bound_on=wishes.spend if on_spend else "delay",
             gap=best.gap + shared,
             sharing_loss=shared,
             rounding_loss=max(0.0, written.cost / answer.solution.spend - 1),
             least_delay=loosest.least_delay,
             total_width_before=circuit.total_width,
-            total_width_after=written.timing.circuit.total_width,
+            total_width_after=written.timed.corners[0].circuit.total_width,
             free_cards=int(free.free.sum()),
             fixed_cards=int((~free.free).sum()),
             changes=writing.changes(plan),
-            holds=stage_holds(engine, answer, written.timing),
+            holds=stage_holds(engine, answer, written.timed),
             prices=limit_prices(engine, answer),
             already_done=False,
             notices=(
@@ -186,13 +179,23 @@ class _Job:
                 *_left(plan),
                 *_off_grid(plan, rounding.handles),
             ),
-            kept=kept_for_later(circuit, engine.limits, self.original, engine.cost_today),
+            kept=tuple(
+                kept_for_later(circuit, limits, original, engine.cost_today)
+                for limits, original in zip(engine.limits, self.block.originals, strict=True)
+            ),
             edits=plan.edits,
+            corners=None
+            if len(after) == 1
+            else SizedCorners(
+                before=merged(before),
+                after=merged(after),
+                shares=tuple(engine.joint.shares(answer.solution)),
+            ),
         )
 
     def _refused(self, plan: WidthPlan) -> list[Notice]:
         """Return a notice for every width that cannot be written after all."""
-        netlist = self.timing.circuit.devices.netlist
+        netlist = self.block.circuit.devices.netlist
         return [
             Notice("width-not-written", reason, card.span.place, (card.name,))
             for card, reason in ((netlist.card(wish.card), reason) for wish, reason in plan.refused)

@@ -13,7 +13,8 @@ if TYPE_CHECKING:
     from evenstage.logic.same import StructureCheck
     from evenstage.netlist.rewriting.edits import Edit
     from evenstage.sizing.wishes import Original
-    from evenstage.timing.results import Analysis
+    from evenstage.timing.corners import Corners
+    from evenstage.timing.results import Analysis, Path
 
 Hold = Literal["", "lower", "upper", "fixed", "ceiling", "transition", "same size"]
 
@@ -181,13 +182,32 @@ class LimitPrice:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class SizedCorners:
+    """A block sized for several corners at once: how it does in each.
+
+    Parameters
+    ----------
+    before, after : Corners
+        With the old and with the written widths.
+    shares : tuple of float
+        Which part of what limits the optimum lies in each corner, from the multipliers; they add up
+        to 1. Empty where nothing was optimised.
+    """
+
+    before: Corners
+    after: Corners
+    shares: tuple[float, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Sizing(Tabular):
     """New widths and what they buy.
 
     Parameters
     ----------
     before, after : Analysis
-        The whole block analysed with the old and with the written widths.
+        The whole block analysed with the old and with the written widths; of several corners in the
+        one that limits it afterwards.
     goal : str
         What was asked, in words: ``fastest``, ``least width for 450 ps``, ...
     bound : float
@@ -212,8 +232,8 @@ class Sizing(Tabular):
     already_done : bool
         The netlist was written by an earlier run with these wishes; nothing changes.
     notices : tuple of Notice
-    kept : Original, optional
-        The limits the sizes were found within, for later runs to keep.
+    kept : tuple of Original
+        The limits the sizes were found within, for later runs to keep, corner by corner.
     edits : tuple of Edit
         What writes the new widths into the text.
     structure : StructureCheck, optional
@@ -230,6 +250,9 @@ class Sizing(Tabular):
     sharing_loss : float
         The part of the gap that is there because copies of a leaf share sizes; the bound is that of
         sizes of their own.
+    corners : SizedCorners, optional
+        Every corner, where the block was sized for several. Delays that are asked for, bounded or
+        told of a change are then the worst over corners.
     """
 
     before: Analysis
@@ -248,7 +271,7 @@ class Sizing(Tabular):
     holds: tuple[StageHold, ...]
     already_done: bool
     notices: tuple[Notice, ...]
-    kept: Original | None = None
+    kept: tuple[Original, ...] = ()
     edits: tuple[Edit, ...] = field(default=(), repr=False)
     structure: StructureCheck | None = None
     trade_off: TradeOff | None = None
@@ -256,11 +279,22 @@ class Sizing(Tabular):
     prices: tuple[LimitPrice, ...] = ()
     sharing_loss: float = 0.0
     asked_delay: float | None = None
+    corners: SizedCorners | None = None
+
+    @property
+    def slowest_before(self) -> Path:
+        """The slowest path before, over all corners."""
+        return self.corners.before.paths[0] if self.corners else self.before.paths[0]
+
+    @property
+    def block_notices(self) -> tuple[Notice, ...]:
+        """What was assumed of the block, in any corner."""
+        return self.corners.before.notices if self.corners else self.before.notices
 
     @property
     def headline(self) -> str:
         """What the widths buy, in one line."""
-        old, new = self.before.paths[0].delay, self.after.paths[0].delay
+        old, new = self.slowest_before.delay, self.after.paths[0].delay
         growth = self.total_width_after / self.total_width_before - 1
         return (
             f"{self.goal}: {engineering(old, 's')} before, {engineering(new, 's')} after; "

@@ -10,21 +10,23 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from evenstage.sizing.limiting import worst_charged
+from evenstage.circuit.arcs import NO_OWNER, ranges
 from evenstage.sizing.problem import totals
-from evenstage.timing.sweep import sweep
-from evenstage.timing.trials import tried
+from evenstage.sizing.size_trials import tried_sizes
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from evenstage.circuit.network import BoolArray
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.netlist.rewriting.handles import WidthHandle, WidthHandles
     from evenstage.sizing.engine import Continuous, Engine
+    from evenstage.sizing.joint import Corner
+    from evenstage.sizing.timed import Timed
     from evenstage.timing.sweep import Timing
     from evenstage.timing.trials import Trials
 
@@ -50,13 +52,14 @@ class Drawn:
     ----------
     slot_width : FloatArray, m, shape (slots,)
         Of one copy, all fingers together.
-    timing : Timing
+    timed : Timed
+        In every corner.
     cost : float
         In the unit of the engine's spend.
     """
 
     slot_width: FloatArray
-    timing: Timing
+    timed: Timed
     cost: float
 
 
@@ -95,12 +98,12 @@ class Rounding:
     @cached_property
     def drawn(self) -> FloatArray:
         """Today's width of each slot, m, shape (slots,)."""
-        parts = self.engine.model.variables.partition
+        parts = self.engine.variables.partition
         return self.engine.model.circuit.devices.width[parts.first_device]
 
     @cached_property
     def _slots_of_size(self) -> list[IntArray]:
-        parts = self.engine.model.variables.partition
+        parts = self.engine.variables.partition
         order = np.argsort(parts.of_slot, kind="stable").astype(np.int32)
         cuts = np.searchsorted(parts.of_slot[order], np.arange(1, len(parts)))
         return np.split(order, cuts)
@@ -108,7 +111,7 @@ class Rounding:
     @cached_property
     def _cost_per_width(self) -> FloatArray:
         """Cost of one metre on each slot, shape (slots,)."""
-        variables = self.engine.model.variables
+        variables = self.engine.variables
         parts, block = variables.partition, self.engine.model.circuit.devices
         mine = parts.slot_of_device >= 0
         total = np.bincount(
@@ -123,13 +126,12 @@ class Rounding:
 
     def factors(self, width: FloatArray) -> FloatArray:
         """Return each device's width factor for some slot widths, shape (devices,)."""
-        parts = self.engine.model.variables.partition
+        parts = self.engine.variables.partition
         return np.append(width / self.drawn, 1.0)[parts.slot_of_device]
 
-    def timed(self, width: FloatArray) -> Timing:
+    def timed(self, width: FloatArray) -> Timed:
         """Time the block with some slot widths."""
-        model = self.engine.model
-        return sweep(model.circuit.resized(self.factors(width)), model.graph, model.unit)
+        return self.engine.joint.timed(self.factors(width))
 
     def cost(self, width: FloatArray) -> float:
         """Return the whole cost of some slot widths."""
@@ -165,7 +167,7 @@ class Rounding:
 
     def _drawable(self, slot: int, wanted: float) -> float:
         """Return the nearest width a slot can say inside the bounds of its size."""
-        size = int(self.engine.model.variables.partition.of_slot[slot])
+        size = int(self.engine.variables.partition.of_slot[slot])
         low = self.drawn[slot] * self.answer.lower[size] * (1 - _ROOM)
         high = self.drawn[slot] * self.answer.upper[size] * (1 + _ROOM)
         handle, step = self._handle(slot), self._step(slot)
@@ -178,7 +180,7 @@ class Rounding:
         return float(self.drawn[slot])
 
     def _handle(self, slot: int) -> WidthHandle:
-        return self.handles[self.engine.model.variables.partition.slots[slot]]
+        return self.handles[self.engine.variables.partition.slots[slot]]
 
     def _step(self, slot: int) -> float:
         """Return the grid of a slot, m, all fingers together."""
@@ -205,54 +207,55 @@ class Rounding:
             self._draw(moved, size, width * ratio)
         return moved
 
-    def _excess(self, timing: Timing) -> float:
+    def _excess(self, block: Timed) -> float:
         """Return by what share the worst deadline or transition limit is broken; <= 0: none."""
-        circuit = timing.circuit
-        use = (circuit.arcs.elmore(circuit.net_cap) / self._elmore_limit).max()
         if self.engine.wishes.delay is None:
-            late = worst_charged(timing) / self.answer.deadline
+            late = block.charged / self.answer.deadline
         else:
-            late = timing.lateness.max() / self.engine.wishes.delay
-        return max(float(late), float(use), timing.worst_transition / self._slowest) - 1 - _ROOM
+            late = block.lateness / self.engine.wishes.delay
+        for corner, timing in zip(self._corners, block.corners, strict=True):
+            elmore = timing.circuit.arcs.elmore(timing.circuit.net_cap)
+            use = float((elmore / corner.elmore_limit).max())
+            late = max(late, use, timing.worst_transition / corner.slowest)
+        return late - 1 - _ROOM
 
-    def _excesses(self, trials: Trials) -> FloatArray:
-        """Return the same for trials, shape (trials,)."""
+    def _excesses(self, trials: Trials, corner: _Kept) -> FloatArray:
+        """Return the same for trials in one corner, shape (trials,)."""
         if self.engine.wishes.delay is None:
             late = trials.charged_lateness / self.answer.deadline
         else:
             late = trials.lateness / self.engine.wishes.delay
-        edges = np.maximum(trials.elmore_use, trials.worst_transition / self._slowest)
+        edges = np.maximum(trials.elmore_use, trials.worst_transition / corner.slowest)
         excess: FloatArray = np.maximum(late, edges) - 1 - _ROOM
         return excess
 
     @cached_property
-    def _elmore_limit(self) -> FloatArray:
-        """Transition limit of each arc in the programme, s; its bound holds for what is drawn."""
-        return self.engine.model.elmore_limit(self.answer.limits)
+    def _corners(self) -> list[_Kept]:
+        """What must be kept in each corner; the programme's bound holds for what is drawn."""
+        engine = self.engine
+        limits, today = self.answer.limits, engine.today.corners
+        return [
+            _Kept(corner, corner.model.elmore_limit(some), _slowest(corner, before))
+            for corner, some, before in zip(engine.corners, limits, today, strict=True)
+        ]
 
-    @cached_property
-    def _slowest(self) -> float:
-        """The slowest edge any gate may make, s."""
-        limits = self.engine.limits
-        if limits.strict:
-            return limits.transition
-        # A process without shapes has no transitions, so none is too slow.
-        return max(limits.transition, self.engine.today.worst_transition) or np.inf
-
-    def _over_ceiling(self, timing: Timing) -> IntArray:
-        """Return the nets whose input capacitance exceeds its ceiling."""
-        limits = self.engine.limits
-        cap = timing.circuit.net_cap[limits.ceiling_net]
-        return limits.ceiling_net[cap > limits.ceiling * (1 + _ROOM)]
+    def _over_ceiling(self, block: Timed) -> IntArray:
+        """Return the nets whose input capacitance exceeds its ceiling in some corner."""
+        over = [
+            nets[one.over(timing.circuit.net_cap[nets])]
+            for one, timing in zip(self._corners, block.corners, strict=True)
+            for nets in (one.corner.limits.ceiling_net,)
+        ]
+        return np.unique(np.concatenate(over))
 
     def _keep_ceilings(self, width: FloatArray) -> FloatArray:
         """Step down the sizes on inputs over their ceiling until none is."""
         model = self.engine.model
-        pins = model.circuit.pins
+        pins, parts = model.circuit.pins, model.variables.partition
         while len(over := self._over_ceiling(self.timed(width))):
             gates = pins.gate[np.isin(pins.net, over)]
             lowered = width
-            for size in np.unique(model.variables.partition.of_gate[gates]).tolist():
+            for size in np.unique(parts.of_gate[gates]).tolist():
                 if self.answer.active[size]:
                     lowered = self._stepped(lowered, [size], -1)
             if (lowered == width).all():
@@ -263,13 +266,13 @@ class Rounding:
     def _repaired(self, width: FloatArray) -> FloatArray:
         """Step sizes until every deadline is met or no step helps."""
         for _ in range(_REPAIRS):
-            timing = self.timed(width)
-            excess = self._excess(timing)
+            block = self.timed(width)
+            excess = self._excess(block)
             if excess <= 0:
                 return width
-            sizes = self._candidates(timing)
+            sizes = self._candidates(block)
             moves = [self._stepped(width, sizes, direction) for direction in (1, -1)]
-            worth = np.stack([self._worth(timing, excess, sizes, width, to) for to in moves])
+            worth = np.stack([self._worth(block, excess, sizes, width, to) for to in moves])
             if not (worth > 0).any():
                 return width
             place, way = divmod(int(worth.T.argmax()), len(moves))
@@ -280,37 +283,39 @@ class Rounding:
 
     def _worth(
         self,
-        timing: Timing,
+        block: Timed,
         excess: float,
         sizes: Sequence[int],
         width: FloatArray,
         moved: FloatArray,
     ) -> FloatArray:
         """Return what each size gains per cost if it alone moves, shape (sizes,)."""
-        model, limits = self.engine.model, self.engine.limits
-        place, parts = _places(sizes, len(model.variables)), model.variables.partition
-        of_slot, of_gate = place[parts.of_slot], place[parts.of_gate]
-        trials = tried(
-            timing,
-            model.circuit.resized(self.factors(moved)),
-            of_gate,
-            nets=limits.ceiling_net,
-            elmore_limit=self._elmore_limit,
+        parts = self.engine.variables.partition
+        of_slot = _places(sizes, len(parts))[parts.of_slot]
+        every = tried_sizes(
+            block,
+            self.factors(moved) / self.factors(width),
+            parts,
+            np.array(sizes, np.int32),
+            [(one.corner.limits.ceiling_net, one.elmore_limit) for one in self._corners],
         )
         mine = of_slot >= 0
         change = (self._cost_per_width * (moved - width))[mine]
         spent = totals(of_slot[mine], change, len(sizes))
         still = totals(of_slot[mine], np.abs(moved - width)[mine], len(sizes)) == 0
-        over = (trials.net_cap > (limits.ceiling * (1 + _ROOM))[:, None]).any(axis=0)
-        worth = (excess - self._excesses(trials)) / np.maximum(spent, 1e-9 * self.cost(width))
+        pairs = list(zip(every, self._corners, strict=True))
+        over = np.any([corner.over(trials.net_cap).any(axis=0) for trials, corner in pairs], axis=0)
+        left = np.max([self._excesses(trials, corner) for trials, corner in pairs], axis=0)
+        worth = (excess - left) / np.maximum(spent, 1e-9 * self.cost(width))
         return np.where(still | over, 0.0, worth)
 
-    def _candidates(self, timing: Timing) -> list[int]:
+    def _candidates(self, block: Timed) -> list[int]:
         """Return the active sizes nearest to the slowest paths, at most `_CANDIDATES`."""
-        graph, variables = timing.graph, self.engine.model.variables
-        order = np.argsort(_slack(timing)[graph.target], kind="stable")
-        gates = timing.circuit.arcs.gates_along(graph.arc[order])
-        sizes = dict.fromkeys(variables.partition.of_gate[gates].tolist())
+        near = [_gates_by_slack(timing, block.lateness) for timing in block.corners]
+        slack, gates = (np.concatenate(column) for column in zip(*near, strict=True))
+        order = np.argsort(slack, kind="stable")
+        of_gate = self.engine.variables.partition.of_gate
+        sizes = dict.fromkeys(of_gate[gates[order]].ravel().tolist())
         return [size for size in sizes if self.answer.active[size]][:_CANDIDATES]
 
     def _recovered(self, width: FloatArray) -> FloatArray:
@@ -319,7 +324,7 @@ class Rounding:
             return width
         active = np.flatnonzero(self.answer.active)
         cost = np.bincount(
-            self.engine.model.variables.partition.of_slot,
+            self.engine.variables.partition.of_slot,
             self._cost_per_width * width,
             len(self.answer.active),
         )[active]
@@ -333,6 +338,36 @@ class Rounding:
         return width
 
 
+class _Kept(NamedTuple):
+    """What must be kept in one corner.
+
+    Parameters
+    ----------
+    corner : Corner
+    elmore_limit : FloatArray, s, shape (circuit arcs,)
+        Transition limit of each arc in the programme.
+    slowest : float
+        The slowest edge any gate may make, s.
+    """
+
+    corner: Corner
+    elmore_limit: FloatArray
+    slowest: float
+
+    def over(self, net_cap: FloatArray) -> BoolArray:
+        """Tell which inputs exceed their ceilings, shape (inputs, ...)."""
+        limits = self.corner.limits
+        ceiling = limits.ceiling * (1 + _ROOM)
+        return net_cap > ceiling.reshape(-1, *(1 for _ in net_cap.shape[1:]))
+
+
+def _slowest(corner: Corner, today: Timing) -> float:
+    if corner.limits.strict:
+        return corner.limits.transition
+    # A process without shapes has no transitions, so none is too slow.
+    return max(corner.limits.transition, today.worst_transition) or np.inf
+
+
 def _places(sizes: Sequence[int], count: int) -> IntArray:
     """Return the place of each of ``count`` sizes in a list, -1 for none, shape (count,)."""
     place = np.full(count, -1, np.int32)
@@ -340,11 +375,26 @@ def _places(sizes: Sequence[int], count: int) -> IntArray:
     return place
 
 
-def _slack(timing: Timing) -> FloatArray:
-    """Return how much later each node's arrival could be before a path end is later, s."""
+def _gates_by_slack(timing: Timing, limit: float) -> tuple[FloatArray, IntArray]:
+    """Return the gates along all arcs, each with the slack of its arc, s.
+
+    ``limit`` is how late a path end may be, s.
+    """
+    graph, charges = timing.graph, timing.circuit.arcs.charges
+    head = charges.head
+    count = head[graph.arc + 1] - head[graph.arc]
+    owner = charges.owner[ranges(head[graph.arc], count)]
+    slack = np.repeat(_slack(timing, limit)[graph.target], count)
+    return slack[owner != NO_OWNER], owner[owner != NO_OWNER]
+
+
+def _slack(timing: Timing, limit: float) -> FloatArray:
+    """Return how much later each node's arrival could be before a path end is later, s.
+
+    ``limit`` is how late a path end may be, s.
+    """
     graph = timing.graph
     latest = np.full(len(graph), np.inf)
-    limit = timing.lateness.max()
     np.minimum.at(latest, graph.end, limit - (timing.lateness - timing.arrival[graph.end]))
     for begin, end in reversed(list(zip([0, *graph.level_ends], graph.level_ends, strict=False))):
         some = slice(int(begin), int(end))

@@ -14,20 +14,17 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 
 from evenstage.brief import Brief
-from evenstage.netlist.rewriting.handles import width_handles
-from evenstage.sizing.block_engine import engine_of
-from evenstage.sizing.limiting import worst_charged
-from evenstage.sizing.partition import partition
+from evenstage.sizing.block import Block
 from evenstage.sizing.results import TradeOff, TradeOffPoint
-from evenstage.sizing.variables import variables
 from evenstage.sizing.wishes import Original, Wishes
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Iterator
+    from collections.abc import Iterable, Iterator, Sequence
 
     from evenstage.netlist.devices import FloatArray
     from evenstage.sizing.engine import Engine
     from evenstage.sizing.solution import Solution
+    from evenstage.timing.corners import Corners
     from evenstage.timing.results import Analysis
 
 #: Points of a curve.
@@ -41,22 +38,22 @@ _FARTHEST: Final = 0.05
 
 
 def trade_off(
-    analysis: Analysis,
+    analysis: Analysis | Corners,
     brief: Brief | None = None,
     wishes: Wishes | None = None,
-    original: Original | None = None,
+    original: Original | Sequence[Original] | None = None,
 ) -> TradeOff:
     """Find the least spend for a dozen delays from today's to the least possible.
 
     Parameters
     ----------
-    analysis : Analysis
-        From `evenstage.timing.analyse.analyse`.
+    analysis : Analysis or Corners
+        From `evenstage.timing.analyse.analyse`; in corners the worst one counts.
     brief : Brief, optional
     wishes : Wishes, optional
         What may move and what is kept small; a delay or a width wished for does not count.
-    original : Original, optional
-        Limits an earlier run recorded; they count instead of today's.
+    original : Original or sequence of Original, optional
+        Limits an earlier run recorded, for each corner; they count instead of today's.
 
     Raises
     ------
@@ -67,17 +64,10 @@ def trade_off(
     ValueError
         Where the analysis carries no timing.
     """
-    if analysis.timing is None:
-        message = "an analysis without its timing has no trade-off"
-        raise ValueError(message)
-    timing, brief, original = analysis.timing, brief or Brief(), original or Original()
     wishes = replace(wishes or Wishes(), delay=None, width=None)
-    parts = partition(timing.circuit, brief)
-    handles = width_handles(
-        timing.circuit.devices, timing.circuit.process, parts.variable_of, brief.copies_per_leaf
-    )
-    free = variables(timing.circuit, brief, parts, handles, original.smallest)
-    engine = engine_of(timing, brief, wishes, original, free)
+    block = Block.of(analysis, brief or Brief(), wishes, original)
+    parts = block.partition()
+    engine = block.engine(parts, block.handles(parts))
     points = tuple(_different(_points(engine)))
     delay, spend = (
         np.array(values)
@@ -85,7 +75,7 @@ def trade_off(
     )
     return TradeOff(
         spend=wishes.spend,
-        today_charged_delay=worst_charged(timing),
+        today_charged_delay=engine.today.charged,
         today_spend=engine.cost_drawn,
         points=points,
         knee=knee(delay, spend),
@@ -96,12 +86,12 @@ def _points(engine: Engine) -> Iterator[TradeOffPoint]:
     """Give the points, from the slowest to the fastest."""
     fastest, lower, upper = engine.least_delay()
     sizes = np.ones(len(lower))
-    for deadline in deadlines(worst_charged(engine.today), fastest.delay).tolist():
+    for deadline in deadlines(engine.today.charged, fastest.delay).tolist():
         answer = engine.within(deadline, fastest, lower, upper, start=sizes)
         sizes, proof = answer.sizes, answer.solution
         yield TradeOffPoint(
             charged_delay=proof.delay,
-            delay=float(engine.timed(sizes).lateness.max()),
+            delay=engine.timed(sizes).lateness,
             spend=proof.spend,
             bound=proof.bound,
             gap=proof.gap,

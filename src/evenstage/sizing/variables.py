@@ -13,7 +13,7 @@ from evenstage.sizing.named import devices_named, gates_named
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
@@ -65,6 +65,7 @@ def variables(
     parts: Partition,
     handles: WidthHandles,
     smallest: Mapping[str, float] | None = None,
+    corners: Sequence[Circuit] = (),
 ) -> Variables:
     """Find the bounds of all sizes.
 
@@ -78,6 +79,8 @@ def variables(
         Which widths the text lets change.
     smallest : Mapping of str to float, optional
         Smallest width per model, m, where an earlier run recorded it.
+    corners : sequence of Circuit
+        The same block in further processes, whose width limits count too.
 
     Raises
     ------
@@ -89,9 +92,14 @@ def variables(
     reason = [""] * len(parts)
     for slot, why in handles.cannot_change().items():
         reason[parts.variable_of[slot]] = why
-    for gate in gates_named(circuit, brief.fixed if brief else ()):
-        reason[parts.of_gate[gate]] = "fixed by the brief"
-    low, high = _width_limits(circuit, brief, parts, handles, smallest or {})
+    fixed = parts.of_gate[gates_named(circuit, brief.fixed if brief else ())]
+    for size in np.unique(fixed).tolist():
+        reason[size] = "fixed by the brief"
+    found = [
+        _width_limits(one, brief, parts, handles, smallest or {}) for one in (circuit, *corners)
+    ]
+    low = np.max([least for least, _ in found], axis=0)
+    high = np.min([most for _, most in found], axis=0)
     width, of = circuit.devices.width, parts.of_device
     mine = of >= 0
     lower, upper = np.zeros(len(parts)), np.full(len(parts), GROWTH_MAX)
