@@ -151,6 +151,120 @@ class TestAnalyse:
         assert z["delays_s"]["slow p"] == z["delay_s"] > z["delays_s"]["even"]
 
 
+def resized(netlist: Path, question: flow.Question, margin: float = 0.0) -> flow.Sizing:
+    return flow.resize(netlist, question, flow.Wishes(margin=margin, scope="block"))
+
+
+class TestResize:
+    def test_one_set_of_widths_serves_every_corner(
+        self, netlist: Path, question: flow.Question, tmp_path: Path
+    ) -> None:
+        """Each corner of the written netlist, analysed alone, is as the report says."""
+        output = tmp_path / "out.sp"
+        wishes = flow.Wishes(margin=0, scope="block")
+        found = flow.resize(netlist, question, wishes, output)
+        assert found.corners is not None
+        assert found.changes
+        again = corners(output, question)
+        for told, read in zip(found.corners.after.analyses, again.analyses, strict=True):
+            assert told.paths[0].delay == pytest.approx(read.paths[0].delay, rel=1e-9)
+            assert told.worst_transition == pytest.approx(read.worst_transition, rel=1e-9)
+        assert found.after.paths[0] == found.corners.after.paths[0]
+        assert sum(found.corners.shares) == pytest.approx(1)
+
+    def test_the_worst_corner_is_no_faster_than_it_can_be_alone(
+        self, netlist: Path, processes: list[Path], question: flow.Question
+    ) -> None:
+        joint = resized(netlist, question)
+        alone = [resized(netlist, flow.Question(process=path)).bound for path in processes]
+        assert joint.bound >= max(alone) * (1 - 1e-6)
+        assert joint.gap < 1e-6
+
+    def test_a_wished_delay_holds_in_every_corner(
+        self, netlist: Path, question: flow.Question
+    ) -> None:
+        today = corners(netlist, question).paths[0].delay
+        found = flow.resize(netlist, question, flow.Wishes(delay=0.95 * today))
+        assert found.corners is not None
+        assert all(one.paths[0].delay <= 0.95 * today for one in found.corners.after.analyses)
+        assert found.corners.after.paths[0].delay > 0.9 * today
+
+    def test_no_input_and_no_edge_gets_worse_in_any_corner(
+        self, netlist: Path, question: flow.Question
+    ) -> None:
+        found = resized(netlist, question)
+        assert found.corners is not None
+        both = zip(found.corners.before.analyses, found.corners.after.analyses, strict=True)
+        for before, after in both:
+            assert after.worst_transition <= before.worst_transition * (1 + 1e-6)
+            allowed = dict(before.input_caps)
+            assert all(cap <= allowed[net] * (1 + 1e-6) for net, cap in after.input_caps)
+
+    def test_again_there_is_nothing_to_do(
+        self, netlist: Path, question: flow.Question, tmp_path: Path
+    ) -> None:
+        first, second = tmp_path / "first.sp", tmp_path / "second.sp"
+        flow.resize(netlist, question, None, first)
+        found = flow.resize(first, question, None, second)
+        assert found.already_done
+        assert second.read_bytes() == first.read_bytes()
+        assert found.corners is not None
+        assert "limits" not in flow.text(found).split("How good")[0]
+
+    def test_later_runs_keep_what_each_corner_kept(
+        self, netlist: Path, processes: list[Path], question: flow.Question, tmp_path: Path
+    ) -> None:
+        """In another order, or in one corner alone, the limits as first drawn count."""
+        first = tmp_path / "first.sp"
+        flow.resize(netlist, question, flow.Wishes(margin=0.3), first)
+        turned = flow.Question(process=processes[2], corners=(processes[0], processes[1]))
+        kept = {
+            one.yardstick.process: limits
+            for one, limits in zip(
+                corners(netlist, question).analyses, resized(netlist, question).kept, strict=True
+            )
+        }
+        later = resized(first, turned)
+        assert later.corners is not None
+        for name, limits in zip(later.corners.after.names, later.kept, strict=True):
+            assert limits.ceilings == pytest.approx(kept[name].ceilings)
+            assert limits.transition == pytest.approx(kept[name].transition)
+        (alone,) = resized(first, flow.Question(process=processes[1])).kept
+        assert alone.transition == pytest.approx(kept["slow p"].transition)
+
+    def test_text_and_json_and_page(self, netlist: Path, question: flow.Question) -> None:
+        found = resized(netlist, question)
+        text = flow.text(found, unicode=False)
+        assert "The slowest path over 3 corners falls from " in text
+        assert "in slow n before and after" in text
+        document = json.loads(flow.json(found))
+        assert [one["after"]["process"]["name"] for one in document["corners"]] == list(CORNERS)
+        latest = max(one["after"]["delay_s"] for one in document["corners"])
+        assert document["after"]["paths"][0]["delay_s"] == latest
+        page = flow.html(found, flow.origin("0", [], []))
+        assert "The latest path in each corner" in page
+
+    def test_a_curve_and_few_changes_count_the_worst_corner(
+        self, netlist: Path, question: flow.Question
+    ) -> None:
+        found = flow.resize(netlist, question, flow.Wishes(changes=1, margin=0), curve=True)
+        assert found.corners is not None
+        assert found.trade_off is not None
+        assert found.few is not None
+        today = max(end.charged_delay for one in found.corners.before.analyses for end in one.ends)
+        assert found.trade_off.today_charged_delay == pytest.approx(today)
+        assert found.few.today_charged_delay == pytest.approx(today)
+        assert len({change.instance for change in found.changes}) <= 1
+
+    def test_corners_that_draw_widths_differently_are_refused(
+        self, netlist: Path, processes: list[Path], question: flow.Question
+    ) -> None:
+        text = processes[1].read_text().replace("slope", 'width_step = "5n"\nslope')
+        processes[1].write_text(text)
+        with pytest.raises(SettingsError, match="'even' and 'slow p' draw widths differently"):
+            resized(netlist, question)
+
+
 class TestOtherCommands:
     def test_diff(self, netlist: Path, question: flow.Question) -> None:
         after = netlist.with_name("after.sp")
@@ -166,7 +280,7 @@ class TestOtherCommands:
         delays = [one["after"]["delay_s"] for one in document["corners"]]
         assert max(delays) == document["after"]["paths"][0]["delay_s"]
 
-    @pytest.mark.parametrize("command", ["resize", "recognise"])
+    @pytest.mark.parametrize("command", ["recognise", "simulate"])
     def test_the_others_take_one(
         self,
         command: str,

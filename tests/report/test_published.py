@@ -121,7 +121,8 @@ def test_several_corners_keep_it(tmp_path: Path) -> None:
     slow.write_text(text.replace('name = "', 'name = "slow ', 1), "utf-8")
     corners = flow.Question(process=asked.process, corners=(slow,), brief=asked.brief)
     netlist = SAMPLES / "row_decoder" / "netlist.sp"
-    for result in (flow.analyse(netlist, corners), flow.diff(netlist, netlist, corners)):
+    for command in (flow.analyse, flow.resize, COMMANDS["difference"]):
+        result = command(netlist, corners)
         document = of(result)
         assert len(document["corners"]) == 2
         assert mistakes(document, closed(PUBLISHED)) == []

@@ -11,7 +11,14 @@ import pytest
 from evenstage.errors import Notice
 from evenstage.report.block_text import CAUTION
 from evenstage.report.terminal import analysis_report, difference_report, sizing_report
-from evenstage.sizing.results import FewChanges, FewChangesPoint, TradeOff, TradeOffPoint
+from evenstage.sizing.results import (
+    FewChanges,
+    FewChangesPoint,
+    SizedCorners,
+    TradeOff,
+    TradeOffPoint,
+)
+from evenstage.timing.corners import merged
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
@@ -79,9 +86,37 @@ class TestGolden:
         golden("few_changes", text[begin : text.index("The slowest path", begin)])
         assert "with only the chosen cards changed (5 at most) no sizes" in one_line(text)
 
+    def test_corners(self, sizing: Sizing, golden: Callable[[str, str], None]) -> None:
+        text = sizing_report(in_corners(sizing))
+        golden("sized_corners", text[: text.index("What more room")])
+        for section in ("The slowest path in slow", "The block in slow"):
+            assert section in text
+
     def test_unicode(self, sizing: Sizing, golden: Callable[[str, str], None]) -> None:
         text = analysis_report(sizing.before, unicode=True) + sizing_report(sizing, unicode=True)
         golden("unicode", text)
+
+
+def in_corners(sizing: Sizing) -> Sizing:
+    """Return a sizing as the slow corner of two; in the other all is faster."""
+    before, after = (
+        merged(
+            [
+                _named(sizing.before if when else sizing.after, name, speed)
+                for name, speed in (("slow", 1.0), ("fast", 0.7))
+            ]
+        )
+        for when in (True, False)
+    )
+    corners = SizedCorners(before=before, after=after, shares=(0.99, 0.01))
+    return replace(sizing, before=before.analyses[0], after=after.analyses[0], corners=corners)
+
+
+def _named(analysis: Analysis, name: str, speed: float) -> Analysis:
+    """Return an analysis in a corner of some name, with its first path faster."""
+    path = replace(analysis.paths[0], corner=name, delay=speed * analysis.paths[0].delay)
+    yardstick = replace(analysis.yardstick, process=name)
+    return replace(analysis, yardstick=yardstick, paths=(path,), ends=analysis.ends[1:])
 
 
 class TestAnyReport:

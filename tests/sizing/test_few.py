@@ -16,6 +16,7 @@ from evenstage.sizing.block_engine import engine_of
 from evenstage.sizing.few import cards_of_sizes, choose_few
 from evenstage.sizing.partition import partition
 from evenstage.sizing.resize import resize
+from evenstage.sizing.timed import Timed
 from evenstage.sizing.variables import variables
 from evenstage.sizing.wishes import Original, Wishes
 from evenstage.timing.analyse import analyse
@@ -38,7 +39,7 @@ def engine(text: str) -> Engine:
     parts = partition(circuit, Brief())
     handles = width_handles(circuit.devices, circuit.process, parts.variable_of, 1)
     free = variables(circuit, Brief(), parts, handles)
-    return engine_of(timing, Brief(), Wishes(margin=0), Original(), free)
+    return engine_of(Timed((timing,)), Brief(), Wishes(margin=0), (Original(),), free)
 
 
 def best_of_all(some: Engine, count: int) -> float:

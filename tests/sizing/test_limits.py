@@ -12,6 +12,7 @@ from evenstage.brief import Brief, InputBrief
 from evenstage.errors import InfeasibleError, SettingsError
 from evenstage.pattern import Pattern
 from evenstage.sizing.limits import broken_today, kept_for_later, limits_of, spend_of
+from evenstage.sizing.timed import Timed
 from evenstage.sizing.wishes import Original
 from evenstage.timing.analyse import time
 from support.blocks import circuit_of, inverter, nand, plain_process
@@ -75,7 +76,12 @@ class TestLimitsOf:
             limits(brief)
 
     def test_a_ceiling_below_today_may_stand_where_a_card_can_change(self) -> None:
-        assert ceilings(limits(most(3.5e-15, "a")))["a"] == 3.5e-15
+        assert (
+            ceilings(
+                limits(most(3.5e-15, "a")),
+            )["a"]
+            == 3.5e-15
+        )
 
     def test_a_pattern_that_fits_no_input(self) -> None:
         with pytest.raises(SettingsError, match="no input fits 'm'"):
@@ -84,17 +90,19 @@ class TestLimitsOf:
 
 class TestBrokenToday:
     def test_today_breaks_nothing_of_its_own(self) -> None:
-        assert not broken_today(TIMING, limits())
+        assert not broken_today(Timed((TIMING,)), (limits(),))
 
     def test_a_ceiling(self) -> None:
-        assert broken_today(TIMING, limits(most(3.5e-15, "a")))
+        assert broken_today(Timed((TIMING,)), (limits(most(3.5e-15, "a")),))
 
     def test_an_edge(self) -> None:
         slow = TIMING.worst_transition
-        assert broken_today(TIMING, limits(Brief(transition_max=0.9 * slow)))
-        assert not broken_today(TIMING, limits(Brief(transition_max=1.1 * slow)))
+        assert broken_today(Timed((TIMING,)), (limits(Brief(transition_max=0.9 * slow)),))
+        assert not broken_today(Timed((TIMING,)), (limits(Brief(transition_max=1.1 * slow)),))
         # A recorded limit is no wish: what is beyond it today may stay.
-        assert not broken_today(TIMING, limits(original=Original(transition=0.9 * slow)))
+        assert not broken_today(
+            Timed((TIMING,)), (limits(original=Original(transition=0.9 * slow)),)
+        )
 
 
 class TestSpendOf:

@@ -32,7 +32,8 @@ def circuit(definitions: str, calls: list[str], ports: str) -> Circuit:
 def together(block: Circuit, parts: Partition) -> set[frozenset[str]]:
     """Return which gates share a size, by name."""
     names = np.array([block.gate_name(gate) for gate in range(len(block))])
-    return {frozenset(names[parts.of_gate == size].tolist()) for size in np.unique(parts.of_gate)}
+    of_gate = parts.of_gate[:, 0]
+    return {frozenset(names[of_gate == size].tolist()) for size in np.unique(of_gate)}
 
 
 def pats(*names: str) -> tuple[Pattern, ...]:
@@ -107,7 +108,7 @@ class TestPartition:
         parts = partition(block)
         inside = block.gate_of_device >= 0
         assert ((parts.slot_of_device >= 0) == inside).all()
-        assert (parts.of_device[inside] == parts.of_gate[block.gate_of_device[inside]]).all()
+        assert (parts.of_device[inside] == parts.of_gate[block.gate_of_device[inside], 0]).all()
         assert (parts.of_slot[parts.slot_of_device[inside]] == parts.of_device[inside]).all()
         assert (parts.slot_of_device[parts.first_device] == np.arange(len(parts.slots))).all()
         assert list(parts.variable_of.values()) == parts.of_slot.tolist()

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
+from evenstage.circuit.recognise import in_process
 from evenstage.netlist.rewriting.handles import width_handles
+from evenstage.sizing.joint import Joint
 from evenstage.sizing.model import Model
 from evenstage.sizing.partition import partition
 from evenstage.sizing.variables import variables
@@ -12,13 +15,14 @@ from evenstage.timing.analyse import time
 from support.blocks import circuit_of
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
     from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.process.process import Process
     from evenstage.sizing.partition import Partition
+    from evenstage.sizing.problem import Problem
     from evenstage.sizing.variables import Variables
 
 
@@ -40,3 +44,21 @@ def model_of(text: str, process: Process | None = None, brief: Brief | None = No
     circuit = circuit_of(text, process, brief)
     timing = time(circuit, brief)
     return Model(circuit, timing.graph, timing.unit, variables_of(circuit, brief))
+
+
+def in_corners(text: str, processes: Sequence[Process], brief: Brief | None = None) -> Joint:
+    """Return the models of a netlist's sizes in several processes."""
+    circuit = circuit_of(text, processes[0], brief)
+    free = variables_of(circuit, brief)
+    timings = [time(in_process(circuit, process, brief), brief) for process in processes]
+    return Joint(tuple(Model(one.circuit, one.graph, one.unit, free) for one in timings))
+
+
+def in_picoseconds(problem: Problem) -> Problem:
+    """Return the same question with numbers that a general solver's tolerances suit."""
+    return replace(
+        problem,
+        start_arrival=problem.start_arrival * 1e12,
+        delay=replace(problem.delay, coefficient=problem.delay.coefficient * 1e12),
+        end_offset=problem.end_offset * 1e12,
+    )

@@ -7,18 +7,19 @@ from typing import TYPE_CHECKING, Literal
 
 from evenstage.errors import EvenstageError, SettingsError
 from evenstage.flow.files import refuse_existing
-from evenstage.flow.loading import Block, Question, load, one_process
+from evenstage.flow.loading import Block, Question, in_corners
 from evenstage.logic.same import StructureCheck, compare_structure
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading.read import read
 from evenstage.netlist.rewriting.edits import rewrite
 from evenstage.netlist.rewriting.output import lost_includes, output_files, write_files
-from evenstage.netlist.rewriting.record import Record, digest, record_edit
+from evenstage.netlist.rewriting.record import CornerRecord, Record, digest, record_edit
 from evenstage.progress import tell
 from evenstage.sizing.resize import resize as find_widths
-from evenstage.sizing.results import Sizing
+from evenstage.sizing.results import SizedCorners, Sizing
 from evenstage.sizing.trade_off import trade_off
 from evenstage.sizing.wishes import Original, Wishes
+from evenstage.timing.corners import Corners, merged
 from evenstage.timing.vectors import false_path_notices
 
 if TYPE_CHECKING:
@@ -27,6 +28,7 @@ if TYPE_CHECKING:
 
     from evenstage.brief import Brief
     from evenstage.errors import Notice
+    from evenstage.timing.results import Analysis
 
 
 def resize(
@@ -41,6 +43,8 @@ def resize(
 ) -> Sizing:
     """Find new widths and, where an output is named, write the netlist with them.
 
+    In several corners one set of widths is found for all of them.
+
     With ``curve`` the least spend for a dozen delays is found too. ``spend`` says what is kept
     small; default: what the brief says.
 
@@ -51,22 +55,23 @@ def resize(
     OutputError
         Where the output exists (without ``force``) or cannot be written.
     """
-    one_process(question, "resize")
     refuse_existing(output, force=force)
-    block = load(path, question)
+    blocks = in_corners(path, question)
+    analyses = [one.analysis for one in blocks]
+    block, analysis = blocks[0], merged(analyses) if question.corners else analyses[0]
     wishes = _with_aims(wishes or Wishes(), block.brief)
     wishes = replace(wishes, spend=spend or wishes.spend)
     record = block.record
     asked = _asked(question, wishes)
-    original = _original(record, wishes.spend)
+    original = _originals(record, analyses, wishes.spend)
     if record is not None and record.key == digest(block.netlist, asked):
-        sizing = _already_done(block, record, wishes)
+        sizing = _already_done(analysis, record, wishes)
     else:
-        sizing = find_widths(block.analysis, block.brief, wishes, original)
-    told = false_path_notices(block.analysis)
+        sizing = find_widths(analysis, block.brief, wishes, original)
+    told = false_path_notices(sizing.before)
     sizing = replace(sizing, notices=(*sizing.notices, *told), asked_delay=wishes.delay)
     if curve:
-        curved = trade_off(block.analysis, block.brief, wishes, original)
+        curved = trade_off(analysis, block.brief, wishes, original)
         sizing = replace(sizing, trade_off=curved)
     if output is None:
         return sizing
@@ -124,20 +129,33 @@ def _with_aims(wishes: Wishes, brief: Brief) -> Wishes:
 
 def _asked(question: Question, wishes: Wishes) -> str:
     """Return all that decides an answer besides the netlist, as text."""
-    files = [path.read_bytes().hex() if path else "" for path in (question.process, question.brief)]
+    paths = (question.process, question.brief, *question.corners)
+    files = [path.read_bytes().hex() if path else "" for path in paths]
     return repr((wishes, question.top, question.start, question.end, files))
 
 
-def _original(record: Record | None, spend: str) -> Original:
-    """Return the limits an earlier run recorded."""
+def _originals(
+    record: Record | None, analyses: Sequence[Analysis], spend: str
+) -> tuple[Original, ...]:
+    """Return the limits an earlier run recorded, for each corner by its name.
+
+    Of a corner it did not know only what all share is recorded; what the first corner keeps is what
+    a run in one corner kept.
+    """
     if record is None:
-        return Original()
-    return Original(
-        ceilings=record.ceilings,
-        transition=record.transition,
-        smallest=record.smallest,
-        spend=record.total_width if spend == "width" else record.switched_cap,
-    )
+        return tuple(Original() for _ in analyses)
+    found = []
+    for number, one in enumerate(analyses):
+        kept = record.corners.get(one.yardstick.process) or (None if number else record)
+        found.append(
+            Original(
+                ceilings=kept.ceilings if kept else {},
+                transition=kept.transition if kept else None,
+                smallest=record.smallest,
+                spend=record.total_width if spend == "width" else record.switched_cap,
+            )
+        )
+    return tuple(found)
 
 
 def _texts(block: Block, sizing: Sizing, record: Record | None, asked: str) -> dict[Path, bytes]:
@@ -151,28 +169,46 @@ def _texts(block: Block, sizing: Sizing, record: Record | None, asked: str) -> d
 
 def _record(sizing: Sizing, earlier: Record | None, key: str) -> Record:
     """Return what later runs are told; what was first drawn stays what it was."""
-    before, kept = sizing.before, sizing.kept or Original()
-    first = earlier or before
+    corners = sizing.corners.before.analyses if sizing.corners else (sizing.before,)
+    first, kept = earlier or corners[0], sizing.kept[0]
     return Record(
         key=key,
-        delay_before=earlier.delay_before if earlier else before.paths[0].delay,
+        delay_before=earlier.delay_before if earlier else sizing.slowest_before.delay,
         delay_after=sizing.after.paths[0].delay,
         least_delay=sizing.least_delay,
         total_width=first.total_width,
         switched_cap=first.switched_cap,
-        transition=kept.transition or before.worst_transition,
+        transition=kept.transition or corners[0].worst_transition,
         bound=sizing.bound,
         bound_on=sizing.bound_on,
         gap=sizing.gap,
         rounding_loss=sizing.rounding_loss,
         ceilings=kept.ceilings,
         smallest=kept.smallest,
+        corners=_recorded_corners(sizing, corners, earlier),
     )
 
 
-def _already_done(block: Block, record: Record, wishes: Wishes) -> Sizing:
+def _recorded_corners(
+    sizing: Sizing, analyses: Sequence[Analysis], earlier: Record | None
+) -> dict[str, CornerRecord]:
+    """Return what must be kept in each corner, those of earlier runs too; none for one alone."""
+    known = dict(earlier.corners) if earlier else {}
+    if len(analyses) == 1 and not known:
+        return {}
+    mine = {
+        one.yardstick.process: CornerRecord(
+            transition=kept.transition or one.worst_transition, ceilings=kept.ceilings
+        )
+        for one, kept in zip(analyses, sizing.kept, strict=True)
+    }
+    return known | mine
+
+
+def _already_done(found: Analysis | Corners, record: Record, wishes: Wishes) -> Sizing:
     """Return the sizing of a netlist that an earlier run wrote with the same wishes."""
-    analysis = block.analysis
+    several = found if isinstance(found, Corners) else None
+    analysis = found.worst if isinstance(found, Corners) else found
     return Sizing(
         before=analysis,
         after=analysis,
@@ -190,4 +226,5 @@ def _already_done(block: Block, record: Record, wishes: Wishes) -> Sizing:
         holds=(),
         already_done=True,
         notices=(),
+        corners=SizedCorners(before=several, after=several) if several else None,
     )

@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from evenstage.logic.same import StructureCheck
     from evenstage.report.paper import Paper
     from evenstage.sizing.results import Sizing
-    from evenstage.timing.results import Analysis, PathEnd
+    from evenstage.timing.results import PathEnd
 
 #: What no sizes can do to a width or a capacitance, and the unit it is measured in.
 _WISHES: Final = {
@@ -71,9 +71,10 @@ def _bound(sizing: Sizing) -> str:
     required = {end.required for end in sizing.after.ends if end.required is not None}
     if sizing.bound_on == "delay" and len(required) > 1:
         latest = max(required)
-        return _bound_by_requirement(sizing.bound, _charged(sizing.after.ends, latest), latest)
+        reached = max(_charged(one.ends, latest) for one in sizing.every_after)
+        return _bound_by_requirement(sizing.bound, reached, latest)
     wish, unit = _WISHES[sizing.bound_on]
-    reached = _reached(sizing.after, sizing)
+    reached = _reached(sizing)
     scale = Scale.of([sizing.bound, reached], unit)
     least = f"; the fastest possible would be {engineering(sizing.least_delay, 's')}"
     return (
@@ -90,11 +91,15 @@ def _who(sizing: Sizing) -> str:
     return f"with only the chosen cards changed ({sizing.few.asked} at most) no sizes"
 
 
-def _reached(after: Analysis, sizing: Sizing) -> float:
-    """Return what the written sizes make of the figure that the bound is about."""
+def _reached(sizing: Sizing) -> float:
+    """Return what the written sizes make of the figure that the bound is about.
+
+    A delay is the worst over corners, a capacitance that of the first.
+    """
+    every = sizing.every_after
     if sizing.bound_on == "delay":
-        return worst_charged(after)
-    return sizing.total_width_after if sizing.bound_on == "width" else after.switched_cap
+        return max(map(worst_charged, every))
+    return sizing.total_width_after if sizing.bound_on == "width" else every[0].switched_cap
 
 
 def _charged(ends: Sequence[PathEnd], latest: float) -> float:

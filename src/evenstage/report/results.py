@@ -60,7 +60,7 @@ def json(result: Result, origin: Origin | None = None) -> str:
 def notices(result: Result) -> tuple[Notice, ...]:
     """Return everything a result has to say besides itself, each once."""
     if isinstance(result, Sizing):
-        some = (*result.before.notices, *result.notices)
+        some = (*result.block_notices, *result.notices)
     elif isinstance(result, Difference | CornersDifference):
         some = (*result.before.notices, *result.after.notices)
     elif isinstance(result, Simulation):

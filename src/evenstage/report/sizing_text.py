@@ -13,6 +13,7 @@ from evenstage.report.path_text import path_lines
 from evenstage.report.prices import price_lines
 from evenstage.report.quality_text import quality_lines
 from evenstage.report.scale import percent
+from evenstage.report.sized_corners import sized_corner_lines
 from evenstage.report.trade_off import trade_off_section
 from evenstage.report.words import (
     block_name,
@@ -64,6 +65,8 @@ def sizing_report(
     before, after = sizing.before, sizing.after
     lines = [*paper.paragraph(block_name(before)), ""]
     lines += paper.paragraph(sizing_answer(sizing))
+    if sizing.corners is not None:
+        lines += section("Corners", sized_corner_lines(paper, sizing.corners))
     lines += section("How good the widths are", quality_lines(paper, sizing))
     lines += section("What more room would buy", price_lines(paper, sizing))
     lines += section("Changes", _changes(paper, sizing))
@@ -73,26 +76,36 @@ def sizing_report(
         lines += section(*trade_off_section(paper, sizing.trade_off))
     lines += _stages(paper, sizing)
     block = total_lines(paper, before, after) if sizing.changes else block_lines(paper, before)
-    lines += section("The block", block)
+    lines += section(f"The block{_where(sizing)}", block)
     if notices:
-        lines += section("Notices", notice_lines(paper, (*sizing.notices, *before.notices)))
+        lines += section("Notices", notice_lines(paper, (*sizing.notices, *sizing.block_notices)))
     return finished(paper, lines)
 
 
 def sizing_answer(sizing: Sizing) -> str:
     """Return what to know first."""
     before, after = sizing.before, sizing.after
-    old, new = before.paths[0], after.paths[0]
+    old, new = sizing.slowest_before, after.paths[0]
     if not sizing.changes:
-        stays = f"The {rank(before)} path, {route(old)}, stays at {engineering(old.delay, 's')}."
-        return f"Nothing changes: {_why_nothing(sizing)}. {stays}"
+        stays = f"The {rank(before)} path, {route(old)}, stays at {engineering(old.delay, 's')}"
+        return f"Nothing changes: {_why_nothing(sizing)}. {stays}{_where(sizing)}."
     verb = "changes" if card_count(sizing.changes) == "1 card" else "change"
     width = percent(sizing.total_width_before, sizing.total_width_after)
     now = "The same path is" if same_route(old, new) else "Another path is now"
+    over = ""
+    if sizing.corners is not None:
+        over = f" over {counted(len(sizing.every_after), 'corner')}"
+        now = now if new.corner == old.corner else f"It was in {old.corner}. {now}"
     return (
-        f"The {rank(before)} path {moves(old.delay, new.delay)}; {card_count(sizing.changes)} "
-        f"{verb}; total width {width}. {now} the {rank(after)}: {route(new)}."
+        f"The {rank(before)} path{over} {moves(old.delay, new.delay)}; "
+        f"{card_count(sizing.changes)} {verb}; total width {width}. {now} the {rank(after)}: "
+        f"{route(new)}{_where(sizing)}."
     )
+
+
+def _where(sizing: Sizing) -> str:
+    """Return the corner that limits, where there are several."""
+    return "" if sizing.corners is None else f" in {sizing.after.yardstick.process}"
 
 
 def _why_nothing(sizing: Sizing) -> str:
@@ -122,16 +135,15 @@ def _changes(paper: Paper, sizing: Sizing) -> list[str]:
 def _stages(paper: Paper, sizing: Sizing) -> list[str]:
     """Return the slowest paths before and after, or the one path where nothing changes."""
     old, new = sizing.before.paths[0], sizing.after.paths[0]
+    path = f"The {rank(sizing.before)} path{_where(sizing)}"
     holds = {hold.instance: HOLDS[hold.hold] for hold in sizing.holds if hold.hold}
     if not sizing.changes:
         lines = path_lines(paper, new, branches=True)
         if holds:
             held = ", ".join(f"{instance} ({hold})" for instance, hold in holds.items())
             lines += ["", *labelled(paper, "held", held)]
-        return section(f"The {rank(sizing.before)} path", lines)
-    title = f"The {rank(sizing.before)} path before and after"
+        return section(path, lines)
+    title = f"{path} before and after"
     if not same_route(old, new):
-        title = (
-            f"The {rank(sizing.before)} path before and the one after, stages of one gate together"
-        )
+        title = f"{path} before and the one after, stages of one gate together"
     return section(title, pair_lines(paper, old, new, holds=holds))

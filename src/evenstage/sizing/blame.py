@@ -95,11 +95,11 @@ def _full(corner: Corner, held_up: BoolArray, full: BoolArray) -> tuple[list[str
     """Return the full inputs of sizes that hold an answer up in a corner, and if edges are full."""
     limits, circuit = corner.limits, corner.model.circuit
     nets, row = limits.ceiling_net, corner.model.transition_row(limits)
-    pins, gates = circuit.pins, held_up[corner.model.variables.partition.of_gate]
+    pins, of_gate = circuit.pins, corner.model.variables.partition.of_gate
     on_path = np.zeros(len(circuit.devices.net_names), bool)
-    on_path[pins.net[gates[pins.gate]]] = True
+    on_path[pins.net[held_up[of_gate[pins.gate]].any(axis=1)]] = True
     inputs = nets[full[: len(nets)] & on_path[nets]]
-    arcs = gates[circuit.arcs.gate] & (row >= 0) & full[row]
+    arcs = held_up[of_gate[circuit.arcs.gate]].any(axis=1) & (row >= 0) & full[row]
     return [circuit.devices.net_names[net] for net in inputs.tolist()], bool(arcs.any())
 
 

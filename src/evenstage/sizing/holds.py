@@ -57,9 +57,7 @@ def _on_full_input(engine: Engine, answer: Continuous, gate: int) -> bool:
     """Tell whether a gate loads an input whose ceiling is used up."""
     pins = engine.model.circuit.pins
     mine = pins.net[pins.gate == gate]
-    return any(
-        bool(np.isin(mine, _full_inputs(corner, answer)).any()) for corner in engine.corners
-    )
+    return any(bool(np.isin(mine, _full_inputs(corner, answer)).any()) for corner in engine.corners)
 
 
 def _full_inputs(corner: Corner, answer: Continuous) -> IntArray:

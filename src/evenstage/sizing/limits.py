@@ -66,7 +66,8 @@ def limits_of(timing: Timing, brief: Brief, original: Original, free: Variables)
         if some.capacitance_max is not None:
             ceiling[select(some.nets, names, "input")] = some.capacitance_max
     movable = np.zeros(len(circuit.devices.net_names), bool)
-    movable[circuit.pins.net[free.free[free.partition.of_gate[circuit.pins.gate]]]] = True
+    either = free.free[free.partition.of_gate[circuit.pins.gate]]
+    movable[circuit.pins.net[either.any(axis=1)]] = True
     stuck = np.flatnonzero((today > ceiling * (1 + _ROOM)) & ~movable[nets])
     if len(stuck):
         raise InfeasibleError(

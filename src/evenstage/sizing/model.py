@@ -3,7 +3,9 @@
 Every delay is the charged Elmore delay ``q (sum R C + own)`` of an arc. With ``x_g`` the size of a
 gate, its resistance is ``R / x_g``; the load on a net is linear, ``C = sum c_u x_u + c_0``; and the
 own delay of the gates is a sum of ``R c x_h / x_g`` (`evenstage.circuit.arcs`). Multiplied out
-these are the monomials of `evenstage.sizing.problem`.
+these are the monomials of `evenstage.sizing.problem`. Where a gate's pull-up has a size of its own
+each resistance goes with the side it is of, and each capacitance is a sum over both
+(`evenstage.sizing.sides`).
 """
 
 from __future__ import annotations
@@ -17,6 +19,7 @@ from scipy.sparse import coo_array, csr_array
 
 from evenstage.circuit.arcs import ranges
 from evenstage.sizing.problem import Monomials, Problem
+from evenstage.sizing.sides import Sides, sharing, sides_of
 from evenstage.sizing.wire_terms import wire_terms
 from evenstage.timing.sweep import end_offsets
 from evenstage.timing.yardstick import arc_charges
@@ -76,16 +79,30 @@ class Model:
     variables: Variables
 
     @cached_property
+    def _sides(self) -> Sides | None:
+        """Which side of each gate is what; None where all gates have one size."""
+        return sides_of(self.circuit) if self.variables.partition.is_apart else None
+
+    @cached_property
+    def _size(self) -> IntArray:
+        """Size of both sides of each gate, that of nobody last, shape (gates + 1, 2)."""
+        nobody = np.full((1, 2), len(self.variables))
+        return np.concatenate([self.variables.partition.of_gate, nobody]).astype(np.int32)
+
+    @cached_property
     def load(self) -> csr_array:
         """Load on each net as a linear form: F per unit of each size, the constant last."""
         circuit, n = self.circuit, len(self.variables)
         pins, nets = circuit.pins, len(circuit.devices.net_names)
-        everything = np.arange(nets)
-        rows = np.concatenate([pins.net, pins.net, everything])
+        everything, sides = np.arange(nets), self._sides
+        upper = np.zeros(len(pins.net)) if sides is None else sides.pin_cap
+        rows = np.concatenate([pins.net, pins.net, pins.net, everything])
         columns = np.concatenate(
-            [self.variables.partition.of_gate[pins.gate], np.full(len(pins.net) + nets, n)]
+            [*self._size[pins.gate].T, np.full(len(pins.net) + nets, n, np.int32)]
         )
-        values = np.concatenate([pins.cap.scaling, pins.cap.fixed, circuit.fixed_cap])
+        values = np.concatenate(
+            [pins.cap.scaling - upper, upper, pins.cap.fixed, circuit.fixed_cap]
+        )
         form = coo_array((values, (rows, columns)), shape=(nets, n + 1)).tocsr()
         form.sum_duplicates()
         form.eliminate_zeros()
@@ -94,19 +111,25 @@ class Model:
     @cached_property
     def elmore(self) -> Monomials:
         """Elmore delay of every circuit arc, s; row = circuit arc."""
-        arcs, n = self.circuit.arcs, len(self.variables)
-        size = np.append(self.variables.partition.of_gate, n).astype(np.int32)
-        charges, own, form = arcs.charges, arcs.own, self.load
+        arcs, n, size = self.circuit.arcs, len(self.variables), self._size
+        charges, own, form, sides = arcs.charges, arcs.own, self.load, self._sides
+        # Where all gates have one size both columns say the same.
+        of_charge, of_term = (0, 0) if sides is None else (sides.charge, sides.term)
         count = np.diff(form.indptr)[charges.net]
         entry = ranges(form.indptr[charges.net], count)
         charging = (
             np.repeat(charges.arc, count),
             np.repeat(charges.resistance, count) * form.data[entry],
             form.indices[entry],
-            np.repeat(size[charges.owner], count),
+            np.repeat(size[charges.owner, of_charge], count),
         )
-        staying = (own.arc, own.today, size[own.capacitance_owner], size[own.resistance_owner])
-        return _monomials([charging, staying], n)
+        through = size[own.resistance_owner, of_term]
+        upper = np.zeros(len(own.arc)) if sides is None else sides.term_delay
+        lower = (own.arc, own.today - upper, size[own.capacitance_owner, 0], through)
+        parts = [charging, lower]
+        if sides is not None:
+            parts.append((own.arc, upper, size[own.capacitance_owner, 1], through))
+        return _monomials(parts, n)
 
     def problem(
         self, lower: FloatArray, upper: FloatArray, spend: FloatArray, limits: Limits
@@ -174,10 +197,16 @@ class Model:
         )
         wires = self._wires
         constant = np.full(len(wires.row), len(self.variables), np.int32)
-        size = np.append(self.variables.partition.of_gate, len(self.variables)).astype(np.int32)
         row = np.where(wires.is_end, len(driven) + wires.row, shift + wires.row)
-        along = (row, wires.delay, size[wires.gate], constant)
-        return _monomials([drivers, arcs, along], len(self.variables))
+        along = [(row, wires.delay, self._size[wires.gate, 0], constant)]
+        if self._sides is not None and len(row):
+            doubled = wire_terms(self._sides.doubled, self.graph, self.unit).delay
+            upper = sharing(wires.delay, doubled)
+            along = [
+                (row, wires.delay - upper, self._size[wires.gate, 0], constant),
+                (row, upper, self._size[wires.gate, 1], constant),
+            ]
+        return _monomials([drivers, arcs, *along], len(self.variables))
 
     @cached_property
     def _wires(self) -> WireTerms:

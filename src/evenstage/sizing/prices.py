@@ -71,9 +71,13 @@ class _Prices:
         """Give each limit with its name and its price."""
         yield from self._inputs()
         yield from self._widths()
-        yield "transition", "", sum(
-            float(self.proof.limit_prices[corner.rows][len(corner.limits.ceiling_net) :].sum())
-            for corner in self.engine.corners
+        yield (
+            "transition",
+            "",
+            sum(
+                float(self.proof.limit_prices[corner.rows][len(corner.limits.ceiling_net) :].sum())
+                for corner in self.engine.corners
+            ),
         )
         if self.engine.wishes.width is not None and not self.on_spend:
             yield "budget", "", self.proof.spend_price * self.proof.spend

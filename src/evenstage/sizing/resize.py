@@ -189,7 +189,7 @@ class _Job:
             else SizedCorners(
                 before=merged(before),
                 after=merged(after),
-                shares=tuple(engine.joint.shares(answer.solution)),
+                shares=tuple(engine.joint.shares(proof)),
             ),
         )
 

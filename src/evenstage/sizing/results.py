@@ -282,6 +282,16 @@ class Sizing(Tabular):
     corners: SizedCorners | None = None
 
     @property
+    def every_before(self) -> tuple[Analysis, ...]:
+        """The block with the old widths in each corner."""
+        return self.corners.before.analyses if self.corners else (self.before,)
+
+    @property
+    def every_after(self) -> tuple[Analysis, ...]:
+        """The block with the written widths in each corner."""
+        return self.corners.after.analyses if self.corners else (self.after,)
+
+    @property
     def slowest_before(self) -> Path:
         """The slowest path before, over all corners."""
         return self.corners.before.paths[0] if self.corners else self.before.paths[0]

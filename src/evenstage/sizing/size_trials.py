@@ -44,9 +44,7 @@ def tried_sizes(
         s; empty: none.
     """
     nothing = np.zeros(0, np.int32)
-    every = watched or [
-        (nothing, np.full(len(one.circuit.arcs), np.inf)) for one in block.corners
-    ]
+    every = watched or [(nothing, np.full(len(one.circuit.arcs), np.inf)) for one in block.corners]
     return [
         _in_corner(timing, factor, parts, sizes, *some)
         for timing, some in zip(block.corners, every, strict=True)

@@ -165,18 +165,18 @@ def merged(analyses: Sequence[Analysis]) -> Corners:
     routes: dict[object, Path] = {}
     for path in sorted(
         (path for one in analyses for path in one.paths),
-        key=lambda path: -_lateness(path, latest),
+        key=lambda path: -lateness(path, latest),
     ):
         routes.setdefault(_route(path), path)
     return Corners(
         analyses=tuple(analyses),
         paths=tuple(routes.values())[:count],
-        ends=tuple(sorted(_ends(analyses, latest), key=lambda one: -_lateness(one.end, latest))),
+        ends=tuple(sorted(_ends(analyses, latest), key=lambda one: -lateness(one.end, latest))),
     )
 
 
-def _lateness(what: Path | PathEnd, latest: float) -> float:
-    """Return how late an arrival is, s, its required time counted against the latest one."""
+def lateness(what: Path | PathEnd, latest: float) -> float:
+    """Return how late an arrival is, s, its required time counted against the ``latest`` one, s."""
     return what.delay + (latest - what.required if what.required is not None else 0.0)
 
 
@@ -193,7 +193,7 @@ def _ends(analyses: Sequence[Analysis], latest: float) -> Iterator[CornerEnd]:
             found.setdefault(end.net, [None] * len(analyses))[index] = end
     for ends in found.values():
         known = [(index, end) for index, end in enumerate(ends) if end is not None]
-        index, worst = max(known, key=lambda pair: (_lateness(pair[1], latest), -pair[0]))
+        index, worst = max(known, key=lambda pair: (lateness(pair[1], latest), -pair[0]))
         yield CornerEnd(
             end=worst,
             corner=analyses[index].yardstick.process,

@@ -12,6 +12,7 @@ from hypothesis import strategies as st
 from evenstage.netlist.reading.read import read_bytes
 from evenstage.netlist.rewriting.edits import rewrite
 from evenstage.netlist.rewriting.record import (
+    CornerRecord,
     Record,
     digest,
     find_record,
@@ -79,6 +80,10 @@ class TestRecordLines:
 positive = st.floats(1e-17, 1e-3)
 
 
+def _solid(name: str) -> str:
+    return name.replace(" ", "_")
+
+
 class TestFindRecord:
     @quick
     @given(
@@ -90,6 +95,15 @@ class TestFindRecord:
             rounding_loss=st.floats(0, 1),
             ceilings=st.dictionaries(st.text("abc<3>/=!", min_size=1), positive, max_size=3),
             smallest=st.dictionaries(st.text("npch_", min_size=1), positive, max_size=3),
+            corners=st.dictionaries(
+                st.text(min_size=1).filter(lambda name: name.isprintable()),
+                st.builds(
+                    CornerRecord,
+                    transition=positive,
+                    ceilings=st.dictionaries(st.text("ab =1", min_size=1).map(_solid), positive),
+                ),
+                max_size=3,
+            ),
             **dict.fromkeys(
                 (
                     "delay_before",
@@ -112,6 +126,10 @@ class TestFindRecord:
             assert getattr(found, name) == pytest.approx(getattr(record, name), rel=1e-11, abs=0)
         assert found.ceilings == pytest.approx(record.ceilings, rel=1e-11, abs=0)
         assert found.smallest == pytest.approx(record.smallest, rel=1e-11, abs=0)
+        assert list(found.corners) == list(record.corners)
+        for name, kept in record.corners.items():
+            assert found.corners[name].transition == pytest.approx(kept.transition, rel=1e-11)
+            assert found.corners[name].ceilings == pytest.approx(kept.ceilings, rel=1e-11, abs=0)
 
     def test_passes_over_what_it_does_not_know(self) -> None:
         lines = LINES.replace(

@@ -63,6 +63,9 @@ DECODER: Final = SAMPLES / "row_decoder" / "netlist.sp"
 RESULTS: Final[dict[str, Callable[[Path, Path, Path], flow.Result]]] = {
     "analysis": lambda a, _b, _folder: flow.analyse(a, flow.Question(count=3)),
     "corners": lambda _a, _b, folder: flow.analyse(DECODER, corners(folder)),
+    "sized for corners": lambda cells, _b, folder: flow.resize(
+        cells, replace(corners(folder), brief=None)
+    ),
     "sizing": lambda a, _b, _folder: flow.resize(a, flow.Question(), curve=True),
     "least width": lambda a, _b, _folder: flow.resize(
         a, flow.Question(), flow.Wishes(delay=200e-12)

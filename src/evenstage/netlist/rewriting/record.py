@@ -12,6 +12,7 @@ import re
 from dataclasses import dataclass, field
 from textwrap import wrap
 from typing import TYPE_CHECKING, Final, Literal
+from urllib.parse import quote, unquote
 
 from evenstage.netlist.grammar import ENCODING, terminal
 from evenstage.netlist.rewriting.comments import BYTE_ORDER_MARK, MARK, line_end
@@ -49,6 +50,26 @@ Bounded = Literal["delay", "width", "energy"]
 _BOUND_UNITS: Final[Mapping[Bounded, str]] = {"delay": "s", "width": "m", "energy": "F"}
 
 
+#: Signs of a corner's name that stand for themselves.
+_PLAIN: Final = "+-(),.@/:"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class CornerRecord:
+    """What must be kept in one of several corners.
+
+    Parameters
+    ----------
+    transition : float
+        Slowest transition allowed, s.
+    ceilings : Mapping of str to float
+        Capacitance allowed on each input, F, by lower-case name.
+    """
+
+    transition: float
+    ceilings: Mapping[str, float] = field(default_factory=dict)
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Record:
     """What a run leaves for later ones.
@@ -77,6 +98,9 @@ class Record:
         Capacitance allowed on each input, F, by lower-case name.
     smallest : Mapping of str to float
         Smallest width of each model, m, by lower-case name.
+    corners : Mapping of str to CornerRecord
+        By the name of its process, where the netlist was sized for several; delays are then the
+        worst over corners, and all else is that of the first.
     """
 
     key: str
@@ -92,6 +116,7 @@ class Record:
     rounding_loss: float
     ceilings: Mapping[str, float] = field(default_factory=dict)
     smallest: Mapping[str, float] = field(default_factory=dict)
+    corners: Mapping[str, CornerRecord] = field(default_factory=dict)
 
 
 def record_lines(record: Record, end: bytes = b"\n") -> bytes:
@@ -180,6 +205,10 @@ def _facts(record: Record) -> Iterator[tuple[str, str]]:
     yield f"bound on {record.bound_on}", _exact(record.bound, _BOUND_UNITS[record.bound_on])
     yield from _by_value("input", record.ceilings, "F")
     yield from _by_value("smallest", record.smallest, "m")
+    for number, (name, corner) in enumerate(record.corners.items(), 1):
+        yield f"corner {number}", quote(name, _PLAIN)
+        yield f"corner {number} slowest transition", _exact(corner.transition, "s")
+        yield from _by_value(f"corner {number} input", corner.ceilings, "F")
     yield "key", record.key
 
 
@@ -224,8 +253,19 @@ def _record(facts: Mapping[str, str]) -> Record:
         bound=parse_quantity(facts[f"bound on {bound_on}"], unit),
         ceilings=_named(facts, "input ", "F"),
         smallest=_named(facts, "smallest ", "m"),
+        corners=dict(_corners(facts)),
         **single,
     )
+
+
+def _corners(facts: Mapping[str, str]) -> Iterator[tuple[str, CornerRecord]]:
+    """Yield the corners by name."""
+    number = 1
+    while (name := facts.get(f"corner {number}")) is not None:
+        transition = parse_quantity(facts[f"corner {number} slowest transition"], "s")
+        ceilings = _named(facts, f"corner {number} input ", "F")
+        yield unquote(name), CornerRecord(transition=transition, ceilings=ceilings)
+        number += 1
 
 
 def _named(facts: Mapping[str, str], kind: str, unit: str) -> dict[str, float]:

@@ -60,6 +60,7 @@ _READERS: Final[dict[tuple[str, bool], Callable[[object], Reviewable]]] = {
     ("analysis", False): ANALYSIS.read,
     ("analysis", True): read_corners,
     ("sizing", False): SIZING.read,
+    ("sizing", True): SIZING.read,
     ("difference", False): DIFFERENCE.read,
     ("difference", True): read_corners_difference,
     ("simulation", False): SIMULATION.read,

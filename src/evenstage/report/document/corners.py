@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
-from evenstage.report.document.shape import a_list, an_object
+from evenstage.report.document.shape import NUMBER, Kind, a_list, an_object, optional
 from evenstage.report.document.timing import ANALYSIS, DIFFERENCE, END, NOTICES, PATHS, YARDSTICK
+from evenstage.sizing.results import SizedCorners
 from evenstage.timing.corners import Corners, CornersDifference, merged
 
 if TYPE_CHECKING:
-    from evenstage.report.document.shape import Document
+    from evenstage.report.document.shape import Document, JsonValue
     from evenstage.timing.corners import CornerEnd
     from evenstage.timing.results import Analysis
 
@@ -70,6 +71,43 @@ def read_corners_difference(document: object, place: str = "") -> CornersDiffere
         after=merged([one.after for one in found]),
         differences=found,
     )
+
+
+def write_sized_corners(corners: SizedCorners) -> list[JsonValue]:
+    """Return a block sized for several processes, a part for each."""
+    shares = corners.shares or [None] * len(corners.after.analyses)
+    every = zip(corners.before.analyses, corners.after.analyses, shares, strict=True)
+    return [
+        {
+            "before": _corner(before) | {"analysis": ANALYSIS.write(before)},
+            "after": _corner(after) | {"analysis": ANALYSIS.write(after)},
+            "limits": share,
+        }
+        for before, after, share in every
+    ]
+
+
+def read_sized_corners(value: object, place: str) -> SizedCorners:
+    """Return a block sized for several processes; raises as `Shape.read`."""
+    parts = [an_object(one, f"{place}[{k}]") for k, one in enumerate(a_list(value, place))]
+    before, after = (
+        merged([_analysis(one.get(when), f"{place}[{k}].{when}") for k, one in enumerate(parts)])
+        for when in ("before", "after")
+    )
+    shares = [
+        optional(NUMBER).read(one.get("limits"), f"{place}[{k}].limits")
+        for k, one in enumerate(parts)
+    ]
+    known = tuple(share for share in shares if share is not None)
+    return SizedCorners(before=before, after=after, shares=known)
+
+
+SIZED_CORNERS: Final = Kind(write_sized_corners, read_sized_corners)
+
+
+def _analysis(corner: object, place: str) -> Analysis:
+    """Return the analysis that stands with a corner."""
+    return ANALYSIS.read(an_object(corner, place).get("analysis"), f"{place}.analysis")
 
 
 def _corner(analysis: Analysis) -> Document:

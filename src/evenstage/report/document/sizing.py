@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import Final, get_args
 
 from evenstage.logic.same import StructureCheck
+from evenstage.report.document.corners import SIZED_CORNERS
 from evenstage.report.document.shape import (
     NUMBER,
     TEXT,
@@ -164,6 +165,7 @@ SIZING: Final = Shape(
         many(_price("delay").kind),
     ),
     Field("few_changes", "few", optional(_FEW_CHANGES.kind)),
+    Field("corners", "corners", optional(SIZED_CORNERS)),
     Field("notices", "notices", NOTICES),
     Field("before", "before", ANALYSIS.kind),
     Field("after", "after", ANALYSIS.kind),

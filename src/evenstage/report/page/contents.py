@@ -25,6 +25,7 @@ from evenstage.report.page.path_drawing import path_figure
 from evenstage.report.page.precharge import precharge_parts
 from evenstage.report.page.residuals import constant_parts, residual_parts
 from evenstage.report.page.sides import sides
+from evenstage.report.page.sized_corners import sized_corner_section
 from evenstage.report.page.stage_tables import effort_table, load_table, time_table
 from evenstage.report.page.tradeoff import TradePoint, trade_parts
 from evenstage.report.page.waveforms import waveform_parts
@@ -131,6 +132,7 @@ def sizing_page(sizing: Sizing, origin: Origin) -> Page:
     table = change_table(sizing.changes)
     both = [("before", before), ("after", after)] if sizing.changes else [("", after)]
     sections = [
+        *([sized_corner_section(sizing.corners)] if sizing.corners else []),
         Section("quality", "How good the widths are", _quality(sizing)),
         *_path_sections(old, after.paths[0], after, holds),
         Section("trade", "What speed costs", _trade(sizing)),
@@ -143,8 +145,8 @@ def sizing_page(sizing: Sizing, origin: Origin) -> Page:
         subject=block_name(before),
         kind="resizing",
         answer=sizing_answer(sizing),
-        figures=_two_figures(before, after),
-        notices=_notices((*sizing.notices, *before.notices)),
+        figures=_two_figures(before, after, sizing.slowest_before),
+        notices=_notices((*sizing.notices, *sizing.block_notices)),
         sections=_kept(sections),
     )
 
@@ -283,9 +285,9 @@ def _trade(sizing: Sizing) -> tuple[Part, ...]:
     """Return what is known of the trade: today, the answer, the bound, and the curve if asked."""
     curve = sizing.trade_off
     what = curve.spend if curve else "width"
-    points = [_point(sizing.before, what, "today")]
+    points = [_point(sizing.every_before, what, "today")]
     if sizing.changes:
-        points.append(_point(sizing.after, what, "answer"))
+        points.append(_point(sizing.every_after, what, "answer"))
     if curve is not None:
         points += [TradePoint(one.spend, one.charged_delay) for one in curve.points]
         if curve.knee is not None:
@@ -295,9 +297,10 @@ def _trade(sizing: Sizing) -> tuple[Part, ...]:
     return trade_parts(points, least, what)
 
 
-def _point(analysis: Analysis, what: str, label: str) -> TradePoint:
-    spend = analysis.total_width if what == "width" else analysis.switched_cap
-    return TradePoint(spend, worst_charged(analysis), label)
+def _point(corners: Sequence[Analysis], what: str, label: str) -> TradePoint:
+    """Return what a block spends in its first corner, and its delay in the worst."""
+    spend = corners[0].total_width if what == "width" else corners[0].switched_cap
+    return TradePoint(spend, max(map(worst_charged, corners)), label)
 
 
 def _totals(before: Analysis, after: Analysis) -> Table:
@@ -359,9 +362,12 @@ def _one_figures(analysis: Analysis) -> tuple[KeyFigure, ...]:
     return tuple(figures)
 
 
-def _two_figures(before: Analysis, after: Analysis) -> tuple[KeyFigure, ...]:
+def _two_figures(
+    before: Analysis, after: Analysis, slowest: Path | None = None
+) -> tuple[KeyFigure, ...]:
+    """Return what moves; ``slowest`` is the path before, where it is not that of the block."""
     pairs = (
-        ("slowest path", before.paths[0].delay, after.paths[0].delay, "s"),
+        ("slowest path", (slowest or before.paths[0]).delay, after.paths[0].delay, "s"),
         ("total width", before.total_width, after.total_width, "m"),
         ("switched capacitance", before.switched_cap, after.switched_cap, "F"),
         ("slowest transition", before.worst_transition, after.worst_transition, "s"),
