@@ -241,7 +241,7 @@ class TestResize:
         assert [one["after"]["process"]["name"] for one in document["corners"]] == list(CORNERS)
         latest = max(one["after"]["delay_s"] for one in document["corners"])
         assert document["after"]["paths"][0]["delay_s"] == latest
-        page = flow.html(found, flow.origin("0", [], []))
+        page = flow.html(found, flow.origin("0", [], [], found))
         assert "The latest path in each corner" in page
 
     def test_a_curve_and_few_changes_count_the_worst_corner(
