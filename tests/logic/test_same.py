@@ -143,8 +143,7 @@ class TestReadBack:
         reason: str,
     ) -> None:
         monkeypatch.setattr(
-            flow,
-            "write_files",
+            "evenstage.flow.sizing.write_files",
             lambda texts, **_: [
                 path.write_bytes(text.replace(old, new)) for path, text in texts.items()
             ],

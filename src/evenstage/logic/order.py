@@ -41,6 +41,8 @@ class Batch:
         Whether its groups wait for themselves or each other.
     groups : int
         How many there are.
+    group : IntArray, shape (free,)
+        Number of the group of each free node.
     """
 
     nets: IntArray
@@ -51,6 +53,7 @@ class Batch:
     head: IntArray
     loops: bool
     groups: int
+    group: IntArray
 
 
 @dataclass(frozen=True)
@@ -140,7 +143,7 @@ def batches(switches: Switches, given: BoolArray) -> tuple[Batch, ...]:
     cuts = np.flatnonzero(np.diff(np.sort(when), prepend=-1))
     times, count = np.unique(stage, return_counts=True)
     return tuple(
-        _batch(switches, given, some, loops=bool(time & 1), groups=int(number))
+        _batch(switches, groups.of_net, some, loops=bool(time & 1), groups=int(number))
         for some, time, number in zip(
             np.split(order, cuts[1:]), times.tolist(), count.tolist(), strict=True
         )
@@ -175,14 +178,14 @@ def _levels(waits: IntArray, awaited: IntArray, count: int) -> IntArray:
 
 
 def _batch(
-    switches: Switches, given: BoolArray, device: IntArray, *, loops: bool, groups: int
+    switches: Switches, group: IntArray, device: IntArray, *, loops: bool, groups: int
 ) -> Batch:
     ends = np.stack([switches.drain[device], switches.source[device]])
     nets = np.unique(ends)
-    is_given = given[nets]
+    is_given = group[nets] < 0
     nets = np.concatenate([nets[~is_given], nets[is_given]])
     free = int((~is_given).sum())
-    place = np.empty(len(given), np.int64)
+    place = np.empty(len(group), np.int64)
     place[nets] = np.arange(len(nets))
     start = place[ends].ravel()
     end = place[ends[::-1]].ravel()
@@ -190,4 +193,5 @@ def _batch(
     order = np.argsort(end, kind="stable")
     order = order[end[order] < free]
     head = np.searchsorted(end[order], np.arange(free))
-    return Batch(nets, free, device, switch[order], start[order], head, loops, groups)
+    own = group[nets[:free]]
+    return Batch(nets, free, device, switch[order], start[order], head, loops, groups, own)

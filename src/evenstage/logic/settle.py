@@ -47,9 +47,6 @@ WEAK: Final = 1
 KEPT: Final = 0
 """Strength of a net that nothing surely drives."""
 
-#: Rows of tables of ways: sure ones to 1 and to 0, then those that perhaps are.
-_SURE, _PERHAPS = slice(0, 2), slice(2, 4)
-
 
 def settle(switches: Switches, batch: Batch, values: Values) -> Values:
     """Return what the free nodes are worth next, shape (free, vectors).
@@ -73,23 +70,12 @@ def settle(switches: Switches, batch: Batch, values: Values) -> Values:
     return np.where(one, 1, np.where(zero, 0, UNKNOWN)).astype(np.int8)
 
 
-def strengths(switches: Switches, batch: Batch, values: Values) -> Values:
-    """Return how strongly the free nodes are driven once settled, shape (free, vectors)."""
-    ways = _ways(switches, batch, values)
-    full = _ways(switches, batch, values, poor=np.inf)
-    now = values[batch.nets[: batch.free]]
-    driven = np.isfinite(ways[_SURE, : batch.free]).any(axis=0)
-    alone = (now == 1) & np.isinf(ways[3, : batch.free]) & np.isfinite(full[0, : batch.free])
-    alone |= (now == 0) & np.isinf(ways[2, : batch.free]) & np.isfinite(full[1, : batch.free])
-    return np.where(alone, STRONG, np.where(driven, WEAK, KEPT)).astype(np.int8)
-
-
-def _ways(switches: Switches, batch: Batch, values: Values, poor: float = POOR) -> FloatArray:
+def _ways(switches: Switches, batch: Batch, values: Values) -> FloatArray:
     """Return the least resistances to 1 and 0, sure and perhaps, shape (4, nodes, vectors)."""
     closed, perhaps = _states(switches, batch, values)
     is_n = switches.is_n[batch.device][batch.switch]
     ohm = switches.resistance[batch.device][batch.switch]
-    toll = np.stack([np.where(is_n, poor, 1.0), np.where(is_n, 1.0, poor)]) * ohm
+    toll = np.stack([np.where(is_n, POOR, 1.0), np.where(is_n, 1.0, POOR)]) * ohm
     passes = np.stack([closed, perhaps])[:, batch.switch]
     cost = np.where(passes[:, None], toll[None, :, :, None], np.inf)
     cost = cost.reshape(4, *passes.shape[1:])
