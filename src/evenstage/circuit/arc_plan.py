@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -27,9 +28,12 @@ class ArcPlan:
     arcs : tuple of ArcForm
     rising : BoolArray, shape (arcs,)
         Whether the output rises.
-    path : IntArray, shape (arcs, longest)
-        Switches from the supply to the output; `NOTHING` beyond.
-    length : IntArray, shape (arcs,)
+    path : IntArray, shape (paths, longest)
+        Switches from the supply to the output; `NOTHING` beyond. First the arcs' own paths, then
+        those beside them.
+    length : IntArray, shape (paths,)
+    beside : tuple of (int, ...)
+        For each arc the rows of the paths that share its current, its own first.
     switching : IntArray, shape (arcs,)
         The switch whose input moves. A load that has been overpowered is not switched: the edge
         through it begins in the network.
@@ -47,6 +51,7 @@ class ArcPlan:
     rising: BoolArray
     path: IntArray
     length: IntArray
+    beside: tuple[tuple[int, ...], ...]
     switching: IntArray
     of_arc: IntArray
     node: IntArray
@@ -65,23 +70,30 @@ class ArcPlan:
 
 def arc_plan(form: GateForm, arcs: Sequence[ArcForm]) -> ArcPlan:
     """Return the plan of some arcs of a form, at least one."""
-    longest = max(len(arc.path) for arc in arcs)
-    path = np.full((len(arcs), longest), NOTHING, np.int32)
-    for row, arc in enumerate(arcs):
-        path[row, : len(arc.path)] = arc.path[::-1]
+    ways = [arc.path for arc in arcs] + [one.path for arc in arcs for one in arc.beside]
+    longest = max(map(len, ways))
+    path = np.full((len(ways), longest), NOTHING, np.int32)
+    for row, way in enumerate(ways):
+        path[row, : len(way)] = way[::-1]
+    further = itertools.count(len(arcs))
+    beside = tuple(
+        (row, *itertools.islice(further, len(arc.beside))) for row, arc in enumerate(arcs)
+    )
     rows = {node: row for row, node in enumerate(form.network.inner_nodes)}
     moved = [
-        (row, rows[node], row * longest + count - 1, dict(arc.behind).get(node, NOTHING))
-        for row, arc in enumerate(arcs)
-        for node, count in arc.moved
+        (number, rows[node], row * longest + count - 1, dict(arc.behind).get(node, NOTHING))
+        for number, arc in enumerate(arcs)
+        for row, way in zip(beside[number], arc.ways, strict=True)
+        for node, count in way.moved
     ]
     of_arc, node, step, behind = np.array(moved, np.int32).reshape(-1, 4).T
-    count = np.array([len(arc.moved) for arc in arcs], np.int32)
+    count = np.bincount(of_arc, minlength=len(arcs))
     return ArcPlan(
         arcs=tuple(arcs),
         rising=np.array([arc.rising for arc in arcs], bool),
         path=path,
-        length=np.array([len(arc.path) for arc in arcs], np.int32),
+        length=np.array([len(way) for way in ways], np.int32),
+        beside=beside,
         switching=np.array([_switching(form, arc) for arc in arcs], np.int32),
         node=node,
         step=step,

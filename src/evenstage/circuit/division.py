@@ -17,10 +17,14 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, slots=True)
 class Way:
-    """One conducting path from a driver's node to a supply, and when it conducts."""
+    """One conducting path from a driver's node to a supply, and when it conducts.
+
+    ``beside`` are as long paths through switches of the same inputs: they conduct whenever it does.
+    """
 
     path: tuple[int, ...]
     cube: Cube
+    beside: tuple[tuple[int, ...], ...] = ()
 
 
 @dataclass(frozen=True)

@@ -21,6 +21,7 @@ from evenstage.circuit.function import (
 from evenstage.circuit.gate import (
     INPUTS_MAX,
     ArcForm,
+    Beside,
     Pulls,
     Unrecognised,
     all_arcs,
@@ -145,14 +146,19 @@ def sum_of(cubes: Sequence[Cube]) -> Expression:
 def _ways(
     own: Network, node: int, supply: int, indices: list[int], literals: Literals
 ) -> tuple[Way, ...]:
-    """Return the paths to a supply that can conduct."""
+    """Return the paths to a supply that can conduct, those that always do together as one way."""
+    if supply not in own.at_node:
+        return ()
+    alike: dict[object, list[tuple[int, ...]]] = {}
+    for path in own.paths(node, supply, frozenset(range(len(indices)))):
+        alike.setdefault((own.condition(path), len(path)), []).append(path)
     found = []
-    for path in (
-        own.paths(node, supply, frozenset(range(len(indices)))) if supply in own.at_node else ()
-    ):
-        cube = consistent(frozenset(), (closing(own.switches[i], literals) for i in path))
+    for paths in alike.values():
+        first, *beside = own.apart(paths)
+        cube = consistent(frozenset(), (closing(own.switches[i], literals) for i in first))
         if cube is not None:
-            found.append(Way(tuple(indices[i] for i in path), cube))
+            path, *further = (tuple(indices[i] for i in one) for one in (first, *beside))
+            found.append(Way(path, cube, tuple(further)))
     return tuple(found)
 
 
@@ -161,4 +167,5 @@ def _renumbered(arc: ArcForm, indices: list[int]) -> ArcForm:
         arc,
         path=tuple(indices[i] for i in arc.path),
         behind=tuple((node, indices[i]) for node, i in arc.behind),
+        beside=tuple(Beside(tuple(indices[i] for i in one.path), one.moved) for one in arc.beside),
     )

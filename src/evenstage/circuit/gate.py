@@ -4,8 +4,10 @@ An arc says how one edge of one input moves the output: along one path of closed
 output to a supply, with the other inputs at values that let this input decide. It carries the nodes
 whose charge must move with the output: those that closed switches tie to the output after the edge
 and that were not yet at the new supply before it, each with the part of the path its charge has to
-flow through. Of several such settings every one is kept that is not outdone, switch by switch and
-node by node, by another; which of them is slowest depends on the sizes.
+flow through. Paths through switches of the same inputs, as of stacks drawn twice in opposite order,
+always conduct together and share the current; paths that only happen to conduct together do not.
+Of several such settings every one is kept that is not outdone, switch by switch and node by node,
+by another; which of them is slowest depends on the sizes.
 """
 
 from __future__ import annotations
@@ -32,6 +34,26 @@ Relation = tuple[int, int]
 """Local net of an input and of the input that it is the complement of."""
 
 
+Moved = tuple[tuple[int, int], ...]
+"""Nodes, each with the number of switches, counted from the supply, its charge flows through."""
+
+
+@dataclass(frozen=True, slots=True)
+class Beside:
+    """A path that conducts whenever the path of its arc does and meets it at its ends alone.
+
+    Parameters
+    ----------
+    path : tuple of int
+        Switches from the output to the supply.
+    moved : tuple of (int, int)
+        Nodes whose charge flows through it.
+    """
+
+    path: tuple[int, ...]
+    moved: Moved
+
+
 @dataclass(frozen=True, slots=True)
 class ArcForm:
     """One way one input edge moves the output.
@@ -51,14 +73,22 @@ class ArcForm:
         towards the wrong supply, n upwards or p downwards.
     load : tuple of int
         Switches of a path to the other supply that conducts all the while and is overpowered.
+    beside : tuple of Beside
+        Further paths that share the current.
     """
 
     input: int
     rising: bool
     path: tuple[int, ...]
-    moved: tuple[tuple[int, int], ...]
+    moved: Moved
     behind: tuple[tuple[int, int], ...] = ()
     load: tuple[int, ...] = ()
+    beside: tuple[Beside, ...] = ()
+
+    @property
+    def ways(self) -> tuple[Beside, ...]:
+        """Its path and those beside it, each with what moves through it."""
+        return Beside(self.path, self.moved), *self.beside
 
 
 @dataclass(frozen=True, slots=True)
@@ -262,9 +292,13 @@ def _arcs(
         # What fights a load is at neither supply: it moves as soon as it lets go.
         other = LOW if rising else HIGH
         settled = _tied(network, supply, was_closed) - _tied(network, other, was_closed)
-        moved, behind = _moved(network, path, closed, settled)
-        form = ArcForm(network.inputs[row], rising, path, moved, behind)
-        (single if len(ways) == 1 else shared)[form] = None
+        condition = network.condition(path)
+        alike = [way for way in ways if network.condition(way) == condition]
+        together = network.apart([path, *(way for way in alike if way != path)])
+        moved, behind = _moved(network, together, closed, settled)
+        beside = tuple(map(Beside, together[1:], moved[1:]))
+        form = ArcForm(network.inputs[row], rising, path, moved[0], behind, beside=beside)
+        (single if len(alike) == len(ways) else shared)[form] = None
     return _not_outdone(list(single) or list(shared))
 
 
@@ -295,59 +329,60 @@ def _tied(network: Network, start: int, closed: frozenset[int]) -> set[int]:
 
 
 def _moved(
-    network: Network, path: tuple[int, ...], closed: frozenset[int], settled: set[int]
-) -> tuple[tuple[tuple[int, int], ...], tuple[tuple[int, int], ...]]:
-    """Return the nodes whose charge moves, each with how many path switches it flows through.
+    network: Network, paths: list[tuple[int, ...]], closed: frozenset[int], settled: set[int]
+) -> tuple[list[Moved], Moved]:
+    """Return the nodes whose charge moves, path by path, and those behind idle switches.
 
-    A node beside the path is charged through the path node nearest to the output that it is tied
+    A node beside the paths is charged through the path node nearest to the output that it is tied
     to, which is the slowest reading where a mesh offers several. Nodes behind a switch of the other
     polarity than the path's are named once more with the first such switch.
     """
-    polarity = network.switches[path[-1]].polarity
-    node = _start(network, path)
-    on_path = [(node, len(path))]
-    for left, index in zip(range(len(path) - 1, 0, -1), path[:-1], strict=True):
-        node = network.switches[index].other(node)
-        on_path.append((node, left))
-    found, behind = dict(on_path), dict[int, int]()
-    for root, depth in on_path:
+    polarity = network.switches[paths[0][-1]].polarity
+    found: dict[int, tuple[int, int]] = {}
+    for number, path in enumerate(paths):
+        for node, depth in network.nodes_along(path):
+            found.setdefault(node, (number, depth))
+    behind: dict[int, int] = {}
+    for root, place in list(found.items()):
         waiting = [root]
         while waiting:
             here = waiting.pop()
             for index in network.at_node[here]:
                 far = network.switches[index].other(here)
                 if index in closed and far >= 0 and far not in found:
-                    found[far] = depth
+                    found[far] = place
                     if here in behind or network.switches[index].polarity != polarity:
                         behind[far] = behind.get(here, index)
                     waiting.append(far)
     for node in settled & found.keys():
         found.pop(node)
         behind.pop(node, None)
-    return tuple(sorted(found.items())), tuple(sorted(behind.items()))
-
-
-def _start(network: Network, path: tuple[int, ...]) -> int:
-    """Return the node a path begins at: the end of its first switch that its second lacks."""
-    first = network.switches[path[0]]
-    if len(path) == 1:
-        return first.a if first.a >= 0 else first.b
-    second = network.switches[path[1]]
-    return first.a if first.b in (second.a, second.b) else first.b
+    moved = [
+        tuple(sorted((node, depth) for node, (by, depth) in found.items() if by == number))
+        for number in range(len(paths))
+    ]
+    return moved, tuple(sorted(behind.items()))
 
 
 def _not_outdone(forms: list[ArcForm]) -> list[ArcForm]:
     kept = []
     for index, form in enumerate(forms):
-        mine, behind = dict(form.moved), dict(form.behind)
+        mine, behind = _depths(form), dict(form.behind)
         outdone = any(
-            other.path == form.path
-            and dict(other.behind).keys() & mine.keys() <= behind.keys()
-            and all(dict(other.moved).get(node, 0) >= depth for node, depth in mine.items())
-            and (other.moved != form.moved or position < index)
+            [way.path for way in other.ways] == [way.path for way in form.ways]
+            and dict(other.behind).keys() & {node for _, node in mine} <= behind.keys()
+            and all(_depths(other).get(place, 0) >= depth for place, depth in mine.items())
+            and (_depths(other) != mine or position < index)
             for position, other in enumerate(forms)
             if position != index
         )
         if not outdone:
             kept.append(form)
     return kept
+
+
+def _depths(form: ArcForm) -> dict[tuple[int, int], int]:
+    """Return how many switches the charge of each node flows through, by its path and itself."""
+    return {
+        (number, node): depth for number, way in enumerate(form.ways) for node, depth in way.moved
+    }

@@ -71,7 +71,7 @@ def _planned_arcs(
         some, plan, _along_paths(plan, values, res, device), _at_nodes(plan, values, caps, device)
     )
     switching = device[plan.switching].ravel()
-    more = np.repeat(plan.length - 1, count)
+    more = np.repeat(plan.length[:arcs] - 1, count)
     rising = np.repeat(plan.rising, count)
     return Arcs(
         gate=np.tile(some.gates, arcs),
@@ -114,7 +114,7 @@ def _sums(
     ]
     terms = []
     for r, r_owner in zip(along, owners, strict=True):
-        whole = r[:, -1]
+        whole = r[:arcs, -1]
         # What is zero for all of them is left out; what does not scale is so at any width.
         stays: BoolArray = np.asarray(whole.any(axis=1))
         if not stays.any():
@@ -165,10 +165,12 @@ def _interleaved(has: BoolArray, columns: Sequence[NDArray[_Kind]]) -> NDArray[_
 def _along_paths(
     plan: ArcPlan, values: Electrical, res: Scaled, device: IntArray
 ) -> tuple[FloatArray, FloatArray]:
-    """Return the resistance from the supply to each place of each path, shape (arcs, longest, k).
+    """Return the resistance from the supply to each place of each path, shape (paths, longest, k).
 
     What scales, and what stays; ``device`` is the first device of each switch. Beyond a path's end
-    its whole resistance goes on.
+    its whole resistance goes on. Of paths side by side the whole is that of all together, and a
+    node with some part of its path's resistance before it has that part of the whole: what a
+    current into the output raises the node by, a current into the node raises the output by.
     """
     length = plan.length[:, None, None]
     factor = (1 + values.stack[device][plan.path] * (length - 1)) / length
@@ -179,13 +181,26 @@ def _along_paths(
         else np.zeros(factor.shape)
         for part in (res.scaling, res.fixed)
     )
-    for row, arc in enumerate(plan.arcs):
+    for arc, beside in zip(plan.arcs, plan.beside, strict=True):
+        rows = list(beside)
+        if len(rows) > 1:
+            for part in (scaling, fixed):
+                part[rows] *= _share_of_current(part[rows, -1])[:, None]
         if arc.load:
-            pull = scaling[row, -1] + fixed[row, -1]
+            pull = scaling[rows[0], -1] + fixed[rows[0], -1]
             fight = _contention(pull, res.today[:, list(arc.load)].sum(axis=1))
-            scaling[row] *= fight
-            fixed[row] *= fight
+            scaling[rows] *= fight
+            fixed[rows] *= fight
     return scaling, fixed
+
+
+def _share_of_current(resistance: FloatArray) -> FloatArray:
+    """Return which part of a current flows through each of some paths, shape (paths, k)."""
+    if not resistance.all():
+        return np.full_like(resistance, 1 / len(resistance))
+    conductance = 1 / resistance
+    share: FloatArray = conductance / conductance.sum(axis=0)
+    return share
 
 
 def _at_nodes(

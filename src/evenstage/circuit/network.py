@@ -162,6 +162,37 @@ class Network:
                         continue
                     stack.append((following, (*path, index), (*visited, following)))
 
+    def condition(self, path: tuple[int, ...]) -> frozenset[tuple[int, str]]:
+        """Return what must hold for a path to conduct: gate and polarity of its switches."""
+        return frozenset((self.switches[i].gate, self.switches[i].polarity) for i in path)
+
+    def nodes_along(self, path: tuple[int, ...]) -> list[tuple[int, int]]:
+        """Return the nodes of a path to a supply, each with the switches left from there."""
+        node = self._start(path)
+        found = [(node, len(path))]
+        for left, index in zip(range(len(path) - 1, 0, -1), path[:-1], strict=True):
+            node = self.switches[index].other(node)
+            found.append((node, left))
+        return found
+
+    def _start(self, path: tuple[int, ...]) -> int:
+        """Return the node a path begins at: the end of its first switch that its second lacks."""
+        first = self.switches[path[0]]
+        if len(path) == 1:
+            return first.a if first.a >= 0 else first.b
+        second = self.switches[path[1]]
+        return first.a if first.b in (second.a, second.b) else first.b
+
+    def apart(self, paths: Sequence[tuple[int, ...]]) -> list[tuple[int, ...]]:
+        """Return the first of some paths, and the others as far as they share no node inside."""
+        found, met = [], set[int]()
+        for path in paths:
+            inner = {node for node, _ in self.nodes_along(path)[1:]}
+            if not inner & met:
+                found.append(path)
+                met |= inner
+        return found
+
 
 def merge(devices: Sequence[Switch], apart: frozenset[int] = frozenset()) -> Network:
     """Merge the fingers of a drawn network.

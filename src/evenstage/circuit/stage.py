@@ -182,7 +182,8 @@ class _Builder:
         self, route: Route, way: Way, supply: int, sets: list[dict[int, int]]
     ) -> Iterator[StageArc]:
         passes = [Step(self._part_of[p.switches[0]], p.switches) for p in self._passes(route)]
-        steps = (*passes, *(Step(self._part_of[i], (i,)) for i in way.path))
+        places = zip(way.path, *way.beside, strict=True)
+        steps = (*passes, *(Step(self._part_of[some[0]], some) for some in places))
         rising, switches = supply == HIGH, self._division.network.switches
         source = route.driver.node if route.driver.is_outside else -1
         for nodes in sets:
@@ -214,7 +215,8 @@ class _Builder:
             yield -1, moving, ()
         for arc in route.driver.arcs:
             if arc.path == way.path and arc.rising == rising:
-                inner = {node: d for node, d in arc.moved if node != route.driver.node}
+                moved = (place for one in arc.ways for place in one.moved)
+                inner = {node: d for node, d in moved if node != route.driver.node}
                 switching = next(i for i in arc.path if switches[i].gate == arc.input)
                 yield switching, moving | inner, arc.behind
         depth = self._depths(route, len(way.path))
