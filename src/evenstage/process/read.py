@@ -12,10 +12,9 @@ from evenstage.process.currents import (
     from_long_channel,
     from_saturation_current,
 )
+from evenstage.process.junction_keys import JUNCTION_KEYS, read_junctions
 from evenstage.process.process import (
     Channel,
-    Junction,
-    Junctions,
     Polarity,
     Process,
     Transistor,
@@ -46,9 +45,7 @@ _TRANSISTOR_KEYS: Final[Mapping[str, Entry]] = {
     "c_gate_fixed": Number(unit="F", least=0, most=_FIXED_MOST, default=0.0),
     "c_drain": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST, required=True),
     "c_drain_fixed": Number(unit="F", least=0, most=_FIXED_MOST, default=0.0),
-    "c_drain_area": Number(unit="F/m^2", least=0, most=1.0),
-    "c_drain_edge": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST),
-    "c_drain_overlap": Number(unit="F/m", least=0, most=_CAPACITANCE_MOST, default=0.0),
+    **JUNCTION_KEYS,
     "slope": Number(least=0, most=10),
     "slope_power": Number(above=0, most=1, default=1.0),
     "shape": Number(least=0, most=100),
@@ -148,7 +145,7 @@ def _transistor(table: Settings, supply: float) -> Transistor:
         c_gate_fixed=table.number("c_gate_fixed"),
         c_drain=table.number("c_drain"),
         c_drain_fixed=table.number("c_drain_fixed"),
-        junctions=_junctions(table),
+        junctions=read_junctions(table),
         slope=(derived.slope or 0.0) if slope is None else slope,
         slope_power=table.number("slope_power"),
         shape=(derived.shape or 0.0) if shape is None else shape,
@@ -168,23 +165,6 @@ def _transistor(table: Settings, supply: float) -> Transistor:
         width_step=table.optional_number("width_step"),
         finger_width_max=table.optional_number("finger_width_max"),
     )
-
-
-def _junctions(table: Settings) -> Junctions | None:
-    """Return the junction constants where a file gives them; one value serves both edges."""
-    area, edge = (table.optional_number(f"c_drain_{name}") for name in ("area", "edge"))
-    if area is None and edge is None:
-        return None
-    if area is None or edge is None:
-        given, missing = ("area", "edge") if edge is None else ("edge", "area")
-        raise table.error(
-            f"c_drain_{given}",
-            f"c_drain_{given} comes without c_drain_{missing}; give both (0 where it counts for "
-            "nothing), or neither",
-            "half-given",
-        )
-    both = Junction(area=area, edge=edge, overlap=table.number("c_drain_overlap"))
-    return Junctions(rise=both, fall=both)
 
 
 def _gate(table: Settings) -> float:

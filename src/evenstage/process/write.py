@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import fields
 from typing import TYPE_CHECKING, Final
 
+from evenstage.process.junction_keys import junction_values
 from evenstage.process.process import Channel, Transistor
 
 if TYPE_CHECKING:
@@ -42,7 +43,6 @@ def process_text(process: Process, head: Iterable[str] = ()) -> str:
     Parameters
     ----------
     process : Process
-        Without junction constants that differ between the edges.
     head : iterable of str
         Lines of comment at the top.
     """
@@ -70,12 +70,8 @@ def _transistor_lines(transistor: Transistor) -> list[str]:
         if field.name in _CHANNEL_KEYS and value != field.default:
             lines.append(f"{_CHANNEL_KEYS[field.name]} = {_number(value)}")
     if transistor.junctions is not None:
-        same = transistor.junctions.rise
-        lines += [
-            f"c_drain_area = {_number(same.area)}",
-            f"c_drain_edge = {_number(same.edge)}",
-            f"c_drain_overlap = {_number(same.overlap)}",
-        ]
+        given = junction_values(transistor.junctions)
+        lines += [f"{key} = {_number(value)}" for key, value in given]
     return lines
 
 
