@@ -20,7 +20,7 @@ from support.measured import CELLS, measure, truth
 if TYPE_CHECKING:
     from pathlib import Path
 
-    from evenstage.fitting.deck import Deck
+    from evenstage.fitting.results import Deck
 
 AOI = """.subckt aoi a b c y vdd vss
 mn1 y a m vss nch w=2u l=0.13u

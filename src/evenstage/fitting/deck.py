@@ -7,7 +7,6 @@ the simulator's results belong, it holds their names.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
 from itertools import product
 from typing import TYPE_CHECKING, Final, NamedTuple
 
@@ -15,6 +14,7 @@ from evenstage.errors import FitError, Notice
 from evenstage.fitting.bench import build_bench
 from evenstage.fitting.measurements import Query
 from evenstage.fitting.reading import COLUMNS
+from evenstage.fitting.results import Deck
 from evenstage.fitting.side_inputs import INPUTS_MAX, CellLogic
 from evenstage.timing.yardstick import chain
 from evenstage.units import suffixed
@@ -39,30 +39,6 @@ _SETTLING: Final = 20.0
 
 #: Time steps in the fastest ramp.
 _STEPS: Final = 50.0
-
-
-@dataclass(frozen=True, kw_only=True)
-class Deck:
-    """A measuring deck with the table its results go into.
-
-    Parameters
-    ----------
-    cells : tuple of str
-        Cells measured.
-    arcs, measurements : int
-    text, table : str
-        The deck; comma-separated text with names where results belong.
-    notices : tuple of Notice
-    """
-
-    cells: tuple[str, ...]
-    arcs: int
-    measurements: int
-    text: str = field(repr=False)
-    table: str = field(repr=False)
-    notices: tuple[Notice, ...]
-    output: Path | None = None
-    table_output: Path | None = None
 
 
 class _Arc(NamedTuple):

@@ -149,3 +149,27 @@ class Fit(Tabular):
             "constants": [row(one) for one in self.constants],
             "gates": [row(one) for one in self.gates],
         }
+
+
+@dataclass(frozen=True, kw_only=True)
+class Deck:
+    """A measuring deck with the table its results go into.
+
+    Parameters
+    ----------
+    cells : tuple of str
+        Cells measured.
+    arcs, measurements : int
+    text, table : str
+        The deck; comma-separated text with names where results belong.
+    notices : tuple of Notice
+    """
+
+    cells: tuple[str, ...]
+    arcs: int
+    measurements: int
+    text: str = field(repr=False)
+    table: str = field(repr=False)
+    notices: tuple[Notice, ...]
+    output: Path | None = None
+    table_output: Path | None = None

@@ -5,13 +5,10 @@ from __future__ import annotations
 import hashlib
 from typing import TYPE_CHECKING
 
-from evenstage.circuit.inventory import Inventory
 from evenstage.errors import OutputError
-from evenstage.fitting.deck import Deck
 from evenstage.fitting.results import Fit
 from evenstage.netlist.rewriting.output import write_files
 from evenstage.report.origin import FileDigest, Origin
-from evenstage.report.page import render
 from evenstage.simulation.results import Simulation
 from evenstage.sizing.results import Sizing
 from evenstage.timing.corners import Corners, CornersDifference
@@ -88,17 +85,3 @@ def _analyses(result: Result) -> tuple[Analysis, ...]:
     if isinstance(result, Simulation):
         return tuple(block.analysis for block in (result.before, result.after) if block)
     return ()
-
-
-def html(result: Result, origin: Origin) -> str:
-    """Return a result as one self-contained page.
-
-    Raises
-    ------
-    TypeError
-        Where there is no page of its kind: an inventory, or a deck.
-    """
-    if isinstance(result, Inventory | Deck):
-        message = f"there is no page of {type(result).__name__}"
-        raise TypeError(message)
-    return render.html(result, origin)

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 from evenstage.brief import Brief, read_brief
 from evenstage.errors import OutputError
 from evenstage.fitting.cells import leaf_cells, measured_cells, standing_alone
-from evenstage.fitting.deck import Deck, measuring_deck
+from evenstage.fitting.deck import measuring_deck
 from evenstage.fitting.fit import fit as fit_process
 from evenstage.fitting.reading import read_measurements, read_results
 from evenstage.fitting.sized import sized_bench
@@ -28,7 +28,7 @@ from evenstage.timing.yardstick import yardstick
 if TYPE_CHECKING:
     from pathlib import Path
 
-    from evenstage.fitting.results import Fit
+    from evenstage.fitting.results import Deck, Fit
 
 
 def fit(

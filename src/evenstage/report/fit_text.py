@@ -13,8 +13,7 @@ from evenstage.units import engineering
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from evenstage.fitting.deck import Deck
-    from evenstage.fitting.results import Confusion, Fit, FittedConstant, Residuals
+    from evenstage.fitting.results import Confusion, Deck, Fit, FittedConstant, Residuals
 
 #: Units of the constants as the process file has them.
 UNITS: Final = {

@@ -5,8 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Final
 
 from evenstage.circuit.inventory import Inventory
-from evenstage.fitting.deck import Deck
-from evenstage.fitting.results import Fit
+from evenstage.fitting.results import Deck, Fit
 from evenstage.report.document.convert import Result, document, to_json
 from evenstage.report.terminal import (
     analysis_report,

@@ -7,8 +7,7 @@ from typing import TYPE_CHECKING, Any, Final
 
 from evenstage.circuit.inventory import Inventory
 from evenstage.errors import DocumentError
-from evenstage.fitting.deck import Deck
-from evenstage.fitting.results import Fit
+from evenstage.fitting.results import Deck, Fit
 from evenstage.report.document.circuit import write_inventory
 from evenstage.report.document.corners import (
     read_corners,

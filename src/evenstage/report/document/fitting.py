@@ -24,7 +24,7 @@ from evenstage.report.document.shape import (
 from evenstage.report.document.timing import NOTICES
 
 if TYPE_CHECKING:
-    from evenstage.fitting.deck import Deck
+    from evenstage.fitting.results import Deck
     from evenstage.report.document.shape import Document
 
 _PATTERN: Final = Kind(
