@@ -248,7 +248,7 @@ FUNCTIONS: dict[str, tuple[Callable[..., float], int, int | None]] = {
     "aunif": (_nominal, 2, 3),
 }
 
-_OPERATORS: dict[str, Callable[[float, float], float]] = {
+OPERATORS: dict[str, Callable[[float, float], float]] = {
     "+": operator.add,
     "-": operator.sub,
     "*": operator.mul,
@@ -312,7 +312,7 @@ class _Builder(Transformer[Token, Node]):
 
     def _chain(self, children: list[Token | Node]) -> Node:
         steps = zip(children[1::2], children[2::2], strict=True)
-        return Chain(children[0], tuple((_OPERATORS[str(t)], node) for t, node in steps))
+        return Chain(children[0], tuple((OPERATORS[str(t)], node) for t, node in steps))
 
     equality = order = sum = product = _chain
 

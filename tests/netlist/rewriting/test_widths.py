@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 import pytest
 
+from evenstage.errors import EvenstageError
 from evenstage.netlist.rewriting.widths import plan_widths
 from support.sized import assert_reads_back, planned, process, rewritten, sized, wish_list
 
@@ -358,6 +359,71 @@ class TestParameters:
         assert after == text.replace(
             b".param wtop = 2u", b"* evenstage: wtop 2u -> 4u: reason\n.param wtop = 4u"
         )
+
+
+class TestFunctions:
+    """Widths that pass through functions of the netlist."""
+
+    DEFINED = b"t\n.param k=2 wn=1u half(x)='x/2'\n.func times(x,y) {k*half(x*y)}\n"
+
+    @pytest.mark.parametrize("width", [b"'half(wn)'", b"times(wn,3)", b"'max(half(wn), 0.1*wn)'"])
+    def test_the_number_behind_the_argument_is_changed(self, width: bytes) -> None:
+        card = b"m1 y a vss vss nch w=" + width + b" l=60n ad='half(wn)*0.2u'\n"
+        changed = self.DEFINED.replace(b".param", b"* evenstage: wn 1u -> 3u: reason\n.param")
+        check(self.DEFINED + card, changed.replace(b"wn=1u", b"wn=3u") + card, {"m1": 3})
+
+    def test_a_parameter_inside_the_function_serves_all_who_call_it(self) -> None:
+        text = b"t\n.param wg=1u own(x)='x*wg'\n" + b"m1 y a vss vss nch w='own(2)' l=60n\n"
+        check(
+            text,
+            text.replace(b".param wg=1u", b"* evenstage: wg 1u -> 2u: reason\n.param wg=2u"),
+            {"m1": 2},
+        )
+        handles = sized(text + b"m2 z a vss vss nch w='own(3)' l=60n\n", apart={"m2"})
+        why = "its width 'own(2)' comes from a parameter that sets other things too"
+        assert why in handles.cannot_change().values()
+
+    def test_in_a_leaf_a_call_passes_another_argument(self) -> None:
+        leaf = WITH_PARAMETERS.replace(b"w=wn", b"w='half(2*wn)'")
+        calls = b"x1 a b vdd vss inv wn=0.9u\nx2 b c vdd vss inv\nx3 c d vdd vss inv\n"
+        handles = sized(self.DEFINED + leaf + calls, leaves={"inv"})
+        plan = planned(handles, {"x1": 2, "x2": 3})
+        assert_reads_back(handles, plan)
+        after = rewritten(handles, plan)
+        assert after.startswith(self.DEFINED + leaf)
+        assert b"inv wn=1.8u wp=2.4u\n" in after
+        assert b"inv wn=1.8u wp=3.6u\n" in after
+
+    @pytest.mark.parametrize(
+        ("function", "width", "through"),
+        [
+            (b"f(x)='x-0.1u'", b"'f(wn)'", ", through f()"),
+            (b"f(x)='x > 0.5u ? x : 2*x'", b"'f(wn)'", ", through f()"),
+            (b"f(x)='f(x)'", b"'f(wn)'", None),
+            (b"f(x)='x'", b"'max(wn, 0.5u)'", ""),
+            (b"f(x)='x'", b"'wn > 0.5u ? wn : 1u'", ""),
+        ],
+    )
+    def test_what_is_not_in_proportion_for_every_factor_stays(
+        self, function: bytes, width: bytes, through: str | None
+    ) -> None:
+        text = b"t\n.param wn=1u " + function + b"\nm1 y a vss vss nch w=" + width + b" l=60n\n"
+        if through is None:
+            with pytest.raises(EvenstageError, match="circular-parameter"):
+                sized(text)
+            return
+        why = f"its width {width.decode()} is not in proportion to parameters{through}"
+        assert list(sized(text).cannot_change().values()) == [why]
+
+    def test_a_function_that_grows_endlessly_is_not_written_out(self) -> None:
+        """Each calls the one before twice; the program gives up long before memory does."""
+        functions = b"".join(
+            b".func f%d(x) {f%d(x)+f%d(x)}\n" % (k, k - 1, k - 1) for k in range(1, 13)
+        )
+        text = b"t\n.param wn=1n f0(x)='x'\n" + functions + b"m1 y a 0 0 nch w='f12(wn)' l=60n\n"
+        assert list(sized(text).cannot_change().values()) == [
+            "its width 'f12(wn)' is not in proportion to parameters, through f12()"
+        ]
 
 
 class TestFingers:

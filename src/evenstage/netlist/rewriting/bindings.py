@@ -149,12 +149,12 @@ class Bindings:
         """Yield what uses a name in one step."""
         scope, name, caller = place
         for mention in self.text.of_name.get((scope, name), ()):
-            if mention.card is not None:
-                yield self._on_card(mention.card, mention.name, caller)
-                continue
             ways = (caller,) if mention.scope == scope else self.callers(mention.scope)
             for way in ways:
-                yield from self._unless_passed(Place(mention.scope, mention.name, way))
+                if mention.card is not None:
+                    yield self._on_card(mention.card, mention.name, way)
+                else:
+                    yield from self._unless_passed(Place(mention.scope, mention.name, way))
         if not scope:
             for inner in self.text.scopes_naming.get(name, ()):
                 for way in self.callers(inner):

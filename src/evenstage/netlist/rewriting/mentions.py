@@ -8,6 +8,7 @@ from functools import cached_property, lru_cache
 from typing import TYPE_CHECKING, Final, NamedTuple
 
 from evenstage.netlist.expression import FormulaError
+from evenstage.netlist.rewriting.inlining import TOP, inlined
 from evenstage.netlist.values import parse_value
 
 if TYPE_CHECKING:
@@ -103,19 +104,33 @@ class Mentions:
         mentions: defaultdict[tuple[str, str], list[Mention]] = defaultdict(list)
         for scope, inside in self.inside.items():
             for parameter in (*inside.values(), *self.defaults[scope].values()):
-                names = names_in(parameter.text)
-                where = "" if names == (parameter.name,) else scope
-                for name in names:
-                    mentions[where, name].append(Mention(scope, None, parameter.name))
+                reflexive = names_in(parameter.text) == (parameter.name,)
+                for place in self._names(parameter.text, "" if reflexive else scope):
+                    mentions[place].append(Mention(scope, None, parameter.name))
         for scope, group in self._groups():
             for parameter_name, texts in (*group.parameters.items(), ("", group.values)):
-                names_of = {text: names_in(_text(text)) for text in set(texts)}
+                names_of = {text: self._names(_text(text), scope) for text in set(texts)}
                 if not any(names_of.values()):
                     continue
                 for number, text in zip(group.numbers, texts, strict=True):
-                    for name in names_of[text]:
-                        mentions[scope, name].append(Mention(scope, number, parameter_name))
+                    for place in names_of[text]:
+                        mentions[place].append(Mention(scope, number, parameter_name))
         return mentions
+
+    def _names(self, text: str, scope: str) -> tuple[tuple[str, str], ...]:
+        """Return the names a value of a scope depends on, each with the scope it is one of."""
+        names = names_in(text)
+        if not any(name.endswith("()") for name in names):
+            return tuple((scope, name) for name in names)
+        try:
+            formula = inlined(text, self.netlist.functions)
+        except FormulaError:
+            return tuple((scope, name) for name in names if not name.endswith("()"))
+        found = () if formula is None else sorted(formula.names)
+        return tuple(
+            ("", name.removeprefix(TOP)) if name.startswith(TOP) else (scope, name)
+            for name in found
+        )
 
     def _groups(self) -> Iterator[tuple[str, CardGroup]]:
         """Yield all cards that count, in columns, with their scope."""

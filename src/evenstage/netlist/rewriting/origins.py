@@ -10,6 +10,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final, Literal
 
+from evenstage.netlist.rewriting.mentions import names_in
 from evenstage.netlist.rewriting.sized_block import Slot
 from evenstage.netlist.rewriting.spelling import is_number
 
@@ -80,7 +81,9 @@ def _from_parameters(
     """Return the numbers behind a width that is an expression."""
     traced = block.tracer_of(slot).roots(own.text, card.scope, block.ways(slot))
     if not traced:
-        return f"its width {own.text} is not in proportion to parameters"
+        own_functions = [n for n in names_in(own.text) if n.endswith("()")]
+        through = f", through {', '.join(own_functions)}" if own_functions else ""
+        return f"its width {own.text} is not in proportion to parameters{through}"
     for roots in traced:
         if all(_serves_alone(block, slot, root) for root in roots):
             return tuple(_origin(block, root, slot) for root in sorted(roots, key=_place))

@@ -9,18 +9,18 @@ from typing import TYPE_CHECKING, Final
 
 from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.rewriting.bindings import Bindings, Place
-from evenstage.netlist.rewriting.mentions import names_in
+from evenstage.netlist.rewriting.inlining import TOP, inlined
+from evenstage.netlist.rewriting.proportion import degree
 from evenstage.netlist.rewriting.spelling import is_number
 from evenstage.netlist.values import parse_value
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Iterator, Sequence
+    from collections.abc import Iterator, Mapping, Sequence
 
+    from evenstage.netlist.expression import Formula
     from evenstage.netlist.netlist import Card, Parameter
 
 _ALTERNATIVES: Final = 16
-_FACTORS: Final = (0.73, 1.37)
-_SAME: Final = 1e-9
 
 
 @dataclass(frozen=True, slots=True)
@@ -74,9 +74,19 @@ class Tracer:
     def _on_one_way(
         self, text: str, scope: str, caller: int | None, above: frozenset[Place]
     ) -> Iterator[frozenset[Root]]:
-        places = [Place(scope, name, caller) for name in names_in(text)]
-        for scaled in self._scaled_together(text, places):
+        formula = self._formula(text)
+        places = {} if formula is None else _places(formula, scope, caller)
+        if formula is None or not places:
+            return
+        for scaled in self._scaled_together(formula, places):
             yield from _unions([list(self._of_name(place, above)) for place in scaled])
+
+    def _formula(self, text: str) -> Formula | None:
+        """Return the expression of a value; None where it is none that can be traced."""
+        try:
+            return inlined(text, self.bindings.netlist.functions)
+        except FormulaError:
+            return None
 
     def _of_name(self, place: Place, above: frozenset[Place]) -> Iterator[frozenset[Root]]:
         """Yield the sets that a name is proportional to; nothing for a circle."""
@@ -90,18 +100,21 @@ class Tracer:
             further = above | {place}
             yield from self._of_text(parameter.text, binding.scope, binding.callers, further)
 
-    def _scaled_together(self, text: str, places: Sequence[Place]) -> Iterator[Sequence[Place]]:
+    def _scaled_together(
+        self, formula: Formula, places: Mapping[str, Place]
+    ) -> Iterator[Sequence[Place]]:
         """Yield the sets of names that an expression is proportional to: all, or single ones.
 
         Of single names the smaller value comes first: lengths are small, ratios are not.
         """
-        values = {place.name: self.value(place) for place in places}
-        if not values or any(math.isnan(value) for value in values.values()):
+        values = {name: self.value(place) for name, place in places.items()}
+        if any(math.isnan(value) for value in values.values()):
             return
-        singles = [[p] for p in sorted(places, key=lambda p: (abs(values[p.name]), p.name))]
-        for scaled in [places, *(singles if len(places) > 1 else [])]:
-            if _is_proportional(text, values, {place.name for place in scaled}):
-                yield scaled
+        ordered = sorted(places, key=lambda name: (abs(values[name]), name))
+        singles = [[name] for name in ordered] if len(places) > 1 else []
+        for names in (sorted(places), *singles):
+            if _is_proportional(formula, values, names):
+                yield [places[name] for name in names]
 
     def value(self, place: Place, above: frozenset[Place] = frozenset()) -> float:
         """Return what a name means, on the first way to it; NaN where that cannot be said."""
@@ -109,13 +122,7 @@ class Tracer:
         if binding is None or place in above:
             return math.nan
         further, way = above | {place}, binding.callers[0]
-        try:
-            return _evaluate(
-                binding.parameter.text,
-                lambda name: self.value(Place(binding.scope, name, way), further),
-            )
-        except FormulaError:
-            return math.nan
+        return self._value(binding.parameter.text, binding.scope, way, further)
 
     def value_on_card(self, card: Card, parameter: Parameter, caller: int | None) -> float:
         """Return what a transistor card's parameter means in its text's own unit; NaN if unknown.
@@ -129,12 +136,29 @@ class Tracer:
         caller : int or None
             The way its subcircuit is called.
         """
+        return self._value(parameter.text, card.scope, caller, frozenset())
+
+    def _value(self, text: str, scope: str, caller: int | None, above: frozenset[Place]) -> float:
         try:
-            return _evaluate(
-                parameter.text, lambda name: self.value(Place(card.scope, name, caller))
-            )
+            formula = inlined(text, self.bindings.netlist.functions)
+            if formula is None:
+                return parse_value(text).number
+            places = _places(formula, scope, caller)
+            return formula.value(lambda name: self.value(places[name], above))
         except FormulaError:
             return math.nan
+
+
+def _places(formula: Formula, scope: str, caller: int | None) -> dict[str, Place]:
+    """Return what each name of an expression means on one way of calling its scope."""
+    return {
+        name: (
+            Place("", name.removeprefix(TOP), None)
+            if name.startswith(TOP)
+            else Place(scope, name, caller)
+        )
+        for name in sorted(formula.names)
+    }
 
 
 def _unions(choices: Sequence[Sequence[frozenset[Root]]]) -> Iterator[frozenset[Root]]:
@@ -143,26 +167,10 @@ def _unions(choices: Sequence[Sequence[frozenset[Root]]]) -> Iterator[frozenset[
         yield frozenset[Root]().union(*choice)
 
 
-def _is_proportional(text: str, values: dict[str, float], scaled: set[str]) -> bool:
+def _is_proportional(formula: Formula, values: Mapping[str, float], scaled: list[str]) -> bool:
     """Tell whether an expression grows by a factor when some of its names do."""
     try:
-        now = _evaluate(text, values.__getitem__)
-        return now > 0 and all(
-            math.isclose(
-                _evaluate(
-                    text,
-                    {n: v * (f if n in scaled else 1.0) for n, v in values.items()}.__getitem__,
-                ),
-                f * now,
-                rel_tol=_SAME,
-            )
-            for f in _FACTORS
-        )
+        positive = formula.value(values.__getitem__) > 0
+        return positive and degree(formula.root, scaled, values.__getitem__) == 1
     except FormulaError:
         return False
-
-
-def _evaluate(text: str, lookup: Callable[[str], float]) -> float:
-    """Return what a value means; raises FormulaError where it means nothing."""
-    value = parse_value(text)
-    return value.number if value.formula is None else value.formula.value(lookup)
