@@ -119,6 +119,8 @@ class Brief:
     case : {"any", "exact"}, optional
         Whether case counts in the names of nets; None: only where two ports of one subcircuit
         differ by it alone.
+    first_line : {"title", "card"}, optional
+        What the netlist begins with; None: a title, unless it is plainly something else.
     source : SourceText, optional
         The file.
     """
@@ -141,6 +143,7 @@ class Brief:
     aim_width: float | None = None
     aim_spend: Literal["width", "energy"] = "width"
     case: Literal["any", "exact"] | None = None
+    first_line: Literal["title", "card"] | None = None
     source: SourceText | None = None
 
 
@@ -186,10 +189,12 @@ BRIEF_KEYS: Final[Mapping[str, Entry]] = {
         }
     ),
     "case": Text(choices=("any", "exact")),
+    "first_line": Text(choices=("title", "card")),
 }
 
 
 _CASES: Final[Mapping[str, Literal["any", "exact"]]] = {"any": "any", "exact": "exact"}
+_FIRST_LINES: Final[Mapping[str, Literal["title", "card"]]] = {"title": "title", "card": "card"}
 
 
 def read_brief(path: str | Path) -> Brief:
@@ -233,6 +238,7 @@ def read_brief(path: str | Path) -> Brief:
         aim_width=aim.optional_number("width"),
         aim_spend="energy" if aim.text("spend") == "energy" else "width",
         case=_CASES.get(settings.optional_text("case") or ""),
+        first_line=_FIRST_LINES.get(settings.optional_text("first_line") or ""),
         source=settings.where.places.source,
     )
 

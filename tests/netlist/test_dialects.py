@@ -135,6 +135,16 @@ class TestText:
         commented = read_bytes(f"*\nm1 a b c d nch\n{INV}".encode(), "top.sp", Path())
         assert len(commented) == 3
 
+    @pytest.mark.parametrize("line", ["m1 a b c d nch", "R1 a b 1k", ".global vdd"])
+    def test_what_the_first_line_is_can_be_set(self, line: str) -> None:
+        """The brief can say that it is a title, or that it is a card, whatever it looks like."""
+        data = f"{line}\n{INV}".encode()
+        title = read_bytes(data, "top.sp", Path(), None, "title")
+        assert (len(title), title.global_names, title.notices) == (2, (), ())
+        card = read_bytes(data, "top.sp", Path(), None, "card")
+        found = len(card) == 3 or card.global_names == ("vdd",)
+        assert (found, card.notices) == (True, ())
+
     @pytest.mark.parametrize("change", ["\r\n", "\r", "\t\n", "   \n", "\n\n"])
     def test_line_ends_and_trailing_blanks(self, change: str) -> None:
         """Any line end, tabs and trailing blanks are read, and written back untouched."""
@@ -598,6 +608,25 @@ class TestDevices:
         devices = laid(f"m1 d g s b nch {card} l=1u\n")
         assert microns(devices) == [width]
         assert (devices.multiplier[0], devices.fingers[0]) == (copies, fingers)
+
+    def test_what_a_width_with_fingers_means_is_said_unless_the_process_says_it(self) -> None:
+        """A notice tells what was taken and what overrules it."""
+        text = "m1 d g s b nch w=4u nf=2 l=1u\n"
+        (said,) = [n for n in laid(text).notices if n.code == "finger-width"]
+        assert said.message == (
+            "the width of cards with several fingers is taken as that of all fingers together; "
+            "width_is in the process file overrules this"
+        )
+        assert said.place == "top.sp:2:1"
+        told = elaborate(text_of(text), None, process(width_is_said=True))
+        assert "finger-width" not in codes(told)
+        assert "finger-width" not in codes(laid(text.replace("nf=2", "nf=1")))
+
+    def test_both_multipliers_on_one_card_are_said(self) -> None:
+        """Where both are more than one, both count, with a notice."""
+        devices = laid("m1 d g s b nch w=4u m=2 mult=3 l=1u\n")
+        assert devices.multiplier.tolist() == [6.0]
+        assert "both-multipliers" in codes(devices)
 
     def test_the_width_of_a_finger_and_counts_of_fins(self) -> None:
         """The process says whether a width is of one finger, or counts fins."""

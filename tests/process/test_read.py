@@ -116,6 +116,7 @@ class TestReadProcess:
                 shape_carry=0.2,
                 width_parameter="wf",
                 width_is="finger",
+                width_is_said=True,
                 fingers_parameter="nf",
                 width_unit=1e-6,
                 width_min=0.22e-6,

@@ -52,8 +52,9 @@ def fit(
     one_process(question, "fit")
     refuse_existing(output, force=force)
     told = read_results(results) if results else None
-    measured, netlist = read_measurements(measurements, told), read(cells)
+    measured = read_measurements(measurements, told)
     brief = read_brief(question.brief) if question.brief else Brief()
+    netlist = read(cells, brief.case, brief.first_line)
     given = read_process(question.process) if question.process else None
     found = measured_cells(measured, netlist, given or inferred(netlist), brief)
     first = elaborate(netlist, found[0].name, given or inferred(netlist), brief)
@@ -78,8 +79,8 @@ def fit_simulated(
     """
     one_process(question, "fit")
     refuse_existing(output, force=force)
-    netlist = read(cells)
     brief = read_brief(question.brief) if question.brief else Brief()
+    netlist = read(cells, brief.case, brief.first_line)
     given = read_process(question.process) if question.process else None
     found = leaf_cells(netlist, given or inferred(netlist), brief)
     first = elaborate(netlist, found[0].name, given or inferred(netlist), brief)
@@ -120,8 +121,8 @@ def write_deck(deck: Path, cells: Path, question: Question, *, force: bool = Fal
         raise OutputError(message, code="output-exists")
     for path in (deck, table):
         check_place(path, [cells])
-    netlist = read(cells)
     brief = read_brief(question.brief) if question.brief else Brief()
+    netlist = read(cells, brief.case, brief.first_line)
     given = read_process(question.process) if question.process else None
     found = standing_alone(netlist, given or inferred(netlist), brief)
     first = elaborate(netlist, found[0].name, given or inferred(netlist), brief)

@@ -151,7 +151,7 @@ def recognised(
         For every mistake in the inputs.
     """
     brief = read_brief(question.brief) if question.brief else Brief()
-    netlist = read(path, brief.case)
+    netlist = read(path, brief.case, brief.first_line)
     given = read_process(question.process) if question.process else None
     devices = elaborate(netlist, question.top, given or inferred(netlist), brief)
     record = find_record(netlist.sources[0])

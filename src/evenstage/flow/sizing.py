@@ -97,7 +97,7 @@ def _read_back(block: Block, output: Path, lost: Sequence[Notice]) -> StructureC
         reason = "it includes files that are not found from its place"
         return StructureCheck(same=None, reason=reason, transistors=0)
     try:
-        written = read(output, block.brief.case)
+        written = read(output, block.brief.case, block.brief.first_line)
         after = elaborate(written, before.top or None, block.process, block.brief)
         check = compare_structure(before, after)
         reason = check.reason

@@ -7,7 +7,7 @@ with the ln 2 of an RC response inside, so that a delay is ``R C``. Its gate loa
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
 if TYPE_CHECKING:
@@ -140,6 +140,8 @@ class Transistor:
         For simulation alone.
     width_parameter, width_is, fingers_parameter : str
         Which card parameter holds the width, what it means, which one holds the finger count.
+    width_is_said : bool
+        Whether a process file says what a width means, or names the finger count.
     width_unit : float, optional
         m per unit of a number without suffix; None: decided from what makes sense.
     width_min, width_max, width_step, finger_width_max : float, optional
@@ -169,6 +171,7 @@ class Transistor:
     channel: Channel = Channel()
     width_parameter: str = "w"
     width_is: WidthMeaning = "total"
+    width_is_said: bool = field(default=False, compare=False)
     fingers_parameter: str | None = None
     width_unit: float | None = None
     width_min: float | None = None
@@ -227,7 +230,7 @@ class Process:
         return tuple(
             (
                 tuple(pattern.text for pattern in one.models),
-                *(one.polarity, one.length, one.width_parameter, one.width_is),
+                *(one.polarity, one.length, one.width_parameter, one.width_is, one.width_is_said),
                 *(one.fingers_parameter, one.width_unit, one.width_min),
             )
             for one in self.transistors

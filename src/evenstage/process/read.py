@@ -69,7 +69,7 @@ _TRANSISTOR_KEYS: Final[Mapping[str, Entry]] = {
     "drain_shared": Number(least=0, most=2, default=1.0),
     "drain_inner": Number(least=0, most=2, default=1.0),
     "width_parameter": Text(default="w"),
-    "width_is": Text(choices=("total", "finger", "fins"), default="total"),
+    "width_is": Text(choices=("total", "finger", "fins")),
     "fingers_parameter": Text(),
     "width_unit": Number(unit="m", above=0, most=1, word="auto"),
     "width_min": _WIDTH,
@@ -134,6 +134,7 @@ def _transistor(table: Settings, supply: float) -> Transistor:
     channel = _channel(table, supply, c_gate)
     derived = _derived(table, supply, channel)
     slope, shape = table.optional_number("slope"), table.optional_number("shape")
+    said = table.optional_text("width_is")
     return Transistor(
         models=table.names("models"),
         polarity=cast("Polarity", table.text("polarity")),
@@ -157,7 +158,8 @@ def _transistor(table: Settings, supply: float) -> Transistor:
         drain_shared=table.number("drain_shared"),
         drain_inner=table.number("drain_inner"),
         width_parameter=table.text("width_parameter").lower(),
-        width_is=cast("WidthMeaning", table.text("width_is")),
+        width_is=cast("WidthMeaning", said or "total"),
+        width_is_said=said is not None or fingers is not None,
         fingers_parameter=None if fingers is None else fingers.lower(),
         width_unit=table.optional_number("width_unit"),
         width_min=table.optional_number("width_min"),

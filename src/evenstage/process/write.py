@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 _ALWAYS: Final = frozenset({"length", "r_w", "c_gate", "c_drain"})
 
 #: What a file has no key for, and what is written apart.
-_APART: Final = frozenset({"models", "polarity", "junctions", "channel"})
+_APART: Final = frozenset({"models", "polarity", "junctions", "channel", "width_is_said"})
 
 #: The keys of what a channel knows.
 _CHANNEL_KEYS: Final = {
@@ -61,7 +61,8 @@ def _transistor_lines(transistor: Transistor) -> list[str]:
     lines = [f"models = [{names}]", f"polarity = {_quoted(transistor.polarity)}"]
     for field in fields(Transistor):
         value = getattr(transistor, field.name)
-        if field.name in _APART or (value == field.default and field.name not in _ALWAYS):
+        always = field.name in _ALWAYS or (field.name == "width_is" and transistor.width_is_said)
+        if field.name in _APART or (value == field.default and not always):
             continue
         shown = _number(value) if isinstance(value, float) else _quoted(value)
         lines.append(f"{field.name} = {shown}")

@@ -193,7 +193,7 @@ class _Sizes:
         sizes = Geometry(
             width=self._widths(fingers),
             length=self._lengths(),
-            multiplier=self._counts("m") * self._counts("mult"),
+            multiplier=self._multipliers(),
             fingers=fingers,
             drain_area=self._metres(self._drawn.column("ad"), 2),
             source_area=self._metres(self._drawn.column("as"), 2),
@@ -247,7 +247,27 @@ class _Sizes:
             named = np.where(np.isnan(named), self._drawn.column(name).numbers, named)
         fingers = np.where(np.isnan(named), 1.0, named)
         self._refuse(~(fingers > 0), self._bad_fingers)
+        self._note_fingers(fingers)
         return fingers
+
+    def _note_fingers(self, fingers: FloatArray) -> None:
+        """Take a notice of what widths mean on cards with several fingers, if nobody said it."""
+        rows = self._rows_where(lambda t: not t.width_is_said) & (fingers != 1)
+        if rows.any():
+            message = (
+                "the width of cards with several fingers is taken as that of all fingers together; "
+                "width_is in the process file overrules this"
+            )
+            self._notices.append(Notice("finger-width", message, self._place(rows)))
+
+    def _multipliers(self) -> FloatArray:
+        """Return the copies of each card; ``m`` and ``mult`` on one card both count."""
+        m, mult = self._counts("m"), self._counts("mult")
+        both = (m != 1) & (mult != 1)
+        if both.any():
+            message = "cards that give both m and mult stand for the product of both"
+            self._notices.append(Notice("both-multipliers", message, self._place(both)))
+        return m * mult
 
     def _counts(self, name: str) -> FloatArray:
         counts = self._drawn.column(name).numbers

@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 import re
-from typing import Final
+from typing import Final, Literal
 
 from evenstage.errors import NetlistError, Notice
 from evenstage.netlist.grammar import ENCODING, terminal
 from evenstage.netlist.reading.canonical import BOM
 from evenstage.netlist.reading.statement import Statement, parse_statement
 from evenstage.source import SourceText, Span
+
+FirstLine = Literal["title", "card"]
 
 #: Bytes of the first line that are looked at to tell a title from a card.
 _LOOK: Final = 1 << 14
@@ -34,13 +36,15 @@ def check_text(source: SourceText) -> None:
         raise NetlistError(f"'{source.label}' is not a text file", code="not-text")
 
 
-def after_title(source: SourceText) -> tuple[int, Notice | None]:
+def after_title(source: SourceText, first_line: FirstLine | None) -> tuple[int, Notice | None]:
     """Return where the first line after the title begins; 0 if there is no title.
 
     Parameters
     ----------
     source : SourceText
         The main file.
+    first_line : {"title", "card"}, optional
+        What it begins with; None: a title, unless it is plainly something else.
 
     Returns
     -------
@@ -50,6 +54,8 @@ def after_title(source: SourceText) -> tuple[int, Notice | None]:
         If the title could be a card.
     """
     line = _FIRST_LINE.match(source.data)
+    if first_line is not None:
+        return (0 if line is None or first_line == "card" else line.end()), None
     title = re.compile(terminal("TITLE").encode(ENCODING), re.IGNORECASE)
     if line is None or title.match(source.data, 0, min(line.end(), _LOOK)) is None:
         return 0, None
@@ -59,7 +65,10 @@ def after_title(source: SourceText) -> tuple[int, Notice | None]:
         return line.end(), None
     if statement.rule == "call" and _calls_defined(statement, source):
         return 0, None
-    message = "the first line is taken as the title, though it could be a card"
+    message = (
+        "the first line is taken as the title, though it could be a card; "
+        'first_line = "card" in the brief overrules this'
+    )
     return line.end(), Notice("title", message, Span(source, start, line.end()).place)
 
 

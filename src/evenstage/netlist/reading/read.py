@@ -16,9 +16,12 @@ from evenstage.source import SourceText
 if TYPE_CHECKING:
     from evenstage.netlist.netlist import Netlist
     from evenstage.netlist.reading.case import Case
+    from evenstage.netlist.reading.opening import FirstLine
 
 
-def read(path: Path | str, case: Case | None = None) -> Netlist:
+def read(
+    path: Path | str, case: Case | None = None, first_line: FirstLine | None = None
+) -> Netlist:
     """Read a netlist and the files it includes.
 
     Parameters
@@ -28,6 +31,8 @@ def read(path: Path | str, case: Case | None = None) -> Netlist:
     case : {"any", "exact"}, optional
         Whether case counts in the names of nets; None: only if two ports of one subcircuit differ
         by it alone.
+    first_line : {"title", "card"}, optional
+        What the main file begins with; None: a title, unless it is plainly something else.
 
     Raises
     ------
@@ -51,10 +56,16 @@ def read(path: Path | str, case: Case | None = None) -> Netlist:
     except (OSError, ValueError) as error:
         message = f"cannot read '{path}': {why_not(error)}"
         raise NetlistError(message, code="unreadable-file") from None
-    return _read(SourceText(Path(os.path.realpath(path)), data, str(path)), path, case)
+    return _read(SourceText(Path(os.path.realpath(path)), data, str(path)), path, case, first_line)
 
 
-def read_bytes(data: bytes, label: str, folder: Path, case: Case | None = None) -> Netlist:
+def read_bytes(
+    data: bytes,
+    label: str,
+    folder: Path,
+    case: Case | None = None,
+    first_line: FirstLine | None = None,
+) -> Netlist:
     r"""Read a netlist that is not (yet) a file.
 
     Parameters
@@ -66,6 +77,8 @@ def read_bytes(data: bytes, label: str, folder: Path, case: Case | None = None) 
     folder : Path
         Where the files it includes are looked for.
     case : {"any", "exact"}, optional
+        As for ``read``.
+    first_line : {"title", "card"}, optional
         As for ``read``.
 
     Raises
@@ -79,13 +92,16 @@ def read_bytes(data: bytes, label: str, folder: Path, case: Case | None = None) 
     0
     """
     name = folder / label
-    return _read(SourceText(Path(os.path.realpath(name)), data, label), name, case)
+    return _read(SourceText(Path(os.path.realpath(name)), data, label), name, case, first_line)
 
 
-def _read(source: SourceText, name: Path, case: Case | None) -> Netlist:
+def _read(
+    source: SourceText, name: Path, case: Case | None, first_line: FirstLine | None
+) -> Netlist:
     with without_collection():
         reader = Reader()
-        reader.read_main(source, Path(os.path.abspath(name)))  # noqa: PTH100 - links stay links
+        absolute = Path(os.path.abspath(name))  # noqa: PTH100 - links stay links
+        reader.read_main(source, absolute, first_line)
         netlist = settle_case(reader.finish(), reader.word_numbers, case, reader.clash)
         reader.release()
         return netlist

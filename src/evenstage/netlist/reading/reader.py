@@ -34,6 +34,7 @@ if TYPE_CHECKING:
     from pathlib import Path
 
     from evenstage.netlist.netlist import Parameter
+    from evenstage.netlist.reading.opening import FirstLine
     from evenstage.netlist.reading.statement import Mark
 
 #: A sequence of terminals is learned when it is met for this time: an expression takes as long to
@@ -78,7 +79,9 @@ class Reader:
         self._unknown: dict[str, tuple[int, Span]] = {}
         self._notices: list[Notice] = []
 
-    def read_main(self, source: SourceText, name: Path | None = None) -> None:
+    def read_main(
+        self, source: SourceText, name: Path | None = None, first_line: FirstLine | None = None
+    ) -> None:
         """Read the main file, whose first line may be a title.
 
         Parameters
@@ -87,6 +90,8 @@ class Reader:
             The file.
         name : Path, optional
             Where it was asked for, absolute, if that is a link to it.
+        first_line : {"title", "card"}, optional
+            What it begins with; None: what it looks like.
 
         Raises
         ------
@@ -95,7 +100,7 @@ class Reader:
         """
         self._includes.add(source, name or source.path)
         check_text(source)
-        start, notice = after_title(source)
+        start, notice = after_title(source, first_line)
         self._notices += [] if notice is None else [notice]
         unit = Unit(source)
         with self._includes.entered(source, None, None):
