@@ -91,8 +91,8 @@ class Library:
         defined = target in self.netlist.subcircuits
         possible = self._covered.get(target)
         if possible is None:
-            hidden = not defined or self._is_opaque(target)
-            possible = hidden and self.process.type_of(target) is not None
+            covered = self.process.type_of(target) is not None
+            possible = covered and (not defined or self._is_opaque(target))
             self._covered[target] = possible
         sized = not self._sizes.isdisjoint(parameters)
         if possible and sized:

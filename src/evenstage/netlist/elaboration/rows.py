@@ -10,7 +10,7 @@ import numpy as np
 from evenstage.netlist.elaboration.columns import Column, absent, card_column, joined
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping, Sequence
+    from collections.abc import Iterator, Mapping, Sequence
 
     from numpy.typing import NDArray
 
@@ -55,7 +55,8 @@ class RowsBuilder:
     ) -> None:
         self._netlist = netlist
         self._mistakes = mistakes
-        self._columns: dict[str, list[Column]] = {name: [] for name in names}
+        self._names = names
+        self._columns: dict[str, list[tuple[int, Column]]] = {}
         self._count = 0
         self._cards = [np.zeros(0, np.int32)]
         self._nets = [np.zeros((pins, 0), np.int32)]
@@ -63,11 +64,12 @@ class RowsBuilder:
 
     def add(self, cards: CardColumns, nets: IntArray) -> None:
         """Take some cards and their nets, shape ``(pins, n)``."""
-        for name, parts in self._columns.items():
-            column = absent(len(cards.numbers))
-            with self._mistakes.collecting():
-                column = card_column(self._netlist, cards, name, self._count)
-            parts.append(column)
+        for name in self._names:
+            if name in cards.values:
+                column = absent(len(cards.numbers))
+                with self._mistakes.collecting():
+                    column = card_column(self._netlist, cards, name, self._count)
+                self._columns.setdefault(name, []).append((self._count, column))
         self._count += len(cards.numbers)
         self._cards.append(cards.numbers)
         self._nets.append(nets)
@@ -76,12 +78,15 @@ class RowsBuilder:
     def rows(self) -> Rows:
         """Return what was collected, in the order of the cards, without empty columns."""
         cards = np.concatenate(self._cards)
+        if len(cards) == 0:
+            none = self._targets[0]
+            return Rows(card=cards, nets=self._nets[0], target=none, target_names=(), columns={})
         order = _order(cards)
         columns = {}
-        for name in list(self._columns):
+        for name in [name for name in self._names if name in self._columns]:
             parts = self._columns.pop(name)  # so that nothing stays twice
-            if any(part.styles.any() for part in parts):
-                columns[name] = joined(parts).in_order(order)
+            if any(part.styles.any() for _, part in parts):
+                columns[name] = joined(_without_gaps(parts, self._count)).in_order(order)
         words, targets = distinct(np.concatenate(self._targets))
         return Rows(
             card=cards[order],
@@ -90,6 +95,18 @@ class RowsBuilder:
             target_names=tuple(map(folded_name, self._netlist.cards.words.some(words))),
             columns=columns,
         )
+
+
+def _without_gaps(parts: list[tuple[int, Column]], count: int) -> Iterator[Column]:
+    """Yield the parts of a column, each with its first row, and what is absent between them."""
+    row = 0
+    for first, part in parts:
+        if first > row:
+            yield absent(first - row)
+        yield part
+        row = first + len(part.numbers)
+    if count > row:
+        yield absent(count - row)
 
 
 def _order(cards: IntArray) -> NDArray[np.intp] | slice:
@@ -101,6 +118,8 @@ def _order(cards: IntArray) -> NDArray[np.intp] | slice:
 
 def distinct(words: IntArray) -> tuple[IntArray, IntArray]:
     """Return the distinct words in the order in which they come, and the index of each."""
+    if len(words) == 1:
+        return words, np.zeros(1, np.int32)
     distinct, firsts, inverse = np.unique(words, return_index=True, return_inverse=True)
     order = np.argsort(firsts)
     rank = np.empty(len(order), np.int32)
