@@ -17,6 +17,8 @@ if TYPE_CHECKING:
 _LINE_END = re.compile(rb"[\r\n]")
 #: Bytes between places where the lines before are known.
 _PART: Final = 1 << 16
+#: Bytes behind an offset up to which its line is given.
+_SHOWN: Final = 1 << 16
 
 
 @dataclass(frozen=True)
@@ -78,10 +80,13 @@ class SourceText:
         return len(self.data[start:offset].decode("utf-8", "surrogateescape")) + 1
 
     def line(self, offset: int) -> str:
-        """Return the text of the line of a byte offset, without its line end."""
-        start = self._line_start(offset)
-        end = _LINE_END.search(self.data, start)
-        text = self.data[start : len(self.data) if end is None else end.start()]
+        """Return the text of the line of a byte offset, without its line end.
+
+        Far behind the offset it is cut: messages show less, and a line may be the whole file.
+        """
+        start, most = self._line_start(offset), min(len(self.data), offset + _SHOWN)
+        end = _LINE_END.search(self.data, start, most)
+        text = self.data[start : most if end is None else end.start()]
         return text.decode("utf-8", "surrogateescape")
 
 

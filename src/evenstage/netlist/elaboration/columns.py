@@ -8,7 +8,6 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.errors import MistakesError
 from evenstage.netlist.elaboration.mistakes import MOST, Mistakes
 from evenstage.netlist.expression import FormulaError
 from evenstage.netlist.parameters import bad_value
@@ -19,7 +18,6 @@ if TYPE_CHECKING:
 
     from numpy.typing import NDArray
 
-    from evenstage.errors import ElaborationError
     from evenstage.netlist.devices import FloatArray
     from evenstage.netlist.netlist import CardColumns, Netlist, Parameter
     from evenstage.netlist.parameters import Scope
@@ -94,7 +92,9 @@ def value_span(netlist: Netlist, number: int, name: str) -> Span:
     return card.span if parameter is None else parameter.span
 
 
-def card_column(netlist: Netlist, cards: CardColumns, name: str, first_row: int) -> Column:
+def card_column(
+    netlist: Netlist, cards: CardColumns, name: str, first_row: int, mistakes: Mistakes
+) -> Column:
     """Return one parameter of some cards; an empty name stands for the unnamed value.
 
     Parameters
@@ -107,26 +107,24 @@ def card_column(netlist: Netlist, cards: CardColumns, name: str, first_row: int)
         The parameter.
     first_row : int
         What the first of them counts as in the formulas.
-
-    Raises
-    ------
-    ElaborationError
-        If a text is neither a number nor an expression.
+    mistakes : Mistakes
+        Takes the texts that are neither a number nor an expression; their values are NaN.
     """
     ids = cards.values.get(name)
     if ids is None:
         return absent(len(cards.numbers))
     numbers, styles = netlist.cards.values.worth(ids)
     formulas = []
-    wrong: list[ElaborationError] = []
+    wrong = 0
     for row in np.flatnonzero(styles == Style.COMPUTED).tolist():
         text = netlist.cards.values.text(int(ids[row]))
         try:
             parse_value(text)
         except FormulaError as error:
-            span = value_span(netlist, int(cards.numbers[row]), name)
-            wrong.append(bad_value(text, error, span))
-        formulas.append((first_row + row, text))
-    if wrong:
-        raise wrong[0] if len(wrong) == 1 else MistakesError(tuple(wrong[:MOST]))
+            wrong += 1
+            if wrong <= MOST:
+                span = value_span(netlist, int(cards.numbers[row]), name)
+                mistakes.add(bad_value(text, error, span))
+        else:
+            formulas.append((first_row + row, text))
     return Column(numbers, styles, tuple(formulas))

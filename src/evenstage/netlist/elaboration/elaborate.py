@@ -13,6 +13,7 @@ from evenstage.netlist.elaboration.extent import check_extent, check_templates
 from evenstage.netlist.elaboration.flatten import flatten, ranges, starts_of
 from evenstage.netlist.elaboration.geometry import Drawn, geometry
 from evenstage.netlist.elaboration.library import Library
+from evenstage.netlist.elaboration.mistakes import Mistakes
 from evenstage.netlist.elaboration.nets import Joints, NetNames
 from evenstage.netlist.elaboration.template import column_of
 from evenstage.netlist.elaboration.tops import AmbiguousTopError, choose_top
@@ -93,8 +94,10 @@ class _Block:
     def __init__(self, library: Library, name: str) -> None:
         self._library = library
         self._netlist = library.netlist
-        self._definitions = library.reachable(name)
+        self._definitions = library.reachable(name, going_on=True)
         self._templates, callees = _bound(library, name, self._definitions)
+        if len(library.mistakes):
+            self._add_wrong_sizes(library.mistakes)
         library.mistakes.check()
         check_extent(self._templates, callees)
         self._global_names = self._globals_used()
@@ -106,6 +109,16 @@ class _Block:
         self._nodes: Nodes | None = None
         self._members: Indices = np.zeros(0, np.int32)
         self._net, self._kept = self._joined()
+
+    def _add_wrong_sizes(self, mistakes: Mistakes) -> None:
+        """Add the mistakes in sizes that are known to those there are already."""
+        sizes = Mistakes(self._netlist.sources)
+        with sizes.collecting():
+            geometry(self._drawn(), self._netlist, self._library.process)
+        for error in sizes.errors():
+            # Of a card that was not understood nobody need hear that it has no width.
+            if error.code != "missing-width" or not mistakes.any_within(error.span):
+                mistakes.add(error)
 
     def _globals_used(self) -> tuple[str, ...]:
         """Return the global nets that occur, ``0`` among them, in the order of declaration."""

@@ -210,7 +210,9 @@ class _Sizes:
         width[in_fins] = self._width.numbers[in_fins] * self._fin_width()[in_fins]
         missing = np.isnan(width)
         width[missing] = self._netlist.options.get("defw", np.nan)
-        self._refuse(np.isnan(width), self._missing_width)
+        # A width that is given and has no value is a mistake told already.
+        unsaid = self._width.styles == Style.ABSENT
+        self._refuse(np.isnan(width) & unsaid, self._missing_width)
         self._refuse(width <= 0, self._bad_width)
         self._refuse(_unthinkable(width), lambda row: self._unthinkable(row, width, "width"))
         each = self._rows_where(lambda t: t.width_is == "finger")

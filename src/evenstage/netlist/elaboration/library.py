@@ -53,6 +53,7 @@ class Library:
         self.alike: dict[CallForm, tuple[Key, float]] = {}
         self._covered: dict[str, bool] = {}
         self._missing: set[str] = set()
+        self._circular = False
 
     def outline(self, name: str) -> Outline:
         """Return the outline of a definition by lower-case name; empty: the top level."""
@@ -111,8 +112,16 @@ class Library:
             for card in found
         )
 
-    def reachable(self, top: str) -> list[str]:
+    def reachable(self, top: str, *, going_on: bool = False) -> list[str]:
         """Return a definition and all it calls, callers before callees.
+
+        Parameters
+        ----------
+        top : str
+            Lower-case name of the definition; empty: the top level.
+        going_on : bool
+            Whether mistakes wait to be told together with those of later steps, if these can be
+            taken: calls of what is missing are left out then, but no definition may call itself.
 
         Raises
         ------
@@ -133,7 +142,8 @@ class Library:
                 path[name] = None
                 stack.append((name, True))
                 stack += [(callee, False) for callee in self._callees(name, path)]
-        self.mistakes.check()
+        if self._circular or not going_on:
+            self.mistakes.check()
         return order[::-1]
 
     def _callees(self, name: str, path: Collection[str]) -> list[str]:
@@ -147,6 +157,7 @@ class Library:
                     self.mistakes.add(self._unknown(call.card))
             elif call.target in path:
                 loop = list(path)
+                self._circular = True
                 self.mistakes.add(self._recursive(call.card, loop[loop.index(call.target) :]))
             else:
                 callees[call.target] = None

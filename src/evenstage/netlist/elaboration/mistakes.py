@@ -10,7 +10,7 @@ from evenstage.errors import ElaborationError, MistakesError
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
 
-    from evenstage.source import SourceText
+    from evenstage.source import SourceText, Span
 
 #: Mistakes of one kind beyond which nobody reads on.
 MOST: Final = 1000
@@ -42,6 +42,20 @@ class Mistakes:
         place = () if span is None else (span.source.path, span.start, span.end)
         self._errors.setdefault((error.code, error.message, place), error)
 
+    def errors(self) -> list[ElaborationError]:
+        """Return the errors in the order in which they are told."""
+        return sorted(self._errors.values(), key=self._place)
+
+    def any_within(self, span: Span | None) -> bool:
+        """Tell whether an error is about some bytes of a span."""
+        return span is not None and any(
+            error.span is not None
+            and error.span.source.path == span.source.path
+            and span.start <= error.span.start
+            and error.span.end <= span.end
+            for error in self._errors.values()
+        )
+
     @contextmanager
     def collecting(self) -> Iterator[None]:
         """Take the error that ends what is done inside, and go on behind it."""
@@ -58,7 +72,7 @@ class Mistakes:
         ElaborationError
             The only error, or a ``MistakesError`` that carries all.
         """
-        errors = sorted(self._errors.values(), key=self._place)
+        errors = self.errors()
         if len(errors) == 1:
             raise errors[0]
         if errors:

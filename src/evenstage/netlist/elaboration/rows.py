@@ -66,9 +66,7 @@ class RowsBuilder:
         """Take some cards and their nets, shape ``(pins, n)``."""
         for name in self._names:
             if name in cards.values:
-                column = absent(len(cards.numbers))
-                with self._mistakes.collecting():
-                    column = card_column(self._netlist, cards, name, self._count)
+                column = card_column(self._netlist, cards, name, self._count, self._mistakes)
                 self._columns.setdefault(name, []).append((self._count, column))
         self._count += len(cards.numbers)
         self._cards.append(cards.numbers)

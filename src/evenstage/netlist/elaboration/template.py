@@ -102,6 +102,8 @@ class Binder:
         alike: dict[CallForm, tuple[Key, float]] = {}
         shared = self._library.alike
         for call in outline.calls:
+            if call.target not in self._netlist.subcircuits:
+                continue  # a mistake that was noticed before
             form = (call.target, len(call.nets), id(call.parameters))
             known = shared.get(form) or alike.get(form)
             if known is not None:
@@ -152,6 +154,7 @@ class Binder:
     def _bound(self, rows: Rows, scope: Scope) -> dict[str, Column]:
         bound = {}
         for name, column in rows.columns.items():
+            bound[name] = column
             with self._library.mistakes.collecting():
                 bound[name] = column.bound(scope, partial(self._span, rows, name))
         return bound
