@@ -95,6 +95,21 @@ class TestSpend:
         assert width.bound_on == "width"
 
 
+class TestFirstLine:
+    def test_the_brief_says_whether_it_is_a_title(
+        self, netlist: Path, question: flow.Question, tmp_path: Path
+    ) -> None:
+        netlist.write_text("x0 q r inv wn=2u\n" + CHAIN)
+        brief = tmp_path / "brief.toml"
+        tops = {}
+        for word in ("title", "card"):
+            brief.write_text(f'first_line = "{word}"\n')
+            block = flow.load(netlist, replace(question, brief=brief))
+            assert block.analysis.timing is not None
+            tops[word] = block.analysis.timing.circuit.devices.top
+        assert tops == {"title": "chain", "card": ""}
+
+
 class TestUnitInverter:
     """It stays that of the netlist as first drawn, or delays would move without a cause."""
 

@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 import os
+import tracemalloc
 from contextlib import suppress
 from pathlib import Path
+from time import process_time
 
 import pytest
 
@@ -161,3 +163,52 @@ def test_a_file_nobody_may_read(tmp_path: Path) -> None:
     (tmp_path / "a.sp").chmod(0)
     with pytest.raises(NetlistError, match="permission denied"):
         read(tmp_path / "a.sp")
+
+
+def test_one_line_of_many_megabytes_takes_little_more_memory_than_itself(tmp_path: Path) -> None:
+    (tmp_path / "top.sp").write_bytes(b"* t\nx1 a" + b" net" * (1 << 22) + b"\n")
+    tracemalloc.start()
+    try:
+        with pytest.raises(NetlistError) as caught:
+            read(tmp_path / "top.sp")
+        assert len(str(caught.value)) < 1000
+        assert tracemalloc.get_traced_memory()[1] < 3 << 24
+    finally:
+        tracemalloc.stop()
+
+
+def test_files_that_include_each_other_without_end(tmp_path: Path) -> None:
+    for level in range(102):
+        (tmp_path / f"f{level}.sp").write_text(f".include f{level + 1}.sp\n")
+    with pytest.raises(NetlistError, match="files are included more than 100 deep"):
+        read(tmp_path / "f0.sp")
+
+
+@pytest.mark.parametrize("data", [b"\x7fELF\0\0", b"\xff\xfem\x001\x00", b"* t\nm1 \0 b 0 0 nch\n"])
+def test_files_that_are_no_text(data: bytes) -> None:
+    with pytest.raises(NetlistError) as caught:
+        read_bytes(data, "top.sp", Path())
+    assert caught.value.code == "not-text"
+
+
+@pytest.mark.parametrize(
+    "size", ["w=" + "9" * 400, "w=1e999", "w='1e300*1e300'", "w='2**9**9**9'", "w=1u m=1e400"]
+)
+def test_numbers_beyond_all_measure(size: str) -> None:
+    message = refusal(f"* t\nm1 a b 0 0 nch l=1u {size}\n")
+    assert message.startswith("top.sp:2:") or "bad-multiplier" in message
+
+
+def test_a_chain_of_definitions_takes_time_in_proportion() -> None:
+    """Ten times as many take no more than some twenty times as long."""
+
+    def seconds(count: int) -> float:
+        level = ".subckt s{} a b\nm1 a b 0 0 nch w=1u l=1u\nx1 a b s{}\n.ends\n"
+        chain = "".join(level.format(k, k + 1) for k in range(count))
+        text = f"* t\n{chain}.subckt s{count} a b\nm1 a b 0 0 nch w=1u l=1u\n.ends\nx1 a b s0\n"
+        began = process_time()
+        assert len(elaborate(read_bytes(text.encode(), "top.sp", Path()))) == count + 1
+        return process_time() - began
+
+    short = min(seconds(100) for _ in range(3))
+    assert seconds(1000) < 20 * short + 0.2
