@@ -155,3 +155,19 @@ def assert_reads_back(handles: WidthHandles, plan: WidthPlan) -> Devices:
         dict(zip(widths(before), expected, strict=True)), rel=1e-9, abs=0
     )
     return after
+
+
+def check(
+    before: bytes,
+    after: bytes,
+    factors: Mapping[str, float],
+    *,
+    leaves: Collection[str] = (),
+    top: str | None = None,
+) -> None:
+    """Compare a rewritten text, and that it reads back with the widths said to be written."""
+    handles = sized(before, leaves=leaves, top=top)
+    plan = planned(handles, factors)
+    assert plan.refused == ()
+    assert_reads_back(handles, plan)
+    assert rewritten(handles, plan).decode("latin-1") == after.decode("latin-1")
