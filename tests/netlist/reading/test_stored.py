@@ -58,6 +58,17 @@ def test_cards_may_have_no_nets() -> None:
     assert len(elaborate(netlist)) == 0
 
 
+@pytest.mark.parametrize("name", ["µ", "É", "\udc85x"])
+def test_names_of_parameters_may_hold_any_letters(name: str) -> None:
+    calls = [f"x{i} a b s {name}={i + 2}u" for i in range(5)]
+    leaf = [f".subckt s a b {name}=1u", f"m1 a b 0 0 nch w='{name}' l=1u", ".ends"]
+    text = "\n".join(["* t", *leaf, *calls, ""])
+    netlist = read_bytes(text.encode("utf-8", "surrogateescape"), "t.sp", Path())
+    check(netlist)
+    for columns in netlist.cards.columns(range(1, 6)):
+        assert set(columns.values) == {name.lower()}
+
+
 @pytest.mark.parametrize("seed", range(6))
 def test_columns_say_what_the_cards_say(seed: int) -> None:
     lines = random_lines(random.Random(seed), 400)

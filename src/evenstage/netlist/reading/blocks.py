@@ -19,7 +19,7 @@ from evenstage.netlist.reading.canonical import canonical
 from evenstage.source import SourceText, Span
 
 #: Bytes of a block: large enough for array work to pay, small enough for the processor's cache.
-_SIZE: Final = 1 << 16
+_SIZE: Final = 1 << 17
 _KEPT: Final = 16
 #: Bytes of a card; a longer one is no card of a design, and reading it would fill the memory.
 _LONGEST: Final = 1 << 20

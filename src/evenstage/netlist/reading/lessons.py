@@ -44,8 +44,9 @@ def _pieces(statement: Statement, text: bytes) -> list[Piece]:
     while position < len(marks):
         mark = marks[position]
         if _is_key(marks, position):
-            name = text[mark.start : mark.end]
-            pieces.append(Piece(re.escape(name.decode(ENCODING)), "key", name.decode(ENCODING)))
+            written = text[mark.start : mark.end]
+            name = written.decode("utf-8", "surrogateescape").lower()
+            pieces.append(Piece(re.escape(written.decode(ENCODING)), "key", name))
         elif _begins_run(statement.rule, mark, pieces[-1]):
             while marks[position + 1 : position + 2] and _continues_run(marks, position + 1):
                 position += 1
