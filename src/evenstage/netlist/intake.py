@@ -9,6 +9,8 @@ from __future__ import annotations
 import math
 import re
 from array import array
+from collections import defaultdict
+from itertools import count
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
@@ -34,12 +36,11 @@ _PLAIN = re.compile(rb"(?:" + PLAIN + rb"\n)++")
 _BARE = re.compile(rb"(?:[+-]?(?:[0-9]++\.?+[0-9]*+|\.[0-9]++)(?:e[+-]?[0-9]++)?+\n)++")
 
 
-class Words(dict[bytes, int]):
+class Words(defaultdict[bytes, int]):
     """Numbers for words, in the order in which they are first asked for."""
 
-    def __missing__(self, word: bytes) -> int:
-        number = self[word] = len(self)
-        return number
+    def __init__(self) -> None:
+        super().__init__(count().__next__)
 
 
 class WordList:

@@ -20,7 +20,7 @@ from evenstage.source import SourceText, Span
 
 #: Bytes of a block: large enough for array work to pay, small enough for the processor's cache.
 _SIZE: Final = 1 << 17
-_KEPT: Final = 16
+_KEPT: Final = 8
 #: Bytes of a card; a longer one is no card of a design, and reading it would fill the memory.
 _LONGEST: Final = 1 << 20
 _B: Final = rb"[\x00-\x09\x0b\x0c\x0e-\x20]*+"
