@@ -1,8 +1,8 @@
 """Reading costs a small multiple of splitting the text into words; the benchmarks say how small.
 
 The limits are those of ``tests/benchmarks/bench_netlist.py`` with half as much again: neighbours on
-the machine slow reading down more than the splitting it is held against. A way of reading that has
-lost its speed is several times as slow.
+the machine slow reading down more than the splitting it is held against; where they are many, the
+measurement is repeated. A way of reading that has lost its speed is several times as slow.
 """
 
 from __future__ import annotations
@@ -20,9 +20,18 @@ from support.large_netlists import extracted, flat, hierarchical
 from support.stopwatch import shortest, words
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from evenstage.netlist.netlist import Netlist
 
 SLACK = 1.5
+ATTEMPTS = 5
+
+
+def is_within(times: float, action: Callable[[], object], other: Callable[[], object]) -> bool:
+    """Tell whether an action takes at most so many times what another one takes."""
+    measured = (shortest(action, other) for _ in range(ATTEMPTS))
+    return any(of_action < times * of_other for of_action, of_other in measured)
 
 
 def read_text(data: bytes) -> Netlist:
@@ -39,17 +48,16 @@ def read_text(data: bytes) -> Netlist:
     ],
 )
 def test_reading_takes_a_few_times_what_splitting_into_words_takes(data: bytes, must: int) -> None:
-    by_reader, by_splitting = shortest(partial(read_text, data), partial(words, data), rounds=5)
-    assert by_reader < SLACK * must * by_splitting
+    assert is_within(SLACK * must, partial(read_text, data), partial(words, data))
 
 
 def test_flat_text_is_read_many_times_as_fast_as_by_the_grammar_alone() -> None:
     small, large = flat(1000), flat(20_000)
-    by_lark, by_reader = shortest(
-        lambda: parser("netlist").parse(small.decode(ENCODING), start="netlist"),
-        partial(read_text, large),
+    text = small.decode(ENCODING)
+    times = SLACK / 20 * len(large) / len(small)
+    assert is_within(
+        times, partial(read_text, large), lambda: parser("netlist").parse(text, start="netlist")
     )
-    assert SLACK * by_lark / len(small) > 20 * by_reader / len(large)
 
 
 def test_rewriting_all_widths_takes_no_longer_than_reading_them() -> None:
@@ -62,5 +70,4 @@ def test_rewriting_all_widths_takes_no_longer_than_reading_them() -> None:
         return apply_edits(p.source, [edits])
 
     assert rewritten().count(b"=1.25u") >= len(netlist)
-    by_rewriter, by_reader = shortest(rewritten, partial(read_text, data))
-    assert by_rewriter < by_reader
+    assert is_within(1, rewritten, partial(read_text, data))
