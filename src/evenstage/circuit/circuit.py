@@ -367,8 +367,8 @@ class Circuit:
         driver = np.full(len(self.devices.net_names), -1, np.int32)
         alone = ~self.is_part
         for stage in self.stages:
-            for sink in stage.form.sinks:
-                driver[stage.nets[:, sink.node]] = stage.gates[:, sink.part]
+            for node, part in stage.form.driven:
+                driver[stage.nets[:, node]] = stage.gates[:, part]
         driver[self.gate_output[alone]] = np.flatnonzero(alone)
         return driver
 

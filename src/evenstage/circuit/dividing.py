@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING
 
 import networkx as nx
 
+from evenstage.circuit.charging import Chargers
 from evenstage.circuit.division import Division, Pass, closing
 from evenstage.circuit.drivers import driver_of
 from evenstage.circuit.function import Literal, Not
@@ -21,11 +22,15 @@ from evenstage.circuit.network import HIGH, LOW, Network
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
+    from evenstage.circuit.division import Charging
     from evenstage.circuit.literals import Condition, Literals
 
 
 def divide(
-    network: Network, terminals: Iterable[int], literals: Literals
+    network: Network,
+    terminals: Iterable[int],
+    literals: Literals,
+    clocks: frozenset[int] = frozenset(),
 ) -> Division | Unrecognised:
     """Divide a network.
 
@@ -37,6 +42,8 @@ def divide(
         Nodes seen outside.
     literals : Literals
         What is known of the inputs; inverters inside add to it.
+    clocks : frozenset of int
+        Inputs known to be clocks.
     """
     found = set(network.driven_nodes) | set(terminals)
     while True:
@@ -44,6 +51,7 @@ def divide(
         if not more:
             break
         found |= more
+    charging = _charging(pulls, Chargers(network, passing, literals, clocks))
     parts = [(n, part) for n in sorted(pulls) for part in _by_inputs(network, pulls[n], literals)]
     drivers = []
     for node, part in parts:
@@ -56,7 +64,18 @@ def divide(
         if isinstance(inverted, Not) and isinstance(inverted.term, Literal):
             literals.tie(driver.node, inverted.term.net, same=False)
     passes, assumed = _passes(network, passing, literals)
-    return Division(network, literals, tuple(drivers), passes, assumed)
+    return Division(network, literals, tuple(drivers), passes, assumed, charging)
+
+
+def _charging(pulls: dict[int, list[list[int]]], chargers: Chargers) -> tuple[Charging, ...]:
+    """Take what precharges a node out of its pull networks, and return that."""
+    found = []
+    for node in sorted(pulls):
+        one = chargers.at(node, pulls[node])
+        if one is not None:
+            found.append(one)
+            pulls[node] = [part for part in pulls[node] if part[0] not in one.switches]
+    return tuple(found)
 
 
 def _assigned(
@@ -71,7 +90,8 @@ def _assigned(
     pulls: dict[int, list[list[int]]] = {}
     passing: list[int] = []
     more: set[int] = set()
-    inside = {n: k for k, part in enumerate(nx.connected_components(graph)) for n in part}
+    components = list(nx.connected_components(graph))
+    inside = {n: k for k, part in enumerate(components) for n in part}
     by_part: dict[int, list[int]] = {}
     for index, switch in enumerate(network.switches):
         inner = [node for node in (switch.a, switch.b) if node in inside]
@@ -87,7 +107,7 @@ def _assigned(
         if len(owners) == 1 and ends & {HIGH, LOW}:
             pulls.setdefault(owners.pop(), []).append(indices)
         else:
-            more |= {node for node, k in inside.items() if k == part}
+            more |= components[part]
     return pulls, passing, more
 
 

@@ -27,7 +27,7 @@ class Way:
     beside: tuple[tuple[int, ...], ...] = ()
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Driver:
     """What pulls one node: a pull network, or the outside (without switches).
 
@@ -65,7 +65,7 @@ class Driver:
         return self.up if supply == HIGH else self.down
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Pass:
     """Switches in parallel that pass a signal between two terminals.
 
@@ -98,7 +98,7 @@ class Pass:
         return self.ends[1] if node == self.ends[0] else self.ends[0]
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Link:
     """What may tie two nodes: a pass, or a switch inside the pull network of a driver.
 
@@ -119,6 +119,28 @@ class Link:
         return self.ends[1] if node == self.ends[0] else self.ends[0]
 
 
+@dataclass(frozen=True, slots=True)
+class Charging:
+    """What precharges a node: parallel switches to a supply that one condition closes.
+
+    Parameters
+    ----------
+    node, supply : int
+    switches : tuple of int
+    condition : Condition
+    """
+
+    node: int
+    supply: int
+    switches: tuple[int, ...]
+    condition: Condition
+
+    @property
+    def off(self) -> Cube:
+        """The condition of evaluation."""
+        return frozenset({(self.condition[0], not self.condition[1])})
+
+
 @dataclass(frozen=True)
 class Division:
     """A network divided.
@@ -131,6 +153,8 @@ class Division:
     passes : tuple of Pass
     assumed : tuple of (int, int)
         Inputs of switches in parallel taken for complements without proof.
+    charging : tuple of Charging
+        What precharges nodes; no drivers.
     """
 
     network: Network
@@ -138,6 +162,12 @@ class Division:
     drivers: tuple[Driver, ...]
     passes: tuple[Pass, ...]
     assumed: tuple[tuple[int, int], ...]
+    charging: tuple[Charging, ...] = ()
+
+    @cached_property
+    def off(self) -> dict[int, Cube]:
+        """When dynamic nodes may evaluate, by node."""
+        return {one.node: one.off for one in self.charging}
 
     @cached_property
     def drivers_at(self) -> dict[int, list[Driver]]:

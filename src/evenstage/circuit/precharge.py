@@ -41,7 +41,7 @@ def precharging(circuit: Circuit) -> Circuit | None:
         return None
     alike = tuple(_precharged(some) for some in circuit.alike)
     stages = tuple(
-        replace(some, form=replace(some.form, arcs=some.form.precharge, precharge=()))
+        replace(some, form=replace(some.form, arcs=some.form.precharge))
         if some.form.precharge
         else some
         for some in circuit.stages

@@ -2,8 +2,11 @@
 
 A route leads from a node through passes that can conduct together to a driver. Drivers never fight:
 an input setting that would join two that may differ is taken not to occur (of the drivers of a bus
-one is enabled at a time). What hangs on a route through further passes moves along; every setting
-of the inputs left free is looked at, and of those that move comparable sets the largest is kept.
+one is enabled at a time), and dynamic nodes do not precharge. What hangs on a route through further
+passes moves along; every setting of the inputs left free is looked at, and of those that move
+comparable sets the largest is kept. On a line where very many passes meet, as on a bit line, one of
+them at a time is taken to conduct but for those whose condition is known to hold: word lines and
+selects come from decoders.
 """
 
 from __future__ import annotations
@@ -11,13 +14,14 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+from evenstage.circuit.division import Driver
 from evenstage.circuit.literals import Condition, Cube, consistent
 from evenstage.circuit.network import HIGH, LOW
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
 
-    from evenstage.circuit.division import Division, Driver, Way
+    from evenstage.circuit.division import Division, Way
 
 _STEPS_MAX = 50_000
 """Steps one group may take; a rotator of 32 lanes in five ranks takes 4,000."""
@@ -28,6 +32,12 @@ _TOLD_APART = 8
 
 With more of them everything that moves in some setting is taken together: an upper bound.
 """
+
+
+_WIDE = 16
+"""So many links at one node make it a line: what else may hang there is not told apart."""
+_LEGS_MOST = 32
+"""With more pull networks on a line their inner nodes hang on it one network at a time, too."""
 
 
 class TooManyRoutesError(Exception):
@@ -66,12 +76,17 @@ class Router:
     ----------
     is_bounded : bool
         Whether somewhere an upper bound was taken for what moves.
+    lines : dict of int to int
+        Nodes where one pass or pull network at a time is taken to conduct, and of how many.
     """
 
     def __init__(self, division: Division) -> None:
         self._division = division
         self._steps = 0
         self.is_bounded = False
+        self.lines: dict[int, int] = {}
+        self._wide = {n for n, some in division.links_at.items() if len(some) > _WIDE}
+        self._inner = {node: self._inner_nodes(node) for node in self._wide}
 
     def routes(self, node: int) -> Iterator[Route]:
         """Yield the routes to a node that can conduct, in drawing order.
@@ -81,7 +96,8 @@ class Router:
         TooManyRoutesError
         """
         division = self._division
-        stack: list[tuple[tuple[int, ...], tuple[int, ...], Cube]] = [((node,), (), frozenset())]
+        off = division.off.get(node, frozenset[Condition]())
+        stack: list[tuple[tuple[int, ...], tuple[int, ...], Cube]] = [((node,), (), off)]
         while stack:
             self._step()
             nodes, passes, cube = stack.pop()
@@ -95,6 +111,8 @@ class Router:
                 one = division.passes[index]
                 far = one.other(here)
                 wider = consistent(cube, () if one.condition is None else (one.condition,))
+                if wider is not None:
+                    wider = consistent(wider, division.off.get(far, ()))
                 if far not in nodes and wider is not None:
                     stack.append(((*nodes, far), (*passes, index), wider))
 
@@ -121,7 +139,7 @@ class Router:
         cube = consistent(route.cube, way.cube)
         if cube is None:
             return []
-        tied = self._tied(depth, cube, route)
+        tied = self._along_lines(self._tied(depth, cube, route), route)
         if not self._can_be(tied, cube, route.driver, supply):
             return []
         most, conditions = self._all_beside(tied, cube, route, supply)
@@ -188,11 +206,47 @@ class Router:
                     growing = True
         return found
 
+    def _inner_nodes(self, line: int) -> dict[Driver, list[int]]:
+        """Return the inner nodes of the pull networks on a line, by driver."""
+        links = self._division.links_at
+        found: dict[Driver, list[int]] = {}
+        for link in links[line]:
+            if isinstance(link.owner, Driver) and link.owner.node == line:
+                reached = found.setdefault(link.owner, [])
+                waiting = [link.other(line)]
+                while waiting:
+                    node = waiting.pop()
+                    if node not in reached:
+                        reached.append(node)
+                        waiting += [
+                            far.other(node)
+                            for far in links[node]
+                            if far.owner is link.owner and far.other(node) != line
+                        ]
+        return found
+
+    def _along_lines(self, nodes: dict[int, int], route: Route) -> dict[int, int]:
+        """Return nodes with the inner nodes of what hangs on wide ones, an upper bound."""
+        found = dict(nodes)
+        for line in self._wide & nodes.keys():
+            passes = len(self._division.passes_at.get(line, ()))
+            inner = self._inner[line]
+            if passes > _WIDE:
+                self.lines[line] = passes
+            if len(inner) > _LEGS_MOST:
+                self.lines[line] = max(len(inner), self.lines.get(line, 0))
+            elif any(driver is not route.driver for driver in inner) and nodes[line]:
+                self.is_bounded = True
+                for driver, some in inner.items():
+                    if driver is not route.driver:
+                        found |= {node: nodes[line] for node in some if node not in found}
+        return found
+
     def _undecided(
         self, nodes: dict[int, int], known: Cube, route: Route
     ) -> Iterator[tuple[Condition, int, int]]:
         """Yield the links that may tie further nodes: condition, near and far end."""
-        for condition, near, far in self._hanging(nodes, route):
+        for condition, near, far in self._hanging(nodes, route, undecided=True):
             if condition is not None and not known & {condition, _opposite(condition)}:
                 yield condition, near, far
 
@@ -202,14 +256,17 @@ class Router:
         return 0 if held else near
 
     def _hanging(
-        self, nodes: dict[int, int], route: Route
+        self, nodes: dict[int, int], route: Route, *, undecided: bool = False
     ) -> Iterator[tuple[Condition | None, int, int]]:
         """Yield the links that lead from moving nodes to others: condition, near and far end.
 
-        What hangs inside the route's own driver depends on the edge and is known there.
+        What hangs inside the route's own driver depends on the edge and is known there; on a line
+        nothing is undecided.
         """
         for near, depth in nodes.items():
             for link in self._division.links_at.get(near, ()) if depth else ():
+                if undecided and near in self._wide:
+                    continue
                 far = link.other(near)
                 if far not in nodes and link.owner is not route.driver:
                     yield link.condition, near, far
@@ -223,6 +280,8 @@ class Router:
         clauses = [way.cube for way in own.ways(against)]
         for node in nodes:
             for driver in self._division.drivers_at.get(node, ()):
+                if node in self._wide and not driver.always:
+                    continue
                 if driver.always and driver is not own:
                     if not all(_is_off(way.cube, known) for way in driver.ways(against)):
                         return False

@@ -21,11 +21,14 @@ from evenstage.circuit.function import ONE, ZERO, Each, Expression, Literal, Not
 from evenstage.circuit.gate import GateForm, Unrecognised, recognise_network
 from evenstage.circuit.literals import Cube, Literals, consistent
 from evenstage.circuit.network import HIGH, LOW, Network, Switch, merge
+from evenstage.circuit.precharge import PRECHARGE
 from evenstage.circuit.routes import Route, Router, TooManyRoutesError
 from evenstage.circuit.stage_form import Facts, Sink, StageArc, StageForm, Step
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Sequence
+
+    from evenstage.circuit.division import Charging
 
 SWITCHES_MAX = 4000
 """Larger groups are arrays of cells, not stages."""
@@ -44,14 +47,14 @@ def recognise_stage(devices: tuple[Switch, ...], facts: Facts) -> StageForm | Un
     seen = frozenset(facts.seen) | frozenset(facts.inputs) | frozenset(facts.outputs)
     network = merge(devices, seen | frozenset(facts.open))
     terminals = [node for node in network.inner_nodes if node in seen or node in facts.open]
-    division = divide(network, terminals, Literals(facts.ties))
+    division = divide(network, terminals, Literals(facts.ties), frozenset(facts.clocks))
     if isinstance(division, Unrecognised):
         return division if len(network.driven_nodes) > 1 else Unrecognised("")
     sources = _sources(division, facts)
     if isinstance(sources, Unrecognised):
         return sources
     drivers = division.drivers + tuple(outside(node, division.literals) for node in sources)
-    division = Division(network, division.literals, drivers, division.passes, division.assumed)
+    division = replace(division, drivers=drivers)
     sinks = [node for node in terminals if node in seen and node not in sources]
     if not sinks:
         return Unrecognised("")
@@ -108,6 +111,7 @@ class _Builder:
         self._groups = _joined_drivers(self._pulling)
         drivers = [tuple(i for d in some for i in d.switches) for some in self._groups]
         switches = drivers + [p.switches for p in division.passes]
+        switches += [one.switches for one in division.charging]
         self._whole = recognise_network(devices)
         if isinstance(self._whole, GateForm):
             switches = [tuple(range(len(division.network.switches)))]
@@ -122,7 +126,11 @@ class _Builder:
         for node in self._sinks:
             high = list(self._towards(node, HIGH, arcs))
             low = list(self._towards(node, LOW, arcs))
-            if not high or not low:
+            high, low = (
+                some + [(frozenset({one.condition}), False) for one in self._charging(node, supply)]
+                for some, supply in ((high, HIGH), (low, LOW))
+            )
+            if not (high or low) or not ((high and low) or self._division.charging):
                 return Unrecognised("a node of it that is seen outside is only pulled one way")
             part = next((arc.part for arc in arcs if arc.output == node), 0)
             sinks.append(
@@ -152,7 +160,58 @@ class _Builder:
             assumed=self._division.assumed,
             both_ways=self._both_ways(),
             bounded=tuple(sink.node for sink in sinks) if self._router.is_bounded else (),
+            lines=tuple(
+                (node, self._part_at(node), number)
+                for node, number in sorted(self._router.lines.items())
+            ),
+            precharge=tuple(self._precharge()),
         )
+
+    def _part_at(self, node: int) -> int:
+        """Return the first part with a switch on a node."""
+        return min(self._part_of[index] for index in self._division.network.at_node[node])
+
+    def _charging(self, node: int, supply: int) -> list[Charging]:
+        """Return what precharges a node to a supply."""
+        return [c for c in self._division.charging if c.node == node and c.supply == supply]
+
+    def _precharge(self) -> Iterator[StageArc]:
+        """Yield the arcs that precharge dynamic nodes.
+
+        With a node move the inner nodes of its pull networks, as far as they may hang on it while
+        what precharges it conducts.
+        """
+        switches = self._division.network.switches
+        for one in self._division.charging:
+            first = switches[one.switches[0]]
+            moved = {one.node: 1} | dict.fromkeys(self._behind(one), 1)
+            yield StageArc(
+                part=self._part_of[one.switches[0]],
+                input=first.gate,
+                output=one.node,
+                input_rising=first.polarity == "n",
+                rising=one.supply == HIGH,
+                steps=(Step(self._part_of[one.switches[0]], one.switches),),
+                moved=tuple(sorted(moved.items())),
+                behind=(),
+                switching=one.switches[0],
+                source=-1,
+            )
+
+    def _behind(self, one: Charging) -> list[int]:
+        """Return the inner nodes that pull networks may tie to a node while it precharges."""
+        links, known = self._division.links_at, frozenset({one.condition})
+        found: list[int] = []
+        waiting = [one.node]
+        while waiting:
+            for link in links.get(waiting.pop(), ()):
+                for far in link.ends:
+                    is_inner = isinstance(link.owner, Driver) and far not in (*found, one.node)
+                    closes = link.condition is None or consistent(known, (link.condition,))
+                    if is_inner and closes is not None:
+                        found.append(far)
+                        waiting.append(far)
+        return found
 
     def _towards(
         self, node: int, supply: int, arcs: dict[StageArc, None]
@@ -271,9 +330,13 @@ class _Builder:
             (some[0].node, _kind(some), _function(some), [i for d in some for i in d.switches])
             for some in self._groups
         ]
-        for one in self._division.passes:
-            output = self._far_end(one)
+        for index, one in enumerate(self._division.passes):
+            output = self._far_end(index, one)
             told.append((output, one.kind, self._passing(one, output), list(one.switches)))
+        for charging in self._division.charging:
+            level = ONE if charging.supply == HIGH else ZERO
+            function = When(level, sum_of([frozenset({charging.condition})]))
+            told.append((charging.node, PRECHARGE, function, list(charging.switches)))
         return tuple(self._gate(*part, some) for part, some in zip(told, columns, strict=True))
 
     def _gate(
@@ -298,9 +361,8 @@ class _Builder:
             function=function,
         )
 
-    def _far_end(self, one: Pass) -> int:
+    def _far_end(self, index: int, one: Pass) -> int:
         """Return the end that a signal leaves a pass at: the one nearer to an output."""
-        index = self._division.passes.index(one)
         leaves = [end for end in one.ends if (index, end) in self._ways_taken]
         return leaves[0] if leaves else one.ends[1]
 
@@ -322,7 +384,7 @@ def _joined_drivers(drivers: Sequence[Driver]) -> list[list[Driver]]:
     joined: list[list[Driver]] = []
     for driver in drivers:
         some = single.get(driver.node, [])
-        if driver not in some or len(some) > _PARALLEL_MAX:
+        if len(some) > _PARALLEL_MAX or driver not in some:
             joined.append([driver])
         elif driver is some[0]:
             joined.append(some)

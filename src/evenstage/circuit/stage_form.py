@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
@@ -27,6 +28,10 @@ class Facts:
         Channel ends that the outside may drive.
     inputs, outputs : tuple of int
         Channel ends that the brief calls so.
+    heard : tuple of int
+        Channel ends that are ports or close switches of other groups.
+    clocks : tuple of int
+        Inputs that are clocks.
     """
 
     ties: tuple[tuple[int, int, bool], ...] = ()
@@ -35,6 +40,8 @@ class Facts:
     open: tuple[int, ...] = ()
     inputs: tuple[int, ...] = ()
     outputs: tuple[int, ...] = ()
+    heard: tuple[int, ...] = ()
+    clocks: tuple[int, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -119,6 +126,9 @@ class StageForm:
         Parts that pass signals in both directions.
     bounded : tuple of int
         Nodes that arcs end at, where more is taken to move with them than can at once.
+    lines : tuple of (int, int, int)
+        Nodes where of many passes or pull networks one at a time is taken to conduct, one of the
+        parts there, and how many.
     weak : tuple of Weak
         Its keepers; whatever drives their nodes overpowers them.
     precharge : tuple of StageArc
@@ -135,5 +145,13 @@ class StageForm:
     assumed: tuple[tuple[int, int], ...]
     both_ways: tuple[int, ...]
     bounded: tuple[int, ...]
+    lines: tuple[tuple[int, int, int], ...] = ()
     weak: tuple[Weak, ...] = ()
     precharge: tuple[StageArc, ...] = ()
+
+    @cached_property
+    def driven(self) -> tuple[tuple[int, int], ...]:
+        """Nodes that the stage drives, seen outside, dynamic or lines, and a part that does."""
+        found = {node: part for node, part, _ in reversed(self.lines)}
+        found |= {arc.output: arc.part for arc in self.precharge}
+        return tuple((found | {sink.node: sink.part for sink in self.sinks}).items())

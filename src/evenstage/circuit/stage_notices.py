@@ -26,6 +26,10 @@ _BOUNDED = (
     "so many settings of other drivers may tie further nodes to a signal that all those nodes are "
     "taken to move with it at once, an upper bound"
 )
+_LINES = (
+    "of the passes or pull networks that meet on one line one at a time is taken to conduct, as "
+    "word lines and decoded selects do"
+)
 _BOTH_WAYS = "signals may pass in both directions; each is timed"
 
 
@@ -49,12 +53,18 @@ def _assumptions(some: AlikeStages) -> Iterator[tuple[str, str, IntArray]]:
     form = some.form
     assumed = [net for pair in form.assumed for net in pair]
     weak = [sink.node for sink in form.sinks if sink.weak_high or sink.weak_low]
+    most = max((number for _, _, number in form.lines), default=0)
     both_ways = [form.parts[part].output for part in form.both_ways]
     for code, message, nets in (
         ("assumed-complement", _ASSUMED, assumed),
         ("weak-level", _WEAK, weak),
         ("both-ways", _BOTH_WAYS, both_ways),
         ("upper-bound", _BOUNDED, list(form.bounded)),
+        (
+            "one-at-a-time",
+            f"{_LINES} (at most {most} of them)",
+            [node for node, _, _ in form.lines],
+        ),
     ):
         if nets:
             yield code, message, some.nets[:, nets]

@@ -95,6 +95,28 @@ class Plan:
     whole: Sums
 
 
+_PARTS_MOST = 64
+"""Channels of more parts on one node count as pins on its net: as own terms of every arc that moves
+it they would be as many as the square of the parts."""
+
+
+@lru_cache(maxsize=1024)
+def parts_at(form: StageForm) -> dict[int, tuple[int, ...]]:
+    """Return for each node of a form the parts that have channels on it."""
+    node_of_net = form.network.node_of_net
+    found: dict[int, list[int]] = {}
+    for part, columns in enumerate(form.columns):
+        nets = {net for c in columns for net in (form.drawn[c].a, form.drawn[c].b)}
+        for node in sorted({node_of_net[net] for net in nets if net >= 0}):
+            found.setdefault(node, []).append(part)
+    return {node: tuple(parts) for node, parts in found.items()}
+
+
+def crowded(form: StageForm) -> tuple[int, ...]:
+    """Return the nodes of a form that so many parts share that their channels count as pins."""
+    return tuple(node for node, parts in parts_at(form).items() if len(parts) > _PARTS_MOST)
+
+
 @lru_cache(maxsize=1024)
 def plan(form: StageForm, present: Present) -> Plan:
     """Return the sums of a form's arcs."""
@@ -139,11 +161,8 @@ class _Planner:
         self._nets_of_node: dict[int, list[int]] = {}
         for net, node in enumerate(node_of_net):
             self._nets_of_node.setdefault(node, []).append(net)
-        self._parts_at: dict[int, list[int]] = {}
-        for part, columns in enumerate(form.columns):
-            nets = {net for c in columns for net in (form.drawn[c].a, form.drawn[c].b)}
-            for node in sorted({node_of_net[net] for net in nets if net >= 0}):
-                self._parts_at.setdefault(node, []).append(part)
+        shared = set(crowded(form))
+        self._parts_at = {node: p for node, p in parts_at(form).items() if node not in shared}
 
     def plan(self) -> Plan:
         """Go through all arcs."""

@@ -57,7 +57,7 @@ def sort_stages(
     """
     stages, strange = [], []
     if found.strange:
-        around = _Around(devices, found, brief)
+        around = _Around(devices, found, brief, clocks)
         others = [some for _, some in found.strange]
         surroundings = Surroundings(devices, found.gates, others, clocks)
         for done, (reason, whole) in enumerate(found.strange):
@@ -104,10 +104,18 @@ def _recognised(
 class _Around:
     """What is known of every net of a block; columns of shape ``(nets,)``."""
 
-    def __init__(self, devices: Devices, found: Sorted, brief: Brief | None) -> None:
+    def __init__(
+        self, devices: Devices, found: Sorted, brief: Brief | None, clocks: IntArray
+    ) -> None:
         nets = len(devices.net_names)
         self._root, self._same = _roots(found, nets)
-        self._gating = np.bincount(devices.gate, minlength=nets) > 0
+        self._gates_on = np.bincount(devices.gate, minlength=nets)
+        self._gating = self._gates_on > 0
+        self._clock = np.zeros(nets, bool)
+        self._clock[clocks] = True
+        for form, some in found.gates:
+            for local in form.precharging_clocks:
+                self._clock[some.nets[:, local]] = True
         self._open = np.zeros(nets, bool)
         self._open[list(devices.ports)] = True
         self._open[[net for plus, minus, _ in devices.source_nets for net in (plus, minus)]] = True
@@ -133,14 +141,21 @@ class _Around:
             column[here]
             for column in (self._seen, self._gating, self._open, self._input, self._output)
         ]
-        table = np.concatenate([first, straight, *marks], axis=1)
+        own = np.bincount(
+            [s.gate for s in some.network if s.gate >= 0], minlength=some.nets.shape[1]
+        )
+        marks.append(self._open[here] | (self._gates_on[here] > own[ends]))
+        inputs = list(dict.fromkeys(s.gate for s in some.network if s.gate >= 0))
+        table = np.concatenate([first, straight, *marks, self._clock[some.nets[:, inputs]]], axis=1)
         kinds, inverse = distinct_rows(table)
         for index, kind in enumerate(kinds.tolist()):
             ties = zip(asked, kind[: len(asked)], kind[len(asked) :], strict=False)
             flags = [
                 tuple(end for end, flag in zip(ends, kind[begin:], strict=False) if flag)
-                for begin in range(2 * len(asked), len(kind), len(ends))
+                for begin in range(2 * len(asked), len(kind) - len(inputs), len(ends))
             ]
+            turned = zip(inputs, kind[len(kind) - len(inputs) :], strict=True)
+            flags.append(tuple(net for net, is_clock in turned if is_clock))
             facts = Facts(
                 tuple((a, asked[b], bool(is_same)) for a, b, is_same in ties if a != asked[b]),
                 *flags,

@@ -11,7 +11,7 @@ from scipy.sparse import csr_array
 from evenstage.circuit.arcs import NO_OWNER, Arcs, Charges, OwnTerms
 from evenstage.circuit.electrical import Scaled
 from evenstage.circuit.gate_arcs import switch_resistance
-from evenstage.circuit.stage_plan import Present, plan
+from evenstage.circuit.stage_plan import Present, crowded, parts_at, plan
 from evenstage.circuit.tables import Pins
 
 if TYPE_CHECKING:
@@ -101,10 +101,13 @@ def stage_arcs(some: AlikeStages, values: Electrical, drive: FloatArray) -> Arcs
 
 
 def stage_pins(some: AlikeStages, values: Electrical) -> list[Pins]:
-    """Return what the channels of stages of one form put on nets that the outside drives."""
+    """Return what the channels of stages of one form put on nets that the outside drives.
+
+    And on nets that very many parts share.
+    """
     found = []
-    for node in some.form.sources:
-        for part in range(len(some.form.columns)):
+    for node in dict.fromkeys((*some.form.sources, *crowded(some.form))):
+        for part in parts_at(some.form).get(node, ()):
             at = [_columns_at(some.form, node, part, end) for end in (0, 1)]
             if any(at):
                 cap = _mean_at(some, values, at)
