@@ -5,20 +5,24 @@ from __future__ import annotations
 import json
 from itertools import islice, pairwise
 from typing import TYPE_CHECKING
+from unittest import mock
 
 import numpy as np
 import pytest
 from hypothesis import given, settings
 
 from evenstage import flow
+from evenstage.logic import relations
 from evenstage.logic.clauses import Clauses
 from evenstage.logic.relations import Relation
+from evenstage.logic.switches import UNKNOWN
+from evenstage.logic.ways import Channel, WideRelation
 from evenstage.timing import vectors
 from evenstage.timing.analyse import analyse
 from evenstage.timing.search import slowest_paths
 from evenstage.timing.stages import describe
 from evenstage.timing.vectors import path_logic, with_vectors
-from support.blocks import block, circuit_of, inverter, nand
+from support.blocks import block, circuit_of, inverter, nand, network
 from support.logic import all_vectors, values
 from support.random_blocks import RandomBlock, random_blocks
 
@@ -73,6 +77,71 @@ class TestRandomBlocks:
                     [nets[net] == level for net, level in (*found.held, edges[0])]
                 )
                 assert all((nets[net][fits] == rises).all() for net, rises in edges)
+
+
+class TestWays:
+    @settings(max_examples=15, deadline=None)
+    @given(random_blocks(most=8))
+    def test_groups_without_tables_say_the_same(self, drawn: RandomBlock) -> None:
+        circuit = circuit_of(drawn.text())
+        table = all_vectors(list(drawn.inputs))
+        known = values(circuit, {circuit.net_id(n) or 0: v for n, v in table.items()})
+        nets = {circuit.devices.net_names[net]: value for net, value in known.items()}
+        analysis = analyse(circuit)
+        assert analysis.timing is not None
+        with mock.patch.object(relations, "INPUTS_MOST", 0):
+            logic = path_logic(circuit)
+            for arcs in islice(slowest_paths(analysis.timing), 8):
+                path = describe(analysis.timing, arcs)
+                edges: Edges = [(path.start, path.start_edge == "rise")]
+                edges += [(stage.output, stage.edge == "rise") for stage in path.stages]
+                numbered = tuple((circuit.net_id(net) or 0, rises) for net, rises in edges)
+                found, expected = logic.vector(numbered, 10_000), verdict(drawn, nets, edges)
+                assert (found.verdict == "switches") == (expected == "switches")
+                # Of many inputs any may matter anywhere: fewer paths are proved false.
+                assert found.verdict != "false" or expected == "false"
+
+    @pytest.mark.parametrize("count", [16, 40])
+    def test_a_wide_selector_gets_its_vector(self, count: int) -> None:
+        cards = [inverter("o", "m", "y", 4, 8)]
+        for i in range(count):
+            cards += [
+                inverter(f"d{i}", f"i{i}", f"b{i}", 2, 4),
+                inverter(f"s{i}", f"s{i}", f"t{i}", 1, 2),
+            ]
+            cards += [network("n", f"g{i}", [(f"b{i}", f"s{i}", "m", 1)])]
+            cards += [network("p", f"h{i}", [(f"b{i}", f"t{i}", "m", 2)])]
+        ports = " ".join(f"i{i} s{i}" for i in range(count))
+        circuit = circuit_of(block("\n".join(cards), f"{ports} y"))
+        (path,) = with_vectors(analyse(circuit, start="i3", end="y")).paths
+        assert path.vector is not None
+        assert path.vector.verdict == "switches"
+        held = dict(path.vector.held)
+        assert [name for name, level in held.items() if name[0] == "s" and level] == ["s3"]
+
+    def test_two_transistors_of_a_gate_are_one_way(self) -> None:
+        channels = [Channel(0, 3, 1, closes=True), Channel(0, 4, 1, closes=False)]
+        ends, alone = {1: UNKNOWN}, {4: (3, True)}
+        for before, count in (({}, 2), (alone, 1)):
+            found = WideRelation(0, (1, 3, 4), channels, ends, {}, before)
+            assert found.ways is not None
+            assert len(found.ways) == count
+
+    def test_a_mesh_with_too_many_ways_may_be_anything(self) -> None:
+        side = 7
+        channels = [
+            Channel(
+                side * r + c,
+                100 + 2 * (side * r + c) + down,
+                side * (r + down) + c + 1 - down,
+                closes=True,
+            )
+            for r in range(side)
+            for c in range(side)
+            for down in (0, 1)
+            if (r if down else c) < side - 1
+        ]
+        assert WideRelation(0, (), channels, {side**2 - 1: 1}, {}).ways is None
 
 
 def carry_skip(bits: int = 4) -> str:

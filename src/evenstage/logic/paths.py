@@ -12,15 +12,15 @@ decide together and not without it (static co-sensitisation, Devadas, Keutzer an
 "Computation of floating mode delay in combinational circuits", IEEE Transactions on CAD 12(12),
 1993, from memory; for any gate, that is a prime implicant with the input's literal).
 
-Both are asked of a SAT solver: tables of groups become clauses. What a table leaves open, or a
-group too large for one, may be anything; so a false path stays proved, and a vector is checked by
-switches before it is told. The search ends after a number of conflicts, so that it ends alike
-everywhere.
+Both are asked of a SAT solver: tables of groups become clauses, or, where they have many inputs,
+their ways to 1 and 0. What these leave open may be anything; so a false path stays proved, and a
+vector is checked by switches before it is told. The search ends after a number of conflicts, so
+that it ends alike everywhere.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 from typing import TYPE_CHECKING, Final, Literal
 
@@ -29,13 +29,13 @@ import numpy as np
 from evenstage.logic.clauses import Clauses
 from evenstage.logic.evaluate import evaluate
 from evenstage.logic.order import fan_in, fan_out, find_groups
-from evenstage.logic.relations import Relations
+from evenstage.logic.relations import Relation, Relations
 from evenstage.logic.switches import UNKNOWN
+from evenstage.logic.ways import WideRelation, phases
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
 
-    from evenstage.logic.relations import Relation
     from evenstage.logic.switches import BoolArray, Switches
 
 Verdict = Literal["switches", "false", "together", "unknown"]
@@ -94,11 +94,16 @@ class PathLogic:
         cone = fan_in(self._groups, seeds)
         if cone.sum() > GROUPS_MOST:
             return PathVector(verdict="unknown", reason=f"it depends on {cone.sum()} groups")
-        relations: dict[int, Relation] = {}
+        relations: dict[int, Relation | WideRelation] = {}
         for group in np.flatnonzero(cone).tolist():
-            relations |= self._relations.of_group(group) or {}
+            relations |= self._relations.of_group(group)
         heard = set(nets).union(*(one.inputs for one in relations.values()))
-        relations = {net: one for net, one in relations.items() if net in heard}
+        before = _phases(relations)
+        relations = {
+            net: replace(one, phases=before) if isinstance(one, WideRelation) else one
+            for net, one in relations.items()
+            if net in heard
+        }
         query = _Query(self, path, cone, relations, conflicts)
         return query.answer()
 
@@ -151,6 +156,18 @@ class PathLogic:
         return found
 
 
+def _phases(relations: Mapping[int, Relation | WideRelation]) -> dict[int, tuple[int, bool]]:
+    """Return the nets that inverters and buffers make, each with the net they make it from."""
+    tables = {net: one for net, one in relations.items() if isinstance(one, Relation)}
+    return phases(
+        {
+            net: (one.inputs[0], bool(one.table[0]))
+            for net, one in tables.items()
+            if one.table.tolist() in ([0, 1], [1, 0])
+        }
+    )
+
+
 @dataclass
 class _Query:
     """One path under examination."""
@@ -158,14 +175,14 @@ class _Query:
     logic: PathLogic
     path: PathNets
     cone: BoolArray
-    relations: Mapping[int, Relation]
+    relations: Mapping[int, Relation | WideRelation]
     conflicts: int
 
     def answer(self) -> PathVector:
         """Return what was found."""
         moved = self.logic.affected(self.path[0][0], self.cone)
         if self._arcs() is None:
-            reason = "it leads through a group with too many inputs"
+            reason = "it leads through a group with too many ways to the supplies"
             return PathVector(verdict="unknown", reason=reason)
         found = self._pair(moved)
         if isinstance(found, dict):
@@ -177,12 +194,14 @@ class _Query:
             return PathVector(verdict="unknown", reason="the search was given up")
         return PathVector(verdict="together" if possible else "false")
 
-    def _arcs(self) -> list[tuple[int, Relation]] | None:
+    def _arcs(self) -> list[tuple[int, Relation | WideRelation]] | None:
         """Return position and relation of the path's input at each gate; None: not known."""
         arcs = []
         for (before, _), (after, _) in pairwise(self.path):
             relation = self.relations.get(after)
             if relation is None or before not in relation.inputs:
+                return None
+            if isinstance(relation, WideRelation) and relation.ways is None:
                 return None
             arcs.append((relation.inputs.index(before), relation))
         return arcs
@@ -197,13 +216,20 @@ class _Query:
 
     def _pair(self, moved: BoolArray) -> dict[int, bool] | bool | None:
         """Return values of nets before the start switches; False: there are none; None: unknown."""
-        clauses = Clauses(self.relations, moved)
-        for net, rising in self.path:
-            clauses.fix(net, value=rising, after=True)
-            clauses.fix(net, value=not rising, after=False)
-        for net in self._sides:
-            clauses.hold(net)
-        return clauses.solve(self.conflicts)
+        # First without nets that float or are fought over, for which the clauses may be wrong.
+        for settled in (True, False):
+            clauses = Clauses(self.relations, moved)
+            for net, rising in self.path:
+                clauses.fix(net, value=rising, after=True)
+                clauses.fix(net, value=not rising, after=False)
+            for net in self._sides:
+                clauses.hold(net)
+            if settled:
+                clauses.settle()
+            found = clauses.solve(self.conflicts)
+            if isinstance(found, dict):
+                break
+        return found
 
     def _possible(self) -> bool | None:
         """Tell whether some vector lets the path decide; None: unknown."""
@@ -211,7 +237,9 @@ class _Query:
         for net, rising in self.path:
             clauses.fix(net, value=rising, after=True)
         for position, relation in self._arcs() or ():
-            clauses.forbid(relation, ~relation.matters(position))
+            # Of many inputs, any is taken to matter anywhere.
+            if isinstance(relation, Relation):
+                clauses.forbid(relation, ~relation.matters(position))
         found = clauses.solve(self.conflicts)
         return None if found is None else found is not False
 

@@ -11,14 +11,17 @@ import numpy as np
 from evenstage.logic.evaluate import evaluate, input_table
 from evenstage.logic.settle import WEAK
 from evenstage.logic.switches import UNKNOWN, Switches
+from evenstage.logic.ways import Channel, WideRelation
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
     from evenstage.logic.order import Groups
     from evenstage.logic.switches import BoolArray, Values
     from evenstage.netlist.devices import IntArray
 
 INPUTS_MOST: Final = 12
-"""Groups with more inputs have no table: anything may come out of them."""
+"""Groups with more inputs have no table, but ways."""
 _MATTER_MOST: Final = 7
 """Of tables with more inputs, any input is taken to matter anywhere."""
 
@@ -96,8 +99,8 @@ class Relations:
         ordered = self.groups.of_device[self._order]
         self._head = np.searchsorted(ordered, np.arange(self.groups.count + 1))
 
-    def of_group(self, group: int) -> dict[int, Relation] | None:
-        """Return the relation of each of a group's own nets; None: it has too many inputs."""
+    def of_group(self, group: int) -> Mapping[int, Relation | WideRelation]:
+        """Return the relation of each of a group's own nets."""
         which = self._order[self._head[group] : self._head[group + 1]]
         every = self.switches
         ends = np.concatenate([every.drain[which], every.source[which]])
@@ -106,13 +109,28 @@ class Relations:
         supply = every.supply[nets]
         own = (self.groups.of_net[nets] == group) & np.isin(nets, ends)
         inputs = nets[(supply == UNKNOWN) & (np.isin(nets, gates) | ~own)]
-        if len(inputs) > INPUTS_MOST:
-            return None
-        table = self._table(which, nets, inputs, own)
         wanted = tuple(inputs.tolist())
+        if len(inputs) > INPUTS_MOST:
+            return self._wide(which, nets, wanted, own)
+        table = self._table(which, nets, inputs, own)
         return {
             int(net): Relation(wanted, row)
             for net, row in zip(nets[own].tolist(), table, strict=True)
+        }
+
+    def _wide(
+        self, which: IntArray, nets: IntArray, inputs: tuple[int, ...], own: BoolArray
+    ) -> dict[int, WideRelation]:
+        every = self.switches
+        columns = (every.drain, every.gate, every.source, every.is_n)
+        channels = [
+            Channel(*row) for row in zip(*(c[which].tolist() for c in columns), strict=True)
+        ]
+        level = dict(zip(nets.tolist(), every.supply[nets].tolist(), strict=True))
+        ends = {net: level[net] for net in nets[~own].tolist()}
+        supplies = {net: value for net, value in level.items() if value != UNKNOWN}
+        return {
+            net: WideRelation(net, inputs, channels, ends, supplies) for net in nets[own].tolist()
         }
 
     def _table(self, which: IntArray, nets: IntArray, inputs: IntArray, own: BoolArray) -> Values:
