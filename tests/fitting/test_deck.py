@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import pytest
@@ -15,6 +16,8 @@ from evenstage.fitting.fit import fit
 from evenstage.fitting.reading import read_measurements, read_results
 from evenstage.fitting.side_inputs import CellLogic
 from evenstage.netlist.reading.read import read
+from evenstage.timing.yardstick import yardstick
+from support.deck_run import DeckRun
 from support.measured import CELLS, measure, truth
 
 if TYPE_CHECKING:
@@ -136,6 +139,37 @@ class TestMeasuringDeck:
         for one, true in zip(found.process.transistors, truth().transistors, strict=True):
             for key in ("r_w", "stack", "slope", "shape"):
                 assert_allclose(getattr(one, key), getattr(true, key), rtol=0.02, atol=0)
+
+    def test_a_fit_of_what_a_deck_measures_finds_the_process(
+        self, netlist: Path, tmp_path: Path
+    ) -> None:
+        """The deck is read back, its transistors integrated, its measure cards answered.
+
+        Currents are such that an inverter driving four takes as long as the process says.
+        """
+        cells = [
+            cell for cell in standing_alone(read(netlist), truth()) if cell.name in {"inv", "nand2"}
+        ]
+        deck, path = measuring_deck(cells, netlist, truth()), tmp_path / "deck.sp"
+        table, printed = tmp_path / "deck.csv", tmp_path / "deck.log"
+        path.write_text(deck.text)
+        table.write_text(deck.table)
+        results = DeckRun(path, truth()).results()
+        printed.write_text("".join(f"{name} = {value:.8e}\n" for name, value in results.items()))
+        measured = read_measurements(table, read_results(printed))
+        assert len(measured) == deck.measurements == 96
+        # Capacitances of pins are no part of a deck: they are known before, the rest is not.
+        kinds = tuple(
+            replace(one, r_w=1.5 * one.r_w, r_fixed=0.0, stack=1.0, slope=0.0, shape=0.0)
+            for one in truth().transistors
+        )
+        found = fit(measured, cells, netlist, replace(truth(), transistors=kinds))
+        unit = build_bench(netlist, cells, truth()).circuit.process
+        # After the deck's ramps an inverter is a little faster than after another's edge.
+        assert_allclose(found.fo4, yardstick(unit).fo4, rtol=0.1, atol=0)
+        assert found.single is not None
+        assert found.single.median < 0.02
+        assert found.single.high < 0.1
 
     def test_a_netlist_without_cells_is_refused(self, tmp_path: Path) -> None:
         path = tmp_path / "cells.sp"

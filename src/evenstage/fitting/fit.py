@@ -19,7 +19,7 @@ from evenstage.process.generic import GENERIC_NOTICE
 from evenstage.timing.yardstick import yardstick
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Collection, Sequence
     from pathlib import Path
 
     from evenstage.circuit.network import BoolArray
@@ -41,6 +41,7 @@ def fit(
     *,
     source: str = "measurements",
     bench: Bench | None = None,
+    keep: Collection[str] = (),
 ) -> Fit:
     """Fit the constants of a process to measurements of cells.
 
@@ -58,6 +59,8 @@ def fit(
         What the measurements are called in reports.
     bench : Bench, optional
         Where the cells were measured; None: as the file draws them.
+    keep : collection of str
+        Constants, by their keys in the process file, that stay as the process has them.
 
     Raises
     ------
@@ -72,7 +75,8 @@ def fit(
     rows = measured.only(known)
     types = _types(bench)
     width = float(np.median(bench.circuit.devices.width))
-    unknowns = unknowns_of(bench.circuit.process, types, width)
+    every = unknowns_of(bench.circuit.process, types, width)
+    unknowns = tuple(unknown for unknown in every if unknown.key not in keep)
     solution = Problem(bench, graphs, rows, unknowns).solved()
     inside = rows.only(solution.window.holds(rows))
     predictor = build_predictor(bench, graphs, inside)
