@@ -22,7 +22,7 @@ import numpy as np
 import pytest
 from numpy.testing import assert_allclose
 
-from support.accuracy import CHAINS, LIBRARIES, MUST, Figures, inverter, judge, missed
+from support.accuracy import CHAINS, LIBRARIES, MUST, Figures, inverter, judge, missed, worst_points
 from support.open_timing import OPEN_CELLS, OpenLibrary, Table, along_a_chain
 
 if TYPE_CHECKING:
@@ -40,17 +40,62 @@ REACHED: Final = {
 }
 
 
+_STATE: Final = "the row is of a lighter state of the other inputs; the slowest was not measured"
+_PLACE: Final = (
+    "one stack factor for all places; next to the output of a deep stack it is too large"
+)
+_EARLY: Final = (
+    "slow input, light load: n switches below half the supply, and the delay tends to nothing; no "
+    "delay that grows with the transition does"
+)
+_INNER: Final = "slow input inside too: what a cell's own gates see of each other is overrated"
+
+#: The arcs farthest off, with their errors in percent, and why.
+FARTHEST: Final = {
+    "ihp_sg13g2": {
+        "a221oi_1 C1 rise": (30, _STATE),
+        "nor4_1 D rise": (16, _PLACE),
+        "nor4_2 D rise": (15, _PLACE),
+        "nor3_2 C rise": (11, _PLACE),
+        "nor4_1 C rise": (11, _PLACE),
+        "a22oi_1 A1 rise": (11, _STATE),
+        "inv_16 A fall": (10, "sixteen fingers, far from the four the constants were fitted to"),
+        "a22oi_1 A2 rise": (10, _STATE),
+        "nor4_2 C rise": (9, _PLACE),
+        "nor4_1 B rise": (9, _PLACE),
+    },
+    "gf180_7t": {
+        "aoi22_1 A2 fall": (40, _EARLY),
+        "inv_3 I fall": (31, _EARLY),
+        "aoi221_1 A2 fall": (30, _EARLY),
+        "oai22_1 A2 rise": (29, _STATE),
+        "oai22_1 A1 rise": (28, _STATE),
+        "and4_4 A4 rise": (24, _INNER),
+        "aoi211_2 A2 fall": (24, _EARLY),
+        "xnor2_4 A1 fall": (23, _INNER),
+        "or4_2 A1 fall": (23, _INNER),
+        "xnor2_4 A2 fall": (23, _INNER),
+    },
+}
+
+
 class TestAccuracy:
     """Within a tenth of what was reached, worse or better: else the table is old."""
 
     @pytest.mark.parametrize("name", LIBRARIES)
     def test_what_was_reached_is_reached(self, name: str, tmp_path: Path) -> None:
         """One test a library, so that each process is fitted once wherever tests run."""
-        found, known = judge(name, tmp_path).figures(), REACHED[name]
+        judged = judge(name, tmp_path)
+        found, known = judged.figures(), REACHED[name]
         for kind in ("one", "several", "paths", "chains"):
             assert_allclose(getattr(found, kind), getattr(known, kind), rtol=0.1, atol=0)
         assert_allclose(found.order, known.order, rtol=0, atol=0.003)
         assert not missed(found, MUST[name])
+        worst = {one.name: 100 * one.error for one in worst_points(judged)}
+        for arc, (error, _) in FARTHEST[name].items():
+            # Those beyond the tenth are much alike: two may change places.
+            assert abs(worst.get(arc, error) - error) < 3
+        assert len(worst.keys() & FARTHEST[name].keys()) >= 8
 
 
 class TestReading:

@@ -24,7 +24,7 @@ from evenstage.process.process import Process, Transistor
 from support.open_timing import OpenLibrary, Table, along_a_chain
 
 if TYPE_CHECKING:
-    from collections.abc import Callable, Mapping, Sequence
+    from collections.abc import Callable, Iterator, Mapping, Sequence
     from pathlib import Path
 
     from evenstage.circuit.network import BoolArray
@@ -306,3 +306,34 @@ def missed(found: Figures, must: Figures) -> set[str]:
         if (np.array(getattr(found, name)) > getattr(must, name)).any()
     }
     return names | ({"order"} if (np.array(found.order) < must.order).any() else set())
+
+
+class WorstPoint(NamedTuple):
+    """The worst point of an arc: its name, error as part of one, transition (s) and load (F)."""
+
+    name: str
+    error: float
+    transition: float
+    load: float
+    stages: int
+
+
+def worst_points(judged: Judged, count: int = 10) -> Iterator[WorstPoint]:
+    """Yield the arcs with the largest errors, the largest first."""
+    rows, inside = judged.rows, np.flatnonzero(judged.inside)
+    error = judged.predicted.delay[inside] / rows.delay[inside] - 1
+    met = set[int]()
+    for place in np.argsort(-np.abs(error), kind="stable"):
+        point = inside[place]
+        number = int(rows.query[point])
+        if number not in met and len(met) < count:
+            met.add(number)
+            query = judged.queries[number]
+            edge = "rise" if query.rising else "fall"
+            yield WorstPoint(
+                f"{judged.library.short(query.subcircuit)} {query.input} {edge}",
+                float(error[place]),
+                float(rows.transition[point]),
+                float(rows.load[point]),
+                int(judged.graphs[number].level.max()),
+            )
