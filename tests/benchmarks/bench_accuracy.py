@@ -3,8 +3,9 @@
 Run ``PYTHONPATH=src:tests python tests/benchmarks/bench_accuracy.py``, with names of libraries or
 for all, and the open cell data beside the checkout (see `support.open_timing`); some ten minutes.
 Each row is a fit of its own to the calibration cells, with one part of the model switched off,
-judged on all other cells. Then come the arcs with the largest errors, each at its worst point; `tests/reference/test_accuracy.py` has them
-with the reasons. ``pytest -m benchmark`` on this file holds the table against `BOUGHT`.
+judged on all other cells. Then come the arcs with the largest errors, each at its worst point; the
+reasons stand in `tests/reference/test_accuracy.py`. ``pytest -m benchmark`` on this file holds the
+table against `BOUGHT`.
 """
 
 from __future__ import annotations
