@@ -293,3 +293,14 @@ class TestOtherCommands:
         assert capsys.readouterr().err == (
             f"{command} takes one process, got 3; give --process once (several-corners)\n"
         )
+
+    def test_a_simulation_says_how_to_see_all(
+        self, netlist: Path, processes: list[Path], capsys: pytest.CaptureFixture[str]
+    ) -> None:
+        several = [word for path in processes for word in ("--process", str(path))]
+        assert main(["simulate", str(netlist), *several]) == 1
+        each = ", then with ".join(f"--process {path}" for path in processes)
+        assert capsys.readouterr().err == (
+            "simulate takes one process, got 3; run it once for each corner: with"
+            f" {each} (several-corners)\n"
+        )

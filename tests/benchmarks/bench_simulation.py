@@ -1,9 +1,9 @@
-"""How near estimate and simulation are, and how long simulations take, by hand.
+"""How near estimate and simulation are, stage by stage, and how long simulations take, by hand.
 
 Run ``PYTHONPATH=src:tests python tests/benchmarks/bench_simulation.py [SAMPLE ...]``. For every
 sample: its process is fitted to simulated inverters, NAND2s and NOR2s alone; then its three slowest
-paths, before and after resizing, are estimated and simulated on those constants. A chain of 20
-stages with three gates beside each, and one of 200 nodes to 2,000 steps, measure speed.
+paths, before and after resizing, are estimated and simulated on those constants. Chains of 20 stages
+with three gates beside each, and of 100 to 400 nodes to some 2,000 steps, measure speed.
 """
 
 from __future__ import annotations
@@ -11,65 +11,55 @@ from __future__ import annotations
 import sys
 import tempfile
 import time
-from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage import flow
-from evenstage.process.read import read_process
 from evenstage.simulation.integrate import Accuracy, integrate
 from evenstage.simulation.ramps import switching
 from evenstage.simulation.simulate import simulate
 from evenstage.timing.analyse import analyse
 from support.blocks import block, circuit_of, inverter, plain_process
-from support.cells import cells
 from support.nonlinear import Bench
+from support.sample_simulation import SAMPLES, simulated
 
 if TYPE_CHECKING:
-    from evenstage.simulation.results import SimulatedBlock
+    from evenstage.simulation.results import SimulatedBlock, SimulatedPath
+    from support.sample_simulation import Simulated
 
-_SAMPLES = Path(__file__).parents[2] / "sample_netlists"
+
+def off(path: SimulatedPath) -> str:
+    """Return estimate, simulation and difference of a path."""
+    error = 100 * (path.estimated_delay / path.delay - 1)
+    return f"{1e12 * path.estimated_delay:6.1f} {1e12 * path.delay:6.1f} {error:+5.1f} %"
 
 
-def line(name: str, some: SimulatedBlock) -> str:
-    """Return estimate, simulation and difference of each path of a block."""
-    paths = [*some.paths, *([some.other_edge] if some.other_edge else [])]
-    texts = [
-        f"{1e12 * p.estimated_delay:7.1f}/{1e12 * p.delay:6.1f}"
-        f" {100 * (p.estimated_delay / p.delay - 1):+5.1f} %"
-        for p in paths
+def rows(when: str, some: SimulatedBlock) -> str:
+    """Return a line for each path of a block, and one for the stages of the first."""
+    named = [(str(place), path) for place, path in enumerate(some.paths, 1)]
+    if some.other_edge is not None:
+        named.append(("other edge", some.other_edge))
+    lines = [f"  {when:6} {name:10} {off(path)}" for name, path in named]
+    stages = [
+        f"{stage.estimate.function} {100 * (stage.estimate.delay / stage.delay - 1):+.0f}"
+        for stage in some.paths[0].stages
     ]
-    return f"  {name:6}  {'  '.join(texts)}  ranks {'alike' if some.ranks_alike else 'differ'}\n"
+    lines.insert(1, f"         stages of 1, %: {', '.join(stages)}")
+    return "\n".join(lines)
 
 
-def sample(folder: Path, work: Path) -> str:
+def sample(found: Simulated) -> str:
     """Return the lines of one sample."""
-    drawn, fitted = work / f"{folder.name}_cells.sp", work / f"{folder.name}.toml"
-    drawn.write_text(cells(read_process(folder / "process.toml")))
-    question = flow.Question(process=folder / "process.toml")
-    found = flow.fit_simulated(drawn, question, fitted)
-    question = flow.Question(process=fitted, brief=folder / "brief.toml", count=3)
-    netlist, after = folder / "netlist.sp", work / f"{folder.name}.sp"
-    flow.resize(netlist, replace(question, count=1), output=after)
-    begun = time.process_time()
-    result = flow.simulate(netlist, question, after=after)
-    seconds = time.process_time() - begun
-    old, new = result.before, result.after
-    assert new is not None
-    assert found.single is not None
-    claimed, simulated = (
-        100 * (1 - later / earlier)
-        for earlier, later in (
-            (old.paths[0].estimated_delay, new.paths[0].estimated_delay),
-            (old.paths[0].delay, new.paths[0].delay),
-        )
-    )
-    return (
-        f"{folder.name}: fit {100 * found.single.median:.1f} %, faster by {claimed:.1f} % claimed,"
-        f" {simulated:.1f} % simulated; {seconds:.1f} s\n{line('before', old)}{line('after', new)}"
-    )
+    claimed, gained = (100 * gain for gain in found.gains)
+    turned = [f"{w} {i} and {j} ({100 * by:.2f} % apart)" for w, i, j, by, _ in found.turned]
+    return "\n".join([
+        f"{found.name}: fit {100 * found.fitted:.1f} %, faster by {claimed:.1f} % claimed,"
+        f" {gained:.1f} % simulated; ranked differently: {', '.join(turned) or 'none'};"
+        f" {found.seconds:.1f} s for {len(found.paths)} paths",
+        *(rows(when, some) for when, some in found.blocks.items()),
+        "",
+    ])  # fmt: skip
 
 
 def speed() -> str:
@@ -83,7 +73,23 @@ def speed() -> str:
     begun = time.process_time()
     path = simulate(analysis).before.paths[0]
     first = time.process_time() - begun
-    names = [f"n{i}" for i in range(200)]
+    lines = [
+        f"{len(path.stages)} stages, {path.side_gates} side gates, {path.nodes} nodes:"
+        f" {first:.1f} s for both edges"
+    ]
+    taken = {size: chain(size) for size in (100, 200, 400)}
+    base = taken[200][1] / taken[200][0]
+    lines += [
+        f"{size} nodes, {2 * size} transistors, {steps} steps: {seconds:.1f} s;"
+        f" a step takes {seconds / steps / base:.2f} times that of 200 nodes"
+        for size, (steps, seconds) in taken.items()
+    ]
+    return "\n".join([*lines, ""])
+
+
+def chain(size: int) -> tuple[int, float]:
+    """Return steps and seconds of a chain of inverters, an edge running through half of it."""
+    names = [f"n{i}" for i in range(size)]
     bench = Bench(names, ["0", "vdd", "in"])
     for entry, output in zip(["in", *names], names, strict=False):
         bench.inverter(entry, output)
@@ -91,25 +97,22 @@ def speed() -> str:
     waves = integrate(
         bench.equations(),
         switching(np.array([0.0, 1.0, 0.0]), np.array([0.0, 1.0, 1.0]), 0.0, 4.0),
-        np.array([1.0, 0.0] * 100),
+        np.array([1.0, 0.0] * (size // 2)),
         (-1.0, 700.0),
         unit=1.0,
         supply=1.0,
-        accuracy=Accuracy(relative=3e-5, absolute=3e-6),
+        accuracy=Accuracy(relative=4e-6, absolute=4e-7),
     )
-    second = time.process_time() - begun
-    return (
-        f"{len(path.stages)} stages, {path.side_gates} side gates, {path.nodes} nodes: "
-        f"{first:.1f} s for both edges\n200 nodes, {len(waves.time)} steps: {second:.1f} s\n"
-    )
+    return len(waves.time), time.process_time() - begun
 
 
 def main() -> None:
     """Print the tables."""
-    chosen = sys.argv[1:] or sorted(folder.name for folder in _SAMPLES.iterdir())
+    chosen = sys.argv[1:] or sorted(folder.name for folder in SAMPLES.iterdir())
     with tempfile.TemporaryDirectory() as work:
         for name in chosen:
-            sys.stdout.write(sample(_SAMPLES / name, Path(work)))
+            sys.stdout.write(sample(simulated(name, Path(work))))
+            sys.stdout.flush()
     sys.stdout.write(speed())
 
 

@@ -16,6 +16,7 @@ import pytest
 from numpy.testing import assert_allclose
 
 from evenstage.process import level1
+from evenstage.process.currents import alpha_power_ramp
 from evenstage.simulation.crossings import last_crossing, transition
 from evenstage.simulation.integrate import Accuracy, integrate
 from evenstage.simulation.ramps import constant, switching
@@ -168,14 +169,45 @@ class TestAlphaPower:
         # With V_D0 = V_DD - V_T above V_DD/2 the plain C V/(2 I) is 3.0 % low at v 0.2.
         assert_allclose(delay(discharge(threshold=0.2)) * 0.64, 1.6106 / 1.5625, rtol=1e-4, atol=0)
 
+    @pytest.mark.parametrize(
+        ("supply", "saturation", "alpha", "cap", "printed"),
+        # V_DD 1.8 V, V_D0 0.8 V, alpha 1.3, C 0.1 pF, in units of C/I_D0: 251.665 ps (recomputed).
+        [(1.8, 0.8, 1.3, 0.1e-12, 251.665), (1.0, 0.5, 1.0, 0.1e-12, None)],
+    )
+    def test_output_transition(
+        self, supply: float, saturation: float, alpha: float, cap: float, printed: float | None
+    ) -> None:
+        # The published transition takes the triode region for a resistor V_D0/I_D0. Here it is one:
+        # in series with a channel that saturates at a hundredth of V_D0, so I = min(I_D0, V/R).
+        current, drive = 1e-3, supply - 0.25 * supply
+        bench = Bench(["out", "mid"], ["0", "vdd", "in"], rounding=1e-4 * supply)
+        law = {"alpha": alpha, "gain": current / drive**alpha, "threshold": 0.25 * supply}
+        bench.mos(1.0, "mid", "in", "0", knee=0.002 * saturation / drive ** (alpha / 2), **law)
+        bench.resistors.append(("out", "mid", saturation / current))
+        bench.capacitors += [("out", "0", cap), ("mid", "0", 1e-5 * cap)]
+        waves = integrate(
+            bench.equations(),
+            constant(np.array([0.0, supply, supply])),
+            np.array([supply, supply - saturation]),
+            (0.0, 50 * cap * supply / current),
+            unit=cap * supply / current,
+            supply=supply,
+            accuracy=SHARP,
+        )
+        found = transition(waves, 0, supply, rising=False)
+        assert found is not None
+        expected = alpha_power_ramp(saturation / supply) * cap * supply / current
+        assert_allclose(found, expected, rtol=2e-3, atol=0)
+        if printed is not None:
+            assert_allclose(expected, printed * 1e-12, rtol=5e-6, atol=0)
+
     def test_triode_region_swings_faster_than_a_resistor(self) -> None:
-        # The published transition takes the triode region for a resistor V_D0/I_D0; the law's own
-        # current there is larger by up to 2, so the swing is faster, by its closed form.
+        # The law's own current there is (2 - r) r, up to twice a resistor's r, so that equality
+        # with the published transition cannot hold: the swing is faster, by its closed form.
         waves = discharge(threshold=0.2, gain=0.8**-1.3, alpha=1.3, knee=0.5 / 0.8**0.65)
         found = transition(waves, 0, 1.0, rising=False)
         assert found is not None
         # 0.9 to 0.5 at full current, then dv/dt = -(2 - r) r with r = v/0.5, to r = 0.2.
         exact = 0.4 + 0.25 * math.log((2 - 0.2) / 0.2)
         assert_allclose(0.8 * found, exact, rtol=1e-4, atol=0)
-        resistive = 0.9 / 0.8 + 0.5 / 0.8 * math.log(10 * 0.5 / math.e)
-        assert found < resistive
+        assert found < 0.9 * alpha_power_ramp(0.5)

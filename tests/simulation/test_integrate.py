@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -140,6 +141,27 @@ class TestStopping:
                 supply=1.0,
                 accuracy=Accuracy(most_steps=3),
             )
+
+    def test_a_current_out_of_range_says_when(self) -> None:
+        # A transistor that nothing can hold: its current leaves the numbers once it opens.
+        bench = chain(["a", "y"], "in")
+        bench.mos(1.0, "y", "in", "0", gain=1e300, alpha=40.0)
+        ramps = switching(np.array([0.0, 1.0, 0.0]), np.array([0.0, 1.0, 1.0]), 10e-12, 5e-12)
+        with pytest.raises(SimulationError) as caught:
+            integrate(
+                bench.equations(),
+                ramps,
+                np.array([1.0, 0.0]),
+                (0.0, 40e-12),
+                unit=1e-12,
+                supply=1.0,
+            )
+        assert caught.value.code == "simulation-stopped"
+        assert re.match(
+            r"the simulation stopped at 1\d(\.\d+)? ps: .*; look for a transistor or a resistor"
+            r" whose size is out of all proportion to the others$",
+            caught.value.message,
+        )
 
     def test_ends_once_enough_is_known(self) -> None:
         bench = chain(["a", "y"], "in")

@@ -125,8 +125,8 @@ def in_corners(
     return tuple(blocks)
 
 
-def one_process(question: Question, command: str) -> None:
-    """Refuse further corners where a command knows only one.
+def one_process(question: Question, command: str, instead: str = "give --process once") -> None:
+    """Refuse further corners where a command knows only one, and say what to do instead.
 
     Raises
     ------
@@ -135,7 +135,7 @@ def one_process(question: Question, command: str) -> None:
     """
     if question.corners:
         raise SettingsError(
-            f"{command} takes one process, got {1 + len(question.corners)}; give --process once",
+            f"{command} takes one process, got {1 + len(question.corners)}; {instead}",
             code="several-corners",
         )
 

@@ -44,7 +44,8 @@ def simulate(
     OutputError
         Where the waveforms cannot be written.
     """
-    one_process(question, "simulate")
+    each = ", then with ".join(f"--process {one}" for one in (question.process, *question.corners))
+    one_process(question, "simulate", f"run it once for each corner: with {each}")
     first = load(path, question)
     before = with_vectors(first.analysis, question.conflicts)
     changed = None
