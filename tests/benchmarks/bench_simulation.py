@@ -2,8 +2,9 @@
 
 Run ``PYTHONPATH=src:tests python tests/benchmarks/bench_simulation.py [SAMPLE ...]``. For every
 sample: its process is fitted to simulated inverters, NAND2s and NOR2s alone; then its three slowest
-paths, before and after resizing, are estimated and simulated on those constants. Chains of 20 stages
-with three gates beside each, and of 100 to 400 nodes to some 2,000 steps, measure speed.
+paths, before and after resizing, are estimated and simulated on those constants. A chain of 20
+stages with three gates beside each, and chains of 100 to 400 nodes to some 2,000 steps, measure
+speed.
 """
 
 from __future__ import annotations
@@ -53,13 +54,12 @@ def sample(found: Simulated) -> str:
     """Return the lines of one sample."""
     claimed, gained = (100 * gain for gain in found.gains)
     turned = [f"{w} {i} and {j} ({100 * by:.2f} % apart)" for w, i, j, by, _ in found.turned]
-    return "\n".join([
+    head = (
         f"{found.name}: fit {100 * found.fitted:.1f} %, faster by {claimed:.1f} % claimed,"
         f" {gained:.1f} % simulated; ranked differently: {', '.join(turned) or 'none'};"
-        f" {found.seconds:.1f} s for {len(found.paths)} paths",
-        *(rows(when, some) for when, some in found.blocks.items()),
-        "",
-    ])  # fmt: skip
+        f" {found.seconds:.1f} s for {len(found.paths)} paths"
+    )
+    return "\n".join([head, *(rows(when, some) for when, some in found.blocks.items()), ""])
 
 
 def speed() -> str:
@@ -73,18 +73,18 @@ def speed() -> str:
     begun = time.process_time()
     path = simulate(analysis).before.paths[0]
     first = time.process_time() - begun
-    lines = [
+    head = (
         f"{len(path.stages)} stages, {path.side_gates} side gates, {path.nodes} nodes:"
         f" {first:.1f} s for both edges"
-    ]
+    )
     taken = {size: chain(size) for size in (100, 200, 400)}
     base = taken[200][1] / taken[200][0]
-    lines += [
+    lines = [
         f"{size} nodes, {2 * size} transistors, {steps} steps: {seconds:.1f} s;"
         f" a step takes {seconds / steps / base:.2f} times that of 200 nodes"
         for size, (steps, seconds) in taken.items()
     ]
-    return "\n".join([*lines, ""])
+    return "\n".join([head, *lines, ""])
 
 
 def chain(size: int) -> tuple[int, float]:

@@ -18,8 +18,8 @@ if TYPE_CHECKING:
 
 NAMES: Final = sorted(path.name for path in SAMPLES.iterdir())
 
-#: The paths of a block are wrong alike, and what is left of their errors is about a hundredth of the
-#: delay: paths whose estimates are nearer than that tie.
+#: The paths of a block are wrong alike, and what is left of their errors is about a hundredth of
+#: the delay: paths whose estimates are nearer than that tie.
 TIE: Final = 0.01
 
 #: All pairs that rank differently: netlist, and numbers of the paths from 1.

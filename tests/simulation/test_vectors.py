@@ -82,6 +82,16 @@ class TestVector:
         assert found.after.paths[0].by_vector
 
 
+class TestAnotherDesign:
+    def test_is_told(self) -> None:
+        one, other = (
+            analyse(circuit([inverter("i", start, "y", 1, 2), "cy y 0 5f"], f"{start} y"))
+            for start in ("a", "b")
+        )
+        (notice,) = [n for n in simulate(one, other).notices if n.code == "no-same-path"]
+        assert notice.message.startswith("the slowest path before, from a to y, is not in ")
+
+
 class TestNoVector:
     def test_a_false_path_is_not_simulated(self) -> None:
         analysis = analyse(circuit(FALSE, "a b c s y"), start="a", end="y")

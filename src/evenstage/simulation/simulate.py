@@ -68,8 +68,13 @@ def simulate(
     if after is not None:
         changed, more = _block(after, bench)
         same = compare(analysis, after).same_path_after
-        if same is not None and steps(same) != steps(changed.paths[0].estimate):
-            changed = replace(changed, same_path=bench.run(_timing(after), same))
+        if same is None:
+            notices.append(_no_same_path(analysis.paths[0], after))
+        elif steps(same) != steps(changed.paths[0].estimate):
+            try:
+                changed = replace(changed, same_path=bench.run(_timing(after), same))
+            except SimulationError as error:
+                notices.append(_left_out(same, error))
         notices += more
     assumed = assumption_notices(process)
     return Simulation(
@@ -114,6 +119,16 @@ def _block(analysis: Analysis, bench: Bench) -> tuple[SimulatedBlock, list[Notic
         except SimulationError as error:
             notices.append(_left_out(other, error))
     return SimulatedBlock(analysis=analysis, paths=tuple(paths), other_edge=turned), notices
+
+
+def _no_same_path(path: Path, after: Analysis) -> Notice:
+    return Notice(
+        "no-same-path",
+        f"the slowest path before, from {path.start} to {path.end}, is not in '{after.source}': the"
+        " speed-up compares different paths; check that both are one design, or name the ends with"
+        " --from and --to",
+        names=(path.start, path.end),
+    )
 
 
 def _passed_over(analysis: Analysis) -> list[Notice]:
