@@ -11,7 +11,7 @@ and an outside load of 40.
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from importlib.util import find_spec
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -258,4 +258,51 @@ def _assembled(
         end_offset=np.zeros(len(ends)),
         limit=Monomials(row=nothing, coefficient=np.zeros(0), plus=nothing, minus=nothing),
         limits=0,
+    )
+
+
+def two_edges(problem: Problem, *, fall: float = 0.8, tied: int = 10) -> Problem:
+    """Return a circuit with a rising and a falling edge per gate, ties and input ceilings.
+
+    Every arc inverts; falling edges are quicker by `fall`, rising ones slower by as much. Of every
+    `tied` gates two share one size. The gates of each input may show twice their smallest load.
+    """
+    n, arcs = len(problem.lower), len(problem.arc_source)
+    index = np.append(np.where(np.arange(n) % tied == 1, np.arange(n) - 1, np.arange(n)), n)
+    edge = np.repeat([0, 1], arcs)
+    terms = problem.delay
+    speed = np.repeat([fall, 2.0 - fall], len(terms.row))
+    starts = np.repeat(problem.start_node, 2) * 2
+    starts[1::2] += 1
+    ends = np.repeat(problem.end_node, 2) * 2
+    ends[1::2] += 1
+    delay = Monomials(
+        row=np.concatenate([terms.row, terms.row + arcs]).astype(np.int32),
+        coefficient=np.tile(terms.coefficient, 2) * speed,
+        plus=np.tile(index[terms.plus], 2).astype(np.int32),
+        minus=np.tile(index[terms.minus], 2).astype(np.int32),
+    )
+    outside = np.flatnonzero(np.isin(problem.arc_source, problem.start_node))
+    loads = np.flatnonzero(np.isin(terms.row, outside) & (terms.plus < n))
+    which = np.searchsorted(outside, terms.row[loads])
+    plus, none = index[terms.plus[loads]], np.full(len(loads), n)
+    least = np.bincount(which, terms.coefficient[loads] * problem.lower[plus], len(outside))
+    limit = Monomials(
+        row=which.astype(np.int32),
+        coefficient=terms.coefficient[loads] / (2.0 * least[which]),
+        plus=plus.astype(np.int32),
+        minus=none.astype(np.int32),
+    )
+    return replace(
+        problem,
+        nodes=2 * problem.nodes,
+        start_node=starts.astype(np.int32),
+        start_arrival=np.repeat(problem.start_arrival, 2),
+        arc_source=(2 * np.tile(problem.arc_source, 2) + 1 - edge).astype(np.int32),
+        arc_target=(2 * np.tile(problem.arc_target, 2) + edge).astype(np.int32),
+        delay=delay,
+        end_node=ends.astype(np.int32),
+        end_offset=np.repeat(problem.end_offset, 2),
+        limit=limit,
+        limits=len(outside),
     )

@@ -38,10 +38,12 @@ _TRIALS: Final = 12
 _DECREASE: Final = 1e-4
 #: Part of the gap that softness costs which an inexact minimum may add.
 _ENOUGH: Final = 0.5
-#: Damping: least, most, and how it moves after full and shortened steps.
+#: Damping: least, most, and how it moves after full steps and each time one is shortened.
 _LEAST_DAMPING: Final = 1e-5
 _MOST_DAMPING: Final = 10.0
 _CALMER, _STRONGER = 0.3, 4.0
+#: A step with this length counts as full.
+_FULL: Final = 0.9
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -127,7 +129,7 @@ def _stepped(state: State) -> State:
     if found is None:
         damping = min(state.damping * _STRONGER, _MOST_DAMPING)
         return replace(state, damping=damping, steps=state.steps + 1, work=state.work + work)
-    damping = state.damping * (_CALMER if length >= 0.9 else _STRONGER)
+    damping = state.damping * (_CALMER if length >= _FULL else _STRONGER ** max(trials - 1, 1))
     return State(
         point=found,
         prices=_moved(state, found),

@@ -369,9 +369,11 @@ def _alike(
     leader = np.empty(len(order), np.intp)
     leader[order] = order[np.maximum.accumulate(np.where(differs, np.arange(len(order)), 0))]
     # Marks may collide: compare part by part before anything is taken for equal.
-    own = ranges(begin, count)
     its = ranges(begin[leader], count)
-    scale = np.repeat(total / total[leader], count)
-    off = np.abs(coefficient[own] - scale * coefficient[its]) > 8 * _SAME * coefficient[own]
-    alone = np.logical_or.reduceat(off | (plus[own] != plus[its]), begin)
+    off = np.repeat(total / total[leader], count)
+    off *= coefficient[its]
+    off -= coefficient
+    differ = np.abs(off, out=off) > 8 * _SAME * coefficient
+    differ |= plus != plus[its]
+    alone = np.logical_or.reduceat(differ, begin)
     return np.where(alone, np.arange(len(begin)), leader)
