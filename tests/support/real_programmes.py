@@ -10,6 +10,7 @@ from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.rewriting.handles import width_handles
 from evenstage.sizing.block_engine import engine_of
 from evenstage.sizing.partition import partition
+from evenstage.sizing.timed import Timed
 from evenstage.sizing.variables import variables
 from evenstage.sizing.wishes import Original, Wishes
 from evenstage.timing.analyse import analyse
@@ -28,4 +29,5 @@ def whole_block(netlist: Netlist, process: Process, copies: int = 4) -> Engine:
     parts = partition(timing.circuit, Brief())
     handles = width_handles(devices, process, parts.variable_of, copies)
     free = variables(timing.circuit, Brief(), parts, handles)
-    return engine_of(timing, Brief(), Wishes(scope="block", reclaim=True), Original(), free)
+    wishes = Wishes(scope="block", reclaim=True)
+    return engine_of(Timed((timing,)), Brief(), wishes, [Original()], free)
