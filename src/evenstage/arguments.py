@@ -294,6 +294,11 @@ def _wishes(parser: argparse.ArgumentParser) -> None:
         "--reclaim", action="store_true", help="also make smaller what is off the slowest paths"
     )
     parser.add_argument(
+        "--apart",
+        action="store_true",
+        help="size pull-up and pull-down of a gate apart, within the brief's skew",
+    )
+    parser.add_argument(
         "--spend",
         choices=("width", "energy"),
         help="what is kept small: total width, or switched capacitance (the brief's aim.spend)",

@@ -116,6 +116,11 @@ class Brief:
         s; factor of today's total width.
     aim_spend : {"width", "energy"}
         What is kept small.
+    pulls : {"together", "apart"}
+        Whether pull-up and pull-down of a gate have one size or one each.
+    skew_least, skew_most : float
+        Bounds of the strength of a gate's pull-up over that of its pull-down where they are sized
+        apart; 1 is even.
     case : {"any", "exact"}, optional
         Whether case counts in the names of nets; None: only where two ports of one subcircuit
         differ by it alone.
@@ -142,6 +147,9 @@ class Brief:
     aim_delay: float | None = None
     aim_width: float | None = None
     aim_spend: Literal["width", "energy"] = "width"
+    pulls: Literal["together", "apart"] = "together"
+    skew_least: float = 0.5
+    skew_most: float = 2.0
     case: Literal["any", "exact"] | None = None
     first_line: Literal["title", "card"] | None = None
     source: SourceText | None = None
@@ -188,6 +196,13 @@ BRIEF_KEYS: Final[Mapping[str, Entry]] = {
             "spend": Text(choices=("width", "energy"), default="width"),
         }
     ),
+    "pulls": Text(choices=("together", "apart"), default="together"),
+    "skew": Table(
+        keys={
+            "least": Number(above=0, default=0.5),
+            "most": Number(above=0, default=2.0),
+        }
+    ),
     "case": Text(choices=("any", "exact")),
     "first_line": Text(choices=("title", "card")),
 }
@@ -218,7 +233,8 @@ def read_brief(path: str | Path) -> Brief:
     [1.6e-12, 6.4e-13]
     """
     settings = read_settings(path, BRIEF_KEYS)
-    supplies, aim = settings.table("supplies"), settings.table("aim")
+    supplies, aim, skew = (settings.table(key) for key in ("supplies", "aim", "skew"))
+    skew.check_order("least", "most")
     return Brief(
         top=settings.optional_text("top"),
         supplies_high=supplies.names("high"),
@@ -237,6 +253,9 @@ def read_brief(path: str | Path) -> Brief:
         aim_delay=aim.optional_number("delay"),
         aim_width=aim.optional_number("width"),
         aim_spend="energy" if aim.text("spend") == "energy" else "width",
+        pulls="apart" if settings.text("pulls") == "apart" else "together",
+        skew_least=skew.number("least"),
+        skew_most=skew.number("most"),
         case=_CASES.get(settings.optional_text("case") or ""),
         first_line=_FIRST_LINES.get(settings.optional_text("first_line") or ""),
         source=settings.where.places.source,

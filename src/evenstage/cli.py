@@ -206,6 +206,7 @@ def _resize(asked: argparse.Namespace) -> flow.Result:
         margin=asked.margin / 100,
         scope=asked.scope,
         reclaim=asked.reclaim,
+        apart=asked.apart,
         changes=asked.changes,
     )
     return flow.resize(

@@ -116,7 +116,8 @@ def _with_aims(wishes: Wishes, brief: Brief) -> Wishes:
     SettingsError
         Where the brief aims at a delay and at a width.
     """
-    wishes = replace(wishes, spend=brief.aim_spend)
+    apart = wishes.apart or brief.pulls == "apart"
+    wishes = replace(wishes, spend=brief.aim_spend, apart=apart)
     if wishes.delay is None and wishes.width is None:
         if brief.aim_delay is not None and brief.aim_width is not None:
             raise SettingsError(

@@ -75,7 +75,8 @@ def alike_changes(changes: Sequence[Change]) -> list[_Gates]:
 
 def _largest(gates: Sequence[_Gates]) -> list[_Gates]:
     """Return the gates that buy most, in their old order."""
-    order = sorted(range(len(gates)), key=lambda i: (-abs(gates[i][0].alone), i))
+    most = [max(abs(change.alone) for change in gate) for gate in gates]
+    order = sorted(range(len(gates)), key=lambda i: (-most[i], i))
     return [gates[i] for i in sorted(order[:_GATES_SHOWN])]
 
 
@@ -88,7 +89,10 @@ def _gate_rows(paper: Paper, gate: _Gates, width: Scale, alone: Scale) -> list[l
     places = {change.instance: change.occurrences for change in gate}
     many = sum(places.values())
     names = [family_name(instances), f"{paper.times}{many}" if many > 1 else ""]
-    buys = [_signed(alone.number(effect)) for effect in (gate[0].alone, gate[0].last)]
+    buys = [
+        [_signed(alone.number(effect)) for effect in (cards[0].alone, cards[0].last)]
+        for cards in alike.values()
+    ]
     return [
         [
             *(["", ""] if row else names),
@@ -97,7 +101,8 @@ def _gate_rows(paper: Paper, gate: _Gates, width: Scale, alone: Scale) -> list[l
             width.number(old),
             width.number(new),
             factor(paper, old, new),
-            *(["", ""] if row else buys),
+            # Once for the gate, unless its sides have sizes of their own.
+            *(["", ""] if row and len(set(map(tuple, buys))) == 1 else buys[row]),
             _place(cards),
             cards[0].why,
         ]

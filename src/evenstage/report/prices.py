@@ -19,6 +19,7 @@ _WORDS: Final[dict[PricedLimit, str]] = {
     "least width": "a least width 10 % smaller at {}",
     "fixed": "{}, which may not change, 10 % wider or narrower",
     "budget": "10 % more to spend",
+    "skew": "10 % more skew at {}",
 }
 #: Lines, and names on one of them.
 _LINES: Final = 6

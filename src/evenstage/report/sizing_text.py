@@ -38,6 +38,7 @@ HOLDS: Final[dict[Hold, str]] = {
     "ceiling": "input ceiling",
     "transition": "transition",
     "same size": "same size",
+    "skew": "skew",
 }
 
 

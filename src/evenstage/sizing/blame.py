@@ -24,7 +24,14 @@ _FULL: Final = 1e-5
 
 def limit_out_of_reach(engine: Engine, error: LimitOutOfReachError) -> InfeasibleError:
     """Say which input or which gate cannot keep its limit, and in which corner of several."""
-    corner = next(c for c in engine.corners if c.rows.start <= error.limit_row < c.rows.stop)
+    mine = (c for c in engine.corners if c.rows.start <= error.limit_row < c.rows.stop)
+    corner = next(mine, None)
+    if corner is None:
+        return InfeasibleError(
+            "a gate whose pull-up and pull-down are sized apart cannot keep its skew within the "
+            "bounds of the brief and all other limits; set skew.least and skew.most farther apart",
+            code="skew-out-of-reach",
+        )
     limits, circuit = corner.limits, corner.model.circuit
     nets, own = limits.ceiling_net, error.limit_row - corner.rows.start
     where = f" in {circuit.process.name}" if len(engine.corners) > 1 else ""
@@ -70,7 +77,7 @@ def blame(engine: Engine, problem: Problem, solution: Solution) -> str:
     variables = engine.variables
     held_up, full = limiting(engine.joint, solution), used_up(problem, solution)
     inputs: list[str] = []
-    edges = False
+    edges, last = False, engine.corners[-1].rows.stop
     for corner in engine.corners:
         names, edge = _full(corner, held_up, full[corner.rows])
         inputs += names
@@ -82,6 +89,8 @@ def blame(engine: Engine, problem: Problem, solution: Solution) -> str:
         held.append(f"the input capacitance allowed on '{inputs[0]}'")
     if edges:
         held.append("the transition limit")
+    if full[last:].any():
+        held.append("the skew allowed")
     if at_top.any():
         held.append(f"the largest widths allowed ({int(at_top.sum())} sizes)")
     if stuck:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -11,6 +11,7 @@ from evenstage.errors import SettingsError
 from evenstage.netlist.rewriting.handles import width_handles
 from evenstage.sizing.block_engine import engine_of
 from evenstage.sizing.partition import partition
+from evenstage.sizing.pulls import pulled_apart, skews, tied_by_text
 from evenstage.sizing.timed import Timed
 from evenstage.sizing.variables import variables
 from evenstage.sizing.wishes import Original
@@ -21,6 +22,7 @@ if TYPE_CHECKING:
 
     from evenstage.brief import Brief
     from evenstage.circuit.circuit import Circuit
+    from evenstage.errors import Notice
     from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.process.process import Process
     from evenstage.sizing.engine import Engine
@@ -83,9 +85,16 @@ class Block:
         """The block in its first corner, for what is the same in all."""
         return self.timed.corners[0].circuit
 
-    def partition(self) -> Partition:
-        """Return the sizes of the block."""
-        return partition(self.circuit, self.brief)
+    def partition(self) -> tuple[Partition, tuple[Notice, ...]]:
+        """Return the sizes of the block, and what is to be said of them."""
+        parts = partition(self.circuit, self.brief)
+        if not self.wishes.apart:
+            return parts, ()
+        circuits = [one.circuit for one in self.timed.corners]
+        together = self.handles(parts)
+        parts, notices = pulled_apart(circuits, parts)
+        parts, more = tied_by_text(self.circuit, parts, self.handles(parts), together)
+        return parts, (*notices, *more)
 
     def handles(self, parts: Partition) -> WidthHandles:
         """Return how the widths of some sizes can be changed."""
@@ -103,6 +112,9 @@ class Block:
             self.originals[0].smallest,
             [one.circuit for one in self.timed.corners[1:]],
         )
+        if parts.is_apart:
+            bounds = skews(self.circuit, parts, self.brief.skew_least, self.brief.skew_most)
+            free = replace(free, skews=bounds)
         return engine_of(self.timed, self.brief, self.wishes, self.originals, free)
 
 

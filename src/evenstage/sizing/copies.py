@@ -19,13 +19,14 @@ from scipy.cluster.hierarchy import fcluster, linkage
 from evenstage.netlist.rewriting.handles import copy_texts
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Iterable, Sequence
 
     from numpy.typing import NDArray
 
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.netlist.rewriting.families import Family
     from evenstage.netlist.rewriting.handles import WidthHandles
+    from evenstage.netlist.rewriting.sized_block import Slot
     from evenstage.sizing.partition import Partition
 
 Text = Literal["copy", "leaf", "kept"]
@@ -72,8 +73,9 @@ class _Member:
 
     Parameters
     ----------
-    calls : IntArray
-        Their sizes, ascending.
+    calls : IntArray, shape (calls, 2)
+        The sizes of pull-down and pull-up of each, ascending; where a call has one for both, twice
+        that.
     moving : array of bool, shape (sizes,)
         Whether each size changes.
     log_size : FloatArray, shape (sizes,)
@@ -89,8 +91,8 @@ class _Member:
 
     @cached_property
     def changing(self) -> IntArray:
-        """The sizes that change."""
-        return self.calls[self.moving[self.calls]]
+        """The calls that change, shape (k, 2)."""
+        return self.calls[self.moving[self.calls].any(axis=1)]
 
     @property
     def some_stay(self) -> bool:
@@ -100,8 +102,14 @@ class _Member:
     @cached_property
     def sizes(self) -> int:
         """How many sizes its calls ask for."""
-        distinct = np.unique(np.rint(self.log_size[self.changing] / _EQUAL))
+        distinct = np.unique(np.rint(self._logs / _EQUAL), axis=0)
         return max(len(distinct) + self.some_stay, 1)
+
+    @property
+    def _logs(self) -> FloatArray:
+        """Logarithms of what changes, shape (calls that change, 1 or 2)."""
+        logs: FloatArray = self.log_size[self.changing]
+        return logs if (self.calls[:, 0] != self.calls[:, 1]).any() else logs[:, :1]
 
     def copies(self, sizes: int) -> int:
         """Return how many copies so many sizes need; a leaf all calls agree on is no copy."""
@@ -116,8 +124,7 @@ class _Member:
         if sizes == 1:
             label[self.calls] = self.calls[0]
             return
-        logs = self.log_size[self.changing]
-        cluster = fcluster(linkage(logs[:, None], "ward"), sizes - self.some_stay, "maxclust")
+        cluster = fcluster(linkage(self._logs, "ward"), sizes - self.some_stay, "maxclust")
         _, leader, of_call = np.unique(cluster, return_index=True, return_inverse=True)
         label[self.changing] = self.changing[leader[of_call]]
 
@@ -149,9 +156,25 @@ def _calls_by_family(
         family = block.family(leaf)
         stays = drawn or leaves[leaf] > 1 or block.is_called_elsewhere(leaf)
         text: Text = "copy" if leaf != family.root else "kept" if stays else "leaf"
-        sizes = sorted({parts.variable_of[slot] for slot in slots})
-        families.setdefault(family, []).append((text, np.array(sizes)))
+        families.setdefault(family, []).append((text, _pairs(parts, slots)))
     for family in families:
         idle = [c for c in family.copies if not leaves[c] and block.is_called_for_size(c)]
-        families[family] += [("copy", np.zeros(0, np.int64))] * len(idle)
+        families[family] += [("copy", np.zeros((0, 2), np.int64))] * len(idle)
     return families
+
+
+def _pairs(parts: Partition, slots: Iterable[Slot]) -> IntArray:
+    """Return the sizes of pull-down and pull-up of the calls that some slots belong to.
+
+    Shape (calls, 2), ascending, each pair once; a side of which no slot is one goes with the other.
+    """
+    apart = parts.of_gate[:, 0] != parts.of_gate[:, 1]
+    has_sides = np.zeros(len(parts), bool)
+    has_sides[parts.of_gate[apart]] = True
+    found: dict[int | None, list[int]] = {}
+    for slot in slots:
+        size = parts.variable_of[slot]
+        pair = found.setdefault(slot.caller, [size, size])
+        if has_sides[size]:
+            pair[int(parts.side[size])] = size
+    return np.unique(np.array(list(found.values())), axis=0)

@@ -50,6 +50,8 @@ def _hold(engine: Engine, answer: Continuous, gate: int, *, rising: bool) -> Hol
         return "upper"
     if _on_full_input(engine, answer, gate):
         return "ceiling"
+    if _is_skewed(engine, answer, size):
+        return "skew"
     return "transition" if _makes_slowest_edge(engine, answer, gate) else ""
 
 
@@ -63,6 +65,15 @@ def _on_full_input(engine: Engine, answer: Continuous, gate: int) -> bool:
 def _full_inputs(corner: Corner, answer: Continuous) -> IntArray:
     nets = corner.limits.ceiling_net
     return nets[answer.full[corner.rows][: len(nets)]]
+
+
+def _is_skewed(engine: Engine, answer: Continuous, size: int) -> bool:
+    """Tell whether a size is as far from that of its gate's other side as it may be."""
+    skews = engine.variables.skews
+    if skews is None:
+        return False
+    full = answer.full[engine.corners[-1].rows.stop :].reshape(2, -1).any(axis=0)
+    return bool((full & ((skews.up == size) | (skews.down == size))).any())
 
 
 def _makes_slowest_edge(engine: Engine, answer: Continuous, gate: int) -> bool:

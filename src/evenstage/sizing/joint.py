@@ -12,7 +12,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from functools import cached_property
 from itertools import pairwise
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Final, NamedTuple
 
 import numpy as np
 
@@ -25,8 +25,12 @@ if TYPE_CHECKING:
 
     from evenstage.netlist.devices import FloatArray
     from evenstage.sizing.model import Limits, Model
+    from evenstage.sizing.pulls import Skews
     from evenstage.sizing.solution import Solution
     from evenstage.sizing.variables import Variables
+
+_ROUNDING: Final = 1e-9
+"""Relative room that rounding is given at limits."""
 
 
 class Corner(NamedTuple):
@@ -104,13 +108,18 @@ class Joint:
     def problem(
         self, lower: FloatArray, upper: FloatArray, spend: FloatArray, limits: Sequence[Limits]
     ) -> Problem:
-        """Return the programme of all corners; see `Model.problem`."""
-        return side_by_side(
+        """Return the programme of all corners; see `Model.problem`.
+
+        Limits of what pull-up and pull-down may go apart come last: they are the same everywhere.
+        """
+        problem = side_by_side(
             [
                 model.problem(lower, upper, spend, some)
                 for model, some in zip(self.models, limits, strict=True)
             ]
         )
+        skews = self.variables.skews
+        return problem if skews is None else _with_skews(problem, skews)
 
 
 def side_by_side(problems: Sequence[Problem]) -> Problem:
@@ -143,6 +152,23 @@ def side_by_side(problems: Sequence[Problem]) -> Problem:
         end_offset=np.concatenate([q.end_offset for q in problems]),
         limit=_under_each_other([q.limit for q in problems], rows),
         limits=rows[-1],
+    )
+
+
+def _with_skews(problem: Problem, skews: Skews) -> Problem:
+    """Return a problem in which sizes of both sides of a gate keep their ratio within bounds."""
+    room = 1 + _ROUNDING
+    rows = (problem.limits + np.arange(2 * len(skews))).astype(np.int32)
+    more = Monomials(
+        row=rows,
+        coefficient=np.concatenate([1 / (skews.most * room), skews.least / room]),
+        plus=np.concatenate([skews.up, skews.down]),
+        minus=np.concatenate([skews.down, skews.up]),
+    )
+    return replace(
+        problem,
+        limit=_under_each_other([problem.limit, more], [0, 0]),
+        limits=problem.limits + len(rows),
     )
 
 

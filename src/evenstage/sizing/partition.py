@@ -81,6 +81,10 @@ class Partition:
         """Size of each slot, for the rewriting of widths."""
         return dict(zip(self.slots, self.of_slot.tolist(), strict=True))
 
+    def with_sizes(self, of_gate: IntArray, of_device: IntArray, handle: IntArray) -> Partition:
+        """Return the partition with other sizes of the same widths."""
+        return replace(self, of_gate=of_gate, of_device=of_device, handle=handle)
+
     def tied(self, label: IntArray) -> Partition:
         """Return the partition with sizes of equal label made one, shape (sizes,)."""
         _, first, new = np.unique(label, return_index=True, return_inverse=True)

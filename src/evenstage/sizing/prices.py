@@ -79,6 +79,7 @@ class _Prices:
                 for corner in self.engine.corners
             ),
         )
+        yield from self._skews()
         if self.engine.wishes.width is not None and not self.on_spend:
             yield "budget", "", self.proof.spend_price * self.proof.spend
 
@@ -117,6 +118,23 @@ class _Prices:
         wanted = held[limit.plus[mine]] / np.maximum(share[mine], 1e-9)
         return float(wanted.max(initial=0.0))
 
+    def _skews(self) -> Iterator[tuple[PricedLimit, str, float]]:
+        """Give each bound of a gate's skew."""
+        skews = self.engine.variables.skews
+        if skews is None:
+            return
+        names = self._names()
+        price = self.proof.limit_prices[self.engine.corners[-1].rows.stop :].reshape(2, -1)
+        for down, paid in zip(skews.down.tolist(), price.sum(axis=0).tolist(), strict=True):
+            yield "skew", names[down], paid
+
+    def _names(self) -> list[str]:
+        """Return the name of a gate of each size."""
+        circuit, parts = self.engine.model.circuit, self.engine.variables.partition
+        _, slots = np.unique(parts.of_slot, return_index=True)
+        gates = circuit.gate_of_device[parts.first_device[slots]]
+        return [circuit.gate_name(gate) for gate in gates.tolist()]
+
     def _full(self) -> BoolArray:
         """Return which limits the fastest answer uses up."""
         sums = self.problem.limit_sums(self.proof.sizes)
@@ -126,12 +144,13 @@ class _Prices:
     def _widths(self) -> Iterator[tuple[PricedLimit, str, float]]:
         """Give the bounds of sizes, and the sizes that must stay as they are."""
         variables, x = self.engine.variables, self.proof.sizes
-        circuit, parts = self.engine.model.circuit, variables.partition
-        gate = circuit.gate_of_device[
-            parts.first_device[np.unique(parts.of_slot, return_index=True)[1]]
-        ]
+        names, side = self._names(), variables.partition.side
         for size in np.flatnonzero(np.abs(self.slope) > 0).tolist():
-            slope, name = float(self.slope[size]), circuit.gate_name(int(gate[size]))
+            slope, name = float(self.slope[size]), names[size]
+            if variables.skews is not None and size in variables.skews.down:
+                name += ", pull-down"
+            elif side[size]:
+                name += ", pull-up"
             if not variables.free[size]:
                 yield ("fixed", name, abs(slope))
             elif slope < 0 and x[size] >= variables.upper[size] * (1 - _AT_BOUND):

@@ -125,7 +125,7 @@ class _Job:
         unless the bounds are about the cards chosen last.
         """
         block, copies = self.block, self.block.brief.copies_per_leaf
-        parts, first = block.partition(), None
+        (parts, told), first = block.partition(), None
         for _ in range(_ROUNDS):
             handles = block.handles(parts)
             engine, few = block.engine(parts, handles), None
@@ -138,7 +138,8 @@ class _Job:
             if len(np.unique(label)) == len(parts):
                 break
             parts = parts.tied(label)
-        return rounding, drawn, few, rounding.answer if few or first is None else first
+        loosest = rounding.answer if few or first is None else first
+        return replace(rounding, notices=told), drawn, few, loosest
 
     def _sizing(
         self, writing: Writing, plan: WidthPlan, written: Drawn, loosest: Continuous
@@ -174,6 +175,7 @@ class _Job:
             already_done=False,
             notices=(
                 *free.notices,
+                *rounding.notices,
                 *rounding.handles.notices(),
                 *self._refused(plan),
                 *_left(plan),

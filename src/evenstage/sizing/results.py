@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from evenstage.timing.corners import Corners
     from evenstage.timing.results import Analysis, Path
 
-Hold = Literal["", "lower", "upper", "fixed", "ceiling", "transition", "same size"]
+Hold = Literal["", "lower", "upper", "fixed", "ceiling", "transition", "same size", "skew"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -159,7 +159,9 @@ class FewChanges:
     every_set_tried: bool = False
 
 
-PricedLimit = Literal["input", "transition", "greatest width", "least width", "fixed", "budget"]
+PricedLimit = Literal[
+    "input", "transition", "greatest width", "least width", "fixed", "budget", "skew"
+]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

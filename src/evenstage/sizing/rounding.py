@@ -10,11 +10,11 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING
 
 import numpy as np
 
-from evenstage.circuit.arcs import NO_OWNER, ranges
+from evenstage.sizing.kept import ROOM, Kept, gates_by_slack, slowest_edge
 from evenstage.sizing.problem import totals
 from evenstage.sizing.size_trials import tried_sizes
 
@@ -22,12 +22,11 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from evenstage.circuit.network import BoolArray
+    from evenstage.errors import Notice
     from evenstage.netlist.devices import FloatArray, IntArray
     from evenstage.netlist.rewriting.handles import WidthHandle, WidthHandles
     from evenstage.sizing.engine import Continuous, Engine
-    from evenstage.sizing.joint import Corner
     from evenstage.sizing.timed import Timed
-    from evenstage.timing.sweep import Timing
     from evenstage.timing.trials import Trials
 
 _DEFAULT_STEP = 1e-9
@@ -40,8 +39,10 @@ _REPAIRS = 60
 """How many single steps may repair the deadline."""
 _GUARDS = 5
 """How often the sizes may be found anew for the sake of the grid."""
-_ROOM = 2e-9
-"""Relative room for the noise of binary arithmetic."""
+_SKEW_STEPS = 30
+"""How many single steps may bring pull-up and pull-down back together."""
+_SKEW_ROOM = 1e-6
+"""Relative room at the bounds of a skew."""
 
 
 @dataclass(frozen=True)
@@ -65,11 +66,21 @@ class Drawn:
 
 @dataclass(frozen=True)
 class Rounding:
-    """One rounding: the engine, its answer, and how each width may be written."""
+    """One rounding: the engine, its answer, and how each width may be written.
+
+    Parameters
+    ----------
+    engine : Engine
+    answer : Continuous
+    handles : WidthHandles
+    notices : tuple of Notice
+        What is to be said of how the sizes were chosen.
+    """
 
     engine: Engine
     answer: Continuous
     handles: WidthHandles
+    notices: tuple[Notice, ...] = ()
 
     def run(self) -> Drawn:
         """Round, repair and recover.
@@ -80,7 +91,7 @@ class Rounding:
         sizes, guard = self.answer.sizes, 0.0
         best, least = self.drawn, np.inf
         for _ in range(_GUARDS):
-            width = self._repaired(self._keep_ceilings(self._rounded(sizes)))
+            width = self._repaired(self._keep_skews(self._keep_ceilings(self._rounded(sizes))))
             excess = self._excess(self.timed(width))
             if excess < least:
                 best, least = width, excess
@@ -168,8 +179,8 @@ class Rounding:
     def _drawable(self, slot: int, wanted: float) -> float:
         """Return the nearest width a slot can say inside the bounds of its size."""
         size = int(self.engine.variables.partition.of_slot[slot])
-        low = self.drawn[slot] * self.answer.lower[size] * (1 - _ROOM)
-        high = self.drawn[slot] * self.answer.upper[size] * (1 + _ROOM)
+        low = self.drawn[slot] * self.answer.lower[size] * (1 - ROOM)
+        high = self.drawn[slot] * self.answer.upper[size] * (1 + ROOM)
         handle, step = self._handle(slot), self._step(slot)
         grid = handle.transistor.width_step or _DEFAULT_STEP
         nearest = handle.drawable(min(max(wanted, low), high), grid)
@@ -217,25 +228,25 @@ class Rounding:
             elmore = timing.circuit.arcs.elmore(timing.circuit.net_cap)
             use = float((elmore / corner.elmore_limit).max())
             late = max(late, use, timing.worst_transition / corner.slowest)
-        return late - 1 - _ROOM
+        return late - 1 - ROOM
 
-    def _excesses(self, trials: Trials, corner: _Kept) -> FloatArray:
+    def _excesses(self, trials: Trials, corner: Kept) -> FloatArray:
         """Return the same for trials in one corner, shape (trials,)."""
         if self.engine.wishes.delay is None:
             late = trials.charged_lateness / self.answer.deadline
         else:
             late = trials.lateness / self.engine.wishes.delay
         edges = np.maximum(trials.elmore_use, trials.worst_transition / corner.slowest)
-        excess: FloatArray = np.maximum(late, edges) - 1 - _ROOM
+        excess: FloatArray = np.maximum(late, edges) - 1 - ROOM
         return excess
 
     @cached_property
-    def _corners(self) -> list[_Kept]:
+    def _corners(self) -> list[Kept]:
         """What must be kept in each corner; the programme's bound holds for what is drawn."""
         engine = self.engine
         limits, today = self.answer.limits, engine.today.corners
         return [
-            _Kept(corner, corner.model.elmore_limit(some), _slowest(corner, before))
+            Kept(corner, corner.model.elmore_limit(some), slowest_edge(corner, before))
             for corner, some, before in zip(engine.corners, limits, today, strict=True)
         ]
 
@@ -262,6 +273,52 @@ class Rounding:
                 return width
             width = lowered
         return width
+
+    def _keep_skews(self, width: FloatArray) -> FloatArray:
+        """Step gates that are skewed too far back until none is.
+
+        The stronger side gets narrower, or where it cannot the weaker one wider. Where the grid is
+        too coarse for that both sides stay as drawn.
+        """
+        skews = self.engine.variables.skews
+        if skews is None:
+            return width
+        for _ in range(_SKEW_STEPS):
+            sizes = self._mean_size(width)
+            far = np.flatnonzero(skews.excess(sizes) > _SKEW_ROOM)
+            if not len(far):
+                return width
+            too_strong = sizes[skews.up[far]] > sizes[skews.down[far]] * skews.most[far]
+            up, down = skews.up[far], skews.down[far]
+            strong, weak = np.where(too_strong, (up, down), (down, up))
+            narrower = self._stepped(width, strong.tolist(), -1)
+            stays = self._mean_size(narrower)[strong] == sizes[strong]
+            width = self._stepped(narrower, weak[stays].tolist(), 1)
+        stuck = np.isin(self._of_slot, np.concatenate([skews.up[far], skews.down[far]]))
+        return np.where(stuck, self.drawn, width)
+
+    @property
+    def _of_slot(self) -> IntArray:
+        return self.engine.variables.partition.of_slot
+
+    def _mean_size(self, width: FloatArray) -> FloatArray:
+        """Return the mean of what each size has made of its slots, shape (sizes,)."""
+        count = len(self.engine.variables)
+        of_slot = self._of_slot
+        total = totals(of_slot, width / self.drawn, count)
+        return total / np.maximum(np.bincount(of_slot, minlength=count), 1)
+
+    def _skewing(self, width: FloatArray, moved: FloatArray) -> BoolArray:
+        """Tell which sizes would skew a gate too far if they alone moved, shape (sizes,)."""
+        skews, found = self.engine.variables.skews, np.zeros(len(self.engine.variables), bool)
+        if skews is None:
+            return found
+        before, after = self._mean_size(width), self._mean_size(moved)
+        for mine in (skews.up, skews.down):
+            trial = before.copy()
+            trial[mine] = after[mine]
+            found[mine] = skews.excess(trial) > _SKEW_ROOM
+        return found
 
     def _repaired(self, width: FloatArray) -> FloatArray:
         """Step sizes until every deadline is met or no step helps."""
@@ -307,11 +364,11 @@ class Rounding:
         over = np.any([corner.over(trials.net_cap).any(axis=0) for trials, corner in pairs], axis=0)
         left = np.max([self._excesses(trials, corner) for trials, corner in pairs], axis=0)
         worth = (excess - left) / np.maximum(spent, 1e-9 * self.cost(width))
-        return np.where(still | over, 0.0, worth)
+        return np.where(still | over | self._skewing(width, moved)[sizes], 0.0, worth)
 
     def _candidates(self, block: Timed) -> list[int]:
         """Return the active sizes nearest to the slowest paths, at most `_CANDIDATES`."""
-        near = [_gates_by_slack(timing, block.lateness) for timing in block.corners]
+        near = [gates_by_slack(timing, block.lateness) for timing in block.corners]
         slack, gates = (np.concatenate(column) for column in zip(*near, strict=True))
         order = np.argsort(slack, kind="stable")
         of_gate = self.engine.variables.partition.of_gate
@@ -330,7 +387,7 @@ class Rounding:
         )[active]
         for size in active[np.argsort(-cost, kind="stable")][:_CANDIDATES].tolist():
             narrower = self._stepped(width, [size], -1)
-            if self.cost(narrower) >= self.cost(width):
+            if self.cost(narrower) >= self.cost(width) or self._skewing(width, narrower)[size]:
                 continue
             outcome = self.timed(narrower)
             if self._excess(outcome) <= 0 and not len(self._over_ceiling(outcome)):
@@ -338,66 +395,8 @@ class Rounding:
         return width
 
 
-class _Kept(NamedTuple):
-    """What must be kept in one corner.
-
-    Parameters
-    ----------
-    corner : Corner
-    elmore_limit : FloatArray, s, shape (circuit arcs,)
-        Transition limit of each arc in the programme.
-    slowest : float
-        The slowest edge any gate may make, s.
-    """
-
-    corner: Corner
-    elmore_limit: FloatArray
-    slowest: float
-
-    def over(self, net_cap: FloatArray) -> BoolArray:
-        """Tell which inputs exceed their ceilings, shape (inputs, ...)."""
-        limits = self.corner.limits
-        ceiling = limits.ceiling * (1 + _ROOM)
-        return net_cap > ceiling.reshape(-1, *(1 for _ in net_cap.shape[1:]))
-
-
-def _slowest(corner: Corner, today: Timing) -> float:
-    if corner.limits.strict:
-        return corner.limits.transition
-    # A process without shapes has no transitions, so none is too slow.
-    return max(corner.limits.transition, today.worst_transition) or np.inf
-
-
 def _places(sizes: Sequence[int], count: int) -> IntArray:
     """Return the place of each of ``count`` sizes in a list, -1 for none, shape (count,)."""
     place = np.full(count, -1, np.int32)
     place[list(sizes)] = np.arange(len(sizes))
     return place
-
-
-def _gates_by_slack(timing: Timing, limit: float) -> tuple[FloatArray, IntArray]:
-    """Return the gates along all arcs, each with the slack of its arc, s.
-
-    ``limit`` is how late a path end may be, s.
-    """
-    graph, charges = timing.graph, timing.circuit.arcs.charges
-    head = charges.head
-    count = head[graph.arc + 1] - head[graph.arc]
-    owner = charges.owner[ranges(head[graph.arc], count)]
-    slack = np.repeat(_slack(timing, limit)[graph.target], count)
-    return slack[owner != NO_OWNER], owner[owner != NO_OWNER]
-
-
-def _slack(timing: Timing, limit: float) -> FloatArray:
-    """Return how much later each node's arrival could be before a path end is later, s.
-
-    ``limit`` is how late a path end may be, s.
-    """
-    graph = timing.graph
-    latest = np.full(len(graph), np.inf)
-    np.minimum.at(latest, graph.end, limit - (timing.lateness - timing.arrival[graph.end]))
-    for begin, end in reversed(list(zip([0, *graph.level_ends], graph.level_ends, strict=False))):
-        some = slice(int(begin), int(end))
-        np.minimum.at(latest, graph.source[some], latest[graph.target[some]] - timing.delay[some])
-    result: FloatArray = latest - timing.arrival
-    return result

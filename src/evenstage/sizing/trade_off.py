@@ -66,7 +66,7 @@ def trade_off(
     """
     wishes = replace(wishes or Wishes(), delay=None, width=None)
     block = Block.of(analysis, brief or Brief(), wishes, original)
-    parts = block.partition()
+    parts, _ = block.partition()
     engine = block.engine(parts, block.handles(parts))
     points = tuple(_different(_points(engine)))
     delay, spend = (

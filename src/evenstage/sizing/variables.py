@@ -21,6 +21,7 @@ if TYPE_CHECKING:
     from evenstage.netlist.devices import FloatArray
     from evenstage.netlist.rewriting.handles import WidthHandles
     from evenstage.sizing.partition import Partition
+    from evenstage.sizing.pulls import Skews
 
 GROWTH_MAX = 1000.0
 """How many times a width may grow where nothing else limits it; keeps the programme bounded."""
@@ -38,6 +39,8 @@ class Variables:
     reason : tuple of str
         Why a size must not move at all; empty where it may.
     notices : tuple of Notice
+    skews : Skews, optional
+        How far pull-up and pull-down may go apart, where they have sizes of their own.
     """
 
     partition: Partition
@@ -45,6 +48,7 @@ class Variables:
     upper: FloatArray
     reason: tuple[str, ...]
     notices: tuple[Notice, ...]
+    skews: Skews | None = None
 
     def __len__(self) -> int:
         return len(self.partition)

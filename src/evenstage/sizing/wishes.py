@@ -31,6 +31,8 @@ class Wishes:
         What is kept small: total width or switched capacitance.
     changes : int, optional
         How many cards may change.
+    apart : bool
+        Whether pull-up and pull-down of a gate have a size each.
     """
 
     delay: float | None = None
@@ -40,10 +42,13 @@ class Wishes:
     reclaim: bool = False
     spend: Literal["width", "energy"] = "width"
     changes: int | None = None
+    apart: bool = False
 
     @property
     def words(self) -> str:
         """The question in words."""
+        if self.apart:
+            return f"{replace(self, apart=False).words}, pull-up and pull-down apart"
         if self.changes is not None:
             some = "1 changed card" if self.changes == 1 else f"{self.changes} changed cards"
             return f"{replace(self, changes=None).words}, with at most {some}"

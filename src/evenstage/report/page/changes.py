@@ -26,11 +26,11 @@ def change_table(changes: Sequence[Change]) -> Table | None:
     """Return the changes, those that buy most first; gates that change alike share a row."""
     if not changes:
         return None
-    groups = sorted(alike_changes(changes), key=lambda group: group[0].alone)
+    groups = sorted(alike_changes(changes), key=lambda group: min(one.alone for one in group))
     shown = groups[:_GROUPS]
     widths = [value for group in shown for one in group for value in (one.old, one.new)]
     width = Scale.of(widths, "m").trimmed(widths)
-    alone = Scale.of((group[0].alone for group in shown), "s", digits=3)
+    alone = Scale.of((one.alone for group in shown for one in group), "s", digits=3)
     rows = tuple(row for group in shown for row in _change_rows(group, width, alone))
     headings: tuple[Heading, ...] = (
         Heading("gate"),
@@ -61,8 +61,6 @@ def _change_rows(group: Sequence[Change], width: Scale, alone: Scale) -> list[tu
         alike.setdefault((one.parameter, one.old, one.new), []).append(one)
     names = list(dict.fromkeys(one.instance for one in group))
     many = sum({one.instance: one.occurrences for one in group}.values())
-    buys = group[0].alone
-    sign = "+" if buys > 0 and float(alone.number(buys)) else ""
     return [
         (
             Cell(_PAPER.shorten(family_name(names) or "(top)", 36)),
@@ -72,12 +70,17 @@ def _change_rows(group: Sequence[Change], width: Scale, alone: Scale) -> list[tu
             Cell(width.number(old), sort=repr(old)),
             Cell(width.number(new), sort=repr(new)),
             Cell(factor(_PAPER, old, new), sort=repr(new / old)),
-            Cell(f"{sign}{alone.number(buys)}", sort=repr(buys)),
+            Cell(_signed(cards[0].alone, alone), sort=repr(cards[0].alone)),
             Cell(_place(cards)),
             Cell(cards[0].why),
         )
         for (parameter, old, new), cards in alike.items()
     ]
+
+
+def _signed(effect: float, scale: Scale) -> str:
+    sign = "+" if effect > 0 and float(scale.number(effect)) else ""
+    return f"{sign}{scale.number(effect)}"
 
 
 def _place(cards: Sequence[Change]) -> str:
