@@ -163,8 +163,8 @@ class TestReadBrief:
                     "    supply.high = 'vdd'\n"
                     "    ^^^^^^^^^^^\n"
                     "known here: top, supplies, input, output, clock, ignore, fixed, leaves,"
-                    " same_size, limit, transition_max, coupling, copies_per_leaf, aim, case,"
-                    " first_line"
+                    " same_size, limit, transition_max, coupling, copies_per_leaf, aim, pulls,"
+                    " skew, case, first_line"
                 ),
             ),
             (

@@ -106,16 +106,12 @@ def _why_together(circuits: Sequence[Circuit]) -> list[str]:
     for gate in range(len(circuit)):
         form = circuit.alike[int(circuit.gate_form[gate])].form
         if form.kind not in _KINDS or form.weak:
-            reasons[gate] = f"{_article(form.kind)} keeps the ratio it is drawn with"
+            reasons[gate] = f"a {form.kind}, whose ratio stays as drawn"
         elif circuit.is_part[gate]:
             reasons[gate] = "it is part of a stage of several gates"
         elif mixed[gate] or not ends[gate]:
             reasons[gate] = "its pull-up and pull-down are not apart"
     return reasons
-
-
-def _article(kind: str) -> str:
-    return f"an {kind}" if kind[0] in "aeiou" else f"a {kind}"
 
 
 def _notices(circuit: Circuit, reasons: Sequence[str]) -> tuple[Notice, ...]:
