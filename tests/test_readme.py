@@ -196,7 +196,9 @@ class TestFiles:
     @pytest.mark.parametrize("document", ["README.md", "DEVELOPERS.md"])
     def test_those_mentioned_exist(self, document: str) -> None:
         named = r"(?<![\w./])(?:src|tests|grammar|sample_netlists|\.ci)/[\w./-]*[\w/]"
-        mentioned = re.findall(named, (ROOT / document).read_text("utf-8"))
+        # A name shortened in a report names no file.
+        text = re.sub(r"\S*…\S*", "", (ROOT / document).read_text("utf-8"))
+        mentioned = re.findall(named, text)
         assert [path for path in mentioned if not (ROOT / path).exists()] == []
 
     @pytest.mark.parametrize("block", blocks("toml"))
