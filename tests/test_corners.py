@@ -10,7 +10,7 @@ import pytest
 
 from evenstage import flow
 from evenstage.cli import main
-from evenstage.errors import SettingsError
+from evenstage.errors import InfeasibleError, SettingsError
 
 if TYPE_CHECKING:
     from pathlib import Path
@@ -188,6 +188,12 @@ class TestResize:
         assert found.corners is not None
         assert all(one.paths[0].delay <= 0.95 * today for one in found.corners.after.analyses)
         assert found.corners.after.paths[0].delay > 0.9 * today
+
+    def test_a_delay_out_of_reach_names_the_corner(
+        self, netlist: Path, question: flow.Question
+    ) -> None:
+        with pytest.raises(InfeasibleError, match=r"the least possible .* in slow n, .* more"):
+            flow.resize(netlist, question, flow.Wishes(delay=100e-12))
 
     def test_no_input_and_no_edge_gets_worse_in_any_corner(
         self, netlist: Path, question: flow.Question

@@ -241,12 +241,13 @@ class Engine:
     def _for_delay(self, fastest: Solution, lower: FloatArray, upper: FloatArray) -> Continuous:
         """Find the least spend whose 50 % arrivals meet the wished delay."""
         wanted = self.wishes.delay or 0.0
-        possible = self.timed(fastest.sizes).lateness
+        reached = self.timed(fastest.sizes)
+        possible = reached.lateness
         if possible > wanted * (1 + AGREES):
             held = blame(self, self._unbounded(), fastest)
             raise InfeasibleError(
                 f"a delay of {engineering(wanted, 's', 4)} cannot be met: the least possible "
-                f"within the limits is {engineering(possible, 's', 4)}, "
+                f"within the limits is {engineering(possible, 's', 4)}{self._where(reached)}, "
                 f"{engineering(possible - wanted, 's')} more; {held}",
                 code="delay-out-of-reach",
             )
@@ -261,6 +262,11 @@ class Engine:
                 break
             deadline = following
         return best or answer
+
+    def _where(self, block: Timed) -> str:
+        """Return the corner that limits, in words; nothing where there is but one."""
+        limiting = block.corners[block.limiting].circuit.process.name
+        return f" in {limiting}" if len(block.corners) > 1 else ""
 
     def guarded(self, answer: Continuous, guard: float) -> FloatArray | None:
         """Return sizes that miss deadline and limits by a share, for the grid to use up.
