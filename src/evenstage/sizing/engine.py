@@ -241,13 +241,13 @@ class Engine:
     def _for_delay(self, fastest: Solution, lower: FloatArray, upper: FloatArray) -> Continuous:
         """Find the least spend whose 50 % arrivals meet the wished delay."""
         wanted = self.wishes.delay or 0.0
-        reached = self.timed(fastest.sizes)
-        possible = reached.lateness
+        quickest = self.timed(fastest.sizes)
+        possible = quickest.lateness
         if possible > wanted * (1 + AGREES):
             held = blame(self, self._unbounded(), fastest)
             raise InfeasibleError(
                 f"a delay of {engineering(wanted, 's', 4)} cannot be met: the least possible "
-                f"within the limits is {engineering(possible, 's', 4)}{self._where(reached)}, "
+                f"within the limits is {engineering(possible, 's', 4)}{self._where(quickest)}, "
                 f"{engineering(possible - wanted, 's')} more; {held}",
                 code="delay-out-of-reach",
             )

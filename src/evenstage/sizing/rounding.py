@@ -348,7 +348,9 @@ class Rounding:
     ) -> FloatArray:
         """Return what each size gains per cost if it alone moves, shape (sizes,)."""
         parts = self.engine.variables.partition
-        of_slot = _places(sizes, len(parts))[parts.of_slot]
+        place = np.full(len(parts), -1, np.int32)
+        place[list(sizes)] = np.arange(len(sizes))
+        of_slot = place[parts.of_slot]
         every = tried_sizes(
             block,
             self.factors(moved) / self.factors(width),
@@ -393,10 +395,3 @@ class Rounding:
             if self._excess(outcome) <= 0 and not len(self._over_ceiling(outcome)):
                 width = narrower
         return width
-
-
-def _places(sizes: Sequence[int], count: int) -> IntArray:
-    """Return the place of each of ``count`` sizes in a list, -1 for none, shape (count,)."""
-    place = np.full(count, -1, np.int32)
-    place[list(sizes)] = np.arange(len(sizes))
-    return place
