@@ -34,6 +34,7 @@ if TYPE_CHECKING:
 
 _KINDS: Final = frozenset({"static gate", TRI_STATE, C_ELEMENT})
 _NAMES_MAX: Final = 1000
+_APART: Final = -1
 _ONE_NUMBER: Final = "one number in the text sets both"
 
 
@@ -56,10 +57,9 @@ def pulled_apart(
         Which gates keep one size, and why.
     """
     circuit = circuits[0]
-    reasons = _why_together(circuits)
-    together = np.array([bool(why) for why in reasons], bool)
+    why, words = _why_together(circuits)
     one = np.zeros(len(parts), bool)
-    one[parts.of_gate[together, 0]] = True
+    one[parts.of_gate[why != _APART, 0]] = True
     first = np.cumsum(2 - one) - (2 - one)
     of_gate = np.stack([first, first + ~one], axis=1)[parts.of_gate[:, 0]].astype(np.int32)
     is_p = np.array([model.polarity == "p" for model in circuit.devices.models], bool)
@@ -67,9 +67,8 @@ def pulled_apart(
     nobody = np.concatenate([of_gate, np.full((1, 2), -1, np.int32)])
     of_device = nobody[circuit.gate_of_device, side]
     split = parts.with_sizes(of_gate, of_device, np.repeat(parts.handle, 2 - one))
-    for gate in np.flatnonzero(one[parts.of_gate[:, 0]] & ~together).tolist():
-        reasons[gate] = "it shares its size with a gate that must"
-    return split, _notices(circuit, reasons)
+    why[one[parts.of_gate[:, 0]] & (why == _APART)] = len(words)
+    return split, _notices(circuit, why, [*words, "it shares its size with a gate that must"])
 
 
 def tied_by_text(
@@ -93,42 +92,39 @@ def tied_by_text(
         return parts, ()
     label = np.arange(len(parts), dtype=np.int32)
     label[parts.of_gate[again, 1]] = parts.of_gate[again, 0]
-    reasons = [_ONE_NUMBER if one else "" for one in again.tolist()]
-    return parts.tied(label), _notices(circuit, reasons)
+    why = np.where(again, 0, _APART).astype(np.int32)
+    return parts.tied(label), _notices(circuit, why, [_ONE_NUMBER])
 
 
-def _why_together(circuits: Sequence[Circuit]) -> list[str]:
-    """Return for each gate why its sides keep one size; empty where they need not."""
+def _why_together(circuits: Sequence[Circuit]) -> tuple[IntArray, list[str]]:
+    """Return which reason keeps the sides of each gate together, `_APART` for none, and all."""
     circuit = circuits[0]
-    reasons = [""] * len(circuit)
+    words = ["it is part of a stage of several gates", "its sides do not act apart"]
+    why = np.full(len(circuit), _APART, np.int32)
     mixed = np.any([sides_of(one).mixed for one in circuits], axis=0)
-    ends = np.isfinite(_skew(circuit))
-    for gate in range(len(circuit)):
-        form = circuit.alike[int(circuit.gate_form[gate])].form
+    why[mixed | ~np.isfinite(_skew(circuit))] = 1
+    why[circuit.is_part] = 0
+    for some in circuit.alike:
+        form = some.form
         if form.kind not in _KINDS or form.weak:
-            reasons[gate] = f"a {form.kind}, whose ratio stays as drawn"
-        elif circuit.is_part[gate]:
-            reasons[gate] = "it is part of a stage of several gates"
-        elif mixed[gate] or not ends[gate]:
-            reasons[gate] = "its pull-up and pull-down are not apart"
-    return reasons
+            told = f"a {form.kind}, whose ratio stays as drawn"
+            words += [told] if told not in words else []
+            why[some.gates] = words.index(told)
+    return why, words
 
 
-def _notices(circuit: Circuit, reasons: Sequence[str]) -> tuple[Notice, ...]:
-    """Return one notice per reason."""
-    gates: dict[str, list[int]] = {}
-    for gate, reason in enumerate(reasons):
-        if reason:
-            gates.setdefault(reason, []).append(gate)
-    return tuple(
-        Notice(
-            "pulls-together",
-            f"{counted(len(some), 'gate')} {'keeps' if len(some) == 1 else 'keep'} one size for "
-            f"pull-up and pull-down: {reason}",
-            names=tuple(circuit.gate_name(gate) for gate in some[:_NAMES_MAX]),
+def _notices(circuit: Circuit, why: IntArray, words: Sequence[str]) -> tuple[Notice, ...]:
+    """Return one notice for each reason that counts somewhere."""
+    found = []
+    for number, reason in enumerate(words):
+        gates = np.flatnonzero(why == number)
+        verb = "keeps" if len(gates) == 1 else "keep"
+        message = (
+            f"{counted(len(gates), 'gate')} {verb} one size for pull-up and pull-down: {reason}"
         )
-        for reason, some in gates.items()
-    )
+        names = tuple(circuit.gate_name(gate) for gate in gates[:_NAMES_MAX].tolist())
+        found += [Notice("pulls-together", message, names=names)] if len(gates) else []
+    return tuple(found)
 
 
 @dataclass(frozen=True)
