@@ -36,7 +36,7 @@ def reference_objective(problem: Problem, goal: Goal) -> float:
     """
     sizes = np.sqrt(problem.lower * problem.upper)
     whole = (abs(worst_delay(problem, sizes)) or 1.0, problem.cost(sizes) or 1.0)
-    for time, money in ((1.0, 1.0), whole):
+    for time, money in ((1.0, 1.0), whole, (whole[0] / 10.0, whole[1] / 100.0)):
         with contextlib.suppress(cp.error.SolverError):
             optimum = _plain_objective(*_scaled(problem, goal, time, money))
             return optimum * (money if isinstance(goal, Cheapest) else time)

@@ -71,9 +71,12 @@ class Part:
         every[self.sizes] = part
         return every
 
-    def joined(self, state: State) -> State:
-        """Return a state of the part on the whole."""
-        point = self.whole.at(self.spread(state.point.y, self.whole.y))
+    def joined(self, held: list[State]) -> State:
+        """Return a state of the part, taken out of a list, on the whole."""
+        state = held.pop()
+        y = self.spread(state.point.y, self.whole.y)
+        state = replace(state, point=self.whole)  # the part's point is large
+        point = self.whole.at(y)
         if not point.inside:
             return replace(state, point=point, prices=self.whole.prices)
         limit = point.prices.limit.copy()
@@ -115,7 +118,7 @@ def _lowered_apart(state: State, steps: int) -> tuple[State | None, bool]:
     part = part_of(state.point)
     if part is None:
         return None, False
-    joined = part.joined(minimised(part.state(state), steps))
+    joined = part.joined([minimised(part.state(state), steps)])
     return (joined if joined.point.value < state.point.value else None), True
 
 
