@@ -143,3 +143,11 @@ def test_parameters_that_stop_being_alike(monkeypatch: pytest.MonkeyPatch) -> No
     monkeypatch.setattr("evenstage.netlist.reading.tails._MOST", 50)
     lines = [f"m{i} a b 0 0 nch w={i if i > 2000 else 1}u l=1u" for i in range(6000)]
     check(read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path()))
+
+
+@pytest.mark.parametrize("kinds", [1, 7, 1000])
+def test_of_parameters_with_one_name_the_last_counts(kinds: int) -> None:
+    """However many cards are alike, and whether their parameters are read together or apart."""
+    lines = [f"m{i} a b c d nch W={i % kinds}u w={i % kinds + 1}u l=1u" for i in range(6000)]
+    netlist = read_bytes("\n".join(["* t", *lines, ""]).encode(), "t.sp", Path())
+    check(netlist)

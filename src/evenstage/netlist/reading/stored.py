@@ -61,7 +61,9 @@ class ShapeColumns:
         self._target_place = next(iter(places["target"]), None)
         self._run_place = next(iter(places["nodes"]), None)
         self._arguments = places["argument"]
+        # Of parameters with one name the last counts.
         self._value_places = dict(zip(shape.keys, places["value"], strict=True))
+        self._first_value = min(places["value"], default=0)
         self._nodes = [array("i") for _ in self._node_places]
         self._targets = array("i")
         self._run = array("i")
@@ -99,8 +101,7 @@ class ShapeColumns:
     def _settle(self, values: list[tuple[bytes, ...]]) -> None:
         """Decide how the cards to come are read: their parameters all at once, or each apart."""
         self._is_settled = True
-        first = min(self._value_places.values()) - 1
-        groups = [place - first for place in self._value_places.values()]
+        groups = [1 + place - self._first_value for place in self._value_places.values()]
         if _ALIKE * len(set(zip(*values, strict=True))) <= len(values[0]):
             self._tails = EqualTails(self._shape, groups, self._values)
             self.match = self._shape.joint.match
