@@ -47,7 +47,14 @@ def precharging(circuit: Circuit) -> Circuit | None:
         for some in circuit.stages
     )
     ends = dict.fromkeys(np.unique(np.concatenate(nets)).tolist(), PRECHARGED)
-    return carry(circuit, replace(circuit, alike=alike, stages=stages, ends=ends))
+    # What stores on a dynamic node holds while it evaluates.
+    kept = tuple(
+        one
+        for one in circuit.storage.elements
+        if not any(net in ends for loop in one.loops for net in loop.nets)
+    )
+    storage = replace(circuit.storage, elements=kept)
+    return carry(circuit, replace(circuit, alike=alike, stages=stages, ends=ends, storage=storage))
 
 
 def _precharged(some: AlikeGates) -> AlikeGates:

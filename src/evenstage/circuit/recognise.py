@@ -16,6 +16,7 @@ from evenstage.circuit.domains import domain_notices
 from evenstage.circuit.groups import group
 from evenstage.circuit.names import NAMES_MAX, device_names
 from evenstage.circuit.ownership import leaves, owners
+from evenstage.circuit.sensing import with_sense_amplifiers
 from evenstage.circuit.sorting import sort_groups
 from evenstage.circuit.stage_notices import stage_notices
 from evenstage.circuit.stage_sorting import sort_stages
@@ -109,7 +110,11 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
         not_understood=strange,
         apart=apart,
         storage=with_dynamic(
-            without_kept(loops, devices, alike, stages), devices, alike, stages, clocks
+            with_sense_amplifiers(without_kept(loops, devices, alike, stages), stages),
+            devices,
+            alike,
+            stages,
+            clocks,
         ),
         outside_cap=np.zeros(len(devices.net_names)),
         gate_output=output,
@@ -290,6 +295,8 @@ def _natural_ends(circuit: Circuit) -> dict[int, str]:
     strange = circuit.strange_cap > 0
     is_output = ~strange
     is_output[circuit.pins.net] = False
+    for some in circuit.stages:
+        is_output[some.nets[:, list(some.form.unseen)]] = False
     is_output[list(circuit.devices.ports)] = True
     driven = circuit.driven
     stored = np.zeros(len(circuit.devices.net_names), bool)

@@ -30,6 +30,7 @@ if TYPE_CHECKING:
 
     from evenstage.circuit.division import Charging
 
+FEEDS_BACK = "it feeds back into itself"
 SWITCHES_MAX = 4000
 """Larger groups are arrays of cells, not stages."""
 _PARALLEL_MAX = 4
@@ -147,7 +148,7 @@ class _Builder:
             return Unrecognised("nothing drives a node of it that is seen outside")
         links = nx.DiGraph((arc.input, arc.output) for arc in arcs)
         if not nx.is_directed_acyclic_graph(links):
-            return Unrecognised("it feeds back into itself")
+            return Unrecognised(FEEDS_BACK)
         columns = self._columns()
         return StageForm(
             drawn=self._devices,

@@ -28,8 +28,6 @@ class Facts:
         Channel ends that the outside may drive.
     inputs, outputs : tuple of int
         Channel ends that the brief calls so.
-    heard : tuple of int
-        Channel ends that are ports or close switches of other groups.
     clocks : tuple of int
         Inputs that are clocks.
     """
@@ -40,7 +38,6 @@ class Facts:
     open: tuple[int, ...] = ()
     inputs: tuple[int, ...] = ()
     outputs: tuple[int, ...] = ()
-    heard: tuple[int, ...] = ()
     clocks: tuple[int, ...] = ()
 
 
@@ -74,6 +71,8 @@ class StageArc:
         The switch that closes; -1 where the outside drives.
     source : int
         Node that the outside drives, -1 for none.
+    factor : float
+        What the resistances of its steps count, where more than an RC response happens.
     """
 
     part: int
@@ -86,6 +85,7 @@ class StageArc:
     behind: tuple[tuple[int, int], ...]
     switching: int
     source: int
+    factor: float = 1.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -129,6 +129,8 @@ class StageForm:
     lines : tuple of (int, int, int)
         Nodes where of many passes or pull networks one at a time is taken to conduct, one of the
         parts there, and how many.
+    pairs : tuple of (int, int)
+        Outputs of its sense amplifiers.
     weak : tuple of Weak
         Its keepers; whatever drives their nodes overpowers them.
     precharge : tuple of StageArc
@@ -146,8 +148,15 @@ class StageForm:
     both_ways: tuple[int, ...]
     bounded: tuple[int, ...]
     lines: tuple[tuple[int, int, int], ...] = ()
+    pairs: tuple[tuple[int, int], ...] = ()
     weak: tuple[Weak, ...] = ()
     precharge: tuple[StageArc, ...] = ()
+
+    @cached_property
+    def unseen(self) -> tuple[int, ...]:
+        """Nodes that the stage drives and nothing outside it sees."""
+        seen = {sink.node for sink in self.sinks}
+        return tuple(node for node, _ in self.driven if node not in seen)
 
     @cached_property
     def driven(self) -> tuple[tuple[int, int], ...]:

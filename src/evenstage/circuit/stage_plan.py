@@ -26,7 +26,8 @@ class Resistor(NamedTuple):
     """One entry of the vector of resistances.
 
     ``switches`` conduct in parallel, one of ``series`` steps, for a rising or falling output; none:
-    the outside drives the node ``source``. ``scales`` tells which part of it is meant.
+    the outside drives the node ``source``. ``scales`` tells which part of it is meant; ``factor``
+    is that of the arc.
     """
 
     switches: tuple[int, ...]
@@ -34,6 +35,7 @@ class Resistor(NamedTuple):
     rising: bool
     scales: bool
     source: int = -1
+    factor: float = 1.0
 
 
 class Capacitor(NamedTuple):
@@ -185,7 +187,9 @@ class _Planner:
         """Return for each owner its resistors, each with its place from the supply."""
         found: dict[int, list[tuple[int, int]]] = {}
         for place, step in enumerate(reversed(arc.steps)):
-            one = Resistor(step.switches, len(arc.steps), arc.rising, scales=True)
+            one = Resistor(
+                step.switches, len(arc.steps), arc.rising, scales=True, factor=arc.factor
+            )
             found.setdefault(step.part, []).append((self._resistor(one), place))
             if self._present.fixed_resistance:
                 fixed = self._resistor(one._replace(scales=False))

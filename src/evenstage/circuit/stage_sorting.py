@@ -11,8 +11,9 @@ from evenstage.circuit.context import Surroundings
 from evenstage.circuit.function import Literal
 from evenstage.circuit.kinds.kept import with_nets, without_keepers
 from evenstage.circuit.rows import distinct_rows
+from evenstage.circuit.sensing import opened, sensing
 from evenstage.circuit.sorting import rows_of
-from evenstage.circuit.stage import recognise_stage
+from evenstage.circuit.stage import FEEDS_BACK, recognise_stage
 from evenstage.circuit.stage_form import Facts, StageForm
 from evenstage.progress import tell
 
@@ -80,7 +81,14 @@ def _recognised(
     """Recognise a stage without its keepers if it has some, which whatever drives overpowers."""
     rest, keepers = without_keepers(network, context)
     form = recognise_stage(rest, facts)
-    if not keepers:
+    found = None
+    if not isinstance(form, StageForm) and form.reason == FEEDS_BACK:
+        found = opened(rest)
+    if found is not None:
+        amplifier = recognise_stage(found.devices, facts)
+        if isinstance(amplifier, StageForm):
+            form = sensing(amplifier, found)
+    if not keepers and found is None:
         return form
     if not isinstance(form, StageForm):
         return recognise_stage(network, facts)
@@ -109,8 +117,7 @@ class _Around:
     ) -> None:
         nets = len(devices.net_names)
         self._root, self._same = _roots(found, nets)
-        self._gates_on = np.bincount(devices.gate, minlength=nets)
-        self._gating = self._gates_on > 0
+        self._gating = np.bincount(devices.gate, minlength=nets) > 0
         self._clock = np.zeros(nets, bool)
         self._clock[clocks] = True
         for form, some in found.gates:
@@ -141,10 +148,6 @@ class _Around:
             column[here]
             for column in (self._seen, self._gating, self._open, self._input, self._output)
         ]
-        own = np.bincount(
-            [s.gate for s in some.network if s.gate >= 0], minlength=some.nets.shape[1]
-        )
-        marks.append(self._open[here] | (self._gates_on[here] > own[ends]))
         inputs = list(dict.fromkeys(s.gate for s in some.network if s.gate >= 0))
         table = np.concatenate([first, straight, *marks, self._clock[some.nets[:, inputs]]], axis=1)
         kinds, inverse = distinct_rows(table)

@@ -152,7 +152,7 @@ def _vector_of_resistances(
         [
             drive[some.nets[:, one.source]]
             if one.source >= 0
-            else _in_parallel(form, of_switch, one) * _in_series(stack, one)
+            else _in_parallel(form, of_switch, one) * (_in_series(stack, one) * one.factor)
             for one in resistors
         ]
     )

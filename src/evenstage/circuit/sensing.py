@@ -1,0 +1,141 @@
+"""Sense amplifiers: cross-coupled pairs that tip over when they are enabled.
+
+Before the enable both outputs stand alike, so that both n transistors of the pair conduct; the
+enable then pulls at both outputs through them, until the pair has decided. With the pair taken as
+closed the rest is a stage of dynamic nodes: what precharges the outputs, what the enable drives,
+and the inputs that tip the pair, which must have arrived before and end their paths there.
+
+A difference D between the outputs grows as ``exp(t / tau)``, tau the capacitance of an output over
+the transconductance of the pair (from memory; as in any text on latches). With R the resistance
+that discharges an output, the ln 2 of an RC response inside, ``tau = R C / ln 2`` to first order,
+and half the supply is reached from a difference of D at
+
+    t = R C ln(V / 2 D) / ln 2.
+
+D is taken as a tenth of the supply (common practice, no source).
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING, Final
+
+from evenstage.circuit.network import HIGH, LOW
+from evenstage.circuit.storage.elements import Element, Loop
+from evenstage.circuit.storage.reading import SENSE_AMPLIFIER
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from evenstage.circuit.network import Switch
+    from evenstage.circuit.stage_form import StageArc, StageForm
+    from evenstage.circuit.stage_tables import AlikeStages
+    from evenstage.circuit.storage.elements import Storage
+
+DIFFERENCE: Final = 0.1
+"""Difference at the enable, as a share of the supply."""
+REGENERATION: Final = math.log(0.5 / DIFFERENCE) / math.log(2)
+"""Time to half the supply over the resistance times capacitance of an output."""
+
+
+@dataclass(frozen=True, slots=True)
+class Opened:
+    """A drawing with its cross-coupled pairs taken as closed.
+
+    Parameters
+    ----------
+    devices : tuple of Switch
+    pairs : tuple of (int, int)
+        Their outputs.
+    """
+
+    devices: tuple[Switch, ...]
+    pairs: tuple[tuple[int, int], ...]
+
+
+def opened(devices: tuple[Switch, ...]) -> Opened | None:
+    """Return a drawing with the pairs of its sense amplifiers closed; None where it has none.
+
+    The n transistors of a pair lead to inner nodes, not to the supply: with both at the supply the
+    pair always holds, and is a memory cell.
+    """
+    turned: dict[tuple[int, int, str], list[int]] = {}
+    for index, device in enumerate(devices):
+        for end in (device.a, device.b):
+            if end >= 0 and device.gate >= 0:
+                turned.setdefault((end, device.gate, device.polarity), []).append(index)
+    result, pairs = list(devices), []
+    for (u, v, polarity), mine in turned.items():
+        opposite = turned.get((v, u, "n"), [])
+        both = mine + opposite
+        at_supply = any(LOW in (devices[i].a, devices[i].b) for i in both)
+        if polarity != "n" or u >= v or not opposite or at_supply:
+            continue
+        pairs.append((u, v))
+        for index in both:
+            result[index] = replace(devices[index], gate=HIGH)
+        # The p transistors of the pair are off as long as both outputs are high.
+        for index in (*turned.get((u, v, "p"), ()), *turned.get((v, u, "p"), ())):
+            result[index] = replace(devices[index], gate=HIGH)
+    return Opened(tuple(result), tuple(pairs)) if pairs else None
+
+
+def sensing(form: StageForm, found: Opened) -> StageForm:
+    """Return a stage whose arcs through pairs take as long as regeneration does."""
+    outputs = {net for pair in found.pairs for net in pair}
+    arcs = tuple(
+        replace(arc, factor=REGENERATION) if arc.output in outputs and _by_pair(form, arc) else arc
+        for arc in form.arcs
+    )
+    return replace(form, arcs=arcs, pairs=found.pairs)
+
+
+def _by_pair(form: StageForm, arc: StageArc) -> bool:
+    """Tell whether an arc leads from its output through a closed transistor of a pair."""
+    return all(form.network.switches[index].gate == HIGH for index in arc.steps[0].switches)
+
+
+def with_sense_amplifiers(storage: Storage, stages: Sequence[AlikeStages]) -> Storage:
+    """Return the storage of a block with its timed sense amplifiers as they are timed.
+
+    Parameters
+    ----------
+    storage : Storage
+    stages : sequence of AlikeStages
+    """
+    found = [
+        element
+        for some in stages
+        for pair in some.form.pairs
+        for own in some.nets.tolist()
+        for element in _elements(some.form, pair, own, storage)
+    ]
+    if not found:
+        return storage
+    nets = {net for element in found for loop in element.loops for net in loop.nets}
+    others = [
+        one
+        for one in storage.elements
+        if nets.isdisjoint(net for loop in one.loops for net in loop.nets)
+    ]
+    every = sorted((*others, *found), key=lambda one: min(one.loops[0].nets))
+    return replace(storage, elements=tuple(every))
+
+
+def _elements(
+    form: StageForm, pair: tuple[int, int], own: list[int], storage: Storage
+) -> list[Element]:
+    """Return the element of one pair: its enable as clock, the other inputs as data."""
+    root, inverted = storage.phases.root, storage.phases.inverted
+    arcs = [arc for arc in form.arcs if arc.output in pair]
+    enables = {
+        (int(root[own[arc.input]]), bool(arc.input_rising ^ inverted[own[arc.input]]))
+        for arc in arcs
+        if arc.factor > 1 and arc.switching in arc.steps[-1].switches
+    }
+    clocks = {net for net, _ in enables}
+    data = dict.fromkeys(own[arc.input] for arc in arcs)
+    stored = tuple(net for net in data if int(root[net]) not in clocks)
+    nets = tuple(sorted(own[net] for net in pair))
+    return [Element(SENSE_AMPLIFIER, (Loop(nets, tuple(sorted(enables)), stored),))]
