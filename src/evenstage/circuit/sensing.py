@@ -1,9 +1,10 @@
 """Sense amplifiers: cross-coupled pairs that tip over when they are enabled.
 
-Before the enable both outputs stand alike, so that both n transistors of the pair conduct; the
-enable then pulls at both outputs through them, until the pair has decided. With the pair taken as
-closed the rest is a stage of dynamic nodes: what precharges the outputs, what the enable drives,
-and the inputs that tip the pair, which must have arrived before and end their paths there.
+Before the enable both outputs stand alike; the enable then pulls at both through the n transistors
+of the pair, until one output has won and turned the other's off. With one side taken as the
+complement of the other, and what it does to itself left out, the rest is a stage: what precharges
+the outputs, what the enable drives, and the inputs that tip the pair, which must have arrived
+before and end their paths there. The p transistors of the pair are off until it has tipped.
 
 A difference D between the outputs grows as ``exp(t / tau)``, tau the capacitance of an output over
 the transconductance of the pair (from memory; as in any text on latches). With R the resistance
@@ -18,7 +19,7 @@ D is taken as a tenth of the supply (common practice, no source).
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, replace
+from dataclasses import replace
 from typing import TYPE_CHECKING, Final
 
 from evenstage.circuit.network import HIGH, LOW
@@ -29,7 +30,7 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from evenstage.circuit.network import Switch
-    from evenstage.circuit.stage_form import StageArc, StageForm
+    from evenstage.circuit.stage_form import Facts, StageArc, StageForm
     from evenstage.circuit.stage_tables import AlikeStages
     from evenstage.circuit.storage.elements import Storage
 
@@ -39,23 +40,8 @@ REGENERATION: Final = math.log(0.5 / DIFFERENCE) / math.log(2)
 """Time to half the supply over the resistance times capacitance of an output."""
 
 
-@dataclass(frozen=True, slots=True)
-class Opened:
-    """A drawing with its cross-coupled pairs taken as closed.
-
-    Parameters
-    ----------
-    devices : tuple of Switch
-    pairs : tuple of (int, int)
-        Their outputs.
-    """
-
-    devices: tuple[Switch, ...]
-    pairs: tuple[tuple[int, int], ...]
-
-
-def opened(devices: tuple[Switch, ...]) -> Opened | None:
-    """Return a drawing with the pairs of its sense amplifiers closed; None where it has none.
+def apart_from_pairs(devices: tuple[Switch, ...], facts: Facts) -> tuple[tuple[Switch, ...], Facts]:
+    """Return a drawing without the p transistors of its sense amplifiers, and facts that name them.
 
     The n transistors of a pair lead to inner nodes, not to the supply: with both at the supply the
     pair always holds, and is a memory cell.
@@ -68,32 +54,30 @@ def opened(devices: tuple[Switch, ...]) -> Opened | None:
     result, pairs = list(devices), []
     for (u, v, polarity), mine in turned.items():
         opposite = turned.get((v, u, "n"), [])
-        both = mine + opposite
-        at_supply = any(LOW in (devices[i].a, devices[i].b) for i in both)
+        at_supply = any(LOW in (devices[i].a, devices[i].b) for i in mine + opposite)
         if polarity != "n" or u >= v or not opposite or at_supply:
             continue
         pairs.append((u, v))
-        for index in both:
-            result[index] = replace(devices[index], gate=HIGH)
-        # The p transistors of the pair are off as long as both outputs are high.
         for index in (*turned.get((u, v, "p"), ()), *turned.get((v, u, "p"), ())):
             result[index] = replace(devices[index], gate=HIGH)
-    return Opened(tuple(result), tuple(pairs)) if pairs else None
+    ties = (*facts.ties, *((u, v, False) for u, v in pairs))
+    return tuple(result), replace(facts, ties=ties, pairs=tuple(pairs))
 
 
-def sensing(form: StageForm, found: Opened) -> StageForm:
+def sensing(form: StageForm, pairs: tuple[tuple[int, int], ...]) -> StageForm:
     """Return a stage whose arcs through pairs take as long as regeneration does."""
-    outputs = {net for pair in found.pairs for net in pair}
+    outputs = {net for pair in pairs for net in pair}
     arcs = tuple(
-        replace(arc, factor=REGENERATION) if arc.output in outputs and _by_pair(form, arc) else arc
+        replace(arc, factor=REGENERATION) if _by_pair(form, arc, outputs) else arc
         for arc in form.arcs
     )
-    return replace(form, arcs=arcs, pairs=found.pairs)
+    return replace(form, arcs=arcs, pairs=pairs)
 
 
-def _by_pair(form: StageForm, arc: StageArc) -> bool:
-    """Tell whether an arc leads from its output through a closed transistor of a pair."""
-    return all(form.network.switches[index].gate == HIGH for index in arc.steps[0].switches)
+def _by_pair(form: StageForm, arc: StageArc, outputs: set[int]) -> bool:
+    """Tell whether an arc leads from an output of a pair through a transistor of the pair."""
+    turned = {form.network.switches[index].gate for index in arc.steps[0].switches}
+    return arc.output in outputs and turned <= outputs
 
 
 def with_sense_amplifiers(storage: Storage, stages: Sequence[AlikeStages]) -> Storage:

@@ -60,7 +60,7 @@ def recognise_stage(devices: tuple[Switch, ...], facts: Facts) -> StageForm | Un
     if not sinks:
         return Unrecognised("")
     try:
-        form = _Builder(division, devices, sinks, sources).form()
+        form = _Builder(division, devices, sinks, sources).form(facts.pairs)
         return form if division.passes or isinstance(form, StageForm) else Unrecognised("")
     except TooManyRoutesError:
         return Unrecognised("its pass transistors offer too many routes")
@@ -120,8 +120,8 @@ class _Builder:
         self._count = len(switches)
         self._ways_taken: set[tuple[int, int]] = set()
 
-    def form(self) -> StageForm | Unrecognised:
-        """Return the stage."""
+    def form(self, pairs: tuple[tuple[int, int], ...]) -> StageForm | Unrecognised:
+        """Return the stage, with what sense amplifiers do to themselves left out."""
         arcs: dict[StageArc, None] = {}
         sinks = []
         for node in self._sinks:
@@ -131,7 +131,7 @@ class _Builder:
                 some + [(frozenset({one.condition}), False) for one in self._charging(node, supply)]
                 for some, supply in ((high, HIGH), (low, LOW))
             )
-            if not (high or low) or not ((high and low) or self._division.charging):
+            if not (high or low) or not ((high and low) or self._division.charging or pairs):
                 return Unrecognised("a node of it that is seen outside is only pulled one way")
             part = next((arc.part for arc in arcs if arc.output == node), 0)
             sinks.append(
@@ -144,6 +144,8 @@ class _Builder:
                     weak_low=any(is_weak for _, is_weak in low),
                 )
             )
+        own = {net for pair in pairs for net in pair}
+        arcs = {arc: None for arc in arcs if arc.input not in own}
         if not arcs:
             return Unrecognised("nothing drives a node of it that is seen outside")
         links = nx.DiGraph((arc.input, arc.output) for arc in arcs)

@@ -30,6 +30,8 @@ class Facts:
         Channel ends that the brief calls so.
     clocks : tuple of int
         Inputs that are clocks.
+    pairs : tuple of (int, int)
+        Outputs of sense amplifiers, whose own feedback makes no arcs.
     """
 
     ties: tuple[tuple[int, int, bool], ...] = ()
@@ -39,6 +41,7 @@ class Facts:
     inputs: tuple[int, ...] = ()
     outputs: tuple[int, ...] = ()
     clocks: tuple[int, ...] = ()
+    pairs: tuple[tuple[int, int], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -11,7 +11,7 @@ from evenstage.circuit.context import Surroundings
 from evenstage.circuit.function import Literal
 from evenstage.circuit.kinds.kept import with_nets, without_keepers
 from evenstage.circuit.rows import distinct_rows
-from evenstage.circuit.sensing import opened, sensing
+from evenstage.circuit.sensing import apart_from_pairs, sensing
 from evenstage.circuit.sorting import rows_of
 from evenstage.circuit.stage import FEEDS_BACK, recognise_stage
 from evenstage.circuit.stage_form import Facts, StageForm
@@ -81,14 +81,14 @@ def _recognised(
     """Recognise a stage without its keepers if it has some, which whatever drives overpowers."""
     rest, keepers = without_keepers(network, context)
     form = recognise_stage(rest, facts)
-    found = None
+    pairs: tuple[tuple[int, int], ...] = ()
     if not isinstance(form, StageForm) and form.reason == FEEDS_BACK:
-        found = opened(rest)
-    if found is not None:
-        amplifier = recognise_stage(found.devices, facts)
+        without, told = apart_from_pairs(rest, facts)
+        amplifier = recognise_stage(without, told) if told.pairs else form
         if isinstance(amplifier, StageForm):
-            form = sensing(amplifier, found)
-    if not keepers and found is None:
+            pairs = told.pairs
+            form = sensing(amplifier, pairs)
+    if not keepers and not pairs:
         return form
     if not isinstance(form, StageForm):
         return recognise_stage(network, facts)
@@ -157,11 +157,16 @@ class _Around:
                 tuple(end for end, flag in zip(ends, kind[begin:], strict=False) if flag)
                 for begin in range(2 * len(asked), len(kind) - len(inputs), len(ends))
             ]
+            seen, gating, open_, given, taken = flags
             turned = zip(inputs, kind[len(kind) - len(inputs) :], strict=True)
-            flags.append(tuple(net for net, is_clock in turned if is_clock))
             facts = Facts(
-                tuple((a, asked[b], bool(is_same)) for a, b, is_same in ties if a != asked[b]),
-                *flags,
+                ties=tuple((a, asked[b], bool(same)) for a, b, same in ties if a != asked[b]),
+                seen=seen,
+                gating=gating,
+                open=open_,
+                inputs=given,
+                outputs=taken,
+                clocks=tuple(net for net, is_clock in turned if is_clock),
             )
             yield facts, np.flatnonzero(inverse == index).astype(np.int32)
 
