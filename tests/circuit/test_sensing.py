@@ -67,12 +67,31 @@ def test_its_size_is_free_and_it_loads_what_drives_it() -> None:
         assert found.net_cap[net] == pytest.approx(width * 1e-15)
 
 
-def test_a_memory_cell_is_none() -> None:
-    cell = [
-        inverter("1", "t", "f", 1, 1), inverter("2", "f", "t", 1, 1),
-        transistor("n", "bl", "wl", "t", 1, "a"), transistor("n", "blb", "wl", "f", 1, "b"),
+def column(rows: int) -> str:
+    """Return memory cells between two bit lines, with precharge and a gate that reads one."""
+    cards = [
         inverter("o", "bl", "y", 1, 2), transistor("p", "bl", "pc", "vdd", 1, "p"),
         transistor("p", "blb", "pc", "vdd", 1, "q"), transistor("p", "bl", "pc", "blb", 1, "e"),
     ]  # fmt: skip
-    found = circuit_of(block("\n".join(cell), "wl pc y"))
-    assert "sense amplifier" not in {one.kind for one in found.storage.elements}
+    for k in range(rows):
+        cards += [
+            inverter(f"1_{k}", f"t{k}", f"f{k}", 2, 1), inverter(f"2_{k}", f"f{k}", f"t{k}", 2, 1),
+            transistor("n", "bl", f"wl{k}", f"t{k}", 1, f"a{k}"),
+            transistor("n", "blb", f"wl{k}", f"f{k}", 1, f"b{k}"),
+        ]  # fmt: skip
+    return block("\n".join(cards), " ".join(f"wl{k}" for k in range(rows)) + " pc y")
+
+
+@pytest.mark.parametrize("rows", [2, 40])
+def test_memory_cells_are_read_through_their_word_lines(rows: int) -> None:
+    """A pass of 1 kohm and half a kohm of the cell; the bit lines are precharged apart."""
+    found = circuit_of(column(rows))
+    assert not found.not_understood
+    assert [one.kind for one in found.storage.elements] == ["latch"] * rows
+    arcs = found.arcs
+    read = (arcs.output == found.net_id("bl")) & (arcs.input == found.net_id("wl0"))
+    assert not arcs.rising[read].any()
+    assert arcs.output_resistance[read].max() == pytest.approx(1500.0)
+    analysis = analyse(found, count=99)
+    assert {one.net for one in analysis.precharges} == {"bl", "blb"}
+    assert ("wl0", "y") in {(path.start, path.end) for path in analysis.paths}

@@ -24,7 +24,7 @@ from typing import TYPE_CHECKING, Final
 
 from evenstage.circuit.network import HIGH, LOW
 from evenstage.circuit.storage.elements import Element, Loop
-from evenstage.circuit.storage.reading import SENSE_AMPLIFIER
+from evenstage.circuit.storage.reading import LATCH, SENSE_AMPLIFIER
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -43,8 +43,8 @@ REGENERATION: Final = math.log(0.5 / DIFFERENCE) / math.log(2)
 def apart_from_pairs(devices: tuple[Switch, ...], facts: Facts) -> tuple[tuple[Switch, ...], Facts]:
     """Return a drawing without the p transistors of its sense amplifiers, and facts that name them.
 
-    The n transistors of a pair lead to inner nodes, not to the supply: with both at the supply the
-    pair always holds, and is a memory cell.
+    Where the transistors of a pair stand at the supplies themselves it is a memory cell: a read
+    leads through them, and a write overpowers its p transistors.
     """
     turned: dict[tuple[int, int, str], list[int]] = {}
     for index, device in enumerate(devices):
@@ -52,10 +52,9 @@ def apart_from_pairs(devices: tuple[Switch, ...], facts: Facts) -> tuple[tuple[S
             if end >= 0 and device.gate >= 0:
                 turned.setdefault((end, device.gate, device.polarity), []).append(index)
     result, pairs = list(devices), []
-    for (u, v, polarity), mine in turned.items():
+    for u, v, polarity in turned:
         opposite = turned.get((v, u, "n"), [])
-        at_supply = any(LOW in (devices[i].a, devices[i].b) for i in mine + opposite)
-        if polarity != "n" or u >= v or not opposite or at_supply:
+        if polarity != "n" or u >= v or not opposite:
             continue
         pairs.append((u, v))
         for index in (*turned.get((u, v, "p"), ()), *turned.get((v, u, "p"), ())):
@@ -65,11 +64,23 @@ def apart_from_pairs(devices: tuple[Switch, ...], facts: Facts) -> tuple[tuple[S
 
 
 def sensing(form: StageForm, pairs: tuple[tuple[int, int], ...]) -> StageForm:
-    """Return a stage whose arcs through pairs take as long as regeneration does."""
+    """Return a stage whose arcs through pairs take as long as regeneration does.
+
+    No cell writes another: of two word lines one is high.
+    """
     outputs = {net for pair in pairs for net in pair}
+    switches = form.network.switches
+    cells = {
+        net
+        for switch in switches
+        if switch.gate in outputs and LOW in (switch.a, switch.b)
+        for net in (switch.gate, max(switch.a, switch.b))
+    }
     arcs = tuple(
         replace(arc, factor=REGENERATION) if _by_pair(form, arc, outputs) else arc
         for arc in form.arcs
+        if arc.output not in cells
+        or not any(switches[index].gate in cells for index in arc.steps[-1].switches)
     )
     return replace(form, arcs=arcs, pairs=pairs)
 
@@ -110,7 +121,10 @@ def with_sense_amplifiers(storage: Storage, stages: Sequence[AlikeStages]) -> St
 def _elements(
     form: StageForm, pair: tuple[int, int], own: list[int], storage: Storage
 ) -> list[Element]:
-    """Return the element of one pair: its enable as clock, the other inputs as data."""
+    """Return the element of one pair: its enable as clock, the other inputs as data.
+
+    Of a cell what opens its passes is the clock.
+    """
     root, inverted = storage.phases.root, storage.phases.inverted
     arcs = [arc for arc in form.arcs if arc.output in pair]
     enables = {
@@ -118,8 +132,15 @@ def _elements(
         for arc in arcs
         if arc.factor > 1 and arc.switching in arc.steps[-1].switches
     }
+    kind = SENSE_AMPLIFIER if enables else LATCH
+    if not enables:
+        enables = {
+            (int(root[own[arc.input]]), bool(arc.input_rising ^ inverted[own[arc.input]]))
+            for arc in arcs
+            if arc.switching in arc.steps[0].switches
+        }
     clocks = {net for net, _ in enables}
     data = dict.fromkeys(own[arc.input] for arc in arcs)
     stored = tuple(net for net in data if int(root[net]) not in clocks)
     nets = tuple(sorted(own[net] for net in pair))
-    return [Element(SENSE_AMPLIFIER, (Loop(nets, tuple(sorted(enables)), stored),))]
+    return [Element(kind, (Loop(nets, tuple(sorted(enables)), stored),))]

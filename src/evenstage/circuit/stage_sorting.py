@@ -86,8 +86,8 @@ def _recognised(
         without, told = apart_from_pairs(rest, facts)
         amplifier = recognise_stage(without, told) if told.pairs else form
         if isinstance(amplifier, StageForm):
-            pairs = told.pairs
-            form = sensing(amplifier, pairs)
+            amplifier = sensing(amplifier, told.pairs)
+            pairs, form = (told.pairs, amplifier) if amplifier.arcs else ((), form)
     if not keepers and not pairs:
         return form
     if not isinstance(form, StageForm):
