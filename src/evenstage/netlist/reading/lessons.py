@@ -7,7 +7,7 @@ from functools import cache
 from typing import TYPE_CHECKING, Final
 
 from evenstage.netlist.grammar import ENCODING, terminal
-from evenstage.netlist.reading.shapes import BETWEEN_WORDS, Piece, Shape, possessive
+from evenstage.netlist.reading.shapes import BETWEEN_WORDS, PLAIN_WORDS, Piece, Shape, possessive
 
 if TYPE_CHECKING:
     from evenstage.netlist.reading.shapes import Role
@@ -51,7 +51,8 @@ def _pieces(statement: Statement, text: bytes) -> list[Piece]:
             while marks[position + 1 : position + 2] and _continues_run(marks, position + 1):
                 position += 1
             word = possessive("WORD")
-            pieces.append(Piece(f"{word}(?:{BETWEEN_WORDS}{word})*", "nodes"))
+            general = f"{word}(?:{BETWEEN_WORDS}{word})*"
+            pieces.append(Piece(f"(?:{PLAIN_WORDS}|{general})", "nodes"))
         elif mark.terminal in _SIGNS:
             pieces.append(Piece(_sign(mark.terminal), None))
         else:

@@ -26,6 +26,12 @@ Role = Literal["name", "node", "nodes", "target", "argument", "key", "value"]
 
 BETWEEN: Final = r"[\x00-\x09\x0b-\x20,]*+"
 BETWEEN_WORDS: Final = r"[\x00-\x09\x0b-\x20,]++"
+#: Words without the signs that only some places of a WORD may hold, in one go: calls of many nets
+#: are matched in half the time.
+_PLAIN_WORD: Final = r"[^\x00-\x20=,()'\"{}:/$;]"
+PLAIN_WORDS: Final = (
+    rf"{_PLAIN_WORD}(?:[^\x00-\x08\x0a-\x1f=,()'\"{{}}:/$;]*{_PLAIN_WORD})?(?=[\x00-\x20,]|\Z)"
+)
 #: Ends a card.
 END: Final = BETWEEN + r"(?:\n[\x00-\x20,]*+|\Z)"
 _NO_JOINT: Final = rf"(?!,[^\x00-\x20=,()'\"{{}}]*+{BETWEEN_WORDS}=)"
