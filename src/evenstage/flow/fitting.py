@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 from evenstage.brief import Brief, read_brief
 from evenstage.errors import OutputError
@@ -29,6 +29,9 @@ if TYPE_CHECKING:
     from pathlib import Path
 
     from evenstage.fitting.results import Deck, Fit
+
+#: A simulation counts shared drains as the process says: there is nothing to find.
+_AS_SIMULATED: Final = ("drain_shared", "drain_inner")
 
 
 def fit(
@@ -98,7 +101,9 @@ def fit_simulated(
     )
     start = replace(begin, transistors=exact.transistors)
     source = f"simulated delays of {cells}"
-    result = fit_process(measured, found, cells, start, source=source, bench=bench)
+    result = fit_process(
+        measured, found, cells, start, source=source, bench=bench, keep=_AS_SIMULATED
+    )
     said = (*result.notices, *assumption_notices(begin), *delays.notices)
     result = replace(result, notices=tuple(dict.fromkeys(said)))
     return result if output is None else _with_output(result, output, force=force)
