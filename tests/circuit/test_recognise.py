@@ -205,7 +205,14 @@ class TestEnds:
         assert net is not None
         assert circuit.net_cap[net] == pytest.approx(4 * 3e-15)
         (notice,) = (n for n in circuit.notices if n.code == "default-load")
+        assert notice.message == "nothing loads one output; it gets 4 unit inverters"
         assert notice.names == ("z",)
+
+    def test_the_default_load_of_several(self) -> None:
+        cards = inverter("i", "a", "b", 1, 2) + "\n" + inverter("j", "a", "z", 1, 2)
+        circuit = circuit_of(block(cards, "a b z vdd vss"))
+        (notice,) = (n for n in circuit.notices if n.code == "default-load")
+        assert notice.message == "nothing loads 2 outputs; each gets 4 unit inverters"
 
     def test_a_load_from_the_brief(self) -> None:
         brief = Brief(outputs=(OutputBrief(nets=(Pattern("z"),), load=5e-15),))

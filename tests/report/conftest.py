@@ -224,7 +224,7 @@ def decoder_analysis(driver: float, *, source: str = "rowdec.sp") -> Analysis:
         input_caps=(("clk", 7.2e-15), *((f"a{i}", (3 + i / 4) * 1e-15) for i in range(6))),
         notices=(
             *joined,
-            Notice("default-load", "1 outputs that nothing loads get 4 unit inverters each"),
+            Notice("default-load", "nothing loads one output; it gets 4 unit inverters"),
         ),
     )
 

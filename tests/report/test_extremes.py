@@ -23,7 +23,7 @@ from evenstage.report.document.convert import (
 )
 from evenstage.report.origin import Origin
 from evenstage.report.page.render import html
-from evenstage.report.paper import cells
+from evenstage.report.paper import Paper, cells
 from evenstage.report.terminal import analysis_report, difference_report, sizing_report
 from evenstage.sizing.results import Change, Sizing, StageHold
 from evenstage.timing.results import (
@@ -287,7 +287,7 @@ class TestLines:
     def test_analysis(self, seed: int, paper: tuple[int, bool]) -> None:
         width, unicode = paper
         analysis = Anything(seed).analysis()
-        text = analysis_report(analysis, width=width, unicode=unicode)
+        text = analysis_report(analysis, Paper(width, unicode))
         assert_well_set(text, width, unicode=unicode)
         assert to_json(document_of(analysis)).isascii()
 
@@ -296,7 +296,7 @@ class TestLines:
     def test_sizing(self, seed: int, paper: tuple[int, bool]) -> None:
         width, unicode = paper
         sizing = Anything(seed).sizing()
-        text = sizing_report(sizing, width=width, unicode=unicode)
+        text = sizing_report(sizing, Paper(width, unicode))
         assert_well_set(text, width, unicode=unicode)
         assert to_json(document_of(sizing)).isascii()
 
@@ -305,7 +305,7 @@ class TestLines:
     def test_difference(self, seed: int, paper: tuple[int, bool]) -> None:
         width, unicode = paper
         difference = Anything(seed).difference()
-        text = difference_report(difference, width=width, unicode=unicode)
+        text = difference_report(difference, Paper(width, unicode))
         assert_well_set(text, width, unicode=unicode)
         assert to_json(document_of(difference)).isascii()
 
@@ -335,7 +335,7 @@ class TestLongPath:
             ),
             delay=sum(path.stages[i % 6].delay for i in range(200)),
         )
-        text = analysis_report(replace(analysis, paths=(long,)), width=width)
+        text = analysis_report(replace(analysis, paths=(long,)), Paper(width))
         assert_well_set(text, width, unicode=False)
         assert len(re.findall(r"^ *\d+  xchain\d+\.xstage", text, re.MULTILINE)) == 200
 

@@ -13,6 +13,7 @@ from evenstage.circuit.inventory import Inventory, take_inventory
 from evenstage.report.document.convert import document as document_of
 from evenstage.report.document.convert import to_json
 from evenstage.report.graph_document import graph_document
+from evenstage.report.paper import Paper
 from evenstage.report.terminal import inventory_report
 from support.blocks import circuit_of, inverter, nand, network, nor, transistor
 
@@ -52,7 +53,7 @@ def inventory() -> Inventory:
 
 @pytest.mark.parametrize("width", [80, 100, 160])
 def test_text(inventory: Inventory, golden: Callable[[str, str], None], width: int) -> None:
-    golden(f"inventory_{width}", inventory_report(inventory, width=width))
+    golden(f"inventory_{width}", inventory_report(inventory, Paper(width)))
 
 
 def test_every_transistor_is_in_a_gate_or_not_understood(inventory: Inventory) -> None:

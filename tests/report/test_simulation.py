@@ -15,6 +15,7 @@ from evenstage.errors import Notice
 from evenstage.report.document.convert import document as document_of
 from evenstage.report.document.convert import to_json
 from evenstage.report.document.simulation import waveform_table
+from evenstage.report.paper import Paper
 from evenstage.report.terminal import simulation_report
 from evenstage.simulation.results import (
     SimulatedBlock,
@@ -86,15 +87,15 @@ class TestText:
     def test_one_netlist(
         self, one: Simulation, golden: Callable[[str, str], None], width: int
     ) -> None:
-        golden(f"simulation_{width}", simulation_report(one, width=width))
+        golden(f"simulation_{width}", simulation_report(one, Paper(width)))
 
     def test_two_netlists(self, two: Simulation, golden: Callable[[str, str], None]) -> None:
-        golden("simulation_pair", simulation_report(two, unicode=True))
+        golden("simulation_pair", simulation_report(two, Paper(unicode=True)))
 
     def test_fits_any_width(self, one: Simulation, two: Simulation) -> None:
         for width in (80, 97, 160):
             for some in (one, two):
-                lines = simulation_report(some, width=width).splitlines()
+                lines = simulation_report(some, Paper(width)).splitlines()
                 assert max(map(len, lines)) <= width
 
     def test_scaled_currents_are_no_evidence_of_times(

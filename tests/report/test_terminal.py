@@ -9,7 +9,8 @@ from typing import TYPE_CHECKING
 import pytest
 
 from evenstage.errors import Notice
-from evenstage.report.block_text import CAUTION
+from evenstage.report.frame import CAUTION
+from evenstage.report.paper import Paper
 from evenstage.report.terminal import analysis_report, difference_report, sizing_report
 from evenstage.sizing.results import (
     FewChanges,
@@ -40,17 +41,17 @@ class TestGolden:
     def test_analysis(
         self, analysis: Analysis, golden: Callable[[str, str], None], width: int
     ) -> None:
-        golden(f"analysis_{width}", analysis_report(analysis, width=width))
+        golden(f"analysis_{width}", analysis_report(analysis, Paper(width)))
 
     @pytest.mark.parametrize("width", WIDTHS)
     def test_sizing(self, sizing: Sizing, golden: Callable[[str, str], None], width: int) -> None:
-        golden(f"sizing_{width}", sizing_report(sizing, width=width))
+        golden(f"sizing_{width}", sizing_report(sizing, Paper(width)))
 
     @pytest.mark.parametrize("width", WIDTHS)
     def test_difference(
         self, difference: Difference, golden: Callable[[str, str], None], width: int
     ) -> None:
-        golden(f"difference_{width}", difference_report(difference, width=width))
+        golden(f"difference_{width}", difference_report(difference, Paper(width)))
 
     def test_trade_off(self, sizing: Sizing, golden: Callable[[str, str], None]) -> None:
         points = tuple(
@@ -93,7 +94,9 @@ class TestGolden:
             assert section in text
 
     def test_unicode(self, sizing: Sizing, golden: Callable[[str, str], None]) -> None:
-        text = analysis_report(sizing.before, unicode=True) + sizing_report(sizing, unicode=True)
+        text = analysis_report(sizing.before, Paper(unicode=True)) + sizing_report(
+            sizing, Paper(unicode=True)
+        )
         golden("unicode", text)
 
 
@@ -284,9 +287,7 @@ class TestSizingReport:
         )
         text = sizing_report(replace(sizing, changes=changes))
         assert "3 cards change" in text
-        assert re.search(
-            r"^  x0:2 x24 +mn1 mn2 +w .*-41\.0 +-44\.0  rowdec\.sp:10-12", text, re.MULTILINE
-        )
+        assert re.search(r"^  x0:2 x24 +mn1 mn2 +w .*-41\.0 +-44\.0 +10-12", text, re.MULTILINE)
 
     def test_paths_of_other_gates_pair_by_kind(self, sizing: Sizing) -> None:
         moved = tuple(
@@ -356,10 +357,10 @@ class TestNotices:
     ) -> None:
         notice = Notice("odd", "something is odd")
         noticed = replace(analysis, notices=(notice,))
-        both = (True, False)
+        both = (Paper(notices=True), Paper(notices=False))
         texts = [
-            *(analysis_report(noticed, notices=on) for on in both),
-            *(sizing_report(replace(sizing, before=noticed), notices=on) for on in both),
-            *(difference_report(replace(difference, before=noticed), notices=on) for on in both),
+            *(analysis_report(noticed, paper) for paper in both),
+            *(sizing_report(replace(sizing, before=noticed), paper) for paper in both),
+            *(difference_report(replace(difference, before=noticed), paper) for paper in both),
         ]
-        assert ["something is odd" in text for text in texts] == [*both] * 3
+        assert ["something is odd" in text for text in texts] == [True, False] * 3

@@ -275,10 +275,10 @@ def _with_ends(circuit: Circuit, brief: Brief | None) -> Circuit:
     shown = np.array([net for net, why in ends.items() if why == "output"], np.int32)
     bare = shown[np.isnan(outside[shown]) & (circuit.net_cap[shown] == 0)]
     outside[bare] = _DEFAULT_FANOUT * _unit_input(circuit.process)
+    each = "one output; it gets" if len(bare) == 1 else f"{len(bare)} outputs; each gets"
     notice = Notice(
         "default-load",
-        f"outputs that nothing loads get {_DEFAULT_FANOUT} unit inverters each: {len(bare)} of "
-        "them",
+        f"nothing loads {each} {_DEFAULT_FANOUT} unit inverters",
         names=tuple(devices.net_names[net] for net in bare[:NAMES_MAX].tolist()),
     )
     finished = replace(

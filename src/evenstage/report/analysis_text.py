@@ -4,8 +4,9 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from evenstage.report.block_text import block_lines, end_lines, finished, notice_lines
-from evenstage.report.paper import Paper
+from evenstage.report.block_text import block_lines, end_lines
+from evenstage.report.frame import framed
+from evenstage.report.paper import PLAIN, Paper
 from evenstage.report.path_text import effort_lines, legend, path_lines
 from evenstage.report.precharge_text import TITLE as PRECHARGE
 from evenstage.report.precharge_text import precharge_lines
@@ -17,29 +18,9 @@ if TYPE_CHECKING:
     from evenstage.timing.results import Analysis, Path
 
 
-def analysis_report(
-    analysis: Analysis, *, width: int = 100, unicode: bool = False, notices: bool = True
-) -> str:
-    """Return an analysis as text: the slowest path stage by stage, then the others and the block.
-
-    Parameters
-    ----------
-    analysis : Analysis
-    width : int
-        Character cells per line, 80 to 160.
-    unicode : bool
-        Whether the output can show more than ASCII.
-    notices : bool
-        Whether the notices are printed too.
-
-    Returns
-    -------
-    str
-        Lines without trailing blanks, the last one ended too.
-    """
-    paper = Paper(width, unicode)
-    lines = [*paper.paragraph(block_name(analysis)), ""]
-    lines += paper.paragraph(analysis_answer(analysis))
+def analysis_report(analysis: Analysis, paper: Paper = PLAIN) -> str:
+    """Return an analysis as text: the slowest path in stages, the others, the block."""
+    lines: list[str] = []
     for number, path in enumerate(analysis.paths, 1):
         lines += path_section(paper, analysis, number, path)
     if analysis.paths:
@@ -51,9 +32,8 @@ def analysis_report(
         lines += section(title, false_lines(paper, analysis.false_paths))
     lines += section(PRECHARGE, precharge_lines(paper, analysis.precharges))
     lines += section("The block", block_lines(paper, analysis))
-    if notices:
-        lines += section("Notices", notice_lines(paper, analysis.notices))
-    return finished(paper, lines)
+    subject = paper.paragraph(block_name(analysis))
+    return framed(paper, subject, analysis_answer(analysis), lines, analysis.notices)
 
 
 def analysis_answer(analysis: Analysis) -> str:

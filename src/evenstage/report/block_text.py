@@ -1,21 +1,19 @@
-"""What a report says of the whole block: path ends, sizes, notices, and how far to trust it."""
+"""What a report says of the whole block: path ends, sizes, inputs and process."""
 
 from __future__ import annotations
 
-import re
 from itertools import islice
 from typing import TYPE_CHECKING, Final
 
-from evenstage.report.families import family_name, family_of, gathered
+from evenstage.report.families import family_name, family_of
 from evenstage.report.scale import Scale
 from evenstage.report.table import Column, first_that_fits
 from evenstage.report.words import counted, labelled, listed, punctuality
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Sequence
+    from collections.abc import Sequence
 
-    from evenstage.errors import Notice
     from evenstage.report.paper import Paper
     from evenstage.timing.results import Analysis, PathEnd
 
@@ -24,15 +22,6 @@ _EXPECTED: Final = {"output", "asked for"}
 
 _ENDS_SHOWN: Final = 10
 _INPUTS_SHOWN: Final = 8
-_MESSAGES_SHOWN: Final = 3
-_NAMES_SHOWN: Final = 5
-
-CAUTION: Final = (
-    "An estimate from resistances and capacitances, not sign-off: simulate at all corners with the "
-    "foundry's models. Electromigration, noise, hold and reliability limits are not checked. "
-    "Follow your organisation's review and local rules, above all where a failure of the circuit "
-    "can hurt someone."
-)
 
 
 def end_lines(paper: Paper, ends: Sequence[PathEnd]) -> list[str]:
@@ -113,42 +102,3 @@ def _input_family(paper: Paper, group: Sequence[tuple[str, float]], scale: Scale
     ends = dict.fromkeys([scale.text(min(caps)), scale.text(max(caps))])
     many = f"{len(group)} {paper.times} " if len(group) > 1 else ""
     return f"{many}{name} {' to '.join(ends)}"
-
-
-def notice_lines(paper: Paper, notices: Iterable[Notice]) -> list[str]:
-    """Return notices grouped by what they are about, with their number."""
-    groups: dict[str, list[Notice]] = {}
-    for notice in dict.fromkeys(notices):
-        groups.setdefault(notice.code, []).append(notice)
-    return [line for code, group in groups.items() for line in _group_lines(paper, code, group)]
-
-
-def _group_lines(paper: Paper, code: str, group: Sequence[Notice]) -> list[str]:
-    if len(group) == 1:
-        return paper.paragraph(f"{code}: {_told(paper, group[0])}", indent=2, hanging=4)
-    lines = paper.paragraph(f"{code}, {len(group)} times", indent=2)
-    shown = group if len(group) == _MESSAGES_SHOWN + 1 else group[:_MESSAGES_SHOWN]
-    for notice in shown:
-        lines += paper.paragraph(_told(paper, notice), indent=4, hanging=6)
-    if len(shown) < len(group):
-        lines.append(f"    and {len(group) - len(shown)} more")
-    return lines
-
-
-def _told(paper: Paper, notice: Notice) -> str:
-    """Return a notice with the first of the names it is about, unless it names them itself."""
-    names = [name for name in notice.names if name]
-    if not names or any(_names(notice.message, name) for name in names):
-        return str(notice)
-    return f"{notice}: {listed(gathered(names, paper.times), _NAMES_SHOWN)}"
-
-
-def _names(message: str, name: str) -> bool:
-    """Tell whether a message names something; a single letter could be any word's."""
-    word = rf"(?<![\w.]){re.escape(name)}(?![\w.])"
-    return f"'{name}'" in message or (len(name) > 1 and bool(re.search(word, message)))
-
-
-def finished(paper: Paper, lines: Sequence[str]) -> str:
-    """Return lines and the caution every report ends with as one text."""
-    return "\n".join([*lines, "", *paper.paragraph(CAUTION)]) + "\n"

@@ -47,11 +47,15 @@ def change_lines(paper: Paper, changes: Sequence[Change]) -> list[str]:
     width = Scale.of(widths, "m").trimmed(widths)
     effects = [effect for change in shown for effect in (change.alone, change.last)]
     alone = Scale.of(effects, "s", digits=3)
-    rows = [row for gate in kept for row in _gate_rows(paper, gate, width, alone)]
+    only = one_file(changes)
+    rows = [row for gate in kept for row in _gate_rows(paper, gate, width, alone, only)]
     units = ["", "", "", "", width.unit, width.unit, "", alone.unit, alone.unit, "", ""]
-    everything = range(len(_COLUMNS))
+    columns = [*_COLUMNS]
+    if only:
+        columns[_PLACE] = Column("line", align="right")
+    everything = range(len(columns))
     choices = [everything, everything[:_WHY], everything[:_PLACE]]
-    options = [([_COLUMNS[i] for i in c], [[row[i] for i in c] for row in rows]) for c in choices]
+    options = [([columns[i] for i in c], [[row[i] for i in c] for row in rows]) for c in choices]
     index, table = first_that_fits(paper, options, indent=2)
     lines = [table.titles(), table.line(*(units[i] for i in choices[index]))]
     lines += [table.line(*row) for row in options[index][1]]
@@ -80,7 +84,36 @@ def _largest(gates: Sequence[_Gates]) -> list[_Gates]:
     return [gates[i] for i in sorted(order[:_GATES_SHOWN])]
 
 
-def _gate_rows(paper: Paper, gate: _Gates, width: Scale, alone: Scale) -> list[list[str]]:
+def change_words(changes: Sequence[Change]) -> str:
+    """Return what the columns of the table mean."""
+    text = (
+        "alone: how the worst delay moves if only that gate changes; last: how it moves by that "
+        "gate when all others have changed. Less is faster. Drawn widths of one copy."
+    )
+    if file := one_file(changes):
+        text += f" Lines are those of {file}."
+    if none_helps_alone(changes):
+        text += (
+            " No change helps alone: a wider gate loads the one before it until that is wider too. "
+            "Together they do."
+        )
+    return text
+
+
+def none_helps_alone(changes: Sequence[Change]) -> bool:
+    """Tell whether every change by itself makes the block slower or leaves it as it is."""
+    return all(change.alone >= 0 for change in changes)
+
+
+def one_file(changes: Sequence[Change]) -> str:
+    """Return the file in which all changes are written, or nothing where they are several."""
+    files = {change.file for change in changes}
+    return files.pop() if len(files) == 1 else ""
+
+
+def _gate_rows(
+    paper: Paper, gate: _Gates, width: Scale, alone: Scale, only: str
+) -> list[list[str]]:
     """Return the rows of a gate: cards that get the same width share one."""
     alike: dict[tuple[str, float, float], list[Change]] = {}
     for change in gate:
@@ -90,7 +123,7 @@ def _gate_rows(paper: Paper, gate: _Gates, width: Scale, alone: Scale) -> list[l
     many = sum(places.values())
     names = [family_name(instances), f"{paper.times}{many}" if many > 1 else ""]
     buys = [
-        [_signed(alone.number(effect)) for effect in (cards[0].alone, cards[0].last)]
+        [signed(alone.number(effect)) for effect in (cards[0].alone, cards[0].last)]
         for cards in alike.values()
     ]
     return [
@@ -103,22 +136,22 @@ def _gate_rows(paper: Paper, gate: _Gates, width: Scale, alone: Scale) -> list[l
             factor(paper, old, new),
             # Once for the gate, unless its sides have sizes of their own.
             *(["", ""] if row and len(set(map(tuple, buys))) == 1 else buys[row]),
-            _place(cards),
+            place(cards) if only else f"{cards[0].file}:{place(cards)}",
             cards[0].why,
         ]
         for row, ((parameter, old, new), cards) in enumerate(alike.items())
     ]
 
 
-def _place(changes: Sequence[Change]) -> str:
-    """Return where changes are written: the file and the first and last line of those in it."""
+def place(changes: Sequence[Change], dash: str = "-") -> str:
+    """Return the first and the last line of the changes in the file of the first one."""
     file = changes[0].file
     lines = [change.line for change in changes if change.file == file]
-    last = f"-{max(lines)}" if max(lines) > min(lines) else ""
-    return f"{file}:{min(lines)}{last}"
+    last = f"{dash}{max(lines)}" if max(lines) > min(lines) else ""
+    return f"{min(lines)}{last}"
 
 
-def _signed(number: str) -> str:
+def signed(number: str) -> str:
     """Return a number with its sign, zero without."""
     return number if number.startswith("-") or float(number) == 0 else f"+{number}"
 

@@ -6,10 +6,11 @@ from itertools import islice
 from typing import TYPE_CHECKING, Final
 
 from evenstage.report.analysis_text import circumstances, path_section
-from evenstage.report.block_text import block_lines, finished, notice_lines
+from evenstage.report.block_text import block_lines
 from evenstage.report.difference_text import difference_report
 from evenstage.report.families import family_name, family_of
-from evenstage.report.paper import Paper
+from evenstage.report.frame import framed
+from evenstage.report.paper import PLAIN, Paper
 from evenstage.report.path_text import legend
 from evenstage.report.scale import Scale, percent
 from evenstage.report.table import Column, first_that_fits
@@ -23,29 +24,10 @@ if TYPE_CHECKING:
 _ENDS_SHOWN: Final = 10
 
 
-def corners_report(
-    corners: Corners, *, width: int = 100, unicode: bool = False, notices: bool = True
-) -> str:
-    """Return a block in several processes as text.
-
-    Parameters
-    ----------
-    corners : Corners
-    width : int
-        Character cells per line, 80 to 160.
-    unicode : bool
-        Whether the output can show more than ASCII.
-    notices : bool
-        Whether the notices are printed too.
-
-    Returns
-    -------
-    str
-        Lines without trailing blanks, the last one ended too.
-    """
-    paper, worst = Paper(width, unicode), corners.worst
-    lines = [*paper.paragraph(block_name(worst)), "", *paper.paragraph(corners_answer(corners))]
-    lines += section("Corners", _corner_lines(paper, corners))
+def corners_report(corners: Corners, paper: Paper = PLAIN) -> str:
+    """Return a block in several processes as text."""
+    worst = corners.worst
+    lines = section("Corners", _corner_lines(paper, corners))
     for number, path in enumerate(corners.paths, 1):
         where = f" in {path.corner}"
         lines += path_section(paper, corners.corner_of(path), number, path, where)
@@ -53,23 +35,15 @@ def corners_report(
     title = f"Path ends in their worst corner, {rank(worst)} first"
     lines += section(title, _end_lines(paper, corners))
     lines += section(f"The block in {worst.yardstick.process}", block_lines(paper, worst))
-    if notices:
-        lines += section("Notices", notice_lines(paper, corners.notices))
-    return finished(paper, lines)
+    subject = paper.paragraph(block_name(worst))
+    return framed(paper, subject, corners_answer(corners), lines, corners.notices)
 
 
-def corners_difference_report(
-    difference: CornersDifference,
-    *,
-    width: int = 100,
-    unicode: bool = False,
-    notices: bool = True,
-) -> str:
-    """Return two netlists in several processes as text; parameters as for `corners_report`."""
-    paper = Paper(width, unicode)
+def corners_difference_report(difference: CornersDifference, paper: Paper = PLAIN) -> str:
+    """Return two netlists in several processes as text."""
     answer = corners_difference_answer(difference)
     lines = [*paper.paragraph(answer), *section("Corners", _moved_lines(paper, difference)), ""]
-    rest = difference_report(difference.worst, width=width, unicode=unicode, notices=notices)
+    rest = difference_report(difference.worst, paper)
     return "\n".join(lines) + "\n" + rest
 
 

@@ -4,13 +4,13 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
-from evenstage.report.block_text import finished, notice_lines
 from evenstage.report.families import gathered
+from evenstage.report.frame import framed
 from evenstage.report.pair_text import pair_lines, total_lines
-from evenstage.report.paper import Paper
+from evenstage.report.paper import PLAIN, Paper
 from evenstage.report.width_text import difference_lines
 from evenstage.report.words import (
-    block_name,
+    both_names,
     counted,
     labelled,
     listed,
@@ -27,38 +27,16 @@ if TYPE_CHECKING:
 _NAMES_SHOWN: Final = 12
 
 
-def difference_report(
-    difference: Difference, *, width: int = 100, unicode: bool = False, notices: bool = True
-) -> str:
-    """Return a comparison as text: slowest paths, blocks, widths, and what only one netlist has.
-
-    Parameters
-    ----------
-    difference : Difference
-    width : int
-        Character cells per line, 80 to 160.
-    unicode : bool
-        Whether the output can show more than ASCII.
-    notices : bool
-        Whether the notices are printed too.
-
-    Returns
-    -------
-    str
-        Lines without trailing blanks, the last one ended too.
-    """
-    paper = Paper(width, unicode)
+def difference_report(difference: Difference, paper: Paper = PLAIN) -> str:
+    """Return a comparison as text: slowest paths, blocks, widths, and what only one netlist has."""
     before, after = difference.before, difference.after
-    lines = labelled(paper, "before", block_name(before))
-    lines += labelled(paper, "after", block_name(after))
-    lines += ["", *paper.paragraph(difference_answer(difference))]
-    lines += _paths(paper, difference)
+    lines = _paths(paper, difference)
     lines += section("The blocks", total_lines(paper, before, after))
     lines += section("Widths that differ", difference_lines(paper, difference.widths))
     lines += section("In only one netlist", _only_lines(paper, difference))
-    if notices:
-        lines += section("Notices", notice_lines(paper, (*before.notices, *after.notices)))
-    return finished(paper, lines)
+    subject = both_names(paper, before, after)
+    notices = (*before.notices, *after.notices)
+    return framed(paper, subject, difference_answer(difference), lines, notices)
 
 
 def difference_answer(difference: Difference) -> str:

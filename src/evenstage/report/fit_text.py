@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
-from evenstage.report.block_text import finished, notice_lines
-from evenstage.report.paper import Paper
+from evenstage.report.frame import framed
+from evenstage.report.paper import PLAIN, Paper
 from evenstage.report.table import Column, first_that_fits
 from evenstage.report.words import counted, labelled, section
 from evenstage.units import engineering
@@ -26,50 +26,25 @@ UNITS: Final = {
 }
 
 
-def fit_report(fit: Fit, *, width: int = 100, unicode: bool = False, notices: bool = True) -> str:
-    """Return a fit as text.
-
-    Parameters
-    ----------
-    fit : Fit
-    width : int
-        Character cells per line, 80 to 160.
-    unicode : bool
-        Whether the output can show more than ASCII.
-    notices : bool
-        Whether the notices are printed too.
-
-    Returns
-    -------
-    str
-        Lines without trailing blanks, the last one ended too.
-    """
-    paper = Paper(width, unicode)
-    lines = [*paper.paragraph(f"{fit.source}, cells of {fit.cells}"), ""]
-    lines += paper.paragraph(fit_answer(fit))
-    lines += section("Constants", _constant_lines(paper, fit.constants))
+def fit_report(fit: Fit, paper: Paper = PLAIN) -> str:
+    """Return a fit as text."""
+    lines = section("Constants", _constant_lines(paper, fit.constants))
     lines += section("What the measurements do not tell apart", _confused(paper, fit.confusions))
     lines += section("Predicted against measured", _residual_lines(paper, fit))
     lines += section("The fit", _base_lines(paper, fit))
-    if notices:
-        lines += section("Notices", notice_lines(paper, fit.notices))
-    return finished(paper, lines)
+    subject = paper.paragraph(f"{fit.source}, cells of {fit.cells}")
+    return framed(paper, subject, fit_answer(fit), lines, fit.notices)
 
 
-def deck_report(
-    deck: Deck, *, width: int = 100, unicode: bool = False, notices: bool = True
-) -> str:
-    """Return what a measuring deck measures as text; arguments as for `fit_report`."""
-    paper = Paper(width, unicode)
-    lines = paper.paragraph(
+def deck_report(deck: Deck, paper: Paper = PLAIN) -> str:
+    """Return what a measuring deck measures as text."""
+    answer = (
         f"{deck.output} measures {counted(deck.arcs, 'arc')} of {counted(len(deck.cells), 'cell')} "
         f"at {deck.measurements // deck.arcs} points each. Add your models to it, let your "
         f"simulator run it, and keep what it prints; {deck.table_output} holds the names of the "
         "results. Then: evenstage fit TABLE --results PRINTED --netlist CELLS --output FILE."
     )
-    if notices:
-        lines += section("Notices", notice_lines(paper, deck.notices))
-    return finished(paper, lines)
+    return framed(paper, (), answer, (), deck.notices)
 
 
 def fit_answer(fit: Fit) -> str:

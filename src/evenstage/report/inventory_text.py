@@ -6,9 +6,9 @@ from itertools import islice
 from typing import TYPE_CHECKING, Final
 
 from evenstage.circuit.storage.elements import FLIP_FLOP
-from evenstage.report.block_text import finished, notice_lines
 from evenstage.report.families import gathered
-from evenstage.report.paper import Paper
+from evenstage.report.frame import framed
+from evenstage.report.paper import PLAIN, Paper
 from evenstage.report.table import Column, first_that_fits
 from evenstage.report.words import counted, labelled, listed, section
 
@@ -24,42 +24,20 @@ _SUPPLIES_SHOWN: Final = 6
 _FAMILY_CODE: Final = "not-understood"
 
 
-def inventory_report(
-    inventory: Inventory, *, width: int = 100, unicode: bool = False, notices: bool = True
-) -> str:
-    """Return an inventory as text: the gates by subcircuit and kind, then what is left.
-
-    Parameters
-    ----------
-    inventory : Inventory
-    width : int
-        Character cells per line, 80 to 160.
-    unicode : bool
-        Whether the output can show more than ASCII.
-    notices : bool
-        Whether the notices are printed too.
-
-    Returns
-    -------
-    str
-        Lines without trailing blanks, the last one ended too.
-    """
-    paper = Paper(width, unicode)
+def inventory_report(inventory: Inventory, paper: Paper = PLAIN) -> str:
+    """Return an inventory as text: the gates by subcircuit and kind, then what is left."""
     block = f"block {inventory.top}" if inventory.top else "top level"
-    lines = [*paper.paragraph(f"{inventory.source}, {block}"), ""]
-    lines += paper.paragraph(_answer(inventory))
-    lines += section("Gates", _entry_lines(paper, inventory.entries))
+    lines = section("Gates", _entry_lines(paper, inventory.entries))
     lines += section("Storage and other loops", _stored_lines(paper, inventory))
     lines += section("Transistors outside all logic", _outside_lines(paper, inventory))
     lines += section("Not understood, timed as loads only", _unknown_lines(paper, inventory))
     lines += section("Supplies", _supply_lines(paper, inventory))
-    if notices:
-        # What was not understood stands above already, with more of its transistors.
-        told = {notice for notice in inventory.notices if notice.code == _FAMILY_CODE}
-        told = {notice for notice in told if _is_told(notice.message, inventory.not_understood)}
-        others = [notice for notice in inventory.notices if notice not in told]
-        lines += section("Notices", notice_lines(paper, others))
-    return finished(paper, lines)
+    # What was not understood stands above already, with more of its transistors.
+    told = {notice for notice in inventory.notices if notice.code == _FAMILY_CODE}
+    told = {notice for notice in told if _is_told(notice.message, inventory.not_understood)}
+    others = [notice for notice in inventory.notices if notice not in told]
+    subject = paper.paragraph(f"{inventory.source}, {block}")
+    return framed(paper, subject, _answer(inventory), lines, others)
 
 
 def _is_told(message: str, unknown: Sequence[Unknown]) -> bool:

@@ -22,18 +22,21 @@ _EDGES: Final[dict[Edge, tuple[str, str]]] = {"rise": ("/", "↑"), "fall": ("\\
 
 @dataclass(frozen=True, slots=True)
 class Paper:
-    """Width and character set of a text report.
+    """Width and character set of a text report, and whether notices stand on it.
 
     Parameters
     ----------
     width : int
-        Character cells per line.
+        Character cells per line, 80 to 160.
     unicode : bool
         Whether the output can show more than ASCII.
+    notices : bool
+        Whether the notices are printed too.
     """
 
     width: int = 100
     unicode: bool = False
+    notices: bool = True
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "width", min(max(self.width, NARROWEST), WIDEST))
@@ -90,6 +93,10 @@ class Paper:
             else:
                 lines[-1] += f" {word}"
         return lines
+
+
+#: Where nothing else is asked for.
+PLAIN: Final = Paper()
 
 
 def cells(text: str) -> int:

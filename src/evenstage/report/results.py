@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Final
 from evenstage.circuit.inventory import Inventory
 from evenstage.fitting.results import Deck, Fit
 from evenstage.report.document.convert import Result, document, to_json
+from evenstage.report.paper import Paper
 from evenstage.report.terminal import (
     analysis_report,
     corners_difference_report,
@@ -47,8 +48,7 @@ def text(
     result: Result, *, width: int = 100, unicode: bool = True, with_notices: bool = True
 ) -> str:
     """Return a result as a report for people, with or without its notices."""
-    report = _REPORTS[type(result)]
-    return report(result, width=width, unicode=unicode, notices=with_notices)
+    return _REPORTS[type(result)](result, Paper(width, unicode, with_notices))
 
 
 def json(result: Result, origin: Origin | None = None) -> str:

@@ -4,12 +4,13 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
-from evenstage.report.block_text import finished, notice_lines
-from evenstage.report.paper import Paper
+from evenstage.report.frame import framed
+from evenstage.report.paper import PLAIN, Paper
 from evenstage.report.scale import Scale, percent
 from evenstage.report.table import Column, first_that_fits
 from evenstage.report.words import (
     block_name,
+    both_names,
     counted,
     labelled,
     listed,
@@ -40,47 +41,23 @@ BY_CONSTRUCTION: Final = (
 )
 
 
-def simulation_report(
-    simulation: Simulation, *, width: int = 100, unicode: bool = False, notices: bool = True
-) -> str:
-    """Return a simulation as text: the answer, the first path's stages, the other paths.
-
-    Parameters
-    ----------
-    simulation : Simulation
-    width : int
-        Character cells per line, 80 to 160.
-    unicode : bool
-        Whether the output can show more than ASCII.
-    notices : bool
-        Whether the notices are printed too.
-
-    Returns
-    -------
-    str
-        Lines without trailing blanks, the last one ended too.
-    """
-    paper = Paper(width, unicode)
+def simulation_report(simulation: Simulation, paper: Paper = PLAIN) -> str:
+    """Return a simulation as text: the answer, the first path's stages, the other paths."""
     before, after = simulation.before, simulation.after
     if after is None:
-        lines = paper.paragraph(block_name(before.analysis))
+        subject = paper.paragraph(block_name(before.analysis))
     else:
-        lines = labelled(paper, "before", block_name(before.analysis))
-        lines += labelled(paper, "after", block_name(after.analysis))
-    lines += ["", *paper.paragraph(simulation_answer(simulation))]
-    if simulation.scaled:
-        lines += paper.paragraph(BY_CONSTRUCTION)
+        subject = both_names(paper, before.analysis, after.analysis)
+    lines = paper.paragraph(BY_CONSTRUCTION) if simulation.scaled else []
     lines += _block_lines(paper, before, "" if after is None else " before")
     if after is not None:
         lines += _block_lines(paper, after, " after")
     lines += ["", *paper.paragraph(_LEGEND, indent=2)]
     lines += section("How it was simulated", _how_lines(paper, simulation))
-    if notices:
-        every = [*before.analysis.notices, *(after.analysis.notices if after else ())]
-        # That currents were scaled stands above already.
-        others = [notice for notice in simulation.notices if notice.code != SCALED]
-        lines += section("Notices", notice_lines(paper, [*every, *others]))
-    return finished(paper, lines)
+    every = [*before.analysis.notices, *(after.analysis.notices if after else ())]
+    # That currents were scaled stands above already.
+    others = [notice for notice in simulation.notices if notice.code != SCALED]
+    return framed(paper, subject, simulation_answer(simulation), lines, [*every, *others])
 
 
 def simulation_answer(simulation: Simulation) -> str:

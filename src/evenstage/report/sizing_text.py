@@ -4,11 +4,12 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
-from evenstage.report.block_text import block_lines, finished, notice_lines
-from evenstage.report.change_text import card_count, change_lines
+from evenstage.report.block_text import block_lines
+from evenstage.report.change_text import card_count, change_lines, change_words
 from evenstage.report.few_changes import few_changes_section
+from evenstage.report.frame import framed
 from evenstage.report.pair_text import pair_lines, total_lines
-from evenstage.report.paper import Paper
+from evenstage.report.paper import PLAIN, Paper
 from evenstage.report.path_text import path_lines
 from evenstage.report.prices import price_lines
 from evenstage.report.quality_text import quality_lines
@@ -42,30 +43,10 @@ HOLDS: Final[dict[Hold, str]] = {
 }
 
 
-def sizing_report(
-    sizing: Sizing, *, width: int = 100, unicode: bool = False, notices: bool = True
-) -> str:
-    """Return a sizing as text: what it buys, its bound, the changes, the path before and after.
-
-    Parameters
-    ----------
-    sizing : Sizing
-    width : int
-        Character cells per line, 80 to 160.
-    unicode : bool
-        Whether the output can show more than ASCII.
-    notices : bool
-        Whether the notices are printed too.
-
-    Returns
-    -------
-    str
-        Lines without trailing blanks, the last one ended too.
-    """
-    paper = Paper(width, unicode)
+def sizing_report(sizing: Sizing, paper: Paper = PLAIN) -> str:
+    """Return a sizing as text: what it buys, its bound, the changes, the path before and after."""
     before, after = sizing.before, sizing.after
-    lines = [*paper.paragraph(block_name(before)), ""]
-    lines += paper.paragraph(sizing_answer(sizing))
+    lines: list[str] = []
     if sizing.corners is not None:
         lines += section("Corners", sized_corner_lines(paper, sizing.corners))
     lines += section("How good the widths are", quality_lines(paper, sizing))
@@ -78,9 +59,9 @@ def sizing_report(
     lines += _stages(paper, sizing)
     block = total_lines(paper, before, after) if sizing.changes else block_lines(paper, before)
     lines += section(f"The block{_where(sizing)}", block)
-    if notices:
-        lines += section("Notices", notice_lines(paper, (*sizing.notices, *sizing.block_notices)))
-    return finished(paper, lines)
+    subject = paper.paragraph(block_name(before))
+    notices = (*sizing.notices, *sizing.block_notices)
+    return framed(paper, subject, sizing_answer(sizing), lines, notices)
 
 
 def sizing_answer(sizing: Sizing) -> str:
@@ -121,16 +102,7 @@ def _changes(paper: Paper, sizing: Sizing) -> list[str]:
     lines = change_lines(paper, sizing.changes)
     if not lines:
         return []
-    text = (
-        "alone: how the worst delay moves if only that gate changes; last: how it moves by that "
-        "gate when all others have changed. Less is faster. Drawn widths of one copy."
-    )
-    if all(change.alone >= 0 for change in sizing.changes):
-        text += (
-            " No change helps alone: a wider gate loads the one before it until that is wider too. "
-            "Together they do."
-        )
-    return [*lines, "", *paper.paragraph(text, indent=2)]
+    return [*lines, "", *paper.paragraph(change_words(sizing.changes), indent=2)]
 
 
 def _stages(paper: Paper, sizing: Sizing) -> list[str]:

@@ -113,3 +113,9 @@ def labelled(paper: Paper, label: str, text: str) -> list[str]:
     """Return a paragraph with a label in its margin."""
     first, *rest = paper.paragraph(text, indent=_MARGIN)
     return [(f"  {label}".ljust(_MARGIN) + first[_MARGIN:]).rstrip(), *rest]
+
+
+def both_names(paper: Paper, before: Analysis, after: Analysis) -> list[str]:
+    """Return which blocks of which files are compared."""
+    labels = (("before", before), ("after", after))
+    return [line for label, one in labels for line in labelled(paper, label, block_name(one))]

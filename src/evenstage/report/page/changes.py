@@ -4,7 +4,15 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
-from evenstage.report.change_text import alike_changes, factor
+from evenstage.report.change_text import (
+    alike_changes,
+    change_words,
+    factor,
+    none_helps_alone,
+    one_file,
+    place,
+    signed,
+)
 from evenstage.report.families import family_name
 from evenstage.report.page.parts import Cell, Heading, Table
 from evenstage.report.paper import Paper
@@ -26,12 +34,18 @@ def change_table(changes: Sequence[Change]) -> Table | None:
     """Return the changes, those that buy most first; gates that change alike share a row."""
     if not changes:
         return None
-    groups = sorted(alike_changes(changes), key=lambda group: min(one.alone for one in group))
+    together = none_helps_alone(changes)
+    groups = sorted(
+        alike_changes(changes),
+        key=lambda group: min(one.last if together else one.alone for one in group),
+    )
     shown = groups[:_GROUPS]
     widths = [value for group in shown for one in group for value in (one.old, one.new)]
     width = Scale.of(widths, "m").trimmed(widths)
-    alone = Scale.of((one.alone for group in shown for one in group), "s", digits=3)
-    rows = tuple(row for group in shown for row in _change_rows(group, width, alone))
+    effects = [effect for group in shown for one in group for effect in (one.alone, one.last)]
+    alone = Scale.of(effects, "s", digits=3)
+    only = one_file(changes)
+    rows = tuple(row for group in shown for row in _change_rows(group, width, alone, only))
     headings: tuple[Heading, ...] = (
         Heading("gate"),
         Heading("copies", "number"),
@@ -41,13 +55,14 @@ def change_table(changes: Sequence[Change]) -> Table | None:
         Heading(f"new, {width.unit}", "number"),
         Heading("factor", "number"),
         Heading(f"alone, {alone.unit}", "number"),
-        Heading("written in", "name"),
+        Heading(f"last, {alone.unit}", "number"),
+        Heading("line", "number") if only else Heading("written in", "name"),
         Heading("why"),
     )
     if not any(one.why for group in shown for one in group):
         headings, rows = headings[:-1], tuple(row[:-1] for row in rows)
     left = len(groups) - len(shown)
-    remark = "alone: change of the worst delay if only that gate changed."
+    remark = change_words(changes)
     if left:
         remark += f" {left} more groups of gates that buy less are in the JSON."
     return Table(
@@ -55,7 +70,9 @@ def change_table(changes: Sequence[Change]) -> Table | None:
     )
 
 
-def _change_rows(group: Sequence[Change], width: Scale, alone: Scale) -> list[tuple[Cell, ...]]:
+def _change_rows(
+    group: Sequence[Change], width: Scale, alone: Scale, only: str
+) -> list[tuple[Cell, ...]]:
     alike: dict[tuple[str, float, float], list[Change]] = {}
     for one in group:
         alike.setdefault((one.parameter, one.old, one.new), []).append(one)
@@ -70,23 +87,22 @@ def _change_rows(group: Sequence[Change], width: Scale, alone: Scale) -> list[tu
             Cell(width.number(old), sort=repr(old)),
             Cell(width.number(new), sort=repr(new)),
             Cell(factor(_PAPER, old, new), sort=repr(new / old)),
-            Cell(_signed(cards[0].alone, alone), sort=repr(cards[0].alone)),
-            Cell(_place(cards)),
+            *(
+                Cell(signed(alone.number(effect)), sort=repr(effect))
+                for effect in (cards[0].alone, cards[0].last)
+            ),
+            _place_cell(cards, only),
             Cell(cards[0].why),
         )
         for (parameter, old, new), cards in alike.items()
     ]
 
 
-def _signed(effect: float, scale: Scale) -> str:
-    sign = "+" if effect > 0 and float(scale.number(effect)) else ""
-    return f"{sign}{scale.number(effect)}"
-
-
-def _place(cards: Sequence[Change]) -> str:
-    lines = [one.line for one in cards if one.file == cards[0].file]
-    last = f"–{max(lines)}" if max(lines) > min(lines) else ""
-    return f"{_PAPER.shorten(cards[0].file, 32)}:{min(lines)}{last}"
+def _place_cell(cards: Sequence[Change], only: str) -> Cell:
+    lines = place(cards, "–")
+    if only:
+        return Cell(lines, sort=lines.partition("–")[0])
+    return Cell(f"{_PAPER.shorten(cards[0].file, 32)}:{lines}")
 
 
 def difference_table(widths: Sequence[WidthDifference]) -> Table | None:

@@ -9,6 +9,7 @@ from evenstage.report.corners_text import corners_answer, corners_difference_ans
 from evenstage.report.difference_text import difference_answer
 from evenstage.report.families import gathered
 from evenstage.report.fit_text import fit_answer
+from evenstage.report.page.assembly import assembled
 from evenstage.report.page.changes import change_table, difference_table
 from evenstage.report.page.ends import end_parts
 from evenstage.report.page.origin_parts import origin_parts
@@ -50,9 +51,8 @@ from evenstage.report.words import (
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Mapping, Sequence
+    from collections.abc import Mapping, Sequence
 
-    from evenstage.errors import Notice
     from evenstage.fitting.results import Fit
     from evenstage.report.origin import Origin
     from evenstage.report.page.parts import Part
@@ -62,7 +62,6 @@ if TYPE_CHECKING:
     from evenstage.timing.results import Analysis, Difference, Path
 
 _NAMES_SHOWN: Final = 8
-_MESSAGES_SHOWN: Final = 5
 _PATHS_SHOWN: Final = 60
 _PAPER: Final = Paper(unicode=True)
 
@@ -78,13 +77,13 @@ def analysis_page(analysis: Analysis, origin: Origin) -> Page:
         Section("precharge", PRECHARGE, precharge_parts(analysis.precharges)),
         _origin_section(origin, analysis),
     ]
-    return Page(
+    return assembled(
         subject=block_name(analysis),
         kind="analysis",
         answer=analysis_answer(analysis),
         figures=_one_figures(analysis),
-        notices=_notices(analysis.notices),
-        sections=_kept(sections),
+        notices=analysis.notices,
+        sections=sections,
     )
 
 
@@ -114,13 +113,13 @@ def corners_page(corners: Corners, origin: Origin) -> Page:
         Section("ends", f"Path ends in {worst.yardstick.process}", end_parts([("", worst)])),
         _origin_section(origin, worst),
     ]
-    return Page(
+    return assembled(
         subject=block_name(worst),
         kind="analysis in corners",
         answer=corners_answer(corners),
         figures=_one_figures(worst),
-        notices=_notices(corners.notices),
-        sections=_kept(sections),
+        notices=corners.notices,
+        sections=sections,
     )
 
 
@@ -141,13 +140,13 @@ def sizing_page(sizing: Sizing, origin: Origin) -> Page:
         Section("block", "The block", (_totals(before, after),)),
         _origin_section(origin, after),
     ]
-    return Page(
+    return assembled(
         subject=block_name(before),
         kind="resizing",
         answer=sizing_answer(sizing),
         figures=_two_figures(before, after, sizing.slowest_before),
-        notices=_notices((*sizing.notices, *sizing.block_notices)),
-        sections=_kept(sections),
+        notices=(*sizing.notices, *sizing.block_notices),
+        sections=sections,
     )
 
 
@@ -167,13 +166,13 @@ def difference_page(difference: Difference, origin: Origin, answer: str = "") ->
         Section("block", "The blocks", (_totals(before, after),)),
         _origin_section(origin, after),
     ]
-    return Page(
+    return assembled(
         subject=f"{block_name(before)}, against {block_name(after)}",
         kind="difference",
         answer=answer or difference_answer(difference),
         figures=_two_figures(before, after),
-        notices=_notices((*before.notices, *after.notices)),
-        sections=_kept(sections),
+        notices=(*before.notices, *after.notices),
+        sections=sections,
     )
 
 
@@ -199,20 +198,31 @@ def simulation_page(simulation: Simulation, origin: Origin) -> Page:
         *_path_sections(old, new.paths[0].estimate, new.analysis),
         _origin_section(origin, new.analysis),
     ]
-    first = before.paths[0]
-    error = percent(first.delay, first.estimated_delay)
-    return Page(
-        subject=block_name(before.analysis),
+    against = "" if after is None else f", against {block_name(after.analysis)}"
+    return assembled(
+        subject=block_name(before.analysis) + against,
         kind="simulation",
         answer=simulation_answer(simulation),
-        figures=(
-            KeyFigure("estimated", engineering(first.estimated_delay, "s")),
-            KeyFigure("simulated", engineering(first.delay, "s")),
-            KeyFigure("estimate against simulation", error),
-        ),
-        notices=_notices([*every, *simulation.notices]),
-        sections=_kept(sections),
+        figures=_simulated_figures(simulation),
+        notices=[*every, *simulation.notices],
+        sections=sections,
     )
+
+
+def _simulated_figures(simulation: Simulation) -> tuple[KeyFigure, ...]:
+    """Return the first path's delays and how they compare; of two, those after beside before."""
+    rows = [
+        (
+            engineering(block.paths[0].estimated_delay, "s"),
+            engineering(block.paths[0].delay, "s"),
+            percent(block.paths[0].delay, block.paths[0].estimated_delay),
+        )
+        for block in (simulation.after, simulation.before)
+        if block is not None
+    ]
+    labels = ("estimated", "simulated", "estimate against simulation")
+    was = [""] * 3 if len(rows) == 1 else [f"before {value}" for value in rows[1]]
+    return tuple(map(KeyFigure, labels, rows[0], was))
 
 
 def fit_page(fit: Fit, origin: Origin) -> Page:
@@ -222,7 +232,7 @@ def fit_page(fit: Fit, origin: Origin) -> Page:
         Section("constants", "Constants", constant_parts(fit)),
         Section("origin", "How to make this page again", origin_parts(origin, None)),
     ]
-    return Page(
+    return assembled(
         subject=f"{fit.source}, cells of {fit.cells}",
         kind="fit",
         answer=fit_answer(fit),
@@ -230,13 +240,9 @@ def fit_page(fit: Fit, origin: Origin) -> Page:
             KeyFigure("measurements used", f"{fit.used} of {fit.measured}"),
             KeyFigure("FO4 of the fitted process", engineering(fit.fo4, "s")),
         ),
-        notices=_notices(fit.notices),
-        sections=_kept(sections),
+        notices=fit.notices,
+        sections=sections,
     )
-
-
-def _kept(sections: Iterable[Section]) -> tuple[Section, ...]:
-    return tuple(section for section in sections if section.parts)
 
 
 def _path_sections(
@@ -380,27 +386,6 @@ def _two_figures(
         )
         for label, old, new, unit in pairs
     )
-
-
-def _notices(notices: Iterable[Notice]) -> tuple[tuple[str, tuple[str, ...]], ...]:
-    """Return notices by what they are about; of very many alike the first ones."""
-    groups: dict[str, list[Notice]] = {}
-    for notice in dict.fromkeys(notices):
-        groups.setdefault(notice.code, []).append(notice)
-    told = []
-    for code, group in groups.items():
-        words = [_told(notice) for notice in group[:_MESSAGES_SHOWN]]
-        if len(group) > _MESSAGES_SHOWN:
-            words.append(f"and {len(group) - _MESSAGES_SHOWN} more")
-        told.append((code.replace("-", " "), tuple(words)))
-    return tuple(told)
-
-
-def _told(notice: Notice) -> str:
-    names = [name for name in notice.names if name and name not in notice.message]
-    if not names:
-        return str(notice)
-    return f"{notice}: {listed(gathered(names, '×'), _NAMES_SHOWN)}"
 
 
 def _origin_section(origin: Origin, analysis: Analysis) -> Section:

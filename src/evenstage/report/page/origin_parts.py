@@ -23,7 +23,7 @@ def origin_parts(origin: Origin, yardstick: Yardstick | None) -> tuple[Part, ...
     """Return version, command line, digests and process constants."""
     parts: list[Part] = [
         Paragraph(f"evenstage {origin.version}", "Program"),
-        Paragraph(shlex.join(["evenstage", *origin.arguments]), "Command"),
+        Paragraph(shlex.join(["evenstage", *origin.arguments]), "Command", command=True),
     ]
     if yardstick is not None:
         told = (
@@ -44,7 +44,7 @@ def _files(origin: Origin) -> Table:
     rows = tuple(cells(paper.shorten(f.name, 48), f.sha256) for f in origin.files[:_FILES])
     left = len(origin.files) - _FILES
     remark = f"{left} more files were read." if left > 0 else ""
-    return Table("Files", (Heading("file"), Heading("SHA-256")), rows, remark=remark)
+    return Table("Files", (Heading("file"), Heading("SHA-256", "digest")), rows, remark=remark)
 
 
 def _constants(process: Process) -> Table:
@@ -57,8 +57,8 @@ def _constants(process: Process) -> Table:
                 engineering(one.length, "m"),
                 engineering(one.r_w, "Ωm"),
                 engineering(one.r_fixed, "Ω"),
-                f"{engineering(one.c_gate * 1e-6, 'F')}/µm",
-                f"{engineering(one.c_drain * 1e-6, 'F')}/µm",
+                f"{engineering(one.c_gate * 1e-6, 'F')}/um",
+                f"{engineering(one.c_drain * 1e-6, 'F')}/um",
             ),
         )
         for one in process.transistors

@@ -11,10 +11,11 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, slots=True)
 class Paragraph:
-    """Some sentences; ``label`` stands before them in bold."""
+    """Some sentences, or a command; ``label`` stands before them in bold."""
 
     text: str
     label: str = ""
+    command: bool = False
     kind: Literal["paragraph"] = "paragraph"
 
 
@@ -33,7 +34,7 @@ class Heading:
     """The head of a column; ``axis`` is drawn under its title."""
 
     title: str
-    align: Literal["text", "name", "number", "chart"] = "text"
+    align: Literal["text", "name", "number", "chart", "digest"] = "text"
     axis: Element | None = None
 
 
@@ -61,6 +62,11 @@ class Table:
     sortable: bool = False
     names: bool = True
     kind: Literal["table"] = "table"
+
+    @property
+    def charted(self) -> bool:
+        """Whether a column of drawings wants all the width there is."""
+        return any(heading.align == "chart" for heading in self.headings)
 
 
 Part = Paragraph | Figure | Table
@@ -97,6 +103,8 @@ class Page:
     answer : str
         The answer in a sentence or two.
     figures : tuple of KeyFigure
+    cautions : tuple of str
+        What takes away from every time on the page.
     notices : tuple of (str, tuple of str)
         What they are about, and what they say.
     sections : tuple of Section
@@ -107,6 +115,7 @@ class Page:
     kind: str
     answer: str
     figures: tuple[KeyFigure, ...]
+    cautions: tuple[str, ...]
     notices: tuple[tuple[str, tuple[str, ...]], ...]
     sections: tuple[Section, ...]
 

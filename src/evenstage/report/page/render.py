@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any, Final
 from jinja2 import Environment, PackageLoader, StrictUndefined
 
 from evenstage.fitting.results import Fit
-from evenstage.report.block_text import CAUTION
+from evenstage.report.frame import CAUTION
 from evenstage.report.page.contents import (
     analysis_page,
     corners_difference_page,

@@ -167,12 +167,14 @@ def _point_table(
     name, unit = spent
     delay = Scale.of([*(p.delay for p in points), *([bound] if bound else [])], "s")
     width = Scale.of((p.spend for p in points), unit)
+    named = {(p.delay, p.spend) for p in points if p.label}
+    shown = [p for p in points if p.label or (p.delay, p.spend) not in named]
     rows = [
         (Cell(p.label or "on the curve"), Cell(delay.number(p.delay)), Cell(width.number(p.spend)))
-        for p in points
+        for p in sorted(shown, key=lambda p: (p.delay, p.spend))
     ]
     if bound:
-        rows.append((Cell("least possible delay"), Cell(delay.number(bound)), Cell("–")))
+        rows.insert(0, (Cell("least possible delay"), Cell(delay.number(bound)), Cell("–")))
     headings = (
         Heading("widths"),
         Heading(f"worst charged delay, {delay.unit}", "number"),
