@@ -15,7 +15,15 @@ from evenstage.report.document.convert import to_json
 from evenstage.report.graph_document import graph_document
 from evenstage.report.paper import Paper
 from evenstage.report.terminal import inventory_report
-from support.blocks import circuit_of, inverter, nand, network, nor, transistor
+from support.blocks import (
+    SHIFTING_BLOCK,
+    circuit_of,
+    inverter,
+    nand,
+    network,
+    nor,
+    transistor,
+)
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -117,3 +125,41 @@ def test_names_that_xml_cannot_hold_are_escaped() -> None:
     text = graph_document(circuit_of(f"* t\n.global vdd vss\n.subckt top y\n{cards}\n.ends\n"))
     back = nx.read_graphml(io.BytesIO(text.encode()), node_type=int)
     assert back.nodes[0]["function"] == "!a\\xfffe"
+
+
+class TestTwoSupplies:
+    @pytest.mark.parametrize("width", [80, 100])
+    def test_text(self, golden: Callable[[str, str], None], width: int) -> None:
+        shifting = take_inventory(circuit_of(SHIFTING_BLOCK))
+        golden(f"inventory_two_supplies_{width}", inventory_report(shifting, Paper(width)))
+
+    def test_json_counts_by_supplies(self) -> None:
+        shifting = take_inventory(circuit_of(SHIFTING_BLOCK))
+        document = json.loads(to_json(document_of(shifting)))
+        kinds = {some["name"]: some["kinds"] for some in document["subcircuits"]}
+        assert [(one["supplies"]["high"], one["count"]) for one in kinds["inv"]] == [
+            (["vdd"], 4),
+            (["vddh"], 3),
+        ]
+        gates = {gate["instance"]: gate["supplies"] for gate in document["gates"]}
+        assert gates["x3.x1"] == {"high": ["vdd"], "low": ["vss"]}
+        assert gates["x3.x2"] == {"high": ["vddh"], "low": ["vss"]}
+        assert gates["mt"] == {"high": [], "low": []}
+        assert [one["supplies"]["high"] for one in document["storage"]] == [["vddh"], ["vddh"]]
+
+    def test_tables_and_nodes_say_them(self) -> None:
+        block = circuit_of(SHIFTING_BLOCK)
+        rows = take_inventory(block).tables()["gates"]
+        inverters = [one for one in rows if one["subcircuit"] == "inv"]
+        assert [(one["high"], one["low"]) for one in inverters] == [("vdd", "vss"), ("vddh", "vss")]
+        back = nx.read_graphml(io.BytesIO(graph_document(block).encode()), node_type=int)
+        nodes = {facts["instance"]: facts for _, facts in back.nodes(data=True)}
+        assert (nodes["x3.x1"]["high"], nodes["x3.x1"]["low"]) == ("vdd", "vss")
+        assert nodes["x3.x2"]["high"] == "vddh"
+
+
+def test_one_supply_has_no_column(inventory: Inventory) -> None:
+    assert "supplies  " not in inventory_report(inventory)
+    assert {entry.supplies.nets for entry in inventory.entries} <= {
+        ("vdd", "vss"), ("vdd",), ("vss",), (),
+    }  # fmt: skip

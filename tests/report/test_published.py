@@ -11,6 +11,7 @@ from jsonschema import Draft202012Validator
 
 from evenstage import flow
 from evenstage.report.published import schema_text
+from support.blocks import SHIFTING_BLOCK
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -91,6 +92,14 @@ def test_kinds_are_told_apart_at_the_head() -> None:
 def test_every_sample_keeps_it(sample: str, kind: str) -> None:
     document = of(COMMANDS[kind](SAMPLES / sample / "netlist.sp", question(sample)))
     assert document["kind"] == kind
+    assert mistakes(document, closed(PUBLISHED)) == []
+
+
+def test_two_supplies_keep_it(tmp_path: Path) -> None:
+    path = tmp_path / "shifting.sp"
+    path.write_text(SHIFTING_BLOCK)
+    document = of(flow.recognise(path, flow.Question()))
+    assert document["storage"]
     assert mistakes(document, closed(PUBLISHED)) == []
 
 

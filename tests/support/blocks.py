@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 from pathlib import Path
-from typing import TYPE_CHECKING, TypedDict, Unpack
+from typing import TYPE_CHECKING, Final, TypedDict, Unpack
 
 from evenstage.circuit.recognise import recognise
 from evenstage.netlist.elaboration.elaborate import elaborate
@@ -85,6 +85,39 @@ def circuit_of(text: str, process: Process | None = None, brief: Brief | None = 
 def block(cards: str, ports: str = "") -> str:
     """Wrap cards into one subcircuit ``top`` with supplies."""
     return f"* a block\n.global vdd vss\n.subckt top {ports}\n{cards}\n.ends\n"
+
+
+SHIFTING_BLOCK: Final = """\
+* invented: level shifters between two high supplies
+.subckt inv a y vp vss
+mn y a vss vss nx w=1u l=0.1u
+mp y a vp vp px w=2u l=0.1u
+.ends
+.subckt lv a y vdd vddh vss
+x1 a ab vdd vss inv
+mnl l a vss vss nx w=4u l=0.1u
+mnr r ab vss vss nx w=4u l=0.1u
+mpl l r vddh vddh px w=1u l=0.1u
+mpr r l vddh vddh px w=1u l=0.1u
+x2 r y vddh vss inv
+.ends
+.subckt top a b c y z w vdd vddh vss
+x1 a p vdd vss inv
+x2 p q vdd vss inv
+x3 q y vdd vddh vss lv
+x4 b z vdd vddh vss lv
+mt y c u vss nx w=1u l=0.1u
+mt2 z b u vss nx w=1u l=0.1u
+mh hb hold vss vss nx w=1u l=0.1u
+mhp hb hold vddh vddh px w=2u l=0.1u
+mk hold hb vss vss nx w=1u l=0.1u
+mkp hold hb vddh vddh px w=2u l=0.1u
+mw hold c b vss nx w=4u l=0.1u
+md vss vddh vss vss nx w=4u l=0.1u
+x5 u w vddh vss inv
+.ends
+"""
+"""A block on two high supplies: level shifters, pass transistors and a storage cell."""
 
 
 def transistor(kind: str, drain: str, gate: str, source: str, width: float, name: str) -> str:

@@ -9,11 +9,13 @@ import numpy as np
 
 from evenstage.circuit.names import device_names
 from evenstage.circuit.storage.elements import first_device
+from evenstage.circuit.supplied import GateDomains, are_several, gate_domains
 from evenstage.tabular import Row, Tabular, row
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.storage.elements import Element
+    from evenstage.circuit.supplied import Domain
     from evenstage.circuit.tables import AlikeGates
     from evenstage.errors import Notice
     from evenstage.netlist.devices import Devices, IntArray
@@ -21,7 +23,7 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, slots=True)
 class Entry:
-    """Gates drawn alike in one subcircuit.
+    """Gates drawn alike in one subcircuit, on the same supplies.
 
     Parameters
     ----------
@@ -38,6 +40,9 @@ class Entry:
         Of the first, in the net names of its subcircuit.
     inputs : tuple of str
         Likewise.
+    supplies : Domain
+        What they hang on, in the names of the block; rails that are inside instances and that
+        nobody declared are gathered by their last name, as ``*.vdd``.
     """
 
     subcircuit: str
@@ -48,6 +53,7 @@ class Entry:
     output: str
     function: str
     inputs: tuple[str, ...]
+    supplies: Domain
 
 
 @dataclass(frozen=True, slots=True)
@@ -71,7 +77,7 @@ class Unknown:
 
 @dataclass(frozen=True, slots=True)
 class Stored:
-    """Storage elements of one kind in one subcircuit, and loops that are none.
+    """Storage elements of one kind in one subcircuit on the same supplies, and loops that are none.
 
     Parameters
     ----------
@@ -85,6 +91,8 @@ class Stored:
     clocks, writes : tuple of (str, bool)
         Likewise: its clocks with the level that lets data through (of a flip-flop the level after
         its edge), and what sets or resets it with the level that does.
+    supplies : Domain
+        What the gates that drive its nets hang on, named as in `Entry`.
     """
 
     subcircuit: str
@@ -95,6 +103,7 @@ class Stored:
     data: tuple[str, ...]
     clocks: tuple[tuple[str, bool], ...]
     writes: tuple[tuple[str, bool], ...]
+    supplies: Domain
 
 
 @dataclass(frozen=True, slots=True)
@@ -129,9 +138,10 @@ class Inventory(Tabular):
     high, low : tuple of str
         Supply nets.
     entries : tuple of Entry
-        By subcircuit, callers first, then by kind and first occurrence.
+        By subcircuit, callers first, then by supplies where there are several pairs, then by kind
+        and first occurrence.
     stored : tuple of Stored
-        By subcircuit, then by kind.
+        Likewise.
     outside : tuple of Outside
         By subcircuit, then by role.
     not_understood : tuple of Unknown
@@ -166,15 +176,26 @@ class Inventory(Tabular):
     def tables(self) -> dict[str, list[Row]]:
         """Return the gates by subcircuit and kind, storage, and what was not understood."""
         return {
-            "gates": [row(entry) | {"inputs": ", ".join(entry.inputs)} for entry in self.entries],
-            "storage": [row(some) | {"data": ", ".join(some.data)} for some in self.stored],
+            "gates": [
+                row(entry) | {"inputs": ", ".join(entry.inputs)} | _named(entry.supplies)
+                for entry in self.entries
+            ],
+            "storage": [
+                row(some) | {"data": ", ".join(some.data)} | _named(some.supplies)
+                for some in self.stored
+            ],
             "outside_logic": [row(some) for some in self.outside],
             "not_understood": [row(some) for some in self.not_understood],
         }
 
 
+def _named(supplies: Domain) -> Row:
+    return {"high": ", ".join(supplies.high), "low": ", ".join(supplies.low)}
+
+
 def take_inventory(circuit: Circuit) -> Inventory:
     """Count what a circuit consists of."""
+    supplied = gate_domains(circuit, gathered=True)
     devices, supplies = circuit.devices, circuit.supplies
     names = devices.net_names
     return Inventory(
@@ -185,8 +206,8 @@ def take_inventory(circuit: Circuit) -> Inventory:
         gates=len(circuit),
         high=tuple(names[net] for net in np.flatnonzero(supplies.is_high).tolist()),
         low=tuple(names[net] for net in np.flatnonzero(supplies.is_low).tolist()),
-        entries=_entries(circuit),
-        stored=_stored(circuit),
+        entries=_entries(circuit, supplied),
+        stored=_stored(circuit, supplied),
         outside=_outside(circuit),
         not_understood=_unknown(circuit),
         notices=circuit.notices,
@@ -194,17 +215,18 @@ def take_inventory(circuit: Circuit) -> Inventory:
     )
 
 
-def _entries(circuit: Circuit) -> tuple[Entry, ...]:
+def _entries(circuit: Circuit, supplied: GateDomains) -> tuple[Entry, ...]:
+    by_domain = are_several(supplied.domains)
     found = [
-        (subcircuit, circuit.alike[index].form.kind, first, count)
-        for index, some in enumerate(circuit.alike)
-        for subcircuit, first, count in _by_subcircuit(circuit, some)
+        (subcircuit, domain if by_domain else 0, some.form.kind, first, count)
+        for some in circuit.alike
+        for subcircuit, domain, first, count in _by_place(circuit, some, supplied)
     ]
     found.sort()
     alike: dict[Entry, int] = {}
     instance: dict[Entry, str] = {}
-    for _, _, first, count in found:
-        entry = _entry(circuit, first, count)
+    for *_, first, count in found:
+        entry = _entry(circuit, first, count, supplied.of(first))
         # Parts of stages are drawn in different places of them and yet are alike.
         key = replace(entry, count=0, instance="")
         alike[key] = alike.get(key, 0) + count
@@ -212,14 +234,19 @@ def _entries(circuit: Circuit) -> tuple[Entry, ...]:
     return tuple(replace(key, count=n, instance=instance[key]) for key, n in alike.items())
 
 
-def _by_subcircuit(circuit: Circuit, some: AlikeGates) -> list[tuple[int, int, int]]:
-    """Return for each subcircuit its first gate of a form, and how many there are."""
+def _by_place(
+    circuit: Circuit, some: AlikeGates, supplied: GateDomains
+) -> list[tuple[int, int, int, int]]:
+    """Return by subcircuit and domain the first gate of a form, and how many there are."""
     holder = circuit.devices.instance_subcircuit[circuit.gate_instance[some.gates]]
-    subcircuits, first, count = np.unique(holder, return_index=True, return_counts=True)
-    return list(zip(subcircuits.tolist(), some.gates[first].tolist(), count.tolist(), strict=True))
+    place = holder.astype(np.int64) * len(supplied.domains) + supplied.index[some.gates]
+    places, first, count = np.unique(place, return_index=True, return_counts=True)
+    subcircuit, domain = np.divmod(places, len(supplied.domains))
+    columns = subcircuit, domain, some.gates[first], count
+    return list(zip(*(column.tolist() for column in columns), strict=True))
 
 
-def _entry(circuit: Circuit, gate: int, count: int) -> Entry:
+def _entry(circuit: Circuit, gate: int, count: int, supplies: Domain) -> Entry:
     form = circuit.alike[int(circuit.gate_form[gate])].form
     return Entry(
         subcircuit=circuit.gate_subcircuit(gate),
@@ -230,25 +257,33 @@ def _entry(circuit: Circuit, gate: int, count: int) -> Entry:
         output=circuit.local_name(gate, form.output),
         function=circuit.gate_function(gate),
         inputs=tuple(circuit.local_name(gate, local) for local in form.network.inputs),
+        supplies=supplies,
     )
 
 
-def _stored(circuit: Circuit) -> tuple[Stored, ...]:
+def _stored(circuit: Circuit, supplied: GateDomains) -> tuple[Stored, ...]:
     devices = circuit.devices
     at_net = first_device(devices)
-    by_place: dict[tuple[int, str], list[tuple[int, Element]]] = {}
+    by_place: dict[tuple[int, Domain, str], list[tuple[int, Element]]] = {}
     for element in circuit.storage.elements:
         nets = [net for loop in element.loops for net in loop.nets]
         instance = _common(devices, devices.instance[at_net[nets]].tolist())
-        place = int(devices.instance_subcircuit[instance]), element.kind
+        drivers = circuit.driver_of_net[nets]
+        domain = supplied.joined(drivers[drivers >= 0].tolist())
+        place = int(devices.instance_subcircuit[instance]), domain, element.kind
         by_place.setdefault(place, []).append((instance, element))
-    return tuple(
-        _stored_entry(circuit, kind, members) for (_, kind), members in sorted(by_place.items())
-    )
+    rank = {domain: i for i, domain in enumerate(dict.fromkeys(place[1] for place in by_place))}
+    if not are_several(rank):
+        rank = dict.fromkeys(rank, 0)
+    order = sorted(by_place, key=lambda place: (place[0], rank[place[1]], place[2]))
+    return tuple(_stored_entry(circuit, place, by_place[place]) for place in order)
 
 
-def _stored_entry(circuit: Circuit, kind: str, members: list[tuple[int, Element]]) -> Stored:
+def _stored_entry(
+    circuit: Circuit, place: tuple[int, Domain, str], members: list[tuple[int, Element]]
+) -> Stored:
     devices, (instance, first) = circuit.devices, members[0]
+    _, supplies, kind = place
 
     def named(net: int) -> str:
         return circuit.net_name_inside(instance, net)
@@ -262,6 +297,7 @@ def _stored_entry(circuit: Circuit, kind: str, members: list[tuple[int, Element]
         data=tuple(map(named, first.data)),
         clocks=tuple((named(net), level) for net, level in first.clocks),
         writes=tuple((named(net), level) for net, level in first.writes),
+        supplies=supplies,
     )
 
 

@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from itertools import islice
 from typing import TYPE_CHECKING, Final
 
 from evenstage.circuit.storage.elements import FLIP_FLOP
+from evenstage.circuit.supplied import are_several
 from evenstage.report.families import gathered
 from evenstage.report.frame import framed
 from evenstage.report.paper import PLAIN, Paper
@@ -15,12 +15,14 @@ from evenstage.report.words import counted, labelled, listed, section
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from evenstage.circuit.inventory import Entry, Inventory, Unknown
+    from evenstage.circuit.inventory import Entry, Inventory, Stored, Unknown
+    from evenstage.circuit.supplied import Domain
 
 _ENTRIES_SHOWN: Final = 60
 _NAMES_SHOWN: Final = 8
 _NETS_SHOWN: Final = 4
 _SUPPLIES_SHOWN: Final = 6
+_SUPPLIES_ROOM: Final = 16
 _FAMILY_CODE: Final = "not-understood"
 
 
@@ -61,21 +63,20 @@ def _entry_lines(paper: Paper, entries: Sequence[Entry]) -> list[str]:
     if not entries:
         return []
     most = len(entries) if len(entries) == _ENTRIES_SHOWN + 1 else _ENTRIES_SHOWN
-    rows, before = [], None
-    for entry in islice(entries, most):
-        place = (entry.subcircuit or "top level") if entry.subcircuit != before else ""
+    by_domain = are_several(entry.supplies for entry in entries)
+    rows, places = [], _places(entries[:most], by_domain=by_domain)
+    for entry, place in zip(entries, places, strict=False):
         function = f"{entry.output} = {entry.function}" if entry.function else entry.output
-        rows.append([place, entry.kind, str(entry.count), str(entry.devices), function])
-        before = entry.subcircuit
+        rows.append([*place, entry.kind, str(entry.count), str(entry.devices), function])
     columns = [
-        Column("subcircuit", kind="name"),
+        *_place_columns(places),
         Column("kind"),
         Column("number", align="right"),
         Column("transistors", align="right"),
         Column("function of the first", kind="name"),
     ]
-    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
-    lines = table.lines(rows)
+    # What the supplies take on narrow paper, the number of transistors gives.
+    lines = _table(paper, columns, rows, spare=-2 if by_domain else None)
     if len(entries) > most:
         left = sum(entry.count for entry in entries[most:])
         lines.append(f"  and {len(entries) - most} lines more, of {counted(left, 'gate')}")
@@ -86,17 +87,17 @@ def _stored_lines(paper: Paper, inventory: Inventory) -> list[str]:
     """Return a table of storage elements, one line per subcircuit and kind."""
     if not inventory.stored:
         return []
-    rows, before = [], None
-    for some in inventory.stored:
-        place = (some.subcircuit or "top level") if some.subcircuit != before else ""
+    # Storage on one pair of supplies is told from the gates around it, too.
+    by_domain = are_several(some.supplies for some in inventory.entries)
+    rows, places = [], _places(inventory.stored, by_domain=by_domain)
+    for some, place in zip(inventory.stored, places, strict=True):
         clocks = ", ".join(_clock(some.kind, name, high=high) for name, high in some.clocks)
         writes = ", ".join(_level(name, high=high) for name, high in some.writes)
         nets = listed(some.nets, _NETS_SHOWN)
         data = listed(some.data, _NETS_SHOWN)
-        rows.append([place, some.kind, str(some.count), clocks, data, writes, nets])
-        before = some.subcircuit
+        rows.append([*place, some.kind, str(some.count), clocks, data, writes, nets])
     columns = [
-        Column("subcircuit", kind="name"),
+        *_place_columns(places),
         Column("kind"),
         Column("number", align="right"),
         Column("clock", kind="name"),
@@ -104,8 +105,44 @@ def _stored_lines(paper: Paper, inventory: Inventory) -> list[str]:
         Column("set, reset", kind="name"),
         Column("nets of the first", kind="name"),
     ]
-    _, table = first_that_fits(paper, [(columns, rows)], indent=2)
-    return table.lines(rows)
+    return _table(paper, columns, rows, spare=-1 if by_domain else None)
+
+
+def _table(
+    paper: Paper, columns: list[Column], rows: list[list[str]], *, spare: int | None
+) -> list[str]:
+    """Return a table; where names would become too short, without the column that is to spare."""
+    choices = [(columns, rows)]
+    if spare is not None:
+        kept = [i for i in range(len(columns)) if i != len(columns) + spare]
+        fewer = [[cells[i] for i in kept] for cells in rows]
+        choices.append(([columns[i] for i in kept], fewer))
+    chosen, table = first_that_fits(paper, choices, indent=2)
+    return table.lines(choices[chosen][1])
+
+
+def _places(some: Sequence[Entry | Stored], *, by_domain: bool) -> list[list[str]]:
+    """Return the subcircuit of each, and its supplies if asked for, where they change."""
+    places: list[list[str]] = []
+    place: str | None = None
+    supplies: Domain | None = None
+    for one in some:
+        same = one.subcircuit == place
+        places.append(["" if same else one.subcircuit or "top level"])
+        if by_domain:
+            nets = listed(one.supplies.nets, _SUPPLIES_SHOWN) or "none"
+            places[-1].append("" if same and one.supplies == supplies else nets)
+        place, supplies = one.subcircuit, one.supplies
+    return places
+
+
+def _place_columns(places: Sequence[Sequence[str]]) -> list[Column]:
+    """Return the columns that say where; few supplies keep their room, for they differ little."""
+    first = Column("subcircuit", kind="name")
+    if not places or len(places[0]) == 1:
+        return [first]
+    widest = max(len(nets) for _, nets in places)
+    return [first, Column("supplies", kind="name" if widest > _SUPPLIES_ROOM else "number")]
 
 
 def _clock(kind: str, name: str, *, high: bool) -> str:

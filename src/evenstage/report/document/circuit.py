@@ -4,11 +4,13 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from evenstage.circuit.supplied import gate_domains
 from evenstage.report.document.timing import NOTICES
 
 if TYPE_CHECKING:
     from evenstage.circuit.circuit import Circuit
     from evenstage.circuit.inventory import Entry, Inventory
+    from evenstage.circuit.supplied import Domain
     from evenstage.report.document.shape import Document
 
 
@@ -35,6 +37,7 @@ def write_inventory(inventory: Inventory) -> Document:
                 "data": list(some.data),
                 "clocks": [{"net": net, "level": int(high)} for net, high in some.clocks],
                 "set_reset": [{"net": net, "level": int(high)} for net, high in some.writes],
+                "supplies": _supplies(some.supplies),
             }
             for some in inventory.stored
         ],
@@ -60,6 +63,10 @@ def write_inventory(inventory: Inventory) -> Document:
     }
 
 
+def _supplies(domain: Domain) -> Document:
+    return {"high": list(domain.high), "low": list(domain.low)}
+
+
 def _subcircuits(entries: tuple[Entry, ...]) -> list[Document]:
     """Return the entries by subcircuit, in their order."""
     by_name: dict[str, list[Document]] = {}
@@ -73,6 +80,7 @@ def _subcircuits(entries: tuple[Entry, ...]) -> list[Document]:
                 "output": entry.output,
                 "inputs": list(entry.inputs),
                 "function": entry.function,
+                "supplies": _supplies(entry.supplies),
             }
         )
     return [{"name": name, "kinds": kinds} for name, kinds in by_name.items()]
@@ -80,7 +88,7 @@ def _subcircuits(entries: tuple[Entry, ...]) -> list[Document]:
 
 def _gates(circuit: Circuit) -> list[Document]:
     """Return every gate: nets by their full names, the function in the names of its subcircuit."""
-    names = circuit.devices.net_names
+    names, supplied = circuit.devices.net_names, gate_domains(circuit)
     found: list[Document] = []
     for gate in range(len(circuit)):
         some = circuit.alike[int(circuit.gate_form[gate])]
@@ -93,6 +101,7 @@ def _gates(circuit: Circuit) -> list[Document]:
                 "output": names[int(circuit.gate_output[gate])],
                 "inputs": [names[int(nets[local])] for local in some.form.network.inputs],
                 "function": circuit.gate_function(gate),
+                "supplies": _supplies(supplied.of(gate)),
             }
         )
     return found
