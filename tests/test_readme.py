@@ -5,10 +5,15 @@ run in their order, in one folder that begins with a copy of ``sample_netlists``
 ``pycon`` is a session of the Python prompt. When an output is meant to change, write it anew with
 
     python tests/test_readme.py
+
+and the picture of the page that the tour makes, where Chromium is installed, with
+
+    python tests/test_readme.py --picture
 """
 
 from __future__ import annotations
 
+import base64
 import doctest
 import os
 import re
@@ -27,6 +32,7 @@ import pytest
 from evenstage.brief import BRIEF_KEYS
 from evenstage.process.read import PROCESS_KEYS
 from evenstage.settings import Table, Tables
+from support.browser import Browser
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -36,6 +42,9 @@ if TYPE_CHECKING:
 ROOT: Final = Path(__file__).parents[1]
 README: Final = ROOT / "README.md"
 PROMPT: Final = re.compile(r"\$ (?P<command>(?:.*\\\n)*.*)\n")
+PICTURE: Final = ROOT / "sample_netlists" / "pad_predriver" / "page.png"
+#: Pixels across the picture.
+WIDTH: Final = 1020
 FENCED: Final = re.compile(r"^```(?P<kind>\w*)\n(?P<text>.*?)^```$", re.MULTILINE | re.DOTALL)
 
 
@@ -54,8 +63,12 @@ def blocks(kind: str = "") -> list[Block]:
 
 
 def shown(command: str, folder: Path) -> str:
-    """Return what a command prints at a terminal of 100 columns, messages included."""
-    program, *arguments = shlex.split(command.replace("\\\n", " "))
+    """Return what a command prints at a terminal of 100 columns, messages included.
+
+    Behind a bar may stand one that shows a part of it.
+    """
+    first, _, part = command.replace("\\\n", " ").partition(" | ")
+    program, *arguments = shlex.split(first)
     assert Path(program).name == "evenstage"
     done = subprocess.run(
         [sys.executable, "-m", "evenstage", *arguments],
@@ -67,7 +80,9 @@ def shown(command: str, folder: Path) -> str:
         timeout=120,
     )
     assert done.returncode in {0, 1}, done.stdout.decode()
-    return done.stdout.decode()
+    if not part:
+        return done.stdout.decode()
+    return subprocess.check_output(shlex.split(part), input=done.stdout).decode()
 
 
 def rerun(folder: Path) -> list[Block]:
@@ -192,6 +207,21 @@ class TestKeys:
         assert wrong == []
 
 
+class TestPicture:
+    def test_is_shown_and_said_in_words(self) -> None:
+        (shown_as,) = re.findall(
+            r"^!\[([^]]+)\]\((\S+)\)$", README.read_text("utf-8"), re.MULTILINE
+        )
+        said, path = shown_as
+        assert (ROOT / path) == PICTURE
+        assert len(said) > 100
+
+    def test_is_small_enough_to_travel(self) -> None:
+        picture = PICTURE.read_bytes()
+        assert picture.startswith(b"\x89PNG")
+        assert len(picture) <= 200_000
+
+
 class TestFiles:
     @pytest.mark.parametrize("document", ["README.md", "DEVELOPERS.md"])
     def test_those_mentioned_exist(self, document: str) -> None:
@@ -217,5 +247,22 @@ def rewrite() -> None:
     README.write_text(text, "utf-8")
 
 
+def take_picture() -> None:
+    """Take the picture of the path, drawn and on its time axis, of the page that the tour makes."""
+    with tempfile.TemporaryDirectory() as folder, Browser() as browser:
+        rerun(Path(folder))
+        browser.open(Path(folder) / "faster.html", WIDTH)
+        section = "document.querySelector('section[aria-labelledby=path]')"
+        top, height = browser.run(f"[{section}.offsetTop, {section}.offsetHeight]")
+        clip = {"x": 0, "y": top - 20, "width": WIDTH, "height": height + 40, "scale": 1}
+        taken = browser.call(
+            "Page.captureScreenshot", format="png", captureBeyondViewport=True, clip=clip
+        )
+    PICTURE.write_bytes(base64.b64decode(taken["data"]))
+
+
 if __name__ == "__main__":
-    rewrite()
+    if "--picture" in sys.argv:
+        take_picture()
+    else:
+        rewrite()
