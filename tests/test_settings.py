@@ -90,6 +90,16 @@ MISTAKES = [
         ),
     ),
     (
+        "zzz = 1",
+        (
+            "b.toml:1:1: unknown key zzz; no known one is like it: is this the right kind of file?"
+            " (unknown-key)\n"
+            "    zzz = 1\n"
+            "    ^^^\n"
+            "known here: name, load, ratio, count, kind, cards, rail, output"
+        ),
+    ),
+    (
         'name = "x"\n[rail]\ncount = 3',
         (
             "b.toml:3:1: unknown key rail.count; it belongs above the first table of the file"

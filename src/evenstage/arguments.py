@@ -331,7 +331,7 @@ def _output(text: str) -> Path:
 def _delay(text: str) -> float:
     value = _positive(text)
     if value > _DELAY_MOST:
-        message = f"must be at most 1 ms, as in 450p, got '{text}'"
+        message = f"is in seconds, at most 1 ms: 450p or 450ps for 450 ps, got '{text}'"
         raise argparse.ArgumentTypeError(message)
     return value
 

@@ -23,6 +23,8 @@ if TYPE_CHECKING:
 
     from evenstage.pattern import Pattern
 
+#: Share of letters that two keys must have alike before one is taken for the other.
+_ALIKE: Final = 0.5
 _SYNTAX_PLACE: Final = re.compile(r" \(at (?:line (\d+), column (\d+)|end of document)\)$")
 
 
@@ -226,8 +228,12 @@ def _unknown_key(where: Where, keys: Mapping[str, Entry]) -> SettingsError:
     unknown = str(where.path[-1])
     advice = "it belongs above the first table of the file"
     if unknown not in where.root_keys:
-        nearest = difflib.get_close_matches(unknown.lower(), keys, n=1, cutoff=0.0)[0]
-        advice = f"the nearest known one is {nearest}"
+        nearest = difflib.get_close_matches(unknown.lower(), keys, n=1, cutoff=_ALIKE)
+        advice = (
+            f"the nearest known one is {nearest[0]}"
+            if nearest
+            else "no known one is like it: is this the right kind of file?"
+        )
     return where.error(
         f"unknown key {where.key}; {advice}",
         "unknown-key",

@@ -279,6 +279,14 @@ class TestSizingReport:
         assert "  x60 " in text
         assert "  x59 " not in text
 
+    def test_says_how_late_the_slowest_path_still_is(self, sizing: Sizing) -> None:
+        path = sizing.after.paths[0]
+        asked = replace(path, required=path.delay - 12e-12)
+        after = replace(sizing.after, paths=(asked, *sizing.after.paths[1:]))
+        assert "and is 12.0 ps late. How good" in one_line(
+            sizing_report(replace(sizing, after=after))
+        )
+
     def test_gates_that_change_alike_share_their_lines(self, sizing: Sizing) -> None:
         changes = tuple(
             replace(sizing.changes[0], instance=f"x{i}", card=card, line=10 + i)

@@ -56,10 +56,15 @@ def circumstances(path: Path) -> list[str]:
     if path.start_arrival:
         begins = engineering(path.start_arrival, "s")
         sentences.append(f"It begins at {begins}, so {path.end} arrives at {arrival}.")
-    if path.required is not None:
-        late = punctuality(path.delay, path.required)
-        sentences.append(f"It must arrive by {engineering(path.required, 's')} and is {late}.")
-    return sentences
+    return [*sentences, *required(path)]
+
+
+def required(path: Path) -> list[str]:
+    """Return a sentence on when a path must end, where that is known."""
+    if path.required is None:
+        return []
+    late = punctuality(path.delay, path.required)
+    return [f"It must arrive by {engineering(path.required, 's')} and is {late}."]
 
 
 def path_section(

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Final
 
+from evenstage.report.analysis_text import required
 from evenstage.report.block_text import block_lines
 from evenstage.report.change_text import card_count, change_lines, change_words
 from evenstage.report.few_changes import few_changes_section
@@ -82,6 +83,7 @@ def sizing_answer(sizing: Sizing) -> str:
         f"The {rank(before)} path{over} {moves(old.delay, new.delay)}; "
         f"{card_count(sizing.changes)} {verb}; total width {width}. {now} the {rank(after)}: "
         f"{route(new)}{_where(sizing)}."
+        f"{''.join(f' {sentence}' for sentence in required(new))}"
     )
 
 

@@ -92,9 +92,9 @@ def blame(engine: Engine, problem: Problem, solution: Solution) -> str:
     if full[last:].any():
         held.append("the skew allowed")
     if at_top.any():
-        held.append(f"the largest widths allowed ({int(at_top.sum())} sizes)")
+        held.append(f"the largest widths allowed ({_sizes(int(at_top.sum()))})")
     if stuck:
-        held.append(f"{stuck} sizes on the limiting paths that are fixed")
+        held.append(f"{_sizes(stuck)} on the limiting paths that may not change")
     if solution.spend_price > 0:
         held.append("the budget")
     return "it is held by " + (", ".join(held) or "the topology: no limit is active")
@@ -116,3 +116,7 @@ def used_up(problem: Problem, solution: Solution) -> BoolArray:
     """Tell which limits a solution leaves no room, shape (limits,)."""
     used: BoolArray = problem.limit.sums(np.log(solution.sizes), problem.limits) > 1 - _FULL
     return used
+
+
+def _sizes(number: int) -> str:
+    return f"{number} size{'' if number == 1 else 's'}"
