@@ -70,7 +70,7 @@ class TestTell:
     def test_the_rooms_tell_what_they_do(self) -> None:
         heard: list[tuple[str, float | None]] = []
         with listening(lambda stage, done: heard.append((stage, done))):
-            netlist = read_bytes(flat(3000), "flat.sp", Path())
+            netlist = read_bytes(flat(6000), "flat.sp", Path())
             elaborate(netlist)
             rewrite(netlist, ())
         assert list(dict(heard)) == ["reading", "laying out", "writing"]

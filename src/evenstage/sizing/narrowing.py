@@ -34,7 +34,7 @@ if TYPE_CHECKING:
 #: Flow that counts: an arc with less is late by more than 27 temperatures.
 _LEAST_FLOW: Final = 1e-20
 #: A part is worth its making if it has no more than this share of the arcs.
-_WORTH: Final = 0.45
+_WORTH: Final = 0.38
 #: Steps on one part before the whole is timed: at first, and at most.
 _FIRST, _MOST = 4, 16
 
