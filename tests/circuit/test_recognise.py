@@ -2,14 +2,27 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import pytest
 
 from evenstage.brief import Brief, OutputBrief
 from evenstage.circuit.circuit import NET, OUTPUT, Circuit
+from evenstage.circuit.recognise import recognise
 from evenstage.errors import CircuitError, SettingsError
 from evenstage.pattern import Pattern
 from evenstage.timing.analyse import analyse
-from support.blocks import block, circuit_of, inverter, nand, network, nor, plain_process
+from support.blocks import (
+    SHIFTING_BLOCK,
+    block,
+    circuit_of,
+    devices_of,
+    inverter,
+    nand,
+    network,
+    nor,
+    plain_process,
+)
 
 HEAD = "* t\n.global vdd vss\n"
 INV = ".subckt inv a y\n" + inverter("", "a", "y", 1, 2) + "\n.ends\n"
@@ -245,3 +258,31 @@ def test_the_graph_joins_each_driver_to_what_it_drives() -> None:
     assert edges == {(0, 1): "b", (0, 2): "b", (1, 2): "c"}
     outputs = [names[graph.nodes[gate][OUTPUT]] for gate in range(3)]
     assert outputs == ["b", "c", "z"]
+
+
+class TestWithoutAProcess:
+    NAMES = (("nx", "nmos"), ("px", "pmos"))
+
+    def text(self) -> str:
+        text = SHIFTING_BLOCK
+        for plain, usual in self.NAMES:
+            text = text.replace(f" {plain} ", f" {usual} ")
+        return text
+
+    def test_the_structure_is_the_same(self) -> None:
+        given, bare = circuit_of(SHIFTING_BLOCK), recognise(devices_of(self.text(), None))
+        assert functions(bare) == functions(given)
+        kinds = [[some.gate_kind(i) for i in range(len(some))] for some in (bare, given)]
+        assert kinds[0] == kinds[1]
+        assert bare.storage.elements == given.storage.elements
+        assert "generic-process" in codes(bare)
+        assert bare.electrical.gate.today.min() > 0
+
+    def test_types_that_only_a_process_told_are_not_guessed(self) -> None:
+        plain = plain_process()
+        odd = replace(plain, transistors=plain.transistors[::-1])
+        devices = devices_of(SHIFTING_BLOCK, odd)
+        assert len(recognise(devices, odd)) == len(circuit_of(SHIFTING_BLOCK))
+        with pytest.raises(CircuitError, match="give recognise that process too") as caught:
+            recognise(devices)
+        assert caught.value.code == "process-wanted"

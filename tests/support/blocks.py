@@ -70,7 +70,7 @@ def plain_process(
     return Process(name="plain", supply=1.0, transistors=(n, p), unit_width=1e-6, unit_ratio=gamma)
 
 
-def devices_of(text: str, process: Process, brief: Brief | None = None) -> Devices:
+def devices_of(text: str, process: Process | None, brief: Brief | None = None) -> Devices:
     """Read and elaborate a netlist."""
     netlist = read_bytes(text.encode(), "block.sp", Path())
     return elaborate(netlist, process=process, brief=brief)

@@ -9,6 +9,7 @@ import numpy as np
 
 from evenstage.brief import Brief
 from evenstage.circuit.apart import set_apart
+from evenstage.circuit.assumed import settled
 from evenstage.circuit.carrying import carry
 from evenstage.circuit.circuit import STORED, Circuit, NotUnderstood
 from evenstage.circuit.context import named_clocks
@@ -48,7 +49,9 @@ if TYPE_CHECKING:
 _DEFAULT_FANOUT = 4
 
 
-def recognise(devices: Devices, process: Process, brief: Brief | None = None) -> Circuit:
+def recognise(
+    devices: Devices, process: Process | None = None, brief: Brief | None = None
+) -> Circuit:
     """Recognise the gates of a block.
 
     Groups of one structure are recognised once, however often they occur. What is no known kind is
@@ -57,14 +60,18 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
     Parameters
     ----------
     devices : Devices
-    process : Process
+    process : Process, optional
+        None: what the ``.model`` cards of the netlist tell, else the built-in generic one, with a
+        notice; kinds and functions do not depend on it. Devices that were laid out with a process
+        want the same here.
     brief : Brief, optional
         Its supplies and outputs are used here.
 
     Raises
     ------
     CircuitError
-        ``no-supply`` or ``no-transistors``.
+        ``no-supply``, ``no-transistors``, or ``process-wanted`` where devices were laid out with
+        transistor types that their netlist alone does not tell.
     SettingsError
         Where a pattern of the brief fits no net.
 
@@ -97,7 +104,7 @@ def recognise(devices: Devices, process: Process, brief: Brief | None = None) ->
     output = np.empty(sum(len(some.gates) for some in alike), np.int32)
     for some in alike:
         output[some.gates] = some.nets[:, some.form.output]
-    process = _with_unit(process, devices)
+    process = _with_unit(process or _assumed(devices), devices)
     owner = owners(devices, alike)
     loops = find_storage(devices, found.gates, [some for _, some in found.strange])
     circuit = Circuit(
@@ -248,6 +255,21 @@ def _with_surroundings(circuit: Circuit, brief: Brief | None) -> Circuit:
         fits = [any(pattern.fits(name) for pattern in some.nets) for name in names]
         drive[nets[np.array(fits, bool)]] = some.drive
     return _with_ends(carry(circuit, replace(circuit, drive=drive)), brief)
+
+
+def _assumed(devices: Devices) -> Process:
+    """Return the process that the netlist itself tells; its types must be those of the devices."""
+    process = settled(devices.netlist, devices)
+    told = [some.polarity for some in process.transistors]
+    for model in devices.models:
+        if told[model.type_index : model.type_index + 1] != [model.polarity]:
+            raise CircuitError(
+                f"the model '{model.name}' is type {model.type_index + 1} of the process that the "
+                "netlist was laid out with, and the netlist alone tells no such type; give "
+                "recognise that process too",
+                code="process-wanted",
+            )
+    return process
 
 
 def _with_unit(process: Process, devices: Devices) -> Process:

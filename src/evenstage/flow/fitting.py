@@ -6,6 +6,7 @@ from dataclasses import replace
 from typing import TYPE_CHECKING, Final
 
 from evenstage.brief import Brief, read_brief
+from evenstage.circuit.assumed import inferred, settled
 from evenstage.errors import OutputError
 from evenstage.fitting.cells import leaf_cells, measured_cells, standing_alone
 from evenstage.fitting.deck import measuring_deck
@@ -14,7 +15,7 @@ from evenstage.fitting.reading import read_measurements, read_results
 from evenstage.fitting.sized import sized_bench
 from evenstage.fitting.tabulate import tabulate
 from evenstage.flow.files import refuse_existing, write_text
-from evenstage.flow.loading import Question, inferred, one_process, settled
+from evenstage.flow.loading import Question, one_process
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading.read import read
 from evenstage.netlist.rewriting.output import check_place, write_files

@@ -5,17 +5,14 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
-import numpy as np
-
 from evenstage.brief import Brief, read_brief
+from evenstage.circuit.assumed import inferred, settled
 from evenstage.circuit.recognise import in_process
 from evenstage.circuit.recognise import recognise as find_gates
 from evenstage.errors import SettingsError
 from evenstage.netlist.elaboration.elaborate import elaborate
 from evenstage.netlist.reading.read import read
 from evenstage.netlist.rewriting.record import Record, find_record
-from evenstage.process.generic import at_length
-from evenstage.process.infer import infer_process
 from evenstage.process.read import read_process
 from evenstage.sizing.named import refuse_unknown_names
 from evenstage.timing.analyse import analyse as find_paths
@@ -159,21 +156,6 @@ def recognised(
     circuit = find_gates(devices, process, brief)
     refuse_unknown_names(circuit, brief)
     return circuit, brief, record
-
-
-def inferred(netlist: Netlist, supply: float | None = None, length: float | None = None) -> Process:
-    """Return the process that the model cards of a netlist tell, else the generic one."""
-    """Return the process that the model cards of a netlist tell, else the generic one."""
-    facts = [(card.name, card.kind, card.values) for card in netlist.models.values()]
-    return infer_process(facts, supply, length)
-
-
-def settled(netlist: Netlist, devices: Devices) -> Process:
-    """Return the inferred process, now that supply and channel length are known."""
-    volts = [abs(value) for _, _, value in devices.source_nets if value]
-    length = float(np.median(devices.length)) if len(devices) else None
-    process = inferred(netlist, max(volts, default=None), length)
-    return at_length(process, length) if process.origin == "generic" and length else process
 
 
 def _measured(
