@@ -5,6 +5,7 @@ from __future__ import annotations
 import csv
 import io
 import json
+import re
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -15,6 +16,8 @@ from evenstage.errors import Notice
 from evenstage.report.document.convert import document as document_of
 from evenstage.report.document.convert import to_json
 from evenstage.report.document.simulation import waveform_table
+from evenstage.report.page.parts import Figure
+from evenstage.report.page.waveforms import waveform_parts
 from evenstage.report.paper import Paper
 from evenstage.report.terminal import simulation_report
 from evenstage.simulation.results import (
@@ -26,8 +29,9 @@ from evenstage.simulation.results import (
 )
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
+    from collections.abc import Callable, Sequence
 
+    from evenstage.report.page.parts import Part
     from evenstage.sizing.results import Sizing
     from evenstage.timing.results import Analysis, Path
 
@@ -82,6 +86,12 @@ def two(sizing: Sizing) -> Simulation:
     )
 
 
+def _drawn(parts: Sequence[Part]) -> str:
+    """Return the markup of all drawings."""
+    figures = [part for part in parts if isinstance(part, Figure)]
+    return "".join(drawing.__html__() for figure in figures for drawing in figure.drawings)
+
+
 class TestText:
     @pytest.mark.parametrize("width", [80, 100, 160])
     def test_one_netlist(
@@ -91,6 +101,16 @@ class TestText:
 
     def test_two_netlists(self, two: Simulation, golden: Callable[[str, str], None]) -> None:
         golden("simulation_pair", simulation_report(two, Paper(unicode=True)))
+
+    def test_waveforms_of_two_netlists_share_their_time_axis(self, two: Simulation) -> None:
+        assert two.after is not None
+        before, after = two.before.paths[0], two.after.paths[0]
+        longer = replace(before.traces, time=2 * before.traces.time)
+        paths = [("before", replace(before, traces=longer)), ("after", after)]
+        first, second = re.findall(r"V over ([\d.]+ \ws)", _drawn(waveform_parts(paths)))
+        assert first == second
+        (alone,) = re.findall(r"V over ([\d.]+ \ws)", _drawn(waveform_parts(paths[1:])))
+        assert alone != second
 
     def test_fits_any_width(self, one: Simulation, two: Simulation) -> None:
         for width in (80, 97, 160):

@@ -25,7 +25,7 @@ class Browser:
 
     def __init__(self) -> None:
         assert CHROMIUM is not None
-        self._profile = tempfile.TemporaryDirectory()
+        self._profile = tempfile.TemporaryDirectory(ignore_cleanup_errors=True)
         their_in, self._out = os.pipe()
         self._in, their_out = os.pipe()
         options = ["--headless", "--no-sandbox", "--disable-gpu", "--hide-scrollbars"]

@@ -48,6 +48,7 @@ from evenstage.report.words import (
     same_route,
     takes,
 )
+from evenstage.simulation.parameters import SCALED
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
@@ -187,9 +188,10 @@ def simulation_page(simulation: Simulation, origin: Origin) -> Page:
     before, after = simulation.before, simulation.after
     new = before if after is None else after
     old = None if after is None else before.paths[0].estimate
-    waves = [*waveform_parts(before.paths[0], "" if after is None else "before")]
+    paths = [("" if after is None else "before", before.paths[0])]
     if after is not None:
-        waves += waveform_parts(after.paths[0], "after")
+        paths.append(("after", after.paths[0]))
+    waves = [*waveform_parts(paths)]
     if simulation.scaled:
         waves.insert(0, Paragraph(BY_CONSTRUCTION))
     every = [*before.analysis.notices, *(after.analysis.notices if after else ())]
@@ -204,7 +206,8 @@ def simulation_page(simulation: Simulation, origin: Origin) -> Page:
         kind="simulation",
         answer=simulation_answer(simulation),
         figures=_simulated_figures(simulation),
-        notices=[*every, *simulation.notices],
+        # That currents were scaled stands above the waveforms already.
+        notices=[*every, *(one for one in simulation.notices if one.code != SCALED)],
         sections=sections,
     )
 

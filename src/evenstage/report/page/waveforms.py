@@ -14,6 +14,8 @@ from evenstage.report.scale import Scale, percent
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from evenstage.netlist.devices import FloatArray
     from evenstage.report.page.element import Element
     from evenstage.report.page.parts import Part
@@ -29,13 +31,25 @@ _CURVES: Final = 24
 _PAPER: Final = Paper(unicode=True)
 
 
-def waveform_parts(path: SimulatedPath, when: str = "") -> tuple[Part, ...]:
-    """Return the voltages of one path, and its stages estimated and simulated."""
-    return _figure(path.traces.thinned(), when), _stage_table(path, when)
+def waveform_parts(paths: Sequence[tuple[str, SimulatedPath]]) -> tuple[Part, ...]:
+    """Return the voltages of paths on a common time axis, their stages estimated and simulated.
+
+    Parameters
+    ----------
+    paths : sequence of (str, SimulatedPath)
+        When each was so, as in ``before``, or empty where there is one only.
+    """
+    times = [path.traces.time for _, path in paths]
+    first, last = min(time[0] for time in times), max(time[-1] for time in times)
+    axis = Axis(float(first), float(last), "s")
+    return tuple(
+        part
+        for when, path in paths
+        for part in (_figure(path.traces.thinned(), when, axis), _stage_table(path, when))
+    )
 
 
-def _figure(traces: Traces, when: str) -> Figure:
-    axis = Axis(float(traces.time[0]), float(traces.time[-1]), "s")
+def _figure(traces: Traces, when: str, axis: Axis) -> Figure:
     low, high = float(traces.voltage.min()), float(traces.voltage.max())
     chosen = list(range(len(traces.nets)))[:_CURVES]
     lines = [_curve(traces, index, axis, (low, high)) for index in chosen]
@@ -99,7 +113,7 @@ def _curve(traces: Traces, index: int, axis: Axis, ends: tuple[float, float]) ->
 
 def _down(voltage: float, ends: tuple[float, float]) -> float:
     low, high = ends
-    return 0.97 - 0.94 * (voltage - low) / (high - low)
+    return 0.97 - 0.94 * (voltage - low) / ((high - low) or 1.0)
 
 
 def _thinned(time: FloatArray, voltage: FloatArray) -> tuple[FloatArray, FloatArray]:
