@@ -320,8 +320,7 @@ def _tied(network: Network, start: int, closed: frozenset[int]) -> set[int]:
     tied, waiting = {start}, [start]
     while waiting:
         node = waiting.pop()
-        for index in network.at_node.get(node, ()):
-            far = network.switches[index].other(node)
+        for index, far in network.near.get(node, ()):
             if index in closed and far not in tied and far >= 0:
                 tied.add(far)
                 waiting.append(far)
@@ -347,8 +346,7 @@ def _moved(
         waiting = [root]
         while waiting:
             here = waiting.pop()
-            for index in network.at_node[here]:
-                far = network.switches[index].other(here)
+            for index, far in network.near[here]:
                 if index in closed and far >= 0 and far not in found:
                     found[far] = place
                     if here in behind or network.switches[index].polarity != polarity:

@@ -82,6 +82,14 @@ class Network:
         return {node: tuple(indices) for node, indices in found.items()}
 
     @cached_property
+    def near(self) -> dict[int, tuple[tuple[int, int], ...]]:
+        """Switches at each node with the node at their other end, in drawing order."""
+        return {
+            node: tuple((index, self.switches[index].other(node)) for index in indices)
+            for node, indices in self.at_node.items()
+        }
+
+    @cached_property
     def inner_nodes(self) -> tuple[int, ...]:
         """Nodes that are not supplies, ascending."""
         return tuple(sorted(node for node in self.at_node if node >= 0))
@@ -124,7 +132,16 @@ class Network:
 
     def closed_under(self, vector: int) -> frozenset[int]:
         """Return the switches that one input vector closes."""
-        return frozenset(i for i, bits in enumerate(self.closed_bits) if bits >> vector & 1)
+        known = self._closed_under
+        if vector not in known:
+            bit = 1 << vector
+            known[vector] = frozenset(i for i, bits in enumerate(self.closed_bits) if bits & bit)
+        return known[vector]
+
+    @cached_property
+    def _closed_under(self) -> dict[int, frozenset[int]]:
+        """The switches that vectors close, as far as they were asked for."""
+        return {}
 
     def conducts(self, start: int, end: int, polarities: str = "np") -> BoolArray:
         """Tell for each vector whether closed switches join two nodes, shape ``(2**inputs,)``.
@@ -139,8 +156,7 @@ class Network:
         waiting = [start]
         while waiting:
             here = waiting.pop()
-            for index in self.at_node[here] if here >= 0 or here == start else ():
-                there = self.switches[index].other(here)
+            for index, there in self.near[here] if here >= 0 or here == start else ():
                 more = reached[here] & self.closed_bits[index] & ~reached[there]
                 if more and usable[index]:
                     reached[there] |= more
@@ -155,8 +171,7 @@ class Network:
             if node == end:
                 yield path
                 continue
-            for index in reversed(self.at_node[node]):
-                following = self.switches[index].other(node)
+            for index, following in reversed(self.near[node]):
                 if index in usable and following not in visited:
                     if following < 0 and following != end:
                         continue

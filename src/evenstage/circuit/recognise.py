@@ -31,6 +31,7 @@ from evenstage.circuit.supplies import find_supplies
 from evenstage.circuit.tables import AlikeGates
 from evenstage.circuit.wiring import find_wiring
 from evenstage.errors import CircuitError, Notice
+from evenstage.netlist.collection import without_collection
 from evenstage.netlist.wording import counted
 from evenstage.pattern import select
 from evenstage.process.unit import unit_inverter
@@ -91,6 +92,11 @@ def recognise(
             f"'{devices.top or 'the top level'}' holds no transistors", code="no-transistors"
         )
     tell("recognising")
+    with without_collection():
+        return _recognised(devices, process, brief)
+
+
+def _recognised(devices: Devices, process: Process | None, brief: Brief | None) -> Circuit:
     supplies = find_supplies(devices, brief)
     apart, levels = set_apart(devices, supplies)
     logic = np.ones(len(devices), bool)
