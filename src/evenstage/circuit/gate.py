@@ -292,9 +292,11 @@ def _arcs(
         # What fights a load is at neither supply: it moves as soon as it lets go.
         other = LOW if rising else HIGH
         settled = _tied(network, supply, was_closed) - _tied(network, other, was_closed)
-        condition = network.condition(path)
-        alike = [way for way in ways if network.condition(way) == condition]
-        together = network.apart([path, *(way for way in alike if way != path)])
+        alike = together = ways
+        if len(ways) > 1:
+            condition = network.condition(path)
+            alike = [way for way in ways if network.condition(way) == condition]
+            together = network.apart([path, *(way for way in alike if way != path)])
         moved, behind = _moved(network, together, closed, settled)
         beside = tuple(map(Beside, together[1:], moved[1:]))
         form = ArcForm(network.inputs[row], rising, path, moved[0], behind, beside=beside)
@@ -363,6 +365,8 @@ def _moved(
 
 
 def _not_outdone(forms: list[ArcForm]) -> list[ArcForm]:
+    if len(forms) == 1:
+        return forms
     kept = []
     for index, form in enumerate(forms):
         mine, behind = _depths(form), dict(form.behind)
