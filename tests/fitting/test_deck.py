@@ -176,3 +176,30 @@ class TestMeasuringDeck:
         path.write_text("* none\n.subckt top a b\nr1 a b 1k\n.ends\n")
         with pytest.raises(FitError, match="has no subcircuit with supplies that calls no other"):
             standing_alone(read(path), truth())
+
+
+TITLED = """A library of cells, and .end after them
+.subckt inv a y vdd vss
+mn y a vss vss nch w=0.3u l=60n
+mp y a vdd vdd pch w=0.6u l=60n
+.ends
+.end
+"""
+
+
+class TestTitles:
+    def test_a_bench_of_cells_under_a_title(self, tmp_path: Path) -> None:
+        path = tmp_path / "cells.sp"
+        path.write_text(TITLED)
+        bench = build_bench(path, standing_alone(read(path), truth()), truth())
+        assert [cell.name for cell in bench.cells] == ["inv"]
+        assert len(bench.circuit.devices) == 2
+
+    @pytest.mark.parametrize(("title", "told"), [("A library", 1), ("* A library", 0), ("", 0)])
+    def test_a_deck_tells_of_a_title_that_it_includes(
+        self, title: str, told: int, tmp_path: Path
+    ) -> None:
+        path = tmp_path / "cells.sp"
+        path.write_text("\n".join([title, *TITLED.splitlines()[1:], ""]))
+        deck = measuring_deck(standing_alone(read(path), truth()), path, truth())
+        assert [notice.code for notice in deck.notices] == ["title-included"] * told

@@ -15,8 +15,10 @@ from evenstage.brief import Brief
 from evenstage.circuit.recognise import recognise
 from evenstage.circuit.supplies import find_supplies
 from evenstage.netlist.elaboration.elaborate import elaborate
+from evenstage.netlist.reading.opening import after_title
 from evenstage.netlist.reading.read import read_bytes
 from evenstage.pattern import Pattern
+from evenstage.source import SourceText
 
 if TYPE_CHECKING:
     from collections.abc import Iterable
@@ -113,12 +115,16 @@ def build_bench(path: Path, cells: Iterable[Cell], process: Process) -> Bench:
         Where the file cannot be read, or holds no gate.
     """
     cells = tuple(cells)
-    lines = [f'.include "{path.resolve()}"', f".subckt {_TOP} {_HIGH} {_LOW}"]
+    data = path.read_bytes()
+    title, _ = after_title(SourceText(path.resolve(), data, str(path)), None)
+    # The bench stands inside the file: an included file would have no title, nor cards after .end.
+    lines = [*([""] if title else []), f".subckt {_TOP} {_HIGH} {_LOW}"]
     lines += [
         f"x{number} {' '.join(_at(number, cell, port) for port in cell.ports)} {cell.name}"
         for number, cell in enumerate(cells)
     ]
-    text = "\n".join([*lines, ".ends", ""]).encode("utf-8", "surrogateescape")
+    bench = "\n".join([*lines, ".ends", ""]).encode("utf-8", "surrogateescape")
+    text = data[:title] + bench + data[title:]
     netlist = read_bytes(text, f"bench of {path.name}", path.parent)
     brief = Brief(supplies_high=(Pattern(_HIGH),), supplies_low=(Pattern(_LOW),))
     devices = elaborate(netlist, _TOP, process, brief)

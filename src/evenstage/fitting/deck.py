@@ -16,6 +16,8 @@ from evenstage.fitting.measurements import Query
 from evenstage.fitting.reading import COLUMNS
 from evenstage.fitting.results import Deck
 from evenstage.fitting.side_inputs import INPUTS_MAX, CellLogic
+from evenstage.netlist.reading.opening import after_title
+from evenstage.source import SourceText
 from evenstage.timing.yardstick import chain
 from evenstage.units import suffixed
 
@@ -85,7 +87,7 @@ def measuring_deck(cells: Sequence[Cell], netlist: Path, process: Process) -> De
         for row, (arc, transition, fanout) in enumerate(product(arcs, transitions, _FANOUTS))
     ]
     stop = 3 * max(transitions) + _SETTLING * chains[-1].delay
-    notices = list(process.notices)
+    notices = [*process.notices, *_titled(netlist)]
     if lost:
         message = (
             f"{len(lost)} cells left out: no output that at most {INPUTS_MAX} inputs decide "
@@ -122,6 +124,18 @@ def _arcs(bench: Bench, number: int) -> Iterator[_Arc]:
                 if setting is not None:
                     query = Query(cell.name, pin, output, rising)
                     yield _Arc(number, cell, query, setting, cap)
+
+
+def _titled(netlist: Path) -> Iterator[Notice]:
+    """Give a notice if simulators would read a netlist's title as a card."""
+    source = SourceText(netlist.resolve(), netlist.read_bytes(), str(netlist))
+    title, _ = after_title(source, None)
+    if title and not source.data[:title].lstrip().startswith(b"*"):
+        message = (
+            f"'{netlist}' begins with a title, and the deck includes it: simulators read the first "
+            "line of an included file as a card; put '*' before it"
+        )
+        yield Notice("title-included", message, f"{netlist}:1:1")
 
 
 def _text(
