@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from functools import partial
 from typing import TYPE_CHECKING, Final
 
 from evenstage.brief import Brief, read_brief
@@ -27,9 +28,13 @@ from evenstage.simulation.strength import with_currents
 from evenstage.timing.yardstick import yardstick
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
     from pathlib import Path
 
+    from evenstage.fitting.bench import Cell
     from evenstage.fitting.results import Deck, Fit
+    from evenstage.netlist.netlist import Netlist
+    from evenstage.process.process import Process
 
 #: A simulation counts shared drains as the process says: there is nothing to find.
 _AS_SIMULATED: Final = ("drain_shared", "drain_inner")
@@ -57,12 +62,7 @@ def fit(
     refuse_existing(output, force=force)
     told = read_results(results) if results else None
     measured = read_measurements(measurements, told)
-    brief = read_brief(question.brief) if question.brief else Brief()
-    netlist = read(cells, brief.case, brief.first_line)
-    given = read_process(question.process) if question.process else None
-    found = measured_cells(measured, netlist, given or inferred(netlist), brief)
-    first = elaborate(netlist, found[0].name, given or inferred(netlist), brief)
-    begin = given or settled(netlist, first)
+    found, begin = _cells(cells, question, partial(measured_cells, measured))
     result = fit_process(measured, found, cells, begin, source=str(measurements))
     return result if output is None else _with_output(result, output, force=force)
 
@@ -83,12 +83,7 @@ def fit_simulated(
     """
     one_process(question, "fit")
     refuse_existing(output, force=force)
-    brief = read_brief(question.brief) if question.brief else Brief()
-    netlist = read(cells, brief.case, brief.first_line)
-    given = read_process(question.process) if question.process else None
-    found = leaf_cells(netlist, given or inferred(netlist), brief)
-    first = elaborate(netlist, found[0].name, given or inferred(netlist), brief)
-    begin = given or settled(netlist, first)
+    found, begin = _cells(cells, question, leaf_cells)
     bench = sized_bench(cells, found, begin)
     unit = yardstick(bench.circuit.process)
     exact = with_currents(bench.circuit.process, unit)
@@ -127,16 +122,24 @@ def write_deck(deck: Path, cells: Path, question: Question, *, force: bool = Fal
         raise OutputError(message, code="output-exists")
     for path in (deck, table):
         check_place(path, [cells])
-    brief = read_brief(question.brief) if question.brief else Brief()
-    netlist = read(cells, brief.case, brief.first_line)
-    given = read_process(question.process) if question.process else None
-    found = standing_alone(netlist, given or inferred(netlist), brief)
-    first = elaborate(netlist, found[0].name, given or inferred(netlist), brief)
-    result = measuring_deck(found, cells, given or settled(netlist, first))
+    found, process = _cells(cells, question, standing_alone)
+    result = measuring_deck(found, cells, process)
     texts = {deck: result.text, table: result.table}
     files = {path: text.encode("utf-8", "surrogateescape") for path, text in texts.items()}
     write_files(files, force=force)
     return replace(result, output=deck, table_output=table)
+
+
+def _cells(
+    path: Path, question: Question, choose: Callable[[Netlist, Process, Brief], tuple[Cell, ...]]
+) -> tuple[tuple[Cell, ...], Process]:
+    """Return the cells chosen from a netlist, and the process to begin with."""
+    brief = read_brief(question.brief) if question.brief else Brief()
+    netlist = read(path, brief.case, brief.first_line)
+    given = read_process(question.process) if question.process else None
+    found = choose(netlist, given or inferred(netlist), brief)
+    first = elaborate(netlist, found[0].name, given or inferred(netlist), brief)
+    return found, given or settled(netlist, first)
 
 
 def _with_output(result: Fit, output: Path, *, force: bool) -> Fit:

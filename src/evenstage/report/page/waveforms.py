@@ -11,15 +11,15 @@ from evenstage.report.page.element import element, number, picture, share, text
 from evenstage.report.page.parts import Cell, Figure, Heading, Table
 from evenstage.report.paper import Paper
 from evenstage.report.scale import Scale, percent
+from evenstage.simulation.results import Traces
 from evenstage.units import engineering
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from evenstage.netlist.devices import FloatArray
     from evenstage.report.page.element import Element
     from evenstage.report.page.parts import Part
-    from evenstage.simulation.results import SimulatedPath, Traces
+    from evenstage.simulation.results import SimulatedPath
 
 _HEIGHT: Final = 260
 _TOP: Final = 44
@@ -101,10 +101,11 @@ def _style(index: int) -> str:
 
 
 def _curve(traces: Traces, index: int, axis: Axis, ends: tuple[float, float]) -> Element:
-    time, voltage = _thinned(traces.time, traces.voltage[index])
+    own = slice(index, index + 1)
+    one = Traces(traces.nets[own], traces.time, traces.voltage[own]).thinned(_POINTS)
     places = " ".join(
         f"{number(1000 * axis.at(float(t)))},{number(_HEIGHT * _down(float(v), ends))}"
-        for t, v in zip(time, voltage, strict=True)
+        for t, v in zip(one.time, one.voltage[0], strict=True)
     )
     return element(
         "polyline", points=places, class_=_style(index), vector_effect="non-scaling-stroke"
@@ -114,19 +115,6 @@ def _curve(traces: Traces, index: int, axis: Axis, ends: tuple[float, float]) ->
 def _down(voltage: float, ends: tuple[float, float]) -> float:
     low, high = ends
     return 0.97 - 0.94 * (voltage - low) / ((high - low) or 1.0)
-
-
-def _thinned(time: FloatArray, voltage: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Return the points where a curve moves most, the first and the last among them."""
-    if len(time) <= _POINTS:
-        return time, voltage
-    span = (time[-1] - time[0]) or 1.0
-    swing = float(np.ptp(voltage)) or 1.0
-    steps = np.hypot(np.diff(time) / span, np.diff(voltage) / swing)
-    along = np.concatenate([[0.0], np.cumsum(steps)])
-    kept = np.unique(np.searchsorted(along, np.linspace(0.0, along[-1], _POINTS)))
-    kept = np.unique(np.concatenate([[0], np.minimum(kept, len(time) - 1), [len(time) - 1]]))
-    return time[kept], voltage[kept]
 
 
 def _numbers(
